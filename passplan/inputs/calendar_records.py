@@ -1,0 +1,51 @@
+"""Closures of antennas and contacts that somebody asked for."""
+
+from __future__ import annotations
+
+from typing import Annotated, Literal
+
+from pydantic import Field, model_validator
+
+from passplan.inputs.records import Instant, Name, Record, Service
+
+
+class Closure(Record):
+    """A half-open interval in which an antenna cannot be used: an ``outage``, or another party's ``booking``."""
+
+    antenna: str
+    start_utc: Instant
+    end_utc: Instant
+    kind: Literal["outage", "booking"] = "outage"
+    note: str = ""
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Closure:
+        if self.start_utc >= self.end_utc:
+            raise ValueError("end_utc is not after start_utc; swap or correct them")
+        return self
+
+
+class Request(Record):
+    """One contact that somebody asked for, anywhere in a span of time.
+
+    It is met by a planned contact of the spacecraft that offers ``service``, lies within the span and
+    lasts at least ``min_duration_s``; ``antenna`` or ``site`` narrow it further.
+    """
+
+    name: Name
+    spacecraft: str
+    antenna: str | None = None
+    site: str | None = None
+    service: Service = "downlink"
+    earliest_utc: Instant
+    latest_utc: Instant
+    min_duration_s: Annotated[float, Field(ge=1.0, le=86_400.0)] = 120.0
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Request:
+        span_s = (self.latest_utc - self.earliest_utc).total_seconds()
+        if span_s <= 0.0:
+            raise ValueError("latest_utc is not after earliest_utc; swap or correct them")
+        if span_s < self.min_duration_s:
+            raise ValueError(f"the span of {span_s:g} s is shorter than min_duration_s {self.min_duration_s:g}; widen it")
+        return self

@@ -1,0 +1,100 @@
+"""What the user says of the sites, the antennas on them, and their receive and transmit chains."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+from pydantic import Field, model_validator
+
+from passplan.inputs.records import MaskPoints, Name, Names, Polarisations, Record
+
+_Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
+
+
+class Site(Record):
+    """A place with antennas. Height is above the WGS 84 ellipsoid; longitude is east-positive.
+
+    The three weather values feed the gas attenuation; where they are absent the link floor takes the
+    mean annual reference atmosphere.
+    """
+
+    name: Name
+    latitude_deg: Annotated[float, Field(ge=-90.0, le=90.0)]
+    longitude_deg: Annotated[float, Field(ge=-180.0, le=360.0)]
+    height_m: Annotated[float, Field(ge=-500.0, le=9_000.0)] = 0.0
+    pressure_hpa: Annotated[float, Field(ge=300.0, le=1_100.0)] | None = None
+    temperature_k: Annotated[float, Field(ge=200.0, le=330.0)] | None = None
+    water_vapour_g_per_m3: Annotated[float, Field(ge=0.0, le=50.0)] | None = None
+
+
+class Receiver(Record):
+    """A receive chain: the band and polarisations it takes, and G/T, or gain and system noise temperature."""
+
+    name: Name
+    low_mhz: _Frequency
+    high_mhz: _Frequency
+    polarisations: Polarisations
+    g_over_t_db_per_k: Annotated[float, Field(ge=-30.0, le=70.0)] | None = None
+    gain_dbi: Annotated[float, Field(ge=0.0, le=90.0)] | None = None
+    noise_temperature_k: Annotated[float, Field(gt=0.0, le=10_000.0)] | None = None
+    pointing_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Receiver:
+        _check_band(self.low_mhz, self.high_mhz)
+        built = self.gain_dbi is not None and self.noise_temperature_k is not None
+        partly = self.gain_dbi is not None or self.noise_temperature_k is not None
+        if (self.g_over_t_db_per_k is None) != built or (self.g_over_t_db_per_k is not None and partly):
+            raise ValueError("give either g_over_t_db_per_k, or both gain_dbi and noise_temperature_k")
+        return self
+
+
+class Transmitter(Record):
+    """A transmit chain for commands: the band and polarisations it covers, and its EIRP."""
+
+    name: Name
+    low_mhz: _Frequency
+    high_mhz: _Frequency
+    polarisations: Polarisations
+    eirp_dbw: Annotated[float, Field(ge=-20.0, le=100.0)]
+    pointing_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Transmitter:
+        _check_band(self.low_mhz, self.high_mhz)
+        return self
+
+
+class Antenna(Record):
+    """One antenna: where it stands, what it can hear and say, its mask, and the time around a contact.
+
+    ``mask`` is a table of (azimuth, elevation) points in degrees, joined by straight lines and wrapped
+    at north; where it is absent the mask is ``min_elevation_deg`` all round. With both, the higher of
+    the two holds. ``prepare_s`` is kept free before a contact and ``release_s`` after it.
+    """
+
+    name: Name
+    site: str
+    receivers: Names = ()
+    transmitters: Names = ()
+    min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] = 5.0
+    mask: MaskPoints = ()
+    prepare_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 60.0
+    release_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 30.0
+    price_per_minute: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Antenna:
+        azimuths = [azimuth for azimuth, _ in self.mask]
+        if any(not 0.0 <= azimuth <= 360.0 for azimuth in azimuths):
+            raise ValueError("mask azimuths run from 0 to 360 deg; correct the table")
+        if any(not -5.0 <= elevation < 90.0 for _, elevation in self.mask):
+            raise ValueError("mask elevations lie from -5 to 90 deg; correct the table")
+        if any(b < a for a, b in zip(azimuths, azimuths[1:], strict=False)):
+            raise ValueError("mask azimuths must not decrease; sort the table")
+        return self
+
+
+def _check_band(low_mhz: float, high_mhz: float) -> None:
+    if low_mhz > high_mhz:
+        raise ValueError(f"low_mhz {low_mhz:g} is above high_mhz {high_mhz:g}; swap them")

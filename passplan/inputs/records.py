@@ -1,0 +1,63 @@
+"""The base of every checked record, and the small types that several of them share."""
+
+from __future__ import annotations
+
+from datetime import UTC, date, datetime
+from typing import Annotated, Any, Literal
+
+import numpy as np
+from pydantic import BaseModel, BeforeValidator, ConfigDict, Field
+
+Polarisation = Literal["RHCP", "LHCP", "H", "V"]
+Service = Literal["downlink", "command", "both"]
+
+
+class Record(BaseModel):
+    """A record the user wrote: frozen, no unknown keys, no infinities or NaN."""
+
+    model_config = ConfigDict(extra="forbid", frozen=True, allow_inf_nan=False, str_strip_whitespace=True)
+
+
+def _zoned(value: Any) -> datetime:
+    if isinstance(value, str):
+        try:
+            value = datetime.fromisoformat(value.strip())
+        except ValueError:
+            raise ValueError("write the instant as 2027-03-09T06:00:00Z") from None
+    if isinstance(value, date) and not isinstance(value, datetime):
+        raise ValueError("write the instant with its time of day and zone, as 2027-03-09T06:00:00Z")
+    if not isinstance(value, datetime):
+        raise ValueError("write the instant as 2027-03-09T06:00:00Z")
+    if value.tzinfo is None:
+        raise ValueError("the time has no zone; add Z for UTC or an offset such as +02:00")
+    return value.astimezone(UTC)
+
+
+def _listed(value: Any) -> Any:
+    """A CSV cell holds a list as ``a;b``; TOML has real lists."""
+    if isinstance(value, str):
+        return tuple(part.strip() for part in value.split(";") if part.strip())
+    return value
+
+
+def _mask_points(value: Any) -> Any:
+    """A CSV cell holds a mask as ``0:5;90:12``, azimuth and elevation in degrees."""
+    if isinstance(value, str):
+        try:
+            return tuple(tuple(float(x) for x in point.split(":", 1)) for point in _listed(value))
+        except ValueError:
+            raise ValueError("write the mask as azimuth:elevation pairs in degrees, as 0:5;90:12") from None
+    return value
+
+
+Instant = Annotated[datetime, BeforeValidator(_zoned)]
+Names = Annotated[tuple[str, ...], BeforeValidator(_listed)]
+Polarisations = Annotated[tuple[Polarisation, ...], BeforeValidator(_listed)]
+MaskPoints = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_mask_points)]
+# A name goes into file names, identifiers and tables: no separators, no control or invisible characters.
+Name = Annotated[str, Field(min_length=1, max_length=40, pattern=r"^[\w][\w .+\-]*$")]
+
+
+def datetime64(instant: datetime) -> np.datetime64:
+    """A zoned datetime as ``datetime64[ms]`` in UTC."""
+    return np.datetime64(instant.astimezone(UTC).replace(tzinfo=None), "ms")

@@ -1,0 +1,55 @@
+"""A run with everything it needs, read and checked; the only thing the floors above take from this one."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+import pandas as pd
+
+from passplan.inputs.calendar_records import Closure, Request
+from passplan.inputs.elements.model import ElementSet
+from passplan.inputs.ephemeris import Ephemeris
+from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
+from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
+from passplan.inputs.modcods import ModcodTable
+from passplan.inputs.policy import Policy
+from passplan.inputs.reader import ReadFile
+
+OrbitSource = ElementSet | Ephemeris
+
+
+@dataclass(frozen=True)
+class Run:
+    """One planning run as checked.
+
+    ``start_utc`` and ``end_utc`` bound the half-open horizon (``datetime64[ms]``, whole seconds).
+    ``orbits`` maps each spacecraft that takes part to the source its orbit comes from; ``left_out``
+    maps the others to the reason. ``elements`` is a table of every element set that was read for a
+    spacecraft of the fleet, with the use made of it. ``modcod_tables`` is keyed by table name.
+    """
+
+    name: str
+    start_utc: np.datetime64
+    end_utc: np.datetime64
+    spacecraft: Mapping[str, Spacecraft]
+    radios: Mapping[str, DownlinkRadio | CommandRadio]
+    sites: Mapping[str, Site]
+    antennas: Mapping[str, Antenna]
+    receivers: Mapping[str, Receiver]
+    transmitters: Mapping[str, Transmitter]
+    modcod_tables: Mapping[str, ModcodTable]
+    closures: tuple[Closure, ...]
+    requests: tuple[Request, ...]
+    policy: Policy
+    orbits: Mapping[str, OrbitSource]
+    left_out: Mapping[str, str]
+    elements: pd.DataFrame
+    warnings: tuple[str, ...] = ()
+    files: tuple[ReadFile, ...] = field(default=(), repr=False)
+
+    @property
+    def horizon_s(self) -> int:
+        """Length of the horizon in whole seconds."""
+        return int((self.end_utc - self.start_utc) / np.timedelta64(1, "s"))
