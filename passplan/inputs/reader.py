@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import os
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
@@ -14,7 +15,7 @@ _MAX_BYTES = 512 * 1024 * 1024
 
 @dataclass(frozen=True)
 class ReadFile:
-    """One file as read: the path as the user wrote it, its content, and the SHA-256 of the content."""
+    """One file as read: its path relative to the config, its content, and the SHA-256 of the content."""
 
     path: str
     content: bytes
@@ -25,12 +26,14 @@ class ReadFile:
 
 
 class Reader:
-    """Reads files once and remembers them; with ``stored`` it reads the copies that a plan carries.
+    """Reads files once and remembers them by their path relative to ``base``, the folder of the config.
 
-    ``stored`` maps the path as first read to the copy's path. A folder is remembered by its listing.
+    With ``stored`` it reads the copies that a plan directory carries instead: a map from that relative
+    path to the copy. A folder is remembered by the files read from it.
     """
 
-    def __init__(self, stored: Mapping[str, Path] | None = None) -> None:
+    def __init__(self, base: Path, stored: Mapping[str, Path] | None = None) -> None:
+        self._base = base
         self._stored = dict(stored) if stored is not None else None
         self._files: dict[str, ReadFile] = {}
 
@@ -41,28 +44,28 @@ class Reader:
 
     def read(self, path: Path, findings: Findings, where: str = "") -> bytes | None:
         """The content of ``path``, or None with a problem noted if it cannot be read."""
-        key = str(path)
+        key = self._key(path)
         if key in self._files:
             return self._files[key].content
         actual = path
         if self._stored is not None:
             if key not in self._stored:
-                findings.problem(key, where, None, "the plan directory does not carry this file; plan again")
+                findings.problem(path, where, None, "the plan directory does not carry this file; plan again")
                 return None
             actual = self._stored[key]
         try:
             if actual.is_dir():
-                findings.problem(key, where, None, "this is a folder; name a file")
+                findings.problem(path, where, None, "this is a folder; name a file")
                 return None
             if actual.stat().st_size > _MAX_BYTES:
-                findings.problem(key, where, None, "the file is larger than 512 MiB; split it")
+                findings.problem(path, where, None, "the file is larger than 512 MiB; split it")
                 return None
             content = actual.read_bytes()
         except FileNotFoundError:
-            findings.problem(key, where, None, "no such file; correct the path (paths are relative to the config)")
+            findings.problem(path, where, None, "no such file; correct the path (paths are relative to the config)")
             return None
         except OSError as fault:
-            findings.problem(key, where, None, f"cannot be read ({fault.strerror}); check its permissions")
+            findings.problem(path, where, None, f"cannot be read ({fault.strerror}); check its permissions")
             return None
         self._files[key] = ReadFile(key, content)
         return content
@@ -81,11 +84,16 @@ class Reader:
     def listing(self, folder: Path) -> list[Path]:
         """The files in ``folder``, sorted by name; of a stored plan, those that were read from it."""
         if self._stored is not None:
-            return sorted(Path(key) for key in self._stored if Path(key).parent == folder)
+            here = Path(self._key(folder))
+            return sorted(folder / Path(key).name for key in self._stored if Path(key).parent == here)
         return sorted(item for item in folder.iterdir() if item.is_file() and not item.name.startswith("."))
 
     def is_folder(self, path: Path) -> bool:
         """Whether ``path`` is (or, in a stored plan, was) a folder."""
         if self._stored is not None:
-            return str(path) not in self._stored and any(Path(key).parent == path for key in self._stored)
+            key = self._key(path)
+            return key not in self._stored and any(Path(name).parent == Path(key) for name in self._stored)
         return path.is_dir()
+
+    def _key(self, path: Path) -> str:
+        return Path(os.path.relpath(path, self._base)).as_posix()

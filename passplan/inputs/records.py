@@ -54,8 +54,8 @@ Instant = Annotated[datetime, BeforeValidator(_zoned)]
 Names = Annotated[tuple[str, ...], BeforeValidator(_listed)]
 Polarisations = Annotated[tuple[Polarisation, ...], BeforeValidator(_listed)]
 MaskPoints = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_mask_points)]
-# A name goes into file names, identifiers and tables: no separators, no control or invisible characters.
-Name = Annotated[str, Field(min_length=1, max_length=40, pattern=r"^[\w][\w .+\-]*$")]
+# A name goes into file names, identifiers (joined by dots) and tables: no dots, slashes or invisible characters.
+Name = Annotated[str, Field(min_length=1, max_length=40, pattern=r"^\w[\w \-]*$")]
 
 
 def datetime64(instant: datetime) -> np.datetime64:

@@ -101,7 +101,7 @@ def unique(
     found: dict[str, Any] = {}
     places: dict[str, str] = {}
     for (file, where, _), item in records:
-        key = item.name.casefold()
+        key = item.name.casefold().replace(" ", "_")
         if key in places:
             findings.problem(file, f"{where}.name", item.name, f"this {what} name is already used at {places[key]}; rename one")
             continue
@@ -151,7 +151,7 @@ def _plain(error: Any) -> str:
         "less_than": "must be below {lt}",
         "less_than_equal": "must be at most {le}",
         "literal_error": "write one of {expected}",
-        "string_pattern_mismatch": "use letters, digits, space, '.', '_', '+' and '-', starting with a letter or digit",
+        "string_pattern_mismatch": "use letters, digits, spaces, '_' and '-', starting with a letter or digit",
         "float_parsing": "write a number",
         "float_type": "write a number",
         "int_parsing": "write a whole number",

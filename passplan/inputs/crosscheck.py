@@ -1,0 +1,100 @@
+"""Checks between records: every name that is used exists, and every radio has an antenna that can serve it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from pathlib import Path
+
+from passplan.inputs.calendar_records import Request
+from passplan.inputs.errors import Findings, nearest
+from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
+from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
+from passplan.inputs.matching import matching_loss_db
+from passplan.inputs.modcods import ModcodTable
+from passplan.inputs.tables import Placed
+
+Radios = Mapping[str, DownlinkRadio | CommandRadio]
+
+
+def check_fleet(
+    spacecraft: Mapping[str, Spacecraft], radios: Radios, tables: Mapping[str, ModcodTable], file: Path,
+    findings: Findings,
+) -> None:
+    """Radios that spacecraft name, modcods that radios name, and catalogue numbers used twice."""
+    seen: dict[int, str] = {}
+    for item in spacecraft.values():
+        place = f"spacecraft {item.name}"
+        _known(item.radios, radios, file, f"{place}: radios", findings)
+        for direction in ("downlink", "command"):
+            chosen = [name for name in item.radios if name in radios and radios[name].direction == direction]
+            if len(chosen) > 1 and direction == "command":
+                findings.problem(file, f"{place}: radios", chosen, "more than one command radio; name one")
+        number = item.catalogue_number
+        if number is not None and seen.setdefault(number, item.name) != item.name:
+            findings.problem(file, f"{place}: catalogue_number", number, f"{seen[number]} has this number too; correct one")
+    for radio in radios.values():
+        if isinstance(radio, DownlinkRadio) and radio.modcod_table in tables:
+            known = [row.name for row in tables[radio.modcod_table].rows]
+            _known(radio.modcods, known, file, f"radio {radio.name}: modcods", findings)
+
+
+def check_ground(
+    antennas: Mapping[str, Antenna], sites: Mapping[str, Site], receivers: Mapping[str, Receiver],
+    transmitters: Mapping[str, Transmitter], file: Path, findings: Findings,
+) -> None:
+    """Sites and chains that antennas name, and antennas that have no chain at all."""
+    for item in antennas.values():
+        place = f"antenna {item.name}"
+        _known((item.site,), sites, file, f"{place}: site", findings)
+        _known(item.receivers, receivers, file, f"{place}: receivers", findings)
+        _known(item.transmitters, transmitters, file, f"{place}: transmitters", findings)
+        if not item.receivers and not item.transmitters:
+            findings.problem(file, place, None, "has neither receivers nor transmitters; name at least one")
+
+
+def check_matches(
+    spacecraft: Mapping[str, Spacecraft], radios: Radios, antennas: Mapping[str, Antenna],
+    receivers: Mapping[str, Receiver], transmitters: Mapping[str, Transmitter], file: Path, findings: Findings,
+) -> None:
+    """A radio aboard that no antenna can serve is a fault; a radio that no spacecraft carries is worth a warning."""
+    chains: dict[str, Receiver | Transmitter] = {**{f"r:{k}": v for k, v in receivers.items()},
+                                                 **{f"t:{k}": v for k, v in transmitters.items()}}
+    fitted = {f"r:{name}" for a in antennas.values() for name in a.receivers}
+    fitted |= {f"t:{name}" for a in antennas.values() for name in a.transmitters}
+    carried: dict[str, list[str]] = {}
+    for item in spacecraft.values():
+        for name in item.radios:
+            carried.setdefault(name, []).append(item.name)
+    for name, radio in radios.items():
+        if name not in carried:
+            findings.warn(f"{file}: radio {name} is carried by no spacecraft")
+        elif antennas and not any(matching_loss_db(radio, chains[key]) is not None for key in fitted if key in chains):
+            verb = "receive" if radio.direction == "downlink" else "command"
+            owners = ", ".join(carried[name][:3]) + (", ..." if len(carried[name]) > 3 else "")
+            findings.problem(
+                file, f"radio {name}: frequency_mhz", radio.frequency_mhz,
+                f"no antenna can {verb} it ({radio.polarisation}, aboard {owners}); "
+                f"correct the band, or fit an antenna with a matching chain",
+            )
+
+
+def check_requests(
+    requests: Iterable[tuple[Placed, Request]], spacecraft: Mapping[str, Spacecraft],
+    antennas: Mapping[str, Antenna], sites: Mapping[str, Site], findings: Findings,
+) -> None:
+    """Spacecraft, antennas and sites that requests name."""
+    for (file, where, _), item in requests:
+        place = f"{where} ({item.name})"
+        if spacecraft:
+            _known((item.spacecraft,), spacecraft, file, f"{place}.spacecraft", findings)
+        if item.antenna is not None and antennas:
+            _known((item.antenna,), antennas, file, f"{place}.antenna", findings)
+        if item.site is not None and sites:
+            _known((item.site,), sites, file, f"{place}.site", findings)
+
+
+def _known(names: Iterable[str], known: Iterable[str], file: str | Path, where: str, findings: Findings) -> None:
+    known = list(known)
+    for name in names:
+        if name not in known:
+            findings.problem(file, where, name, f"not defined; {nearest(name, known)}")

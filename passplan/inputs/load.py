@@ -1,0 +1,191 @@
+"""Reads a run: config, fleet, ground, calendars, requests, policy and orbits, with every fault reported at once."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import datetime, timedelta
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from pydantic import TypeAdapter
+
+from passplan.inputs.calendar_records import Closure, Request
+from passplan.inputs.closures import ClosureSource, read_closures
+from passplan.inputs.config import RunConfig, read_config
+from passplan.inputs.crosscheck import check_fleet, check_ground, check_matches, check_requests
+from passplan.inputs.elements.resolve import ElementsError, resolve_orbits
+from passplan.inputs.errors import Findings
+from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Radio, Spacecraft
+from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
+from passplan.inputs.modcods import ModcodTable, builtin_names, builtin_table, read_modcod_table
+from passplan.inputs.policy import Policy
+from passplan.inputs.reader import Reader
+from passplan.inputs.records import datetime64
+from passplan.inputs.run import Run
+from passplan.inputs.tables import checked, placed_records, read_toml, reject_unknown, unique
+
+_RADIO: TypeAdapter[DownlinkRadio | CommandRadio] = TypeAdapter(Radio)
+
+
+@dataclass(frozen=True)
+class _Fleet:
+    spacecraft: dict[str, Spacecraft]
+    radios: dict[str, DownlinkRadio | CommandRadio]
+    tables: dict[str, ModcodTable]
+
+
+@dataclass(frozen=True)
+class _Ground:
+    sites: dict[str, Site]
+    antennas: dict[str, Antenna]
+    receivers: dict[str, Receiver]
+    transmitters: dict[str, Transmitter]
+
+
+def load_run(
+    config: str | Path,
+    *,
+    start: datetime | None = None,
+    policy: Mapping[str, Any] | None = None,
+    stored: Mapping[str, Path] | None = None,
+) -> Run:
+    """Read and check everything that ``config`` names.
+
+    ``start`` (zoned) replaces the config's start; ``policy`` replaces single keys of its policy;
+    ``stored`` maps the inputs' paths to the copies that a plan directory carries. Raises
+    :class:`~passplan.inputs.errors.InputError` with every fault found, and
+    :class:`~passplan.inputs.elements.resolve.ElementsError` where the policy refuses to go on without
+    usable orbits.
+    """
+    path = Path(config)
+    reader, findings = Reader(path.parent, stored), Findings()
+    settings = read_config(path, reader, findings)
+    if settings is None:
+        findings.raise_if_any()
+        raise AssertionError("a config that cannot be read notes a problem")  # pragma: no cover
+    start_utc, end_utc = _horizon(settings, start, path, findings)
+    rules = _read_policy(settings, policy or {}, path, reader, findings)
+    fleet = _read_fleet(path.parent / settings.fleet, reader, findings)
+    ground = _read_ground(path.parent / settings.ground, reader, findings)
+    requests = _read_requests(settings, path, fleet, ground, reader, findings)
+    check_matches(fleet.spacecraft, fleet.radios, ground.antennas, ground.receivers, ground.transmitters,
+                  path.parent / settings.fleet, findings)
+    closures: tuple[Closure, ...] = ()
+    if ground.antennas:
+        sources = [ClosureSource(path.parent / c.file, c.antenna, c.site) for c in settings.closures]
+        closures = read_closures(sources, ground.antennas, start_utc, end_utc, reader, findings)
+    try:
+        orbits = resolve_orbits(
+            fleet.spacecraft, [path.parent / item for item in settings.elements], (path.parent / settings.fleet).parent,
+            start_utc, end_utc, rules, reader, findings,
+        )
+    except ElementsError:
+        findings.raise_if_any()  # a fault in the files explains more than the orbits that went missing with it
+        raise
+    findings.raise_if_any()
+    return Run(
+        name=settings.name, start_utc=start_utc, end_utc=end_utc, spacecraft=fleet.spacecraft, radios=fleet.radios,
+        sites=ground.sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
+        modcod_tables=fleet.tables, closures=closures, requests=tuple(requests.values()), policy=rules,
+        orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
+        warnings=tuple(findings.warnings), files=reader.files,
+    )
+
+
+def _horizon(
+    settings: RunConfig, start: datetime | None, path: Path, findings: Findings
+) -> tuple[np.datetime64, np.datetime64]:
+    begin = start or settings.start
+    if begin is None:
+        findings.problem(path, "start", None, "missing; add start = 2027-03-09T00:00:00Z, or pass --start")
+        findings.raise_if_any()
+    assert begin is not None
+    # A start given on the command line moves the whole horizon, so an end in the config keeps its distance.
+    if settings.end is not None:
+        end = begin + (settings.end - settings.start) if settings.start is not None else settings.end
+    else:
+        end = begin + timedelta(seconds=round((settings.hours or 24.0) * 3600.0))
+    if end <= begin:
+        findings.problem(path, "end", None, "end is not after start; the horizon must have a length")
+    return datetime64(begin), datetime64(end)
+
+
+def _read_policy(
+    settings: RunConfig, changes: Mapping[str, Any], path: Path, reader: Reader, findings: Findings
+) -> Policy:
+    where, written = path, settings.policy
+    if isinstance(written, str):
+        where = path.parent / written
+        written = read_toml(where, reader, findings, "policy") or {}
+        prefix = ""
+    else:
+        prefix = "policy"
+    return checked(Policy, {**written, **changes}, where, prefix, findings) or Policy()
+
+
+def _read_fleet(path: Path, reader: Reader, findings: Findings) -> _Fleet:
+    document = read_toml(path, reader, findings, "fleet")
+    if document is None:
+        return _Fleet({}, {}, {})
+    reject_unknown(document, ("operator", "radio", "spacecraft"), path, findings)
+    radios = _records(document, "radio", _RADIO, path, reader, findings)
+    spacecraft = _records(document, "spacecraft", Spacecraft, path, reader, findings)
+    if not document.get("spacecraft"):
+        findings.problem(path, "spacecraft", None, "the fleet is empty; add at least one [[spacecraft]]")
+    tables: dict[str, ModcodTable] = {}
+    for radio in radios.values():
+        if isinstance(radio, DownlinkRadio) and radio.modcod_table not in tables:
+            named = radio.modcod_table
+            table = (builtin_table(named) if named in builtin_names()
+                     else read_modcod_table(path.parent / named, reader, findings))
+            if table is not None:
+                tables[named] = table
+    check_fleet(spacecraft, radios, tables, path, findings)
+    return _Fleet(spacecraft, radios, tables)
+
+
+def _read_ground(path: Path, reader: Reader, findings: Findings) -> _Ground:
+    document = read_toml(path, reader, findings, "ground")
+    if document is None:
+        return _Ground({}, {}, {}, {})
+    reject_unknown(document, ("operator", "site", "receiver", "transmitter", "antenna"), path, findings)
+    ground = _Ground(
+        sites=_records(document, "site", Site, path, reader, findings),
+        receivers=_records(document, "receiver", Receiver, path, reader, findings),
+        transmitters=_records(document, "transmitter", Transmitter, path, reader, findings),
+        antennas=_records(document, "antenna", Antenna, path, reader, findings),
+    )
+    if not document.get("antenna"):
+        findings.problem(path, "antenna", None, "the ground has no antenna; add at least one [[antenna]]")
+    check_ground(ground.antennas, ground.sites, ground.receivers, ground.transmitters, path, findings)
+    return ground
+
+
+def _read_requests(
+    settings: RunConfig, path: Path, fleet: _Fleet, ground: _Ground, reader: Reader, findings: Findings
+) -> dict[str, Request]:
+    placed = []
+    for name in settings.requests:
+        file = path.parent / name
+        if file.suffix.lower() == ".csv":
+            placed += placed_records({"request": file.name}, "request", file, reader, findings)
+            continue
+        document = read_toml(file, reader, findings, "requests")
+        if document is not None:
+            reject_unknown(document, ("request",), file, findings)
+            placed += placed_records(document, "request", file, reader, findings)
+    requests = [(place, checked(Request, place[2], place[0], place[1], findings)) for place in placed]
+    sound = [(place, request) for place, request in requests if request is not None]
+    check_requests(sound, fleet.spacecraft, ground.antennas, ground.sites, findings)
+    return unique(sound, "request", findings)
+
+
+def _records(
+    document: dict[str, Any], key: str, model: Any, path: Path, reader: Reader, findings: Findings
+) -> dict[str, Any]:
+    """Checked records by name, from TOML tables or the CSV file that the key names."""
+    placed = placed_records(document, key, path, reader, findings)
+    items = [(place, checked(model, place[2], place[0], place[1], findings)) for place in placed]
+    return unique([(place, item) for place, item in items if item is not None], key, findings)
