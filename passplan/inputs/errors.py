@@ -41,11 +41,14 @@ class Findings:
     def __init__(self) -> None:
         self.problems: list[Problem] = []
         self.warnings: list[str] = []
+        # A file of junk gives a fault per line, so looking for repeats must not take ever longer.
+        self._lines_noted: set[str] = set()
 
     def problem(self, file: str | Path, where: str, value: object, remedy: str) -> None:
         """Note a fault; reading goes on, and :meth:`raise_if_any` reports it with the others."""
         found = Problem(str(file), where, value, remedy)
-        if found not in self.problems:
+        if str(found) not in self._lines_noted:
+            self._lines_noted.add(str(found))
             self.problems.append(found)
 
     def warn(self, message: str) -> None:

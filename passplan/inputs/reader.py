@@ -47,27 +47,19 @@ class Reader:
         key = self._key(path)
         if key in self._files:
             return self._files[key].content
-        actual = path
-        if self._stored is not None:
-            if key not in self._stored:
-                findings.problem(path, where, None, "the plan directory does not carry this file; plan again")
-                return None
-            actual = self._stored[key]
-        try:
-            if actual.is_dir():
-                findings.problem(path, where, None, "this is a folder; name a file")
-                return None
-            if actual.stat().st_size > _MAX_BYTES:
-                findings.problem(path, where, None, "the file is larger than 512 MiB; split it")
-                return None
-            content = actual.read_bytes()
-        except FileNotFoundError:
-            findings.problem(path, where, None, "no such file; correct the path (paths are relative to the config)")
-            return None
-        except OSError as fault:
-            findings.problem(path, where, None, f"cannot be read ({fault.strerror}); check its permissions")
-            return None
-        self._files[key] = ReadFile(key, content)
+        actual = path if self._stored is None else self._stored.get(key)
+        content = None
+        if actual is None:
+            findings.problem(path, where, None, "the plan directory does not carry this file; plan again")
+        else:
+            try:
+                content = self._content(actual, path, where, findings)
+            except FileNotFoundError:
+                findings.problem(path, where, None, "no such file; correct the path (it is relative to the config)")
+            except OSError as fault:
+                findings.problem(path, where, None, f"cannot be read ({fault.strerror}); check its permissions")
+        if content is not None:
+            self._files[key] = ReadFile(key, content)
         return content
 
     def text(self, path: Path, findings: Findings, where: str = "") -> str | None:
@@ -94,6 +86,16 @@ class Reader:
             key = self._key(path)
             return key not in self._stored and any(Path(name).parent == Path(key) for name in self._stored)
         return path.is_dir()
+
+    @staticmethod
+    def _content(actual: Path, path: Path, where: str, findings: Findings) -> bytes | None:
+        if actual.is_dir():
+            findings.problem(path, where, None, "this is a folder; name a file")
+            return None
+        if actual.stat().st_size > _MAX_BYTES:
+            findings.problem(path, where, None, "the file is larger than 512 MiB; split it")
+            return None
+        return actual.read_bytes()
 
     def _key(self, path: Path) -> str:
         return Path(os.path.relpath(path, self._base)).as_posix()

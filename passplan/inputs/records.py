@@ -18,7 +18,8 @@ class Record(BaseModel):
     model_config = ConfigDict(extra="forbid", frozen=True, allow_inf_nan=False, str_strip_whitespace=True)
 
 
-def _zoned(value: Any) -> datetime:
+def parse_instant(value: Any) -> datetime:
+    """An instant in UTC from text or a datetime; raises ValueError where the zone or the form is missing."""
     if isinstance(value, str):
         try:
             value = datetime.fromisoformat(value.strip())
@@ -50,7 +51,7 @@ def _mask_points(value: Any) -> Any:
     return value
 
 
-Instant = Annotated[datetime, BeforeValidator(_zoned)]
+Instant = Annotated[datetime, BeforeValidator(parse_instant)]
 Names = Annotated[tuple[str, ...], BeforeValidator(_listed)]
 Polarisations = Annotated[tuple[Polarisation, ...], BeforeValidator(_listed)]
 MaskPoints = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_mask_points)]

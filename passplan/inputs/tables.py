@@ -44,8 +44,8 @@ def read_csv_records(path: Path, reader: Reader, findings: Findings) -> list[tup
     records: list[tuple[str, dict[str, str]]] = []
     header: list[str] = []
     try:
-        for cells in rows:
-            cells = [cell.strip() for cell in cells]
+        for row in rows:
+            cells = [cell.strip() for cell in row]
             if not any(cells):
                 continue
             if not header:
@@ -55,7 +55,8 @@ def read_csv_records(path: Path, reader: Reader, findings: Findings) -> list[tup
                 continue
             where = f"row {rows.line_num}"
             if len(cells) != len(header):
-                findings.problem(path, where, None, f"has {len(cells)} cells, the header {len(header)}; make them agree")
+                remedy = f"has {len(cells)} cells, the header {len(header)}; make them agree"
+                findings.problem(path, where, None, remedy)
                 continue
             records.append((where, {key: cell for key, cell in zip(header, cells, strict=True) if cell}))
     except csv.Error as fault:
@@ -103,7 +104,8 @@ def unique(
     for (file, where, _), item in records:
         key = item.name.casefold().replace(" ", "_")
         if key in places:
-            findings.problem(file, f"{where}.name", item.name, f"this {what} name is already used at {places[key]}; rename one")
+            remedy = f"this {what} name is already used at {places[key]}; rename one"
+            findings.problem(file, f"{where}.name", item.name, remedy)
             continue
         places[key] = where
         found[item.name] = item

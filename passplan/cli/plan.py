@@ -1,0 +1,43 @@
+"""``passplan plan``: the main job."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated, Any
+
+import typer
+
+from passplan.cli.faults import end_with_warnings, reports_faults
+from passplan.cli.terminal import StartOption, StrictOption, instant, progress, stdout
+from passplan.inputs.load import load_run
+from passplan.planning.steps import plan_run
+from passplan.report.directory import check_free, write_plan
+from passplan.report.terminal import print_plan
+
+
+@reports_faults
+def command(
+    config: Annotated[Path, typer.Argument(help="The run config (TOML).", show_default=False)],
+    out: Annotated[Path, typer.Option("--out", help="The plan directory to write; it appears whole or not at all.")],
+    start: StartOption = None,
+    gap: Annotated[float | None, typer.Option("--gap", help="Stop at this gap, in place of the policy's (0.01 = 1 %).")] = None,
+    time_limit_s: Annotated[float | None, typer.Option("--seconds", help="Time limit of the search, in place of the policy's.")] = None,
+    full: Annotated[bool, typer.Option("--full", help="Print every contact.")] = False,
+    quiet: Annotated[bool, typer.Option("--quiet", help="Print no report.")] = False,
+    replace: Annotated[bool, typer.Option("--replace", help="Replace a plan that is already at --out.")] = False,
+    strict: StrictOption = False,
+) -> None:
+    """Plan the contacts of the horizon, audit the plan, report it, and write it to a directory as a draft."""
+    check_free(out, replace=replace)
+    changes: dict[str, Any] = {"gap": gap, "time_limit_s": time_limit_s}
+    run = load_run(
+        config, start=instant(start, "--start"), policy={k: v for k, v in changes.items() if v is not None}
+    )
+    with progress(quiet) as report:
+        record = plan_run(run, report)
+    write_plan(record, out, replace=replace)
+    if not quiet:
+        console = stdout()
+        print_plan(record, console, rows=None if full else 40)
+        console.print(f"\nPlan written to {out}", style="bold")
+    end_with_warnings(bool(record.summary["warnings"] or record.summary["shortfalls"]), strict)

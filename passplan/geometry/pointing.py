@@ -1,0 +1,108 @@
+"""Where to point: azimuth, elevation, range and range rate, at given times and along windows."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from passplan.geometry.stations import Stations, stations
+from passplan.geometry.timescale import Floats, utc_seconds
+from passplan.geometry.trajectory import states_itrf
+from passplan.inputs.ground import Site
+from passplan.inputs.run import OrbitSource
+
+
+@dataclass(frozen=True)
+class LookAngles:
+    """Pointing at n times; NaN where the orbit source has no answer.
+
+    Azimuth is from true north through east, in [0, 360); elevation is geometric (no refraction, no
+    light time) above the horizontal plane of the WGS 84 ellipsoid; the range rate is positive when receding.
+    """
+
+    azimuth_deg: Floats
+    elevation_deg: Floats
+    range_km: Floats
+    range_rate_km_s: Floats
+
+
+@dataclass(frozen=True)
+class Samples:
+    """Pointing along windows, flat: window i owns the elements from ``offsets[i]`` to before ``offsets[i + 1]``.
+
+    ``time_s`` counts from the horizon's start. The first and last samples of a window are at AOS and LOS.
+    """
+
+    time_s: Floats
+    azimuth_deg: Floats
+    elevation_deg: Floats
+    range_km: Floats
+    range_rate_km_s: Floats
+    offsets: NDArray[np.int64]
+
+
+def look_angles(source: OrbitSource, site: Site, times_utc: NDArray[np.datetime64]) -> LookAngles:
+    """Azimuth, elevation (deg), range (km) and range rate (km/s) from ``site`` at ``times_utc`` (n,)."""
+    times = np.atleast_1d(utc_seconds(np.asarray(times_utc)))
+    positions, velocities = states_itrf(source, times)
+    here = stations([site]).subset(np.zeros(times.size, np.int64))
+    return look(positions, velocities, here)
+
+
+def look(positions_km: Floats, velocities_km_s: Floats, here: Stations) -> LookAngles:
+    """Pointing to Earth-fixed states (n, 3) from ``here``, n stations."""
+    line = positions_km - here.positions_km
+    east = np.einsum("ij,ij->i", here.east, line)
+    north = np.einsum("ij,ij->i", here.north, line)
+    up = np.einsum("ij,ij->i", here.up, line)
+    distance = np.sqrt(np.einsum("ij,ij->i", line, line))
+    rate = np.einsum("ij,ij->i", velocities_km_s, line) / distance
+    # arctan2 keeps full precision near the zenith, where arcsin does not.
+    elevation = np.degrees(np.arctan2(up, np.hypot(east, north)))
+    return LookAngles(azimuth_of(east, north), elevation, distance, rate)
+
+
+def azimuth_of(east: Floats, north: Floats) -> Floats:
+    """Azimuth in [0, 360) deg."""
+    azimuth = np.degrees(np.arctan2(east, north)) % 360.0
+    return np.where(azimuth >= 360.0, 0.0, azimuth)
+
+
+def sample_windows(
+    windows: pd.DataFrame,
+    orbits: Mapping[str, OrbitSource],
+    sites: Mapping[str, Site],
+    start_utc: np.datetime64,
+    step_s: float = 10.0,
+) -> Samples:
+    """Pointing along every row of ``windows``, in its order: at AOS, every ``step_s`` from there, and at LOS."""
+    origin = float(utc_seconds(start_utc))
+    aos = utc_seconds(windows["aos_utc"].to_numpy()) - origin
+    los = utc_seconds(windows["los_utc"].to_numpy()) - origin
+    # LOS replaces a step that would fall on it or within a millisecond before it.
+    between = np.maximum(np.ceil((los - aos - 1e-3) / step_s).astype(np.int64), 1)
+    offsets = np.concatenate([[0], np.cumsum(between + 1)]).astype(np.int64)
+    row = np.repeat(np.arange(aos.size), between + 1)
+    number = np.arange(row.size) - offsets[row]
+    time = aos[row] + number * step_s
+    time[offsets[1:] - 1] = los
+    columns = [np.empty(row.size) for _ in range(4)]
+    places = stations(list(sites.values()))
+    site_index = pd.Index(list(sites)).get_indexer(pd.Index(windows["site"]))
+    names = windows["spacecraft"].to_numpy()
+    codes, known = pd.factorize(names)
+    order = np.argsort(codes[row], kind="stable")
+    edges = np.searchsorted(codes[row][order], np.arange(len(known) + 1))
+    for code, name in enumerate(known):
+        pick = order[edges[code] : edges[code + 1]]
+        positions, velocities = states_itrf(orbits[str(name)], time[pick] + origin)
+        found = look(positions, velocities, places.subset(site_index[row[pick]]))
+        for column, values in zip(
+            columns, (found.azimuth_deg, found.elevation_deg, found.range_km, found.range_rate_km_s), strict=True
+        ):
+            column[pick] = values
+    return Samples(time, *columns, offsets)

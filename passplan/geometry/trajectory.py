@@ -1,0 +1,112 @@
+"""One door to the states of any orbit source, and to its samples on even grids for the search."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from passplan.geometry.oem_states import ephemeris_itrf, segment_itrf, segment_span
+from passplan.geometry.regimes import Regime, regime_of
+from passplan.geometry.sgp4_states import sgp4_itrf, sgp4_span, sgp4_teme_many
+from passplan.geometry.timescale import Floats, sidereal_angle_rad, utc_seconds
+from passplan.inputs.elements.model import ElementSet
+from passplan.inputs.ephemeris import Ephemeris
+from passplan.inputs.run import OrbitSource
+
+# Samples per block and antenna set: small enough that the work arrays stay in the processor's cache.
+_BLOCK_SAMPLES = 400_000
+# Sources with edges (decay, ephemeris spans) are sampled this finely, so that stencils may lean to one side.
+_EDGE_STEP_S = 30.0
+_EDGE_POINTS = 25
+_EPHEMERIS_REACH_S = 2.5 * 86_400.0
+
+
+@dataclass(frozen=True)
+class Block:
+    """Earth-fixed positions (3, objects, times) in km on the even grid ``start_s + k step_s``.
+
+    ``objects`` are indices into the list of spacecraft. Nothing is known of an object outside its grid.
+    """
+
+    objects: NDArray[np.int64]
+    start_s: float
+    step_s: float
+    positions_km: Floats
+
+
+def states_itrf(source: OrbitSource, utc_s: Floats) -> tuple[Floats, Floats]:
+    """Earth-fixed position (n, 3) in km and velocity (n, 3) in km/s of any source at ``utc_s`` (n,).
+
+    NaN where SGP4 fails and outside an ephemeris' usable span.
+    """
+    if isinstance(source, Ephemeris):
+        return ephemeris_itrf(source, np.asarray(utc_s, float))
+    return sgp4_itrf(source.satrec, np.asarray(utc_s, float))
+
+
+def blocks(orbits: Mapping[str, OrbitSource], start_s: float, end_s: float, antennas: int) -> Iterator[Block]:
+    """All objects on grids that cover the horizon and its reach; whatever fails or ends early apart."""
+    groups: dict[Regime, list[tuple[int, ElementSet]]] = {}
+    for index, source in enumerate(orbits.values()):
+        if isinstance(source, Ephemeris):
+            yield from _ephemeris_blocks(index, source, start_s, end_s)
+        else:
+            groups.setdefault(regime_of(source.satrec), []).append((index, source))
+    for kind, members in groups.items():
+        yield from _element_blocks(kind, members, start_s, end_s, antennas)
+
+
+def _element_blocks(
+    kind: Regime, members: Sequence[tuple[int, ElementSet]], start_s: float, end_s: float, antennas: int
+) -> Iterator[Block]:
+    step = kind.step_s
+    # Multiples of the step, so that a shifted horizon sees the same samples and gives the same instants.
+    times = step * np.arange(np.floor((start_s - kind.reach_s) / step), np.ceil((end_s + kind.reach_s) / step) + 1)
+    angle = sidereal_angle_rad(times)
+    cosine, sine = np.cos(angle), np.sin(angle)
+    share = max(1, _BLOCK_SAMPLES // (times.size * max(antennas, 1)))
+    for at in range(0, len(members), share):
+        part = members[at : at + share]
+        teme, failed = sgp4_teme_many([source.satrec for _, source in part], times)
+        whole = ~failed.any(axis=1)
+        fixed = np.empty((3, int(whole.sum()), times.size))
+        if not whole.all():
+            teme_whole = teme[whole]
+        else:
+            teme_whole = teme
+        np.multiply(teme_whole[:, :, 0], cosine, out=fixed[0])
+        fixed[0] += teme_whole[:, :, 1] * sine
+        np.multiply(teme_whole[:, :, 1], cosine, out=fixed[1])
+        fixed[1] -= teme_whole[:, :, 0] * sine
+        fixed[2] = teme_whole[:, :, 2]
+        if fixed.shape[1]:
+            yield Block(np.array([i for (i, _), good in zip(part, whole, strict=True) if good]), times[0], step, fixed)
+        for (index, source), good in zip(part, whole, strict=True):
+            if not good:
+                yield from _failing_block(index, source, times[0], times[-1])
+
+
+def _failing_block(index: int, source: ElementSet, start_s: float, end_s: float) -> Iterator[Block]:
+    """The part of an object's life that SGP4 reaches, on a fine grid that ends at the failure itself."""
+    epoch_s = float(utc_seconds(source.epoch_utc))
+    low, high = sgp4_span(source.satrec, epoch_s, start_s, end_s)
+    if high - low >= 1.0:
+        grid = _edge_grid(low, high)
+        yield Block(np.array([index]), low, grid[1] - grid[0], sgp4_itrf(source.satrec, grid)[0].T[:, None, :])
+
+
+def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: float) -> Iterator[Block]:
+    for segment in source.segments:
+        first, last = segment_span(segment)
+        low, high = max(first, start_s - _EPHEMERIS_REACH_S), min(last, end_s + _EPHEMERIS_REACH_S)
+        if high - low >= 1.0:
+            grid = _edge_grid(low, high)
+            positions = segment_itrf(segment, np.clip(grid, low, high))[0]
+            yield Block(np.array([index]), low, grid[1] - grid[0], np.ascontiguousarray(positions.T)[:, None, :])
+
+
+def _edge_grid(low: float, high: float) -> Floats:
+    return np.linspace(low, high, max(_EDGE_POINTS, int(np.ceil((high - low) / _EDGE_STEP_S)) + 1))

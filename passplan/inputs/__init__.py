@@ -1,0 +1,1 @@
+"""Floor 1: what the user writes, read and checked."""

@@ -1,0 +1,166 @@
+"""Attenuation by oxygen and water vapour on a slant path (ITU-R P.676-12, Annex 2).
+
+The zenith attenuations come once per site and frequency from the propagation package and are cached;
+their growth towards the horizon is a formula here:
+
+    elevation    90 ........ 5 ..... 3 ..... 0 .... -5 deg
+    law          zenith / sin(el)  | curved layer | as at 0
+                 in range | beyond the stated range of Annex 2
+
+Between 3 and 5 deg the plane-layer law is kept although Annex 2 states it from 5 deg on: it errs on the
+safe side there (at 3 deg and 8.2 GHz by 12 % against the layer-by-layer sum of Annex 1). Below 3 deg it
+would run away to infinity, so the curved-layer form of P.676-11 takes over, scaled to join without a step.
+"""
+
+from __future__ import annotations
+
+import warnings
+from collections.abc import Iterable
+from dataclasses import astuple, dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from passplan.inputs.ground import Site
+from passplan.link.budget import Floats
+from passplan.link.gas_cache import Row, load_rows, save_rows
+
+LOWEST_STATED_ELEVATION_DEG = 5.0
+"""Below this, P.676-12 Annex 2 does not state its own validity; a budget should say so."""
+
+_LOWEST_FREQUENCY_GHZ = 1.0
+_PLANE_LAYER_FROM_DEG = 3.0
+# Effective Earth radius for radio paths in P.676-11, Annex 2, section 2.2.2.
+_EARTH_RADIUS_KM = 8_500.0
+
+
+Quantity = float | Floats
+
+
+@dataclass(frozen=True)
+class ZenithGas:
+    """Zenith attenuations [dB] of oxygen and water vapour, and their equivalent heights [km].
+
+    Numbers for one site and frequency, or arrays with one entry per sample.
+    """
+
+    oxygen_db: Quantity
+    vapour_db: Quantity
+    oxygen_height_km: Quantity
+    vapour_height_km: Quantity
+
+
+@dataclass(frozen=True)
+class Weather:
+    """Air at the site: pressure [hPa], temperature [K] and water vapour density [g/m3] at the surface.
+
+    Where the water vapour integrated up to the zenith [kg/m2] was measured or taken from a map, it gives
+    the better vapour attenuation; the height above sea level [km] counts only together with it.
+    """
+
+    pressure_hpa: float
+    temperature_k: float
+    water_vapour_g_per_m3: float
+    vapour_column_kg_per_m2: float | None = None
+    height_km: float = 0.0
+
+
+def surface_weather(site: Site) -> Weather:
+    """The site's own figures, and where it states none the mean annual reference atmosphere at its height.
+
+    Source: ITU-R P.835-6, section 1, troposphere up to 11 km of geopotential height: T = 288.15 - 6.5 h,
+    P = 1013.25 (288.15 / T)^(-34.1632 / 6.5), water vapour 7.5 exp(-h / 2 km).
+    """
+    height_km = site.height_m / 1_000.0
+    geopotential_km = 6356.766 * height_km / (6356.766 + height_km)
+    temperature_k = 288.15 - 6.5 * geopotential_km
+    pressure_hpa = 1013.25 * (288.15 / temperature_k) ** (-34.1632 / 6.5)
+    vapour = 7.5 * float(np.exp(-height_km / 2.0))
+    return Weather(
+        pressure_hpa if site.pressure_hpa is None else site.pressure_hpa,
+        temperature_k if site.temperature_k is None else site.temperature_k,
+        vapour if site.water_vapour_g_per_m3 is None else site.water_vapour_g_per_m3,
+    )
+
+
+def zenith_gas(frequency_mhz: float, weather: Weather) -> Row:
+    """The figures of :class:`ZenithGas`, straight from the propagation package (slow to import: seconds).
+
+    Source: ITU-R P.676-12, Annex 2, through ``itur``: specific attenuation summed over the lines of
+    Annex 1, times the equivalent heights of section 2.2; with a known vapour column, the vapour term of
+    section 2.3 instead. Stated for 1 to 350 GHz; below 1 GHz the figure at 1 GHz is taken, which is more
+    than the truth by a few hundredths of a dB at zenith. A term that a fit brings below zero counts as none.
+    """
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore")
+        from itur.models import itu676
+
+        frequency_ghz = max(frequency_mhz / 1_000.0, _LOWEST_FREQUENCY_GHZ)
+        surface = (weather.pressure_hpa, weather.water_vapour_g_per_m3, weather.temperature_k)
+        heights = itu676.slant_inclined_path_equivalent_height(frequency_ghz, *surface)
+        dry_km, wet_km = (float(height.value) for height in heights)
+        dry_db = float(itu676.gamma0_exact(frequency_ghz, *surface).value) * dry_km
+        wet_db = float(itu676.gammaw_exact(frequency_ghz, *surface).value) * wet_km
+        if weather.vapour_column_kg_per_m2:
+            column = (weather.vapour_column_kg_per_m2, weather.height_km)
+            # Latitude, longitude and time percentage serve only to look the column up where it is unknown.
+            found = itu676.zenit_water_vapour_attenuation(0.0, 0.0, 50.0, frequency_ghz, *column)
+            wet_db = float(np.ravel(found.value)[0])
+    return max(dry_db, 0.0), max(wet_db, 0.0), dry_km, wet_km
+
+
+def gas_tables(wanted: Iterable[tuple[Site, float]]) -> dict[tuple[str, float], ZenithGas]:
+    """Zenith attenuation of each (site, frequency in MHz), keyed by (site name, frequency).
+
+    Read from the cache where it holds them; the others are computed and the cache is brought up to date.
+    """
+    cached = load_rows()
+    fresh: dict[str, Row] = {}
+    found: dict[tuple[str, float], ZenithGas] = {}
+    for site, frequency_mhz in wanted:
+        if (site.name, frequency_mhz) in found:
+            continue
+        weather = surface_weather(site)
+        key = _key(frequency_mhz, weather)
+        row = cached.get(key) or fresh.get(key)
+        if row is None:
+            row = fresh[key] = zenith_gas(frequency_mhz, weather)
+        found[site.name, frequency_mhz] = ZenithGas(*row)
+    if fresh:
+        save_rows(cached | fresh)
+    return found
+
+
+def gas_attenuation_db(gas: ZenithGas, elevation_deg: ArrayLike) -> Floats:
+    """Slant attenuation [dB] at an elevation [deg]; the fields of ``gas`` and the elevation broadcast.
+
+    Never rises with elevation and has no step in it. Sources: the module's docstring.
+    """
+    elevation = np.asarray(elevation_deg, np.float64)
+    plane = 1.0 / np.sin(np.radians(np.maximum(elevation, _PLANE_LAYER_FROM_DEG)))
+    slant = np.asarray((gas.oxygen_db + gas.vapour_db) * plane)
+    low = elevation < _PLANE_LAYER_FROM_DEG
+    if not np.any(low):
+        return slant
+    oxygen_db = gas.oxygen_db * _growth(elevation, gas.oxygen_height_km)
+    vapour_db = gas.vapour_db * _growth(elevation, gas.vapour_height_km)
+    return np.asarray(np.where(low, oxygen_db + vapour_db, slant))
+
+
+def _growth(elevation_deg: Floats, height_km: Quantity) -> Floats:
+    """Slant over zenith attenuation of a curved layer below 3 deg, scaled to meet 1 / sin there."""
+    join = np.asarray(_PLANE_LAYER_FROM_DEG)
+    scale = _curved_layer(join, height_km) * np.sin(np.radians(join))
+    return np.asarray(_curved_layer(np.clip(elevation_deg, 0.0, _PLANE_LAYER_FROM_DEG), height_km) / scale)
+
+
+def _curved_layer(elevation_deg: Floats, height_km: Quantity) -> Floats:
+    """P.676-11, Annex 2, section 2.2.2: sqrt(Re/h) F(tan(el) sqrt(Re/h)) / cos(el)."""
+    root = np.sqrt(_EARTH_RADIUS_KM / height_km)
+    x = np.tan(np.radians(elevation_deg)) * root
+    shape = 1.0 / (0.661 * x + 0.339 * np.sqrt(x**2 + 5.51))
+    return np.asarray(root * shape / np.cos(np.radians(elevation_deg)))
+
+
+def _key(frequency_mhz: float, weather: Weather) -> str:
+    return f"{float(frequency_mhz)!r} {astuple(weather)!r}"

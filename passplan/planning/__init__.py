@@ -1,0 +1,1 @@
+"""The planning floor: from windows and links to a contact plan with a proven bound."""

@@ -1,0 +1,42 @@
+"""The time limit of one plan: everything after windows and links are known counts against it."""
+
+from __future__ import annotations
+
+import time
+from contextlib import contextmanager
+from collections.abc import Iterator
+
+
+class Clock:
+    """Counts down from ``limit_s`` and notes how long each stage took."""
+
+    def __init__(self, limit_s: float) -> None:
+        self._started = time.monotonic()
+        self._limit_s = limit_s
+        self.stopped = False
+        self.seconds: dict[str, float] = {}
+
+    def elapsed_s(self) -> float:
+        """Seconds since the clock was made."""
+        return time.monotonic() - self._started
+
+    def left_s(self) -> float:
+        """Seconds left, never negative; none once stopped."""
+        return 0.0 if self.stopped else max(0.0, self._limit_s - self.elapsed_s())
+
+    def expired(self) -> bool:
+        """Whether the time is up."""
+        return self.left_s() <= 0.0
+
+    def stop(self) -> None:
+        """End the search as soon as it looks at the clock (an interrupt, for one)."""
+        self.stopped = True
+
+    @contextmanager
+    def stage(self, name: str) -> Iterator[None]:
+        """Add the time of a block to ``seconds[name]``."""
+        began = time.monotonic()
+        try:
+            yield
+        finally:
+            self.seconds[name] = self.seconds.get(name, 0.0) + time.monotonic() - began

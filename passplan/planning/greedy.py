@@ -1,0 +1,121 @@
+"""A valid plan at once: requirements first, then whatever adds most, by exact marginal value.
+
+The marginal value of an option is the spacecraft's value with it less the value without it, by its
+storage maps, so that a contact after which little is left aboard is not counted twice. Keys are refreshed
+lazily: the best candidate is looked at again before it is taken (the "lazy greedy" of Minoux 1978; as the
+value is not quite submodular it is a heuristic here).
+"""
+
+from __future__ import annotations
+
+import heapq
+from collections.abc import Iterable
+
+import numpy as np
+
+from passplan.planning.clock import Clock
+from passplan.planning.maps import StorageMaps, storage_maps
+from passplan.planning.occupancy import Occupancy
+from passplan.planning.problem import Problem
+from passplan.planning.rules.terms import Recurrence, Terms, Wanted
+
+
+def plan_greedily(problem: Problem, terms: Terms, clock: Clock, maps: StorageMaps | None = None) -> list[int]:
+    """Options of a valid plan, sorted. Ends early, still valid, when the clock runs out."""
+    builder = _Builder(problem, terms, maps or storage_maps(problem))
+    for want in terms.wanted:
+        builder.meet(want)
+    for need in terms.recurrences:
+        builder.cover(need)
+    builder.fill(clock)
+    return sorted(builder.chosen)
+
+
+class _Builder:
+    def __init__(self, problem: Problem, terms: Terms, maps: StorageMaps) -> None:
+        self.problem, self.maps = problem, maps
+        self.occupancy = Occupancy(terms, len(problem.options))
+        self.chosen: set[int] = set()
+        self.of_craft: list[list[int]] = [[] for _ in range(len(problem.fleet))]
+        self.worth = [self._value(i, []) for i in range(len(problem.fleet))]
+        self.starts = problem.options.start_s.tolist()
+        self.crafts = problem.options.spacecraft.tolist()
+
+    def meet(self, want: Wanted) -> None:
+        """Take the best option that meets a request, if one fits and none has been taken yet."""
+        if self.chosen.isdisjoint(want.options.tolist()):
+            self._take_best(want.options.tolist())
+
+    def cover(self, need: Recurrence) -> None:
+        """Walk along the interval; at each instant not covered take the option that reaches furthest."""
+        spans = sorted(zip(need.options.tolist(), need.start_s.tolist(), need.end_s.tolist(), strict=True))
+        reached = need.from_s
+        while reached < need.until_s:
+            live = [(o, a, b) for o, a, b in spans if b + need.every_s > reached]
+            held = [b for o, a, b in live if o in self.chosen and a <= reached]
+            free = [(b, o) for o, a, b in live if a <= reached and o not in self.chosen and self.occupancy.fits(o)]
+            if held:
+                reached = max(held) + need.every_s
+            elif free:
+                furthest = max(b for b, _ in free)
+                self._take_best([o for b, o in free if b >= furthest - need.every_s // 8])
+            else:
+                later = [a for _, a, _ in live if a > reached]
+                if not later:
+                    return
+                reached = min(later)
+
+    def fill(self, clock: Clock) -> None:
+        """Add options in the order of what they add now, until none adds anything."""
+        options, problem = self.problem.options, self.problem
+        volume = np.zeros(len(options))
+        counts = np.diff(options.piece_offset)
+        np.add.at(volume, np.repeat(np.arange(len(options)), counts),
+                  options.piece_rate_mb_per_s * (options.piece_end_s - options.piece_start_s))
+        weight = problem.fleet.weight[options.spacecraft] + problem.spill_cost_per_mb
+        ceiling = volume * weight - problem.worth_per_money * options.cost
+        heap = [(-c, o) for o, c in enumerate(ceiling.tolist()) if c > 0.0]
+        heapq.heapify(heap)
+        while heap and not clock.expired():
+            _, o = heapq.heappop(heap)
+            if not self.occupancy.fits(o):
+                continue
+            gain = self._gain(o)
+            if heap and gain < -heap[0][0]:
+                if gain > 0.0:
+                    heapq.heappush(heap, (-gain, o))
+            elif gain > 0.0:
+                self._take(o)
+
+    def _take_best(self, candidates: Iterable[int]) -> None:
+        best = max(((self._gain(o), -o) for o in candidates if self.occupancy.fits(o)), default=None)
+        if best is not None:
+            self._take(-best[1])
+
+    def _take(self, option: int) -> None:
+        self.occupancy.add(option)
+        self.chosen.add(option)
+        craft = self.crafts[option]
+        self.of_craft[craft] = self._with(option)
+        self.worth[craft] = self._value(craft, self.of_craft[craft])
+
+    def _gain(self, option: int) -> float:
+        craft = self.crafts[option]
+        return self._value(craft, self._with(option)) - self.worth[craft]
+
+    def _with(self, option: int) -> list[int]:
+        return sorted([*self.of_craft[self.crafts[option]], option], key=self.starts.__getitem__)
+
+    def _value(self, craft: int, mine: list[int]) -> float:
+        problem, maps = self.problem, self.maps
+        fleet, options = problem.fleet, problem.options
+        fill, generation = float(fleet.start_fill_mb[craft]), float(fleet.generation_mb_per_s[craft])
+        capacity = float(fleet.capacity_mb[craft])
+        clock, sent, lost, cost = 0, 0.0, 0.0, 0.0
+        for o in mine:
+            fill += generation * (int(options.start_s[o]) - clock)
+            lost += max(0.0, fill - capacity)
+            fill, sent_now, lost_now = maps.apply(o, min(fill, capacity))
+            sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(options.cost[o]), int(options.end_s[o])
+        lost += max(0.0, fill + generation * (problem.horizon_s - clock) - capacity)
+        return float(fleet.weight[craft]) * sent - problem.spill_cost_per_mb * lost - problem.worth_per_money * cost

@@ -1,0 +1,199 @@
+"""From windows and their links to options: what the plan may choose from, and why a window gives none."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import pandas as pd
+
+from passplan.inputs.records import datetime64
+from passplan.inputs.run import Run
+from passplan.link.chains import chains_between
+from passplan.link.choice import CommandChoice, DownlinkChoice, WindowLink
+from passplan.planning.cuts import Cuts, neighbour_cuts, spread
+from passplan.planning.problem import Antennas, Options, Windows, build_options
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """One option with the link choices behind it."""
+
+    window: int
+    start_s: int
+    end_s: int
+    downlink: DownlinkChoice | None
+    command: CommandChoice | None
+    cost: float
+
+
+@dataclass(frozen=True, eq=False)
+class OptionSet:
+    """Options with their ``candidates`` (same order), and ``excluded``: window -> (reason, detail)."""
+
+    options: Options
+    candidates: tuple[Candidate, ...]
+    excluded: Mapping[int, tuple[str, str]]
+
+
+def window_arrays(run: Run, windows: pd.DataFrame) -> Windows:
+    """The windows table as arrays, in whole seconds from the start, rounded inward.
+
+    A window of less than a second keeps its rounded start as its end.
+    """
+    craft = {name: k for k, name in enumerate(run.spacecraft)}
+    antenna = {name: k for k, name in enumerate(run.antennas)}
+    start_s = np.ceil(seconds_of(run, windows["aos_utc"]) - 1e-9).astype(np.int64)
+    end_s = np.floor(seconds_of(run, windows["los_utc"]) + 1e-9).astype(np.int64)
+    start_s = np.clip(start_s, 0, run.horizon_s)
+    return Windows(
+        names=tuple(windows["window_id"]),
+        spacecraft=np.array([craft[name] for name in windows["spacecraft"]], dtype=np.int64),
+        antenna=np.array([antenna[name] for name in windows["antenna"]], dtype=np.int64),
+        start_s=start_s, end_s=np.clip(end_s, start_s, run.horizon_s))
+
+
+def seconds_of(run: Run, instants: pd.Series) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
+    """Seconds from the horizon's start of a column of instants."""
+    return np.asarray((instants.to_numpy() - run.start_utc) / np.timedelta64(1, "ms") / 1000.0, dtype=float)
+
+
+def find_options(run: Run, windows: Windows, antennas: Antennas, links: Sequence[WindowLink]) -> OptionSet:
+    """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
+    builder = _Builder(run, windows, antennas)
+    cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
+    candidates: list[Candidate] = []
+    excluded: dict[int, tuple[str, str]] = {}
+    for w, link in enumerate(links):
+        found, reason = builder.of_window(w, link, cuts[w])
+        candidates += found
+        if not found:
+            excluded[w] = reason
+    rows = [{
+        "window": c.window, "spacecraft": windows.spacecraft[c.window], "antenna": windows.antenna[c.window],
+        "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
+        "pieces": [] if c.downlink is None else [
+            (c.downlink.send_start_s, c.downlink.send_end_s, c.downlink.rate_mbps / 8.0)],
+    } for c in candidates]
+    return OptionSet(build_options(rows), tuple(candidates), excluded)
+
+
+class _Builder:
+    def __init__(self, run: Run, windows: Windows, antennas: Antennas) -> None:
+        self.run, self.windows, self.policy = run, windows, run.policy
+        self.shortest_s = math.ceil(run.policy.min_contact_s)
+        self.craft_names, self.antenna_names = tuple(run.spacecraft), antennas.names
+        self.blocked: dict[str, list[tuple[int, int]]] = {name: [] for name in antennas.names}
+        for closure in run.closures:
+            k = antennas.names.index(closure.antenna)
+            start_s, end_s = (
+                float((datetime64(t) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
+                for t in (closure.start_utc, closure.end_utc))
+            self.blocked[closure.antenna].append((
+                math.floor(start_s) - int(antennas.release_s[k]), math.ceil(end_s) + int(antennas.prepare_s[k])))
+        # A requested contact must be able to start at the earliest and end at the latest instant.
+        self.asked: dict[str, list[tuple[int, int]]] = {}
+        for request in run.requests:
+            low, high = (float((datetime64(t) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
+                         for t in (request.earliest_utc, request.latest_utc))
+            self.asked.setdefault(request.spacecraft, []).append((math.ceil(low), math.floor(high)))
+
+    def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
+        """The options of one window, longest first, or the reason why there are none."""
+        start_s, end_s = int(self.windows.start_s[w]), int(self.windows.end_s[w])
+        craft, antenna = self._names(w)
+        if end_s - start_s < self.shortest_s:
+            return [], ("too_short", f"{end_s - start_s} s, less than the {self.shortest_s} s that a contact needs")
+        pieces = [p for p in _subtract(start_s, end_s, self.blocked[antenna]) if p[1] - p[0] >= self.shortest_s]
+        if not pieces:
+            return [], ("closure", f"{antenna} is closed, or preparing or releasing beside a closure")
+        if link.downlink is None and link.command is None:
+            if not chains_between(self.run, craft, antenna):
+                return [], ("no_radio", f"no radio of {craft} matches a receiver or transmitter of {antenna}")
+            return [], ("no_margin", f"the margin never reaches {self.policy.required_margin_db:g} dB")
+        found: list[Candidate] = []
+        for low, high in pieces:
+            found += self._of_piece(w, link, low, high, cuts)
+        if not found:
+            return [], ("no_margin", "the margin does not hold long enough after acquisition")
+        useful = [c for c in found if c.downlink is not None or self._commands_wanted(craft)]
+        if not useful:
+            return [], ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
+        useful = self._undominated(useful, craft)
+        return sorted(useful[: self.policy.options_per_window], key=lambda c: (c.start_s, c.end_s)), ("", "")
+
+    def _of_piece(self, w: int, link: WindowLink, low: int, high: int, cuts: Cuts) -> Iterator[Candidate]:
+        """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""
+        craft, _ = self._names(w)
+        most = self.policy.options_per_window
+        must_start, must_end = {low}, {high}
+        whole = self._candidate(w, link, low, high)
+        if whole is not None and whole.downlink is not None:
+            # Time in which nothing can be sent need not be held.
+            radio = self.run.radios[whole.downlink.radio]
+            must_start.add(max(low, math.floor(whole.downlink.send_start_s - radio.acquisition_s)))
+            must_end.add(min(high, whole.downlink.send_end_s))
+        for earliest_s, latest_s in self.asked.get(craft, ()):
+            must_start.add(min(max(low, earliest_s), high))
+            must_end.add(max(min(high, latest_s), low))
+        grid_s = self.policy.cut_grid_s
+        grid = range(-(-low // grid_s) * grid_s, high, grid_s) if grid_s else range(0)
+        inner = max(0, math.isqrt(most - 1)) if most > 1 else 0
+        starts = must_start | set(spread(low, high - self.shortest_s + 1, cuts.starts, grid, inner))
+        ends = must_end | set(spread(low + self.shortest_s - 1, high, cuts.ends, grid, inner))
+        pairs = [(a, b) for a in starts for b in ends if b - a >= self.shortest_s]
+        pairs.sort(key=lambda p: ((p[0] not in must_start) + (p[1] not in must_end), p[0] - p[1], p[0]))
+        for start_s, end_s in pairs[: most + len(must_start) * len(must_end) - 1]:
+            candidate = whole if (start_s, end_s) == (low, high) else self._candidate(w, link, start_s, end_s)
+            if candidate is not None:
+                yield candidate
+
+    def _candidate(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
+        downlink = link.downlink.best(start_s, end_s) if link.downlink is not None else None
+        command = link.command.best(start_s, end_s) if link.command is not None else None
+        if command is not None and command.usable_s < self.policy.command_min_s:
+            command = None
+        if downlink is None and command is None:
+            return None
+        price = self.run.antennas[self._names(w)[1]].price_per_minute
+        return Candidate(w, start_s, end_s, downlink, command, price * (end_s - start_s) / 60.0)
+
+    def _undominated(self, candidates: list[Candidate], craft: str) -> list[Candidate]:
+        """Without options that hold more time than another and offer no more."""
+        if craft in self.asked:
+            return candidates
+        counted = self._commands_wanted(craft)
+        return [a for a in candidates
+                if (counted and a.command is not None) or not any(_dominates(b, a) for b in candidates if b is not a)]
+
+    def _commands_wanted(self, craft: str) -> bool:
+        every_h = self.run.spacecraft[craft].command_every_h or self.policy.command_every_h
+        return every_h is not None or craft in self.asked
+
+    def _names(self, w: int) -> tuple[str, str]:
+        return self.craft_names[int(self.windows.spacecraft[w])], self.antenna_names[int(self.windows.antenna[w])]
+
+
+def _dominates(b: Candidate, a: Candidate) -> bool:
+    """Whether ``b`` lies within ``a``, is strictly shorter, and sends and commands at least as much."""
+    if b.start_s < a.start_s or b.end_s > a.end_s or b.end_s - b.start_s >= a.end_s - a.start_s:
+        return False
+    if a.command is not None and b.command is None:
+        return False
+    if a.downlink is None:
+        return True
+    return (b.downlink is not None and b.downlink.send_start_s <= a.downlink.send_start_s
+            and b.downlink.send_end_s >= a.downlink.send_end_s and b.downlink.rate_mbps >= a.downlink.rate_mbps)
+
+
+def _subtract(start_s: int, end_s: int, blocked: Sequence[tuple[int, int]]) -> list[tuple[int, int]]:
+    """What is left of [start_s, end_s) outside the blocked intervals, in time order."""
+    left, reached = [], start_s
+    for a, b in sorted(blocked):
+        if a > reached:
+            left.append((reached, min(a, end_s)))
+        reached = max(reached, b)
+    left.append((reached, end_s))
+    return [(a, b) for a, b in left if b > a]

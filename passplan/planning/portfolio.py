@@ -1,0 +1,79 @@
+"""One door to all the ways of finding a plan; what it returns is judged by ``value.account`` alone."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable
+
+from passplan.planning.clock import Clock
+from passplan.planning.greedy import plan_greedily
+from passplan.planning.occupancy import first_conflict
+from passplan.planning.problem import Limits, Problem
+from passplan.planning.result import PlanResult, Tier, relative_gap, status_of
+from passplan.planning.rules import RULES, all_terms
+from passplan.planning.rules.terms import Rule, Terms
+from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
+from passplan.planning.solve import solve_exactly
+from passplan.planning.value import account
+
+Progress = Callable[[float, float, float], None]
+
+
+def find_plan(
+    problem: Problem, limits: Limits | None = None, *, rules: tuple[Rule, ...] = RULES, clock: Clock | None = None,
+    progress: Progress | None = None,
+) -> PlanResult:
+    """A plan for ``problem``, its value and a bound, within the time limit.
+
+    ``progress(value, bound, gap)`` is called as they move. Never fails for want of time: the greedy plan
+    stands in. Raises ``RuntimeError`` if a way of planning breaks a rule, which is a fault of the program.
+    """
+    limits = limits or Limits()
+    clock = clock or Clock(limits.time_limit_s)
+    terms = all_terms(problem, rules)
+    with clock.stage("greedy"):
+        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock), "greedy")
+    points_bound, bound = least_points(terms), _ceiling(problem)
+    if len(problem.options) and not clock.expired():
+        solved = solve_exactly(problem, terms, limits, clock, best.points)
+        points_bound, bound = max(points_bound, solved.points_bound), min(bound, solved.value_bound)
+        if solved.chosen is not None:
+            best = max(best, _Candidate(problem, terms, solved.chosen, "exact"), key=_Candidate.rank)
+    return _conclude(best, terms, points_bound, bound, limits, clock)
+
+
+class _Candidate:
+    """A plan with its accounts, checked against the rules."""
+
+    def __init__(self, problem: Problem, terms: Terms, chosen: Iterable[int], path: str) -> None:
+        self.chosen, self.path = tuple(sorted(chosen)), path
+        fault = first_conflict(terms, len(problem.options), self.chosen)
+        if fault is not None:
+            raise RuntimeError(f"the {path} plan is wrong: {fault}")
+        self.account = account(problem, self.chosen)
+        self.shortfalls = find_shortfalls(problem, terms, self.chosen)
+        self.points = total_points(self.shortfalls)
+
+    def rank(self) -> tuple[float, float]:
+        """Fewer points first, to within rounding, then more value."""
+        return -round(self.points, 6), self.account.value
+
+
+def _conclude(
+    best: _Candidate, terms: Terms, points_bound: float, bound: float, limits: Limits, clock: Clock,
+) -> PlanResult:
+    value = best.account.value
+    bound = max(bound, value)
+    gap = relative_gap(value, bound)
+    tiers = [Tier("value", "most", value, bound, gap)]
+    if terms.wanted or terms.recurrences:
+        floor = min(points_bound, best.points)
+        tiers.insert(0, Tier("shortfalls", "least", best.points, floor, relative_gap(-best.points, -floor)))
+    return PlanResult(
+        best.chosen, status_of(gap, limits.gap, best.path, len(best.chosen)), value, bound, gap, tuple(tiers),
+        best.shortfalls, best.account, best.path, dict(clock.seconds))
+
+
+def _ceiling(problem: Problem) -> float:
+    """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
+    fleet = problem.fleet
+    return float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())

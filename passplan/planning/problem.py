@@ -1,0 +1,216 @@
+"""What there is to plan, as plain immutable arrays: no run, no tables, no solver.
+
+Times are whole seconds from the start of the horizon. Arrays are made read-only, so that a problem can
+be shared by the model, the search and the accounts without a thought.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field, fields, replace
+from typing import Any, Literal
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+Floats = NDArray[np.float64]
+Integers = NDArray[np.int64]
+Flags = NDArray[np.bool_]
+Service = Literal["downlink", "command", "both"]
+
+
+@dataclass(frozen=True, eq=False)
+class Fleet:
+    """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB]."""
+
+    names: tuple[str, ...]
+    weight: Floats
+    generation_mb_per_s: Floats
+    capacity_mb: Floats
+    start_fill_mb: Floats
+
+    def __post_init__(self) -> None:
+        _freeze(self)
+
+    def __len__(self) -> int:
+        return len(self.names)
+
+
+@dataclass(frozen=True, eq=False)
+class Antennas:
+    """Antennas, shape (a,): seconds kept free before (``prepare_s``) and after (``release_s``) a contact."""
+
+    names: tuple[str, ...]
+    prepare_s: Integers
+    release_s: Integers
+
+    def __post_init__(self) -> None:
+        _freeze(self)
+
+    def __len__(self) -> int:
+        return len(self.names)
+
+
+@dataclass(frozen=True, eq=False)
+class Windows:
+    """Windows, shape (w,): identifiers, and indices of the spacecraft and the antenna."""
+
+    names: tuple[str, ...]
+    spacecraft: Integers
+    antenna: Integers
+    start_s: Integers
+    end_s: Integers
+
+    def __post_init__(self) -> None:
+        _freeze(self)
+
+    def __len__(self) -> int:
+        return len(self.names)
+
+
+@dataclass(frozen=True, eq=False)
+class Options:
+    """Candidate contacts, shape (m,), with their sending as ragged pieces.
+
+    Option o may send in the pieces ``piece_offset[o] : piece_offset[o + 1]``, in time order, each at one
+    rate [MB/s] (``piece_offset`` has m + 1 entries). ``downlink`` and ``command`` say which services the
+    contact offers; ``cost`` is money.
+    """
+
+    window: Integers
+    spacecraft: Integers
+    antenna: Integers
+    start_s: Integers
+    end_s: Integers
+    downlink: Flags
+    command: Flags
+    cost: Floats
+    piece_offset: Integers
+    piece_start_s: Integers
+    piece_end_s: Integers
+    piece_rate_mb_per_s: Floats
+
+    def __post_init__(self) -> None:
+        _freeze(self)
+        if len(self.piece_offset) != len(self) + 1:
+            raise ValueError("piece_offset needs one entry more than there are options")
+        if np.any(self.end_s <= self.start_s) or np.any(self.piece_end_s <= self.piece_start_s):
+            raise ValueError("an option or a piece of one ends before it starts")
+
+    def __len__(self) -> int:
+        return len(self.window)
+
+    def pieces(self, option: int) -> range:
+        """Indices of the pieces of one option."""
+        return range(int(self.piece_offset[option]), int(self.piece_offset[option + 1]))
+
+    def take(self, index: ArrayLike) -> Options:
+        """The options at ``index`` (integers or flags), in that order, with their pieces."""
+        rows = np.arange(len(self))[np.asarray(index)]
+        counts = np.diff(self.piece_offset)[rows]
+        pieces = ragged_ranges(self.piece_offset[rows], counts)
+        ragged = {"piece_start_s", "piece_end_s", "piece_rate_mb_per_s"}
+        kept = {f.name: getattr(self, f.name)[pieces if f.name in ragged else rows]
+                for f in fields(self) if f.name != "piece_offset"}
+        return Options(piece_offset=offsets_of(counts), **kept)
+
+
+@dataclass(frozen=True)
+class RequestNeed:
+    """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length."""
+
+    name: str
+    spacecraft: int
+    antennas: frozenset[int]
+    service: Service
+    earliest_s: int
+    latest_s: int
+    min_duration_s: int
+
+
+@dataclass(frozen=True)
+class CommandNeed:
+    """A command contact at least every ``every_s``, counted from ``last_s`` (0 or negative: before the start)."""
+
+    spacecraft: int
+    every_s: int
+    last_s: int
+
+
+@dataclass(frozen=True, eq=False)
+class Problem:
+    """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
+
+    The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
+    MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``).
+    """
+
+    horizon_s: int
+    fleet: Fleet
+    antennas: Antennas
+    windows: Windows
+    options: Options
+    requests: tuple[RequestNeed, ...] = ()
+    commands: tuple[CommandNeed, ...] = ()
+    spill_cost_per_mb: float = 0.0
+    worth_per_money: float = 0.0
+
+    def with_options(self, options: Options) -> Problem:
+        """The same problem over other options."""
+        return replace(self, options=options)
+
+
+@dataclass(frozen=True)
+class Limits:
+    """How long and how hard to look. The search ends by ``gap`` or by ``time_limit_s``, whichever is first."""
+
+    gap: float = 0.005
+    time_limit_s: float = 60.0
+    threads: int = 2
+    seed: int = 1
+    # Up to this many options the exact model is tried first (see portfolio.py).
+    exact_options: int = field(default=8_000)
+
+
+def build_options(rows: Sequence[dict[str, Any]]) -> Options:
+    """Options from one mapping each, with ``pieces`` a list of (start_s, end_s, rate_mb_per_s).
+
+    Meant for tests and small jobs; ``downlink`` defaults to whether there are pieces, ``command`` to False
+    and ``cost`` to 0.
+    """
+    pieces = [piece for row in rows for piece in row.get("pieces", ())]
+    columns = np.array(pieces, dtype=float).reshape(-1, 3)
+    whole = {name: np.array([row[name] for row in rows], dtype=np.int64)
+             for name in ("window", "spacecraft", "antenna", "start_s", "end_s")}
+    return Options(
+        **whole,
+        downlink=np.array([row.get("downlink", bool(row.get("pieces"))) for row in rows], dtype=bool),
+        command=np.array([row.get("command", False) for row in rows], dtype=bool),
+        cost=np.array([row.get("cost", 0.0) for row in rows], dtype=float),
+        piece_offset=offsets_of(np.array([len(row.get("pieces", ())) for row in rows], dtype=np.int64)),
+        piece_start_s=columns[:, 0].astype(np.int64),
+        piece_end_s=columns[:, 1].astype(np.int64),
+        piece_rate_mb_per_s=columns[:, 2].copy(),
+    )
+
+
+def offsets_of(counts: Integers) -> Integers:
+    """Where each group starts when groups of ``counts`` lie end to end; one entry more than groups."""
+    return np.concatenate([[0], np.cumsum(counts)]).astype(np.int64)
+
+
+def ragged_ranges(first: Integers, counts: Integers) -> Integers:
+    """``first[k], first[k] + 1, ...`` for ``counts[k]`` entries, for every k, end to end."""
+    ends = np.cumsum(counts)
+    return np.arange(int(ends[-1]) if len(ends) else 0, dtype=np.int64) + np.repeat(first - ends + counts, counts)
+
+
+def _freeze(record: object) -> None:
+    """Give every array of a frozen record its dtype, its own copy if needed, and take write access away."""
+    for f in fields(record):  # type: ignore[arg-type]
+        value = getattr(record, f.name)
+        if isinstance(value, np.ndarray):
+            kind = {"Floats": np.float64, "Integers": np.int64, "Flags": np.bool_}[str(f.type)]
+            array = np.ascontiguousarray(value, dtype=kind).copy()
+            array.flags.writeable = False
+            object.__setattr__(record, f.name, array)

@@ -1,0 +1,24 @@
+"""One module per operational rule; ``RULES`` lists those that are in force.
+
+To add a rule, write a module with a function that takes a :class:`~passplan.planning.problem.Problem` and
+returns :class:`~passplan.planning.rules.terms.Terms`, and list it here. Nothing else changes.
+"""
+
+from __future__ import annotations
+
+from passplan.planning.problem import Problem
+from passplan.planning.rules.antenna_time import antenna_time
+from passplan.planning.rules.command_interval import command_interval
+from passplan.planning.rules.requests import requests
+from passplan.planning.rules.spacecraft_time import spacecraft_time
+from passplan.planning.rules.terms import Rule, Terms
+
+RULES: tuple[Rule, ...] = (antenna_time, spacecraft_time, requests, command_interval)
+
+
+def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:
+    """What all rules ask for, added up in their order."""
+    terms = Terms()
+    for rule in rules:
+        terms += rule(problem)
+    return terms

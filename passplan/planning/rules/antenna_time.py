@@ -1,0 +1,20 @@
+"""An antenna serves one contact at a time, with time to prepare before it and to release after it."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from passplan.planning.problem import Problem
+from passplan.planning.rules.terms import Lane, Terms
+
+
+def antenna_time(problem: Problem) -> Terms:
+    """One lane per antenna; a contact holds it from ``prepare_s`` before its start to ``release_s`` after its end."""
+    options, antennas = problem.options, problem.antennas
+    start_s = options.start_s - antennas.prepare_s[options.antenna]
+    end_s = options.end_s + antennas.release_s[options.antenna]
+    lanes = []
+    for k, name in enumerate(antennas.names):
+        mine = np.flatnonzero(options.antenna == k)
+        lanes.append(Lane(name, "antenna_busy", mine, start_s[mine], end_s[mine]))
+    return Terms(lanes=tuple(lanes))

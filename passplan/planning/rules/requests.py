@@ -1,0 +1,30 @@
+"""Contacts that somebody asked for: any contact that fits the span, the service and the length will do."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from passplan.planning.problem import Flags, Options, Problem, RequestNeed
+from passplan.planning.rules.terms import Terms, Wanted
+
+
+def requests(problem: Problem) -> Terms:
+    """One wanted term per request; a request that no option fits keeps an empty one, and is a shortfall."""
+    return Terms(wanted=tuple(
+        Wanted(need.name, need.spacecraft, np.flatnonzero(fits(problem.options, need))) for need in problem.requests))
+
+
+def fits(options: Options, need: RequestNeed) -> Flags:
+    """Which options meet a request, shape (m,)."""
+    served = np.ones(len(options), dtype=bool)
+    if need.service in ("downlink", "both"):
+        served &= options.downlink
+    if need.service in ("command", "both"):
+        served &= options.command
+    return np.asarray(
+        served
+        & (options.spacecraft == need.spacecraft)
+        & np.isin(options.antenna, sorted(need.antennas))
+        & (options.start_s >= need.earliest_s)
+        & (options.end_s <= need.latest_s)
+        & (options.end_s - options.start_s >= need.min_duration_s), dtype=bool)

@@ -1,0 +1,99 @@
+"""The few kinds of thing a rule can ask for.
+
+A rule is one module with one function ``terms(problem) -> Terms``. It speaks only in these kinds; the
+model turns each kind into rows, the bound prices it, and the search keeps it feasible, so that none of
+them knows a rule by name:
+
+===========  =======================================  ==============================  =====================
+kind         says                                     model                           search
+===========  =======================================  ==============================  =====================
+Removal      these options cannot be used             never in the model              never a candidate
+Lane         at most one option at a time             one row per maximal clique      busy intervals; prices
+Wanted       one of these options, or a shortfall     covering row with slack         bit of a label
+Recurrence   covered time, or a shortfall             counting rows with slack        last end in a label
+===========  =======================================  ==============================  =====================
+
+Shortfalls are counted in points and are minimised before any value is looked at (tier 1).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Protocol
+
+from passplan.planning.problem import Integers, Problem
+
+
+@dataclass(frozen=True, eq=False)
+class Removal:
+    """Options that a rule takes out, with a reason code of the ``unused`` table and a sentence."""
+
+    options: Integers
+    reason: str
+    detail: str
+
+
+@dataclass(frozen=True, eq=False)
+class Lane:
+    """A resource for one at a time: option ``options[k]`` holds it in ``[start_s[k], end_s[k])``.
+
+    ``kind`` is the reason code that is given when the lane stands in the way.
+    """
+
+    name: str
+    kind: str
+    options: Integers
+    start_s: Integers
+    end_s: Integers
+
+
+@dataclass(frozen=True, eq=False)
+class Wanted:
+    """At least one of ``options`` (all of one spacecraft), or a shortfall of ``points``."""
+
+    name: str
+    spacecraft: int
+    options: Integers
+    points: float = 1.0
+
+
+@dataclass(frozen=True, eq=False)
+class Recurrence:
+    """Every instant of ``[from_s, until_s)`` lies in ``[start_s, end_s + every_s)`` of a chosen option.
+
+    All of one spacecraft. Each second that no chosen option covers is ``1 / every_s`` points of shortfall,
+    so that a whole missed interval weighs as much as a missed request.
+    """
+
+    name: str
+    spacecraft: int
+    options: Integers
+    start_s: Integers
+    end_s: Integers
+    every_s: int
+    from_s: int
+    until_s: int
+
+
+@dataclass(frozen=True, eq=False)
+class Terms:
+    """What one rule, or all of them together, asks for."""
+
+    removals: tuple[Removal, ...] = ()
+    lanes: tuple[Lane, ...] = ()
+    wanted: tuple[Wanted, ...] = ()
+    recurrences: tuple[Recurrence, ...] = ()
+    notes: tuple[str, ...] = field(default=())
+
+    def __add__(self, other: Terms) -> Terms:
+        return Terms(
+            self.removals + other.removals, self.lanes + other.lanes, self.wanted + other.wanted,
+            self.recurrences + other.recurrences, self.notes + other.notes)
+
+
+class Rule(Protocol):
+    """One operational rule."""
+
+    def __call__(self, problem: Problem) -> Terms:
+        """What the rule asks for in this problem."""
+        ...

@@ -1,0 +1,82 @@
+"""Requirements that a plan does not meet: how much is missing, and said in a sentence."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+from passplan.planning.problem import Problem
+from passplan.planning.rules.terms import Recurrence, Terms
+
+
+@dataclass(frozen=True)
+class Shortfall:
+    """A requirement that is missed. ``points`` is its part of tier 1.
+
+    ``kind`` is ``request`` or ``command``; ``name`` is the request's name or the spacecraft's. For a command
+    interval ``spans_s`` are the half-open spans of time in which the last command contact is too old.
+    ``possible`` says whether some single option could have helped.
+    """
+
+    kind: str
+    name: str
+    spacecraft: str
+    points: float
+    sentence: str
+    possible: bool
+    spans_s: tuple[tuple[int, int], ...] = ()
+
+
+def find_shortfalls(problem: Problem, terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...]:
+    """Every requirement in ``terms`` that the chosen options do not meet, in the order of the terms."""
+    picked = {int(o) for o in chosen}
+    found = []
+    for want in terms.wanted:
+        if picked.isdisjoint(want.options.tolist()):
+            craft = problem.fleet.names[want.spacecraft]
+            why = ("no window of the spacecraft offers a contact that fits its span, antenna, service and length"
+                   if len(want.options) == 0 else "every contact that would fit it collides with other requirements")
+            found.append(Shortfall(
+                "request", want.name, craft, want.points,
+                f"Request {want.name} for {craft} is not met: {why}.", len(want.options) > 0))
+    for need in terms.recurrences:
+        spans = overdue_spans(need, picked)
+        if spans:
+            seconds = sum(b - a for a, b in spans)
+            best = overdue_spans(need, set(need.options.tolist()))
+            avoidable = seconds > sum(b - a for a, b in best)
+            why = ("the command contacts that could help collide with other requirements" if avoidable
+                   else "no window offers a command contact in time")
+            found.append(Shortfall(
+                "command", need.name, need.name, seconds / need.every_s,
+                f"Spacecraft {need.name} is without a command contact for longer than {need.every_s / 3600:g} h "
+                f"during {seconds / 3600:.2f} h of the horizon: {why}.", avoidable, spans))
+    return tuple(found)
+
+
+def overdue_spans(need: Recurrence, picked: set[int]) -> tuple[tuple[int, int], ...]:
+    """The half-open spans [s] in which the last chosen command contact is older than the interval."""
+    covered = sorted((int(a), int(b) + need.every_s)
+                     for o, a, b in zip(need.options, need.start_s, need.end_s, strict=True) if int(o) in picked)
+    spans, reached = [], need.from_s
+    for start_s, until_s in covered:
+        if start_s > reached:
+            spans.append((reached, min(start_s, need.until_s)))
+        reached = max(reached, until_s)
+        if reached >= need.until_s:
+            break
+    if reached < need.until_s:
+        spans.append((reached, need.until_s))
+    return tuple((a, b) for a, b in spans if b > a)
+
+
+def least_points(terms: Terms) -> float:
+    """Points that no plan can avoid, were every option usable at once: a proven floor of tier 1."""
+    asked = sum(want.points for want in terms.wanted if len(want.options) == 0)
+    return asked + sum(
+        (b - a) / need.every_s for need in terms.recurrences for a, b in overdue_spans(need, set(need.options.tolist())))
+
+
+def total_points(shortfalls: Iterable[Shortfall]) -> float:
+    """Tier 1 of a plan."""
+    return sum(s.points for s in shortfalls)

@@ -1,0 +1,86 @@
+"""The main job as a chain of steps: windows, links, plan, audit."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from dataclasses import replace
+
+import pandas as pd
+
+from passplan.geometry.pointing import sample_windows
+from passplan.geometry.windows import find_windows
+from passplan.inputs.run import Run
+from passplan.link.profiles import WindowLink, link_profiles
+from passplan.planning.audit import Fault, audit_plan
+from passplan.planning.plan import make_plan
+from passplan.planning.record import PlanRecord
+from passplan.planning.summary import summarise
+
+Report = Callable[[str, int, int], None]
+_SAMPLE_STEP_S = 10.0
+
+
+class AuditFailedError(Exception):
+    """The independent audit found faults in a plan, so the plan is not handed on. Exit code 6."""
+
+    def __init__(self, faults: list[Fault]) -> None:
+        self.faults = tuple(faults)
+        super().__init__("\n".join(["the audit refused the plan; nothing was written", *map(str, faults)]))
+
+
+def windows_of(run: Run, progress: Report | None = None, *, only: tuple[str, str] | None = None) -> pd.DataFrame:
+    """The windows table of a run; ``only`` narrows it to one spacecraft and antenna."""
+    report = progress or _silent
+    orbits, antennas = run.orbits, run.antennas
+    if only is not None:
+        orbits, antennas = {only[0]: orbits[only[0]]}, {only[1]: antennas[only[1]]}
+    return find_windows(
+        orbits, antennas, run.sites, run.start_utc, run.end_utc,
+        progress=lambda done, total: report("finding windows", done, total),
+    )
+
+
+def links_of(run: Run, windows: pd.DataFrame) -> list[WindowLink]:
+    """The link along each window, in the order of the table."""
+    samples = sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_SAMPLE_STEP_S)
+    return link_profiles(run, windows, samples)
+
+
+def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
+    """Plan a run and audit the plan.
+
+    Raises :class:`AuditFailedError` where the audit finds a fault; a requirement that cannot be met is no
+    fault but a shortfall in the summary.
+    """
+    report = progress or _silent
+    seconds: dict[str, float] = {}
+    began = time.perf_counter()
+
+    def lap(stage: str) -> None:
+        nonlocal began
+        now = time.perf_counter()
+        seconds[stage] = round(now - began, 3)
+        began = now
+
+    windows = windows_of(run, report)
+    lap("windows")
+    report("computing links", 0, 0)
+    links = links_of(run, windows)
+    lap("links")
+    plan = make_plan(run, windows, links, progress=report)
+    lap("plan")
+    record = PlanRecord(
+        summary=summarise(run, windows, plan), windows=windows, contacts=plan.contacts, segments=plan.segments,
+        unused=plan.unused, files=run.files,
+    )
+    report("auditing", 0, 0)
+    faults = audit_plan(run, record.contacts, record.segments, record.summary)
+    lap("audit")
+    if faults:
+        raise AuditFailedError(faults)
+    return replace(record, summary={**record.summary, "seconds": seconds})
+
+
+def _silent(_stage: str, _done: int, _total: int) -> None:
+    """Nobody is watching."""

@@ -1,0 +1,135 @@
+"""The summary of a plan: the content of ``plan.json``, plain enough for any program to read."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+from collections.abc import Iterable
+from datetime import UTC, datetime
+from importlib.metadata import PackageNotFoundError, version
+from pathlib import PurePosixPath
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from passplan._version import __version__
+from passplan.inputs.elements.model import ElementSet
+from passplan.inputs.reader import ReadFile
+from passplan.inputs.records import datetime64
+from passplan.inputs.run import Run
+from passplan.planning.plan import Plan
+from passplan.planning.value import Account
+
+_PACKAGES = ("skyfield", "sgp4", "ortools", "itur", "numpy", "pandas")
+
+
+def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
+    """``plan.json`` as a dictionary of plain values.
+
+    ``plan_id`` depends on the inputs, the horizon and the contacts, and on nothing else, so that the same
+    work done twice carries the same name.
+    """
+    result, account = plan.result, plan.result.account
+    summary: dict[str, Any] = {
+        "plan_id": "", "name": run.name, "status": result.status, "approval": "draft",
+        "generated_utc": datetime.now(UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z"),
+        "horizon_start_utc": _iso(run.start_utc), "horizon_end_utc": _iso(run.end_utc),
+        "windows": len(windows), "contacts": len(plan.contacts),
+        "volume_mb": float(np.sum(account.delivered_mb)), "value": result.value, "bound": _finite(result.bound),
+        "gap": _finite(result.gap), "cost": account.cost, "path": result.path,
+        "tiers": [
+            {"name": t.name, "sense": t.sense, "value": t.value, "bound": _finite(t.bound), "gap": _finite(t.gap)}
+            for t in result.tiers
+        ],
+        "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
+        "warnings": list(run.warnings) + _own_warnings(run, windows),
+        "left_out": dict(run.left_out),
+        "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
+        "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
+        "storage": _storage([name for name in run.spacecraft if name in run.orbits], run, account),
+        "inputs": stored_inputs(run.files),
+        "versions": {"passplan": __version__, **{name: _version(name) for name in _PACKAGES}},
+        "seconds": {},
+    }
+    summary["plan_id"] = _plan_id(summary, plan.contacts)
+    return summary
+
+
+def stored_inputs(files: Iterable[ReadFile]) -> list[dict[str, str]]:
+    """Path, SHA-256 and place of the copy of each input; copies are numbered, so that equal names do not clash."""
+    entries = []
+    for i, file in enumerate(files):
+        name = PurePosixPath(file.path).name
+        # The config comes first and keeps its name: it is what a plan's own inputs are loaded by.
+        copy = f"inputs/{i:02d}-{name}" if i else f"inputs/{name}"
+        entries.append({"path": file.path, "sha256": file.sha256, "stored": copy})
+    return entries
+
+
+def _plan_id(summary: dict[str, Any], contacts: pd.DataFrame) -> str:
+    chosen = [
+        [row.contact_id, _iso(np.datetime64(row.start_utc)), _iso(np.datetime64(row.end_utc)), row.modcod]
+        for row in contacts.itertuples()
+    ]
+    identity = {
+        "horizon": [summary["horizon_start_utc"], summary["horizon_end_utc"]],
+        "inputs": [entry["sha256"] for entry in summary["inputs"]],
+        "contacts": sorted(chosen),
+    }
+    return hashlib.sha256(json.dumps(identity, sort_keys=True).encode()).hexdigest()[:12]
+
+
+def _spacecraft(run: Run, name: str) -> dict[str, Any]:
+    orbit, craft = run.orbits[name], run.spacecraft[name]
+    known = isinstance(orbit, ElementSet)
+    return {
+        "catalogue_number": craft.catalogue_number, "weight": craft.weight,
+        "orbit_from": "element set" if known else "ephemeris",
+        "element_epoch_utc": _iso(orbit.epoch_utc) if isinstance(orbit, ElementSet) else None,
+        "element_age_days": round(orbit.age_days(run.start_utc), 4) if isinstance(orbit, ElementSet) else None,
+    }
+
+
+def _antenna(run: Run, name: str, contacts: pd.DataFrame) -> dict[str, Any]:
+    own = contacts[contacts["antenna"] == name]
+    return {
+        "site": run.antennas[name].site, "contacts": len(own), "contact_s": float(own["duration_s"].sum()),
+        "closures": [
+            {"start_utc": _iso(datetime64(c.start_utc)), "end_utc": _iso(datetime64(c.end_utc)), "kind": c.kind,
+             "note": c.note}
+            for c in run.closures if c.antenna == name
+        ],
+    }
+
+
+def _storage(names: list[str], run: Run, account: Account) -> dict[str, dict[str, float]]:
+    columns = {
+        key: getattr(account, key) for key in ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
+    }
+    return {
+        name: {"capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()}}
+        for i, name in enumerate(names)
+    }
+
+
+def _own_warnings(run: Run, windows: pd.DataFrame) -> list[str]:
+    unseen = [name for name in run.orbits if name not in set(windows["spacecraft"])]
+    if not len(windows):
+        return ["no antenna sees any spacecraft within the horizon; the plan is empty"]
+    return [f"{name}: no antenna sees it within the horizon" for name in unseen]
+
+
+def _finite(number: float) -> float | None:
+    return float(number) if np.isfinite(number) else None
+
+
+def _iso(instant: np.datetime64) -> str:
+    return f"{instant.astype('datetime64[ms]')}Z"
+
+
+def _version(package: str) -> str:
+    try:
+        return version(package)
+    except PackageNotFoundError:  # pragma: no cover - a vendored or stripped installation
+        return "unknown"

@@ -1,0 +1,112 @@
+"""What a set of contacts is worth: storage followed event by event, in continuous time.
+
+This is the one definition of the objective. It is plain Python over the exact events, and nothing that
+looks for a plan (model, greedy, search) uses it to find one: they are judged by it.
+
+Between events a spacecraft generates g and may send at one rate r. Over a stretch of dt seconds that
+starts with f aboard it sends ``min(f + g dt, r dt)``: with r >= g the storage runs down and then sends
+as it generates; with r < g it sends all the time. What would stand above the capacity is lost at once:
+``max(0, f + g dt - sent - capacity)``. Both hold exactly, as within a stretch the fill is monotonic.
+Sending as early as possible is optimal for a single class of data, so that a plan is its contacts and
+nothing more. (Own derivation.)
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from passplan.planning.problem import Floats, Integers, Problem
+
+
+@dataclass(frozen=True, eq=False)
+class Account:
+    """Where the data went. Per spacecraft, shape (n,), in MB: start, generated, delivered, lost, left.
+
+    ``chosen`` are the options in time order, ``contact_mb`` (k,) what each brings down; ``piece`` indexes
+    their pieces and ``piece_mb`` says what each brings down. ``cost`` is money, ``value`` the objective.
+    """
+
+    start_mb: Floats
+    generated_mb: Floats
+    delivered_mb: Floats
+    lost_mb: Floats
+    left_mb: Floats
+    chosen: Integers
+    contact_mb: Floats
+    piece: Integers
+    piece_mb: Floats
+    cost: float
+    value: float
+
+
+def account(problem: Problem, chosen: Iterable[int]) -> Account:
+    """Follow every spacecraft's storage through the chosen options and add up the objective.
+
+    ``chosen`` are option indices in any order; contacts of one spacecraft must not overlap. Raises
+    ``ValueError`` if sending pieces of one spacecraft overlap.
+    """
+    options, fleet = problem.options, problem.fleet
+    order = sorted((int(o) for o in chosen), key=lambda o: (int(options.start_s[o]), int(options.antenna[o]), o))
+    by_craft: list[list[int]] = [[] for _ in range(len(fleet))]
+    for o in order:
+        by_craft[int(options.spacecraft[o])].append(o)
+    sent: dict[int, float] = {}
+    lost = np.zeros(len(fleet))
+    left = np.zeros(len(fleet))
+    for i, mine in enumerate(by_craft):
+        pieces = [p for o in mine for p in options.pieces(o)]
+        volumes, lost[i], left[i] = follow_storage(
+            problem.horizon_s, float(fleet.start_fill_mb[i]), float(fleet.generation_mb_per_s[i]),
+            float(fleet.capacity_mb[i]),
+            [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
+             for p in pieces])
+        sent.update(zip(pieces, volumes, strict=True))
+    contact_mb = np.array([math.fsum(sent[p] for p in options.pieces(o)) for o in order], dtype=float)
+    delivered = np.array([math.fsum(sent[p] for o in mine for p in options.pieces(o)) for mine in by_craft])
+    chosen_array = np.array(order, dtype=np.int64)
+    cost = math.fsum(options.cost[chosen_array])
+    value = math.fsum([*(fleet.weight * delivered), *(-problem.spill_cost_per_mb * lost), -problem.worth_per_money * cost])
+    piece = np.array([p for o in order for p in options.pieces(o)], dtype=np.int64)
+    return Account(
+        start_mb=fleet.start_fill_mb, generated_mb=fleet.generation_mb_per_s * problem.horizon_s,
+        delivered_mb=delivered.reshape(len(fleet)), lost_mb=lost, left_mb=left, chosen=chosen_array,
+        contact_mb=contact_mb, piece=piece, piece_mb=np.array([sent[int(p)] for p in piece], dtype=float),
+        cost=cost, value=value)
+
+
+def follow_storage(
+    horizon_s: int, fill_mb: float, generation_mb_per_s: float, capacity_mb: float,
+    pieces: Sequence[tuple[int, int, float]],
+) -> tuple[list[float], float, float]:
+    """Follow one storage through sending pieces (start_s, end_s, rate_mb_per_s) in time order.
+
+    Returns the MB sent in each piece, the MB lost over the horizon, and the MB left at its end.
+    """
+    volumes: list[float] = []
+    lost: list[float] = []
+    clock = 0
+
+    def stretch(until_s: int, rate_mb_per_s: float) -> float:
+        nonlocal fill_mb, clock
+        aboard = fill_mb + generation_mb_per_s * (until_s - clock)
+        sent = min(aboard, rate_mb_per_s * (until_s - clock))
+        over = aboard - sent - capacity_mb
+        if over > 0.0:
+            lost.append(over)
+            fill_mb = capacity_mb
+        else:
+            fill_mb = aboard - sent
+        clock = until_s
+        return sent
+
+    for start_s, end_s, rate_mb_per_s in pieces:
+        if start_s < clock:
+            raise ValueError(f"sending from {start_s} s overlaps the piece before it, which ends at {clock} s")
+        stretch(start_s, 0.0)
+        volumes.append(stretch(end_s, rate_mb_per_s))
+    stretch(horizon_s, 0.0)
+    return volumes, math.fsum(lost), fill_mb

@@ -1,0 +1,1 @@
+"""Floor 6: comparing variants of the network."""
