@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Annotated
 
+import numpy as np
 import typer
 
 from passplan.cli.faults import reports_faults
@@ -12,8 +13,8 @@ from passplan.cli.terminal import StartOption, instant, progress, stdout
 from passplan.inputs.errors import InputError, Problem, nearest
 from passplan.inputs.load import load_run
 from passplan.inputs.records import datetime64
-from passplan.planning.steps import links_of, windows_of
-from passplan.report.link_budget import instant_of_interest, print_budget
+from passplan.planning.steps import windows_of
+from passplan.report.link_budget import print_budget
 
 
 @reports_faults
@@ -32,8 +33,13 @@ def command(
     wanted = instant(at, "--at")
     with progress() as report:
         windows = windows_of(run, report, only=(spacecraft, antenna))
-        window, moment = instant_of_interest(windows, None if wanted is None else datetime64(wanted))
-        links = links_of(run, windows) if window is not None else []
-    if moment is None:
-        raise InputError([Problem("--at", "", at, f"{antenna} never sees {spacecraft} in this run; choose another pair")])
-    print_budget(run, spacecraft, antenna, moment, windows, window, links, stdout())
+    if windows.empty and wanted is None:
+        raise InputError([Problem("--antenna", "", antenna, f"never sees {spacecraft} in this run; choose another")])
+    if wanted is None:
+        window = windows.loc[windows["peak_elevation_deg"].idxmax()]
+        moment = np.datetime64(window["peak_utc"], "ms")
+    else:
+        moment = datetime64(wanted)
+        inside = windows[(windows["aos_utc"] <= moment) & (windows["los_utc"] > moment)]
+        window = inside.iloc[0] if len(inside) else None
+    print_budget(run, spacecraft, antenna, moment, window, stdout())

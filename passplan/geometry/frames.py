@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.geometry.timescale import Floats, sidereal_angle_rad, timescale
+from passplan.geometry.timescale import Floats, sidereal_angle_rad, skyfield_time
 
 # Rotation rate of the Earth in UT1, rad/s (IERS Conventions 2010, table 1.1; the value Skyfield uses).
 EARTH_RATE_RAD_S = 7.292115e-5
@@ -48,7 +48,7 @@ def _slow_part(utc_s: Floats) -> tuple[Floats, Floats]:
     """
     low, high = float(utc_s.min()), float(utc_s.max())
     nodes = np.linspace(low, high, int((high - low) // _NUTATION_STEP_S) + 2)
-    time = timescale().utc(2000, 1, 1, 0, 0, nodes)
+    time = skyfield_time(nodes)
     matrices = np.moveaxis(np.asarray(time.M), -1, 0)
     full = 2.0 * np.pi
     apart = np.remainder(np.asarray(time.gast) / 24.0 * full - sidereal_angle_rad(nodes) + np.pi, full) - np.pi

@@ -34,13 +34,13 @@ def summits(scene: Scene, pair: Indices, start: Floats, end: Floats) -> Summits:
     flat = pair[window] * scene.length + sample
     up, square = scene.up_km.reshape(-1)[flat], scene.range_km2.reshape(-1)[flat]
     sine = up / np.sqrt(square)
-    edge_at, edge_sine, edge_range = _edges(scene, pair, start, end)
+    edge_at, edge_sine, edge_nearness = _edges(scene, pair, start, end)
     highest = _Best(edge_at, edge_sine)
     crest = _interior_maxima(sine, window)
     at, reached, _ = _refine(scene, pair[window[crest]], sample[crest], _toward_peak, False)
     inside = (at >= start[window[crest]]) & (at <= end[window[crest]])
     highest.offer(window[crest][inside], at[inside], reached[inside])
-    nearest = _Best(edge_at, -edge_range)
+    nearest = _Best(edge_at, edge_nearness)
     close = _interior_maxima(-square, window)
     at, _, distance = _refine(scene, pair[window[close]], sample[close], _toward_nearest, True)
     inside = (at >= start[window[close]]) & (at <= end[window[close]])
@@ -84,13 +84,13 @@ def _interior_maxima(values: Floats, window: Indices) -> Indices:
 def _edges(
     scene: Scene, pair: Indices, start: Floats, end: Floats
 ) -> tuple[tuple[Floats, Floats], tuple[Floats, Floats], tuple[Floats, Floats]]:
-    sines, ranges = [], []
+    sines, nearness = [], []
     for at in (start, end):
         up, square = _at(scene, pair, at)
         distance = np.sqrt(square)
         sines.append(up / distance)
-        ranges.append(distance)
-    return (start, end), (sines[0], sines[1]), (ranges[0], ranges[1])
+        nearness.append(-distance)
+    return (start, end), (sines[0], sines[1]), (nearness[0], nearness[1])
 
 
 def _at(scene: Scene, pair: Indices, at: Floats) -> tuple[Floats, Floats]:

@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 if TYPE_CHECKING:
-    from skyfield.timelib import Timescale
+    from skyfield.timelib import Time, Timescale
 
 Floats = NDArray[np.float64]
 
@@ -49,6 +49,16 @@ def julian_day(utc_s: Floats) -> tuple[Floats, Floats]:
     return _ORIGIN_JD + days, (utc_s - days * DAY_S) / DAY_S
 
 
+def skyfield_time(utc_s: Floats) -> Time:
+    """A Skyfield ``Time`` of ``utc_s``.
+
+    Days and seconds of the day go in apart: Skyfield adds the leap seconds of the date it is given,
+    so seconds counted from 2000 would miss those inserted since.
+    """
+    days = np.floor(np.asarray(utc_s, float) / DAY_S)
+    return timescale().utc(2000, 1, 1 + days.astype(int), 0, 0, utc_s - days * DAY_S)
+
+
 def sidereal_angle_rad(utc_s: Floats) -> Floats:
     """Greenwich mean sidereal angle of 1982 at UT1 (AIAA 2006-6753, appendix C), shape as ``utc_s``.
 
@@ -56,13 +66,13 @@ def sidereal_angle_rad(utc_s: Floats) -> Floats:
     """
     from skyfield.sgp4lib import theta_GMST1982
 
-    time = timescale().utc(2000, 1, 1, 0, 0, np.asarray(utc_s, float))
+    time = skyfield_time(utc_s)
     return np.asarray(theta_GMST1982(time.whole, time.ut1_fraction)[0], float)
 
 
 def tai_minus_utc_s(utc_s: Floats) -> Floats:
     """Whole leap seconds between TAI and UTC."""
-    time = timescale().utc(2000, 1, 1, 0, 0, np.asarray(utc_s, float))
+    time = skyfield_time(utc_s)
     days = (time.whole - _ORIGIN_JD) + time.tai_fraction
     return np.asarray(np.rint(days * DAY_S - utc_s), float)
 
@@ -76,7 +86,7 @@ def system_minus_utc_s(system: str, utc_s: Floats) -> Floats:
     if system == "UTC":
         return np.zeros_like(utc_s)
     if system == "UT1":
-        return np.asarray(timescale().utc(2000, 1, 1, 0, 0, utc_s).dut1, float)
+        return np.asarray(skyfield_time(utc_s).dut1, float)
     offset = {"TAI": 0.0, "TT": 32.184, "GPS": -19.0}.get(system)
     if offset is None:
         raise ValueError(f"time system {system!r} is not one of UTC, TAI, TT, GPS, UT1")

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
-import defusedxml.ElementTree as safe_xml
+from defusedxml import ElementTree as SafeTree
 from defusedxml.common import DefusedXmlException
 
 from passplan.inputs.errors import Findings
@@ -16,7 +16,7 @@ from passplan.inputs.lines import shortened
 def xml_root(content: bytes, file: str | Path, findings: Findings) -> Any | None:
     """The root element of ``content``, or None with a problem noted. Never expands an entity."""
     try:
-        return safe_xml.fromstring(content, forbid_dtd=True)
+        return SafeTree.fromstring(content, forbid_dtd=True)
     except DefusedXmlException:
         remedy = "the XML declares a document type or entities, which are not read; remove the declaration"
     except (SyntaxError, ValueError, LookupError) as fault:  # ElementTree.ParseError is a SyntaxError

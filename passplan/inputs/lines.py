@@ -40,5 +40,5 @@ def few_faults(file: str | Path, findings: Findings, most: int = _MOST_FAULTS) -
 
 
 def shortened(text: str, width: int = 80) -> str:
-    """``text`` cut to ``width`` characters, so that a hostile line does not end up in a message."""
-    return text if len(text) <= width else text[:width] + "..."
+    """``text`` in one line and cut to ``width`` characters, so that a hostile one does not end up in a message."""
+    return " ".join(text[:width].split()) + ("..." if len(text) > width else "")

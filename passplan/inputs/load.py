@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from dataclasses import dataclass
 from datetime import datetime, timedelta
@@ -67,18 +68,18 @@ def load_run(
         raise AssertionError("a config that cannot be read notes a problem")  # pragma: no cover
     start_utc, end_utc = _horizon(settings, start, path, findings)
     rules = _read_policy(settings, policy or {}, path, reader, findings)
-    fleet = _read_fleet(path.parent / settings.fleet, reader, findings)
-    ground = _read_ground(path.parent / settings.ground, reader, findings)
+    fleet = _read_fleet(beside(path, settings.fleet), reader, findings)
+    ground = _read_ground(beside(path, settings.ground), reader, findings)
     requests = _read_requests(settings, path, fleet, ground, reader, findings)
     check_matches(fleet.spacecraft, fleet.radios, ground.antennas, ground.receivers, ground.transmitters,
-                  path.parent / settings.fleet, findings)
+                  beside(path, settings.fleet), findings)
     closures: tuple[Closure, ...] = ()
     if ground.antennas:
-        sources = [ClosureSource(path.parent / c.file, c.antenna, c.site) for c in settings.closures]
+        sources = [ClosureSource(beside(path, c.file), c.antenna, c.site) for c in settings.closures]
         closures = read_closures(sources, ground.antennas, start_utc, end_utc, reader, findings)
     try:
         orbits = resolve_orbits(
-            fleet.spacecraft, [path.parent / item for item in settings.elements], (path.parent / settings.fleet).parent,
+            fleet.spacecraft, [beside(path, item) for item in settings.elements], beside(path, settings.fleet).parent,
             start_utc, end_utc, rules, reader, findings,
         )
     except ElementsError:
@@ -92,6 +93,11 @@ def load_run(
         orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
         warnings=tuple(findings.warnings), files=reader.files,
     )
+
+
+def beside(path: Path, name: str) -> Path:
+    """The path that ``name`` means when it stands in the file at ``path``, without detours through ``..``."""
+    return Path(os.path.normpath(path.parent / name))
 
 
 def _horizon(
@@ -117,7 +123,7 @@ def _read_policy(
 ) -> Policy:
     where, written = path, settings.policy
     if isinstance(written, str):
-        where = path.parent / written
+        where = beside(path, written)
         written = read_toml(where, reader, findings, "policy") or {}
         prefix = ""
     else:
@@ -139,7 +145,7 @@ def _read_fleet(path: Path, reader: Reader, findings: Findings) -> _Fleet:
         if isinstance(radio, DownlinkRadio) and radio.modcod_table not in tables:
             named = radio.modcod_table
             table = (builtin_table(named) if named in builtin_names()
-                     else read_modcod_table(path.parent / named, reader, findings))
+                     else read_modcod_table(beside(path, named), reader, findings))
             if table is not None:
                 tables[named] = table
     check_fleet(spacecraft, radios, tables, path, findings)
@@ -168,7 +174,7 @@ def _read_requests(
 ) -> dict[str, Request]:
     placed = []
     for name in settings.requests:
-        file = path.parent / name
+        file = beside(path, name)
         if file.suffix.lower() == ".csv":
             placed += placed_records({"request": file.name}, "request", file, reader, findings)
             continue

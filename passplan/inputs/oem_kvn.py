@@ -73,7 +73,9 @@ class _Reading:
         if found is None:
             self._problem(where, shortened(line), "not of the form KEYWORD = value; correct the line")
         elif found[0] not in METADATA:
-            self._problem(where, shortened(line), f"not a metadata keyword of an OEM; {nearest(shortened(found[0]), METADATA)}")
+            self._problem(
+                where, shortened(line), f"not a metadata keyword of an OEM; {nearest(shortened(found[0]), METADATA)}"
+            )
         elif found[0] in metadata:
             self._problem(where, shortened(line), f"{found[0]} stands twice; remove one")
         else:

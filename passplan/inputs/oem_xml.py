@@ -32,7 +32,9 @@ def _segment(element: Any, place: str, file: str | Path, findings: Findings) -> 
     metadata, data = find_first(element, "metadata"), find_first(element, "data")
     for key, value, _ in leaves(metadata if metadata is not None else ()):
         if key not in METADATA:
-            findings.problem(file, f"{place}.{key}", value, f"not a metadata keyword of an OEM; {nearest(key, METADATA)}")
+            findings.problem(
+                file, f"{place}.{key}", value, f"not a metadata keyword of an OEM; {nearest(key, METADATA)}"
+            )
         elif key in segment.metadata:
             findings.problem(file, f"{place}.{key}", value, "stands twice; remove one")
         else:

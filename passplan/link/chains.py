@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal
 
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio
@@ -27,9 +28,8 @@ class Rung:
 class Chain:
     """A radio aboard with the receiver (command: transmitter) on the ground that serves it best.
 
-    ``merit_db`` is Es/N0 (command: Eb/N0) after implementation loss, had the path no loss at all; take
-    free-space loss and gas attenuation off to get the quality on a path. ``rungs`` are in falling order
-    of rate, and each needs less than the one before it.
+    Everything of a budget that does not move: losses are positive; ``rate_hz`` is the symbol rate
+    (command: the bit rate). ``rungs`` are in falling order of rate, each needing less than the one before.
     """
 
     radio: str
@@ -37,9 +37,27 @@ class Chain:
     direction: Literal["downlink", "command"]
     frequency_mhz: float
     polarisation: str
-    merit_db: float
+    eirp_dbw: float
+    pointing_loss_aboard_db: float
+    pointing_loss_ground_db: float
+    polarisation_loss_db: float
+    g_over_t_db_per_k: float
+    rate_hz: float
+    implementation_loss_db: float
     acquisition_s: float
     rungs: tuple[Rung, ...]
+
+    @cached_property
+    def merit_db(self) -> float:
+        """Es/N0 (command: Eb/N0) after implementation loss, had the path no loss at all [dB].
+
+        Free-space loss and gas attenuation come off it to give the quality on a path.
+        """
+        loss_db = (
+            self.pointing_loss_aboard_db + self.pointing_loss_ground_db + self.polarisation_loss_db
+            + self.implementation_loss_db
+        )
+        return float(density_ratio_db(cn0_dbhz(self.eirp_dbw, loss_db, self.g_over_t_db_per_k), self.rate_hz))
 
 
 def receiver_figure_db_per_k(receiver: Receiver) -> float:
@@ -108,27 +126,42 @@ def chains_between(run: Run, spacecraft: str, antenna: str) -> tuple[Chain, ...]
 
 
 def _downlink(radio: DownlinkRadio, receiver: Receiver, mismatch_db: float, table: ModcodTable) -> Chain:
-    loss_db = radio.pointing_loss_db + receiver.pointing_loss_db + mismatch_db + radio.implementation_loss_db
-    cn0 = cn0_dbhz(radio.eirp_dbw, loss_db, receiver_figure_db_per_k(receiver))
     rungs = tuple(
-        Rung(
-            modcod.name,
-            net_rate_mbps(radio.symbol_rate_msps, modcod.efficiency_bit_per_symbol),
-            modcod.required_esn0_db,
-        )
-        for modcod in usable_modcods(radio, table)
+        Rung(row.name, net_rate_mbps(radio.symbol_rate_msps, row.efficiency_bit_per_symbol), row.required_esn0_db)
+        for row in usable_modcods(radio, table)
     )
     return Chain(
-        radio.name, receiver.name, "downlink", radio.frequency_mhz, radio.polarisation,
-        float(density_ratio_db(cn0, radio.symbol_rate_msps * 1e6)), radio.acquisition_s, rungs,
+        radio=radio.name,
+        partner=receiver.name,
+        direction="downlink",
+        frequency_mhz=radio.frequency_mhz,
+        polarisation=radio.polarisation,
+        eirp_dbw=radio.eirp_dbw,
+        pointing_loss_aboard_db=radio.pointing_loss_db,
+        pointing_loss_ground_db=receiver.pointing_loss_db,
+        polarisation_loss_db=mismatch_db,
+        g_over_t_db_per_k=receiver_figure_db_per_k(receiver),
+        rate_hz=radio.symbol_rate_msps * 1e6,
+        implementation_loss_db=radio.implementation_loss_db,
+        acquisition_s=radio.acquisition_s,
+        rungs=rungs,
     )
 
 
 def _command(radio: CommandRadio, transmitter: Transmitter, mismatch_db: float) -> Chain:
-    loss_db = radio.pointing_loss_db + transmitter.pointing_loss_db + mismatch_db + radio.implementation_loss_db
-    cn0 = cn0_dbhz(transmitter.eirp_dbw, loss_db, radio.g_over_t_db_per_k)
-    rung = Rung("command", radio.bit_rate_kbps / 1e3, radio.required_ebn0_db)
     return Chain(
-        radio.name, transmitter.name, "command", radio.frequency_mhz, radio.polarisation,
-        float(density_ratio_db(cn0, radio.bit_rate_kbps * 1e3)), radio.acquisition_s, (rung,),
+        radio=radio.name,
+        partner=transmitter.name,
+        direction="command",
+        frequency_mhz=radio.frequency_mhz,
+        polarisation=radio.polarisation,
+        eirp_dbw=transmitter.eirp_dbw,
+        pointing_loss_aboard_db=radio.pointing_loss_db,
+        pointing_loss_ground_db=transmitter.pointing_loss_db,
+        polarisation_loss_db=mismatch_db,
+        g_over_t_db_per_k=radio.g_over_t_db_per_k,
+        rate_hz=radio.bit_rate_kbps * 1e3,
+        implementation_loss_db=radio.implementation_loss_db,
+        acquisition_s=radio.acquisition_s,
+        rungs=(Rung("command", radio.bit_rate_kbps / 1e3, radio.required_ebn0_db),),
     )

@@ -10,19 +10,11 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from passplan.geometry.pointing import LookAngles, look_angles
-from passplan.inputs.fleet import CommandRadio, DownlinkRadio
-from passplan.inputs.ground import Receiver, Transmitter
+from passplan.inputs.fleet import DownlinkRadio
 from passplan.inputs.run import Run
-from passplan.link.atmosphere import LOWEST_STATED_ELEVATION_DEG, ZenithGas, gas_attenuation_db, gas_tables
+from passplan.link.atmosphere import LOWEST_STATED_ELEVATION_DEG, gas_attenuation_db, gas_tables
 from passplan.link.budget import BOLTZMANN_DBW_PER_K_HZ, Floats, ebn0_from_esn0_db, free_space_loss_db
-from passplan.link.chains import (
-    Chain,
-    Rung,
-    best_receiver,
-    best_transmitter,
-    chains_between,
-    receiver_figure_db_per_k,
-)
+from passplan.link.chains import Chain, Rung, chains_between
 
 
 @dataclass(frozen=True)
@@ -46,7 +38,8 @@ def budget_lines(run: Run, spacecraft: str, antenna: str, at_utc: np.datetime64)
     lines: list[BudgetLine] = []
     for chain in chains_between(run, spacecraft, antenna):
         link = f"{chain.direction} {chain.radio} via {chain.partner}"
-        terms = [*_geometry(look), *_signal(run, antenna, chain, look), *_demodulation(run, chain, look, antenna)]
+        path = _path(run, antenna, chain, look)
+        terms = (*_geometry(look), *_signal(chain, path), *_demodulation(run, chain, path))
         lines.extend(BudgetLine(link, *term) for term in terms)
     return lines
 
@@ -70,18 +63,26 @@ _ALONG_COLUMNS = (
 _Term = tuple[str, float | str, str, str]
 
 
+@dataclass(frozen=True)
+class _Path:
+    """The moving terms of one chain: pointing, losses [dB], and the quality that is left [dB]."""
+
+    look: LookAngles
+    free_space_db: Floats
+    gas_db: Floats
+    quality_db: Floats
+
+
 def _look(run: Run, spacecraft: str, antenna: str, times_utc: NDArray[np.datetime64]) -> LookAngles:
     return look_angles(run.orbits[spacecraft], run.sites[run.antennas[antenna].site], times_utc)
 
 
-def _gas(run: Run, antenna: str, chain: Chain) -> ZenithGas:
+def _path(run: Run, antenna: str, chain: Chain, look: LookAngles) -> _Path:
     site = run.sites[run.antennas[antenna].site]
-    return gas_tables([(site, chain.frequency_mhz)])[site.name, chain.frequency_mhz]
-
-
-def _quality_db(run: Run, antenna: str, chain: Chain, look: LookAngles) -> Floats:
-    loss_db = free_space_loss_db(chain.frequency_mhz, look.range_km)
-    return np.asarray(chain.merit_db - loss_db - gas_attenuation_db(_gas(run, antenna, chain), look.elevation_deg))
+    gas = gas_tables([(site, chain.frequency_mhz)])[site.name, chain.frequency_mhz]
+    free_space_db = free_space_loss_db(chain.frequency_mhz, look.range_km)
+    gas_db = gas_attenuation_db(gas, look.elevation_deg)
+    return _Path(look, free_space_db, gas_db, np.asarray(chain.merit_db - free_space_db - gas_db))
 
 
 def _pick(rungs: tuple[Rung, ...], quality_db: float, margin_db: float) -> tuple[Rung, bool]:
@@ -100,79 +101,51 @@ def _geometry(look: LookAngles) -> Iterator[_Term]:
     yield "slant range", float(look.range_km[0]), "km", "orbit and site"
 
 
-def _signal(run: Run, antenna: str, chain: Chain, look: LookAngles) -> Iterator[_Term]:
-    """From EIRP to energy per symbol (or bit) over noise density."""
-    radio, partner, mismatch_db = _ends(run, antenna, chain)
-    aboard, ground = f"radio {radio.name}", f"{'receiver' if isinstance(partner, Receiver) else 'transmitter'} {partner.name}"
-    low = float(look.elevation_deg[0]) < LOWEST_STATED_ELEVATION_DEG
+def _signal(chain: Chain, path: _Path) -> Iterator[_Term]:
+    """From EIRP to energy per symbol (or bit) over noise density; 0.0 - x, so that no loss prints as -0."""
+    aboard = f"radio {chain.radio}"
+    ground = f"{'receiver' if chain.direction == 'downlink' else 'transmitter'} {chain.partner}"
+    sender, listener = (aboard, ground) if chain.direction == "downlink" else (ground, aboard)
+    low = float(path.look.elevation_deg[0]) < LOWEST_STATED_ELEVATION_DEG
     gas_source = "ITU-R P.676-12, Annex 2" + (", carried on below its stated 5 deg" if low else "")
-    gas_db = float(gas_attenuation_db(_gas(run, antenna, chain), look.elevation_deg)[0])
-    down = isinstance(radio, DownlinkRadio)
-    rate_hz = radio.symbol_rate_msps * 1e6 if isinstance(radio, DownlinkRadio) else radio.bit_rate_kbps * 1e3
-    rate_db = 10.0 * float(np.log10(rate_hz))
-    quality_db = float(_quality_db(run, antenna, chain, look)[0]) + radio.implementation_loss_db
+    rate_db = 10.0 * float(np.log10(chain.rate_hz))
+    ratio_db = float(path.quality_db[0]) + chain.implementation_loss_db
     yield "frequency", chain.frequency_mhz, "MHz", aboard
-    yield "EIRP", _eirp_dbw(radio, partner), "dBW", aboard if down else ground
-    yield "pointing loss aboard", -radio.pointing_loss_db, "dB", aboard
-    yield "free-space loss", -float(free_space_loss_db(chain.frequency_mhz, look.range_km)[0]), "dB", "ITU-R P.525"
-    yield "gas attenuation", -gas_db, "dB", gas_source
-    yield "polarisation loss", -mismatch_db, "dB", f"{radio.polarisation} with {'/'.join(partner.polarisations)}"
-    yield "pointing loss on the ground", -partner.pointing_loss_db, "dB", ground
-    yield "G/T", _figure_db_per_k(radio, partner), "dB/K", ground if down else aboard
-    yield "Boltzmann's constant", -BOLTZMANN_DBW_PER_K_HZ, "dBHzK/W", "SI"
-    yield "C/N0", quality_db + rate_db, "dBHz", "sum of the terms above"
-    yield "symbol rate" if down else "bit rate", -rate_db, "dBHz", aboard
-    yield "Es/N0" if down else "Eb/N0", quality_db, "dB", "C/N0 less the rate"
+    yield "EIRP", chain.eirp_dbw, "dBW", sender
+    yield "pointing loss aboard", 0.0 - chain.pointing_loss_aboard_db, "dB", aboard
+    yield "free-space loss", -float(path.free_space_db[0]), "dB", "ITU-R P.525"
+    yield "gas attenuation", -float(path.gas_db[0]), "dB", gas_source
+    yield "polarisation loss", 0.0 - chain.polarisation_loss_db, "dB", f"{chain.polarisation} aboard, {ground}"
+    yield "pointing loss on the ground", 0.0 - chain.pointing_loss_ground_db, "dB", ground
+    yield "G/T", chain.g_over_t_db_per_k, "dB/K", listener
+    yield "Boltzmann's constant", -BOLTZMANN_DBW_PER_K_HZ, "dBHzK/W", "SI, taken off"
+    yield "C/N0", ratio_db + rate_db, "dBHz", "sum of EIRP and the terms below it"
+    yield "symbol rate" if chain.direction == "downlink" else "bit rate", -rate_db, "dBHz", aboard
+    yield "Es/N0" if chain.direction == "downlink" else "Eb/N0", ratio_db, "dB", "C/N0 less the rate"
 
 
-def _demodulation(run: Run, chain: Chain, look: LookAngles, antenna: str) -> Iterator[_Term]:
+def _demodulation(run: Run, chain: Chain, path: _Path) -> Iterator[_Term]:
     """From energy over noise density to margin and rate."""
-    radio = run.radios[chain.radio]
-    quality_db = float(_quality_db(run, antenna, chain, look)[0])
+    radio, quality_db = run.radios[chain.radio], float(path.quality_db[0])
     rung, holds = _pick(chain.rungs, quality_db, run.policy.required_margin_db)
     note = "fastest that holds the margin" if holds else "most robust; it does not hold the margin"
-    yield "implementation loss", -radio.implementation_loss_db, "dB", f"radio {radio.name}"
+    yield "implementation loss", 0.0 - chain.implementation_loss_db, "dB", f"radio {chain.radio}"
     if isinstance(radio, DownlinkRadio):
-        efficiency = rung.rate_mbps / radio.symbol_rate_msps
-        ebn0_db = float(ebn0_from_esn0_db(quality_db + radio.implementation_loss_db, efficiency))
         yield "modcod", rung.name, "", note
-        yield "Eb/N0", ebn0_db, "dB", "Es/N0 - 10 log10(efficiency), before implementation loss"
         yield "required Es/N0", -rung.required_db, "dB", run.modcod_tables[radio.modcod_table].source
     else:
-        yield "required Eb/N0", -rung.required_db, "dB", f"radio {radio.name}"
-    yield "margin", quality_db - rung.required_db, "dB", "what is left"
-    yield "margin required", run.policy.required_margin_db, "dB", "policy"
+        yield "required Eb/N0", -rung.required_db, "dB", f"radio {chain.radio}"
+    asked = f"what is left; the policy asks for {run.policy.required_margin_db:g} dB"
+    yield "margin", quality_db - rung.required_db, "dB", asked
     yield "net rate", rung.rate_mbps if holds else 0.0, "Mbit/s", note
-
-
-def _ends(run: Run, antenna: str, chain: Chain) -> tuple[DownlinkRadio | CommandRadio, Receiver | Transmitter, float]:
-    """The radio, its partner on the ground and the polarisation loss between them."""
-    radio, ground = run.radios[chain.radio], run.antennas[antenna]
     if isinstance(radio, DownlinkRadio):
-        found: tuple[Receiver | Transmitter, float] | None = best_receiver(
-            radio, [run.receivers[name] for name in ground.receivers]
-        )
-    else:
-        found = best_transmitter(radio, [run.transmitters[name] for name in ground.transmitters])
-    if found is None:
-        raise KeyError(f"no chain of {antenna} serves radio {radio.name}")
-    return radio, *found
-
-
-def _eirp_dbw(radio: DownlinkRadio | CommandRadio, partner: Receiver | Transmitter) -> float:
-    return partner.eirp_dbw if isinstance(partner, Transmitter) else _downlink(radio).eirp_dbw
-
-
-def _figure_db_per_k(radio: DownlinkRadio | CommandRadio, partner: Receiver | Transmitter) -> float:
-    if isinstance(radio, CommandRadio):
-        return radio.g_over_t_db_per_k
-    if isinstance(partner, Receiver):
-        return receiver_figure_db_per_k(partner)
-    raise TypeError("a downlink radio is served by a receiver")
+        ratio_db = quality_db + chain.implementation_loss_db
+        ebn0_db = float(ebn0_from_esn0_db(ratio_db, rung.rate_mbps / radio.symbol_rate_msps))
+        yield "Eb/N0", ebn0_db, "dB", "Es/N0 - 10 log10(efficiency), for comparison"
 
 
 def _along(run: Run, antenna: str, chain: Chain, look: LookAngles, times_utc: NDArray[np.datetime64]) -> pd.DataFrame:
-    quality_db = _quality_db(run, antenna, chain, look)
+    quality_db = _path(run, antenna, chain, look).quality_db
     picks = [_pick(chain.rungs, float(value), run.policy.required_margin_db) for value in quality_db]
     columns = (
         times_utc, chain.direction, chain.radio, chain.partner, look.azimuth_deg, look.elevation_deg, look.range_km,

@@ -8,14 +8,16 @@ from dataclasses import dataclass
 
 import numpy as np
 import pandas as pd
-from passplan.geometry.pointing import Samples
 
+from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import Quantity, ZenithGas, gas_attenuation_db, gas_tables
 from passplan.link.budget import free_space_loss_db
 from passplan.link.chains import Chain, chains_between
 from passplan.link.choice import CommandProfile, DownlinkProfile, Track, WindowLink
 from passplan.link.stretches import Floats, Ints, find_stretches
+
+__all__ = ["CommandProfile", "DownlinkProfile", "WindowLink", "link_profiles"]
 
 # Memory stays flat: this many samples are worked on at a time.
 _BLOCK_SAMPLES = 400_000

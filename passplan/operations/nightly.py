@@ -14,7 +14,7 @@ from filelock import FileLock, Timeout
 from pydantic import Field
 
 from passplan.inputs.errors import Findings
-from passplan.inputs.load import load_run
+from passplan.inputs.load import beside, load_run
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import Instant, Record
 from passplan.inputs.run import Run
@@ -60,7 +60,7 @@ def read_nightly(path: str | Path) -> Nightly:
     findings.raise_if_any()
     config = checked(NightlyConfig, document, path, "", findings)
     findings.raise_if_any()
-    return Nightly(path.parent / config.run, path.parent / config.plans, config.start, config.watch_h)
+    return Nightly(beside(path, config.run), beside(path, config.plans), config.start, config.watch_h)
 
 
 def run_nightly(

@@ -30,13 +30,13 @@ def neighbour_cuts(windows: Windows, prepare_s: Sequence[int], release_s: Sequen
     """
     cuts = [Cuts() for _ in range(len(windows))]
     starts, ends = windows.start_s.tolist(), windows.end_s.tolist()
-    for owner, gap_of in ((windows.antenna.tolist(), lambda k: prepare_s[k] + release_s[k]),
-                          (windows.spacecraft.tolist(), lambda _: 0)):
+    setup_s = [a + b for a, b in zip(prepare_s, release_s, strict=True)]
+    for owner, gaps_s in ((windows.antenna.tolist(), setup_s), (windows.spacecraft.tolist(), None)):
         groups: dict[int, list[int]] = {}
         for w, k in enumerate(owner):
             groups.setdefault(k, []).append(w)
         for k, members in groups.items():
-            gap_s = gap_of(k)
+            gap_s = 0 if gaps_s is None else gaps_s[k]
             members.sort(key=lambda w: (starts[w], ends[w]))
             for n, w in enumerate(members):
                 for v in members[n + 1:]:

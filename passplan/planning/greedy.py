@@ -20,9 +20,13 @@ from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Recurrence, Terms, Wanted
 
 
-def plan_greedily(problem: Problem, terms: Terms, clock: Clock, maps: StorageMaps | None = None) -> list[int]:
-    """Options of a valid plan, sorted. Ends early, still valid, when the clock runs out."""
+def plan_greedily(
+    problem: Problem, terms: Terms, clock: Clock, *, maps: StorageMaps | None = None, begin: Iterable[int] = (),
+) -> list[int]:
+    """Options of a valid plan, sorted, built on those of ``begin``. Ends early, still valid, when time is up."""
     builder = _Builder(problem, terms, maps or storage_maps(problem))
+    for o in begin:
+        builder.take(int(o))
     for want in terms.wanted:
         builder.meet(want)
     for need in terms.recurrences:
@@ -37,7 +41,7 @@ class _Builder:
         self.occupancy = Occupancy(terms, len(problem.options))
         self.chosen: set[int] = set()
         self.of_craft: list[list[int]] = [[] for _ in range(len(problem.fleet))]
-        self.worth = [self._value(i, []) for i in range(len(problem.fleet))]
+        self.worth = [_value(problem, maps, i, []) for i in range(len(problem.fleet))]
         self.starts = problem.options.start_s.tolist()
         self.crafts = problem.options.spacecraft.tolist()
 
@@ -85,37 +89,47 @@ class _Builder:
                 if gain > 0.0:
                     heapq.heappush(heap, (-gain, o))
             elif gain > 0.0:
-                self._take(o)
+                self.take(o)
 
     def _take_best(self, candidates: Iterable[int]) -> None:
         best = max(((self._gain(o), -o) for o in candidates if self.occupancy.fits(o)), default=None)
         if best is not None:
-            self._take(-best[1])
+            self.take(-best[1])
 
-    def _take(self, option: int) -> None:
+    def take(self, option: int) -> None:
+        """Choose an option that fits."""
         self.occupancy.add(option)
         self.chosen.add(option)
         craft = self.crafts[option]
         self.of_craft[craft] = self._with(option)
-        self.worth[craft] = self._value(craft, self.of_craft[craft])
+        self.worth[craft] = _value(self.problem, self.maps, craft, self.of_craft[craft])
 
     def _gain(self, option: int) -> float:
         craft = self.crafts[option]
-        return self._value(craft, self._with(option)) - self.worth[craft]
+        with_it: float = _value(self.problem, self.maps, craft, self._with(option))
+        return with_it - float(self.worth[craft])
 
     def _with(self, option: int) -> list[int]:
         return sorted([*self.of_craft[self.crafts[option]], option], key=self.starts.__getitem__)
 
-    def _value(self, craft: int, mine: list[int]) -> float:
-        problem, maps = self.problem, self.maps
-        fleet, options = problem.fleet, problem.options
-        fill, generation = float(fleet.start_fill_mb[craft]), float(fleet.generation_mb_per_s[craft])
-        capacity = float(fleet.capacity_mb[craft])
-        clock, sent, lost, cost = 0, 0.0, 0.0, 0.0
-        for o in mine:
-            fill += generation * (int(options.start_s[o]) - clock)
-            lost += max(0.0, fill - capacity)
-            fill, sent_now, lost_now = maps.apply(o, min(fill, capacity))
-            sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(options.cost[o]), int(options.end_s[o])
-        lost += max(0.0, fill + generation * (problem.horizon_s - clock) - capacity)
-        return float(fleet.weight[craft]) * sent - problem.spill_cost_per_mb * lost - problem.worth_per_money * cost
+
+def gain_of(problem: Problem, maps: StorageMaps, others: list[int], option: int) -> float:
+    """What an option adds beside ``others`` of its spacecraft (in time order, none overlapping it)."""
+    craft, starts = int(problem.options.spacecraft[option]), problem.options.start_s
+    joined = sorted([*others, option], key=lambda o: int(starts[o]))
+    return _value(problem, maps, craft, joined) - _value(problem, maps, craft, others)
+
+
+def _value(problem: Problem, maps: StorageMaps, craft: int, mine: list[int]) -> float:
+    """The part of the objective of one spacecraft with the contacts ``mine``, in time order."""
+    fleet, options, spill, money = problem.fleet, problem.options, problem.spill_cost_per_mb, problem.worth_per_money
+    fill, generation = float(fleet.start_fill_mb[craft]), float(fleet.generation_mb_per_s[craft])
+    capacity = float(fleet.capacity_mb[craft])
+    clock, sent, lost, cost = 0, 0.0, 0.0, 0.0
+    for o in mine:
+        fill += generation * (int(options.start_s[o]) - clock)
+        lost += max(0.0, fill - capacity)
+        fill, sent_now, lost_now = maps.apply(o, min(fill, capacity))
+        sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(options.cost[o]), int(options.end_s[o])
+    lost += max(0.0, fill + generation * (problem.horizon_s - clock) - capacity)
+    return float(fleet.weight[craft]) * sent - spill * lost - money * cost

@@ -19,7 +19,7 @@ import numpy as np
 from ortools.math_opt import model_pb2
 
 from passplan.planning.cliques import clique_spans
-from passplan.planning.problem import Floats, Integers, Problem, offsets_of, ragged_ranges
+from passplan.planning.problem import Floats, Integers, Problem, ragged_ranges
 from passplan.planning.rules.terms import Lane, Recurrence, Terms
 
 _INFINITY = float("inf")
@@ -121,7 +121,8 @@ def _add_storage(block: _Blocks, problem: Problem, craft: int) -> None:
     steps = len(made)
     weight = float(fleet.weight[craft])
     fill = block.add_columns(upper=np.full(steps, capacity / unit_mb))
-    lost = block.add_columns(upper=np.full(steps, _INFINITY), value=np.full(steps, -problem.spill_cost_per_mb * unit_mb))
+    spill_worth = np.full(steps, -problem.spill_cost_per_mb * unit_mb)
+    lost = block.add_columns(upper=np.full(steps, _INFINITY), value=spill_worth)
     balance_rhs = made.copy()
     balance_rhs[0] += float(fleet.start_fill_mb[craft]) / unit_mb
     balance = block.add_rows(lower=balance_rhs, upper=balance_rhs)
@@ -152,7 +153,8 @@ def _carried(problem: Problem, mine: Integers, instants: Integers) -> tuple[Inte
         options.piece_start_s[piece], instants[step])
     volume = overlap_s * options.piece_rate_mb_per_s[piece]
     key, where = np.unique(owner * len(instants) + step, return_inverse=True)
-    return key // len(instants), key % len(instants), np.bincount(where, weights=volume, minlength=len(key))
+    total: Floats = np.bincount(where, weights=volume, minlength=len(key)).astype(np.float64)
+    return key // len(instants), key % len(instants), total
 
 
 def _add_recurrence(block: _Blocks, need: Recurrence) -> None:
@@ -188,7 +190,8 @@ class _Blocks:
     ) -> Integers:
         """Columns from 0 to ``upper``; returns their indices."""
         zero = np.zeros(len(upper))
-        self._columns.append((upper, zero if value is None else value, zero if points is None else points, zero + integer))
+        self._columns.append((
+            upper, zero if value is None else value, zero if points is None else points, zero + integer))
         self._column_count += len(upper)
         return np.arange(self._column_count - len(upper), self._column_count)
 

@@ -9,12 +9,12 @@ from dataclasses import dataclass
 import numpy as np
 import pandas as pd
 
-from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import CommandChoice, DownlinkChoice, WindowLink
 from passplan.planning.cuts import Cuts, neighbour_cuts, spread
-from passplan.planning.problem import Antennas, Options, Windows, build_options
+from passplan.planning.horizon import column_seconds, seconds_of
+from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
 
 
 @dataclass(frozen=True)
@@ -38,15 +38,15 @@ class OptionSet:
     excluded: Mapping[int, tuple[str, str]]
 
 
-def window_arrays(run: Run, windows: pd.DataFrame) -> Windows:
+def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Antennas) -> Windows:
     """The windows table as arrays, in whole seconds from the start, rounded inward.
 
     A window of less than a second keeps its rounded start as its end.
     """
-    craft = {name: k for k, name in enumerate(run.spacecraft)}
-    antenna = {name: k for k, name in enumerate(run.antennas)}
-    start_s = np.ceil(seconds_of(run, windows["aos_utc"]) - 1e-9).astype(np.int64)
-    end_s = np.floor(seconds_of(run, windows["los_utc"]) + 1e-9).astype(np.int64)
+    craft = {name: k for k, name in enumerate(fleet.names)}
+    antenna = {name: k for k, name in enumerate(antennas.names)}
+    start_s = np.ceil(column_seconds(run, windows["aos_utc"]) - 1e-9).astype(np.int64)
+    end_s = np.floor(column_seconds(run, windows["los_utc"]) + 1e-9).astype(np.int64)
     start_s = np.clip(start_s, 0, run.horizon_s)
     return Windows(
         names=tuple(windows["window_id"]),
@@ -55,14 +55,11 @@ def window_arrays(run: Run, windows: pd.DataFrame) -> Windows:
         start_s=start_s, end_s=np.clip(end_s, start_s, run.horizon_s))
 
 
-def seconds_of(run: Run, instants: pd.Series) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
-    """Seconds from the horizon's start of a column of instants."""
-    return np.asarray((instants.to_numpy() - run.start_utc) / np.timedelta64(1, "ms") / 1000.0, dtype=float)
-
-
-def find_options(run: Run, windows: Windows, antennas: Antennas, links: Sequence[WindowLink]) -> OptionSet:
+def find_options(
+    run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
+) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
-    builder = _Builder(run, windows, antennas)
+    builder = _Builder(run, windows, fleet, antennas)
     cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
     candidates: list[Candidate] = []
     excluded: dict[int, tuple[str, str]] = {}
@@ -81,48 +78,50 @@ def find_options(run: Run, windows: Windows, antennas: Antennas, links: Sequence
 
 
 class _Builder:
-    def __init__(self, run: Run, windows: Windows, antennas: Antennas) -> None:
+    def __init__(self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas) -> None:
         self.run, self.windows, self.policy = run, windows, run.policy
         self.shortest_s = math.ceil(run.policy.min_contact_s)
-        self.craft_names, self.antenna_names = tuple(run.spacecraft), antennas.names
+        self.craft_names, self.antenna_names = fleet.names, antennas.names
         self.blocked: dict[str, list[tuple[int, int]]] = {name: [] for name in antennas.names}
         for closure in run.closures:
             k = antennas.names.index(closure.antenna)
-            start_s, end_s = (
-                float((datetime64(t) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
-                for t in (closure.start_utc, closure.end_utc))
             self.blocked[closure.antenna].append((
-                math.floor(start_s) - int(antennas.release_s[k]), math.ceil(end_s) + int(antennas.prepare_s[k])))
+                math.floor(seconds_of(run, closure.start_utc)) - int(antennas.release_s[k]),
+                math.ceil(seconds_of(run, closure.end_utc)) + int(antennas.prepare_s[k])))
         # A requested contact must be able to start at the earliest and end at the latest instant.
         self.asked: dict[str, list[tuple[int, int]]] = {}
         for request in run.requests:
-            low, high = (float((datetime64(t) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
-                         for t in (request.earliest_utc, request.latest_utc))
-            self.asked.setdefault(request.spacecraft, []).append((math.ceil(low), math.floor(high)))
+            self.asked.setdefault(request.spacecraft, []).append((
+                math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc))))
 
     def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
         """The options of one window, longest first, or the reason why there are none."""
         start_s, end_s = int(self.windows.start_s[w]), int(self.windows.end_s[w])
         craft, antenna = self._names(w)
-        if end_s - start_s < self.shortest_s:
-            return [], ("too_short", f"{end_s - start_s} s, less than the {self.shortest_s} s that a contact needs")
         pieces = [p for p in _subtract(start_s, end_s, self.blocked[antenna]) if p[1] - p[0] >= self.shortest_s]
-        if not pieces:
-            return [], ("closure", f"{antenna} is closed, or preparing or releasing beside a closure")
-        if link.downlink is None and link.command is None:
-            if not chains_between(self.run, craft, antenna):
-                return [], ("no_radio", f"no radio of {craft} matches a receiver or transmitter of {antenna}")
-            return [], ("no_margin", f"the margin never reaches {self.policy.required_margin_db:g} dB")
-        found: list[Candidate] = []
-        for low, high in pieces:
-            found += self._of_piece(w, link, low, high, cuts)
-        if not found:
-            return [], ("no_margin", "the margin does not hold long enough after acquisition")
+        reason = self._unusable(w, link, pieces)
+        found = [] if reason else [c for low, high in pieces for c in self._of_piece(w, link, low, high, cuts)]
         useful = [c for c in found if c.downlink is not None or self._commands_wanted(craft)]
         if not useful:
-            return [], ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
+            if found:
+                reason = ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
+            return [], reason or ("no_margin", "the margin does not hold long enough after acquisition")
         useful = self._undominated(useful, craft)
         return sorted(useful[: self.policy.options_per_window], key=lambda c: (c.start_s, c.end_s)), ("", "")
+
+    def _unusable(self, w: int, link: WindowLink, pieces: Sequence[tuple[int, int]]) -> tuple[str, str] | None:
+        """Why no contact at all is possible in a window, if that can be seen before looking at the link."""
+        craft, antenna = self._names(w)
+        length_s = int(self.windows.end_s[w] - self.windows.start_s[w])
+        if length_s < self.shortest_s:
+            return "too_short", f"{length_s} s, less than the {self.shortest_s} s that a contact needs"
+        if not pieces:
+            return "closure", f"{antenna} is closed, or preparing or releasing beside a closure"
+        if link.downlink is None and link.command is None:
+            if chains_between(self.run, craft, antenna):
+                return "no_margin", f"the margin never reaches {self.policy.required_margin_db:g} dB"
+            return "no_radio", f"no radio of {craft} matches a receiver or transmitter of {antenna}"
+        return None
 
     def _of_piece(self, w: int, link: WindowLink, low: int, high: int, cuts: Cuts) -> Iterator[Candidate]:
         """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""

@@ -3,22 +3,26 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 import pandas as pd
 
 from passplan.inputs.calendar_records import Request
-from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
 from passplan.planning.clock import Clock
+from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
 from passplan.planning.problem import Antennas, CommandNeed, Fleet, Limits, Problem, RequestNeed
 from passplan.planning.result import PlanResult
-from passplan.planning.tables import contacts_table, segments_table, unused_table
+from passplan.planning.rules import all_terms
+from passplan.planning.tables import contacts_table, segments_table
+from passplan.planning.unused import unused_table
+
+Report = Callable[[str, int, int], None]
 
 
 @dataclass(frozen=True, eq=False)
@@ -33,31 +37,43 @@ class Plan:
 
 
 def make_plan(
-    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], progress: Progress | None = None,
+    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], progress: Report | None = None,
 ) -> Plan:
     """Plan the contacts of a run.
 
-    ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. The
-    policy's time limit covers everything from here to the chosen contacts. ``progress(value, bound, gap)``
-    is called as they move.
+    ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. Spacecraft
+    without an orbit take no part. The policy's time limit covers everything from here to the chosen
+    contacts. ``progress(stage, done_s, total_s)`` is called as value, bound and gap move.
     """
     policy = run.policy
     clock = Clock(policy.time_limit_s)
     with clock.stage("options"):
         problem, option_set = build_problem(run, windows, links)
     limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed)
-    result = find_plan(problem, limits, clock=clock, progress=progress)
-    contacts = contacts_table(run, windows, problem, option_set, result)
+    result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
+    terms = all_terms(problem)
+    contacts = contacts_table(run, windows, problem, option_set, terms, result)
     return Plan(
         contacts, segments_table(run, problem, option_set, result, contacts),
-        unused_table(run, windows, problem, option_set, result), result, problem)
+        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem)
+
+
+def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress | None:
+    if report is None:
+        return None
+
+    def show(value: float, bound: float, gap: float) -> None:
+        stage = f"planning: value {value:,.0f}, bound {bound:,.0f}, gap {100.0 * gap:.2f} %"
+        report(stage, round(min(clock.elapsed_s(), limit_s)), round(limit_s))
+
+    return show
 
 
 def build_problem(run: Run, windows: pd.DataFrame, links: Sequence[WindowLink]) -> tuple[Problem, OptionSet]:
     """The problem of a run, and its options with the link choices behind them."""
-    craft = list(run.spacecraft.values())
+    craft = [c for name, c in run.spacecraft.items() if name in run.orbits]
     fleet = Fleet(
-        names=tuple(run.spacecraft), weight=np.array([c.weight for c in craft], dtype=float),
+        names=tuple(c.name for c in craft), weight=np.array([c.weight for c in craft], dtype=float),
         generation_mb_per_s=np.array([c.generation_mb_per_s for c in craft], dtype=float),
         capacity_mb=np.array([c.storage_mb for c in craft], dtype=float),
         start_fill_mb=np.array([c.start_fill_mb for c in craft], dtype=float))
@@ -65,37 +81,35 @@ def build_problem(run: Run, windows: pd.DataFrame, links: Sequence[WindowLink]) 
         names=tuple(run.antennas),
         prepare_s=np.array([math.ceil(a.prepare_s) for a in run.antennas.values()], dtype=np.int64),
         release_s=np.array([math.ceil(a.release_s) for a in run.antennas.values()], dtype=np.int64))
-    arrays = window_arrays(run, windows)
-    option_set = find_options(run, arrays, antennas, links)
+    arrays = window_arrays(run, windows, fleet, antennas)
+    option_set = find_options(run, arrays, fleet, antennas, links)
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
-        requests=tuple(_request_need(run, request) for request in run.requests), commands=_command_needs(run),
+        requests=tuple(_request_need(run, fleet, request) for request in run.requests),
+        commands=_command_needs(run, fleet),
         spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money)
     return problem, option_set
 
 
-def _request_need(run: Run, request: Request) -> RequestNeed:
+def _request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:
     antennas = frozenset(
         k for k, (name, antenna) in enumerate(run.antennas.items())
         if request.antenna in (None, name) and request.site in (None, antenna.site))
-    earliest_s, latest_s = (
-        float((datetime64(t) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
-        for t in (request.earliest_utc, request.latest_utc))
+    craft = fleet.names.index(request.spacecraft) if request.spacecraft in fleet.names else -1
     return RequestNeed(
-        request.name, list(run.spacecraft).index(request.spacecraft), antennas, request.service,
-        math.ceil(earliest_s), math.floor(latest_s), math.ceil(request.min_duration_s))
+        request.name, request.spacecraft, craft, antennas, request.service,
+        math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc)),
+        math.ceil(request.min_duration_s))
 
 
-def _command_needs(run: Run) -> tuple[CommandNeed, ...]:
-    """The intervals of all spacecraft that take part; one that was left out cannot be commanded anyway."""
+def _command_needs(run: Run, fleet: Fleet) -> tuple[CommandNeed, ...]:
     needs = []
-    for k, (name, craft) in enumerate(run.spacecraft.items()):
+    for k, name in enumerate(fleet.names):
+        craft = run.spacecraft[name]
         every_h = craft.command_every_h or run.policy.command_every_h
-        if every_h is None or name in run.left_out:
+        if every_h is None:
             continue
-        last_s = 0
-        if craft.last_command_utc is not None:
-            last_s = int(math.floor(
-                float((datetime64(craft.last_command_utc) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0))
+        last = craft.last_command_utc
+        last_s = 0 if last is None else math.floor(seconds_of(run, last))
         needs.append(CommandNeed(k, round(every_h * 3600.0), last_s))
     return tuple(needs)

@@ -13,6 +13,7 @@ from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import solve_exactly
+from passplan.planning.tidy import tidy
 from passplan.planning.value import account
 
 Progress = Callable[[float, float, float], None]
@@ -38,6 +39,9 @@ def find_plan(
         points_bound, bound = max(points_bound, solved.points_bound), min(bound, solved.value_bound)
         if solved.chosen is not None:
             best = max(best, _Candidate(problem, terms, solved.chosen, "exact"), key=_Candidate.rank)
+    with clock.stage("tidy"):
+        tidied = _Candidate(problem, terms, tidy(problem, terms, best.chosen), best.path)
+        best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
     return _conclude(best, terms, points_bound, bound, limits, clock)
 
 
@@ -50,12 +54,13 @@ class _Candidate:
         if fault is not None:
             raise RuntimeError(f"the {path} plan is wrong: {fault}")
         self.account = account(problem, self.chosen)
-        self.shortfalls = find_shortfalls(problem, terms, self.chosen)
+        self.shortfalls = find_shortfalls(terms, self.chosen)
         self.points = total_points(self.shortfalls)
 
     def rank(self) -> tuple[float, float]:
-        """Fewer points first, to within rounding, then more value."""
-        return -round(self.points, 6), self.account.value
+        """Fewer points first, then more value, both to within rounding."""
+        value = self.account.value
+        return -round(self.points, 6), float(f"{value:.9e}")
 
 
 def _conclude(

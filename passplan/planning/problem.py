@@ -117,9 +117,13 @@ class Options:
 
 @dataclass(frozen=True)
 class RequestNeed:
-    """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length."""
+    """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length.
+
+    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall.
+    """
 
     name: str
+    craft_name: str
     spacecraft: int
     antennas: frozenset[int]
     service: Service
@@ -211,6 +215,6 @@ def _freeze(record: object) -> None:
         value = getattr(record, f.name)
         if isinstance(value, np.ndarray):
             kind = {"Floats": np.float64, "Integers": np.int64, "Flags": np.bool_}[str(f.type)]
-            array = np.ascontiguousarray(value, dtype=kind).copy()
+            array: NDArray[Any] = np.ascontiguousarray(value, dtype=kind).copy()
             array.flags.writeable = False
             object.__setattr__(record, f.name, array)

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass
 
-from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Recurrence, Terms
 
 
@@ -27,18 +26,18 @@ class Shortfall:
     spans_s: tuple[tuple[int, int], ...] = ()
 
 
-def find_shortfalls(problem: Problem, terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...]:
+def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...]:
     """Every requirement in ``terms`` that the chosen options do not meet, in the order of the terms."""
     picked = {int(o) for o in chosen}
     found = []
     for want in terms.wanted:
         if picked.isdisjoint(want.options.tolist()):
-            craft = problem.fleet.names[want.spacecraft]
-            why = ("no window of the spacecraft offers a contact that fits its span, antenna, service and length"
-                   if len(want.options) == 0 else "every contact that would fit it collides with other requirements")
+            why = want.reason or (
+                "no window of the spacecraft offers a contact that fits its span, antenna, service and length"
+                if len(want.options) == 0 else "every contact that would fit it collides with other requirements")
             found.append(Shortfall(
-                "request", want.name, craft, want.points,
-                f"Request {want.name} for {craft} is not met: {why}.", len(want.options) > 0))
+                "request", want.name, want.owner, want.points,
+                f"Request {want.name} for {want.owner} is not met: {why}.", len(want.options) > 0))
     for need in terms.recurrences:
         spans = overdue_spans(need, picked)
         if spans:
@@ -72,9 +71,10 @@ def overdue_spans(need: Recurrence, picked: set[int]) -> tuple[tuple[int, int], 
 
 def least_points(terms: Terms) -> float:
     """Points that no plan can avoid, were every option usable at once: a proven floor of tier 1."""
-    asked = sum(want.points for want in terms.wanted if len(want.options) == 0)
-    return asked + sum(
-        (b - a) / need.every_s for need in terms.recurrences for a, b in overdue_spans(need, set(need.options.tolist())))
+    points = sum(want.points for want in terms.wanted if len(want.options) == 0)
+    for need in terms.recurrences:
+        points += sum((b - a) / need.every_s for a, b in overdue_spans(need, set(need.options.tolist())))
+    return points
 
 
 def total_points(shortfalls: Iterable[Shortfall]) -> float:

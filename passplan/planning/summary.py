@@ -47,7 +47,7 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
-        "storage": _storage([name for name in run.spacecraft if name in run.orbits], run, account),
+        "storage": _storage(run, account),
         "inputs": stored_inputs(run.files),
         "versions": {"passplan": __version__, **{name: _version(name) for name in _PACKAGES}},
         "seconds": {},
@@ -103,13 +103,13 @@ def _antenna(run: Run, name: str, contacts: pd.DataFrame) -> dict[str, Any]:
     }
 
 
-def _storage(names: list[str], run: Run, account: Account) -> dict[str, dict[str, float]]:
+def _storage(run: Run, account: Account) -> dict[str, dict[str, float]]:
     columns = {
         key: getattr(account, key) for key in ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
     }
     return {
         name: {"capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()}}
-        for i, name in enumerate(names)
+        for i, name in enumerate(run.spacecraft)
     }
 
 

@@ -1,23 +1,121 @@
-"""The plan as tables for the floors above: contacts, segments and unused windows."""
+"""The plan as tables for the floors above: contacts and their segments."""
 
 from __future__ import annotations
-
-from collections.abc import Iterable
 
 import numpy as np
 import pandas as pd
 
 from passplan.inputs.run import Run
+from passplan.planning.horizon import instants_of
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.options import Candidate, OptionSet
 from passplan.planning.problem import Problem
 from passplan.planning.result import PlanResult
-from passplan.planning.rules import all_terms
-from passplan.planning.value import account
+from passplan.planning.rules.terms import Terms
 
 CONTACT_COLUMNS = (
     "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "frequency_mhz",
     "polarisation", "start_utc", "end_utc", "duration_s", "usable_s", "modcod", "volume_mb", "min_margin_db",
     "peak_elevation_deg", "weight", "value", "cost", "origin", "change", "cut")
 SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "data_class", "volume_mb")
-UNUSED_COLUMNS = ("window_id", "spacecraft", "antenna", "aos_utc", "los_utc", "reason", "detail")
+# The only class of data so far.
+DATA_CLASS = "data"
+
+
+def contacts_table(
+    run: Run, windows: pd.DataFrame, problem: Problem, option_set: OptionSet, terms: Terms, result: PlanResult,
+) -> pd.DataFrame:
+    """One row per contact in time order. ``volume_mb`` is what it brings down, ``value`` weight x volume.
+
+    The modcod, margin and usable time are those of the downlink where there is one, of the command link
+    otherwise (then ``modcod`` is empty). A contact's id is its window's with ``.c1``, ``.c2`` ... in time order.
+    """
+    chosen, options = result.account.chosen, problem.options
+    asked = {int(o) for want in terms.wanted for o in want.options}
+    numbers: dict[int, int] = {}
+    rows = []
+    for o, volume_mb in zip(chosen.tolist(), result.account.contact_mb.tolist(), strict=True):
+        candidate = option_set.candidates[o]
+        w = candidate.window
+        numbers[w] = numbers.get(w, 0) + 1
+        craft, antenna = int(options.spacecraft[o]), problem.antennas.names[int(options.antenna[o])]
+        link = candidate.downlink or candidate.command
+        if link is None:
+            raise ValueError(f"option {o} offers no service")
+        weight = float(problem.fleet.weight[craft])
+        rows.append({
+            "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
+            "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
+            "service": _service(candidate), "radio": link.radio, "frequency_mhz": link.frequency_mhz,
+            "polarisation": link.polarisation, "start_utc": candidate.start_s, "end_utc": candidate.end_s,
+            "duration_s": candidate.end_s - candidate.start_s, "usable_s": link.usable_s,
+            "modcod": "" if candidate.downlink is None else candidate.downlink.modcod, "volume_mb": volume_mb,
+            "min_margin_db": link.min_margin_db,
+            "peak_elevation_deg": float(windows["peak_elevation_deg"].iloc[w]), "weight": weight,
+            "value": weight * volume_mb, "cost": candidate.cost, "origin": "requested" if o in asked else "planned",
+            "change": "new", "cut": _cut(o, problem, option_set, terms, result)})
+    table = pd.DataFrame(rows, columns=list(CONTACT_COLUMNS))
+    return _typed(table, run, texts=(
+        "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "polarisation", "modcod",
+        "origin", "change", "cut"))
+
+
+def segments_table(
+    run: Run, problem: Problem, option_set: OptionSet, result: PlanResult, contacts: pd.DataFrame,
+) -> pd.DataFrame:
+    """One row per piece of sending, in the order of the contacts; ``volume_mb`` is what it brings down."""
+    options, account = problem.options, result.account
+    counts = np.diff(options.piece_offset)[account.chosen]
+    owner = np.repeat(np.arange(len(account.chosen)), counts)
+    modcods = [c.downlink.modcod if c.downlink is not None else ""
+               for c in (option_set.candidates[o] for o in account.chosen[owner].tolist())]
+    table = pd.DataFrame({
+        "contact_id": contacts["contact_id"].to_numpy()[owner],
+        "start_utc": options.piece_start_s[account.piece], "end_utc": options.piece_end_s[account.piece],
+        "modcod": modcods, "rate_mbps": options.piece_rate_mb_per_s[account.piece] * 8.0,
+        "data_class": DATA_CLASS, "volume_mb": account.piece_mb}, columns=list(SEGMENT_COLUMNS))
+    return _typed(table, run, texts=("contact_id", "modcod", "data_class"))
+
+
+def _service(candidate: Candidate) -> str:
+    if candidate.downlink is None:
+        return "command"
+    return "downlink" if candidate.command is None else "both"
+
+
+def _cut(option: int, problem: Problem, option_set: OptionSet, terms: Terms, result: PlanResult) -> str:
+    """Why a contact is shorter than its window: a reason for its late start and one for its early end."""
+    options, windows = problem.options, problem.windows
+    w = int(options.window[option])
+    reasons = []
+    occupancy = Occupancy(terms, len(options))
+    for o in result.chosen:
+        if o != option:
+            occupancy.add(o)
+    siblings = np.flatnonzero(options.window == w)
+    for side, mine, whole in (("start", int(options.start_s[option]), int(windows.start_s[w])),
+                              ("end", int(options.end_s[option]), int(windows.end_s[w]))):
+        if mine == whole:
+            continue
+        beyond = options.start_s[siblings] < mine if side == "start" else options.end_s[siblings] > mine
+        longer = siblings[beyond].tolist()
+        blockers = [lane.kind for o in longer for lane, _ in occupancy.blockers(o)]
+        if not longer:
+            reasons.append(f"{side}: closure or no margin")
+        elif blockers:
+            reasons.append(f"{side}: {blockers[0]}")
+        else:
+            reasons.append(f"{side}: nothing to gain")
+    return "; ".join(reasons)
+
+
+def _typed(table: pd.DataFrame, run: Run, texts: tuple[str, ...]) -> pd.DataFrame:
+    """Seconds become instants, and columns keep their types when there is no row."""
+    for column in ("start_utc", "end_utc"):
+        table[column] = instants_of(run, table[column].to_numpy(dtype=np.int64))
+    for column in table.columns:
+        if column in texts:
+            table[column] = table[column].astype("object")
+        elif column not in ("start_utc", "end_utc"):
+            table[column] = table[column].astype("int64" if column.endswith("_s") else "float64")
+    return table

@@ -11,6 +11,7 @@ from pydantic import Field
 
 from passplan.inputs.crosscheck import check_ground
 from passplan.inputs.errors import Findings, nearest
+from passplan.inputs.load import beside
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import Name, Names, Record
@@ -66,7 +67,7 @@ def read_study(path: str | Path) -> Study:
     for name in {n for n in names if names.count(n) > 1}:
         findings.problem(path, "variant.name", name, "this name is used twice ('base' is taken); rename one")
     findings.raise_if_any()
-    return Study(head.name, path.parent / head.base, head.days, tuple(variants), path)
+    return Study(head.name, beside(path, head.base), head.days, tuple(variants), path)
 
 
 def apply(variant: Variant, run: Run, file: Path) -> Run:

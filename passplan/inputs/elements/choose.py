@@ -68,9 +68,7 @@ def choose(
     if usable:
         in_time = [i for i in usable if sets[i].epoch_utc <= end_utc] if rule == "newest" else []
         best = _first_of_equals(sets, _newest(sets, in_time) if in_time else _nearest(sets, usable, start_utc))
-    candidates = tuple(
-        Candidate(sets[i], judged[i].age_days, "chosen") if i == best else judged[i] for i in order
-    )
+    candidates = tuple(Candidate(sets[i], judged[i].age_days, "chosen") if i == best else judged[i] for i in order)
     if best is not None:
         return Choice(sets[best], candidates)
     return Choice(None, candidates, _why_none(candidates, refuse_age_days))
@@ -129,5 +127,9 @@ def _why_none(candidates: tuple[Candidate, ...], refuse_age_days: float) -> str:
         return "no element set of it was found"
     # The set that came nearest to being used tells the user most.
     nearest = min(candidates, key=lambda c: (c.use != "too old", abs(c.age_days)))
-    count = "its only element set is" if len(candidates) == 1 else f"none of its {len(candidates)} element sets is usable; the nearest is"
+    count = (
+        "its only element set is"
+        if len(candidates) == 1
+        else f"none of its {len(candidates)} element sets is usable; the nearest is"
+    )
     return f"{count} {nearest.use}: {nearest.reason}"

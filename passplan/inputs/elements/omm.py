@@ -159,7 +159,9 @@ def _is_sgp4(record: Mapping[str, Any], file: str | Path, place: str, findings: 
     for key, accepted in _ONLY_THESE.items():
         value = record.get(key)
         if value is not None and str(value).upper() not in accepted:
-            findings.problem(file, f"{place}.{key}", value, f"only {' or '.join(accepted)} can be read; convert the set")
+            findings.problem(
+                file, f"{place}.{key}", value, f"only {' or '.join(accepted)} can be read; convert the set"
+            )
             sound = False
     return sound
 

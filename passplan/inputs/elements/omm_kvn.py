@@ -35,7 +35,10 @@ def parse_omm_kvn(text: str, file: str | Path, findings: Findings) -> list[Eleme
             messages.append({})
         if key in messages[-1] and key in KEYWORDS:
             findings.problem(
-                file, where, shortened(line), f"{key} stands twice; begin each message with {_FIRST_KEYWORD} or remove one"
+                file,
+                where,
+                shortened(line),
+                f"{key} stands twice; begin each message with {_FIRST_KEYWORD} or remove one",
             )
             sound = False
         if not unit_is_right(key, unit):

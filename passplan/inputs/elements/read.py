@@ -28,6 +28,12 @@ _BY_EXTENSION: dict[str, ElementFormat] = {
     ".omm": "kvn",
     ".csv": "csv",
 }
+_BY_START: tuple[tuple[ElementFormat, re.Pattern[bytes]], ...] = (
+    ("xml", re.compile(rb"<")),
+    ("json", re.compile(rb"[{\[]")),
+    ("csv", re.compile(rb"[^\r\n]*(NORAD_CAT_ID|MEAN_MOTION)[^=\r\n]*[\r\n]")),
+    ("kvn", re.compile(rb"CCSDS_OMM_VERS|COMMENT |[A-Z_]+ *=")),
+)
 _ELEMENT_LINE = re.compile(rb"^[ \t]*1 [ 0-9A-Z][ 0-9]{4}[A-Z ] ", re.MULTILINE)
 _OTHER_MESSAGES = (b"CCSDS_OEM_VERS", b"CCSDS_OPM_VERS", b"CCSDS_OCM_VERS", b"CCSDS_TDM_VERS", b"CCSDS_CDM_VERS")
 _XML_MESSAGE = re.compile(rb"<(?:[A-Za-z]+:)?(oem|opm|ocm|tdm|cdm)[\s>]")
@@ -63,17 +69,12 @@ def element_format(content: bytes, path: Path) -> ElementFormat | None:
     start = content.removeprefix(b"\xef\xbb\xbf").lstrip()[:4_096]
     if _is_other_message(start):
         return None
+    # Element lines come first: the name above them may begin with any character.
     if _ELEMENT_LINE.search(content):
         return "tle"
-    if start.startswith(b"<"):
-        return "xml"
-    if start.startswith((b"{", b"[")):
-        return "json"
-    first = start.splitlines()[0] if start else b""
-    if b"NORAD_CAT_ID" in first or b"MEAN_MOTION" in first:
-        return "csv"
-    if start.startswith((b"CCSDS_OMM_VERS", b"COMMENT ")) or re.match(rb"[A-Z_]+ *=", first):
-        return "kvn"
+    for form, pattern in _BY_START:
+        if pattern.match(start):
+            return form
     return _BY_EXTENSION.get(path.suffix.lower()) if start else None
 
 
@@ -90,7 +91,9 @@ def _read_file(path: Path, reader: Reader, findings: Findings) -> list[ElementSe
             return []
         form = element_format(content, path)
         if form is None:
-            own.problem(path, "", None, "neither a TLE nor an OMM file (JSON, XML, KVN, CSV); name a file of element sets")
+            own.problem(
+                path, "", None, "neither a TLE nor an OMM file (JSON, XML, KVN, CSV); name a file of element sets"
+            )
             return []
         if form == "xml":
             return parse_omm_xml(content, path, own)

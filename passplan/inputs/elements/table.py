@@ -32,7 +32,9 @@ def elements_table(rows: Iterable[ElementRow]) -> pd.DataFrame:
     ephemeris), ``age_days`` is the age at the horizon's start, negative for an epoch after it.
     """
     listed = list(rows)
-    frame = pd.DataFrame({column: [getattr(row, column) for row in listed] for column in COLUMNS}, columns=list(COLUMNS))
+    frame = pd.DataFrame(
+        {column: [getattr(row, column) for row in listed] for column in COLUMNS}, columns=list(COLUMNS)
+    )
     frame["catalogue_number"] = pd.array([row.catalogue_number for row in listed], dtype="Int64")
     frame["epoch_utc"] = np.array([row.epoch_utc for row in listed], dtype="datetime64[ms]")
     frame["age_days"] = frame["age_days"].astype("float64")

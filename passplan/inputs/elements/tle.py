@@ -94,9 +94,7 @@ def _note_unfinished(name: _Half | None, first: _Half | None, file: str | Path, 
         )
 
 
-def _joined(
-    name: _Half | None, first: _Half, second: _Half, file: str | Path, findings: Findings
-) -> list[ElementSet]:
+def _joined(name: _Half | None, first: _Half, second: _Half, file: str | Path, findings: Findings) -> list[ElementSet]:
     one = {column.name: column.of(first.text) for column in LINE_1}
     two = {column.name: column.of(second.text) for column in LINE_2}
     lines = f"lines {first.number}-{second.number}"
@@ -110,12 +108,17 @@ def _joined(
         return []
     if one["ephemeris type"] not in _SGP4_TYPES:
         findings.problem(
-            file, f"line {first.number}, column 63", one["ephemeris type"], "not an SGP4 set (type 0); fetch the SGP4 set"
+            file,
+            f"line {first.number}, column 63",
+            one["ephemeris type"],
+            "not an SGP4 set (type 0); fetch the SGP4 set",
         )
         return []
     day = float(one["epoch day"])
     if not 1.0 <= day < 367.0:
-        findings.problem(file, f"line {first.number}, columns 21-32", one["epoch day"], "no such day of the year; correct it")
+        findings.problem(
+            file, f"line {first.number}, columns 21-32", one["epoch day"], "no such day of the year; correct it"
+        )
         return []
     mean = _mean_elements(name.text if name else "", one, two)
     fault = fault_of(mean)

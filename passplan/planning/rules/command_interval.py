@@ -23,6 +23,6 @@ def command_interval(problem: Problem) -> Terms:
             continue
         name = problem.fleet.names[need.spacecraft]
         terms.append(Recurrence(
-            name, need.spacecraft, mine, options.start_s[mine], options.end_s[mine], need.every_s, from_s,
+            name, mine, options.start_s[mine], options.end_s[mine], need.every_s, from_s,
             problem.horizon_s))
     return Terms(recurrences=tuple(terms))

@@ -10,8 +10,11 @@ from passplan.planning.rules.terms import Terms, Wanted
 
 def requests(problem: Problem) -> Terms:
     """One wanted term per request; a request that no option fits keeps an empty one, and is a shortfall."""
-    return Terms(wanted=tuple(
-        Wanted(need.name, need.spacecraft, np.flatnonzero(fits(problem.options, need))) for need in problem.requests))
+    wanted = []
+    for need in problem.requests:
+        reason = "the spacecraft takes no part in this run" if need.spacecraft < 0 else ""
+        wanted.append(Wanted(need.name, need.craft_name, np.flatnonzero(fits(problem.options, need)), reason=reason))
+    return Terms(wanted=tuple(wanted))
 
 
 def fits(options: Options, need: RequestNeed) -> Flags:

@@ -18,7 +18,7 @@ Shortfalls are counted in points and are minimised before any value is looked at
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import Protocol
 
 from passplan.planning.problem import Integers, Problem
@@ -49,24 +49,27 @@ class Lane:
 
 @dataclass(frozen=True, eq=False)
 class Wanted:
-    """At least one of ``options`` (all of one spacecraft), or a shortfall of ``points``."""
+    """At least one of ``options``, all of the spacecraft ``owner``, or a shortfall of ``points``.
+
+    ``reason`` says why there are no options, if the rule knows.
+    """
 
     name: str
-    spacecraft: int
+    owner: str
     options: Integers
     points: float = 1.0
+    reason: str = ""
 
 
 @dataclass(frozen=True, eq=False)
 class Recurrence:
     """Every instant of ``[from_s, until_s)`` lies in ``[start_s, end_s + every_s)`` of a chosen option.
 
-    All of one spacecraft. Each second that no chosen option covers is ``1 / every_s`` points of shortfall,
+    All are of the spacecraft ``name``. Each second that no chosen option covers is ``1 / every_s`` points of shortfall,
     so that a whole missed interval weighs as much as a missed request.
     """
 
     name: str
-    spacecraft: int
     options: Integers
     start_s: Integers
     end_s: Integers
@@ -83,12 +86,11 @@ class Terms:
     lanes: tuple[Lane, ...] = ()
     wanted: tuple[Wanted, ...] = ()
     recurrences: tuple[Recurrence, ...] = ()
-    notes: tuple[str, ...] = field(default=())
 
     def __add__(self, other: Terms) -> Terms:
         return Terms(
             self.removals + other.removals, self.lanes + other.lanes, self.wanted + other.wanted,
-            self.recurrences + other.recurrences, self.notes + other.notes)
+            self.recurrences + other.recurrences)
 
 
 class Rule(Protocol):

@@ -1,0 +1,80 @@
+"""Elevation masks: constant, or a polyline over azimuth that wraps at north."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from passplan.geometry.timescale import Floats
+from passplan.inputs.ground import Antenna
+
+
+@dataclass(frozen=True)
+class Mask:
+    """Straight pieces over azimuth: from (``begin_deg``, ``first_deg``) to (``finish_deg``, ``last_deg``).
+
+    The pieces cover [0, 360] in order without a gap; none crosses north. A constant mask is one piece.
+    """
+
+    begin_deg: Floats
+    finish_deg: Floats
+    first_deg: Floats
+    last_deg: Floats
+
+    @property
+    def lowest_deg(self) -> float:
+        """The least elevation of the mask anywhere."""
+        return float(min(self.first_deg.min(), self.last_deg.min()))
+
+    @property
+    def constant(self) -> bool:
+        """Whether the mask is the same all round."""
+        return bool(np.all(self.first_deg == self.lowest_deg) and np.all(self.last_deg == self.lowest_deg))
+
+    def piece(self, azimuth_deg: Floats) -> np.ndarray:
+        """Number of the piece that holds each azimuth in [0, 360)."""
+        return np.clip(np.searchsorted(self.begin_deg, azimuth_deg, side="right") - 1, 0, self.begin_deg.size - 1)
+
+    def elevation_deg(self, azimuth_deg: Floats) -> Floats:
+        """The mask at azimuths of any shape, wrapped into [0, 360)."""
+        azimuth = np.asarray(azimuth_deg, float) % 360.0
+        piece = self.piece(azimuth)
+        return np.asarray(self.first_deg[piece] + self.slope[piece] * (azimuth - self.begin_deg[piece]))
+
+    @property
+    def slope(self) -> Floats:
+        """Degrees of elevation per degree of azimuth, for each piece."""
+        return np.asarray((self.last_deg - self.first_deg) / (self.finish_deg - self.begin_deg))
+
+
+def mask_of(antenna: Antenna) -> Mask:
+    """The higher of the antenna's table and its ``min_elevation_deg``, as straight pieces.
+
+    The table is joined by straight lines and wraps at north; two points of one azimuth make a step.
+    """
+    floor = antenna.min_elevation_deg
+    if not antenna.mask:
+        return Mask(np.array([0.0]), np.array([360.0]), np.array([floor]), np.array([floor]))
+    points = _wrapped(sorted(antenna.mask, key=lambda point: point[0]))
+    pieces: list[tuple[float, float, float, float]] = []
+    for (a, x), (b, y) in zip(points, points[1:], strict=False):
+        if b <= a:
+            continue
+        if (x - floor) * (y - floor) < 0.0:
+            turn = a + (b - a) * (floor - x) / (y - x)
+            if a < turn < b:
+                pieces += [(a, turn, max(x, floor), floor), (turn, b, floor, max(y, floor))]
+                continue
+        pieces.append((a, b, max(x, floor), max(y, floor)))
+    return Mask(*(np.array(column, float) for column in zip(*pieces, strict=True)))
+
+
+def _wrapped(points: list[tuple[float, float]]) -> list[tuple[float, float]]:
+    """The table with points at exactly 0 and 360 deg, where the line across north passes them."""
+    (first, low), (last, high) = points[0], points[-1]
+    span = first + 360.0 - last
+    at_north = high if span <= 0.0 else high + (low - high) * (360.0 - last) / span
+    head = [] if first == 0.0 else [(0.0, at_north)]
+    tail = [] if last == 360.0 else [(360.0, at_north)]
+    return head + points + tail

@@ -1,0 +1,146 @@
+"""The windows table: when each antenna can follow each spacecraft."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+
+import numpy as np
+import pandas as pd
+
+from passplan.geometry.identity import prefixes, window_ids
+from passplan.geometry.masks import mask_of
+from passplan.geometry.passes import Rows, block_rows, joined
+from passplan.geometry.stations import stations
+from passplan.geometry.timescale import Floats, datetimes_ms, utc_seconds
+from passplan.geometry.timing import timing_sigma_s
+from passplan.geometry.trajectory import blocks
+from passplan.inputs.elements.model import ElementSet
+from passplan.inputs.ground import Antenna, Site
+from passplan.inputs.run import OrbitSource
+
+COLUMNS = (
+    "window_id", "spacecraft", "antenna", "site", "aos_utc", "los_utc", "duration_s", "peak_utc",
+    "peak_elevation_deg", "aos_azimuth_deg", "los_azimuth_deg", "min_range_km", "clipped",
+    "element_epoch_utc", "timing_sigma_s",
+)  # fmt: skip
+# Samples (antennas x times) of one object that are worked on at once; bounds the memory of long horizons.
+_SCENE_SAMPLES = 2_000_000
+_CLIPPED = np.array(["none", "start", "end", "both"], object)
+
+
+def find_windows(
+    orbits: Mapping[str, OrbitSource],
+    antennas: Mapping[str, Antenna],
+    sites: Mapping[str, Site],
+    start_utc: np.datetime64,
+    end_utc: np.datetime64,
+    *,
+    progress: Callable[[int, int], None] | None = None,
+) -> pd.DataFrame:
+    """Every window of every spacecraft and antenna in [start_utc, end_utc), ordered by AOS, antenna, spacecraft.
+
+    Elevation is geometric (no refraction, no light time) above the WGS 84 ellipsoid's horizontal plane;
+    SGP4 with WGS 72 constants, TEME turned to the Earth by GMST with Skyfield's built-in UT1, polar motion
+    off. Instants agree with the roots of Skyfield's ``altaz`` to a millisecond, the table's resolution.
+    An object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
+
+    ``progress(done, total)`` counts spacecraft. Columns as ``COLUMNS``; times are ``datetime64[ms]`` in
+    UTC, ``clipped`` tells which ends are cut by the horizon, ``element_epoch_utc`` is NaT for an ephemeris.
+    """
+    start_s, end_s = float(utc_seconds(start_utc)), float(utc_seconds(end_utc))
+    masks = [mask_of(antenna) for antenna in antennas.values()]
+    places = stations([sites[antenna.site] for antenna in antennas.values()])
+    parts: list[Rows] = []
+    done: set[int] = set()
+    if orbits and antennas:
+        for block in blocks(orbits, start_s, end_s, len(antennas)):
+            share = max(1, _SCENE_SAMPLES // max(1, block.positions_km[0].size))
+            for at in range(0, len(masks), share):
+                some = np.arange(at, min(at + share, len(masks)))
+                parts.append(block_rows(block, places.subset(some), [masks[i] for i in some], some, start_s, end_s))
+            done.update(block.objects.tolist())
+            if progress is not None:
+                progress(len(done), len(orbits))
+    if progress is not None and len(done) < len(orbits):
+        progress(len(orbits), len(orbits))
+    rows = _rounded(joined(parts)) if parts else None
+    return _table(rows, orbits, antennas, start_s, end_s)
+
+
+def _rounded(rows: Rows) -> Rows:
+    """Windows to the millisecond; an end that the orbit source sets is rounded inwards, to stay inside it."""
+    return rows
+
+
+def _table(
+    rows: Rows | None, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float
+) -> pd.DataFrame:
+    if rows is None:
+        return _empty()
+    names, antenna_names = list(orbits), list(antennas)
+    pair_prefix = [prefix for row in prefixes(names, antenna_names) for prefix in row]
+    ids = np.array(
+        window_ids(pair_prefix, rows.antenna * len(names) + rows.spacecraft, rows.slot, rows.whole_start_s), object
+    )
+    aos, los = np.rint(rows.start_s * 1e3), np.rint(rows.end_s * 1e3)
+    low = rows.open_start & (rows.whole_start_s > start_s)
+    aos[low] = np.ceil(rows.start_s[low] * 1e3 - 1e-4)
+    high = rows.open_end & (rows.whole_end_s < end_s)
+    los[high] = np.floor(rows.end_s[high] * 1e3 + 1e-4)
+    order = np.flatnonzero(rows.inside & (los > aos))
+    rank_antenna, rank_craft = _ranks(antenna_names), _ranks(names)
+    order = order[np.lexsort((rank_craft[rows.spacecraft[order]], rank_antenna[rows.antenna[order]], aos[order]))]
+    rows, ids, aos, los = rows.take(order), ids[order], aos[order], los[order]
+    peak = np.clip(np.rint(rows.peak_s * 1e3), aos, los)
+    clipped = (rows.whole_start_s < start_s) + 2 * (rows.whole_end_s > end_s)
+    site_names = np.array([antenna.site for antenna in antennas.values()], object)
+    return pd.DataFrame(
+        {
+            "window_id": ids,
+            "spacecraft": np.array(names, object)[rows.spacecraft],
+            "antenna": np.array(antenna_names, object)[rows.antenna],
+            "site": site_names[rows.antenna],
+            "aos_utc": datetimes_ms(aos / 1e3),
+            "los_utc": datetimes_ms(los / 1e3),
+            "duration_s": (los - aos) / 1e3,
+            "peak_utc": datetimes_ms(peak / 1e3),
+            "peak_elevation_deg": rows.peak_deg,
+            "aos_azimuth_deg": rows.start_azimuth_deg,
+            "los_azimuth_deg": rows.end_azimuth_deg,
+            "min_range_km": rows.range_km,
+            "clipped": _CLIPPED[clipped],
+            "element_epoch_utc": _epochs(orbits)[rows.spacecraft],
+            "timing_sigma_s": _sigmas(orbits, rows.spacecraft, rows.start_s),
+        },
+        columns=list(COLUMNS),
+    )
+
+
+def _ranks(names: list[str]) -> np.ndarray:
+    """Place of each name in alphabetical order."""
+    ranks = np.empty(len(names), np.int64)
+    ranks[sorted(range(len(names)), key=names.__getitem__)] = np.arange(len(names))
+    return ranks
+
+
+def _epochs(orbits: Mapping[str, OrbitSource]) -> np.ndarray:
+    epochs = [s.epoch_utc if isinstance(s, ElementSet) else np.datetime64("NaT", "ms") for s in orbits.values()]
+    return np.array(epochs, "datetime64[ms]")
+
+
+def _sigmas(orbits: Mapping[str, OrbitSource], spacecraft: np.ndarray, at_s: Floats) -> Floats:
+    sigma = np.empty(at_s.size)
+    order = np.argsort(spacecraft, kind="stable")
+    edges = np.searchsorted(spacecraft[order], np.arange(len(orbits) + 1))
+    for i, source in enumerate(orbits.values()):
+        mine = order[edges[i] : edges[i + 1]]
+        if mine.size:
+            sigma[mine] = timing_sigma_s(source, at_s[mine])
+    return sigma
+
+
+def _empty() -> pd.DataFrame:
+    times = {"aos_utc", "los_utc", "peak_utc", "element_epoch_utc"}
+    words = {"window_id", "spacecraft", "antenna", "site", "clipped"}
+    kinds = {c: "datetime64[ms]" if c in times else "str" if c in words else "float64" for c in COLUMNS}
+    return pd.DataFrame({c: pd.Series(dtype=kind) for c, kind in kinds.items()})

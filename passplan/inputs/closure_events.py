@@ -1,0 +1,102 @@
+"""What may be wrong with one iCalendar event, and the plain values of its properties."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from datetime import date, datetime
+from typing import Any
+
+from passplan.inputs.lines import shortened
+
+_READ = ("DTSTART", "DTEND", "DURATION", "RRULE", "RDATE", "EXDATE", "RECURRENCE-ID")
+# A rule that repeats every second since 1970 would take hours to expand; no antenna is closed that way.
+_TOO_FREQUENT = ("SECONDLY", "MINUTELY")
+
+
+@dataclass(frozen=True)
+class EventFault:
+    """One fault of an event: the property, the value that stands there, and what to do."""
+
+    where: str
+    value: str | None
+    remedy: str
+
+
+def event_fault(event: Any) -> EventFault | None:
+    """The first fault of a VEVENT that would make its times wrong or unknown, or None."""
+    for name, message in getattr(event, "errors", ()):
+        if str(name).upper() in _READ:
+            return EventFault(f", {name}", None, f"cannot be read ({shortened(str(message))}); correct it")
+    start = event.get("DTSTART")
+    if start is None:
+        return EventFault(", DTSTART", None, "missing; state when the event begins")
+    for name in ("DTSTART", "DTEND", "RECURRENCE-ID"):
+        fault = _zone_fault(event.get(name), name)
+        if fault is not None:
+            return fault
+    return _length_fault(event, start.dt) or _rule_fault(event.get("RRULE"))
+
+
+def first_value(component: Any, name: str) -> str:
+    """The text of a property, of its first appearance if it appears several times; "" if it does not."""
+    value = component.get(name, "")
+    if isinstance(value, list):
+        value = value[0] if value else ""
+    return str(value).strip()
+
+
+def listed_values(component: Any, name: str) -> list[str]:
+    """The values of a property that holds a list and may appear several times."""
+    value = component.get(name)
+    values = value if isinstance(value, list) else [value]
+    found: list[str] = []
+    for one in values:
+        if one is None:
+            continue
+        parts = getattr(one, "cats", None) or str(one).replace("\\,", ",").split(",")
+        found += [str(part).strip() for part in parts]
+    return [one for one in found if one]
+
+
+def _zone_fault(prop: Any, name: str) -> EventFault | None:
+    if prop is None:
+        return None
+    if isinstance(prop, list):
+        return EventFault(f", {name}", None, "stands twice in one event; remove one")
+    moment = prop.dt
+    if isinstance(moment, datetime):
+        return None if moment.tzinfo is not None else _floating(prop, name)
+    return None if isinstance(moment, date) else EventFault(f", {name}", str(moment), "not a time; correct it")
+
+
+def _floating(prop: Any, name: str) -> EventFault:
+    zone = prop.params.get("TZID")
+    if zone:
+        return EventFault(f", {name}", str(zone), "this time zone is not known; use a name such as Europe/Oslo, or UTC")
+    return EventFault(f", {name}", prop.dt.isoformat(), "the time has no zone; add Z for UTC, or a TZID")
+
+
+def _length_fault(event: Any, start: date | datetime) -> EventFault | None:
+    end, duration = event.get("DTEND"), event.get("DURATION")
+    if end is not None:
+        if isinstance(end.dt, datetime) != isinstance(start, datetime):
+            return EventFault(", DTEND", str(end.dt), "one of DTSTART and DTEND has a time and the other has none")
+        if end.dt <= start:
+            return EventFault(", DTEND", end.dt.isoformat(), "is not after DTSTART; swap or correct them")
+        return None
+    if duration is not None:
+        too_short = isinstance(duration, list) or duration.dt.total_seconds() <= 0.0
+        return EventFault(", DURATION", None, "is not positive; correct it") if too_short else None
+    if isinstance(start, datetime):
+        return EventFault(", DTEND", None, "missing; state when the event ends")
+    return None
+
+
+def _rule_fault(rules: Any) -> EventFault | None:
+    for rule in rules if isinstance(rules, list) else [rules]:
+        if rule is None:
+            continue
+        frequency = ",".join(map(str, rule.get("FREQ", [])))
+        if frequency in _TOO_FREQUENT or any(key in rule for key in ("BYSECOND", "BYMINUTE")):
+            return EventFault(", RRULE", frequency or None, "repeats too often for a closure; use HOURLY or rarer")
+    return None

@@ -1,0 +1,157 @@
+"""The tables of a plan as typed rows, with a fault for whatever cannot be read as one."""
+
+from __future__ import annotations
+
+import math
+from collections import Counter, defaultdict
+from collections.abc import Hashable, Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import pandas as pd
+
+from passplan.inputs.run import Run
+from passplan.planning.audit.faults import Fault
+
+_CONTACT_COLUMNS = (
+    "contact_id", "spacecraft", "antenna", "site", "service", "radio", "frequency_mhz", "polarisation", "start_utc",
+    "end_utc", "duration_s", "usable_s", "modcod", "volume_mb", "min_margin_db", "weight", "value", "cost",
+)
+_SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "volume_mb")
+_SERVICES = ("downlink", "command", "both")
+
+
+@dataclass(frozen=True)
+class Piece:
+    """One segment of a contact; times in seconds from the horizon's start."""
+
+    start_s: float
+    end_s: float
+    modcod: str
+    rate_mbps: float
+    volume_mb: float
+
+
+@dataclass(frozen=True)
+class Contact:
+    """One row of the contacts table with its segments in time order; seconds from the horizon's start."""
+
+    contact_id: str
+    spacecraft: str
+    antenna: str
+    site: str
+    service: str
+    radio: str
+    frequency_mhz: float
+    polarisation: str
+    start_s: float
+    end_s: float
+    duration_s: float
+    usable_s: float
+    modcod: str
+    volume_mb: float
+    min_margin_db: float
+    weight: float
+    value: float
+    cost: float
+    pieces: tuple[Piece, ...]
+
+    @property
+    def place(self) -> str:
+        """How a fault names the contact."""
+        return f"contact {self.contact_id} ({self.spacecraft} on {self.antenna})"
+
+
+def read_rows(run: Run, contacts: pd.DataFrame, segments: pd.DataFrame) -> tuple[list[Contact], list[Fault]]:
+    """The contacts that make sense, in time order, and a fault for every row or column that does not."""
+    faults = [
+        Fault("table", name, f"the column {column} is missing")
+        for name, table, columns in (
+            ("contacts table", contacts, _CONTACT_COLUMNS), ("segments table", segments, _SEGMENT_COLUMNS))
+        for column in columns
+        if column not in table.columns
+    ]
+    if faults:
+        return [], faults
+    known = set(map(str, contacts["contact_id"]))
+    for name, count in Counter(map(str, contacts["contact_id"])).items():
+        if count > 1:
+            faults.append(Fault("table", f"contact {name}", f"this identifier stands {count} times"))
+    pieces: dict[str, list[Piece]] = defaultdict(list)
+    for record in segments.to_dict("records"):
+        owner = str(record["contact_id"])
+        if owner not in known:
+            faults.append(Fault("table", f"segment of {owner}", "belongs to no contact of the plan"))
+        pieces[owner].append(_piece(run, record))
+    rows = []
+    for record in contacts.to_dict("records"):
+        own = sorted(pieces[str(record["contact_id"])], key=lambda piece: piece.start_s)
+        contact = _contact(run, record, tuple(own))
+        wrong = _nonsense(run, contact)
+        faults.extend(wrong)
+        if not wrong:
+            rows.append(contact)
+    return sorted(rows, key=lambda contact: (contact.start_s, contact.contact_id)), faults
+
+
+def _nonsense(run: Run, contact: Contact) -> list[Fault]:
+    """Faults that leave nothing to check any further."""
+    said: list[str] = []
+    if contact.spacecraft not in run.spacecraft:
+        said.append(f"the run has no spacecraft {contact.spacecraft}")
+    elif contact.spacecraft not in run.orbits:
+        said.append(f"{contact.spacecraft} was left out of the run: {run.left_out.get(contact.spacecraft, 'no orbit')}")
+    if contact.antenna not in run.antennas:
+        said.append(f"the run has no antenna {contact.antenna}")
+    if contact.service not in _SERVICES:
+        said.append(f"the service {contact.service!r} is none of {', '.join(_SERVICES)}")
+    times = [contact.start_s, contact.end_s, *(t for piece in contact.pieces for t in (piece.start_s, piece.end_s))]
+    if not all(map(math.isfinite, times)):
+        said.append("a time is missing or cannot be read")
+    elif contact.end_s <= contact.start_s:
+        said.append("it does not end after it starts")
+    return [Fault("table", contact.place, sentence) for sentence in said]
+
+
+def _contact(run: Run, record: Mapping[Hashable, Any], pieces: tuple[Piece, ...]) -> Contact:
+    names = ("contact_id", "spacecraft", "antenna", "site", "service", "radio", "polarisation", "modcod")
+    figures = (
+        "frequency_mhz", "duration_s", "usable_s", "volume_mb", "min_margin_db", "weight", "value", "cost",
+    )
+    return Contact(
+        start_s=_seconds(run, record["start_utc"]),
+        end_s=_seconds(run, record["end_utc"]),
+        pieces=pieces,
+        **{name: _text(record[name]) for name in names},
+        **{name: _figure(record[name]) for name in figures},
+    )
+
+
+def _piece(run: Run, record: Mapping[Hashable, Any]) -> Piece:
+    return Piece(
+        _seconds(run, record["start_utc"]), _seconds(run, record["end_utc"]), _text(record["modcod"]),
+        _figure(record["rate_mbps"]), _figure(record["volume_mb"]),
+    )
+
+
+def _text(value: Any) -> str:
+    """An empty cell of a CSV file comes back as NaN."""
+    return "" if value is None or (isinstance(value, float) and math.isnan(value)) else str(value)
+
+
+def _figure(value: Any) -> float:
+    try:
+        return float(value)
+    except (TypeError, ValueError):
+        return math.nan
+
+
+def _seconds(run: Run, value: Any) -> float:
+    try:
+        instant = pd.Timestamp(value)
+        if instant.tzinfo is not None:
+            instant = instant.tz_convert("UTC").tz_localize(None)
+        return float((instant.to_datetime64() - run.start_utc) / np.timedelta64(1, "ms")) / 1e3
+    except (TypeError, ValueError):
+        return math.nan

@@ -1,0 +1,28 @@
+"""Between instants and the whole seconds from the horizon's start that planning counts in."""
+
+from __future__ import annotations
+
+from datetime import datetime
+
+import numpy as np
+import pandas as pd
+from numpy.typing import ArrayLike, NDArray
+
+from passplan.inputs.records import datetime64
+from passplan.inputs.run import Run
+from passplan.planning.problem import Floats
+
+
+def seconds_of(run: Run, instant: datetime) -> float:
+    """Seconds from the horizon's start of one zoned instant, to the millisecond."""
+    return float((datetime64(instant) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
+
+
+def column_seconds(run: Run, instants: pd.Series) -> Floats:
+    """Seconds from the horizon's start of a column of instants, to the millisecond."""
+    return np.asarray((instants.to_numpy() - run.start_utc) / np.timedelta64(1, "ms"), dtype=float) / 1000.0
+
+
+def instants_of(run: Run, seconds: ArrayLike) -> NDArray[np.datetime64]:
+    """``datetime64[ms]`` of whole seconds from the horizon's start."""
+    return run.start_utc + np.asarray(seconds, dtype=np.int64).astype("timedelta64[s]").astype("timedelta64[ms]")

@@ -1,0 +1,87 @@
+"""The link budget in the terminal: every term of it, then margin and modcod along the pass."""
+
+from __future__ import annotations
+
+import numpy as np
+import pandas as pd
+from rich.console import Console
+from rich.table import Table
+from rich.text import Text
+
+from passplan.inputs.run import Run
+from passplan.link.lines import BudgetLine, budget_lines, link_along
+from passplan.report.cautions import CAUTIONS
+
+_ROWS_ALONG = 18
+_BAR_DB = 20.0
+_BAR_CELLS = 20
+
+
+def print_budget(
+    run: Run, spacecraft: str, antenna: str, at_utc: np.datetime64, window: pd.Series | None, console: Console
+) -> None:
+    """Print the budgets of every link of the pair at ``at_utc`` and, where ``window`` is given, along it."""
+    console.print(Text.assemble(
+        (f"{spacecraft} and {antenna}", "bold"), f"  {str(at_utc.astype('datetime64[s]')).replace('T', ' ')} UTC",
+    ))
+    lines = budget_lines(run, spacecraft, antenna, at_utc)
+    if not lines:
+        console.print("No radio of the spacecraft matches a receiver or transmitter of the antenna.")
+        return
+    for link in dict.fromkeys(line.link for line in lines):
+        console.print()
+        console.print(_terms(link, [line for line in lines if line.link == link]))
+    if window is None:
+        console.print()
+        console.print("This instant lies in no window of the pair.", style="yellow")
+    else:
+        _print_along(run, spacecraft, antenna, window, console)
+    console.print()
+    for caution in CAUTIONS:
+        console.print(Text(f"• {caution}", style="dim"))
+
+
+def _terms(link: str, lines: list[BudgetLine]) -> Table:
+    table = Table(box=None, padding=(0, 1), pad_edge=False, header_style="dim", title=link, title_justify="left",
+                  title_style="bold")
+    for heading, side in (("term", "left"), ("value", "right"), ("unit", "left"), ("source", "left")):
+        table.add_column(heading, justify=side)  # type: ignore[arg-type]
+    for line in lines:
+        value = line.value if isinstance(line.value, str) else f"{line.value:,.2f}"
+        strong = "bold" if line.term in ("C/N0", "Es/N0", "Eb/N0", "margin", "net rate") else ""
+        table.add_row(Text(line.term, style=strong), Text(value, style=strong), line.unit, Text(line.source, style="dim"))
+    return table
+
+
+def _print_along(run: Run, spacecraft: str, antenna: str, window: pd.Series, console: Console) -> None:
+    aos, los = (np.datetime64(window[key], "ms") for key in ("aos_utc", "los_utc"))
+    length_ms = int((los - aos) / np.timedelta64(1, "ms"))
+    times = aos + (np.linspace(0.0, 1.0, _ROWS_ALONG) * length_ms).astype("timedelta64[ms]")
+    along = link_along(run, spacecraft, antenna, times)
+    for (direction, radio), group in along.groupby(["direction", "radio"], sort=False):
+        console.print()
+        console.print(Text.assemble(
+            (f"{direction} {radio} along {window['window_id']}", "bold"),
+            (f"   bar: margin, 0 to {_BAR_DB:g} dB; the policy asks {run.policy.required_margin_db:g} dB", "dim"),
+        ))
+        table = Table(box=None, padding=(0, 1), pad_edge=False, header_style="dim")
+        for heading, side in (("UTC", "left"), ("elevation", "right"), ("km", "right"), ("margin dB", "right"),
+                              ("", "left"), ("modcod", "left"), ("Mbit/s", "right")):
+            table.add_column(heading, justify=side, no_wrap=True)  # type: ignore[arg-type]
+        for row in group.to_dict("records"):
+            usable = row["rate_mbps"] > 0.0
+            table.add_row(
+                f"{pd.Timestamp(row['utc']):%H:%M:%S}", f"{row['elevation_deg']:.1f}°", f"{row['range_km']:,.0f}",
+                f"{row['margin_db']:.2f}", _bar(row["margin_db"], run.policy.required_margin_db),
+                row["modcod"] if usable else Text("no margin", style="dim"), f"{row['rate_mbps']:.3f}" if usable else "",
+            )
+        console.print(table)
+
+
+def _bar(margin_db: float, required_db: float) -> Text:
+    """Margin as a bar; ``│`` marks what the policy asks."""
+    filled = round(_BAR_CELLS * min(max(margin_db / _BAR_DB, 0.0), 1.0))
+    mark = min(round(_BAR_CELLS * required_db / _BAR_DB), _BAR_CELLS - 1)
+    cells = ["▄"] * filled + [" "] * (_BAR_CELLS - filled)
+    cells[mark] = "│"
+    return Text("".join(cells), style="cyan" if margin_db >= required_db else "red")

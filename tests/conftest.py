@@ -1,0 +1,51 @@
+"""The sample network, copied so that a test can spoil it."""
+
+from __future__ import annotations
+
+import shutil
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+
+from passplan.inputs.errors import InputError
+from passplan.inputs.load import load_run
+
+ROOT = Path(__file__).parent.parent
+
+
+@pytest.fixture
+def sample(tmp_path: Path) -> Path:
+    """A folder that holds copies of ``sample_fleet`` and ``configs``."""
+    for name in ("sample_fleet", "configs"):
+        shutil.copytree(ROOT / name, tmp_path / name)
+    return tmp_path
+
+
+@pytest.fixture
+def edit(sample: Path) -> Callable[[str, str, str], Path]:
+    """Replace text in one file of the sample; the text must be there exactly once unless it is empty (append)."""
+
+    def change(file: str, old: str, new: str) -> Path:
+        path = sample / file
+        text = path.read_text(encoding="utf-8")
+        if old:
+            assert text.count(old) >= 1, f"{old!r} is not in {file}"
+            path.write_text(text.replace(old, new, 1), encoding="utf-8")
+        else:
+            path.write_text(text + new, encoding="utf-8")
+        return path
+
+    return change
+
+
+@pytest.fixture
+def lines_of(sample: Path) -> Callable[[], list[str]]:
+    """The lines that loading the (spoilt) daily config answers with."""
+
+    def load() -> list[str]:
+        with pytest.raises(InputError) as caught:
+            load_run(sample / "configs" / "daily.toml")
+        return str(caught.value).splitlines()
+
+    return load
