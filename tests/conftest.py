@@ -4,14 +4,19 @@ from __future__ import annotations
 
 import shutil
 from collections.abc import Callable
+from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
 
 from passplan.inputs.errors import InputError
 from passplan.inputs.load import load_run
+from passplan.inputs.run import Run
+from passplan.planning.record import PlanRecord
+from passplan.planning.steps import plan_run
 
 ROOT = Path(__file__).parent.parent
+QUICK = {"cut_grid_s": 0, "options_per_window": 2, "gap": 0.01}
 
 
 @pytest.fixture
@@ -49,3 +54,15 @@ def lines_of(sample: Path) -> Callable[[], list[str]]:
         return str(caught.value).splitlines()
 
     return load
+
+
+@pytest.fixture(scope="session")
+def short_run() -> Run:
+    """A day of the sample network from 08:00, with few options, so that it is planned at once."""
+    return load_run(ROOT / "configs" / "daily.toml", start=datetime(2027, 3, 9, 8, tzinfo=UTC), policy=QUICK)
+
+
+@pytest.fixture(scope="session")
+def short_plan(short_run: Run) -> PlanRecord:
+    """The audited plan of :func:`short_run`."""
+    return plan_run(short_run)

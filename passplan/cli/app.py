@@ -1,4 +1,8 @@
-"""The command line: one small file for each command, gathered here."""
+"""The command line: one small file for each command, gathered here.
+
+The commands import the floors below inside their bodies: the solver and the sky take seconds to import, and
+``--help``, ``--version`` and shell completion, which need neither, must answer at once.
+"""
 
 from __future__ import annotations
 

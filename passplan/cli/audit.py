@@ -10,9 +10,6 @@ import typer
 
 from passplan.cli.faults import AUDIT, reports_faults
 from passplan.cli.terminal import stdout
-from passplan.inputs.load import load_run
-from passplan.planning.audit import audit_plan
-from passplan.report.directory import changed_inputs, read_plan
 
 
 @reports_faults
@@ -21,6 +18,10 @@ def command(
     directory: Annotated[Path, typer.Argument(help="The plan directory to check.", show_default=False)],
 ) -> None:
     """Check every contact of a plan against the inputs, by an independent path."""
+    from passplan.inputs.load import load_run
+    from passplan.planning.audit import audit_plan
+    from passplan.report.directory import changed_inputs, read_plan
+
     record = read_plan(directory)
     summary = record.summary
     run = load_run(config, start=datetime.fromisoformat(summary["horizon_start_utc"]))

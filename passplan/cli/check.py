@@ -9,8 +9,6 @@ import typer
 
 from passplan.cli.faults import end_with_warnings, reports_faults
 from passplan.cli.terminal import StartOption, StrictOption, instant, stdout
-from passplan.inputs.load import load_run
-from passplan.report.health import print_health
 
 
 @reports_faults
@@ -20,6 +18,9 @@ def command(
     strict: StrictOption = False,
 ) -> None:
     """Read everything a run needs and report its health: element ages, duplicates, masks, radios and antennas."""
+    from passplan.inputs.load import load_run
+    from passplan.report.health import print_health
+
     run = load_run(config, start=instant(start, "--start"))
     print_health(run, stdout())
     end_with_warnings(bool(run.warnings or run.left_out), strict)

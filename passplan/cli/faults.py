@@ -1,4 +1,4 @@
-"""Turns what went wrong into one clear line and the exit code that belongs to it."""
+"""Turns what went wrong into clear lines on standard error and the exit code that belongs to it."""
 
 from __future__ import annotations
 
@@ -9,33 +9,16 @@ from typing import ParamSpec, TypeVar
 
 import typer
 
-from passplan.inputs.elements.resolve import ElementsError
-from passplan.inputs.errors import InputError
-from passplan.operations.nightly import BusyError
-from passplan.planning.steps import AuditFailedError
-from passplan.report.directory import DirectoryError
+from passplan.inputs.errors import PassplanError
 
-INTERNAL, INPUT, ELEMENTS, AUDIT, WRITING, WARNED, OVERDUE = 1, 2, 3, 6, 7, 8, 10
+INTERNAL, AUDIT, WARNED, OVERDUE = 1, 6, 8, 10
 
 P = ParamSpec("P")
 R = TypeVar("R")
 
 
-def exit_code(fault: BaseException) -> int:
-    """The exit code of a fault; what is not foreseen is an internal error."""
-    for kinds, code in (
-        (InputError, INPUT),
-        (ElementsError, ELEMENTS),
-        (AuditFailedError, AUDIT),
-        ((DirectoryError, BusyError), WRITING),
-    ):
-        if isinstance(fault, kinds):
-            return code
-    return INTERNAL
-
-
 def reports_faults(command: Callable[P, R]) -> Callable[P, R]:
-    """A command whose faults end in a line on standard error and an exit code, never in a raw traceback."""
+    """A command whose faults end in lines on standard error and an exit code, never in a bare traceback."""
 
     @functools.wraps(command)
     def guarded(*args: P.args, **kwargs: P.kwargs) -> R:
@@ -43,15 +26,14 @@ def reports_faults(command: Callable[P, R]) -> Callable[P, R]:
             return command(*args, **kwargs)
         except (typer.Exit, typer.Abort, KeyboardInterrupt):
             raise
+        except PassplanError as fault:
+            for line in str(fault).splitlines():
+                typer.echo(f"passplan: {line}", err=True)
+            raise typer.Exit(fault.exit_code) from fault
         except Exception as fault:
-            code = exit_code(fault)
-            if code == INTERNAL:
-                typer.echo(traceback.format_exc(), err=True)
-                typer.echo(f"passplan: internal error: {fault!r}; please report it with the lines above", err=True)
-            else:
-                for line in str(fault).splitlines():
-                    typer.echo(f"passplan: {line}", err=True)
-            raise typer.Exit(code) from fault
+            typer.echo(traceback.format_exc(), err=True)
+            typer.echo(f"passplan: internal error: {fault!r}; please report it with the lines above", err=True)
+            raise typer.Exit(INTERNAL) from fault
 
     return guarded
 

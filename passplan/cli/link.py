@@ -5,16 +5,11 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Annotated
 
-import numpy as np
 import typer
 
 from passplan.cli.faults import reports_faults
 from passplan.cli.terminal import StartOption, instant, progress, stdout
 from passplan.inputs.errors import InputError, Problem, nearest
-from passplan.inputs.load import load_run
-from passplan.inputs.records import datetime64
-from passplan.planning.steps import windows_of
-from passplan.report.link_budget import print_budget
 
 
 @reports_faults
@@ -26,6 +21,12 @@ def command(
     start: StartOption = None,
 ) -> None:
     """Show the link budget line by line at an instant, and margin and modcod along the pass."""
+    import numpy as np
+    from passplan.inputs.load import load_run
+    from passplan.inputs.records import datetime64
+    from passplan.planning.steps import windows_of
+    from passplan.report.link_budget import print_budget
+
     run = load_run(config, start=instant(start, "--start"))
     for option, name, known in (("--spacecraft", spacecraft, run.orbits), ("--antenna", antenna, run.antennas)):
         if name not in known:

@@ -8,11 +8,8 @@ from typing import Annotated
 
 import typer
 
-from passplan.cli.faults import OVERDUE, end_with_warnings, exit_code, reports_faults
+from passplan.cli.faults import OVERDUE, end_with_warnings, reports_faults
 from passplan.cli.terminal import StartOption, StrictOption, instant
-from passplan.operations.nightly import Nightly, read_nightly, run_nightly
-from passplan.operations.status import hours_since_good, read_status
-from passplan.planning.steps import plan_run
 
 
 @reports_faults
@@ -23,11 +20,14 @@ def command(
     strict: StrictOption = False,
 ) -> None:
     """Plan, audit and write the night's plan unattended; ``latest`` always points to the last good one."""
+    from passplan.operations.nightly import read_nightly, run_nightly
+    from passplan.planning.steps import plan_run
+
     nightly = read_nightly(config)
     if status:
-        _report_status(nightly)
+        _report_status(nightly.plans, nightly.watch_h)
         return
-    record, out = run_nightly(nightly, plan_run, start=instant(start, "--start"), exit_code=exit_code)
+    record, out = run_nightly(nightly, plan_run, start=instant(start, "--start"))
     summary = record.summary
     gap = "" if summary["gap"] is None else f", gap {100 * summary['gap']:.2f} %"
     typer.echo(f"{out}: {summary['contacts']} contacts, {summary['volume_mb']:.1f} MB, {summary['status']}{gap}")
@@ -37,14 +37,16 @@ def command(
     end_with_warnings(bool(notes), strict)
 
 
-def _report_status(nightly: Nightly) -> None:
-    status = read_status(nightly.plans)
+def _report_status(plans: Path, watch_h: float) -> None:
+    from passplan.operations.status import hours_since_good, read_status
+
+    status = read_status(plans)
     if status:
         ended = f"last run ended {status.get('ended_utc')} with exit code {status.get('exit_code')}"
         typer.echo(ended + (f": {status['message']}" if status.get("message") else ""))
     since_h = hours_since_good(status, datetime.now(UTC))
-    if since_h is None or since_h > nightly.watch_h:
+    if since_h is None or since_h > watch_h:
         last = "no good run yet" if since_h is None else f"last good run {since_h:.1f} h ago"
-        typer.echo(f"passplan: {nightly.plans}: {last}; watched time is {nightly.watch_h:g} h", err=True)
+        typer.echo(f"passplan: {plans}: {last}; watched time is {watch_h:g} h", err=True)
         raise typer.Exit(OVERDUE)
     typer.echo(f"last good plan {status.get('last_good_plan')}, {since_h:.1f} h ago")

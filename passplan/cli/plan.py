@@ -9,10 +9,6 @@ import typer
 
 from passplan.cli.faults import end_with_warnings, reports_faults
 from passplan.cli.terminal import StartOption, StrictOption, instant, progress, stdout
-from passplan.inputs.load import load_run
-from passplan.planning.steps import plan_run
-from passplan.report.directory import check_free, write_plan
-from passplan.report.terminal import print_plan
 
 
 @reports_faults
@@ -28,6 +24,11 @@ def command(
     strict: StrictOption = False,
 ) -> None:
     """Plan the contacts of the horizon, audit the plan, report it, and write it to a directory as a draft."""
+    from passplan.inputs.load import load_run
+    from passplan.planning.steps import plan_run
+    from passplan.report.directory import check_free, write_plan
+    from passplan.report.terminal import print_plan
+
     check_free(out, replace=replace)
     changes: dict[str, Any] = {"gap": gap, "time_limit_s": time_limit_s}
     run = load_run(

@@ -10,8 +10,6 @@ import typer
 
 from passplan.cli.faults import reports_faults
 from passplan.cli.terminal import stdout
-from passplan.report.directory import read_plan
-from passplan.report.terminal import print_plan
 
 
 @reports_faults
@@ -21,6 +19,9 @@ def command(
     as_json: Annotated[bool, typer.Option("--json", help="Print the summary as JSON, for machines.")] = False,
 ) -> None:
     """Print the report of a plan again."""
+    from passplan.report.directory import read_plan
+    from passplan.report.terminal import print_plan
+
     record = read_plan(directory)
     if as_json:
         typer.echo(json.dumps(record.summary, indent=2, ensure_ascii=False))

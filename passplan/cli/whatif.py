@@ -9,11 +9,6 @@ import typer
 
 from passplan.cli.faults import reports_faults
 from passplan.cli.terminal import progress, stdout
-from passplan.planning.steps import plan_run
-from passplan.report.directory import check_free
-from passplan.studies.result import print_comparison, write_comparison
-from passplan.studies.study import read_study
-from passplan.studies.whatif import run_study
 
 
 @reports_faults
@@ -24,6 +19,12 @@ def command(
     time_limit_s: Annotated[float | None, typer.Option("--seconds", help="Time limit for each plan.")] = None,
 ) -> None:
     """Plan variants of the network over the same days and say which differences the proofs support."""
+    from passplan.planning.steps import plan_run
+    from passplan.report.directory import check_free
+    from passplan.studies.result import print_comparison, write_comparison
+    from passplan.studies.study import read_study
+    from passplan.studies.whatif import run_study
+
     if out is not None:
         check_free(out)
     study = read_study(study_file)

@@ -10,10 +10,6 @@ import typer
 from passplan.cli.faults import end_with_warnings, reports_faults
 from passplan.cli.terminal import StartOption, StrictOption, instant, progress, stdout
 from passplan.inputs.errors import InputError, Problem, nearest
-from passplan.inputs.load import load_run
-from passplan.planning.steps import windows_of
-from passplan.report.directory import write_file
-from passplan.report.tables import print_windows
 
 
 @reports_faults
@@ -27,6 +23,11 @@ def command(
     strict: StrictOption = False,
 ) -> None:
     """Find the windows in which each antenna can follow each spacecraft."""
+    from passplan.inputs.load import load_run
+    from passplan.planning.steps import windows_of
+    from passplan.report.directory import write_file
+    from passplan.report.tables import print_windows
+
     run = load_run(config, start=instant(start, "--start"))
     for option, name, known in (("--spacecraft", spacecraft, run.spacecraft), ("--antenna", antenna, run.antennas)):
         if name is not None and name not in known:

@@ -35,15 +35,14 @@ def slots(culmination_s: Floats) -> NDArray[np.int64]:
 
 def prefixes(spacecraft: Sequence[str], antennas: Sequence[str]) -> list[list[str]]:
     """``spacecraft.antenna.`` for each antenna (outer) and spacecraft (inner), blanks as underscores, all different."""
-    seen: dict[str, int] = {}
-    table = []
-    for antenna in antennas:
-        row = []
-        for name in spacecraft:
-            plain = f"{name}.{antenna}".replace(" ", "_")
-            seen[plain] = count = seen.get(plain, 0) + 1
-            row.append(f"{plain}." if count == 1 else f"{plain}~{count}.")
-        table.append(row)
+    heads, tails = ([name.replace(" ", "_") for name in names] for names in (spacecraft, antennas))
+    table = [[f"{head}.{tail}." for head in heads] for tail in tails]
+    if len({prefix for row in table for prefix in row}) < len(heads) * len(tails):
+        seen: dict[str, int] = {}
+        for row in table:
+            for i, prefix in enumerate(row):
+                seen[prefix] = count = seen.get(prefix, 0) + 1
+                row[i] = prefix if count == 1 else f"{prefix[:-1]}~{count}."
     return table
 
 
@@ -52,17 +51,26 @@ def window_ids(pair_prefix: Sequence[str], pair: NDArray[np.int64], slot: NDArra
 
     All windows of a pass must be given, those outside the planning horizon too.
     """
-    order = np.lexsort((start_s, slot, pair))
-    fresh = np.ones(order.size, bool)
-    fresh[1:] = (np.diff(pair[order]) != 0) | (np.diff(slot[order]) != 0)
-    rank = np.empty(order.size, np.int64)
-    rank[order] = np.arange(order.size) - np.maximum.accumulate(np.where(fresh, np.arange(order.size), 0))
     kinds, which = np.unique(slot, return_inverse=True)
     labels = [_slot_label(int(kind)) for kind in kinds]
     ids = [pair_prefix[p] + labels[w] for p, w in zip(pair.tolist(), which.tolist(), strict=True)]
-    for i in np.flatnonzero(rank).tolist():
-        ids[i] += _letter(int(rank[i]))
+    shared = _not_alone(pair, slot)
+    order = shared[np.lexsort((start_s[shared], slot[shared], pair[shared]))]
+    rank = 0
+    for before, i in zip(order[:-1].tolist(), order[1:].tolist(), strict=True):
+        rank = rank + 1 if pair[i] == pair[before] and slot[i] == slot[before] else 0
+        if rank:
+            ids[i] += _letter(rank)
     return ids
+
+
+def _not_alone(pair: NDArray[np.int64], slot: NDArray[np.int64]) -> NDArray[np.int64]:
+    """The windows that share pair and slot with another one."""
+    _, dense = np.unique(slot, return_inverse=True)
+    key = pair * (int(dense.max(initial=0)) + 1) + dense
+    order = np.argsort(key, kind="stable")
+    same = np.flatnonzero(key[order][1:] == key[order][:-1])
+    return order[np.union1d(same, same + 1)]
 
 
 def inherit_ids(windows: pd.DataFrame, earlier_windows: pd.DataFrame, tolerance_s: float = 1_200.0) -> pd.DataFrame:

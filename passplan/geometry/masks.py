@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -22,15 +23,20 @@ class Mask:
     first_deg: Floats
     last_deg: Floats
 
-    @property
+    @cached_property
     def lowest_deg(self) -> float:
         """The least elevation of the mask anywhere."""
         return float(min(self.first_deg.min(), self.last_deg.min()))
 
-    @property
+    @cached_property
     def constant(self) -> bool:
         """Whether the mask is the same all round."""
         return bool(np.all(self.first_deg == self.lowest_deg) and np.all(self.last_deg == self.lowest_deg))
+
+    @cached_property
+    def slope(self) -> Floats:
+        """Degrees of elevation per degree of azimuth, for each piece."""
+        return np.asarray((self.last_deg - self.first_deg) / (self.finish_deg - self.begin_deg))
 
     def piece(self, azimuth_deg: Floats) -> np.ndarray:
         """Number of the piece that holds each azimuth in [0, 360)."""
@@ -41,11 +47,6 @@ class Mask:
         azimuth = np.asarray(azimuth_deg, float) % 360.0
         piece = self.piece(azimuth)
         return np.asarray(self.first_deg[piece] + self.slope[piece] * (azimuth - self.begin_deg[piece]))
-
-    @property
-    def slope(self) -> Floats:
-        """Degrees of elevation per degree of azimuth, for each piece."""
-        return np.asarray((self.last_deg - self.first_deg) / (self.finish_deg - self.begin_deg))
 
 
 def mask_of(antenna: Antenna) -> Mask:

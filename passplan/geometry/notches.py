@@ -9,18 +9,18 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from passplan.geometry import stencil
 from passplan.geometry.masks import Mask
-from passplan.geometry.roots import Indices, solve
-from passplan.geometry.scan import TOLERANCE
+from passplan.geometry.roots import Flags, Indices, solve
 from passplan.geometry.stations import Stations
 from passplan.geometry.timescale import Floats
 
 # Nodes per grid step; elevation and azimuth bend little between them.
 _NODES_PER_STEP = 16
 _LEAST_NODES = 8
+# In grid steps.
+_TOLERANCE = 1e-8
 
 
 @dataclass(frozen=True)
@@ -31,7 +31,7 @@ class Sky:
     here: Stations
 
     def powers(self, objects: Indices, at: Floats) -> tuple[Floats, Indices]:
-        """Polynomials (3, 12, n) of east, north and up around grid instants ``at``, and where their x is 0."""
+        """Polynomials (3, 14, n) of east, north and up around grid instants ``at``, and where their x is 0."""
         first, zero = stencil.place(np.floor(at).astype(np.int64), self.positions_km.shape[2])
         own = np.stack([stencil.polynomials(part, objects, first) for part in self.positions_km])
         axes = np.concatenate([self.here.east, self.here.north, self.here.up])
@@ -110,11 +110,8 @@ def _with_corners(sky: Sky, mask: Mask, objects: Indices, window: Indices, at: F
         local, zero = sky.powers(objects[window[turn]], at[turn])
         line = local[0] * np.cos(corner) - local[1] * np.sin(corner)
 
-        def function(active: Indices, x: Floats, line: Floats = line) -> tuple[Floats, Floats]:
-            return stencil.slope(line[:, active], x)
-
         low, high = at[turn] - zero, at[turn + 1] - zero
-        x = solve(function, low, high, 0.5 * (low + high), ~sign[turn], TOLERANCE)
+        x = solve(_straight, (line,), low, high, 0.5 * (low + high), ~sign[turn], _TOLERANCE)
         # The line through the zenith has two ends; only one of them is the corner.
         ahead = stencil.value(local[0], x) * np.sin(corner) + stencil.value(local[1], x) * np.cos(corner) > 0.0
         found_window.append(window[turn][ahead])
@@ -138,21 +135,29 @@ def _line(mask: Mask, piece: Indices, azimuth_deg: Floats) -> Floats:
 
 
 def _edge(
-    sky: Sky, mask: Mask, objects: Indices, piece: Indices, bracket: Floats, rising: NDArray[np.bool_]
+    sky: Sky, mask: Mask, objects: Indices, piece: Indices, bracket: Floats, rising: Flags
 ) -> Floats:
     """Instants at which the elevation passes the line of ``piece`` within each bracket."""
     if not objects.size:
         return np.zeros(0)
     local, zero = sky.powers(objects, bracket[:, 0])
-    tilt = mask.slope[piece]
-
-    def function(active: Indices, x: Floats) -> tuple[Floats, Floats]:
-        (e, de), (n, dn), (u, du) = (stencil.slope(part[:, active], x) for part in local)
-        flat = np.maximum(np.hypot(e, n), 1e-9)
-        rate = (du * flat - u * (e * de + n * dn) / flat) / (flat**2 + u**2)
-        turn = (de * n - e * dn) / flat**2
-        clearance = np.degrees(np.arctan2(u, flat)) - _line(mask, piece[active], np.degrees(np.arctan2(e, n)))
-        return clearance, np.degrees(rate - tilt[active] * turn)
-
+    centre = 0.5 * (mask.begin_deg + mask.finish_deg)[piece]
+    level = 0.5 * (mask.first_deg + mask.last_deg)[piece]
+    data = (local, np.stack([centre, level, mask.slope[piece]]))
     low, high = bracket[:, 0] - zero, bracket[:, 1] - zero
-    return np.asarray(solve(function, low, high, 0.5 * (low + high), rising, TOLERANCE) + zero)
+    return np.asarray(solve(_clearance_slope, data, low, high, 0.5 * (low + high), rising, _TOLERANCE) + zero)
+
+
+def _straight(x: Floats, line: Floats) -> tuple[Floats, Floats]:
+    return stencil.slope(line, x)
+
+
+def _clearance_slope(x: Floats, local: Floats, line: Floats) -> tuple[Floats, Floats]:
+    """Elevation above the mask's line (centre, level, slope) in deg, and its change per grid step."""
+    (e, de), (n, dn), (u, du) = (stencil.slope(part, x) for part in local)
+    flat = np.maximum(np.hypot(e, n), 1e-9)
+    rate = (du * flat - u * (e * de + n * dn) / flat) / (flat**2 + u**2)
+    turn = (de * n - e * dn) / flat**2
+    apart = (np.degrees(np.arctan2(e, n)) - line[0] + 180.0) % 360.0 - 180.0
+    clearance = np.degrees(np.arctan2(u, flat)) - (line[1] + line[2] * apart)
+    return clearance, np.degrees(rate - np.radians(line[2]) * np.degrees(turn))

@@ -6,7 +6,6 @@ from collections.abc import Sequence
 from dataclasses import dataclass, fields
 
 import numpy as np
-from numpy.typing import NDArray
 
 from passplan.geometry import stencil
 from passplan.geometry.identity import ALWAYS, slots
@@ -14,12 +13,14 @@ from passplan.geometry.masks import Mask
 from passplan.geometry.notches import Sky, cut_to_mask
 from passplan.geometry.pointing import azimuth_of
 from passplan.geometry.regimes import ALWAYS_S
-from passplan.geometry.roots import Indices
+from passplan.geometry.roots import Flags, Indices
 from passplan.geometry.scan import Scene, Spans, spans, view
 from passplan.geometry.stations import Stations
 from passplan.geometry.summits import Summits, summits
 from passplan.geometry.timescale import Floats
 from passplan.geometry.trajectory import Block
+
+_STEEP_SINE = 0.98
 
 
 @dataclass(frozen=True)
@@ -33,10 +34,10 @@ class Rows:
     antenna: Indices
     whole_start_s: Floats
     whole_end_s: Floats
-    open_start: NDArray[np.bool_]
-    open_end: NDArray[np.bool_]
+    open_start: Flags
+    open_end: Flags
     slot: Indices
-    inside: NDArray[np.bool_]
+    inside: Flags
     start_s: Floats
     end_s: Floats
     peak_s: Floats
@@ -76,7 +77,7 @@ def block_rows(
         for whole, clipped in ((top.at, part.at), (top.sine, part.sine), (top.range_km, part.range_km)):
             whole[cut] = clipped
     antenna, own = np.divmod(found.pair, scene.objects)
-    azimuths = [_azimuth(block, places, antenna, own, np.where(inside, at, found.start)) for at in (start, end)]
+    azimuth = _azimuths(block, places, antenna, own, (start, end), inside)
 
     def utc(x: Floats) -> Floats:
         return np.asarray(block.start_s + block.step_s * x)
@@ -93,37 +94,37 @@ def block_rows(
         np.clip(utc(start), start_s, end_s),
         np.clip(utc(end), start_s, end_s),
         utc(top.at),
-        np.degrees(np.arcsin(np.clip(top.sine, -1.0, 1.0))),
-        azimuths[0],
-        azimuths[1],
+        _peak_deg(block, places, antenna, own, top),
+        azimuth[0],
+        azimuth[1],
         top.range_km,
     )
 
 
 def _pass_numbers(scene: Scene, found: Spans) -> Indices:
     """Number of the pass of each span: neighbours share one if the object stays above the horizon between."""
-    size = found.pair.size
-    breaks = np.ones(size, bool)
-    if size > 1:
-        gap = np.flatnonzero(found.pair[1:] == found.pair[:-1])
-        middle = np.rint(0.5 * (found.end[gap] + found.start[gap + 1])).astype(np.int64)
-        floor = np.minimum(scene.sines, 0.0)
-        at = found.pair[gap], middle
-        up = scene.up_km[at] > floor[found.pair[gap]] * np.sqrt(scene.range_km2[at])
-        for i in gap[up].tolist():
-            breaks[i + 1] = _sets_between(scene, int(found.pair[i]), found.end[i], found.start[i + 1])
+    breaks = np.ones(found.pair.size, bool)
+    gap = np.flatnonzero(found.pair[1:] == found.pair[:-1])
+    pair, low, high = found.pair[gap], found.end[gap], found.start[gap + 1]
+    # Nearly all gaps are settled by the sample in their middle.
+    middle = np.rint(0.5 * (low + high)).astype(np.int64)
+    floor = np.minimum(scene.sines, 0.0)
+    up = np.flatnonzero(scene.up_km[pair, middle] > floor[pair] * np.sqrt(scene.range_km2[pair, middle]))
+    breaks[gap[up] + 1] = _sets_between(scene, pair[up], low[up], high[up])
     return np.cumsum(breaks) - 1
 
 
-def _sets_between(scene: Scene, pair: int, start: float, end: float) -> bool:
-    """Whether the object is below the true horizon anywhere in the gap (looked at four times a step)."""
-    at = np.linspace(start, end, int(np.ceil((end - start) * 4)) + 3)
-    first, zero = stencil.place(np.floor(at).astype(np.int64), scene.length)
-    weight = stencil.weights(at - zero)
-    index = first + np.arange(stencil.POINTS)[:, None]
-    up = np.einsum("ij,ij->j", weight, scene.up_km[pair][index])
-    square = np.einsum("ij,ij->j", weight, scene.range_km2[pair][index])
-    return bool(np.any(up <= min(float(scene.sines[pair]), 0.0) * np.sqrt(square)))
+def _sets_between(scene: Scene, pair: Indices, low: Floats, high: Floats) -> Flags:
+    """Whether the object is below the true horizon anywhere in each gap (looked at four times a step)."""
+    if not pair.size:
+        return np.zeros(0, bool)
+    count = np.ceil((high - low) * 4).astype(np.int64) + 2
+    first = np.cumsum(count) - count
+    gap = np.repeat(np.arange(pair.size), count)
+    at = low[gap] + (high - low)[gap] * ((np.arange(gap.size) - first[gap]) / (count - 1)[gap])
+    up, square = (stencil.interpolate(part, pair[gap], at) for part in (scene.up_km, scene.range_km2))
+    below = up <= np.minimum(scene.sines, 0.0)[pair[gap]] * np.sqrt(square)
+    return np.asarray(np.logical_or.reduceat(below, first))
 
 
 def _near_horizon(found: Spans, number: Indices, low: float, high: float) -> tuple[Spans, Indices]:
@@ -194,13 +195,32 @@ def _cut_by_masks(
     return found, slot, top
 
 
-def _azimuth(block: Block, places: Stations, antenna: Indices, own: Indices, at: Floats) -> Floats:
-    """Azimuth (deg) at grid instants ``at`` for each window's antenna and object."""
-    length = block.positions_km.shape[2]
-    first, zero = stencil.place(np.floor(at).astype(np.int64), length)
+def _azimuths(
+    block: Block, places: Stations, antenna: Indices, own: Indices, edges: tuple[Floats, Floats], inside: Flags
+) -> tuple[Floats, Floats]:
+    """Azimuths (deg) at both edges of the windows inside the planning horizon; NaN for the others."""
+    found = np.full((2, antenna.size), np.nan)
+    some = np.flatnonzero(inside)
+    at = np.concatenate([edge[some] for edge in edges])
+    east, north, _ = _local(block, places, np.tile(antenna[some], 2), np.tile(own[some], 2), at)
+    found[:, some] = azimuth_of(east, north).reshape(2, -1)
+    return found[0], found[1]
+
+
+def _peak_deg(block: Block, places: Stations, antenna: Indices, own: Indices, top: Summits) -> Floats:
+    """Elevation at the highest moment; near the zenith from the horizontal distance, as the arcsine is blunt there."""
+    degrees = np.degrees(np.arcsin(np.minimum(top.sine, 1.0)))
+    steep = np.flatnonzero(top.sine > _STEEP_SINE)
+    east, north, up = _local(block, places, antenna[steep], own[steep], top.at[steep])
+    degrees[steep] = np.degrees(np.arctan2(up, np.hypot(east, north)))
+    return np.asarray(degrees)
+
+
+def _local(block: Block, places: Stations, antenna: Indices, own: Indices, at: Floats) -> tuple[Floats, Floats, Floats]:
+    """East, north and up (km) at grid instants ``at`` for each window's antenna and object."""
+    first, zero = stencil.place(np.floor(at).astype(np.int64), block.positions_km.shape[2])
     weight = stencil.weights(at - zero)
-    index = own * length + first + np.arange(stencil.POINTS)[:, None]
-    line = np.stack([np.einsum("ij,ij->j", weight, part.reshape(-1)[index]) for part in block.positions_km], axis=-1)
-    line -= places.positions_km[antenna]
-    east = np.einsum("ij,ij->i", places.east[antenna], line)
-    return azimuth_of(east, np.einsum("ij,ij->i", places.north[antenna], line))
+    rows = (np.einsum("ij,ij->j", weight, stencil.samples(part, own, first)) for part in block.positions_km)
+    line = np.stack(list(rows), axis=-1) - places.positions_km[antenna]
+    east, north, up = (np.einsum("ij,ij->i", axis[antenna], line) for axis in (places.east, places.north, places.up))
+    return east, north, up

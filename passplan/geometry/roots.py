@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,42 +10,56 @@ from numpy.typing import NDArray
 from passplan.geometry.timescale import Floats
 
 Indices = NDArray[np.int64]
-# Called with the indices of the roots still sought and their x; returns value and derivative there.
-Function = Callable[[Indices, Floats], tuple[Floats, Floats]]
+Flags = NDArray[np.bool_]
+# Called with x (n,) and the data of the roots still sought; returns value and derivative at x.
+Function = Callable[..., tuple[Floats, Floats]]
 
 _MOST_STEPS = 100
 
 
-def solve(function: Function, low: Floats, high: Floats, guess: Floats, rising: NDArray[np.bool_], tolerance: float) -> Floats:
-    """One root in each bracket [low, high], where the function rises (or falls) through zero; shapes (n,).
+def solve(
+    function: Function,
+    data: Sequence[Floats],
+    low: Floats,
+    high: Floats,
+    guess: Floats,
+    rising: Flags,
+    tolerance: float,
+) -> Floats:
+    """One root in each bracket [low, high], where ``function(x, *data)`` rises (or falls) through zero.
 
-    A Newton step that would leave the bracket, or that does not halve it in two turns, is replaced by
-    its middle, so the iteration always ends; ``tolerance`` is in x.
+    ``low, high, guess, rising`` are (n,); every array of ``data`` has n along its last axis. A Newton step
+    that would leave the bracket, or is not half as long as the step before, is replaced by one to the
+    middle of the bracket, so the iteration always ends (Press et al., Numerical Recipes, rtsafe).
+    ``tolerance`` is the last step in x. Roots that have settled stay in the arrays until half of them
+    have: sorting them out costs as much as a turn.
     """
-    low, high, x = low.copy(), high.copy(), np.clip(guess, low, high)
+    low, high = low.copy(), high.copy()
+    x = np.minimum(np.maximum(guess, low), high)
     result = x.copy()
-    active = np.arange(x.size)
-    width = high - low
-    for turn in range(_MOST_STEPS):
-        if not active.size:
-            break
-        value, derivative = function(active, x)
-        below = (value < 0.0) == rising
-        low = np.where(below, x, low)
-        high = np.where(below, high, x)
-        with np.errstate(divide="ignore", invalid="ignore"):
-            ahead = x - value / derivative
-        inside = (ahead >= low) & (ahead <= high)
-        if turn % 3 == 2:
-            inside &= (high - low < 0.5 * width) | (np.abs(ahead - x) < tolerance)
-            width = high - low
-        ahead = np.where(inside, ahead, 0.5 * (low + high))
-        done = (np.abs(ahead - x) <= tolerance) | (value == 0.0)
-        result[active] = np.where(value == 0.0, x, ahead)
-        if done.any():
-            keep = ~done
-            active, low, high, x, width = active[keep], low[keep], high[keep], ahead[keep], width[keep]
-            rising = rising[keep]
-        else:
+    last = 2.0 * (high - low)
+    active: Indices | None = None
+    with np.errstate(divide="ignore", invalid="ignore"):
+        for _ in range(_MOST_STEPS):
+            value, derivative = function(x, *data)
+            below = (value < 0.0) == rising
+            np.copyto(low, x, where=below)
+            np.copyto(high, x, where=~below)
+            step = value / derivative
+            ahead = x - step
+            good = (ahead >= low) & (ahead <= high) & (np.abs(step) <= 0.5 * last)
+            ahead = np.where(good, ahead, 0.5 * (low + high))
+            np.copyto(ahead, x, where=value == 0.0)
+            last = np.abs(ahead - x)
+            unsettled = last > tolerance
             x = ahead
+            result[slice(None) if active is None else active] = x
+            left = int(np.count_nonzero(unsettled))
+            if left == 0:
+                break
+            if 2 * left < x.size:
+                keep = np.flatnonzero(unsettled)
+                active = keep if active is None else active[keep]
+                data = [part[..., keep] for part in data]
+                low, high, x, rising, last = (part[keep] for part in (low, high, x, rising, last))
     return result

@@ -20,34 +20,45 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from passplan.geometry import stencil
-from passplan.geometry.roots import Indices, solve
+from passplan.geometry.products import product
+from passplan.geometry.roots import Flags, Indices, solve
 from passplan.geometry.stations import Stations
 from passplan.geometry.timescale import Floats
 from passplan.geometry.trajectory import Block
 
-# In grid steps: a microsecond or better for every step in use, and near the end of double precision.
-TOLERANCE = 1e-9
+# The last Newton step, s. Newton is quadratic, so less than a microsecond is left after it; in a grazing pass,
+# where it is not, 2 ms off is a billionth of a degree off.
+_TOLERANCE_S = 2e-3
 # A parabola through three samples misses the true extremum between them by less than half its bend.
 _SLACK = 0.5
 
 
 @dataclass(frozen=True)
 class Scene:
-    """P (km), D (km2) and F (km) as (pairs, times) for antennas x objects; pair = antenna * objects + object."""
+    """P (km), D (km2) and F (km) as (pairs, times) for antennas x objects; pair = antenna * objects + object.
+
+    ``sines`` (pairs,) are those of the lowest elevation of each pair's mask; ``tolerance`` is in grid steps.
+    """
 
     up_km: Floats
     range_km2: Floats
     excess_km: Floats
     sines: Floats
     objects: int
+    tolerance: float
 
     @property
     def length(self) -> int:
         """Samples per pair."""
         return int(self.up_km.shape[1])
+
+    def polynomials(self, pair: Indices, sample: Indices) -> tuple[Floats, Floats, Floats]:
+        """P and D as polynomials (14, n) around ``sample``, and the x of that sample in them."""
+        first, zero = stencil.place(sample, self.length)
+        up, square = (stencil.polynomials(part, pair, first) for part in (self.up_km, self.range_km2))
+        return up, square, (sample - zero).astype(float)
 
 
 @dataclass(frozen=True)
@@ -57,16 +68,16 @@ class Spans:
     pair: Indices
     start: Floats
     end: Floats
-    open_start: NDArray[np.bool_]
-    open_end: NDArray[np.bool_]
+    open_start: Flags
+    open_end: Flags
 
 
 def view(block: Block, places: Stations, sines: Floats) -> Scene:
     """The scene of ``block`` from n antennas at ``places`` with the sines of their lowest elevations (n,)."""
     flat = block.positions_km.reshape(3, -1)
-    up = places.up @ flat
+    up = product(places.up, flat)
     up -= np.einsum("ij,ij->i", places.up, places.positions_km)[:, None]
-    distance = (-2.0 * places.positions_km) @ flat
+    distance = product(-2.0 * places.positions_km, flat)
     distance += np.einsum("ij,ij->j", flat, flat)
     distance += np.einsum("ij,ij->i", places.positions_km, places.positions_km)[:, None]
     excess = np.sqrt(distance)
@@ -74,126 +85,140 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
     excess += up
     objects = block.positions_km.shape[1]
     shape = (-1, block.positions_km.shape[2])
-    return Scene(up.reshape(shape), distance.reshape(shape), excess.reshape(shape), np.repeat(sines, objects), objects)
+    parts = (part.reshape(shape) for part in (up, distance, excess))
+    return Scene(*parts, np.repeat(sines, objects), objects, _TOLERANCE_S / block.step_s)
 
 
 def spans(scene: Scene) -> Spans:
     """Every interval with F > 0, hidden passes and hidden dips included, ordered by pair and time."""
     above = scene.excess_km > 0.0
-    change = above[:, 1:] != above[:, :-1]
-    pair, interval = np.divmod(np.flatnonzero(change), scene.length - 1)
-    crossing = _Brackets(pair, interval, np.zeros(pair.size), np.ones(pair.size), ~above[pair, interval])
+    pair, interval = np.divmod(np.flatnonzero(above[:, 1:] != above[:, :-1]), scene.length - 1)
+    rising = ~above[pair, interval]
     hidden = _hidden(scene, above)
-    brackets = crossing.joined(hidden) if hidden.pair.size else crossing
-    at = _cross(scene, brackets)
-    order = np.lexsort((at, brackets.pair)) if hidden.pair.size else np.arange(at.size)
-    pair, at, rising = brackets.pair[order], at[order], brackets.rising[order]
+    at = _crossings(scene, pair, interval, rising)
+    if hidden.pair.size:
+        pair, at, rising = _inserted(pair, at, rising, hidden, _hidden_crossings(scene, hidden), scene.length)
     return _paired(pair, at, rising, above)
 
 
 @dataclass(frozen=True)
-class _Brackets:
-    """Brackets [low, high] around crossings, in steps from sample ``base``."""
+class _Hidden:
+    """Extremes beyond zero between samples: within a step of ``sample``, ``at`` steps from it; tops or dips."""
 
     pair: Indices
-    base: Indices
-    low: Floats
-    high: Floats
-    rising: NDArray[np.bool_]
-
-    def joined(self, other: _Brackets) -> _Brackets:
-        names = ("pair", "base", "low", "high", "rising")
-        return _Brackets(*(np.concatenate([getattr(self, n), getattr(other, n)]) for n in names))
+    sample: Indices
+    at: Floats
+    top: Flags
 
 
-def _paired(pair: Indices, at: Floats, rising: NDArray[np.bool_], above: NDArray[np.bool_]) -> Spans:
+def _excess(x: Floats, up: Floats, square: Floats, sine: Floats) -> tuple[Floats, Floats]:
+    """F and its slope."""
+    p, dp = stencil.slope(up, x)
+    d, dd = stencil.slope(square, x)
+    root = np.sqrt(d)
+    dd /= root
+    root *= sine
+    p -= root
+    dd *= sine
+    dd *= 0.5
+    dp -= dd
+    return p, dp
+
+
+def _excess_slope(x: Floats, up: Floats, square: Floats, sine: Floats) -> tuple[Floats, Floats]:
+    """The slope of F and its bend."""
+    _, dp, ddp = stencil.bend(up, x)
+    d, dd, ddd = stencil.bend(square, x)
+    root = np.sqrt(d)
+    return dp - 0.5 * sine * dd / root, ddp - 0.5 * sine * (ddd / root - 0.5 * dd * dd / (d * root))
+
+
+def _crossings(scene: Scene, pair: Indices, interval: Indices, rising: Flags) -> Floats:
+    """Zeros of F (grid steps) in intervals between samples of different sign."""
+    up, square, zero = scene.polynomials(pair, interval)
+    left, right = scene.excess_km[pair, interval], scene.excess_km[pair, interval + 1]
+    guess = zero + left / (left - right)
+    x = solve(_excess, (up, square, scene.sines[pair]), zero, zero + 1.0, guess, rising, scene.tolerance)
+    return np.asarray(x + (interval - zero), float)
+
+
+def _hidden_crossings(scene: Scene, hidden: _Hidden) -> tuple[Floats, Floats]:
+    """Zeros of F (grid steps) before and after each hidden extreme."""
+    up, square, zero = scene.polynomials(hidden.pair, hidden.sample)
+    data = (up, square, scene.sines[hidden.pair])
+    extreme = zero + hidden.at
+    before = solve(_excess, data, zero - 1.0, extreme, 0.5 * (zero - 1.0 + extreme), hidden.top, scene.tolerance)
+    after = solve(_excess, data, extreme, zero + 1.0, 0.5 * (extreme + zero + 1.0), ~hidden.top, scene.tolerance)
+    return before + (hidden.sample - zero), after + (hidden.sample - zero)
+
+
+def _inserted(
+    pair: Indices, at: Floats, rising: Flags, hidden: _Hidden, crossings: tuple[Floats, Floats], length: int
+) -> tuple[Indices, Floats, Flags]:
+    """All crossings in order of pair and time: the few hidden ones put among the many."""
+    more_pair = np.repeat(hidden.pair, 2)
+    more_at = np.stack(crossings, axis=-1).reshape(-1)
+    more_rising = np.stack([hidden.top, ~hidden.top], axis=-1).reshape(-1)
+    key = more_pair * float(length) + more_at
+    order = np.argsort(key, kind="stable")
+    place = np.searchsorted(pair * float(length) + at, key[order])
+    return (
+        np.insert(pair, place, more_pair[order]),
+        np.insert(at, place, more_at[order]),
+        np.insert(rising, place, more_rising[order]),
+    )
+
+
+def _paired(pair: Indices, at: Floats, rising: Flags, above: Flags) -> Spans:
     """Match rises with sets; pairs that are up at an end of the grid get that end."""
-    last = above.shape[1] - 1
     opened, unclosed = np.flatnonzero(above[:, 0]), np.flatnonzero(above[:, -1])
-    start_pair = np.concatenate([pair[rising], opened])
-    start = np.concatenate([at[rising], np.zeros(opened.size)])
-    end_pair = np.concatenate([pair[~rising], unclosed])
-    end = np.concatenate([at[~rising], np.full(unclosed.size, float(last))])
-    open_start = np.arange(start.size) >= start.size - opened.size
-    open_end = np.arange(end.size) >= end.size - unclosed.size
-    if opened.size or unclosed.size:
-        first, second = np.lexsort((start, start_pair)), np.lexsort((end, end_pair))
-        start_pair, start, open_start = start_pair[first], start[first], open_start[first]
-        end, open_end = end[second], open_end[second]
-    return Spans(start_pair, start, end, open_start, open_end)
+    rises, falls = np.flatnonzero(rising), np.flatnonzero(~rising)
+    first = np.searchsorted(pair[rises], opened, side="left")
+    last = np.searchsorted(pair[falls], unclosed, side="right")
+    return Spans(
+        np.insert(pair[rises], first, opened),
+        np.insert(at[rises], first, 0.0),
+        np.insert(at[falls], last, float(above.shape[1] - 1)),
+        np.insert(np.zeros(rises.size, bool), first, True),
+        np.insert(np.zeros(falls.size, bool), last, True),
+    )
 
 
-def _cross(scene: Scene, b: _Brackets) -> Floats:
-    """The crossings in grid steps."""
-    first, zero = stencil.place(b.base, scene.length)
-    up = stencil.polynomials(scene.up_km, b.pair, first)
-    square = stencil.polynomials(scene.range_km2, b.pair, first)
-    sine = scene.sines[b.pair]
-    shift = (b.base - zero).astype(float)
-
-    def function(active: Indices, x: Floats) -> tuple[Floats, Floats]:
-        whole = active.size == sine.size
-        p, dp = stencil.slope(up if whole else up[:, active], x)
-        d, dd = stencil.slope(square if whole else square[:, active], x)
-        s = sine if whole else sine[active]
-        root = np.sqrt(d)
-        return p - s * root, dp - 0.5 * s * dd / root
-
-    nearest = np.minimum(b.base + 1, scene.length - 1)
-    left, right = scene.excess_km[b.pair, b.base], scene.excess_km[b.pair, nearest]
-    guess = np.where((b.low == 0.0) & (b.high == 1.0), left / np.where(left == right, 1.0, left - right), 0.5 * (b.low + b.high))
-    x = solve(function, b.low + shift, b.high + shift, guess + shift, b.rising, TOLERANCE)
-    return np.asarray(x + zero, float)
-
-
-def _hidden(scene: Scene, above: NDArray[np.bool_]) -> _Brackets:
-    """Brackets of pairs of crossings that no change of sign between samples shows."""
+def _hidden(scene: Scene, above: Flags) -> _Hidden:
+    """Tops above zero and dips below it that no change of sign between samples shows."""
     climbing = scene.excess_km[:, 1:] > scene.excess_km[:, :-1]
     inner = above[:, 1:-1]
-    crest = climbing[:, :-1] & ~climbing[:, 1:]
-    crest &= ~inner
-    valley = climbing[:, 1:] & ~climbing[:, :-1]
-    valley &= inner
-    parts = [_excursions(scene, np.flatnonzero(part), top) for part, top in ((crest, True), (valley, False))]
-    return parts[0].joined(parts[1])
+    crest = climbing[:, :-1] > (climbing[:, 1:] | inner)
+    valley = (climbing[:, 1:] & inner) > climbing[:, :-1]
+    tops, dips = (_excursions(scene, np.flatnonzero(part), top) for part, top in ((crest, True), (valley, False)))
+    names = ("pair", "sample", "at", "top")
+    return _Hidden(*(np.concatenate([getattr(tops, name), getattr(dips, name)]) for name in names))
 
 
-def _excursions(scene: Scene, flat: Indices, top: bool) -> _Brackets:
+def _excursions(scene: Scene, flat: Indices, top: bool) -> _Hidden:
     """Of discrete extrema on the wrong side of zero, those whose true extremum lies on the other side."""
     pair, sample = np.divmod(flat, scene.length - 2)
     sample = sample + 1
     likely = _may_cross(scene, pair, sample, top)
     pair, sample = pair[likely], sample[likely]
-    first, zero = stencil.place(sample, scene.length)
-    up = stencil.polynomials(scene.up_km, pair, first)
-    square = stencil.polynomials(scene.range_km2, pair, first)
-    sine = scene.sines[pair]
-    middle = (sample - zero).astype(float)
-
-    def function(active: Indices, x: Floats) -> tuple[Floats, Floats]:
-        p, dp, ddp = stencil.bend(up[:, active], x)
-        d, dd, ddd = stencil.bend(square[:, active], x)
-        s, root = sine[active], np.sqrt(d)
-        return dp - 0.5 * s * dd / root, ddp - 0.5 * s * (ddd / root - 0.5 * dd * dd / (d * root))
-
-    x = solve(function, middle - 1.0, middle + 1.0, middle, np.full(pair.size, not top), TOLERANCE)
-    extreme = stencil.value(up, x) - sine * np.sqrt(stencil.value(square, x))
-    over = np.flatnonzero((extreme > 0.0) == top)
-    pair, sample, x = pair[over], sample[over], (x - middle)[over]
-    one, sign = np.ones(pair.size), np.full(pair.size, top)
-    before = _Brackets(pair, sample, -one, x, sign)
-    return before.joined(_Brackets(pair, sample, x, one, ~sign))
+    up, square, zero = scene.polynomials(pair, sample)
+    data = (up, square, scene.sines[pair])
+    falling = np.full(pair.size, not top)
+    x = solve(_excess_slope, data, zero - 1.0, zero + 1.0, zero, falling, scene.tolerance)
+    over = np.flatnonzero((_excess(x, *data)[0] > 0.0) == top)
+    return _Hidden(pair[over], sample[over], (x - zero)[over], np.full(over.size, top))
 
 
-def _may_cross(scene: Scene, pair: Indices, sample: Indices, top: bool) -> NDArray[np.bool_]:
+def _may_cross(scene: Scene, pair: Indices, sample: Indices, top: bool) -> Flags:
     """A safe first sieve: can F reach zero within a step of ``sample``, by bounds on P and D apart?"""
     flat = pair * scene.length + sample
-    p0, p1, p2 = (scene.up_km.reshape(-1)[flat + k] for k in (-1, 0, 1))
-    d0, d1, d2 = (scene.range_km2.reshape(-1)[flat + k] for k in (-1, 0, 1))
-    p_bend, d_bend = _SLACK * np.abs(p0 - 2.0 * p1 + p2), _SLACK * np.abs(d0 - 2.0 * d1 + d2)
+    up, square, sine = scene.up_km.reshape(-1), scene.range_km2.reshape(-1), scene.sines[pair]
+    p0, p1, p2 = (up.take(flat + k) for k in (-1, 0, 1))
+    p_bend = _SLACK * np.abs(p0 - 2.0 * p1 + p2)
+    d0, d1, d2 = (square.take(flat + k) for k in (-1, 0, 1))
+    d_bend = _SLACK * np.abs(d0 - 2.0 * d1 + d2)
     near = np.sqrt(np.maximum(np.minimum(np.minimum(d0, d1), d2) - d_bend, 0.0))
     far = np.sqrt(np.maximum(np.maximum(d0, d1), d2) + d_bend)
-    sine = scene.sines[pair]
     if top:
         reach = np.maximum(np.maximum(p0, p1), p2) + p_bend
         return np.asarray(reach >= sine * np.where(sine >= 0.0, near, far))

@@ -5,17 +5,19 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from passplan.geometry import stencil
-from passplan.geometry.roots import Indices, solve
-from passplan.geometry.scan import TOLERANCE, Scene
+from passplan.geometry.roots import Flags, Indices, solve
+from passplan.geometry.scan import Scene
 from passplan.geometry.timescale import Floats
+
+# The last Newton step in grid steps; its square is left. Elevation and range are flat there.
+_TOLERANCE = 1e-3
 
 
 @dataclass(frozen=True)
 class Summits:
-    """Per window: instant (grid steps) and sine of the highest elevation, and the least distance (km)."""
+    """Per window: instant (grid steps) and sine of the highest elevation, and the least range (km)."""
 
     at: Floats
     sine: Floats
@@ -25,42 +27,58 @@ class Summits:
 def summits(scene: Scene, pair: Indices, start: Floats, end: Floats) -> Summits:
     """Highest elevation and least range of the windows [start, end] (grid steps) of ``pair``, each (n,).
 
-    The extremes lie at an edge, or near a discrete extremum of the samples in and next to the window;
-    each of these is refined. The elevation peaks where P' D = P D'/2, the range where D' = 0.
+    An extreme lies near a discrete extremum of the samples in and next to the window, each of which is
+    refined, or at an edge: the elevation peaks where P' D = P D'/2, the range is least where D' = 0. The
+    edges are looked at where that leaves it open: nothing found inside, an extreme just outside, or a
+    better sample outside.
     """
-    low = np.clip(np.floor(start).astype(np.int64) - 1, 0, scene.length - 1)
-    high = np.clip(np.floor(end).astype(np.int64) + 2, 0, scene.length - 1)
+    low = np.maximum(np.floor(start).astype(np.int64) - 1, 0)
+    high = np.minimum(np.floor(end).astype(np.int64) + 2, scene.length - 1)
     window, sample = _ragged(low, high)
     flat = pair[window] * scene.length + sample
-    up, square = scene.up_km.reshape(-1)[flat], scene.range_km2.reshape(-1)[flat]
-    sine = up / np.sqrt(square)
-    edge_at, edge_sine, edge_nearness = _edges(scene, pair, start, end)
-    highest = _Best(edge_at, edge_sine)
-    crest = _interior_maxima(sine, window)
-    at, reached, _ = _refine(scene, pair[window[crest]], sample[crest], _toward_peak, False)
-    inside = (at >= start[window[crest]]) & (at <= end[window[crest]])
-    highest.offer(window[crest][inside], at[inside], reached[inside])
-    nearest = _Best(edge_at, edge_nearness)
-    close = _interior_maxima(-square, window)
-    at, _, distance = _refine(scene, pair[window[close]], sample[close], _toward_nearest, True)
-    inside = (at >= start[window[close]]) & (at <= end[window[close]])
-    nearest.offer(window[close][inside], at[inside], -distance[inside])
-    return Summits(highest.at, highest.score, -nearest.score)
+    square = scene.range_km2.reshape(-1).take(flat)
+    sine = scene.up_km.reshape(-1).take(flat) / np.sqrt(square)
+    crest, hollow = _tops(sine, window), _tops(-square, window)
+    spot = np.flatnonzero(crest | hollow)
+    owner, own_sample = window[spot], sample[spot]
+    up_powers, square_powers, zero = scene.polynomials(pair[owner], own_sample)
+    highest, nearest = _Best(start.size), _Best(start.size)
+    doubtful = np.zeros(start.size, bool)
+    for best, wanted, slope, rising in (
+        (highest, crest[spot], _toward_peak, False),
+        (nearest, hollow[spot], _toward_nearest, True),
+    ):
+        pick = slice(None) if wanted.all() else np.flatnonzero(wanted)
+        data = up_powers[:, pick], square_powers[:, pick]
+        guess = zero[pick] + _vertex(square, spot[pick])
+        middle = zero[pick]
+        x = solve(slope, data, middle - 1.0, middle + 1.0, guess, np.full(middle.size, rising), _TOLERANCE)
+        at = x + (own_sample[pick] - middle)
+        inside = (at >= start[owner[pick]]) & (at <= end[owner[pick]])
+        distance2 = stencil.value(data[1], x)
+        score = stencil.value(data[0], x) / np.sqrt(distance2) if best is highest else -distance2
+        best.offer(owner[pick], at, np.where(inside, score, -np.inf))
+        doubtful[owner[pick][~inside]] = True
+    ends = np.cumsum(high - low + 1)
+    doubtful |= _outside_better(highest, sine, ends, high - low) | _outside_better(nearest, -square, ends, high - low)
+    _look_at_edges(scene, pair, start, end, np.flatnonzero(doubtful), highest, nearest)
+    return Summits(highest.at, highest.score, np.sqrt(-nearest.score))
 
 
 class _Best:
     """Keeps the best offer per window."""
 
-    def __init__(self, at: tuple[Floats, Floats], score: tuple[Floats, Floats]) -> None:
-        later = score[1] > score[0]
-        self.at = np.where(later, at[1], at[0])
-        self.score = np.where(later, score[1], score[0])
+    def __init__(self, size: int) -> None:
+        self.at = np.full(size, np.nan)
+        self.score = np.full(size, -np.inf)
 
     def offer(self, window: Indices, at: Floats, score: Floats) -> None:
-        # Ascending scores, so that of several offers to one window the best is written last.
-        order = np.argsort(score, kind="stable")
-        window, at, score = window[order], at[order], score[order]
-        better = score > self.score[window]
+        """Take the offers that beat what is there; ``window`` may name one several times."""
+        if window.size > 1 and np.any(window[1:] == window[:-1]):
+            # Ascending scores: of several offers to one window the best is written last.
+            order = np.argsort(score, kind="stable")
+            window, at, score = window[order], at[order], score[order]
+        better = np.flatnonzero(score > self.score[window])
         self.at[window[better]], self.score[window[better]] = at[better], score[better]
 
 
@@ -68,66 +86,49 @@ def _ragged(low: Indices, high: Indices) -> tuple[Indices, Indices]:
     """Window number and sample number of all samples low..high of each window."""
     count = high - low + 1
     window = np.repeat(np.arange(low.size), count)
-    ends = np.cumsum(count)
-    return window, np.arange(window.size) - np.repeat(ends - count - low, count)
+    return window, np.arange(window.size) - np.repeat(np.cumsum(count) - count - low, count)
 
 
-def _interior_maxima(values: Floats, window: Indices) -> Indices:
-    """Places where a value is not below its neighbours, all three in one window."""
-    if values.size < 3:
-        return np.zeros(0, np.int64)
-    climbing = values[1:] > values[:-1]
-    top = climbing[:-1] & ~climbing[1:] & (window[2:] == window[:-2])
-    return np.flatnonzero(top) + 1
+def _tops(values: Floats, window: Indices) -> Flags:
+    """Whether a value is not below its neighbours, all three in one window."""
+    top = np.zeros(values.size, bool)
+    if values.size > 2:
+        climbing = values[1:] > values[:-1]
+        top[1:-1] = (climbing[:-1] > climbing[1:]) & (window[2:] == window[:-2])
+    return top
 
 
-def _edges(
-    scene: Scene, pair: Indices, start: Floats, end: Floats
-) -> tuple[tuple[Floats, Floats], tuple[Floats, Floats], tuple[Floats, Floats]]:
-    sines, nearness = [], []
-    for at in (start, end):
-        up, square = _at(scene, pair, at)
-        distance = np.sqrt(square)
-        sines.append(up / distance)
-        nearness.append(-distance)
-    return (start, end), (sines[0], sines[1]), (nearness[0], nearness[1])
+def _vertex(values: Floats, at: Indices) -> Floats:
+    """Vertex of the parabola through each value and its neighbours, in steps from it and at most one away."""
+    before, here, after = values.take(at - 1), values.take(at), values.take(at + 1)
+    bend = before - 2.0 * here + after
+    ratio = np.divide(before - after, 2.0 * bend, out=np.zeros(at.size), where=bend != 0.0)
+    return np.asarray(np.minimum(np.maximum(ratio, -1.0), 1.0))
 
 
-def _at(scene: Scene, pair: Indices, at: Floats) -> tuple[Floats, Floats]:
-    """P and D at any instants."""
-    first, zero = stencil.place(np.floor(at).astype(np.int64), scene.length)
-    weight = stencil.weights(at - zero)
-    index = pair * scene.length + first + np.arange(stencil.POINTS)[:, None]
-    up = np.einsum("ij,ij->j", weight, scene.up_km.reshape(-1)[index])
-    return up, np.einsum("ij,ij->j", weight, scene.range_km2.reshape(-1)[index])
+def _outside_better(best: _Best, values: Floats, ends: Indices, spread: Indices) -> Flags:
+    """Windows without an extreme inside, or with an outermost sample that beats it."""
+    if not ends.size:
+        return np.zeros(0, bool)
+    return (best.score == -np.inf) | (values[ends - 1] > best.score) | (values[ends - 1 - spread] > best.score)
 
 
-def _toward_peak(up: Floats, square: Floats, x: Floats) -> tuple[Floats, Floats]:
+def _look_at_edges(
+    scene: Scene, pair: Indices, start: Floats, end: Floats, some: Indices, highest: _Best, nearest: _Best
+) -> None:
+    if some.size:
+        for at in (start[some], end[some]):
+            up, square = (stencil.interpolate(part, pair[some], at) for part in (scene.up_km, scene.range_km2))
+            highest.offer(some, at, up / np.sqrt(square))
+            nearest.offer(some, at, -square)
+
+
+def _toward_peak(x: Floats, up: Floats, square: Floats) -> tuple[Floats, Floats]:
     p, dp, ddp = stencil.bend(up, x)
     d, dd, ddd = stencil.bend(square, x)
     return dp * d - 0.5 * p * dd, ddp * d + 0.5 * (dp * dd - p * ddd)
 
 
-def _toward_nearest(up: Floats, square: Floats, x: Floats) -> tuple[Floats, Floats]:
+def _toward_nearest(x: Floats, _up: Floats, square: Floats) -> tuple[Floats, Floats]:
     _, dd, ddd = stencil.bend(square, x)
     return dd, ddd
-
-
-def _refine(
-    scene: Scene, pair: Indices, sample: Indices, slope_of: object, rising: bool
-) -> tuple[Floats, Floats, Floats]:
-    """Instant (grid steps), sine of elevation and range at the true extremum within a step of ``sample``."""
-    first, zero = stencil.place(sample, scene.length)
-    up = stencil.polynomials(scene.up_km, pair, first)
-    square = stencil.polynomials(scene.range_km2, pair, first)
-    middle = (sample - zero).astype(float)
-
-    def function(active: Indices, x: Floats) -> tuple[Floats, Floats]:
-        if active.size == pair.size:
-            return slope_of(up, square, x)  # type: ignore[operator,no-any-return]
-        return slope_of(up[:, active], square[:, active], x)  # type: ignore[operator,no-any-return]
-
-    direction: NDArray[np.bool_] = np.full(pair.size, rising)
-    x = solve(function, middle - 1.0, middle + 1.0, middle, direction, TOLERANCE)
-    distance = np.sqrt(stencil.value(square, x))
-    return x + zero, stencil.value(up, x) / distance, distance

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.geometry.regimes import MU_KM3_S2, OrbitClass, orbit_class, semi_major_axis_km
-from passplan.geometry.timescale import Floats, utc_seconds
-from passplan.inputs.elements.model import ElementSet
+from passplan.geometry.timescale import DAY_S, Floats, utc_seconds
+from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.run import OrbitSource
 
 
@@ -34,17 +35,32 @@ GROWTH: Mapping[OrbitClass, Growth] = {
 EPHEMERIS_SIGMA_KM = 0.1
 
 
-def timing_sigma_s(source: OrbitSource, utc_s: Floats, growth: Mapping[OrbitClass, Growth] = GROWTH) -> Floats:
-    """Standard deviation (s) of the instants of windows at ``utc_s`` (n,): along-track sigma over mean speed.
+@dataclass(frozen=True)
+class TimingModel:
+    """Sigma = (``at_epoch_km`` + ``per_day_km`` x age) / ``speed_km_s``, one element per orbit source."""
 
-    The mean speed is that of a circular orbit of the same period, v = sqrt(mu / a) (Kepler).
-    """
-    if not isinstance(source, ElementSet):
-        state = source.segments[0]
-        radius_km = float(np.linalg.norm(state.positions_km[0]))
-        return np.full(utc_s.shape, EPHEMERIS_SIGMA_KM / math.sqrt(MU_KM3_S2 / radius_km))
+    at_epoch_km: Floats
+    per_day_km: Floats
+    speed_km_s: Floats
+    epoch_s: Floats
+
+    def sigma_s(self, source: NDArray[np.int64], utc_s: Floats) -> Floats:
+        """Standard deviation (s) of the instants of windows at ``utc_s`` (n,) of the sources numbered ``source``."""
+        age_days = np.abs(utc_s - self.epoch_s[source]) / DAY_S
+        return np.asarray((self.at_epoch_km[source] + self.per_day_km[source] * age_days) / self.speed_km_s[source])
+
+
+def timing_model(sources: Iterable[OrbitSource], growth: Mapping[OrbitClass, Growth] = GROWTH) -> TimingModel:
+    """The model for each source, by its orbit class. Speeds are v = sqrt(mu / a), the mean speed of the orbit."""
+    rows = [_row(source, growth) for source in sources]
+    return TimingModel(*np.array(rows, float).reshape(-1, 4).T)
+
+
+def _row(source: OrbitSource, growth: Mapping[OrbitClass, Growth]) -> tuple[float, float, float, float]:
+    if isinstance(source, Ephemeris):
+        radius_km = float(np.linalg.norm(source.segments[0].positions_km[0]))
+        return EPHEMERIS_SIGMA_KM, 0.0, math.sqrt(MU_KM3_S2 / radius_km), 0.0
     motion = source.satrec.no_kozai / 60.0
     model = growth[orbit_class(motion, source.satrec.ecco)]
-    age_days = np.abs(utc_s - float(utc_seconds(source.epoch_utc))) / 86_400.0
     speed_km_s = math.sqrt(MU_KM3_S2 / semi_major_axis_km(motion))
-    return np.asarray((model.at_epoch_km + model.per_day_km * age_days) / speed_km_s, float)
+    return model.at_epoch_km, model.per_day_km, speed_km_s, float(utc_seconds(source.epoch_utc))

@@ -17,7 +17,7 @@ from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.run import OrbitSource
 
 # Samples per block and antenna set: small enough that the work arrays stay in the processor's cache.
-_BLOCK_SAMPLES = 400_000
+_BLOCK_SAMPLES = 800_000
 # Sources with edges (decay, ephemeris spans) are sampled this finely, so that stencils may lean to one side.
 _EDGE_STEP_S = 30.0
 _EDGE_POINTS = 25

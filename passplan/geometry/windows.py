@@ -2,17 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 
 import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
 from passplan.geometry.identity import prefixes, window_ids
 from passplan.geometry.masks import mask_of
 from passplan.geometry.passes import Rows, block_rows, joined
 from passplan.geometry.stations import stations
 from passplan.geometry.timescale import Floats, datetimes_ms, utc_seconds
-from passplan.geometry.timing import timing_sigma_s
+from passplan.geometry.timing import timing_model
 from passplan.geometry.trajectory import blocks
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ground import Antenna, Site
@@ -25,7 +26,7 @@ COLUMNS = (
 )  # fmt: skip
 # Samples (antennas x times) of one object that are worked on at once; bounds the memory of long horizons.
 _SCENE_SAMPLES = 2_000_000
-_CLIPPED = np.array(["none", "start", "end", "both"], object)
+_CLIPPED = ("none", "start", "end", "both")
 
 
 def find_windows(
@@ -63,20 +64,12 @@ def find_windows(
                 progress(len(done), len(orbits))
     if progress is not None and len(done) < len(orbits):
         progress(len(orbits), len(orbits))
-    rows = _rounded(joined(parts)) if parts else None
-    return _table(rows, orbits, antennas, start_s, end_s)
-
-
-def _rounded(rows: Rows) -> Rows:
-    """Windows to the millisecond; an end that the orbit source sets is rounded inwards, to stay inside it."""
-    return rows
+    return _table(joined(parts), orbits, antennas, start_s, end_s) if parts else _empty()
 
 
 def _table(
-    rows: Rows | None, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float
+    rows: Rows, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float
 ) -> pd.DataFrame:
-    if rows is None:
-        return _empty()
     names, antenna_names = list(orbits), list(antennas)
     pair_prefix = [prefix for row in prefixes(names, antenna_names) for prefix in row]
     ids = np.array(
@@ -89,17 +82,17 @@ def _table(
     los[high] = np.floor(rows.end_s[high] * 1e3 + 1e-4)
     order = np.flatnonzero(rows.inside & (los > aos))
     rank_antenna, rank_craft = _ranks(antenna_names), _ranks(names)
-    order = order[np.lexsort((rank_craft[rows.spacecraft[order]], rank_antenna[rows.antenna[order]], aos[order]))]
+    key = (aos[order] - start_s * 1e3).astype(np.int64) * len(antennas) + _ranks(antenna_names)[rows.antenna[order]]
+    order = order[np.argsort(key * len(orbits) + _ranks(names)[rows.spacecraft[order]], kind="stable")]
     rows, ids, aos, los = rows.take(order), ids[order], aos[order], los[order]
     peak = np.clip(np.rint(rows.peak_s * 1e3), aos, los)
     clipped = (rows.whole_start_s < start_s) + 2 * (rows.whole_end_s > end_s)
-    site_names = np.array([antenna.site for antenna in antennas.values()], object)
     return pd.DataFrame(
         {
             "window_id": ids,
-            "spacecraft": np.array(names, object)[rows.spacecraft],
-            "antenna": np.array(antenna_names, object)[rows.antenna],
-            "site": site_names[rows.antenna],
+            "spacecraft": _words(names, rows.spacecraft),
+            "antenna": _words(antenna_names, rows.antenna),
+            "site": _words([antenna.site for antenna in antennas.values()], rows.antenna),
             "aos_utc": datetimes_ms(aos / 1e3),
             "los_utc": datetimes_ms(los / 1e3),
             "duration_s": (los - aos) / 1e3,
@@ -108,12 +101,17 @@ def _table(
             "aos_azimuth_deg": rows.start_azimuth_deg,
             "los_azimuth_deg": rows.end_azimuth_deg,
             "min_range_km": rows.range_km,
-            "clipped": _CLIPPED[clipped],
+            "clipped": _words(_CLIPPED, clipped),
             "element_epoch_utc": _epochs(orbits)[rows.spacecraft],
-            "timing_sigma_s": _sigmas(orbits, rows.spacecraft, rows.start_s),
+            "timing_sigma_s": timing_model(orbits.values()).sigma_s(rows.spacecraft, aos / 1e3),
         },
         columns=list(COLUMNS),
     )
+
+
+def _words(names: Sequence[str], index: NDArray[np.int64]) -> pd.api.extensions.ExtensionArray:
+    """A text column of ``names[index]``."""
+    return pd.array(list(names), dtype="str").take(index)
 
 
 def _ranks(names: list[str]) -> np.ndarray:
@@ -126,17 +124,6 @@ def _ranks(names: list[str]) -> np.ndarray:
 def _epochs(orbits: Mapping[str, OrbitSource]) -> np.ndarray:
     epochs = [s.epoch_utc if isinstance(s, ElementSet) else np.datetime64("NaT", "ms") for s in orbits.values()]
     return np.array(epochs, "datetime64[ms]")
-
-
-def _sigmas(orbits: Mapping[str, OrbitSource], spacecraft: np.ndarray, at_s: Floats) -> Floats:
-    sigma = np.empty(at_s.size)
-    order = np.argsort(spacecraft, kind="stable")
-    edges = np.searchsorted(spacecraft[order], np.arange(len(orbits) + 1))
-    for i, source in enumerate(orbits.values()):
-        mine = order[edges[i] : edges[i + 1]]
-        if mine.size:
-            sigma[mine] = timing_sigma_s(source, at_s[mine])
-    return sigma
 
 
 def _empty() -> pd.DataFrame:

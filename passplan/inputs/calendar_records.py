@@ -6,7 +6,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
-from passplan.inputs.records import Instant, Name, Record, Service
+from passplan.inputs.records import Instant, Label, Record, Service
 
 
 class Closure(Record):
@@ -32,7 +32,7 @@ class Request(Record):
     lasts at least ``min_duration_s``; ``antenna`` or ``site`` narrow it further.
     """
 
-    name: Name
+    name: Label
     spacecraft: str
     antenna: str | None = None
     site: str | None = None

@@ -10,7 +10,7 @@ from pydantic import BeforeValidator, Field, model_validator
 
 from passplan.inputs.errors import Findings
 from passplan.inputs.reader import Reader
-from passplan.inputs.records import Instant, Record
+from passplan.inputs.records import Instant, Label, Record
 from passplan.inputs.tables import checked, read_toml
 
 _LONGEST_DAYS = 31
@@ -36,7 +36,7 @@ def _calendar_files(value: Any) -> Any:
 class RunConfig(Record):
     """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``."""
 
-    name: str = "run"
+    name: Label = "run"
     start: Instant | None = None
     end: Instant | None = None
     hours: Annotated[float, Field(gt=0.0, le=24.0 * _LONGEST_DAYS)] | None = None

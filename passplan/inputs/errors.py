@@ -27,8 +27,16 @@ class Problem:
         return f"{place}{value}: {self.remedy}"
 
 
-class InputError(Exception):
-    """Every fault that was found, reported in one go. The command line turns it into exit code 2."""
+class PassplanError(Exception):
+    """A fault that the user can do something about; ``exit_code`` is what the command line ends with."""
+
+    exit_code = 1
+
+
+class InputError(PassplanError):
+    """Every fault that was found, reported in one go."""
+
+    exit_code = 2
 
     def __init__(self, problems: Iterable[Problem]) -> None:
         self.problems = tuple(problems)

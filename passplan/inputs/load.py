@@ -89,7 +89,11 @@ def load_run(
     return Run(
         name=settings.name, start_utc=start_utc, end_utc=end_utc, spacecraft=fleet.spacecraft, radios=fleet.radios,
         sites=ground.sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
-        modcod_tables=fleet.tables, closures=closures, requests=tuple(requests.values()), policy=rules,
+        modcod_tables=fleet.tables, closures=closures, policy=rules,
+        # A request file holds many days; one whose span misses this horizon is another day's business.
+        requests=tuple(
+            r for r in requests.values() if datetime64(r.latest_utc) > start_utc and datetime64(r.earliest_utc) < end_utc
+        ),
         orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
         warnings=tuple(findings.warnings), files=reader.files,
     )

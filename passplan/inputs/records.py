@@ -51,12 +51,17 @@ def _mask_points(value: Any) -> Any:
     return value
 
 
+NAME_PATTERN = r"^\w[\w \-]*$"
+
 Instant = Annotated[datetime, BeforeValidator(parse_instant)]
 Names = Annotated[tuple[str, ...], BeforeValidator(_listed)]
 Polarisations = Annotated[tuple[Polarisation, ...], BeforeValidator(_listed)]
 MaskPoints = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_mask_points)]
 # A name goes into file names, identifiers (joined by dots) and tables: no dots, slashes or invisible characters.
-Name = Annotated[str, Field(min_length=1, max_length=40, pattern=r"^\w[\w \-]*$")]
+Name = Annotated[str, Field(min_length=1, max_length=40, pattern=NAME_PATTERN)]
+
+# A label is only ever shown, so that it may hold anything that prints.
+Label = Annotated[str, Field(min_length=1, max_length=80, pattern=r"^[^\x00-\x1f\x7f]+$")]
 
 
 def datetime64(instant: datetime) -> np.datetime64:

@@ -14,6 +14,7 @@ from pydantic import BaseModel, TypeAdapter, ValidationError
 
 from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.reader import Reader
+from passplan.inputs.records import NAME_PATTERN
 
 Model = TypeVar("Model", bound=BaseModel)
 Placed = tuple[str, str, dict[str, Any]]
@@ -89,7 +90,7 @@ def checked(
             return model.validate_python(dict(record))
         return model.model_validate(dict(record))
     except ValidationError as fault:
-        label = f"{where} ({record['name']})" if isinstance(record.get("name"), str) else where
+        label = f"{where} ({record['name']})" if where and isinstance(record.get("name"), str) else where
         for error in fault.errors():
             _note(error, model, record, str(file), label, findings)
         return None
@@ -132,7 +133,7 @@ def _note(error: Any, model: Any, record: Mapping[str, Any], file: str, where: s
     """One pydantic error as one line in the user's words."""
     # A discriminated union puts its tag first; the user knows the key, not the tag.
     path = [part for part in error["loc"] if part not in ("downlink", "command") or part in record]
-    place = ".".join([where, *(str(part) for part in path)]) if path else where
+    place = ".".join([*([where] if where else []), *(str(part) for part in path)])
     kind, value = error["type"], error.get("input")
     if kind == "extra_forbidden":
         findings.problem(file, place, None, f"unknown key; {nearest(str(path[-1]), _keys(model))}")
@@ -153,7 +154,6 @@ def _plain(error: Any) -> str:
         "less_than": "must be below {lt}",
         "less_than_equal": "must be at most {le}",
         "literal_error": "write one of {expected}",
-        "string_pattern_mismatch": "use letters, digits, spaces, '_' and '-', starting with a letter or digit",
         "float_parsing": "write a number",
         "float_type": "write a number",
         "int_parsing": "write a whole number",
@@ -162,6 +162,10 @@ def _plain(error: Any) -> str:
         "finite_number": "write a finite number",
         "string_type": "write text in quotes",
     }
+    if kind == "string_pattern_mismatch":
+        if context["pattern"] == NAME_PATTERN:
+            return "use letters, digits, spaces, '_' and '-', starting with a letter or digit"
+        return "use printable characters only"
     if kind in limits:
         return limits[kind].format(**context) + ("; check the unit" if kind.startswith(("greater", "less")) else "")
     return str(error["msg"][0].lower() + error["msg"][1:])

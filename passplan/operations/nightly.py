@@ -13,7 +13,7 @@ from typing import Annotated, Any
 from filelock import FileLock, Timeout
 from pydantic import Field
 
-from passplan.inputs.errors import Findings
+from passplan.inputs.errors import Findings, PassplanError
 from passplan.inputs.load import beside, load_run
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import Instant, Record
@@ -48,8 +48,10 @@ class Nightly:
     watch_h: float
 
 
-class BusyError(Exception):
-    """Another unattended run holds the lock. Exit code 7."""
+class BusyError(PassplanError):
+    """Another unattended run holds the lock."""
+
+    exit_code = 7
 
 
 def read_nightly(path: str | Path) -> Nightly:
@@ -64,13 +66,12 @@ def read_nightly(path: str | Path) -> Nightly:
 
 
 def run_nightly(
-    nightly: Nightly, planner: Callable[[Run], PlanRecord], *, start: datetime | None = None,
-    exit_code: Callable[[BaseException], int],
+    nightly: Nightly, planner: Callable[[Run], PlanRecord], *, start: datetime | None = None
 ) -> tuple[PlanRecord, Path]:
     """Plan, audit (in ``planner``) and publish one night; returns the record and its directory.
 
     Whatever goes wrong, ``latest`` keeps pointing to the last good plan and the status file says what
-    happened, with the exit code that ``exit_code`` gives for the exception, which is then raised on.
+    happened, with the exit code of the exception, which is then raised on.
     Raises :class:`BusyError` where another run is at work, without touching anything.
     """
     try:
@@ -92,6 +93,11 @@ def run_nightly(
         return record, out
     finally:
         lock.release()
+
+
+def exit_code(fault: BaseException) -> int:
+    """The exit code of a fault: its own, or 1 where nobody foresaw it."""
+    return fault.exit_code if isinstance(fault, PassplanError) else 1
 
 
 def point_latest(plans: Path, target: Path) -> None:

@@ -10,6 +10,7 @@ import pandas as pd
 
 from passplan.geometry.pointing import sample_windows
 from passplan.geometry.windows import find_windows
+from passplan.inputs.errors import PassplanError
 from passplan.inputs.run import Run
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
@@ -21,8 +22,10 @@ Report = Callable[[str, int, int], None]
 _SAMPLE_STEP_S = 10.0
 
 
-class AuditFailedError(Exception):
-    """The independent audit found faults in a plan, so the plan is not handed on. Exit code 6."""
+class AuditFailedError(PassplanError):
+    """The independent audit found faults in a plan, so the plan is not handed on."""
+
+    exit_code = 6
 
     def __init__(self, faults: list[Fault]) -> None:
         self.faults = tuple(faults)

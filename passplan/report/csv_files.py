@@ -9,7 +9,7 @@ import pandas as pd
 
 # Enough digits that a reader loses nothing that matters: a byte of volume, a ten-thousandth of a degree or dB.
 _DECIMALS = {
-    "_mb": 6, "_deg": 4, "_db": 4, "_km": 3, "_s": 3, "_mbps": 6, "_mhz": 6, "value": 6, "weight": 6, "cost": 6,
+    "_mb": 6, "_deg": 4, "_db": 4, "_km": 3, "_s": 3, "_mbps": 9, "_mhz": 6, "value": 6, "weight": 6, "cost": 6,
 }
 # A spreadsheet takes a cell that starts with one of these for a formula.
 _FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")

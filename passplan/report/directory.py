@@ -13,6 +13,7 @@ from typing import Any
 
 import pandas as pd
 
+from passplan.inputs.errors import PassplanError
 from passplan.inputs.reader import ReadFile
 from passplan.planning.record import PlanRecord
 from passplan.report.csv_files import read_csv, write_csv
@@ -20,8 +21,10 @@ from passplan.report.csv_files import read_csv, write_csv
 TABLES = ("windows", "contacts", "segments", "unused")
 
 
-class DirectoryError(Exception):
-    """A plan directory could not be written or read; the message says which and why. Exit code 7."""
+class DirectoryError(PassplanError):
+    """A plan directory could not be written or read; the message says which and why."""
+
+    exit_code = 7
 
 
 def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:

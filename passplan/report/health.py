@@ -24,8 +24,9 @@ def print_health(run: Run, console: Console) -> None:
     if len(others):
         console.print(_other_sets(others))
     console.print(_antennas(run))
+    within = [c for c in run.closures if _ms(c.end_utc) > run.start_utc and _ms(c.start_utc) < run.end_utc]
     console.print(Text.assemble(
-        (str(len(run.closures)), "bold"), " closures, ", (str(len(run.requests)), "bold"), " requests, ",
+        (str(len(within)), "bold"), " closures within the horizon, ", (str(len(run.requests)), "bold"), " requests, ",
         (str(len(run.files)), "bold"), " files read",
     ))
     for name, why in run.left_out.items():

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 import pandas as pd
+from rich.columns import Columns
 from rich.console import Console, Group, RenderableType
 from rich.padding import Padding
 from rich.rule import Rule
@@ -121,11 +122,11 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
                 antenna["closures"], keys,
             )
             table.add_row(name, row)
-    legend = Text(f"{SEEN} in view, not used   {CLOSED} closed   {SEVERAL} several   ", style="dim")
-    if len(set(keys.values())) == len(keys):
-        # A no-break space keeps a key beside its name where the legend wraps.
-        legend.append("   ".join(f"{key}\u00a0{name.replace(' ', chr(0xA0))}" for name, key in keys.items()))
-    return Group(table, legend)
+    marks = Text(f"{SEEN} in view, not used   {CLOSED} closed   {SEVERAL} several contacts", style="dim")
+    if len(set(keys.values())) < len(keys):
+        return Group(table, marks)
+    names = [Text.assemble((key, "bold cyan"), f" {name}") for name, key in keys.items()]
+    return Group(table, Columns(names, padding=(0, 2)), marks)
 
 
 def _contacts(record: PlanRecord, rows: int | None) -> RenderableType:
@@ -156,8 +157,9 @@ def _contacts(record: PlanRecord, rows: int | None) -> RenderableType:
 
 def _note(row: Mapping[str, Any]) -> str:
     parts = [] if row["origin"] == "planned" else [row["origin"]]
-    if row["cut"]:
-        parts.append("part")
+    # Most contacts leave out time in which nothing can be sent; only what another contact took is worth a word.
+    if "busy" in row["cut"]:
+        parts.append("cut short")
     if row["cost"]:
         parts.append(f"cost {row['cost']:,.0f}")
     return ", ".join(parts)
@@ -177,11 +179,11 @@ def _storage(summary: Mapping[str, Any]) -> RenderableType:
             name, megabytes(store["start_mb"]), _fill_bar(store), megabytes(store["left_mb"]),
             megabytes(store["generated_mb"]), megabytes(store["delivered_mb"]), lost,
         )
-    return Group(table, Text("bar: storage full at the right edge; before ▏to after ▌", style="dim"))
+    return Group(table, Text("bar: the whole storage; █ full after the day, │ where it stood before", style="dim"))
 
 
 def _fill_bar(store: Mapping[str, float], width: int = 16) -> Text:
-    """Storage as a bar: ``▬`` up to the fill at the end, ``╎`` marks the fill at the start."""
+    """Storage as a bar: ``█`` up to the fill at the end, ``│`` marks the fill at the start."""
     capacity = store["capacity_mb"]
     if capacity <= 0.0:
         return Text("no storage".ljust(width), style="dim")

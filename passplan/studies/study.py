@@ -14,7 +14,7 @@ from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.load import beside
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.reader import Reader
-from passplan.inputs.records import Name, Names, Record
+from passplan.inputs.records import Label, Names, Record
 from passplan.inputs.run import Run
 from passplan.inputs.tables import checked, placed_records, read_toml, reject_unknown
 
@@ -24,7 +24,7 @@ BASE = "base"
 class Variant(Record):
     """One change of the network: antennas to leave out, to add, or to alter (by name, with the keys that change)."""
 
-    name: Name
+    name: Label
     remove_antennas: Names = ()
     site: tuple[dict[str, Any], ...] = ()
     receiver: tuple[dict[str, Any], ...] = ()
@@ -34,7 +34,7 @@ class Variant(Record):
 
 
 class _Head(Record):
-    name: str = "study"
+    name: Label = "study"
     base: str
     days: Annotated[int, Field(ge=1, le=366)] = 3
 

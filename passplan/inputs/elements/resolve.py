@@ -21,7 +21,7 @@ from passplan.inputs.elements.own_file import own_element_set, own_ephemeris
 from passplan.inputs.elements.read import read_elements
 from passplan.inputs.elements.table import ElementRow, elements_table
 from passplan.inputs.ephemeris import Ephemeris
-from passplan.inputs.errors import Findings
+from passplan.inputs.errors import Findings, PassplanError
 from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.policy import Policy
 from passplan.inputs.reader import Reader
@@ -29,11 +29,13 @@ from passplan.inputs.reader import Reader
 _JUMP_WARN_KM = 20.0
 
 
-class ElementsError(Exception):
-    """Element sets are missing or too old and the policy does not let the run go on (exit code 3).
+class ElementsError(PassplanError):
+    """Element sets are missing or too old and the policy does not let the run go on.
 
     ``lines`` holds one sentence for each spacecraft.
     """
+
+    exit_code = 3
 
     def __init__(self, lines: Iterable[str]) -> None:
         self.lines = tuple(lines)

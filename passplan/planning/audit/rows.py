@@ -115,16 +115,26 @@ def _nonsense(run: Run, contact: Contact) -> list[Fault]:
 
 
 def _contact(run: Run, record: Mapping[Hashable, Any], pieces: tuple[Piece, ...]) -> Contact:
-    names = ("contact_id", "spacecraft", "antenna", "site", "service", "radio", "polarisation", "modcod")
-    figures = (
-        "frequency_mhz", "duration_s", "usable_s", "volume_mb", "min_margin_db", "weight", "value", "cost",
-    )
     return Contact(
+        contact_id=_text(record["contact_id"]),
+        spacecraft=_text(record["spacecraft"]),
+        antenna=_text(record["antenna"]),
+        site=_text(record["site"]),
+        service=_text(record["service"]),
+        radio=_text(record["radio"]),
+        frequency_mhz=_figure(record["frequency_mhz"]),
+        polarisation=_text(record["polarisation"]),
         start_s=_seconds(run, record["start_utc"]),
         end_s=_seconds(run, record["end_utc"]),
+        duration_s=_figure(record["duration_s"]),
+        usable_s=_figure(record["usable_s"]),
+        modcod=_text(record["modcod"]),
+        volume_mb=_figure(record["volume_mb"]),
+        min_margin_db=_figure(record["min_margin_db"]),
+        weight=_figure(record["weight"]),
+        value=_figure(record["value"]),
+        cost=_figure(record["cost"]),
         pieces=pieces,
-        **{name: _text(record[name]) for name in names},
-        **{name: _figure(record[name]) for name in figures},
     )
 
 

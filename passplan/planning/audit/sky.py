@@ -64,7 +64,7 @@ def mask_deg(antenna: Antenna, azimuth_deg: Floats) -> Floats:
     # One more point on each side of north, so that straight lines join across it.
     around = np.concatenate((azimuths[-1:] - 360.0, azimuths, azimuths[:1] + 360.0))
     heights = np.concatenate((elevations[-1:], elevations, elevations[:1]))
-    return np.maximum(flat, np.interp(azimuth_deg % 360.0, around, heights))
+    return np.asarray(np.maximum(flat, np.interp(azimuth_deg % 360.0, around, heights)))
 
 
 @lru_cache(maxsize=1)

@@ -14,5 +14,5 @@ def spacecraft_time(problem: Problem) -> Terms:
     lanes = []
     for k, name in enumerate(problem.fleet.names):
         mine = np.flatnonzero(options.spacecraft == k)
-        lanes.append(Lane(name, "spacecraft_busy", mine, options.start_s[mine], options.end_s[mine]))
+        lanes.append(Lane(name, "spacecraft_busy", mine, options.start_s[mine], options.end_s[mine], owner=k))
     return Terms(lanes=tuple(lanes))

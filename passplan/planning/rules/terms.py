@@ -37,7 +37,8 @@ class Removal:
 class Lane:
     """A resource for one at a time: option ``options[k]`` holds it in ``[start_s[k], end_s[k])``.
 
-    ``kind`` is the reason code that is given when the lane stands in the way.
+    ``kind`` is the reason code that is given when the lane stands in the way. ``owner`` is the spacecraft
+    whose own sequence of contacts the lane is, or -1 where spacecraft compete for it.
     """
 
     name: str
@@ -45,6 +46,7 @@ class Lane:
     options: Integers
     start_s: Integers
     end_s: Integers
+    owner: int = -1
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,0 +1,53 @@
+"""The audit's front door."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from typing import Any
+
+import pandas as pd
+
+from passplan.inputs.run import Run
+from passplan.planning.audit.faults import Fault, differs
+from passplan.planning.audit.links import check_links
+from passplan.planning.audit.occupancy import check_closures, check_overlaps, check_times
+from passplan.planning.audit.requirements import check_requirements
+from passplan.planning.audit.rows import Contact, read_rows
+from passplan.planning.audit.storage import check_storage
+from passplan.planning.audit.visibility import check_visibility, sight_of
+
+
+def audit_plan(
+    run: Run, contacts: pd.DataFrame, segments: pd.DataFrame, summary: Mapping[str, Any]
+) -> list[Fault]:
+    """Check a finished plan by a path of its own; an empty list means that nothing is wrong with it.
+
+    ``contacts`` and ``segments`` are the plan's tables (times as ``datetime64`` in UTC), ``summary`` the
+    content of ``plan.json``: ``storage`` per spacecraft (``start_mb, generated_mb, delivered_mb, lost_mb,
+    left_mb``), ``value``, ``volume_mb`` and ``shortfalls`` (``kind``, ``name``). Elevations come straight
+    from Skyfield; margins, modcods, usable times and volumes from the inputs; storage and value from a
+    simulation of their own. Nothing is taken from the model, the search or the windows.
+    """
+    rows, faults = read_rows(run, contacts, segments)
+    for contact in rows:
+        faults.extend(_check_contact(run, contact))
+    faults.extend(check_overlaps(run, rows))
+    faults.extend(check_storage(run, rows, summary))
+    faults.extend(check_requirements(run, rows, summary))
+    return faults
+
+
+def _check_contact(run: Run, contact: Contact) -> Iterator[Fault]:
+    yield from check_times(run, contact)
+    if contact.site != run.antennas[contact.antenna].site:
+        sentence = f"the site of {contact.antenna} is {run.antennas[contact.antenna].site}, not {contact.site}"
+        yield Fault("table", contact.place, sentence)
+    if differs(contact.duration_s, contact.end_s - contact.start_s, 1e-3):
+        yield Fault("table", contact.place, "its duration does not agree with its start and end")
+    yield from check_closures(run, contact)
+    seen = sight_of(run, contact)
+    visible = list(check_visibility(run, contact, seen))
+    yield from visible
+    # Below the mask the link is of no interest, and without an orbit there is none.
+    if not visible:
+        yield from check_links(run, contact, seen)

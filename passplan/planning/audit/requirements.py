@@ -1,0 +1,85 @@
+"""Is every requirement met, or else named as a shortfall?"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from typing import Any
+
+import numpy as np
+
+from passplan.inputs.calendar_records import Request
+from passplan.inputs.records import datetime64
+from passplan.inputs.run import Run
+from passplan.planning.audit.faults import Fault
+from passplan.planning.audit.rows import Contact
+
+# Plans count in whole seconds; within a second of the limit either answer is right.
+_TOLERANCE_S = 1.0
+
+
+@dataclass(frozen=True)
+class _Standing:
+    """How a requirement fares: surely missed, surely met, or so close that either may be said; a sentence."""
+
+    missed: bool
+    met: bool
+    sentence: str
+
+
+def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[str, Any]) -> Iterator[Fault]:
+    """Requests and command intervals against the contacts and against the shortfalls that the plan admits."""
+    standings = {("request", request.name): _request(run, request, contacts) for request in run.requests}
+    for name in run.orbits:
+        every_h = run.spacecraft[name].command_every_h or run.policy.command_every_h
+        if every_h is not None:
+            standings["command", name] = _command(run, name, every_h, contacts)
+    admitted = [(str(entry.get("kind")), str(entry.get("name"))) for entry in summary.get("shortfalls", [])]
+    for (kind, name), standing in standings.items():
+        place = f"request {name}" if kind == "request" else f"spacecraft {name}"
+        listed = (kind, name) in admitted
+        if standing.missed and not listed:
+            yield Fault(kind, place, f"{standing.sentence}, and the plan does not say so")
+        elif standing.met and listed:
+            yield Fault(kind, place, "the plan calls it a shortfall, yet it is met")
+    for kind, name in admitted:
+        if (kind, name) not in standings:
+            yield Fault(kind, f"shortfall {name}", "the run has no such requirement")
+
+
+def _request(run: Run, request: Request, contacts: Sequence[Contact]) -> _Standing:
+    earliest_s, latest_s = _seconds(run, request.earliest_utc), _seconds(run, request.latest_utc)
+    met = any(
+        contact.spacecraft == request.spacecraft
+        and request.antenna in (None, contact.antenna)
+        and request.site in (None, run.antennas[contact.antenna].site)
+        and contact.service in (request.service, "both")
+        and earliest_s <= contact.start_s
+        and contact.end_s <= latest_s
+        and contact.end_s - contact.start_s >= request.min_duration_s
+        for contact in contacts
+    )
+    return _Standing(not met, met, "no contact meets it")
+
+
+def _command(run: Run, name: str, every_h: float, contacts: Sequence[Contact]) -> _Standing:
+    """How the spacecraft fares with its command contacts.
+
+    The interval runs from the end of one command contact to the start of the next, from the last one
+    before the horizon (or the horizon's start) on; one that is open at the horizon's end is not missed yet.
+    """
+    last_utc = run.spacecraft[name].last_command_utc
+    last_s = 0.0 if last_utc is None else _seconds(run, last_utc)
+    late_s = -np.inf
+    for contact in contacts:
+        if contact.spacecraft == name and contact.service != "downlink":
+            late_s = max(late_s, contact.start_s - max(last_s + every_h * 3600.0, 0.0))
+            last_s = max(last_s, contact.end_s)
+    late_s = max(late_s, run.horizon_s - max(last_s + every_h * 3600.0, 0.0))
+    sentence = f"a command contact is due every {every_h:g} h, and one comes {late_s:.0f} s late or not at all"
+    return _Standing(late_s > _TOLERANCE_S, late_s < -_TOLERANCE_S, sentence)
+
+
+def _seconds(run: Run, instant: datetime) -> float:
+    return float((datetime64(instant) - run.start_utc) / np.timedelta64(1, "ms")) / 1e3

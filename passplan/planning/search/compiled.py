@@ -1,0 +1,15 @@
+"""The one place where numba is met: compiled on first use, kept on disk, free of the interpreter's lock."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any, TypeVar, cast
+
+import numba
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+
+def compiled(function: F) -> F:
+    """Compile a function of arrays and numbers; it may run beside others in threads."""
+    return cast(F, numba.njit(cache=True, nogil=True, fastmath=False)(function))
