@@ -15,7 +15,11 @@ INERTIAL_FRAMES = ("ICRF", "GCRF", "EME2000")
 def turn_about_z(positions: Floats, cosine: Floats, sine: Floats) -> Floats:
     """Components of vectors (..., 3) in axes turned about z by the angle of ``cosine`` and ``sine``."""
     x, y = positions[..., 0], positions[..., 1]
-    return np.stack([cosine * x + sine * y, cosine * y - sine * x, positions[..., 2]], axis=-1)
+    turned = np.empty_like(positions)
+    np.add(cosine * x, sine * y, out=turned[..., 0])
+    np.subtract(cosine * y, sine * x, out=turned[..., 1])
+    turned[..., 2] = positions[..., 2]
+    return turned
 
 
 def teme_to_itrf(positions_km: Floats, velocities_km_s: Floats, utc_s: Floats) -> tuple[Floats, Floats]:

@@ -5,6 +5,9 @@ nearest to the culmination of the pass, so the slots are centred on 00:00, 01:20
 is never an edge. A pass is the time above the true horizon (or above the lowest mask, if that is lower)
 without a break; it is followed beyond the planning horizon, so a cut window has the name of its pass.
 
+Windows that go on for two days are named ``always``, whatever part of them the horizon shows. Where an
+object is above the horizon for days but dips below the mask, each window goes by its own culmination.
+
 No rule without memory can be perfect. Let an orbit's phase go round once: pass k has then become pass
 k + 1 and must have changed its name on the way, whatever the rule, so every rule has an edge somewhere.
 Ours lies 40 minutes from the centres of the slots. :func:`inherit_ids` adds the memory: made against an
@@ -19,6 +22,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from passplan.geometry.regimes import ALWAYS_S
 from passplan.geometry.timescale import Floats
 
 SLOT_S = 4_800
@@ -28,9 +32,13 @@ _EPOCH = np.datetime64("2000-01-01", "D")
 ALWAYS = np.iinfo(np.int64).min
 
 
-def slots(culmination_s: Floats) -> NDArray[np.int64]:
-    """Number of the 80-minute slot (since 2000-01-01) nearest to ``utc_s`` values, rounding half up."""
-    return np.floor((culmination_s + SLOT_S / 2) / SLOT_S).astype(np.int64)
+def slots(culmination_s: Floats, duration_s: Floats) -> NDArray[np.int64]:
+    """Number of the 80-minute slot (since 2000-01-01) nearest to each culmination (``utc_s``), rounding half up.
+
+    A window that goes on for two days has no useful culmination; it gets ``ALWAYS``.
+    """
+    nearest = np.floor((culmination_s + SLOT_S / 2) / SLOT_S).astype(np.int64)
+    return np.where(duration_s >= ALWAYS_S, ALWAYS, nearest)
 
 
 def prefixes(spacecraft: Sequence[str], antennas: Sequence[str]) -> list[list[str]]:
@@ -46,7 +54,9 @@ def prefixes(spacecraft: Sequence[str], antennas: Sequence[str]) -> list[list[st
     return table
 
 
-def window_ids(pair_prefix: Sequence[str], pair: NDArray[np.int64], slot: NDArray[np.int64], start_s: Floats) -> list[str]:
+def window_ids(
+    pair_prefix: Sequence[str], pair: NDArray[np.int64], slot: NDArray[np.int64], start_s: Floats
+) -> list[str]:
     """One id per window; windows of a pair in one slot are lettered in time order from the second on.
 
     All windows of a pass must be given, those outside the planning horizon too.
@@ -80,7 +90,7 @@ def inherit_ids(windows: pd.DataFrame, earlier_windows: pd.DataFrame, tolerance_
     within ``tolerance_s`` of it; of several, overlap and then the nearest peak decides.
     """
     matches: list[tuple[bool, float, int, str]] = []
-    groups = {key: part for key, part in earlier_windows.groupby(["spacecraft", "antenna"], sort=False)}
+    groups = dict(iter(earlier_windows.groupby(["spacecraft", "antenna"], sort=False)))
     second = np.timedelta64(1, "s")
     for i, (name, antenna, aos, los, peak) in enumerate(
         zip(*(windows[c] for c in ("spacecraft", "antenna", "aos_utc", "los_utc", "peak_utc")), strict=True)

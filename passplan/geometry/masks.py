@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 
@@ -59,7 +60,7 @@ def mask_of(antenna: Antenna) -> Mask:
         return Mask(np.array([0.0]), np.array([360.0]), np.array([floor]), np.array([floor]))
     points = _wrapped(sorted(antenna.mask, key=lambda point: point[0]))
     pieces: list[tuple[float, float, float, float]] = []
-    for (a, x), (b, y) in zip(points, points[1:], strict=False):
+    for (a, x), (b, y) in pairwise(points):
         if b <= a:
             continue
         if (x - floor) * (y - floor) < 0.0:

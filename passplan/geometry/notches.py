@@ -25,28 +25,23 @@ _TOLERANCE = 1e-8
 
 @dataclass(frozen=True)
 class Sky:
-    """East, north and up (km) of windows' objects from one antenna, from a block's positions (3, objects, times)."""
+    """East, north and up (km) of windows' objects from one antenna, from a block's positions (objects, times, 3)."""
 
     positions_km: Floats
     here: Stations
 
     def powers(self, objects: Indices, at: Floats) -> tuple[Floats, Indices]:
         """Polynomials (3, 14, n) of east, north and up around grid instants ``at``, and where their x is 0."""
-        first, zero = stencil.place(np.floor(at).astype(np.int64), self.positions_km.shape[2])
-        own = np.stack([stencil.polynomials(part, objects, first) for part in self.positions_km])
+        first, zero = stencil.place(np.floor(at).astype(np.int64), self.positions_km.shape[1])
+        stencils = stencil.samples(self.positions_km, objects, first) - self.here.positions_km[0]
         axes = np.concatenate([self.here.east, self.here.north, self.here.up])
-        local = np.einsum("ij,jkn->ikn", axes, own)
-        local[:, 0] -= (axes @ self.here.positions_km[0])[:, None]
-        return local, zero
+        local = np.einsum("ij,nkj->ink", axes, stencils)
+        return np.stack([stencil.powers_of(part) for part in local]), zero
 
     def at(self, objects: Indices, at: Floats) -> Floats:
         """East, north and up (3, n) at grid instants ``at``."""
-        first, zero = stencil.place(np.floor(at).astype(np.int64), self.positions_km.shape[2])
-        weight = stencil.weights(at - zero)
-        rows = objects * self.positions_km.shape[2] + first + np.arange(stencil.POINTS)[:, None]
-        place = np.stack([np.einsum("kn,kn->n", weight, part.reshape(-1)[rows]) for part in self.positions_km])
-        axes = np.concatenate([self.here.east, self.here.north, self.here.up])
-        return np.asarray(axes @ place - (axes @ self.here.positions_km[0])[:, None])
+        line = stencil.interpolate(self.positions_km, objects, at) - self.here.positions_km[0]
+        return np.asarray(np.concatenate([self.here.east, self.here.north, self.here.up]) @ line.T)
 
 
 def cut_to_mask(
@@ -134,9 +129,7 @@ def _line(mask: Mask, piece: Indices, azimuth_deg: Floats) -> Floats:
     return np.asarray(0.5 * (mask.first_deg + mask.last_deg)[piece] + mask.slope[piece] * apart)
 
 
-def _edge(
-    sky: Sky, mask: Mask, objects: Indices, piece: Indices, bracket: Floats, rising: Flags
-) -> Floats:
+def _edge(sky: Sky, mask: Mask, objects: Indices, piece: Indices, bracket: Floats, rising: Flags) -> Floats:
     """Instants at which the elevation passes the line of ``piece`` within each bracket."""
     if not objects.size:
         return np.zeros(0)

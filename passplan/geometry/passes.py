@@ -4,11 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, fields
+from typing import TypeVar
 
 import numpy as np
 
 from passplan.geometry import stencil
-from passplan.geometry.identity import ALWAYS, slots
 from passplan.geometry.masks import Mask
 from passplan.geometry.notches import Sky, cut_to_mask
 from passplan.geometry.pointing import azimuth_of
@@ -27,7 +27,8 @@ _STEEP_SINE = 0.98
 class Rows:
     """Windows as columns (n,). Times are ``utc_s``; ``whole_*`` are the edges without the planning horizon.
 
-    Rows outside the horizon (``inside`` false) are kept where they belong to a pass that has a window in it.
+    The culmination is that of the whole pass. Rows outside the horizon (``inside`` false) are kept where
+    they belong to a pass that has a window in it.
     """
 
     spacecraft: Indices
@@ -36,7 +37,8 @@ class Rows:
     whole_end_s: Floats
     open_start: Flags
     open_end: Flags
-    slot: Indices
+    culmination_s: Floats
+    culmination_deg: Floats
     inside: Flags
     start_s: Floats
     end_s: Floats
@@ -67,8 +69,8 @@ def block_rows(
     first_pass = _pass_numbers(scene, found)
     found, number = _near_horizon(found, first_pass, low, high)
     top = summits(scene, found.pair, found.start, found.end)
-    slot = _slots(block, found, number, top)
-    found, slot, top = _cut_by_masks(block, places, masks, scene, found, slot, top)
+    crown = _crowns(block.step_s, found, number, top)
+    found, crown, top = _cut_by_masks(block, places, masks, scene, found, crown, top)
     start, end = np.clip(found.start, low, high), np.clip(found.end, low, high)
     inside = start < end
     cut = np.flatnonzero(inside & ((start != found.start) | (end != found.end)))
@@ -89,7 +91,8 @@ def block_rows(
         utc(found.end),
         found.open_start,
         found.open_end,
-        slot,
+        utc(crown.at),
+        np.degrees(np.arcsin(np.minimum(crown.sine, 1.0))),
         inside,
         np.clip(utc(start), start_s, end_s),
         np.clip(utc(end), start_s, end_s),
@@ -122,7 +125,7 @@ def _sets_between(scene: Scene, pair: Indices, low: Floats, high: Floats) -> Fla
     first = np.cumsum(count) - count
     gap = np.repeat(np.arange(pair.size), count)
     at = low[gap] + (high - low)[gap] * ((np.arange(gap.size) - first[gap]) / (count - 1)[gap])
-    up, square = (stencil.interpolate(part, pair[gap], at) for part in (scene.up_km, scene.range_km2))
+    up, square = scene.at(pair[gap], at)
     below = up <= np.minimum(scene.sines, 0.0)[pair[gap]] * np.sqrt(square)
     return np.asarray(np.logical_or.reduceat(below, first))
 
@@ -136,63 +139,64 @@ def _near_horizon(found: Spans, number: Indices, low: float, high: float) -> tup
     return Spans(*(getattr(found, f.name)[keep] for f in fields(Spans))), number[keep]
 
 
-def _slots(block: Block, found: Spans, number: Indices, top: Summits) -> Indices:
-    """The slot of each span from the culmination of its pass; spans and passes of days are told apart.
+@dataclass(frozen=True)
+class _Crowns:
+    """Culmination of each span's pass: instant (grid steps) and sine; ``endless`` where the pass lasts for days."""
 
-    In a pass that never ends within the reach, a span that goes on for days is ``always``, and a span
-    between two dips below the mask goes by its own culmination.
-    """
-    if not number.size:
-        return np.zeros(0, np.int64)
-    heads = np.flatnonzero(np.diff(number, prepend=-1))
+    at: Floats
+    sine: Floats
+    endless: Flags
+
+
+def _crowns(step_s: float, found: Spans, number: Indices, top: Summits) -> _Crowns:
+    """The highest moment of each pass; in a pass that does not end for days each span goes by its own."""
+    fresh = np.diff(number, prepend=-1) != 0
+    if fresh.all():
+        return _Crowns(top.at, top.sine, (found.end - found.start) * step_s >= ALWAYS_S)
+    heads = np.flatnonzero(fresh)
     tails = np.append(heads[1:], number.size) - 1
-    culmination = top.at.copy()
-    if heads.size < number.size:
-        which = np.cumsum(np.diff(number, prepend=-1) != 0) - 1
-        order = np.lexsort((top.sine, which))
-        culmination = top.at[order[tails]][which]
-        endless = ((found.end[tails] - found.start[heads]) * block.step_s >= ALWAYS_S)[which]
-        culmination = np.where(endless, top.at, culmination)
-    slot = slots(block.start_s + block.step_s * culmination)
-    return np.where((found.end - found.start) * block.step_s >= ALWAYS_S, ALWAYS, slot)
+    which = np.cumsum(fresh) - 1
+    best = np.lexsort((top.sine, which))[tails][which]
+    endless = ((found.end[tails] - found.start[heads]) * step_s >= ALWAYS_S)[which]
+    best = np.where(endless, np.arange(number.size), best)
+    return _Crowns(top.at[best], top.sine[best], endless)
 
 
 def _cut_by_masks(
-    block: Block,
-    places: Stations,
-    masks: Sequence[Mask],
-    scene: Scene,
-    found: Spans,
-    slot: Indices,
-    top: Summits,
-) -> tuple[Spans, Indices, Summits]:
+    block: Block, places: Stations, masks: Sequence[Mask], scene: Scene, found: Spans, crown: _Crowns, top: Summits
+) -> tuple[Spans, _Crowns, Summits]:
     """Spans above the lowest point of a mask that depends on azimuth, replaced by their pieces above the mask."""
-    antenna, own = np.divmod(found.pair, scene.objects)
     for number, mask in enumerate(masks):
-        if mask.constant:
-            continue
+        antenna, own = np.divmod(found.pair, scene.objects)
         mine = np.flatnonzero(antenna == number)
-        if not mine.size:
+        if mask.constant or not mine.size:
             continue
-        sky = Sky(block.positions_km, places.subset(slice(number, number + 1)))
+        sky = Sky(block.positions_km, places.subset(np.array([number])))
         piece, start, end = cut_to_mask(sky, mask, own[mine], found.start[mine], found.end[mine], top.at[mine])
-        parent = mine[piece]
+        parent, rest = mine[piece], np.flatnonzero(antenna != number)
         above = summits(scene, found.pair[parent], start, end)
-        rest = np.flatnonzero(antenna != number)
-        index = np.concatenate([rest, parent])
-        opened = found.open_start[parent] & (start == found.start[parent])
-        closed = found.open_end[parent] & (end == found.end[parent])
-        found = Spans(
-            found.pair[index],
-            np.concatenate([found.start[rest], start]),
-            np.concatenate([found.end[rest], end]),
-            np.concatenate([found.open_start[rest], opened]),
-            np.concatenate([found.open_end[rest], closed]),
+        endless = crown.endless[parent]
+        cut = Spans(
+            found.pair[parent],
+            start,
+            end,
+            found.open_start[parent] & (start == found.start[parent]),
+            found.open_end[parent] & (end == found.end[parent]),
         )
-        slot = slot[index]
-        top = Summits(*(np.concatenate([getattr(top, f.name)[rest], getattr(above, f.name)]) for f in fields(Summits)))
-        antenna, own = antenna[index], own[index]
-    return found, slot, top
+        renamed = _Crowns(
+            np.where(endless, above.at, crown.at[parent]), np.where(endless, above.sine, crown.sine[parent]), endless
+        )
+        found, crown, top = _followed(found, rest, cut), _followed(crown, rest, renamed), _followed(top, rest, above)
+    return found, crown, top
+
+
+_Columns = TypeVar("_Columns", Spans, _Crowns, Summits)
+
+
+def _followed(table: _Columns, rest: Indices, more: _Columns) -> _Columns:
+    """The rows ``rest`` of ``table``, then ``more``."""
+    names = [f.name for f in fields(table)]
+    return type(table)(*(np.concatenate([getattr(table, name)[rest], getattr(more, name)]) for name in names))
 
 
 def _azimuths(
@@ -218,9 +222,6 @@ def _peak_deg(block: Block, places: Stations, antenna: Indices, own: Indices, to
 
 def _local(block: Block, places: Stations, antenna: Indices, own: Indices, at: Floats) -> tuple[Floats, Floats, Floats]:
     """East, north and up (km) at grid instants ``at`` for each window's antenna and object."""
-    first, zero = stencil.place(np.floor(at).astype(np.int64), block.positions_km.shape[2])
-    weight = stencil.weights(at - zero)
-    rows = (np.einsum("ij,ij->j", weight, stencil.samples(part, own, first)) for part in block.positions_km)
-    line = np.stack(list(rows), axis=-1) - places.positions_km[antenna]
+    line = stencil.interpolate(block.positions_km, own, at) - places.positions_km[antenna]
     east, north, up = (np.einsum("ij,ij->i", axis[antenna], line) for axis in (places.east, places.north, places.up))
     return east, north, up

@@ -105,4 +105,4 @@ def sample_windows(
             columns, (found.azimuth_deg, found.elevation_deg, found.range_km, found.range_rate_km_s), strict=True
         ):
             column[pick] = values
-    return Samples(time, *columns, offsets)
+    return Samples(time, columns[0], columns[1], columns[2], columns[3], offsets)

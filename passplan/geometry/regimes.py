@@ -13,7 +13,7 @@ OrbitClass = Literal["low", "medium", "geosynchronous", "eccentric"]
 MU_KM3_S2 = 398_600.4418
 _RADIUS_KM = 6_378.137
 # Even steps that divide the day, so that every horizon sees the same grid.
-_LADDER_S = (15.0, 30.0, 45.0, 60.0, 90.0, 120.0, 180.0, 240.0, 300.0, 360.0, 450.0, 600.0, 900.0, 1_200.0, 1_800.0)
+_LADDER_S = (15.0, 30.0, 60.0, 120.0, 240.0, 300.0, 600.0, 900.0, 1_800.0)
 _ANGLE_PER_STEP_RAD = 0.35
 _STEPS_TO_SINGULARITY = 8.0
 _LOW_APOGEE_KM = 2_500.0

@@ -60,6 +60,7 @@ def solve(
             if 2 * left < x.size:
                 keep = np.flatnonzero(unsettled)
                 active = keep if active is None else active[keep]
-                data = [part[..., keep] for part in data]
-                low, high, x, rising, last = (part[keep] for part in (low, high, x, rising, last))
+                data = [part.take(keep, axis=-1) for part in data]
+                low, high, x, last = low[keep], high[keep], x[keep], last[keep]
+                rising = rising[keep]
     return result

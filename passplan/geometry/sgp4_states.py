@@ -28,7 +28,9 @@ def sgp4_teme_many(satrecs: Sequence[Satrec], utc_s: Floats) -> tuple[Floats, np
     return positions, errors != 0
 
 
-def sgp4_span(satrec: Satrec, epoch_s: float, start_s: float, end_s: float, step_s: float = 60.0) -> tuple[float, float]:
+def sgp4_span(
+    satrec: Satrec, epoch_s: float, start_s: float, end_s: float, step_s: float = 60.0
+) -> tuple[float, float]:
     """The part of [start_s, end_s] that SGP4 reaches from the epoch without a failure; empty as (start_s, start_s).
 
     Once an object has decayed, SGP4 may return numbers again half an orbit later; they mean nothing. So

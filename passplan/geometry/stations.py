@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.geometry.timescale import Floats
 from passplan.inputs.ground import Site
@@ -27,9 +28,9 @@ class Stations:
     north: Floats
     up: Floats
 
-    def subset(self, index: object) -> Stations:
-        """The stations picked by a NumPy index along the first axis."""
-        return Stations(*(part[index] for part in (self.positions_km, self.east, self.north, self.up)))  # type: ignore[index]
+    def subset(self, index: NDArray[np.int64]) -> Stations:
+        """The stations picked by index, repeats allowed."""
+        return Stations(self.positions_km[index], self.east[index], self.north[index], self.up[index])
 
 
 def stations(sites: Sequence[Site]) -> Stations:
@@ -42,7 +43,8 @@ def stations(sites: Sequence[Site]) -> Stations:
     square = FLATTENING * (2.0 - FLATTENING)
     normal_km = EQUATORIAL_RADIUS_KM / np.sqrt(1.0 - square * sin_lat**2)
     ring_km = (normal_km + height_km) * cos_lat
-    positions = np.stack([ring_km * cos_lon, ring_km * sin_lon, (normal_km * (1.0 - square) + height_km) * sin_lat], axis=-1)
+    axis_km = (normal_km * (1.0 - square) + height_km) * sin_lat
+    positions = np.stack([ring_km * cos_lon, ring_km * sin_lon, axis_km], axis=-1)
     east = np.stack([-sin_lon, cos_lon, np.zeros_like(sin_lon)], axis=-1)
     north = np.stack([-sin_lat * cos_lon, -sin_lat * sin_lon, cos_lat], axis=-1)
     up = np.stack([cos_lat * cos_lon, cos_lat * sin_lon, sin_lat], axis=-1)

@@ -9,6 +9,7 @@ Near the ends of a grid the stencil is shifted inwards, never beyond the samples
 from __future__ import annotations
 
 import numpy as np
+from numpy.lib.stride_tricks import as_strided
 from numpy.typing import NDArray
 
 from passplan.geometry.products import product
@@ -35,17 +36,26 @@ def place(interval: NDArray[np.int64], length: int) -> tuple[NDArray[np.int64], 
 
 def polynomials(rows: Floats, row: NDArray[np.int64], first: NDArray[np.int64]) -> Floats:
     """Coefficients (14, n) of the interpolant of ``rows[row[i]]`` (2-d array) on the stencil from ``first[i]``."""
-    return product(_POWERS, samples(rows, row, first))
+    return powers_of(samples(rows, row, first))
+
+
+def powers_of(stencils: Floats) -> Floats:
+    """Coefficients (14, n) of the polynomials through ``stencils`` (n, 14)."""
+    return product(_POWERS, stencils.T)
 
 
 def samples(rows: Floats, row: NDArray[np.int64], first: NDArray[np.int64]) -> Floats:
-    """The samples (14, n) of ``rows[row[i]]`` from ``first[i]`` on."""
-    return rows.reshape(-1).take((row * rows.shape[1] + first) + np.arange(POINTS)[:, None])
+    """The samples (n, 14) or (n, 14, k) of ``rows[row[i]]``, a 2-d or 3-d contiguous array, from ``first[i]`` on."""
+    # Whole stencils are copied at a time: far kinder to the cache than gathering sample by sample.
+    flat = rows.reshape(rows.shape[0] * rows.shape[1], *rows.shape[2:])
+    shape = (max(flat.shape[0] - POINTS + 1, 0), POINTS, *flat.shape[1:])
+    stencils = as_strided(flat, shape, (flat.strides[0], *flat.strides), writeable=False)
+    return np.asarray(stencils[row * rows.shape[1] + first])
 
 
 def value(powers: Floats, x: Floats) -> Floats:
-    """Value of the polynomials at ``x`` (n,), in steps of the grid."""
-    total = powers[-1].copy()
+    """Value of the polynomials (14, ..., n) at ``x`` (n,), in steps of the grid."""
+    total: Floats = powers[-1].copy()
     for k in range(POINTS - 2, -1, -1):
         total *= x
         total += powers[k]
@@ -54,8 +64,10 @@ def value(powers: Floats, x: Floats) -> Floats:
 
 def slope(powers: Floats, x: Floats) -> tuple[Floats, Floats]:
     """Value and first derivative (per grid step)."""
-    total, first = powers[-1].copy(), np.zeros_like(x)
-    for k in range(POINTS - 2, -1, -1):
+    total = powers[-1] * x
+    total += powers[-2]
+    first = powers[-1].copy()
+    for k in range(POINTS - 3, -1, -1):
         first *= x
         first += total
         total *= x
@@ -65,8 +77,11 @@ def slope(powers: Floats, x: Floats) -> tuple[Floats, Floats]:
 
 def bend(powers: Floats, x: Floats) -> tuple[Floats, Floats, Floats]:
     """Value, first and second derivative (per grid step)."""
-    total, first, half = powers[-1].copy(), np.zeros_like(x), np.zeros_like(x)
-    for k in range(POINTS - 2, -1, -1):
+    total = powers[-1] * x
+    total += powers[-2]
+    first = powers[-1].copy()
+    half = np.zeros_like(first)
+    for k in range(POINTS - 3, -1, -1):
         half *= x
         half += first
         first *= x
@@ -77,15 +92,15 @@ def bend(powers: Floats, x: Floats) -> tuple[Floats, Floats, Floats]:
 
 
 def weights(x: Floats) -> Floats:
-    """Weights (14, n) of the samples for a value at ``x`` (n,); exact at the nodes."""
+    """Weights (n, 14) of the samples for a value at ``x`` (n,); exact at the nodes."""
     powers = np.empty((POINTS, x.size))
     powers[0] = 1.0
     for k in range(1, POINTS):
         np.multiply(powers[k - 1], x, out=powers[k])
-    return product(_POWERS.T, powers)
+    return product(_POWERS.T, powers).T
 
 
 def interpolate(rows: Floats, row: NDArray[np.int64], at: Floats) -> Floats:
-    """Values (n,) of ``rows[row[i]]`` (2-d array) at grid instants ``at`` (n,)."""
+    """Values (n,) or (n, k) of ``rows[row[i]]`` at grid instants ``at`` (n,); rows as for :func:`samples`."""
     first, zero = place(np.floor(at).astype(np.int64), rows.shape[1])
-    return np.asarray(np.einsum("ij,ij->j", weights(at - zero), samples(rows, row, first)))
+    return np.asarray(np.einsum("ij,ij...->i...", weights(at - zero), samples(rows, row, first)))

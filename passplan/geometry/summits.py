@@ -12,7 +12,7 @@ from passplan.geometry.scan import Scene
 from passplan.geometry.timescale import Floats
 
 # The last Newton step in grid steps; its square is left. Elevation and range are flat there.
-_TOLERANCE = 1e-3
+_TOLERANCE = 1e-4
 
 
 @dataclass(frozen=True)
@@ -41,22 +41,26 @@ def summits(scene: Scene, pair: Indices, start: Floats, end: Floats) -> Summits:
     crest, hollow = _tops(sine, window), _tops(-square, window)
     spot = np.flatnonzero(crest | hollow)
     owner, own_sample = window[spot], sample[spot]
-    up_powers, square_powers, zero = scene.polynomials(pair[owner], own_sample)
+    powers, zero = scene.polynomials(pair[owner], own_sample)
     highest, nearest = _Best(start.size), _Best(start.size)
     doubtful = np.zeros(start.size, bool)
     for best, wanted, slope, rising in (
         (highest, crest[spot], _toward_peak, False),
         (nearest, hollow[spot], _toward_nearest, True),
     ):
-        pick = slice(None) if wanted.all() else np.flatnonzero(wanted)
-        data = up_powers[:, pick], square_powers[:, pick]
-        guess = zero[pick] + _vertex(square, spot[pick])
+        pick = np.flatnonzero(wanted)
+        here = powers.take(pick, axis=-1)
         middle = zero[pick]
+        guess = middle + _vertex(square, spot[pick])
+        data = (here if best is highest else np.ascontiguousarray(here[:, 1]),)
         x = solve(slope, data, middle - 1.0, middle + 1.0, guess, np.full(middle.size, rising), _TOLERANCE)
         at = x + (own_sample[pick] - middle)
         inside = (at >= start[owner[pick]]) & (at <= end[owner[pick]])
-        distance2 = stencil.value(data[1], x)
-        score = stencil.value(data[0], x) / np.sqrt(distance2) if best is highest else -distance2
+        if best is highest:
+            up, distance2 = stencil.value(here, x)
+            score = up / np.sqrt(distance2)
+        else:
+            score = -stencil.value(here[:, 1], x)
         best.offer(owner[pick], at, np.where(inside, score, -np.inf))
         doubtful[owner[pick][~inside]] = True
     ends = np.cumsum(high - low + 1)
@@ -110,7 +114,8 @@ def _outside_better(best: _Best, values: Floats, ends: Indices, spread: Indices)
     """Windows without an extreme inside, or with an outermost sample that beats it."""
     if not ends.size:
         return np.zeros(0, bool)
-    return (best.score == -np.inf) | (values[ends - 1] > best.score) | (values[ends - 1 - spread] > best.score)
+    last, first = values[ends - 1], values[ends - 1 - spread]
+    return np.asarray((best.score == -np.inf) | (last > best.score) | (first > best.score))
 
 
 def _look_at_edges(
@@ -118,17 +123,15 @@ def _look_at_edges(
 ) -> None:
     if some.size:
         for at in (start[some], end[some]):
-            up, square = (stencil.interpolate(part, pair[some], at) for part in (scene.up_km, scene.range_km2))
+            up, square = scene.at(pair[some], at)
             highest.offer(some, at, up / np.sqrt(square))
             nearest.offer(some, at, -square)
 
 
-def _toward_peak(x: Floats, up: Floats, square: Floats) -> tuple[Floats, Floats]:
-    p, dp, ddp = stencil.bend(up, x)
-    d, dd, ddd = stencil.bend(square, x)
+def _toward_peak(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
+    (p, d), (dp, dd), (ddp, ddd) = stencil.bend(powers, x)
     return dp * d - 0.5 * p * dd, ddp * d + 0.5 * (dp * dd - p * ddd)
 
 
-def _toward_nearest(x: Floats, _up: Floats, square: Floats) -> tuple[Floats, Floats]:
-    _, dd, ddd = stencil.bend(square, x)
-    return dd, ddd
+def _toward_nearest(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
+    return stencil.bend(powers, x)[1:]

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from passplan.geometry.frames import turn_about_z
 from passplan.geometry.oem_states import ephemeris_itrf, segment_itrf, segment_span
 from passplan.geometry.regimes import Regime, regime_of
 from passplan.geometry.sgp4_states import sgp4_itrf, sgp4_span, sgp4_teme_many
@@ -17,7 +18,7 @@ from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.run import OrbitSource
 
 # Samples per block and antenna set: small enough that the work arrays stay in the processor's cache.
-_BLOCK_SAMPLES = 800_000
+_BLOCK_SAMPLES = 400_000
 # Sources with edges (decay, ephemeris spans) are sampled this finely, so that stencils may lean to one side.
 _EDGE_STEP_S = 30.0
 _EDGE_POINTS = 25
@@ -26,7 +27,7 @@ _EPHEMERIS_REACH_S = 2.5 * 86_400.0
 
 @dataclass(frozen=True)
 class Block:
-    """Earth-fixed positions (3, objects, times) in km on the even grid ``start_s + k step_s``.
+    """Earth-fixed positions (objects, times, 3) in km on the even grid ``start_s + k step_s``.
 
     ``objects`` are indices into the list of spacecraft. Nothing is known of an object outside its grid.
     """
@@ -71,18 +72,9 @@ def _element_blocks(
     for at in range(0, len(members), share):
         part = members[at : at + share]
         teme, failed = sgp4_teme_many([source.satrec for _, source in part], times)
-        whole = ~failed.any(axis=1)
-        fixed = np.empty((3, int(whole.sum()), times.size))
-        if not whole.all():
-            teme_whole = teme[whole]
-        else:
-            teme_whole = teme
-        np.multiply(teme_whole[:, :, 0], cosine, out=fixed[0])
-        fixed[0] += teme_whole[:, :, 1] * sine
-        np.multiply(teme_whole[:, :, 1], cosine, out=fixed[1])
-        fixed[1] -= teme_whole[:, :, 0] * sine
-        fixed[2] = teme_whole[:, :, 2]
-        if fixed.shape[1]:
+        whole = np.asarray(~failed.any(axis=1))
+        fixed = turn_about_z(teme if whole.all() else teme[whole], cosine, sine)
+        if fixed.shape[0]:
             yield Block(np.array([i for (i, _), good in zip(part, whole, strict=True) if good]), times[0], step, fixed)
         for (index, source), good in zip(part, whole, strict=True):
             if not good:
@@ -95,7 +87,7 @@ def _failing_block(index: int, source: ElementSet, start_s: float, end_s: float)
     low, high = sgp4_span(source.satrec, epoch_s, start_s, end_s)
     if high - low >= 1.0:
         grid = _edge_grid(low, high)
-        yield Block(np.array([index]), low, grid[1] - grid[0], sgp4_itrf(source.satrec, grid)[0].T[:, None, :])
+        yield Block(np.array([index]), low, grid[1] - grid[0], sgp4_itrf(source.satrec, grid)[0][None])
 
 
 def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: float) -> Iterator[Block]:
@@ -105,7 +97,7 @@ def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: floa
         if high - low >= 1.0:
             grid = _edge_grid(low, high)
             positions = segment_itrf(segment, np.clip(grid, low, high))[0]
-            yield Block(np.array([index]), low, grid[1] - grid[0], np.ascontiguousarray(positions.T)[:, None, :])
+            yield Block(np.array([index]), low, grid[1] - grid[0], positions[None])
 
 
 def _edge_grid(low: float, high: float) -> Floats:

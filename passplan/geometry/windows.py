@@ -8,14 +8,16 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from passplan.geometry.identity import prefixes, window_ids
+from passplan.geometry.identity import prefixes, slots, window_ids
 from passplan.geometry.masks import mask_of
 from passplan.geometry.passes import Rows, block_rows, joined
+from passplan.geometry.seams import settled, without_seams
 from passplan.geometry.stations import stations
-from passplan.geometry.timescale import Floats, datetimes_ms, utc_seconds
+from passplan.geometry.timescale import datetimes_ms, utc_seconds
 from passplan.geometry.timing import timing_model
 from passplan.geometry.trajectory import blocks
 from passplan.inputs.elements.model import ElementSet
+from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.ground import Antenna, Site
 from passplan.inputs.run import OrbitSource
 
@@ -64,7 +66,13 @@ def find_windows(
                 progress(len(done), len(orbits))
     if progress is not None and len(done) < len(orbits):
         progress(len(orbits), len(orbits))
-    return _table(joined(parts), orbits, antennas, start_s, end_s) if parts else _empty()
+    if not parts:
+        return _empty()
+    rows = joined(parts)
+    messages = {i: source for i, source in enumerate(orbits.values()) if isinstance(source, Ephemeris)}
+    if messages and rows.spacecraft.size:
+        rows = without_seams(settled(rows, messages, places, masks))
+    return _table(rows, orbits, antennas, start_s, end_s)
 
 
 def _table(
@@ -72,16 +80,15 @@ def _table(
 ) -> pd.DataFrame:
     names, antenna_names = list(orbits), list(antennas)
     pair_prefix = [prefix for row in prefixes(names, antenna_names) for prefix in row]
-    ids = np.array(
-        window_ids(pair_prefix, rows.antenna * len(names) + rows.spacecraft, rows.slot, rows.whole_start_s), object
-    )
+    slot = slots(rows.culmination_s, rows.whole_end_s - rows.whole_start_s)
+    pair = rows.antenna * len(names) + rows.spacecraft
+    ids = np.array(window_ids(pair_prefix, pair, slot, rows.whole_start_s), object)
     aos, los = np.rint(rows.start_s * 1e3), np.rint(rows.end_s * 1e3)
     low = rows.open_start & (rows.whole_start_s > start_s)
     aos[low] = np.ceil(rows.start_s[low] * 1e3 - 1e-4)
     high = rows.open_end & (rows.whole_end_s < end_s)
     los[high] = np.floor(rows.end_s[high] * 1e3 + 1e-4)
     order = np.flatnonzero(rows.inside & (los > aos))
-    rank_antenna, rank_craft = _ranks(antenna_names), _ranks(names)
     key = (aos[order] - start_s * 1e3).astype(np.int64) * len(antennas) + _ranks(antenna_names)[rows.antenna[order]]
     order = order[np.argsort(key * len(orbits) + _ranks(names)[rows.spacecraft[order]], kind="stable")]
     rows, ids, aos, los = rows.take(order), ids[order], aos[order], los[order]

@@ -9,8 +9,11 @@ from typing import Any
 from passplan.inputs.lines import shortened
 
 _READ = ("DTSTART", "DTEND", "DURATION", "RRULE", "RDATE", "EXDATE", "RECURRENCE-ID")
-# A rule that repeats every second since 1970 would take hours to expand; no antenna is closed that way.
+# A rule is expanded by counting up from its first day, so a rule that repeats every second since 1970, or
+# hourly but never on a day that exists, would keep a run for hours. No antenna is closed that way.
 _TOO_FREQUENT = ("SECONDLY", "MINUTELY")
+_WITH_HOURLY = frozenset({"FREQ", "INTERVAL", "COUNT", "UNTIL", "BYHOUR", "BYDAY", "WKST"})
+_FIRST_YEAR = 1970
 
 
 @dataclass(frozen=True)
@@ -34,7 +37,7 @@ def event_fault(event: Any) -> EventFault | None:
         fault = _zone_fault(event.get(name), name)
         if fault is not None:
             return fault
-    return _length_fault(event, start.dt) or _rule_fault(event.get("RRULE"))
+    return _length_fault(event, start.dt) or _rule_fault(event.get("RRULE"), start.dt.year)
 
 
 def first_value(component: Any, name: str) -> str:
@@ -92,11 +95,17 @@ def _length_fault(event: Any, start: date | datetime) -> EventFault | None:
     return None
 
 
-def _rule_fault(rules: Any) -> EventFault | None:
+def _rule_fault(rules: Any, first_year: int) -> EventFault | None:
     for rule in rules if isinstance(rules, list) else [rules]:
         if rule is None:
             continue
-        frequency = ",".join(map(str, rule.get("FREQ", [])))
-        if frequency in _TOO_FREQUENT or any(key in rule for key in ("BYSECOND", "BYMINUTE")):
+        frequency = ",".join(map(str, rule.get("FREQ", []))).upper()
+        if frequency in _TOO_FREQUENT or "BYSECOND" in rule or "BYMINUTE" in rule:
             return EventFault(", RRULE", frequency or None, "repeats too often for a closure; use HOURLY or rarer")
+        if frequency == "HOURLY" and not set(rule) <= _WITH_HOURLY:
+            return EventFault(", RRULE", frequency, "only BYHOUR and BYDAY go with HOURLY; use DAILY or rarer")
+        if any(step < 1 for step in rule.get("INTERVAL", [])):
+            return EventFault(", RRULE", "INTERVAL", "must be at least 1; correct it")
+        if first_year < _FIRST_YEAR:
+            return EventFault(", DTSTART", str(first_year), f"recurs since before {_FIRST_YEAR}; correct the year")
     return None

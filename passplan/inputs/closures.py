@@ -53,7 +53,8 @@ def read_closures(
             else:
                 placed += _table_closures(source, outer, known, reader, own)
     placed.sort(key=lambda one: (one.closure.antenna, one.closure.start_utc, one.closure.end_utc, one.closure.kind))
-    _check_overlaps(placed, findings)
+    with few_faults("closures", findings) as own:
+        _check_overlaps(placed, own)
     return tuple(
         one.closure
         for one in placed

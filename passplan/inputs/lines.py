@@ -34,11 +34,12 @@ def few_faults(file: str | Path, findings: Findings, most: int = _MOST_FAULTS) -
         findings.problem(problem.file, problem.where, problem.value, problem.remedy)
     left = len(own.problems) - most
     if left > 0:
-        findings.problem(file, "", None, f"{left} more faults in this file are not listed; correct these first")
+        findings.problem(file, "", None, f"{left} more faults here are not listed; correct these first")
     for warning in own.warnings:
         findings.warn(warning)
 
 
 def shortened(text: str, width: int = 80) -> str:
     """``text`` in one line and cut to ``width`` characters, so that a hostile one does not end up in a message."""
-    return " ".join(text[:width].split()) + ("..." if len(text) > width else "")
+    shown = "".join(c if c.isprintable() else " " for c in text[:width])
+    return " ".join(shown.split()) + ("..." if len(text) > width else "")

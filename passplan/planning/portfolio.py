@@ -6,11 +6,13 @@ from collections.abc import Callable, Iterable
 
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
+from passplan.planning.maps import storage_maps
 from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
+from passplan.planning.search.engine import search_plan
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import solve_exactly
 from passplan.planning.tidy import tidy
@@ -32,13 +34,28 @@ def find_plan(
     clock = clock or Clock(limits.time_limit_s)
     terms = all_terms(problem, rules)
     with clock.stage("greedy"):
-        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock), "greedy")
+        maps = storage_maps(problem)
+        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps), "greedy")
     points_bound, bound = least_points(terms), _ceiling(problem)
-    if len(problem.options) and not clock.expired():
+
+    def tell(value: float, bound: float) -> None:
+        if progress is not None:
+            progress(value, bound, relative_gap(value, bound))
+
+    tell(best.account.value, bound)
+    exact = 0 < len(problem.options) <= limits.exact_options
+    if exact and not clock.expired():
         solved = solve_exactly(problem, terms, limits, clock, best.points)
         points_bound, bound = max(points_bound, solved.points_bound), min(bound, solved.value_bound)
         if solved.chosen is not None:
             best = max(best, _Candidate(problem, terms, solved.chosen, "exact"), key=_Candidate.rank)
+        tell(best.account.value, bound)
+    if not exact and len(problem.options) and not clock.expired():
+        with clock.stage("search"):
+            found = search_plan(problem, terms, maps, limits, clock, best.chosen, tell)
+        if found is not None:
+            bound = min(bound, found.bound)
+            best = max(best, _Candidate(problem, terms, found.chosen, "search"), key=_Candidate.rank)
     with clock.stage("tidy"):
         tidied = _Candidate(problem, terms, tidy(problem, terms, best.chosen), best.path)
         best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))

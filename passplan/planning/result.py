@@ -9,8 +9,8 @@ from passplan.planning.shortfalls import Shortfall
 from passplan.planning.value import Account
 
 Status = Literal["optimal", "within_gap", "stopped_by_limit", "greedy", "empty"]
-# Below this relative gap a plan is called optimal: it is the solver's own arithmetic.
-OPTIMAL_GAP = 1e-6
+# Below this relative gap a plan is called optimal: solvers work to such tolerances themselves.
+OPTIMAL_GAP = 1e-5
 
 
 @dataclass(frozen=True)

@@ -109,7 +109,7 @@ def _storage(run: Run, account: Account) -> dict[str, dict[str, float]]:
     }
     return {
         name: {"capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()}}
-        for i, name in enumerate(run.spacecraft)
+        for i, name in enumerate(name for name in run.spacecraft if name in run.orbits)
     }
 
 

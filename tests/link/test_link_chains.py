@@ -1,5 +1,7 @@
 from __future__ import annotations
 
+from itertools import pairwise
+
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -101,5 +103,5 @@ def test_leaving_out_never_costs_rate(rows: list[tuple[float, float]], quality_d
         return max(held, default=0.0)
 
     assert best(kept) == best(table.rows)
-    assert all(a.efficiency_bit_per_symbol > b.efficiency_bit_per_symbol for a, b in zip(kept, kept[1:], strict=False))
-    assert all(a.required_esn0_db > b.required_esn0_db for a, b in zip(kept, kept[1:], strict=False))
+    assert all(a.efficiency_bit_per_symbol > b.efficiency_bit_per_symbol for a, b in pairwise(kept))
+    assert all(a.required_esn0_db > b.required_esn0_db for a, b in pairwise(kept))

@@ -119,7 +119,8 @@ def test_of_two_radios_the_one_that_brings_more_is_used() -> None:
 
 def test_of_equal_volumes_the_surer_one_is_used() -> None:
     # Twins but for their EIRP, so strong that both bring down the same at the top of the table.
-    loud, louder = (X_RADIO.model_copy(update={"name": n, "eirp_dbw": e}) for n, e in (("loud", 50.0), ("louder", 55.0)))
+    loud = X_RADIO.model_copy(update={"name": "loud", "eirp_dbw": 50.0})
+    louder = X_RADIO.model_copy(update={"name": "louder", "eirp_dbw": 55.0})
     choice = _downlink(loud, louder).best(1_000, 1_621)
     assert choice is not None
     assert choice.radio == "louder"

@@ -71,7 +71,7 @@ def test_a_full_disk_leaves_no_half_written_file(cache_home: Path, monkeypatch: 
     def full(*_: object, **__: object) -> None:
         raise OSError("no space left on device")
 
-    monkeypatch.setattr(gas_cache.json, "dump", full)
+    monkeypatch.setattr(json, "dump", full)
     assert not save_rows(ROWS)
     assert list((cache_home / "passplan").iterdir()) == []
 
@@ -81,7 +81,7 @@ def test_no_home_means_no_cache(monkeypatch: pytest.MonkeyPatch) -> None:
         raise RuntimeError("no home")
 
     monkeypatch.setenv("XDG_CACHE_HOME", "relative/is/ignored")
-    monkeypatch.setattr(gas_cache.Path, "home", classmethod(homeless))
+    monkeypatch.setattr(Path, "home", classmethod(homeless))
     assert gas_cache.cache_folder() is None
     assert load_rows() == {}
     assert not save_rows(ROWS)

@@ -57,7 +57,8 @@ def test_a_radio_too_weak_gives_no_downlink() -> None:
 
 def test_quality_is_continuous_along_a_pass() -> None:
     # From horizon to horizon at 1 s, across every join of the gas law.
-    links = link_profiles(network(radios=(X_RADIO,), required_margin_db=0.0), *passes((0.0, 700.0, 500.0, 0.5), step_s=1.0))
+    windows, samples = passes((0.0, 700.0, 500.0, 0.5), step_s=1.0)
+    links = link_profiles(network(radios=(X_RADIO,), required_margin_db=0.0), windows, samples)
     assert links[0].downlink is not None
     assert np.abs(np.diff(links[0].downlink.tracks[0].quality_db)).max() < 0.3
 

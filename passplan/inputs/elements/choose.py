@@ -14,6 +14,8 @@ from passplan.inputs.elements.model import ElementSet
 
 ChoosingRule = Literal["nearest", "newest"]
 Use = Literal["chosen", "listed", "too old", "unusable"]
+# How often SGP4 is asked on the way; a decay lasts far longer than a 64th of the oldest set's age.
+_LOOKS = 64
 
 
 @dataclass(frozen=True)
@@ -54,7 +56,7 @@ def choose(
 ) -> Choice:
     """Choose among the element sets of one object.
 
-    A set is usable if SGP4 accepts it at its epoch and at the horizon's start, and its epoch lies within
+    A set is usable if SGP4 accepts it all the way from its epoch to the horizon's start, and its epoch lies within
     ``refuse_age_days`` of the start, before or after. ``nearest`` takes the usable set whose epoch is
     nearest to the start. ``newest``, the rule for a drop folder, takes the newest usable epoch that is
     not later than the horizon's end (and the nearest if all are later), so that a fresh upload wins even
@@ -84,21 +86,31 @@ def successive_jump_km(older: ElementSet, newer: ElementSet) -> float:
 
 def _judge(one: ElementSet, start_utc: np.datetime64, refuse_age_days: float) -> Candidate:
     age_days = one.age_days(start_utc)
-    fault = sgp4_fault(one, start_utc) if abs(age_days) <= refuse_age_days else None
-    if one.satrec.error or sgp4_fault(one, one.epoch_utc):
-        fault = sgp4_fault(one, one.epoch_utc) or SGP4_ERRORS.get(one.satrec.error, "unknown fault")
+    in_time = abs(age_days) <= refuse_age_days
+    fault = sgp4_fault(one, one.epoch_utc, start_utc if in_time else one.epoch_utc)
     if fault is not None:
         return Candidate(one, age_days, "unusable", f"SGP4 cannot use it: {fault}")
-    if abs(age_days) > refuse_age_days:
+    if not in_time:
         return Candidate(one, age_days, "too old", f"{age_words(age_days)}, the limit is {refuse_age_days:g} days")
     return Candidate(one, age_days, "listed")
 
 
-def sgp4_fault(one: ElementSet, at_utc: np.datetime64) -> str | None:
-    """What SGP4 says against this set at ``at_utc``, or None."""
-    days = float((at_utc - one.epoch_utc) / np.timedelta64(1, "us")) / 86_400e6
-    fault, _, _ = one.satrec.sgp4(one.satrec.jdsatepoch, one.satrec.jdsatepochF + days)
-    return SGP4_ERRORS.get(fault, "unknown fault") if fault else None
+def sgp4_fault(one: ElementSet, from_utc: np.datetime64, to_utc: np.datetime64) -> str | None:
+    """What SGP4 says against this set first on the way from one instant to another, or None.
+
+    The way counts, not only its end: some days after an orbit has decayed, SGP4 answers again without an
+    error, with positions that mean nothing.
+    """
+    if one.satrec.error:
+        return _words(one.satrec.error)
+    days = np.linspace(one.age_days(from_utc), one.age_days(to_utc), _LOOKS)
+    faults, _, _ = one.satrec.sgp4_array(np.full(_LOOKS, one.satrec.jdsatepoch), one.satrec.jdsatepochF + days)
+    found = np.flatnonzero(faults)
+    return _words(int(faults[found[0]])) if found.size else None
+
+
+def _words(fault: int) -> str:
+    return str(SGP4_ERRORS.get(fault, f"error {fault}"))
 
 
 def age_words(age_days: float) -> str:

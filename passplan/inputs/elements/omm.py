@@ -16,6 +16,7 @@ from passplan.inputs.ccsds_time import days_and_seconds
 from passplan.inputs.elements.mean import MeanElements, element_set, fault_of
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.errors import Findings
+from passplan.inputs.lines import shortened
 from passplan.inputs.records import Record
 from passplan.inputs.tables import checked
 
@@ -83,13 +84,16 @@ def _epoch(value: Any) -> tuple[int, float]:
     return days, seconds
 
 
+_Text = Annotated[str, Field(max_length=100)]
+
+
 class _Omm(Record):
     """The keywords that SGP4 needs, in the units of the standard (deg, rev/day, 1/Earth radius)."""
 
     model_config = ConfigDict(extra="ignore")
 
-    object_name: str = Field(alias="OBJECT_NAME")
-    object_id: str = Field(alias="OBJECT_ID")
+    object_name: _Text = Field(alias="OBJECT_NAME")
+    object_id: _Text = Field(alias="OBJECT_ID")
     catalogue_number: Annotated[int, Field(ge=0, le=999_999_999)] | None = Field(None, alias="NORAD_CAT_ID")
     epoch: Annotated[tuple[int, float], BeforeValidator(_epoch)] = Field(alias="EPOCH")
     mean_motion_rev_per_day: float = Field(alias="MEAN_MOTION")
@@ -121,7 +125,7 @@ def sets_of(records: Iterable[OmmRecord], file: str | Path, findings: Findings) 
     sets: list[ElementSet] = []
     for where, record in records:
         present = _present(record)
-        place = f"{where} ({present['OBJECT_NAME']})" if present.get("OBJECT_NAME") else where
+        place = f"{where} ({shortened(str(present['OBJECT_NAME']), 40)})" if present.get("OBJECT_NAME") else where
         if not _is_sgp4(present, file, place, findings) or not _is_plain(present, file, place, findings):
             continue
         omm: _Omm | None = checked(_Omm, present, file, place, findings)

@@ -86,20 +86,25 @@ def _is_other_message(start: bytes) -> bool:
 
 def _read_file(path: Path, reader: Reader, findings: Findings) -> list[ElementSet]:
     with few_faults(path, findings) as own:
-        content = reader.read(path, own)
-        if content is None:
-            return []
-        form = element_format(content, path)
-        if form is None:
-            own.problem(
-                path, "", None, "neither a TLE nor an OMM file (JSON, XML, KVN, CSV); name a file of element sets"
-            )
-            return []
-        if form == "xml":
-            return parse_omm_xml(content, path, own)
-        if form == "csv":
-            return parse_omm_csv(path, reader, own)
-        text = reader.text(path, own)
-        if text is None:
-            return []
-        return {"tle": parse_tle, "json": parse_omm_json, "kvn": parse_omm_kvn}[form](text, path, own)
+        sets = _parsed(path, reader, own)
+        if not sets and not own.problems:
+            own.warn(f"{path}: holds no element sets")
+    return sets
+
+
+def _parsed(path: Path, reader: Reader, findings: Findings) -> list[ElementSet]:
+    content = reader.read(path, findings)
+    form = element_format(content, path) if content is not None else None
+    if content is not None and form is None:
+        remedy = "neither a TLE nor an OMM file (JSON, XML, KVN, CSV); name a file of element sets"
+        findings.problem(path, "", None, remedy)
+    if content is None or form is None:
+        return []
+    if form == "xml":
+        return parse_omm_xml(content, path, findings)
+    if form == "csv":
+        return parse_omm_csv(path, reader, findings)
+    text = reader.text(path, findings)
+    if text is None:
+        return []
+    return {"tle": parse_tle, "json": parse_omm_json, "kvn": parse_omm_kvn}[form](text, path, findings)

@@ -14,6 +14,7 @@ from passplan.inputs.elements.choose import (
     ChoosingRule,
     age_words,
     choose,
+    sgp4_fault,
     successive_jump_km,
 )
 from passplan.inputs.elements.model import ElementSet
@@ -114,15 +115,17 @@ def _sets_by_number(
 ) -> dict[int, tuple[list[ElementSet], ChoosingRule]]:
     """The sets of the fleet's numbers in the order of reading; a number met in a drop folder: newest wins."""
     wanted = {craft.catalogue_number for craft in fleet} - {None}
-    found: dict[int, tuple[list[ElementSet], ChoosingRule]] = {}
+    sets: dict[int, list[ElementSet]] = {}
+    dropped: set[int] = set()
     for path in paths:
-        rule: ChoosingRule = "newest" if reader.is_folder(path) else "nearest"
+        is_folder = reader.is_folder(path)
         for one in read_elements(path, reader, findings):
             number = one.catalogue_number
             if number is not None and number in wanted:
-                listed, earlier_rule = found.get(number, ([], "nearest"))
-                found[number] = ([*listed, one], "newest" if "newest" in (rule, earlier_rule) else "nearest")
-    return found
+                sets.setdefault(number, []).append(one)
+                if is_folder:
+                    dropped.add(number)
+    return {number: (found, "newest" if number in dropped else "nearest") for number, found in sets.items()}
 
 
 def _chosen(
@@ -141,6 +144,9 @@ def _chosen(
         horizon.findings.warn(
             f"{craft.name}: {age_words(age_days)}, more than {warn_days:g} days; fetch a fresh element set"
         )
+    fault = sgp4_fault(chosen, horizon.start_utc, horizon.end_utc)
+    if fault is not None:
+        horizon.findings.warn(f"{craft.name}: SGP4 fails within the horizon ({fault}); no contacts from there on")
     _warn_of_jump(craft, choice, horizon.findings)
     return chosen, ""
 

@@ -78,7 +78,9 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     stated = summary.get("storage", {})
     earned: list[float] = []
     delivered: list[float] = []
-    for name, craft in run.spacecraft.items():
+    # A spacecraft that was left out of the run is no part of the plan, and its data no part of the value.
+    for name in run.orbits:
+        craft = run.spacecraft[name]
         sending = sorted(by_craft[name], key=lambda pair: pair[1].start_s)
         if any(later.start_s < earlier.end_s for (_, earlier), (_, later) in pairwise(sending)):
             yield Fault("storage", f"spacecraft {name}", "it would send two segments at once; nothing adds up then")
@@ -89,13 +91,14 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
             if differs(piece.volume_mb, sent_mb, tolerance_mb):
                 sentence = f"it brings down {sent_mb:.6f} MB of what is aboard, not {piece.volume_mb:.6f} MB"
                 yield Fault("volume", contact.place, sentence)
-        if name in run.orbits or name in stated:
-            yield from _check_entry(name, stated.get(name), balance, tolerance_mb)
+        yield from _check_entry(name, stated.get(name), balance, tolerance_mb)
         earned.append(craft.weight * balance.delivered_mb - run.policy.spill_cost_per_mb * balance.lost_mb)
         delivered.append(balance.delivered_mb)
     for contact in contacts:
         yield from _check_money(run, contact)
         earned.append(-run.policy.worth_per_money * _cost(run, contact))
+    for name in sorted(set(stated) - set(run.orbits)):
+        yield Fault("storage", f"spacecraft {name}", "it takes no part in the plan, yet the summary has figures for it")
     value = math.fsum(earned)
     yield from _check_total("value", summary.get("value"), value)
     yield from _check_total("volume_mb", summary.get("volume_mb"), math.fsum(delivered))

@@ -13,17 +13,19 @@ The prices are the certificate: :func:`ceiling` evaluates them again from nothin
 from __future__ import annotations
 
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
 
 from passplan.planning.problem import Floats, Integers
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays
-from passplan.planning.search.schedule import best_schedule
+from passplan.planning.search.schedule import Work, best_schedule, make_work, worth_of
 
-_FIRST_STEP = 1.0
-_PATIENCE = 12
+_FIRST_STEP = 1.5
+_PATIENCE = 10
+_SHRINK = 0.85
+_MEMORY = 0.7
 _MOST_CONTACTS = 4_096
 
 
@@ -38,53 +40,42 @@ class Sweep:
 
 @compiled
 def _sweep(
-    low: int, high: int, first: Integers, craft: Floats, start_first: Integers, start_s: Integers, node: Integers,
-    arrival: Integers, span: Integers, maps: Floats, price: Floats, bits: Integers, renews: Integers, wants: Floats,
-    recur: Floats, horizon_s: int, spill: float, point_worth: float, use_first: Integers, use_last: Integers,
-    worth: Floats, points: Floats, edges: Integers,
+    a: FleetArrays, low: int, high: int, price: Floats, point_worth: float, work: Work, worth: Floats, points: Floats,
+    edges: Integers,
 ) -> None:
     taken = np.empty(_MOST_CONTACTS, dtype=np.int64)
     for i in range(low, high):
-        worth[i], size = best_schedule(
-            first[i], first[i + 1], craft[i], start_s[start_first[i]:start_first[i + 1]], node, arrival, span, maps,
-            price, bits, renews, wants[i], recur[i], horizon_s, spill, point_worth, taken)
-        met = np.int64(0)
-        covered, overdue = recur[i, 0], 0.0
+        worth[i], size = best_schedule(a, i, price, point_worth, work, taken)
+        _, points[i] = worth_of(a, i, taken, max(0, size))
         for k in range(size):
-            o = taken[k]
-            met |= bits[o]
-            if renews[o] >= 0:
-                overdue += max(0.0, min(float(span[o, 0]), recur[i, 1]) - covered)
-                covered = max(covered, float(renews[o]))
-            for lane in range(use_first.shape[1]):
-                edges[use_first[o, lane]] += 1
-                edges[use_last[o, lane]] -= 1
-        points[i] = recur[i, 2] * (overdue + max(0.0, recur[i, 1] - covered))
-        for b in range(wants.shape[1]):
-            if not (met >> b) & 1:
-                points[i] += wants[i, b]
+            for lane in range(a.use_first.shape[1]):
+                edges[a.use_first[taken[k], lane]] += 1
+                edges[a.use_last[taken[k], lane]] -= 1
 
 
-def sweep(arrays: FleetArrays, clique_price: Floats, point_worth: float, pool: ThreadPoolExecutor | None, threads: int) -> Sweep:
-    """The best schedule of every spacecraft at the given prices; parts of the fleet run side by side."""
-    price = option_prices(arrays, clique_price) + arrays.cost
-    count = len(arrays.craft)
-    worth, points = np.zeros(count), np.zeros(count)
-    parts = np.linspace(0, count, max(1, threads if pool else 1) + 1).astype(int)
-    edges = [np.zeros(arrays.cliques + 1, dtype=np.int64) for _ in parts[1:]]
+class Sweeper:
+    """Finds the best schedule of every spacecraft at given prices; parts of the fleet run side by side."""
 
-    def run(k: int) -> None:
-        a = arrays
-        _sweep(
-            parts[k], parts[k + 1], a.first, a.craft, a.start_first, a.start_s, a.node, a.arrival, a.span, a.maps,
-            price, a.bits, a.renews, a.wants, a.recur, a.horizon_s, a.spill, point_worth, a.use_first, a.use_last,
-            worth, points, edges[k])
+    def __init__(self, arrays: FleetArrays, threads: int = 1, pool: ThreadPoolExecutor | None = None) -> None:
+        self.arrays, self.pool = arrays, pool
+        self.parts = np.linspace(0, len(arrays.craft), (threads if pool else 1) + 1).astype(int).tolist()
+        self.work = [make_work() for _ in self.parts[1:]]
 
-    if pool is None:
-        run(0)
-    else:
-        list(pool.map(run, range(len(edges))))
-    return Sweep(worth, points, np.cumsum(sum(edges[1:], edges[0]))[:-1])
+    def __call__(self, clique_price: Floats, point_worth: float) -> Sweep:
+        """All spacecraft at the given prices."""
+        a = self.arrays
+        price = option_prices(a, clique_price) + a.cost
+        worth, points = np.zeros(len(a.craft)), np.zeros(len(a.craft))
+        edges = [np.zeros(a.cliques + 1, dtype=np.int64) for _ in self.work]
+
+        def run(k: int) -> None:
+            _sweep(a, self.parts[k], self.parts[k + 1], price, point_worth, self.work[k], worth, points, edges[k])
+
+        if self.pool is None:
+            run(0)
+        else:
+            list(self.pool.map(run, range(len(edges))))
+        return Sweep(worth, points, np.cumsum(np.sum(edges, axis=0))[:-1])
 
 
 def option_prices(arrays: FleetArrays, clique_price: Floats) -> Floats:
@@ -96,51 +87,54 @@ def option_prices(arrays: FleetArrays, clique_price: Floats) -> Floats:
 
 def ceiling(arrays: FleetArrays, clique_price: Floats, point_worth: float, plan_points: float) -> float:
     """The bound that a certificate proves: prices of cliques and of a point, for plans of ``plan_points``."""
-    at = sweep(arrays, clique_price, point_worth, None, 1)
+    at = Sweeper(arrays)(clique_price, point_worth)
     return float(at.worth.sum() + clique_price.sum() + point_worth * plan_points)
 
 
-@dataclass(eq=False)
 class BoundSearch:
-    """Moves prices so that the ceiling falls. Deterministic: it looks at iterations, never at the clock."""
+    """Moves prices so that the ceiling falls. It counts iterations and never looks at the clock."""
 
-    arrays: FleetArrays
-    plan_points: float
-    point_worth: float
-    threads: int = 1
-    pool: ThreadPoolExecutor | None = None
-    bound: float = np.inf
-    best_price: Floats = field(default_factory=lambda: np.zeros(0))
-    best_point_worth: float = 0.0
-
-    def __post_init__(self) -> None:
-        self.price = np.zeros(self.arrays.cliques)
-        self.best_price = self.price
-        self.best_point_worth = self.point_worth
+    def __init__(self, arrays: FleetArrays, sweeper: Sweeper, plan_points: float, point_worth: float) -> None:
+        self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
+        self.bound = np.inf
+        self.price = self.best_price = np.zeros(arrays.cliques)
+        self.point_worth = self.best_point_worth = point_worth
+        self._direction = np.zeros(arrays.cliques)
         self._step, self._stuck = _FIRST_STEP, 0
-        self._direction = np.zeros(self.arrays.cliques)
 
     def improve(self, iterations: int, value: float) -> None:
         """Take subgradient steps; ``value`` is the best plan known, which the ceiling cannot go below."""
         for _ in range(iterations):
-            at = sweep(self.arrays, self.price, self.point_worth, self.pool, self.threads)
+            at = self.sweeper(self.price, self.point_worth)
             here = float(at.worth.sum() + self.price.sum() + self.point_worth * self.plan_points)
-            if here < self.bound - 1e-9 * abs(self.bound) or not np.isfinite(self.bound):
-                if here < self.bound * (1.0 - 1e-5) or not np.isfinite(self.bound):
-                    self._stuck = 0
-                self.bound, self.best_price, self.best_point_worth = here, self.price.copy(), self.point_worth
-            self._stuck += 1
-            if self._stuck > _PATIENCE:
-                self._step, self._stuck = self._step * 0.7, 0
-                self.price, self.point_worth = self.best_price.copy(), self.best_point_worth
+            if not np.isfinite(here):
+                # Too many labels at these prices: go back to good ones, and on with care.
+                self._turn_back()
                 continue
+            self._note(here)
             # The direction looks back a little, which damps the zigzag (Camerini, Fratta and Maffioli 1975).
-            gradient = at.use - 1.0
-            gradient[(self.price <= 0.0) & (gradient < 0.0)] = 0.0
-            self._direction = gradient + 0.6 * self._direction
-            self._direction[(self.price <= 0.0) & (self._direction < 0.0)] = 0.0
-            size = float(self._direction @ self._direction)
+            self._direction = (at.use - 1.0) + _MEMORY * self._direction
+            move = np.where((self.price <= 0.0) & (self._direction < 0.0), 0.0, self._direction)
+            size = float(move @ move)
             if size <= 0.0:
-                break
-            target = max(here - value, 1e-6 * abs(here))
-            self.price = np.maximum(0.0, self.price + self._step * target / size * self._direction)
+                return
+            distance = max(here - value, 1e-6 * abs(here))
+            self.price = np.maximum(0.0, self.price + self._step * distance / size * move)
+
+    def restart(self) -> None:
+        """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
+        self.bound, self._step, self._stuck = np.inf, _FIRST_STEP, 0
+
+    def _note(self, here: float) -> None:
+        if here < self.bound - 1e-5 * abs(self.bound):
+            self._stuck = 0
+        if here < self.bound:
+            self.bound, self.best_price, self.best_point_worth = here, self.price.copy(), self.point_worth
+        self._stuck += 1
+        if self._stuck > _PATIENCE:
+            self._step, self._stuck = self._step * _SHRINK, 0
+
+    def _turn_back(self) -> None:
+        self.price, self.point_worth = self.best_price.copy(), self.best_point_worth
+        self._direction = np.zeros(self.arrays.cliques)
+        self._step *= _SHRINK

@@ -8,7 +8,7 @@ a difference of a running sum over the prices of cliques.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -25,9 +25,10 @@ class NotForSearchError(Exception):
     """The terms ask for something that the search cannot keep; the exact model can."""
 
 
-@dataclass(frozen=True, eq=False)
-class FleetArrays:
-    """Read-only arrays for compiled code.
+class FleetArrays(NamedTuple):
+    """Arrays for compiled code, which may not change them.
+
+    A named tuple, because compiled code can take one apart.
 
     Per spacecraft (n): ``first`` (n + 1) into the options, ``start_first`` (n + 1) into ``start_s``, and the
     rows of ``craft``: weight, generation, capacity, start fill. Per option (m): ``node`` and ``arrival``, the

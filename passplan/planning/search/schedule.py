@@ -9,174 +9,261 @@ One label makes another useless if it has met at least as much and is covered at
 - holds less, but is ahead by the weight for every MB that it lacks (a MB more is never worth more), or
 - holds more, and is ahead by the spill cost for every MB too many (a MB more never costs more).
 
-With these two rules few labels survive and the program is exact. (Own derivation.)
+With these two rules few labels survive, and the program is exact. (Own derivation.)
 """
 
 from __future__ import annotations
+
+from typing import NamedTuple
 
 import numpy as np
 
 from passplan.planning.problem import Floats, Integers
 from passplan.planning.search.compiled import compiled
+from passplan.planning.search.fleetarrays import FleetArrays
 
-# Rows of the label store: aboard, worth, covered until, bits met (as numbers), last taken record.
-MOST_LABELS = 400_000
+_MOST_LABELS = 400_000
 
 
-@compiled
-def prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: float, spill: float, simple: bool) -> int:
-    """Sort ``count`` labels by what is aboard, drop the useless ones, return how many are left.
+class Work(NamedTuple):
+    """Room for labels, one set for each thread.
 
-    ``rows`` (., 3) are aboard, worth, covered until. ``simple`` says that bits and cover are all alike.
+    Labels here: ``rows`` (., 3) aboard, worth, covered until; ``bits`` met; ``via`` the last taken record.
+    The ``wait`` arrays hold labels that stand further on, in linked lists. Records are options taken.
     """
-    if count <= 1:
-        return count
-    order = np.argsort(rows[:count, 0], kind="mergesort")
-    sorted_rows, sorted_bits, sorted_via = rows[:count][order], bits[:count][order], via[:count][order]
-    keep = np.ones(count, dtype=np.bool_)
-    if simple:
-        best = -np.inf
-        for k in range(count):
-            ahead = sorted_rows[k, 1] + weight * sorted_rows[k, 0]
-            if ahead <= best:
-                keep[k] = False
-            else:
-                best = ahead
-        best = -np.inf
-        for k in range(count - 1, -1, -1):
-            if keep[k]:
-                ahead = sorted_rows[k, 1] - spill * sorted_rows[k, 0]
-                if ahead <= best:
-                    keep[k] = False
-                else:
-                    best = ahead
-    else:
-        for a in range(count):
-            if not keep[a]:
-                continue
-            for b in range(count):
-                if a == b or not keep[b]:
-                    continue
-                if sorted_bits[a] & sorted_bits[b] != sorted_bits[b] or sorted_rows[a, 2] < sorted_rows[b, 2]:
-                    continue
-                more = sorted_rows[b, 0] - sorted_rows[a, 0]
-                price = weight * more if more > 0.0 else -spill * more
-                if sorted_rows[a, 1] >= sorted_rows[b, 1] + price:
-                    keep[b] = False
-    left = 0
-    for k in range(count):
-        if keep[k]:
-            rows[left], bits[left], via[left] = sorted_rows[k], sorted_bits[k], sorted_via[k]
-            left += 1
-    return left
+
+    rows: Floats
+    bits: Integers
+    via: Integers
+    wait_rows: Floats
+    wait_bits: Integers
+    wait_via: Integers
+    wait_next: Integers
+    record_option: Integers
+    record_before: Integers
+
+
+def make_work(labels: int = _MOST_LABELS) -> Work:
+    """Room for ``labels`` labels; memory is used as it is touched."""
+    floats = [np.empty((labels, 3)) for _ in range(2)]
+    integers = [np.empty(labels, dtype=np.int64) for _ in range(7)]
+    return Work(floats[0], integers[0], integers[1], floats[1], *integers[2:])
 
 
 @compiled
 def best_schedule(
-    first: int, last: int, craft: Floats, starts: Integers, node: Integers, arrival: Integers, span: Integers,
-    maps: Floats, price: Floats, bits: Integers, renews: Integers, wants: Floats, recur: Floats, horizon_s: int,
-    spill: float, point_worth: float, taken: Integers,
+    a: FleetArrays, i: int, price: Floats, point_worth: float, work: Work, taken: Integers,
 ) -> tuple[float, int]:
-    """The schedule of one spacecraft that is worth most after prices.
+    """The schedule of spacecraft ``i`` that is worth most after prices.
 
-    Options ``first : last`` are the spacecraft's, in order of start; ``price`` (m) is what taking one costs,
-    infinite where it cannot be taken. ``point_worth`` is what a point of shortfall costs. Fills ``taken``
-    with the options taken, in time order, and returns the worth and how many there are; -1 of them if there
-    were too many labels, and the worth is then plus infinity.
+    ``price`` (m) is what taking an option costs, infinite where it cannot be taken; ``point_worth`` is what a
+    point of shortfall costs. Fills ``taken`` with the options taken, in time order, and returns the worth and
+    their number. If there is no room for all labels, the worth is plus infinity and the number -1.
     """
-    weight, generation, capacity, fill = craft[0], craft[1], craft[2], craft[3]
+    rows, bits, via = work.rows, work.bits, work.via
+    weight, generation, capacity = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2]
+    wants, recur_until = a.wants[i], a.recur[i, 1]
+    starts = a.start_s[a.start_first[i]:a.start_first[i + 1]]
     nodes = len(starts)
-    simple = recur[1] <= 0.0
-    for k in range(len(wants)):
-        if wants[k] > 0.0:
-            simple = False
-    # Waiting labels: linked lists by the node at which they stand.
-    wait_rows = np.empty((MOST_LABELS, 3))
-    wait_bits = np.empty(MOST_LABELS, dtype=np.int64)
-    wait_via = np.empty(MOST_LABELS, dtype=np.int64)
-    wait_next = np.empty(MOST_LABELS, dtype=np.int64)
+    simple = recur_until <= 0.0 and wants.max() <= 0.0
     head = np.full(nodes + 1, -1, dtype=np.int64)
-    record_option = np.empty(MOST_LABELS, dtype=np.int64)
-    record_before = np.empty(MOST_LABELS, dtype=np.int64)
-    waiting = records = 0
-    rows = np.empty((MOST_LABELS, 3))
-    here_bits = np.empty(MOST_LABELS, dtype=np.int64)
-    via = np.empty(MOST_LABELS, dtype=np.int64)
-    rows[0, 0], rows[0, 1], rows[0, 2] = fill, 0.0, recur[0]
-    here_bits[0], via[0] = 0, -1
+    waiting = 0
+    rows[0, 0], rows[0, 1], rows[0, 2] = a.craft[i, 3], 0.0, a.recur[i, 0]
+    bits[0], via[0] = 0, -1
     here = 1
     clock = 0
-    option = first
+    option = a.first[i]
     for at in range(nodes + 1):
-        now = starts[at] if at < nodes else horizon_s
-        # Idle until now.
-        made = generation * (now - clock)
-        for k in range(here):
-            over = rows[k, 0] + made - capacity
-            if over > 0.0:
-                rows[k, 0] = capacity
-                rows[k, 1] -= spill * over
-            else:
-                rows[k, 0] += made
+        now = starts[at] if at < nodes else a.horizon_s
+        _idle(rows, here, generation * (now - clock), capacity, a.spill)
         clock = now
         arrived = head[at]
         while arrived >= 0:
-            if here >= MOST_LABELS:
+            if here >= len(rows):
                 return np.inf, -1
-            rows[here], here_bits[here], via[here] = wait_rows[arrived], wait_bits[arrived], wait_via[arrived]
+            rows[here, 0], rows[here, 1] = work.wait_rows[arrived, 0], work.wait_rows[arrived, 1]
+            rows[here, 2], bits[here], via[here] = work.wait_rows[arrived, 2], work.wait_bits[arrived], work.wait_via[arrived]
             here += 1
-            arrived = wait_next[arrived]
-        here = prune(here, rows, here_bits, via, weight, spill, simple)
-        if at == nodes:
-            break
-        while option < last and node[option] == at:
-            cost = price[option]
-            if cost < np.inf:
-                end_s, target = span[option, 1], arrival[option]
-                until = starts[target] if target < nodes else horizon_s
-                idle = generation * (until - end_s)
-                for k in range(here):
-                    if waiting >= MOST_LABELS:
-                        return np.inf, -1
-                    aboard = rows[k, 0]
-                    after = min(max(aboard + maps[option, 0], maps[option, 1]), maps[option, 2])
-                    lost = maps[option, 3] + max(0.0, aboard - maps[option, 4])
-                    sent = aboard + maps[option, 5] - after - lost
-                    worth = rows[k, 1] + weight * sent - spill * lost - cost
-                    covered = rows[k, 2]
-                    if renews[option] >= 0 and recur[1] > 0.0:
-                        gap_end = min(float(span[option, 0]), recur[1])
-                        if gap_end > covered:
-                            worth -= point_worth * recur[2] * (gap_end - covered)
-                        covered = max(covered, float(renews[option]))
-                    over = after + idle - capacity
-                    if over > 0.0:
-                        after, worth = capacity, worth - spill * over
-                    else:
-                        after += idle
-                    wait_rows[waiting, 0], wait_rows[waiting, 1], wait_rows[waiting, 2] = after, worth, covered
-                    wait_bits[waiting] = here_bits[k] | bits[option]
-                    record_option[records], record_before[records] = option, via[k]
-                    wait_via[waiting] = records
-                    records += 1
-                    wait_next[waiting] = head[target]
-                    head[target] = waiting
-                    waiting += 1
+            arrived = work.wait_next[arrived]
+        here = _prune(here, rows, bits, via, weight, a.spill, simple)
+        while at < nodes and option < a.first[i + 1] and a.node[option] == at:
+            if price[option] < np.inf:
+                if waiting + here > len(rows):
+                    return np.inf, -1
+                target = a.arrival[option]
+                until = starts[target] if target < nodes else a.horizon_s
+                _take(a, i, option, price[option], point_worth, here, work, waiting)
+                _idle(work.wait_rows[waiting:], here, generation * (until - a.span[option, 1]), capacity, a.spill)
+                for k in range(waiting, waiting + here):
+                    work.wait_next[k] = head[target]
+                    head[target] = k
+                waiting += here
             option += 1
     best, chosen = -np.inf, -1
     for k in range(here):
-        worth = rows[k, 1]
-        if recur[1] > rows[k, 2]:
-            worth -= point_worth * recur[2] * (recur[1] - rows[k, 2])
-        for b in range(len(wants)):
-            if wants[b] > 0.0 and not (here_bits[k] >> b) & 1:
-                worth -= point_worth * wants[b]
+        worth = rows[k, 1] - point_worth * _missing(wants, bits[k])
+        if recur_until > rows[k, 2]:
+            worth -= point_worth * a.recur[i, 2] * (recur_until - rows[k, 2])
         if worth > best:
             best, chosen = worth, via[k]
     size = 0
     while chosen >= 0:
-        taken[size] = record_option[chosen]
+        taken[size] = work.record_option[chosen]
         size += 1
-        chosen = record_before[chosen]
-    taken[:size] = taken[:size][::-1].copy()
+        chosen = work.record_before[chosen]
+    for k in range(size // 2):
+        taken[k], taken[size - 1 - k] = taken[size - 1 - k], taken[k]
     return best, size
+
+
+@compiled
+def worth_of(a: FleetArrays, i: int, taken: Integers, size: int) -> tuple[float, float]:
+    """Worth of a schedule of spacecraft ``i`` without prices, and its points of shortfall."""
+    weight, generation, capacity, fill = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2], a.craft[i, 3]
+    worth, clock, met = 0.0, 0, np.int64(0)
+    covered, overdue = a.recur[i, 0], 0.0
+    for k in range(size + 1):
+        until = a.span[taken[k], 0] if k < size else a.horizon_s
+        fill += generation * (until - clock)
+        if fill > capacity:
+            worth -= a.spill * (fill - capacity)
+            fill = capacity
+        if k == size:
+            break
+        o = taken[k]
+        fill, sent, lost = _through(a.maps[o], fill)
+        worth += weight * sent - a.spill * lost - a.cost[o]
+        clock = a.span[o, 1]
+        met |= a.bits[o]
+        if a.renews[o] >= 0:
+            overdue += max(0.0, min(float(a.span[o, 0]), a.recur[i, 1]) - covered)
+            covered = max(covered, float(a.renews[o]))
+    overdue += max(0.0, a.recur[i, 1] - covered)
+    return worth, a.recur[i, 2] * overdue + _missing(a.wants[i], met)
+
+
+@compiled
+def _through(maps: Floats, aboard: float) -> tuple[float, float, float]:
+    """Fill after a contact, MB sent and MB lost: the storage map of ``maps.py``."""
+    after = min(max(aboard + maps[0], maps[1]), maps[2])
+    lost = maps[3] + max(0.0, aboard - maps[4])
+    return after, aboard + maps[5] - after - lost, lost
+
+
+@compiled
+def _take(
+    a: FleetArrays, i: int, option: int, price: float, point_worth: float, here: int, work: Work, waiting: int,
+) -> None:
+    """Labels after taking an option, from all labels here; record and label share their index."""
+    start_s = min(float(a.span[option, 0]), a.recur[i, 1])
+    for k in range(here):
+        to = waiting + k
+        after, sent, lost = _through(a.maps[option], work.rows[k, 0])
+        worth = work.rows[k, 1] + a.craft[i, 0] * sent - a.spill * lost - price
+        covered = work.rows[k, 2]
+        if a.renews[option] >= 0:
+            worth -= point_worth * a.recur[i, 2] * max(0.0, start_s - covered)
+            covered = max(covered, float(a.renews[option]))
+        work.wait_rows[to, 0], work.wait_rows[to, 1], work.wait_rows[to, 2] = after, worth, covered
+        work.wait_bits[to], work.wait_via[to] = work.bits[k] | a.bits[option], to
+        work.record_option[to], work.record_before[to] = option, work.via[k]
+
+
+@compiled
+def _idle(rows: Floats, count: int, made: float, capacity: float, spill: float) -> None:
+    """Add what is generated to the first ``count`` labels; what is above the capacity is lost."""
+    for k in range(count):
+        over = rows[k, 0] + made - capacity
+        if over > 0.0:
+            rows[k, 0] = capacity
+            rows[k, 1] -= spill * over
+        else:
+            rows[k, 0] += made
+
+
+@compiled
+def _missing(wants: Floats, met: int) -> float:
+    """Points of the wanted terms whose bit is not set."""
+    points = 0.0
+    for b in range(len(wants)):
+        if wants[b] > 0.0 and not (met >> b) & 1:
+            points += wants[b]
+    return points
+
+
+@compiled
+def _prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: float, spill: float, simple: bool) -> int:
+    """Sort labels by what is aboard, drop the useless ones, return how many are left.
+
+    ``simple`` says that bits and cover are all alike; two sweeps then do what otherwise needs all pairs.
+    """
+    _sort(count, rows, bits, via)
+    if simple:
+        best = -np.inf
+        left = 0
+        for k in range(count):
+            ahead = rows[k, 1] + weight * rows[k, 0]
+            if ahead > best:
+                best = ahead
+                _move(rows, bits, via, k, left)
+                left += 1
+        best = -np.inf
+        low = left
+        for k in range(left - 1, -1, -1):
+            ahead = rows[k, 1] - spill * rows[k, 0]
+            if ahead > best:
+                best = ahead
+                low -= 1
+                _move(rows, bits, via, k, low)
+        for k in range(low, left):
+            _move(rows, bits, via, k, k - low)
+        return left - low
+    left = 0
+    for k in range(count):
+        useless = False
+        for x in range(left):
+            if _beats(rows, bits, x, k, weight, spill):
+                useless = True
+                break
+        if useless:
+            continue
+        kept = 0
+        for x in range(left):
+            if not _beats(rows, bits, k, x, weight, spill):
+                _move(rows, bits, via, x, kept)
+                kept += 1
+        _move(rows, bits, via, k, kept)
+        left = kept + 1
+    return left
+
+
+@compiled
+def _beats(rows: Floats, bits: Integers, x: int, y: int, weight: float, spill: float) -> bool:
+    """Whether label ``x`` makes label ``y`` useless."""
+    if bits[x] & bits[y] != bits[y] or rows[x, 2] < rows[y, 2]:
+        return False
+    more = rows[y, 0] - rows[x, 0]
+    return bool(rows[x, 1] >= rows[y, 1] + (weight * more if more > 0.0 else -spill * more))
+
+
+@compiled
+def _sort(count: int, rows: Floats, bits: Integers, via: Integers) -> None:
+    """Shell sort by what is aboard; most labels are in order already (gaps grow by 2.25; common practice)."""
+    gap = 1
+    while gap < count:
+        gap = int(2.25 * gap) + 1
+    while gap > 1:
+        gap = int(gap / 2.25)
+        for k in range(gap, count):
+            aboard, worth, covered, met, record = rows[k, 0], rows[k, 1], rows[k, 2], bits[k], via[k]
+            at = k
+            while at >= gap and rows[at - gap, 0] > aboard:
+                _move(rows, bits, via, at - gap, at)
+                at -= gap
+            rows[at, 0], rows[at, 1], rows[at, 2], bits[at], via[at] = aboard, worth, covered, met, record
+
+
+@compiled
+def _move(rows: Floats, bits: Integers, via: Integers, source: int, target: int) -> None:
+    rows[target, 0], rows[target, 1], rows[target, 2] = rows[source, 0], rows[source, 1], rows[source, 2]
+    bits[target], via[target] = bits[source], via[source]

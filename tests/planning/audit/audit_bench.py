@@ -18,7 +18,7 @@ from passplan.planning.audit import Fault, audit_plan
 from passplan.planning.audit.rows import Piece
 from passplan.planning.audit.storage import follow
 
-ROOT = Path(__file__).parents[2]
+ROOT = Path(__file__).parents[3]
 CRAFT = ("Ambril-3", "Teasel-1", "Teasel-3")
 
 
@@ -90,7 +90,8 @@ def planned() -> Bench:
         if down is None or end_s - start_s < run.policy.min_contact_s or antenna.price_per_minute:
             continue
         held = start_s - antenna.prepare_s, end_s + antenna.release_s
-        if held[0] < free_antenna[antenna.name] or start_s < free_craft[craft.name] or _closed(run, antenna.name, *held):
+        busy = held[0] < free_antenna[antenna.name] or start_s < free_craft[craft.name]
+        if busy or _closed(run, antenna.name, *held):
             continue
         free_antenna[antenna.name], free_craft[craft.name] = held[1], end_s
         commands = command is not None and command.usable_s >= run.policy.command_min_s
@@ -121,8 +122,8 @@ def settle(bench: Bench) -> None:
     for name, craft in run.spacecraft.items():
         own = bench.segments[owners == name].sort_values("start_utc")
         pieces = [
-            Piece(_seconds(run, s.start_utc), _seconds(run, s.end_utc), s.modcod, s.rate_mbps, 0.0)
-            for s in own.itertuples()
+            Piece(_seconds(run, s["start_utc"]), _seconds(run, s["end_utc"]), s["modcod"], s["rate_mbps"], 0.0)
+            for s in own.to_dict("records")
         ]
         balance = follow(craft, pieces, run.horizon_s)
         bench.segments.loc[own.index, "volume_mb"] = balance.sent_mb

@@ -1,0 +1,1 @@
+"""Floor 2: where spacecraft are, and when antennas can follow them."""
