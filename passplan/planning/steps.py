@@ -71,10 +71,7 @@ def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
     report("computing links", 0, 0)
     links = links_of(run, windows)
     lap("links")
-    plan = make_plan(
-        run, windows, links,
-        progress=lambda value, bound, gap: report(f"searching, value {value:,.0f}, gap {100 * gap:.2f} %", 0, 0),
-    )
+    plan = make_plan(run, windows, links, progress=report)
     lap("plan")
     record = PlanRecord(
         summary=summarise(run, windows, plan), windows=windows, contacts=plan.contacts, segments=plan.segments,

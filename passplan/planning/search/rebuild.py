@@ -100,7 +100,8 @@ def _hold(a: FleetArrays, taken: Integers, size: int, holder: Integers, who: int
     """Note ``who`` holds the cliques of a schedule (-1: nobody)."""
     for k in range(size):
         for lane in range(a.use_first.shape[1]):
-            holder[a.use_first[taken[k], lane]:a.use_last[taken[k], lane]] = who
+            for c in range(a.use_first[taken[k], lane], a.use_last[taken[k], lane]):
+                holder[c] = who
 
 
 @compiled
