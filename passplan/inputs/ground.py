@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import Annotated
 
 from pydantic import Field, model_validator
@@ -90,7 +91,7 @@ class Antenna(Record):
             raise ValueError("mask azimuths run from 0 to 360 deg; correct the table")
         if any(not -5.0 <= elevation < 90.0 for _, elevation in self.mask):
             raise ValueError("mask elevations lie from -5 to 90 deg; correct the table")
-        if any(b < a for a, b in zip(azimuths, azimuths[1:], strict=False)):
+        if any(b < a for a, b in pairwise(azimuths)):
             raise ValueError("mask azimuths must not decrease; sort the table")
         return self
 

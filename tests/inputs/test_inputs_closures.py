@@ -339,6 +339,7 @@ def test_a_faulty_event_is_one_clear_line(desk, lines, where, remedy):
         (calendar(event(*TEN)) + "BEGIN:VCALENDAR\r\nBEGIN:VEVENT\r\nUID:1", "cut off inside an event"),
         ("BEGIN:VCALENDAR\r\nmuddle\r\nEND:VCALENDAR", "not a valid iCalendar file"),
         (b"BEGIN:VCALENDAR\r\n\xff\xfe", "not UTF-8 text"),
+        (calendar(event("DTSTART;TZID=Europe/:20270309T100000", "DURATION:PT1H")), "not a valid iCalendar file"),
         ("", "no complete VCALENDAR"),
     ],
 )
