@@ -39,6 +39,7 @@ def solve(
     x = np.minimum(np.maximum(guess, low), high)
     result = x.copy()
     last = high - low
+    newton = np.zeros(x.size, bool)
     active: Indices | None = None
     with np.errstate(divide="ignore", invalid="ignore"):
         for _ in range(_MOST_STEPS):
@@ -53,7 +54,8 @@ def solve(
             np.copyto(ahead, x, where=value == 0.0)
             size = np.abs(ahead - x)
             foretold = size * np.square(size / last)
-            unsettled = np.where(good, foretold > tolerance, size > tolerance)
+            unsettled = (size > tolerance) & ((foretold > tolerance) | ~(good & newton))
+            newton = good
             last = size
             x = ahead
             result[slice(None) if active is None else active] = x
@@ -65,5 +67,5 @@ def solve(
                 active = keep if active is None else active[keep]
                 data = [part.take(keep, axis=-1) for part in data]
                 low, high, x, last = low[keep], high[keep], x[keep], last[keep]
-                rising = rising[keep]
+                rising, newton = rising[keep], newton[keep]
     return result
