@@ -41,7 +41,8 @@ class Sky:
 
     def at(self, objects: Indices, at: Floats) -> Floats:
         """East, north and up (3, n) at grid instants ``at``."""
-        place = np.stack(stencil.interpolate(tuple(self.positions_km), objects, at))
+        sample = np.floor(at).astype(np.int64)
+        place = np.concatenate(stencil.interpolate(tuple(self.positions_km), objects, sample, at[None]))
         axes = np.concatenate([self.here.east, self.here.north, self.here.up])
         return np.asarray(axes @ (place - self.here.positions_km.T))
 

@@ -15,6 +15,7 @@ Flags = NDArray[np.bool_]
 Function = Callable[..., tuple[Floats, Floats]]
 
 _MOST_STEPS = 100
+_FORETOLD = 0.01
 
 
 def solve(
@@ -35,6 +36,8 @@ def solve(
     next / last = (last / before)^2. Roots that have settled stay in the arrays until half of them
     have: sorting them out costs as much as a turn.
     """
+    if not guess.size:
+        return guess.copy()
     low, high = low.copy(), high.copy()
     x = np.minimum(np.maximum(guess, low), high)
     result = x.copy()
@@ -54,7 +57,7 @@ def solve(
             np.copyto(ahead, x, where=value == 0.0)
             size = np.abs(ahead - x)
             foretold = size * np.square(size / last)
-            unsettled = (size > tolerance) & ((foretold > tolerance) | ~(good & newton))
+            unsettled = (size > tolerance) & ((foretold > _FORETOLD * tolerance) | ~(good & newton))
             newton = good
             last = size
             x = ahead

@@ -31,11 +31,16 @@ class Candidate:
 
 @dataclass(frozen=True, eq=False)
 class OptionSet:
-    """Options with their ``candidates`` (same order), and ``excluded``: window -> (reason, detail)."""
+    """Options with their ``candidates`` (same order), and why windows give none.
+
+    ``excluded`` maps such a window to (reason, detail). ``blocked`` lists, for each antenna, the half-open
+    intervals [s] that no contact may touch: closures, with time to release before and to prepare after.
+    """
 
     options: Options
     candidates: tuple[Candidate, ...]
     excluded: Mapping[int, tuple[str, str]]
+    blocked: tuple[tuple[tuple[int, int], ...], ...]
 
 
 def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Antennas) -> Windows:
@@ -74,7 +79,8 @@ def find_options(
         "pieces": [] if c.downlink is None else [
             (c.downlink.send_start_s, c.downlink.send_end_s, c.downlink.rate_mbps / 8.0)],
     } for c in candidates]
-    return OptionSet(build_options(rows), tuple(candidates), excluded)
+    blocked = tuple(tuple(builder.blocked[name]) for name in antennas.names)
+    return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
 
 class _Builder:
