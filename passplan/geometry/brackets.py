@@ -97,8 +97,7 @@ def _excursions(scene: Scene, flat: Indices, top: bool) -> Brackets:
     pair, sample = pair[likely], sample[likely]
     powers, zero = scene.polynomials(pair, sample)
     data = powers, scene.sines[pair]
-    falling = np.full(pair.size, not top)
-    x = solve(excess_slope, data, zero - 1.0, zero + 1.0, zero, falling, scene.tolerance)
+    x = solve(excess_slope, data, zero - 1.0, zero + 1.0, zero, not top, scene.tolerance)
     height, bend = excess(x, *data)[0], excess_slope(x, *data)[1]
     over = np.flatnonzero((height > 0.0) == top)
     x, half = (x - zero)[over], np.sqrt(np.abs(2.0 * height[over] / bend[over]))

@@ -70,14 +70,16 @@ def _solve_short(
     edges = []
     for number, rising in ((rise[some], True), (fall[some], False)):
         shift = zero + (crossings.sample[number] - centre)
-        low, high, guess = (part[number] + shift for part in (crossings.low, crossings.high, crossings.guess))
-        edges.append(solve(excess, data, low, high, guess, np.full(some.size, rising), scene.tolerance))
-    middle = 0.5 * (edges[0] + edges[1])
-    peak = solve(toward_peak, (powers,), *edges, middle, np.zeros(some.size, bool), TOLERANCE)
+        bracket = (part[number] + shift for part in (crossings.low, crossings.high, crossings.guess))
+        before, after, guess = bracket
+        edges.append(solve(excess, data, before, after, guess, rising, scene.tolerance))
+    low, high = edges
+    middle = 0.5 * (low + high)
+    peak = solve(toward_peak, (powers,), low, high, middle, False, TOLERANCE)
     square = np.ascontiguousarray(powers[:, 1])
-    nearest = solve(toward_nearest, (square,), *edges, peak, np.ones(some.size, bool), TOLERANCE)
+    nearest = solve(toward_nearest, (square,), low, high, peak, True, TOLERANCE)
     up, distance2 = stencil.value(powers, peak)
-    found.start[some], found.end[some] = edges[0] + (centre - zero), edges[1] + (centre - zero)
+    found.start[some], found.end[some] = low + (centre - zero), high + (centre - zero)
     top.at[some] = peak + (centre - zero)
     top.sine[some] = up / np.sqrt(distance2)
     top.range_km[some] = np.sqrt(stencil.value(square, nearest))
@@ -93,7 +95,7 @@ def _solve_long(
         powers, zero = scene.polynomials(found.pair[closed], crossings.sample[number])
         data = powers, scene.sines[found.pair[closed]]
         low, high, guess = (part[number] + zero for part in (crossings.low, crossings.high, crossings.guess))
-        x = solve(excess, data, low, high, guess, np.full(closed.size, rising), scene.tolerance)
+        x = solve(excess, data, low, high, guess, rising, scene.tolerance)
         edge[closed] = x + (crossings.sample[number] - zero)
     part = summits(scene, found.pair[some], found.start[some], found.end[some])
     top.at[some], top.sine[some], top.range_km[some] = part.at, part.sine, part.range_km

@@ -134,7 +134,7 @@ def weights(x: Floats) -> Floats:
     powers[0] = 1.0
     for k in range(1, POINTS):
         np.multiply(powers[k - 1], x, out=powers[k])
-    return np.ascontiguousarray(product(_POWERS.T, powers).T)
+    return product(powers.T, _POWERS)
 
 
 def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], sample: NDArray[np.int64], at: Floats) -> list[Floats]:

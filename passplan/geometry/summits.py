@@ -64,7 +64,7 @@ def _near_samples(scene: Scene, pair: Indices, start: Floats, end: Floats, highe
         middle = zero[pick]
         guess = middle + _vertex(square, spot[pick])
         data = (here if best is highest else np.ascontiguousarray(here[:, 1]),)
-        x = solve(slope, data, middle - 1.0, middle + 1.0, guess, np.full(middle.size, rising), TOLERANCE)
+        x = solve(slope, data, middle - 1.0, middle + 1.0, guess, rising, TOLERANCE)
         at = x + (own_sample[pick] - middle)
         inside = (at >= start[owner[pick]]) & (at <= end[owner[pick]])
         if best is highest:

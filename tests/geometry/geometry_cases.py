@@ -97,9 +97,7 @@ def elevation_deg(source: OrbitSource, site: Site, seconds: NDArray[np.float64])
     return look_angles(source, site, at_s(seconds)).elevation_deg
 
 
-def dense_spans_s(
-    source: OrbitSource, site: Site, mask_deg: float, length_s: int = 86_400
-) -> NDArray[np.float64]:
+def dense_spans_s(source: OrbitSource, site: Site, mask_deg: float, length_s: int = 86_400) -> NDArray[np.float64]:
     """Intervals above ``mask_deg`` by 1 s sampling with a finer look wherever an extreme comes near the mask."""
     seconds = np.arange(length_s + 1.0)
     level = elevation_deg(source, site, seconds)

@@ -195,7 +195,11 @@ def test_progress_counts_to_the_number_of_spacecraft() -> None:
 
 
 def test_many_antennas_give_what_one_alone_gives() -> None:
-    antennas = {f"A{i}": Antenna(name=f"A{i}", site=("North", "South")[i % 2], min_elevation_deg=3.0 * i) for i in range(5)}
+    names = [f"A{i}" for i in range(5)]
+    antennas = {
+        name: Antenna(name=name, site=("North", "South")[i % 2], min_elevation_deg=3.0 * i)
+        for i, name in enumerate(names)
+    }
     orbits = {"Teal": LOW, "Wren": INCLINED, "Rook": ECCENTRIC}
     together = find_windows(orbits, antennas, SITES, START, END)
     alone = pd.concat(
