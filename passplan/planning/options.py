@@ -145,7 +145,7 @@ class _Builder:
             must_end.add(max(min(high, latest_s), low))
         grid_s = self.policy.cut_grid_s
         grid = range(-(-low // grid_s) * grid_s, high, grid_s) if grid_s else range(0)
-        inner = max(0, math.isqrt(most - 1)) if most > 1 else 0
+        inner = math.isqrt(most - 1) + 1 if most > 1 else 0
         starts = must_start | set(spread(low, high - self.shortest_s + 1, cuts.starts, grid, inner))
         ends = must_end | set(spread(low + self.shortest_s - 1, high, cuts.ends, grid, inner))
         pairs = [(a, b) for a in starts for b in ends if b - a >= self.shortest_s]

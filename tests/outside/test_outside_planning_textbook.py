@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 from bisect import bisect_right
+from itertools import pairwise
 
 import networkx as nx
 import numpy as np
@@ -68,7 +69,7 @@ def test_identical_antennas_are_a_minimum_cost_flow(seed: int, count: int, exact
     instants = sorted({t for a, b, _ in spans for t in (a, b)})
     graph.add_node(instants[0], demand=-count)
     graph.add_node(instants[-1], demand=count)
-    for a, b in zip(instants, instants[1:], strict=False):
+    for a, b in pairwise(instants):
         graph.add_edge(a, b, capacity=count, weight=0)
     for k, (a, b, volume) in enumerate(spans):
         # Two arcs through a node of its own, as a digraph has one arc between two nodes.

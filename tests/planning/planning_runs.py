@@ -11,6 +11,7 @@ import pandas as pd
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.fleet import DownlinkRadio, Spacecraft
 from passplan.inputs.ground import Antenna, Receiver, Site
+from passplan.inputs.modcods import builtin_table
 from passplan.inputs.policy import Policy
 from passplan.inputs.run import Run
 from passplan.link.choice import CommandChoice, DownlinkChoice, WindowLink
@@ -67,7 +68,8 @@ def make_run(policy: dict[str, Any] | None = None, craft: dict[str, Any] | None 
     fleet = {name: Spacecraft(name=name, catalogue_number=k + 1, **{
         "radios": ("x",), "weight": 2.0, "generation_mb_per_s": 0.5, "storage_mb": 9_000.0, "start_fill_mb": 4_000.0,
         **(craft or {})}) for k, name in enumerate(("Teasel-1", "Teasel-2"))}
-    antennas = {name: Antenna(name=name, site="Isvarde", receivers=("rx",), prepare_s=60, release_s=30, price_per_minute=price)
+    antennas = {name: Antenna(name=name, site="Isvarde", receivers=("rx",), prepare_s=60, release_s=30,
+                              price_per_minute=price)
                 for name, price in (("Isvarde-A", 0.0), ("Isvarde-B", 3.0))}
     values: dict[str, Any] = {
         "name": "small", "start_utc": START, "end_utc": START + np.timedelta64(7_200, "s"), "spacecraft": fleet,
@@ -76,7 +78,7 @@ def make_run(policy: dict[str, Any] | None = None, craft: dict[str, Any] | None 
         "sites": {"Isvarde": Site(name="Isvarde", latitude_deg=69, longitude_deg=17)}, "antennas": antennas,
         "receivers": {"rx": Receiver(name="rx", low_mhz=8_000, high_mhz=8_400, polarisations=("RHCP",),
                                      g_over_t_db_per_k=30)},
-        "transmitters": {}, "modcod_tables": {}, "closures": (), "requests": (),
+        "transmitters": {}, "modcod_tables": {"dvb-s2": builtin_table("dvb-s2")}, "closures": (), "requests": (),
         "policy": Policy(**{"gap": 0.0, "min_contact_s": 120, **(policy or {})}),
         "orbits": dict.fromkeys(fleet), "left_out": {}, "elements": pd.DataFrame(), **rest}
     return Run(**values)

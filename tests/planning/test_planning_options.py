@@ -36,7 +36,8 @@ def test_parts_are_cut_on_the_grid_and_where_a_neighbour_starts_or_ends() -> Non
     run = make_run({"cut_grid_s": 200, "options_per_window": 60})
     rows = [*ONE, ("Teasel-2", "Isvarde-A", 900, 1_500)]
     first = [span for span, w in zip(spans(built(run, rows)[0]), built(run, rows)[0].window, strict=True) if w == 0]
-    assert {b for _, b in first} == {900 - 90, 800, 1_000, 1_199}
+    # The grid's 800 would be too close to the neighbour's 810.
+    assert {b for _, b in first} == {900 - 90, 1_000, 1_199}
     assert {a for a, _ in first} == {601, 800, 1_000}
 
 

@@ -26,7 +26,8 @@ def second(column: pd.Series) -> np.ndarray:
 
 @pytest.fixture(scope="module")
 def plan() -> Plan:
-    run = make_run({"command_every_h": 1}, requests=(request("ask", "Teasel-2", 2_900, 4_000), request("no", "Teasel-1", 0, 500)))
+    requests = (request("ask", "Teasel-2", 2_900, 4_000), request("no", "Teasel-1", 0, 500))
+    run = make_run({"command_every_h": 1}, requests=requests)
     return make_plan(run, make_windows(ROWS), [BOTH, DOWN, DOWN, DOWN, BOTH])
 
 
@@ -70,7 +71,8 @@ def test_requests_are_marked_and_missed_ones_named(plan: Plan) -> None:
 
 def test_the_reason_names_what_stands_in_the_way() -> None:
     run = make_run({"cut_grid_s": 0, "options_per_window": 1}, craft={"storage_mb": 9e4, "start_fill_mb": 8e4})
-    rows = [("Teasel-1", "Isvarde-A", 600, 1_600), ("Teasel-2", "Isvarde-A", 900, 1_400), ("Teasel-1", "Isvarde-B", 700, 1_100)]
+    rows = [("Teasel-1", "Isvarde-A", 600, 1_600), ("Teasel-2", "Isvarde-A", 900, 1_400),
+            ("Teasel-1", "Isvarde-B", 700, 1_100)]
     table = make_plan(run, make_windows(rows), [DOWN] * 3).unused.set_index("window_id")
     assert table["reason"].tolist() == ["antenna_busy", "spacecraft_busy"]
     assert "Isvarde-A is taken: Teasel-1 on Isvarde-A from 00:10:00 to 00:26:40" in table["detail"].iloc[0]
@@ -99,7 +101,8 @@ def test_a_contact_for_commands_alone_has_no_modcod_and_no_volume() -> None:
 
 
 def test_a_spacecraft_that_is_left_out_takes_no_part_and_its_request_is_a_shortfall() -> None:
-    run = make_run({}, orbits={"Teasel-2": None}, left_out={"Teasel-1": "too old"}, requests=(request("ask", "Teasel-1", 0, 999),))
+    run = make_run(
+        {}, orbits={"Teasel-2": None}, left_out={"Teasel-1": "too old"}, requests=(request("ask", "Teasel-1", 0, 999),))
     plan = make_plan(run, make_windows(ROWS[1:2]), [DOWN])
     assert plan.problem.fleet.names == ("Teasel-2",)
     assert "takes no part" in plan.result.shortfalls[0].sentence
@@ -115,7 +118,8 @@ def test_no_windows_is_an_empty_plan_with_typed_tables() -> None:
 
 def test_the_same_run_gives_the_same_plan_and_progress_is_told() -> None:
     told: list[tuple[str, int, int]] = []
-    plans = [make_plan(make_run(), make_windows(ROWS), [BOTH] * 5, progress=lambda *now: told.append(now)) for _ in range(2)]
+    plans = [make_plan(make_run(), make_windows(ROWS), [BOTH] * 5, progress=lambda *now: told.append(now))
+             for _ in range(2)]
     pd.testing.assert_frame_equal(plans[0].contacts, plans[1].contacts)
     pd.testing.assert_frame_equal(plans[0].unused, plans[1].unused)
     assert told

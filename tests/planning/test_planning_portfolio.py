@@ -51,7 +51,8 @@ def test_zero_storage_and_zero_weight(limits: Limits, change: dict[str, Any]) ->
 @PATHS
 def test_a_spacecraft_without_an_antenna_spills_and_nothing_else(limits: Limits) -> None:
     problem = problem_of(
-        [PASS], weight=(1.0, 1.0), generation=(0.0, 1.0), capacity=(1e6, 100.0), start=(1e5, 0.0), spill_cost_per_mb=1.0)
+        [PASS], weight=(1.0, 1.0), generation=(0.0, 1.0), capacity=(1e6, 100.0), start=(1e5, 0.0),
+        spill_cost_per_mb=1.0)
     result = find_plan(problem, limits)
     assert result.account.lost_mb.tolist() == [0.0, pytest.approx(5_900.0)]
     assert result.chosen == (0,)

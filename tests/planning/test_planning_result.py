@@ -34,7 +34,8 @@ def test_the_clock_counts_down_and_keeps_stages() -> None:
 
 
 def test_options_are_read_only_and_checked() -> None:
-    row = {"window": 0, "spacecraft": 0, "antenna": 0, "start_s": 0, "end_s": 60, "pieces": [(0, 30, 1.0), (30, 60, 2.0)]}
+    row = {"window": 0, "spacecraft": 0, "antenna": 0, "start_s": 0, "end_s": 60,
+           "pieces": [(0, 30, 1.0), (30, 60, 2.0)]}
     options = build_options([row, {**row, "pieces": []}, row])
     assert options.take([2, 1]).piece_offset.tolist() == [0, 2, 2]
     assert options.take([2, 1]).piece_rate_mb_per_s.tolist() == [1.0, 2.0]

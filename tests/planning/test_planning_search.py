@@ -64,7 +64,8 @@ def test_threads_change_nothing() -> None:
 
 def test_two_parts_of_one_window_need_setup_between_them() -> None:
     # Apart by less than the 60 s that the antenna needs: only one of them, or the first and the far one.
-    rows = [{"window": 0, "start_s": a, "end_s": b, "pieces": [(a, b, 1.0)]} for a, b in ((0, 300), (330, 600), (360, 600))]
+    rows = [{"window": 0, "start_s": a, "end_s": b, "pieces": [(a, b, 1.0)]}
+            for a, b in ((0, 300), (330, 600), (360, 600))]
     problem = problem_of(rows, start=(1e4,), capacity=(1e4,))
     assert searched(problem).chosen == (0, 2)
 

@@ -79,7 +79,8 @@ class _Rounds:
         self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
         self.work = make_work()
         self.value, self.points = self._worth()
-        self.bounds = BoundSearch(arrays, self.sweeper, self.points, self._first_point_worth(problem), self._contact_worth())
+        self.bounds = BoundSearch(
+            arrays, self.sweeper, self.points, self._first_point_worth(problem), self._contact_worth())
 
     def run(self, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
         options = max(1, len(self.arrays.option))
@@ -104,7 +105,8 @@ class _Rounds:
             idle = 0 if (self.value, self.bounds.bound) != before else idle + 1
             if tell is not None:
                 tell(self.value, self.bounds.bound)
-            if relative_gap(self.value, self.bounds.bound) <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
+            gap = relative_gap(self.value, self.bounds.bound)
+            if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
         chosen = sorted(int(self.arrays.option[o])
                         for i in range(len(self.best_size)) for o in self.best_taken[i, : self.best_size[i]])
