@@ -5,7 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from passplan.geometry.frames import INERTIAL_FRAMES, inertial_to_itrf, teme_to_itrf
+from passplan.geometry.frames import EARTH_RATE_RAD_S, INERTIAL_FRAMES, inertial_to_itrf, teme_to_itrf
+from passplan.geometry.regimes import Regime, regime_of_state
 from passplan.geometry.timescale import Floats, system_minus_utc_s
 from passplan.inputs.ephemeris import Ephemeris, EphemerisSegment
 
@@ -56,6 +57,15 @@ def ephemeris_itrf(ephemeris: Ephemeris, utc_s: Floats) -> tuple[Floats, Floats]
         if inside.size:
             positions[inside], velocities[inside] = segment_itrf(segment, utc_s[inside])
     return positions, velocities
+
+
+def ephemeris_regime(ephemeris: Ephemeris) -> Regime:
+    """The regime of an ephemeris, from the state in the middle of its first segment."""
+    low, high = segment_span(ephemeris.segments[0])
+    positions, velocities = segment_itrf(ephemeris.segments[0], np.array([0.5 * (low + high)]))
+    # Without the Earth's rotation; the axes may as well be those of the moment.
+    inertial = velocities[0] + np.cross([0.0, 0.0, EARTH_RATE_RAD_S], positions[0])
+    return regime_of_state(positions[0], inertial)
 
 
 def interpolate(segment: EphemerisSegment, own_s: Floats) -> tuple[Floats, Floats]:

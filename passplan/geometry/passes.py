@@ -9,19 +9,22 @@ from typing import TypeVar
 import numpy as np
 
 from passplan.geometry import stencil
-from passplan.geometry.masks import Mask
-from passplan.geometry.notches import Sky, cut_to_mask
+from passplan.geometry.masks import Mask, joined_masks
+from passplan.geometry.notches import cut_to_masks
 from passplan.geometry.pointing import azimuth_of
 from passplan.geometry.regimes import ALWAYS_S
 from passplan.geometry.roots import Flags, Indices
 from passplan.geometry.scan import Spans, spans
 from passplan.geometry.scene import Scene, view
+from passplan.geometry.sky import sky
 from passplan.geometry.stations import Stations
 from passplan.geometry.summits import Summits, summits
 from passplan.geometry.timescale import Floats
 from passplan.geometry.trajectory import Block
 
 _STEEP_SINE = 0.98
+# Spans cut to shaped masks at once; bounds the memory of their polynomials.
+_SPANS_AT_ONCE = 2_000
 
 
 @dataclass(frozen=True)
@@ -167,31 +170,39 @@ def _cut_by_masks(
     block: Block, places: Stations, masks: Sequence[Mask], scene: Scene, found: Spans, crown: _Crowns, top: Summits
 ) -> tuple[Spans, _Crowns, Summits]:
     """Spans above the lowest point of a mask that depends on azimuth, replaced by their pieces above the mask."""
-    for number, mask in enumerate(masks):
-        if mask.constant:
-            continue
-        antenna, own = np.divmod(found.pair, scene.objects)
-        mine = np.flatnonzero(antenna == number)
-        if not mine.size:
-            continue
-        sky = Sky(block.positions_km, places.subset(np.array([number])))
-        piece, start, end = cut_to_mask(sky, mask, own[mine], found.start[mine], found.end[mine], top.at[mine])
-        parent, rest = mine[piece], np.flatnonzero(antenna != number)
-        above = summits(scene, found.pair[parent], start, end)
-        endless = crown.endless[parent]
-        cut = Spans(
-            found.pair[parent],
-            start,
-            end,
-            found.open_start[parent] & (start == found.start[parent]),
-            found.open_end[parent] & (end == found.end[parent]),
-            found.centre[parent],
-        )
-        renamed = _Crowns(
-            np.where(endless, above.at, crown.at[parent]), np.where(endless, above.sine, crown.sine[parent]), endless
-        )
-        found, crown, top = _followed(found, rest, cut), _followed(crown, rest, renamed), _followed(top, rest, above)
-    return found, crown, top
+    shaped = np.array([not mask.constant for mask in masks])
+    if not shaped.any():
+        return found, crown, top
+    antenna, own = np.divmod(found.pair, scene.objects)
+    table = joined_masks(masks)
+    mine = np.flatnonzero(shaped[antenna])
+    parents, starts, ends = [], [], []
+    for at in range(0, mine.size, _SPANS_AT_ONCE):
+        some = mine[at : at + _SPANS_AT_ONCE]
+        here = places.subset(antenna[some])
+        heaven = sky(block, here, own[some], found.centre[some], found.start[some], found.end[some])
+        pieces = cut_to_masks(heaven, table, antenna[some], found.start[some], found.end[some], top.at[some])
+        parents.append(some[pieces.window])
+        starts.append(pieces.start)
+        ends.append(pieces.end)
+    if not mine.size:
+        return found, crown, top
+    parent, start, end = np.concatenate(parents), np.concatenate(starts), np.concatenate(ends)
+    above = summits(scene, found.pair[parent], start, end)
+    endless = crown.endless[parent]
+    cut = Spans(
+        found.pair[parent],
+        start,
+        end,
+        found.open_start[parent] & (start == found.start[parent]),
+        found.open_end[parent] & (end == found.end[parent]),
+        found.centre[parent],
+    )
+    renamed = _Crowns(
+        np.where(endless, above.at, crown.at[parent]), np.where(endless, above.sine, crown.sine[parent]), endless
+    )
+    rest = np.flatnonzero(~shaped[antenna])
+    return _followed(found, rest, cut), _followed(crown, rest, renamed), _followed(top, rest, above)
 
 
 _Columns = TypeVar("_Columns", Spans, _Crowns, Summits)

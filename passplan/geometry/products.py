@@ -14,14 +14,11 @@ _MULTIPLICATIONS = 2**18
 
 
 def product(left: Floats, right: Floats) -> Floats:
-    """``left @ right`` for a small (m, k) and a wide (k, n) array, or for a tall (n, k) and a small (k, m) one."""
-    (rows, inner), columns = left.shape, right.shape[1]
-    result = np.empty((rows, columns))
-    step = max(1, _MULTIPLICATIONS // max(1, min(rows, columns) * inner))
-    for at in range(0, max(rows, columns), step):
+    """``left @ right`` for a small (m, k) and a wide (k, n) array."""
+    rows, inner = left.shape
+    result = np.empty((rows, right.shape[1]))
+    step = max(1, _MULTIPLICATIONS // (rows * inner))
+    for at in range(0, right.shape[1], step):
         piece = slice(at, at + step)
-        if columns >= rows:
-            np.matmul(left, right[:, piece], out=result[:, piece])
-        else:
-            np.matmul(left[piece], right, out=result[piece])
+        np.matmul(left, right[:, piece], out=result[:, piece])
     return result

@@ -128,21 +128,14 @@ def _sum(powers: Floats, basis: Floats) -> Floats:
     return np.asarray(np.einsum("k...n,kn->...n", powers, basis))
 
 
-def weights(x: Floats) -> Floats:
-    """Weights (n, 14) of the samples for a value at ``x`` (n,); exact at the nodes."""
-    powers = np.empty((POINTS, x.size))
-    powers[0] = 1.0
-    for k in range(1, POINTS):
-        np.multiply(powers[k - 1], x, out=powers[k])
-    return product(powers.T, _POWERS)
-
-
 def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], sample: NDArray[np.int64], at: Floats) -> list[Floats]:
     """Values (k, n) of each part's ``rows[row[i]]`` (2-d arrays of one shape) at grid instants ``at`` (k, n).
 
     The k instants of a column share the stencil around grid interval ``sample`` (n,).
     """
     first, zero = place(sample, parts[0].shape[1])
-    each = [weights(x - zero) for x in at]
-    stencils = (samples(rows, row, first) for rows in parts)
-    return [np.stack([np.einsum("ij,ij->i", weight, part) for weight in each]) for part in stencils]
+    values = []
+    for rows in parts:
+        powers = polynomials(rows, row, first)
+        values.append(np.stack([value(powers, x - zero) for x in at]))
+    return values

@@ -71,7 +71,7 @@ def find_plan(
             bound = found.bound if candidate.points < best.points - _SAME_POINTS else min(bound, found.bound)
             best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
-        tidied = _Candidate(problem, terms, tidy(problem, terms, best.chosen), best.path)
+        tidied = _Candidate(problem, terms, tidy(problem, terms, maps, best.chosen), best.path)
         best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
     return _conclude(best, terms, points_bound, bound, limits, clock)
 

@@ -28,6 +28,8 @@ _SQUARE_MEMORY = 0.99
 _LEAST_SIZE = 0.1
 _PATIENCE = 6
 _SHRINK = 0.8
+# When steps have become this small against the first, it is time for another way.
+_LEAST_STEP = 1e-3
 _MOST_CONTACTS = 4_096
 
 
@@ -111,10 +113,16 @@ class BoundSearch:
         self._mean, self._square = np.zeros(arrays.cliques), np.zeros(arrays.cliques)
         # A first step moves the price of an option by some part of what a contact is worth.
         width = max(1.0, float((arrays.use_last - arrays.use_first).sum(axis=1).mean()))
-        self._step, self._stuck, self._steps = _FIRST_STEP * contact_worth / width, 0, 0
+        self._first_step = self._step = _FIRST_STEP * contact_worth / width
+        self._stuck = self._steps = 0
 
-    def improve(self, iterations: int) -> None:
-        """Take subgradient steps."""
+    def improve(self, iterations: int, value: float) -> None:
+        """Take subgradient steps. ``value`` is the best plan known."""
+        if self._step < _LEAST_STEP * self._first_step:
+            self._polish(iterations, value)
+            self._step, self._steps = 0.2 * self._first_step, 0
+            self._mean, self._square = np.zeros(self.arrays.cliques), np.zeros(self.arrays.cliques)
+            return
         for _ in range(iterations):
             at = self.sweeper(self.price, self.point_worth)
             here = float(at.worth.sum() + self.price.sum() + self.point_worth * self.plan_points)
@@ -132,6 +140,21 @@ class BoundSearch:
             mean = self._mean / (1.0 - _MEAN_MEMORY**self._steps)
             size = np.sqrt(self._square / (1.0 - _SQUARE_MEMORY**self._steps))
             self.price = np.maximum(0.0, self.price + self._step * mean / (size + _LEAST_SIZE))
+
+    def _polish(self, iterations: int, value: float) -> None:
+        """Polyak's steps (1969) from the best prices: they end exactly where the ceiling meets the plan, if it does."""
+        self.price = self.best_price
+        for _ in range(iterations):
+            at = self.sweeper(self.price, self.point_worth)
+            here = float(at.worth.sum() + self.price.sum() + self.point_worth * self.plan_points)
+            gradient = at.use - 1.0
+            gradient[(self.price <= 0.0) & (gradient < 0.0)] = 0.0
+            size = float(gradient @ gradient)
+            if not np.isfinite(here) or size <= 0.0:
+                break
+            self._note(here)
+            self.price = np.maximum(0.0, self.price + (here - value) / size * gradient)
+        self.price = self.best_price
 
     def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""

@@ -92,11 +92,11 @@ class _Rounds:
             before = self.value, self.bounds.bound
             if self.threads > 1:
                 beside = self.pool.submit(self._rebuild, rounds, rebuilds, prices)
-                self.bounds.improve(sweeps)
+                self.bounds.improve(sweeps, before[0])
                 beside.result()
             else:
                 self._rebuild(rounds, rebuilds, prices)
-                self.bounds.improve(sweeps)
+                self.bounds.improve(sweeps, before[0])
             rounds += 1
             self.value, points = self._worth()
             if points < self.points - 1e-9:
