@@ -8,13 +8,16 @@ import shutil
 import tempfile
 from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager
+from datetime import datetime
 from pathlib import Path
 from typing import Any
 
 import pandas as pd
 
 from passplan.inputs.errors import PassplanError
+from passplan.inputs.load import load_run
 from passplan.inputs.reader import ReadFile
+from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.csv_files import read_csv, write_csv
 
@@ -109,6 +112,12 @@ def stored_config(directory: Path, summary: Mapping[str, Any]) -> tuple[Path, di
     stored = {entry["path"]: directory / entry["stored"] for entry in summary["inputs"]}
     # The config is read first; the other paths are relative to the folder it was read from.
     return directory / "inputs" / summary["inputs"][0]["path"], stored
+
+
+def stored_run(directory: Path, record: PlanRecord) -> Run:
+    """The run that a plan directory was made from, loaded from the inputs that it carries."""
+    config, stored = stored_config(directory, record.summary)
+    return load_run(config, start=datetime.fromisoformat(record.summary["horizon_start_utc"]), stored=stored)
 
 
 def _fill(record: PlanRecord, made: Path) -> None:
