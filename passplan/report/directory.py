@@ -20,6 +20,7 @@ from passplan.inputs.reader import ReadFile
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.csv_files import read_csv, write_csv
+from passplan.report.page import PAGE, write_page
 
 TABLES = ("windows", "contacts", "segments", "unused")
 
@@ -33,6 +34,7 @@ class DirectoryError(PassplanError):
 def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:
     """Write ``record`` to the new directory ``out`` and return it.
 
+    Beside the tables and the inputs stands the page (``report.html``), made from what the directory holds.
     Everything is written beside ``out`` first and then renamed, so that no half-written plan is ever
     seen. An ``out`` that exists is refused unless ``replace`` is true and it is a plan directory.
     Raises :class:`DirectoryError`.
@@ -41,6 +43,7 @@ def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:
     check_free(out, replace=replace)
     with new_directory(out) as made:
         _fill(record, made)
+        write_page(record, stored_run(made, record), made / PAGE)
     return out
 
 

@@ -17,7 +17,7 @@ from passplan.planning.record import PlanRecord
 from passplan.report.backlog import Backlog, backlogs
 from passplan.report.cautions import CAUTIONS
 from passplan.report.keys import spacecraft_keys
-from passplan.report.page.lanes import Day, Names, antenna_ribbons, spacecraft_ribbons, storage_path
+from passplan.report.page.lanes import Day, Names, antenna_ribbons, hours_of, spacecraft_ribbons, storage_path
 from passplan.report.page.payload import payload
 from passplan.report.page.ribbons import UNIT_S
 from passplan.report.tracks import WindowTrack, window_tracks
@@ -25,7 +25,6 @@ from passplan.report.usage import antenna_use, causes
 from passplan.report.words import STATUS_WORDS, clock, megabytes, minute, rate
 
 PAGE = "report.html"
-_MIDNIGHT = pd.Timestamp("2000-01-01")
 
 
 def render_page(record: PlanRecord, run: Run) -> str:
@@ -39,7 +38,7 @@ def render_page(record: PlanRecord, run: Run) -> str:
         status=STATUS_WORDS.get(record.summary["status"], record.summary["status"]),
         lost_mb=sum(store["lost_mb"] for store in record.summary["storage"].values()),
         antennas=_antennas(record, tracks, names), spacecraft=_spacecraft(record, tracks, names),
-        contacts=_contact_rows(record), use=antenna_use(record), causes=causes(record, tracks), hours=_hours(Day.of(record)),
+        contacts=_contact_rows(record), use=antenna_use(record), causes=causes(record, tracks), hours=hours_of(Day.of(record)),
         lost=_lost(record), ages=_ages(record), data=payload(record, run, tracks, names),
         style=Markup(style), script=Markup(script), script_hash=_digest(script),
     )
@@ -113,17 +112,3 @@ def _lost(record: PlanRecord) -> list[dict[str, Any]]:
 def _ages(record: PlanRecord) -> tuple[float, float] | None:
     ages = [s["element_age_days"] for s in record.summary["spacecraft"].values() if s["element_age_days"] is not None]
     return (min(ages), max(ages)) if ages else None
-
-
-def _hours(day: Day) -> list[tuple[float, str]]:
-    """Places of full hours in per cent of the width with their labels, as many as a screen holds."""
-    step = next(n for n in (1, 2, 3, 6, 12, 24, 48, 96, 192) if day.horizon_s / 3600.0 / n <= 24.5)
-    instant = day.start_utc.ceil("h")
-    marks = []
-    while day.seconds(instant) < day.horizon_s:
-        if (instant - _MIDNIGHT) % pd.Timedelta(hours=step) == pd.Timedelta(0):
-            # A date is wide: it stands in for 00 only where the labels lie far enough apart.
-            text = f"{instant:%d %b}" if instant.hour == 0 and step >= 3 else f"{instant:%H}"
-            marks.append((round(100.0 * day.seconds(instant) / day.horizon_s, 3), text))
-        instant += pd.Timedelta(hours=1)
-    return marks

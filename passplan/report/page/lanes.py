@@ -18,6 +18,7 @@ from passplan.report.words import clock, megabytes
 
 # Labels closer than this share of the width (at the narrowest drawing, 1 100 px a day) would touch.
 _APART_OF_A_DAY = 1.0
+_MIDNIGHT = pd.Timestamp("2000-01-01")
 
 
 @dataclass(frozen=True)
@@ -153,3 +154,17 @@ def storage_path(backlog: Backlog) -> tuple[str, str]:
     lost = "".join(f"M{round(a / UNIT_S)} 0H{max(round(b / UNIT_S), round(a / UNIT_S) + 1)}V16H{round(a / UNIT_S)}Z"
                    for a, b in backlog.losing_s)
     return area, lost
+
+
+def hours_of(day: Day) -> list[tuple[float, str]]:
+    """Places of full hours in per cent of the width with their labels, as many as a screen holds."""
+    step = next(n for n in (1, 2, 3, 6, 12, 24, 48, 96, 192) if day.horizon_s / 3600.0 / n <= 24.5)
+    instant = day.start_utc.ceil("h")
+    marks = []
+    while day.seconds(instant) < day.horizon_s:
+        if (instant - _MIDNIGHT) % pd.Timedelta(hours=step) == pd.Timedelta(0):
+            # A date is wide: it stands in for 00 only where the labels lie far enough apart.
+            text = f"{instant:%d %b}" if instant.hour == 0 and step >= 3 else f"{instant:%H}"
+            marks.append((round(100.0 * day.seconds(instant) / day.horizon_s, 3), text))
+        instant += pd.Timedelta(hours=1)
+    return marks

@@ -120,13 +120,18 @@
     line(inside(first, last), "path-all");
     line(inside(Math.max(c.from, first), Math.min(c.to, last)), "path-contact");
     for (const [a, b] of c.keyholes || []) line(inside(a, b), "path-keyhole");
-    const ends = [[Math.max(c.from, first), "from "], [Math.min(c.to, last), "to "]];
-    for (const [t, word] of ends) {
-      const px = x(azimuthAt(c, t)), py = y(at(c.t, c.el, t));
-      make("circle", { cx: px, cy: py, r: 4.5, class: "dot" }, svg);
-      const leftHalf = px < box.left + 90 || (word === "to " && px < box.right - 90);
-      make("text", { x: px + (leftHalf ? 9 : -9), y: Math.max(py - 9, box.top + 10), "text-anchor": leftHalf ? "start" : "end", class: "note strong" }, svg, word + utc(t));
-    }
+    const narrow = span < 480;
+    const ends = [[Math.max(c.from, first), "from "], [Math.min(c.to, last), "to "]]
+      .map(([t, word]) => ({ px: x(azimuthAt(c, t)), py: y(at(c.t, c.el, t)), text: word + utc(t, !narrow) }))
+      .sort((a, b) => a.px - b.px);
+    ends.forEach((end, i) => {
+      make("circle", { cx: end.px, cy: end.py, r: 4.5, class: "dot" }, svg);
+      // The left end speaks to the left and the right one to the right, where there is room for it.
+      const room = narrow ? 66 : 100;
+      const right = i ? end.px < box.right - room : end.px < box.left + room;
+      const lift = i && right === (ends[0].px < box.left + room) && end.px - ends[0].px < room ? 24 : 9;
+      make("text", { x: end.px + (right ? 9 : -9), y: Math.max(end.py - lift, box.top + 10), "text-anchor": right ? "start" : "end", class: "note strong" }, svg, end.text);
+    });
     const cursor = make("circle", { r: 6, class: "cursor-dot", visibility: "hidden" }, svg);
     return { svg, show: (t) => { cursor.setAttribute("visibility", "visible"); cursor.setAttribute("cx", x(azimuthAt(c, t))); cursor.setAttribute("cy", y(at(c.t, c.el, t))); } };
   }
@@ -240,7 +245,7 @@
     fact(list, "Cost", c.cost ? c.cost.toLocaleString("en") : "");
     fact(list, "Origin", c.origin);
     fact(list, "Change", c.change);
-    fact(list, "Cut", c.cut);
+    fact(list, "Cut", c.cut.replaceAll("_", " "));
     draw();
     $("charts").setAttribute("aria-label", `Horizon panorama, margin and rate of ${data.spacecraft[c.s]} on ${antenna.name}`);
     if (move) {
