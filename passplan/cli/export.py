@@ -18,10 +18,18 @@ Kind = StrEnum("Kind", ["csv", "parquet", "calendar", "pointing", "oem", "json",
 @reports_faults
 def command(
     directory: Annotated[Path, typer.Argument(help="A directory that passplan plan wrote.", show_default=False)],
-    kind: Annotated[Kind, typer.Option("--as", help="What to write; all writes every kind that can be had.", show_default=False)],
-    out: Annotated[Path | None, typer.Option("--out", help="Where to write; without it, into the plan directory.")] = None,
-    step_s: Annotated[float, typer.Option("--step", min=0.1, max=600.0, help="Seconds between the rows of pointing tables.")] = 1.0,
-    expires: Annotated[str | None, typer.Option("--expires", metavar="UTC", help="Pointing tables are not issued again after this.")] = None,
+    kind: Annotated[
+        Kind, typer.Option("--as", help="What to write; all writes every kind that can be had.", show_default=False)
+    ],
+    out: Annotated[
+        Path | None, typer.Option("--out", help="Where to write; without it, into the plan directory.")
+    ] = None,
+    step_s: Annotated[
+        float, typer.Option("--step", min=0.1, max=600.0, help="Seconds between the rows of pointing tables.")
+    ] = 1.0,
+    expires: Annotated[
+        str | None, typer.Option("--expires", metavar="UTC", help="Pointing tables are not issued again after this.")
+    ] = None,
 ) -> None:
     """Write a plan as calendars, pointing tables, ephemerides, tables, pictures or its page."""
     from passplan.inputs.errors import InputError, Problem

@@ -15,12 +15,19 @@ from passplan.cli.terminal import stdout
 @reports_faults
 def command(
     directory: Annotated[Path, typer.Argument(help="A directory that passplan plan wrote.", show_default=False)],
-    full: Annotated[bool, typer.Option("--full", help="Print every contact, the causes of unused windows, lowest margins.")] = False,
+    full: Annotated[
+        bool, typer.Option("--full", help="Print every contact, the causes of unused windows, lowest margins.")
+    ] = False,
     spacecraft: Annotated[str | None, typer.Option("--spacecraft", help="Only this spacecraft, in full.")] = None,
     antenna: Annotated[str | None, typer.Option("--antenna", help="Only this antenna, in full.")] = None,
     site: Annotated[str | None, typer.Option("--site", help="Only the antennas of this site, in full.")] = None,
-    local: Annotated[str | None, typer.Option("--local", metavar="SITE", help="Add a column with this site's local time.")] = None,
-    picture: Annotated[Path | None, typer.Option("--picture", metavar="FILE", help="Also draw the antennas' day to FILE (.svg or .png).")] = None,
+    local: Annotated[
+        str | None, typer.Option("--local", metavar="SITE", help="Add a column with this site's local time.")
+    ] = None,
+    picture: Annotated[
+        Path | None,
+        typer.Option("--picture", metavar="FILE", help="Also draw the antennas' day to FILE (.svg or .png)."),
+    ] = None,
     as_json: Annotated[bool, typer.Option("--json", help="Print the plan as JSON, for machines.")] = False,
 ) -> None:
     """Print the report of a plan again: one screen, everything, or one spacecraft, antenna or site."""
@@ -36,8 +43,11 @@ def command(
     selection = Selection(spacecraft, antenna, site)
     if as_json:
         part = select(record, selection)
-        document = part.summary if not selection else {
-            **part.summary, "contacts": rows_of(part.contacts), "unused": rows_of(part.unused)}
+        document = (
+            part.summary
+            if not selection
+            else {**part.summary, "contacts": rows_of(part.contacts), "unused": rows_of(part.unused)}
+        )
         typer.echo(json.dumps(document, indent=2, ensure_ascii=False))
         return
     run = stored_run(directory, record) if local or picture else None

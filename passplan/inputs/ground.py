@@ -24,7 +24,9 @@ def _known_zone(name: str) -> str:
 class Site(Record):
     """A place with antennas. Height is above the WGS 84 ellipsoid; longitude is east-positive.
 
-    ``time_zone`` (IANA name) is for extra, labelled columns of local time only; everything else is UTC. The three weather values feed the gas attenuation; where they are absent the link floor takes the
+    ``time_zone`` (IANA name) serves extra, labelled columns of local time only; everything else is UTC.
+
+    The three weather values feed the gas attenuation; where they are absent the link floor takes the
     mean annual reference atmosphere.
     """
 

@@ -7,7 +7,7 @@ spacecraft during this window from another antenna, in a contact that is no long
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import Any
 
@@ -30,7 +30,7 @@ def compare(record: PlanRecord, earlier: PlanRecord) -> PlanRecord:
     which is what a calendar counts as SEQUENCE.
     """
     contacts = record.contacts.copy()
-    before = {row["contact_id"]: row for row in earlier.contacts.to_dict("records")}
+    before: dict[str, Any] = {row["contact_id"]: row for row in earlier.contacts.to_dict("records")}
     gone = [row for name, row in before.items() if name not in set(contacts["contact_id"])]
     taken: set[str] = set()
     changes, origins = [], []
@@ -40,21 +40,27 @@ def compare(record: PlanRecord, earlier: PlanRecord) -> PlanRecord:
         changes.append(change)
         origins.append(origin)
     contacts["change"] = np.array(changes, dtype=object)
-    dropped = [_plain(row) for row in gone if _within(row, record.summary)]
+    dropped: list[dict[str, Any]] = [_plain(row) for row in gone if _within(row, record.summary)]
     dropped += _still_dropped(record, earlier, {row["contact_id"] for row in dropped})
     moved = {origin: name for name, origin in zip(contacts["contact_id"], origins, strict=True) if origin}
-    for row in dropped:
-        row["moved_to"] = moved.get(row["contact_id"], row.get("moved_to", ""))
+    for gone_row in dropped:
+        gone_row["moved_to"] = moved.get(gone_row["contact_id"], gone_row.get("moved_to", ""))
     counts = {name: changes.count(name) for name in CHANGES} | {"dropped": sum(not row["moved_to"] for row in dropped)}
     against = {
-        "plan_id": earlier.summary["plan_id"], "counts": counts, "dropped": dropped,
+        "plan_id": earlier.summary["plan_id"],
+        "counts": counts,
+        "dropped": dropped,
         "revisions": _revisions(contacts, dropped, earlier),
     }
     return replace(record, contacts=contacts, summary={**record.summary, "against": against})
 
 
 def _change(
-    row: Mapping[str, Any], same: Mapping[str, Any] | None, gone: list[dict[str, Any]], taken: set[str], spans: pd.DataFrame
+    row: Mapping[Any, Any],
+    same: Mapping[Any, Any] | None,
+    gone: Sequence[Mapping[Any, Any]],
+    taken: set[str],
+    spans: pd.DataFrame,
 ) -> tuple[str, str]:
     """The change of one contact, and the id of the contact it replaces on another antenna."""
     if same is not None:
@@ -70,17 +76,21 @@ def _change(
     return "new", ""
 
 
-def _within(row: Mapping[str, Any], summary: Mapping[str, Any]) -> bool:
+def _within(row: Mapping[Any, Any], summary: Mapping[Any, Any]) -> bool:
     """Whether a contact ends within the horizon; one that lies before it is history, not dropped."""
-    return bool(pd.Timestamp(row["end_utc"]) > pd.Timestamp(summary["horizon_start_utc"].rstrip("Z"))
-                and pd.Timestamp(row["start_utc"]) < pd.Timestamp(summary["horizon_end_utc"].rstrip("Z")))
+    return bool(
+        pd.Timestamp(row["end_utc"]) > pd.Timestamp(summary["horizon_start_utc"].rstrip("Z"))
+        and pd.Timestamp(row["start_utc"]) < pd.Timestamp(summary["horizon_end_utc"].rstrip("Z"))
+    )
 
 
 def _still_dropped(record: PlanRecord, earlier: PlanRecord, known: set[str]) -> list[dict[str, Any]]:
     """What the earlier plan had dropped and this plan has not taken up again: calendars may still hold it."""
     present = set(record.contacts["contact_id"]) | known
     listed = earlier.summary.get("against", {}).get("dropped", [])
-    fresh = [{**row, "start_utc": row["start_utc"].rstrip("Z"), "end_utc": row["end_utc"].rstrip("Z")} for row in listed]
+    fresh = [
+        {**row, "start_utc": row["start_utc"].rstrip("Z"), "end_utc": row["end_utc"].rstrip("Z")} for row in listed
+    ]
     return [_plain(row) for row in fresh if row["contact_id"] not in present and _within(row, record.summary)]
 
 
@@ -97,7 +107,7 @@ def _revisions(contacts: pd.DataFrame, dropped: list[dict[str, Any]], earlier: P
     return {name: count for name, count in revisions.items() if count}
 
 
-def _plain(row: Mapping[str, Any]) -> dict[str, Any]:
+def _plain(row: Mapping[Any, Any]) -> dict[str, Any]:
     plain = {key: row[key] for key in (*_DROPPED, "moved_to") if key in row}
     for key in ("start_utc", "end_utc"):
         plain[key] = f"{np.datetime64(plain[key], 'ms')}Z"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -15,8 +16,8 @@ from passplan.report.words import megabytes
 
 _BLOCKS = " ▁▂▃▄▅▆▇█"
 LOST = "!"
-# What the other columns of the table take at most.
-_BESIDE = 66
+# What a column of figures takes.
+_FIGURE = 12
 
 
 def backlog_chart(
@@ -27,16 +28,19 @@ def backlog_chart(
     if rows is not None and len(names) > rows:
         worst = sorted(names, key=lambda name: _urgency(summary["storage"][name]), reverse=True)[:rows]
         names = [name for name in names if name in worst]
-    cells = max(width - _BESIDE, 14)
     wide = width >= 100
     figures = ["after", "generated", "delivered", "lost"] if wide else ["after", "delivered", "lost"]
+    cells = max(width - max((len(name) for name in names), default=0) - _FIGURE * len(figures) - 4, 12)
     table = plain_table(("spacecraft", "left"), ("through the day", "left"), *((one, "right") for one in figures))
     for name in names:
         store = summary["storage"][name]
         lost = Text(megabytes(store["lost_mb"]), style="bold red" if store["lost_mb"] > 0.05 else "dim")
         numbers = {"after": store["left_mb"], "generated": store["generated_mb"], "delivered": store["delivered_mb"]}
-        table.add_row(Text(name), blocks(stores[name], cells),
-                      *(lost if one == "lost" else megabytes(numbers[one]) for one in figures))
+        table.add_row(
+            Text(name),
+            blocks(stores[name], cells),
+            *(lost if one == "lost" else megabytes(numbers[one]) for one in figures),
+        )
     notes = [Text(f"blocks: the fill from start to end, █ is the whole storage, {LOST} data lost", style="dim")]
     hidden = len(summary["storage"]) - len(names)
     if hidden:
@@ -49,7 +53,7 @@ def blocks(store: Backlog, cells: int) -> Text:
     horizon_s = float(store.time_s[-1])
     edges = np.linspace(0.0, horizon_s, cells + 1)
     row = Text()
-    for low, high in zip(edges[:-1], edges[1:], strict=True):
+    for low, high in pairwise(edges.tolist()):
         inside = store.fill_mb[(store.time_s >= low) & (store.time_s <= high)]
         highest = max([*store.at(np.array([low, high])).tolist(), *inside.tolist()])
         if any(first < high and last > low for first, last in store.losing_s):

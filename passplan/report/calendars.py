@@ -81,12 +81,16 @@ def _event(row: Mapping[Any, Any], stamp: datetime, sequence: int) -> Event:
 
 
 def _description(row: Mapping[Any, Any], summary: Mapping[str, Any], draft: bool) -> str:
-    facts = [f"{row['service']} at {row['site']}, radio {row['radio']}, {row['frequency_mhz']:g} MHz {row['polarisation']}"]
+    facts = [
+        f"{row['service']} at {row['site']}, radio {row['radio']}, {row['frequency_mhz']:g} MHz {row['polarisation']}"
+    ]
     if row["service"] != "command":
         facts.append(f"{row['modcod']}, {megabytes(row['volume_mb'])} net")
     if not pd.isna(row["min_margin_db"]):
         facts.append(f"least margin {row['min_margin_db']:.1f} dB, peak {row['peak_elevation_deg']:.0f} deg")
-    facts.append(f"contact {row['contact_id']}, plan {summary['plan_id']}" + (", DRAFT until a named approval" if draft else ""))
+    facts.append(
+        f"contact {row['contact_id']}, plan {summary['plan_id']}" + (", DRAFT until a named approval" if draft else "")
+    )
     return "\n".join([*facts, *CAUTIONS])
 
 

@@ -37,7 +37,9 @@ def plain_table(*headings: tuple[str, str]) -> Table:
     return table
 
 
-def contact_table(contacts: pd.DataFrame, width: int, rows: int | None, local: LocalTime | None = None) -> RenderableType:
+def contact_table(
+    contacts: pd.DataFrame, width: int, rows: int | None, local: LocalTime | None = None
+) -> RenderableType:
     """Contacts in time order, the first ``rows`` of them; narrow terminals show fewer columns, wide ones more."""
     if not len(contacts):
         return Text("none")
@@ -51,7 +53,9 @@ def contact_table(contacts: pd.DataFrame, width: int, rows: int | None, local: L
         if start.date() != day and day is not None:
             table.add_row(Text(f"{start:%d %b}", style="dim"))
         day = start.date()
-        table.add_row(*(Text(_cell(heading, row, local), style="dim" if heading == "" else "") for heading, _, _ in columns))
+        table.add_row(
+            *(Text(_cell(heading, row, local), style="dim" if heading == "" else "") for heading, _, _ in columns)
+        )
     hidden = len(contacts) - len(shown)
     more = Text(f"... and {hidden} more; --full shows them all, contacts.csv holds them", style="dim")
     return Group(table, *([more] if hidden else []))
@@ -81,9 +85,18 @@ def unused_table(record: PlanRecord, *, full: bool) -> RenderableType:
 def _columns(width: int, local: LocalTime | None) -> list[tuple[str, str, int]]:
     """Heading, side and the least terminal width from which a column is shown."""
     every = [
-        ("start", "left", 0), ("min", "right", 0), ("antenna", "left", 0), ("spacecraft", "left", 0), ("service", "left", 0),
-        ("radio", "left", 140), ("modcod", "left", 100), ("MB", "right", 0), ("margin dB", "right", 0), ("peak", "right", 0),
-        ("contact", "left", 140), ("", "left", 100),
+        ("start", "left", 0),
+        ("min", "right", 0),
+        ("antenna", "left", 0),
+        ("spacecraft", "left", 0),
+        ("service", "left", 0),
+        ("radio", "left", 140),
+        ("modcod", "left", 100),
+        ("MB", "right", 0),
+        ("margin dB", "right", 0),
+        ("peak", "right", 0),
+        ("contact", "left", 140),
+        ("", "left", 100),
     ]
     fitting = [column for column in every if width >= column[2]]
     if local is not None:
@@ -96,10 +109,13 @@ def _cell(heading: str, row: Mapping[Any, Any], local: LocalTime | None) -> str:
     if heading.startswith("at ") and local is not None:
         return local.text(start)
     cells = {
-        "start": lambda: f"{start:%H:%M:%S}", "min": lambda: f"{row['duration_s'] / 60:.1f}",
+        "start": lambda: f"{start:%H:%M:%S}",
+        "min": lambda: f"{row['duration_s'] / 60:.1f}",
         "MB": lambda: "" if row["service"] == "command" else f"{row['volume_mb']:,.1f}",
         "margin dB": lambda: "" if pd.isna(row["min_margin_db"]) else f"{row['min_margin_db']:.1f}",
-        "peak": lambda: f"{row['peak_elevation_deg']:.0f}°", "contact": lambda: str(row["contact_id"]), "": lambda: _note(row),
+        "peak": lambda: f"{row['peak_elevation_deg']:.0f}°",
+        "contact": lambda: str(row["contact_id"]),
+        "": lambda: _note(row),
     }
     return cells[heading]() if heading in cells else str(row[heading])
 

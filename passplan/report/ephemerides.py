@@ -44,15 +44,23 @@ def oem_text(
     """
     first, last = float(utc_seconds(start_utc)), float(utc_seconds(end_utc))
     inner = np.append(np.arange(first, last, step_s), last)
-    times = np.concatenate([first - step_s * np.arange(_MARGIN, 0, -1), inner, last + step_s * np.arange(1, _MARGIN + 1)])
+    times = np.concatenate(
+        [first - step_s * np.arange(_MARGIN, 0, -1), inner, last + step_s * np.arange(1, _MARGIN + 1)]
+    )
     positions, velocities = states_itrf(orbit, times)
     blocks = list(_segments(name, orbit, times, np.hstack([positions, velocities]), (first, last)))
     if not blocks:
         return ""
     stamp = datetime.now(UTC).replace(tzinfo=None).isoformat(timespec="seconds")
     origin = "SGP4 element set" if isinstance(orbit, ElementSet) else "ephemeris message"
-    head = ["CCSDS_OEM_VERS = 2.0", f"COMMENT Plan {plan_id}; from {origin}; polar motion off",
-            *(f"COMMENT {caution}" for caution in CAUTIONS), f"CREATION_DATE = {stamp}", "ORIGINATOR = PASSPLAN", ""]
+    head = [
+        "CCSDS_OEM_VERS = 2.0",
+        f"COMMENT Plan {plan_id}; from {origin}; polar motion off",
+        *(f"COMMENT {caution}" for caution in CAUTIONS),
+        f"CREATION_DATE = {stamp}",
+        "ORIGINATOR = PASSPLAN",
+        "",
+    ]
     return "\n".join([*head, *blocks]) + "\n"
 
 
@@ -67,14 +75,25 @@ def _segments(
             continue
         degree = min(7, 2 * (end - begin) - 1)
         lines = [
-            "META_START", f"OBJECT_NAME = {name}", f"OBJECT_ID = {_object_id(orbit)}", "CENTER_NAME = EARTH",
-            "REF_FRAME = ITRF2000", "TIME_SYSTEM = UTC", f"START_TIME = {_epoch(times[begin])}",
-            f"USEABLE_START_TIME = {_epoch(low)}", f"USEABLE_STOP_TIME = {_epoch(high)}",
-            f"STOP_TIME = {_epoch(times[end - 1])}", "INTERPOLATION = HERMITE", f"INTERPOLATION_DEGREE = {degree}", "META_STOP",
+            "META_START",
+            f"OBJECT_NAME = {name}",
+            f"OBJECT_ID = {_object_id(orbit)}",
+            "CENTER_NAME = EARTH",
+            "REF_FRAME = ITRF2000",
+            "TIME_SYSTEM = UTC",
+            f"START_TIME = {_epoch(times[begin])}",
+            f"USEABLE_START_TIME = {_epoch(low)}",
+            f"USEABLE_STOP_TIME = {_epoch(high)}",
+            f"STOP_TIME = {_epoch(times[end - 1])}",
+            "INTERPOLATION = HERMITE",
+            f"INTERPOLATION_DEGREE = {degree}",
+            "META_STOP",
         ]
         epochs = np.datetime_as_string(datetimes_ms(times[begin:end]), unit="ms").tolist()
-        lines += [f"{epoch} " + " ".join(f"{value:.6f}" for value in row[:3]) + " " + " ".join(f"{v:.9f}" for v in row[3:])
-                  for epoch, row in zip(epochs, states[begin:end].tolist(), strict=True)]
+        lines += [
+            f"{epoch} " + " ".join(f"{value:.6f}" for value in row[:3]) + " " + " ".join(f"{v:.9f}" for v in row[3:])
+            for epoch, row in zip(epochs, states[begin:end].tolist(), strict=True)
+        ]
         yield "\n".join([*lines, ""])
 
 

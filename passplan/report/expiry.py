@@ -39,7 +39,9 @@ def settle_expiry(directory: Path, run: Run, asked: datetime | None, now: dateti
     now = now or datetime.now(UTC)
     known = _remembered(directory)
     if known is not None and known <= now:
-        raise ExpiredError(f"{directory}: its pointing tables expired at {_text(known)}; plan again with fresh element sets")
+        raise ExpiredError(
+            f"{directory}: its pointing tables expired at {_text(known)}; plan again with fresh element sets"
+        )
     expiry = min(time for time in (asked, known, latest_use(run)) if time is not None)
     if asked is not None and expiry <= now:
         raise ExpiredError(f"--expires {_text(asked)}: {_text(expiry)} has passed; name a later instant, or plan again")

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from datetime import datetime
+from functools import cached_property
 from pathlib import Path
 
 from passplan.inputs.errors import InputError, Problem
@@ -18,9 +19,10 @@ from passplan.report.page import write_page
 from passplan.report.picture import picture_svg, write_png
 from passplan.report.pointing_tables import Issue, write_pointing_tables
 from passplan.report.table_files import write_csv_tables, write_json, write_parquet
+from passplan.report.tracks import WindowTrack, window_tracks
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Wanted:
     """One export: the plan, the run behind it, its directory, and what the kinds ask for beyond that."""
 
@@ -30,6 +32,14 @@ class Wanted:
     step_s: float = 1.0
     expires: datetime | None = None
 
+    @cached_property
+    def tracks(self) -> list[WindowTrack]:
+        return window_tracks(self.run, self.record.windows)
+
+    @cached_property
+    def picture(self) -> str:
+        return picture_svg(self.record, self.run, self.tracks)
+
 
 def _pointing(wanted: Wanted, place: Path) -> None:
     expiry = settle_expiry(wanted.directory, wanted.run, wanted.expires)
@@ -37,7 +47,7 @@ def _pointing(wanted: Wanted, place: Path) -> None:
 
 
 def _svg(wanted: Wanted, place: Path) -> None:
-    place.write_text(picture_svg(wanted.record, wanted.run), encoding="utf-8")
+    place.write_text(wanted.picture, encoding="utf-8")
 
 
 FOLDERS: dict[str, tuple[str, Callable[[Wanted, Path], object]]] = {
@@ -50,9 +60,9 @@ FOLDERS: dict[str, tuple[str, Callable[[Wanted, Path], object]]] = {
 """Kinds that fill a folder: its name within the plan directory, and what writes it."""
 FILES: dict[str, tuple[str, Callable[[Wanted, Path], object]]] = {
     "json": ("tables.json", lambda w, place: write_json(w.record, place)),
-    "page": ("report.html", lambda w, place: write_page(w.record, w.run, place)),
+    "page": ("report.html", lambda w, place: write_page(w.record, w.run, place, w.tracks)),
     "svg": ("timeline.svg", _svg),
-    "png": ("timeline.png", lambda w, place: write_png(picture_svg(w.record, w.run), place)),
+    "png": ("timeline.png", lambda w, place: write_png(w.picture, place)),
 }
 """Kinds that are one file."""
 KINDS = (*FOLDERS, *FILES)

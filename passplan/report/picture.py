@@ -17,6 +17,10 @@ from passplan.report.tracks import WindowTrack, window_tracks
 from passplan.report.words import megabytes, minute, rate
 
 _WIDTH, _LEFT, _RIGHT, _TOP, _LANE, _TALL = 1600, 210, 24, 118, 98, 56
+_SHADES = (
+    "Light: in view, as high as the rate the link allows. Dark: used. Hatched: closed. "
+    "Planning aid, not permission to transmit."
+)
 _STYLE = """
 text{font-family:'DejaVu Sans','Segoe UI',Helvetica,Arial,sans-serif;font-size:14px;fill:#1b2a32}
 .soft{fill:#56646c;font-size:12px}.name{font-weight:700;font-size:15px}.title{font-weight:700;font-size:26px}
@@ -37,12 +41,14 @@ def picture_svg(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
     legend = _legend(keys)
     height = _TOP + _LANE * len(ribbons) + 26 * len(legend) + 40
     parts = [
-        f'<svg xmlns="http://www.w3.org/2000/svg" width="{_WIDTH}" height="{height}" viewBox="0 0 {_WIDTH} {height}" role="img">',
+        f'<svg xmlns="http://www.w3.org/2000/svg" width="{_WIDTH}" height="{height}" '
+        f'viewBox="0 0 {_WIDTH} {height}" role="img">',
         f"<title>{escape(summary['name'])}</title><style>{_STYLE}</style>",
         '<defs><pattern id="hatch" width="7" height="7" patternTransform="rotate(45)" patternUnits="userSpaceOnUse">'
         '<path d="M0 0V7" stroke="#9b8579" stroke-width="2"/></pattern></defs>',
         f'<rect width="{_WIDTH}" height="{height}" fill="#fbfaf6"/>',
-        *_head(record), *_ruler(Day.of(record), len(ribbons)),
+        *_head(record),
+        *_ruler(Day.of(record), len(ribbons)),
     ]
     for i, (name, ribbon) in enumerate(ribbons.items()):
         parts += _lane(name, ribbon, summary["antennas"][name]["contacts"], Day.of(record), _TOP + _LANE * i)
@@ -67,11 +73,14 @@ def _x(percent: float) -> float:
 def _head(record: PlanRecord) -> list[str]:
     summary = record.summary
     facts = f"{minute(summary['horizon_start_utc'])} to {minute(summary['horizon_end_utc'])} UTC"
-    facts += f"   {summary['contacts']} contacts   {megabytes(summary['volume_mb'])}   plan {summary['plan_id']}"
+    facts += f" · {summary['contacts']} contacts · {megabytes(summary['volume_mb'])} · plan {summary['plan_id']}"
     draft = summary.get("approval", "draft") == "draft"
     mark = '<text x="24" y="28" class="draft">DRAFT until a named approval</text>' if draft else ""
-    return [mark, f'<text x="24" y="58" class="title">{escape(summary["name"])}</text>',
-            f'<text x="24" y="82">{escape(facts)}</text>']
+    return [
+        mark,
+        f'<text x="24" y="58" class="title">{escape(summary["name"])}</text>',
+        f'<text x="24" y="82">{escape(facts)}</text>',
+    ]
 
 
 def _ruler(day: Day, lanes: int) -> list[str]:
@@ -86,12 +95,16 @@ def _ruler(day: Day, lanes: int) -> list[str]:
 
 def _lane(name: str, ribbon: Ribbon, contacts: int, day: Day, top: int) -> list[str]:
     foot = top + _LANE - 4
-    parts = [f'<text x="24" y="{foot - 22}" class="name">{escape(name)}</text>',
-             f'<text x="24" y="{foot - 5}" class="soft">{contacts} contacts</text>',
-             f'<path class="foot" d="M24 {foot}H{_WIDTH - _RIGHT}"/>']
+    parts = [
+        f'<text x="24" y="{foot - 22}" class="name">{escape(name)}</text>',
+        f'<text x="24" y="{foot - 5}" class="soft">{contacts} contacts</text>',
+        f'<path class="foot" d="M24 {foot}H{_WIDTH - _RIGHT}"/>',
+    ]
     for span in ribbon.spans:
         width = max(_x(span.left + span.width) - _x(span.left), 1.0)
-        parts.append(f'<rect class="closed" x="{_x(span.left)}" y="{foot - _TALL}" width="{width:.1f}" height="{_TALL}"/>')
+        parts.append(
+            f'<rect class="closed" x="{_x(span.left)}" y="{foot - _TALL}" width="{width:.1f}" height="{_TALL}"/>'
+        )
     across = (_WIDTH - _LEFT - _RIGHT) / (day.horizon_s / UNIT_S)
     parts.append(f'<g transform="translate({_LEFT} {foot - _TALL}) scale({across:.6f} {_TALL / 100:.4f})">')
     parts += [f'<path class="sky" d="{path}"/>' for path in ribbon.sky.values()]
@@ -111,10 +124,13 @@ def _legend(keys: dict[str, str]) -> list[str]:
     lines, line = [], ""
     if len(set(keys.values())) == len(keys):
         for name, key in keys.items():
-            entry = f"{key} {name}     "
+            entry = f"{key} {name} · "
             if len(line) + len(entry) > 200:
-                lines.append(line)
+                lines.append(line.rstrip(" ·"))
                 line = ""
             line += entry
-        lines.append(line)
-    return [*lines, "Light: in view, as high as the rate the link allows. Dark: used. Hatched: closed. Planning aid, not permission to transmit."]
+        lines.append(line.rstrip(" ·"))
+    return [
+        *lines,
+        _SHADES,
+    ]

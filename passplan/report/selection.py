@@ -31,12 +31,18 @@ def select(record: PlanRecord, selection: Selection) -> PlanRecord:
     """
     antennas, craft = record.summary["antennas"], record.summary["spacecraft"]
     sites = {entry["site"] for entry in antennas.values()}
-    for option, name, known in (("--spacecraft", selection.spacecraft, craft), ("--antenna", selection.antenna, antennas),
-                                ("--site", selection.site, sites)):
+    for option, name, known in (
+        ("--spacecraft", selection.spacecraft, craft),
+        ("--antenna", selection.antenna, antennas),
+        ("--site", selection.site, sites),
+    ):
         if name is not None and name not in known:
             raise InputError([Problem(option, "", name, f"not in this plan; {nearest(name, known)}")])
-    kept = [name for name, entry in antennas.items()
-            if selection.antenna in (None, name) and selection.site in (None, entry["site"])]
+    kept = [
+        name
+        for name, entry in antennas.items()
+        if selection.antenna in (None, name) and selection.site in (None, entry["site"])
+    ]
     flown = [name for name in craft if selection.spacecraft in (None, name)]
     contacts = _rows(record.contacts, kept, flown)
     summary = {
@@ -47,10 +53,16 @@ def select(record: PlanRecord, selection: Selection) -> PlanRecord:
     }
     segments = record.segments[record.segments["contact_id"].isin(contacts["contact_id"])]
     return replace(
-        record, summary=summary, windows=_rows(record.windows, kept, flown), contacts=contacts, segments=segments,
+        record,
+        summary=summary,
+        windows=_rows(record.windows, kept, flown),
+        contacts=contacts,
+        segments=segments,
         unused=_rows(record.unused, kept, flown),
     )
 
 
 def _rows(table: pd.DataFrame, antennas: Iterable[str], spacecraft: Iterable[str]) -> pd.DataFrame:
-    return table[table["antenna"].isin(list(antennas)) & table["spacecraft"].isin(list(spacecraft))].reset_index(drop=True)
+    return table[table["antenna"].isin(list(antennas)) & table["spacecraft"].isin(list(spacecraft))].reset_index(
+        drop=True
+    )

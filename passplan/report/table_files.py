@@ -54,7 +54,9 @@ def rows_of(table: pd.DataFrame) -> list[dict[str, Any]]:
     for name in plain.columns:
         if pd.api.types.is_datetime64_any_dtype(plain[name]):
             plain[name] = iso(plain[name])
-    return [{str(key): None if pd.isna(value) else value for key, value in row.items()} for row in plain.to_dict("records")]
+    return [
+        {str(key): None if pd.isna(value) else value for key, value in row.items()} for row in plain.to_dict("records")
+    ]
 
 
 def write_parquet(record: PlanRecord, folder: Path) -> None:

@@ -45,14 +45,16 @@ def print_plan(
         if lines:
             _section(console, title, Group(*lines))
     if selection:
-        console.print(Text(f"\nShown: {_spoken(selection)}; the figures above are those of the whole plan", style="bold"))
+        shown = f"\nShown: {_spoken(selection)}; the figures above are those of the whole plan"
+        console.print(Text(shown, style="bold"))
     else:
         _section(console, "Inputs", _health(summary))
     if summary.get("against"):
         _section(console, f"Against plan {summary['against']['plan_id']}", _changes(summary["against"], detail))
     _section(console, "Antennas through the day, UTC", _timeline(part, console.width))
-    _section(console, "Contacts", contact_table(part.contacts, console.width, None if detail else _SCREEN_ROWS, local))
-    _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, None if detail else _SCREEN_CRAFT))
+    rows, craft = (None, None) if detail else (_SCREEN_ROWS, _SCREEN_CRAFT)
+    _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
+    _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
     if detail:
         if len(part.contacts):
             _section(console, "Lowest margins", _margins(part))

@@ -57,10 +57,16 @@ def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
         own = slice(int(samples.offsets[i]), int(samples.offsets[i + 1]))
         time_s = samples.time_s[own]
         sending = link.downlink.tracks if link.downlink is not None else ()
-        tracks.append(WindowTrack(
-            time_s, samples.azimuth_deg[own], samples.elevation_deg[own], samples.range_km[own],
-            allowed_mbps(sending, time_s, run.policy.required_margin_db), link,
-        ))
+        tracks.append(
+            WindowTrack(
+                time_s,
+                samples.azimuth_deg[own],
+                samples.elevation_deg[own],
+                samples.range_km[own],
+                allowed_mbps(sending, time_s, run.policy.required_margin_db),
+                link,
+            )
+        )
     return tracks
 
 

@@ -57,13 +57,21 @@ def antenna_use(record: PlanRecord) -> list[AntennaUse]:
     rows = []
     for name, entry in record.summary["antennas"].items():
         own = record.windows[record.windows["antenna"] == name]
-        closed = [(pd.Timestamp(c["start_utc"].rstrip("Z")), pd.Timestamp(c["end_utc"].rstrip("Z")))
-                  for c in entry["closures"]]
-        rows.append(AntennaUse(
-            name, entry["site"], entry["contacts"], entry["contact_s"] / 3600.0,
-            _covered_h(list(zip(own["aos_utc"], own["los_utc"], strict=True)), horizon), _covered_h(closed, horizon),
-            float(volume.get(name, 0.0)),
-        ))
+        closed = [
+            (pd.Timestamp(c["start_utc"].rstrip("Z")), pd.Timestamp(c["end_utc"].rstrip("Z")))
+            for c in entry["closures"]
+        ]
+        rows.append(
+            AntennaUse(
+                name,
+                entry["site"],
+                entry["contacts"],
+                entry["contact_s"] / 3600.0,
+                _covered_h(list(zip(own["aos_utc"], own["los_utc"], strict=True)), horizon),
+                _covered_h(closed, horizon),
+                float(volume.get(name, 0.0)),
+            )
+        )
     return rows
 
 
@@ -79,9 +87,15 @@ def causes(record: PlanRecord, tracks: Sequence[WindowTrack] | None = None) -> l
     )
     found = []
     for reason, own in table.groupby("reason"):
-        found.append(Cause(
-            str(reason), reason_words(reason), len(own), float(own["hours"].sum()), float(own["carry_mb"].sum(min_count=1)),
-        ))
+        found.append(
+            Cause(
+                str(reason),
+                reason_words(reason),
+                len(own),
+                float(own["hours"].sum()),
+                float(own["carry_mb"].sum(min_count=1)),
+            )
+        )
     return sorted(found, key=lambda cause: (-np.nan_to_num(cause.could_carry_mb), -cause.hours, cause.reason))
 
 

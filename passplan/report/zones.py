@@ -13,5 +13,7 @@ def local_time(run: Run, site: str) -> LocalTime:
         raise InputError([Problem("--local", "", site, f"not a site of this plan; {nearest(site, run.sites)}")])
     zone = run.sites[site].time_zone
     if zone is None:
-        raise InputError([Problem("--local", "", site, 'this site names no time_zone; add one, as time_zone = "Europe/Oslo"')])
+        raise InputError(
+            [Problem("--local", "", site, 'this site names no time_zone; add one, as time_zone = "Europe/Oslo"')]
+        )
     return LocalTime(site, zone)

@@ -35,8 +35,10 @@ class Names:
         antennas = record.summary["antennas"]
         sites = dict.fromkeys(entry["site"] for entry in antennas.values())
         return cls(
-            {name: i for i, name in enumerate(record.summary["spacecraft"])}, {name: i for i, name in enumerate(antennas)},
-            {name: i for i, name in enumerate(sites)}, craft_keys,
+            {name: i for i, name in enumerate(record.summary["spacecraft"])},
+            {name: i for i, name in enumerate(antennas)},
+            {name: i for i, name in enumerate(sites)},
+            craft_keys,
         )
 
 
@@ -91,8 +93,10 @@ def _ribbons(
             tops[other] = max(tops.get(other, 0.0), float(by_window[window].rate_mbps.max(initial=0.0)))
         scale = scale_for(tops.values())
         ribbon = Ribbon(scale)
-        ribbon.sky = joined((numbers[other], outline(by_window[window], scale))
-                            for other, window in zip(mine[partner], mine["window_id"], strict=True))
+        ribbon.sky = joined(
+            (numbers[other], outline(by_window[window], scale))
+            for other, window in zip(mine[partner], mine["window_id"], strict=True)
+        )
         used = []
         taken = contacts.get(name, record.contacts[:0])
         for row in taken.to_dict("records"):
@@ -114,13 +118,20 @@ def _ribbons(
 def _marks(contacts: pd.DataFrame, day: Day, names: Names, partner: str) -> list[Mark]:
     placed = [day.span(first, last) for first, last in zip(contacts["start_utc"], contacts["end_utc"], strict=True)]
     apart = _APART_OF_A_DAY * 86_400.0 / max(day.horizon_s, 86_400.0)
-    rows = zip(contacts.index.tolist(), contacts.to_dict("records"), placed,
-               levels((left + width / 2 for left, width in placed), apart), strict=True)
+    rows = zip(
+        contacts.index.tolist(),
+        contacts.to_dict("records"),
+        placed,
+        levels((left + width / 2 for left, width in placed), apart),
+        strict=True,
+    )
     marks = []
     for number, row, (left, width), level in rows:
         key = names.craft_keys[row[partner]] if partner == "spacecraft" else str(names.antennas[row[partner]] + 1)
-        label = (f"{row['spacecraft']} on {row['antenna']}, {clock(row['start_utc'])} to {clock(row['end_utc'])} UTC, "
-                 + (megabytes(row["volume_mb"]) if row["service"] != "command" else "command only"))
+        label = (
+            f"{row['spacecraft']} on {row['antenna']}, {clock(row['start_utc'])} to {clock(row['end_utc'])} UTC, "
+            + (megabytes(row["volume_mb"]) if row["service"] != "command" else "command only")
+        )
         marks.append(Mark(number, left, width, key, level, label, row["origin"], row["change"]))
     return marks
 
@@ -130,7 +141,9 @@ def _closures(closures: Sequence[Mapping[str, Any]], day: Day) -> list[Span]:
     for closure in closures:
         left, width = day.span(closure["start_utc"], closure["end_utc"])
         if width > 0.0:
-            label = f"{closure['kind']} {clock(closure['start_utc'])} to {clock(closure['end_utc'])} UTC {closure['note']}"
+            label = (
+                f"{closure['kind']} {clock(closure['start_utc'])} to {clock(closure['end_utc'])} UTC {closure['note']}"
+            )
             spans.append(Span(left, width, "closed", label.strip()))
     return spans
 
@@ -151,8 +164,10 @@ def storage_path(backlog: Backlog) -> tuple[str, str]:
     y = 100 - np.rint(100.0 * np.minimum(backlog.fill_mb / top, 1.0)).astype(np.int64)
     points = [f"{a} {b}" for a, b in zip(x.tolist(), y.tolist(), strict=True)]
     area = f"M{x[0]} 100L" + "L".join(dict.fromkeys(points)) + f"L{x[-1]} 100Z"
-    lost = "".join(f"M{round(a / UNIT_S)} 0H{max(round(b / UNIT_S), round(a / UNIT_S) + 1)}V16H{round(a / UNIT_S)}Z"
-                   for a, b in backlog.losing_s)
+    lost = "".join(
+        f"M{round(a / UNIT_S)} 0H{max(round(b / UNIT_S), round(a / UNIT_S) + 1)}V16H{round(a / UNIT_S)}Z"
+        for a, b in backlog.losing_s
+    )
     return area, lost
 
 

@@ -25,8 +25,11 @@ def payload(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack], names: 
     """Everything as lists and numbers; times in seconds from the horizon's start, None for NaN."""
     day = Day.of(record)
     return {
-        "start": record.summary["horizon_start_utc"], "horizon": day.horizon_s, "required": run.policy.required_margin_db,
-        "spacecraft": list(names.spacecraft), "keys": [names.craft_keys[name] for name in names.spacecraft],
+        "start": record.summary["horizon_start_utc"],
+        "horizon": day.horizon_s,
+        "required": run.policy.required_margin_db,
+        "spacecraft": list(names.spacecraft),
+        "keys": [names.craft_keys[name] for name in names.spacecraft],
         "antennas": [_antenna(run, name, entry, names) for name, entry in record.summary["antennas"].items()],
         "sites": [_site(run, name, day) for name in names.sites],
         "contacts": _contacts(record, tracks, names, day),
@@ -52,8 +55,12 @@ def _site(run: Run, name: str, day: Day) -> dict[str, Any]:
     count = int(day.horizon_s // _SUN_STEP_S) + 2
     times = day.start_utc.to_datetime64() + (np.arange(count) * _SUN_STEP_S * 1000).astype("timedelta64[ms]")
     azimuth, elevation = sun_path(run.sites[name], times)
-    return {"name": name, "zone": run.sites[name].time_zone, "step": _SUN_STEP_S,
-            "sun": _round(np.column_stack([azimuth, elevation]).ravel())}
+    return {
+        "name": name,
+        "zone": run.sites[name].time_zone,
+        "step": _SUN_STEP_S,
+        "sun": _round(np.column_stack([azimuth, elevation]).ravel()),
+    }
 
 
 def _contacts(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, day: Day) -> list[dict[str, Any]]:
@@ -63,14 +70,28 @@ def _contacts(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, d
     rows = []
     for row in record.contacts.to_dict("records"):
         entry: dict[str, Any] = {
-            "id": row["contact_id"], "s": names.spacecraft[row["spacecraft"]], "a": names.antennas[row["antenna"]],
-            "from": day.seconds(row["start_utc"]), "to": day.seconds(row["end_utc"]), "service": row["service"],
-            "radio": row["radio"], "mhz": row["frequency_mhz"], "polarisation": row["polarisation"],
-            "modcod": row["modcod"], "mb": _number(row["volume_mb"], 1), "margin": _number(row["min_margin_db"], 2),
-            "peak": _number(row["peak_elevation_deg"], 1), "value": _number(row["value"], 1), "cost": _number(row["cost"], 2),
-            "origin": row["origin"], "change": row["change"], "cut": row["cut"],
-            "sent": [[day.seconds(p["start_utc"]), day.seconds(p["end_utc"]), _number(p["rate_mbps"], 4), p["modcod"]]
-                     for p in pieces.get(row["contact_id"], ())],
+            "id": row["contact_id"],
+            "s": names.spacecraft[row["spacecraft"]],
+            "a": names.antennas[row["antenna"]],
+            "from": day.seconds(row["start_utc"]),
+            "to": day.seconds(row["end_utc"]),
+            "service": row["service"],
+            "radio": row["radio"],
+            "mhz": row["frequency_mhz"],
+            "polarisation": row["polarisation"],
+            "modcod": row["modcod"],
+            "mb": _number(row["volume_mb"], 1),
+            "margin": _number(row["min_margin_db"], 2),
+            "peak": _number(row["peak_elevation_deg"], 1),
+            "value": _number(row["value"], 1),
+            "cost": _number(row["cost"], 2),
+            "origin": row["origin"],
+            "change": row["change"],
+            "cut": row["cut"],
+            "sent": [
+                [day.seconds(p["start_utc"]), day.seconds(p["end_utc"]), _number(p["rate_mbps"], 4), p["modcod"]]
+                for p in pieces.get(row["contact_id"], ())
+            ],
         }
         if row["window_id"] in by_window:
             entry |= _track(by_window[row["window_id"]], row["radio"], row["modcod"], most)
@@ -82,9 +103,13 @@ def _track(track: WindowTrack, radio: str, modcod: str, most: int) -> dict[str, 
     pick = thinned(track.time_s.size, most)
     margin = track.margin_db(radio, modcod)
     return {
-        "t": _round(track.time_s[pick], 0), "az": _round(track.azimuth_deg[pick]), "el": _round(track.elevation_deg[pick]),
-        "km": _round(track.range_km[pick], 0), "rate": _round(track.rate_mbps[pick], 3),
-        "db": [] if margin is None else _round(margin[pick]), "keyholes": [list(span) for span in track.keyholes],
+        "t": _round(track.time_s[pick], 0),
+        "az": _round(track.azimuth_deg[pick]),
+        "el": _round(track.elevation_deg[pick]),
+        "km": _round(track.range_km[pick], 0),
+        "rate": _round(track.rate_mbps[pick], 3),
+        "db": [] if margin is None else _round(margin[pick]),
+        "keyholes": [list(span) for span in track.keyholes],
     }
 
 
@@ -93,10 +118,20 @@ def _unused(record: PlanRecord, names: Names, day: Day) -> list[list[Any]]:
     table = record.unused
     first = (table["aos_utc"] - day.start_utc).dt.total_seconds().round().astype("int64")
     last = (table["los_utc"] - day.start_utc).dt.total_seconds().round().astype("int64")
-    rows = zip(table["spacecraft"], table["antenna"], first.tolist(), last.tolist(), table["reason"], table["detail"],
-               strict=True)
-    return [[names.spacecraft[s], names.antennas[a], t0, t1, reason, detail] for s, a, t0, t1, reason, detail in rows
-            if s in names.spacecraft and a in names.antennas]
+    rows = zip(
+        table["spacecraft"],
+        table["antenna"],
+        first.tolist(),
+        last.tolist(),
+        table["reason"],
+        table["detail"],
+        strict=True,
+    )
+    return [
+        [names.spacecraft[s], names.antennas[a], t0, t1, reason, detail]
+        for s, a, t0, t1, reason, detail in rows
+        if s in names.spacecraft and a in names.antennas
+    ]
 
 
 def _round(values: Sequence[float] | NDArray[np.float64], digits: int = 1) -> list[float]:

@@ -34,7 +34,9 @@ class RateScale:
             return np.zeros(np.shape(rate_mbps), np.int64)
         if not self.by_decades:
             return np.rint(100.0 * rate_mbps / self.top_mbps).astype(np.int64)
-        share = np.log(np.maximum(rate_mbps, self.floor_mbps) / self.floor_mbps) / np.log(self.top_mbps / self.floor_mbps)
+        share = np.log(np.maximum(rate_mbps, self.floor_mbps) / self.floor_mbps) / np.log(
+            self.top_mbps / self.floor_mbps
+        )
         return np.where(rate_mbps > 0.0, np.rint(100.0 * share), 0.0).astype(np.int64)
 
     def ticks(self) -> list[tuple[float, int]]:
