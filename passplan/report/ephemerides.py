@@ -20,6 +20,9 @@ from passplan.report.names import file_stems
 Floats = NDArray[np.float64]
 # States beyond the horizon on both sides, so that a reader interpolates up to its edges.
 _MARGIN = 4
+# Lagrange over positions alone: the velocities that SGP4 gives for deep-space orbits leave out lunar and solar
+# periodics, so that Hermite over them errs by metres. Eight states a minute apart follow a low orbit to a millimetre.
+_DEGREE = 7
 
 
 def write_ephemerides(record: PlanRecord, run: Run, folder: Path, step_s: float = 60.0) -> list[Path]:
@@ -73,7 +76,7 @@ def _segments(
         low, high = max(times[begin], usable[0]), min(times[end - 1], usable[1])
         if end - begin < 2 or low >= high:
             continue
-        degree = min(7, 2 * (end - begin) - 1)
+        degree = min(_DEGREE, end - begin - 1)
         lines = [
             "META_START",
             f"OBJECT_NAME = {name}",
@@ -85,7 +88,7 @@ def _segments(
             f"USEABLE_START_TIME = {_epoch(low)}",
             f"USEABLE_STOP_TIME = {_epoch(high)}",
             f"STOP_TIME = {_epoch(times[end - 1])}",
-            "INTERPOLATION = HERMITE",
+            "INTERPOLATION = LAGRANGE",
             f"INTERPOLATION_DEGREE = {degree}",
             "META_STOP",
         ]
