@@ -8,6 +8,7 @@ contact that is gone stays as STATUS:CANCELLED, so that a calendar takes it out.
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
@@ -19,53 +20,71 @@ from passplan._version import __version__
 from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.names import file_stems
+from passplan.report.rows import rows
 from passplan.report.words import megabytes
 
 
 def write_calendars(record: PlanRecord, folder: Path) -> list[Path]:
     """Write ``all.ics``, and one file for each antenna and each spacecraft, into ``folder``."""
+    entries = _entries(record)
     written = [folder / "all.ics"]
-    written[0].write_bytes(calendar(record))
+    written[0].write_bytes(_book("Contacts", entries))
     for kind, known in (("antenna", record.summary["antennas"]), ("spacecraft", record.summary["spacecraft"])):
         place = folder / kind
         place.mkdir()
+        own: dict[str, list[_Entry]] = {name: [] for name in known}
+        for entry in entries:
+            own.setdefault(entry.row[kind], []).append(entry)
         for name, stem in file_stems(known).items():
             written.append(place / f"{stem}.ics")
-            written[-1].write_bytes(calendar(record, {kind: name}))
+            written[-1].write_bytes(_book(f"Contacts of {name}", own[name]))
     return written
 
 
-def calendar(record: PlanRecord, only: Mapping[str, str] | None = None) -> bytes:
-    """One calendar as bytes; ``only`` narrows it to an ``antenna`` or a ``spacecraft``."""
-    only = dict(only or {})
+def calendar(record: PlanRecord) -> bytes:
+    """All contacts of a plan, and those that it dropped, as one calendar."""
+    return _book("Contacts", _entries(record))
+
+
+@dataclass(frozen=True)
+class _Entry:
+    """A contact with its event as text: the text goes into several files, and making it is what takes time."""
+
+    row: Mapping[Any, Any]
+    text: bytes
+
+
+def _book(name: str, entries: Iterable[_Entry]) -> bytes:
     book = Calendar()
     book.add("prodid", f"-//passplan {__version__}//contact plan//EN")
     book.add("version", "2.0")
     book.add("method", "PUBLISH")
-    book.add("x-wr-calname", " ".join(["Contacts", *(f"of {name}" for name in only.values())]))
+    book.add("x-wr-calname", name)
+    head, mark, tail = bytes(book.to_ical()).partition(b"END:VCALENDAR")
+    return head + b"".join(entry.text for entry in entries) + mark + tail
+
+
+def _entries(record: PlanRecord) -> list[_Entry]:
     stamp = datetime.now(UTC).replace(microsecond=0)
     draft = record.summary.get("approval", "draft") == "draft"
     against = record.summary.get("against", {})
     revisions = against.get("revisions", {})
-    for row in _matching(record.contacts.to_dict("records"), only):
+    entries = []
+    for row in rows(record.contacts):
         event = _event(row, stamp, revisions.get(row["contact_id"], 0))
         event.add("status", "TENTATIVE" if draft else "CONFIRMED")
         event.add("summary", f"{'DRAFT ' if draft else ''}{row['spacecraft']} on {row['antenna']}")
         event.add("description", _description(row, record.summary, draft))
         event.add("categories", ["contact", row["service"]])
-        book.add_component(event)
-    for row in _matching(against.get("dropped", []), only):
+        entries.append(_Entry(row, bytes(event.to_ical())))
+    for row in against.get("dropped", []):
         event = _event(row, stamp, revisions.get(row["contact_id"], 0))
         event.add("status", "CANCELLED")
         event.add("summary", f"CANCELLED {row['spacecraft']} on {row['antenna']}")
         instead = f"; instead: {row['moved_to']}" if row.get("moved_to") else ""
         event.add("description", f"Not in plan {record.summary['plan_id']}{instead}")
-        book.add_component(event)
-    return bytes(book.to_ical())
-
-
-def _matching(rows: Iterable[Mapping[Any, Any]], only: Mapping[str, str]) -> list[Mapping[Any, Any]]:
-    return [row for row in rows if all(row[kind] == name for kind, name in only.items())]
+        entries.append(_Entry(row, bytes(event.to_ical())))
+    return entries
 
 
 def _event(row: Mapping[Any, Any], stamp: datetime, sequence: int) -> Event:

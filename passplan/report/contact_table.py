@@ -98,7 +98,9 @@ def _columns(width: int, local: LocalTime | None) -> list[tuple[str, str, int]]:
         ("contact", "left", 140),
         ("", "left", 100),
     ]
-    fitting = [column for column in every if width >= column[2]]
+    # A local time takes the room of modcod and notes.
+    room = width if local is None else width - 24
+    fitting = [column for column in every if room >= column[2] or not column[2]]
     if local is not None:
         fitting.insert(1, (f"at {local.site}", "left", 0))
     return fitting

@@ -57,7 +57,7 @@ def print_plan(
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
     if detail:
         if len(part.contacts):
-            _section(console, "Lowest margins", _margins(part))
+            _section(console, "Lowest margins", _margins(part, console.width))
         _section(console, "What was not used, and why", unused_table(part, full=bool(selection)))
     console.print()
     for caution in CAUTIONS:
@@ -155,13 +155,13 @@ def _spoken(selection: Selection) -> str:
     return ", ".join(name for name in (selection.spacecraft, selection.antenna, selection.site) if name)
 
 
-def _margins(record: PlanRecord) -> RenderableType:
+def _margins(record: PlanRecord, width: int) -> RenderableType:
     lowest = record.contacts.dropna(subset=["min_margin_db"]).nsmallest(5, "min_margin_db", keep="first")
     table = Table.grid(padding=(0, 2))
     for row in lowest.to_dict("records"):
         start = pd.Timestamp(row["start_utc"])
         table.add_row(
             Text(f"{row['min_margin_db']:.2f} dB", style="bold"), row["spacecraft"], row["antenna"],
-            f"{start:%d %b %H:%M}", row["modcod"], Text(row["contact_id"], style="dim"),
+            f"{start:%d %b %H:%M}", row["modcod"], *([Text(row["contact_id"], style="dim")] if width >= 100 else []),
         )
     return table

@@ -48,7 +48,14 @@ def test_the_sun_stands_where_astropy_puts_it(short_run: Run, site: str) -> None
             place.longitude_deg * units.deg, place.latitude_deg * units.deg, place.height_m * units.m
         )
         sun = get_sun(moments).transform_to(AltAz(obstime=moments, location=here))
-    apart = np.degrees(np.arccos(np.clip(
-        np.sin(np.radians(elevation)) * np.sin(sun.alt.rad)
-        + np.cos(np.radians(elevation)) * np.cos(sun.alt.rad) * np.cos(np.radians(azimuth) - sun.az.rad), -1.0, 1.0)))
+    apart = np.degrees(
+        np.arccos(
+            np.clip(
+                np.sin(np.radians(elevation)) * np.sin(sun.alt.rad)
+                + np.cos(np.radians(elevation)) * np.cos(sun.alt.rad) * np.cos(np.radians(azimuth) - sun.az.rad),
+                -1.0,
+                1.0,
+            )
+        )
+    )
     assert apart.max() < 0.05

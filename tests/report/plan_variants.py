@@ -21,7 +21,7 @@ HOSTILE = {
     "Highwater": "\u202eretawhgiH",
     "Isvarde-A": "{{ 7*7 }} & </script>",
     "Tarrow-A": "צופה-1",
-    "Cape Orrin": "=HYPERLINK(\"x\")",
+    "Cape Orrin": '=HYPERLINK("x")',
 }
 
 
@@ -46,9 +46,7 @@ def renamed(record: PlanRecord, run: Run, names: Mapping[str, str]) -> tuple[Pla
     changed = replace(
         run,
         spacecraft={new(n): c.model_copy(update={"name": new(n)}) for n, c in run.spacecraft.items()},
-        antennas={
-            new(n): a.model_copy(update={"name": new(n), "site": new(a.site)}) for n, a in run.antennas.items()
-        },
+        antennas={new(n): a.model_copy(update={"name": new(n), "site": new(a.site)}) for n, a in run.antennas.items()},
         sites={new(n): s.model_copy(update={"name": new(n)}) for n, s in run.sites.items()},
         orbits=keys(run.orbits),
     )

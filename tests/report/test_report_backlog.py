@@ -26,7 +26,9 @@ def test_it_starts_and_ends_as_the_plan_says(short_plan: PlanRecord) -> None:
 
 
 @given(
-    st.floats(0.0, 1.0), st.floats(0.0, 2.0), st.floats(1.0, 500.0),
+    st.floats(0.0, 1.0),
+    st.floats(0.0, 2.0),
+    st.floats(1.0, 500.0),
     st.lists(st.tuples(st.integers(1, 300), st.integers(1, 200), st.floats(0.0, 5.0)), max_size=6),
 )
 @settings(deadline=None, max_examples=80)
@@ -40,8 +42,12 @@ def test_it_follows_the_objective_own_account(
     horizon = clock + 100
     _, lost, left = follow_storage(horizon, share * capacity, generation, capacity, pieces)
     table = pd.DataFrame(
-        {"first_s": [float(p[0]) for p in pieces], "last_s": [float(p[1]) for p in pieces],
-         "rate_mbps": [8.0 * p[2] for p in pieces]})
+        {
+            "first_s": [float(p[0]) for p in pieces],
+            "last_s": [float(p[1]) for p in pieces],
+            "rate_mbps": [8.0 * p[2] for p in pieces],
+        }
+    )
     entry = {"generated_mb": generation * horizon, "capacity_mb": capacity, "start_mb": share * capacity}
     store = _follow(entry, table if pieces else None, float(horizon))
     assert store.fill_mb[-1] == pytest.approx(left, abs=1e-6)

@@ -14,12 +14,12 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from plan_variants import HOSTILE, multiplied, renamed
 
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.page import write_page
 from passplan.report.tracks import window_tracks
-from plan_variants import HOSTILE, multiplied, renamed
 
 webdriver = pytest.importorskip("selenium.webdriver", reason="selenium is not installed; pip install passplan[test]")
 Keys = pytest.importorskip("selenium.webdriver.common.keys").Keys
@@ -29,8 +29,15 @@ pytestmark = pytest.mark.skipif(
     not (BROWSER and DRIVER), reason="no browser: install chromium and chromium-driver to test the page in one"
 )
 FLAGS = (
-    "--headless", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run", "--disable-background-networking",
-    "--disable-component-update", "--disable-sync", "--window-size=1280,900",
+    "--headless",
+    "--no-sandbox",
+    "--disable-gpu",
+    "--disable-quic",
+    "--no-first-run",
+    "--disable-background-networking",
+    "--disable-component-update",
+    "--disable-sync",
+    "--window-size=1280,900",
 )
 
 
@@ -48,7 +55,10 @@ def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Any]:
 
 @pytest.fixture(scope="module")
 def places(
-    short_plan: PlanRecord, short_run: Run, replanned: PlanRecord, outage_run: Run,
+    short_plan: PlanRecord,
+    short_run: Run,
+    replanned: PlanRecord,
+    outage_run: Run,
     tmp_path_factory: pytest.TempPathFactory,
 ) -> dict[str, Path]:
     """The sample's page, one against an earlier plan, one with hostile names, and one with 300 contacts."""
@@ -58,7 +68,9 @@ def places(
     hostile = replace(hostile, summary={**hostile.summary, "name": name, "warnings": [name]})
     found = {}
     for key, (record, run) in {
-        "plain": (short_plan, short_run), "against": (replanned, outage_run), "hostile": (hostile, hostile_run),
+        "plain": (short_plan, short_run),
+        "against": (replanned, outage_run),
+        "hostile": (hostile, hostile_run),
         "many": multiplied(short_plan, short_run, 3),
     }.items():
         found[key] = folder / f"{key}.html"
@@ -75,8 +87,10 @@ def places(
 @pytest.fixture
 def opened(browser: Any, places: dict[str, Path]) -> Callable[..., Any]:
     def open_page(key: str, width: int = 1280, **media: str) -> Any:
-        browser.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", {
-            "width": width, "height": 900, "deviceScaleFactor": 1, "mobile": width < 500})
+        browser.execute_cdp_cmd(
+            "Emulation.setDeviceMetricsOverride",
+            {"width": width, "height": 900, "deviceScaleFactor": 1, "mobile": width < 500},
+        )
         features = [{"name": k.replace("_", "-"), "value": v} for k, v in media.items()]
         browser.execute_cdp_cmd("Emulation.setEmulatedMedia", {"features": features})
         browser.get("about:blank")
@@ -91,13 +105,17 @@ def _select(page: Any, field: str, label: str) -> None:
     page.execute_script(
         "const f = document.getElementById(arguments[0]);"
         "f.value = [...f.options].find((o) => o.textContent === arguments[1]).value;"
-        "f.dispatchEvent(new Event('change'));", field, label)
+        "f.dispatchEvent(new Event('change'));",
+        field,
+        label,
+    )
 
 
 def _shown_rows(page: Any) -> list[list[str]]:
     rows: list[list[str]] = page.execute_script(
         "return [...document.querySelectorAll('#rows tr:not([hidden])')]"
-        ".map((r) => [r.children[3].textContent, r.children[4].textContent]);")
+        ".map((r) => [r.children[3].textContent, r.children[4].textContent]);"
+    )
     return rows
 
 
@@ -135,7 +153,10 @@ def test_filters_narrow_everything(opened: Callable[..., Any], short_plan: PlanR
     expected = contacts[contacts["spacecraft"] == "Ambril-3"]
     assert [row[0] for row in _shown_rows(page)] == list(expected["antenna"])
     assert page.execute_script("return document.getElementById('count').textContent") == f"{len(expected)} contacts"
-    visible = "return [...document.querySelectorAll('.mark')].filter((m) => m.checkVisibility({visibilityProperty: true})).length"
+    visible = (
+        "return [...document.querySelectorAll('.mark')]"
+        ".filter((m) => m.checkVisibility({visibilityProperty: true})).length"
+    )
     assert page.execute_script(visible) == 2 * len(expected)
     _select(page, "f-a", "Isvarde-A")
     both = expected[expected["antenna"] == "Isvarde-A"]
@@ -144,7 +165,9 @@ def test_filters_narrow_everything(opened: Callable[..., Any], short_plan: PlanR
     _select(page, "f-a", "all")
     _select(page, "f-g", "Port Ellery")
     assert {row[0] for row in _shown_rows(page)} == {"Ellery-A", "Ellery-B"}
-    lanes = "return [...document.querySelectorAll('.lane[data-a]:not([hidden]) strong')].map((n) => n.textContent.trim())"
+    lanes = (
+        "return [...document.querySelectorAll('.lane[data-a]:not([hidden]) strong')].map((n) => n.textContent.trim())"
+    )
     assert page.execute_script(lanes) == ["Ellery-A", "Ellery-B"]
     page.execute_script("document.getElementById('unused').open = true; ")
     _select(page, "f-g", "all")
@@ -163,10 +186,15 @@ def test_a_contact_is_drawn_when_it_is_chosen(opened: Callable[..., Any], short_
         assert row["spacecraft"] in title
         assert row["antenna"] in title
         drawn = page.execute_script(
-            "return ['.panorama .skyline', '.panorama .path-contact', '.chart'].map((q) => document.querySelectorAll(q).length)")
+            "return ['.panorama .skyline', '.panorama .path-contact', '.chart']"
+            ".map((q) => document.querySelectorAll(q).length)"
+        )
         assert drawn[:2] == [1, 1]
         assert drawn[2] >= 1
-        broken = page.execute_script("return [...document.querySelectorAll('#charts [d]')].filter((n) => /NaN|undefined|Infinity/.test(n.getAttribute('d'))).length")
+        broken = page.execute_script(
+            "return [...document.querySelectorAll('#charts [d]')]"
+            ".filter((n) => /NaN|undefined|Infinity/.test(n.getAttribute('d'))).length"
+        )
         assert broken == 0
     assert page.get_log("browser") == []
 
@@ -188,7 +216,9 @@ def test_the_keyboard_reaches_contacts_and_values(opened: Callable[..., Any]) ->
 def test_local_time_is_an_extra_column_and_never_replaces_utc(opened: Callable[..., Any]) -> None:
     page = opened("plain")
     _select(page, "zone", "local time of Port Ellery")
-    head = page.execute_script("return [...document.querySelectorAll('#contacts th')].slice(0, 2).map((h) => h.textContent)")
+    head = page.execute_script(
+        "return [...document.querySelectorAll('#contacts th')].slice(0, 2).map((h) => h.textContent)"
+    )
     assert head == ["Start, UTC", "Start, local time of Port Ellery"]
     row = page.execute_script("return [...document.querySelectorAll('#rows tr')][0].children[1].textContent")
     hour = int(page.execute_script("return document.querySelector('#rows a').textContent").split()[-1][:2])
@@ -217,6 +247,7 @@ def test_it_prints_with_the_draft_mark(opened: Callable[..., Any]) -> None:
     page = opened("plain")
     page.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "print"})
     shown = page.execute_script(
-        "return ['.stamp', '.tools', '.cautions', '#contacts'].map((q) => document.querySelector(q).checkVisibility())")
+        "return ['.stamp', '.tools', '.cautions', '#contacts'].map((q) => document.querySelector(q).checkVisibility())"
+    )
     page.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": ""})
     assert shown == [True, False, True, True]

@@ -7,10 +7,10 @@ from pathlib import Path
 import pandas as pd
 import pytest
 from icalendar import Calendar, Event
+from plan_variants import HOSTILE, renamed
 
 from passplan.planning.record import PlanRecord
 from passplan.report.calendars import calendar, write_calendars
-from plan_variants import HOSTILE, renamed
 
 
 def _events(content: bytes) -> list[Event]:
@@ -28,7 +28,8 @@ def _import(book: dict[str, Event], content: bytes) -> None:
 def _shown(book: dict[str, Event]) -> dict[str, tuple[pd.Timestamp, pd.Timestamp]]:
     return {
         uid: (pd.Timestamp(e.decoded("dtstart")), pd.Timestamp(e.decoded("dtend")))
-        for uid, e in book.items() if str(e["status"]) != "CANCELLED"
+        for uid, e in book.items()
+        if str(e["status"]) != "CANCELLED"
     }
 
 
@@ -75,8 +76,11 @@ def test_a_file_for_each_antenna_and_spacecraft(short_plan: PlanRecord, tmp_path
         assert sorted(parts) == sorted(whole)
 
 
-def test_the_location_is_the_antenna(short_plan: PlanRecord) -> None:
-    assert {str(e["location"]) for e in _events(calendar(short_plan, {"antenna": "Isvarde-A"}))} == {"Isvarde-A"}
+def test_a_file_holds_its_own_and_the_location_is_the_antenna(replanned: PlanRecord, tmp_path: Path) -> None:
+    write_calendars(replanned, tmp_path)
+    events = _events((tmp_path / "antenna" / "Isvarde-A.ics").read_bytes())
+    assert {str(event["location"]) for event in events} == {"Isvarde-A"}
+    assert {str(event["status"]) for event in events} == {"TENTATIVE", "CANCELLED"}
 
 
 def test_an_approved_plan_is_confirmed(short_plan: PlanRecord) -> None:

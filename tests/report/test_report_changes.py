@@ -26,7 +26,8 @@ def test_an_outage_changes_what_it_touches(replanned: PlanRecord, short_plan: Pl
     assert against["plan_id"] == short_plan.summary["plan_id"]
     counts = Counter(replanned.contacts["change"])
     assert {name: counts[name] for name in ("new", "kept", "retimed", "moved")} == {
-        name: n for name, n in against["counts"].items() if name != "dropped"}
+        name: n for name, n in against["counts"].items() if name != "dropped"
+    }
     assert counts["kept"] > 10
     before = set(short_plan.contacts["contact_id"])
     after = set(replanned.contacts["contact_id"])

@@ -57,14 +57,24 @@ def test_the_usable_span_is_the_horizon(messages: dict[str, Ephemeris], short_ru
         assert segment.usable_stop == float(utc_seconds(short_run.end_utc))
 
 
-def test_an_ephemeris_with_a_gap_becomes_segments(messages: dict[str, Ephemeris], short_run: Run, tmp_path: Path) -> None:
+def test_an_ephemeris_with_a_gap_becomes_segments(
+    messages: dict[str, Ephemeris], short_run: Run, tmp_path: Path
+) -> None:
     whole = messages["Ambril-1"]
     (segment,) = whole.segments
     cuts = (slice(0, 200), slice(260, segment.epochs.size))
     parts = tuple(
-        type(segment)(segment.frame, segment.time_system, segment.epochs[cut], segment.positions_km[cut],
-                      segment.velocities_km_s[cut], float(segment.epochs[cut][0]), float(segment.epochs[cut][-1]),
-                      segment.interpolation, segment.interpolation_degree)
+        type(segment)(
+            segment.frame,
+            segment.time_system,
+            segment.epochs[cut],
+            segment.positions_km[cut],
+            segment.velocities_km_s[cut],
+            float(segment.epochs[cut][0]),
+            float(segment.epochs[cut][-1]),
+            segment.interpolation,
+            segment.interpolation_degree,
+        )
         for cut in cuts
     )
     gappy = Ephemeris(whole.object_name, whole.object_id, parts, tmp_path)

@@ -10,8 +10,10 @@ from html.parser import HTMLParser
 import numpy as np
 import pandas as pd
 import pytest
+from plan_variants import HOSTILE, multiplied, renamed
 
 from passplan.inputs.run import Run
+from passplan.link.choice import WindowLink
 from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.page import render_page
@@ -19,8 +21,6 @@ from passplan.report.page.lanes import Day, hours_of
 from passplan.report.page.ribbons import levels, outline
 from passplan.report.page.scale import RateScale, scale_for
 from passplan.report.tracks import WindowTrack
-from passplan.link.choice import WindowLink
-from plan_variants import HOSTILE, multiplied, renamed
 
 
 class _Reader(HTMLParser):
@@ -66,9 +66,19 @@ def reader(page: str) -> _Reader:
 def test_the_page_says_what_a_review_needs(reader: _Reader, short_plan: PlanRecord) -> None:
     text = " ".join(" ".join(reader.text).split())
     summary = short_plan.summary
-    for part in ("Draft", "until a named approval", summary["plan_id"], "no plan can exceed", "Antennas through the day",
-                 "what they hold", "How the antennas are used", "What was not used, and why", *summary["antennas"],
-                 *summary["spacecraft"], *CAUTIONS):
+    for part in (
+        "Draft",
+        "until a named approval",
+        summary["plan_id"],
+        "no plan can exceed",
+        "Antennas through the day",
+        "what they hold",
+        "How the antennas are used",
+        "What was not used, and why",
+        *summary["antennas"],
+        *summary["spacecraft"],
+        *CAUTIONS,
+    ):
         assert part in text, part
 
 
@@ -127,7 +137,10 @@ def test_hostile_names_are_text_and_nothing_else(short_plan: PlanRecord, short_r
     reader = _read(page)
     assert not [tag for tag, _ in reader.tags if tag == "img"]
     text = " ".join(reader.text)
-    for name in (hurt, *(n for n in HOSTILE.values() if n in {*record.summary["spacecraft"], *record.summary["antennas"]})):
+    for name in (
+        hurt,
+        *(n for n in HOSTILE.values() if n in {*record.summary["spacecraft"], *record.summary["antennas"]}),
+    ):
         assert name in text, name
     assert "49 & </script>" not in text
     assert json.loads(reader.data)["spacecraft"] == list(record.summary["spacecraft"])
@@ -150,8 +163,14 @@ def test_three_hundred_contacts_fit_in_three_megabytes(short_plan: PlanRecord, s
 def test_a_plan_without_contacts_has_a_page(short_plan: PlanRecord, short_run: Run) -> None:
     summary = {**short_plan.summary, "contacts": 0, "status": "empty", "gap": None}
     summary["antennas"] = {n: {**a, "contacts": 0, "contact_s": 0.0} for n, a in summary["antennas"].items()}
-    empty = replace(short_plan, summary=summary, windows=short_plan.windows[:0], contacts=short_plan.contacts[:0],
-                    segments=short_plan.segments[:0], unused=short_plan.unused[:0])
+    empty = replace(
+        short_plan,
+        summary=summary,
+        windows=short_plan.windows[:0],
+        contacts=short_plan.contacts[:0],
+        segments=short_plan.segments[:0],
+        unused=short_plan.unused[:0],
+    )
     text = " ".join(_read(render_page(empty, short_run)).text)
     assert "No contact is possible in this horizon." in text
 

@@ -75,6 +75,8 @@ def test_thinning_keeps_the_ends() -> None:
     assert len(thinned(1000, 3)) == 3
 
 
-@pytest.mark.parametrize(("mbps", "text"), [(0.0021, "2.1 kbit/s"), (4.4499, "4.45 Mbit/s"), (142.3, "142 Mbit/s"), (2500.0, "2.5 Gbit/s")])
+@pytest.mark.parametrize(
+    ("mbps", "text"), [(0.0021, "2.1 kbit/s"), (4.4499, "4.45 Mbit/s"), (142.3, "142 Mbit/s"), (2500.0, "2.5 Gbit/s")]
+)
 def test_rates(mbps: float, text: str) -> None:
     assert rate(mbps) == text

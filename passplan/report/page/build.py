@@ -5,6 +5,7 @@ from __future__ import annotations
 import base64
 import hashlib
 from collections.abc import Sequence
+from functools import lru_cache
 from importlib.resources import files
 from pathlib import Path
 from typing import Any
@@ -67,6 +68,7 @@ def write_page(record: PlanRecord, run: Run, path: Path, tracks: Sequence[Window
     path.write_text(render_page(record, run, tracks), encoding="utf-8")
 
 
+@lru_cache(maxsize=1)
 def _environment() -> Environment:
     environment = Environment(
         loader=PackageLoader("passplan.report.page", "assets"),

@@ -13,6 +13,7 @@ from passplan.planning.record import PlanRecord
 from passplan.report.backlog import Backlog
 from passplan.report.page.ribbons import UNIT_S, Mark, Ribbon, Span, joined, levels, outline
 from passplan.report.page.scale import scale_for
+from passplan.report.rows import Row, grouped, rows
 from passplan.report.tracks import WindowTrack
 from passplan.report.words import clock, megabytes
 
@@ -82,32 +83,32 @@ def _ribbons(
     owners = names.antennas if own == "antenna" else names.spacecraft
     numbers = names.antennas if partner == "antenna" else names.spacecraft
     by_window = dict(zip(record.windows["window_id"], tracks, strict=True))
-    windows = {name: rows for name, rows in record.windows.groupby(own)}  # noqa: C416 - keys become plain strings
-    contacts = {name: rows for name, rows in record.contacts.reset_index(drop=True).groupby(own)}  # noqa: C416
-    sent = {name: rows for name, rows in record.segments.groupby("contact_id")}  # noqa: C416
+    windows, contacts = grouped(rows(record.windows), own), grouped(rows(record.contacts), own)
+    sent = grouped(rows(record.segments), "contact_id")
     found = {}
     for name in owners:
-        mine = windows.get(name, record.windows[:0])
         tops: dict[str, float] = {}
-        for other, window in zip(mine[partner], mine["window_id"], strict=True):
-            tops[other] = max(tops.get(other, 0.0), float(by_window[window].rate_mbps.max(initial=0.0)))
+        for window in windows.get(name, ()):
+            top = float(by_window[window["window_id"]].rate_mbps.max(initial=0.0))
+            tops[window[partner]] = max(tops.get(window[partner], 0.0), top)
         scale = scale_for(tops.values())
         ribbon = Ribbon(scale)
         ribbon.sky = joined(
-            (numbers[other], outline(by_window[window], scale))
-            for other, window in zip(mine[partner], mine["window_id"], strict=True)
+            (numbers[window[partner]], outline(by_window[window["window_id"]], scale))
+            for window in windows.get(name, ())
         )
-        used = []
-        taken = contacts.get(name, record.contacts[:0])
-        for row in taken.to_dict("records"):
-            pieces = sent.get(row["contact_id"])
-            spans = [] if pieces is None else list(zip(pieces["start_utc"], pieces["end_utc"], strict=True))
-            if row["window_id"] in by_window:
-                for first, last in spans:
-                    path = outline(by_window[row["window_id"]], scale, day.seconds(first), day.seconds(last))
-                    used.append((numbers[row[partner]], path))
-        ribbon.used = joined(used)
-        ribbon.marks = _marks(taken, day, names, partner)
+        ribbon.used = joined(
+            (
+                numbers[row[partner]],
+                outline(
+                    by_window[row["window_id"]], scale, day.seconds(piece["start_utc"]), day.seconds(piece["end_utc"])
+                ),
+            )
+            for row in contacts.get(name, ())
+            if row["window_id"] in by_window
+            for piece in sent.get(row["contact_id"], ())
+        )
+        ribbon.marks = _marks(contacts.get(name, []), day, names, partner)
         if own == "antenna":
             ribbon.spans = _closures(record.summary["antennas"][name]["closures"], day)
         ribbon.spans += _frozen(record.summary, day)
@@ -115,24 +116,17 @@ def _ribbons(
     return found
 
 
-def _marks(contacts: pd.DataFrame, day: Day, names: Names, partner: str) -> list[Mark]:
-    placed = [day.span(first, last) for first, last in zip(contacts["start_utc"], contacts["end_utc"], strict=True)]
+def _marks(contacts: Sequence[Row], day: Day, names: Names, partner: str) -> list[Mark]:
+    placed = [day.span(row["start_utc"], row["end_utc"]) for row in contacts]
     apart = _APART_OF_A_DAY * 86_400.0 / max(day.horizon_s, 86_400.0)
-    rows = zip(
-        contacts.index.tolist(),
-        contacts.to_dict("records"),
-        placed,
-        levels((left + width / 2 for left, width in placed), apart),
-        strict=True,
-    )
+    heights = levels((left + width / 2 for left, width in placed), apart)
     marks = []
-    for number, row, (left, width), level in rows:
+    for row, (left, width), level in zip(contacts, placed, heights, strict=True):
         key = names.craft_keys[row[partner]] if partner == "spacecraft" else str(names.antennas[row[partner]] + 1)
-        label = (
-            f"{row['spacecraft']} on {row['antenna']}, {clock(row['start_utc'])} to {clock(row['end_utc'])} UTC, "
-            + (megabytes(row["volume_mb"]) if row["service"] != "command" else "command only")
-        )
-        marks.append(Mark(number, left, width, key, level, label, row["origin"], row["change"]))
+        brings = megabytes(row["volume_mb"]) if row["service"] != "command" else "command only"
+        when = f"{clock(row['start_utc'])} to {clock(row['end_utc'])} UTC"
+        label = f"{row['spacecraft']} on {row['antenna']}, {when}, {brings}"
+        marks.append(Mark(row["number"], left, width, key, level, label, row["origin"], row["change"]))
     return marks
 
 

@@ -13,6 +13,7 @@ from passplan.geometry.masks import mask_of
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.page.lanes import Day, Names
+from passplan.report.rows import grouped, rows
 from passplan.report.sun import sun_path
 from passplan.report.tracks import WindowTrack, thinned
 
@@ -65,10 +66,10 @@ def _site(run: Run, name: str, day: Day) -> dict[str, Any]:
 
 def _contacts(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, day: Day) -> list[dict[str, Any]]:
     by_window = dict(zip(record.windows["window_id"], tracks, strict=True))
-    pieces = {name: rows.to_dict("records") for name, rows in record.segments.groupby("contact_id")}
+    pieces = grouped(rows(record.segments), "contact_id")
     most = _SAMPLES if len(record.contacts) <= _MANY else _SAMPLES_OF_MANY
-    rows = []
-    for row in record.contacts.to_dict("records"):
+    entries = []
+    for row in rows(record.contacts):
         entry: dict[str, Any] = {
             "id": row["contact_id"],
             "s": names.spacecraft[row["spacecraft"]],
@@ -95,8 +96,8 @@ def _contacts(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, d
         }
         if row["window_id"] in by_window:
             entry |= _track(by_window[row["window_id"]], row["radio"], row["modcod"], most)
-        rows.append(entry)
-    return rows
+        entries.append(entry)
+    return entries
 
 
 def _track(track: WindowTrack, radio: str, modcod: str, most: int) -> dict[str, Any]:
@@ -118,7 +119,7 @@ def _unused(record: PlanRecord, names: Names, day: Day) -> list[list[Any]]:
     table = record.unused
     first = (table["aos_utc"] - day.start_utc).dt.total_seconds().round().astype("int64")
     last = (table["los_utc"] - day.start_utc).dt.total_seconds().round().astype("int64")
-    rows = zip(
+    listed = zip(
         table["spacecraft"],
         table["antenna"],
         first.tolist(),
@@ -129,7 +130,7 @@ def _unused(record: PlanRecord, names: Names, day: Day) -> list[list[Any]]:
     )
     return [
         [names.spacecraft[s], names.antennas[a], t0, t1, reason, detail]
-        for s, a, t0, t1, reason, detail in rows
+        for s, a, t0, t1, reason, detail in listed
         if s in names.spacecraft and a in names.antennas
     ]
 
