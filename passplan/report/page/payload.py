@@ -20,6 +20,7 @@ from passplan.report.tracks import WindowTrack, thinned
 # Enough that a pass bends smoothly on a wide screen, and 3 000 contacts still load.
 _SAMPLES, _SAMPLES_OF_MANY, _MANY = 56, 28, 1_000
 _SUN_STEP_S = 1_200
+_SUN_REACH_S = 43_200
 
 
 def payload(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack], names: Names) -> dict[str, Any]:
@@ -50,15 +51,17 @@ def _antenna(run: Run, name: str, entry: Mapping[str, Any], names: Names) -> dic
 
 
 def _site(run: Run, name: str, day: Day) -> dict[str, Any]:
-    """A site's zone, and where the sun stands every 20 minutes: azimuth and elevation in turn."""
+    """A site's zone, and where the sun stands every ``step`` seconds from ``first`` on: azimuth, elevation in turn."""
     if name not in run.sites:
         return {"name": name, "zone": None, "sun": []}
-    count = int(day.horizon_s // _SUN_STEP_S) + 2
-    times = day.start_utc.to_datetime64() + (np.arange(count) * _SUN_STEP_S * 1000).astype("timedelta64[ms]")
+    # Half a day more on both sides: the drawing shows the sun's way around any contact.
+    seconds = np.arange(-_SUN_REACH_S, day.horizon_s + _SUN_REACH_S + _SUN_STEP_S, _SUN_STEP_S)
+    times = day.start_utc.to_datetime64() + (seconds * 1000).astype("timedelta64[ms]")
     azimuth, elevation = sun_path(run.sites[name], times)
     return {
         "name": name,
         "zone": run.sites[name].time_zone,
+        "first": -_SUN_REACH_S,
         "step": _SUN_STEP_S,
         "sun": _round(np.column_stack([azimuth, elevation]).ravel()),
     }

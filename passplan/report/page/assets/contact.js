@@ -5,7 +5,7 @@
     reading = Math.min(Math.max(t, c.t[0]), c.t[c.t.length - 1]);
     drawings.forEach((one) => one.show(reading));
     const k = c.t.findLastIndex((time) => time <= reading + 0.01), margin = at(c.t, c.db, reading);
-    $("readout").textContent = `${utc(reading)} UTC · azimuth ${azimuthAt(c, reading).toFixed(1)}° · elevation ${at(c.t, c.el, reading).toFixed(1)}° · ` +
+    $("readout").textContent = `${utc(reading)} UTC · azimuth ${pointing(c, reading)[0].toFixed(1)}° · elevation ${pointing(c, reading)[1].toFixed(1)}° · ` +
       `range ${at(c.t, c.km, reading).toFixed(0)} km` + (isNaN(margin) ? "" : ` · margin ${margin.toFixed(1)} dB`) +
       (c.service === "command" ? "" : ` · link allows ${rateWords(c.rate[Math.max(k, 0)])}`);
   }
@@ -46,9 +46,12 @@
     $("contact-title").textContent = `\u2068${data.spacecraft[c.s]}\u2069 on \u2068${antenna.name}\u2069, ${day(c.from)} ${utc(c.from)} to ${utc(c.to)} UTC`;
     const list = $("contact-facts");
     list.textContent = "";
-    fact(list, "Contact", c.id);
+    $("contact-id").textContent = c.id;
     fact(list, "Site", data.sites[antenna.site].name);
-    if (zone) fact(list, zoneLabel, local(c.from, { hour: "2-digit", minute: "2-digit", second: "2-digit" }) + " to " + local(c.to, { hour: "2-digit", minute: "2-digit", second: "2-digit" }));
+    if (zone) {
+      const clock = { hour: "2-digit", minute: "2-digit", second: "2-digit" };
+      fact(list, "Local", `${local(c.from, clock)} to ${local(c.to, clock)}, ${zoneLabel}`);
+    }
     fact(list, "Lasts", ((c.to - c.from) / 60).toFixed(1) + " min");
     fact(list, "Service", c.service === "both" ? "downlink and command" : c.service);
     fact(list, "Radio", `${c.radio}, ${c.mhz} MHz ${c.polarisation}`);

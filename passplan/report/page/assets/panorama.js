@@ -14,14 +14,20 @@
     const part = Math.min(Math.max((x - xs[i - 1]) / (xs[i] - xs[i - 1] || 1), 0), 1);
     return ys[i - 1] + part * (ys[i] - ys[i - 1]);
   }
-  // Azimuths go round: the shorter way from one sample to the next.
-  function azimuthAt(c, t) {
-    const turned = c.turned || (c.turned = c.az.reduce((out, az, i) => {
-      out.push(i ? out[i - 1] + ((az - out[i - 1]) % 360 + 540) % 360 - 180 : az);
-      return out;
-    }, []));
-    return ((at(c.t, turned, t) % 360) + 360) % 360;
+  // Between samples along the great circle: near the zenith azimuths swing far, directions do not.
+  function pointing(c, t) {
+    let i = 1;
+    while (i < c.t.length - 1 && c.t[i] < t) i++;
+    if (c.t.length < 2) return [c.az[0], c.el[0]];
+    const part = Math.min(Math.max((t - c.t[i - 1]) / (c.t[i] - c.t[i - 1] || 1), 0), 1);
+    const [a, b] = [i - 1, i].map((k) => {
+      const az = c.az[k] * Math.PI / 180, el = c.el[k] * Math.PI / 180;
+      return [Math.cos(el) * Math.sin(az), Math.cos(el) * Math.cos(az), Math.sin(el)];
+    });
+    const [east, north, up] = a.map((value, k) => value + part * (b[k] - value));
+    return [((Math.atan2(east, north) * 180 / Math.PI) + 360) % 360, Math.atan2(up, Math.hypot(east, north)) * 180 / Math.PI];
   }
+  const azimuthAt = (c, t) => pointing(c, t)[0];
   function maskAt(mask, azimuth) {
     for (let i = 0; i + 1 < mask.length; i += 2) {
       const [a, x] = mask[i], [b, y] = mask[i + 1];
@@ -39,7 +45,8 @@
     const x = (az) => box.left + span * ((((az - centre + 180) % 360) + 360) % 360) / 360;
     const y = (el) => box.bottom - tall * Math.max(el, 0) / 90;
     const sunAt = (t) => {
-      const i = Math.min(Math.max(Math.floor(t / site.step), 0), site.sun.length / 2 - 2), part = t / site.step - i;
+      const i = Math.min(Math.max(Math.floor((t - site.first) / site.step), 0), site.sun.length / 2 - 2);
+      const part = (t - site.first) / site.step - i;
       const turn = ((site.sun[2 * i + 2] - site.sun[2 * i]) % 360 + 540) % 360 - 180;
       return [site.sun[2 * i] + part * turn, site.sun[2 * i + 1] + part * (site.sun[2 * i + 3] - site.sun[2 * i + 1])];
     };
@@ -68,7 +75,6 @@
       const points = [];
       const drawSun = () => { if (points.length > 1) line(points.splice(0), "sun-path"); else points.length = 0; };
       for (let t = middle - 43200; t <= middle + 43200; t += 900) {
-        if (t < 0 || t > data.horizon) continue;
         const p = sunAt(t);
         if (p[1] > 0) points.push(p); else drawSun();
       }
@@ -87,9 +93,8 @@
     }
     const inside = (from, to) => {
       const times = [from, ...c.t.filter((t) => t > from && t < to), to];
-      // Between thinned samples a steep pass swings far in azimuth, so the curve is cut finer there.
-      return times.flatMap((t, i) => i ? [0.25, 0.5, 0.75, 1].map((p) => times[i - 1] + p * (t - times[i - 1])) : [t])
-        .map((t) => [azimuthAt(c, t), at(c.t, c.el, t)]);
+      return times.flatMap((t, i) => i ? [1, 2, 3, 4, 5, 6, 7, 8].map((p) => times[i - 1] + p / 8 * (t - times[i - 1])) : [t])
+        .map((t) => pointing(c, t));
     };
     const first = c.t[0], last = c.t[c.t.length - 1];
     line(inside(first, last), "path-all");
@@ -97,7 +102,7 @@
     for (const [a, b] of c.keyholes || []) line(inside(a, b), "path-keyhole");
     const narrow = span < 480;
     const ends = [[Math.max(c.from, first), "from "], [Math.min(c.to, last), "to "]]
-      .map(([t, word]) => ({ px: x(azimuthAt(c, t)), py: y(at(c.t, c.el, t)), text: word + utc(t, !narrow) }))
+      .map(([t, word]) => ({ px: x(azimuthAt(c, t)), py: y(pointing(c, t)[1]), text: word + utc(t, !narrow) }))
       .sort((a, b) => a.px - b.px);
     ends.forEach((end, i) => {
       make("circle", { cx: end.px, cy: end.py, r: 4.5, class: "dot" }, svg);
@@ -108,5 +113,5 @@
       make("text", { x: end.px + (right ? 9 : -9), y: Math.max(end.py - lift, box.top + 10), "text-anchor": right ? "start" : "end", class: "note strong" }, svg, end.text);
     });
     const cursor = make("circle", { r: 6, class: "cursor-dot", visibility: "hidden" }, svg);
-    return { svg, show: (t) => { cursor.setAttribute("visibility", "visible"); cursor.setAttribute("cx", x(azimuthAt(c, t))); cursor.setAttribute("cy", y(at(c.t, c.el, t))); } };
+    return { svg, show: (t) => { cursor.setAttribute("visibility", "visible"); cursor.setAttribute("cx", x(azimuthAt(c, t))); cursor.setAttribute("cy", y(pointing(c, t)[1])); } };
   }
