@@ -11,6 +11,9 @@ import numpy as np
 from passplan.geometry.timescale import Floats
 from passplan.inputs.ground import Antenna
 
+# Points closer than this in azimuth make a step.
+_STEP_DEG = 1e-9
+
 
 @dataclass(frozen=True)
 class Mask:
@@ -61,7 +64,7 @@ def mask_of(antenna: Antenna) -> Mask:
     points = _wrapped(sorted(antenna.mask, key=lambda point: point[0]))
     pieces: list[tuple[float, float, float, float]] = []
     for (a, x), (b, y) in pairwise(points):
-        if b <= a:
+        if b - a < _STEP_DEG:
             continue
         if (x - floor) * (y - floor) < 0.0:
             turn = a + (b - a) * (floor - x) / (y - x)

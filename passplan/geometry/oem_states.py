@@ -9,6 +9,9 @@ from passplan.geometry.frames import INERTIAL_FRAMES, inertial_to_itrf, teme_to_
 from passplan.geometry.timescale import Floats, system_minus_utc_s
 from passplan.inputs.ephemeris import Ephemeris, EphemerisSegment
 
+# Spans are known to the resolution of utc_s, so their ends are taken with a microsecond's grace.
+_EDGE_S = 1e-6
+
 
 def segment_span(segment: EphemerisSegment) -> tuple[float, float]:
     """First and last ``utc_s`` that the segment answers for."""
@@ -22,7 +25,7 @@ def segment_span(segment: EphemerisSegment) -> tuple[float, float]:
 
 
 def segment_itrf(segment: EphemerisSegment, utc_s: Floats) -> tuple[Floats, Floats]:
-    """Earth-fixed position (n, 3) in km and velocity in km/s; NaN outside the segment's usable span.
+    """Earth-fixed position (n, 3) in km and velocity in km/s; NaN more than a microsecond outside the usable span.
 
     Frames: ICRF, GCRF and EME2000 (IAU 2000A by Skyfield), TEME (turned by GMST), and ITRF realisations,
     taken as the Earth-fixed frame itself. The reader refuses all others.
@@ -30,7 +33,7 @@ def segment_itrf(segment: EphemerisSegment, utc_s: Floats) -> tuple[Floats, Floa
     low, high = segment_span(segment)
     positions = np.full((utc_s.size, 3), np.nan)
     velocities = np.full((utc_s.size, 3), np.nan)
-    inside = np.flatnonzero((utc_s >= low) & (utc_s <= high))
+    inside = np.flatnonzero((utc_s >= low - _EDGE_S) & (utc_s <= high + _EDGE_S))
     if inside.size:
         times = utc_s[inside]
         own = times + system_minus_utc_s(segment.time_system, times)
@@ -49,7 +52,7 @@ def ephemeris_itrf(ephemeris: Ephemeris, utc_s: Floats) -> tuple[Floats, Floats]
     velocities = np.full((utc_s.size, 3), np.nan)
     for segment in ephemeris.segments:
         low, high = segment_span(segment)
-        inside = np.flatnonzero((utc_s >= low) & (utc_s <= high))
+        inside = np.flatnonzero((utc_s >= low - _EDGE_S) & (utc_s <= high + _EDGE_S))
         if inside.size:
             positions[inside], velocities[inside] = segment_itrf(segment, utc_s[inside])
     return positions, velocities

@@ -6,8 +6,6 @@ ours gain nothing from them, and on a busy machine they wait for each other: thr
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
 import numpy as np
 
 from passplan.geometry.timescale import Floats
@@ -15,16 +13,15 @@ from passplan.geometry.timescale import Floats
 _MULTIPLICATIONS = 2**18
 
 
-def pieces(rows: int, inner: int, width: int) -> Iterator[slice]:
-    """Column ranges of a (rows, inner) @ (inner, width) product that are each small enough."""
-    step = max(1, _MULTIPLICATIONS // (rows * inner))
-    for at in range(0, width, step):
-        yield slice(at, at + step)
-
-
 def product(left: Floats, right: Floats) -> Floats:
-    """``left @ right`` for a small (m, k) and a wide (k, n) array."""
-    result = np.empty((left.shape[0], right.shape[1]))
-    for piece in pieces(left.shape[0], left.shape[1], right.shape[1]):
-        np.matmul(left, right[:, piece], out=result[:, piece])
+    """``left @ right`` for a small (m, k) and a wide (k, n) array, or for a tall (n, k) and a small (k, m) one."""
+    (rows, inner), columns = left.shape, right.shape[1]
+    result = np.empty((rows, columns))
+    step = max(1, _MULTIPLICATIONS // max(1, min(rows, columns) * inner))
+    for at in range(0, max(rows, columns), step):
+        piece = slice(at, at + step)
+        if columns >= rows:
+            np.matmul(left, right[:, piece], out=result[:, piece])
+        else:
+            np.matmul(left[piece], right, out=result[piece])
     return result

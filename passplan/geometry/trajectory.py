@@ -8,9 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from passplan.geometry.frames import turn_about_z
 from passplan.geometry.oem_states import ephemeris_itrf, segment_itrf, segment_span
-from passplan.geometry.regimes import Regime, regime_of
+from passplan.geometry.regimes import ALWAYS_S, Regime, regime_of
 from passplan.geometry.sgp4_states import sgp4_itrf, sgp4_span, sgp4_teme_many
 from passplan.geometry.timescale import Floats, sidereal_angle_rad, utc_seconds
 from passplan.inputs.elements.model import ElementSet
@@ -18,7 +17,7 @@ from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.run import OrbitSource
 
 # Samples per block and antenna set: small enough that the work arrays stay in the processor's cache.
-_BLOCK_SAMPLES = 400_000
+_BLOCK_SAMPLES = 1_000_000
 # Sources with edges (decay, ephemeris spans) are sampled this finely, so that stencils may lean to one side.
 _EDGE_STEP_S = 30.0
 _EDGE_POINTS = 25
@@ -27,7 +26,7 @@ _EPHEMERIS_REACH_S = 2.5 * 86_400.0
 
 @dataclass(frozen=True)
 class Block:
-    """Earth-fixed positions (objects, times, 3) in km on the even grid ``start_s + k step_s``.
+    """Earth-fixed positions (3, objects, times) in km on the even grid ``start_s + k step_s``.
 
     ``objects`` are indices into the list of spacecraft. Nothing is known of an object outside its grid.
     """
@@ -50,14 +49,16 @@ def states_itrf(source: OrbitSource, utc_s: Floats) -> tuple[Floats, Floats]:
 
 def blocks(orbits: Mapping[str, OrbitSource], start_s: float, end_s: float, antennas: int) -> Iterator[Block]:
     """All objects on grids that cover the horizon and its reach; whatever fails or ends early apart."""
-    groups: dict[Regime, list[tuple[int, ElementSet]]] = {}
+    groups: dict[tuple[float, bool], list[tuple[int, ElementSet, float]]] = {}
     for index, source in enumerate(orbits.values()):
         if isinstance(source, Ephemeris):
             yield from _ephemeris_blocks(index, source, start_s, end_s)
         else:
-            groups.setdefault(regime_of(source.satrec), []).append((index, source))
-    for kind, members in groups.items():
-        yield from _element_blocks(kind, members, start_s, end_s, antennas)
+            kind = regime_of(source.satrec)
+            groups.setdefault((kind.step_s, kind.reach_s > ALWAYS_S), []).append((index, source, kind.reach_s))
+    for (step_s, _), group in groups.items():
+        reach_s = max(reach for _, _, reach in group)
+        yield from _element_blocks(Regime(step_s, reach_s), [entry[:2] for entry in group], start_s, end_s, antennas)
 
 
 def _element_blocks(
@@ -73,8 +74,8 @@ def _element_blocks(
         part = members[at : at + share]
         teme, failed = sgp4_teme_many([source.satrec for _, source in part], times)
         whole = np.asarray(~failed.any(axis=1))
-        fixed = turn_about_z(teme if whole.all() else teme[whole], cosine, sine)
-        if fixed.shape[0]:
+        fixed = _turned(teme if whole.all() else teme[whole], cosine, sine)
+        if fixed.shape[1]:
             yield Block(np.array([i for (i, _), good in zip(part, whole, strict=True) if good]), times[0], step, fixed)
         for (index, source), good in zip(part, whole, strict=True):
             if not good:
@@ -86,8 +87,8 @@ def _failing_block(index: int, source: ElementSet, start_s: float, end_s: float)
     epoch_s = float(utc_seconds(source.epoch_utc))
     low, high = sgp4_span(source.satrec, epoch_s, start_s, end_s)
     if high - low >= 1.0:
-        grid = _edge_grid(low, high)
-        yield Block(np.array([index]), low, grid[1] - grid[0], sgp4_itrf(source.satrec, grid)[0][None])
+        grid, step = _edge_grid(low, high)
+        yield Block(np.array([index]), low, step, _components(sgp4_itrf(source.satrec, grid)[0]))
 
 
 def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: float) -> Iterator[Block]:
@@ -95,10 +96,27 @@ def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: floa
         first, last = segment_span(segment)
         low, high = max(first, start_s - _EPHEMERIS_REACH_S), min(last, end_s + _EPHEMERIS_REACH_S)
         if high - low >= 1.0:
-            grid = _edge_grid(low, high)
-            positions = segment_itrf(segment, np.clip(grid, low, high))[0]
-            yield Block(np.array([index]), low, grid[1] - grid[0], positions[None])
+            grid, step = _edge_grid(low, high)
+            positions = segment_itrf(segment, grid)[0]
+            yield Block(np.array([index]), low, step, _components(positions))
 
 
-def _edge_grid(low: float, high: float) -> Floats:
-    return np.linspace(low, high, max(_EDGE_POINTS, int(np.ceil((high - low) / _EDGE_STEP_S)) + 1))
+def _turned(teme_km: Floats, cosine: Floats, sine: Floats) -> Floats:
+    """Earth-fixed components (3, objects, times) of TEME positions (objects, times, 3), for one angle per time."""
+    x, y, z = (teme_km[:, :, axis] for axis in range(3))
+    fixed = np.empty((3, *teme_km.shape[:2]))
+    np.add(cosine * x, sine * y, out=fixed[0])
+    np.subtract(cosine * y, sine * x, out=fixed[1])
+    fixed[2] = z
+    return fixed
+
+
+def _components(positions_km: Floats) -> Floats:
+    """One object's positions (times, 3) in the layout of a block."""
+    return np.ascontiguousarray(positions_km.T)[:, None, :]
+
+
+def _edge_grid(low: float, high: float) -> tuple[Floats, float]:
+    """Times from ``low`` to ``high``, both among them, and their step."""
+    count = max(_EDGE_POINTS, int(np.ceil((high - low) / _EDGE_STEP_S)) + 1)
+    return np.linspace(low, high, count), (high - low) / (count - 1)

@@ -28,7 +28,8 @@ def tidy(problem: Problem, terms: Terms, chosen: Iterable[int]) -> list[int]:
     # Shortest first: of two contacts of which either could go, the longer one is the better to keep.
     for o in sorted(kept, key=lambda o: (int(options.end_s[o] - options.start_s[o]), o)):
         craft = options.spacecraft[o]
-        others = sorted((x for x in kept if x != o and options.spacecraft[x] == craft), key=lambda x: int(options.start_s[x]))
+        others = [x for x in kept if x != o and options.spacecraft[x] == craft]
+        others.sort(key=lambda x: int(options.start_s[x]))
         if gain_of(problem, maps, others, o) > 0.0:
             continue
         without = [x for x in kept if x != o]
