@@ -31,10 +31,12 @@ class DirectoryError(PassplanError):
     exit_code = 7
 
 
-def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:
+def write_plan(record: PlanRecord, out: Path, *, replace: bool = False, run: Run | None = None) -> Path:
     """Write ``record`` to the new directory ``out`` and return it.
 
-    Beside the tables and the inputs stands the page (``report.html``), made from what the directory holds.
+    Beside the tables and the inputs stands the page (``report.html``). It is made from what the directory
+    holds; where that does not give the run again, because it was altered in memory, pass it as ``run``, or
+    there is no page.
     Everything is written beside ``out`` first and then renamed, so that no half-written plan is ever
     seen. An ``out`` that exists is refused unless ``replace`` is true and it is a plan directory.
     Raises :class:`DirectoryError`.
@@ -43,7 +45,9 @@ def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:
     check_free(out, replace=replace)
     with new_directory(out) as made:
         _fill(record, made)
-        write_page(record, stored_run(made, record), made / PAGE)
+        behind = run or _run_again(made, record)
+        if behind is not None:
+            write_page(record, behind, made / PAGE)
     return out
 
 
@@ -121,6 +125,16 @@ def stored_run(directory: Path, record: PlanRecord) -> Run:
     """The run that a plan directory was made from, loaded from the inputs that it carries."""
     config, stored = stored_config(directory, record.summary)
     return load_run(config, start=datetime.fromisoformat(record.summary["horizon_start_utc"]), stored=stored)
+
+
+def _run_again(made: Path, record: PlanRecord) -> Run | None:
+    """The run from the stored inputs, or None where they are not those that the plan's names come from."""
+    try:
+        run = stored_run(made, record)
+    except PassplanError:
+        return None
+    known = set(record.summary["spacecraft"]) <= set(run.orbits) and set(record.summary["antennas"]) <= set(run.antennas)
+    return run if known else None
 
 
 def _fill(record: PlanRecord, made: Path) -> None:

@@ -12,7 +12,7 @@ from passplan.inputs.errors import InputError, Problem
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.calendars import write_calendars
-from passplan.report.directory import DirectoryError, new_directory
+from passplan.report.directory import DirectoryError, new_directory, read_plan, stored_run
 from passplan.report.ephemerides import write_ephemerides
 from passplan.report.expiry import settle_expiry
 from passplan.report.page import write_page
@@ -66,6 +66,18 @@ FILES: dict[str, tuple[str, Callable[[Wanted, Path], object]]] = {
 }
 """Kinds that are one file."""
 KINDS = (*FOLDERS, *FILES)
+
+
+def export_plan(directory: str | Path, kind: str, out: str | Path | None = None) -> Path:
+    """Write one kind of a plan directory, as ``passplan export DIR --as KIND`` does, and return where.
+
+    ``kind`` is one of ``KINDS``; ValueError where it is not. Else as :func:`export`.
+    """
+    if kind not in KINDS:
+        raise ValueError(f"kind {kind!r} is not one of {', '.join(KINDS)}")
+    record = read_plan(Path(directory))
+    wanted = Wanted(record, stored_run(Path(directory), record), Path(directory))
+    return export(kind, wanted, None if out is None else Path(out))
 
 
 def draw(wanted: Wanted, path: Path) -> None:

@@ -9,6 +9,7 @@ from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
+from plan_variants import renamed
 
 from passplan.inputs.load import load_run
 from passplan.inputs.run import Run
@@ -144,3 +145,12 @@ def test_changed_inputs_are_named(short_plan: PlanRecord) -> None:
     assert lines[0].startswith("../sample_fleet/fleet.toml: changed")
     assert "elements.json" in lines[1]
     assert len(lines) == 2
+
+
+def test_a_run_altered_in_memory_has_its_page_when_it_is_given(
+    short_plan: PlanRecord, short_run: Run, tmp_path: Path
+) -> None:
+    record, run = renamed(short_plan, short_run, {"Isvarde-A": "Isvarde-Z"})
+    assert not (write_plan(record, tmp_path / "without") / "report.html").exists()
+    page = write_plan(record, tmp_path / "with", run=run) / "report.html"
+    assert "Isvarde-Z" in page.read_text(encoding="utf-8")

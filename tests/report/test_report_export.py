@@ -14,6 +14,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from plan_variants import HOSTILE, renamed
 
+import passplan
 from passplan.cli.export import Kind
 from passplan.inputs.errors import InputError
 from passplan.inputs.run import Run
@@ -156,3 +157,10 @@ def test_file_names_are_safe_and_never_alike(names: list[str]) -> None:
 def test_json_has_null_for_nothing(short_plan: PlanRecord, tmp_path: Path) -> None:
     write_json(short_plan, tmp_path / "t.json")
     assert "NaN" not in (tmp_path / "t.json").read_text(encoding="utf-8")
+
+
+def test_a_notebook_exports_in_one_line(written: Path, tmp_path: Path) -> None:
+    place = passplan.export_plan(written, "calendar", tmp_path / "ics")
+    assert (place / "all.ics").is_file()
+    with pytest.raises(ValueError, match="one of csv"):
+        passplan.export_plan(written, "tapes")
