@@ -133,8 +133,8 @@ def _run_again(made: Path, record: PlanRecord) -> Run | None:
         run = stored_run(made, record)
     except PassplanError:
         return None
-    known = set(record.summary["spacecraft"]) <= set(run.orbits) and set(record.summary["antennas"]) <= set(run.antennas)
-    return run if known else None
+    named = (("spacecraft", run.orbits), ("antennas", run.antennas))
+    return run if all(set(record.summary[key]) <= set(known) for key, known in named) else None
 
 
 def _fill(record: PlanRecord, made: Path) -> None:

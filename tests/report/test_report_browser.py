@@ -177,6 +177,15 @@ def test_filters_narrow_everything(opened: Callable[..., Any], short_plan: PlanR
     assert page.execute_script("return document.querySelectorAll('#unused-rows tr').length") == len(short_plan.unused)
 
 
+def test_filters_reach_the_list_of_dropped_contacts(opened: Callable[..., Any], replanned: PlanRecord) -> None:
+    page = opened("against")
+    gone = "return [...document.querySelectorAll('tr.gone:not([hidden])')].length"
+    dropped = replanned.summary["against"]["dropped"]
+    assert page.execute_script(gone) == len(dropped)
+    _select(page, "f-s", dropped[0]["spacecraft"])
+    assert page.execute_script(gone) == sum(row["spacecraft"] == dropped[0]["spacecraft"] for row in dropped)
+
+
 def test_a_contact_is_drawn_when_it_is_chosen(opened: Callable[..., Any], short_plan: PlanRecord) -> None:
     page = opened("plain")
     for number in (0, len(short_plan.contacts) - 1):
@@ -210,7 +219,12 @@ def test_the_keyboard_reaches_contacts_and_values(opened: Callable[..., Any]) ->
     assert page.execute_script("return location.hash") == f"#c{focused}"
     page.execute_script("document.getElementById('charts').focus()")
     page.switch_to.active_element.send_keys(Keys.ARROW_RIGHT)
-    assert "azimuth" in page.execute_script("return document.getElementById('readout').textContent")
+    readout = "return document.getElementById('readout').textContent"
+    assert "azimuth" in page.execute_script(readout)
+    page.execute_script("dispatchEvent(new Event('resize'))")
+    assert "azimuth" in page.execute_script(readout)
+    page.execute_script("document.getElementById('after').click()")
+    assert "azimuth" not in page.execute_script(readout)
 
 
 def test_local_time_is_an_extra_column_and_never_replaces_utc(opened: Callable[..., Any]) -> None:

@@ -165,7 +165,9 @@ def test_keys() -> None:
     assert set(spacecraft_keys([f"s{i}" for i in range(63)]).values()) == {"*"}
 
 
-@pytest.mark.parametrize(("volume_mb", "text"), [(0.04, "0.0 MB"), (999.94, "999.9 MB"), (12_345, "12.35 GB"), (2e6, "2.00 TB")])
+@pytest.mark.parametrize(
+    ("volume_mb", "text"), [(0.04, "0.0 MB"), (999.94, "999.9 MB"), (12_345, "12.35 GB"), (2e6, "2.00 TB")]
+)
 def test_volumes(volume_mb: float, text: str) -> None:
     assert megabytes(volume_mb) == text
 

@@ -1,8 +1,10 @@
   // ---- the contact -------------------------------------------------------------------------------------------
-  let drawings = [], reading = 0;
+  const hint = $("readout").textContent;
+  let drawings = [], reading = 0, pointed = false;
   function read(t) {
     const c = data.contacts[chosen];
     reading = Math.min(Math.max(t, c.t[0]), c.t[c.t.length - 1]);
+    pointed = true;
     drawings.forEach((one) => one.show(reading));
     const k = c.t.findLastIndex((time) => time <= reading + 0.01), margin = at(c.t, c.db, reading);
     $("readout").textContent = `${utc(reading)} UTC · azimuth ${pointing(c, reading)[0].toFixed(1)}° · elevation ${pointing(c, reading)[1].toFixed(1)}° · ` +
@@ -26,7 +28,7 @@
         read(one.time((event.clientX - frame.left) * width / frame.width));
       });
     });
-    reading = (c.from + c.to) / 2;
+    if (pointed) read(reading); else reading = (c.from + c.to) / 2;
   }
   function fact(list, name, value) {
     if (value === "" || value === null || value === undefined) return;
@@ -39,6 +41,7 @@
   function choose(i, move) {
     if (!(i >= 0 && i < data.contacts.length)) return;
     const c = data.contacts[i], antenna = data.antennas[c.a];
+    if (i !== chosen) { pointed = false; $("readout").textContent = hint; }
     chosen = i;
     $("contact").hidden = false;
     all(".chosen").forEach((node) => node.classList.remove("chosen"));

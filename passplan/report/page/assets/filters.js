@@ -1,7 +1,7 @@
   // ---- filters -----------------------------------------------------------------------------------------------
   const wanted = (id) => $(id).value === "" ? null : Number($(id).value);
   function fits(s, a, want) {
-    return (want.s === null || s === want.s) && (want.a === null || a === want.a) && (want.g === null || data.antennas[a].site === want.g);
+    return (want.s === null || s === want.s) && (want.a === null || a === want.a) && (want.g === null || (a >= 0 && data.antennas[a].site === want.g));
   }
   function filter() {
     const want = { s: wanted("f-s"), a: wanted("f-a"), g: wanted("f-g") };
@@ -17,6 +17,7 @@
     all(".lane[data-a] path[data-s]").forEach((path) => path.classList.toggle("off", want.s !== null && Number(path.dataset.s) !== want.s));
     all(".lane[data-s] path[data-a]").forEach((path) => path.classList.toggle("off", !fits(want.s, Number(path.dataset.a), want)));
     all(".bars tr[data-a]").forEach((row) => { row.hidden = !fits(want.s, Number(row.dataset.a), want); });
+    all("tr.gone").forEach((row) => { row.hidden = !fits(Number(row.dataset.s), Number(row.dataset.a), want); });
     $("count").textContent = count + (count === 1 ? " contact" : " contacts");
     listUnused(true);
   }
