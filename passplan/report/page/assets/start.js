@@ -2,5 +2,5 @@
   if (data.contacts.length) {
     const asked = /^#c(\d+)$/.exec(location.hash);
     const best = data.contacts.reduce((top, c, i) => (c.t && c.mb > data.contacts[top].mb ? i : top), 0);
-    choose(asked ? Number(asked[1]) : best, false);
+    choose(asked && asked[1] < data.contacts.length ? Number(asked[1]) : best, false);
   }
