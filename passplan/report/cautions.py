@@ -3,8 +3,8 @@
 CAUTIONS = (
     "A planning aid, not permission to transmit: an authorised person approves each contact under the station's "
     "licence and frequency coordination.",
-    "Antennas move without warning and transmitting antennas radiate: site interlocks, local rules and the people "
-    "on site decide.",
+    "Near a transmitting antenna there is radio-frequency exposure, and antennas move without warning: site "
+    "interlocks, local rules and the people on site decide.",
     "Predictions from element sets age; check them against fresh sets before use. Gas attenuation is a mean "
     "atmosphere, not a forecast, and rain is not yet counted.",
 )
