@@ -20,7 +20,8 @@ import numpy as np
 from passplan.planning.problem import Floats, Integers
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays
-from passplan.planning.search.schedule import Work, best_schedule, make_work, worth_of
+from passplan.planning.search.labels import Work, make_work
+from passplan.planning.search.schedule import best_schedule, worth_of
 
 _FIRST_STEP = 0.05
 _MEAN_MEMORY = 0.8

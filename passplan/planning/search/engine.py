@@ -23,8 +23,9 @@ from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import BoundSearch, Sweeper, option_prices
 from passplan.planning.search.fleetarrays import FleetArrays, find_clashes, fleet_arrays
+from passplan.planning.search.labels import make_work
 from passplan.planning.search.rebuild import MOST_CONTACTS, rebuild
-from passplan.planning.search.schedule import make_work, worth_of
+from passplan.planning.search.schedule import worth_of
 
 # A round is about this many options looked at: some tenths of a second.
 _ROUND_OPTIONS = 400_000

@@ -14,7 +14,8 @@ import numpy as np
 from passplan.planning.problem import Floats, Integers
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays
-from passplan.planning.search.schedule import Work, best_schedule, clashes, worth_of
+from passplan.planning.search.labels import Work
+from passplan.planning.search.schedule import best_schedule, clashes, worth_of
 
 # A spacecraft has at most this many contacts; a schedule of more is refused.
 MOST_CONTACTS = 1_024
