@@ -72,7 +72,7 @@ def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, second
             time_limit=dt.timedelta(seconds=left_s), random_seed=limits.seed, relative_gap_tolerance=gap)
         try:
             result = mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters)
-        except Exception:  # noqa: BLE001 - the solver's own errors come in no common type
+        except Exception:  # the errors of the solvers share no type
             # HiGHS gives up on a sound model now and then (kError); the next one takes over.
             continue
         return _answer(result, model)
