@@ -17,6 +17,7 @@ earlier plan, a window takes over the name it had there.
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 
 import numpy as np
 import pandas as pd
@@ -61,26 +62,18 @@ def window_ids(
 
     All windows of a pass must be given, those outside the planning horizon too.
     """
-    kinds, which = np.unique(slot, return_inverse=True)
+    which, kinds = pd.factorize(slot)
     labels = np.array([_slot_label(int(kind)) for kind in kinds], object)
     ids: list[str] = (np.array(pair_prefix, object)[pair] + labels[which]).tolist()
-    shared = _not_alone(pair, slot)
-    order = shared[np.lexsort((start_s[shared], slot[shared], pair[shared]))]
+    key = pair * len(kinds) + which
+    shared = np.flatnonzero(pd.Series(key).duplicated(keep=False))
+    order = shared[np.lexsort((start_s[shared], key[shared]))]
     rank = 0
-    for before, i in zip(order[:-1].tolist(), order[1:].tolist(), strict=True):
-        rank = rank + 1 if pair[i] == pair[before] and slot[i] == slot[before] else 0
+    for before, i in pairwise(order.tolist()):
+        rank = rank + 1 if key[i] == key[before] else 0
         if rank:
             ids[i] += _letter(rank)
     return ids
-
-
-def _not_alone(pair: NDArray[np.int64], slot: NDArray[np.int64]) -> NDArray[np.int64]:
-    """The windows that share pair and slot with another one."""
-    _, dense = np.unique(slot, return_inverse=True)
-    key = pair * (int(dense.max(initial=0)) + 1) + dense
-    order = np.argsort(key, kind="stable")
-    same = np.flatnonzero(key[order][1:] == key[order][:-1])
-    return order[np.union1d(same, same + 1)]
 
 
 def inherit_ids(windows: pd.DataFrame, earlier_windows: pd.DataFrame, tolerance_s: float = 1_200.0) -> pd.DataFrame:

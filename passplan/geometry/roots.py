@@ -43,7 +43,7 @@ def solve(
     active: Indices | None = None
     upward: Flags = np.broadcast_to(np.asarray(rising), x.shape)
     last = high - low
-    newton = np.zeros(x.size, bool)
+    newton: Flags | None = None
     with np.errstate(divide="ignore", invalid="ignore"):
         for _ in range(_MOST_STEPS):
             value, derivative = function(x, *data)
@@ -52,10 +52,13 @@ def solve(
             step = value / derivative
             ahead = x - step
             good = (np.abs(step) <= 0.5 * last) & (ahead >= low) & (ahead <= high)
-            ahead = np.where(good, ahead, 0.5 * (low + high))
+            if not good.all():
+                ahead = np.where(good, ahead, 0.5 * (low + high))
             size = np.abs(ahead - x)
-            foretold = size * np.square(size / last)
-            unsettled = (size > tolerance) & ((foretold > _FORETOLD * tolerance) | ~(good & newton))
+            unsettled = size > tolerance
+            if newton is not None:
+                foretold = size * np.square(size / last)
+                unsettled &= (foretold > _FORETOLD * tolerance) | ~(good & newton)
             newton, last, x = good, size, ahead
             result[slice(None) if active is None else active] = x
             left = int(np.count_nonzero(unsettled))
@@ -66,5 +69,5 @@ def solve(
                 active = keep if active is None else active[keep]
                 data = [part.take(keep, axis=-1) for part in data]
                 low, high, x, last = low[keep], high[keep], x[keep], last[keep]
-                upward, newton = upward[keep], newton[keep]
+                upward, newton = upward[keep], good[keep]
     return result

@@ -1,4 +1,8 @@
-"""The one place where numba is met: compiled on first use, kept on disk, free of the interpreter's lock."""
+"""The one place where numba is met: compiled on first use, kept on disk, free of the interpreter's lock.
+
+What is kept on disk goes by the time stamp of a function's own file. After a change to a function that others
+call, remove ``search/__pycache__/*.nb?``, or the callers keep the old one.
+"""
 
 from __future__ import annotations
 
