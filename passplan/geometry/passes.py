@@ -224,11 +224,14 @@ def _azimuths(
     """Azimuths (2, n) in deg at both ``edges`` of the windows inside the planning horizon; NaN for the others."""
     found = np.full(edges.shape, np.nan)
     short, long = np.flatnonzero(inside & (centre >= 0)), np.flatnonzero(inside & (centre < 0))
-    east, north, _ = _local(block, places, antenna[short], own[short], centre[short], edges[:, short])
-    found[:, short] = azimuth_of(east, north)
+    axes = places.east, places.north
+    found[:, short] = azimuth_of(
+        *_along(block, places, axes, antenna[short], own[short], centre[short], edges[:, short])
+    )
     for edge in (0, 1):
         at = edges[edge, long]
-        east, north, _ = _local(block, places, antenna[long], own[long], np.floor(at).astype(np.int64), at[None])
+        sample = np.floor(at).astype(np.int64)
+        east, north = _along(block, places, axes, antenna[long], own[long], sample, at[None])
         found[edge, long] = azimuth_of(east[0], north[0])
     return found
 
@@ -238,21 +241,28 @@ def _peak_deg(block: Block, places: Stations, antenna: Indices, own: Indices, to
     degrees = np.degrees(np.arcsin(np.minimum(top.sine, 1.0)))
     steep = np.flatnonzero(top.sine > _STEEP_SINE)
     at = top.at[steep]
-    east, north, up = _local(block, places, antenna[steep], own[steep], np.floor(at).astype(np.int64), at[None])
+    sample = np.floor(at).astype(np.int64)
+    axes = places.east, places.north, places.up
+    east, north, up = _along(block, places, axes, antenna[steep], own[steep], sample, at[None])
     degrees[steep] = np.degrees(np.arctan2(up[0], np.hypot(east[0], north[0])))
     return np.asarray(degrees)
 
 
-def _local(
-    block: Block, places: Stations, antenna: Indices, own: Indices, sample: Indices, at: Floats
-) -> tuple[Floats, Floats, Floats]:
-    """East, north and up (k, n) in km at grid instants ``at`` (k, n), by the stencils around ``sample`` (n,)."""
+def _along(
+    block: Block,
+    places: Stations,
+    axes: Sequence[Floats],
+    antenna: Indices,
+    own: Indices,
+    sample: Indices,
+    at: Floats,
+) -> list[Floats]:
+    """Distance (k, n) in km along each of the antennas' ``axes`` at grid instants ``at`` (k, n).
+
+    ``sample`` (n,) is where the stencils lie.
+    """
     line = [
-        part - places.positions_km[:, axis].take(antenna)
-        for axis, part in enumerate(stencil.interpolate(tuple(block.positions_km), own, sample, at))
+        part - places.positions_km[:, k].take(antenna)
+        for k, part in enumerate(stencil.interpolate(tuple(block.positions_km), own, sample, at))
     ]
-
-    def along(direction: Floats) -> Floats:
-        return np.asarray(sum(direction[:, axis].take(antenna) * part for axis, part in enumerate(line)))
-
-    return along(places.east), along(places.north), along(places.up)
+    return [np.asarray(sum(axis[:, k].take(antenna) * part for k, part in enumerate(line))) for axis in axes]

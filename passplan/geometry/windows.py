@@ -92,7 +92,7 @@ def _table(
     los[high] = np.floor(rows.end_s[high] * 1e3 + _ROUNDING_MS)
     order = np.flatnonzero(rows.inside & (los > aos))
     key = (aos[order] - start_s * 1e3).astype(np.int64) * len(antennas) + _ranks(antenna_names)[rows.antenna[order]]
-    order = order[np.argsort(key * len(orbits) + _ranks(names)[rows.spacecraft[order]], kind="stable")]
+    order = order[np.argsort(key * len(orbits) + _ranks(names)[rows.spacecraft[order]])]
     rows, ids, aos, los = rows.take(order), ids[order], aos[order], los[order]
     peak = np.clip(np.rint(rows.peak_s * 1e3), aos, los)
     clipped = (rows.whole_start_s < start_s) + 2 * (rows.whole_end_s > end_s)
