@@ -78,6 +78,19 @@ def figure_drop_db(receiver: Receiver, sky: Sky, elevation_deg: Floats, wet_rado
     return np.asarray(drop_db + 10.0 * np.log10(noise_k / reference_k))
 
 
+def figure_note(receiver: Receiver) -> str:
+    """What a receiver's G/T counts, in words, so that nobody counts sky noise twice."""
+    if receiver.receiver_noise_k is not None:
+        return "antenna, spill-over, feeder, receiver and sky noise added up (ITU-R P.618-13, section 3)"
+    if receiver.g_over_t_curve:
+        inside = "G/T measured at elevation: its clear-sky noise is inside and not counted again"
+    elif receiver.measured_at_deg is not None:
+        inside = f"measured at {receiver.measured_at_deg:g} deg: the clear-sky noise there is inside, not counted again"
+    else:
+        inside = "as stated: clear-sky noise is inside and not counted again"
+    return inside if receiver.noise_temperature_k is not None else f"{inside}; noise unknown, so nothing raises it"
+
+
 def dish_of(receiver: Receiver, frequency_mhz: float) -> tuple[float | None, float | None]:
     """Diameter [m] and half-power beamwidth [deg], stated or from each other or from the gain; None if unknown."""
     diameter_m = receiver.diameter_m

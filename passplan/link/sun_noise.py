@@ -23,7 +23,15 @@ def nearest_approach_deg(
     The Sun below the horizon disturbs nobody: 180 deg.
     """
     sun = sun_direction(times_utc) @ local_axes(site).T
-    away = pointing_vectors(azimuth_deg, elevation_deg) - sun
+    angle = closest_deg(pointing_vectors(azimuth_deg, elevation_deg) - sun)
+    return np.asarray(np.where(sun[:, 2] > 0.0, angle, 180.0))
+
+
+def closest_deg(away: Floats) -> Floats:
+    """Least angle [deg] between two directions from the sample before to the one after, shape (n,).
+
+    ``away`` (n, 3) is the difference of their unit vectors; between samples it runs along straight lines.
+    """
     nearest = np.linalg.norm(away, axis=1)
     if len(away) > 1:
         step = np.diff(away, axis=0)
@@ -32,8 +40,7 @@ def nearest_approach_deg(
         between = np.linalg.norm(away[:-1] + share[:, None] * step, axis=1)
         nearest[:-1] = np.minimum(nearest[:-1], between)
         nearest[1:] = np.minimum(nearest[1:], between)
-    angle = np.degrees(2.0 * np.arcsin(np.clip(nearest / 2.0, 0.0, 1.0)))
-    return np.asarray(np.where(sun[:, 2] > 0.0, angle, 180.0))
+    return np.asarray(np.degrees(2.0 * np.arcsin(np.clip(nearest / 2.0, 0.0, 1.0))))
 
 
 def sun_loss_db(

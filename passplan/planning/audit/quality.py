@@ -33,8 +33,11 @@ class Quality:
 
     time_s: Floats
     ratio_db: Floats
-    low_db: Floats
+    low_db: Floats | None = None
     clear_deg: Floats | None = None
+
+    def _series(self, low: bool) -> Floats:
+        return self.low_db if low and self.low_db is not None else self.ratio_db
 
     def at_db(self, time_s: float) -> float:
         """The quality at one instant."""
@@ -42,14 +45,14 @@ class Quality:
 
     def least_db(self, start_s: float, end_s: float, *, low: bool = False) -> float:
         """The least quality from ``start_s`` to ``end_s``."""
-        ratio_db = self.low_db if low else self.ratio_db
+        ratio_db = self._series(low)
         inner = ratio_db[(self.time_s > start_s) & (self.time_s < end_s)]
         ends = np.interp((start_s, end_s), self.time_s, ratio_db)
         return float(min(*ends, *inner))
 
     def longest_s(self, level_db: float, *, low: bool = False) -> float:
         """Whole seconds of the longest unbroken time at or above a level, where the ground may transmit."""
-        ratio_db = self.low_db if low else self.ratio_db
+        ratio_db = self._series(low)
         seconds = np.arange(np.ceil(self.time_s[0]), np.floor(self.time_s[-1]) + 1.0)
         holds = np.interp(seconds, self.time_s, ratio_db) >= level_db
         if self.clear_deg is not None:
@@ -103,7 +106,7 @@ def command_quality(run: Run, contact: Contact, radio: CommandRadio, seen: Sight
             "min_elevation_deg": antenna.min_elevation_deg if floor_deg is None else floor_deg,
         })
         clear_deg = seen.elevation_deg - mask_deg(bounds, seen.azimuth_deg)
-    return Quality(seen.time_s, ratio_db, ratio_db, clear_deg)
+    return Quality(seen.time_s, ratio_db, None, clear_deg)
 
 
 def _radiated_dbw(item: DownlinkRadio | Transmitter) -> float:
