@@ -22,6 +22,8 @@ def command(
 ) -> None:
     """Show the link budget line by line at an instant, and margin and modcod along the pass."""
     import numpy as np
+    import pandas as pd
+
     from passplan.inputs.load import load_run
     from passplan.inputs.records import datetime64
     from passplan.planning.steps import windows_of
@@ -36,8 +38,9 @@ def command(
         windows = windows_of(run, report, only=(spacecraft, antenna))
     if windows.empty and wanted is None:
         raise InputError([Problem("--antenna", "", antenna, f"never sees {spacecraft} in this run; choose another")])
+    window: pd.Series | None
     if wanted is None:
-        window = windows.loc[windows["peak_elevation_deg"].idxmax()]
+        window = windows.iloc[int(windows["peak_elevation_deg"].to_numpy().argmax())]
         moment = np.datetime64(window["peak_utc"], "ms")
     else:
         moment = datetime64(wanted)

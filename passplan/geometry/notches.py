@@ -25,23 +25,25 @@ _TOLERANCE = 1e-8
 
 @dataclass(frozen=True)
 class Sky:
-    """East, north and up (km) of windows' objects from one antenna, from a block's positions (objects, times, 3)."""
+    """East, north and up (km) of windows' objects from one antenna, from a block's positions (3, objects, times)."""
 
     positions_km: Floats
     here: Stations
 
     def powers(self, objects: Indices, at: Floats) -> tuple[Floats, Indices]:
         """Polynomials (3, 14, n) of east, north and up around grid instants ``at``, and where their x is 0."""
-        first, zero = stencil.place(np.floor(at).astype(np.int64), self.positions_km.shape[1])
-        stencils = stencil.samples(self.positions_km, objects, first) - self.here.positions_km[0]
+        first, zero = stencil.place(np.floor(at).astype(np.int64), self.positions_km.shape[2])
+        powers = np.stack([stencil.polynomials(part, objects, first) for part in self.positions_km])
         axes = np.concatenate([self.here.east, self.here.north, self.here.up])
-        local = np.einsum("ij,nkj->ink", axes, stencils)
-        return np.stack([stencil.powers_of(part) for part in local]), zero
+        local = np.einsum("ij,jkn->ikn", axes, powers)
+        local[:, 0] -= (axes @ self.here.positions_km[0])[:, None]
+        return local, zero
 
     def at(self, objects: Indices, at: Floats) -> Floats:
         """East, north and up (3, n) at grid instants ``at``."""
-        line = stencil.interpolate(self.positions_km, objects, at) - self.here.positions_km[0]
-        return np.asarray(np.concatenate([self.here.east, self.here.north, self.here.up]) @ line.T)
+        place = np.stack(stencil.interpolate(tuple(self.positions_km), objects, at))
+        axes = np.concatenate([self.here.east, self.here.north, self.here.up])
+        return np.asarray(axes @ (place - self.here.positions_km.T))
 
 
 def cut_to_mask(

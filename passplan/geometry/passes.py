@@ -222,6 +222,6 @@ def _peak_deg(block: Block, places: Stations, antenna: Indices, own: Indices, to
 
 def _local(block: Block, places: Stations, antenna: Indices, own: Indices, at: Floats) -> tuple[Floats, Floats, Floats]:
     """East, north and up (km) at grid instants ``at`` for each window's antenna and object."""
-    line = stencil.interpolate(block.positions_km, own, at) - places.positions_km[antenna]
+    line = np.stack(stencil.interpolate(tuple(block.positions_km), own, at), axis=-1) - places.positions_km[antenna]
     east, north, up = (np.einsum("ij,ij->i", axis[antenna], line) for axis in (places.east, places.north, places.up))
     return east, north, up

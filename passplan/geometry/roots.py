@@ -31,13 +31,15 @@ def solve(
     ``low, high, guess, rising`` are (n,); every array of ``data`` has n along its last axis. A Newton step
     that would leave the bracket, or is not half as long as the step before, is replaced by one to the
     middle of the bracket, so the iteration always ends (Press et al., Numerical Recipes, rtsafe).
-    ``tolerance`` is the last step in x. Roots that have settled stay in the arrays until half of them
+    ``tolerance`` in x bounds the next step, as Newton's quadratic convergence foretells it from the last two:
+    next / last = (last / before)^2. Roots that have settled stay in the arrays until half of them
     have: sorting them out costs as much as a turn.
     """
     low, high = low.copy(), high.copy()
     x = np.minimum(np.maximum(guess, low), high)
     result = x.copy()
-    last = 2.0 * (high - low)
+    last = high - low
+    newton = np.zeros(x.size, bool)
     active: Indices | None = None
     with np.errstate(divide="ignore", invalid="ignore"):
         for _ in range(_MOST_STEPS):
@@ -50,8 +52,11 @@ def solve(
             good = (ahead >= low) & (ahead <= high) & (np.abs(step) <= 0.5 * last)
             ahead = np.where(good, ahead, 0.5 * (low + high))
             np.copyto(ahead, x, where=value == 0.0)
-            last = np.abs(ahead - x)
-            unsettled = last > tolerance
+            size = np.abs(ahead - x)
+            foretold = size * np.square(size / last)
+            unsettled = (size > tolerance) & ((foretold > tolerance) | ~(good & newton))
+            newton = good
+            last = size
             x = ahead
             result[slice(None) if active is None else active] = x
             left = int(np.count_nonzero(unsettled))
@@ -62,5 +67,5 @@ def solve(
                 active = keep if active is None else active[keep]
                 data = [part.take(keep, axis=-1) for part in data]
                 low, high, x, last = low[keep], high[keep], x[keep], last[keep]
-                rising = rising[keep]
+                rising, newton = rising[keep], newton[keep]
     return result

@@ -74,7 +74,8 @@ class Scene:
 
     def at(self, pair: Indices, at: Floats) -> tuple[Floats, Floats]:
         """P and D (n,) at grid instants ``at``."""
-        return stencil.interpolate(self.both[0], pair, at), stencil.interpolate(self.both[1], pair, at)
+        up, square = stencil.interpolate((self.both[0], self.both[1]), pair, at)
+        return up, square
 
 
 @dataclass(frozen=True)
@@ -93,12 +94,12 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
 
     P and D are linear in (r, |r|^2, 1), so one matrix product gives both for every antenna.
     """
-    objects, length, _ = block.positions_km.shape
-    flat = block.positions_km.reshape(-1, 3)
-    extended = np.empty((flat.shape[0], 5))
-    extended[:, :3] = flat
-    np.einsum("ij,ij->i", flat, flat, out=extended[:, 3])
-    extended[:, 4] = 1.0
+    _, objects, length = block.positions_km.shape
+    flat = block.positions_km.reshape(3, -1)
+    extended = np.empty((5, flat.shape[1]))
+    extended[:3] = flat
+    np.einsum("ij,ij->j", flat, flat, out=extended[3])
+    extended[4] = 1.0
     count = sines.size
     linear = np.zeros((2 * count, 5))
     linear[:count, :3] = places.up
@@ -106,11 +107,11 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
     linear[count:, :3] = -2.0 * places.positions_km
     linear[count:, 3] = 1.0
     linear[count:, 4] = np.einsum("ij,ij->i", places.positions_km, places.positions_km)
-    both = np.empty((2 * count, flat.shape[0]))
-    excess = np.empty((count, flat.shape[0]))
-    for piece in pieces(2 * count, 5, flat.shape[0]):
+    both = np.empty((2 * count, flat.shape[1]))
+    excess = np.empty((count, flat.shape[1]))
+    for piece in pieces(2 * count, 5, flat.shape[1]):
         part, here = both[:, piece], excess[:, piece]
-        np.matmul(linear, extended[piece].T, out=part)
+        np.matmul(linear, extended[:, piece], out=part)
         np.sqrt(part[count:], out=here)
         np.multiply(here, -sines[:, None], out=here)
         np.add(here, part[:count], out=here)

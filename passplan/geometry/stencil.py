@@ -8,6 +8,8 @@ Near the ends of a grid the stencil is shifted inwards, never beyond the samples
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.lib.stride_tricks import as_strided
 from numpy.typing import NDArray
@@ -45,11 +47,11 @@ def powers_of(stencils: Floats) -> Floats:
 
 
 def samples(rows: Floats, row: NDArray[np.int64], first: NDArray[np.int64]) -> Floats:
-    """The samples (n, 14) or (n, 14, k) of ``rows[row[i]]``, a 2-d or 3-d contiguous array, from ``first[i]`` on."""
+    """The samples (n, 14) of ``rows[row[i]]``, a contiguous 2-d array, from ``first[i]`` on."""
     # Whole stencils are copied at a time: far kinder to the cache than gathering sample by sample.
-    flat = rows.reshape(rows.shape[0] * rows.shape[1], *rows.shape[2:])
-    shape = (max(flat.shape[0] - POINTS + 1, 0), POINTS, *flat.shape[1:])
-    stencils = as_strided(flat, shape, (flat.strides[0], *flat.strides), writeable=False)
+    flat = rows.reshape(-1)
+    shape = (max(flat.size - POINTS + 1, 0), POINTS)
+    stencils = as_strided(flat, shape, (flat.strides[0], flat.strides[0]), writeable=False)
     return np.asarray(stencils[row * rows.shape[1] + first])
 
 
@@ -97,10 +99,11 @@ def weights(x: Floats) -> Floats:
     powers[0] = 1.0
     for k in range(1, POINTS):
         np.multiply(powers[k - 1], x, out=powers[k])
-    return product(_POWERS.T, powers).T
+    return np.ascontiguousarray(product(_POWERS.T, powers).T)
 
 
-def interpolate(rows: Floats, row: NDArray[np.int64], at: Floats) -> Floats:
-    """Values (n,) or (n, k) of ``rows[row[i]]`` at grid instants ``at`` (n,); rows as for :func:`samples`."""
-    first, zero = place(np.floor(at).astype(np.int64), rows.shape[1])
-    return np.asarray(np.einsum("ij,ij...->i...", weights(at - zero), samples(rows, row, first)))
+def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], at: Floats) -> list[Floats]:
+    """Values (n,) of each part's ``rows[row[i]]`` (2-d arrays of one shape) at grid instants ``at`` (n,)."""
+    first, zero = place(np.floor(at).astype(np.int64), parts[0].shape[1])
+    weight = weights(at - zero)
+    return [np.asarray(np.einsum("ij,ij->i", weight, samples(rows, row, first))) for rows in parts]

@@ -8,7 +8,6 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from passplan.geometry.frames import turn_about_z
 from passplan.geometry.oem_states import ephemeris_itrf, segment_itrf, segment_span
 from passplan.geometry.regimes import Regime, regime_of
 from passplan.geometry.sgp4_states import sgp4_itrf, sgp4_span, sgp4_teme_many
@@ -27,7 +26,7 @@ _EPHEMERIS_REACH_S = 2.5 * 86_400.0
 
 @dataclass(frozen=True)
 class Block:
-    """Earth-fixed positions (objects, times, 3) in km on the even grid ``start_s + k step_s``.
+    """Earth-fixed positions (3, objects, times) in km on the even grid ``start_s + k step_s``.
 
     ``objects`` are indices into the list of spacecraft. Nothing is known of an object outside its grid.
     """
@@ -73,8 +72,8 @@ def _element_blocks(
         part = members[at : at + share]
         teme, failed = sgp4_teme_many([source.satrec for _, source in part], times)
         whole = np.asarray(~failed.any(axis=1))
-        fixed = turn_about_z(teme if whole.all() else teme[whole], cosine, sine)
-        if fixed.shape[0]:
+        fixed = _turned(teme if whole.all() else teme[whole], cosine, sine)
+        if fixed.shape[1]:
             yield Block(np.array([i for (i, _), good in zip(part, whole, strict=True) if good]), times[0], step, fixed)
         for (index, source), good in zip(part, whole, strict=True):
             if not good:
@@ -87,7 +86,7 @@ def _failing_block(index: int, source: ElementSet, start_s: float, end_s: float)
     low, high = sgp4_span(source.satrec, epoch_s, start_s, end_s)
     if high - low >= 1.0:
         grid = _edge_grid(low, high)
-        yield Block(np.array([index]), low, grid[1] - grid[0], sgp4_itrf(source.satrec, grid)[0][None])
+        yield Block(np.array([index]), low, grid[1] - grid[0], _components(sgp4_itrf(source.satrec, grid)[0]))
 
 
 def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: float) -> Iterator[Block]:
@@ -97,7 +96,22 @@ def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: floa
         if high - low >= 1.0:
             grid = _edge_grid(low, high)
             positions = segment_itrf(segment, np.clip(grid, low, high))[0]
-            yield Block(np.array([index]), low, grid[1] - grid[0], positions[None])
+            yield Block(np.array([index]), low, grid[1] - grid[0], _components(positions))
+
+
+def _turned(teme_km: Floats, cosine: Floats, sine: Floats) -> Floats:
+    """Earth-fixed components (3, objects, times) of TEME positions (objects, times, 3), for one angle per time."""
+    x, y, z = (teme_km[:, :, axis] for axis in range(3))
+    fixed = np.empty((3, *teme_km.shape[:2]))
+    np.add(cosine * x, sine * y, out=fixed[0])
+    np.subtract(cosine * y, sine * x, out=fixed[1])
+    fixed[2] = z
+    return fixed
+
+
+def _components(positions_km: Floats) -> Floats:
+    """One object's positions (times, 3) in the layout of a block."""
+    return np.ascontiguousarray(positions_km.T)[:, None, :]
 
 
 def _edge_grid(low: float, high: float) -> Floats:

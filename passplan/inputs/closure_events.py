@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
-from datetime import date, datetime
+from datetime import date, datetime, timedelta
 from typing import Any
 
 from passplan.inputs.lines import shortened
@@ -66,10 +67,14 @@ def _zone_fault(prop: Any, name: str) -> EventFault | None:
         return None
     if isinstance(prop, list):
         return EventFault(f", {name}", None, "stands twice in one event; remove one")
-    moment = prop.dt
+    moment = getattr(prop, "dt", None)
     if isinstance(moment, datetime):
         return None if moment.tzinfo is not None else _floating(prop, name)
-    return None if isinstance(moment, date) else EventFault(f", {name}", str(moment), "not a time; correct it")
+    return None if isinstance(moment, date) else EventFault(f", {name}", _shown(prop), "not a time; correct it")
+
+
+def _shown(prop: Any) -> str:
+    return shortened(str(prop), 40)
 
 
 def _floating(prop: Any, name: str) -> EventFault:
@@ -88,8 +93,9 @@ def _length_fault(event: Any, start: date | datetime) -> EventFault | None:
             return EventFault(", DTEND", end.dt.isoformat(), "is not after DTSTART; swap or correct them")
         return None
     if duration is not None:
-        too_short = isinstance(duration, list) or duration.dt.total_seconds() <= 0.0
-        return EventFault(", DURATION", None, "is not positive; correct it") if too_short else None
+        length = getattr(duration, "dt", None)
+        sound = isinstance(length, timedelta) and length > timedelta()
+        return None if sound else EventFault(", DURATION", _shown(duration), "is not positive; correct it")
     if isinstance(start, datetime):
         return EventFault(", DTEND", None, "missing; state when the event ends")
     return None
@@ -99,6 +105,8 @@ def _rule_fault(rules: Any, first_year: int) -> EventFault | None:
     for rule in rules if isinstance(rules, list) else [rules]:
         if rule is None:
             continue
+        if not isinstance(rule, Mapping):
+            return EventFault(", RRULE", _shown(rule), "not a recurrence rule; correct it")
         frequency = ",".join(map(str, rule.get("FREQ", []))).upper()
         if frequency in _TOO_FREQUENT or "BYSECOND" in rule or "BYMINUTE" in rule:
             return EventFault(", RRULE", frequency or None, "repeats too often for a closure; use HOURLY or rarer")

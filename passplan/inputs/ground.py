@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import Annotated
 
 from pydantic import Field, model_validator
@@ -108,7 +109,8 @@ class Antenna(Record):
     ``mask`` is a table of (azimuth, elevation) points in degrees, joined by straight lines and wrapped
     at north; where it is absent the mask is ``min_elevation_deg`` all round. With both, the higher of
     the two holds. ``transmit_mask`` and ``transmit_min_elevation_deg`` bound where it may transmit, in the
-    same way. ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted. ``prepare_s`` is kept free before a contact and ``release_s`` after it.
+    same way. ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted.
+    ``prepare_s`` is kept free before a contact and ``release_s`` after it.
     """
 
     name: Name
@@ -142,5 +144,5 @@ def _check_mask(mask: tuple[tuple[float, float], ...]) -> None:
         raise ValueError("mask azimuths run from 0 to 360 deg; correct the table")
     if any(not -5.0 <= elevation < 90.0 for _, elevation in mask):
         raise ValueError("mask elevations lie from -5 to 90 deg; correct the table")
-    if any(b < a for a, b in zip(azimuths, azimuths[1:], strict=False)):
+    if any(b < a for a, b in pairwise(azimuths)):
         raise ValueError("mask azimuths must not decrease; sort the table")

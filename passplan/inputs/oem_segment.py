@@ -126,19 +126,15 @@ def _states(raw: RawSegment, file: str | Path, findings: Findings) -> Floats | N
     if not rows or len(rows) < len(raw.states):
         return None
     states = np.array(rows, dtype=np.float64)
+    with np.errstate(over="ignore"):  # a number too large to square is outside the limits as well
+        radius_km, speed_km_s = (np.linalg.norm(states[:, i : i + 3], axis=1) for i in (1, 4))
     faults = (
+        (np.diff(states[:, 0], prepend=-np.inf) <= 0.0, "its epoch is not after the one before; sort the states"),
         (
-            np.diff(states[:, 0], prepend=-np.inf) <= 0.0,
-            "its epoch is not after the one before; sort the states, each once",
-        ),
-        (
-            _outside(np.linalg.norm(states[:, 1:4], axis=1), _LEAST_RADIUS_KM, _MOST_RADIUS_KM),
+            (radius_km < _LEAST_RADIUS_KM) | (radius_km > _MOST_RADIUS_KM),
             "the position is not that of an orbit; give it in km from the Earth's centre",
         ),
-        (
-            _outside(np.linalg.norm(states[:, 4:7], axis=1), 0.0, _MOST_SPEED_KM_S),
-            "the speed is not that of an orbit; give it in km/s",
-        ),
+        (speed_km_s > _MOST_SPEED_KM_S, "the speed is not that of an orbit; give it in km/s"),
     )
     sound = True
     for wrong, remedy in faults:
@@ -149,10 +145,6 @@ def _states(raw: RawSegment, file: str | Path, findings: Findings) -> Floats | N
             findings.problem(file, where, shortened(" ".join(words)), f"{remedy}{more}")
             sound = False
     return states if sound else None
-
-
-def _outside(values: Floats, low: float, high: float) -> NDArray[np.bool_]:
-    return (values < low) | (values > high)
 
 
 def _state(where: str, words: Sequence[str], file: str | Path, findings: Findings) -> list[float] | None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from datetime import UTC, date, datetime
+from itertools import pairwise
 from typing import Annotated, Any, Literal
 
 import numpy as np
@@ -66,7 +67,7 @@ def check_angles(points: tuple[tuple[float, float], ...], most_deg: float) -> No
     angles = [angle for angle, _ in points]
     if any(not 0.0 <= angle <= most_deg for angle in angles):
         raise ValueError(f"the angles of the curve run from 0 to {most_deg:g} deg; correct the curve")
-    if any(b <= a for a, b in zip(angles, angles[1:], strict=False)):
+    if any(b <= a for a, b in pairwise(angles)):
         raise ValueError("the angles of the curve must rise; sort the curve")
 
 

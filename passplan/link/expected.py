@@ -18,7 +18,7 @@ import pandas as pd
 from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.budget import Floats
-from passplan.link.choice import DownlinkChoice, DownlinkProfile
+from passplan.link.choice import DownlinkProfile
 from passplan.link.profiles import link_profiles
 
 PERCENT_NODES = (0.01, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0, 50.0, 70.0, 90.0, 99.0)
@@ -27,12 +27,17 @@ PERCENT_NODES = (0.01, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0, 50.0, 70.0, 90.0, 99.0)
 
 @dataclass(frozen=True)
 class PlannedContact:
-    """One downlink contact: the row of its window, its seconds from the horizon's start, and how it was to send."""
+    """One downlink contact: the row of its window, its seconds from the horizon's start, and how it was to send.
+
+    A radio that adapts its rate makes its own choice; for any other ``modcod`` and its net rate count.
+    """
 
     window: int
     start_s: int
     end_s: int
-    choice: DownlinkChoice
+    radio: str
+    modcod: str
+    rate_mbps: float
 
 
 @dataclass(frozen=True)
@@ -78,19 +83,19 @@ def carried_mb(profile: DownlinkProfile | None, contact: PlannedContact) -> floa
     """What the link of a contact carries [MB] under the sky of ``profile``."""
     if profile is None:
         return 0.0
-    tracks = tuple(track for track in profile.tracks if track.chain.radio == contact.choice.radio)
+    tracks = tuple(track for track in profile.tracks if track.chain.radio == contact.radio)
     if any(track.chain.control.kind == "adaptive" for track in tracks):
         best = DownlinkProfile(tracks).best(contact.start_s, contact.end_s)
         return 0.0 if best is None else best.volume_mb
-    longest_s, rate_mbps = 0, contact.choice.rate_mbps
+    longest_s = 0
     for track in tracks:
         for rung, first_s, last_s in zip(
             track.rung.tolist(), track.first_s.tolist(), track.last_s.tolist(), strict=True
         ):
-            if track.chain.rungs[rung].name == contact.choice.modcod:
+            if track.chain.rungs[rung].name == contact.modcod:
                 begin = math.ceil(max(first_s, contact.start_s) + track.chain.acquisition_s - 1e-6)
                 longest_s = max(longest_s, math.floor(min(last_s, contact.end_s) + 1e-6) - begin)
-    return rate_mbps * longest_s / 8.0
+    return contact.rate_mbps * longest_s / 8.0
 
 
 def node_weights() -> Floats:

@@ -13,7 +13,6 @@ class Clock:
     def __init__(self, limit_s: float) -> None:
         self._started = time.monotonic()
         self._limit_s = limit_s
-        self.stopped = False
         self.seconds: dict[str, float] = {}
 
     def elapsed_s(self) -> float:
@@ -21,16 +20,12 @@ class Clock:
         return time.monotonic() - self._started
 
     def left_s(self) -> float:
-        """Seconds left, never negative; none once stopped."""
-        return 0.0 if self.stopped else max(0.0, self._limit_s - self.elapsed_s())
+        """Seconds left, never negative."""
+        return max(0.0, self._limit_s - self.elapsed_s())
 
     def expired(self) -> bool:
         """Whether the time is up."""
         return self.left_s() <= 0.0
-
-    def stop(self) -> None:
-        """End the search as soon as it looks at the clock (an interrupt, for one)."""
-        self.stopped = True
 
     @contextmanager
     def stage(self, name: str) -> Iterator[None]:

@@ -6,19 +6,22 @@ from collections.abc import Callable, Iterable
 
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
-from passplan.planning.maps import storage_maps
+from passplan.planning.maps import StorageMaps, storage_maps
 from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
-from passplan.planning.search.engine import search_plan
+from passplan.planning.search.engine import Found, search_plan
+from passplan.planning.search.fleetarrays import NotForSearchError
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import solve_exactly
 from passplan.planning.tidy import tidy
 from passplan.planning.value import account
 
 Progress = Callable[[float, float, float], None]
+# Points are sums of whole requests and seconds over hours; closer than this they are the same.
+_SAME_POINTS = 1e-6
 
 
 def find_plan(
@@ -43,23 +46,37 @@ def find_plan(
             progress(value, bound, relative_gap(value, bound))
 
     tell(best.account.value, bound)
-    exact = 0 < len(problem.options) <= limits.exact_options
-    if exact and not clock.expired():
-        solved = solve_exactly(problem, terms, limits, clock, best.points)
-        points_bound, bound = max(points_bound, solved.points_bound), min(bound, solved.value_bound)
+    if 0 < len(problem.options) <= limits.exact_options and not clock.expired():
+        # Half of the time: the search takes the other half where the model is too hard after all.
+        solved = solve_exactly(problem, terms, limits, clock, best.points, 0.5 * clock.left_s())
+        points_bound = max(points_bound, solved.points_bound)
         if solved.chosen is not None:
             best = max(best, _Candidate(problem, terms, solved.chosen, "exact"), key=_Candidate.rank)
+        # The model's bound is for plans with the points it was given; it stands for those with as few.
+        if best.points <= solved.points + _SAME_POINTS:
+            bound = min(bound, solved.value_bound)
         tell(best.account.value, bound)
-    if not exact and len(problem.options) and not clock.expired():
+    if len(problem.options) and relative_gap(best.account.value, bound) > limits.gap and not clock.expired():
         with clock.stage("search"):
-            found = search_plan(problem, terms, maps, limits, clock, best.chosen, tell)
+            found = _search(problem, terms, maps, limits, clock, best, tell)
         if found is not None:
-            bound = min(bound, found.bound)
-            best = max(best, _Candidate(problem, terms, found.chosen, "search"), key=_Candidate.rank)
+            candidate = _Candidate(problem, terms, found.chosen, "search")
+            bound = found.bound if candidate.points < best.points - _SAME_POINTS else min(bound, found.bound)
+            best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
         tidied = _Candidate(problem, terms, tidy(problem, terms, best.chosen), best.path)
         best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
     return _conclude(best, terms, points_bound, bound, limits, clock)
+
+
+def _search(
+    problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, best: _Candidate,
+    tell: Callable[[float, float], None],
+) -> Found | None:
+    try:
+        return search_plan(problem, terms, maps, limits, clock, best.chosen, tell)
+    except NotForSearchError:
+        return None
 
 
 class _Candidate:

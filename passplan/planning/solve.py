@@ -33,25 +33,28 @@ class Solved:
     value_bound: float
 
 
-def solve_exactly(problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float) -> Solved:
-    """Least points, then most value with the points kept. ``points`` is what a known plan has.
+def solve_exactly(
+    problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float, seconds: float,
+) -> Solved:
+    """Least points, then most value with the points kept, in ``seconds``. ``points`` is what a known plan has.
 
     Tier 1 is skipped when the known plan already has the least points that the options allow.
     """
+    stop = clock.elapsed_s() + seconds
     with clock.stage("model"):
         model = build_model(problem, terms)
     floor = least_points(terms)
     chosen: tuple[int, ...] | None = None
     with clock.stage("solve"):
-        if points > floor + _POINTS_TOLERANCE and not clock.expired():
-            first = _solve(model.proto(tier=1), model, limits, min(clock.left_s(), max(1.0, 0.4 * clock.left_s())), 0.0)
+        if points > floor + _POINTS_TOLERANCE:
+            first = _solve(model.proto(tier=1), model, limits, 0.5 * (stop - clock.elapsed_s()), 0.0)
             floor = max(floor, first.bound if first.bound is not None else floor)
             if first.chosen is not None and first.objective < points - _POINTS_TOLERANCE:
                 points, chosen = first.objective, first.chosen
-        if clock.expired():
+        if clock.elapsed_s() >= stop:
             return Solved(chosen, points, min(floor, points), float("inf"))
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
-        second = _solve(model.proto(tier=2, points_limit=limit), model, limits, clock.left_s(), limits.gap)
+        second = _solve(model.proto(tier=2, points_limit=limit), model, limits, stop - clock.elapsed_s(), limits.gap)
     bound = float("inf") if second.bound is None else second.bound
     return Solved(second.chosen if second.chosen is not None else chosen, points, min(floor, points), bound)
 

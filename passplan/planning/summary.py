@@ -68,9 +68,10 @@ def stored_inputs(files: Iterable[ReadFile]) -> list[dict[str, str]]:
 
 
 def _plan_id(summary: dict[str, Any], contacts: pd.DataFrame) -> str:
+    edges = [contacts[name].to_numpy("datetime64[ms]") for name in ("start_utc", "end_utc")]
     chosen = [
-        [row.contact_id, _iso(np.datetime64(row.start_utc)), _iso(np.datetime64(row.end_utc)), row.modcod]
-        for row in contacts.itertuples()
+        [contact, _iso(start), _iso(end), modcod]
+        for contact, start, end, modcod in zip(contacts["contact_id"], *edges, contacts["modcod"], strict=True)
     ]
     identity = {
         "horizon": [summary["horizon_start_utc"], summary["horizon_end_utc"]],

@@ -11,6 +11,7 @@ from rich.text import Text
 from passplan.inputs.fleet import DownlinkRadio
 from passplan.inputs.ground import Antenna
 from passplan.inputs.matching import matching_loss_db
+from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 
 _USE_STYLES = {"chosen": "", "listed": "dim"}
@@ -24,7 +25,7 @@ def print_health(run: Run, console: Console) -> None:
     if len(others):
         console.print(_other_sets(others))
     console.print(_antennas(run))
-    within = [c for c in run.closures if _ms(c.end_utc) > run.start_utc and _ms(c.start_utc) < run.end_utc]
+    within = [c for c in run.closures if datetime64(c.end_utc) > run.start_utc and datetime64(c.start_utc) < run.end_utc]
     console.print(Text.assemble(
         (str(len(within)), "bold"), " closures within the horizon, ", (str(len(run.requests)), "bold"), " requests, ",
         (str(len(run.files)), "bold"), " files read",
@@ -79,7 +80,7 @@ def _antennas(run: Run) -> Table:
         served = sum(_serves(run, antenna, craft) for craft in run.spacecraft)
         closed = [c for c in run.closures if c.antenna == name]
         hours = sum(
-            max((min(_ms(c.end_utc), run.end_utc) - max(_ms(c.start_utc), run.start_utc)) / np.timedelta64(1, "h"), 0.0)
+            max((min(datetime64(c.end_utc), run.end_utc) - max(datetime64(c.start_utc), run.start_utc)) / np.timedelta64(1, "h"), 0.0)
             for c in closed
         )
         table.add_row(
@@ -101,13 +102,9 @@ def _serves(run: Run, antenna: Antenna, spacecraft: str) -> bool:
     for radio in (run.radios[name] for name in run.spacecraft[spacecraft].radios):
         names, known = ((antenna.receivers, run.receivers) if isinstance(radio, DownlinkRadio)
                         else (antenna.transmitters, run.transmitters))
-        if any(matching_loss_db(radio, known[name]) is not None for name in names):  # type: ignore[index]
+        if any(matching_loss_db(radio, known[name]) is not None for name in names):
             return True
     return False
-
-
-def _ms(instant: object) -> np.datetime64:
-    return np.datetime64(pd.Timestamp(instant).tz_convert("UTC").tz_localize(None), "ms")  # type: ignore[arg-type]
 
 
 def _instant(instant: np.datetime64) -> str:

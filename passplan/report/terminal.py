@@ -155,7 +155,7 @@ def _contacts(record: PlanRecord, rows: int | None) -> RenderableType:
     return Group(table, *([more] if hidden else []))
 
 
-def _note(row: Mapping[str, Any]) -> str:
+def _note(row: Mapping[Any, Any]) -> str:
     parts = [] if row["origin"] == "planned" else [row["origin"]]
     # Most contacts leave out time in which nothing can be sent; only what another contact took is worth a word.
     if "busy" in row["cut"]:

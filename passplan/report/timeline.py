@@ -34,8 +34,8 @@ class Stretch:
 
     def span(self, start_utc: Any, end_utc: Any) -> slice:
         """The cells that ``[start_utc, end_utc)`` touches; empty where it lies outside."""
-        first = (np.datetime64(start_utc, "ms") - self.start_utc) / self.cell
-        last = (np.datetime64(end_utc, "ms") - self.start_utc) / self.cell
+        cells = (np.array([start_utc, end_utc], "datetime64[ms]") - self.start_utc) / self.cell
+        first, last = cells.tolist()
         low = min(max(int(np.floor(first)), 0), self.cells)
         return slice(low, max(min(int(np.ceil(last)), self.cells), low))
 

@@ -11,8 +11,8 @@ from pydantic import Field
 
 from passplan.inputs.crosscheck import check_ground
 from passplan.inputs.errors import Findings, nearest
-from passplan.inputs.load import beside
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
+from passplan.inputs.load import beside
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import Label, Names, Record
 from passplan.inputs.run import Run
@@ -82,10 +82,10 @@ def apply(variant: Variant, run: Run, file: Path) -> Run:
         if antennas.pop(name, None) is None:
             findings.problem(file, f"{place}: remove_antennas", name, f"not defined; {nearest(name, run.antennas)}")
     for i, change in enumerate(variant.change_antenna, start=1):
-        name = change.get("name")
+        name = str(change.get("name", ""))
         if name not in antennas:
             findings.problem(
-                file, f"{place}: change_antenna[{i}].name", name, f"not defined; {nearest(str(name), antennas)}"
+                file, f"{place}: change_antenna[{i}].name", name, f"not defined; {nearest(name, antennas)}"
             )
             continue
         whole = {**antennas[name].model_dump(), **change}

@@ -50,7 +50,7 @@ def run_study(
                      for day in range(1, study.days))]
     # Every variant is applied before anything is planned: a fault in the last one must not cost an hour.
     networks = [(BASE, runs)] + [(v.name, [apply(v, run, study.file) for run in runs]) for v in study.variants]
-    rows = []
+    rows: list[dict[str, Any]] = []
     for name, variant_runs in networks:
         for run in variant_runs:
             if progress is not None:

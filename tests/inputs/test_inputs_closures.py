@@ -305,6 +305,7 @@ def test_which_antennas_an_event_means(desk, lines, rest, antennas):
         (("DTSTART:20270309T100000Z",), "event 1 (X), DTEND", "missing"),
         (("DTEND:20270309T100000Z",), "event 1 (X), DTSTART", "missing"),
         (("DTSTART:soon", "DTEND:20270309T100000Z"), "event 1 (X), DTSTART", "cannot be read"),
+        (("DTSTART;VALUE=UID:soon", "DTEND:20270309T100000Z"), "event 1 (X), DTSTART = 'soon'", "not a time"),
         ((*TEN, "DTSTART:20270309T080000Z"), "event 1 (X), DTSTART", "stands twice"),
         ((*TEN, "RRULE:FREQ=SOMETIMES"), "event 1 (X), RRULE", "cannot be read"),
         ((*TEN, "RRULE:FREQ=SECONDLY"), "event 1 (X), RRULE", "repeats too often"),
@@ -339,6 +340,7 @@ def test_a_faulty_event_is_one_clear_line(desk, lines, where, remedy):
         (calendar(event(*TEN)) + "BEGIN:VCALENDAR\r\nBEGIN:VEVENT\r\nUID:1", "cut off inside an event"),
         ("BEGIN:VCALENDAR\r\nmuddle\r\nEND:VCALENDAR", "not a valid iCalendar file"),
         (b"BEGIN:VCALENDAR\r\n\xff\xfe", "not UTF-8 text"),
+        (calendar(event("DTSTART;TZID=Europe/:20270309T100000", "DURATION:PT1H")), "not a valid iCalendar file"),
         ("", "no complete VCALENDAR"),
     ],
 )

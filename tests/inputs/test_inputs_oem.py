@@ -127,6 +127,7 @@ LINES = states(START, 1.0)
         (LINES[0], LINES[0].replace(" 6900.000000", " 6900000.000000"), "give it in km from the Earth's centre"),
         (LINES[0], LINES[0].replace(" 6900.000000", " 69.000000"), "give it in km from the Earth's centre"),
         (LINES[5], LINES[5].rpartition(" ")[0] + " 3800.0", "give it in km/s"),
+        (LINES[5], LINES[5].rpartition(" ")[0] + " 1e300", "give it in km/s"),
     ],
 )
 def test_faulty_states(old, new, remedy):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 from copy import deepcopy
 from dataclasses import replace
+from itertools import pairwise
 
 import numpy as np
 import pandas as pd
@@ -101,7 +102,7 @@ def test_stretches_cover_the_horizon_once() -> None:
         for cells in (30, 87, 147):
             rows = stretches(start, start + np.timedelta64(hours, "h"), cells)
             assert rows[0].start_utc == start
-            assert all(a.end_utc == b.start_utc for a, b in zip(rows, rows[1:], strict=False))
+            assert all(a.end_utc == b.start_utc for a, b in pairwise(rows))
             assert rows[-1].end_utc >= start + np.timedelta64(hours, "h")
 
 

@@ -22,12 +22,12 @@ from passplan.planning.problem import Floats, Limits, Problem
 from passplan.planning.result import relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import BoundSearch, Sweeper, option_prices
-from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
+from passplan.planning.search.fleetarrays import FleetArrays, find_clashes, fleet_arrays
 from passplan.planning.search.rebuild import MOST_CONTACTS, rebuild
 from passplan.planning.search.schedule import make_work, worth_of
 
 # A round is about this many options looked at: some tenths of a second.
-_ROUND_OPTIONS = 1_200_000
+_ROUND_OPTIONS = 400_000
 _MOST_OUT = 10
 # Loss accepted at first, as a part of what a contact is worth on average.
 _WARMTH = 0.02
@@ -54,9 +54,9 @@ def search_plan(
     Raises :class:`~passplan.planning.search.fleetarrays.NotForSearchError` where the terms do not fit.
     ``tell(value, bound)`` is called after each round.
     """
-    arrays = fleet_arrays(problem, terms, maps)
     if not _compiled_in_time(clock):
         return None
+    arrays = fleet_arrays(problem, terms, maps)
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
         return _Rounds(problem, arrays, limits, start, pool, threads).run(clock, tell)
@@ -73,8 +73,8 @@ class _Rounds:
         self.size = np.zeros(count, dtype=np.int64)
         self._load(problem, start)
         self.best_taken, self.best_size = self.taken.copy(), self.size.copy()
-        # Points before value: a thousandth of a point outweighs all the value there is.
-        self.point_worth = 1e3 * (1.0 + float(np.abs(arrays.craft[:, 0] + problem.spill_cost_per_mb) @ (
+        # Points before value: a second of a command interval outweighs what it can be traded for.
+        self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + problem.spill_cost_per_mb) @ (
             arrays.craft[:, 3] + arrays.craft[:, 1] * arrays.horizon_s)))
         self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
         self.work = make_work()
@@ -162,8 +162,9 @@ def _exercise() -> None:
     arrays = FleetArrays(
         option=none, first=np.array([0, 1]), craft=np.ones((1, 4)), start_first=np.array([0, 1]), start_s=none, node=none,
         arrival=one, span=np.array([[0, 1]]), maps=np.zeros((1, 6)), cost=np.zeros(1), bits=none, renews=none,
-        use_first=np.zeros((1, 1), dtype=np.int64), use_last=np.ones((1, 1), dtype=np.int64), wants=np.zeros((1, 1)),
+        use_first=np.zeros((1, 1), dtype=np.int64), use_last=np.ones((1, 1), dtype=np.int64), clash=none, wants=np.zeros((1, 1)),
         recur=np.zeros((1, 3)), horizon_s=1, spill=0.0, cliques=1)
+    find_clashes(arrays.first, none, one, arrays.use_first, arrays.use_last, 0, none.copy())
     Sweeper(arrays)(np.zeros(1), 0.0)
     taken, size = np.zeros((1, 4), dtype=np.int64), np.zeros(1, dtype=np.int64)
     rebuild(arrays, 1, 1, 0.0, 2, np.zeros(1), 0.0, make_work(64), taken, size, taken.copy(), size.copy())

@@ -16,6 +16,7 @@ from passplan.planning.cliques import clique_spans
 from passplan.planning.maps import StorageMaps
 from passplan.planning.problem import Floats, Integers, Problem, offsets_of
 from passplan.planning.rules.terms import Terms
+from passplan.planning.search.compiled import compiled
 
 # Wanted terms of one spacecraft are bits of one integer.
 _MOST_WANTED = 60
@@ -35,7 +36,8 @@ class FleetArrays(NamedTuple):
     index within the spacecraft's distinct starts at which it starts, and of the first start at or after its
     end; ``span``: start and end in s; ``maps``: the storage maps as rows; ``cost`` in worth; ``bits`` of
     wanted terms it meets; ``renews``: until when it covers the recurrence, or -1. ``use_first`` and ``use_last``
-    (m, k) are ranges of cliques, k lanes at most each. ``wants`` (n, 60) are the points of each bit, ``recur``
+    (m, k) are ranges of cliques, k lanes at most each. ``clash`` (m) is the last start of a later option of the
+    same spacecraft that shares a clique with this one (time to set up between two contacts on one antenna), or -1. ``wants`` (n, 60) are the points of each bit, ``recur``
     (n, 3) from, until and points per second of the recurrence (until 0 where there is none).
     """
 
@@ -53,6 +55,7 @@ class FleetArrays(NamedTuple):
     renews: Integers
     use_first: Integers
     use_last: Integers
+    clash: Integers
     wants: Floats
     recur: Floats
     horizon_s: int
@@ -91,7 +94,7 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
                               maps.generated_mb])[order],
         cost=problem.worth_per_money * options.cost[order], bits=bits, renews=renews, use_first=use_first,
-        use_last=use_last, wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb,
+        use_last=use_last, clash=_clashes(problem, terms, order, first, use_first, use_last), wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb,
         cliques=cliques)
 
 
@@ -122,6 +125,47 @@ def _uses(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[
         use_first[where, rank] = np.concatenate([e[1] for e in entries])
         use_last[where, rank] = np.concatenate([e[2] for e in entries])
     return use_first, use_last, base
+
+
+def _clashes(
+    problem: Problem, terms: Terms, order: Integers, first: Integers, use_first: Integers, use_last: Integers,
+) -> Integers:
+    """The column ``clash``. Only starts within the longest hold after an option's end need a look."""
+    options = problem.options
+    before_s = after_s = 0
+    for lane in terms.lanes:
+        if lane.owner < 0 and len(lane.options):
+            before_s = max(before_s, int((options.start_s[lane.options] - lane.start_s).max()))
+            after_s = max(after_s, int((lane.end_s - options.end_s[lane.options]).max()))
+    clash = np.full(len(order), -1, dtype=np.int64)
+    find_clashes(first, options.start_s[order], options.end_s[order], use_first, use_last, before_s + after_s, clash)
+    return clash
+
+
+@compiled
+def find_clashes(
+    first: Integers, start_s: Integers, end_s: Integers, use_first: Integers, use_last: Integers, within_s: int,
+    clash: Integers,
+) -> None:
+    """Fill ``clash``; ``within_s`` is the longest time that two contacts on one lane can need between them."""
+    for i in range(len(first) - 1):
+        for o in range(first[i], first[i + 1]):
+            low = o + np.searchsorted(start_s[o:first[i + 1]], end_s[o])
+            for p in range(low, first[i + 1]):
+                if start_s[p] >= end_s[o] + within_s:
+                    break
+                if share_clique(use_first, use_last, o, p):
+                    clash[o] = start_s[p]
+
+
+@compiled
+def share_clique(use_first: Integers, use_last: Integers, o: int, p: int) -> bool:
+    """Whether two options share a clique, so that not both can be used."""
+    for x in range(use_first.shape[1]):
+        for y in range(use_first.shape[1]):
+            if max(use_first[o, x], use_first[p, y]) < min(use_last[o, x], use_last[p, y]):
+                return True
+    return False
 
 
 def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats]:

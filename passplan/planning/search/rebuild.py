@@ -14,7 +14,7 @@ import numpy as np
 from passplan.planning.problem import Floats, Integers
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays
-from passplan.planning.search.schedule import Work, best_schedule, worth_of
+from passplan.planning.search.schedule import Work, best_schedule, clashes, worth_of
 
 # A spacecraft has at most this many contacts; a schedule of more is refused.
 MOST_CONTACTS = 1_024
@@ -63,11 +63,11 @@ def rebuild(
                 for o in range(a.first[i], a.first[i + 1]):
                     price[o] = a.cost[o] + part * option_price[o] if _free(a, o, holder) else np.inf
                 _, fresh_size = best_schedule(a, i, price, point_worth, work, fresh)
-                if round == 1 and (fresh_size < 0 or fresh_size > taken.shape[1]):
-                    _hold(a, taken[i], size[i], holder, i)
-                    continue
-                size[i] = 0 if fresh_size < 0 or fresh_size > taken.shape[1] else fresh_size
-                taken[i, : size[i]] = fresh[: size[i]]
+                if 0 <= fresh_size <= taken.shape[1] and not clashes(a, fresh, fresh_size):
+                    size[i] = fresh_size
+                    taken[i, :fresh_size] = fresh[:fresh_size]
+                elif round == 0:
+                    size[i] = 0
                 _hold(a, taken[i], size[i], holder, i)
         for k in range(some):
             worth[out[k]] = _net_worth(a, out[k], taken[out[k]], size[out[k]], point_worth)

@@ -9,7 +9,11 @@ One label makes another useless if it has met at least as much and is covered at
 - holds less, but is ahead by the weight for every MB that it lacks (a MB more is never worth more), or
 - holds more, and is ahead by the spill cost for every MB too many (a MB more never costs more).
 
-With these two rules few labels survive, and the program is exact. (Own derivation.)
+With these two rules few labels survive. (Own derivation.) A label that comes straight from an option with
+which a start now would clash (time to set up the antenna it has just left) beats no other until that is over.
+
+The program is exact but for a clash between contacts with another one between them, which it does not see:
+its worth is then a ceiling, and the caller must look (:func:`clashes`).
 """
 
 from __future__ import annotations
@@ -20,7 +24,7 @@ import numpy as np
 
 from passplan.planning.problem import Floats, Integers
 from passplan.planning.search.compiled import compiled
-from passplan.planning.search.fleetarrays import FleetArrays
+from passplan.planning.search.fleetarrays import FleetArrays, share_clique
 
 _MOST_LABELS = 400_000
 
@@ -85,19 +89,19 @@ def best_schedule(
             rows[here, 2], bits[here], via[here] = work.wait_rows[arrived, 2], work.wait_bits[arrived], work.wait_via[arrived]
             here += 1
             arrived = work.wait_next[arrived]
-        here = _prune(here, rows, bits, via, weight, a.spill, simple)
+        here = _prune(a, here, work, now, weight, simple)
         while at < nodes and option < a.first[i + 1] and a.node[option] == at:
             if price[option] < np.inf:
                 if waiting + here > len(rows):
                     return np.inf, -1
                 target = a.arrival[option]
                 until = starts[target] if target < nodes else a.horizon_s
-                _take(a, i, option, price[option], point_worth, here, work, waiting)
-                _idle(work.wait_rows[waiting:], here, generation * (until - a.span[option, 1]), capacity, a.spill)
-                for k in range(waiting, waiting + here):
+                made = _take(a, i, option, price[option], point_worth, here, work, waiting)
+                _idle(work.wait_rows[waiting:], made, generation * (until - a.span[option, 1]), capacity, a.spill)
+                for k in range(waiting, waiting + made):
                     work.wait_next[k] = head[target]
                     head[target] = k
-                waiting += here
+                waiting += made
             option += 1
     best, chosen = -np.inf, -1
     for k in range(here):
@@ -153,11 +157,15 @@ def _through(maps: Floats, aboard: float) -> tuple[float, float, float]:
 @compiled
 def _take(
     a: FleetArrays, i: int, option: int, price: float, point_worth: float, here: int, work: Work, waiting: int,
-) -> None:
-    """Labels after taking an option, from all labels here; record and label share their index."""
+) -> int:
+    """Labels after taking an option, from all labels here that can; record and label share their index."""
     start_s = min(float(a.span[option, 0]), a.recur[i, 1])
+    to = waiting
     for k in range(here):
-        to = waiting + k
+        if work.via[k] >= 0:
+            last = work.record_option[work.via[k]]
+            if a.clash[last] >= a.span[option, 0] and share_clique(a.use_first, a.use_last, last, option):
+                continue
         after, sent, lost = _through(a.maps[option], work.rows[k, 0])
         worth = work.rows[k, 1] + a.craft[i, 0] * sent - a.spill * lost - price
         covered = work.rows[k, 2]
@@ -167,6 +175,8 @@ def _take(
         work.wait_rows[to, 0], work.wait_rows[to, 1], work.wait_rows[to, 2] = after, worth, covered
         work.wait_bits[to], work.wait_via[to] = work.bits[k] | a.bits[option], to
         work.record_option[to], work.record_before[to] = option, work.via[k]
+        to += 1
+    return to - waiting
 
 
 @compiled
@@ -192,11 +202,12 @@ def _missing(wants: Floats, met: int) -> float:
 
 
 @compiled
-def _prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: float, spill: float, simple: bool) -> int:
+def _prune(a: FleetArrays, count: int, work: Work, now: int, weight: float, simple: bool) -> int:
     """Sort labels by what is aboard, drop the useless ones, return how many are left.
 
     ``simple`` says that bits and cover are all alike; two sweeps then do what otherwise needs all pairs.
     """
+    rows, bits, via, spill = work.rows, work.bits, work.via, a.spill
     _sort(count, rows, bits, via)
     if simple:
         best = -np.inf
@@ -204,7 +215,8 @@ def _prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: floa
         for k in range(count):
             ahead = rows[k, 1] + weight * rows[k, 0]
             if ahead > best:
-                best = ahead
+                if _unbound(a, work, k, now):
+                    best = ahead
                 _move(rows, bits, via, k, left)
                 left += 1
         best = -np.inf
@@ -212,7 +224,8 @@ def _prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: floa
         for k in range(left - 1, -1, -1):
             ahead = rows[k, 1] - spill * rows[k, 0]
             if ahead > best:
-                best = ahead
+                if _unbound(a, work, k, now):
+                    best = ahead
                 low -= 1
                 _move(rows, bits, via, k, low)
         for k in range(low, left):
@@ -222,14 +235,14 @@ def _prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: floa
     for k in range(count):
         useless = False
         for x in range(left):
-            if _beats(rows, bits, x, k, weight, spill):
+            if _beats(a, work, x, k, now, weight):
                 useless = True
                 break
         if useless:
             continue
         kept = 0
         for x in range(left):
-            if not _beats(rows, bits, k, x, weight, spill):
+            if not _beats(a, work, k, x, now, weight):
                 _move(rows, bits, via, x, kept)
                 kept += 1
         _move(rows, bits, via, k, kept)
@@ -238,12 +251,31 @@ def _prune(count: int, rows: Floats, bits: Integers, via: Integers, weight: floa
 
 
 @compiled
-def _beats(rows: Floats, bits: Integers, x: int, y: int, weight: float, spill: float) -> bool:
+def _beats(a: FleetArrays, work: Work, x: int, y: int, now: int, weight: float) -> bool:
     """Whether label ``x`` makes label ``y`` useless."""
-    if bits[x] & bits[y] != bits[y] or rows[x, 2] < rows[y, 2]:
+    rows, bits = work.rows, work.bits
+    if bits[x] & bits[y] != bits[y] or rows[x, 2] < rows[y, 2] or not _unbound(a, work, x, now):
         return False
     more = rows[y, 0] - rows[x, 0]
-    return bool(rows[x, 1] >= rows[y, 1] + (weight * more if more > 0.0 else -spill * more))
+    return bool(rows[x, 1] >= rows[y, 1] + (weight * more if more > 0.0 else -a.spill * more))
+
+
+@compiled
+def _unbound(a: FleetArrays, work: Work, k: int, now: int) -> bool:
+    """Whether a label may take any option from now on."""
+    return bool(work.via[k] < 0 or a.clash[work.record_option[work.via[k]]] < now)
+
+
+@compiled
+def clashes(a: FleetArrays, taken: Integers, size: int) -> bool:
+    """Whether two contacts of a schedule share a clique."""
+    for x in range(size):
+        for y in range(x + 1, size):
+            if a.span[taken[y], 0] > a.clash[taken[x]]:
+                break
+            if share_clique(a.use_first, a.use_last, taken[x], taken[y]):
+                return True
+    return False
 
 
 @compiled
