@@ -148,6 +148,11 @@ def gas_attenuation_db(gas: ZenithGas, elevation_deg: ArrayLike) -> Floats:
     low = elevation < _PLANE_LAYER_FROM_DEG
     if not np.any(low):
         return slant
+    if isinstance(gas.oxygen_db, float) and elevation.ndim == 1:
+        # The curved layer is dear, and few samples are that low.
+        few = elevation[low]
+        slant[low] = gas.oxygen_db * _growth(few, gas.oxygen_height_km) + gas.vapour_db * _growth(few, gas.vapour_height_km)
+        return slant
     oxygen_db = gas.oxygen_db * _growth(elevation, gas.oxygen_height_km)
     vapour_db = gas.vapour_db * _growth(elevation, gas.vapour_height_km)
     return np.asarray(np.where(low, oxygen_db + vapour_db, slant))

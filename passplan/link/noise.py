@@ -16,7 +16,7 @@ from __future__ import annotations
 import numpy as np
 
 from passplan.inputs.ground import Receiver
-from passplan.link.atmosphere import Sky
+from passplan.link.atmosphere import Attenuations, Sky
 from passplan.link.budget import (
     COSMIC_BACKGROUND_K,
     Floats,
@@ -50,12 +50,15 @@ def reference_noise_k(receiver: Receiver) -> float | None:
     return float(_built_up_k(receiver, np.asarray(COSMIC_BACKGROUND_K)))
 
 
-def system_noise_at_k(receiver: Receiver, sky: Sky, elevation_deg: Floats, wet_radome_db: float = 0.0) -> Floats | None:
+def system_noise_at_k(
+    receiver: Receiver, sky: Sky, elevation_deg: Floats, wet_radome_db: float = 0.0, air: Attenuations | None = None
+) -> Floats | None:
     """System noise temperature [K] at elevations [deg] under a sky; None where it is not known.
 
-    A wet radome radiates like the air behind it (the allowance's own assumption).
+    A wet radome radiates like the air behind it (the allowance's own assumption). ``air`` is the sky at
+    these elevations, if it is known already.
     """
-    sky_k = sky_noise_k(sky.at(elevation_deg).absorbed_db + wet_radome_db)
+    sky_k = sky_noise_k((air or sky.at(elevation_deg)).absorbed_db + wet_radome_db)
     if receiver.receiver_noise_k is not None:
         return _built_up_k(receiver, sky_k)
     if receiver.noise_temperature_k is None:
@@ -66,13 +69,16 @@ def system_noise_at_k(receiver: Receiver, sky: Sky, elevation_deg: Floats, wet_r
     return np.asarray(np.maximum(receiver.noise_temperature_k + rise_k, 0.1 * receiver.noise_temperature_k))
 
 
-def figure_drop_db(receiver: Receiver, sky: Sky, elevation_deg: Floats, wet_radome_db: float = 0.0) -> Floats:
-    """By how much G/T at elevations [deg] is below :func:`reference_figure_db_per_k` [dB]."""
+def figure_drop_db(receiver: Receiver, elevation_deg: Floats, noise_k: Floats | None) -> Floats:
+    """By how much G/T at elevations [deg] is below :func:`reference_figure_db_per_k` [dB].
+
+    ``noise_k`` is that of :func:`system_noise_at_k`.
+    """
     drop_db = np.zeros_like(elevation_deg)
     if receiver.g_over_t_curve:
         angles, figures = np.array(receiver.g_over_t_curve).T
         drop_db = reference_figure_db_per_k(receiver) - np.interp(elevation_deg, angles, figures)
-    noise_k, reference_k = system_noise_at_k(receiver, sky, elevation_deg, wet_radome_db), reference_noise_k(receiver)
+    reference_k = reference_noise_k(receiver)
     if noise_k is None or reference_k is None:
         return drop_db
     return np.asarray(drop_db + 10.0 * np.log10(noise_k / reference_k))

@@ -46,11 +46,12 @@ def sky_path(run: Run, antenna: str, chain: Chain) -> SkyPath:
 def slant_table(chain: Chain, path: SkyPath, sky: Sky) -> SlantTable:
     """The table of one chain under one sky."""
     radome_db = chain.wet_radome_loss_db if path.wet else 0.0
-    loss_db = sky.at(GRID_DEG).total_db + radome_db
+    air = sky.at(GRID_DEG)
+    loss_db = air.total_db + radome_db
     if chain.receiver is None:
         return SlantTable(loss_db, None)
-    noise_k = system_noise_at_k(chain.receiver, sky, GRID_DEG, radome_db)
-    return SlantTable(loss_db + figure_drop_db(chain.receiver, sky, GRID_DEG, radome_db), noise_k)
+    noise_k = system_noise_at_k(chain.receiver, sky, GRID_DEG, radome_db, air)
+    return SlantTable(loss_db + figure_drop_db(chain.receiver, GRID_DEG, noise_k), noise_k)
 
 
 def look_up(stack: Floats, row: NDArray[np.int64], elevation_deg: Floats) -> Floats:

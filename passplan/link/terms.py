@@ -65,8 +65,8 @@ def path_terms(
         pattern_db = pattern_loss_db(chain.pattern, angle)
     drop_db, noise_k, separation, sun_db = nothing, None, None, nothing
     if chain.receiver is not None:
-        drop_db = figure_drop_db(chain.receiver, sky, elevation_deg, radome_db)
-        noise_k = system_noise_at_k(chain.receiver, sky, elevation_deg, radome_db)
+        noise_k = system_noise_at_k(chain.receiver, sky, elevation_deg, radome_db, air)
+        drop_db = figure_drop_db(chain.receiver, elevation_deg, noise_k)
         width_deg = dish_of(chain.receiver, chain.frequency_mhz)[1]
         if run.policy.sun_noise and noise_k is not None and width_deg is not None:
             separation = _separation_deg(path, look, times_utc)
