@@ -34,7 +34,10 @@ def _calendar_files(value: Any) -> Any:
 
 
 class RunConfig(Record):
-    """The config as written; ``rain_mm_per_h`` is the day's rain rate by site, if known. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``."""
+    """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``.
+
+    ``rain_mm_per_h`` is the day's rain rate by site, where it is known.
+    """
 
     name: Label = "run"
     start: Instant | None = None

@@ -13,7 +13,7 @@ _SLOTS = {"QPSK": 360, "8PSK": 240, "16APSK": 180, "32APSK": 144}
 
 def pilot_factor(modcod: str) -> float:
     """What is left of the efficiency with pilots on. Source: ETSI EN 302 307-1, clause 5.5.3 (from memory)."""
-    slots = _SLOTS[modcod.split(" ")[0]]
+    slots = _SLOTS[modcod.split(" ", maxsplit=1)[0]]
     symbols = 90 * (slots + 1)
     return symbols / (symbols + 36 * ((slots - 1) // 16))
 

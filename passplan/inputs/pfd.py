@@ -58,7 +58,8 @@ def read_pfd_limits(path: Path, reader: Reader, findings: Findings) -> tuple[Pfd
     for (_, before), (where, row) in pairwise(rows):
         same = (before.low_mhz, before.high_mhz) == (row.low_mhz, row.high_mhz)
         if same and not row.arrival_deg > before.arrival_deg:
-            findings.problem(path, f"{where}.arrival_deg", row.arrival_deg, "angles of one band must rise; sort the rows")
+            remedy = "angles of one band must rise; sort the rows"
+            findings.problem(path, f"{where}.arrival_deg", row.arrival_deg, remedy)
     return tuple(row for _, row in rows)
 
 

@@ -151,7 +151,8 @@ def gas_attenuation_db(gas: ZenithGas, elevation_deg: ArrayLike) -> Floats:
     if isinstance(gas.oxygen_db, float) and elevation.ndim == 1:
         # The curved layer is dear, and few samples are that low.
         few = elevation[low]
-        slant[low] = gas.oxygen_db * _growth(few, gas.oxygen_height_km) + gas.vapour_db * _growth(few, gas.vapour_height_km)
+        oxygen_db = gas.oxygen_db * _growth(few, gas.oxygen_height_km)
+        slant[low] = oxygen_db + gas.vapour_db * _growth(few, gas.vapour_height_km)
         return slant
     oxygen_db = gas.oxygen_db * _growth(elevation, gas.oxygen_height_km)
     vapour_db = gas.vapour_db * _growth(elevation, gas.vapour_height_km)

@@ -129,7 +129,7 @@ def beamwidth_deg(frequency_mhz: float, diameter_m: float) -> float:
 
 
 def dish_diameter_m(frequency_mhz: float, gain_dbi: float, efficiency: float) -> float:
-    """Diameter [m] of the dish that has a gain [dBi] at an aperture efficiency: G = eff (pi D / lambda)^2 (textbook)."""
+    """Diameter [m] of the dish of a gain [dBi] and an aperture efficiency: G = eff (pi D / lambda)^2 (textbook)."""
     wavelength_m = SPEED_OF_LIGHT_KM_S / 1e3 / frequency_mhz
     return float(wavelength_m / np.pi * np.sqrt(10.0 ** (gain_dbi / 10.0) / efficiency))
 
@@ -163,7 +163,8 @@ def earth_radius_km(latitude_deg: float) -> float:
     """Distance of the ellipsoid's surface from Earth's centre [km] at a geodetic latitude (WGS 84)."""
     cosine, sine = np.cos(np.radians(latitude_deg)), np.sin(np.radians(latitude_deg))
     major, minor = 6378.137, 6356.752314
-    return float(np.sqrt(((major**2 * cosine) ** 2 + (minor**2 * sine) ** 2) / ((major * cosine) ** 2 + (minor * sine) ** 2)))
+    above = (major**2 * cosine) ** 2 + (minor**2 * sine) ** 2
+    return float(np.sqrt(above / ((major * cosine) ** 2 + (minor * sine) ** 2)))
 
 
 def power_flux_density_dbw_per_m2(

@@ -55,12 +55,14 @@ def interference_pairs(run: Run, windows: pd.DataFrame, samples: Samples) -> lis
     if required_db is None:
         return []
     pairs: list[InterferencePair] = []
-    groups = windows.groupby(["spacecraft", "antenna"], sort=True).indices
-    for (victim, antenna), rows in groups.items():
+    rows_of: dict[tuple[str, str], list[int]] = {}
+    for row, pair in enumerate(zip(windows["spacecraft"], windows["antenna"], strict=True)):
+        rows_of.setdefault((str(pair[0]), str(pair[1])), []).append(row)
+    for (victim, antenna), rows in sorted(rows_of.items()):
         for chain in _downlinks(run, victim, antenna):
             for interferer in run.orbits:
                 if interferer != victim and _overlapping(run, chain, interferer):
-                    pairs += _of_pair(run, (victim, antenna, interferer), chain, samples, rows.tolist(), required_db)
+                    pairs += _of_pair(run, (victim, antenna, interferer), chain, samples, rows, required_db)
     return sorted(set(pairs), key=lambda p: (p.start_s, p.victim, p.antenna, p.interferer, p.end_s))
 
 
@@ -79,7 +81,8 @@ def c_over_i_db(
         return ratio_db
     peak_dbi, width_deg = shape
     carrier_dbw = chain.eirp_dbw - chain.pointing_loss_aboard_db - chain.polarisation_loss_db
-    carrier = carrier_dbw - free_space_loss_db(chain.frequency_mhz, wanted.range_km) - _aboard(chain.pattern, wanted, site)
+    carrier = carrier_dbw - free_space_loss_db(chain.frequency_mhz, wanted.range_km)
+    carrier = np.asarray(carrier - _aboard(chain.pattern, wanted, site))
     # What the interferer's radios put into the band, in W.
     power_w = np.zeros(apart_deg.size)
     for radio in _radios(run, interferer):
@@ -157,7 +160,8 @@ def _of_pair(
     for first_s, last_s in zip(found.first_s.tolist(), found.last_s.tolist(), strict=True):
         start_s, end_s = math.floor(first_s), math.ceil(last_s)
         near = (time_s >= start_s - 10.0) & (time_s <= end_s + 10.0)
-        yield InterferencePair(victim, antenna, interferer, start_s, max(end_s, start_s + 1), float(np.min(ratio_db[near])))
+        worst_db = float(np.min(ratio_db[near]))
+        yield InterferencePair(victim, antenna, interferer, start_s, max(end_s, start_s + 1), worst_db)
 
 
 def _downlinks(run: Run, spacecraft: str, antenna: str) -> list[Chain]:

@@ -35,8 +35,8 @@ class BudgetLine:
 def budget_lines(run: Run, spacecraft: str, antenna: str, at_utc: np.datetime64) -> list[BudgetLine]:
     """Every downlink and command link between a spacecraft and an antenna at an instant, term by term.
 
-    The terms of a link add up as printed (losses are negative; an indented term says what the next is made of). Empty where no radio matches a chain of
-    the antenna. :class:`KeyError` where the run has no such spacecraft, orbit or antenna.
+    The terms of a link add up as printed (losses are negative; an indented term says what the next one is
+    made of, and is not added). Empty where no radio matches a chain of the antenna. :class:`KeyError` where the run has no such spacecraft, orbit or antenna.
     """
     times_utc = np.array([at_utc], "datetime64[ms]")
     look = _look(run, spacecraft, antenna, times_utc)
@@ -135,7 +135,8 @@ def _signal(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
 def _air(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
     low = float(path.look.elevation_deg[0]) < LOWEST_STATED_ELEVATION_DEG
     percent, rate = path.sky.percent, path.sky.site.rain_rate_mm_per_h
-    gas_source = "ITU-R P.676-12, Annex 2" + ("" if percent is None else f", vapour of P.836 at {max(percent, 1.0):g} %")
+    vapour = "" if percent is None else f", vapour of P.836 at {max(percent, 1.0):g} %"
+    gas_source = f"ITU-R P.676-12, Annex 2{vapour}"
     yield "free-space loss", -float(path.free_space_db[0]), "dB", "ITU-R P.525"
     low_note = ", carried on below its stated 5 deg" if low else ""
     yield "gas attenuation", -float(path.air.gas_db[0]), "dB", gas_source + low_note
@@ -165,13 +166,14 @@ def _noise(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
         yield "  system noise", float(path.noise_k[0]), "K", figure_note(receiver)
     drop_db = float(path.figure_drop_db[0])
     if path.noise_k is None or drop_db or receiver.g_over_t_curve:
-        source = figure_note(receiver) if path.noise_k is None else "10 log10 of the noise above that of G/T, P.618 section 3"
-        yield "G/T at this elevation", 0.0 - drop_db, "dB", source
+        rise = "10 log10 of the noise above that of G/T, P.618 section 3"
+        yield "G/T at this elevation", 0.0 - drop_db, "dB", figure_note(receiver) if path.noise_k is None else rise
     if path.sun_separation_deg is not None:
         width = dish_of(receiver, chain.frequency_mhz)[1]
         separation = float(path.sun_separation_deg[0])
         where = f"{separation:.1f} deg off" if separation < 180.0 else "below the horizon"
-        yield "Sun", 0.0 - float(path.sun_db[0]), "dB", f"{where}, beam {width:.2f} deg; disc of ITU-R S.1525, from memory"
+        source = f"{where}, beam {width:.2f} deg; disc of ITU-R S.1525, from memory"
+        yield "Sun", 0.0 - float(path.sun_db[0]), "dB", source
 
 
 def _ground_flux(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
@@ -179,7 +181,8 @@ def _ground_flux(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
     found = flux_density(run, chain, path)
     if found is not None:
         density, limit, bandwidth_hz, source = found
-        unit = f"dBW/m2/{bandwidth_hz / 1e3:g}kHz"
+        width = f"{bandwidth_hz / 1e6:g} MHz" if bandwidth_hz >= 1e6 else f"{bandwidth_hz / 1e3:g} kHz"
+        unit = f"dBW/m2/{width}"
         over = float(density[0] - limit[0])
         verdict = f"OVER the limit by {over:.1f} dB: look into it" if over > 0.0 else f"{-over:.1f} dB below the limit"
         yield "flux density at ground", float(density[0]), unit, f"{verdict}; EIRP / (4 pi d^2) over the symbol rate"

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from passplan.geometry.pointing import LookAngles
-from passplan.geometry.sun import pointing_vectors, sun_direction, local_axes
+from passplan.geometry.sun import local_axes, pointing_vectors, sun_direction
 from passplan.inputs.pfd import limits_at
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import Attenuations, SkyPath, skies

@@ -16,6 +16,7 @@ from __future__ import annotations
 import math
 import warnings
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import NamedTuple
 
 import numpy as np
@@ -76,7 +77,9 @@ def weather_table(path: WeatherPath) -> WeatherTable:
     """The table of one path, straight from the propagation package (slow to import: seconds)."""
     with warnings.catch_warnings(), np.errstate(all="ignore"):
         warnings.simplefilter("ignore")
-        constants = _constants(path)
+        # P.618, section 2.5: below 1 %, gas and cloud are those of 1 %.
+        percent = float(np.clip(50.0 if path.percent is None else path.percent, *_CLOUD_PERCENT))
+        constants = site_constants(path.latitude_deg, path.longitude_deg, path.height_km, percent)
         rain_db = _rain(path, constants)
         cloud_db, scintillation_db = np.zeros_like(rain_db), np.zeros_like(rain_db)
         if path.percent is not None:
@@ -87,17 +90,16 @@ def weather_table(path: WeatherPath) -> WeatherTable:
     return WeatherTable(np.nan_to_num(np.maximum(nodes, 0.0)), constants)
 
 
-def _constants(path: WeatherPath) -> SiteConstants:
+@lru_cache(maxsize=1_024)
+def site_constants(latitude_deg: float, longitude_deg: float, height_km: float, percent: float) -> SiteConstants:
+    """What the maps say of a place; ``percent`` (of an average year) is that of the water vapour."""
     from itur.models import itu453, itu836, itu837, itu839
 
-    place = (path.latitude_deg, path.longitude_deg)
-    # P.618, section 2.5: below 1 %, gas and cloud are those of 1 %.
-    percent = float(np.clip(50.0 if path.percent is None else path.percent, *_CLOUD_PERCENT))
-    # P.837 counts 8 766 hours of a year as 100 %; the package gives the probability of rain in %.
+    place = (latitude_deg, longitude_deg)
     found = (
         itu837.rainfall_rate(*place, 0.01), itu839.rain_height(*place), itu837.rainfall_probability(*place),
-        itu836.total_water_vapour_content(*place, percent, path.height_km),
-        itu836.surface_water_vapour_density(*place, percent, path.height_km),
+        itu836.total_water_vapour_content(*place, percent, height_km),
+        itu836.surface_water_vapour_density(*place, percent, height_km),
         itu453.map_wet_term_radio_refractivity(*place, 50),
     )
     return SiteConstants(*(float(np.ravel(item.value)[0]) for item in found))

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from typing import Any
 
-import numpy as np
 import pandas as pd
 
 from passplan.geometry.pointing import Samples
@@ -46,10 +45,8 @@ def _planned(
 ) -> tuple[dict[str, PlannedContact], dict[str, float]]:
     """The downlink contacts of a plan, and what their links can carry at the plan's unavailability [MB]."""
     row_of = {name: k for k, name in enumerate(windows["window_id"])}
-    pieces = plan.segments.assign(
-        link_mb=plan.segments["rate_mbps"] / 8.0
-        * ((plan.segments["end_utc"] - plan.segments["start_utc"]) / np.timedelta64(1, "s"))
-    )
+    seconds = column_seconds(run, plan.segments["end_utc"]) - column_seconds(run, plan.segments["start_utc"])
+    pieces = plan.segments.assign(link_mb=plan.segments["rate_mbps"] * seconds / 8.0)
     link_mb = pieces.groupby("contact_id")["link_mb"].sum().to_dict()
     rate_mbps = pieces.groupby("contact_id")["rate_mbps"].first().to_dict()
     starts, ends = column_seconds(run, plan.contacts["start_utc"]), column_seconds(run, plan.contacts["end_utc"])

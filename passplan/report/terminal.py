@@ -18,6 +18,7 @@ from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.keys import spacecraft_keys
 from passplan.report.timeline import CLOSED, SEEN, SEVERAL, antenna_row, hour_ruler, stretches
+from passplan.report.weather import by_antenna, notices
 
 _STATUS_WORDS = {
     "optimal": "proven best",
@@ -32,13 +33,19 @@ def print_plan(record: PlanRecord, console: Console, *, rows: int | None = 40) -
     """Print the whole report; ``rows`` limits the contacts table (None: all of them)."""
     summary = record.summary
     console.print(_headline(summary))
-    for title, lines in (("Shortfalls", _shortfalls(summary)), ("Warnings", _warnings(summary))):
+    sections = (
+        ("Shortfalls", _shortfalls(summary)), ("Warnings", _warnings(summary)),
+        ("Models outside their range", notices(summary)),
+    )
+    for title, lines in sections:
         if lines:
             _section(console, title, Group(*lines))
     _section(console, "Inputs", _health(summary))
     _section(console, "Antennas through the day, UTC", _timeline(record, console.width))
     _section(console, "Contacts", _contacts(record, rows))
     _section(console, "Data aboard each spacecraft", _storage(summary))
+    if summary.get("weather", {}).get("contacts"):
+        _section(console, "Weather over an average year", by_antenna(record))
     if len(record.contacts):
         _section(console, "Lowest margins", _margins(record))
     console.print()

@@ -77,7 +77,7 @@ def downlink_quality(run: Run, contact: Contact, radio: DownlinkRadio, seen: Sig
     worst, best = figures_db_per_k(run, contact, receiver, sky, seen, radio.frequency_mhz, radome_db)
     loss = loss_db + radio.pointing_loss_db + _path_loss_db(run, contact, radio, sky, seen)
     ratios = [
-        density_ratio_db(cn0_dbhz(_radiated_dbw(radio), loss, figure), radio.symbol_rate_msps * 1e6)
+        density_ratio_db(cn0_dbhz(radiated_dbw(radio), loss, figure), radio.symbol_rate_msps * 1e6)
         - radio.implementation_loss_db
         for figure in (best, worst)
     ]
@@ -91,7 +91,7 @@ def command_quality(run: Run, contact: Contact, radio: CommandRadio, seen: Sight
     for transmitter in (run.transmitters[name] for name in antenna.transmitters):
         mismatch_db = matching_loss_db(radio, transmitter)
         if mismatch_db is not None:
-            levels.append(_radiated_dbw(transmitter) - transmitter.pointing_loss_db - mismatch_db)
+            levels.append(radiated_dbw(transmitter) - transmitter.pointing_loss_db - mismatch_db)
     if not levels:
         return None
     sky = _sky(run, contact, radio, None, 0.6)
@@ -109,7 +109,8 @@ def command_quality(run: Run, contact: Contact, radio: CommandRadio, seen: Sight
     return Quality(seen.time_s, ratio_db, None, clear_deg)
 
 
-def _radiated_dbw(item: DownlinkRadio | Transmitter) -> float:
+def radiated_dbw(item: DownlinkRadio | Transmitter) -> float:
+    """EIRP on boresight after back-off [dBW]."""
     if item.eirp_dbw is not None:
         return item.eirp_dbw - item.back_off_db
     power_w, gain_dbi = item.transmit_power_w or 0.0, item.antenna_gain_dbi or 0.0

@@ -59,6 +59,7 @@ def _needlessly_slow(
     for row in allowed.values():
         faster = row.efficiency_bit_per_symbol > own.efficiency_bit_per_symbol
         if faster and row.required_esn0_db <= spare_db:
-            sentence = f"it stays on {own.name} where {row.name} would hold, from {settled_s - contact.start_s:.0f} s on"
+            from_s = settled_s - contact.start_s
+            sentence = f"it stays on {own.name} where {row.name} would hold, from {from_s:.0f} s on"
             yield Fault("steps", contact.place, sentence)
             return
