@@ -36,7 +36,8 @@ def budget_lines(run: Run, spacecraft: str, antenna: str, at_utc: np.datetime64)
     """Every downlink and command link between a spacecraft and an antenna at an instant, term by term.
 
     The terms of a link add up as printed (losses are negative; an indented term says what the next one is
-    made of, and is not added). Empty where no radio matches a chain of the antenna. :class:`KeyError` where the run has no such spacecraft, orbit or antenna.
+    made of, and is not added). Empty where no radio matches a chain of the antenna. :class:`KeyError` where
+    the run has no such spacecraft, orbit or antenna.
     """
     times_utc = np.array([at_utc], "datetime64[ms]")
     look = _look(run, spacecraft, antenna, times_utc)

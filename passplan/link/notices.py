@@ -55,7 +55,7 @@ def _elevation(path: SkyPath, lowest_deg: float) -> list[str]:
     if lowest_deg >= LOWEST_STATED_ELEVATION_DEG:
         return []
     air = "P.676 gas, P.840 cloud and P.618 scintillation are" if path.percent is not None else "P.676 gas is"
-    held = "; cloud and scintillation are held below 3 deg" if path.percent is not None else ""
+    held = "; cloud and scintillation are held below 2.9 deg" if path.percent is not None else ""
     return [f"{air} stated from 5 deg; carried on below it{held}"]
 
 

@@ -25,7 +25,7 @@ __all__ = ["CommandProfile", "DownlinkProfile", "WindowLink", "link_profiles"]
 
 # Memory stays flat: this many samples, and tables, are worked on at a time.
 _BLOCK_SAMPLES = 400_000
-_BLOCK_TABLES = 400
+_BLOCK_TABLES = 200
 
 
 @dataclass(frozen=True)

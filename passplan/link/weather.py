@@ -2,13 +2,15 @@
 
 They come from the propagation package on a grid of elevations, once per path, and are cached:
 
-    elevation    0 ...... 3 ...... 5 .............. 90 deg
+    elevation    0 ..... 2.9 ..... 5 .............. 90 deg
     rain         P.618, section 2.2.1.1, with its own form below 5
-    cloud        as at 3 | 1 / sin(el), stated from 5 on
-    scintillation as at 3 | P.618, section 2.4.1, stated from 5 on
+    cloud        as at 2.9 | 1 / sin(el), stated from 5 on
+    scintillation as at 2.9 | P.618, section 2.4.1, stated from 5 on
 
-P.618 has a small step in its rain at 5 deg, where its two forms of the path length meet; the grid bridges it
-within 0.02 deg, so that a link is continuous along a pass. These are long-term statistics, not a forecast.
+P.618 has small steps in its rain, at 5 deg where its two forms of the path length meet and at 25 deg where an
+exponent changes; tables bridge them within 0.02 deg, so that a link is continuous along a pass. Overhead it
+falls as the square root of the distance from the zenith, so nodes crowd together there. These are long-term
+statistics, not a forecast.
 """
 
 from __future__ import annotations
@@ -23,11 +25,13 @@ import numpy as np
 
 from passplan.link.budget import Floats
 
-LOWEST_HELD_DEG = 3.0
+LOWEST_HELD_DEG = 2.9
 """Below this elevation cloud and scintillation are held at their value here."""
 
-# Close together where attenuation changes fast; the edges of P.618's branches (5 and 25 deg) are nodes.
-NODES_DEG: Floats = np.concatenate((np.arange(500) * 0.02, 10.0 + np.arange(801) * 0.1))
+# Close together where attenuation changes fast, and on both sides of the edges of P.618's branches.
+NODES_DEG: Floats = np.unique(np.concatenate((
+    np.arange(500) / 50.0, 90.0 - (np.arange(1491) * np.sqrt(80.0) / 1490.0) ** 2, [5.0 - 1e-6, 5.0, 25.0 - 1e-6, 25.0],
+)))
 
 _RAIN_PERCENT = (0.001, 5.0)
 _CLOUD_PERCENT = (1.0, 99.0)

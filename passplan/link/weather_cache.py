@@ -21,7 +21,7 @@ import numpy as np
 from passplan.link.gas_cache import cache_folder, package_stamp
 from passplan.link.weather import NODES_DEG, SiteConstants, WeatherPath, WeatherTable, weather_table
 
-_FORMAT = 1
+_FORMAT = 2
 _DIGEST_BYTES = 32
 _SHAPE = (3, NODES_DEG.size)
 
