@@ -215,4 +215,5 @@ def _records(
     """Checked records by name, from TOML tables or the CSV file that the key names."""
     placed = placed_records(document, key, path, reader, findings)
     items = [(place, checked(model, place[2], place[0], place[1], findings)) for place in placed]
+    findings.unsound.update(str(place[2].get("name")) for place, item in items if item is None)
     return unique([(place, item) for place, item in items if item is not None], key, findings)
