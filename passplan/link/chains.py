@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 from typing import Literal
 
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio
@@ -67,6 +67,11 @@ class Chain:
     receiver: Receiver | None = None
     transmit_bounds: Antenna | None = None
     control: RateControl = RateControl()
+
+    @cached_property
+    def needs_db(self) -> tuple[float, ...]:
+        """What the rungs need, in their order [dB]."""
+        return tuple(rung.required_db for rung in self.rungs)
 
     @cached_property
     def merit_db(self) -> float:
@@ -147,6 +152,7 @@ def chains_between(run: Run, spacecraft: str, antenna: str) -> tuple[Chain, ...]
     return tuple(chains)
 
 
+@lru_cache(maxsize=1_024)
 def rungs_of(radio: DownlinkRadio, table: ModcodTable) -> tuple[Rung, ...]:
     """The rungs of a downlink radio, in falling order of net rate, pilots counted."""
     return tuple(

@@ -92,7 +92,7 @@ def _by_ladder(jobs: Sequence[_Job]) -> Mapping[tuple[float, ...], list[_Job]]:
     """Jobs whose rungs have the same requirements are searched together, those of one table side by side."""
     groups: dict[tuple[float, ...], list[_Job]] = defaultdict(list)
     for job in sorted(jobs, key=lambda job: job.table):
-        groups[tuple(rung.required_db for rung in job.chain.rungs)].append(job)
+        groups[job.chain.needs_db].append(job)
     return groups
 
 
@@ -122,7 +122,8 @@ def _evaluate(
     quality_db = merit_db - free_space_loss_db(frequency_mhz, samples.range_km[pick]) - slant_db
     owns = [slice(offsets[k], offsets[k + 1]) for k in range(len(jobs))]
     for k, job in enumerate(jobs):
-        quality_db[owns[k]] -= _moving_loss_db(run, slants.paths[job.table], job, tables[row[k]], samples)
+        if job.chain.pattern or run.policy.sun_noise:
+            quality_db[owns[k]] -= _moving_loss_db(run, slants.paths[job.table], job, tables[row[k]], samples)
     time_s = samples.time_s[pick]
     found = find_stretches(time_s, quality_db, offsets, thresholds_db)
     for k, job in enumerate(jobs):
