@@ -70,7 +70,9 @@ def check_matches(
     for name, radio in radios.items():
         if name not in carried:
             findings.warn(f"{file}: radio {name} is carried by no spacecraft")
-        elif antennas and not fitted_unsound and not any(matching_loss_db(radio, chains[key]) is not None for key in fitted if key in chains):
+        elif antennas and not fitted_unsound and not any(
+            matching_loss_db(radio, chains[key]) is not None for key in fitted if key in chains
+        ):
             verb = "receive" if radio.direction == "downlink" else "command"
             owners = ", ".join(carried[name][:3]) + (", ..." if len(carried[name]) > 3 else "")
             findings.problem(

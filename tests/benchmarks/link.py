@@ -73,8 +73,8 @@ def network(percent: float | None) -> Run:
         transmitters={
             "tx": Transmitter(name="tx", low_mhz=2_025, high_mhz=2_110, polarisations=("RHCP",), eirp_dbw=48.0)
         },
-        modcod_tables={"dvb-s2": builtin_table("dvb-s2")}, closures=(), requests=(), policy=Policy(unavailability_percent=percent), orbits={},
-        left_out={}, elements=pd.DataFrame(),
+        modcod_tables={"dvb-s2": builtin_table("dvb-s2")}, closures=(), requests=(),
+        policy=Policy(unavailability_percent=percent), orbits={}, left_out={}, elements=pd.DataFrame(),
     )
 
 
@@ -119,14 +119,14 @@ def baseline(run: Run, windows: pd.DataFrame, samples: Samples, percent: float) 
         sky, site = skies([path])[path], path.site
         constants = sky.constants
         assert constants is not None
-        elevation = samples.elevation_deg[samples.offsets[i] : samples.offsets[i + 1]]
+        elevation, air = samples.elevation_deg[samples.offsets[i] : samples.offsets[i + 1]], surface_weather(site)
         began = time.process_time()
         with warnings.catch_warnings(), np.errstate(all="ignore"):
             warnings.simplefilter("ignore")
             parts = itur.atmospheric_attenuation_slant_path(
                 site.latitude_deg, site.longitude_deg, chain.frequency_mhz / 1e3, elevation, percent, path.diameter_m,
                 hs=site.height_m / 1e3, rho=constants.vapour_density_g_per_m3, R001=constants.rain_rate_mm_per_h,
-                eta=path.efficiency, P=surface_weather(site).pressure_hpa, T=surface_weather(site).temperature_k - 273.15,
+                eta=path.efficiency, P=air.pressure_hpa, T=air.temperature_k - 273.15,
                 V_t=constants.vapour_column_kg_per_m2, H=None, tau=45, return_contributions=True,
             )
         spent_s += time.process_time() - began

@@ -102,7 +102,8 @@ def test_every_term_is_shown_and_they_add_up(shown: Run) -> None:
     terms = _numbers(found)
     summed = [
         "EIRP", "pointing loss aboard", "pattern loss aboard", "free-space loss", "gas attenuation", "weather",
-        "polarisation loss", "pointing loss on the ground", "G/T", "G/T at this elevation", "Sun", "Boltzmann's constant",
+        "polarisation loss", "pointing loss on the ground", "G/T", "G/T at this elevation", "Sun",
+        "Boltzmann's constant",
     ]
     assert terms["C/N0"] == pytest.approx(sum(terms[name] for name in summed), abs=1e-6)
     assert terms["EIRP"] == pytest.approx(
@@ -130,7 +131,9 @@ def test_flux_density_is_flagged_against_the_user_s_limits(shown: Run) -> None:
     terms = _numbers(budget_lines(shown, "Plover", "Dish", NOON))
     assert terms["flux density at ground"] == pytest.approx(-142.2, abs=0.2)
     assert terms["  its limit"] == -115.0
-    tight = PfdLimit(low_mhz=26_000, high_mhz=27_000, arrival_deg=0, limit_dbw_per_m2=-160, bandwidth_hz=1e6, source="ours")
+    tight = PfdLimit(
+        low_mhz=26_000, high_mhz=27_000, arrival_deg=0, limit_dbw_per_m2=-160, bandwidth_hz=1e6, source="ours"
+    )
     flagged = budget_lines(replace(shown, pfd_limits=(tight,)), "Plover", "Dish", NOON)
     line = next(line for line in flagged if line.term == "flux density at ground")
     assert "OVER the limit" in line.source
@@ -146,8 +149,8 @@ def test_back_off_and_built_eirp() -> None:
     stated = X_RADIO.model_copy(update={"back_off_db": 3.0})
     assert radiated_dbw(stated) == 12.0
     sender = Transmitter(
-        name="tx", low_mhz=2_025, high_mhz=2_110, polarisations=("RHCP",), transmit_power_w=100.0, antenna_gain_dbi=35.0,
-        transmit_loss_db=2.0,
+        name="tx", low_mhz=2_025, high_mhz=2_110, polarisations=("RHCP",), transmit_power_w=100.0,
+        antenna_gain_dbi=35.0, transmit_loss_db=2.0,
     )
     assert radiated_dbw(sender) == pytest.approx(53.0)
 
@@ -220,7 +223,7 @@ def test_notices_of_a_run_name_what_was_assumed() -> None:
     found = run_notices(run, windows)
     assert any("that of 0.01 % is taken" in text for text in found)
     assert any("adds no noise" in text for text in found)
-    assert all(text.endswith("link)") or text.endswith("links)") for text in found)
+    assert all(text.endswith(("link)", "links)")) for text in found)
     assert run_notices(network(), windows) == []
 
 

@@ -83,7 +83,8 @@ def test_a_curve_is_followed_and_its_noise_is_inside() -> None:
 def test_more_rain_or_a_wet_radome_never_betters_the_figure(one_db: float, other_db: float, radome_db: float) -> None:
     less, more = sorted((one_db, other_db))
     for receiver in (
-        Receiver(**BAND, gain_dbi=50.0, receiver_noise_k=60.0), Receiver(**BAND, gain_dbi=50.0, noise_temperature_k=150.0),
+        Receiver(**BAND, gain_dbi=50.0, receiver_noise_k=60.0),
+        Receiver(**BAND, gain_dbi=50.0, noise_temperature_k=150.0),
     ):
         drops = []
         for rain_db, radome in ((less, 0.0), (more, 0.0), (more, radome_db)):

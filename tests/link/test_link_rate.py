@@ -28,7 +28,9 @@ def _volume(choice: DownlinkChoice | None) -> float:
     return 0.0 if choice is None else choice.volume_mb
 
 
-def _best(run: Run, shape: tuple[float, float, float, float], begin: float = 0.0, end: float = 1.0) -> DownlinkChoice | None:
+def _best(
+    run: Run, shape: tuple[float, float, float, float], begin: float = 0.0, end: float = 1.0
+) -> DownlinkChoice | None:
     windows, samples = passes(shape)
     profile = link_profiles(run, windows, samples)[0].downlink
     first, last = samples.time_s[0], samples.time_s[-1]

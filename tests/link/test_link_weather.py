@@ -83,9 +83,13 @@ def test_a_warm_cache_never_imports_the_propagation_package() -> None:
 
 
 @pytest.mark.parametrize("site", [WET, DRY])
-@pytest.mark.parametrize(("frequency_mhz", "percent"), [(8_200.0, 0.01), (26_250.0, 0.01), (26_250.0, 1.0), (40_000.0, 0.1)])
+@pytest.mark.parametrize(
+    ("frequency_mhz", "percent"), [(8_200.0, 0.01), (26_250.0, 0.01), (26_250.0, 1.0), (40_000.0, 0.1)]
+)
 @pytest.mark.filterwarnings("ignore")
-def test_tables_are_within_a_hundredth_of_a_db_of_the_direct_call(site: Site, frequency_mhz: float, percent: float) -> None:
+def test_tables_are_within_a_hundredth_of_a_db_of_the_direct_call(
+    site: Site, frequency_mhz: float, percent: float
+) -> None:
     import itur
 
     path = SkyPath(site, frequency_mhz, percent=percent, diameter_m=5.0)
