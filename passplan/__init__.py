@@ -7,7 +7,8 @@ The commands' steps as functions::
     run = passplan.load_run("configs/daily.toml")
     windows = passplan.windows_of(run)          # DataFrame, one row for each window
     plan = passplan.plan_run(run)               # audited; .contacts, .segments, .unused are DataFrames
-    passplan.write_plan(plan, "plans/today")
+    passplan.write_plan(plan, "plans/today")    # with report.html in it
+    passplan.export_plan("plans/today", "calendar")
 """
 
 from __future__ import annotations
@@ -25,6 +26,7 @@ if TYPE_CHECKING:
     from passplan.planning.record import PlanRecord
     from passplan.planning.steps import links_of, plan_run, windows_of
     from passplan.report.directory import read_plan, write_plan
+    from passplan.report.export import export_plan
     from passplan.studies.study import read_study
     from passplan.studies.whatif import run_study
 
@@ -34,6 +36,7 @@ _HOMES = {
     "PlanRecord": "planning.record",
     "Run": "inputs.run",
     "audit_plan": "planning.audit",
+    "export_plan": "report.export",
     "links_of": "planning.steps",
     "load_run": "inputs.load",
     "plan_run": "planning.steps",
@@ -50,6 +53,7 @@ __all__ = [
     "Run",
     "__version__",
     "audit_plan",
+    "export_plan",
     "links_of",
     "load_run",
     "plan_run",

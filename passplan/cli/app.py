@@ -12,7 +12,7 @@ from typing import Annotated
 import typer
 
 from passplan._version import __version__
-from passplan.cli import audit, check, link, nightly, plan, show, whatif, windows
+from passplan.cli import audit, check, export, link, nightly, plan, show, whatif, windows
 
 app = typer.Typer(
     name="passplan",
@@ -47,6 +47,7 @@ app.command("link")(link.command)
 app.command("plan")(plan.command)
 app.command("audit")(audit.command)
 app.command("show")(show.command)
+app.command("export")(export.command)
 app.command("whatif")(whatif.command)
 app.command("nightly")(nightly.command)
 

@@ -62,8 +62,8 @@ def window_ids(
     All windows of a pass must be given, those outside the planning horizon too.
     """
     kinds, which = np.unique(slot, return_inverse=True)
-    labels = [_slot_label(int(kind)) for kind in kinds]
-    ids = [pair_prefix[p] + labels[w] for p, w in zip(pair.tolist(), which.tolist(), strict=True)]
+    labels = np.array([_slot_label(int(kind)) for kind in kinds], object)
+    ids: list[str] = (np.array(pair_prefix, object)[pair] + labels[which]).tolist()
     shared = _not_alone(pair, slot)
     order = shared[np.lexsort((start_s[shared], slot[shared], pair[shared]))]
     rank = 0

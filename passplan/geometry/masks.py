@@ -2,14 +2,21 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import pairwise
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.geometry.timescale import Floats
 from passplan.inputs.ground import Antenna
+
+# Keeps the azimuths of different antennas apart in one sorted list.
+_APART_DEG = 1_000.0
+# Points closer than this in azimuth make a step.
+_STEP_DEG = 1e-9
 
 
 @dataclass(frozen=True)
@@ -61,7 +68,7 @@ def mask_of(antenna: Antenna) -> Mask:
     points = _wrapped(sorted(antenna.mask, key=lambda point: point[0]))
     pieces: list[tuple[float, float, float, float]] = []
     for (a, x), (b, y) in pairwise(points):
-        if b <= a:
+        if b - a < _STEP_DEG:
             continue
         if (x - floor) * (y - floor) < 0.0:
             turn = a + (b - a) * (floor - x) / (y - x)
@@ -80,3 +87,44 @@ def _wrapped(points: list[tuple[float, float]]) -> list[tuple[float, float]]:
     head = [] if first == 0.0 else [(0.0, at_north)]
     tail = [] if last == 360.0 else [(360.0, at_north)]
     return head + points + tail
+
+
+@dataclass(frozen=True)
+class Masks:
+    """The pieces of several antennas' masks, one after the other; a piece has one number among them all.
+
+    ``centre_deg``, ``level_deg`` and ``slope`` (pieces,) describe the line of each piece, ``corner_deg`` the azimuth
+    where it begins; ``base``, ``count`` and ``highest_deg`` (antennas,) belong to the antennas.
+    """
+
+    centre_deg: Floats
+    level_deg: Floats
+    slope: Floats
+    corner_deg: Floats
+    base: NDArray[np.int64]
+    count: NDArray[np.int64]
+    highest_deg: Floats
+
+    @cached_property
+    def _keys(self) -> Floats:
+        return self.corner_deg + _APART_DEG * np.repeat(np.arange(self.base.size), self.count)
+
+    def piece(self, antenna: NDArray[np.int64], azimuth_deg: Floats) -> NDArray[np.int64]:
+        """Number of the piece that holds an azimuth in [0, 360) of an antenna."""
+        return np.searchsorted(self._keys, azimuth_deg + _APART_DEG * antenna, side="right") - 1
+
+    def beside(
+        self, piece: NDArray[np.int64], antenna: NDArray[np.int64], steps: NDArray[np.int64]
+    ) -> NDArray[np.int64]:
+        """Number of the piece so many steps clockwise from ``piece``, around north if need be."""
+        base = self.base[antenna]
+        return base + (piece - base + steps) % self.count[antenna]
+
+
+def joined_masks(masks: Sequence[Mask]) -> Masks:
+    """The pieces of ``masks`` with one numbering."""
+    count = np.array([mask.begin_deg.size for mask in masks])
+    columns = ("begin_deg", "finish_deg", "first_deg", "last_deg", "slope")
+    begin, finish, first, last, slope = (np.concatenate([getattr(mask, name) for mask in masks]) for name in columns)
+    highest = np.array([max(mask.first_deg.max(), mask.last_deg.max()) for mask in masks])
+    return Masks(0.5 * (begin + finish), 0.5 * (first + last), slope, begin, np.cumsum(count) - count, count, highest)

@@ -5,9 +5,13 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from passplan.geometry.frames import INERTIAL_FRAMES, inertial_to_itrf, teme_to_itrf
+from passplan.geometry.frames import EARTH_RATE_RAD_S, INERTIAL_FRAMES, inertial_to_itrf, teme_to_itrf
+from passplan.geometry.regimes import Regime, regime_of_state
 from passplan.geometry.timescale import Floats, system_minus_utc_s
 from passplan.inputs.ephemeris import Ephemeris, EphemerisSegment
+
+# Spans are known to the resolution of utc_s, so their ends are taken with a microsecond's grace.
+_EDGE_S = 1e-6
 
 
 def segment_span(segment: EphemerisSegment) -> tuple[float, float]:
@@ -22,7 +26,7 @@ def segment_span(segment: EphemerisSegment) -> tuple[float, float]:
 
 
 def segment_itrf(segment: EphemerisSegment, utc_s: Floats) -> tuple[Floats, Floats]:
-    """Earth-fixed position (n, 3) in km and velocity in km/s; NaN outside the segment's usable span.
+    """Earth-fixed position (n, 3) in km and velocity in km/s; NaN more than a microsecond outside the usable span.
 
     Frames: ICRF, GCRF and EME2000 (IAU 2000A by Skyfield), TEME (turned by GMST), and ITRF realisations,
     taken as the Earth-fixed frame itself. The reader refuses all others.
@@ -30,7 +34,7 @@ def segment_itrf(segment: EphemerisSegment, utc_s: Floats) -> tuple[Floats, Floa
     low, high = segment_span(segment)
     positions = np.full((utc_s.size, 3), np.nan)
     velocities = np.full((utc_s.size, 3), np.nan)
-    inside = np.flatnonzero((utc_s >= low) & (utc_s <= high))
+    inside = np.flatnonzero((utc_s >= low - _EDGE_S) & (utc_s <= high + _EDGE_S))
     if inside.size:
         times = utc_s[inside]
         own = times + system_minus_utc_s(segment.time_system, times)
@@ -49,10 +53,19 @@ def ephemeris_itrf(ephemeris: Ephemeris, utc_s: Floats) -> tuple[Floats, Floats]
     velocities = np.full((utc_s.size, 3), np.nan)
     for segment in ephemeris.segments:
         low, high = segment_span(segment)
-        inside = np.flatnonzero((utc_s >= low) & (utc_s <= high))
+        inside = np.flatnonzero((utc_s >= low - _EDGE_S) & (utc_s <= high + _EDGE_S))
         if inside.size:
             positions[inside], velocities[inside] = segment_itrf(segment, utc_s[inside])
     return positions, velocities
+
+
+def ephemeris_regime(ephemeris: Ephemeris) -> Regime:
+    """The regime of an ephemeris, from the state in the middle of its first segment."""
+    low, high = segment_span(ephemeris.segments[0])
+    positions, velocities = segment_itrf(ephemeris.segments[0], np.array([0.5 * (low + high)]))
+    # Without the Earth's rotation; the axes may as well be those of the moment.
+    inertial = velocities[0] + np.cross([0.0, 0.0, EARTH_RATE_RAD_S], positions[0])
+    return regime_of_state(positions[0], inertial)
 
 
 def interpolate(segment: EphemerisSegment, own_s: Floats) -> tuple[Floats, Floats]:

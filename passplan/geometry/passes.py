@@ -9,18 +9,22 @@ from typing import TypeVar
 import numpy as np
 
 from passplan.geometry import stencil
-from passplan.geometry.masks import Mask
-from passplan.geometry.notches import Sky, cut_to_mask
+from passplan.geometry.masks import Mask, joined_masks
+from passplan.geometry.notches import cut_to_masks
 from passplan.geometry.pointing import azimuth_of
 from passplan.geometry.regimes import ALWAYS_S
 from passplan.geometry.roots import Flags, Indices
-from passplan.geometry.scan import Scene, Spans, spans, view
+from passplan.geometry.scan import Spans, spans
+from passplan.geometry.scene import Scene, view
+from passplan.geometry.sky import sky
 from passplan.geometry.stations import Stations
 from passplan.geometry.summits import Summits, summits
 from passplan.geometry.timescale import Floats
 from passplan.geometry.trajectory import Block
 
 _STEEP_SINE = 0.98
+# Spans cut to shaped masks at once; bounds the memory of their polynomials.
+_SPANS_AT_ONCE = 2_000
 
 
 @dataclass(frozen=True)
@@ -64,11 +68,9 @@ def block_rows(
     """The windows of one block from the antennas numbered ``antennas`` (with their places and masks)."""
     sines = np.sin(np.radians([mask.lowest_deg for mask in masks]))
     scene = view(block, places, sines)
-    found = spans(scene)
+    found, top = spans(scene)
     low, high = (start_s - block.start_s) / block.step_s, (end_s - block.start_s) / block.step_s
-    first_pass = _pass_numbers(scene, found)
-    found, number = _near_horizon(found, first_pass, low, high)
-    top = summits(scene, found.pair, found.start, found.end)
+    found, top, number = _near_horizon(found, top, _pass_numbers(scene, found), low, high)
     crown = _crowns(block.step_s, found, number, top)
     found, crown, top = _cut_by_masks(block, places, masks, scene, found, crown, top)
     start, end = np.clip(found.start, low, high), np.clip(found.end, low, high)
@@ -79,7 +81,7 @@ def block_rows(
         for whole, clipped in ((top.at, part.at), (top.sine, part.sine), (top.range_km, part.range_km)):
             whole[cut] = clipped
     antenna, own = np.divmod(found.pair, scene.objects)
-    azimuth = _azimuths(block, places, antenna, own, (start, end), inside)
+    azimuth = _azimuths(block, places, antenna, own, found.centre, np.stack([start, end]), inside)
 
     def utc(x: Floats) -> Floats:
         return np.asarray(block.start_s + block.step_s * x)
@@ -130,13 +132,15 @@ def _sets_between(scene: Scene, pair: Indices, low: Floats, high: Floats) -> Fla
     return np.asarray(np.logical_or.reduceat(below, first))
 
 
-def _near_horizon(found: Spans, number: Indices, low: float, high: float) -> tuple[Spans, Indices]:
+def _near_horizon(
+    found: Spans, top: Summits, number: Indices, low: float, high: float
+) -> tuple[Spans, Summits, Indices]:
     """Only the passes with a span in the planning horizon, all their spans."""
     touches = (found.end > low) & (found.start < high)
     wanted = np.zeros(int(number[-1]) + 1 if number.size else 0, bool)
     wanted[number[touches]] = True
-    keep = wanted[number]
-    return Spans(*(getattr(found, f.name)[keep] for f in fields(Spans))), number[keep]
+    keep = np.flatnonzero(wanted[number])
+    return _rows(found, keep), _rows(top, keep), number[keep]
 
 
 @dataclass(frozen=True)
@@ -152,7 +156,7 @@ def _crowns(step_s: float, found: Spans, number: Indices, top: Summits) -> _Crow
     """The highest moment of each pass; in a pass that does not end for days each span goes by its own."""
     fresh = np.diff(number, prepend=-1) != 0
     if fresh.all():
-        return _Crowns(top.at, top.sine, (found.end - found.start) * step_s >= ALWAYS_S)
+        return _Crowns(top.at.copy(), top.sine.copy(), (found.end - found.start) * step_s >= ALWAYS_S)
     heads = np.flatnonzero(fresh)
     tails = np.append(heads[1:], number.size) - 1
     which = np.cumsum(fresh) - 1
@@ -166,31 +170,46 @@ def _cut_by_masks(
     block: Block, places: Stations, masks: Sequence[Mask], scene: Scene, found: Spans, crown: _Crowns, top: Summits
 ) -> tuple[Spans, _Crowns, Summits]:
     """Spans above the lowest point of a mask that depends on azimuth, replaced by their pieces above the mask."""
-    for number, mask in enumerate(masks):
-        antenna, own = np.divmod(found.pair, scene.objects)
-        mine = np.flatnonzero(antenna == number)
-        if mask.constant or not mine.size:
-            continue
-        sky = Sky(block.positions_km, places.subset(np.array([number])))
-        piece, start, end = cut_to_mask(sky, mask, own[mine], found.start[mine], found.end[mine], top.at[mine])
-        parent, rest = mine[piece], np.flatnonzero(antenna != number)
-        above = summits(scene, found.pair[parent], start, end)
-        endless = crown.endless[parent]
-        cut = Spans(
-            found.pair[parent],
-            start,
-            end,
-            found.open_start[parent] & (start == found.start[parent]),
-            found.open_end[parent] & (end == found.end[parent]),
-        )
-        renamed = _Crowns(
-            np.where(endless, above.at, crown.at[parent]), np.where(endless, above.sine, crown.sine[parent]), endless
-        )
-        found, crown, top = _followed(found, rest, cut), _followed(crown, rest, renamed), _followed(top, rest, above)
-    return found, crown, top
+    shaped = np.array([not mask.constant for mask in masks])
+    if not shaped.any():
+        return found, crown, top
+    antenna, own = np.divmod(found.pair, scene.objects)
+    table = joined_masks(masks)
+    mine = np.flatnonzero(shaped[antenna])
+    parents, starts, ends = [], [], []
+    for at in range(0, mine.size, _SPANS_AT_ONCE):
+        some = mine[at : at + _SPANS_AT_ONCE]
+        here = places.subset(antenna[some])
+        heaven = sky(block, here, own[some], found.centre[some], found.start[some], found.end[some])
+        pieces = cut_to_masks(heaven, table, antenna[some], found.start[some], found.end[some], top.at[some])
+        parents.append(some[pieces.window])
+        starts.append(pieces.start)
+        ends.append(pieces.end)
+    if not mine.size:
+        return found, crown, top
+    parent, start, end = np.concatenate(parents), np.concatenate(starts), np.concatenate(ends)
+    above = summits(scene, found.pair[parent], start, end)
+    endless = crown.endless[parent]
+    cut = Spans(
+        found.pair[parent],
+        start,
+        end,
+        found.open_start[parent] & (start == found.start[parent]),
+        found.open_end[parent] & (end == found.end[parent]),
+        found.centre[parent],
+    )
+    renamed = _Crowns(
+        np.where(endless, above.at, crown.at[parent]), np.where(endless, above.sine, crown.sine[parent]), endless
+    )
+    rest = np.flatnonzero(~shaped[antenna])
+    return _followed(found, rest, cut), _followed(crown, rest, renamed), _followed(top, rest, above)
 
 
 _Columns = TypeVar("_Columns", Spans, _Crowns, Summits)
+
+
+def _rows(table: _Columns, index: Indices) -> _Columns:
+    return type(table)(*(getattr(table, f.name)[index] for f in fields(table)))
 
 
 def _followed(table: _Columns, rest: Indices, more: _Columns) -> _Columns:
@@ -200,28 +219,40 @@ def _followed(table: _Columns, rest: Indices, more: _Columns) -> _Columns:
 
 
 def _azimuths(
-    block: Block, places: Stations, antenna: Indices, own: Indices, edges: tuple[Floats, Floats], inside: Flags
-) -> tuple[Floats, Floats]:
-    """Azimuths (deg) at both edges of the windows inside the planning horizon; NaN for the others."""
-    found = np.full((2, antenna.size), np.nan)
-    some = np.flatnonzero(inside)
-    at = np.concatenate([edge[some] for edge in edges])
-    east, north, _ = _local(block, places, np.tile(antenna[some], 2), np.tile(own[some], 2), at)
-    found[:, some] = azimuth_of(east, north).reshape(2, -1)
-    return found[0], found[1]
+    block: Block, places: Stations, antenna: Indices, own: Indices, centre: Indices, edges: Floats, inside: Flags
+) -> Floats:
+    """Azimuths (2, n) in deg at both ``edges`` of the windows inside the planning horizon; NaN for the others."""
+    found = np.full(edges.shape, np.nan)
+    short, long = np.flatnonzero(inside & (centre >= 0)), np.flatnonzero(inside & (centre < 0))
+    east, north, _ = _local(block, places, antenna[short], own[short], centre[short], edges[:, short])
+    found[:, short] = azimuth_of(east, north)
+    for edge in (0, 1):
+        at = edges[edge, long]
+        east, north, _ = _local(block, places, antenna[long], own[long], np.floor(at).astype(np.int64), at[None])
+        found[edge, long] = azimuth_of(east[0], north[0])
+    return found
 
 
 def _peak_deg(block: Block, places: Stations, antenna: Indices, own: Indices, top: Summits) -> Floats:
     """Elevation at the highest moment; near the zenith from the horizontal distance, as the arcsine is blunt there."""
     degrees = np.degrees(np.arcsin(np.minimum(top.sine, 1.0)))
     steep = np.flatnonzero(top.sine > _STEEP_SINE)
-    east, north, up = _local(block, places, antenna[steep], own[steep], top.at[steep])
-    degrees[steep] = np.degrees(np.arctan2(up, np.hypot(east, north)))
+    at = top.at[steep]
+    east, north, up = _local(block, places, antenna[steep], own[steep], np.floor(at).astype(np.int64), at[None])
+    degrees[steep] = np.degrees(np.arctan2(up[0], np.hypot(east[0], north[0])))
     return np.asarray(degrees)
 
 
-def _local(block: Block, places: Stations, antenna: Indices, own: Indices, at: Floats) -> tuple[Floats, Floats, Floats]:
-    """East, north and up (km) at grid instants ``at`` for each window's antenna and object."""
-    line = np.stack(stencil.interpolate(tuple(block.positions_km), own, at), axis=-1) - places.positions_km[antenna]
-    east, north, up = (np.einsum("ij,ij->i", axis[antenna], line) for axis in (places.east, places.north, places.up))
-    return east, north, up
+def _local(
+    block: Block, places: Stations, antenna: Indices, own: Indices, sample: Indices, at: Floats
+) -> tuple[Floats, Floats, Floats]:
+    """East, north and up (k, n) in km at grid instants ``at`` (k, n), by the stencils around ``sample`` (n,)."""
+    line = [
+        part - places.positions_km[:, axis].take(antenna)
+        for axis, part in enumerate(stencil.interpolate(tuple(block.positions_km), own, sample, at))
+    ]
+
+    def along(direction: Floats) -> Floats:
+        return np.asarray(sum(direction[:, axis].take(antenna) * part for axis, part in enumerate(line)))
+
+    return along(places.east), along(places.north), along(places.up)

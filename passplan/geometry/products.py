@@ -6,8 +6,6 @@ ours gain nothing from them, and on a busy machine they wait for each other: thr
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
 import numpy as np
 
 from passplan.geometry.timescale import Floats
@@ -15,16 +13,12 @@ from passplan.geometry.timescale import Floats
 _MULTIPLICATIONS = 2**18
 
 
-def pieces(rows: int, inner: int, width: int) -> Iterator[slice]:
-    """Column ranges of a (rows, inner) @ (inner, width) product that are each small enough."""
-    step = max(1, _MULTIPLICATIONS // (rows * inner))
-    for at in range(0, width, step):
-        yield slice(at, at + step)
-
-
 def product(left: Floats, right: Floats) -> Floats:
     """``left @ right`` for a small (m, k) and a wide (k, n) array."""
-    result = np.empty((left.shape[0], right.shape[1]))
-    for piece in pieces(left.shape[0], left.shape[1], right.shape[1]):
+    rows, inner = left.shape
+    result = np.empty((rows, right.shape[1]))
+    step = max(1, _MULTIPLICATIONS // (rows * inner))
+    for at in range(0, right.shape[1], step):
+        piece = slice(at, at + step)
         np.matmul(left, right[:, piece], out=result[:, piece])
     return result

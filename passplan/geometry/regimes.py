@@ -6,6 +6,8 @@ import math
 from dataclasses import dataclass
 from typing import Literal
 
+import numpy as np
+from numpy.typing import NDArray
 from sgp4.api import Satrec
 
 OrbitClass = Literal["low", "medium", "geosynchronous", "eccentric"]
@@ -14,7 +16,7 @@ MU_KM3_S2 = 398_600.4418
 _RADIUS_KM = 6_378.137
 # Even steps that divide the day, so that every horizon sees the same grid.
 _LADDER_S = (15.0, 30.0, 60.0, 120.0, 240.0, 300.0, 600.0, 900.0, 1_800.0)
-_ANGLE_PER_STEP_RAD = 0.35
+_ANGLE_PER_STEP_RAD = 0.37
 _STEPS_TO_SINGULARITY = 8.0
 _LOW_APOGEE_KM = 2_500.0
 # A pass of two days counts as "always up"; half a day more lets its edges be seen.
@@ -55,6 +57,21 @@ def regime(mean_motion_rad_s: float, eccentricity: float) -> Regime:
 def regime_of(satrec: Satrec) -> Regime:
     """The regime of an element set."""
     return regime(satrec.no_kozai / 60.0, satrec.ecco)
+
+
+def regime_of_state(position_km: NDArray[np.float64], velocity_km_s: NDArray[np.float64]) -> Regime:
+    """The regime of the orbit through an inertial state (3,), (3,), by the energy and angular momentum integrals.
+
+    A state that is not on a closed orbit is taken as that of a very eccentric one.
+    """
+    radius = float(np.linalg.norm(position_km))
+    energy = 0.5 * float(velocity_km_s @ velocity_km_s) - MU_KM3_S2 / radius
+    if energy >= 0.0:
+        return Regime(_LADDER_S[0], _LONG_REACH_S)
+    axis_km = -0.5 * MU_KM3_S2 / energy
+    momentum = np.cross(position_km, velocity_km_s)
+    eccentricity = math.sqrt(max(0.0, 1.0 - float(momentum @ momentum) / (MU_KM3_S2 * axis_km)))
+    return regime(math.sqrt(MU_KM3_S2 / axis_km**3), eccentricity)
 
 
 def semi_major_axis_km(mean_motion_rad_s: float) -> float:

@@ -8,6 +8,7 @@ Near the ends of a grid the stencil is shifted inwards, never beyond the samples
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 import numpy as np
@@ -20,11 +21,26 @@ from passplan.geometry.timescale import Floats
 POINTS = 14
 _BEFORE = 6
 _NODES = np.arange(POINTS) - _BEFORE
+_ORDERS = np.arange(float(POINTS))[:, None]
+# So few polynomials are summed up in three calls; Horner's fifty, each on little, would take three times as long.
+_FEW = 150
 
 
 def _samples_to_powers() -> Floats:
-    """Row k turns the 14 samples into the coefficient of x^k (inverse Vandermonde matrix)."""
-    return np.asarray(np.linalg.inv(np.vander(_NODES.astype(float), increasing=True)), float)
+    """Row k turns the 14 samples into the coefficient of x^k.
+
+    Each column is a Lagrange basis polynomial, multiplied out in whole numbers: inverting the Vandermonde
+    matrix in floating point would lose four digits.
+    """
+    columns = []
+    for node in _NODES.tolist():
+        others = [other for other in _NODES.tolist() if other != node]
+        powers = [1]
+        for other in others:
+            powers = [a - other * b for a, b in zip([0, *powers], [*powers, 0], strict=True)]
+        scale = math.prod(node - other for other in others)
+        columns.append([power / scale for power in powers])
+    return np.array(columns).T
 
 
 _POWERS = _samples_to_powers()
@@ -66,6 +82,9 @@ def value(powers: Floats, x: Floats) -> Floats:
 
 def slope(powers: Floats, x: Floats) -> tuple[Floats, Floats]:
     """Value and first derivative (per grid step)."""
+    if x.size <= _FEW:
+        basis = _basis(x)
+        return _sum(powers, basis), _sum(powers[1:], basis[:-1] * _ORDERS[1:])
     total = powers[-1] * x
     total += powers[-2]
     first = powers[-1].copy()
@@ -79,6 +98,10 @@ def slope(powers: Floats, x: Floats) -> tuple[Floats, Floats]:
 
 def bend(powers: Floats, x: Floats) -> tuple[Floats, Floats, Floats]:
     """Value, first and second derivative (per grid step)."""
+    if x.size <= _FEW:
+        basis = _basis(x)
+        twice = basis[:-2] * (_ORDERS[2:] * _ORDERS[1:-1])
+        return _sum(powers, basis), _sum(powers[1:], basis[:-1] * _ORDERS[1:]), _sum(powers[2:], twice)
     total = powers[-1] * x
     total += powers[-2]
     first = powers[-1].copy()
@@ -93,17 +116,26 @@ def bend(powers: Floats, x: Floats) -> tuple[Floats, Floats, Floats]:
     return total, first, 2.0 * half
 
 
-def weights(x: Floats) -> Floats:
-    """Weights (n, 14) of the samples for a value at ``x`` (n,); exact at the nodes."""
-    powers = np.empty((POINTS, x.size))
-    powers[0] = 1.0
-    for k in range(1, POINTS):
-        np.multiply(powers[k - 1], x, out=powers[k])
-    return np.ascontiguousarray(product(_POWERS.T, powers).T)
+def _basis(x: Floats) -> Floats:
+    """Powers 0 to 13 of ``x``, (14, n)."""
+    basis = np.empty((POINTS, x.size))
+    basis[0] = 1.0
+    basis[1:] = x
+    return np.multiply.accumulate(basis, axis=0, out=basis)
 
 
-def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], at: Floats) -> list[Floats]:
-    """Values (n,) of each part's ``rows[row[i]]`` (2-d arrays of one shape) at grid instants ``at`` (n,)."""
-    first, zero = place(np.floor(at).astype(np.int64), parts[0].shape[1])
-    weight = weights(at - zero)
-    return [np.asarray(np.einsum("ij,ij->i", weight, samples(rows, row, first))) for rows in parts]
+def _sum(powers: Floats, basis: Floats) -> Floats:
+    return np.asarray(np.einsum("k...n,kn->...n", powers, basis))
+
+
+def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], sample: NDArray[np.int64], at: Floats) -> list[Floats]:
+    """Values (k, n) of each part's ``rows[row[i]]`` (2-d arrays of one shape) at grid instants ``at`` (k, n).
+
+    The k instants of a column share the stencil around grid interval ``sample`` (n,).
+    """
+    first, zero = place(sample, parts[0].shape[1])
+    values = []
+    for rows in parts:
+        powers = polynomials(rows, row, first)
+        values.append(np.stack([value(powers, x - zero) for x in at]))
+    return values

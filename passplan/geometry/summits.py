@@ -7,12 +7,13 @@ from dataclasses import dataclass
 import numpy as np
 
 from passplan.geometry import stencil
+from passplan.geometry.curves import toward_nearest, toward_peak
 from passplan.geometry.roots import Flags, Indices, solve
-from passplan.geometry.scan import Scene
+from passplan.geometry.scene import Scene
 from passplan.geometry.timescale import Floats
 
-# The last Newton step in grid steps; its square is left. Elevation and range are flat there.
-_TOLERANCE = 1e-4
+# In grid steps; elevation and range are flat at their extremes.
+TOLERANCE = 1e-4
 
 
 @dataclass(frozen=True)
@@ -29,9 +30,20 @@ def summits(scene: Scene, pair: Indices, start: Floats, end: Floats) -> Summits:
 
     An extreme lies near a discrete extremum of the samples in and next to the window, each of which is
     refined, or at an edge: the elevation peaks where P' D = P D'/2, the range is least where D' = 0. The
-    edges are looked at where that leaves it open: nothing found inside, an extreme just outside, or a
-    better sample outside.
+    edges are looked at where that leaves doubt: nothing found inside, an extreme just outside, or a better
+    sample outside.
     """
+    highest, nearest = _Best(start.size), _Best(start.size)
+    doubtful = _near_samples(scene, pair, start, end, highest, nearest)
+    for at in (start[doubtful], end[doubtful]):
+        up, square = scene.at(pair[doubtful], at)
+        highest.offer(doubtful, at, up / np.sqrt(square))
+        nearest.offer(doubtful, at, -square)
+    return Summits(highest.at, highest.score, np.sqrt(-nearest.score))
+
+
+def _near_samples(scene: Scene, pair: Indices, start: Floats, end: Floats, highest: _Best, nearest: _Best) -> Indices:
+    """Offer the extremes near the samples from two before each window to two after it; returns doubtful windows."""
     low = np.maximum(np.floor(start).astype(np.int64) - 1, 0)
     high = np.minimum(np.floor(end).astype(np.int64) + 2, scene.length - 1)
     window, sample = _ragged(low, high)
@@ -42,18 +54,17 @@ def summits(scene: Scene, pair: Indices, start: Floats, end: Floats) -> Summits:
     spot = np.flatnonzero(crest | hollow)
     owner, own_sample = window[spot], sample[spot]
     powers, zero = scene.polynomials(pair[owner], own_sample)
-    highest, nearest = _Best(start.size), _Best(start.size)
     doubtful = np.zeros(start.size, bool)
     for best, wanted, slope, rising in (
-        (highest, crest[spot], _toward_peak, False),
-        (nearest, hollow[spot], _toward_nearest, True),
+        (highest, crest[spot], toward_peak, False),
+        (nearest, hollow[spot], toward_nearest, True),
     ):
         pick = np.flatnonzero(wanted)
         here = powers.take(pick, axis=-1)
         middle = zero[pick]
         guess = middle + _vertex(square, spot[pick])
         data = (here if best is highest else np.ascontiguousarray(here[:, 1]),)
-        x = solve(slope, data, middle - 1.0, middle + 1.0, guess, np.full(middle.size, rising), _TOLERANCE)
+        x = solve(slope, data, middle - 1.0, middle + 1.0, guess, rising, TOLERANCE)
         at = x + (own_sample[pick] - middle)
         inside = (at >= start[owner[pick]]) & (at <= end[owner[pick]])
         if best is highest:
@@ -64,9 +75,9 @@ def summits(scene: Scene, pair: Indices, start: Floats, end: Floats) -> Summits:
         best.offer(owner[pick], at, np.where(inside, score, -np.inf))
         doubtful[owner[pick][~inside]] = True
     ends = np.cumsum(high - low + 1)
-    doubtful |= _outside_better(highest, sine, ends, high - low) | _outside_better(nearest, -square, ends, high - low)
-    _look_at_edges(scene, pair, start, end, np.flatnonzero(doubtful), highest, nearest)
-    return Summits(highest.at, highest.score, np.sqrt(-nearest.score))
+    for best, values in ((highest, sine), (nearest, -square)):
+        doubtful |= _outside_better(best, values, ends, high - low)
+    return np.flatnonzero(doubtful)
 
 
 class _Best:
@@ -116,22 +127,3 @@ def _outside_better(best: _Best, values: Floats, ends: Indices, spread: Indices)
         return np.zeros(0, bool)
     last, first = values[ends - 1], values[ends - 1 - spread]
     return np.asarray((best.score == -np.inf) | (last > best.score) | (first > best.score))
-
-
-def _look_at_edges(
-    scene: Scene, pair: Indices, start: Floats, end: Floats, some: Indices, highest: _Best, nearest: _Best
-) -> None:
-    if some.size:
-        for at in (start[some], end[some]):
-            up, square = scene.at(pair[some], at)
-            highest.offer(some, at, up / np.sqrt(square))
-            nearest.offer(some, at, -square)
-
-
-def _toward_peak(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
-    (p, d), (dp, dd), (ddp, ddd) = stencil.bend(powers, x)
-    return dp * d - 0.5 * p * dd, ddp * d + 0.5 * (dp * dd - p * ddd)
-
-
-def _toward_nearest(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
-    return stencil.bend(powers, x)[1:]

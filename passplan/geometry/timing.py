@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -50,17 +50,18 @@ class TimingModel:
         return np.asarray((self.at_epoch_km[source] + self.per_day_km[source] * age_days) / self.speed_km_s[source])
 
 
-def timing_model(sources: Iterable[OrbitSource], growth: Mapping[OrbitClass, Growth] = GROWTH) -> TimingModel:
+def timing_model(sources: Sequence[OrbitSource], growth: Mapping[OrbitClass, Growth] = GROWTH) -> TimingModel:
     """The model for each source, by its orbit class. Speeds are v = sqrt(mu / a), the mean speed of the orbit."""
-    rows = [_row(source, growth) for source in sources]
-    return TimingModel(*np.array(rows, float).reshape(-1, 4).T)
+    rows = np.array([_row(source, growth) for source in sources], float).reshape(-1, 3)
+    never = np.datetime64("2000-01-01", "us")
+    epochs = [never if isinstance(source, Ephemeris) else source.epoch_utc for source in sources]
+    return TimingModel(rows[:, 0], rows[:, 1], rows[:, 2], utc_seconds(np.array(epochs, "datetime64[us]")))
 
 
-def _row(source: OrbitSource, growth: Mapping[OrbitClass, Growth]) -> tuple[float, float, float, float]:
+def _row(source: OrbitSource, growth: Mapping[OrbitClass, Growth]) -> tuple[float, float, float]:
     if isinstance(source, Ephemeris):
         radius_km = float(np.linalg.norm(source.segments[0].positions_km[0]))
-        return EPHEMERIS_SIGMA_KM, 0.0, math.sqrt(MU_KM3_S2 / radius_km), 0.0
+        return EPHEMERIS_SIGMA_KM, 0.0, math.sqrt(MU_KM3_S2 / radius_km)
     motion = source.satrec.no_kozai / 60.0
     model = growth[orbit_class(motion, source.satrec.ecco)]
-    speed_km_s = math.sqrt(MU_KM3_S2 / semi_major_axis_km(motion))
-    return model.at_epoch_km, model.per_day_km, speed_km_s, float(utc_seconds(source.epoch_utc))
+    return model.at_epoch_km, model.per_day_km, math.sqrt(MU_KM3_S2 / semi_major_axis_km(motion))

@@ -8,20 +8,20 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from passplan.geometry.oem_states import ephemeris_itrf, segment_itrf, segment_span
-from passplan.geometry.regimes import Regime, regime_of
+from passplan.geometry.oem_states import ephemeris_itrf, ephemeris_regime, segment_itrf, segment_span
+from passplan.geometry.regimes import ALWAYS_S, Regime, regime_of
 from passplan.geometry.sgp4_states import sgp4_itrf, sgp4_span, sgp4_teme_many
 from passplan.geometry.timescale import Floats, sidereal_angle_rad, utc_seconds
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.run import OrbitSource
 
-# Samples per block and antenna set: small enough that the work arrays stay in the processor's cache.
-_BLOCK_SAMPLES = 400_000
-# Sources with edges (decay, ephemeris spans) are sampled this finely, so that stencils may lean to one side.
-_EDGE_STEP_S = 30.0
+# Samples (antennas x objects x times) per block: so many that a block's fixed cost of a few ms does not tell, so
+# few that its work arrays take some 50 MB.
+_BLOCK_SAMPLES = 1_000_000
+# Sources with edges (decay, ephemeris spans) are sampled this much finer, so that stencils may lean to one side.
+_EDGE_FINENESS = 10.0
 _EDGE_POINTS = 25
-_EPHEMERIS_REACH_S = 2.5 * 86_400.0
 
 
 @dataclass(frozen=True)
@@ -49,14 +49,16 @@ def states_itrf(source: OrbitSource, utc_s: Floats) -> tuple[Floats, Floats]:
 
 def blocks(orbits: Mapping[str, OrbitSource], start_s: float, end_s: float, antennas: int) -> Iterator[Block]:
     """All objects on grids that cover the horizon and its reach; whatever fails or ends early apart."""
-    groups: dict[Regime, list[tuple[int, ElementSet]]] = {}
+    groups: dict[tuple[float, bool], list[tuple[int, ElementSet, float]]] = {}
     for index, source in enumerate(orbits.values()):
         if isinstance(source, Ephemeris):
             yield from _ephemeris_blocks(index, source, start_s, end_s)
         else:
-            groups.setdefault(regime_of(source.satrec), []).append((index, source))
-    for kind, members in groups.items():
-        yield from _element_blocks(kind, members, start_s, end_s, antennas)
+            kind = regime_of(source.satrec)
+            groups.setdefault((kind.step_s, kind.reach_s > ALWAYS_S), []).append((index, source, kind.reach_s))
+    for (step_s, _), group in groups.items():
+        reach_s = max(reach for _, _, reach in group)
+        yield from _element_blocks(Regime(step_s, reach_s), [entry[:2] for entry in group], start_s, end_s, antennas)
 
 
 def _element_blocks(
@@ -85,18 +87,18 @@ def _failing_block(index: int, source: ElementSet, start_s: float, end_s: float)
     epoch_s = float(utc_seconds(source.epoch_utc))
     low, high = sgp4_span(source.satrec, epoch_s, start_s, end_s)
     if high - low >= 1.0:
-        grid = _edge_grid(low, high)
-        yield Block(np.array([index]), low, grid[1] - grid[0], _components(sgp4_itrf(source.satrec, grid)[0]))
+        grid, step = _edge_grid(low, high, regime_of(source.satrec))
+        yield Block(np.array([index]), low, step, _components(sgp4_itrf(source.satrec, grid)[0]))
 
 
 def _ephemeris_blocks(index: int, source: Ephemeris, start_s: float, end_s: float) -> Iterator[Block]:
+    kind = ephemeris_regime(source)
     for segment in source.segments:
         first, last = segment_span(segment)
-        low, high = max(first, start_s - _EPHEMERIS_REACH_S), min(last, end_s + _EPHEMERIS_REACH_S)
+        low, high = max(first, start_s - kind.reach_s), min(last, end_s + kind.reach_s)
         if high - low >= 1.0:
-            grid = _edge_grid(low, high)
-            positions = segment_itrf(segment, np.clip(grid, low, high))[0]
-            yield Block(np.array([index]), low, grid[1] - grid[0], _components(positions))
+            grid, step = _edge_grid(low, high, kind)
+            yield Block(np.array([index]), low, step, _components(segment_itrf(segment, grid)[0]))
 
 
 def _turned(teme_km: Floats, cosine: Floats, sine: Floats) -> Floats:
@@ -114,5 +116,7 @@ def _components(positions_km: Floats) -> Floats:
     return np.ascontiguousarray(positions_km.T)[:, None, :]
 
 
-def _edge_grid(low: float, high: float) -> Floats:
-    return np.linspace(low, high, max(_EDGE_POINTS, int(np.ceil((high - low) / _EDGE_STEP_S)) + 1))
+def _edge_grid(low: float, high: float, kind: Regime) -> tuple[Floats, float]:
+    """Times from ``low`` to ``high``, both among them, and their step."""
+    count = max(_EDGE_POINTS, int(np.ceil((high - low) * _EDGE_FINENESS / kind.step_s)) + 1)
+    return np.linspace(low, high, count), (high - low) / (count - 1)

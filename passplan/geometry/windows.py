@@ -28,6 +28,8 @@ COLUMNS = (
 )  # fmt: skip
 # Samples (antennas x times) of one object that are worked on at once; bounds the memory of long horizons.
 _SCENE_SAMPLES = 2_000_000
+# More than the resolution of utc_s, less than what an ephemeris answers for beyond its span.
+_ROUNDING_MS = 5e-4
 _CLIPPED = ("none", "start", "end", "both")
 
 
@@ -85,9 +87,9 @@ def _table(
     ids = np.array(window_ids(pair_prefix, pair, slot, rows.whole_start_s), object)
     aos, los = np.rint(rows.start_s * 1e3), np.rint(rows.end_s * 1e3)
     low = rows.open_start & (rows.whole_start_s > start_s)
-    aos[low] = np.ceil(rows.start_s[low] * 1e3 - 1e-4)
+    aos[low] = np.ceil(rows.start_s[low] * 1e3 - _ROUNDING_MS)
     high = rows.open_end & (rows.whole_end_s < end_s)
-    los[high] = np.floor(rows.end_s[high] * 1e3 + 1e-4)
+    los[high] = np.floor(rows.end_s[high] * 1e3 + _ROUNDING_MS)
     order = np.flatnonzero(rows.inside & (los > aos))
     key = (aos[order] - start_s * 1e3).astype(np.int64) * len(antennas) + _ranks(antenna_names)[rows.antenna[order]]
     order = order[np.argsort(key * len(orbits) + _ranks(names)[rows.spacecraft[order]], kind="stable")]
@@ -96,7 +98,7 @@ def _table(
     clipped = (rows.whole_start_s < start_s) + 2 * (rows.whole_end_s > end_s)
     return pd.DataFrame(
         {
-            "window_id": ids,
+            "window_id": pd.array(ids, dtype="str"),
             "spacecraft": _words(names, rows.spacecraft),
             "antenna": _words(antenna_names, rows.antenna),
             "site": _words([antenna.site for antenna in antennas.values()], rows.antenna),
@@ -110,7 +112,7 @@ def _table(
             "min_range_km": rows.range_km,
             "clipped": _words(_CLIPPED, clipped),
             "element_epoch_utc": _epochs(orbits)[rows.spacecraft],
-            "timing_sigma_s": timing_model(orbits.values()).sigma_s(rows.spacecraft, aos / 1e3),
+            "timing_sigma_s": timing_model(list(orbits.values())).sigma_s(rows.spacecraft, aos / 1e3),
         },
         columns=list(COLUMNS),
     )

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from itertools import pairwise
 from typing import Annotated
+from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
-from pydantic import Field, model_validator
+from pydantic import AfterValidator, Field, model_validator
 
 from passplan.inputs.records import Curve, MaskPoints, Name, Names, Polarisations, Record, check_angles
 from passplan.inputs.transmit import check_transmit
@@ -13,8 +14,18 @@ from passplan.inputs.transmit import check_transmit
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
 
 
+def _known_zone(name: str) -> str:
+    try:
+        ZoneInfo(name)
+    except (ZoneInfoNotFoundError, ValueError, OSError):
+        raise ValueError("not a time zone of the IANA data base; write it as Europe/Oslo") from None
+    return name
+
+
 class Site(Record):
     """A place with antennas. Height is above the WGS 84 ellipsoid; longitude is east-positive.
+
+    ``time_zone`` (IANA name) serves extra, labelled columns of local time only; everything else is UTC.
 
     The three weather values feed the gas attenuation; where they are absent the link floor takes the
     mean annual reference atmosphere. ``rain_rate_mm_per_h`` is a measured or forecast rate that replaces
@@ -29,6 +40,7 @@ class Site(Record):
     temperature_k: Annotated[float, Field(ge=200.0, le=330.0)] | None = None
     water_vapour_g_per_m3: Annotated[float, Field(ge=0.0, le=50.0)] | None = None
     rain_rate_mm_per_h: Annotated[float, Field(ge=0.0, le=300.0)] | None = None
+    time_zone: Annotated[str, AfterValidator(_known_zone)] | None = None
 
 
 class Receiver(Record):

@@ -74,17 +74,25 @@ class PlanModel:
         return proto
 
 
-def build_model(problem: Problem, terms: Terms) -> PlanModel:
-    """The program of a problem under the terms of its rules."""
+def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> PlanModel:
+    """The program of a problem under the terms of its rules.
+
+    Without ``storage`` only requirements count, and options that serve none are left out: enough for tier 1.
+    """
     count = len(problem.options)
     upper = np.ones(count)
     for removal in terms.removals:
         upper[removal.options] = 0.0
+    if not storage:
+        serving = np.zeros(count, dtype=bool)
+        for served in [*(w.options for w in terms.wanted), *(r.options for r in terms.recurrences)]:
+            serving[served] = True
+        upper[~serving] = 0.0
     block = _Blocks()
     block.add_columns(upper=upper, value=-problem.worth_per_money * problem.options.cost, integer=True)
     for lane in terms.lanes:
         _add_lane(block, lane)
-    for craft in range(len(problem.fleet)):
+    for craft in range(len(problem.fleet) if storage else 0):
         _add_storage(block, problem, craft)
     for want in terms.wanted:
         slack = block.add_columns(upper=np.ones(1), points=np.full(1, want.points))

@@ -31,11 +31,16 @@ class Candidate:
 
 @dataclass(frozen=True, eq=False)
 class OptionSet:
-    """Options with their ``candidates`` (same order), and ``excluded``: window -> (reason, detail)."""
+    """Options with their ``candidates`` (same order), and why windows give none.
+
+    ``excluded`` maps such a window to (reason, detail). ``blocked`` lists, for each antenna, the half-open
+    intervals [s] that no contact may touch: closures, with time to release before and to prepare after.
+    """
 
     options: Options
     candidates: tuple[Candidate, ...]
     excluded: Mapping[int, tuple[str, str]]
+    blocked: tuple[tuple[tuple[int, int], ...], ...]
 
 
 def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Antennas) -> Windows:
@@ -74,7 +79,8 @@ def find_options(
         "pieces": [] if c.downlink is None else [
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
     } for c in candidates]
-    return OptionSet(build_options(rows), tuple(candidates), excluded)
+    blocked = tuple(tuple(builder.blocked[name]) for name in antennas.names)
+    return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
 
 class _Builder:
@@ -139,7 +145,7 @@ class _Builder:
             must_end.add(max(min(high, latest_s), low))
         grid_s = self.policy.cut_grid_s
         grid = range(-(-low // grid_s) * grid_s, high, grid_s) if grid_s else range(0)
-        inner = max(0, math.isqrt(most - 1)) if most > 1 else 0
+        inner = math.isqrt(most - 1) + 1 if most > 1 else 0
         starts = must_start | set(spread(low, high - self.shortest_s + 1, cuts.starts, grid, inner))
         ends = must_end | set(spread(low + self.shortest_s - 1, high, cuts.ends, grid, inner))
         pairs = [(a, b) for a in starts for b in ends if b - a >= self.shortest_s]

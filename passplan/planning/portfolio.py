@@ -9,13 +9,13 @@ from passplan.planning.greedy import plan_greedily
 from passplan.planning.maps import StorageMaps, storage_maps
 from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
-from passplan.planning.result import PlanResult, Tier, relative_gap, status_of
+from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
 from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import NotForSearchError
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
-from passplan.planning.solve import solve_exactly
+from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
 from passplan.planning.value import account
 
@@ -39,24 +39,31 @@ def find_plan(
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps), "greedy")
-    points_bound, bound = least_points(terms), _ceiling(problem)
+    bound = _ceiling(problem) if len(problem.options) else best.account.value
 
     def tell(value: float, bound: float) -> None:
         if progress is not None:
             progress(value, bound, relative_gap(value, bound))
 
+    def open_still() -> bool:
+        wide = relative_gap(best.account.value, bound) > max(limits.gap, OPTIMAL_GAP)
+        return wide and len(problem.options) > 0 and not clock.expired()
+
     tell(best.account.value, bound)
-    if 0 < len(problem.options) <= limits.exact_options and not clock.expired():
+    points_bound = least_points(terms)
+    if best.points > points_bound + _SAME_POINTS and not clock.expired():
+        with clock.stage("requirements"):
+            served = least_shortfall(problem, terms, limits, 0.25 * clock.left_s())
+            points_bound = max(points_bound, served.bound)
+            filled = plan_greedily(problem, terms, clock, maps=maps, begin=served.chosen or ())
+            best = max(best, _Candidate(problem, terms, filled, "greedy"), key=_Candidate.rank)
+    if open_still() and len(problem.options) <= limits.exact_options:
         # Half of the time: the search takes the other half where the model is too hard after all.
-        solved = solve_exactly(problem, terms, limits, clock, best.points, 0.5 * clock.left_s())
-        points_bound = max(points_bound, solved.points_bound)
-        if solved.chosen is not None:
-            best = max(best, _Candidate(problem, terms, solved.chosen, "exact"), key=_Candidate.rank)
-        # The model's bound is for plans with the points it was given; it stands for those with as few.
-        if best.points <= solved.points + _SAME_POINTS:
-            bound = min(bound, solved.value_bound)
+        solved = most_value(problem, terms, limits, clock, best.points, 0.5 * clock.left_s())
+        bound = min(bound, solved.bound)
+        best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
         tell(best.account.value, bound)
-    if len(problem.options) and relative_gap(best.account.value, bound) > limits.gap and not clock.expired():
+    if open_still():
         with clock.stage("search"):
             found = _search(problem, terms, maps, limits, clock, best, tell)
         if found is not None:
@@ -64,7 +71,7 @@ def find_plan(
             bound = found.bound if candidate.points < best.points - _SAME_POINTS else min(bound, found.bound)
             best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
-        tidied = _Candidate(problem, terms, tidy(problem, terms, best.chosen), best.path)
+        tidied = _Candidate(problem, terms, tidy(problem, terms, maps, best.chosen), best.path)
         best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
     return _conclude(best, terms, points_bound, bound, limits, clock)
 

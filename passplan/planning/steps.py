@@ -8,6 +8,7 @@ from dataclasses import replace
 
 import pandas as pd
 
+from passplan.geometry.identity import inherit_ids
 from passplan.geometry.pointing import Samples, sample_windows
 from passplan.geometry.windows import find_windows
 from passplan.inputs.errors import PassplanError
@@ -15,6 +16,7 @@ from passplan.inputs.run import Run
 from passplan.link.interference import interference_pairs
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
+from passplan.planning.changes import compare
 from passplan.planning.plan import make_plan
 from passplan.planning.record import PlanRecord
 from passplan.planning.summary import summarise
@@ -56,9 +58,10 @@ def samples_of(run: Run, windows: pd.DataFrame) -> Samples:
     return sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_SAMPLE_STEP_S)
 
 
-def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
+def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | None = None) -> PlanRecord:
     """Plan a run and audit the plan.
 
+    ``against`` is an earlier plan: its windows hand down their ids, and the ``change`` column tells what differs.
     Raises :class:`AuditFailedError` where the audit finds a fault; a requirement that cannot be met is no
     fault but a shortfall in the summary.
     """
@@ -73,6 +76,8 @@ def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
         began = now
 
     windows = windows_of(run, report)
+    if against is not None:
+        windows = inherit_ids(windows, against.windows)
     lap("windows")
     report("computing links", 0, 0)
     samples = samples_of(run, windows)
@@ -93,7 +98,8 @@ def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
     lap("audit")
     if faults:
         raise AuditFailedError(faults)
-    return replace(record, summary={**record.summary, "seconds": seconds})
+    record = replace(record, summary={**record.summary, "seconds": seconds})
+    return record if against is None else compare(record, against)
 
 
 def _silent(_stage: str, _done: int, _total: int) -> None:

@@ -32,6 +32,7 @@ def contacts_table(
     """
     chosen, options = result.account.chosen, problem.options
     asked = {int(o) for want in terms.wanted for o in want.options}
+    cutter = _CutExplainer(problem, option_set, terms, result)
     numbers: dict[int, int] = {}
     rows = []
     for o, volume_mb in zip(chosen.tolist(), result.account.contact_mb.tolist(), strict=True):
@@ -53,7 +54,7 @@ def contacts_table(
             "min_margin_db": link.min_margin_db,
             "peak_elevation_deg": float(windows["peak_elevation_deg"].iloc[w]), "weight": weight,
             "value": weight * volume_mb, "cost": candidate.cost, "origin": "requested" if o in asked else "planned",
-            "change": "new", "cut": _cut(o, problem, option_set, terms, result)})
+            "change": "new", "cut": cutter.why(o)})
     table = pd.DataFrame(rows, columns=list(CONTACT_COLUMNS))
     return _typed(table, run, texts=(
         "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "polarisation", "modcod",
@@ -88,30 +89,43 @@ def _service(candidate: Candidate) -> str:
     return "downlink" if candidate.command is None else "both"
 
 
-def _cut(option: int, problem: Problem, option_set: OptionSet, terms: Terms, result: PlanResult) -> str:
-    """Why a contact is shorter than its window: a reason for its late start and one for its early end."""
-    options, windows = problem.options, problem.windows
-    w = int(options.window[option])
-    reasons = []
-    occupancy = Occupancy(terms, len(options))
-    for o in result.chosen:
-        if o != option:
-            occupancy.add(o)
-    siblings = np.flatnonzero(options.window == w)
-    for side, mine, whole in (("start", int(options.start_s[option]), int(windows.start_s[w])),
-                              ("end", int(options.end_s[option]), int(windows.end_s[w]))):
-        if mine == whole:
-            continue
-        beyond = options.start_s[siblings] < mine if side == "start" else options.end_s[siblings] > mine
-        longer = siblings[beyond].tolist()
-        blockers = [lane.kind for o in longer for lane, _ in occupancy.blockers(o)]
-        if not longer:
-            reasons.append(f"{side}: closure or no margin")
-        elif blockers:
-            reasons.append(f"{side}: {blockers[0]}")
-        else:
-            reasons.append(f"{side}: nothing to gain")
-    return "; ".join(reasons)
+class _CutExplainer:
+    """Says why a contact is shorter than its window, in the reason words of the unused windows."""
+
+    def __init__(self, problem: Problem, option_set: OptionSet, terms: Terms, result: PlanResult) -> None:
+        self.problem, self.option_set = problem, option_set
+        self.occupancy = Occupancy(terms, len(problem.options))
+        for o in result.chosen:
+            self.occupancy.add(o)
+        self.of_window: dict[int, list[int]] = {}
+        for o, w in enumerate(problem.options.window.tolist()):
+            self.of_window.setdefault(w, []).append(o)
+
+    def why(self, option: int) -> str:
+        """A reason for a late start and one for an early end; empty for a whole window."""
+        options, windows = self.problem.options, self.problem.windows
+        w = int(options.window[option])
+        start_s, end_s = int(options.start_s[option]), int(options.end_s[option])
+        siblings = self.of_window[w]
+        self.occupancy.remove(option)
+        reasons = []
+        if start_s > windows.start_s[w]:
+            longer = [o for o in siblings if options.start_s[o] < start_s < options.end_s[o]]
+            reasons.append(f"start: {self._side(option, longer, int(windows.start_s[w]), start_s)}")
+        if end_s < windows.end_s[w]:
+            longer = [o for o in siblings if options.end_s[o] > end_s > options.start_s[o]]
+            reasons.append(f"end: {self._side(option, longer, end_s, int(windows.end_s[w]))}")
+        self.occupancy.add(option)
+        return "; ".join(reasons)
+
+    def _side(self, option: int, longer: list[int], low_s: int, high_s: int) -> str:
+        for o in longer:
+            for lane, _ in self.occupancy.blockers(o):
+                return lane.kind
+        if longer:
+            return "nothing_aboard"
+        blocked = self.option_set.blocked[int(self.problem.options.antenna[option])]
+        return "closure" if any(a < high_s and b > low_s for a, b in blocked) else "no_margin"
 
 
 def _typed(table: pd.DataFrame, run: Run, texts: tuple[str, ...]) -> pd.DataFrame:

@@ -10,7 +10,7 @@ from collections.abc import Iterable
 
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import gain_of, plan_greedily
-from passplan.planning.maps import storage_maps
+from passplan.planning.maps import StorageMaps
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Terms
 from passplan.planning.shortfalls import find_shortfalls, total_points
@@ -19,19 +19,21 @@ from passplan.planning.shortfalls import find_shortfalls, total_points
 _LIMIT_S = 2.0
 
 
-def tidy(problem: Problem, terms: Terms, chosen: Iterable[int]) -> list[int]:
+def tidy(problem: Problem, terms: Terms, maps: StorageMaps, chosen: Iterable[int]) -> list[int]:
     """The plan without contacts that add nothing, and with those that fit and do. Never worth less."""
-    maps = storage_maps(problem)
     kept = plan_greedily(problem, terms, Clock(_LIMIT_S), maps=maps, begin=chosen)
     points = total_points(find_shortfalls(terms, kept))
     options = problem.options
+    of_craft: dict[int, list[int]] = {}
+    for o in sorted(kept, key=lambda o: int(options.start_s[o])):
+        of_craft.setdefault(int(options.spacecraft[o]), []).append(o)
     # Shortest first: of two contacts of which either could go, the longer one is the better to keep.
     for o in sorted(kept, key=lambda o: (int(options.end_s[o] - options.start_s[o]), o)):
-        craft = options.spacecraft[o]
-        others = sorted((x for x in kept if x != o and options.spacecraft[x] == craft), key=lambda x: int(options.start_s[x]))
+        craft = int(options.spacecraft[o])
+        others = [x for x in of_craft[craft] if x != o]
         if gain_of(problem, maps, others, o) > 0.0:
             continue
         without = [x for x in kept if x != o]
         if total_points(find_shortfalls(terms, without)) <= points:
-            kept = without
+            kept, of_craft[craft] = without, others
     return kept

@@ -3,8 +3,8 @@
 CAUTIONS = (
     "A planning aid, not permission to transmit: an authorised person approves each contact under the station's "
     "licence and frequency coordination.",
-    "Antennas move without warning and transmitting antennas radiate: site interlocks, local rules and the people "
-    "on site decide.",
+    "Near a transmitting antenna there is radio-frequency exposure, and antennas move without warning: site "
+    "interlocks, local rules and the people on site decide.",
     "Predictions from element sets age; check them against fresh sets before use. Gas attenuation is that "
     "of a mean atmosphere; rain counts only where the policy states an unavailability, as statistics of an average "
     "year, not as a forecast.",

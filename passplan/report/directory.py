@@ -8,15 +8,19 @@ import shutil
 import tempfile
 from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager
+from datetime import datetime
 from pathlib import Path
 from typing import Any
 
 import pandas as pd
 
 from passplan.inputs.errors import PassplanError
+from passplan.inputs.load import load_run
 from passplan.inputs.reader import ReadFile
+from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.csv_files import read_csv, write_csv
+from passplan.report.page import PAGE, write_page
 
 TABLES = ("windows", "contacts", "segments", "unused")
 
@@ -27,9 +31,12 @@ class DirectoryError(PassplanError):
     exit_code = 7
 
 
-def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:
+def write_plan(record: PlanRecord, out: Path, *, replace: bool = False, run: Run | None = None) -> Path:
     """Write ``record`` to the new directory ``out`` and return it.
 
+    Beside the tables and the inputs stands the page (``report.html``). It is made from what the directory
+    holds; where that does not give the run again, because it was altered in memory, pass it as ``run``, or
+    there is no page.
     Everything is written beside ``out`` first and then renamed, so that no half-written plan is ever
     seen. An ``out`` that exists is refused unless ``replace`` is true and it is a plan directory.
     Raises :class:`DirectoryError`.
@@ -38,6 +45,9 @@ def write_plan(record: PlanRecord, out: Path, *, replace: bool = False) -> Path:
     check_free(out, replace=replace)
     with new_directory(out) as made:
         _fill(record, made)
+        behind = run or _run_again(made, record)
+        if behind is not None:
+            write_page(record, behind, made / PAGE)
     return out
 
 
@@ -109,6 +119,22 @@ def stored_config(directory: Path, summary: Mapping[str, Any]) -> tuple[Path, di
     stored = {entry["path"]: directory / entry["stored"] for entry in summary["inputs"]}
     # The config is read first; the other paths are relative to the folder it was read from.
     return directory / "inputs" / summary["inputs"][0]["path"], stored
+
+
+def stored_run(directory: Path, record: PlanRecord) -> Run:
+    """The run that a plan directory was made from, loaded from the inputs that it carries."""
+    config, stored = stored_config(directory, record.summary)
+    return load_run(config, start=datetime.fromisoformat(record.summary["horizon_start_utc"]), stored=stored)
+
+
+def _run_again(made: Path, record: PlanRecord) -> Run | None:
+    """The run from the stored inputs, or None where they are not those that the plan's names come from."""
+    try:
+        run = stored_run(made, record)
+    except PassplanError:
+        return None
+    named = (("spacecraft", run.orbits), ("antennas", run.antennas))
+    return run if all(set(record.summary[key]) <= set(known) for key, known in named) else None
 
 
 def _fill(record: PlanRecord, made: Path) -> None:

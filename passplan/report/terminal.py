@@ -1,4 +1,4 @@
-"""The terminal report: one plan from the headline to the cautions, readable at 100 columns and without colour."""
+"""The terminal report: one plan from the headline to the cautions, readable from 80 columns on and without colour."""
 
 from __future__ import annotations
 
@@ -15,50 +15,59 @@ from rich.table import Table
 from rich.text import Text
 
 from passplan.planning.record import PlanRecord
+from passplan.report.backlog import backlogs
+from passplan.report.backlog_chart import backlog_chart
 from passplan.report.cautions import CAUTIONS
+from passplan.report.contact_table import LocalTime, contact_table, unused_table
 from passplan.report.keys import spacecraft_keys
+from passplan.report.selection import Selection, select
 from passplan.report.timeline import CLOSED, SEEN, SEVERAL, antenna_row, hour_ruler, stretches
 from passplan.report.weather import by_antenna, notices
+from passplan.report.words import STATUS_WORDS, megabytes, minute
 
-_STATUS_WORDS = {
-    "optimal": "proven best",
-    "within_gap": "within the gap asked for",
-    "stopped_by_limit": "stopped by the time limit",
-    "greedy": "greedy, no better found in time",
-    "empty": "no contact possible",
-}
+_SCREEN_ROWS = 8
+_SCREEN_CRAFT = 16
 
 
-def print_plan(record: PlanRecord, console: Console, *, rows: int | None = 40) -> None:
-    """Print the whole report; ``rows`` limits the contacts table (None: all of them)."""
-    summary = record.summary
+def print_plan(
+    record: PlanRecord, console: Console, *, full: bool = False, selection: Selection | None = None,
+    local: LocalTime | None = None,
+) -> None:
+    """Print the report: one screen for the review, or everything, or everything of a selection.
+
+    ``local`` adds a labelled column of a station's local time to the contacts; all other times are UTC.
+    """
+    stores = backlogs(record)
+    part = select(record, selection) if selection else record
+    detail = full or bool(selection)
+    summary = part.summary
     console.print(_headline(summary))
-    sections = (
-        ("Shortfalls", _shortfalls(summary)), ("Warnings", _warnings(summary)),
-        ("Models outside their range", notices(summary)),
-    )
-    for title, lines in sections:
+    for title, lines in (("Requirements not met", _shortfalls(summary)), ("Warnings", _warnings(summary))):
         if lines:
             _section(console, title, Group(*lines))
-    _section(console, "Inputs", _health(summary))
-    _section(console, "Antennas through the day, UTC", _timeline(record, console.width))
-    _section(console, "Contacts", _contacts(record, rows))
-    _section(console, "Data aboard each spacecraft", _storage(summary))
-    if summary.get("weather", {}).get("contacts"):
-        _section(console, "Weather over an average year", by_antenna(record))
-    if len(record.contacts):
-        _section(console, "Lowest margins", _margins(record))
+    said = notices(summary, detail)
+    if said:
+        _section(console, "Models outside their range", Group(*said))
+    if selection:
+        shown = f"\nShown: {_spoken(selection)}; the figures above are those of the whole plan"
+        console.print(Text(shown, style="bold"))
+    else:
+        _section(console, "Inputs", _health(summary))
+    if summary.get("against"):
+        _section(console, f"Against plan {summary['against']['plan_id']}", _changes(summary["against"], detail))
+    _section(console, "Antennas through the day, UTC", _timeline(part, console.width))
+    rows, craft = (None, None) if detail else (_SCREEN_ROWS, _SCREEN_CRAFT)
+    _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
+    _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
+    if detail:
+        if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
+            _section(console, "Weather over an average year", by_antenna(part))
+        if len(part.contacts):
+            _section(console, "Lowest margins", _margins(part, console.width))
+        _section(console, "What was not used, and why", unused_table(part, full=bool(selection)))
     console.print()
     for caution in CAUTIONS:
         console.print(Padding(Text(f"• {caution}", style="dim"), (0, 1)))
-
-
-def megabytes(volume_mb: float) -> str:
-    """A volume in the unit that keeps it to four figures."""
-    for unit, size in (("TB", 1e6), ("GB", 1e3)):
-        if abs(volume_mb) >= size:
-            return f"{volume_mb / size:.2f} {unit}"
-    return f"{volume_mb:.1f} MB"
 
 
 def _section(console: Console, title: str, body: RenderableType) -> None:
@@ -70,7 +79,7 @@ def _section(console: Console, title: str, body: RenderableType) -> None:
 def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
-    title.append(f"\n{_minute(start)} to {_minute(end)} UTC", style="dim")
+    title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
     gap = summary["gap"]
     facts = Table.grid(padding=(0, 3))
     facts.add_row(
@@ -84,7 +93,7 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
         ("value ", "dim"), (f"{summary['value']:,.1f}", "bold"),
         ("   no plan can exceed ", "dim"), (f"{summary['bound']:,.1f}", "bold"),
         ("   gap ", "dim"), ("none to close" if gap is None else f"{100 * gap:.2f} %", "bold"),
-        (f"   {_STATUS_WORDS.get(summary['status'], summary['status'])}", "dim"),
+        (f"   {STATUS_WORDS.get(summary['status'], summary['status'])}", "dim"),
     )
     return Group(title, facts, proof)
 
@@ -136,83 +145,29 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
     return Group(table, Columns(names, padding=(0, 2)), marks)
 
 
-def _contacts(record: PlanRecord, rows: int | None) -> RenderableType:
-    contacts = record.contacts.sort_values(["start_utc", "antenna"], kind="stable")
-    shown = contacts if rows is None else contacts.head(rows)
-    table = Table(box=None, padding=(0, 1), pad_edge=False, header_style="dim")
-    for heading, side in (("start", "left"), ("min", "right"), ("antenna", "left"), ("spacecraft", "left"),
-                          ("service", "left"), ("modcod", "left"), ("MB", "right"), ("margin dB", "right"),
-                          ("peak", "right"), ("", "left")):
-        table.add_column(heading, justify=side, no_wrap=True)  # type: ignore[arg-type]
-    day = None
-    for row in shown.to_dict("records"):
-        start = pd.Timestamp(row["start_utc"])
-        if start.date() != day and day is not None:
-            table.add_row(Text(f"{start:%d %b}", style="dim"))
-        day = start.date()
-        table.add_row(
-            f"{start:%H:%M:%S}", f"{row['duration_s'] / 60:.1f}", row["antenna"], row["spacecraft"], row["service"],
-            row["modcod"], f"{row['volume_mb']:,.1f}", _margin(row["min_margin_db"]),
-            f"{row['peak_elevation_deg']:.0f}°", Text(_note(row), style="dim"),
-        )
-    hidden = len(contacts) - len(shown)
-    if not len(contacts):
-        return Text("none")
-    more = Text(f"... and {hidden} more; --full shows them all, contacts.csv holds them", style="dim")
-    return Group(table, *([more] if hidden else []))
+def _changes(against: Mapping[str, Any], detail: bool) -> RenderableType:
+    counts = Text("   ").join(Text.assemble((str(n), "bold"), f" {name}") for name, n in against["counts"].items())
+    if not detail:
+        return counts
+    gone = [
+        Text.assemble("- ", (f"{minute(row['start_utc'])} {row['spacecraft']} on {row['antenna']}", "bold"),
+                      f", {'instead ' + row['moved_to'] if row['moved_to'] else 'dropped'}")
+        for row in against["dropped"]
+    ]
+    return Group(counts, *gone)
 
 
-def _note(row: Mapping[Any, Any]) -> str:
-    parts = [] if row["origin"] == "planned" else [row["origin"]]
-    # Most contacts leave out time in which nothing can be sent; only what another contact took is worth a word.
-    if "busy" in row["cut"]:
-        parts.append("cut short")
-    if row["cost"]:
-        parts.append(f"cost {row['cost']:,.0f}")
-    return ", ".join(parts)
+def _spoken(selection: Selection) -> str:
+    return ", ".join(name for name in (selection.spacecraft, selection.antenna, selection.site) if name)
 
 
-def _margin(margin_db: float) -> str:
-    return "" if pd.isna(margin_db) else f"{margin_db:.1f}"
-
-
-def _storage(summary: Mapping[str, Any]) -> RenderableType:
-    table = Table(box=None, padding=(0, 1), pad_edge=False, header_style="dim")
-    for heading in ("spacecraft", "aboard before", "", "after", "generated", "delivered", "lost"):
-        table.add_column(heading, justify="left" if heading in ("spacecraft", "") else "right", no_wrap=True)
-    for name, store in summary["storage"].items():
-        lost = Text(megabytes(store["lost_mb"]), style="bold red" if store["lost_mb"] > 0.05 else "dim")
-        table.add_row(
-            name, megabytes(store["start_mb"]), _fill_bar(store), megabytes(store["left_mb"]),
-            megabytes(store["generated_mb"]), megabytes(store["delivered_mb"]), lost,
-        )
-    return Group(table, Text("bar: the whole storage; █ full after the day, │ where it stood before", style="dim"))
-
-
-def _fill_bar(store: Mapping[str, float], width: int = 16) -> Text:
-    """Storage as a bar: ``█`` up to the fill at the end, ``│`` marks the fill at the start."""
-    capacity = store["capacity_mb"]
-    if capacity <= 0.0:
-        return Text("no storage".ljust(width), style="dim")
-    after = round(width * min(store["left_mb"] / capacity, 1.0))
-    before = min(round(width * min(store["start_mb"] / capacity, 1.0)), width - 1)
-    cells = ["█"] * after + ["░"] * (width - after)
-    bar = Text("".join(cells), style="cyan")
-    bar.plain = bar.plain[:before] + "│" + bar.plain[before + 1 :]
-    return bar
-
-
-def _margins(record: PlanRecord) -> RenderableType:
+def _margins(record: PlanRecord, width: int) -> RenderableType:
     lowest = record.contacts.dropna(subset=["min_margin_db"]).nsmallest(5, "min_margin_db", keep="first")
     table = Table.grid(padding=(0, 2))
     for row in lowest.to_dict("records"):
         start = pd.Timestamp(row["start_utc"])
         table.add_row(
             Text(f"{row['min_margin_db']:.2f} dB", style="bold"), row["spacecraft"], row["antenna"],
-            f"{start:%d %b %H:%M}", row["modcod"], Text(row["contact_id"], style="dim"),
+            f"{start:%d %b %H:%M}", row["modcod"], *([Text(row["contact_id"], style="dim")] if width >= 100 else []),
         )
     return table
-
-
-def _minute(text: str) -> str:
-    return text[:16].replace("T", " ")

@@ -15,16 +15,20 @@ from passplan.planning.record import PlanRecord
 _FIGURES = ("link_mb", "mean_mb", "p10_mb", "p50_mb", "p90_mb")
 
 
-def notices(summary: Mapping[str, Any]) -> list[Text]:
-    """One line for each notice of a plan."""
-    return [Text(f"· {notice}", style="dim") for notice in summary.get("weather", {}).get("notices", ())]
+def notices(summary: Mapping[str, Any], full: bool = True) -> list[Text]:
+    """One line for each notice of a plan, or one line that says how many there are."""
+    found = summary.get("weather", {}).get("notices", ())
+    if len(found) > 1 and not full:
+        return [Text(f"· {found[0]}; {len(found) - 1} more (show --full)", style="dim")]
+    return [Text(f"· {notice}", style="dim") for notice in found]
 
 
 def by_antenna(record: PlanRecord) -> RenderableType:
     """Volumes that the links of the downlink contacts carry, added up by antenna."""
     weather = record.summary["weather"]
-    figures = pd.DataFrame.from_dict(weather["contacts"], orient="index")
     antenna_of = record.contacts.set_index("contact_id")["antenna"]
+    shown = {name: entry for name, entry in weather["contacts"].items() if name in antenna_of.index}
+    figures = pd.DataFrame.from_dict(shown, orient="index", columns=list(_FIGURES))
     owners = antenna_of.reindex(figures.index).astype(str).to_numpy()
     sums = figures.groupby(owners)[list(_FIGURES)].sum()
     counts = figures.groupby(owners).size().to_dict()

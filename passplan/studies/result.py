@@ -13,7 +13,7 @@ from rich.text import Text
 from passplan._version import __version__
 from passplan.report.csv_files import write_csv
 from passplan.report.directory import new_directory
-from passplan.report.terminal import megabytes
+from passplan.report.words import megabytes
 from passplan.studies.study import BASE, Study
 from passplan.studies.whatif import BETTER, UNCLEAR, WORSE, Comparison
 

@@ -36,7 +36,7 @@ def passplan(sample: Path, monkeypatch: pytest.MonkeyPatch) -> Command:
 def test_version_and_help(passplan: Command) -> None:
     assert passplan("--version").output.strip() == f"passplan {__version__}"
     text = passplan("--help").output
-    for name in ("check", "windows", "link", "plan", "audit", "show", "whatif", "nightly"):
+    for name in ("check", "windows", "link", "plan", "audit", "show", "export", "whatif", "nightly"):
         assert name in text
         assert passplan(name, "--help").exit_code == 0
 

@@ -28,14 +28,15 @@ def orbit(
     anomaly_deg: float = 10.0,
     bstar: float = 1e-4,
     epoch_day: int = 9_928,
+    epoch_s: float = 43_200.0,
 ) -> ElementSet:
-    """An element set of 2027-03-08 (day 9 928 since 2000) unless told otherwise."""
+    """An element set of 2027-03-08 (day 9 928 since 2000) at noon unless told otherwise."""
     mean = MeanElements(
         name="TEAL",
         catalogue_number=90_001,
         international_designator="2027-001A",
         epoch_days=epoch_day,
-        epoch_s=43_200.0,
+        epoch_s=epoch_s,
         mean_motion_rev_per_day=rev_per_day,
         eccentricity=eccentricity,
         inclination_deg=inclination_deg,
@@ -50,8 +51,8 @@ def orbit(
 LOW = orbit()
 INCLINED = orbit(rev_per_day=15.6, inclination_deg=51.6, raan_deg=40.0, anomaly_deg=200.0)
 MEDIUM = orbit(rev_per_day=2.0057, eccentricity=0.005, inclination_deg=55.0, bstar=0.0)
-GEOSYNCHRONOUS = orbit(rev_per_day=1.0027, eccentricity=0.0002, inclination_deg=0.05, anomaly_deg=95.0, bstar=0.0)
-TILTED = orbit(rev_per_day=1.0027, eccentricity=0.001, inclination_deg=62.0, anomaly_deg=95.0, bstar=0.0)
+GEOSYNCHRONOUS = orbit(rev_per_day=1.0027, eccentricity=0.0002, inclination_deg=0.05, anomaly_deg=165.0, bstar=0.0)
+TILTED = orbit(rev_per_day=1.0027, eccentricity=0.001, inclination_deg=62.0, anomaly_deg=165.0, bstar=0.0)
 ECCENTRIC = orbit(rev_per_day=2.006, eccentricity=0.72, inclination_deg=63.4, perigee_deg=270.0, bstar=0.0)
 REGIMES = {
     "low": LOW,
@@ -62,7 +63,7 @@ REGIMES = {
     "eccentric": ECCENTRIC,
 }
 # Its drag brings it down within the day.
-DECAYING = orbit(rev_per_day=16.45, inclination_deg=51.6, bstar=8e-3)
+DECAYING = orbit(rev_per_day=16.3, inclination_deg=51.6, bstar=4e-3)
 
 NORTH = Site(name="North", latitude_deg=67.9, longitude_deg=21.1, height_m=390.0)
 SOUTH = Site(name="South", latitude_deg=-35.4, longitude_deg=148.9, height_m=680.0)
@@ -96,9 +97,7 @@ def elevation_deg(source: OrbitSource, site: Site, seconds: NDArray[np.float64])
     return look_angles(source, site, at_s(seconds)).elevation_deg
 
 
-def dense_spans_s(
-    source: OrbitSource, site: Site, mask_deg: float, length_s: int = 86_400
-) -> NDArray[np.float64]:
+def dense_spans_s(source: OrbitSource, site: Site, mask_deg: float, length_s: int = 86_400) -> NDArray[np.float64]:
     """Intervals above ``mask_deg`` by 1 s sampling with a finer look wherever an extreme comes near the mask."""
     seconds = np.arange(length_s + 1.0)
     level = elevation_deg(source, site, seconds)

@@ -3,7 +3,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from geometry_cases import antenna
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from passplan.geometry.masks import mask_of
@@ -53,9 +53,8 @@ def test_the_mask_is_the_higher_of_the_wrapped_line_and_the_floor(
     mask = mask_of(antenna(min_elevation_deg=floor_deg, mask=table))
     azimuth = np.linspace(0.0, 359.9, 333)
     azimuths, elevations = (np.array(column) for column in zip(*table, strict=True))
+    assume(not (azimuths[0] < 1e-3 and azimuths[-1] > 360.0 - 1e-3))
     line = np.interp(azimuth, azimuths, elevations, period=360.0)
-    if 360.0 in azimuths and 0.0 in azimuths:
-        return
     np.testing.assert_allclose(mask.elevation_deg(azimuth), np.maximum(line, floor_deg), atol=1e-6)
     assert mask.lowest_deg >= floor_deg
     assert mask.lowest_deg == pytest.approx(np.maximum(elevations.min(), floor_deg))

@@ -3,7 +3,7 @@ from __future__ import annotations
 import numpy as np
 import pandas as pd
 import pytest
-from geometry_cases import ECCENTRIC, GEOSYNCHRONOUS, LOW, NORTH, REGIMES, at_s, antenna, spans_s, windows
+from geometry_cases import ECCENTRIC, GEOSYNCHRONOUS, LOW, NORTH, REGIMES, antenna, at_s, spans_s, windows
 from hypothesis import given, settings
 from hypothesis import strategies as st
 

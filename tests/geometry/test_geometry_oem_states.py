@@ -39,7 +39,8 @@ def test_a_polynomial_of_the_stated_degree_is_reproduced_up_to_the_ends(
     hours = (at - EPOCHS[0]) / 3_600.0
     assert positions[0, 0] == pytest.approx(np.polynomial.Polynomial(powers)(hours), abs=1e-6)
     if kind[0] == "LAGRANGE":
-        assert velocities[0, 1] == pytest.approx(2.0 * np.polynomial.Polynomial(powers).deriv()(hours) / 3_600.0, abs=1e-6)
+        rate = 2.0 * np.polynomial.Polynomial(powers).deriv()(hours) / 3_600.0
+        assert velocities[0, 1] == pytest.approx(rate, abs=1e-6)
 
 
 def test_states_at_the_epochs_are_the_states_given() -> None:

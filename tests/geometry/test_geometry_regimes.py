@@ -2,12 +2,13 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
 import pytest
 from geometry_cases import REGIMES
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from passplan.geometry.regimes import ALWAYS_S, orbit_class, regime, regime_of, semi_major_axis_km
+from passplan.geometry.regimes import ALWAYS_S, orbit_class, regime, regime_of, regime_of_state, semi_major_axis_km
 
 DAY_S = 86_400.0
 
@@ -34,6 +35,20 @@ def test_steps_divide_the_day_and_shrink_with_eccentricity(rev_per_day: float, e
 def test_low_orbits_are_followed_for_one_pass_and_others_for_days() -> None:
     assert regime_of(REGIMES["low"].satrec).reach_s <= 3_600.0
     assert regime_of(REGIMES["eccentric"].satrec).reach_s > ALWAYS_S
+
+
+@pytest.mark.parametrize("name", REGIMES)
+def test_a_state_tells_the_regime_as_its_elements_do(name: str) -> None:
+    _, position, velocity = REGIMES[name].satrec.sgp4(2_461_473.5, 0.3)
+    found, expected = regime_of_state(np.array(position), np.array(velocity)), regime_of(REGIMES[name].satrec)
+    assert found.step_s == expected.step_s
+    assert found.reach_s == pytest.approx(expected.reach_s, abs=601.0)
+
+
+def test_a_state_on_an_open_orbit_is_sampled_finely() -> None:
+    found = regime_of_state(np.array([7_000.0, 0.0, 0.0]), np.array([0.0, 12.0, 0.0]))
+    assert found.step_s == 15.0
+    assert found.reach_s > ALWAYS_S
 
 
 def test_the_semi_major_axis_of_a_half_day_orbit() -> None:

@@ -69,6 +69,7 @@ def test_unknown_key_names_the_nearest(
     ("file", "old", "new", "parts"),
     [
         (GROUND, "latitude_deg = 69.31", "latitude_deg = 693.1", ("latitude_deg", "693.1", "at most 90")),
+        (GROUND, '"Europe/Oslo"', '"Oslo time"', ("time_zone", "Oslo time", "not a time zone", "Europe/Oslo")),
         (GROUND, "height_m = 1510", "height_m = 151000", ("height_m", "151000", "at most 9000", "check the unit")),
         (FLEET, "generation_mb_per_s = 0.55", "generation_mb_per_s = -0.55", ("generation_mb_per_s", "-0.55", "at least 0")),
         (DAILY, "required_margin_db = 3.0", 'required_margin_db = "three"', ("required_margin_db", "three", "number")),

@@ -69,7 +69,8 @@ def random_problem(seed: int, *, needs: bool = True, windows: int = 12) -> Probl
         row["window"] = taken.index(row["window"])
     capacity = [rng.choice([0.0, 100.0, 400.0, 5e3]) for _ in range(crafts)]
     requests = tuple(
-        RequestNeed(f"ask-{k}", "any", rng.randrange(-1, crafts), frozenset(rng.sample(range(dishes), rng.randint(1, dishes))),
+        RequestNeed(f"ask-{k}", "any", rng.randrange(-1, crafts),
+                    frozenset(rng.sample(range(dishes), rng.randint(1, dishes))),
                     rng.choice(["downlink", "command", "both"]), low := rng.randrange(steps - 6) * STEP_S,
                     low + rng.randint(6, 30) * STEP_S, rng.randint(2, 6) * STEP_S)
         for k in range(rng.randrange(3) if needs else 0))

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import json
+import re
 from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
+from plan_variants import renamed
 
 from passplan.inputs.load import load_run
 from passplan.inputs.run import Run
@@ -26,7 +28,7 @@ from passplan.report.directory import DirectoryError, changed_inputs, check_free
 def test_everything_is_written_and_read_back(short_plan: PlanRecord, tmp_path: Path) -> None:
     out = write_plan(short_plan, tmp_path / "deep" / "plan")
     assert sorted(item.name for item in out.iterdir()) == [
-        "contacts.csv", "inputs", "plan.json", "segments.csv", "unused.csv", "windows.csv"]
+        "contacts.csv", "inputs", "plan.json", "report.html", "segments.csv", "unused.csv", "windows.csv"]
     back = read_plan(out)
     assert back.summary == json.loads(json.dumps(short_plan.summary))
     assert [file.sha256 for file in back.files] == [file.sha256 for file in short_plan.files]
@@ -41,8 +43,8 @@ def test_columns_are_those_of_the_design(short_plan: PlanRecord) -> None:
 
 
 def test_the_summary_has_every_key_and_only_plain_values(short_plan: PlanRecord) -> None:
-    keys = {"plan_id", "status", "generated_utc", "horizon_start_utc", "horizon_end_utc", "contacts", "volume_mb", "value",
-            "bound", "gap", "tiers", "shortfalls", "warnings", "inputs", "versions", "seconds"}
+    keys = {"plan_id", "status", "generated_utc", "horizon_start_utc", "horizon_end_utc", "contacts", "volume_mb",
+            "value", "bound", "gap", "tiers", "shortfalls", "warnings", "inputs", "versions", "seconds"}
     assert keys <= set(short_plan.summary)
     assert set(short_plan.summary["seconds"]) == {"windows", "links", "plan", "weather", "audit"}
     json.dumps(short_plan.summary, allow_nan=False)
@@ -67,6 +69,9 @@ def test_identical_inputs_give_identical_files(short_run: Run, short_plan: PlanR
             a, b = (json.loads(path.read_text(encoding="utf-8")) for path in (file, twin))
             for stamp in ("generated_utc", "seconds"):
                 a.pop(stamp), b.pop(stamp)
+            assert a == b
+        elif file.name == "report.html":
+            a, b = (re.sub("Made [-0-9 :]+ UTC", "", path.read_text(encoding="utf-8")) for path in (file, twin))
             assert a == b
         elif file.is_file():
             assert file.read_bytes() == twin.read_bytes(), file.name
@@ -140,3 +145,12 @@ def test_changed_inputs_are_named(short_plan: PlanRecord) -> None:
     assert lines[0].startswith("../sample_fleet/fleet.toml: changed")
     assert "elements.json" in lines[1]
     assert len(lines) == 2
+
+
+def test_a_run_altered_in_memory_has_its_page_when_it_is_given(
+    short_plan: PlanRecord, short_run: Run, tmp_path: Path
+) -> None:
+    record, run = renamed(short_plan, short_run, {"Isvarde-A": "Isvarde-Z"})
+    assert not (write_plan(record, tmp_path / "without") / "report.html").exists()
+    page = write_plan(record, tmp_path / "with", run=run) / "report.html"
+    assert "Isvarde-Z" in page.read_text(encoding="utf-8")

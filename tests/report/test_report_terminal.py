@@ -6,31 +6,83 @@ import io
 from copy import deepcopy
 from dataclasses import replace
 from itertools import pairwise
+from typing import Any
 
 import numpy as np
 import pandas as pd
 import pytest
 from rich.console import Console
 
+from passplan.inputs.errors import InputError
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.health import print_health
 from passplan.report.keys import spacecraft_keys
+from passplan.report.selection import Selection
 from passplan.report.tables import print_windows
-from passplan.report.terminal import megabytes, print_plan
+from passplan.report.terminal import print_plan
 from passplan.report.timeline import CLOSED, SEEN, SEVERAL, antenna_row, hour_ruler, stretches
+from passplan.report.words import megabytes
+from passplan.report.zones import local_time
 
 
-def _printed(record: PlanRecord, width: int = 100, **options: object) -> str:
+def _printed(record: PlanRecord, width: int = 100, shown: dict[str, Any] | None = None, **options: object) -> str:
     out = io.StringIO()
-    print_plan(record, Console(file=out, width=width, **options))  # type: ignore[arg-type]
+    console = Console(file=out, width=width, **options)  # type: ignore[arg-type]
+    print_plan(record, console, **(shown or {}))
     return out.getvalue()
 
 
 @pytest.mark.parametrize("width", [80, 100, 160])
-def test_no_line_is_wider_than_the_terminal(short_plan: PlanRecord, width: int) -> None:
-    assert max(map(len, _printed(short_plan, width).splitlines())) <= width
+@pytest.mark.parametrize("shown", [{}, {"full": True}, {"selection": Selection(antenna="Tarrow-A")}])
+def test_no_line_is_wider_than_the_terminal(short_plan: PlanRecord, width: int, shown: dict[str, Any]) -> None:
+    text = _printed(short_plan, width, shown)
+    assert max(map(len, text.splitlines())) <= width
+    assert "…" not in text
+
+
+def test_the_review_is_one_screen(short_plan: PlanRecord) -> None:
+    assert len(_printed(short_plan, 160).splitlines()) <= 60
+    assert len(_printed(short_plan, 100).splitlines()) <= 66
+
+
+def test_detail_on_request(short_plan: PlanRecord) -> None:
+    full = _printed(short_plan, shown={"full": True})
+    assert "Lowest margins" in full
+    assert "What was not used, and why" in full
+    assert full.count("Isvarde-A") > short_plan.contacts["antenna"].eq("Isvarde-A").sum()
+    one = _printed(short_plan, 160, shown={"selection": Selection(spacecraft="Ambril-3")})
+    assert "Shown: Ambril-3" in one
+    contacts = short_plan.contacts[short_plan.contacts["spacecraft"] == "Ambril-3"]
+    assert all(name in one for name in contacts["contact_id"])
+    assert "Teasel-1" not in one.replace("Teasel-1 on", "").split("What was not used")[0]
+
+
+def test_local_time_is_an_extra_labelled_column(short_plan: PlanRecord, short_run: Run) -> None:
+    local = local_time(short_run, "Port Ellery")
+    text = _printed(short_plan, shown={"local": local})
+    assert "start     at Port Ellery" in text
+    first = short_plan.contacts.sort_values(["start_utc", "antenna"]).iloc[0]["start_utc"]
+    assert f"{first:%H:%M:%S}" in text
+    assert f"{first + pd.Timedelta(hours=13):%d %b %H:%M} NZDT" in text
+
+
+def test_a_site_without_a_zone_has_no_local_time(short_run: Run) -> None:
+    sites = {name: site.model_copy(update={"time_zone": None}) for name, site in short_run.sites.items()}
+    with pytest.raises(InputError, match="time_zone"):
+        local_time(replace(short_run, sites=sites), "Isvarde")
+    with pytest.raises(InputError, match="did you mean 'Isvarde'"):
+        local_time(short_run, "Isvard")
+
+
+def test_changes_are_counted_and_listed_on_request(replanned: PlanRecord) -> None:
+    against = replanned.summary["against"]
+    text = _printed(replanned)
+    assert f"Against plan {against['plan_id']}" in text
+    assert f"{against['counts']['kept']} kept" in text
+    gone = against["dropped"][0]
+    assert f"{gone['spacecraft']} on {gone['antenna']}" in _printed(replanned, shown={"full": True})
 
 
 def test_the_report_says_what_a_review_needs(short_plan: PlanRecord) -> None:
@@ -38,7 +90,7 @@ def test_the_report_says_what_a_review_needs(short_plan: PlanRecord) -> None:
     summary = short_plan.summary
     flat = " ".join(text.split())
     for part in ("DRAFT", summary["plan_id"], "no plan can exceed", "gap", "Inputs", "Antennas through the day",
-                 "Contacts", "Data aboard", "Lowest margins", *summary["antennas"], *summary["spacecraft"]):
+                 "Contacts", "Data aboard", *summary["antennas"], *summary["spacecraft"]):
         assert part in flat, part
     for caution in CAUTIONS:
         assert caution[:40] in flat
@@ -61,7 +113,7 @@ def test_shortfalls_and_warnings_come_first(short_plan: PlanRecord) -> None:
     summary["shortfalls"] = [{"kind": "request", "name": "[x]", "sentence": "Request [x] is not met: [red]no window."}]
     summary["warnings"] = ["element set of Ambril-1 is 9 days old"]
     text = _printed(replace(short_plan, summary=summary))
-    assert text.index("Shortfalls") < text.index("Warnings") < text.index("Inputs")
+    assert text.index("Requirements not met") < text.index("Warnings") < text.index("Inputs")
     assert "[red]no window." in text
 
 
@@ -113,7 +165,9 @@ def test_keys() -> None:
     assert set(spacecraft_keys([f"s{i}" for i in range(63)]).values()) == {"*"}
 
 
-@pytest.mark.parametrize(("volume_mb", "text"), [(0.04, "0.0 MB"), (999.94, "999.9 MB"), (12_345, "12.35 GB"), (2e6, "2.00 TB")])
+@pytest.mark.parametrize(
+    ("volume_mb", "text"), [(0.04, "0.0 MB"), (999.94, "999.9 MB"), (12_345, "12.35 GB"), (2e6, "2.00 TB")]
+)
 def test_volumes(volume_mb: float, text: str) -> None:
     assert megabytes(volume_mb) == text
 

@@ -5,8 +5,8 @@ prices, no plan with at most s points is worth more than
 
     sum over spacecraft of max(worth - prices of its options - q x its points) + sum(p) + q s
 
-because a plan pays each clique at most once (Lagrangian duality; Held, Wolfe and Crowder 1974 for the
-subgradient method, with the step of Polyak 1969). Each maximum is found exactly by the schedule program.
+because a plan pays each clique at most once (Lagrangian duality; subgradient method: Held, Wolfe and
+Crowder 1974). Each maximum is found exactly by the schedule program.
 The prices are the certificate: :func:`ceiling` evaluates them again from nothing else.
 """
 
@@ -22,10 +22,14 @@ from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.schedule import Work, best_schedule, make_work, worth_of
 
-_FIRST_STEP = 1.5
-_PATIENCE = 10
-_SHRINK = 0.85
-_MEMORY = 0.7
+_FIRST_STEP = 0.05
+_MEAN_MEMORY = 0.8
+_SQUARE_MEMORY = 0.99
+_LEAST_SIZE = 0.1
+_PATIENCE = 6
+_SHRINK = 0.8
+# When steps have become this small against the first, it is time for another way.
+_LEAST_STEP = 1e-3
 _MOST_CONTACTS = 4_096
 
 
@@ -92,49 +96,75 @@ def ceiling(arrays: FleetArrays, clique_price: Floats, point_worth: float, plan_
 
 
 class BoundSearch:
-    """Moves prices so that the ceiling falls. It counts iterations and never looks at the clock."""
+    """Moves prices so that the ceiling falls. It counts iterations and never looks at the clock.
 
-    def __init__(self, arrays: FleetArrays, sweeper: Sweeper, plan_points: float, point_worth: float) -> None:
+    The subgradient of the ceiling is "times used less one" in each clique. Its steps are scaled clique by
+    clique by a running mean and mean square (Adam: Kingma and Ba 2015), which here beats Polyak's step and
+    needs no guess of the optimum; the step shrinks while nothing improves.
+    """
+
+    def __init__(
+        self, arrays: FleetArrays, sweeper: Sweeper, plan_points: float, point_worth: float, contact_worth: float,
+    ) -> None:
         self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
         self.bound = np.inf
         self.price = self.best_price = np.zeros(arrays.cliques)
-        self.point_worth = self.best_point_worth = point_worth
-        self._direction = np.zeros(arrays.cliques)
-        self._step, self._stuck = _FIRST_STEP, 0
+        self.point_worth = point_worth
+        self._mean, self._square = np.zeros(arrays.cliques), np.zeros(arrays.cliques)
+        # A first step moves the price of an option by some part of what a contact is worth.
+        width = max(1.0, float((arrays.use_last - arrays.use_first).sum(axis=1).mean()))
+        self._first_step = self._step = _FIRST_STEP * contact_worth / width
+        self._stuck = self._steps = 0
 
     def improve(self, iterations: int, value: float) -> None:
-        """Take subgradient steps; ``value`` is the best plan known, which the ceiling cannot go below."""
+        """Take subgradient steps. ``value`` is the best plan known."""
+        if self._step < _LEAST_STEP * self._first_step:
+            self._polish(iterations, value)
+            self._step, self._steps = 0.2 * self._first_step, 0
+            self._mean, self._square = np.zeros(self.arrays.cliques), np.zeros(self.arrays.cliques)
+            return
         for _ in range(iterations):
             at = self.sweeper(self.price, self.point_worth)
             here = float(at.worth.sum() + self.price.sum() + self.point_worth * self.plan_points)
             if not np.isfinite(here):
                 # Too many labels at these prices: go back to good ones, and on with care.
-                self._turn_back()
+                self.price, self._step = self.best_price, self._step * _SHRINK
+                self._mean = np.zeros(self.arrays.cliques)
                 continue
             self._note(here)
-            # The direction looks back a little, which damps the zigzag (Camerini, Fratta and Maffioli 1975).
-            self._direction = (at.use - 1.0) + _MEMORY * self._direction
-            move = np.where((self.price <= 0.0) & (self._direction < 0.0), 0.0, self._direction)
-            size = float(move @ move)
-            if size <= 0.0:
-                return
-            distance = max(here - value, 1e-6 * abs(here))
-            self.price = np.maximum(0.0, self.price + self._step * distance / size * move)
+            gradient = at.use - 1.0
+            gradient[(self.price <= 0.0) & (gradient < 0.0)] = 0.0
+            self._steps += 1
+            self._mean = _MEAN_MEMORY * self._mean + (1.0 - _MEAN_MEMORY) * gradient
+            self._square = _SQUARE_MEMORY * self._square + (1.0 - _SQUARE_MEMORY) * gradient**2
+            mean = self._mean / (1.0 - _MEAN_MEMORY**self._steps)
+            size = np.sqrt(self._square / (1.0 - _SQUARE_MEMORY**self._steps))
+            self.price = np.maximum(0.0, self.price + self._step * mean / (size + _LEAST_SIZE))
 
-    def restart(self) -> None:
+    def _polish(self, iterations: int, value: float) -> None:
+        """Polyak's steps (1969) from the best prices: they end exactly where the ceiling meets the plan, if it does."""
+        self.price = self.best_price
+        for _ in range(iterations):
+            at = self.sweeper(self.price, self.point_worth)
+            here = float(at.worth.sum() + self.price.sum() + self.point_worth * self.plan_points)
+            gradient = at.use - 1.0
+            gradient[(self.price <= 0.0) & (gradient < 0.0)] = 0.0
+            size = float(gradient @ gradient)
+            if not np.isfinite(here) or size <= 0.0:
+                break
+            self._note(here)
+            self.price = np.maximum(0.0, self.price + (here - value) / size * gradient)
+        self.price = self.best_price
+
+    def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
-        self.bound, self._step, self._stuck = np.inf, _FIRST_STEP, 0
+        self.plan_points, self.bound, self._stuck = plan_points, np.inf, 0
 
     def _note(self, here: float) -> None:
-        if here < self.bound - 1e-5 * abs(self.bound):
+        if here < self.bound - 1e-5 * abs(here) or not np.isfinite(self.bound):
             self._stuck = 0
         if here < self.bound:
-            self.bound, self.best_price, self.best_point_worth = here, self.price.copy(), self.point_worth
+            self.bound, self.best_price = here, self.price
         self._stuck += 1
         if self._stuck > _PATIENCE:
             self._step, self._stuck = self._step * _SHRINK, 0
-
-    def _turn_back(self) -> None:
-        self.price, self.point_worth = self.best_price.copy(), self.best_point_worth
-        self._direction = np.zeros(self.arrays.cliques)
-        self._step *= _SHRINK

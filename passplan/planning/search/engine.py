@@ -19,7 +19,7 @@ import numpy as np
 from passplan.planning.clock import Clock
 from passplan.planning.maps import StorageMaps
 from passplan.planning.problem import Floats, Limits, Problem
-from passplan.planning.result import relative_gap
+from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import BoundSearch, Sweeper, option_prices
 from passplan.planning.search.fleetarrays import FleetArrays, find_clashes, fleet_arrays
@@ -29,8 +29,8 @@ from passplan.planning.search.schedule import make_work, worth_of
 # A round is about this many options looked at: some tenths of a second.
 _ROUND_OPTIONS = 400_000
 _MOST_OUT = 10
-# Loss accepted at first, as a part of what a contact is worth on average.
-_WARMTH = 0.02
+# Loss accepted at first, as a part of what a contact is worth on average, round by round.
+_WARMTH = (0.0, 0.02, 0.1, 0.5)
 _PATIENCE_ROUNDS = 200
 
 
@@ -79,7 +79,8 @@ class _Rounds:
         self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
         self.work = make_work()
         self.value, self.points = self._worth()
-        self.bounds = BoundSearch(arrays, self.sweeper, self.points, self._first_point_worth(problem))
+        self.bounds = BoundSearch(
+            arrays, self.sweeper, self.points, self._first_point_worth(problem), self._contact_worth())
 
     def run(self, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
         options = max(1, len(self.arrays.option))
@@ -89,35 +90,38 @@ class _Rounds:
         while not clock.expired():
             prices = option_prices(self.arrays, self.bounds.best_price)
             before = self.value, self.bounds.bound
-            jobs: list[Callable[[], None]] = [
-                lambda: self.bounds.improve(sweeps, before[0]),
-                lambda p=prices, r=rounds: self._rebuild(r, rebuilds, p)]
-            if self.threads > 1 and rounds > 0:
-                for job in [self.pool.submit(job) for job in jobs]:
-                    job.result()
+            if self.threads > 1:
+                beside = self.pool.submit(self._rebuild, rounds, rebuilds, prices)
+                self.bounds.improve(sweeps, before[0])
+                beside.result()
             else:
-                for job in jobs:
-                    job()
+                self._rebuild(rounds, rebuilds, prices)
+                self.bounds.improve(sweeps, before[0])
             rounds += 1
             self.value, points = self._worth()
             if points < self.points - 1e-9:
-                self.points = self.bounds.plan_points = points
-                self.bounds.restart()
+                self.points = points
+                self.bounds.restart(points)
             idle = 0 if (self.value, self.bounds.bound) != before else idle + 1
             if tell is not None:
                 tell(self.value, self.bounds.bound)
-            if relative_gap(self.value, self.bounds.bound) <= self.limits.gap or idle > _PATIENCE_ROUNDS:
+            gap = relative_gap(self.value, self.bounds.bound)
+            if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
         chosen = sorted(int(self.arrays.option[o])
                         for i in range(len(self.best_size)) for o in self.best_taken[i, : self.best_size[i]])
-        return Found(tuple(chosen), self.bounds.bound, self.bounds.best_price, self.bounds.best_point_worth, rounds)
+        return Found(tuple(chosen), self.bounds.bound, self.bounds.best_price, self.bounds.point_worth, rounds)
 
     def _rebuild(self, round_number: int, iterations: int, prices: Floats) -> None:
-        warmth = _WARMTH * max(1.0, abs(self.value)) / max(1, int(self.best_size.sum()))
+        warmth = _WARMTH[round_number % len(_WARMTH)] * self._contact_worth()
         self.taken[:], self.size[:] = self.best_taken, self.best_size
         seed = (self.limits.seed * 1_000_003 + round_number) % 2**32
-        rebuild(self.arrays, seed, iterations, warmth if round_number % 2 else 0.0, _MOST_OUT, prices, self.point_worth,
+        rebuild(self.arrays, seed, iterations, warmth, _MOST_OUT, prices, self.point_worth,
                 self.work, self.taken, self.size, self.best_taken, self.best_size)
+
+    def _contact_worth(self) -> float:
+        """What a contact of the plan is worth, on average."""
+        return max(1.0, abs(self.value)) / max(1, int(self.best_size.sum()))
 
     def _worth(self) -> tuple[float, float]:
         pairs = [worth_of(self.arrays, i, self.best_taken[i], self.best_size[i]) for i in range(len(self.best_size))]
@@ -160,10 +164,10 @@ def _exercise() -> None:
     """Call every compiled function once, on a problem of one spacecraft and one option."""
     one, none = np.ones(1, dtype=np.int64), np.zeros(1, dtype=np.int64)
     arrays = FleetArrays(
-        option=none, first=np.array([0, 1]), craft=np.ones((1, 4)), start_first=np.array([0, 1]), start_s=none, node=none,
-        arrival=one, span=np.array([[0, 1]]), maps=np.zeros((1, 6)), cost=np.zeros(1), bits=none, renews=none,
-        use_first=np.zeros((1, 1), dtype=np.int64), use_last=np.ones((1, 1), dtype=np.int64), clash=none, wants=np.zeros((1, 1)),
-        recur=np.zeros((1, 3)), horizon_s=1, spill=0.0, cliques=1)
+        option=none, first=np.array([0, 1]), craft=np.ones((1, 4)), start_first=np.array([0, 1]), start_s=none,
+        node=none, arrival=one, span=np.array([[0, 1]]), maps=np.zeros((1, 6)), cost=np.zeros(1), bits=none,
+        renews=none, use_first=np.zeros((1, 1), dtype=np.int64), use_last=np.ones((1, 1), dtype=np.int64), clash=none,
+        wants=np.zeros((1, 1)), recur=np.zeros((1, 3)), horizon_s=1, spill=0.0, cliques=1)
     find_clashes(arrays.first, none, one, arrays.use_first, arrays.use_last, 0, none.copy())
     Sweeper(arrays)(np.zeros(1), 0.0)
     taken, size = np.zeros((1, 4), dtype=np.int64), np.zeros(1, dtype=np.int64)

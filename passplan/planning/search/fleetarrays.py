@@ -37,7 +37,8 @@ class FleetArrays(NamedTuple):
     end; ``span``: start and end in s; ``maps``: the storage maps as rows; ``cost`` in worth; ``bits`` of
     wanted terms it meets; ``renews``: until when it covers the recurrence, or -1. ``use_first`` and ``use_last``
     (m, k) are ranges of cliques, k lanes at most each. ``clash`` (m) is the last start of a later option of the
-    same spacecraft that shares a clique with this one (time to set up between two contacts on one antenna), or -1. ``wants`` (n, 60) are the points of each bit, ``recur``
+    same spacecraft that shares a clique with this one (time to set up between two contacts on one antenna), or -1.
+    ``wants`` (n, 60) are the points of each bit, ``recur``
     (n, 3) from, until and points per second of the recurrence (until 0 where there is none).
     """
 
@@ -94,8 +95,8 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
                               maps.generated_mb])[order],
         cost=problem.worth_per_money * options.cost[order], bits=bits, renews=renews, use_first=use_first,
-        use_last=use_last, clash=_clashes(problem, terms, order, first, use_first, use_last), wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb,
-        cliques=cliques)
+        use_last=use_last, clash=_clashes(problem, terms, order, first, use_first, use_last), wants=wants, recur=recur,
+        horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=cliques)
 
 
 def _uses(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Integers, int]:

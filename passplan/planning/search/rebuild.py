@@ -18,6 +18,8 @@ from passplan.planning.search.schedule import Work, best_schedule, clashes, wort
 
 # A spacecraft has at most this many contacts; a schedule of more is refused.
 MOST_CONTACTS = 1_024
+# Prices of the bound are paid up to a little more than in full.
+_MOST_SHARE = 1.2
 
 
 @compiled
@@ -27,9 +29,10 @@ def rebuild(
 ) -> float:
     """Run ``iterations`` of ruin and recreate from the plan in ``taken`` and ``size``, which move.
 
-    ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to nothing. At most
-    ``most`` spacecraft are taken out at a time. The best plan goes to ``best_taken`` and ``best_size`` if it
-    beats the plan at the start; the gain over that plan is returned.
+    ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many. ``warmth`` is
+    the loss that is accepted with probability 1/e at first; it falls to nothing. At most ``most`` spacecraft
+    are taken out at a time. The best plan goes to ``best_taken`` and ``best_size`` if it beats the plan at
+    the start; the gain over that plan is returned.
     """
     np.random.seed(seed)
     count = len(size)
@@ -40,41 +43,32 @@ def rebuild(
         _hold(a, taken[i], size[i], holder, i)
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
-    old_taken, old_size, old_worth = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64), np.empty(most)
-    price = np.empty(len(option_price))
+    old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
+    old_worth, price = np.empty(most), np.empty(len(option_price))
     fresh = np.empty(4 * MOST_CONTACTS, dtype=np.int64)
     for step in range(iterations):
         some = _pick(a, holder, out, min(count, 2 + int(np.random.random() ** 2 * (most - 1))))
-        before = 0.0
         for k in range(some):
             i = out[k]
-            old_taken[k, : size[i]], old_size[k], old_worth[k] = taken[i, : size[i]], size[i], worth[i]
-            before += worth[i]
+            old_size[k], old_worth[k] = size[i], worth[i]
+            for c in range(size[i]):
+                old_taken[k, c] = taken[i, c]
             _hold(a, taken[i], size[i], holder, -1)
             size[i] = 0
-        share = np.random.random() * 1.2
-        after = 0.0
-        for round in range(2):
-            for k in range(some):
-                i = out[k]
-                if round == 1:
-                    _hold(a, taken[i], size[i], holder, -1)
-                part = share if round == 0 and k < some - 1 else 0.0
-                for o in range(a.first[i], a.first[i + 1]):
-                    price[o] = a.cost[o] + part * option_price[o] if _free(a, o, holder) else np.inf
-                _, fresh_size = best_schedule(a, i, price, point_worth, work, fresh)
-                if 0 <= fresh_size <= taken.shape[1] and not clashes(a, fresh, fresh_size):
-                    size[i] = fresh_size
-                    taken[i, :fresh_size] = fresh[:fresh_size]
-                elif round == 0:
-                    size[i] = 0
-                _hold(a, taken[i], size[i], holder, i)
+        share = np.random.random() * _MOST_SHARE
+        for k in range(some):
+            # The last one has nobody left to leave room for.
+            part = share if k < some - 1 else 0.0
+            _replan(a, out[k], part, option_price, price, point_worth, work, holder, taken, size, fresh)
+        for k in range(some):
+            _replan(a, out[k], 0.0, option_price, price, point_worth, work, holder, taken, size, fresh)
+        change = 0.0
         for k in range(some):
             worth[out[k]] = _net_worth(a, out[k], taken[out[k]], size[out[k]], point_worth)
-            after += worth[out[k]]
+            change += worth[out[k]] - old_worth[k]
         heat = warmth * (1.0 - step / iterations)
-        if after >= before or (heat > 0.0 and np.random.random() < np.exp((after - before) / heat)):
-            gain += after - before
+        if change >= 0.0 or (heat > 0.0 and np.random.random() < np.exp(change / heat)):
+            gain += change
             if gain > best_gain:
                 best_gain = gain
                 best_taken[:], best_size[:] = taken, size
@@ -84,9 +78,30 @@ def rebuild(
         for k in range(some):
             i = out[k]
             size[i], worth[i] = old_size[k], old_worth[k]
-            taken[i, : size[i]] = old_taken[k, : size[i]]
+            for c in range(size[i]):
+                taken[i, c] = old_taken[k, c]
             _hold(a, taken[i], size[i], holder, i)
     return best_gain
+
+
+@compiled
+def _replan(
+    a: FleetArrays, i: int, part: float, option_price: Floats, price: Floats, point_worth: float, work: Work,
+    holder: Integers, taken: Integers, size: Integers, fresh: Integers,
+) -> None:
+    """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
+
+    It keeps the schedule it has where the program gives none that can be used.
+    """
+    _hold(a, taken[i], size[i], holder, -1)
+    for o in range(a.first[i], a.first[i + 1]):
+        price[o] = a.cost[o] + part * option_price[o] if _free(a, o, holder) else np.inf
+    _, count = best_schedule(a, i, price, point_worth, work, fresh)
+    if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count):
+        size[i] = count
+        for c in range(count):
+            taken[i, c] = fresh[c]
+    _hold(a, taken[i], size[i], holder, i)
 
 
 @compiled

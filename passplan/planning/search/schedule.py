@@ -86,7 +86,8 @@ def best_schedule(
             if here >= len(rows):
                 return np.inf, -1
             rows[here, 0], rows[here, 1] = work.wait_rows[arrived, 0], work.wait_rows[arrived, 1]
-            rows[here, 2], bits[here], via[here] = work.wait_rows[arrived, 2], work.wait_bits[arrived], work.wait_via[arrived]
+            rows[here, 2], bits[here] = work.wait_rows[arrived, 2], work.wait_bits[arrived]
+            via[here] = work.wait_via[arrived]
             here += 1
             arrived = work.wait_next[arrived]
         here = _prune(a, here, work, now, weight, simple)
@@ -192,7 +193,7 @@ def _idle(rows: Floats, count: int, made: float, capacity: float, spill: float) 
 
 
 @compiled
-def _missing(wants: Floats, met: int) -> float:
+def _missing(wants: Floats, met: int | np.int64) -> float:
     """Points of the wanted terms whose bit is not set."""
     points = 0.0
     for b in range(len(wants)):
@@ -207,30 +208,10 @@ def _prune(a: FleetArrays, count: int, work: Work, now: int, weight: float, simp
 
     ``simple`` says that bits and cover are all alike; two sweeps then do what otherwise needs all pairs.
     """
-    rows, bits, via, spill = work.rows, work.bits, work.via, a.spill
+    rows, bits, via = work.rows, work.bits, work.via
     _sort(count, rows, bits, via)
     if simple:
-        best = -np.inf
-        left = 0
-        for k in range(count):
-            ahead = rows[k, 1] + weight * rows[k, 0]
-            if ahead > best:
-                if _unbound(a, work, k, now):
-                    best = ahead
-                _move(rows, bits, via, k, left)
-                left += 1
-        best = -np.inf
-        low = left
-        for k in range(left - 1, -1, -1):
-            ahead = rows[k, 1] - spill * rows[k, 0]
-            if ahead > best:
-                if _unbound(a, work, k, now):
-                    best = ahead
-                low -= 1
-                _move(rows, bits, via, k, low)
-        for k in range(low, left):
-            _move(rows, bits, via, k, k - low)
-        return left - low
+        return _prune_alike(a, count, work, now, weight)
     left = 0
     for k in range(count):
         useless = False
@@ -248,6 +229,33 @@ def _prune(a: FleetArrays, count: int, work: Work, now: int, weight: float, simp
         _move(rows, bits, via, k, kept)
         left = kept + 1
     return left
+
+
+@compiled
+def _prune_alike(a: FleetArrays, count: int, work: Work, now: int, weight: float) -> int:
+    """Up: drop what holds more than another but is not ahead. Down: what holds less and is not ahead."""
+    rows, bits, via = work.rows, work.bits, work.via
+    best = -np.inf
+    left = 0
+    for k in range(count):
+        ahead = rows[k, 1] + weight * rows[k, 0]
+        if ahead > best:
+            if _unbound(a, work, k, now):
+                best = ahead
+            _move(rows, bits, via, k, left)
+            left += 1
+    best = -np.inf
+    low = left
+    for k in range(left - 1, -1, -1):
+        ahead = rows[k, 1] - a.spill * rows[k, 0]
+        if ahead > best:
+            if _unbound(a, work, k, now):
+                best = ahead
+            low -= 1
+            _move(rows, bits, via, k, low)
+    for k in range(low, left):
+        _move(rows, bits, via, k, k - low)
+    return left - low
 
 
 @compiled

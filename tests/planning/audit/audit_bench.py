@@ -132,8 +132,8 @@ def settle(bench: Bench) -> None:
             key: getattr(balance, key) for key in ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
         }
     sums = bench.segments.groupby("contact_id")["volume_mb"].sum()
-    bench.contacts["volume_mb"] = bench.contacts["contact_id"].map(sums)
-    bench.contacts["value"] = bench.contacts["weight"] * bench.contacts["volume_mb"]
+    bench.contacts["volume_mb"] = bench.contacts["contact_id"].map(sums).astype("float64")
+    bench.contacts["value"] = bench.contacts["weight"].astype("float64") * bench.contacts["volume_mb"]
     value -= run.policy.worth_per_money * float(bench.contacts["cost"].sum())
     bench.summary = {
         "storage": storage, "value": value, "volume_mb": float(bench.contacts["volume_mb"].sum()), "shortfalls": [],

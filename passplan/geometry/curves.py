@@ -1,0 +1,39 @@
+"""The functions whose zeros are sought, on polynomials (14, 2, n) of P and D at x (n,); see ``scene``."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from passplan.geometry import stencil
+from passplan.geometry.timescale import Floats
+
+
+def excess(x: Floats, powers: Floats, sine: Floats) -> tuple[Floats, Floats]:
+    """F and its slope."""
+    (p, d), (dp, dd) = stencil.slope(powers, x)
+    root = np.sqrt(d)
+    dd /= root
+    root *= sine
+    p -= root
+    dd *= sine
+    dd *= 0.5
+    dp -= dd
+    return p, dp
+
+
+def excess_slope(x: Floats, powers: Floats, sine: Floats) -> tuple[Floats, Floats]:
+    """The slope of F and its bend."""
+    (_, d), (dp, dd), (ddp, ddd) = stencil.bend(powers, x)
+    root = np.sqrt(d)
+    return dp - 0.5 * sine * dd / root, ddp - 0.5 * sine * (ddd / root - 0.5 * dd * dd / (d * root))
+
+
+def toward_peak(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
+    """P' D - P D'/2, which is zero where the elevation peaks, and its slope."""
+    (p, d), (dp, dd), (ddp, ddd) = stencil.bend(powers, x)
+    return dp * d - 0.5 * p * dd, ddp * d + 0.5 * (dp * dd - p * ddd)
+
+
+def toward_nearest(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
+    """D' and its slope, for polynomials of D alone."""
+    return stencil.bend(powers, x)[1:]

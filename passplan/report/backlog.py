@@ -1,0 +1,69 @@
+"""What each spacecraft holds aboard through the horizon, instant by instant."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from passplan.planning.record import PlanRecord
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class Backlog:
+    """The fill as straight lines between (``time_s``, ``fill_mb``), and the spans in which data is lost."""
+
+    time_s: Floats
+    fill_mb: Floats
+    capacity_mb: float
+    losing_s: tuple[tuple[float, float], ...]
+
+    def at(self, time_s: Floats) -> Floats:
+        """The fill at any times within the horizon."""
+        return np.interp(time_s, self.time_s, self.fill_mb)
+
+
+def backlogs(record: PlanRecord) -> dict[str, Backlog]:
+    """The backlog of every planned spacecraft, from the summary's storage figures and the segments."""
+    start, end = (pd.Timestamp(record.summary[f"horizon_{edge}_utc"].rstrip("Z")) for edge in ("start", "end"))
+    horizon_s = (end - start).total_seconds()
+    names = record.contacts.set_index("contact_id")["spacecraft"]
+    pieces = record.segments.assign(
+        spacecraft=record.segments["contact_id"].map(names),
+        first_s=(record.segments["start_utc"] - start).dt.total_seconds(),
+        last_s=(record.segments["end_utc"] - start).dt.total_seconds(),
+    ).sort_values("first_s", kind="stable")
+    by_craft = dict(tuple(pieces.groupby("spacecraft")))
+    return {name: _follow(store, by_craft.get(name), horizon_s) for name, store in record.summary["storage"].items()}
+
+
+def _follow(store: Mapping[str, Any], pieces: pd.DataFrame | None, horizon_s: float) -> Backlog:
+    """Between events the storage gains what is generated and sends at one rate; kinks where it runs empty or full."""
+    generation = store["generated_mb"] / horizon_s if horizon_s > 0 else 0.0
+    capacity, fill, clock = store["capacity_mb"], store["start_mb"], 0.0
+    points, losing = [(0.0, fill)], []
+    events: list[tuple[float, float]] = []
+    if pieces is not None:
+        for row in pieces.to_dict("records"):
+            events += [(row["first_s"], 0.0), (row["last_s"], row["rate_mbps"] / 8.0)]
+    for until, sending in (*events, (horizon_s, 0.0)):
+        slope, length = generation - sending, max(until - clock, 0.0)
+        edge = capacity if slope > 0.0 else 0.0
+        turn = (edge - fill) / slope if slope else length
+        if 0.0 <= turn < length:
+            points.append((clock + turn, edge))
+            if slope > 0.0 and length - turn > 0.5:
+                losing.append((clock + turn, until))
+            fill = edge
+        else:
+            fill = min(max(fill + slope * length, 0.0), capacity)
+        clock = max(until, clock)
+        points.append((clock, fill))
+    time_s, fill_mb = np.array(points).T
+    return Backlog(time_s, fill_mb, capacity, tuple(losing))

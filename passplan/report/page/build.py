@@ -1,0 +1,150 @@
+"""From a plan to its page: the numbers in Python, the layout in a template, the movement in a small script."""
+
+from __future__ import annotations
+
+import base64
+import hashlib
+from collections.abc import Sequence
+from functools import lru_cache
+from importlib.resources import files
+from pathlib import Path
+from typing import Any
+
+import pandas as pd
+from jinja2 import Environment, PackageLoader, StrictUndefined
+from markupsafe import Markup
+
+from passplan.inputs.run import Run
+from passplan.planning.record import PlanRecord
+from passplan.report.backlog import Backlog, backlogs
+from passplan.report.cautions import CAUTIONS
+from passplan.report.keys import spacecraft_keys
+from passplan.report.page.lanes import Day, Names, antenna_ribbons, hours_of, spacecraft_ribbons, storage_path
+from passplan.report.page.payload import payload
+from passplan.report.page.ribbons import UNIT_S
+from passplan.report.tracks import WindowTrack, window_tracks
+from passplan.report.usage import antenna_use, causes
+from passplan.report.words import STATUS_WORDS, clock, megabytes, minute, rate
+
+PAGE = "report.html"
+_SCRIPT = ("words", "panorama", "chart", "contact", "filters", "view", "start")
+
+
+def render_page(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | None = None) -> str:
+    """The whole page as text; ``run`` is the run that the plan was made from (``directory.stored_run``)."""
+    tracks = window_tracks(run, record.windows) if tracks is None else tracks
+    names = Names.of(record, spacecraft_keys(record.summary["spacecraft"]))
+    style, script = _asset("page.css"), _script()
+    return (
+        _environment()
+        .get_template("page.html.j2")
+        .render(
+            s=record.summary,
+            day=Day.of(record),
+            unit_s=UNIT_S,
+            names=names,
+            cautions=CAUTIONS,
+            draft=record.summary.get("approval", "draft") == "draft",
+            status=STATUS_WORDS.get(record.summary["status"], record.summary["status"]),
+            lost_mb=sum(store["lost_mb"] for store in record.summary["storage"].values()),
+            antennas=_antennas(record, tracks, names),
+            spacecraft=_spacecraft(record, tracks, names),
+            contacts=_contact_rows(record),
+            use=antenna_use(record),
+            causes=causes(record, tracks),
+            hours=hours_of(Day.of(record)),
+            lost=_lost(record),
+            ages=_ages(record),
+            data=payload(record, run, tracks, names),
+            style=Markup(style),
+            script=Markup(script),
+            script_hash=_digest(script),
+        )
+    )
+
+
+def write_page(record: PlanRecord, run: Run, path: Path, tracks: Sequence[WindowTrack] | None = None) -> None:
+    """Write the page as UTF-8; raises OSError where it cannot be written."""
+    path.write_text(render_page(record, run, tracks), encoding="utf-8")
+
+
+@lru_cache(maxsize=1)
+def _environment() -> Environment:
+    environment = Environment(
+        loader=PackageLoader("passplan.report.page", "assets"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+    )
+    environment.filters |= {"megabytes": megabytes, "clock": clock, "minute": minute, "rate": rate}
+    environment.policies["json.dumps_kwargs"] = {"separators": (",", ":"), "ensure_ascii": False, "allow_nan": False}
+    return environment
+
+
+def _asset(name: str) -> str:
+    return files("passplan.report.page").joinpath("assets", name).read_text(encoding="utf-8")
+
+
+def _script() -> str:
+    """The script's parts in order, in one scope of their own."""
+    return '"use strict";\n(() => {\n' + "\n".join(_asset(f"{part}.js") for part in _SCRIPT) + "})();\n"
+
+
+def _digest(script: str) -> str:
+    """The hash by which the page's own policy lets this script run, and no other."""
+    return "sha256-" + base64.b64encode(hashlib.sha256(script.encode("utf-8")).digest()).decode("ascii")
+
+
+def _antennas(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
+    ribbons = antenna_ribbons(record, tracks, names)
+    use = {row.antenna: row for row in antenna_use(record)}
+    return [
+        {"name": name, "number": number, "site": names.sites[use[name].site], "use": use[name], "ribbon": ribbons[name]}
+        for name, number in names.antennas.items()
+    ]
+
+
+def _spacecraft(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
+    ribbons = spacecraft_ribbons(record, tracks, names)
+    stores: dict[str, Backlog] = backlogs(record)
+    rows = []
+    for name, number in names.spacecraft.items():
+        fill, loss = storage_path(stores[name])
+        rows.append(
+            {
+                "name": name,
+                "number": number,
+                "key": names.craft_keys[name],
+                "ribbon": ribbons[name],
+                "fill": fill,
+                "loss": loss,
+                "store": record.summary["storage"][name],
+                "facts": record.summary["spacecraft"][name],
+                "contacts": int((record.contacts["spacecraft"] == name).sum()),
+            }
+        )
+    return rows
+
+
+def _contact_rows(record: PlanRecord) -> list[dict[Any, Any]]:
+    rows: list[dict[Any, Any]] = record.contacts.to_dict("records")
+    for row in rows:
+        row["margin"] = "" if pd.isna(row["min_margin_db"]) else f"{row['min_margin_db']:.1f}"
+        row["start"] = pd.Timestamp(row["start_utc"])
+    return rows
+
+
+def _lost(record: PlanRecord) -> list[dict[str, Any]]:
+    """Spacecraft that lose data aboard, with what it was worth, the dearest first."""
+    rows = []
+    for name, store in record.summary["storage"].items():
+        weight = record.summary["spacecraft"][name]["weight"]
+        if store["lost_mb"] > 0.05:
+            rows.append({"name": name, "lost_mb": store["lost_mb"], "worth": weight * store["lost_mb"]})
+    return sorted(rows, key=lambda row: (-row["worth"], row["name"]))
+
+
+def _ages(record: PlanRecord) -> tuple[float, float] | None:
+    ages = [s["element_age_days"] for s in record.summary["spacecraft"].values() if s["element_age_days"] is not None]
+    return (min(ages), max(ages)) if ages else None

@@ -1,0 +1,85 @@
+"""Every window as a track: where the antenna points along it, and what the link allows."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from passplan.geometry.pointing import sample_windows
+from passplan.inputs.run import Run
+from passplan.link.choice import Track as LinkTrack
+from passplan.link.profiles import WindowLink, link_profiles
+
+Floats = NDArray[np.float64]
+Spans = tuple[tuple[float, float], ...]
+_STEP_S = 10.0
+
+
+@dataclass(frozen=True, eq=False)
+class WindowTrack:
+    """One window sampled, arrays of shape (n,): seconds from the horizon's start, pointing and range.
+
+    ``rate_mbps`` is the fastest net rate that holds the policy's margin, 0 where none does. ``keyholes``
+    are spans in seconds in which the mount cannot follow; empty where nothing is known of its mechanics.
+    """
+
+    time_s: Floats
+    azimuth_deg: Floats
+    elevation_deg: Floats
+    range_km: Floats
+    rate_mbps: Floats
+    link: WindowLink = field(repr=False)
+    keyholes: Spans = ()
+
+    def margin_db(self, radio: str, modcod: str) -> Floats | None:
+        """Margin (n,) of one modcod of a radio (commands: of its bit rate); None where the link floor kept none."""
+        downlink = self.link.downlink.tracks if self.link.downlink is not None else ()
+        command = self.link.command.tracks if self.link.command is not None else ()
+        for track in (*downlink, *command):
+            for rung in track.chain.rungs:
+                if track.chain.radio == radio and (rung.name == modcod or track in command):
+                    return np.interp(self.time_s, track.time_s, track.quality_db) - rung.required_db
+        return None
+
+
+def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
+    """The track of each window of the table, in its order, every 10 s from AOS and at LOS."""
+    if windows.empty:
+        return []
+    samples = sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_STEP_S)
+    links = link_profiles(run, windows, samples)
+    tracks = []
+    for i, link in enumerate(links):
+        own = slice(int(samples.offsets[i]), int(samples.offsets[i + 1]))
+        time_s = samples.time_s[own]
+        sending = link.downlink.tracks if link.downlink is not None else ()
+        tracks.append(
+            WindowTrack(
+                time_s,
+                samples.azimuth_deg[own],
+                samples.elevation_deg[own],
+                samples.range_km[own],
+                allowed_mbps(sending, time_s, run.policy.required_margin_db),
+                link,
+            )
+        )
+    return tracks
+
+
+def allowed_mbps(tracks: Sequence[LinkTrack], time_s: Floats, margin_db: float) -> Floats:
+    """The fastest rate over all tracks at each time that leaves ``margin_db``; 0 where none does."""
+    best = np.zeros(time_s.size)
+    for track in tracks:
+        quality_db = np.interp(time_s, track.time_s, track.quality_db) - margin_db
+        for rung in track.chain.rungs:
+            best = np.where(quality_db >= rung.required_db, np.maximum(best, rung.rate_mbps), best)
+    return best
+
+
+def thinned(count: int, most: int) -> NDArray[np.int64]:
+    """Indices of at most ``most`` of ``count`` samples, evenly spread, the first and the last among them."""
+    return np.unique(np.linspace(0, count - 1, min(count, most)).round().astype(np.int64))
