@@ -19,7 +19,7 @@ def notices(summary: Mapping[str, Any], full: bool = True) -> list[Text]:
     """One line for each notice of a plan, or one line that says how many there are."""
     found = summary.get("weather", {}).get("notices", ())
     if len(found) > 1 and not full:
-        return [Text(f"· {found[0]}; {len(found) - 1} more (show --full)", style="dim")]
+        return [Text(f"· {len(found)} notices on what was assumed instead; show --full lists them", style="dim")]
     return [Text(f"· {notice}", style="dim") for notice in found]
 
 
