@@ -18,6 +18,10 @@ def command(
     spacecraft: Annotated[str, typer.Option("--spacecraft", help="The spacecraft.", show_default=False)],
     antenna: Annotated[str, typer.Option("--antenna", help="The antenna.", show_default=False)],
     at: Annotated[str | None, typer.Option("--at", metavar="UTC", help="The instant; without it the culmination of the highest window.")] = None,
+    csv: Annotated[
+        Path | None,
+        typer.Option("--csv", metavar="FILE", help="Also write every term along the pass, a row each second, to FILE."),
+    ] = None,
     start: StartOption = None,
 ) -> None:
     """Show the link budget line by line at an instant, and margin and modcod along the pass."""
@@ -27,7 +31,7 @@ def command(
     from passplan.inputs.load import load_run
     from passplan.inputs.records import datetime64
     from passplan.planning.steps import windows_of
-    from passplan.report.link_budget import print_budget
+    from passplan.report.link_budget import print_budget, write_along
 
     run = load_run(config, start=instant(start, "--start"))
     for option, name, known in (("--spacecraft", spacecraft, run.orbits), ("--antenna", antenna, run.antennas)):
@@ -46,4 +50,8 @@ def command(
         moment = datetime64(wanted)
         inside = windows[(windows["aos_utc"] <= moment) & (windows["los_utc"] > moment)]
         window = inside.iloc[0] if len(inside) else None
+    if csv is not None:
+        if window is None:
+            raise InputError([Problem("--at", "", at, "lies in no window of the pair; there is no pass to write")])
+        write_along(run, spacecraft, antenna, window, csv)
     print_budget(run, spacecraft, antenna, moment, window, stdout())

@@ -34,7 +34,10 @@ def _calendar_files(value: Any) -> Any:
 
 
 class RunConfig(Record):
-    """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``."""
+    """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``.
+
+    ``rain_mm_per_h`` is the day's rain rate by site, where it is known.
+    """
 
     name: Label = "run"
     start: Instant | None = None
@@ -44,6 +47,8 @@ class RunConfig(Record):
     ground: str
     elements: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
     closures: Annotated[tuple[CalendarFile, ...], BeforeValidator(_calendar_files)] = ()
+    pfd_limits: str | None = None
+    rain_mm_per_h: dict[str, Annotated[float, Field(ge=0.0, le=300.0)]] = Field(default_factory=dict)
     requests: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
     policy: str | dict[str, Any] = Field(default_factory=dict)
 

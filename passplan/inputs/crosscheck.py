@@ -61,6 +61,8 @@ def check_matches(
                                                  **{f"t:{k}": v for k, v in transmitters.items()}}
     fitted = {f"r:{name}" for a in antennas.values() for name in a.receivers}
     fitted |= {f"t:{name}" for a in antennas.values() for name in a.transmitters}
+    # With a chain that could not be read nobody knows what it would have served.
+    fitted_unsound = any(key[2:] in findings.unsound for key in fitted)
     carried: dict[str, list[str]] = {}
     for item in spacecraft.values():
         for name in item.radios:
@@ -68,7 +70,9 @@ def check_matches(
     for name, radio in radios.items():
         if name not in carried:
             findings.warn(f"{file}: radio {name} is carried by no spacecraft")
-        elif antennas and not any(matching_loss_db(radio, chains[key]) is not None for key in fitted if key in chains):
+        elif antennas and not fitted_unsound and not any(
+            matching_loss_db(radio, chains[key]) is not None for key in fitted if key in chains
+        ):
             verb = "receive" if radio.direction == "downlink" else "command"
             owners = ", ".join(carried[name][:3]) + (", ..." if len(carried[name]) > 3 else "")
             findings.problem(
@@ -96,5 +100,5 @@ def check_requests(
 def _known(names: Iterable[str], known: Iterable[str], file: str | Path, where: str, findings: Findings) -> None:
     known = list(known)
     for name in names:
-        if name not in known:
+        if name not in known and name not in findings.unsound:
             findings.problem(file, where, name, f"not defined; {nearest(name, known)}")

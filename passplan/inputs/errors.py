@@ -49,6 +49,8 @@ class Findings:
     def __init__(self) -> None:
         self.problems: list[Problem] = []
         self.warnings: list[str] = []
+        # Records that were faulty themselves: that their names are missing elsewhere is no news.
+        self.unsound: set[str] = set()
         # A file of junk gives a fault per line, so looking for repeats must not take ever longer.
         self._lines_noted: set[str] = set()
 

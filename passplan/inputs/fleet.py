@@ -6,26 +6,54 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
-from passplan.inputs.records import Instant, Name, Names, Polarisation, Record
+from passplan.inputs.records import Curve, Instant, Name, Names, Polarisation, Record, check_angles
+from passplan.inputs.transmit import check_transmit
 
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
 
 
 class DownlinkRadio(Record):
-    """A transmitter aboard. EIRP is on boresight; losses are positive numbers."""
+    """A transmitter aboard. EIRP is on boresight; losses are positive numbers.
+
+    Either ``eirp_dbw``, or ``transmit_power_w`` with ``antenna_gain_dbi`` and ``transmit_loss_db``; the
+    back-off comes off both. ``pattern`` is a fixed antenna's loss [dB] against the angle off boresight [deg],
+    boresight to nadir; without it the antenna is steered at the station. ``rate_control`` says how the
+    modcod is chosen: ``fixed`` (the only one of ``modcods``), ``per-contact``, or ``adaptive`` (stepped
+    along the pass).
+    """
 
     name: Name
     direction: Literal["downlink"]
     frequency_mhz: _Frequency
     polarisation: Polarisation
-    eirp_dbw: Annotated[float, Field(ge=-50.0, le=80.0)]
+    eirp_dbw: Annotated[float, Field(ge=-50.0, le=80.0)] | None = None
+    transmit_power_w: Annotated[float, Field(gt=0.0, le=10_000.0)] | None = None
+    antenna_gain_dbi: Annotated[float, Field(ge=-20.0, le=70.0)] | None = None
+    transmit_loss_db: Annotated[float, Field(ge=0.0, le=30.0)] = 0.0
+    back_off_db: Annotated[float, Field(ge=0.0, le=30.0)] = 0.0
+    pattern: Curve = ()
     symbol_rate_msps: Annotated[float, Field(gt=0.0, le=2_000.0)]
     roll_off: Annotated[float, Field(ge=0.0, le=1.0)] = 0.25
     modcod_table: str = "dvb-s2"
     modcods: Names = ()
+    pilots: bool = False
     pointing_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
     implementation_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 1.5
     acquisition_s: Annotated[float, Field(ge=0.0, le=600.0)] = 20.0
+    rate_control: Literal["fixed", "per-contact", "adaptive"] = "per-contact"
+    hysteresis_db: Annotated[float, Field(ge=0.0, le=10.0)] = 0.5
+    min_dwell_s: Annotated[int, Field(ge=0, le=600)] = 10
+    switching_gap_s: Annotated[int, Field(ge=0, le=60)] = 0
+
+    @model_validator(mode="after")
+    def _consistent(self) -> DownlinkRadio:
+        check_transmit(self.eirp_dbw, self.transmit_power_w, self.antenna_gain_dbi, self.transmit_loss_db)
+        check_pattern(self.pattern)
+        if self.pilots and self.modcod_table != "dvb-s2":
+            raise ValueError("pilots are counted for the table dvb-s2 only; count them in your own efficiencies")
+        if self.rate_control == "fixed" and len(self.modcods) != 1:
+            raise ValueError("rate_control 'fixed' needs exactly one name in modcods; name the one it sends")
+        return self
 
 
 class CommandRadio(Record):
@@ -41,6 +69,19 @@ class CommandRadio(Record):
     pointing_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
     implementation_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 2.0
     acquisition_s: Annotated[float, Field(ge=0.0, le=600.0)] = 20.0
+    pattern: Curve = ()
+
+    @model_validator(mode="after")
+    def _consistent(self) -> CommandRadio:
+        check_pattern(self.pattern)
+        return self
+
+
+def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
+    """Raise ValueError where a fixed antenna's pattern makes no sense."""
+    check_angles(pattern, 180.0)
+    if any(loss_db < 0.0 for _, loss_db in pattern):
+        raise ValueError("the losses of the pattern are positive numbers; correct the curve")
 
 
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]

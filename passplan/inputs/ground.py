@@ -8,7 +8,8 @@ from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 from pydantic import AfterValidator, Field, model_validator
 
-from passplan.inputs.records import MaskPoints, Name, Names, Polarisations, Record
+from passplan.inputs.records import Curve, MaskPoints, Name, Names, Polarisations, Record, check_angles
+from passplan.inputs.transmit import check_transmit
 
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
 
@@ -27,7 +28,8 @@ class Site(Record):
     ``time_zone`` (IANA name) serves extra, labelled columns of local time only; everything else is UTC.
 
     The three weather values feed the gas attenuation; where they are absent the link floor takes the
-    mean annual reference atmosphere.
+    mean annual reference atmosphere. ``rain_rate_mm_per_h`` is a measured or forecast rate that replaces
+    the statistics of rain; the run config may state it for the day.
     """
 
     name: Name
@@ -37,11 +39,20 @@ class Site(Record):
     pressure_hpa: Annotated[float, Field(ge=300.0, le=1_100.0)] | None = None
     temperature_k: Annotated[float, Field(ge=200.0, le=330.0)] | None = None
     water_vapour_g_per_m3: Annotated[float, Field(ge=0.0, le=50.0)] | None = None
+    rain_rate_mm_per_h: Annotated[float, Field(ge=0.0, le=300.0)] | None = None
     time_zone: Annotated[str, AfterValidator(_known_zone)] | None = None
 
 
 class Receiver(Record):
-    """A receive chain: the band and polarisations it takes, and G/T, or gain and system noise temperature."""
+    """A receive chain: the band and polarisations it takes, and how well it hears.
+
+    One of four ways to say so: ``g_over_t_db_per_k``; ``g_over_t_curve`` against elevation; ``gain_dbi``
+    with the whole system's ``noise_temperature_k``; or ``gain_dbi`` with the noise built up from
+    ``receiver_noise_k``, ``antenna_noise_k``, ``spill_over_k`` and the feeder, to which sky noise is added.
+    A measured figure holds in clear sky, at ``measured_at_deg`` of elevation or, without it, at all of them.
+    With G/T, ``noise_temperature_k`` may be given too: it lets rain and the Sun raise the noise. Dish
+    ``diameter_m`` and ``beamwidth_deg`` follow from the gain where they are not given.
+    """
 
     name: Name
     low_mhz: _Frequency
@@ -50,31 +61,57 @@ class Receiver(Record):
     g_over_t_db_per_k: Annotated[float, Field(ge=-30.0, le=70.0)] | None = None
     gain_dbi: Annotated[float, Field(ge=0.0, le=90.0)] | None = None
     noise_temperature_k: Annotated[float, Field(gt=0.0, le=10_000.0)] | None = None
+    g_over_t_curve: Curve = ()
+    measured_at_deg: Annotated[float, Field(ge=1.0, le=90.0)] | None = None
+    receiver_noise_k: Annotated[float, Field(gt=0.0, le=10_000.0)] | None = None
+    antenna_noise_k: Annotated[float, Field(ge=0.0, le=1_000.0)] = 0.0
+    spill_over_k: Annotated[float, Field(ge=0.0, le=300.0)] = 0.0
+    feeder_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
+    feeder_temperature_k: Annotated[float, Field(ge=200.0, le=350.0)] = 290.0
+    diameter_m: Annotated[float, Field(gt=0.0, le=100.0)] | None = None
+    aperture_efficiency: Annotated[float, Field(gt=0.0, le=1.0)] = 0.6
+    beamwidth_deg: Annotated[float, Field(gt=0.0, le=90.0)] | None = None
     pointing_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
 
     @model_validator(mode="after")
     def _consistent(self) -> Receiver:
         _check_band(self.low_mhz, self.high_mhz)
-        built = self.gain_dbi is not None and self.noise_temperature_k is not None
-        partly = self.gain_dbi is not None or self.noise_temperature_k is not None
-        if (self.g_over_t_db_per_k is None) != built or (self.g_over_t_db_per_k is not None and partly):
+        check_angles(self.g_over_t_curve, 90.0)
+        stated = self.g_over_t_db_per_k is not None or bool(self.g_over_t_curve)
+        if self.g_over_t_db_per_k is not None and self.g_over_t_curve:
+            raise ValueError("give either g_over_t_db_per_k or g_over_t_curve, not both")
+        if stated == (self.gain_dbi is not None):
             raise ValueError("give either g_over_t_db_per_k, or both gain_dbi and noise_temperature_k")
+        if not stated and (self.noise_temperature_k is None) == (self.receiver_noise_k is None):
+            raise ValueError("with gain_dbi give either noise_temperature_k (the whole system) or receiver_noise_k")
+        parts = self.antenna_noise_k or self.spill_over_k or self.feeder_loss_db
+        if self.receiver_noise_k is None and parts:
+            raise ValueError("antenna, spill-over and feeder are counted only with gain_dbi and receiver_noise_k")
+        if stated and self.receiver_noise_k is not None:
+            raise ValueError("receiver_noise_k goes with gain_dbi; with G/T give noise_temperature_k")
+        if self.measured_at_deg is not None and (self.receiver_noise_k is not None or self.g_over_t_curve):
+            raise ValueError("measured_at_deg goes with one measured figure, not with a curve or a built-up noise")
         return self
 
 
 class Transmitter(Record):
-    """A transmit chain for commands: the band and polarisations it covers, and its EIRP."""
+    """A transmit chain for commands: the band and polarisations it covers, and its EIRP, as a radio states it."""
 
     name: Name
     low_mhz: _Frequency
     high_mhz: _Frequency
     polarisations: Polarisations
-    eirp_dbw: Annotated[float, Field(ge=-20.0, le=100.0)]
+    eirp_dbw: Annotated[float, Field(ge=-20.0, le=100.0)] | None = None
+    transmit_power_w: Annotated[float, Field(gt=0.0, le=100_000.0)] | None = None
+    antenna_gain_dbi: Annotated[float, Field(ge=0.0, le=90.0)] | None = None
+    transmit_loss_db: Annotated[float, Field(ge=0.0, le=30.0)] = 0.0
+    back_off_db: Annotated[float, Field(ge=0.0, le=30.0)] = 0.0
     pointing_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
 
     @model_validator(mode="after")
     def _consistent(self) -> Transmitter:
         _check_band(self.low_mhz, self.high_mhz)
+        check_transmit(self.eirp_dbw, self.transmit_power_w, self.antenna_gain_dbi, self.transmit_loss_db)
         return self
 
 
@@ -83,7 +120,9 @@ class Antenna(Record):
 
     ``mask`` is a table of (azimuth, elevation) points in degrees, joined by straight lines and wrapped
     at north; where it is absent the mask is ``min_elevation_deg`` all round. With both, the higher of
-    the two holds. ``prepare_s`` is kept free before a contact and ``release_s`` after it.
+    the two holds. ``transmit_mask`` and ``transmit_min_elevation_deg`` bound where it may transmit, in the
+    same way. ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted.
+    ``prepare_s`` is kept free before a contact and ``release_s`` after it.
     """
 
     name: Name
@@ -92,22 +131,30 @@ class Antenna(Record):
     transmitters: Names = ()
     min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] = 5.0
     mask: MaskPoints = ()
+    transmit_min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] | None = None
+    transmit_mask: MaskPoints = ()
+    wet_radome_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
     prepare_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 60.0
     release_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 30.0
     price_per_minute: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
 
     @model_validator(mode="after")
     def _consistent(self) -> Antenna:
-        azimuths = [azimuth for azimuth, _ in self.mask]
-        if any(not 0.0 <= azimuth <= 360.0 for azimuth in azimuths):
-            raise ValueError("mask azimuths run from 0 to 360 deg; correct the table")
-        if any(not -5.0 <= elevation < 90.0 for _, elevation in self.mask):
-            raise ValueError("mask elevations lie from -5 to 90 deg; correct the table")
-        if any(b < a for a, b in pairwise(azimuths)):
-            raise ValueError("mask azimuths must not decrease; sort the table")
+        _check_mask(self.mask)
+        _check_mask(self.transmit_mask)
         return self
 
 
 def _check_band(low_mhz: float, high_mhz: float) -> None:
     if low_mhz > high_mhz:
         raise ValueError(f"low_mhz {low_mhz:g} is above high_mhz {high_mhz:g}; swap them")
+
+
+def _check_mask(mask: tuple[tuple[float, float], ...]) -> None:
+    azimuths = [azimuth for azimuth, _ in mask]
+    if any(not 0.0 <= azimuth <= 360.0 for azimuth in azimuths):
+        raise ValueError("mask azimuths run from 0 to 360 deg; correct the table")
+    if any(not -5.0 <= elevation < 90.0 for _, elevation in mask):
+        raise ValueError("mask elevations lie from -5 to 90 deg; correct the table")
+    if any(b < a for a, b in pairwise(azimuths)):
+        raise ValueError("mask azimuths must not decrease; sort the table")

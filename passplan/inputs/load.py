@@ -17,10 +17,11 @@ from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
 from passplan.inputs.crosscheck import check_fleet, check_ground, check_matches, check_requests
 from passplan.inputs.elements.resolve import ElementsError, resolve_orbits
-from passplan.inputs.errors import Findings
+from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Radio, Spacecraft
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.modcods import ModcodTable, builtin_names, builtin_table, read_modcod_table
+from passplan.inputs.pfd import PfdLimit, builtin_pfd_limits, read_pfd_limits
 from passplan.inputs.policy import Policy
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import datetime64
@@ -70,6 +71,10 @@ def load_run(
     rules = _read_policy(settings, policy or {}, path, reader, findings)
     fleet = _read_fleet(beside(path, settings.fleet), reader, findings)
     ground = _read_ground(beside(path, settings.ground), reader, findings)
+    sites = _rained_on(ground.sites, settings, path, findings)
+    limits: tuple[PfdLimit, ...] = builtin_pfd_limits()
+    if settings.pfd_limits is not None:
+        limits = read_pfd_limits(beside(path, settings.pfd_limits), reader, findings)
     requests = _read_requests(settings, path, fleet, ground, reader, findings)
     check_matches(fleet.spacecraft, fleet.radios, ground.antennas, ground.receivers, ground.transmitters,
                   beside(path, settings.fleet), findings)
@@ -88,20 +93,32 @@ def load_run(
     findings.raise_if_any()
     return Run(
         name=settings.name, start_utc=start_utc, end_utc=end_utc, spacecraft=fleet.spacecraft, radios=fleet.radios,
-        sites=ground.sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
+        sites=sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
         modcod_tables=fleet.tables, closures=closures, policy=rules,
         # A request file holds many days; one whose span misses this horizon is another day's business.
         requests=tuple(
             r for r in requests.values() if datetime64(r.latest_utc) > start_utc and datetime64(r.earliest_utc) < end_utc
         ),
         orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
-        warnings=tuple(findings.warnings), files=reader.files,
+        pfd_limits=limits, warnings=tuple(findings.warnings), files=reader.files,
     )
 
 
 def beside(path: Path, name: str) -> Path:
     """The path that ``name`` means when it stands in the file at ``path``, without detours through ``..``."""
     return Path(os.path.normpath(path.parent / name))
+
+
+def _rained_on(sites: dict[str, Site], settings: RunConfig, path: Path, findings: Findings) -> dict[str, Site]:
+    """The sites with the rain rate of the day where the config states one."""
+    for name in settings.rain_mm_per_h:
+        if name not in sites and sites:
+            findings.problem(path, f"rain_mm_per_h.{name}", name, f"not a site; {nearest(name, sites)}")
+    return {
+        name: site.model_copy(update={"rain_rate_mm_per_h": settings.rain_mm_per_h[name]})
+        if name in settings.rain_mm_per_h else site
+        for name, site in sites.items()
+    }
 
 
 def _horizon(
@@ -198,4 +215,5 @@ def _records(
     """Checked records by name, from TOML tables or the CSV file that the key names."""
     placed = placed_records(document, key, path, reader, findings)
     items = [(place, checked(model, place[2], place[0], place[1], findings)) for place in placed]
+    findings.unsound.update(str(place[2].get("name")) for place, item in items if item is None)
     return unique([(place, item) for place, item in items if item is not None], key, findings)

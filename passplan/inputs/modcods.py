@@ -13,6 +13,7 @@ from typing import Annotated
 from pydantic import Field
 
 from passplan.inputs.errors import Findings, nearest
+from passplan.inputs.modcods_ccsds import CCSDS_SOURCE, ccsds_rows
 from passplan.inputs.modcods_dvb_s2 import DVB_S2_ROWS, DVB_S2_SOURCE
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import Record
@@ -48,13 +49,15 @@ _Placed = tuple[str, Modcod]
 
 def builtin_names() -> tuple[str, ...]:
     """The names that :func:`builtin_table` knows."""
-    return ("dvb-s2",)
+    return ("dvb-s2", "ccsds")
 
 
 def builtin_table(name: str) -> ModcodTable:
     """The built-in table ``name``; :class:`KeyError` that names the nearest one if there is none."""
     if name not in builtin_names():
         raise KeyError(f"no built-in modcod table {name!r}; {nearest(name, builtin_names())}")
+    if name == "ccsds":
+        return ModcodTable("ccsds", tuple(Modcod(*row) for row in ccsds_rows()), CCSDS_SOURCE)
     return ModcodTable("dvb-s2", tuple(Modcod(*row) for row in DVB_S2_ROWS), DVB_S2_SOURCE)
 
 

@@ -7,6 +7,17 @@ already count the coding and the headers of base-band and physical-layer frames.
 
 from __future__ import annotations
 
+# Slots of 90 symbols in a normal frame, by modulation; pilots are 36 symbols after every 16 slots but the last.
+_SLOTS = {"QPSK": 360, "8PSK": 240, "16APSK": 180, "32APSK": 144}
+
+
+def pilot_factor(modcod: str) -> float:
+    """What is left of the efficiency with pilots on. Source: ETSI EN 302 307-1, clause 5.5.3 (from memory)."""
+    slots = _SLOTS[modcod.split(" ", maxsplit=1)[0]]
+    symbols = 90 * (slots + 1)
+    return symbols / (symbols + 36 * ((slots - 1) // 16))
+
+
 DVB_S2_SOURCE = "ETSI EN 302 307-1 V1.4.1, Table 13 (ideal Es/N0, packet error rate 1e-7, no pilots)"
 
 # (modcod, net bit per symbol, required Es/N0 in dB)

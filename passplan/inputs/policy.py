@@ -13,11 +13,16 @@ class Policy(Record):
     """Defaults are meant to be safe; a config states only what differs.
 
     Values are in "worth" units: a delivered MB earns its spacecraft's weight, a lost MB costs
-    ``spill_cost_per_mb``, and a unit of money costs ``worth_per_money``.
+    ``spill_cost_per_mb``, and a unit of money costs ``worth_per_money``. Rain, cloud and scintillation are
+    counted from ``unavailability_percent`` on: the share of an average year in which the link may fail.
     """
 
     min_contact_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     required_margin_db: Annotated[float, Field(ge=0.0, le=30.0)] = 3.0
+    unavailability_percent: Annotated[float, Field(ge=0.001, le=50.0)] | None = None
+    sun_noise: bool = False
+    ionospheric_allowance_db: Annotated[float, Field(ge=0.0, le=30.0)] = 0.0
+    required_c_over_i_db: Annotated[float, Field(ge=-10.0, le=60.0)] | None = None
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     command_min_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     spill_cost_per_mb: Annotated[float, Field(ge=0.0, le=1e6)] = 0.1

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from datetime import UTC, date, datetime
+from itertools import pairwise
 from typing import Annotated, Any, Literal
 
 import numpy as np
@@ -51,12 +52,33 @@ def _mask_points(value: Any) -> Any:
     return value
 
 
+def _pairs(value: Any) -> Any:
+    """A CSV cell holds a curve as ``0:0;10:1.5``, the angle in degrees first."""
+    if isinstance(value, str):
+        try:
+            return tuple(tuple(float(x) for x in point.split(":", 1)) for point in _listed(value))
+        except ValueError:
+            raise ValueError("write the curve as angle:value pairs, angles in degrees, as 0:0;10:1.5") from None
+    return value
+
+
+def check_angles(points: tuple[tuple[float, float], ...], most_deg: float) -> None:
+    """Raise ValueError where the angles of a curve do not rise, or leave 0 to ``most_deg``."""
+    angles = [angle for angle, _ in points]
+    if any(not 0.0 <= angle <= most_deg for angle in angles):
+        raise ValueError(f"the angles of the curve run from 0 to {most_deg:g} deg; correct the curve")
+    if any(b <= a for a, b in pairwise(angles)):
+        raise ValueError("the angles of the curve must rise; sort the curve")
+
+
 NAME_PATTERN = r"^\w[\w \-]*$"
 
 Instant = Annotated[datetime, BeforeValidator(parse_instant)]
 Names = Annotated[tuple[str, ...], BeforeValidator(_listed)]
 Polarisations = Annotated[tuple[Polarisation, ...], BeforeValidator(_listed)]
 MaskPoints = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_mask_points)]
+Curve = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_pairs)]
+"""(angle in degrees, value) points, joined by straight lines."""
 # A name goes into file names, identifiers (joined by dots) and tables: no dots, slashes or invisible characters.
 Name = Annotated[str, Field(min_length=1, max_length=40, pattern=NAME_PATTERN)]
 

@@ -14,6 +14,7 @@ from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.modcods import ModcodTable
+from passplan.inputs.pfd import PfdLimit, builtin_pfd_limits
 from passplan.inputs.policy import Policy
 from passplan.inputs.reader import ReadFile
 
@@ -46,6 +47,7 @@ class Run:
     orbits: Mapping[str, OrbitSource]
     left_out: Mapping[str, str]
     elements: pd.DataFrame
+    pfd_limits: tuple[PfdLimit, ...] = field(default_factory=builtin_pfd_limits)
     warnings: tuple[str, ...] = ()
     files: tuple[ReadFile, ...] = field(default=(), repr=False)
 

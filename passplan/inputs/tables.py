@@ -156,6 +156,8 @@ def _plain(error: Any) -> str:
         "literal_error": "write one of {expected}",
         "float_parsing": "write a number",
         "float_type": "write a number",
+        "bool_type": "write true or false",
+        "bool_parsing": "write true or false",
         "int_parsing": "write a whole number",
         "int_type": "write a whole number",
         "int_from_float": "write a whole number",

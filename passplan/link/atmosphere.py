@@ -1,4 +1,4 @@
-"""Attenuation by oxygen and water vapour on a slant path (ITU-R P.676-12, Annex 2).
+"""Attenuation on a slant path: oxygen and water vapour here (ITU-R P.676-12, Annex 2), weather added to it.
 
 The zenith attenuations come once per site and frequency from the propagation package and are cached;
 their growth towards the horizon is a formula here:
@@ -16,14 +16,16 @@ from __future__ import annotations
 
 import warnings
 from collections.abc import Iterable
-from dataclasses import astuple, dataclass
+from dataclasses import astuple, dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from passplan.inputs.ground import Site
 from passplan.link.budget import Floats
-from passplan.link.gas_cache import Row, load_rows, save_rows
+from passplan.link.gas_cache import Row, cache_folder, load_rows, save_rows
+from passplan.link.weather import NODES_DEG, SiteConstants, WeatherPath
+from passplan.link.weather_cache import cached_weather
 
 LOWEST_STATED_ELEVATION_DEG = 5.0
 """Below this, P.676-12 Annex 2 does not state its own validity; a budget should say so."""
@@ -114,18 +116,22 @@ def gas_tables(wanted: Iterable[tuple[Site, float]]) -> dict[tuple[str, float], 
 
     Read from the cache where it holds them; the others are computed and the cache is brought up to date.
     """
+    places = {(site.name, frequency_mhz): (frequency_mhz, surface_weather(site)) for site, frequency_mhz in wanted}
+    found = gas_of(places.values())
+    return {key: found[place] for key, place in places.items()}
+
+
+def gas_of(wanted: Iterable[tuple[float, Weather]]) -> dict[tuple[float, Weather], ZenithGas]:
+    """Zenith attenuation of each (frequency in MHz, air at the surface), cached as :func:`gas_tables` says."""
     cached = load_rows()
     fresh: dict[str, Row] = {}
-    found: dict[tuple[str, float], ZenithGas] = {}
-    for site, frequency_mhz in wanted:
-        if (site.name, frequency_mhz) in found:
-            continue
-        weather = surface_weather(site)
+    found: dict[tuple[float, Weather], ZenithGas] = {}
+    for frequency_mhz, weather in dict.fromkeys(wanted):
         key = _key(frequency_mhz, weather)
-        row = cached.get(key) or fresh.get(key)
+        row = cached.get(key)
         if row is None:
             row = fresh[key] = zenith_gas(frequency_mhz, weather)
-        found[site.name, frequency_mhz] = ZenithGas(*row)
+        found[frequency_mhz, weather] = ZenithGas(*row)
     if fresh:
         save_rows(cached | fresh)
     return found
@@ -142,9 +148,120 @@ def gas_attenuation_db(gas: ZenithGas, elevation_deg: ArrayLike) -> Floats:
     low = elevation < _PLANE_LAYER_FROM_DEG
     if not np.any(low):
         return slant
+    if isinstance(gas.oxygen_db, float) and elevation.ndim == 1:
+        # The curved layer is dear, and few samples are that low.
+        few = elevation[low]
+        oxygen_db = gas.oxygen_db * _growth(few, gas.oxygen_height_km)
+        slant[low] = oxygen_db + gas.vapour_db * _growth(few, gas.vapour_height_km)
+        return slant
     oxygen_db = gas.oxygen_db * _growth(elevation, gas.oxygen_height_km)
     vapour_db = gas.vapour_db * _growth(elevation, gas.vapour_height_km)
     return np.asarray(np.where(low, oxygen_db + vapour_db, slant))
+
+
+@dataclass(frozen=True)
+class SkyPath:
+    """A path through the air over a site: frequency, polarisation, what to count, and the receiving dish.
+
+    Without ``percent`` (of an average year) and without a rain rate at the site, gas alone is counted.
+    """
+
+    site: Site
+    frequency_mhz: float
+    polarisation: str = "RHCP"
+    percent: float | None = None
+    diameter_m: float = 0.0
+    efficiency: float = 0.6
+
+    @property
+    def wet(self) -> bool:
+        """Whether rain is counted."""
+        return self.percent is not None or self.site.rain_rate_mm_per_h is not None
+
+
+@dataclass(frozen=True)
+class Attenuations:
+    """Attenuation [dB] by cause, one array each over the elevations asked for."""
+
+    gas_db: Floats
+    rain_db: Floats
+    cloud_db: Floats
+    scintillation_db: Floats
+
+    @property
+    def total_db(self) -> Floats:
+        """A_G + sqrt((A_R + A_C)^2 + A_S^2) (ITU-R P.618-13, section 2.5)."""
+        return np.asarray(self.gas_db + np.hypot(self.rain_db + self.cloud_db, self.scintillation_db))
+
+    @property
+    def absorbed_db(self) -> Floats:
+        """The part that also radiates: all but scintillation (P.618-13, section 3)."""
+        return np.asarray(self.gas_db + self.rain_db + self.cloud_db)
+
+
+@dataclass(frozen=True, eq=False)
+class Sky:
+    """Attenuation against elevation on one path; ``clear`` is the gas of the mean atmosphere without weather."""
+
+    gas: ZenithGas
+    clear: ZenithGas
+    nodes_db: Floats | None = None
+    constants: SiteConstants | None = None
+
+    def at(self, elevation_deg: ArrayLike) -> Attenuations:
+        """Attenuations at elevations [deg]; below the horizon as at the horizon."""
+        elevation = np.asarray(elevation_deg, np.float64)
+        gas_db = gas_attenuation_db(self.gas, elevation)
+        if self.nodes_db is None:
+            nothing = np.zeros_like(gas_db)
+            return Attenuations(gas_db, nothing, nothing, nothing)
+        return Attenuations(gas_db, *(np.asarray(np.interp(elevation, NODES_DEG, row)) for row in self.nodes_db))
+
+    def clear_db(self, elevation_deg: ArrayLike) -> Floats:
+        """Gas attenuation of the mean atmosphere [dB]."""
+        return gas_attenuation_db(self.clear, elevation_deg)
+
+
+# Looked up again and again within one run, and small; the folder is part of the key, as tests move it.
+_skies: dict[tuple[object, SkyPath], Sky] = {}
+_MOST_SKIES = 4_096
+
+
+def skies(paths: Iterable[SkyPath]) -> dict[SkyPath, Sky]:
+    """The sky over each path, from the caches where they hold it.
+
+    With a time percentage, gas too is that of the percentage: water vapour of ITU-R P.836 exceeded for it
+    (for 1 % where it is below 1 %, P.618 section 2.5); without one it is the mean atmosphere.
+    """
+    folder, wanted = cache_folder(), list(dict.fromkeys(paths))
+    if len(_skies) > _MOST_SKIES:
+        _skies.clear()
+    missing = [path for path in wanted if (folder, path) not in _skies]
+    tables = {path: cached_weather(_weather_path(path)) for path in missing if path.wet}
+    airs = {path: surface_weather(path.site) for path in missing}
+    damp = {path: airs[path] for path in missing}
+    for path, table in tables.items():
+        if path.percent is not None:
+            column, density = table.constants.vapour_column_kg_per_m2, table.constants.vapour_density_g_per_m3
+            damp[path] = replace(
+                airs[path], water_vapour_g_per_m3=density, vapour_column_kg_per_m2=column,
+                height_km=path.site.height_m / 1_000.0,
+            )
+    gas = gas_of((path.frequency_mhz, air) for path in missing for air in (airs[path], damp[path])) if missing else {}
+    for path in missing:
+        found, clear = gas[path.frequency_mhz, damp[path]], gas[path.frequency_mhz, airs[path]]
+        weather = tables.get(path)
+        _skies[folder, path] = Sky(found, clear) if weather is None else Sky(found, clear, *weather)
+    return {path: _skies[folder, path] for path in wanted}
+
+
+def _weather_path(path: SkyPath) -> WeatherPath:
+    site, tilt_deg = path.site, {"H": 0.0, "V": 90.0}.get(path.polarisation, 45.0)
+    return WeatherPath(
+        site.latitude_deg, site.longitude_deg, site.height_m / 1_000.0,
+        max(path.frequency_mhz / 1_000.0, _LOWEST_FREQUENCY_GHZ), tilt_deg, path.percent, site.rain_rate_mm_per_h,
+        path.diameter_m, path.efficiency,
+    )
 
 
 def _growth(elevation_deg: Floats, height_km: Quantity) -> Floats:

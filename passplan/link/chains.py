@@ -4,15 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 from typing import Literal
 
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio
-from passplan.inputs.ground import Receiver, Transmitter
+from passplan.inputs.ground import Antenna, Receiver, Transmitter
 from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.modcods import Modcod, ModcodTable
+from passplan.inputs.modcods_dvb_s2 import pilot_factor
 from passplan.inputs.run import Run
-from passplan.link.budget import cn0_dbhz, density_ratio_db, figure_of_merit_db_per_k, net_rate_mbps
+from passplan.link.budget import cn0_dbhz, density_ratio_db, eirp_from_power_dbw, net_rate_mbps
+from passplan.link.noise import reference_figure_db_per_k
 
 
 @dataclass(frozen=True)
@@ -25,11 +27,24 @@ class Rung:
 
 
 @dataclass(frozen=True)
+class RateControl:
+    """How a radio picks its modcod; the three figures are used by ``adaptive`` alone."""
+
+    kind: Literal["fixed", "per-contact", "adaptive"] = "per-contact"
+    hysteresis_db: float = 0.0
+    min_dwell_s: int = 0
+    switching_gap_s: int = 0
+
+
+@dataclass(frozen=True)
 class Chain:
     """A radio aboard with the receiver (command: transmitter) on the ground that serves it best.
 
     Everything of a budget that does not move: losses are positive; ``rate_hz`` is the symbol rate
     (command: the bit rate). ``rungs`` are in falling order of rate, each needing less than the one before.
+    ``pattern`` is the loss of a fixed antenna aboard against the angle off nadir, empty where it is steered.
+    ``receiver`` (downlinks) holds what the noise is made of; ``transmit_bounds`` (commands)
+    is the antenna with the mask it may transmit above in place of its own, None where that is its own.
     """
 
     radio: str
@@ -46,27 +61,39 @@ class Chain:
     implementation_loss_db: float
     acquisition_s: float
     rungs: tuple[Rung, ...]
+    ionospheric_loss_db: float = 0.0
+    wet_radome_loss_db: float = 0.0
+    pattern: tuple[tuple[float, float], ...] = ()
+    receiver: Receiver | None = None
+    transmit_bounds: Antenna | None = None
+    control: RateControl = RateControl()
+
+    @cached_property
+    def needs_db(self) -> tuple[float, ...]:
+        """What the rungs need, in their order [dB]."""
+        return tuple(rung.required_db for rung in self.rungs)
 
     @cached_property
     def merit_db(self) -> float:
         """Es/N0 (command: Eb/N0) after implementation loss, had the path no loss at all [dB].
 
-        Free-space loss and gas attenuation come off it to give the quality on a path.
+        Free-space loss, attenuation and what else moves come off it to give the quality on a path.
         """
         loss_db = (
             self.pointing_loss_aboard_db + self.pointing_loss_ground_db + self.polarisation_loss_db
-            + self.implementation_loss_db
+            + self.implementation_loss_db + self.ionospheric_loss_db
         )
         return float(density_ratio_db(cn0_dbhz(self.eirp_dbw, loss_db, self.g_over_t_db_per_k), self.rate_hz))
 
 
-def receiver_figure_db_per_k(receiver: Receiver) -> float:
-    """G/T as stated, or from gain and noise temperature [dB/K]."""
-    if receiver.g_over_t_db_per_k is not None:
-        return receiver.g_over_t_db_per_k
-    if receiver.gain_dbi is None or receiver.noise_temperature_k is None:
-        raise ValueError(f"receiver {receiver.name!r} states neither G/T nor gain and noise temperature")
-    return float(figure_of_merit_db_per_k(receiver.gain_dbi, receiver.noise_temperature_k))
+def radiated_dbw(item: DownlinkRadio | Transmitter) -> float:
+    """EIRP on boresight after back-off [dBW], as stated or from power, gain and losses."""
+    if item.eirp_dbw is not None:
+        return item.eirp_dbw - item.back_off_db
+    if item.transmit_power_w is None or item.antenna_gain_dbi is None:
+        raise ValueError(f"{item.name!r} states neither EIRP nor power and gain")
+    built_dbw = eirp_from_power_dbw(item.transmit_power_w, item.antenna_gain_dbi, item.transmit_loss_db)
+    return float(built_dbw) - item.back_off_db
 
 
 def best_receiver(radio: DownlinkRadio, receivers: Iterable[Receiver]) -> tuple[Receiver, float] | None:
@@ -77,7 +104,7 @@ def best_receiver(radio: DownlinkRadio, receivers: Iterable[Receiver]) -> tuple[
     fitting = [(item, loss) for item in receivers if (loss := matching_loss_db(radio, item)) is not None]
     return min(
         fitting,
-        key=lambda pair: (pair[0].pointing_loss_db + pair[1] - receiver_figure_db_per_k(pair[0]), pair[0].name),
+        key=lambda pair: (pair[0].pointing_loss_db + pair[1] - reference_figure_db_per_k(pair[0]), pair[0].name),
         default=None,
     )
 
@@ -87,7 +114,7 @@ def best_transmitter(radio: CommandRadio, transmitters: Iterable[Transmitter]) -
     fitting = [(item, loss) for item in transmitters if (loss := matching_loss_db(radio, item)) is not None]
     return min(
         fitting,
-        key=lambda pair: (pair[0].pointing_loss_db + pair[1] - pair[0].eirp_dbw, pair[0].name),
+        key=lambda pair: (pair[0].pointing_loss_db + pair[1] - radiated_dbw(pair[0]), pair[0].name),
         default=None,
     )
 
@@ -117,45 +144,74 @@ def chains_between(run: Run, spacecraft: str, antenna: str) -> tuple[Chain, ...]
         if isinstance(radio, DownlinkRadio):
             receiving = best_receiver(radio, receivers)
             if receiving is not None:
-                chains.append(_downlink(radio, *receiving, run.modcod_tables[radio.modcod_table]))
+                chains.append(_downlink(run, ground, radio, *receiving))
         else:
             sending = best_transmitter(radio, transmitters)
             if sending is not None:
-                chains.append(_command(radio, *sending))
+                chains.append(_command(run, ground, radio, *sending))
     return tuple(chains)
 
 
-def _downlink(radio: DownlinkRadio, receiver: Receiver, mismatch_db: float, table: ModcodTable) -> Chain:
-    rungs = tuple(
-        Rung(row.name, net_rate_mbps(radio.symbol_rate_msps, row.efficiency_bit_per_symbol), row.required_esn0_db)
+@lru_cache(maxsize=1_024)
+def rungs_of(radio: DownlinkRadio, table: ModcodTable) -> tuple[Rung, ...]:
+    """The rungs of a downlink radio, in falling order of net rate, pilots counted."""
+    return tuple(
+        Rung(
+            row.name,
+            net_rate_mbps(radio.symbol_rate_msps, row.efficiency_bit_per_symbol)
+            * (pilot_factor(row.name) if radio.pilots else 1.0),
+            row.required_esn0_db,
+        )
         for row in usable_modcods(radio, table)
     )
+
+
+def transmit_bounds(antenna: Antenna) -> Antenna | None:
+    """The antenna with its transmit mask in place of its mask; None where it may transmit wherever it may point."""
+    if antenna.transmit_min_elevation_deg is None and not antenna.transmit_mask:
+        return None
+    least = antenna.min_elevation_deg
+    floor = least if antenna.transmit_min_elevation_deg is None else antenna.transmit_min_elevation_deg
+    return antenna.model_copy(update={"mask": antenna.transmit_mask, "min_elevation_deg": floor})
+
+
+def _ionosphere_db(run: Run, frequency_mhz: float) -> float:
+    """The policy's stated allowance for ionospheric scintillation and Faraday rotation, below 1 GHz only."""
+    return run.policy.ionospheric_allowance_db if frequency_mhz < 1_000.0 else 0.0
+
+
+def _downlink(run: Run, ground: Antenna, radio: DownlinkRadio, receiver: Receiver, mismatch_db: float) -> Chain:
     return Chain(
         radio=radio.name,
         partner=receiver.name,
         direction="downlink",
         frequency_mhz=radio.frequency_mhz,
         polarisation=radio.polarisation,
-        eirp_dbw=radio.eirp_dbw,
+        eirp_dbw=radiated_dbw(radio),
         pointing_loss_aboard_db=radio.pointing_loss_db,
         pointing_loss_ground_db=receiver.pointing_loss_db,
         polarisation_loss_db=mismatch_db,
-        g_over_t_db_per_k=receiver_figure_db_per_k(receiver),
+        g_over_t_db_per_k=reference_figure_db_per_k(receiver),
         rate_hz=radio.symbol_rate_msps * 1e6,
         implementation_loss_db=radio.implementation_loss_db,
         acquisition_s=radio.acquisition_s,
-        rungs=rungs,
+        rungs=rungs_of(radio, run.modcod_tables[radio.modcod_table]),
+        ionospheric_loss_db=_ionosphere_db(run, radio.frequency_mhz),
+        wet_radome_loss_db=ground.wet_radome_loss_db,
+        pattern=radio.pattern,
+        receiver=receiver,
+        control=RateControl(radio.rate_control, radio.hysteresis_db, radio.min_dwell_s, radio.switching_gap_s),
     )
 
 
-def _command(radio: CommandRadio, transmitter: Transmitter, mismatch_db: float) -> Chain:
+def _command(run: Run, ground: Antenna, radio: CommandRadio, transmitter: Transmitter, mismatch_db: float) -> Chain:
     return Chain(
         radio=radio.name,
         partner=transmitter.name,
         direction="command",
         frequency_mhz=radio.frequency_mhz,
         polarisation=radio.polarisation,
-        eirp_dbw=transmitter.eirp_dbw,
+        eirp_dbw=radiated_dbw(transmitter),
         pointing_loss_aboard_db=radio.pointing_loss_db,
         pointing_loss_ground_db=transmitter.pointing_loss_db,
         polarisation_loss_db=mismatch_db,
@@ -164,4 +220,8 @@ def _command(radio: CommandRadio, transmitter: Transmitter, mismatch_db: float) 
         implementation_loss_db=radio.implementation_loss_db,
         acquisition_s=radio.acquisition_s,
         rungs=(Rung("command", radio.bit_rate_kbps / 1e3, radio.required_ebn0_db),),
+        ionospheric_loss_db=_ionosphere_db(run, radio.frequency_mhz),
+        wet_radome_loss_db=ground.wet_radome_loss_db,
+        pattern=radio.pattern,
+        transmit_bounds=transmit_bounds(ground),
     )

@@ -4,19 +4,39 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 
 from passplan.link.chains import Chain, Rung
+from passplan.link.steps import Step, rate_steps
 from passplan.link.stretches import Floats, Ints
 
 # Crossing times carry rounding noise; one that lies within a microsecond of a whole second is on it.
 _NOISE_S = 1e-6
 
 
+STEPPED = "stepped"
+"""The modcod of a contact that uses several."""
+
+
+@dataclass(frozen=True)
+class SendPiece:
+    """Whole seconds from the horizon's start in which one modcod is sent, and its net rate."""
+
+    start_s: int
+    end_s: int
+    modcod: str
+    rate_mbps: float
+
+
 @dataclass(frozen=True)
 class DownlinkChoice:
-    """How one contact sends: whole seconds from the horizon's start, net user data, least margin [dB]."""
+    """How one contact sends: whole seconds from the horizon's start, net user data, least margin [dB].
+
+    ``modcod`` is ``stepped`` where the pieces use several; ``rate_mbps`` is the mean while sending.
+    """
 
     radio: str
     receiver: str
@@ -29,6 +49,7 @@ class DownlinkChoice:
     usable_s: int
     volume_mb: float
     min_margin_db: float
+    pieces: tuple[SendPiece, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -51,6 +72,7 @@ class Track:
 
     ``time_s`` (from the horizon's start) and ``quality_db`` (Es/N0 or Eb/N0 after implementation loss)
     have one entry per sample; ``rung``, ``first_s`` and ``last_s`` one per stretch, in rising rung.
+    ``margin_db`` is what a rung must hold.
     """
 
     chain: Chain
@@ -59,6 +81,45 @@ class Track:
     rung: Ints
     first_s: Floats
     last_s: Floats
+    margin_db: float = 0.0
+
+    @cached_property
+    def steps(self) -> tuple[Step, ...]:
+        """The stepped rates of the whole window, in time order; a contact takes its part of them."""
+        spans = list(zip(self.rung.tolist(), self.first_s.tolist(), self.last_s.tolist(), strict=True))
+        found: list[Step] = []
+        slowest = max((rung for rung, _, _ in spans), default=0)
+        for lock_s, lost_s in sorted((a, b) for rung, a, b in spans if rung == slowest):
+            begin, end = math.ceil(lock_s - _NOISE_S), math.floor(lost_s + _NOISE_S)
+            if end > begin:
+                holds, climbs = self._rungs_by_second(begin, end, spans)
+                found += rate_steps(begin, holds, climbs, self.chain.control, lock_s)
+        return tuple(found)
+
+    def _rungs_by_second(
+        self, begin_s: int, end_s: int, spans: list[tuple[int, float, float]]
+    ) -> tuple[list[int], list[int]]:
+        """The fastest rung that holds throughout each second, and the fastest that leaves the hysteresis."""
+        holds = np.full(end_s - begin_s, len(self.chain.rungs), np.int64)
+        for rung, first_s, last_s in sorted(spans, reverse=True):
+            low = max(math.ceil(first_s - _NOISE_S) - begin_s, 0)
+            holds[low : max(math.floor(last_s + _NOISE_S) - begin_s, low)] = rung
+        if self.chain.control.hysteresis_db == 0.0:
+            return holds.tolist(), holds.tolist()
+        quality_db = np.interp(np.arange(begin_s, end_s), self.time_s, self.quality_db)
+        needs_db = [rung.required_db + self.margin_db + self.chain.control.hysteresis_db for rung in self.chain.rungs]
+        # Needs fall along the rungs: the first that is met is as far in as there are needs above the quality.
+        climbs = np.searchsorted(-np.array(needs_db), -quality_db, "left")
+        return holds.tolist(), np.maximum(climbs, holds).tolist()
+
+    def stepped(self, start_s: int, end_s: int) -> list[Step]:
+        """The steps of a contact [``start_s``, ``end_s``), after acquisition."""
+        cut = [
+            Step(max(step.start_s, math.ceil(max(step.lock_s, start_s) + self.chain.acquisition_s - _NOISE_S)),
+                 min(step.end_s, end_s), step.rung, step.lock_s)
+            for step in self.steps
+        ]
+        return [step for step in cut if step.end_s > step.start_s]
 
     def least_quality_db(self, start_s: float, end_s: float) -> float:
         """The least quality from ``start_s`` to ``end_s``, along straight lines between samples [dB]."""
@@ -91,9 +152,18 @@ class DownlinkProfile:
 
         Seconds count from the horizon's start. Sending begins ``acquisition_s`` after both the contact
         and the signal have begun, and lasts while the margin holds without a break; it is rounded inward
-        to whole seconds. Of equal volumes, the modcod with the lower requirement wins.
+        to whole seconds. Of equal volumes, the modcod with the lower requirement wins. A radio that adapts
+        its rate sends the steps of the window that fall into the contact instead.
         """
-        found = _most(self.tracks, start_s, end_s)
+        stepping = tuple(track for track in self.tracks if track.chain.control.kind == "adaptive")
+        level = tuple(track for track in self.tracks if track.chain.control.kind != "adaptive")
+        choices = [_stepped(track, start_s, end_s) for track in stepping]
+        if level:
+            choices.append(self._level(level, start_s, end_s))
+        return max((c for c in choices if c is not None), key=lambda c: c.volume_mb, default=None)
+
+    def _level(self, tracks: tuple[Track, ...], start_s: int, end_s: int) -> DownlinkChoice | None:
+        found = _most(tracks, start_s, end_s)
         if found is None:
             return None
         chain, usable_s = found.track.chain, found.end_s - found.start_s
@@ -101,6 +171,7 @@ class DownlinkProfile:
             chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation, found.rung.name,
             found.rung.rate_mbps, found.start_s, found.end_s, usable_s,
             found.rung.rate_mbps * usable_s / 8.0, found.margin_db,
+            (SendPiece(found.start_s, found.end_s, found.rung.name, found.rung.rate_mbps),),
         )
 
 
@@ -131,6 +202,26 @@ class WindowLink:
 
     downlink: DownlinkProfile | None = None
     command: CommandProfile | None = None
+
+
+def _stepped(track: Track, start_s: int, end_s: int) -> DownlinkChoice | None:
+    """The steps of one track that fall into a contact, as a choice."""
+    steps, chain = track.stepped(start_s, end_s), track.chain
+    if not steps:
+        return None
+    pieces: list[SendPiece] = []
+    for step in steps:
+        rung = chain.rungs[step.rung]
+        pieces.append(SendPiece(step.start_s, step.end_s, rung.name, rung.rate_mbps))
+    margin_db = min(track.least_quality_db(s.start_s, s.end_s) - chain.rungs[s.rung].required_db for s in steps)
+    usable_s = sum(piece.end_s - piece.start_s for piece in pieces)
+    volume_mb = math.fsum(piece.rate_mbps * (piece.end_s - piece.start_s) for piece in pieces) / 8.0
+    several = any(a.modcod != b.modcod for a, b in pairwise(pieces))
+    return DownlinkChoice(
+        chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation,
+        STEPPED if several else pieces[0].modcod, 8.0 * volume_mb / usable_s, pieces[0].start_s, pieces[-1].end_s,
+        usable_s, volume_mb, margin_db, tuple(pieces),
+    )
 
 
 def _most(tracks: tuple[Track, ...], start_s: int, end_s: int) -> _Sending | None:

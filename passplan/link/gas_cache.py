@@ -71,12 +71,16 @@ def save_rows(rows: dict[str, Row]) -> bool:
     return True
 
 
-def _stamp() -> str:
+def package_stamp() -> str:
+    """The propagation package and its version, as caches write it down."""
     try:
-        models = version("itur")
+        return f"itur {version('itur')}"
     except PackageNotFoundError:
-        models = "none"
-    return f"format {_FORMAT}, itur {models}"
+        return "itur none"
+
+
+def _stamp() -> str:
+    return f"format {_FORMAT}, {package_stamp()}"
 
 
 def _digest(rows: object) -> str:

@@ -12,11 +12,12 @@ import pandas as pd
 from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
+from passplan.link.interference import InterferencePair
 from passplan.planning.clock import Clock
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
-from passplan.planning.problem import Antennas, CommandNeed, Fleet, Limits, Problem, RequestNeed
+from passplan.planning.problem import Antennas, CommandNeed, Conflict, Fleet, Limits, Problem, RequestNeed
 from passplan.planning.result import PlanResult
 from passplan.planning.rules import all_terms
 from passplan.planning.tables import contacts_table, segments_table
@@ -38,17 +39,18 @@ class Plan:
 
 def make_plan(
     run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], progress: Report | None = None,
+    pairs: Sequence[InterferencePair] = (),
 ) -> Plan:
     """Plan the contacts of a run.
 
     ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. Spacecraft
     without an orbit take no part. The policy's time limit covers everything from here to the chosen
-    contacts. ``progress(stage, done_s, total_s)`` is called as value, bound and gap move.
+    contacts. ``pairs`` are contacts that would disturb each other. ``progress(stage, done_s, total_s)`` is called as value, bound and gap move.
     """
     policy = run.policy
     clock = Clock(policy.time_limit_s)
     with clock.stage("options"):
-        problem, option_set = build_problem(run, windows, links)
+        problem, option_set = build_problem(run, windows, links, pairs)
     limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed)
     result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
     terms = all_terms(problem)
@@ -69,7 +71,9 @@ def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress |
     return show
 
 
-def build_problem(run: Run, windows: pd.DataFrame, links: Sequence[WindowLink]) -> tuple[Problem, OptionSet]:
+def build_problem(
+    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], pairs: Sequence[InterferencePair] = (),
+) -> tuple[Problem, OptionSet]:
     """The problem of a run, and its options with the link choices behind them."""
     craft = [c for name, c in run.spacecraft.items() if name in run.orbits]
     fleet = Fleet(
@@ -86,9 +90,16 @@ def build_problem(run: Run, windows: pd.DataFrame, links: Sequence[WindowLink]) 
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),
-        commands=_command_needs(run, fleet),
+        commands=_command_needs(run, fleet), conflicts=tuple(_conflict(fleet, antennas, pair) for pair in pairs),
         spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money)
     return problem, option_set
+
+
+def _conflict(fleet: Fleet, antennas: Antennas, pair: InterferencePair) -> Conflict:
+    name = f"{pair.victim} on {pair.antenna} beside {pair.interferer}, C/I {pair.worst_db:.0f} dB"
+    return Conflict(
+        name, fleet.names.index(pair.victim), antennas.names.index(pair.antenna), fleet.names.index(pair.interferer),
+        pair.start_s, pair.end_s)
 
 
 def _request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:

@@ -141,6 +141,18 @@ class CommandNeed:
     last_s: int
 
 
+@dataclass(frozen=True)
+class Conflict:
+    """From ``start_s`` to ``end_s`` the victim on its antenna would be disturbed by the other one's sending."""
+
+    name: str
+    victim: int
+    antenna: int
+    interferer: int
+    start_s: int
+    end_s: int
+
+
 @dataclass(frozen=True, eq=False)
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
@@ -156,6 +168,7 @@ class Problem:
     options: Options
     requests: tuple[RequestNeed, ...] = ()
     commands: tuple[CommandNeed, ...] = ()
+    conflicts: tuple[Conflict, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
 

@@ -9,16 +9,18 @@ from dataclasses import replace
 import pandas as pd
 
 from passplan.geometry.identity import inherit_ids
-from passplan.geometry.pointing import sample_windows
+from passplan.geometry.pointing import Samples, sample_windows
 from passplan.geometry.windows import find_windows
 from passplan.inputs.errors import PassplanError
 from passplan.inputs.run import Run
+from passplan.link.interference import interference_pairs
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
 from passplan.planning.changes import compare
 from passplan.planning.plan import make_plan
 from passplan.planning.record import PlanRecord
 from passplan.planning.summary import summarise
+from passplan.planning.weather import weather_summary
 
 Report = Callable[[str, int, int], None]
 _SAMPLE_STEP_S = 10.0
@@ -48,8 +50,12 @@ def windows_of(run: Run, progress: Report | None = None, *, only: tuple[str, str
 
 def links_of(run: Run, windows: pd.DataFrame) -> list[WindowLink]:
     """The link along each window, in the order of the table."""
-    samples = sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_SAMPLE_STEP_S)
-    return link_profiles(run, windows, samples)
+    return link_profiles(run, windows, samples_of(run, windows))
+
+
+def samples_of(run: Run, windows: pd.DataFrame) -> Samples:
+    """Pointing along each window, every 10 s."""
+    return sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_SAMPLE_STEP_S)
 
 
 def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | None = None) -> PlanRecord:
@@ -74,12 +80,17 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
         windows = inherit_ids(windows, against.windows)
     lap("windows")
     report("computing links", 0, 0)
-    links = links_of(run, windows)
+    samples = samples_of(run, windows)
+    links = link_profiles(run, windows, samples)
+    pairs = interference_pairs(run, windows, samples)
     lap("links")
-    plan = make_plan(run, windows, links, progress=report)
+    plan = make_plan(run, windows, links, progress=report, pairs=pairs)
     lap("plan")
+    summary = summarise(run, windows, plan)
+    summary["weather"] = weather_summary(run, windows, samples, plan)
+    lap("weather")
     record = PlanRecord(
-        summary=summarise(run, windows, plan), windows=windows, contacts=plan.contacts, segments=plan.segments,
+        summary=summary, windows=windows, contacts=plan.contacts, segments=plan.segments,
         unused=plan.unused, files=run.files,
     )
     report("auditing", 0, 0)

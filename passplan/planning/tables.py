@@ -68,14 +68,19 @@ def segments_table(
     options, account = problem.options, result.account
     counts = np.diff(options.piece_offset)[account.chosen]
     owner = np.repeat(np.arange(len(account.chosen)), counts)
-    modcods = [c.downlink.modcod if c.downlink is not None else ""
-               for c in (option_set.candidates[o] for o in account.chosen[owner].tolist())]
+    first = options.piece_offset[account.chosen[owner]]
+    modcods = [_modcod_of(option_set.candidates[o], int(k))
+               for o, k in zip(account.chosen[owner].tolist(), account.piece - first, strict=True)]
     table = pd.DataFrame({
         "contact_id": contacts["contact_id"].to_numpy()[owner],
         "start_utc": options.piece_start_s[account.piece], "end_utc": options.piece_end_s[account.piece],
         "modcod": modcods, "rate_mbps": options.piece_rate_mb_per_s[account.piece] * 8.0,
         "data_class": DATA_CLASS, "volume_mb": account.piece_mb}, columns=list(SEGMENT_COLUMNS))
     return _typed(table, run, texts=("contact_id", "modcod", "data_class"))
+
+
+def _modcod_of(candidate: Candidate, piece: int) -> str:
+    return "" if candidate.downlink is None else candidate.downlink.pieces[piece].modcod
 
 
 def _service(candidate: Candidate) -> str:

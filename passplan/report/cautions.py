@@ -5,6 +5,7 @@ CAUTIONS = (
     "licence and frequency coordination.",
     "Near a transmitting antenna there is radio-frequency exposure, and antennas move without warning: site "
     "interlocks, local rules and the people on site decide.",
-    "Predictions from element sets age; check them against fresh sets before use. Gas attenuation is a mean "
-    "atmosphere, not a forecast, and rain is not yet counted.",
+    "Predictions from element sets age; check them against fresh sets before use. Gas attenuation is that "
+    "of a mean atmosphere; rain counts only where the policy states an unavailability, as statistics of an average "
+    "year, not as a forecast.",
 )

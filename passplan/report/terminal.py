@@ -22,6 +22,7 @@ from passplan.report.contact_table import LocalTime, contact_table, unused_table
 from passplan.report.keys import spacecraft_keys
 from passplan.report.selection import Selection, select
 from passplan.report.timeline import CLOSED, SEEN, SEVERAL, antenna_row, hour_ruler, stretches
+from passplan.report.weather import by_antenna, notices
 from passplan.report.words import STATUS_WORDS, megabytes, minute
 
 _SCREEN_ROWS = 8
@@ -44,6 +45,9 @@ def print_plan(
     for title, lines in (("Requirements not met", _shortfalls(summary)), ("Warnings", _warnings(summary))):
         if lines:
             _section(console, title, Group(*lines))
+    said = notices(summary, detail)
+    if said:
+        _section(console, "Models outside their range", Group(*said))
     if selection:
         shown = f"\nShown: {_spoken(selection)}; the figures above are those of the whole plan"
         console.print(Text(shown, style="bold"))
@@ -56,6 +60,8 @@ def print_plan(
     _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
     if detail:
+        if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
+            _section(console, "Weather over an average year", by_antenna(part))
         if len(part.contacts):
             _section(console, "Lowest margins", _margins(part, console.width))
         _section(console, "What was not used, and why", unused_table(part, full=bool(selection)))

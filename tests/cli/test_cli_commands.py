@@ -86,6 +86,25 @@ def test_link(passplan: Command) -> None:
         assert part in result.output, part
 
 
+def test_link_with_weather_and_every_term_as_csv(passplan: Command, sample: Path) -> None:
+    result = passplan("link", "configs/rain.toml", "--spacecraft", "Skerry-1", "--antenna", "Tarrow-K",
+                      "--csv", "pass.csv")
+    assert result.exit_code == 0, result.output
+    said = " ".join(result.output.split())
+    for part in ("transmit power", "back-off", "rain", "cloud", "scintillation", "system noise", "Sun",
+                 "flux density at ground", "adaptive: stepped", "Over an average year", "not a forecast"):
+        assert part in said, part
+    assert max(map(len, result.stdout.splitlines())) <= 100
+    rows = (sample / "pass.csv").read_text(encoding="utf-8").splitlines()
+    assert rows[0].startswith("utc,direction,radio,partner,")
+    assert len(rows) > 400
+    below = passplan("link", "configs/rain.toml", "--spacecraft", "Skerry-1", "--antenna", "Tarrow-K",
+                     "--at", "2027-03-09T12:10:00Z", "--csv", "none.csv")
+    assert below.exit_code == 2
+    assert "no window" in below.output
+    assert not (sample / "none.csv").exists()
+
+
 def test_link_at_an_instant_below_the_horizon(passplan: Command) -> None:
     result = passplan("link", "configs/daily.toml", "--spacecraft", "Ambril-3", "--antenna", "Tarrow-A",
                       "--at", "2027-03-09T12:00:00Z")

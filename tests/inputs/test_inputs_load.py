@@ -18,12 +18,12 @@ DAILY = "configs/daily.toml"
 
 def test_the_sample_is_the_network_that_the_readme_describes(sample: Path) -> None:
     run = load_run(sample / DAILY)
-    assert (len(run.spacecraft), len(run.sites), len(run.antennas)) == (13, 4, 6)
+    assert (len(run.spacecraft), len(run.sites), len(run.antennas)) == (14, 4, 7)
     assert run.horizon_s == 86_400
     assert not run.left_out
     assert set(run.orbits) == set(run.spacecraft)
     receive_only = [name for name, antenna in run.antennas.items() if not antenna.transmitters]
-    assert receive_only == ["Isvarde-B"]
+    assert receive_only == ["Isvarde-B", "Tarrow-K"]
     assert [name for name, antenna in run.antennas.items() if antenna.price_per_minute] == ["Orrin-A"]
     assert {closure.antenna for closure in run.closures} == {"Ellery-A", "Orrin-A"}
     assert run.spacecraft["Ambril-5"].radios == run.spacecraft["Ambril-6"].radios
@@ -103,9 +103,9 @@ def test_a_drop_folder_of_elements(sample: Path, edit: Callable[..., Path]) -> N
     (sample / "sample_fleet/elements.tle").rename(folder / "b.tle")
     edit(DAILY, "elements.json", "drop")
     run = load_run(sample / DAILY)
-    assert len(run.orbits) == 13
-    assert (run.elements["use"] == "chosen").sum() == 13
-    assert len(run.elements) == 26
+    assert len(run.orbits) == 14
+    assert (run.elements["use"] == "chosen").sum() == 14
+    assert len(run.elements) == 28
 
 
 def test_files_are_remembered_as_read(sample: Path) -> None:

@@ -27,7 +27,7 @@ def _read(tmp_path: Path, rows: str, header: str = HEADER) -> tuple[ModcodTable 
 
 def test_the_built_in_table() -> None:
     table = builtin_table("dvb-s2")
-    assert builtin_names() == ("dvb-s2",)
+    assert builtin_names() == ("dvb-s2", "ccsds")
     assert len(table.rows) == 28
     assert len({row.name for row in table.rows}) == 28
     assert "EN 302 307-1" in table.source

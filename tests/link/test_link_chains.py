@@ -14,9 +14,9 @@ from passplan.link.chains import (
     best_receiver,
     best_transmitter,
     chains_between,
-    receiver_figure_db_per_k,
     usable_modcods,
 )
+from passplan.link.noise import reference_figure_db_per_k
 
 
 def _receiver(name: str, **changes: object) -> Receiver:
@@ -25,10 +25,10 @@ def _receiver(name: str, **changes: object) -> Receiver:
 
 def test_figure_of_merit_stated_or_built() -> None:
     built = _receiver("built", g_over_t_db_per_k=None, gain_dbi=50.0, noise_temperature_k=100.0)
-    assert receiver_figure_db_per_k(RECEIVER) == 32.0
-    assert receiver_figure_db_per_k(built) == pytest.approx(30.0)
+    assert reference_figure_db_per_k(RECEIVER) == 32.0
+    assert reference_figure_db_per_k(built) == pytest.approx(30.0)
     with pytest.raises(ValueError, match="'bare' states neither"):
-        receiver_figure_db_per_k(_receiver("bare", g_over_t_db_per_k=None))
+        reference_figure_db_per_k(_receiver("bare", g_over_t_db_per_k=None))
 
 
 def test_the_best_receiver_wins_after_losses_and_ties_go_by_name() -> None:

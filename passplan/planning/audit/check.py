@@ -9,6 +9,7 @@ import pandas as pd
 
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault, differs
+from passplan.planning.audit.interference import check_interference
 from passplan.planning.audit.links import check_links
 from passplan.planning.audit.occupancy import check_closures, check_overlaps, check_times
 from passplan.planning.audit.requirements import check_requirements
@@ -32,6 +33,7 @@ def audit_plan(
     for contact in rows:
         faults.extend(_check_contact(run, contact))
     faults.extend(check_overlaps(run, rows))
+    faults.extend(check_interference(run, rows))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
     return faults

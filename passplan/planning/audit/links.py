@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio
 from passplan.inputs.modcods import Modcod
+from passplan.inputs.modcods_dvb_s2 import pilot_factor
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.quality import Quality, command_quality, downlink_quality
 from passplan.planning.audit.rows import Contact, Piece
 from passplan.planning.audit.sky import Sight
+from passplan.planning.audit.steps import check_steps
 
 # The plan joins samples 10 s apart by straight lines; at 500 km that is low by up to 0.03 dB overhead and
 # by far less near the horizon, where margins decide.
@@ -52,20 +54,40 @@ def _check_downlink(run: Run, contact: Contact, radio: DownlinkRadio, seen: Sigh
         for row in run.modcod_tables[radio.modcod_table].rows
         if not radio.modcods or row.name in radio.modcods
     }
+    adaptive = radio.rate_control == "adaptive"
+    rows: list[Modcod] = []
     for piece in contact.pieces:
         row = allowed.get(piece.modcod)
-        if row is None or piece.modcod != contact.modcod:
+        if row is None or (piece.modcod != contact.modcod and not adaptive):
             yield Fault("modcod", contact.place, f"modcod {piece.modcod!r} is not one it may use here")
             return
-        yield from _check_piece(run, contact, radio, piece, row, quality)
-    yield from _check_usable(run, contact, radio, allowed[contact.modcod], quality)
-    yield from _check_choice(run, contact, radio, allowed, quality)
+        rows.append(row)
+    names = {row.name for row in rows}
+    if contact.modcod != (rows[0].name if len(names) == 1 else "stepped"):
+        yield Fault("modcod", contact.place, f"it claims modcod {contact.modcod!r}, its segments use {len(names)}")
+        return
+    robust = min(allowed.values(), key=lambda row: row.required_esn0_db)
+    for piece, row in zip(contact.pieces, rows, strict=True):
+        yield from _check_piece(run, contact, radio, piece, (row, robust if adaptive else row), quality)
+    yield from _check_usable(run, contact, radio, rows, robust, quality)
+    if adaptive:
+        yield from check_steps(run, contact, radio, allowed, quality)
+    elif radio.rate_control == "per-contact":
+        yield from _check_choice(run, contact, radio, allowed, quality)
+
+
+def net_rate_mbps(radio: DownlinkRadio, row: Modcod) -> float:
+    """Net user data rate of a modcod on a radio, pilots counted."""
+    rate_mbps = radio.symbol_rate_msps * row.efficiency_bit_per_symbol
+    return rate_mbps * pilot_factor(row.name) if radio.pilots else rate_mbps
 
 
 def _check_piece(
-    run: Run, contact: Contact, radio: DownlinkRadio, piece: Piece, row: Modcod, quality: Quality
+    run: Run, contact: Contact, radio: DownlinkRadio, piece: Piece, rows: tuple[Modcod, Modcod], quality: Quality
 ) -> Iterator[Fault]:
-    rate_mbps = radio.symbol_rate_msps * row.efficiency_bit_per_symbol
+    """``rows`` are the modcod that is sent and the one on which the signal is acquired."""
+    row, first = rows
+    rate_mbps = net_rate_mbps(radio, row)
     if differs(piece.rate_mbps, rate_mbps, _RELATIVE * rate_mbps):
         sentence = f"modcod {row.name} gives {rate_mbps:.6g} Mbit/s, not {piece.rate_mbps:.6g}"
         yield Fault("modcod", contact.place, sentence)
@@ -75,19 +97,26 @@ def _check_piece(
         yield Fault("volume", contact.place, f"{sentence}, {most_mb:.6f} MB at most")
     if piece.start_s < contact.start_s + radio.acquisition_s - 1e-3:
         yield Fault("usable", contact.place, f"it sends before the {radio.acquisition_s:g} s of acquisition are over")
-    margin_db = quality.least_db(piece.start_s, piece.end_s) - row.required_esn0_db
     acquired_s = max(contact.start_s, piece.start_s - radio.acquisition_s)
-    if not quality.least_db(acquired_s, piece.end_s) - row.required_esn0_db >= _asked(run) - _TOLERANCE_DB:
+    margin_db = quality.least_db(piece.start_s, piece.end_s) - row.required_esn0_db
+    before_db = quality.least_db(acquired_s, piece.start_s) - first.required_esn0_db
+    if not min(margin_db, before_db) >= _asked(run) - _TOLERANCE_DB:
         sentence = f"modcod {row.name} has a margin of {margin_db:.2f} dB while sending"
         yield Fault("margin", contact.place, f"{sentence} and acquiring, {_asked(run):g} dB are required")
 
 
-def _check_usable(run: Run, contact: Contact, radio: DownlinkRadio, row: Modcod, quality: Quality) -> Iterator[Fault]:
+def _check_usable(
+    run: Run, contact: Contact, radio: DownlinkRadio, rows: Sequence[Modcod], robust: Modcod, quality: Quality
+) -> Iterator[Fault]:
     sending_s = math.fsum(piece.end_s - piece.start_s for piece in contact.pieces)
     if differs(contact.usable_s, sending_s, 1e-3):
         sentence = f"usable time {contact.usable_s:g} s does not agree with {sending_s:g} s of segments"
         yield Fault("usable", contact.place, sentence)
-    possible_s = quality.longest_s(row.required_esn0_db + _asked(run) + _TOLERANCE_DB) - radio.acquisition_s
+    # A stepped contact sends as long as its most robust modcod holds, but for the gaps.
+    row = rows[0] if radio.rate_control != "adaptive" else robust
+    gaps_s = radio.switching_gap_s * (len(rows) - 1) if radio.rate_control == "adaptive" else 0
+    held_s = quality.longest_s(row.required_esn0_db + _asked(run) + _TOLERANCE_DB, low=True)
+    possible_s = held_s - radio.acquisition_s - gaps_s
     if contact.usable_s < possible_s - _TOLERANCE_S:
         sentence = f"usable time is {contact.usable_s:g} s, yet {row.name} holds for {possible_s:.0f} s"
         yield Fault("usable", contact.place, sentence)
@@ -95,10 +124,13 @@ def _check_usable(run: Run, contact: Contact, radio: DownlinkRadio, row: Modcod,
     if differs(contact.volume_mb, volume_mb, _RELATIVE * abs(volume_mb) + 1e-6):
         sentence = f"volume {contact.volume_mb:.6f} MB does not agree with {volume_mb:.6f} MB of segments"
         yield Fault("volume", contact.place, sentence)
-    first_s, last_s = contact.pieces[0].start_s, contact.pieces[-1].end_s
-    margin_db = quality.least_db(first_s, last_s) - row.required_esn0_db
-    if differs(contact.min_margin_db, margin_db, _TOLERANCE_DB):
-        sentence = f"least margin is {margin_db:.2f} dB, not {contact.min_margin_db:.2f} dB"
+    pieces = list(zip(contact.pieces, rows, strict=True))
+    best_db, worst_db = (
+        min(quality.least_db(p.start_s, p.end_s, low=low) - row.required_esn0_db for p, row in pieces)
+        for low in (False, True)
+    )
+    if not worst_db - _TOLERANCE_DB <= contact.min_margin_db <= best_db + _TOLERANCE_DB:
+        sentence = f"least margin is {best_db:.2f} dB, not {contact.min_margin_db:.2f} dB"
         yield Fault("margin", contact.place, sentence)
 
 
@@ -106,11 +138,12 @@ def _check_choice(
     run: Run, contact: Contact, radio: DownlinkRadio, allowed: dict[str, Modcod], quality: Quality
 ) -> Iterator[Fault]:
     """The modcod is the one that brings down most, to within the tolerances."""
-    chosen = allowed[contact.modcod].efficiency_bit_per_symbol * (contact.usable_s + _TOLERANCE_S)
+    chosen = net_rate_mbps(radio, allowed[contact.modcod]) * (contact.usable_s + _TOLERANCE_S)
     for row in allowed.values():
-        held_s = quality.longest_s(row.required_esn0_db + _asked(run) + _TOLERANCE_DB) - radio.acquisition_s
-        if row.efficiency_bit_per_symbol * (held_s - _TOLERANCE_S) > chosen:
-            more_mb = radio.symbol_rate_msps * row.efficiency_bit_per_symbol * held_s / 8.0
+        level_db = row.required_esn0_db + _asked(run) + _TOLERANCE_DB
+        held_s = quality.longest_s(level_db, low=True) - radio.acquisition_s
+        if net_rate_mbps(radio, row) * (held_s - _TOLERANCE_S) > chosen:
+            more_mb = net_rate_mbps(radio, row) * held_s / 8.0
             sentence = f"modcod {row.name} could bring down {more_mb:.1f} MB, more than {contact.modcod}"
             yield Fault("modcod", contact.place, sentence)
             return
@@ -126,7 +159,8 @@ def _check_command(run: Run, contact: Contact, seen: Sight) -> Iterator[Fault]:
                 needed_db = radio.required_ebn0_db + _asked(run)
                 usable_s = quality.longest_s(needed_db - _TOLERANCE_DB) - radio.acquisition_s
                 if best is None or usable_s > best[0]:
-                    best = usable_s, quality.longest_s(needed_db + _TOLERANCE_DB) - radio.acquisition_s, radio
+                    least_s = quality.longest_s(needed_db + _TOLERANCE_DB, low=True) - radio.acquisition_s
+                    best = usable_s, least_s, radio
     if best is None:
         sentence = f"{contact.antenna} cannot transmit to {contact.spacecraft}, yet the service is {contact.service}"
         yield Fault("command", contact.place, sentence)

@@ -39,9 +39,7 @@ class Sight:
 
 def sight(source: OrbitSource, site: Site, start_utc: np.datetime64, time_s: Floats) -> Sight:
     """Pointing from ``site`` at ``time_s`` seconds after ``start_utc`` (geometric, no light time, no refraction)."""
-    date = start_utc.astype("datetime64[ms]").item()
-    seconds = date.second + date.microsecond / 1e6 + np.asarray(time_s, np.float64)
-    times = _timescale().utc(date.year, date.month, date.day, date.hour, date.minute, seconds)
+    times = instants_of(start_utc, time_s)
     # The short nutation series agrees to a milliarcsecond and takes a fraction of the time.
     times._nutation_angles_radians = iau2000b_radians(times)
     place = wgs84.latlon(site.latitude_deg, site.longitude_deg, site.height_m)
@@ -53,6 +51,13 @@ def sight(source: OrbitSource, site: Site, start_utc: np.datetime64, time_s: Flo
         body = _Tabulated(source, origin_s + np.asarray(time_s, np.float64))
     altitude, azimuth, distance = (body - place).at(times).altaz()
     return Sight(np.asarray(time_s, np.float64), azimuth.degrees, altitude.degrees, distance.km)
+
+
+def instants_of(start_utc: np.datetime64, time_s: Floats) -> Time:
+    """Skyfield's instants at ``time_s`` seconds after ``start_utc``."""
+    date = start_utc.astype("datetime64[ms]").item()
+    seconds = date.second + date.microsecond / 1e6 + np.asarray(time_s, np.float64)
+    return _timescale().utc(date.year, date.month, date.day, date.hour, date.minute, seconds)
 
 
 def mask_deg(antenna: Antenna, azimuth_deg: Floats) -> Floats:

@@ -1,0 +1,51 @@
+"""How near the Sun comes to the beam along a pass, and what that costs.
+
+A narrow beam sweeps over the Sun in seconds, between two samples 10 s apart. So each sample takes the nearest
+approach on the way from the sample before to the sample after: a crossing is never missed, and is felt a
+little longer than it lasts.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from passplan.geometry.sun import local_axes, pointing_vectors, sun_direction
+from passplan.inputs.ground import Site
+from passplan.link.budget import Floats, sun_noise_k
+
+
+def nearest_approach_deg(
+    site: Site, times_utc: NDArray[np.datetime64], azimuth_deg: Floats, elevation_deg: Floats
+) -> Floats:
+    """Least angle [deg] between the Sun and the pointing from the sample before to the sample after, shape (n,).
+
+    The Sun below the horizon disturbs nobody: 180 deg.
+    """
+    sun = sun_direction(times_utc) @ local_axes(site).T
+    angle = closest_deg(pointing_vectors(azimuth_deg, elevation_deg) - sun)
+    return np.asarray(np.where(sun[:, 2] > 0.0, angle, 180.0))
+
+
+def closest_deg(away: Floats) -> Floats:
+    """Least angle [deg] between two directions from the sample before to the one after, shape (n,).
+
+    ``away`` (n, 3) is the difference of their unit vectors; between samples it runs along straight lines.
+    """
+    nearest = np.linalg.norm(away, axis=1)
+    if len(away) > 1:
+        step = np.diff(away, axis=0)
+        length2 = np.maximum(np.einsum("ij,ij->i", step, step), 1e-30)
+        share = np.clip(-np.einsum("ij,ij->i", away[:-1], step) / length2, 0.0, 1.0)
+        between = np.linalg.norm(away[:-1] + share[:, None] * step, axis=1)
+        nearest[:-1] = np.minimum(nearest[:-1], between)
+        nearest[1:] = np.minimum(nearest[1:], between)
+    return np.asarray(np.degrees(2.0 * np.arcsin(np.clip(nearest / 2.0, 0.0, 1.0))))
+
+
+def sun_loss_db(
+    frequency_mhz: float, beamwidth_deg: float, separation_deg: Floats, noise_k: Floats, feeder_loss_db: float = 0.0
+) -> Floats:
+    """Fall of G/T [dB] by the Sun at a separation [deg], from the system noise [K] without it."""
+    rise_k = sun_noise_k(frequency_mhz, separation_deg, beamwidth_deg) * 10.0 ** (-feeder_loss_db / 10.0)
+    return np.asarray(10.0 * np.log10(1.0 + rise_k / noise_k))
