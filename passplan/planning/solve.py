@@ -65,7 +65,11 @@ class _Answer:
 def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, seconds: float, gap: float) -> _Answer:
     parameters = mathopt.SolveParameters(
         time_limit=dt.timedelta(seconds=max(seconds, 0.01)), random_seed=limits.seed, relative_gap_tolerance=gap)
-    result = mathopt.solve(mathopt.Model.from_model_proto(proto), mathopt.SolverType.HIGHS, params=parameters)
+    try:
+        result = mathopt.solve(mathopt.Model.from_model_proto(proto), mathopt.SolverType.HIGHS, params=parameters)
+    except Exception:
+        # A solver that gives up with an error of its own has found nothing; other ways of planning stand in.
+        return _Answer(None, 0.0, None)
     bound: float | None = result.best_objective_bound()
     if bound is None or not np.isfinite(bound):
         bound = None
