@@ -35,7 +35,8 @@ class SendPiece:
 class DownlinkChoice:
     """How one contact sends: whole seconds from the horizon's start, net user data, least margin [dB].
 
-    ``modcod`` is ``stepped`` where the pieces use several; ``rate_mbps`` is the mean while sending.
+    ``modcod`` is ``stepped`` where the pieces use several; ``rate_mbps`` is the mean while sending. Without
+    ``pieces`` it is sent in one.
     """
 
     radio: str
@@ -50,6 +51,11 @@ class DownlinkChoice:
     volume_mb: float
     min_margin_db: float
     pieces: tuple[SendPiece, ...] = ()
+
+    def __post_init__(self) -> None:
+        if not self.pieces:
+            whole = SendPiece(self.send_start_s, self.send_end_s, self.modcod, self.rate_mbps)
+            object.__setattr__(self, "pieces", (whole,))
 
 
 @dataclass(frozen=True)
@@ -171,7 +177,6 @@ class DownlinkProfile:
             chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation, found.rung.name,
             found.rung.rate_mbps, found.start_s, found.end_s, usable_s,
             found.rung.rate_mbps * usable_s / 8.0, found.margin_db,
-            (SendPiece(found.start_s, found.end_s, found.rung.name, found.rung.rate_mbps),),
         )
 
 

@@ -5,7 +5,6 @@ CAUTIONS = (
     "licence and frequency coordination.",
     "Near a transmitting antenna there is radio-frequency exposure, and antennas move without warning: site "
     "interlocks, local rules and the people on site decide.",
-    "Predictions from element sets age; check them against fresh sets before use. Gas attenuation is that "
-    "of a mean atmosphere; rain counts only where the policy states an unavailability, as statistics of an average "
-    "year, not as a forecast.",
+    "Predictions from element sets age; check them against fresh sets before use. Weather counts only where the "
+    "policy states an unavailability, as long-term statistics, not as a forecast.",
 )

@@ -45,9 +45,8 @@ def print_plan(
     for title, lines in (("Requirements not met", _shortfalls(summary)), ("Warnings", _warnings(summary))):
         if lines:
             _section(console, title, Group(*lines))
-    said = notices(summary, detail)
-    if said:
-        _section(console, "Models outside their range", Group(*said))
+    if detail and notices(summary):
+        _section(console, "Models outside their range", Group(*notices(summary)))
     if selection:
         shown = f"\nShown: {_spoken(selection)}; the figures above are those of the whole plan"
         console.print(Text(shown, style="bold"))
@@ -116,6 +115,9 @@ def _health(summary: Mapping[str, Any]) -> RenderableType:
     )]
     if ages:
         lines.append(Text(f"Element sets {min(ages):.1f} to {max(ages):.1f} days old at the start"))
+    if said := len(notices(summary)):
+        models = f"{said} notice{'s' if said > 1 else ''} on models outside their range (show --full)"
+        lines[-1] = Text.assemble(lines[-1], f"; {models}")
     lines += [Text.assemble((f"{name} left out: ", "bold"), why) for name, why in summary["left_out"].items()]
     return Group(*lines)
 

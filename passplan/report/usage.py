@@ -22,6 +22,7 @@ REASON_WORDS = {
     "spacecraft_busy": "the spacecraft is served elsewhere",
     "nothing_aboard": "nothing more to bring down",
     "not_worth_it": "worth less than it costs",
+    "interference": "would disturb another contact",
     "left_out": "left out of the plan",
 }
 

@@ -15,12 +15,9 @@ from passplan.planning.record import PlanRecord
 _FIGURES = ("link_mb", "mean_mb", "p10_mb", "p50_mb", "p90_mb")
 
 
-def notices(summary: Mapping[str, Any], full: bool = True) -> list[Text]:
-    """One line for each notice of a plan, or one line that says how many there are."""
-    found = summary.get("weather", {}).get("notices", ())
-    if len(found) > 1 and not full:
-        return [Text(f"· {len(found)} notices on what was assumed instead; show --full lists them", style="dim")]
-    return [Text(f"· {notice}", style="dim") for notice in found]
+def notices(summary: Mapping[str, Any]) -> list[Text]:
+    """One line for each notice of a plan."""
+    return [Text(f"· {notice}", style="dim") for notice in summary.get("weather", {}).get("notices", ())]
 
 
 def by_antenna(record: PlanRecord) -> RenderableType:
