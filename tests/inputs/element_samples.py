@@ -8,10 +8,12 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from sgp4.alpha5 import to_alpha5
 from sgp4.exporter import export_tle
 
 from passplan.inputs.elements.mean import MeanElements, element_set, satrec_of
 from passplan.inputs.elements.model import ElementSet
+from passplan.inputs.elements.tle_layout import checksum
 from passplan.inputs.errors import Findings
 from passplan.inputs.reader import Reader
 
@@ -47,9 +49,14 @@ def made(days_before_start: float = 0.5, **changes: Any) -> ElementSet:
 
 
 def tle_lines(mean: MeanElements = MERLE) -> tuple[str, str]:
-    """The two lines of ``mean``."""
-    one, two = export_tle(satrec_of(mean))
-    return one, two
+    """The two lines of ``mean``, with the letter-coded number written by the library's own coder.
+
+    The library's exporter itself takes the letters I and O, which the layout leaves out, for 18.... and 23....
+    """
+    satrec = satrec_of(mean)
+    number = to_alpha5(satrec.satnum)
+    one, two = (line[:2] + number + line[7:68] for line in export_tle(satrec))
+    return one + str(checksum(one)), two + str(checksum(two))
 
 
 def tle_text(*means: MeanElements) -> str:
