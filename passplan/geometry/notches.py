@@ -51,7 +51,7 @@ def cut_to_mask(
     sky: Sky, mask: Mask, objects: Indices, start: Floats, end: Floats, peak: Floats
 ) -> tuple[Indices, Floats, Floats]:
     """Pieces of the windows [start, end] (grid steps) above ``mask``: window number, start and end of each piece."""
-    window, at = _nodes(start, end, peak)
+    window, at = nodes(start, end, peak)
     window, at = _with_corners(sky, mask, objects, window, at)
     same = window[1:] == window[:-1]
     owner, left, right = window[:-1][same], at[:-1][same], at[1:][same]
@@ -78,7 +78,7 @@ def cut_to_mask(
     return owner[heads], begin[heads], finish[np.append(heads[1:] - 1, owner.size - 1)]
 
 
-def _nodes(start: Floats, end: Floats, peak: Floats) -> tuple[Indices, Floats]:
+def nodes(start: Floats, end: Floats, peak: Floats) -> tuple[Indices, Floats]:
     """Evenly spread instants in each window, its edges and its peak among them."""
     count = np.maximum(np.ceil((end - start) * _NODES_PER_STEP).astype(np.int64), _LEAST_NODES)
     window = np.repeat(np.arange(start.size), count + 1)

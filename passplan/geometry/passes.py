@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, fields
+from itertools import zip_longest
 from typing import TypeVar
 
 import numpy as np
@@ -12,6 +13,7 @@ from passplan.geometry import stencil
 from passplan.geometry.masks import Mask
 from passplan.geometry.notches import Sky, cut_to_mask
 from passplan.geometry.pointing import azimuth_of
+from passplan.geometry.reach import Reach, cut_to_reach
 from passplan.geometry.regimes import ALWAYS_S
 from passplan.geometry.roots import Flags, Indices
 from passplan.geometry.scan import Spans, spans
@@ -60,16 +62,17 @@ def joined(parts: Sequence[Rows]) -> Rows:
 
 
 def block_rows(
-    block: Block, places: Stations, masks: Sequence[Mask], antennas: Indices, start_s: float, end_s: float
+    block: Block, places: Stations, masks: Sequence[Mask], antennas: Indices, start_s: float, end_s: float,
+    reaches: Sequence[Reach | None] = (),
 ) -> Rows:
-    """The windows of one block from the antennas numbered ``antennas`` (with their places and masks)."""
+    """The windows of one block from the antennas numbered ``antennas`` (with their places, masks and reaches)."""
     sines = np.sin(np.radians([mask.lowest_deg for mask in masks]))
     scene = view(block, places, sines)
     found, top = spans(scene)
     low, high = (start_s - block.start_s) / block.step_s, (end_s - block.start_s) / block.step_s
     found, top, number = _near_horizon(found, top, _pass_numbers(scene, found), low, high)
     crown = _crowns(block.step_s, found, number, top)
-    found, crown, top = _cut_by_masks(block, places, masks, scene, found, crown, top)
+    found, crown, top = _cut(block, places, masks, reaches, scene, found, crown, top)
     start, end = np.clip(found.start, low, high), np.clip(found.end, low, high)
     inside = start < end
     cut = np.flatnonzero(inside & ((start != found.start) | (end != found.end)))
@@ -163,20 +166,27 @@ def _crowns(step_s: float, found: Spans, number: Indices, top: Summits) -> _Crow
     return _Crowns(top.at[best], top.sine[best], endless)
 
 
-def _cut_by_masks(
-    block: Block, places: Stations, masks: Sequence[Mask], scene: Scene, found: Spans, crown: _Crowns, top: Summits
+def _cut(
+    block: Block, places: Stations, masks: Sequence[Mask], reaches: Sequence[Reach | None], scene: Scene, found: Spans,
+    crown: _Crowns, top: Summits,
 ) -> tuple[Spans, _Crowns, Summits]:
-    """Spans above the lowest point of a mask that depends on azimuth, replaced by their pieces above the mask."""
-    for number, mask in enumerate(masks):
-        if mask.constant:
+    """Spans above the lowest point of a mask, replaced by their pieces above the mask and within the mount's reach."""
+    for number, (mask, reach) in enumerate(zip_longest(masks, reaches)):
+        if mask.constant and reach is None:
             continue
         antenna, own = np.divmod(found.pair, scene.objects)
         mine = np.flatnonzero(antenna == number)
         if not mine.size:
             continue
         sky = Sky(block.positions_km, places.subset(np.array([number])))
-        piece, start, end = cut_to_mask(sky, mask, own[mine], found.start[mine], found.end[mine], top.at[mine])
-        parent, rest = mine[piece], np.flatnonzero(antenna != number)
+        parent, start, end, peak = mine, found.start[mine], found.end[mine], top.at[mine]
+        if not mask.constant:
+            piece, start, end = cut_to_mask(sky, mask, own[parent], start, end, peak)
+            parent, peak = parent[piece], np.clip(peak[piece], start, end)
+        if reach is not None:
+            piece, start, end = cut_to_reach(sky, reach, own[parent], start, end, peak)
+            parent = parent[piece]
+        rest = np.flatnonzero(antenna != number)
         above = summits(scene, found.pair[parent], start, end)
         endless = crown.endless[parent]
         cut = Spans(
