@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from passplan.geometry.refraction import apparent_deg
 from passplan.geometry.stations import Stations, stations
 from passplan.geometry.timescale import Floats, utc_seconds
 from passplan.geometry.trajectory import states_itrf
@@ -78,8 +79,13 @@ def sample_windows(
     sites: Mapping[str, Site],
     start_utc: np.datetime64,
     step_s: float = 10.0,
+    *,
+    refraction: bool = False,
 ) -> Samples:
-    """Pointing along every row of ``windows``, in its order: at AOS, every ``step_s`` from there, and at LOS."""
+    """Pointing along every row of ``windows``, in its order: at AOS, every ``step_s`` from there, and at LOS.
+
+    With ``refraction`` elevations are apparent (ITU-R P.834), without it geometric.
+    """
     origin = float(utc_seconds(start_utc))
     aos = utc_seconds(windows["aos_utc"].to_numpy()) - origin
     los = utc_seconds(windows["los_utc"].to_numpy()) - origin
@@ -105,4 +111,7 @@ def sample_windows(
             columns, (found.azimuth_deg, found.elevation_deg, found.range_km, found.range_rate_km_s), strict=True
         ):
             column[pick] = values
+    if refraction:
+        heights = np.array([site.height_m / 1e3 for site in sites.values()])
+        columns[1] = apparent_deg(columns[1], heights[site_index[row]])
     return Samples(time, columns[0], columns[1], columns[2], columns[3], offsets)
