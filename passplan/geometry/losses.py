@@ -7,6 +7,10 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from typing import Literal
 
+import numpy as np
+
+from passplan.geometry.timescale import Floats
+
 Span = tuple[float, float]
 Direction = Literal["downlink", "command"]
 Cause = Literal["keyhole", "guard", "sun", "transmit"]
@@ -48,9 +52,9 @@ class Losses:
         """The intervals lost to one direction of a window, in time order, none touching another."""
         return self._spans.get((window, direction), ())
 
-    def lost_s(self, window: int, direction: Direction = "downlink") -> float:
-        """Their sum [s]."""
-        return sum(end - start for start, end in self.of(window, direction))
+    def lost_seconds(self, windows: int, direction: Direction = "downlink") -> Floats:
+        """The sum for each of so many windows [s]."""
+        return np.array([sum(end - start for start, end in self.of(k, direction)) for k in range(windows)], float)
 
 
 def merged(spans: Iterable[Span]) -> tuple[Span, ...]:

@@ -16,12 +16,13 @@ from passplan.geometry.refraction import apparent_deg
 from passplan.geometry.seams import settled, without_seams
 from passplan.geometry.stations import stations
 from passplan.geometry.timescale import datetimes_ms, utc_seconds
-from passplan.geometry.timing import timing_model
+from passplan.geometry.timing import DEFAULT, timing_model
 from passplan.geometry.trajectory import blocks
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.ground import Antenna, Site
 from passplan.inputs.mounts import Mount
+from passplan.inputs.policy import Timing
 from passplan.inputs.run import OrbitSource
 
 COLUMNS = (
@@ -45,6 +46,7 @@ def find_windows(
     *,
     mounts: Mapping[str, Mount] | None = None,
     refraction: bool = False,
+    timing: Timing = DEFAULT,
     progress: Callable[[int, int], None] | None = None,
 ) -> pd.DataFrame:
     """Every window of every spacecraft and antenna in [start_utc, end_utc), ordered by AOS, antenna, spacecraft.
@@ -54,7 +56,7 @@ def find_windows(
     off. Instants agree with the roots of Skyfield's ``altaz`` to a millisecond, the table's resolution.
     With ``refraction`` masks and limits hold for elevations as ITU-R P.834 bends them, and the peak is stated
     so; without it nothing is bent. ``mounts`` (by name) cut windows to where the antenna can point; rates and
-    cables are looked at later, by :mod:`passplan.geometry.survey`. An object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
+    cables are looked at later, by :mod:`passplan.geometry.survey`. ``timing`` says how sigmas grow. An object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
 
     ``progress(done, total)`` counts spacecraft. Columns as ``COLUMNS``; times are ``datetime64[ms]`` in
     UTC, ``clipped`` tells which ends are cut by the horizon, ``element_epoch_utc`` is NaT for an ephemeris.
@@ -87,7 +89,7 @@ def find_windows(
     messages = {i: source for i, source in enumerate(orbits.values()) if isinstance(source, Ephemeris)}
     if messages and rows.spacecraft.size:
         rows = without_seams(settled(rows, messages, places, masks))
-    table = _table(rows, orbits, antennas, start_s, end_s)
+    table = _table(rows, orbits, antennas, start_s, end_s, timing)
     if refraction:
         height_km = np.array([sites[name].height_m / 1e3 for name in table["site"]])
         table["peak_elevation_deg"] = apparent_deg(table["peak_elevation_deg"].to_numpy(), height_km)
@@ -100,7 +102,8 @@ def _seen(mask: Mask, height_km: float | None) -> Mask:
 
 
 def _table(
-    rows: Rows, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float
+    rows: Rows, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float,
+    timing: Timing,
 ) -> pd.DataFrame:
     names, antenna_names = list(orbits), list(antennas)
     pair_prefix = [prefix for row in prefixes(names, antenna_names) for prefix in row]
@@ -134,7 +137,7 @@ def _table(
             "min_range_km": rows.range_km,
             "clipped": _words(_CLIPPED, clipped),
             "element_epoch_utc": _epochs(orbits)[rows.spacecraft],
-            "timing_sigma_s": timing_model(list(orbits.values())).sigma_s(rows.spacecraft, aos / 1e3),
+            "timing_sigma_s": timing_model(list(orbits.values()), timing).sigma_s(rows.spacecraft, aos / 1e3),
         },
         columns=list(COLUMNS),
     )

@@ -16,7 +16,11 @@ _NOISE_S = 1e-6
 
 @dataclass(frozen=True)
 class DownlinkChoice:
-    """How one contact sends: whole seconds from the horizon's start, net user data, least margin [dB]."""
+    """How one contact sends: whole seconds from the horizon's start, net user data, least margin [dB].
+
+    It sends in ``pieces``, the first from ``send_start_s``, the last to ``send_end_s``; more than one where
+    seconds are lost in between.
+    """
 
     radio: str
     receiver: str
@@ -29,6 +33,7 @@ class DownlinkChoice:
     usable_s: int
     volume_mb: float
     min_margin_db: float
+    pieces: tuple[tuple[int, int], ...]
 
 
 @dataclass(frozen=True)
@@ -51,6 +56,7 @@ class Track:
 
     ``time_s`` (from the horizon's start) and ``quality_db`` (Es/N0 or Eb/N0 after implementation loss)
     have one entry per sample; ``rung``, ``first_s`` and ``last_s`` one per stretch, in rising rung.
+    ``lost`` are intervals in which nothing passes, in time order.
     """
 
     chain: Chain
@@ -59,6 +65,7 @@ class Track:
     rung: Ints
     first_s: Floats
     last_s: Floats
+    lost: tuple[tuple[float, float], ...] = ()
 
     def least_quality_db(self, start_s: float, end_s: float) -> float:
         """The least quality from ``start_s`` to ``end_s``, along straight lines between samples [dB]."""
@@ -72,8 +79,19 @@ class Track:
 class _Sending:
     track: Track
     rung: Rung
-    start_s: int
-    end_s: int
+    pieces: tuple[tuple[int, int], ...]
+
+    @property
+    def start_s(self) -> int:
+        return self.pieces[0][0]
+
+    @property
+    def end_s(self) -> int:
+        return self.pieces[-1][1]
+
+    @property
+    def usable_s(self) -> int:
+        return sum(end - start for start, end in self.pieces)
 
     @property
     def margin_db(self) -> float:
@@ -91,16 +109,17 @@ class DownlinkProfile:
 
         Seconds count from the horizon's start. Sending begins ``acquisition_s`` after both the contact
         and the signal have begun, and lasts while the margin holds without a break; it is rounded inward
-        to whole seconds. Of equal volumes, the modcod with the lower requirement wins.
+        to whole seconds. Seconds that the track loses are left out, and the signal is acquired anew after
+        them. Of equal volumes, the modcod with the lower requirement wins.
         """
         found = _most(self.tracks, start_s, end_s)
         if found is None:
             return None
-        chain, usable_s = found.track.chain, found.end_s - found.start_s
+        chain, usable_s = found.track.chain, found.usable_s
         return DownlinkChoice(
             chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation, found.rung.name,
             found.rung.rate_mbps, found.start_s, found.end_s, usable_s,
-            found.rung.rate_mbps * usable_s / 8.0, found.margin_db,
+            found.rung.rate_mbps * usable_s / 8.0, found.margin_db, found.pieces,
         )
 
 
@@ -113,15 +132,15 @@ class CommandProfile:
     def best(self, start_s: int, end_s: int) -> CommandChoice | None:
         """When a contact [``start_s``, ``end_s``) can command, or None if for less than a second.
 
-        The rules are those of :meth:`DownlinkProfile.best`.
+        The rules are those of :meth:`DownlinkProfile.best`, but commands go in one piece, the longest.
         """
-        found = _most(self.tracks, start_s, end_s)
+        found = _most(self.tracks, start_s, end_s, unbroken=True)
         if found is None:
             return None
         chain = found.track.chain
         return CommandChoice(
             chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation,
-            found.start_s, found.end_s, found.end_s - found.start_s, found.margin_db,
+            found.start_s, found.end_s, found.usable_s, found.margin_db,
         )
 
 
@@ -133,7 +152,7 @@ class WindowLink:
     command: CommandProfile | None = None
 
 
-def _most(tracks: tuple[Track, ...], start_s: int, end_s: int) -> _Sending | None:
+def _most(tracks: tuple[Track, ...], start_s: int, end_s: int, *, unbroken: bool = False) -> _Sending | None:
     """The sending of greatest volume, over all tracks and rungs."""
     best: _Sending | None = None
     most = 0.0
@@ -146,12 +165,27 @@ def _most(tracks: tuple[Track, ...], start_s: int, end_s: int) -> _Sending | Non
             # Rates only fall from here on, so nothing that follows can bring more.
             if rung.rate_mbps * ceiling_s < most:
                 break
-            begin = math.ceil(max(first_s, start_s) + acquisition_s - _NOISE_S)
-            end = math.floor(min(last_s, end_s) + _NOISE_S)
-            volume = rung.rate_mbps * (end - begin)
-            if end > begin and (best is None or volume > most or (volume == most and _surer(track, rung, best))):
-                best, most = _Sending(track, rung, begin, end), volume
+            pieces = _pieces(max(first_s, start_s), min(last_s, end_s), acquisition_s, track.lost)
+            if unbroken:
+                pieces = tuple(sorted(pieces, key=lambda piece: piece[0] - piece[1])[:1])
+            volume = rung.rate_mbps * sum(end - begin for begin, end in pieces)
+            if pieces and (best is None or volume > most or (volume == most and _surer(track, rung, best))):
+                best, most = _Sending(track, rung, pieces), volume
     return best
+
+
+def _pieces(
+    first_s: float, last_s: float, acquisition_s: float, lost: tuple[tuple[float, float], ...]
+) -> tuple[tuple[int, int], ...]:
+    """Whole seconds of sending in a stretch, acquired at its start and again after each interval lost."""
+    found = []
+    for gap_s, resume_s in (*lost, (last_s, last_s)):
+        begin = math.ceil(first_s + acquisition_s - _NOISE_S)
+        end = math.floor(min(gap_s, last_s) + _NOISE_S)
+        if end > begin:
+            found.append((begin, end))
+        first_s = max(first_s, resume_s)
+    return tuple(found)
 
 
 def _surer(track: Track, rung: Rung, than: _Sending) -> bool:

@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
 
+from passplan.geometry.losses import Losses
 from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import Quantity, ZenithGas, gas_attenuation_db, gas_tables
@@ -32,20 +33,23 @@ class _Job:
     gas: ZenithGas
 
 
-def link_profiles(run: Run, windows: pd.DataFrame, samples: Samples) -> list[WindowLink]:
+def link_profiles(
+    run: Run, windows: pd.DataFrame, samples: Samples, losses: Losses | None = None
+) -> list[WindowLink]:
     """The links of each window, in the order of ``windows``.
 
     ``samples`` are those of the same windows in the same order. The quality of a sample is the chain's
     merit less free-space loss (P.525) and gas attenuation (P.676); a rung is usable where the quality
-    exceeds its requirement by the policy's ``required_margin_db``.
+    exceeds its requirement by the policy's ``required_margin_db``. Nothing is sent in the ``losses``.
     """
+    lost = losses or Losses()
     tracks: dict[int, list[Track]] = defaultdict(list)
     for needs_db, jobs in _by_ladder(_jobs(run, windows)).items():
         thresholds_db = np.array(needs_db) + run.policy.required_margin_db
         for block in _blocks(jobs, samples.offsets):
             for job, track in zip(block, _evaluate(block, thresholds_db, samples), strict=True):
                 if track.rung.size:
-                    tracks[job.window].append(track)
+                    tracks[job.window].append(replace(track, lost=lost.of(job.window, job.chain.direction)))
     return [_window_link(tracks.get(i, ())) for i in range(len(windows))]
 
 

@@ -77,7 +77,7 @@ def find_options(
         "window": c.window, "spacecraft": windows.spacecraft[c.window], "antenna": windows.antenna[c.window],
         "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
         "pieces": [] if c.downlink is None else [
-            (c.downlink.send_start_s, c.downlink.send_end_s, c.downlink.rate_mbps / 8.0)],
+            (start_s, end_s, c.downlink.rate_mbps / 8.0) for start_s, end_s in c.downlink.pieces],
     } for c in candidates]
     blocked = tuple(tuple(builder.blocked[name]) for name in antennas.names)
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)

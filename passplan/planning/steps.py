@@ -6,11 +6,20 @@ import time
 from collections.abc import Callable
 from dataclasses import replace
 
+import numpy as np
 import pandas as pd
 
+from passplan.geometry.losses import Losses
 from passplan.geometry.pointing import sample_windows
+from passplan.geometry.survey import Ground, cut_by_travel, find_losses
+from passplan.geometry.timescale import utc_seconds
+from passplan.geometry.timing import off_pointing_deg
+from passplan.geometry.trim import trimmed
 from passplan.geometry.windows import find_windows
+from passplan.inputs.elements.choose import valid_span
+from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.errors import PassplanError
+from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
@@ -33,21 +42,59 @@ class AuditFailedError(PassplanError):
 
 
 def windows_of(run: Run, progress: Report | None = None, *, only: tuple[str, str] | None = None) -> pd.DataFrame:
-    """The windows table of a run; ``only`` narrows it to one spacecraft and antenna."""
-    report = progress or _silent
+    """The windows table of a run; ``only`` narrows it to one spacecraft and antenna.
+
+    Beside the columns of the geometry floor: ``off_pointing_deg`` (sigma of the pointing at the nearest) and
+    ``lost_s`` (seconds inside in which nothing can be received).
+    """
+    return _survey(run, progress or _silent, only)[0]
+
+
+def _survey(run: Run, report: Report, only: tuple[str, str] | None = None) -> tuple[pd.DataFrame, Losses]:
     orbits, antennas = run.orbits, run.antennas
     if only is not None:
         orbits, antennas = {only[0]: orbits[only[0]]}, {only[1]: antennas[only[1]]}
-    return find_windows(
-        orbits, antennas, run.sites, run.start_utc, run.end_utc,
-        progress=lambda done, total: report("finding windows", done, total),
+    policy = run.policy
+    refraction = policy.refraction != "off"
+    windows = find_windows(
+        orbits, antennas, run.sites, run.start_utc, run.end_utc, mounts=run.mounts, refraction=refraction,
+        timing=policy.timing, progress=lambda done, total: report("finding windows", done, total),
     )
+    windows = cut_by_travel(windows, orbits, _ground(run))
+    windows = cut_by_manoeuvres(run, windows)
+    losses = losses_of(run, windows)
+    off_deg = off_pointing_deg(windows, orbits, policy.timing)
+    return windows.assign(off_pointing_deg=off_deg, lost_s=losses.lost_seconds(len(windows))), losses
 
 
-def links_of(run: Run, windows: pd.DataFrame) -> list[WindowLink]:
-    """The link along each window, in the order of the table."""
-    samples = sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_SAMPLE_STEP_S)
-    return link_profiles(run, windows, samples)
+def losses_of(run: Run, windows: pd.DataFrame) -> Losses:
+    """The seconds inside each window in which nothing can be received or sent, in the order of the table."""
+    return find_losses(windows, run.orbits, _ground(run), run.start_utc, run.policy.guard_sigmas)
+
+
+def links_of(run: Run, windows: pd.DataFrame, losses: Losses | None = None) -> list[WindowLink]:
+    """The link along each window, in the order of the table, without the seconds that are lost."""
+    refraction = run.policy.refraction != "off"
+    samples = sample_windows(
+        windows, run.orbits, run.sites, run.start_utc, step_s=_SAMPLE_STEP_S, refraction=refraction)
+    return link_profiles(run, windows, samples, losses or losses_of(run, windows))
+
+
+def cut_by_manoeuvres(run: Run, windows: pd.DataFrame) -> pd.DataFrame:
+    """``windows`` within the time between manoeuvres that each element set is good for."""
+    starts, ends = np.full(len(windows), -np.inf), np.full(len(windows), np.inf)
+    for name, source in run.orbits.items():
+        manoeuvres = [datetime64(instant) for instant in run.spacecraft[name].manoeuvres_utc]
+        if manoeuvres and isinstance(source, ElementSet):
+            mine = (windows["spacecraft"] == name).to_numpy()
+            starts[mine], ends[mine] = (float(utc_seconds(at)) for at in valid_span(source, manoeuvres))
+    return trimmed(windows, starts, ends, run.orbits, run.sites, refraction=run.policy.refraction != "off")
+
+
+def _ground(run: Run) -> Ground:
+    share = run.policy.off_pointing_beamwidths
+    permitted = {name: share * (antenna.beamwidth_deg or np.inf) for name, antenna in run.antennas.items()}
+    return Ground(run.antennas, run.sites, run.mounts, permitted, run.policy.refraction != "off")
 
 
 def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
@@ -66,10 +113,10 @@ def plan_run(run: Run, progress: Report | None = None) -> PlanRecord:
         seconds[stage] = round(now - began, 3)
         began = now
 
-    windows = windows_of(run, report)
+    windows, losses = _survey(run, report)
     lap("windows")
     report("computing links", 0, 0)
-    links = links_of(run, windows)
+    links = links_of(run, windows, losses)
     lap("links")
     plan = make_plan(run, windows, links, progress=report)
     lap("plan")
