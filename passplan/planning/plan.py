@@ -20,6 +20,7 @@ from passplan.planning.problem import Antennas, CommandNeed, Fleet, Limits, Prob
 from passplan.planning.result import PlanResult
 from passplan.planning.rules import all_terms
 from passplan.planning.tables import contacts_table, segments_table
+from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
 
 Report = Callable[[str, int, int], None]
@@ -87,7 +88,8 @@ def build_problem(run: Run, windows: pd.DataFrame, links: Sequence[WindowLink]) 
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),
         commands=_command_needs(run, fleet),
-        spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money)
+        spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
+        too_tight=too_tight(run, windows, antennas, option_set.options))
     return problem, option_set
 
 

@@ -10,10 +10,11 @@ from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.requests import requests
+from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
-RULES: tuple[Rule, ...] = (antenna_time, spacecraft_time, requests, command_interval)
+RULES: tuple[Rule, ...] = (antenna_time, slew_time, spacecraft_time, requests, command_interval)
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:
