@@ -9,6 +9,7 @@ from passplan.inputs.fleet import CommandRadio, DownlinkRadio
 from passplan.inputs.modcods import Modcod
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault, differs
+from passplan.planning.audit.mechanics import has_losses, sends_freely_s
 from passplan.planning.audit.quality import Quality, command_quality, downlink_quality
 from passplan.planning.audit.rows import Contact, Piece
 from passplan.planning.audit.sky import Sight
@@ -59,7 +60,8 @@ def _check_downlink(run: Run, contact: Contact, radio: DownlinkRadio, seen: Sigh
             return
         yield from _check_piece(run, contact, radio, piece, row, quality)
     yield from _check_usable(run, contact, radio, allowed[contact.modcod], quality)
-    yield from _check_choice(run, contact, radio, allowed, quality)
+    if not has_losses(run, run.antennas[contact.antenna]):
+        yield from _check_choice(run, contact, radio, allowed, quality)
 
 
 def _check_piece(
@@ -88,7 +90,8 @@ def _check_usable(run: Run, contact: Contact, radio: DownlinkRadio, row: Modcod,
         sentence = f"usable time {contact.usable_s:g} s does not agree with {sending_s:g} s of segments"
         yield Fault("usable", contact.place, sentence)
     possible_s = quality.longest_s(row.required_esn0_db + _asked(run) + _TOLERANCE_DB) - radio.acquisition_s
-    if contact.usable_s < possible_s - _TOLERANCE_S:
+    # Where seconds are lost inside, less than all of it may be used.
+    if contact.usable_s < possible_s - _TOLERANCE_S and not has_losses(run, run.antennas[contact.antenna]):
         sentence = f"usable time is {contact.usable_s:g} s, yet {row.name} holds for {possible_s:.0f} s"
         yield Fault("usable", contact.place, sentence)
     volume_mb = math.fsum(piece.volume_mb for piece in contact.pieces)
@@ -132,6 +135,8 @@ def _check_command(run: Run, contact: Contact, seen: Sight) -> Iterator[Fault]:
         yield Fault("command", contact.place, sentence)
         return
     most_s, least_s, radio = best
+    if has_losses(run, run.antennas[contact.antenna]):
+        most_s, least_s = min(most_s, sends_freely_s(run, contact) - radio.acquisition_s), 0.0
     if most_s + _TOLERANCE_S < run.policy.command_min_s:
         sentence = f"commands have their margin for {max(most_s, 0.0):.0f} s"
         yield Fault("command", contact.place, f"{sentence}, {run.policy.command_min_s:g} s are required")

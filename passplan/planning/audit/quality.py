@@ -13,7 +13,7 @@ from passplan.inputs.run import Run
 from passplan.link.atmosphere import gas_attenuation_db, gas_tables
 from passplan.link.budget import cn0_dbhz, density_ratio_db, figure_of_merit_db_per_k, free_space_loss_db
 from passplan.planning.audit.rows import Contact
-from passplan.planning.audit.sky import Floats, Sight
+from passplan.planning.audit.sky import Floats, Sight, lifted_deg
 
 
 @dataclass(frozen=True)
@@ -76,6 +76,7 @@ def _along(
 ) -> Quality:
     site = run.sites[run.antennas[contact.antenna].site]
     gas = gas_tables([(site, radio.frequency_mhz)])[site.name, radio.frequency_mhz]
-    path_db = free_space_loss_db(radio.frequency_mhz, seen.range_km) + gas_attenuation_db(gas, seen.elevation_deg)
+    height_deg = lifted_deg(run, contact.antenna, seen.elevation_deg)
+    path_db = free_space_loss_db(radio.frequency_mhz, seen.range_km) + gas_attenuation_db(gas, height_deg)
     ratio_db = density_ratio_db(level_dbhz - path_db, rate_hz) - radio.implementation_loss_db
     return Quality(seen.time_s, np.asarray(ratio_db))
