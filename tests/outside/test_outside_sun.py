@@ -49,10 +49,10 @@ def test_the_direction_of_the_sun_is_astropys_within_a_hundredth_of_a_degree() -
     assert apart.max() < 0.003
 
 
-@pytest.mark.parametrize(("rev_per_day", "inclination_deg", "raan_deg"), [(15.2, 97.4, 75.0), (2.0057, 55.0, 170.0), (1.0027, 0.1, 10.0)])
+@pytest.mark.parametrize(("rev_per_day", "inclination_deg", "raan_deg"), [(15.2, 97.4, 170.0), (2.0057, 55.0, 170.0), (1.0027, 0.1, 10.0)])
 def test_eclipse_edges_are_astropys_within_a_second(rev_per_day: float, inclination_deg: float, raan_deg: float) -> None:
     # Shadow of a sphere of the Earth's equatorial radius, the Sun's centre by astropy: angle Earth - Sun against the
-    # limb, by arccos here. Edges from straight lines between samples half a second either side of ours.
+    # limb, by arccos here.
     source = _orbit(rev_per_day, inclination_deg, raan_deg)
     start = np.datetime64("2021-09-18T00:00:00", "ms")
     found = eclipses(source, start, start + np.timedelta64(24, "h"))
@@ -71,7 +71,7 @@ def test_eclipse_edges_are_astropys_within_a_second(rev_per_day: float, inclinat
 
 
 def test_penumbra_holds_the_centre_and_the_centre_holds_the_umbra() -> None:
-    source = _orbit(15.2, 97.4, 75.0)
+    source = _orbit(15.2, 97.4, 170.0)
     start = np.datetime64("2021-09-18T00:00:00", "ms")
     lengths = [
         sum((b - a) / np.timedelta64(1, "s") for a, b in eclipses(source, start, start + np.timedelta64(6, "h"), shadow=kind))
