@@ -58,7 +58,8 @@ def sun_itrf_km(utc_s: Floats) -> Floats:
     node = np.radians(125.04 - 1_934.136 * t)
     nutation = -0.00478 * np.sin(node)
     longitude = np.radians(mean + centre + _planets_deg(t) + nutation - 0.00569)
-    radius_km = AU_KM * 1.000001018 * (1.0 - eccentricity**2) / (1.0 + eccentricity * np.cos(anomaly + np.radians(centre)))
+    true_anomaly = anomaly + np.radians(centre)
+    radius_km = AU_KM * 1.000001018 * (1.0 - eccentricity**2) / (1.0 + eccentricity * np.cos(true_anomaly))
     obliquity = np.radians(23.4392911 - 0.0130042 * t + 0.00256 * np.cos(node))
     equatorial = np.stack(
         [np.cos(longitude), np.sin(longitude) * np.cos(obliquity), np.sin(longitude) * np.sin(obliquity)], axis=-1
@@ -81,7 +82,9 @@ def sun_look(site: Site, utc_s: Floats) -> tuple[Floats, Floats]:
     return found.azimuth_deg, found.elevation_deg
 
 
-def sun_separation_deg(site: Site, times_utc: NDArray[np.datetime64], azimuth_deg: Floats, elevation_deg: Floats) -> Floats:
+def sun_separation_deg(
+    site: Site, times_utc: NDArray[np.datetime64], azimuth_deg: Floats, elevation_deg: Floats
+) -> Floats:
     """Angle [deg] between beams towards geometric directions (n,) and the centre of the Sun, seen from ``site``."""
     azimuth, elevation = sun_look(site, np.atleast_1d(utc_seconds(np.asarray(times_utc))))
     return separation_deg(azimuth_deg, elevation_deg, azimuth, elevation)

@@ -25,9 +25,9 @@ from passplan.inputs.ground import Antenna, Site
 from passplan.inputs.mounts import Mount
 from passplan.inputs.run import OrbitSource
 
-_STEP_S = 2.0
+_STEP_S = 4.0
 # A stretch that the axis cannot follow shows in the mean rate over a step at less than the limit itself: a pass
-# 0.5 deg from the zenith turns by 60 deg or more within two seconds of its culmination.
+# 0.5 deg from the zenith turns by 60 deg or more within four seconds of its culmination.
 _SUSPECT_SHARE, _SUSPECT_DEG_S = 0.5, 10.0
 # Times of the closer look: coarse over the window, fine around the fastest moment.
 _COARSE_S, _FINE_S, _FINE_REACH_S = 0.5, 0.02, 6.0

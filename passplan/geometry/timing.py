@@ -16,7 +16,6 @@ from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.policy import Timing
 from passplan.inputs.run import OrbitSource
 
-
 DEFAULT = Timing()
 
 

@@ -82,8 +82,9 @@ def _from_arc_deg(arc: Floats, azimuth_deg: Floats, elevation_deg: Floats) -> Fl
     for at in range(0, len(beams), _BLOCK):
         block = beams[at : at + _BLOCK]
         nearest = np.argmax(block @ arc.T, axis=1)
-        best = _to_piece(block, arc[nearest], arc[np.maximum(nearest - 1, 0)])
-        found[at : at + _BLOCK] = np.minimum(best, _to_piece(block, arc[nearest], arc[np.minimum(nearest + 1, len(arc) - 1)]))
+        sides = np.maximum(nearest - 1, 0), np.minimum(nearest + 1, len(arc) - 1)
+        pieces = [_to_piece(block, arc[nearest], arc[side]) for side in sides]
+        found[at : at + _BLOCK] = np.minimum(*pieces)
     return np.degrees(found)
 
 

@@ -41,7 +41,8 @@ def trimmed(
         source, site = orbits[str(table["spacecraft"].iat[row])], sites[str(table["site"].iat[row])]
         peak = float(utc_seconds(table["peak_utc"].to_numpy()[row]))
         kept = min(max(peak, start[row]), end[row])
-        found = look(*states_itrf(source, np.array([start[row], end[row], kept])), stations([site]).subset(np.zeros(3, int)))
+        states = states_itrf(source, np.array([start[row], end[row], kept]))
+        found = look(*states, stations([site]).subset(np.zeros(3, np.int64)))
         place = table.index[row]
         table.loc[place, ["aos_azimuth_deg", "los_azimuth_deg"]] = found.azimuth_deg[:2]
         if kept != peak:

@@ -56,7 +56,8 @@ def find_windows(
     off. Instants agree with the roots of Skyfield's ``altaz`` to a millisecond, the table's resolution.
     With ``refraction`` masks and limits hold for elevations as ITU-R P.834 bends them, and the peak is stated
     so; without it nothing is bent. ``mounts`` (by name) cut windows to where the antenna can point; rates and
-    cables are looked at later, by :mod:`passplan.geometry.survey`. ``timing`` says how sigmas grow. An object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
+    cables are looked at later, by :mod:`passplan.geometry.survey`. ``timing`` says how sigmas grow. An
+    object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
 
     ``progress(done, total)`` counts spacecraft. Columns as ``COLUMNS``; times are ``datetime64[ms]`` in
     UTC, ``clipped`` tells which ends are cut by the horizon, ``element_epoch_utc`` is NaT for an ephemeris.

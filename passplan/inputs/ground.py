@@ -108,7 +108,7 @@ class Antenna(Record):
         sends = ("transmit_min_elevation_deg", "transmit_mask", "transmit_keep_out", "transmit_arc_keep_out_deg")
         stated = [name for name in sends if getattr(self, name) not in (None, ())]
         if stated and not self.transmitters:
-            raise ValueError(f"{stated[0]} is about sending, and the antenna has no transmitters; name one or remove it")
+            raise ValueError(f"{stated[0]} is about sending, but there are no transmitters; name one or remove it")
         return self
 
 

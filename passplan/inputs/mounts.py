@@ -56,7 +56,8 @@ class Mount(Record):
             if (low is None) != (high is None):
                 raise ValueError(f"give both {axis}_from_deg and {axis}_to_deg, or neither")
             if low is not None and low >= high:
-                raise ValueError(f"{axis}_from_deg {low:g} is not below {axis}_to_deg {high:g}; the limits exclude everything")
+                both = f"{axis}_from_deg {low:g} is not below {axis}_to_deg {high:g}"
+                raise ValueError(f"{both}; the limits exclude everything")
             if getattr(self, f"{axis}_acceleration_deg_s2") and not getattr(self, f"{axis}_rate_deg_s"):
                 raise ValueError(f"{axis}_acceleration_deg_s2 needs {axis}_rate_deg_s; add it")
         if self.kind == "az_el" and self.upper_to_deg is not None and self.upper_to_deg <= 0.0:

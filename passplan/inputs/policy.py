@@ -10,7 +10,7 @@ from passplan.inputs.records import Record
 
 
 class Growth(Record):
-    """Along-track sigma of an orbit: ``at_epoch_km``, and ``per_day_km`` more for each day from the epoch, either way."""
+    """Along-track sigma of an orbit: ``at_epoch_km``, and ``per_day_km`` more for each day from it, either way."""
 
     at_epoch_km: Annotated[float, Field(ge=0.0, le=1_000.0)]
     per_day_km: Annotated[float, Field(ge=0.0, le=1_000.0)]

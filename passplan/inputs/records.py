@@ -57,7 +57,7 @@ def _sectors(value: Any) -> Any:
         try:
             return tuple(tuple(float(x) for x in sector.split(":")) for sector in _listed(value))
         except ValueError:
-            raise ValueError("write sectors as azimuth:azimuth:elevation:elevation in degrees, as 100:140:0:12") from None
+            raise ValueError("write sectors as azimuth:azimuth:elevation:elevation, as 100:140:0:12") from None
     return value
 
 

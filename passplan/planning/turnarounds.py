@@ -1,4 +1,4 @@
-"""Pairs of contacts between which an antenna cannot turn in time, from where the first ends to where the second starts."""
+"""Pairs of contacts that an antenna cannot turn between in time, from the end of the first to the start of the next."""
 
 from __future__ import annotations
 
@@ -28,10 +28,10 @@ def too_tight(run: Run, windows: pd.DataFrame, antennas: Antennas, options: Opti
             for at in (options.start_s, options.end_s))
         setup_s = int(antennas.prepare_s[k] + antennas.release_s[k])
         # No turn takes longer than that between the furthest of all angles.
-        spans = [np.ptp(np.concatenate([getattr(s, axis) for s in (begins, ends)])) for axis in ("lower_deg", "upper_deg")]
-        zero, far = np.zeros(1), np.array(spans)
-        longest_s = float(turnaround_s(mount.model_copy(update={"lower_from_deg": -720.0}), Stance(zero, zero),
-                                       Stance(far[:1], far[1:]))[0])
+        lower, upper = (
+            np.concatenate([getattr(stance, axis) for stance in (begins, ends)]) for axis in ("lower_deg", "upper_deg"))
+        tied = mount.model_copy(update={"lower_from_deg": -720.0})
+        longest_s = float(turnaround_s(tied, Stance(lower.min(), upper.min()), Stance(lower.max(), upper.max())))
         if longest_s <= setup_s:
             continue
         starts = options.start_s[mine]

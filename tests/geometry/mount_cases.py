@@ -81,5 +81,6 @@ class FlatPass:
         line = self.azimuth_deg(np.array([meet]))[0] - rate_deg_s * (meet - t)
         ahead = line - self.azimuth_deg(t)
         leave = t[np.flatnonzero(ahead <= 0.0)[-1]]
-        off = 2.0 * np.degrees(np.arcsin(np.cos(np.radians(self.elevation_deg(t))) * np.sin(np.radians(np.abs(ahead) / 2.0))))
+        chord = np.cos(np.radians(self.elevation_deg(t))) * np.sin(np.radians(np.abs(ahead) / 2.0))
+        off = 2.0 * np.degrees(np.arcsin(chord))
         return float(1e-3 * np.count_nonzero((t > leave) & (off > permitted_deg)))

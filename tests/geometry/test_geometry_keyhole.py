@@ -1,5 +1,7 @@
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
 from geometry_cases import LOW, START
@@ -101,7 +103,7 @@ def test_lost_stretches_are_in_order_and_only_where_a_slew_is_needed(
     path = FlatPass(7.5, 500.0, 500.0 * np.tan(np.radians(aside_deg)))
     lost = _lost(path, Axis(rate, strength), permitted, 0.1)
     assert all(start <= end for start, end in lost)
-    assert all(a[1] <= b[0] + 1e-6 for a, b in zip(lost, lost[1:], strict=False))
+    assert all(a[1] <= b[0] + 1e-6 for a, b in pairwise(lost))
     if np.degrees(7.5 / path.aside_km) < rate and np.isinf(strength):
         assert lost == []
     # A wider tolerance never loses more, but for the grid of starts.

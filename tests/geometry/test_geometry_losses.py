@@ -23,7 +23,10 @@ def _dish(**more: object) -> Antenna:
 
 
 def test_losses_of_a_direction_are_merged() -> None:
-    rows = (Loss(0, 5.0, 9.0, "sun"), Loss(0, 0.0, 6.0, "guard"), Loss(0, 20.0, 21.0, "transmit"), Loss(2, 1.0, 2.0, "keyhole"))
+    rows = (
+        Loss(0, 5.0, 9.0, "sun"), Loss(0, 0.0, 6.0, "guard"), Loss(0, 20.0, 21.0, "transmit"),
+        Loss(2, 1.0, 2.0, "keyhole"),
+    )  # fmt: skip
     losses = Losses(rows)
     assert losses.of(0, "downlink") == ((0.0, 9.0),)
     assert losses.of(0, "command") == ((0.0, 6.0), (20.0, 21.0))
@@ -91,7 +94,8 @@ def test_the_geostationary_arc_is_where_textbooks_put_it(latitude_deg: float) ->
     site = Site(name="Hill", latitude_deg=latitude_deg, longitude_deg=20.0)
     azimuth, elevation = arc_azimuths_elevations_deg(site)
     lat = np.radians(abs(latitude_deg))
-    assert elevation.max() == pytest.approx(np.degrees(np.arctan2(np.cos(lat) - 6_378.137 / 42_164.17, np.sin(lat))), abs=0.25)
+    textbook = np.degrees(np.arctan2(np.cos(lat) - 6_378.137 / 42_164.17, np.sin(lat)))
+    assert elevation.max() == pytest.approx(textbook, abs=0.25)
     if latitude_deg:
         assert azimuth[np.argmax(elevation)] == pytest.approx(180.0 if latitude_deg > 0.0 else 0.0, abs=1.0)
     np.testing.assert_allclose(arc_separation_deg(site, azimuth, elevation), 0.0, atol=1e-5)
@@ -111,7 +115,8 @@ def test_sun_blinded_intervals_are_those_near_the_sun() -> None:
     table = windows(LOW, dish)
     losses = find_losses(table, {"Teal": LOW}, _ground(dish), START)
     assert losses.rows and all(loss.cause == "sun" for loss in losses.rows)
-    inner = np.array([[loss.start_s + 1.0, loss.end_s - 1.0] for loss in losses.rows if loss.end_s - loss.start_s > 4.0])
+    long = [loss for loss in losses.rows if loss.end_s - loss.start_s > 4.0]
+    inner = np.array([[loss.start_s + 1.0, loss.end_s - 1.0] for loss in long])
     outer = np.array([loss.start_s for loss in losses.rows])
     for seconds, side in ((inner.ravel(), True), (outer - 1.0, False)):
         times = at_s(seconds)

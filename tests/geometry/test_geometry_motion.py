@@ -49,6 +49,7 @@ def test_separation_of_two_spacecraft_is_the_angle_between_their_directions() ->
     for source in (LOW, INCLINED):
         seen = look_angles(source, NORTH, times)
         azimuth, elevation = np.radians(seen.azimuth_deg), np.radians(seen.elevation_deg)
-        lines.append(np.stack([np.cos(elevation) * np.cos(azimuth), np.cos(elevation) * np.sin(azimuth), np.sin(elevation)]))
+        level = np.cos(elevation)
+        lines.append(np.stack([level * np.cos(azimuth), level * np.sin(azimuth), np.sin(elevation)]))
     np.testing.assert_allclose(apart, np.degrees(np.arccos((lines[0] * lines[1]).sum(axis=0))), atol=1e-6)
     assert spacecraft_separation_deg(LOW, LOW, NORTH, times) == pytest.approx(0.0)

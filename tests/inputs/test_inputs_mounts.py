@@ -42,7 +42,7 @@ def test_mounts_are_read_from_toml_and_from_csv(edit: Edit, sample: Path) -> Non
 @pytest.mark.parametrize(
     ("old", "new", "parts"),
     [
-        ("lower_rate_deg_s = 5", "lower_rates_deg_s = 5", ("mount[", "lower_rates_deg_s", "did you mean 'lower_rate_deg_s'?")),
+        ("lower_rate_deg_s = 5", "lower_rates_deg_s = 5", ("mount[", "did you mean 'lower_rate_deg_s'?")),
         ("lower_rate_deg_s = 5", "lower_rate_deg_s = -5", ("lower_rate_deg_s", "-5", "above 0")),
         ('kind = "az_el"', 'kind = "azel"', ("kind", "azel", "'az_el', 'x_y' or 'fixed'")),
         ('kind = "az_el"', 'kind = "fixed"', ("means nothing to a mount of kind fixed",)),
@@ -51,7 +51,7 @@ def test_mounts_are_read_from_toml_and_from_csv(edit: Edit, sample: Path) -> Non
         ("upper_rate_deg_s = 3", "upper_from_deg = 80\nupper_to_deg = 20", ("80", "20", "exclude everything")),
         ("upper_rate_deg_s = 3", "upper_acceleration_deg_s2 = 3", ("needs upper_rate_deg_s",)),
         ("upper_rate_deg_s = 3", "upper_from_deg = -9\nupper_to_deg = -1", ("leaves nothing above the horizon",)),
-        ("upper_rate_deg_s = 3", "upper_from_deg = 0\nupper_to_deg = 6", ("Isvarde-B", "reaches only 6 deg", "min_elevation_deg", "7")),
+        ("upper_rate_deg_s = 3", "upper_from_deg = 0\nupper_to_deg = 6", ("Isvarde-B", "reaches only 6 deg", "7")),
         ("beamwidth_deg = 0.5\n", "", ("Isvarde-B: beamwidth_deg", "spare has limited rates")),
         ('mount = "spare"', 'mount = "spar"', ("Isvarde-B: mount", "did you mean 'spare'?")),
         (B, f"{B}transmit_min_elevation_deg = 10\n", ("transmit_min_elevation_deg", "no transmitters")),

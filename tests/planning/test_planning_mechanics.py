@@ -63,7 +63,10 @@ def test_nothing_is_sent_in_lost_seconds_and_only_they_are_deducted(stiff_run: R
     split = 0
     for name, own in stiff_plan.segments.groupby("contact_id"):
         spans = losses.of(number[contacts.loc[name, "window_id"]], "downlink")
-        seconds = [((own[c] - pd.Timestamp(stiff_run.start_utc)) / pd.Timedelta(1, "s")).to_numpy() for c in ("start_utc", "end_utc")]
+        seconds = [
+            ((own[c] - pd.Timestamp(stiff_run.start_utc)) / pd.Timedelta(1, "s")).to_numpy()
+            for c in ("start_utc", "end_utc")
+        ]
         assert all(np.all((seconds[1] <= a) | (seconds[0] >= b)) for a, b in spans)
         assert contacts.loc[name, "usable_s"] == (seconds[1] - seconds[0]).sum()
         if len(own) > 1:
@@ -133,9 +136,9 @@ def test_turnaround_in_the_plan_depends_on_the_order() -> None:
     starts, ends = {"A": 170.0, "B": 20.0}, {"A": 10.0, "B": -150.0}
 
     def plan(first: str, second: str) -> int:
-        needed_s = turnaround_s(mount, Stance(np.array([ends[first]]), np.zeros(1)), Stance(np.array([starts[second]]), np.zeros(1)))
-        tight = [[0, 1]] if needed_s[0] > 60.0 else []
-        rows = [{"start_s": 0, "end_s": 600, "pieces": [(0, 600, 1.0)]}, {"start_s": 660, "end_s": 1_200, "pieces": [(660, 1_200, 1.0)]}]
+        end, start = (Stance(np.array([angle]), np.zeros(1)) for angle in (ends[first], starts[second]))
+        tight = [[0, 1]] if turnaround_s(mount, end, start)[0] > 60.0 else []
+        rows = [{"start_s": a, "end_s": b, "pieces": [(a, b, 1.0)]} for a, b in ((0, 600), (660, 1_200))]
         problem = problem_of(rows, prepare_s=(0,), too_tight=np.array(tight, dtype=np.int64).reshape(-1, 2))
         assert len(slew_time(problem).lanes) == len(tight)
         return len(find_plan(problem, Limits(gap=0.0)).chosen)

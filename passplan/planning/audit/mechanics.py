@@ -60,8 +60,9 @@ def sends_freely_s(run: Run, contact: Contact) -> float:
     free = np.ones(times.size, bool)
     if antenna.transmit_mask or antenna.transmit_min_elevation_deg is not None:
         floor = antenna.transmit_min_elevation_deg
-        own = {"mask": antenna.transmit_mask, "min_elevation_deg": antenna.min_elevation_deg if floor is None else floor}
-        free &= height >= mask_deg(antenna.model_copy(update=own), seen.azimuth_deg) - _TOLERANCE_DEG
+        least = antenna.min_elevation_deg if floor is None else floor
+        own = antenna.model_copy(update={"mask": antenna.transmit_mask, "min_elevation_deg": least})
+        free &= height >= mask_deg(own, seen.azimuth_deg) - _TOLERANCE_DEG
     for first, last, low, high in antenna.transmit_keep_out:
         turn = (seen.azimuth_deg - first) % 360.0
         across = (turn > _TOLERANCE_DEG) & (turn < ((last - first) % 360.0 or 360.0) - _TOLERANCE_DEG)
@@ -110,16 +111,16 @@ def _check_manoeuvres(run: Run, contact: Contact) -> Iterator[Fault]:
     for instant in run.spacecraft[contact.spacecraft].manoeuvres_utc:
         at_s = float((datetime64(instant) - run.start_utc) / np.timedelta64(1, "ms")) / 1e3
         if (epoch_s < at_s < contact.end_s - 1e-3) or (contact.start_s + 1e-3 < at_s <= epoch_s):
-            yield Fault("manoeuvre", contact.place, f"a manoeuvre at {instant:%Y-%m-%d %H:%M:%S} UTC lies between it and the element set")
+            sentence = f"a manoeuvre at {instant:%Y-%m-%d %H:%M:%S} UTC lies between it and the element set"
+            yield Fault("manoeuvre", contact.place, sentence)
 
 
 def _check_reach(run: Run, contact: Contact, mount: Mount, seen: Sight) -> Iterator[Fault]:
     height = lifted_deg(run, contact.antenna, seen.elevation_deg)
     if mount.kind == "fixed":
         boresight = 90.0 if mount.boresight_elevation_deg is None else mount.boresight_elevation_deg
-        apart = np.degrees(np.arccos(np.clip(
-            _unit(seen.azimuth_deg, height) @ _unit(np.array([mount.boresight_azimuth_deg or 0.0]), np.array([boresight]))[0],
-            -1.0, 1.0)))
+        axis = _unit(np.array([mount.boresight_azimuth_deg or 0.0]), np.array([boresight]))[0]
+        apart = np.degrees(np.arccos(np.clip(_unit(seen.azimuth_deg, height) @ axis, -1.0, 1.0)))
         if np.any(apart > (mount.cone_deg or 0.0) + _TOLERANCE_DEG):
             yield Fault("reach", contact.place, f"{apart.max():.2f} deg from the boresight of {mount.name}")
         return
@@ -127,9 +128,12 @@ def _check_reach(run: Run, contact: Contact, mount: Mount, seen: Sight) -> Itera
     limits = [("upper", upper, mount.upper_from_deg, mount.upper_to_deg)]
     if mount.kind == "x_y":
         limits.append(("lower", lower, mount.lower_from_deg, mount.lower_to_deg))
-    for axis, angle, low, high in limits:
-        if low is not None and high is not None and (np.any(angle < low - _TOLERANCE_DEG) or np.any(angle > high + _TOLERANCE_DEG)):
-            yield Fault("reach", contact.place, f"the {axis} axis of {mount.name} would pass its limits of {low:g} and {high:g} deg")
+    for name, angle, low, high in limits:
+        if low is None or high is None:
+            continue
+        if np.any(angle < low - _TOLERANCE_DEG) or np.any(angle > high + _TOLERANCE_DEG):
+            sentence = f"the {name} axis of {mount.name} would pass its limits of {low:g} and {high:g} deg"
+            yield Fault("reach", contact.place, sentence)
     if mount.kind == "az_el" and mount.lower_from_deg is not None and mount.lower_to_deg is not None:
         swing = float(np.ptp(np.unwrap(lower, period=360.0)))
         if swing > mount.lower_to_deg - mount.lower_from_deg + _TOLERANCE_DEG:
@@ -151,21 +155,23 @@ def _check_rates(run: Run, contact: Contact, mount: Mount, fine: tuple[Floats, F
         track = np.unwrap(angle, period=360.0)
         for way in (1.0, -1.0):
             # Behind at t1 by the width, ahead at t2 by the width: what must be covered beyond the rate.
-            left_behind = np.minimum.accumulate(way * track + width - rate * times * 1.0)
+            left_behind = np.minimum.accumulate(way * track + width - rate * times)
             short = (way * track - width - rate * times) - left_behind
             worst = int(np.argmax(short))
             if short[worst] > _TOLERANCE_DEG + rate * _TOLERANCE_S:
-                yield Fault("rate", contact.place, f"the {axis} axis of {mount.name} cannot follow at {rate:g} deg/s while sending")
+                sentence = f"the {axis} axis of {mount.name} cannot follow at {rate:g} deg/s while sending"
+                yield Fault("rate", contact.place, sentence)
                 return
 
 
 def _check_sun(run: Run, contact: Contact, keep_out_deg: float, fine: tuple[Floats, Floats, Floats]) -> Iterator[Fault]:
     times, azimuth, height = fine
     site = run.sites[run.antennas[contact.antenna].site]
-    apart = np.degrees(np.arccos(np.clip(
-        np.einsum("ij,ij->i", _unit(azimuth, height), _sun(run, times, site.latitude_deg, site.longitude_deg)), -1.0, 1.0)))
+    sun = _sun(run, times, site.latitude_deg, site.longitude_deg)
+    apart = np.degrees(np.arccos(np.clip(np.einsum("ij,ij->i", _unit(azimuth, height), sun), -1.0, 1.0)))
     if np.any(apart < keep_out_deg - _TOLERANCE_SUN_DEG):
-        yield Fault("sun", contact.place, f"it receives {apart.min():.2f} deg from the Sun, {keep_out_deg:g} deg are required")
+        sentence = f"it receives {apart.min():.2f} deg from the Sun, {keep_out_deg:g} deg are required"
+        yield Fault("sun", contact.place, sentence)
 
 
 def _while_sending(run: Run, contact: Contact) -> tuple[Floats, Floats, Floats] | None:
@@ -224,4 +230,5 @@ def _arc_angle_deg(latitude_deg: float, azimuth_deg: Floats, elevation_deg: Floa
     line = line[up > 0.0] / np.linalg.norm(line[up > 0.0], axis=1)[:, None]
     if not len(line):
         return np.full(azimuth_deg.shape, np.inf)
-    return np.asarray(np.degrees(np.arccos(np.clip((_unit(azimuth_deg, elevation_deg) @ line.T).max(axis=1), -1.0, 1.0))))
+    nearest = (_unit(azimuth_deg, elevation_deg) @ line.T).max(axis=1)
+    return np.asarray(np.degrees(np.arccos(np.clip(nearest, -1.0, 1.0))))

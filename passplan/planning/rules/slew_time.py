@@ -12,8 +12,8 @@ def slew_time(problem: Problem) -> Terms:
     """One lane for each option that has others too close behind it.
 
     How long it takes depends on both contacts, and on their order, so no interval that a contact holds
-    could say it. The lane's times are a code instead: the earlier option holds all of it, each later one a second of its
-    own, so that the earlier one excludes each of the later ones, and these do not exclude each other.
+    could say it. The lane's times are a code instead: the earlier option holds all of it, each later one
+    a second of its own, so that the earlier one excludes each later one, and these do not exclude each other.
     """
     lanes = []
     earlier, later = problem.too_tight[:, 0], problem.too_tight[:, 1]
