@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
@@ -46,12 +46,20 @@ class Samples:
     offsets: NDArray[np.int64]
 
 
-def look_angles(source: OrbitSource, site: Site, times_utc: NDArray[np.datetime64]) -> LookAngles:
-    """Azimuth, elevation (deg), range (km) and range rate (km/s) from ``site`` at ``times_utc`` (n,)."""
+def look_angles(
+    source: OrbitSource, site: Site, times_utc: NDArray[np.datetime64], *, refraction: bool = False
+) -> LookAngles:
+    """Azimuth, elevation (deg), range (km) and range rate (km/s) from ``site`` at ``times_utc`` (n,).
+
+    With ``refraction`` the elevation is the apparent one (ITU-R P.834).
+    """
     times = np.atleast_1d(utc_seconds(np.asarray(times_utc)))
     positions, velocities = states_itrf(source, times)
     here = stations([site]).subset(np.zeros(times.size, np.int64))
-    return look(positions, velocities, here)
+    found = look(positions, velocities, here)
+    if refraction:
+        return replace(found, elevation_deg=apparent_deg(found.elevation_deg, site.height_m / 1e3))
+    return found
 
 
 def look(positions_km: Floats, velocities_km_s: Floats, here: Stations) -> LookAngles:

@@ -45,6 +45,8 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         "geometry": {
             "refraction": run.policy.refraction, "light_time": "off", "polar_motion": "off",
             "guard_sigmas": run.policy.guard_sigmas,
+            **{f"largest_{name}": _largest(windows, name) for name in ("timing_sigma_s", "off_pointing_deg")},
+            "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
         "warnings": list(run.warnings) + _own_warnings(run, windows),
@@ -140,6 +142,10 @@ def _pointing_warnings(run: Run, windows: pd.DataFrame) -> list[str]:
                 f"the beam allows {permitted_deg:.2g} deg; fetch fresh element sets, or search in time on acquisition"
             )
     return found
+
+
+def _largest(windows: pd.DataFrame, column: str) -> float | None:
+    return round(float(windows[column].max()), 4) if column in windows and len(windows) else None
 
 
 def _finite(number: float) -> float | None:
