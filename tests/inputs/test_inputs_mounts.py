@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable
 from pathlib import Path
 
@@ -32,10 +33,12 @@ def test_mounts_are_read_from_toml_and_from_csv(edit: Edit, sample: Path) -> Non
     run = load_run(sample / DAILY)
     mount = run.mount_of("Isvarde-B")
     assert mount is not None and (mount.lower_rate_deg_s, mount.moves) == (5.0, True)
-    edit(GROUND, MOUNT, "")
-    edit(GROUND, "operator =", 'mount = "mounts.csv"\noperator =')
+    ground = (sample / GROUND).read_text(encoding="utf-8")
+    without = re.sub(r"\[\[mount\]\]\n(\w.*\n)+", "", ground)
+    (sample / GROUND).write_text(without.replace("operator =", 'mount = "mounts.csv"\noperator ='), encoding="utf-8")
     (sample / "sample_fleet/mounts.csv").write_text(
-        "name,kind,lower_rate_deg_s,lower_from_deg,lower_to_deg\nspare,az_el,5,-270,270\n", encoding="utf-8")
+        "name,kind,lower_rate_deg_s,lower_from_deg,lower_to_deg\nspare,az_el,5,-270,270\nturntable-4m,az_el,6,,\n",
+        encoding="utf-8")
     assert load_run(sample / DAILY).mounts["spare"].lower_to_deg == 270.0
 
 
