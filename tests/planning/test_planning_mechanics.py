@@ -39,7 +39,8 @@ def stiff_run(short_run: Run) -> Run:
     }
     antennas = {name: item.model_copy(update=limits.get(name, {})) for name, item in short_run.antennas.items()}
     policy = short_run.policy.model_copy(update={"refraction": "itu_p834", "guard_sigmas": 1.0})
-    return replace(short_run, antennas=antennas, mounts={"slow": SLOW, "cradle": CRADLE}, policy=policy)
+    mounts = {**short_run.mounts, "slow": SLOW, "cradle": CRADLE}
+    return replace(short_run, antennas=antennas, mounts=mounts, policy=policy)
 
 
 @pytest.fixture(scope="module")
@@ -95,7 +96,7 @@ def test_a_mount_never_adds_volume(stiff_plan: PlanRecord, short_plan: PlanRecor
 def test_the_audit_refuses_what_a_weaker_mount_cannot_do(
     stiff_run: Run, stiff_plan: PlanRecord, change: dict[str, float], kind: str
 ) -> None:
-    weaker = replace(stiff_run, mounts={"slow": SLOW.model_copy(update=change), "cradle": CRADLE})
+    weaker = replace(stiff_run, mounts={**stiff_run.mounts, "slow": SLOW.model_copy(update=change)})
     faults = audit_plan(weaker, stiff_plan.contacts, stiff_plan.segments, stiff_plan.summary)
     assert kind in {fault.kind for fault in faults}
 
