@@ -42,6 +42,7 @@ def command(
         stdout().print(f"{len(table)} windows written to {out}")
     else:
         print_windows(table, stdout(), rows=None if full else 40)
+    typer.echo(f"passplan: refraction {run.policy.refraction}, light time off", err=True)
     for warning in run.warnings:
         typer.echo(f"passplan: {warning}", err=True)
     end_with_warnings(bool(run.warnings or run.left_out), strict)

@@ -10,6 +10,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
+from passplan.geometry.refraction import geometric_deg
 from passplan.geometry.timescale import Floats
 from passplan.inputs.ground import Antenna
 
@@ -17,6 +18,7 @@ from passplan.inputs.ground import Antenna
 _APART_DEG = 1_000.0
 # Points closer than this in azimuth make a step.
 _STEP_DEG = 1e-9
+_BENT_PIECE_DEG = 0.2
 
 
 @dataclass(frozen=True)
@@ -62,10 +64,14 @@ def mask_of(antenna: Antenna) -> Mask:
 
     The table is joined by straight lines and wraps at north; two points of one azimuth make a step.
     """
-    floor = antenna.min_elevation_deg
-    if not antenna.mask:
+    return table_mask(antenna.mask, antenna.min_elevation_deg)
+
+
+def table_mask(table: Sequence[tuple[float, float]], floor: float) -> Mask:
+    """The higher of a table of (azimuth, elevation) points and ``floor``, in degrees."""
+    if not table:
         return Mask(np.array([0.0]), np.array([360.0]), np.array([floor]), np.array([floor]))
-    points = _wrapped(sorted(antenna.mask, key=lambda point: point[0]))
+    points = _wrapped(sorted(table, key=lambda point: point[0]))
     pieces: list[tuple[float, float, float, float]] = []
     for (a, x), (b, y) in pairwise(points):
         if b - a < _STEP_DEG:
@@ -77,6 +83,24 @@ def mask_of(antenna: Antenna) -> Mask:
                 continue
         pieces.append((a, b, max(x, floor), max(y, floor)))
     return Mask(*(np.array(column, float) for column in zip(*pieces, strict=True)))
+
+
+def unbent(mask: Mask, height_km: float) -> Mask:
+    """The mask for geometric elevations that holds where the refracted ones, at ``height_km``, pass ``mask``.
+
+    Sloping pieces are divided, so that the straight lines stay within 0.0002 deg of the bent ones.
+    """
+    parts = np.maximum(np.ceil(np.abs(mask.last_deg - mask.first_deg) / _BENT_PIECE_DEG).astype(int), 1)
+    owner = np.repeat(np.arange(parts.size), parts)
+    number = np.arange(owner.size) - np.repeat(np.cumsum(parts) - parts, parts)
+    low, high = number / parts[owner], (number + 1) / parts[owner]
+
+    def between(first: Floats, last: Floats, share: Floats) -> Floats:
+        return np.asarray(np.where(share == 1.0, last[owner], first[owner] + share * (last - first)[owner]))
+
+    edges = [between(mask.begin_deg, mask.finish_deg, share) for share in (low, high)]
+    heights = [geometric_deg(between(mask.first_deg, mask.last_deg, share), height_km) for share in (low, high)]
+    return Mask(edges[0], edges[1], heights[0], heights[1])
 
 
 def _wrapped(points: list[tuple[float, float]]) -> list[tuple[float, float]]:

@@ -12,6 +12,7 @@ from passplan.geometry import stencil
 from passplan.geometry.masks import Mask, joined_masks
 from passplan.geometry.notches import cut_to_masks
 from passplan.geometry.pointing import azimuth_of
+from passplan.geometry.reach import Reach, cut_to_reach
 from passplan.geometry.regimes import ALWAYS_S
 from passplan.geometry.roots import Flags, Indices
 from passplan.geometry.scan import Spans, spans
@@ -23,7 +24,7 @@ from passplan.geometry.timescale import Floats
 from passplan.geometry.trajectory import Block
 
 _STEEP_SINE = 0.98
-# Spans cut to shaped masks at once; bounds the memory of their polynomials.
+# Spans cut to shaped masks or limits of mounts at once; bounds the memory of their polynomials.
 _SPANS_AT_ONCE = 2_000
 
 
@@ -63,9 +64,15 @@ def joined(parts: Sequence[Rows]) -> Rows:
 
 
 def block_rows(
-    block: Block, places: Stations, masks: Sequence[Mask], antennas: Indices, start_s: float, end_s: float
+    block: Block,
+    places: Stations,
+    masks: Sequence[Mask],
+    antennas: Indices,
+    start_s: float,
+    end_s: float,
+    reaches: Sequence[Reach | None] = (),
 ) -> Rows:
-    """The windows of one block from the antennas numbered ``antennas`` (with their places and masks)."""
+    """The windows of one block from the antennas numbered ``antennas`` (with their places, masks and reaches)."""
     sines = np.sin(np.radians([mask.lowest_deg for mask in masks]))
     scene = view(block, places, sines)
     found, top = spans(scene)
@@ -73,6 +80,7 @@ def block_rows(
     found, top, number = _near_horizon(found, top, _pass_numbers(scene, found), low, high)
     crown = _crowns(block.step_s, found, number, top)
     found, crown, top = _cut_by_masks(block, places, masks, scene, found, crown, top)
+    found, crown, top = _cut_by_reaches(block, places, reaches, scene, found, crown, top)
     start, end = np.clip(found.start, low, high), np.clip(found.end, low, high)
     inside = start < end
     cut = np.flatnonzero(inside & ((start != found.start) | (end != found.end)))
@@ -187,7 +195,52 @@ def _cut_by_masks(
         ends.append(pieces.end)
     if not mine.size:
         return found, crown, top
-    parent, start, end = np.concatenate(parents), np.concatenate(starts), np.concatenate(ends)
+    pieces_of = np.concatenate(parents), np.concatenate(starts), np.concatenate(ends)
+    return _replaced(scene, found, crown, top, np.flatnonzero(~shaped[antenna]), *pieces_of)
+
+
+def _cut_by_reaches(
+    block: Block,
+    places: Stations,
+    reaches: Sequence[Reach | None],
+    scene: Scene,
+    found: Spans,
+    crown: _Crowns,
+    top: Summits,
+) -> tuple[Spans, _Crowns, Summits]:
+    """Spans of antennas whose mount cannot point everywhere, replaced by their pieces within its reach."""
+    for number, reach in enumerate(reaches):
+        if reach is None:
+            continue
+        antenna, own = np.divmod(found.pair, scene.objects)
+        mine = np.flatnonzero(antenna == number)
+        parents, starts, ends = [], [], []
+        for at in range(0, mine.size, _SPANS_AT_ONCE):
+            some = mine[at : at + _SPANS_AT_ONCE]
+            here = places.subset(antenna[some])
+            heaven = sky(block, here, own[some], found.centre[some], found.start[some], found.end[some])
+            piece, start, end = cut_to_reach(heaven, reach, found.start[some], found.end[some], top.at[some])
+            parents.append(some[piece])
+            starts.append(start)
+            ends.append(end)
+        if mine.size:
+            pieces_of = np.concatenate(parents), np.concatenate(starts), np.concatenate(ends)
+            rest = np.flatnonzero(antenna != number)
+            found, crown, top = _replaced(scene, found, crown, top, rest, *pieces_of)
+    return found, crown, top
+
+
+def _replaced(
+    scene: Scene,
+    found: Spans,
+    crown: _Crowns,
+    top: Summits,
+    rest: Indices,
+    parent: Indices,
+    start: Floats,
+    end: Floats,
+) -> tuple[Spans, _Crowns, Summits]:
+    """The spans ``rest`` as they are, and the pieces [start, end] of the spans ``parent`` instead of all others."""
     above = summits(scene, found.pair[parent], start, end)
     endless = crown.endless[parent]
     cut = Spans(
@@ -201,7 +254,6 @@ def _cut_by_masks(
     renamed = _Crowns(
         np.where(endless, above.at, crown.at[parent]), np.where(endless, above.sine, crown.sine[parent]), endless
     )
-    rest = np.flatnonzero(~shaped[antenna])
     return _followed(found, rest, cut), _followed(crown, rest, renamed), _followed(top, rest, above)
 
 

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from passplan.geometry.refraction import apparent_deg
 from passplan.geometry.stations import Stations, stations
 from passplan.geometry.timescale import Floats, utc_seconds
 from passplan.geometry.trajectory import states_itrf
@@ -45,12 +46,20 @@ class Samples:
     offsets: NDArray[np.int64]
 
 
-def look_angles(source: OrbitSource, site: Site, times_utc: NDArray[np.datetime64]) -> LookAngles:
-    """Azimuth, elevation (deg), range (km) and range rate (km/s) from ``site`` at ``times_utc`` (n,)."""
+def look_angles(
+    source: OrbitSource, site: Site, times_utc: NDArray[np.datetime64], *, refraction: bool = False
+) -> LookAngles:
+    """Azimuth, elevation (deg), range (km) and range rate (km/s) from ``site`` at ``times_utc`` (n,).
+
+    With ``refraction`` the elevation is the apparent one (ITU-R P.834).
+    """
     times = np.atleast_1d(utc_seconds(np.asarray(times_utc)))
     positions, velocities = states_itrf(source, times)
     here = stations([site]).subset(np.zeros(times.size, np.int64))
-    return look(positions, velocities, here)
+    found = look(positions, velocities, here)
+    if refraction:
+        return replace(found, elevation_deg=apparent_deg(found.elevation_deg, site.height_m / 1e3))
+    return found
 
 
 def look(positions_km: Floats, velocities_km_s: Floats, here: Stations) -> LookAngles:
@@ -78,8 +87,13 @@ def sample_windows(
     sites: Mapping[str, Site],
     start_utc: np.datetime64,
     step_s: float = 10.0,
+    *,
+    refraction: bool = False,
 ) -> Samples:
-    """Pointing along every row of ``windows``, in its order: at AOS, every ``step_s`` from there, and at LOS."""
+    """Pointing along every row of ``windows``, in its order: at AOS, every ``step_s`` from there, and at LOS.
+
+    With ``refraction`` elevations are apparent (ITU-R P.834), without it geometric.
+    """
     origin = float(utc_seconds(start_utc))
     aos = utc_seconds(windows["aos_utc"].to_numpy()) - origin
     los = utc_seconds(windows["los_utc"].to_numpy()) - origin
@@ -105,4 +119,7 @@ def sample_windows(
             columns, (found.azimuth_deg, found.elevation_deg, found.range_km, found.range_rate_km_s), strict=True
         ):
             column[pick] = values
+    if refraction:
+        heights = np.array([site.height_m / 1e3 for site in sites.values()])
+        columns[1] = apparent_deg(columns[1], heights[site_index[row]])
     return Samples(time, columns[0], columns[1], columns[2], columns[3], offsets)

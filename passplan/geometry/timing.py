@@ -7,32 +7,16 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+import pandas as pd
 from numpy.typing import NDArray
 
-from passplan.geometry.regimes import MU_KM3_S2, OrbitClass, orbit_class, semi_major_axis_km
+from passplan.geometry.regimes import MU_KM3_S2, orbit_class, semi_major_axis_km
 from passplan.geometry.timescale import DAY_S, Floats, utc_seconds
 from passplan.inputs.ephemeris import Ephemeris
+from passplan.inputs.policy import Timing
 from passplan.inputs.run import OrbitSource
 
-
-@dataclass(frozen=True)
-class Growth:
-    """Along-track sigma: ``at_epoch_km`` and ``per_day_km`` for each day from the epoch, either way."""
-
-    at_epoch_km: float
-    per_day_km: float
-
-
-# Common practice, no source: about 1 km at epoch for low orbits, growing by 1-3 km a day along track
-# (more for the low perigee of eccentric ones, less where there is no drag).
-GROWTH: Mapping[OrbitClass, Growth] = {
-    "low": Growth(1.0, 2.0),
-    "medium": Growth(1.0, 0.5),
-    "geosynchronous": Growth(2.0, 1.0),
-    "eccentric": Growth(2.0, 3.0),
-}
-# An operator's ephemeris: common practice, no source.
-EPHEMERIS_SIGMA_KM = 0.1
+DEFAULT = Timing()
 
 
 @dataclass(frozen=True)
@@ -50,18 +34,30 @@ class TimingModel:
         return np.asarray((self.at_epoch_km[source] + self.per_day_km[source] * age_days) / self.speed_km_s[source])
 
 
-def timing_model(sources: Sequence[OrbitSource], growth: Mapping[OrbitClass, Growth] = GROWTH) -> TimingModel:
+def timing_model(sources: Sequence[OrbitSource], timing: Timing = DEFAULT) -> TimingModel:
     """The model for each source, by its orbit class. Speeds are v = sqrt(mu / a), the mean speed of the orbit."""
-    rows = np.array([_row(source, growth) for source in sources], float).reshape(-1, 3)
+    rows = np.array([_row(source, timing) for source in sources], float).reshape(-1, 3)
     never = np.datetime64("2000-01-01", "us")
     epochs = [never if isinstance(source, Ephemeris) else source.epoch_utc for source in sources]
     return TimingModel(rows[:, 0], rows[:, 1], rows[:, 2], utc_seconds(np.array(epochs, "datetime64[us]")))
 
 
-def _row(source: OrbitSource, growth: Mapping[OrbitClass, Growth]) -> tuple[float, float, float]:
+def off_pointing_deg(windows: pd.DataFrame, orbits: Mapping[str, OrbitSource], timing: Timing = DEFAULT) -> Floats:
+    """Sigma [deg] of the pointing of each row of ``windows``, where its spacecraft is nearest.
+
+    The along-track sigma, seen square on from the least range: arctan(sigma / range) (geometry; elsewhere
+    along the window it is less).
+    """
+    model = timing_model(list(orbits.values()), timing)
+    source = pd.Index(list(orbits)).get_indexer(pd.Index(windows["spacecraft"]))
+    sigma_km = windows["timing_sigma_s"].to_numpy() * model.speed_km_s[source]
+    return np.asarray(np.degrees(np.arctan2(sigma_km, windows["min_range_km"].to_numpy())), float)
+
+
+def _row(source: OrbitSource, timing: Timing) -> tuple[float, float, float]:
     if isinstance(source, Ephemeris):
         radius_km = float(np.linalg.norm(source.segments[0].positions_km[0]))
-        return EPHEMERIS_SIGMA_KM, 0.0, math.sqrt(MU_KM3_S2 / radius_km)
+        return timing.ephemeris_km, 0.0, math.sqrt(MU_KM3_S2 / radius_km)
     motion = source.satrec.no_kozai / 60.0
-    model = growth[orbit_class(motion, source.satrec.ecco)]
+    model = getattr(timing, orbit_class(motion, source.satrec.ecco))
     return model.at_epoch_km, model.per_day_km, math.sqrt(MU_KM3_S2 / semi_major_axis_km(motion))

@@ -9,16 +9,20 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from passplan.geometry.identity import prefixes, slots, window_ids
-from passplan.geometry.masks import mask_of
+from passplan.geometry.masks import Mask, mask_of, unbent
 from passplan.geometry.passes import Rows, block_rows, joined
+from passplan.geometry.reach import reach_of
+from passplan.geometry.refraction import apparent_deg
 from passplan.geometry.seams import settled, without_seams
 from passplan.geometry.stations import stations
 from passplan.geometry.timescale import datetimes_ms, utc_seconds
-from passplan.geometry.timing import timing_model
+from passplan.geometry.timing import DEFAULT, timing_model
 from passplan.geometry.trajectory import blocks
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.ground import Antenna, Site
+from passplan.inputs.mounts import Mount
+from passplan.inputs.policy import Timing
 from passplan.inputs.run import OrbitSource
 
 COLUMNS = (
@@ -40,20 +44,31 @@ def find_windows(
     start_utc: np.datetime64,
     end_utc: np.datetime64,
     *,
+    mounts: Mapping[str, Mount] | None = None,
+    refraction: bool = False,
+    timing: Timing = DEFAULT,
     progress: Callable[[int, int], None] | None = None,
 ) -> pd.DataFrame:
     """Every window of every spacecraft and antenna in [start_utc, end_utc), ordered by AOS, antenna, spacecraft.
 
-    Elevation is geometric (no refraction, no light time) above the WGS 84 ellipsoid's horizontal plane;
+    Elevation is geometric (no light time) above the WGS 84 ellipsoid's horizontal plane;
     SGP4 with WGS 72 constants, TEME turned to the Earth by GMST with Skyfield's built-in UT1, polar motion
     off. Instants agree with the roots of Skyfield's ``altaz`` to a millisecond, the table's resolution.
-    An object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
+    With ``refraction`` masks and limits hold for elevations as ITU-R P.834 bends them, and the peak is stated
+    so; without it nothing is bent. ``mounts`` (by name) cut windows to where the antenna can point; rates and
+    cables are looked at later, by :mod:`passplan.geometry.survey`. ``timing`` says how sigmas grow. An
+    object that SGP4 gives up on, or whose ephemeris ends, has its last window cut there.
 
     ``progress(done, total)`` counts spacecraft. Columns as ``COLUMNS``; times are ``datetime64[ms]`` in
     UTC, ``clipped`` tells which ends are cut by the horizon, ``element_epoch_utc`` is NaT for an ephemeris.
     """
     start_s, end_s = float(utc_seconds(start_utc)), float(utc_seconds(end_utc))
-    masks = [mask_of(antenna) for antenna in antennas.values()]
+    heights = [sites[antenna.site].height_m / 1e3 if refraction else None for antenna in antennas.values()]
+    masks = [_seen(mask_of(antenna), height) for antenna, height in zip(antennas.values(), heights, strict=True)]
+    reaches = [
+        reach_of((mounts or {}).get(antenna.mount or ""), height)
+        for antenna, height in zip(antennas.values(), heights, strict=True)
+    ]
     places = stations([sites[antenna.site] for antenna in antennas.values()])
     parts: list[Rows] = []
     done: set[int] = set()
@@ -62,7 +77,8 @@ def find_windows(
             share = max(1, _SCENE_SAMPLES // max(1, block.positions_km[0].size))
             for at in range(0, len(masks), share):
                 some = np.arange(at, min(at + share, len(masks)))
-                parts.append(block_rows(block, places.subset(some), [masks[i] for i in some], some, start_s, end_s))
+                limits = [masks[i] for i in some], [reaches[i] for i in some]
+                parts.append(block_rows(block, places.subset(some), limits[0], some, start_s, end_s, limits[1]))
             done.update(block.objects.tolist())
             if progress is not None:
                 progress(len(done), len(orbits))
@@ -74,11 +90,21 @@ def find_windows(
     messages = {i: source for i, source in enumerate(orbits.values()) if isinstance(source, Ephemeris)}
     if messages and rows.spacecraft.size:
         rows = without_seams(settled(rows, messages, places, masks))
-    return _table(rows, orbits, antennas, start_s, end_s)
+    table = _table(rows, orbits, antennas, start_s, end_s, timing)
+    if refraction:
+        height_km = np.array([sites[name].height_m / 1e3 for name in table["site"]])
+        table["peak_elevation_deg"] = apparent_deg(table["peak_elevation_deg"].to_numpy(), height_km)
+    return table
+
+
+def _seen(mask: Mask, height_km: float | None) -> Mask:
+    """The mask for geometric elevations: where there is refraction, objects come over it earlier."""
+    return mask if height_km is None else unbent(mask, height_km)
 
 
 def _table(
-    rows: Rows, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float
+    rows: Rows, orbits: Mapping[str, OrbitSource], antennas: Mapping[str, Antenna], start_s: float, end_s: float,
+    timing: Timing,
 ) -> pd.DataFrame:
     names, antenna_names = list(orbits), list(antennas)
     pair_prefix = [prefix for row in prefixes(names, antenna_names) for prefix in row]
@@ -112,7 +138,7 @@ def _table(
             "min_range_km": rows.range_km,
             "clipped": _words(_CLIPPED, clipped),
             "element_epoch_utc": _epochs(orbits)[rows.spacecraft],
-            "timing_sigma_s": timing_model(list(orbits.values())).sigma_s(rows.spacecraft, aos / 1e3),
+            "timing_sigma_s": timing_model(list(orbits.values()), timing).sigma_s(rows.spacecraft, aos / 1e3),
         },
         columns=list(COLUMNS),
     )

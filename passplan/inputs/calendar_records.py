@@ -10,12 +10,15 @@ from passplan.inputs.records import Instant, Label, Record, Service
 
 
 class Closure(Record):
-    """A half-open interval in which an antenna cannot be used: an ``outage``, or another party's ``booking``."""
+    """A half-open interval in which an antenna cannot be used.
+
+    An ``outage``, another party's ``booking``, or a ``wind_stow``: stowed because of the wind.
+    """
 
     antenna: str
     start_utc: Instant
     end_utc: Instant
-    kind: Literal["outage", "booking"] = "outage"
+    kind: Literal["outage", "booking", "wind_stow"] = "outage"
     note: str = ""
 
     @model_validator(mode="after")

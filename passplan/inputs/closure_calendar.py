@@ -144,7 +144,7 @@ def _closures(
         "antenna": antennas[0],
         "start_utc": _instant(start, zone),
         "end_utc": _instant(end, zone),
-        "kind": "booking" if "booking" in categories else "outage",
+        "kind": _kind(categories),
         "note": shortened(first_value(occurrence, "SUMMARY"), 200),
     }
     closure: Closure | None = checked(Closure, record, file, where, findings)
@@ -170,6 +170,13 @@ def _day_zone(calendar: Any) -> tzinfo | None:
         return ZoneInfo(first_value(calendar, "X-WR-TIMEZONE") or "?")
     except (OSError, ValueError, KeyError):  # an unknown zone is a KeyError, a hostile name one of the others
         return None
+
+
+def _kind(categories: set[str]) -> str:
+    """What the categories say; a calendar of closures without any is one of outages."""
+    if "booking" in categories:
+        return "booking"
+    return "wind_stow" if categories & {"wind_stow", "wind stow"} else "outage"
 
 
 def _instant(moment: date | datetime, zone: tzinfo | None) -> datetime:

@@ -11,6 +11,7 @@ from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.modcods import ModcodTable
+from passplan.inputs.mounts import Mount
 from passplan.inputs.tables import Placed
 
 Radios = Mapping[str, DownlinkRadio | CommandRadio]
@@ -50,6 +51,27 @@ def check_ground(
         _known(item.transmitters, transmitters, file, f"{place}: transmitters", findings)
         if not item.receivers and not item.transmitters:
             findings.problem(file, place, None, "has neither receivers nor transmitters; name at least one")
+
+
+def check_mounts(
+    antennas: Mapping[str, Antenna], mounts: Mapping[str, Mount], file: Path, findings: Findings
+) -> None:
+    """Mounts that antennas name, the beam that a limited mount needs, and elevation limits that leave nothing."""
+    for item in antennas.values():
+        if item.mount is None:
+            continue
+        place = f"antenna {item.name}"
+        _known((item.mount,), mounts, file, f"{place}: mount", findings)
+        mount = mounts.get(item.mount)
+        if mount is None:
+            continue
+        if mount.moves and item.beamwidth_deg is None:
+            remedy = f"missing; mount {mount.name} has limited rates, so add the half-power width of the beam"
+            findings.problem(file, f"{place}: beamwidth_deg", None, remedy)
+        highest = mount.upper_to_deg if mount.kind == "az_el" else None
+        if highest is not None and highest <= item.min_elevation_deg:
+            remedy = f"mount {mount.name} reaches only {highest:g} deg, so nothing is left to see; lower it"
+            findings.problem(file, f"{place}: min_elevation_deg", item.min_elevation_deg, remedy)
 
 
 def check_matches(

@@ -6,7 +6,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
-from passplan.inputs.records import Curve, Instant, Name, Names, Polarisation, Record, check_angles
+from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
 
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
@@ -92,7 +92,8 @@ class Spacecraft(Record):
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
     that the spacecraft names itself: ``elements_file`` (one element set) or ``ephemeris_file`` (an OEM,
-    which takes precedence). Storage starts the horizon with ``start_fill_mb``.
+    which takes precedence). Storage starts the horizon with ``start_fill_mb``. Element sets from before
+    one of ``manoeuvres_utc`` are not used after it, nor those from after it before.
     """
 
     name: Name
@@ -107,6 +108,7 @@ class Spacecraft(Record):
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     last_command_utc: Instant | None = None
+    manoeuvres_utc: Instants = ()
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] | None = None
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] | None = None
 

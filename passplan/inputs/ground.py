@@ -8,7 +8,7 @@ from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
 from pydantic import AfterValidator, Field, model_validator
 
-from passplan.inputs.records import Curve, MaskPoints, Name, Names, Polarisations, Record, check_angles
+from passplan.inputs.records import Curve, MaskPoints, Name, Names, Polarisations, Record, Sectors, check_angles
 from passplan.inputs.transmit import check_transmit
 
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
@@ -120,9 +120,13 @@ class Antenna(Record):
 
     ``mask`` is a table of (azimuth, elevation) points in degrees, joined by straight lines and wrapped
     at north; where it is absent the mask is ``min_elevation_deg`` all round. With both, the higher of
-    the two holds. ``transmit_mask`` and ``transmit_min_elevation_deg`` bound where it may transmit, in the
-    same way. ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted.
-    ``prepare_s`` is kept free before a contact and ``release_s`` after it.
+    the two holds. ``prepare_s`` is kept free before a contact and ``release_s`` after it.
+
+    ``mount`` names the mechanics and ``beamwidth_deg`` the half-power width of the narrowest beam; without
+    them the antenna follows anything. Commands are sent only above the transmit mask (made as the other,
+    and never below it), outside the sectors ``transmit_keep_out`` and further from the geosynchronous arc
+    than ``transmit_arc_keep_out_deg``. Nothing is received nearer to the Sun than ``sun_keep_out_deg``.
+    ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted.
     """
 
     name: Name
@@ -131,8 +135,13 @@ class Antenna(Record):
     transmitters: Names = ()
     min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] = 5.0
     mask: MaskPoints = ()
+    mount: str | None = None
+    beamwidth_deg: Annotated[float, Field(gt=0.0, le=180.0)] | None = None
     transmit_min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] | None = None
     transmit_mask: MaskPoints = ()
+    transmit_keep_out: Sectors = ()
+    transmit_arc_keep_out_deg: Annotated[float, Field(gt=0.0, le=30.0)] | None = None
+    sun_keep_out_deg: Annotated[float, Field(gt=0.0, le=30.0)] | None = None
     wet_radome_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
     prepare_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 60.0
     release_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 30.0
@@ -140,21 +149,30 @@ class Antenna(Record):
 
     @model_validator(mode="after")
     def _consistent(self) -> Antenna:
-        _check_mask(self.mask)
-        _check_mask(self.transmit_mask)
+        for name, points in (("mask", self.mask), ("transmit_mask", self.transmit_mask)):
+            _check_mask(name, points)
+        for first, last, low, high in self.transmit_keep_out:
+            if not (0.0 <= first <= 360.0 and 0.0 <= last <= 360.0):
+                raise ValueError("transmit_keep_out azimuths run from 0 to 360 deg; correct the sector")
+            if not -5.0 <= low < high <= 90.0:
+                raise ValueError("transmit_keep_out elevations rise from -5 to 90 deg; correct the sector")
+        sends = ("transmit_min_elevation_deg", "transmit_mask", "transmit_keep_out", "transmit_arc_keep_out_deg")
+        stated = [name for name in sends if getattr(self, name) not in (None, ())]
+        if stated and not self.transmitters:
+            raise ValueError(f"{stated[0]} is about sending, but there are no transmitters; name one or remove it")
         return self
+
+
+def _check_mask(name: str, points: tuple[tuple[float, float], ...]) -> None:
+    azimuths = [azimuth for azimuth, _ in points]
+    if any(not 0.0 <= azimuth <= 360.0 for azimuth in azimuths):
+        raise ValueError(f"{name} azimuths run from 0 to 360 deg; correct the table")
+    if any(not -5.0 <= elevation < 90.0 for _, elevation in points):
+        raise ValueError(f"{name} elevations lie from -5 to 90 deg; correct the table")
+    if any(b < a for a, b in pairwise(azimuths)):
+        raise ValueError(f"{name} azimuths must not decrease; sort the table")
 
 
 def _check_band(low_mhz: float, high_mhz: float) -> None:
     if low_mhz > high_mhz:
         raise ValueError(f"low_mhz {low_mhz:g} is above high_mhz {high_mhz:g}; swap them")
-
-
-def _check_mask(mask: tuple[tuple[float, float], ...]) -> None:
-    azimuths = [azimuth for azimuth, _ in mask]
-    if any(not 0.0 <= azimuth <= 360.0 for azimuth in azimuths):
-        raise ValueError("mask azimuths run from 0 to 360 deg; correct the table")
-    if any(not -5.0 <= elevation < 90.0 for _, elevation in mask):
-        raise ValueError("mask elevations lie from -5 to 90 deg; correct the table")
-    if any(b < a for a, b in pairwise(azimuths)):
-        raise ValueError("mask azimuths must not decrease; sort the table")

@@ -15,12 +15,13 @@ from pydantic import TypeAdapter
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
-from passplan.inputs.crosscheck import check_fleet, check_ground, check_matches, check_requests
+from passplan.inputs.crosscheck import check_fleet, check_ground, check_matches, check_mounts, check_requests
 from passplan.inputs.elements.resolve import ElementsError, resolve_orbits
 from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Radio, Spacecraft
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.modcods import ModcodTable, builtin_names, builtin_table, read_modcod_table
+from passplan.inputs.mounts import Mount
 from passplan.inputs.pfd import PfdLimit, builtin_pfd_limits, read_pfd_limits
 from passplan.inputs.policy import Policy
 from passplan.inputs.reader import Reader
@@ -44,6 +45,7 @@ class _Ground:
     antennas: dict[str, Antenna]
     receivers: dict[str, Receiver]
     transmitters: dict[str, Transmitter]
+    mounts: dict[str, Mount]
 
 
 def load_run(
@@ -94,7 +96,7 @@ def load_run(
     return Run(
         name=settings.name, start_utc=start_utc, end_utc=end_utc, spacecraft=fleet.spacecraft, radios=fleet.radios,
         sites=sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
-        modcod_tables=fleet.tables, closures=closures, policy=rules,
+        mounts=ground.mounts, modcod_tables=fleet.tables, closures=closures, policy=rules,
         # A request file holds many days; one whose span misses this horizon is another day's business.
         requests=tuple(
             r for r in requests.values() if datetime64(r.latest_utc) > start_utc and datetime64(r.earliest_utc) < end_utc
@@ -176,17 +178,19 @@ def _read_fleet(path: Path, reader: Reader, findings: Findings) -> _Fleet:
 def _read_ground(path: Path, reader: Reader, findings: Findings) -> _Ground:
     document = read_toml(path, reader, findings, "ground")
     if document is None:
-        return _Ground({}, {}, {}, {})
-    reject_unknown(document, ("operator", "site", "receiver", "transmitter", "antenna"), path, findings)
+        return _Ground({}, {}, {}, {}, {})
+    reject_unknown(document, ("operator", "site", "receiver", "transmitter", "mount", "antenna"), path, findings)
     ground = _Ground(
         sites=_records(document, "site", Site, path, reader, findings),
         receivers=_records(document, "receiver", Receiver, path, reader, findings),
         transmitters=_records(document, "transmitter", Transmitter, path, reader, findings),
         antennas=_records(document, "antenna", Antenna, path, reader, findings),
+        mounts=_records(document, "mount", Mount, path, reader, findings),
     )
     if not document.get("antenna"):
         findings.problem(path, "antenna", None, "the ground has no antenna; add at least one [[antenna]]")
     check_ground(ground.antennas, ground.sites, ground.receivers, ground.transmitters, path, findings)
+    check_mounts(ground.antennas, ground.mounts, path, findings)
     return ground
 
 

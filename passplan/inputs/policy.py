@@ -9,6 +9,27 @@ from pydantic import Field, model_validator
 from passplan.inputs.records import Record
 
 
+class Growth(Record):
+    """Along-track sigma of an orbit: ``at_epoch_km``, and ``per_day_km`` more for each day from it, either way."""
+
+    at_epoch_km: Annotated[float, Field(ge=0.0, le=1_000.0)]
+    per_day_km: Annotated[float, Field(ge=0.0, le=1_000.0)]
+
+
+class Timing(Record):
+    """How fast element sets of each orbit class go stale; ``ephemeris_km`` is the sigma of an operator's ephemeris.
+
+    Common practice, no source: about 1 km at epoch for low orbits, growing by 1-3 km a day along track
+    (more for the low perigee of eccentric ones, less where there is no drag).
+    """
+
+    low: Growth = Growth(at_epoch_km=1.0, per_day_km=2.0)
+    medium: Growth = Growth(at_epoch_km=1.0, per_day_km=0.5)
+    geosynchronous: Growth = Growth(at_epoch_km=2.0, per_day_km=1.0)
+    eccentric: Growth = Growth(at_epoch_km=2.0, per_day_km=3.0)
+    ephemeris_km: Annotated[float, Field(ge=0.0, le=1_000.0)] = 0.1
+
+
 class Policy(Record):
     """Defaults are meant to be safe; a config states only what differs.
 
@@ -30,6 +51,10 @@ class Policy(Record):
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 3.0
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 14.0
     when_elements_fail: Literal["leave_out", "stop"] = "leave_out"
+    refraction: Literal["off", "itu_p834"] = "off"
+    off_pointing_beamwidths: Annotated[float, Field(gt=0.0, le=1.0)] = 0.25
+    guard_sigmas: Annotated[float, Field(ge=0.0, le=10.0)] = 0.0
+    timing: Timing = Timing()
     cut_grid_s: Annotated[int, Field(ge=0, le=3_600)] = 180
     options_per_window: Annotated[int, Field(ge=1, le=200)] = 12
     gap: Annotated[float, Field(ge=0.0, le=1.0)] = 0.005

@@ -71,14 +71,27 @@ def check_angles(points: tuple[tuple[float, float], ...], most_deg: float) -> No
         raise ValueError("the angles of the curve must rise; sort the curve")
 
 
+def _sectors(value: Any) -> Any:
+    """A CSV cell holds sectors as ``100:140:0:12``, azimuths from and to, elevations from and to, in degrees."""
+    if isinstance(value, str):
+        try:
+            return tuple(tuple(float(x) for x in sector.split(":")) for sector in _listed(value))
+        except ValueError:
+            raise ValueError("write sectors as azimuth:azimuth:elevation:elevation, as 100:140:0:12") from None
+    return value
+
+
 NAME_PATTERN = r"^\w[\w \-]*$"
 
 Instant = Annotated[datetime, BeforeValidator(parse_instant)]
+Instants = Annotated[tuple[Instant, ...], BeforeValidator(_listed)]
 Names = Annotated[tuple[str, ...], BeforeValidator(_listed)]
 Polarisations = Annotated[tuple[Polarisation, ...], BeforeValidator(_listed)]
 MaskPoints = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_mask_points)]
 Curve = Annotated[tuple[tuple[float, float], ...], BeforeValidator(_pairs)]
 """(angle in degrees, value) points, joined by straight lines."""
+# Azimuths from and to (clockwise, across north if from is the larger), elevations from and to.
+Sectors = Annotated[tuple[tuple[float, float, float, float], ...], BeforeValidator(_sectors)]
 # A name goes into file names, identifiers (joined by dots) and tables: no dots, slashes or invisible characters.
 Name = Annotated[str, Field(min_length=1, max_length=40, pattern=NAME_PATTERN)]
 

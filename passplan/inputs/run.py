@@ -14,6 +14,7 @@ from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.modcods import ModcodTable
+from passplan.inputs.mounts import Mount
 from passplan.inputs.pfd import PfdLimit, builtin_pfd_limits
 from passplan.inputs.policy import Policy
 from passplan.inputs.reader import ReadFile
@@ -48,8 +49,14 @@ class Run:
     left_out: Mapping[str, str]
     elements: pd.DataFrame
     pfd_limits: tuple[PfdLimit, ...] = field(default_factory=builtin_pfd_limits)
+    mounts: Mapping[str, Mount] = field(default_factory=dict)
     warnings: tuple[str, ...] = ()
     files: tuple[ReadFile, ...] = field(default=(), repr=False)
+
+    def mount_of(self, antenna: str) -> Mount | None:
+        """The mechanics of an antenna, None where they do not limit it."""
+        name = self.antennas[antenna].mount
+        return None if name is None else self.mounts[name]
 
     @property
     def horizon_s(self) -> int:

@@ -43,8 +43,7 @@ class Chain:
     Everything of a budget that does not move: losses are positive; ``rate_hz`` is the symbol rate
     (command: the bit rate). ``rungs`` are in falling order of rate, each needing less than the one before.
     ``pattern`` is the loss of a fixed antenna aboard against the angle off nadir, empty where it is steered.
-    ``receiver`` (downlinks) holds what the noise is made of; ``transmit_bounds`` (commands)
-    is the antenna with the mask it may transmit above in place of its own, None where that is its own.
+    ``receiver`` (downlinks) holds what the noise is made of.
     """
 
     radio: str
@@ -65,7 +64,6 @@ class Chain:
     wet_radome_loss_db: float = 0.0
     pattern: tuple[tuple[float, float], ...] = ()
     receiver: Receiver | None = None
-    transmit_bounds: Antenna | None = None
     control: RateControl = RateControl()
 
     @cached_property
@@ -166,15 +164,6 @@ def rungs_of(radio: DownlinkRadio, table: ModcodTable) -> tuple[Rung, ...]:
     )
 
 
-def transmit_bounds(antenna: Antenna) -> Antenna | None:
-    """The antenna with its transmit mask in place of its mask; None where it may transmit wherever it may point."""
-    if antenna.transmit_min_elevation_deg is None and not antenna.transmit_mask:
-        return None
-    least = antenna.min_elevation_deg
-    floor = least if antenna.transmit_min_elevation_deg is None else antenna.transmit_min_elevation_deg
-    return antenna.model_copy(update={"mask": antenna.transmit_mask, "min_elevation_deg": floor})
-
-
 def _ionosphere_db(run: Run, frequency_mhz: float) -> float:
     """The policy's stated allowance for ionospheric scintillation and Faraday rotation, below 1 GHz only."""
     return run.policy.ionospheric_allowance_db if frequency_mhz < 1_000.0 else 0.0
@@ -223,5 +212,4 @@ def _command(run: Run, ground: Antenna, radio: CommandRadio, transmitter: Transm
         ionospheric_loss_db=_ionosphere_db(run, radio.frequency_mhz),
         wet_radome_loss_db=ground.wet_radome_loss_db,
         pattern=radio.pattern,
-        transmit_bounds=transmit_bounds(ground),
     )

@@ -35,8 +35,8 @@ class SendPiece:
 class DownlinkChoice:
     """How one contact sends: whole seconds from the horizon's start, net user data, least margin [dB].
 
-    ``modcod`` is ``stepped`` where the pieces use several; ``rate_mbps`` is the mean while sending. Without
-    ``pieces`` it is sent in one.
+    ``modcod`` is ``stepped`` where the pieces use several; ``rate_mbps`` is the mean while sending. The first
+    piece starts at ``send_start_s``, the last ends at ``send_end_s``. Without ``pieces`` it is sent in one.
     """
 
     radio: str
@@ -78,7 +78,7 @@ class Track:
 
     ``time_s`` (from the horizon's start) and ``quality_db`` (Es/N0 or Eb/N0 after implementation loss)
     have one entry per sample; ``rung``, ``first_s`` and ``last_s`` one per stretch, in rising rung.
-    ``margin_db`` is what a rung must hold.
+    ``margin_db`` is what a rung must hold; ``lost`` are intervals in which nothing passes, in time order.
     """
 
     chain: Chain
@@ -88,6 +88,7 @@ class Track:
     first_s: Floats
     last_s: Floats
     margin_db: float = 0.0
+    lost: tuple[tuple[float, float], ...] = ()
 
     @cached_property
     def steps(self) -> tuple[Step, ...]:
@@ -119,13 +120,24 @@ class Track:
         return holds.tolist(), np.maximum(climbs, holds).tolist()
 
     def stepped(self, start_s: int, end_s: int) -> list[Step]:
-        """The steps of a contact [``start_s``, ``end_s``), after acquisition."""
+        """The steps of a contact [``start_s``, ``end_s``), after acquisition and without what is lost."""
         cut = [
-            Step(max(step.start_s, math.ceil(max(step.lock_s, start_s) + self.chain.acquisition_s - _NOISE_S)),
-                 min(step.end_s, end_s), step.rung, step.lock_s)
+            Step(max(step.start_s, begin), min(step.end_s, end), step.rung, step.lock_s)
             for step in self.steps
+            for begin, end in self.spans(max(step.lock_s, start_s), end_s)
         ]
         return [step for step in cut if step.end_s > step.start_s]
+
+    def spans(self, first_s: float, last_s: float) -> tuple[tuple[int, int], ...]:
+        """Whole seconds of sending in a stretch, acquired at its start and again after each interval lost."""
+        found = []
+        for gap_s, resume_s in (*self.lost, (last_s, last_s)):
+            begin = math.ceil(first_s + self.chain.acquisition_s - _NOISE_S)
+            end = math.floor(min(gap_s, last_s) + _NOISE_S)
+            if end > begin:
+                found.append((begin, end))
+            first_s = max(first_s, resume_s)
+        return tuple(found)
 
     def least_quality_db(self, start_s: float, end_s: float) -> float:
         """The least quality from ``start_s`` to ``end_s``, along straight lines between samples [dB]."""
@@ -139,12 +151,23 @@ class Track:
 class _Sending:
     track: Track
     rung: Rung
-    start_s: int
-    end_s: int
+    pieces: tuple[tuple[int, int], ...]
+
+    @property
+    def start_s(self) -> int:
+        return self.pieces[0][0]
+
+    @property
+    def end_s(self) -> int:
+        return self.pieces[-1][1]
+
+    @property
+    def usable_s(self) -> int:
+        return sum(end - start for start, end in self.pieces)
 
     @property
     def margin_db(self) -> float:
-        return self.track.least_quality_db(self.start_s, self.end_s) - self.rung.required_db
+        return min(self.track.least_quality_db(*piece) for piece in self.pieces) - self.rung.required_db
 
 
 @dataclass(frozen=True, eq=False)
@@ -158,8 +181,9 @@ class DownlinkProfile:
 
         Seconds count from the horizon's start. Sending begins ``acquisition_s`` after both the contact
         and the signal have begun, and lasts while the margin holds without a break; it is rounded inward
-        to whole seconds. Of equal volumes, the modcod with the lower requirement wins. A radio that adapts
-        its rate sends the steps of the window that fall into the contact instead.
+        to whole seconds. Seconds that the track loses are left out, and the signal is acquired anew after
+        them. Of equal volumes, the modcod with the lower requirement wins. A radio that adapts its rate sends
+        the steps of the window that fall into the contact instead.
         """
         stepping = tuple(track for track in self.tracks if track.chain.control.kind == "adaptive")
         level = tuple(track for track in self.tracks if track.chain.control.kind != "adaptive")
@@ -172,11 +196,12 @@ class DownlinkProfile:
         found = _most(tracks, start_s, end_s)
         if found is None:
             return None
-        chain, usable_s = found.track.chain, found.end_s - found.start_s
+        chain, usable_s = found.track.chain, found.usable_s
         return DownlinkChoice(
             chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation, found.rung.name,
             found.rung.rate_mbps, found.start_s, found.end_s, usable_s,
             found.rung.rate_mbps * usable_s / 8.0, found.margin_db,
+            tuple(SendPiece(a, b, found.rung.name, found.rung.rate_mbps) for a, b in found.pieces),
         )
 
 
@@ -189,15 +214,15 @@ class CommandProfile:
     def best(self, start_s: int, end_s: int) -> CommandChoice | None:
         """When a contact [``start_s``, ``end_s``) can command, or None if for less than a second.
 
-        The rules are those of :meth:`DownlinkProfile.best`.
+        The rules are those of :meth:`DownlinkProfile.best`, but commands go in one piece, the longest.
         """
-        found = _most(self.tracks, start_s, end_s)
+        found = _most(self.tracks, start_s, end_s, unbroken=True)
         if found is None:
             return None
         chain = found.track.chain
         return CommandChoice(
             chain.radio, chain.partner, chain.frequency_mhz, chain.polarisation,
-            found.start_s, found.end_s, found.end_s - found.start_s, found.margin_db,
+            found.start_s, found.end_s, found.usable_s, found.margin_db,
         )
 
 
@@ -229,7 +254,7 @@ def _stepped(track: Track, start_s: int, end_s: int) -> DownlinkChoice | None:
     )
 
 
-def _most(tracks: tuple[Track, ...], start_s: int, end_s: int) -> _Sending | None:
+def _most(tracks: tuple[Track, ...], start_s: int, end_s: int, *, unbroken: bool = False) -> _Sending | None:
     """The sending of greatest volume, over all tracks and rungs."""
     best: _Sending | None = None
     most = 0.0
@@ -242,11 +267,12 @@ def _most(tracks: tuple[Track, ...], start_s: int, end_s: int) -> _Sending | Non
             # Rates only fall from here on, so nothing that follows can bring more.
             if rung.rate_mbps * ceiling_s < most:
                 break
-            begin = math.ceil(max(first_s, start_s) + acquisition_s - _NOISE_S)
-            end = math.floor(min(last_s, end_s) + _NOISE_S)
-            volume = rung.rate_mbps * (end - begin)
-            if end > begin and (best is None or volume > most or (volume == most and _surer(track, rung, best))):
-                best, most = _Sending(track, rung, begin, end), volume
+            pieces = track.spans(max(first_s, start_s), min(last_s, end_s))
+            if unbroken:
+                pieces = tuple(sorted(pieces, key=lambda piece: piece[0] - piece[1])[:1])
+            volume = rung.rate_mbps * sum(end - begin for begin, end in pieces)
+            if pieces and (best is None or volume > most or (volume == most and _surer(track, rung, best))):
+                best, most = _Sending(track, rung, pieces), volume
     return best
 
 

@@ -8,13 +8,13 @@ These are long-term statistics, not a forecast; a rain rate stated for the day d
 
 from __future__ import annotations
 
-import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
 
+from passplan.geometry.losses import Losses
 from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.budget import Floats
@@ -53,9 +53,10 @@ class ExpectedVolume:
 
 
 def expected_volumes(
-    run: Run, windows: pd.DataFrame, samples: Samples, contacts: Sequence[PlannedContact]
+    run: Run, windows: pd.DataFrame, samples: Samples, contacts: Sequence[PlannedContact],
+    losses: Losses | None = None,
 ) -> list[ExpectedVolume]:
-    """One entry for each contact, in order; ``samples`` are those of ``windows``.
+    """One entry for each contact, in order; ``samples`` and ``losses`` are those of ``windows``.
 
     Volumes are those of the link, whatever is aboard. P10 is the volume that a tenth of the year does not reach.
     """
@@ -64,9 +65,11 @@ def expected_volumes(
     rows = sorted({contact.window for contact in contacts})
     place = {row: k for k, row in enumerate(rows)}
     own_windows, own_samples = windows.iloc[rows].reset_index(drop=True), _take(samples, rows)
+    lost = () if losses is None else losses.rows
+    own_losses = Losses(tuple(replace(loss, window=place[loss.window]) for loss in lost if loss.window in place))
     volumes_mb = np.zeros((len(contacts), len(PERCENT_NODES)))
     for k, percent in enumerate(PERCENT_NODES):
-        links = link_profiles(under_percent(run, percent), own_windows, own_samples)
+        links = link_profiles(under_percent(run, percent), own_windows, own_samples, own_losses)
         for c, contact in enumerate(contacts):
             volumes_mb[c, k] = carried_mb(links[place[contact.window]].downlink, contact)
     return [_summary(row) for row in volumes_mb]
@@ -93,8 +96,8 @@ def carried_mb(profile: DownlinkProfile | None, contact: PlannedContact) -> floa
             track.rung.tolist(), track.first_s.tolist(), track.last_s.tolist(), strict=True
         ):
             if track.chain.rungs[rung].name == contact.modcod:
-                begin = math.ceil(max(first_s, contact.start_s) + track.chain.acquisition_s - 1e-6)
-                longest_s = max(longest_s, math.floor(min(last_s, contact.end_s) + 1e-6) - begin)
+                spans = track.spans(max(first_s, contact.start_s), min(last_s, contact.end_s))
+                longest_s = max(longest_s, sum(end - begin for begin, end in spans))
     return contact.rate_mbps * longest_s / 8.0
 
 

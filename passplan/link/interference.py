@@ -147,7 +147,8 @@ def _of_pair(
     wanted = LookAngles(
         samples.azimuth_deg[pick], samples.elevation_deg[pick], samples.range_km[pick], samples.range_rate_km_s[pick]
     )
-    other = look_angles(run.orbits[interferer], site, _instants(run, time_s))
+    refraction = run.policy.refraction != "off"
+    other = look_angles(run.orbits[interferer], site, _instants(run, time_s), refraction=refraction)
     away = pointing_vectors(wanted.azimuth_deg, wanted.elevation_deg) - pointing_vectors(
         other.azimuth_deg, other.elevation_deg
     )

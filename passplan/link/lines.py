@@ -46,7 +46,7 @@ def budget_lines(run: Run, spacecraft: str, antenna: str, at_utc: np.datetime64)
         link = f"{chain.direction} {chain.radio} via {chain.partner}"
         path = path_terms(run, antenna, chain, look, times_utc)
         terms = (
-            *_geometry(look), *_radiated(run, chain), *_signal(run, chain, path), *_demodulation(run, chain, path),
+            *_geometry(run, look), *_radiated(run, chain), *_signal(run, chain, path), *_demodulation(run, chain, path),
             *_ground_flux(run, chain, path), *_notices(run, chain, path),
         )
         lines.extend(BudgetLine(link, *term) for term in terms)
@@ -75,7 +75,8 @@ _Term = tuple[str, float | str, str, str]
 
 
 def _look(run: Run, spacecraft: str, antenna: str, times_utc: NDArray[np.datetime64]) -> LookAngles:
-    return look_angles(run.orbits[spacecraft], run.sites[run.antennas[antenna].site], times_utc)
+    site = run.sites[run.antennas[antenna].site]
+    return look_angles(run.orbits[spacecraft], site, times_utc, refraction=run.policy.refraction != "off")
 
 
 def _pick(rungs: tuple[Rung, ...], quality_db: float, margin_db: float) -> tuple[Rung, bool]:
@@ -86,9 +87,10 @@ def _pick(rungs: tuple[Rung, ...], quality_db: float, margin_db: float) -> tuple
     return rungs[-1], False
 
 
-def _geometry(look: LookAngles) -> Iterator[_Term]:
+def _geometry(run: Run, look: LookAngles) -> Iterator[_Term]:
     elevation = float(look.elevation_deg[0])
-    note = "geometric, no refraction" if elevation >= 0.0 else "below the horizon: there is no link"
+    seen = "geometric, no refraction" if run.policy.refraction == "off" else "apparent, refraction by ITU-R P.834"
+    note = seen if elevation >= 0.0 else "below the horizon: there is no link"
     yield "azimuth", float(look.azimuth_deg[0]), "deg", "from true north"
     yield "elevation", elevation, "deg", note
     yield "slant range", float(look.range_km[0]), "km", "orbit and site"

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
 
-from passplan.geometry.masks import mask_of
+from passplan.geometry.losses import Losses
 from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import SkyPath, skies
@@ -18,7 +18,7 @@ from passplan.link.chains import Chain, chains_between
 from passplan.link.choice import CommandProfile, DownlinkProfile, Track, WindowLink
 from passplan.link.noise import dish_of
 from passplan.link.slant import SlantTable, look_up, sky_path, slant_table
-from passplan.link.stretches import Floats, Ints, common_stretches, find_stretches
+from passplan.link.stretches import Floats, Ints, find_stretches
 from passplan.link.sun_noise import nearest_approach_deg, sun_loss_db
 
 __all__ = ["CommandProfile", "DownlinkProfile", "WindowLink", "link_profiles"]
@@ -49,14 +49,17 @@ class _Slants:
         return [slant_table(self.chains[k], self.paths[k], found[self.paths[k]]) for k in numbers]
 
 
-def link_profiles(run: Run, windows: pd.DataFrame, samples: Samples) -> list[WindowLink]:
+def link_profiles(
+    run: Run, windows: pd.DataFrame, samples: Samples, losses: Losses | None = None
+) -> list[WindowLink]:
     """The links of each window, in the order of ``windows``.
 
     ``samples`` are those of the same windows in the same order. The quality of a sample is the chain's
     merit less free-space loss (P.525), what depends on elevation (air, radome, noise), a fixed antenna's
     pattern, and the Sun where the policy counts it; a rung is usable where the quality exceeds its
-    requirement by the policy's ``required_margin_db``.
+    requirement by the policy's ``required_margin_db``. Nothing is sent in the ``losses``.
     """
+    lost = losses or Losses()
     tracks: dict[int, list[Track]] = defaultdict(list)
     every, slants = _jobs(run, windows)
     for needs_db, jobs in _by_ladder(every).items():
@@ -64,7 +67,7 @@ def link_profiles(run: Run, windows: pd.DataFrame, samples: Samples) -> list[Win
         for block in _blocks(jobs, samples.offsets):
             for job, track in zip(block, _evaluate(run, block, slants, thresholds_db, samples), strict=True):
                 if track.rung.size:
-                    tracks[job.window].append(track)
+                    tracks[job.window].append(replace(track, lost=lost.of(job.window, job.chain.direction)))
     return [_window_link(tracks.get(i, ())) for i in range(len(windows))]
 
 
@@ -127,8 +130,7 @@ def _evaluate(
     time_s = samples.time_s[pick]
     found = find_stretches(time_s, quality_db, offsets, thresholds_db)
     for k, job in enumerate(jobs):
-        stretches = _permitted(job, samples, found.of(k))
-        yield Track(job.chain, time_s[owns[k]], quality_db[owns[k]], *stretches, run.policy.required_margin_db)
+        yield Track(job.chain, time_s[owns[k]], quality_db[owns[k]], *found.of(k), run.policy.required_margin_db)
 
 
 def _moving_loss_db(run: Run, path: SkyPath, job: _Job, table: SlantTable, samples: Samples) -> Floats | float:
@@ -143,7 +145,10 @@ def _moving_loss_db(run: Run, path: SkyPath, job: _Job, table: SlantTable, sampl
         width_deg = dish_of(chain.receiver, chain.frequency_mhz)[1]
         if width_deg is not None:
             times = run.start_utc + np.rint(samples.time_s[own] * 1e3).astype("timedelta64[ms]")
-            separation = nearest_approach_deg(path.site, times, samples.azimuth_deg[own], samples.elevation_deg[own])
+            separation = nearest_approach_deg(
+                path.site, times, samples.azimuth_deg[own], samples.elevation_deg[own],
+                refraction=run.policy.refraction != "off",
+            )
             first = np.zeros(separation.size, np.int64)
             noise_k = look_up(table.noise_k[None, :], first, samples.elevation_deg[own])
             feeder_db = chain.receiver.feeder_loss_db
@@ -155,17 +160,6 @@ def pattern_loss_db(pattern: Sequence[tuple[float, float]], angle_deg: Floats) -
     """Loss [dB] of a fixed antenna at angles off its boresight [deg], by straight lines between its points."""
     angles, losses = np.array(pattern, np.float64).T
     return np.asarray(np.interp(angle_deg, angles, losses))
-
-
-def _permitted(job: _Job, samples: Samples, found: tuple[Ints, Floats, Floats]) -> tuple[Ints, Floats, Floats]:
-    """The stretches that lie where the ground may transmit."""
-    if job.chain.transmit_bounds is None:
-        return found
-    own = slice(samples.offsets[job.window], samples.offsets[job.window + 1])
-    mask_deg = mask_of(job.chain.transmit_bounds).elevation_deg(samples.azimuth_deg[own])
-    clear_deg, time_s = samples.elevation_deg[own] - mask_deg, samples.time_s[own]
-    clear = find_stretches(time_s, clear_deg, np.array([0, time_s.size]), np.zeros(1))
-    return common_stretches(found, clear)
 
 
 def _window_link(tracks: Sequence[Track]) -> WindowLink:

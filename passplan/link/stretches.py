@@ -41,21 +41,6 @@ class Stretches:
         return self.rung[own], self.first_s[own], self.last_s[own]
 
 
-def common_stretches(found: tuple[Ints, Floats, Floats], within: Stretches) -> tuple[Ints, Floats, Floats]:
-    """The parts of one track's stretches (rung, begin, end) that lie within any stretch of ``within``."""
-    parts = [
-        (rung, max(first_s, begin_s), min(last_s, end_s))
-        for rung, first_s, last_s in zip(*(column.tolist() for column in found), strict=True)
-        for begin_s, end_s in zip(within.first_s.tolist(), within.last_s.tolist(), strict=True)
-    ]
-    kept = [part for part in parts if part[2] >= part[1]]
-    return (
-        np.array([part[0] for part in kept], np.int64),
-        np.array([part[1] for part in kept], np.float64),
-        np.array([part[2] for part in kept], np.float64),
-    )
-
-
 def find_stretches(time_s: Floats, quality_db: Floats, offsets: Ints, thresholds_db: Floats) -> Stretches:
     """Every stretch of every track at or above each threshold.
 

@@ -10,21 +10,33 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from passplan.geometry.refraction import apparent_deg
 from passplan.geometry.sun import local_axes, pointing_vectors, sun_direction
 from passplan.inputs.ground import Site
 from passplan.link.budget import Floats, sun_noise_k
 
 
 def nearest_approach_deg(
-    site: Site, times_utc: NDArray[np.datetime64], azimuth_deg: Floats, elevation_deg: Floats
+    site: Site, times_utc: NDArray[np.datetime64], azimuth_deg: Floats, elevation_deg: Floats, *,
+    refraction: bool = False,
 ) -> Floats:
     """Least angle [deg] between the Sun and the pointing from the sample before to the sample after, shape (n,).
 
-    The Sun below the horizon disturbs nobody: 180 deg.
+    The Sun below the horizon disturbs nobody: 180 deg. With ``refraction`` the pointing is apparent.
     """
-    sun = sun_direction(times_utc) @ local_axes(site).T
+    sun = sun_seen(site, times_utc, refraction=refraction)
     angle = closest_deg(pointing_vectors(azimuth_deg, elevation_deg) - sun)
     return np.asarray(np.where(sun[:, 2] > 0.0, angle, 180.0))
+
+
+def sun_seen(site: Site, times_utc: NDArray[np.datetime64], *, refraction: bool = False) -> Floats:
+    """Unit vectors (east, north, up), shape (n, 3), to the Sun; with ``refraction`` where it appears (P.834)."""
+    sun = sun_direction(times_utc) @ local_axes(site).T
+    if not refraction:
+        return np.asarray(sun)
+    elevation_deg = np.degrees(np.arcsin(np.clip(sun[:, 2], -1.0, 1.0)))
+    azimuth_deg = np.degrees(np.arctan2(sun[:, 0], sun[:, 1]))
+    return pointing_vectors(azimuth_deg, apparent_deg(elevation_deg, site.height_m / 1e3))
 
 
 def closest_deg(away: Floats) -> Floats:

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from passplan.geometry.pointing import LookAngles
-from passplan.geometry.sun import local_axes, pointing_vectors, sun_direction
+from passplan.geometry.sun import pointing_vectors
 from passplan.inputs.pfd import limits_at
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import Attenuations, SkyPath, skies
@@ -20,7 +20,7 @@ from passplan.link.chains import Chain
 from passplan.link.noise import dish_of, figure_drop_db, system_noise_at_k
 from passplan.link.profiles import pattern_loss_db
 from passplan.link.slant import sky_path
-from passplan.link.sun_noise import sun_loss_db
+from passplan.link.sun_noise import sun_loss_db, sun_seen
 
 
 @dataclass(frozen=True)
@@ -69,7 +69,7 @@ def path_terms(
         drop_db = figure_drop_db(chain.receiver, elevation_deg, noise_k)
         width_deg = dish_of(chain.receiver, chain.frequency_mhz)[1]
         if run.policy.sun_noise and noise_k is not None and width_deg is not None:
-            separation = _separation_deg(path, look, times_utc)
+            separation = _separation_deg(run, path, look, times_utc)
             feeder_db = chain.receiver.feeder_loss_db
             sun_db = sun_loss_db(chain.frequency_mhz, width_deg, separation, noise_k, feeder_db)
     loss_db = free_space_db + air.total_db + radome_db + pattern_db + drop_db + sun_db
@@ -96,9 +96,9 @@ def flux_density(run: Run, chain: Chain, terms: PathTerms) -> tuple[Floats, Floa
     return density, np.asarray(limit), bandwidth_hz, points[0].source
 
 
-def _separation_deg(path: SkyPath, look: LookAngles, times_utc: NDArray[np.datetime64]) -> Floats:
+def _separation_deg(run: Run, path: SkyPath, look: LookAngles, times_utc: NDArray[np.datetime64]) -> Floats:
     """Angle between the pointing and the Sun at each instant [deg]; 180 where the Sun is below the horizon."""
-    sun = sun_direction(times_utc) @ local_axes(path.site).T
+    sun = sun_seen(path.site, times_utc, refraction=run.policy.refraction != "off")
     away = np.linalg.norm(pointing_vectors(look.azimuth_deg, look.elevation_deg) - sun, axis=1)
     angle = np.degrees(2.0 * np.arcsin(np.clip(away / 2.0, 0.0, 1.0)))
     return np.asarray(np.where(sun[:, 2] > 0.0, angle, 180.0))

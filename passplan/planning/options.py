@@ -190,7 +190,8 @@ def _dominates(b: Candidate, a: Candidate) -> bool:
     if a.downlink is None:
         return True
     return (b.downlink is not None and b.downlink.send_start_s <= a.downlink.send_start_s
-            and b.downlink.send_end_s >= a.downlink.send_end_s and b.downlink.rate_mbps >= a.downlink.rate_mbps)
+            and b.downlink.send_end_s >= a.downlink.send_end_s and b.downlink.rate_mbps >= a.downlink.rate_mbps
+            and b.downlink.usable_s >= a.downlink.usable_s)
 
 
 def _subtract(start_s: int, end_s: int, blocked: Sequence[tuple[int, int]]) -> list[tuple[int, int]]:

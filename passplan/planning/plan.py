@@ -21,6 +21,7 @@ from passplan.planning.problem import Antennas, CommandNeed, Conflict, Fleet, Li
 from passplan.planning.result import PlanResult
 from passplan.planning.rules import all_terms
 from passplan.planning.tables import contacts_table, segments_table
+from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
 
 Report = Callable[[str, int, int], None]
@@ -45,7 +46,8 @@ def make_plan(
 
     ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. Spacecraft
     without an orbit take no part. The policy's time limit covers everything from here to the chosen
-    contacts. ``pairs`` are contacts that would disturb each other. ``progress(stage, done_s, total_s)`` is called as value, bound and gap move.
+    contacts. ``pairs`` are contacts that would disturb each other. ``progress(stage, done_s, total_s)`` is
+    called as value, bound and gap move.
     """
     policy = run.policy
     clock = Clock(policy.time_limit_s)
@@ -91,7 +93,8 @@ def build_problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),
         commands=_command_needs(run, fleet), conflicts=tuple(_conflict(fleet, antennas, pair) for pair in pairs),
-        spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money)
+        spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
+        too_tight=too_tight(run, windows, antennas, option_set.options))
     return problem, option_set
 
 

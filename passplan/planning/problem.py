@@ -158,7 +158,8 @@ class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
     The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
-    MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``).
+    MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``). ``too_tight`` (k, 2)
+    are pairs of options of one antenna, the earlier first, between which it cannot turn in time.
     """
 
     horizon_s: int
@@ -171,9 +172,12 @@ class Problem:
     conflicts: tuple[Conflict, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
+    too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
 
     def with_options(self, options: Options) -> Problem:
-        """The same problem over other options."""
+        """The same problem over other options; raises ValueError where pairs of the old ones are named."""
+        if len(self.too_tight):
+            raise ValueError("too_tight names pairs of options by number; make the problem anew")
         return replace(self, options=options)
 
 

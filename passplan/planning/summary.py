@@ -42,6 +42,12 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             {"name": t.name, "sense": t.sense, "value": t.value, "bound": _finite(t.bound), "gap": _finite(t.gap)}
             for t in result.tiers
         ],
+        "geometry": {
+            "refraction": run.policy.refraction, "light_time": "off", "polar_motion": "off",
+            "guard_sigmas": run.policy.guard_sigmas,
+            **{f"largest_{name}": _largest(windows, name) for name in ("timing_sigma_s", "off_pointing_deg")},
+            "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
+        },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
         "warnings": list(run.warnings) + _own_warnings(run, windows),
         "left_out": dict(run.left_out),
@@ -118,7 +124,28 @@ def _own_warnings(run: Run, windows: pd.DataFrame) -> list[str]:
     unseen = [name for name in run.orbits if name not in set(windows["spacecraft"])]
     if not len(windows):
         return ["no antenna sees any spacecraft within the horizon; the plan is empty"]
-    return [f"{name}: no antenna sees it within the horizon" for name in unseen]
+    return [f"{name}: no antenna sees it within the horizon" for name in unseen] + _pointing_warnings(run, windows)
+
+
+def _pointing_warnings(run: Run, windows: pd.DataFrame) -> list[str]:
+    """One line for each antenna whose beam is too narrow for what is known of some orbits."""
+    found = []
+    for name, antenna in run.antennas.items():
+        if antenna.beamwidth_deg is None or "off_pointing_deg" not in windows:
+            continue
+        permitted_deg = run.policy.off_pointing_beamwidths * antenna.beamwidth_deg
+        wide = windows[(windows["antenna"] == name) & (windows["off_pointing_deg"] > permitted_deg)]
+        if len(wide):
+            craft = ", ".join(sorted(set(wide["spacecraft"])))
+            found.append(
+                f"{name}: the orbits of {craft} are known to {wide['off_pointing_deg'].max():.2g} deg (1 sigma) only, "
+                f"the beam allows {permitted_deg:.2g} deg; fetch fresh element sets, or search in time on acquisition"
+            )
+    return found
+
+
+def _largest(windows: pd.DataFrame, column: str) -> float | None:
+    return round(float(windows[column].max()), 4) if column in windows and len(windows) else None
 
 
 def _finite(number: float) -> float | None:

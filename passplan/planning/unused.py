@@ -15,7 +15,7 @@ from passplan.planning.rules.terms import Lane, Terms
 
 UNUSED_COLUMNS = ("window_id", "spacecraft", "antenna", "aos_utc", "los_utc", "reason", "detail")
 REASONS = (
-    "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "spacecraft_busy",
+    "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "antenna_turning", "spacecraft_busy",
     "nothing_aboard", "not_worth_it", "interference")
 """``not_needed``: the antenna can only command, and nothing asks for it. Rules may add their own reasons."""
 

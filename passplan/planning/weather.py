@@ -6,6 +6,7 @@ from typing import Any
 
 import pandas as pd
 
+from passplan.geometry.losses import Losses
 from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.expected import PlannedContact, expected_volumes
@@ -14,7 +15,9 @@ from passplan.planning.horizon import column_seconds
 from passplan.planning.plan import Plan
 
 
-def weather_summary(run: Run, windows: pd.DataFrame, samples: Samples, plan: Plan) -> dict[str, Any]:
+def weather_summary(
+    run: Run, windows: pd.DataFrame, samples: Samples, plan: Plan, losses: Losses | None = None
+) -> dict[str, Any]:
     """The entry ``weather`` of ``plan.json``: plain values.
 
     ``notices`` always; with an unavailability also what each downlink contact's link carries [MB] at it
@@ -28,7 +31,7 @@ def weather_summary(run: Run, windows: pd.DataFrame, samples: Samples, plan: Pla
     if percent is None:
         return found
     planned, link_mb = _planned(run, windows, plan)
-    volumes = expected_volumes(run, windows, samples, list(planned.values()))
+    volumes = expected_volumes(run, windows, samples, list(planned.values()), losses)
     found["statement"] = STATISTICS
     found["contacts"] = {
         name: {

@@ -10,12 +10,12 @@ from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
-from passplan.geometry.pointing import sample_windows
 from passplan.inputs.run import Run
 from passplan.link.choice import DownlinkChoice
 from passplan.link.expected import PlannedContact, expected_volumes
 from passplan.link.lines import BudgetLine, budget_lines, link_along
 from passplan.link.profiles import link_profiles
+from passplan.planning.steps import losses_of, samples_of
 from passplan.report.cautions import CAUTIONS
 from passplan.report.directory import write_file
 
@@ -108,9 +108,9 @@ def _print_along(run: Run, spacecraft: str, antenna: str, window: pd.Series, con
 def _print_whole(run: Run, window: pd.Series, console: Console) -> None:
     """What a contact over the whole window would send, by the radio's rate control, and over the year."""
     table = window.to_frame().T.reset_index(drop=True)
-    samples = sample_windows(table, run.orbits, run.sites, run.start_utc)
+    samples, losses = samples_of(run, table), losses_of(run, table)
     start_s, end_s = int(np.ceil(samples.time_s[0])), int(np.floor(samples.time_s[-1]))
-    profile = link_profiles(run, table, samples)[0].downlink
+    profile = link_profiles(run, table, samples, losses)[0].downlink
     choice = None if profile is None else profile.best(start_s, end_s)
     if choice is None:
         return
@@ -124,7 +124,7 @@ def _print_whole(run: Run, window: pd.Series, console: Console) -> None:
         console.print(_steps(run, choice))
     if run.policy.unavailability_percent is not None:
         planned = PlannedContact(0, start_s, end_s, choice.radio, choice.modcod, choice.rate_mbps)
-        over = expected_volumes(run, table, samples, [planned])[0]
+        over = expected_volumes(run, table, samples, [planned], losses)[0]
         console.print(
             f"Over an average year (statistics, not a forecast): mean {over.mean_mb:,.1f} MB, P10 {over.p10_mb:,.1f}, "
             f"P50 {over.p50_mb:,.1f}, P90 {over.p90_mb:,.1f}"

@@ -118,6 +118,13 @@ def _health(summary: Mapping[str, Any]) -> RenderableType:
     if said := len(notices(summary)):
         models = f"{said} notice{'s' if said > 1 else ''} on models outside their range (show --full)"
         lines[-1] = Text.assemble(lines[-1], f"; {models}")
+    sky = summary.get("geometry", {})
+    if sky.get("largest_timing_sigma_s") is not None:
+        lines.append(Text(
+            f"AOS and LOS known to {sky['largest_timing_sigma_s']:.2f} s, "
+            f"pointing to {sky['largest_off_pointing_deg']:.2f}° "
+            f"(1 sigma, worst); refraction {sky['refraction']}; {sky['lost_s']:.0f} s lost inside windows"
+        ))
     lines += [Text.assemble((f"{name} left out: ", "bold"), why) for name, why in summary["left_out"].items()]
     return Group(*lines)
 

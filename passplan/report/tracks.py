@@ -9,14 +9,14 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from passplan.geometry.pointing import sample_windows
+from passplan.geometry.losses import merged
 from passplan.inputs.run import Run
 from passplan.link.choice import Track as LinkTrack
 from passplan.link.profiles import WindowLink, link_profiles
+from passplan.planning.steps import losses_of, samples_of
 
 Floats = NDArray[np.float64]
 Spans = tuple[tuple[float, float], ...]
-_STEP_S = 10.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -50,8 +50,12 @@ def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
     """The track of each window of the table, in its order, every 10 s from AOS and at LOS."""
     if windows.empty:
         return []
-    samples = sample_windows(windows, run.orbits, run.sites, run.start_utc, step_s=_STEP_S)
-    links = link_profiles(run, windows, samples)
+    samples, losses = samples_of(run, windows), losses_of(run, windows)
+    links = link_profiles(run, windows, samples, losses)
+    keyholes: dict[int, list[tuple[float, float]]] = {}
+    for loss in losses.rows:
+        if loss.cause == "keyhole":
+            keyholes.setdefault(loss.window, []).append((loss.start_s, loss.end_s))
     tracks = []
     for i, link in enumerate(links):
         own = slice(int(samples.offsets[i]), int(samples.offsets[i + 1]))
@@ -65,6 +69,7 @@ def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
                 samples.range_km[own],
                 allowed_mbps(sending, time_s, run.policy.required_margin_db),
                 link,
+                merged(keyholes.get(i, ())),
             )
         )
     return tracks

@@ -9,14 +9,20 @@ from astropy.utils import iers
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from passplan.geometry.sun import local_axes, pointing_vectors, sun_direction, sun_look_deg
+from passplan.geometry.sun import (
+    local_axes,
+    pointing_vectors,
+    sun_direction,
+    sun_look_deg,
+    sun_separation_deg,
+)
 from passplan.inputs.ground import Site
 
 SITE = Site(name="Strand", latitude_deg=52.0, longitude_deg=4.0)
 
 
 def _angle_deg(a: np.ndarray, b: np.ndarray) -> np.ndarray:
-    return np.degrees(np.arccos(np.clip(np.einsum("ij,ij->i", a, b), -1.0, 1.0)))
+    return np.asarray(np.degrees(np.arccos(np.clip(np.einsum("ij,ij->i", a, b), -1.0, 1.0))))
 
 
 @pytest.mark.filterwarnings("ignore")
@@ -49,3 +55,11 @@ def test_axes_are_a_right_handed_frame(lat: float, lon: float, azimuth: float, e
     assert axes @ axes.T == pytest.approx(np.eye(3), abs=1e-12)
     assert np.linalg.det(axes) == pytest.approx(1.0)
     assert np.linalg.norm(pointing_vectors(np.array([azimuth]), np.array([elevation]))) == pytest.approx(1.0)
+
+
+def test_the_two_ways_to_the_angle_from_the_sun_agree_but_for_its_parallax() -> None:
+    times = np.arange("2027-01-01T00:00", "2027-12-31T00:00", 7_001, dtype="datetime64[m]").astype("M8[ms]")
+    azimuth, elevation = sun_look_deg(SITE, times)
+    assert sun_separation_deg(SITE, times, azimuth, elevation).max() < 1e-6
+    by_vectors = _angle_deg(pointing_vectors(azimuth, elevation), sun_direction(times) @ local_axes(SITE).T)
+    assert by_vectors.max() < 0.0025

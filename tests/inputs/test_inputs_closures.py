@@ -390,3 +390,9 @@ def test_overlaps_are_found_exactly_where_there_are_some(tmp_path_factory, spans
     pairs = [(a, b) for i, a in enumerate(spans) for b in spans[:i] if a[0] < b[0] + b[1] and b[0] < a[0] + a[1]]
     assert bool(desk.findings.problems) == any(a[2] == b[2] for a, b in pairs)
     assert bool(desk.findings.warnings) == any(a[2] != b[2] for a, b in pairs)
+
+
+@pytest.mark.parametrize("category", ["wind_stow", "Wind stow"])
+def test_a_calendar_event_can_be_a_wind_stow(desk, category):
+    (one,) = desk.read(("c.ics", calendar(event(*TEN, "LOCATION:Skerry", "SUMMARY:Gale", f"CATEGORIES:{category}"))))
+    assert one.kind == "wind_stow"

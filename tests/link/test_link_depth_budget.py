@@ -2,13 +2,18 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 from link_bench import RECEIVER, X_RADIO, network, passes, with_radio
 
-from passplan.geometry.pointing import LookAngles, Samples
+from passplan.geometry.pointing import LookAngles, Samples, look_angles, sample_windows
+from passplan.geometry.survey import Ground, find_losses
+from passplan.geometry.windows import find_windows
+from passplan.inputs.elements.mean import MeanElements, element_set
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio
 from passplan.inputs.ground import Receiver, Transmitter
 from passplan.inputs.pfd import PfdLimit
@@ -22,6 +27,11 @@ from passplan.link.profiles import link_profiles
 from passplan.link.sun_noise import closest_deg
 from passplan.link.terms import path_terms
 
+LOW = MeanElements(
+    name="PLOVER", catalogue_number=90_001, international_designator="2027-001A", epoch_days=9_928, epoch_s=43_200.0,
+    mean_motion_rev_per_day=15.2, eccentricity=0.001, inclination_deg=97.4, raan_deg=120.0,
+    argument_of_perigee_deg=90.0, mean_anomaly_deg=10.0, bstar_per_earth_radius=1e-4,
+)
 NOON = np.datetime64("2027-03-09T12:00:00", "ms")
 KA_RADIO = DownlinkRadio(
     name="ka", direction="downlink", frequency_mhz=26_250.0, polarisation="LHCP", transmit_power_w=2.0,
@@ -85,7 +95,7 @@ def test_tables_and_terms_agree_along_a_pass_with_everything_on() -> None:
 
 @pytest.fixture
 def shown(monkeypatch: pytest.MonkeyPatch) -> Run:
-    def look(_source: object, _site: object, times: np.ndarray) -> LookAngles:
+    def look(_source: object, _site: object, times: np.ndarray, **_: object) -> LookAngles:
         flat = np.ones(len(times))
         return LookAngles(180.0 * flat, 4.0 * flat, 2_400.0 * flat, 0.0 * flat)
 
@@ -172,17 +182,37 @@ def test_the_ionospheric_allowance_counts_below_one_gigahertz_only() -> None:
 
 def test_commands_wait_for_the_transmit_mask() -> None:
     run = network()
-    masked = run.antennas["Dish"].model_copy(update={"transmit_min_elevation_deg": 20.0})
-    windows, samples = passes((0.0, 700.0, 550.0, 1.0))
-    free = link_profiles(run, windows, samples)[0].command
-    held = link_profiles(replace(run, antennas={"Dish": masked}), windows, samples)[0].command
-    assert free is not None
-    assert held is not None
-    first, last = held.tracks[0].first_s[0], held.tracks[0].last_s[0]
-    assert np.interp([first, last], samples.time_s, samples.elevation_deg) == pytest.approx([20.0, 20.0], abs=1e-6)
-    assert held.tracks[0].quality_db == pytest.approx(free.tracks[0].quality_db)
-    walled = run.antennas["Dish"].model_copy(update={"transmit_mask": ((0.0, 89.0), (360.0, 89.0))})
-    assert link_profiles(replace(run, antennas={"Dish": walled}), windows, samples)[0].command is None
+    run = replace(run, orbits={"Plover": element_set(LOW, Path("invented.tle"), "line 1")})
+    windows = find_windows(run.orbits, run.antennas, run.sites, run.start_utc, run.end_utc)
+    samples = sample_windows(windows, run.orbits, run.sites, run.start_utc)
+    masked = run.antennas["Dish"].model_copy(update={"transmit_min_elevation_deg": 23.5})
+    ground = Ground({"Dish": masked}, run.sites, {}, {"Dish": np.inf})
+    losses = find_losses(windows, run.orbits, ground, run.start_utc)
+    free = link_profiles(run, windows, samples)
+    held = link_profiles(replace(run, antennas={"Dish": masked}), windows, samples, losses)
+    assert windows["peak_elevation_deg"].min() < 23.5 < windows["peak_elevation_deg"].max()
+    for k, (before, after) in enumerate(zip(free, held, strict=True)):
+        own = slice(samples.offsets[k], samples.offsets[k + 1])
+        span = math.ceil(samples.time_s[own][0]), math.floor(samples.time_s[own][-1])
+        assert before.command is not None
+        assert after.command is not None
+        assert after.command.tracks[0].quality_db == pytest.approx(before.command.tracks[0].quality_db)
+        choice = after.command.best(*span)
+        if windows["peak_elevation_deg"].iat[k] < 23.5:
+            assert choice is None
+        elif choice is not None:
+            acquiring_s = choice.send_start_s - after.command.tracks[0].chain.acquisition_s
+            times = run.start_utc + (1e3 * np.array([acquiring_s, choice.send_end_s])).astype("timedelta64[ms]")
+            ends = look_angles(run.orbits["Plover"], run.sites["Strand"], times).elevation_deg
+            # Rounded inward to whole seconds, in which a low orbit rises by 0.2 deg at that height.
+            assert ends == pytest.approx([23.5, 23.5], abs=0.25)
+            assert ends.min() > 19.99
+    assert any(link.command is not None and link.command.best(0, run.horizon_s) is not None for link in held)
+    walled = masked.model_copy(update={"transmit_mask": ((0.0, 89.0), (360.0, 89.0))})
+    losses = find_losses(windows, run.orbits, replace(ground, antennas={"Dish": walled}), run.start_utc)
+    shut = link_profiles(replace(run, antennas={"Dish": walled}), windows, samples, losses)
+    assert [link.command.best(0, run.horizon_s) for link in shut if link.command is not None] == [None] * len(windows)
+    assert all(link.downlink is not None for link in shut)
 
 
 def test_a_receive_only_antenna_commands_nobody() -> None:

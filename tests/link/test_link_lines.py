@@ -18,7 +18,7 @@ NOON = np.datetime64("2027-03-09T12:00:00", "ms")
 def run(monkeypatch: pytest.MonkeyPatch) -> Run:
     """A run whose spacecraft passes overhead: elevation 3, 30, 90 deg at the first three times asked for."""
 
-    def look(_source: object, _site: object, times: np.ndarray) -> LookAngles:
+    def look(_source: object, _site: object, times: np.ndarray, **_: object) -> LookAngles:
         count = len(times)
         elevation, distance = np.array([30.0, 3.0, 90.0])[:count], np.array([909.4, 2_240.0, 500.0])[:count]
         return LookAngles(np.full(count, 120.0), elevation, distance, np.zeros(count))
@@ -70,7 +70,7 @@ def test_every_line_names_its_source_and_no_loss_prints_as_minus_zero(run: Run) 
 
 
 def test_outside_its_range_a_model_says_so(run: Run, monkeypatch: pytest.MonkeyPatch) -> None:
-    def low(_source: object, _site: object, times: np.ndarray) -> LookAngles:
+    def low(_source: object, _site: object, times: np.ndarray, **_: object) -> LookAngles:
         flat = np.ones(len(times))
         return LookAngles(120.0 * flat, -2.0 * flat, 2_800.0 * flat, 0.0 * flat)
 

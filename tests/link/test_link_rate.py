@@ -12,6 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from link_bench import X_RADIO, network, passes, with_radio
 
+from passplan.geometry.losses import Loss, Losses
 from passplan.inputs.modcods import builtin_table
 from passplan.inputs.run import Run
 from passplan.link.chains import RateControl
@@ -146,3 +147,39 @@ def test_quality_is_continuous_along_a_pass_under_weather() -> None:
     assert profile is not None
     # At 5 deg P.618 itself has a step, which the tables spread over 0.02 deg.
     assert np.abs(np.diff(profile.tracks[0].quality_db)).max() < 0.1
+
+
+@settings(deadline=None, max_examples=30)
+@given(
+    SHAPES, st.lists(st.tuples(st.floats(0.0, 1.0), st.floats(0.5, 60.0)), max_size=3), st.sampled_from([0.0, 12.5]),
+    st.sampled_from(["per-contact", "adaptive"]),
+)
+def test_nothing_is_sent_in_what_is_lost_nor_while_acquiring_after_it(
+    shape: tuple[float, float, float, float], gaps: list[tuple[float, float]], acquisition_s: float, kind: str
+) -> None:
+    run = _controlled(with_radio(network(), acquisition_s=acquisition_s), kind, switching_gap_s=2, min_dwell_s=5)
+    windows, samples = passes(shape)
+    first, last = samples.time_s[0], samples.time_s[-1]
+    rows = tuple(Loss(0, first + a * (last - first), first + a * (last - first) + w, "keyhole") for a, w in gaps)
+    losses = Losses(rows)
+    span = round(first), round(last)
+    whole = link_profiles(run, windows, samples)[0].downlink
+    cut = link_profiles(run, windows, samples, losses)[0].downlink
+    assert whole is not None
+    assert cut is not None
+    before, after = whole.best(*span), cut.best(*span)
+    assert _volume(after) <= _volume(before) + 1e-9
+    if not rows:
+        assert after == before
+    if after is None:
+        return
+    for piece in after.pieces:
+        for start_s, end_s in losses.of(0, "downlink"):
+            assert piece.end_s <= start_s + 1e-6 or piece.start_s >= end_s + acquisition_s - 1e-6
+    assert all(a.end_s <= b.start_s for a, b in pairwise(after.pieces))
+    assert after.usable_s == sum(piece.end_s - piece.start_s for piece in after.pieces)
+    carried_mb = sum((piece.end_s - piece.start_s) * piece.rate_mbps / 8.0 for piece in after.pieces)
+    assert after.volume_mb == pytest.approx(carried_mb)
+    assert (after.send_start_s, after.send_end_s) == (after.pieces[0].start_s, after.pieces[-1].end_s)
+    if kind == "per-contact":
+        assert {(piece.modcod, piece.rate_mbps) for piece in after.pieces} == {(after.modcod, after.rate_mbps)}

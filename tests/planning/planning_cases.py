@@ -77,8 +77,12 @@ def random_problem(seed: int, *, needs: bool = True, windows: int = 12) -> Probl
     commands = tuple(
         CommandNeed(k, rng.randint(4, 40) * STEP_S, -rng.randrange(30) * STEP_S)
         for k in range(crafts) if needs and rng.random() < 0.5)
+    turning = [(a, b) for a, x in enumerate(rows) for b, y in enumerate(rows)
+               if x["antenna"] == y["antenna"] and x["end_s"] <= y["start_s"] < x["end_s"] + 8 * STEP_S]
+    tight = [pair for pair in turning if rng.random() < 0.5] if needs and seed % 2 else []
     return problem_of(
-        rows, horizon_s=steps * STEP_S, weight=tuple(rng.choice([0.0, 1.0, 2.5]) for _ in range(crafts)),
+        rows, too_tight=np.array(tight, dtype=np.int64).reshape(-1, 2), horizon_s=steps * STEP_S,
+        weight=tuple(rng.choice([0.0, 1.0, 2.5]) for _ in range(crafts)),
         generation=tuple(rng.choice([0.0, 0.1, 0.5]) for _ in range(crafts)), capacity=tuple(capacity),
         start=tuple(c * rng.random() for c in capacity), prepare_s=tuple(rng.choice([0, 60]) for _ in range(dishes)),
         release_s=tuple(rng.choice([0, 60]) for _ in range(dishes)), requests=requests, commands=commands,
@@ -91,6 +95,7 @@ class Judge:
     def __init__(self, problem: Problem) -> None:
         self.problem, self.options = problem, problem.options
         self.steps = problem.horizon_s // STEP_S
+        self.tight = {(int(a), int(b)) for a, b in problem.too_tight}
         self._craft_value: dict[tuple[int, frozenset[int]], float] = {}
 
     def compatible(self, a: int, b: int) -> bool:
@@ -98,6 +103,8 @@ class Judge:
         o, dishes = self.options, self.problem.antennas
         first, second = (a, b) if (o.start_s[a], o.end_s[a]) <= (o.start_s[b], o.end_s[b]) else (b, a)
         if o.spacecraft[a] == o.spacecraft[b] and o.start_s[second] < o.end_s[first]:
+            return False
+        if (first, second) in self.tight:
             return False
         dish = int(o.antenna[a])
         setup_s = int(dishes.release_s[dish] + dishes.prepare_s[dish])

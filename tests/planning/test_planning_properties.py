@@ -78,7 +78,8 @@ def shuffled(problem: Problem, seed: int) -> Problem:
         options=_renumbered(taken, new_window, new_craft, new_dish),
         requests=tuple(replace(r, spacecraft=int(new_craft[r.spacecraft]) if r.spacecraft >= 0 else -1,
                                antennas=frozenset(int(new_dish[a]) for a in r.antennas)) for r in problem.requests),
-        commands=tuple(replace(c, spacecraft=int(new_craft[c.spacecraft])) for c in problem.commands))
+        commands=tuple(replace(c, spacecraft=int(new_craft[c.spacecraft])) for c in problem.commands),
+        too_tight=np.argsort(option)[problem.too_tight])
 
 
 def _renumbered(options: Options, window: np.ndarray, craft: np.ndarray, dish: np.ndarray) -> Options:

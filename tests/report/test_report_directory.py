@@ -36,7 +36,7 @@ def test_everything_is_written_and_read_back(short_plan: PlanRecord, tmp_path: P
 
 
 def test_columns_are_those_of_the_design(short_plan: PlanRecord) -> None:
-    assert tuple(short_plan.windows.columns) == WINDOW_COLUMNS
+    assert tuple(short_plan.windows.columns) == (*WINDOW_COLUMNS, "off_pointing_deg", "lost_s")
     assert tuple(short_plan.contacts.columns) == CONTACT_COLUMNS
     assert tuple(short_plan.segments.columns) == SEGMENT_COLUMNS
     assert tuple(short_plan.unused.columns) == UNUSED_COLUMNS

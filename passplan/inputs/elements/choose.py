@@ -16,6 +16,7 @@ ChoosingRule = Literal["nearest", "newest"]
 Use = Literal["chosen", "listed", "too old", "unusable"]
 # How often SGP4 is asked on the way; a decay lasts far longer than a 64th of the oldest set's age.
 _LOOKS = 64
+_LONG_AGO, _FAR_AHEAD = np.datetime64("1900-01-01", "ms"), np.datetime64("2300-01-01", "ms")
 
 
 @dataclass(frozen=True)
@@ -53,6 +54,7 @@ def choose(
     refuse_age_days: float,
     *,
     rule: ChoosingRule = "nearest",
+    manoeuvres: Sequence[np.datetime64] = (),
 ) -> Choice:
     """Choose among the element sets of one object.
 
@@ -60,12 +62,15 @@ def choose(
     ``refuse_age_days`` of the start, before or after. ``nearest`` takes the usable set whose epoch is
     nearest to the start. ``newest``, the rule for a drop folder, takes the newest usable epoch that is
     not later than the horizon's end (and the nearest if all are later), so that a fresh upload wins even
-    where its epoch lies a little ahead. Of equal epochs the higher element set number wins, and then
+    where its epoch lies a little ahead. A set from before one of the ``manoeuvres`` that precede the start
+    is not usable; one from after a manoeuvre still to come is taken only if there is no other (see
+    :func:`valid_span`). Of equal epochs the higher element set number wins, and then
     the set that was read first.
     """
     order = sorted(range(len(sets)), key=lambda i: (sets[i].epoch_utc, i))
-    judged = {i: _judge(sets[i], start_utc, refuse_age_days) for i in order}
+    judged = {i: _judge(sets[i], start_utc, refuse_age_days, manoeuvres) for i in order}
     usable = [i for i in order if judged[i].use == "listed"]
+    usable = [i for i in usable if valid_span(sets[i], manoeuvres)[0] <= start_utc] or usable
     best: int | None = None
     if usable:
         in_time = [i for i in usable if sets[i].epoch_utc <= end_utc] if rule == "newest" else []
@@ -84,8 +89,21 @@ def successive_jump_km(older: ElementSet, newer: ElementSet) -> float:
     return math.nan if old_fault or new_fault else math.dist(old_km, new_km)
 
 
-def _judge(one: ElementSet, start_utc: np.datetime64, refuse_age_days: float) -> Candidate:
+def valid_span(one: ElementSet, manoeuvres: Sequence[np.datetime64]) -> tuple[np.datetime64, np.datetime64]:
+    """From the last manoeuvre before a set's epoch to the first one after it; far away where there is none."""
+    before = [at for at in manoeuvres if at <= one.epoch_utc]
+    after = [at for at in manoeuvres if at > one.epoch_utc]
+    return max(before, default=_LONG_AGO), min(after, default=_FAR_AHEAD)
+
+
+def _judge(
+    one: ElementSet, start_utc: np.datetime64, refuse_age_days: float, manoeuvres: Sequence[np.datetime64]
+) -> Candidate:
     age_days = one.age_days(start_utc)
+    ends = valid_span(one, manoeuvres)[1]
+    if ends <= start_utc:
+        when = str(ends.astype("datetime64[s]")).replace("T", " ")
+        return Candidate(one, age_days, "unusable", f"it is from before the manoeuvre of {when} UTC")
     in_time = abs(age_days) <= refuse_age_days
     fault = sgp4_fault(one, one.epoch_utc, start_utc if in_time else one.epoch_utc)
     if fault is not None:

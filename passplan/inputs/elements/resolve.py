@@ -16,6 +16,7 @@ from passplan.inputs.elements.choose import (
     choose,
     sgp4_fault,
     successive_jump_km,
+    valid_span,
 )
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.elements.own_file import own_element_set, own_ephemeris
@@ -26,6 +27,7 @@ from passplan.inputs.errors import Findings, PassplanError
 from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.policy import Policy
 from passplan.inputs.reader import Reader
+from passplan.inputs.records import datetime64
 
 _JUMP_WARN_KM = 20.0
 
@@ -134,7 +136,8 @@ def _chosen(
     policy = horizon.policy
     refuse_days = craft.element_refuse_age_days or policy.element_refuse_age_days
     warn_days = craft.element_warn_age_days or policy.element_warn_age_days
-    choice = choose(sets, horizon.start_utc, horizon.end_utc, refuse_days, rule=rule)
+    manoeuvres = [datetime64(instant) for instant in craft.manoeuvres_utc]
+    choice = choose(sets, horizon.start_utc, horizon.end_utc, refuse_days, rule=rule, manoeuvres=manoeuvres)
     horizon.rows.extend(_row(craft, choice))
     chosen = choice.chosen
     if chosen is None:
@@ -148,6 +151,14 @@ def _chosen(
     if fault is not None:
         horizon.findings.warn(f"{craft.name}: SGP4 fails within the horizon ({fault}); no contacts from there on")
     _warn_of_jump(craft, choice, horizon.findings)
+    first, last = valid_span(chosen, manoeuvres)
+    for instant, word in ((last, "after"), (first, "before")):
+        if horizon.start_utc < instant < horizon.end_utc:
+            when = str(instant.astype("datetime64[s]")).replace("T", " ")
+            side = "after" if word == "before" else "before"
+            horizon.findings.warn(
+                f"{craft.name}: no contacts {word} its manoeuvre of {when} UTC, as the element set is from {side} it"
+            )
     return chosen, ""
 
 

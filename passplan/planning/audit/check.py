@@ -11,6 +11,7 @@ from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.interference import check_interference
 from passplan.planning.audit.links import check_links
+from passplan.planning.audit.mechanics import check_mechanics, check_turnarounds
 from passplan.planning.audit.occupancy import check_closures, check_overlaps, check_times
 from passplan.planning.audit.requirements import check_requirements
 from passplan.planning.audit.rows import Contact, read_rows
@@ -33,6 +34,7 @@ def audit_plan(
     for contact in rows:
         faults.extend(_check_contact(run, contact))
     faults.extend(check_overlaps(run, rows))
+    faults.extend(check_turnarounds(run, rows))
     faults.extend(check_interference(run, rows))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
@@ -52,4 +54,5 @@ def _check_contact(run: Run, contact: Contact) -> Iterator[Fault]:
     yield from visible
     # Below the mask the link is of no interest, and without an orbit there is none.
     if not visible:
+        yield from check_mechanics(run, contact, seen)
         yield from check_links(run, contact, seen)

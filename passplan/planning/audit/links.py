@@ -10,6 +10,7 @@ from passplan.inputs.modcods import Modcod
 from passplan.inputs.modcods_dvb_s2 import pilot_factor
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault, differs
+from passplan.planning.audit.mechanics import has_losses
 from passplan.planning.audit.quality import Quality, command_quality, downlink_quality
 from passplan.planning.audit.rows import Contact, Piece
 from passplan.planning.audit.sky import Sight
@@ -72,7 +73,7 @@ def _check_downlink(run: Run, contact: Contact, radio: DownlinkRadio, seen: Sigh
     yield from _check_usable(run, contact, radio, rows, robust, quality)
     if adaptive:
         yield from check_steps(run, contact, radio, allowed, quality)
-    elif radio.rate_control == "per-contact":
+    elif radio.rate_control == "per-contact" and not has_losses(run, run.antennas[contact.antenna], "downlink"):
         yield from _check_choice(run, contact, radio, allowed, quality)
 
 
@@ -117,7 +118,9 @@ def _check_usable(
     gaps_s = radio.switching_gap_s * (len(rows) - 1) if radio.rate_control == "adaptive" else 0
     held_s = quality.longest_s(row.required_esn0_db + _asked(run) + _TOLERANCE_DB, low=True)
     possible_s = held_s - radio.acquisition_s - gaps_s
-    if contact.usable_s < possible_s - _TOLERANCE_S:
+    # Where seconds are lost inside, less than all of it may be used.
+    lossy = has_losses(run, run.antennas[contact.antenna], "downlink")
+    if contact.usable_s < possible_s - _TOLERANCE_S and not lossy:
         sentence = f"usable time is {contact.usable_s:g} s, yet {row.name} holds for {possible_s:.0f} s"
         yield Fault("usable", contact.place, sentence)
     volume_mb = math.fsum(piece.volume_mb for piece in contact.pieces)
@@ -166,6 +169,8 @@ def _check_command(run: Run, contact: Contact, seen: Sight) -> Iterator[Fault]:
         yield Fault("command", contact.place, sentence)
         return
     most_s, least_s, radio = best
+    if has_losses(run, run.antennas[contact.antenna], "command"):
+        least_s = 0.0
     if most_s + _TOLERANCE_S < run.policy.command_min_s:
         sentence = f"commands have their margin for {max(most_s, 0.0):.0f} s"
         yield Fault("command", contact.place, f"{sentence}, {run.policy.command_min_s:g} s are required")

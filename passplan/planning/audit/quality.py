@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio
 from passplan.inputs.ground import Transmitter
@@ -18,9 +19,10 @@ from passplan.link.budget import (
     free_space_loss_db,
     off_nadir_deg,
 )
+from passplan.planning.audit.mechanics import sends_freely
 from passplan.planning.audit.receiving import diameter_m, figures_db_per_k, nominal_db_per_k
 from passplan.planning.audit.rows import Contact
-from passplan.planning.audit.sky import Floats, Sight, mask_deg
+from passplan.planning.audit.sky import Floats, Sight, lifted_deg
 
 
 @dataclass(frozen=True)
@@ -28,13 +30,13 @@ class Quality:
     """Es/N0 (commands: Eb/N0) after implementation loss [dB] at ``time_s``, joined by straight lines.
 
     ``ratio_db`` is the best that the audit cannot rule out, ``low_db`` the worst; they differ only near the
-    Sun. ``clear_deg`` is how far the pointing stands above the transmit mask, if there is one.
+    Sun. ``free`` says of each whole second whether the ground may send, if that is limited.
     """
 
     time_s: Floats
     ratio_db: Floats
     low_db: Floats | None = None
-    clear_deg: Floats | None = None
+    free: NDArray[np.bool_] | None = None
 
     def _series(self, low: bool) -> Floats:
         return self.low_db if low and self.low_db is not None else self.ratio_db
@@ -53,12 +55,15 @@ class Quality:
     def longest_s(self, level_db: float, *, low: bool = False) -> float:
         """Whole seconds of the longest unbroken time at or above a level, where the ground may transmit."""
         ratio_db = self._series(low)
-        seconds = np.arange(np.ceil(self.time_s[0]), np.floor(self.time_s[-1]) + 1.0)
-        holds = np.interp(seconds, self.time_s, ratio_db) >= level_db
-        if self.clear_deg is not None:
-            holds &= np.interp(seconds, self.time_s, self.clear_deg) >= 0.0
+        holds = np.interp(_whole_seconds(self.time_s), self.time_s, ratio_db) >= level_db
+        if self.free is not None:
+            holds &= self.free
         edges = np.flatnonzero(np.diff(np.concatenate(([False], holds, [False])).astype(np.int8)))
         return float(max(edges[1::2] - edges[::2] - 1, default=0))
+
+
+def _whole_seconds(time_s: Floats) -> Floats:
+    return np.arange(np.ceil(time_s[0]), np.floor(time_s[-1]) + 1.0)
 
 
 def downlink_quality(run: Run, contact: Contact, radio: DownlinkRadio, seen: Sight) -> Quality | None:
@@ -98,15 +103,7 @@ def command_quality(run: Run, contact: Contact, radio: CommandRadio, seen: Sight
     loss_db = radio.pointing_loss_db + _path_loss_db(run, contact, radio, sky, seen)
     cn0 = cn0_dbhz(max(levels), loss_db, radio.g_over_t_db_per_k)
     ratio_db = np.asarray(density_ratio_db(cn0, radio.bit_rate_kbps * 1e3) - radio.implementation_loss_db)
-    clear_deg = None
-    if antenna.transmit_mask or antenna.transmit_min_elevation_deg is not None:
-        floor_deg = antenna.transmit_min_elevation_deg
-        bounds = antenna.model_copy(update={
-            "mask": antenna.transmit_mask,
-            "min_elevation_deg": antenna.min_elevation_deg if floor_deg is None else floor_deg,
-        })
-        clear_deg = seen.elevation_deg - mask_deg(bounds, seen.azimuth_deg)
-    return Quality(seen.time_s, ratio_db, None, clear_deg)
+    return Quality(seen.time_s, ratio_db, None, sends_freely(run, contact, _whole_seconds(seen.time_s)))
 
 
 def radiated_dbw(item: DownlinkRadio | Transmitter) -> float:
@@ -139,7 +136,8 @@ def _path_loss_db(
 ) -> Floats:
     """Free space, air, wet radome, ionosphere, and a fixed antenna's pattern aboard [dB]."""
     site = run.sites[run.antennas[contact.antenna].site]
-    loss_db = free_space_loss_db(radio.frequency_mhz, seen.range_km) + sky.at(seen.elevation_deg).total_db
+    height_deg = lifted_deg(run, contact.antenna, seen.elevation_deg)
+    loss_db = free_space_loss_db(radio.frequency_mhz, seen.range_km) + sky.at(height_deg).total_db
     loss_db = loss_db + _radome_db(run, contact)
     if radio.frequency_mhz < 1_000.0:
         loss_db = loss_db + run.policy.ionospheric_allowance_db

@@ -16,7 +16,7 @@ from passplan.link.budget import (
     system_noise_k,
 )
 from passplan.planning.audit.rows import Contact
-from passplan.planning.audit.sky import Floats, Sight
+from passplan.planning.audit.sky import Floats, Sight, lifted_deg
 from passplan.planning.audit.sun import separations_deg
 
 # Weather never makes a receiver quieter than this share of the noise that was measured.
@@ -39,7 +39,8 @@ def figures_db_per_k(
     run: Run, contact: Contact, receiver: Receiver, sky: Sky, seen: Sight, frequency_mhz: float, radome_db: float
 ) -> tuple[Floats, Floats]:
     """G/T at each instant [dB/K], the least and the greatest that the Sun's place leaves open."""
-    sky_k = sky_noise_k(sky.at(seen.elevation_deg).absorbed_db + radome_db)
+    height_deg = lifted_deg(run, contact.antenna, seen.elevation_deg)
+    sky_k = sky_noise_k(sky.at(height_deg).absorbed_db + radome_db)
     if receiver.receiver_noise_k is not None:
         noise_k = _own_noise(receiver, sky_k)
         gain_db = np.full_like(noise_k, (receiver.gain_dbi or 0.0) - receiver.feeder_loss_db)
@@ -47,11 +48,11 @@ def figures_db_per_k(
         figure = np.full_like(sky_k, nominal_db_per_k(receiver))
         if receiver.g_over_t_curve:
             points = np.array(receiver.g_over_t_curve)
-            figure = np.interp(seen.elevation_deg, points[:, 0], points[:, 1])
+            figure = np.interp(height_deg, points[:, 0], points[:, 1])
         if receiver.noise_temperature_k is None:
             return figure, figure
         stated_k = receiver.noise_temperature_k
-        clear_at = seen.elevation_deg if receiver.measured_at_deg is None else receiver.measured_at_deg
+        clear_at = height_deg if receiver.measured_at_deg is None else receiver.measured_at_deg
         noise_k = stated_k + sky_k - sky_noise_k(sky.clear_db(clear_at))
         noise_k = np.maximum(noise_k, _LEAST_SHARE * stated_k)
         gain_db = figure + 10.0 * np.log10(stated_k)

@@ -19,7 +19,7 @@ from skyfield.vectorlib import VectorFunction
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ephemeris import Ephemeris, EphemerisSegment
 from passplan.inputs.ground import Antenna, Site
-from passplan.inputs.run import OrbitSource
+from passplan.inputs.run import OrbitSource, Run
 
 Floats = NDArray[np.float64]
 
@@ -70,6 +70,24 @@ def mask_deg(antenna: Antenna, azimuth_deg: Floats) -> Floats:
     around = np.concatenate((azimuths[-1:] - 360.0, azimuths, azimuths[:1] + 360.0))
     heights = np.concatenate((elevations[-1:], elevations, elevations[:1]))
     return np.asarray(np.maximum(flat, np.interp(azimuth_deg % 360.0, around, heights)))
+
+
+def lifted_deg(run: Run, antenna: str, elevation_deg: Floats) -> Floats:
+    """Elevations as the antenna sees them: with the bending of ITU-R P.834 where the policy asks for refraction.
+
+    P.834-9, Annex 1: for geometric elevations e to 10 deg and heights h to 3 km, 1 over the polynomial below;
+    carried on by the cotangent.
+    """
+    if run.policy.refraction == "off":
+        return elevation_deg
+    h = min(max(run.sites[run.antennas[antenna].site].height_m / 1e3, 0.0), 3.0)
+    constant = 1.728 + 0.1815 * h + 0.01727 * h * h
+    slope = 0.5411 + 0.06272 * h + 0.008288 * h * h
+    square = 0.03723 + 0.01380 * h
+    low = np.minimum(elevation_deg, 10.0)
+    bent = 1.0 / (constant + low * (slope + low * square))
+    fade = np.tan(np.radians(10.0)) / np.tan(np.radians(np.clip(elevation_deg, 10.0, 89.999)))
+    return np.asarray(elevation_deg + bent * fade)
 
 
 @lru_cache(maxsize=1)

@@ -29,8 +29,13 @@ def check_steps(
             continue
         if pause_s < radio.switching_gap_s - 1e-3:
             yield Fault("steps", contact.place, f"{radio.switching_gap_s} s of gap are missing before {after.modcod}")
-        if k > 0 and before.end_s - before.start_s < radio.min_dwell_s - 1e-3 and _joined(radio, pieces[k - 1], before):
-            sentence = f"{before.modcod} is left after {before.end_s - before.start_s:g} s"
+        # A short loss may part a step in two.
+        first = k
+        while first > 0 and pieces[first - 1].modcod == old.name and _joined(radio, pieces[first - 1], pieces[first]):
+            first -= 1
+        sent_s = before.end_s - pieces[first].start_s
+        if first > 0 and sent_s < radio.min_dwell_s - 1e-3 and _joined(radio, pieces[first - 1], pieces[first]):
+            sentence = f"{before.modcod} is left after {sent_s:g} s"
             yield Fault("steps", contact.place, f"{sentence}, the least dwell is {radio.min_dwell_s} s")
         if new.required_esn0_db > old.required_esn0_db:
             spare_db = quality.at_db(before.end_s) - new.required_esn0_db - run.policy.required_margin_db

@@ -10,7 +10,7 @@ from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault
 from passplan.planning.audit.rows import Contact
-from passplan.planning.audit.sky import Floats, Sight, mask_deg, sight
+from passplan.planning.audit.sky import Floats, Sight, lifted_deg, mask_deg, sight
 
 _STEP_S = 10.0
 # Windows are exact to a millisecond: a low orbit rises by 0.1 millidegree in that time. The audit
@@ -42,7 +42,7 @@ def check_visibility(run: Run, contact: Contact, seen: Sight) -> Iterator[Fault]
     tabulated = not isinstance(run.orbits[contact.spacecraft], ElementSet)
     tolerance_deg = _TOLERANCE_TABULATED_DEG if tabulated else _TOLERANCE_DEG
     mask = mask_deg(run.antennas[contact.antenna], seen.azimuth_deg)
-    below_deg = mask - seen.elevation_deg
+    below_deg = mask - lifted_deg(run, contact.antenna, seen.elevation_deg)
     worst = int(np.argmax(below_deg))
     if below_deg[worst] > tolerance_deg:
         yield Fault(

@@ -11,10 +11,11 @@ from passplan.planning.rules.antenna_time import antenna_time
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import requests
+from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
-RULES: tuple[Rule, ...] = (antenna_time, spacecraft_time, requests, command_interval, interference)
+RULES: tuple[Rule, ...] = (antenna_time, slew_time, spacecraft_time, requests, command_interval, interference)
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:
