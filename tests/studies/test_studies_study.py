@@ -18,7 +18,8 @@ WHATIF = "configs/whatif.toml"
 
 def _day(variant: str, day: int, value: float, bound: float) -> dict[str, object]:
     return {"variant": variant, "start_utc": pd.Timestamp(2027, 3, day), "contacts": 10, "volume_mb": 100.0,
-            "value": value, "bound": bound, "gap": 0.0, "status": "within_gap", "cost": 0.0, "lost_mb": 0.0, "shortfalls": 0}
+            "value": value, "bound": bound, "gap": 0.0, "status": "within_gap", "cost": 0.0,
+            "lost_mb": 0.0, "shortfalls": 0}
 
 
 def test_variants_of_the_sample(sample: Path) -> None:
