@@ -29,7 +29,7 @@ def test_variants_of_the_sample(sample: Path) -> None:
     assert set(second.antennas) - set(run.antennas) == {"Isvarde-C"}
     assert set(run.antennas) - set(without.antennas) == {"Orrin-A"}
     assert all(closure.antenna != "Orrin-A" for closure in without.closures)
-    assert bigger.antennas["Isvarde-B"].receivers == ("x-7m",)
+    assert bigger.antennas["Isvarde-B"].receivers == ("x-7m", "ka-5m")
     assert bigger.antennas["Isvarde-B"].min_elevation_deg == run.antennas["Isvarde-B"].min_elevation_deg
 
 
