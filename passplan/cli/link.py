@@ -17,7 +17,9 @@ def command(
     config: Annotated[Path, typer.Argument(help="The run config (TOML).", show_default=False)],
     spacecraft: Annotated[str, typer.Option("--spacecraft", help="The spacecraft.", show_default=False)],
     antenna: Annotated[str, typer.Option("--antenna", help="The antenna.", show_default=False)],
-    at: Annotated[str | None, typer.Option("--at", metavar="UTC", help="The instant; without it the culmination of the highest window.")] = None,
+    at: Annotated[
+        str | None, typer.Option("--at", metavar="UTC", help="The instant; else the highest culmination.")
+    ] = None,
     csv: Annotated[
         Path | None,
         typer.Option("--csv", metavar="FILE", help="Also write every term along the pass, a row each second, to FILE."),

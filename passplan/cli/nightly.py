@@ -16,7 +16,9 @@ from passplan.cli.terminal import StartOption, StrictOption, instant
 def command(
     config: Annotated[Path, typer.Argument(help="The nightly config (TOML).", show_default=False)],
     start: StartOption = None,
-    status: Annotated[bool, typer.Option("--status", help="Only report the last run; exit 10 where no good one is recent.")] = False,
+    status: Annotated[
+        bool, typer.Option("--status", help="Only report the last run; exit 10 where no good one is recent.")
+    ] = False,
     strict: StrictOption = False,
 ) -> None:
     """Plan, audit and write the night's plan unattended; ``latest`` always points to the last good one."""

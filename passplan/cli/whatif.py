@@ -13,9 +13,13 @@ from passplan.cli.terminal import progress, stdout
 
 @reports_faults
 def command(
-    study_file: Annotated[Path, typer.Argument(metavar="STUDY", help="The study (TOML): a base run and its variants.", show_default=False)],
+    study_file: Annotated[
+        Path, typer.Argument(metavar="STUDY", help="The study (TOML): a base run and its variants.", show_default=False)
+    ],
     out: Annotated[Path | None, typer.Option("--out", help="Write the comparison to this new directory.")] = None,
-    gap: Annotated[float | None, typer.Option("--gap", help="Stop each plan at this gap, in place of the policy's.")] = None,
+    gap: Annotated[
+        float | None, typer.Option("--gap", help="Stop each plan at this gap, in place of the policy's.")
+    ] = None,
     time_limit_s: Annotated[float | None, typer.Option("--seconds", help="Time limit for each plan.")] = None,
 ) -> None:
     """Plan variants of the network over the same days and say which differences the proofs support."""

@@ -50,5 +50,6 @@ class Request(Record):
         if span_s <= 0.0:
             raise ValueError("latest_utc is not after earliest_utc; swap or correct them")
         if span_s < self.min_duration_s:
-            raise ValueError(f"the span of {span_s:g} s is shorter than min_duration_s {self.min_duration_s:g}; widen it")
+            least_s = self.min_duration_s
+            raise ValueError(f"the span of {span_s:g} s is shorter than min_duration_s {least_s:g}; widen it")
         return self

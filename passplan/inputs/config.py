@@ -30,7 +30,9 @@ class CalendarFile(Record):
 
 def _calendar_files(value: Any) -> Any:
     listed = _as_list(value)
-    return [{"file": item} if isinstance(item, str) else item for item in listed] if isinstance(listed, list) else listed
+    if not isinstance(listed, list):
+        return listed
+    return [{"file": item} if isinstance(item, str) else item for item in listed]
 
 
 class RunConfig(Record):

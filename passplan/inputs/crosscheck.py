@@ -32,7 +32,8 @@ def check_fleet(
                 findings.problem(file, f"{place}: radios", chosen, "more than one command radio; name one")
         number = item.catalogue_number
         if number is not None and seen.setdefault(number, item.name) != item.name:
-            findings.problem(file, f"{place}: catalogue_number", number, f"{seen[number]} has this number too; correct one")
+            remedy = f"{seen[number]} has this number too; correct one"
+            findings.problem(file, f"{place}: catalogue_number", number, remedy)
     for radio in radios.values():
         if isinstance(radio, DownlinkRadio) and radio.modcod_table in tables:
             known = [row.name for row in tables[radio.modcod_table].rows]

@@ -8,6 +8,7 @@ from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
+from passplan.inputs.calendar_records import Closure
 from passplan.inputs.fleet import DownlinkRadio
 from passplan.inputs.ground import Antenna
 from passplan.inputs.matching import matching_loss_db
@@ -25,7 +26,7 @@ def print_health(run: Run, console: Console) -> None:
     if len(others):
         console.print(_other_sets(others))
     console.print(_antennas(run))
-    within = [c for c in run.closures if datetime64(c.end_utc) > run.start_utc and datetime64(c.start_utc) < run.end_utc]
+    within = [c for c in run.closures if _closed_h(run, c) > 0.0]
     console.print(Text.assemble(
         (str(len(within)), "bold"), " closures within the horizon, ", (str(len(run.requests)), "bold"), " requests, ",
         (str(len(run.files)), "bold"), " files read",
@@ -64,7 +65,9 @@ def _spacecraft(run: Run) -> Table:
 
 
 def _other_sets(others: pd.DataFrame) -> Table:
-    table = _plain_table(("not used for", "left"), ("epoch", "left"), ("age d", "right"), ("why", "left"), ("from", "left"))
+    table = _plain_table(
+        ("not used for", "left"), ("epoch", "left"), ("age d", "right"), ("why", "left"), ("from", "left")
+    )
     for row in others.to_dict("records"):
         table.add_row(
             row["spacecraft"], _instant(np.datetime64(row["epoch_utc"])), f"{row['age_days']:.2f}",
@@ -74,15 +77,14 @@ def _other_sets(others: pd.DataFrame) -> Table:
 
 
 def _antennas(run: Run) -> Table:
-    table = _plain_table(("antenna", "left"), ("site", "left"), ("mask", "left"), ("hears", "left"), ("commands", "left"),
-                         ("serves", "right"), ("closed h", "right"))
+    table = _plain_table(
+        ("antenna", "left"), ("site", "left"), ("mask", "left"), ("hears", "left"), ("commands", "left"),
+        ("serves", "right"), ("closed h", "right"),
+    )
     for name, antenna in run.antennas.items():
         served = sum(_serves(run, antenna, craft) for craft in run.spacecraft)
         closed = [c for c in run.closures if c.antenna == name]
-        hours = sum(
-            max((min(datetime64(c.end_utc), run.end_utc) - max(datetime64(c.start_utc), run.start_utc)) / np.timedelta64(1, "h"), 0.0)
-            for c in closed
-        )
+        hours = sum(_closed_h(run, c) for c in closed)
         table.add_row(
             name, antenna.site, _mask(antenna), ", ".join(antenna.receivers) or "-",
             ", ".join(antenna.transmitters) or "receive only", str(served), f"{hours:.1f}" if closed else "",
@@ -105,6 +107,12 @@ def _serves(run: Run, antenna: Antenna, spacecraft: str) -> bool:
         if any(matching_loss_db(radio, known[name]) is not None for name in names):
             return True
     return False
+
+
+def _closed_h(run: Run, closure: Closure) -> float:
+    """Hours of the horizon that a closure takes."""
+    start, end = max(datetime64(closure.start_utc), run.start_utc), min(datetime64(closure.end_utc), run.end_utc)
+    return max(float((end - start) / np.timedelta64(1, "h")), 0.0)
 
 
 def _instant(instant: np.datetime64) -> str:

@@ -107,7 +107,8 @@ def main() -> None:
     hands = {"longest first": by_hand(problem, np.lexsort((options.start_s, -length))),
              "highest first": by_hand(problem, np.lexsort((-length, -peak)))}
     summary = record.summary
-    print(f"{len(run.orbits)} spacecraft x {len(run.antennas)} antennas: {len(windows)} windows, {len(options)} options")
+    size = f"{len(run.orbits)} spacecraft x {len(run.antennas)} antennas"
+    print(f"{size}: {len(windows)} windows, {len(options)} options")
     print(f"{'':14} {'value':>12} {'delivered MB':>13} {'lost MB':>10} {'spilling':>9}")
     lost = {name: store["lost_mb"] for name, store in summary["storage"].items()}
     print(f"{'plan':14} {summary['value']:12.0f} {summary['volume_mb']:13.0f} {sum(lost.values()):10.0f} "
@@ -115,7 +116,8 @@ def main() -> None:
     for name, found in hands.items():
         print(f"{name:14} {found.value:12.0f} {found.delivered_mb.sum():13.0f} {found.lost_mb.sum():10.0f} "
               f"{int((found.lost_mb > 0.001).sum()):9d}")
-    print(f"bound {summary['bound']:.0f}, gap {100 * summary['gap']:.3f} %, {summary['status']}, path {summary['path']}; "
+    print(f"bound {summary['bound']:.0f}, gap {100 * summary['gap']:.3f} %, {summary['status']}, "
+          f"path {summary['path']}; "
           f"{took_s:.1f} s from reading to audit, peak {peak_mb:.0f} MB")
     print(json.dumps({
         "value": summary["value"], "bound": summary["bound"], "gap": summary["gap"], "seconds": round(took_s, 2),

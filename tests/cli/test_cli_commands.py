@@ -176,7 +176,9 @@ def test_an_unforeseen_fault_is_an_internal_error(passplan: Command, monkeypatch
     assert "internal error" in result.stderr
 
 
-def test_plan_without_any_window_is_empty_and_no_error(passplan: Command, edit: Callable[..., Path], sample: Path) -> None:
+def test_plan_without_any_window_is_empty_and_no_error(
+    passplan: Command, edit: Callable[..., Path], sample: Path
+) -> None:
     ground = sample / "sample_fleet/ground.toml"
     text = ground.read_text(encoding="utf-8")
     for elevation in ("5", "7", "4", "8", "6"):

