@@ -99,7 +99,9 @@ def load_run(
         mounts=ground.mounts, modcod_tables=fleet.tables, closures=closures, policy=rules,
         # A request file holds many days; one whose span misses this horizon is another day's business.
         requests=tuple(
-            r for r in requests.values() if datetime64(r.latest_utc) > start_utc and datetime64(r.earliest_utc) < end_utc
+            r
+            for r in requests.values()
+            if datetime64(r.latest_utc) > start_utc and datetime64(r.earliest_utc) < end_utc
         ),
         orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
         pfd_limits=limits, warnings=tuple(findings.warnings), files=reader.files,

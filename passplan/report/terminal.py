@@ -123,7 +123,7 @@ def _health(summary: Mapping[str, Any]) -> RenderableType:
         lines.append(Text(
             f"AOS and LOS known to {sky['largest_timing_sigma_s']:.2f} s, "
             f"pointing to {sky['largest_off_pointing_deg']:.2f}° "
-            f"(1 sigma, worst); refraction {sky['refraction']}; {sky['lost_s']:.0f} s lost inside windows"
+            f"(worst, 1 sigma); refraction {sky['refraction']}; {sky['lost_s']:.0f} s lost"
         ))
     lines += [Text.assemble((f"{name} left out: ", "bold"), why) for name, why in summary["left_out"].items()]
     return Group(*lines)

@@ -19,6 +19,7 @@ REASON_WORDS = {
     "no_margin": "no modcod holds its margin",
     "not_needed": "can only command, and nothing asks for it",
     "antenna_busy": "the antenna serves another spacecraft",
+    "antenna_turning": "the antenna cannot turn there in time",
     "spacecraft_busy": "the spacecraft is served elsewhere",
     "nothing_aboard": "nothing more to bring down",
     "not_worth_it": "worth less than it costs",
