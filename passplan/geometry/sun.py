@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from passplan.geometry.axes import separation_deg
 from passplan.geometry.frames import turn_about_z
 from passplan.geometry.pointing import look
+from passplan.geometry.refraction import apparent_deg
 from passplan.geometry.stations import stations
 from passplan.geometry.timescale import DAY_S, Floats, sidereal_angle_rad, tai_minus_utc_s, utc_seconds
 from passplan.inputs.ground import Site
@@ -114,12 +115,18 @@ def sun_separation_deg(
 
 
 def sun_separations_deg(
-    sites: Mapping[str, Site], site_of: NDArray[np.str_], utc_s: Floats, azimuth_deg: Floats, elevation_deg: Floats
+    sites: Mapping[str, Site], site_of: NDArray[np.str_], utc_s: Floats, azimuth_deg: Floats, elevation_deg: Floats,
+    *, refraction: bool = False,
 ) -> Floats:
-    """As :func:`sun_separation_deg`, for samples (n,) from many sites, named in ``site_of`` (n,)."""
+    """As :func:`sun_separation_deg`, for samples (n,) from many sites, named in ``site_of`` (n,).
+
+    With ``refraction`` the elevations are apparent ones, and the Sun is taken where it appears.
+    """
     found = np.full(utc_s.shape, np.nan)
     for name in np.unique(site_of).tolist():
         mine = np.flatnonzero(site_of == name)
         azimuth, elevation = sun_look(sites[name], utc_s[mine])
+        if refraction:
+            elevation = apparent_deg(elevation, sites[name].height_m / 1e3)
         found[mine] = separation_deg(azimuth_deg[mine], elevation_deg[mine], azimuth, elevation)
     return found

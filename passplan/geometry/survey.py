@@ -106,7 +106,8 @@ def _found(
             yield from _below_zero(row, time, clearance(azimuth, elevation), "transmit")
         if antenna.sun_keep_out_deg is not None:
             sites = np.full(row.size, antenna.site)
-            apart = sun_separations_deg(ground.sites, sites, time, azimuth, elevation)
+            apart = sun_separations_deg(
+                ground.sites, sites, time, azimuth, elevation, refraction=ground.refraction)
             yield from _below_zero(row, time, apart - antenna.sun_keep_out_deg, "sun")
         mount = ground.mount(str(name))
         if mount is not None and mount.moves:

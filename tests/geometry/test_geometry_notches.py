@@ -26,7 +26,7 @@ def _visible(source: ElementSet, dish: Antenna, seconds: np.ndarray) -> np.ndarr
     return np.asarray(found.elevation_deg > mask_of(dish).elevation_deg(found.azimuth_deg))
 
 
-def _agrees_with_samples(source: ElementSet, dish: Antenna, step_s: float) -> pd.DataFrame:
+def check_agrees_with_samples(source: ElementSet, dish: Antenna, step_s: float) -> pd.DataFrame:
     """Windows of the table hold every visible sample and no other, but for one step at each edge."""
     table = windows(source, dish)
     seconds = np.arange(0.0, 86_400.0, step_s)
@@ -67,12 +67,12 @@ def test_a_notch_splits_a_pass_with_edges_to_the_millisecond() -> None:
 def test_a_narrow_wall_is_not_stepped_over() -> None:
     dish = antenna(mask=_notch(_azimuth_at_peak(), 0.05))
     assert len(windows(LOW, dish)) > len(windows(LOW, antenna()))
-    _agrees_with_samples(LOW, dish, 1.0)
+    check_agrees_with_samples(LOW, dish, 1.0)
 
 
 @pytest.mark.parametrize("name", REGIMES)
 def test_a_hilly_mask_agrees_with_samples(name: str) -> None:
-    _agrees_with_samples(REGIMES[name], antenna(min_elevation_deg=4.0, mask=HILLS), 7.0)
+    check_agrees_with_samples(REGIMES[name], antenna(min_elevation_deg=4.0, mask=HILLS), 7.0)
 
 
 @settings(deadline=None, max_examples=12)
@@ -82,7 +82,7 @@ def test_a_hilly_mask_agrees_with_samples(name: str) -> None:
     )
 )
 def test_any_mask_agrees_with_samples(points: list[tuple[float, float]]) -> None:
-    _agrees_with_samples(LOW, antenna(min_elevation_deg=1.0, mask=sorted(points)), 11.0)
+    check_agrees_with_samples(LOW, antenna(min_elevation_deg=1.0, mask=sorted(points)), 11.0)
 
 
 def test_a_mask_given_as_a_flat_table_is_a_constant_mask() -> None:
@@ -100,5 +100,5 @@ def test_a_wall_before_an_object_that_stands_still_hides_it() -> None:
 
 def test_a_notch_in_a_pass_of_hours_is_found() -> None:
     azimuth = float(look_angles(ECCENTRIC, NORTH, at_s(np.array([20_000.0]))).azimuth_deg[0])
-    table = _agrees_with_samples(ECCENTRIC, antenna(mask=_notch(min(max(azimuth, 20.0), 340.0), 6.0)), 5.0)
+    table = check_agrees_with_samples(ECCENTRIC, antenna(mask=_notch(min(max(azimuth, 20.0), 340.0), 6.0)), 5.0)
     assert len(table) > len(windows(ECCENTRIC, antenna()))

@@ -45,7 +45,7 @@ def _message(*segments: EphemerisSegment) -> Ephemeris:
     return Ephemeris("TEAL", "2027-001A", segments, Path("teal.oem"))
 
 
-def _same(found: pd.DataFrame, expected: pd.DataFrame, within_s: float = 2e-3) -> None:
+def check_same(found: pd.DataFrame, expected: pd.DataFrame, within_s: float = 2e-3) -> None:
     assert found["window_id"].tolist() == expected["window_id"].tolist()
     np.testing.assert_allclose(spans_s(found), spans_s(expected), atol=within_s)
     np.testing.assert_allclose(found["peak_elevation_deg"], expected["peak_elevation_deg"], atol=1e-3)
@@ -57,7 +57,7 @@ def _same(found: pd.DataFrame, expected: pd.DataFrame, within_s: float = 2e-3) -
 def test_windows_of_an_ephemeris_are_those_of_its_elements(frame: str, interpolation: str) -> None:
     message = _message(_segment(LOW, START - MARGIN, END + MARGIN, frame=frame, interpolation=interpolation))
     found = windows(message, antenna())
-    _same(found, windows(LOW, antenna()))
+    check_same(found, windows(LOW, antenna()))
     assert found["element_epoch_utc"].isna().all()
 
 
@@ -80,7 +80,7 @@ def test_instants_are_those_of_the_message_even_if_it_interpolates_badly() -> No
 def test_windows_across_the_seam_of_two_segments_are_whole() -> None:
     middle = windows(LOW, antenna()).iloc[2]["peak_utc"].to_datetime64()
     first, second = _segment(LOW, START - MARGIN, middle), _segment(LOW, middle, END + MARGIN)
-    _same(windows(_message(first, second), antenna()), windows(LOW, antenna()))
+    check_same(windows(_message(first, second), antenna()), windows(LOW, antenna()))
 
 
 def test_a_gap_between_segments_cuts_a_window_and_nothing_is_extrapolated() -> None:

@@ -51,7 +51,7 @@ RANDOM_SITE = st.builds(
 )
 
 
-def _matches(found: np.ndarray, expected: np.ndarray) -> None:
+def check_matches(found: np.ndarray, expected: np.ndarray) -> None:
     """The same windows to 1 ms, windows of a millisecond or two apart (a grazing pass may round away)."""
     found, expected = (part[part[:, 1] - part[:, 0] > 2e-3] for part in (found, expected))
     assert found.shape == expected.shape
@@ -62,7 +62,7 @@ def _matches(found: np.ndarray, expected: np.ndarray) -> None:
 @pytest.mark.parametrize("name", REGIMES)
 def test_windows_are_those_of_dense_sampling(name: str, mask_deg: float) -> None:
     found = spans_s(windows(REGIMES[name], antenna(min_elevation_deg=mask_deg)))
-    _matches(found, dense_spans_s(REGIMES[name], NORTH, mask_deg))
+    check_matches(found, dense_spans_s(REGIMES[name], NORTH, mask_deg))
 
 
 @settings(deadline=None, max_examples=12)
@@ -85,7 +85,7 @@ def test_a_pass_of_seconds_between_samples_is_found() -> None:
     found = windows(LOW, antenna(min_elevation_deg=mask_deg))
     assert len(found) == 1
     assert 0.0 < found["duration_s"].iloc[0] < 10.0
-    _matches(spans_s(found), dense_spans_s(LOW, NORTH, mask_deg))
+    check_matches(spans_s(found), dense_spans_s(LOW, NORTH, mask_deg))
 
 
 def test_the_table_has_the_columns_and_types_that_the_floors_above_rely_on() -> None:
@@ -154,7 +154,7 @@ def test_an_object_that_never_sets_is_one_window_cut_by_the_horizon() -> None:
 def test_an_eccentric_orbit_dips_below_a_high_mask_and_gives_several_windows() -> None:
     # The site turns away from the apogee and back, while the object never sets for hours.
     found = spans_s(windows(ECCENTRIC, antenna(SOUTH, 10.0), SOUTH))
-    _matches(found, dense_spans_s(ECCENTRIC, SOUTH, 10.0))
+    check_matches(found, dense_spans_s(ECCENTRIC, SOUTH, 10.0))
 
 
 def test_a_decaying_object_keeps_its_windows_until_it_fails() -> None:
@@ -177,7 +177,7 @@ def test_a_decaying_object_keeps_its_windows_until_it_fails() -> None:
 
 def test_elements_from_after_the_start_are_used_backwards() -> None:
     later = orbit(epoch_day=9_931)
-    _matches(spans_s(windows(later, antenna())), dense_spans_s(later, NORTH, 5.0))
+    check_matches(spans_s(windows(later, antenna())), dense_spans_s(later, NORTH, 5.0))
 
 
 def test_progress_counts_to_the_number_of_spacecraft() -> None:

@@ -17,7 +17,7 @@ Lines = Callable[[], list[str]]
 FLEET, GROUND, DAILY = "sample_fleet/fleet.toml", "sample_fleet/ground.toml", "configs/daily.toml"
 
 
-def _one(lines: list[str], *parts: str) -> str:
+def expect_one(lines: list[str], *parts: str) -> str:
     """The only line, which must hold every part."""
     assert len(lines) == 1, lines
     for part in parts:
@@ -27,7 +27,7 @@ def _one(lines: list[str], *parts: str) -> str:
 
 def test_missing_file(edit: Edit, lines_of: Lines) -> None:
     edit(DAILY, "fleet.toml", "flet.toml")
-    _one(lines_of(), "flet.toml", "fleet", "no such file", "correct the path")
+    expect_one(lines_of(), "flet.toml", "fleet", "no such file", "correct the path")
 
 
 def test_missing_config(tmp_path: Path) -> None:
@@ -37,13 +37,13 @@ def test_missing_config(tmp_path: Path) -> None:
 
 def test_broken_toml(edit: Edit, lines_of: Lines) -> None:
     edit(FLEET, "weight = 2.0", "weight = = 2.0")
-    _one(lines_of(), "fleet.toml", "not valid TOML", "line 13")
+    expect_one(lines_of(), "fleet.toml", "not valid TOML", "line 13")
 
 
 def test_not_utf8(sample: Path, lines_of: Lines) -> None:
     path = sample / FLEET
     path.write_bytes(path.read_bytes() + b"# \xff\n")
-    _one(lines_of(), "fleet.toml", "UTF-8")
+    expect_one(lines_of(), "fleet.toml", "UTF-8")
 
 
 @pytest.mark.parametrize(
@@ -123,27 +123,27 @@ def test_bad_checksum(edit: Edit, lines_of: Lines) -> None:
 
 def test_duplicate_names(edit: Edit, lines_of: Lines) -> None:
     edit(FLEET, 'name = "Ambril-2"', 'name = "ambril-1"')
-    _one(lines_of(), "spacecraft[2]", "ambril-1", "already used at spacecraft[1]", "rename")
+    expect_one(lines_of(), "spacecraft[2]", "ambril-1", "already used at spacecraft[1]", "rename")
 
 
 def test_duplicate_catalogue_number(edit: Edit, lines_of: Lines) -> None:
     edit(FLEET, "catalogue_number = 330102", "catalogue_number = 330101")
-    _one(lines_of(), "Ambril-2", "330101", "Ambril-1 has this number too")
+    expect_one(lines_of(), "Ambril-2", "330101", "Ambril-1 has this number too")
 
 
 def test_overlapping_closures(edit: Edit, lines_of: Lines) -> None:
     edit("sample_fleet/closures.csv", "", "Ellery-A,2027-03-09T12:00:00Z,2027-03-09T13:00:00Z,outage,again\n")
-    _one(lines_of(), "closures.csv", "row 3", "Ellery-A", "row 2")
+    expect_one(lines_of(), "closures.csv", "row 3", "Ellery-A", "row 2")
 
 
 def test_reversed_closure(edit: Edit, lines_of: Lines) -> None:
     edit("sample_fleet/closures.csv", "2027-03-09T12:30:00Z", "2027-03-09T07:30:00Z")
-    _one(lines_of(), "closures.csv", "row 2", "end_utc is not after start_utc")
+    expect_one(lines_of(), "closures.csv", "row 2", "end_utc is not after start_utc")
 
 
 def test_closure_of_an_unknown_antenna(edit: Edit, lines_of: Lines) -> None:
     edit("sample_fleet/closures.csv", "Ellery-A", "Elery-A")
-    _one(lines_of(), "closures.csv", "row 2", "Elery-A", "did you mean 'Ellery-A'?")
+    expect_one(lines_of(), "closures.csv", "row 2", "Elery-A", "did you mean 'Ellery-A'?")
 
 
 def test_empty_fleet(sample: Path, lines_of: Lines) -> None:
@@ -160,18 +160,18 @@ def test_no_antenna(sample: Path, lines_of: Lines) -> None:
 @pytest.mark.parametrize("hours", ["0", "-3", "0.0"])
 def test_horizon_without_length(edit: Edit, lines_of: Lines, hours: str) -> None:
     edit(DAILY, "hours = 24", f"hours = {hours}")
-    _one(lines_of(), "daily.toml", "hours", "must be above 0")
+    expect_one(lines_of(), "daily.toml", "hours", "must be above 0")
 
 
 @pytest.mark.parametrize("end", ["2027-03-09T00:00:00Z", "2027-03-08T00:00:00Z"])
 def test_end_not_after_start(edit: Edit, lines_of: Lines, end: str) -> None:
     edit(DAILY, "hours = 24", f"end = {end}")
-    _one(lines_of(), "daily.toml", "end is not after start")
+    expect_one(lines_of(), "daily.toml", "end is not after start")
 
 
 def test_fraction_of_a_second_in_the_start(edit: Edit, lines_of: Lines) -> None:
     edit(DAILY, "start = 2027-03-09T00:00:00Z", "start = 2027-03-09T00:00:00.5Z")
-    _one(lines_of(), "daily.toml", "whole seconds")
+    expect_one(lines_of(), "daily.toml", "whole seconds")
 
 
 def test_element_sets_years_old(edit: Edit, sample: Path) -> None:
@@ -183,12 +183,12 @@ def test_element_sets_years_old(edit: Edit, sample: Path) -> None:
 
 def test_radio_that_no_antenna_can_receive(edit: Edit, lines_of: Lines) -> None:
     edit("sample_fleet/radios.csv", "x-8190,downlink,8190", "x-8190,downlink,8490")
-    _one(lines_of(), "x-8190", "8490", "no antenna can receive it", "Ambril-3")
+    expect_one(lines_of(), "x-8190", "8490", "no antenna can receive it", "Ambril-3")
 
 
 def test_command_radio_that_no_antenna_can_reach(edit: Edit, lines_of: Lines) -> None:
     edit("sample_fleet/radios.csv", "command,2068", "command,2168")
-    _one(lines_of(), "s-command", "no antenna can command it")
+    expect_one(lines_of(), "s-command", "no antenna can command it")
 
 
 @pytest.mark.parametrize(
@@ -226,7 +226,7 @@ def test_csv_faults_name_the_row(sample: Path, lines_of: Lines) -> None:
 
 def test_csv_row_with_a_cell_too_many(edit: Edit, lines_of: Lines) -> None:
     edit("sample_fleet/closures.csv", "outage,", "outage,greased,")
-    _one(lines_of(), "closures.csv: row 2", "6 cells, the header 5")
+    expect_one(lines_of(), "closures.csv: row 2", "6 cells, the header 5")
 
 
 def test_nearest_falls_back_to_the_list() -> None:

@@ -9,7 +9,8 @@ import pytest
 from numpy.typing import NDArray
 
 from passplan.geometry.eclipse import eclipses
-from passplan.geometry.sun import sun_direction_itrf, sun_separation_deg
+from passplan.geometry.refraction import apparent_deg
+from passplan.geometry.sun import sun_direction_itrf, sun_look, sun_separation_deg, sun_separations_deg
 from passplan.geometry.timescale import utc_seconds
 from passplan.geometry.trajectory import states_itrf
 from passplan.inputs.elements.mean import MeanElements, element_set
@@ -102,3 +103,17 @@ def test_separation_from_the_sun_is_zero_towards_it() -> None:
         azimuth, elevation = sky.az.deg, sky.alt.deg
     assert sun_separation_deg(site, times, azimuth, elevation).max() < 0.01
     assert sun_separation_deg(site, times, azimuth, elevation - 3.0) == pytest.approx(3.0, abs=0.01)
+
+
+def test_with_refraction_the_sun_stands_where_it_appears() -> None:
+    site = Site(name="Isvarde", latitude_deg=69.31, longitude_deg=16.82, height_m=240.0)
+    utc_s = utc_seconds(np.datetime64("2027-03-09T06:30:00", "ms") + np.arange(40) * np.timedelta64(60_000, "ms"))
+    azimuth, elevation = sun_look(site, utc_s)
+    names = np.full(utc_s.size, "Isvarde")
+    seen = apparent_deg(elevation, site.height_m / 1e3)
+    apart = sun_separations_deg({"Isvarde": site}, names, utc_s, azimuth, seen, refraction=True)
+    # Two directions less than a microradian apart have a cosine of 1 in double precision.
+    assert np.abs(apart).max() < 1e-4
+    lifted = sun_separations_deg({"Isvarde": site}, names, utc_s, azimuth, seen)
+    np.testing.assert_allclose(lifted, seen - elevation, atol=1e-4)
+    assert lifted.max() > 0.1

@@ -174,7 +174,10 @@ def _check_rates(run: Run, contact: Contact, mount: Mount, fine: tuple[Floats, F
 def _check_sun(run: Run, contact: Contact, keep_out_deg: float, fine: tuple[Floats, Floats, Floats]) -> Iterator[Fault]:
     times, azimuth, height = fine
     site = run.sites[run.antennas[contact.antenna].site]
-    sun = _sun(run, times, site.latitude_deg, site.longitude_deg)
+    north, east, up = _sun(run, times, site.latitude_deg, site.longitude_deg).T
+    # Where refraction is counted, the Sun too stands where it appears.
+    seen = lifted_deg(run, contact.antenna, np.degrees(np.arcsin(np.clip(up, -1.0, 1.0))))
+    sun = _unit(np.degrees(np.arctan2(east, north)), seen)
     apart = np.degrees(np.arccos(np.clip(np.einsum("ij,ij->i", _unit(azimuth, height), sun), -1.0, 1.0)))
     if np.any(apart < keep_out_deg - _TOLERANCE_SUN_DEG):
         sentence = f"it receives {apart.min():.2f} deg from the Sun, {keep_out_deg:g} deg are required"
