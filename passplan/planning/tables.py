@@ -10,14 +10,10 @@ from passplan.planning.horizon import instants_of
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.options import Candidate, OptionSet
 from passplan.planning.problem import Problem
+from passplan.planning.record import CONTACT_COLUMNS, SEGMENT_COLUMNS
 from passplan.planning.result import PlanResult
 from passplan.planning.rules.terms import Terms
 
-CONTACT_COLUMNS = (
-    "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "frequency_mhz",
-    "polarisation", "start_utc", "end_utc", "duration_s", "usable_s", "modcod", "volume_mb", "min_margin_db",
-    "peak_elevation_deg", "weight", "value", "cost", "origin", "change", "cut")
-SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "data_class", "volume_mb")
 # The only class of data so far.
 DATA_CLASS = "data"
 

@@ -10,10 +10,10 @@ from passplan.planning.maps import storage_maps
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.options import OptionSet
 from passplan.planning.problem import Problem
+from passplan.planning.record import UNUSED_COLUMNS
 from passplan.planning.result import PlanResult
 from passplan.planning.rules.terms import Lane, Terms
 
-UNUSED_COLUMNS = ("window_id", "spacecraft", "antenna", "aos_utc", "los_utc", "reason", "detail")
 REASONS = (
     "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "antenna_turning", "spacecraft_busy",
     "nothing_aboard", "not_worth_it", "interference")
