@@ -17,7 +17,7 @@ from passplan.planning.search.bound import ceiling
 from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import NotForSearchError, fleet_arrays
 
-SEARCH_ONLY = Limits(gap=0.0, exact_options=0, threads=1)
+SEARCH_ONLY = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0)
 
 
 def searched(problem: Problem, limits: Limits = SEARCH_ONLY) -> Found:
