@@ -7,7 +7,7 @@ from typing import Any
 import pandas as pd
 
 STATUS_WORDS = {
-    "optimal": "proven best",
+    "optimal": "best to 0.001 %",
     "within_gap": "within the gap asked for",
     "stopped_by_limit": "stopped by the time limit",
     "greedy": "greedy, no better found in time",

@@ -10,11 +10,11 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from passplan.geometry.masks import mask_of
+from passplan.geometry.sun import sun_look_deg
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.page.lanes import Day, Names
 from passplan.report.rows import grouped, rows
-from passplan.report.sun import sun_path
 from passplan.report.tracks import WindowTrack, thinned
 
 # Enough that a pass bends smoothly on a wide screen, and 3 000 contacts still load.
@@ -57,7 +57,7 @@ def _site(run: Run, name: str, day: Day) -> dict[str, Any]:
     # Half a day more on both sides: the drawing shows the sun's way around any contact.
     seconds = np.arange(-_SUN_REACH_S, day.horizon_s + _SUN_REACH_S + _SUN_STEP_S, _SUN_STEP_S)
     times = day.start_utc.to_datetime64() + (seconds * 1000).astype("timedelta64[ms]")
-    azimuth, elevation = sun_path(run.sites[name], times)
+    azimuth, elevation = sun_look_deg(run.sites[name], times)
     return {
         "name": name,
         "zone": run.sites[name].time_zone,
