@@ -3,8 +3,8 @@
 Columns: one 0/1 per option; per spacecraft, at every instant where the sending of one of its options
 starts or ends, the fill, and between two of them what is sent and what is lost; slack for requirements.
 Rows: "at most one" per maximal clique of every lane; the linear limits of rules; the storage balance between
-instants; sending no more than the chosen options carry; requirements with slack. Fill, sent and lost are in units of the
-spacecraft's storage, to keep the numbers near one.
+instants; sending no more than the chosen options carry; requirements with slack. Fill, sent and lost are in units of
+the spacecraft's storage, to keep the numbers near one.
 
 Between two instants the rate of a chosen option is constant when an option has one piece, and then the
 balance is exact. With stepped rates it is a relaxation: what an option carries between two instants is
