@@ -121,5 +121,4 @@ def _conclude(
 
 def _ceiling(problem: Problem) -> float:
     """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
-    fleet = problem.fleet
-    return float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    return sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)

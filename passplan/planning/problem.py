@@ -8,10 +8,13 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field, fields, replace
+from functools import cached_property
 from typing import Any, Literal, TypeVar
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+
+from passplan.planning.streams import Layer, Stream, layers_of, steady
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -22,16 +25,25 @@ Service = Literal["downlink", "command", "both"]
 
 @dataclass(frozen=True, eq=False)
 class Fleet:
-    """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB]."""
+    """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB].
+
+    ``streams`` are the classes of data of each spacecraft by falling weight, none for one with a single class at a
+    steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill.
+    """
 
     names: tuple[str, ...]
     weight: Floats
     generation_mb_per_s: Floats
     capacity_mb: Floats
     start_fill_mb: Floats
+    streams: tuple[tuple[Stream, ...], ...] = ()
 
     def __post_init__(self) -> None:
         _freeze(self)
+
+    def streams_of(self, craft: int) -> tuple[Stream, ...]:
+        """The classes of one spacecraft, none where the arrays say all."""
+        return self.streams[craft] if self.streams else ()
 
     def __len__(self) -> int:
         return len(self.names)
@@ -176,6 +188,17 @@ class Problem:
     worth_per_money: float = 0.0
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
     needs: tuple[object, ...] = ()
+
+    @cached_property
+    def layers(self) -> tuple[tuple[Layer, ...], ...]:
+        """The storages that stand for each spacecraft (see :mod:`passplan.planning.streams`)."""
+        fleet = self.fleet
+        return tuple(
+            layers_of(
+                fleet.streams_of(k) or (steady("", float(fleet.weight[k]), float(fleet.start_fill_mb[k]),
+                                               float(fleet.generation_mb_per_s[k]), self.horizon_s),),
+                float(fleet.capacity_mb[k]), self.spill_cost_per_mb)
+            for k in range(len(fleet)))
 
     def needs_of(self, kind: type[N]) -> list[N]:
         """The records of one kind, in their order."""

@@ -13,6 +13,7 @@ from passplan.link.expected import PlannedContact, expected_volumes
 from passplan.link.notices import STATISTICS, run_notices
 from passplan.planning.horizon import column_seconds
 from passplan.planning.plan import Plan
+from passplan.planning.record import sending
 
 
 def weather_summary(
@@ -48,8 +49,9 @@ def _planned(
 ) -> tuple[dict[str, PlannedContact], dict[str, float]]:
     """The downlink contacts of a plan, and what their links can carry at the plan's unavailability [MB]."""
     row_of = {name: k for k, name in enumerate(windows["window_id"])}
-    seconds = column_seconds(run, plan.segments["end_utc"]) - column_seconds(run, plan.segments["start_utc"])
-    pieces = plan.segments.assign(link_mb=plan.segments["rate_mbps"] * seconds / 8.0)
+    pieces = sending(plan.segments)
+    seconds = column_seconds(run, pieces["end_utc"]) - column_seconds(run, pieces["start_utc"])
+    pieces = pieces.assign(link_mb=pieces["rate_mbps"] * seconds / 8.0)
     link_mb = pieces.groupby("contact_id")["link_mb"].sum().to_dict()
     rate_mbps = pieces.groupby("contact_id")["rate_mbps"].first().to_dict()
     starts, ends = column_seconds(run, plan.contacts["start_utc"]), column_seconds(run, plan.contacts["end_utc"])

@@ -10,7 +10,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from passplan.planning.record import PlanRecord
+from passplan.planning.record import PlanRecord, sending
 
 Floats = NDArray[np.float64]
 
@@ -34,13 +34,24 @@ def backlogs(record: PlanRecord) -> dict[str, Backlog]:
     start, end = (pd.Timestamp(record.summary[f"horizon_{edge}_utc"].rstrip("Z")) for edge in ("start", "end"))
     horizon_s = (end - start).total_seconds()
     names = record.contacts.set_index("contact_id")["spacecraft"]
-    pieces = record.segments.assign(
-        spacecraft=record.segments["contact_id"].map(names),
-        first_s=(record.segments["start_utc"] - start).dt.total_seconds(),
-        last_s=(record.segments["end_utc"] - start).dt.total_seconds(),
+    sent = sending(record.segments)
+    pieces = sent.assign(
+        spacecraft=sent["contact_id"].map(names),
+        first_s=(sent["start_utc"] - start).dt.total_seconds(),
+        last_s=(sent["end_utc"] - start).dt.total_seconds(),
     ).sort_values("first_s", kind="stable")
     by_craft = dict(tuple(pieces.groupby("spacecraft")))
-    return {name: _follow(store, by_craft.get(name), horizon_s) for name, store in record.summary["storage"].items()}
+    return {
+        name: _drawn(store) if "fill" in store else _follow(store, by_craft.get(name), horizon_s)
+        for name, store in record.summary["storage"].items()
+    }
+
+
+def _drawn(store: Mapping[str, Any]) -> Backlog:
+    """Where generation changes or there are several classes, the plan states the fill itself."""
+    time_s, fill_mb = np.array(store["fill"], dtype=float).T
+    losing = tuple((first, last) for first, last in store["losing_s"] if last - first > 0.5)
+    return Backlog(time_s, fill_mb, store["capacity_mb"], losing)
 
 
 def _follow(store: Mapping[str, Any], pieces: pd.DataFrame | None, horizon_s: float) -> Backlog:
@@ -52,8 +63,8 @@ def _follow(store: Mapping[str, Any], pieces: pd.DataFrame | None, horizon_s: fl
     if pieces is not None:
         for row in pieces.to_dict("records"):
             events += [(row["first_s"], 0.0), (row["last_s"], row["rate_mbps"] / 8.0)]
-    for until, sending in (*events, (horizon_s, 0.0)):
-        slope, length = generation - sending, max(until - clock, 0.0)
+    for until, rate in (*events, (horizon_s, 0.0)):
+        slope, length = generation - rate, max(until - clock, 0.0)
         edge = capacity if slope > 0.0 else 0.0
         turn = (edge - fill) / slope if slope else length
         if 0.0 <= turn < length:
