@@ -6,6 +6,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
+from passplan.inputs.craft_limits import CraftLimits
 from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
 
@@ -87,13 +88,13 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(Record):
+class Spacecraft(CraftLimits):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
     that the spacecraft names itself: ``elements_file`` (one element set) or ``ephemeris_file`` (an OEM,
     which takes precedence). Storage starts the horizon with ``start_fill_mb``. Element sets from before
-    one of ``manoeuvres_utc`` are not used after it, nor those from after it before.
+    one of ``manoeuvres_utc`` are not used after it, nor those from after it before. Limits on its contacts are inherited.
     """
 
     name: Name
