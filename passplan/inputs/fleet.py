@@ -94,7 +94,7 @@ class Spacecraft(CraftLimits):
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
     that the spacecraft names itself: ``elements_file`` (one element set) or ``ephemeris_file`` (an OEM,
     which takes precedence). Storage starts the horizon with ``start_fill_mb``. Element sets from before
-    one of ``manoeuvres_utc`` are not used after it, nor those from after it before. Limits on its contacts are inherited.
+    one of ``manoeuvres_utc`` are not used after it, nor those from after it before.
     """
 
     name: Name

@@ -35,7 +35,8 @@ class CraftJudge(Judge):
         o = self.options
         for after in chosen:
             for before in chosen:
-                if o.spacecraft[after] == o.spacecraft[before] == need.spacecraft and o.end_s[before] <= o.start_s[after]:
+                own = o.spacecraft[after] == o.spacecraft[before] == need.spacecraft
+                if own and o.end_s[before] <= o.start_s[after]:
                     rest_s = o.start_s[after] - o.end_s[before]
                     both_send = o.downlink[before] and o.downlink[after]
                     if rest_s < need.gap_s or (both_send and rest_s < need.cool_down_s):
