@@ -112,12 +112,13 @@ def _conflict(fleet: Fleet, antennas: Antennas, pair: InterferencePair) -> Confl
 def _request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:
     antennas = frozenset(
         k for k, (name, antenna) in enumerate(run.antennas.items())
-        if request.antenna in (None, name) and request.site in (None, antenna.site))
+        if request.antenna in (None, name) and request.site in (None, antenna.site)
+        and (antenna.ranging or request.service != "ranging"))
     craft = fleet.names.index(request.spacecraft) if request.spacecraft in fleet.names else -1
     return RequestNeed(
-        request.name, request.spacecraft, craft, antennas, request.service,
+        request.name, request.spacecraft, craft, antennas, "both" if request.service == "ranging" else request.service,
         math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc)),
-        math.ceil(request.min_duration_s))
+        math.ceil(request.min_duration_s), request.fixed, request.points)
 
 
 def _command_needs(run: Run, fleet: Fleet) -> tuple[CommandNeed, ...]:

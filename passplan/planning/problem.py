@@ -120,7 +120,8 @@ class Options:
 class RequestNeed:
     """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length.
 
-    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall.
+    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall. A ``fixed`` one
+    is met by a contact from ``earliest_s`` to ``latest_s`` only. ``points`` is what missing it weighs.
     """
 
     name: str
@@ -131,6 +132,8 @@ class RequestNeed:
     earliest_s: int
     latest_s: int
     min_duration_s: int
+    fixed: bool = False
+    points: float = 1.0
 
 
 @dataclass(frozen=True)
