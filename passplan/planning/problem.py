@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field, fields, replace
-from typing import Any, Literal
+from typing import Any, Literal, TypeVar
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -16,6 +16,7 @@ from numpy.typing import ArrayLike, NDArray
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 Flags = NDArray[np.bool_]
+N = TypeVar("N")
 Service = Literal["downlink", "command", "both"]
 
 
@@ -119,7 +120,8 @@ class Options:
 class RequestNeed:
     """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length.
 
-    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall.
+    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall. A ``fixed`` one
+    is met by a contact from ``earliest_s`` to ``latest_s`` only. ``points`` is what missing it weighs.
     """
 
     name: str
@@ -130,6 +132,8 @@ class RequestNeed:
     earliest_s: int
     latest_s: int
     min_duration_s: int
+    fixed: bool = False
+    points: float = 1.0
 
 
 @dataclass(frozen=True)
@@ -153,13 +157,28 @@ class Conflict:
     end_s: int
 
 
+@dataclass(frozen=True)
+class Crowd:
+    """From ``start_s`` to ``end_s``, while the victim is heard on its antenna, the ``shares`` of those of the
+    ``interferers`` that send must not add up to more than 1."""
+
+    name: str
+    victim: int
+    antenna: int
+    interferers: tuple[int, ...]
+    shares: tuple[float, ...]
+    start_s: int
+    end_s: int
+
+
 @dataclass(frozen=True, eq=False)
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
     The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
     MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``). ``too_tight`` (k, 2)
-    are pairs of options of one antenna, the earlier first, between which it cannot turn in time.
+    are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
+    records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.
     """
 
     horizon_s: int
@@ -170,9 +189,15 @@ class Problem:
     requests: tuple[RequestNeed, ...] = ()
     commands: tuple[CommandNeed, ...] = ()
     conflicts: tuple[Conflict, ...] = ()
+    crowds: tuple[Crowd, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
+    needs: tuple[object, ...] = ()
+
+    def needs_of(self, kind: type[N]) -> list[N]:
+        """The records of one kind, in their order."""
+        return [need for need in self.needs if isinstance(need, kind)]
 
     def with_options(self, options: Options) -> Problem:
         """The same problem over other options; raises ValueError where pairs of the old ones are named."""
