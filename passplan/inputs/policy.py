@@ -48,6 +48,7 @@ class Policy(Record):
     command_min_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     spill_cost_per_mb: Annotated[float, Field(ge=0.0, le=1e6)] = 0.1
     worth_per_money: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    freeze_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 3.0
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 14.0
     when_elements_fail: Literal["leave_out", "stop"] = "leave_out"

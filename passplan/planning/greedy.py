@@ -27,7 +27,7 @@ def plan_greedily(
     builder = _Builder(problem, terms, maps or storage_maps(problem))
     for o in begin:
         builder.take(int(o))
-    for want in terms.wanted:
+    for want in sorted(terms.wanted, key=lambda want: -want.points):
         builder.meet(want)
     for need in terms.recurrences:
         builder.cover(need)

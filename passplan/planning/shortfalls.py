@@ -12,7 +12,7 @@ from passplan.planning.rules.terms import Recurrence, Terms
 class Shortfall:
     """A requirement that is missed. ``points`` is its part of tier 1.
 
-    ``kind`` is ``request`` or ``command``; ``name`` is the request's name or the spacecraft's. For a command
+    ``kind`` is that of the wanted contact or ``command``; ``name`` is the request's or the spacecraft's. For a command
     interval ``spans_s`` are the half-open spans of time in which the last command contact is too old.
     ``possible`` says whether some single option could have helped.
     """
@@ -26,6 +26,14 @@ class Shortfall:
     spans_s: tuple[tuple[int, int], ...] = ()
 
 
+_WANTED = {
+    "request": "Request {name} for {owner} is not met",
+    "pin": "The pinned contact, {name}, is not in the plan",
+    "frozen": "The frozen contact, {name}, is not in the plan as it was published",
+    "emergency": "The emergency contact, {name}, is not in the plan",
+}
+
+
 def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...]:
     """Every requirement in ``terms`` that the chosen options do not meet, in the order of the terms."""
     picked = {int(o) for o in chosen}
@@ -36,8 +44,8 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
                 "no window of the spacecraft offers a contact that fits its span, antenna, service and length"
                 if len(want.options) == 0 else "every contact that would fit it collides with other requirements")
             found.append(Shortfall(
-                "request", want.name, want.owner, want.points,
-                f"Request {want.name} for {want.owner} is not met: {why}.", len(want.options) > 0))
+                want.kind, want.name, want.owner, want.points,
+                f"{_WANTED[want.kind].format(name=want.name, owner=want.owner)}: {why}.", len(want.options) > 0))
     for need in terms.recurrences:
         spans = overdue_spans(need, picked)
         if spans:

@@ -20,11 +20,13 @@ Shortfalls are counted in points and are minimised before any value is looked at
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Literal, Protocol
 
 import numpy as np
 
 from passplan.planning.problem import Floats, Integers, Problem
+
+WantedKind = Literal["request", "pin", "frozen", "emergency"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -82,7 +84,7 @@ class Rows:
 class Wanted:
     """At least one of ``options``, all of the spacecraft ``owner``, or a shortfall of ``points``.
 
-    ``reason`` says why there are no options, if the rule knows.
+    ``reason`` says why there are no options, if the rule knows. ``kind`` says who wants it.
     """
 
     name: str
@@ -90,6 +92,7 @@ class Wanted:
     options: Integers
     points: float = 1.0
     reason: str = ""
+    kind: WantedKind = "request"
 
 
 @dataclass(frozen=True, eq=False)
