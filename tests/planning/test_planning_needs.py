@@ -17,7 +17,7 @@ ONE = [("Teasel-1", "Isvarde-A", 600, 1_800)]
 
 
 @pytest.mark.parametrize("block", range(10))
-def test_100_cases_with_weighed_and_fixed_requests_equal_the_best_of_all_plans(block: int) -> None:
+def test_100_cases_with_more_kinds_of_needs_equal_the_best_of_all_plans(block: int) -> None:
     for seed in range(10 * block, 10 * block + 10):
         problem = needy_problem(seed)
         judge = NeedJudge(problem)
