@@ -15,7 +15,14 @@ from pydantic import TypeAdapter
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
-from passplan.inputs.crosscheck import check_fleet, check_ground, check_matches, check_mounts, check_requests
+from passplan.inputs.crosscheck import (
+    check_fleet,
+    check_ground,
+    check_guarantees,
+    check_matches,
+    check_mounts,
+    check_requests,
+)
 from passplan.inputs.decisions import read_decisions, read_published, with_last_commands
 from passplan.inputs.elements.resolve import ElementsError, resolve_orbits
 from passplan.inputs.errors import Findings, nearest
@@ -81,6 +88,8 @@ def load_run(
                                reader, findings)
     published = () if settings.published is None else read_published(
         beside(path, settings.published), fleet.spacecraft, ground.antennas, reader, findings)
+    named = beside(path, settings.policy) if isinstance(settings.policy, str) else path
+    check_guarantees(rules, fleet.spacecraft, named, findings)
     sites = _rained_on(ground.sites, settings, path, findings)
     limits: tuple[PfdLimit, ...] = builtin_pfd_limits()
     if settings.pfd_limits is not None:

@@ -13,6 +13,8 @@ Edit = Callable[[str, str, str], Path]
 Lines = Callable[[], list[str]]
 
 REQUESTS = "sample_fleet/requests.toml"
+FLEET, DAILY = "sample_fleet/fleet.toml", "configs/daily.toml"
+STORE = "storage_mb = 16000"
 LENGTH = "min_duration_s = 300"
 
 
@@ -23,6 +25,11 @@ LENGTH = "min_duration_s = 300"
         (REQUESTS, LENGTH, "points = 11", ("request[1]", "points", "at most 10")),
         (REQUESTS, LENGTH, "fixed = 3", ("request[1]", "fixed", "write true or false")),
         (REQUESTS, 'service = "both"', 'service = "rangin"', ("service", "write one of", "'ranging'")),
+        (FLEET, STORE, STORE + "\nleast_contacts_per_day = 0", ("least_contacts_per_day", "at least 1")),
+        (FLEET, STORE, STORE + "\nleast_mb_per_day = 0", ("least_mb_per_day", "above 0")),
+        (DAILY, "gap = 0.005", 'guarantee = [{ mission = "sea stat", mb = 5 }]', ("[1].mission", "did you mean")),
+        (DAILY, "gap = 0.005", 'guarantee = [{ mission = "land" }]', ("needs contacts, mb or both",)),
+        (DAILY, "gap = 0.005", 'guarantee = [{ mission = "land", mb = 5, days = 0 }]', ("days", "at least 1")),
         (REQUESTS, 'service = "both"', 'service = "ranging"', ("service", "set ranging = true")),
     ],
 )

@@ -11,6 +11,7 @@ from planning_cases import STEP_S, Judge, random_problem
 
 from passplan.planning.problem import Problem, RequestNeed
 from passplan.planning.rules.decisions import POINTS, DecidedContact, ForbiddenWindow
+from passplan.planning.rules.guarantees import GuaranteeNeed
 
 
 def needy_problem(seed: int) -> Problem:
@@ -28,7 +29,8 @@ def needy_problem(seed: int) -> Problem:
             frozenset(rng.sample(range(dishes), rng.randint(1, dishes))),
             rng.choice(["downlink", "command", "both"]), int(options.start_s[o]) - slack,
             int(options.end_s[o]) + slack, rng.randint(1, 3) * STEP_S, fixed, rng.choice([0.5, 1.0, 3.0])))
-    return replace(problem, requests=tuple(requests), needs=(*problem.needs, *_decisions(problem, rng)))
+    needs = (*problem.needs, *_decisions(problem, rng), *_guarantees(problem, rng))
+    return replace(problem, requests=tuple(requests), needs=needs)
 
 
 def _decisions(problem: Problem, rng: random.Random) -> Iterator[DecidedContact | ForbiddenWindow]:
@@ -43,6 +45,15 @@ def _decisions(problem: Problem, rng: random.Random) -> Iterator[DecidedContact 
         yield ForbiddenWindow(np.flatnonzero(options.window == rng.randrange(len(problem.windows))), "forbidden: x")
 
 
+def _guarantees(problem: Problem, rng: random.Random) -> Iterator[GuaranteeNeed]:
+    for k in range(rng.randrange(3)):
+        crew = frozenset(rng.sample(range(len(problem.fleet)), rng.randint(1, len(problem.fleet))))
+        unit = rng.choice(["contacts", "MB"])
+        low = rng.randrange(problem.horizon_s // STEP_S) * STEP_S if rng.random() < 0.3 else 0
+        need = float(rng.randint(1, 4)) if unit == "contacts" else rng.choice([50.0, 333.0, 1e4])
+        yield GuaranteeNeed("daily", f"{unit} {k}", crew, unit, need, low, problem.horizon_s)
+
+
 class NeedJudge(Judge):
     """Adds what weighs more or less than a plain request."""
 
@@ -54,7 +65,18 @@ class NeedJudge(Judge):
             total -= 0.0 if any(self._meets(k, need) for k in chosen) else 1.0
         for wish in self.problem.needs_of(DecidedContact):
             total += 0.0 if chosen & set(wish.options.tolist()) else POINTS[wish.kind]
+        for promise in self.problem.needs_of(GuaranteeNeed):
+            mine = [k for k in chosen if int(self.options.spacecraft[k]) in promise.spacecraft
+                    and promise.start_s <= int(self.options.start_s[k]) < promise.end_s]
+            got = sum(1.0 if promise.unit == "contacts" else self._carried_mb(k) for k in mine)
+            total += max(0.0, 1.0 - got / promise.need)
         return total
+
+    def _carried_mb(self, k: int) -> float:
+        o, fleet, craft = self.options, self.problem.fleet, int(self.options.spacecraft[k])
+        link = sum(float(o.piece_rate_mb_per_s[p]) * int(o.piece_end_s[p] - o.piece_start_s[p]) for p in o.pieces(k))
+        made = float(fleet.generation_mb_per_s[craft]) * int(o.end_s[k] - o.start_s[k])
+        return min(link, float(fleet.capacity_mb[craft]) + made)
 
     def kept(self, chosen: Iterable[int]) -> bool:
         """Whether limits are kept and nothing forbidden is used."""

@@ -13,11 +13,15 @@ from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.planning.audit.decisions import decided, frozen
 from passplan.planning.audit.faults import Fault
+from passplan.planning.audit.guarantees import promised
 from passplan.planning.audit.rows import Contact
 from passplan.planning.audit.standing import Standing
 
 # Plans count in whole seconds; within a second of the limit either answer is right.
 _TOLERANCE_S = 1.0
+
+
+_PLACES = {"command": "spacecraft", "daily": "the", "guarantee": "the"}
 
 
 def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[str, Any]) -> Iterator[Fault]:
@@ -29,9 +33,10 @@ def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[s
             standings["command", name] = _command(run, name, every_h, contacts)
     standings.update(decided(run, contacts))
     standings.update(frozen(run, contacts))
+    standings.update(promised(run, contacts))
     admitted = [(str(entry.get("kind")), str(entry.get("name"))) for entry in summary.get("shortfalls", [])]
     for (kind, name), standing in standings.items():
-        place = f"spacecraft {name}" if kind == "command" else f"{kind} {name}"
+        place = f"{_PLACES.get(kind, kind)} {name}"
         listed = (kind, name) in admitted
         if standing.missed and not listed:
             yield Fault(kind, place, f"{standing.sentence}, and the plan does not say so")

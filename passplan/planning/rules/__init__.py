@@ -18,6 +18,7 @@ from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
 from passplan.planning.rules.decisions import decision_needs, decision_wishes, decisions, forbid_blocks
+from passplan.planning.rules.guarantees import guarantee_needs, guarantees
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.slew_time import slew_time
@@ -33,6 +34,7 @@ RULES: tuple[Rule, ...] = (
     command_interval,
     interference,
     decisions,
+    guarantees,
 )
 BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (
     closure_blocks,
@@ -45,6 +47,7 @@ WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (
 NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
     gap_needs,
     decision_needs,
+    guarantee_needs,
 )
 
 

@@ -12,6 +12,7 @@ from audit_bench import Bench
 
 from passplan.inputs.calendar_records import Request
 from passplan.inputs.decisions import Decision, Published
+from passplan.inputs.policy import Guarantee
 
 
 def _sentences(bench: Bench, kind: str) -> str:
@@ -117,3 +118,33 @@ def test_a_frozen_contact_may_end_where_the_antenna_can_follow_no_longer(bench: 
     there["end_utc"] += pd.Timedelta(seconds=60).to_pytimedelta()
     bench.run = replace(bench.run, published=(Published(**there),))
     assert "no contact is as it was published" in _sentences(bench, "frozen")
+
+
+def test_a_contact_less_than_due(bench: Bench) -> None:
+    name = "Teasel-1"
+    have = int((bench.contacts["spacecraft"] == name).sum())
+    craft = bench.run.spacecraft[name].model_copy(update={"least_contacts_per_day": have})
+    bench.run = replace(bench.run, spacecraft={**bench.run.spacecraft, name: craft})
+    assert bench.audit() == []
+    last = int(np.flatnonzero(bench.contacts["spacecraft"] == name)[-1])
+    bench.set_contact(last, spacecraft="Teasel-3")
+    said = f"the contacts of Teasel-1 on 2027-03-09: {have - 1} contacts of {have}, and the plan"
+    assert said in _sentences(bench, "daily")
+
+
+def test_a_mission_with_less_than_it_was_promised(bench: Bench) -> None:
+    mission = bench.run.spacecraft["Teasel-1"].mission
+    carried = 0.0
+    for row in bench.segments.to_dict("records"):
+        owner = bench.contacts.set_index("contact_id").loc[row["contact_id"]]
+        craft = bench.run.spacecraft[owner["spacecraft"]]
+        if craft.mission == mission:
+            seconds = (row["end_utc"] - row["start_utc"]).total_seconds()
+            carried += min(row["rate_mbps"] / 8 * seconds,
+                           craft.storage_mb + craft.generation_mb_per_s * owner["duration_s"])
+    for need, kinds in ((0.999 * carried, set()), (1.001 * carried, {"guarantee"})):
+        policy = bench.run.policy.model_copy(update={"guarantee": (Guarantee(mission=mission, mb=need),)})
+        bench.run = replace(bench.run, policy=policy)
+        assert bench.kinds() == kinds
+    bench.summary["shortfalls"] = [{"kind": "guarantee", "name": f"MB of mission {mission} on 2027-03-09"}]
+    assert bench.kinds() == set()
