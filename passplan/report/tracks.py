@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -11,7 +10,7 @@ from numpy.typing import NDArray
 
 from passplan.geometry.losses import merged
 from passplan.inputs.run import Run
-from passplan.link.choice import Track as LinkTrack
+from passplan.link.allowed import allowed_mbps
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.steps import losses_of, samples_of
 
@@ -73,16 +72,6 @@ def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
             )
         )
     return tracks
-
-
-def allowed_mbps(tracks: Sequence[LinkTrack], time_s: Floats, margin_db: float) -> Floats:
-    """The fastest rate over all tracks at each time that leaves ``margin_db``; 0 where none does."""
-    best = np.zeros(time_s.size)
-    for track in tracks:
-        quality_db = np.interp(time_s, track.time_s, track.quality_db) - margin_db
-        for rung in track.chain.rungs:
-            best = np.where(quality_db >= rung.required_db, np.maximum(best, rung.rate_mbps), best)
-    return best
 
 
 def thinned(count: int, most: int) -> NDArray[np.int64]:

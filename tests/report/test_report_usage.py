@@ -12,7 +12,7 @@ from passplan.planning.record import PlanRecord
 from passplan.planning.unused import REASONS
 from passplan.report.selection import Selection, select
 from passplan.report.tracks import thinned, window_tracks
-from passplan.report.usage import REASON_WORDS, antenna_use, causes, reason_words
+from passplan.report.usage import REASON_WORDS, antenna_use, causes, lost_causes, reason_words
 from passplan.report.words import rate
 
 
@@ -34,6 +34,18 @@ def test_causes_add_up_to_the_unused_windows(short_plan: PlanRecord, short_run: 
     assert capacity == sorted(capacity, reverse=True)
     assert all(np.isfinite(capacity))
     assert all(np.isnan(cause.could_carry_mb) for cause in causes(short_plan))
+
+
+def test_causes_of_lost_value_add_up_over_the_fleet_and_over_a_part(short_plan: PlanRecord) -> None:
+    for summary in (short_plan.summary, select(short_plan, Selection(spacecraft="Ambril-2")).summary):
+        found, stores = lost_causes(summary), summary["storage"].values()
+        assert sum(one.lost_mb for one in found) == pytest.approx(sum(s["lost_mb"] for s in stores), abs=1e-9)
+        assert sum(one.left_mb for one in found) == pytest.approx(sum(s["left_mb"] for s in stores), rel=1e-12)
+        values = [one.lost_value for one in found]
+        assert values == sorted(values, reverse=True)
+        assert {one.cause for one in found} <= set(REASON_WORDS)
+    older = {key: entry for key, entry in short_plan.summary.items() if key != "lost_value"}
+    assert lost_causes(older) == []
 
 
 def test_every_reason_has_words() -> None:
