@@ -2,9 +2,9 @@
 
 Columns: one 0/1 per option; per spacecraft, at every instant where the sending of one of its options
 starts or ends, the fill, and between two of them what is sent and what is lost; slack for requirements.
-Rows: "at most one" per maximal clique of every lane; the storage balance between instants; sending no
-more than the chosen options carry; requirements with slack. Fill, sent and lost are in units of the
-spacecraft's storage, to keep the numbers near one.
+Rows: "at most one" per maximal clique of every lane; the linear limits of rules; the storage balance between
+instants; sending no more than the chosen options carry; requirements with slack. Fill, sent and lost are in units of
+the spacecraft's storage, to keep the numbers near one.
 
 Between two instants the rate of a chosen option is constant when an option has one piece, and then the
 balance is exact. With stepped rates it is a relaxation: what an option carries between two instants is
@@ -20,7 +20,7 @@ from ortools.math_opt import model_pb2
 
 from passplan.planning.cliques import clique_spans
 from passplan.planning.problem import Floats, Integers, Problem, ragged_ranges
-from passplan.planning.rules.terms import Lane, Recurrence, Terms
+from passplan.planning.rules.terms import Lane, Recurrence, Rows, Terms
 
 _INFINITY = float("inf")
 
@@ -92,6 +92,8 @@ def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> Plan
     block.add_columns(upper=upper, value=-problem.worth_per_money * problem.options.cost, integer=True)
     for lane in terms.lanes:
         _add_lane(block, lane)
+    for rows in terms.rows:
+        _add_rows(block, rows)
     for craft in range(len(problem.fleet) if storage else 0):
         _add_storage(block, problem, craft)
     for want in terms.wanted:
@@ -114,6 +116,14 @@ def _add_lane(block: _Blocks, lane: Lane) -> None:
     row_of[binding] = block.add_rows(upper=np.ones(len(binding)))
     kept = row_of[clique] >= 0
     block.add_entries(row_of[clique[kept]], member[kept], np.ones(int(kept.sum())))
+
+
+def _add_rows(block: _Blocks, rows: Rows) -> None:
+    # Limits near one keep the solver's tolerances meaningful; a limit of nothing is taken as it stands.
+    unit = np.where(rows.limit > 0.0, rows.limit, 1.0)
+    numbers = block.add_rows(upper=rows.limit / unit)
+    row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
+    block.add_entries(numbers[row], rows.options, rows.amounts / unit[row])
 
 
 def _add_storage(block: _Blocks, problem: Problem, craft: int) -> None:

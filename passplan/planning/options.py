@@ -11,36 +11,47 @@ import pandas as pd
 
 from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
-from passplan.link.choice import CommandChoice, DownlinkChoice, WindowLink
+from passplan.link.choice import WindowLink
 from passplan.planning.cuts import Cuts, neighbour_cuts, spread
-from passplan.planning.horizon import column_seconds, seconds_of
+from passplan.planning.hooks import Block, Candidate, Wish
+from passplan.planning.horizon import column_seconds
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
-
-
-@dataclass(frozen=True)
-class Candidate:
-    """One option with the link choices behind it."""
-
-    window: int
-    start_s: int
-    end_s: int
-    downlink: DownlinkChoice | None
-    command: CommandChoice | None
-    cost: float
 
 
 @dataclass(frozen=True, eq=False)
 class OptionSet:
     """Options with their ``candidates`` (same order), and why windows give none.
 
-    ``excluded`` maps such a window to (reason, detail). ``blocked`` lists, for each antenna, the half-open
-    intervals [s] that no contact may touch: closures, with time to release before and to prepare after.
+    ``excluded`` maps such a window to (reason, detail). ``blocked`` knows the time that no contact may touch.
     """
 
     options: Options
     candidates: tuple[Candidate, ...]
     excluded: Mapping[int, tuple[str, str]]
-    blocked: tuple[tuple[tuple[int, int], ...], ...]
+    blocked: BlockedTime
+
+
+class BlockedTime:
+    """The blocks of every pair of spacecraft and antenna, with time to release before and to prepare after."""
+
+    def __init__(self, blocks: Sequence[Block], antennas: Antennas) -> None:
+        self._of: dict[tuple[str | None, str | None], list[Block]] = {}
+        for block in blocks:
+            self._of.setdefault((block.spacecraft, block.antenna), []).append(block)
+        pairs = zip(antennas.prepare_s.tolist(), antennas.release_s.tolist(), strict=True)
+        self._setup_s = dict(zip(antennas.names, pairs, strict=True))
+
+    def between(self, craft: str, antenna: str, low_s: int, high_s: int) -> list[tuple[int, int, Block]]:
+        """Blocks that touch [low_s, high_s), as (start, end, block) with the antenna's setup, in time order."""
+        prepare_s, release_s = self._setup_s[antenna]
+        found = []
+        for key in ((craft, antenna), (craft, None), (None, antenna), (None, None)):
+            for block in self._of.get(key, ()):
+                a = block.start_s - (release_s if block.setup else 0)
+                b = block.end_s + (prepare_s if block.setup else 0)
+                if a < high_s and b > low_s:
+                    found.append((a, b, block))
+        return sorted(found, key=lambda entry: entry[:2])
 
 
 def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Antennas) -> Windows:
@@ -62,9 +73,11 @@ def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Anten
 
 def find_options(
     run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
+    blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (),
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
-    builder = _Builder(run, windows, fleet, antennas)
+    blocked = BlockedTime(blocks, antennas)
+    builder = _Builder(run, windows, fleet, antennas, blocked, wishes)
     cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
     candidates: list[Candidate] = []
     excluded: dict[int, tuple[str, str]] = {}
@@ -79,33 +92,29 @@ def find_options(
         "pieces": [] if c.downlink is None else [
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
     } for c in candidates]
-    blocked = tuple(tuple(builder.blocked[name]) for name in antennas.names)
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
 
 class _Builder:
-    def __init__(self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas) -> None:
-        self.run, self.windows, self.policy = run, windows, run.policy
+    def __init__(
+        self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, blocked: BlockedTime,
+        wishes: Sequence[Wish],
+    ) -> None:
+        self.run, self.windows, self.policy, self.blocked = run, windows, run.policy, blocked
         self.shortest_s = math.ceil(run.policy.min_contact_s)
         self.craft_names, self.antenna_names = fleet.names, antennas.names
-        self.blocked: dict[str, list[tuple[int, int]]] = {name: [] for name in antennas.names}
-        for closure in run.closures:
-            k = antennas.names.index(closure.antenna)
-            self.blocked[closure.antenna].append((
-                math.floor(seconds_of(run, closure.start_utc)) - int(antennas.release_s[k]),
-                math.ceil(seconds_of(run, closure.end_utc)) + int(antennas.prepare_s[k])))
-        # A requested contact must be able to start at the earliest and end at the latest instant.
-        self.asked: dict[str, list[tuple[int, int]]] = {}
-        for request in run.requests:
-            self.asked.setdefault(request.spacecraft, []).append((
-                math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc))))
+        self.asked: dict[str, list[Wish]] = {}
+        for wish in wishes:
+            self.asked.setdefault(wish.spacecraft, []).append(wish)
 
     def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
         """The options of one window, longest first, or the reason why there are none."""
         start_s, end_s = int(self.windows.start_s[w]), int(self.windows.end_s[w])
         craft, antenna = self._names(w)
-        pieces = [p for p in _subtract(start_s, end_s, self.blocked[antenna]) if p[1] - p[0] >= self.shortest_s]
-        reason = self._unusable(w, link, pieces)
+        blocks = self.blocked.between(craft, antenna, start_s, end_s)
+        free = _subtract(start_s, end_s, [(a, b) for a, b, _ in blocks])
+        pieces = [p for p in free if p[1] - p[0] >= self.shortest_s]
+        reason = self._unusable(w, link, pieces, [block for _, _, block in blocks])
         found = [] if reason else [c for low, high in pieces for c in self._of_piece(w, link, low, high, cuts)]
         useful = [c for c in found if c.downlink is not None or self._commands_wanted(craft)]
         if not useful:
@@ -115,14 +124,17 @@ class _Builder:
         useful = self._undominated(useful, craft)
         return sorted(useful[: self.policy.options_per_window], key=lambda c: (c.start_s, c.end_s)), ("", "")
 
-    def _unusable(self, w: int, link: WindowLink, pieces: Sequence[tuple[int, int]]) -> tuple[str, str] | None:
+    def _unusable(
+        self, w: int, link: WindowLink, pieces: Sequence[tuple[int, int]], blocks: Sequence[Block],
+    ) -> tuple[str, str] | None:
         """Why no contact at all is possible in a window, if that can be seen before looking at the link."""
         craft, antenna = self._names(w)
         length_s = int(self.windows.end_s[w] - self.windows.start_s[w])
         if length_s < self.shortest_s:
             return "too_short", f"{length_s} s, less than the {self.shortest_s} s that a contact needs"
         if not pieces:
-            return "closure", f"{antenna} is closed, or preparing or releasing beside a closure"
+            longest = max(blocks, key=lambda block: block.end_s - block.start_s)
+            return longest.reason, longest.detail
         if link.downlink is None and link.command is None:
             if chains_between(self.run, craft, antenna):
                 return "no_margin", f"the margin never reaches {self.policy.required_margin_db:g} dB"
@@ -131,7 +143,7 @@ class _Builder:
 
     def _of_piece(self, w: int, link: WindowLink, low: int, high: int, cuts: Cuts) -> Iterator[Candidate]:
         """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""
-        craft, _ = self._names(w)
+        craft, antenna = self._names(w)
         most = self.policy.options_per_window
         must_start, must_end = {low}, {high}
         whole = self._candidate(w, link, low, high)
@@ -140,9 +152,10 @@ class _Builder:
             radio = self.run.radios[whole.downlink.radio]
             must_start.add(max(low, math.floor(whole.downlink.send_start_s - radio.acquisition_s)))
             must_end.add(min(high, whole.downlink.send_end_s))
-        for earliest_s, latest_s in self.asked.get(craft, ()):
-            must_start.add(min(max(low, earliest_s), high))
-            must_end.add(max(min(high, latest_s), low))
+        for wish in self.asked.get(craft, ()):
+            if wish.antenna in (None, antenna):
+                must_start.add(min(max(low, wish.start_s), high))
+                must_end.add(max(min(high, wish.end_s), low))
         grid_s = self.policy.cut_grid_s
         grid = range(-(-low // grid_s) * grid_s, high, grid_s) if grid_s else range(0)
         inner = math.isqrt(most - 1) + 1 if most > 1 else 0

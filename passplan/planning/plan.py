@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
@@ -14,12 +14,13 @@ from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
 from passplan.link.interference import InterferencePair
 from passplan.planning.clock import Clock
+from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
 from passplan.planning.problem import Antennas, CommandNeed, Conflict, Fleet, Limits, Problem, RequestNeed
 from passplan.planning.result import PlanResult
-from passplan.planning.rules import all_terms
+from passplan.planning.rules import BLOCKS, NEEDS, WISHES, all_terms
 from passplan.planning.tables import contacts_table, segments_table
 from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
@@ -88,14 +89,17 @@ def build_problem(
         prepare_s=np.array([math.ceil(a.prepare_s) for a in run.antennas.values()], dtype=np.int64),
         release_s=np.array([math.ceil(a.release_s) for a in run.antennas.values()], dtype=np.int64))
     arrays = window_arrays(run, windows, fleet, antennas)
-    option_set = find_options(run, arrays, fleet, antennas, links)
+    blocks = [block for find in BLOCKS for block in find(run)]
+    wishes = [wish for find in WISHES for wish in find(run)]
+    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes)
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),
         commands=_command_needs(run, fleet), conflicts=tuple(_conflict(fleet, antennas, pair) for pair in pairs),
         spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
-    return problem, option_set
+    draft = Draft(run, windows, problem, option_set.candidates)
+    return replace(problem, needs=tuple(need for find in NEEDS for need in find(draft))), option_set
 
 
 def _conflict(fleet: Fleet, antennas: Antennas, pair: InterferencePair) -> Conflict:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field, fields, replace
-from typing import Any, Literal
+from typing import Any, Literal, TypeVar
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -16,6 +16,7 @@ from numpy.typing import ArrayLike, NDArray
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 Flags = NDArray[np.bool_]
+N = TypeVar("N")
 Service = Literal["downlink", "command", "both"]
 
 
@@ -159,7 +160,8 @@ class Problem:
 
     The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
     MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``). ``too_tight`` (k, 2)
-    are pairs of options of one antenna, the earlier first, between which it cannot turn in time.
+    are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
+    records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.
     """
 
     horizon_s: int
@@ -173,6 +175,11 @@ class Problem:
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
+    needs: tuple[object, ...] = ()
+
+    def needs_of(self, kind: type[N]) -> list[N]:
+        """The records of one kind, in their order."""
+        return [need for need in self.needs if isinstance(need, kind)]
 
     def with_options(self, options: Options) -> Problem:
         """The same problem over other options; raises ValueError where pairs of the old ones are named."""

@@ -6,9 +6,10 @@ import numpy as np
 import pandas as pd
 
 from passplan.inputs.run import Run
+from passplan.planning.hooks import Candidate
 from passplan.planning.horizon import instants_of
 from passplan.planning.occupancy import Occupancy
-from passplan.planning.options import Candidate, OptionSet
+from passplan.planning.options import OptionSet
 from passplan.planning.problem import Problem
 from passplan.planning.record import CONTACT_COLUMNS, SEGMENT_COLUMNS
 from passplan.planning.result import PlanResult
@@ -116,12 +117,14 @@ class _CutExplainer:
 
     def _side(self, option: int, longer: list[int], low_s: int, high_s: int) -> str:
         for o in longer:
-            for lane, _ in self.occupancy.blockers(o):
-                return lane.kind
+            for blocker in self.occupancy.blockers(o):
+                return blocker.kind
         if longer:
             return "nothing_aboard"
-        blocked = self.option_set.blocked[int(self.problem.options.antenna[option])]
-        return "closure" if any(a < high_s and b > low_s for a, b in blocked) else "no_margin"
+        craft = self.problem.fleet.names[int(self.problem.options.spacecraft[option])]
+        antenna = self.problem.antennas.names[int(self.problem.options.antenna[option])]
+        blocks = self.option_set.blocked.between(craft, antenna, low_s, high_s)
+        return blocks[0][2].reason if blocks else "no_margin"
 
 
 def _typed(table: pd.DataFrame, run: Run, texts: tuple[str, ...]) -> pd.DataFrame:

@@ -7,12 +7,12 @@ import pandas as pd
 
 from passplan.planning.greedy import gain_of
 from passplan.planning.maps import storage_maps
-from passplan.planning.occupancy import Occupancy
+from passplan.planning.occupancy import Blocker, Occupancy
 from passplan.planning.options import OptionSet
 from passplan.planning.problem import Problem
 from passplan.planning.record import UNUSED_COLUMNS
 from passplan.planning.result import PlanResult
-from passplan.planning.rules.terms import Lane, Terms
+from passplan.planning.rules.terms import Terms
 
 REASONS = (
     "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "antenna_turning", "spacecraft_busy",
@@ -62,8 +62,8 @@ class _Explainer:
         # The option with the fewest contacts in its way says most; among those, the longest.
         stuck = min(usable, key=lambda o: (
             len(set(self.occupancy.blockers(o))), int(options.start_s[o] - options.end_s[o])))
-        lane, other = next(iter(self.occupancy.blockers(stuck)))
-        return lane.kind, self._sentence(lane, other)
+        blocker = next(iter(self.occupancy.blockers(stuck)))
+        return blocker.kind, self._sentence(blocker, stuck)
 
     def _why_not_taken(self, free: list[int]) -> tuple[str, str]:
         problem = self.problem
@@ -76,10 +76,12 @@ class _Explainer:
             return "nothing_aboard", f"the other contacts of {name} bring down as much without it"
         return "not_worth_it", f"it would add {gain + cost:.6g} in value at a cost of {cost:.6g}"
 
-    def _sentence(self, lane: Lane, other: int) -> str:
-        options, fleet = self.problem.options, self.problem.fleet
+    def _sentence(self, blocker: Blocker, stuck: int) -> str:
+        options, fleet, other = self.problem.options, self.problem.fleet, blocker.option
+        if other == stuck:
+            return f"{blocker.name}: it would need more than there is"
         a, b = (str(self.start_utc.astype("datetime64[s]") + np.timedelta64(int(t), "s"))[11:]
                 for t in (options.start_s[other], options.end_s[other]))
         craft = fleet.names[int(options.spacecraft[other])]
         antenna = self.problem.antennas.names[int(options.antenna[other])]
-        return f"{lane.name} is taken: {craft} on {antenna} from {a} to {b} UTC"
+        return f"{blocker.name} is taken: {craft} on {antenna} from {a} to {b} UTC"

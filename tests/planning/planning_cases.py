@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import random
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from typing import Any
 
 import numpy as np
@@ -92,8 +92,9 @@ def random_problem(seed: int, *, needs: bool = True, windows: int = 12) -> Probl
 class Judge:
     """Points and value of a set of options, by stepping through time; everything on the 60 s grid."""
 
-    def __init__(self, problem: Problem) -> None:
+    def __init__(self, problem: Problem, limits: Sequence[tuple[Sequence[int], Sequence[float], float]] = ()) -> None:
         self.problem, self.options = problem, problem.options
+        self.limits = [(dict(zip(some, amounts, strict=True)), most) for some, amounts, most in limits]
         self.steps = problem.horizon_s // STEP_S
         self.tight = {(int(a), int(b)) for a, b in problem.too_tight}
         self._craft_value: dict[tuple[int, frozenset[int]], float] = {}
@@ -110,12 +111,16 @@ class Judge:
         setup_s = int(dishes.release_s[dish] + dishes.prepare_s[dish])
         return bool(o.antenna[a] != o.antenna[b] or o.start_s[second] >= o.end_s[first] + setup_s)
 
+    def kept(self, chosen: Iterable[int]) -> bool:
+        """Whether the amounts of the chosen options stay within every limit."""
+        return all(sum(amounts.get(o, 0.0) for o in chosen) <= most + 1e-9 for amounts, most in self.limits)
+
     def plans(self) -> Iterator[frozenset[int]]:
         """Every set of options that can be used together."""
         def grow(chosen: tuple[int, ...], following: int) -> Iterator[frozenset[int]]:
             yield frozenset(chosen)
             for o in range(following, len(self.options)):
-                if all(self.compatible(o, other) for other in chosen):
+                if all(self.compatible(o, other) for other in chosen) and self.kept((*chosen, o)):
                     yield from grow((*chosen, o), o + 1)
         return grow((), 0)
 

@@ -32,7 +32,7 @@ def test_occupancy_names_what_stands_in_the_way() -> None:
     occupancy.add(0)
     assert not occupancy.fits(1)
     assert occupancy.fits(2)
-    assert [(lane.kind, other) for lane, other in occupancy.blockers(1)] == [("antenna_busy", 0)]
+    assert [(blocker.kind, blocker.option) for blocker in occupancy.blockers(1)] == [("antenna_busy", 0)]
     occupancy.remove(0)
     assert occupancy.fits(1)
     assert "breaks" in str(first_conflict(all_terms(problem), 3, [0, 1]))

@@ -1,21 +1,31 @@
 """One module per operational rule; ``RULES`` lists those that are in force.
 
 To add a rule, write a module with a function that takes a :class:`~passplan.planning.problem.Problem` and
-returns :class:`~passplan.planning.rules.terms.Terms`, and list it here. Nothing else changes.
+returns :class:`~passplan.planning.rules.terms.Terms`, and list it in ``RULES``. A rule that has something to say
+earlier lists more functions: in ``BLOCKS`` and ``WISHES`` before there are options, in ``NEEDS`` to read what it
+wants of the run into records of its own (see ``hooks.py``). Nothing else changes.
 """
 
 from __future__ import annotations
 
+from collections.abc import Callable, Iterable
+
+from passplan.inputs.run import Run
+from passplan.planning.hooks import Block, Draft, Wish
 from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
+from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.interference import interference
-from passplan.planning.rules.requests import requests
+from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (antenna_time, slew_time, spacecraft_time, requests, command_interval, interference)
+BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (closure_blocks,)
+WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (request_wishes,)
+NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = ()
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:

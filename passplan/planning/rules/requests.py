@@ -2,8 +2,14 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Iterator
+
 import numpy as np
 
+from passplan.inputs.run import Run
+from passplan.planning.hooks import Wish
+from passplan.planning.horizon import seconds_of
 from passplan.planning.problem import Flags, Options, Problem, RequestNeed
 from passplan.planning.rules.terms import Terms, Wanted
 
@@ -15,6 +21,14 @@ def requests(problem: Problem) -> Terms:
         reason = "the spacecraft takes no part in this run" if need.spacecraft < 0 else ""
         wanted.append(Wanted(need.name, need.craft_name, np.flatnonzero(fits(problem.options, need)), reason=reason))
     return Terms(wanted=tuple(wanted))
+
+
+def request_wishes(run: Run) -> Iterator[Wish]:
+    """A requested contact must be able to start at the earliest and to end at the latest instant."""
+    for request in run.requests:
+        yield Wish(
+            request.spacecraft, None, math.ceil(seconds_of(run, request.earliest_utc)),
+            math.floor(seconds_of(run, request.latest_utc)))
 
 
 def fits(options: Options, need: RequestNeed) -> Flags:

@@ -9,6 +9,7 @@ kind         says                                     model                     
 ===========  =======================================  ==============================  =====================
 Removal      these options cannot be used             never in the model              never a candidate
 Lane         at most one option at a time             one row per maximal clique      busy intervals; prices
+Rows         amounts add up to at most a limit        the rows                        running loads; prices
 Wanted       one of these options, or a shortfall     covering row with slack         bit of a label
 Recurrence   covered time, or a shortfall             counting rows with slack        last end in a label
 ===========  =======================================  ==============================  =====================
@@ -21,7 +22,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Protocol
 
-from passplan.planning.problem import Integers, Problem
+import numpy as np
+
+from passplan.planning.problem import Floats, Integers, Problem
 
 
 @dataclass(frozen=True, eq=False)
@@ -47,6 +50,32 @@ class Lane:
     start_s: Integers
     end_s: Integers
     owner: int = -1
+
+
+@dataclass(frozen=True, eq=False)
+class Rows:
+    """Linear limits in bulk: in row r the amounts of the chosen options add up to at most ``limit[r]``.
+
+    Row r has the entries ``offset[r] : offset[r + 1]`` of ``options`` and ``amounts`` (each option once per row);
+    neither amounts nor limits are negative. ``kind`` is the reason code that is given when a row stands in the
+    way, and ``names[r]`` says in a few words what is used up. See ``rules/rows.py`` for ways to make them.
+    """
+
+    kind: str
+    names: tuple[str, ...]
+    offset: Integers
+    options: Integers
+    amounts: Floats
+    limit: Floats
+
+    def __post_init__(self) -> None:
+        if len(self.offset) != len(self.names) + 1 or len(self.limit) != len(self.names):
+            raise ValueError("rows need a name and a limit each, and one offset more")
+        if np.any(self.amounts < 0.0) or np.any(self.limit < 0.0):
+            raise ValueError("amounts and limits of rows must not be negative")
+
+    def __len__(self) -> int:
+        return len(self.names)
 
 
 @dataclass(frozen=True, eq=False)
@@ -86,13 +115,14 @@ class Terms:
 
     removals: tuple[Removal, ...] = ()
     lanes: tuple[Lane, ...] = ()
+    rows: tuple[Rows, ...] = ()
     wanted: tuple[Wanted, ...] = ()
     recurrences: tuple[Recurrence, ...] = ()
 
     def __add__(self, other: Terms) -> Terms:
         return Terms(
-            self.removals + other.removals, self.lanes + other.lanes, self.wanted + other.wanted,
-            self.recurrences + other.recurrences)
+            self.removals + other.removals, self.lanes + other.lanes, self.rows + other.rows,
+            self.wanted + other.wanted, self.recurrences + other.recurrences)
 
 
 class Rule(Protocol):

@@ -67,6 +67,8 @@ class FleetArrays(NamedTuple):
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
     """Lay a problem out. Raises :class:`NotForSearchError` where a term does not fit this layout."""
     options, fleet = problem.options, problem.fleet
+    if any(len(rows) for rows in terms.rows):
+        raise NotForSearchError("the search does not keep linear limits yet")
     order = np.lexsort((options.end_s, options.start_s, options.spacecraft))
     removed = np.zeros(len(options), dtype=bool)
     for removal in terms.removals:

@@ -1,0 +1,65 @@
+"""What rules say before there are options: time that is not to be had, and instants that must be to be had.
+
+A rule that closes time gives :class:`Block` records, and one that asks for a certain contact :class:`Wish`
+records; the options are made with both in mind. A rule that needs more of the run than the problem's arrays
+hold turns it into records of its own from a :class:`Draft`; they travel as ``Problem.needs``.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import pandas as pd
+
+from passplan.inputs.run import Run
+from passplan.link.choice import CommandChoice, DownlinkChoice
+from passplan.planning.problem import Problem
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """One option with the link choices behind it."""
+
+    window: int
+    start_s: int
+    end_s: int
+    downlink: DownlinkChoice | None
+    command: CommandChoice | None
+    cost: float
+
+
+@dataclass(frozen=True)
+class Block:
+    """No contact touches ``[start_s, end_s)``; None stands for every antenna, or every spacecraft.
+
+    With ``setup`` neither do the antenna's times to prepare before a contact and to release after it.
+    ``reason`` is a code of the ``unused`` table, ``detail`` a sentence on it.
+    """
+
+    antenna: str | None
+    spacecraft: str | None
+    start_s: int
+    end_s: int
+    reason: str
+    detail: str
+    setup: bool = True
+
+
+@dataclass(frozen=True)
+class Wish:
+    """A contact of ``spacecraft`` (on ``antenna``, or on any) must be able to start and to end at these instants."""
+
+    spacecraft: str
+    antenna: str | None
+    start_s: int
+    end_s: int
+
+
+@dataclass(frozen=True, eq=False)
+class Draft:
+    """A run on its way to a problem: ``problem`` has its options but no needs yet, ``candidates`` in their order."""
+
+    run: Run
+    windows: pd.DataFrame
+    problem: Problem
+    candidates: tuple[Candidate, ...]
