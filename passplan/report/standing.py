@@ -9,6 +9,9 @@ from typing import Any
 # Lists that a plan may carry, in the order they matter to whoever reviews it.
 _LISTS = (("to_ask", "Bookings still to ask for"), ("pins", "Pinned and forbidden"), ("frozen", "Frozen"))
 
+# From here on a gap says no more than that nothing is known.
+_WIDE_GAP = 10.0
+
 
 @dataclass(frozen=True)
 class TierLine:
@@ -25,8 +28,8 @@ def tier_lines(summary: Mapping[str, Any]) -> list[TierLine]:
     """The tiers in the order they are solved, however many there are."""
     return [
         TierLine(
-            tier["name"], f"as {'little' if tier['sense'] == 'least' else 'much'} as possible", _figure(tier["value"]),
-            _figure(tier["bound"]), "" if tier["gap"] is None else f"{100.0 * tier['gap']:.2f} %",
+            tier["name"], "least" if tier["sense"] == "least" else "most", _figure(tier["value"]),
+            _figure(tier["bound"]), _gap(tier["gap"]),
         )
         for tier in summary.get("tiers", ())
     ]
@@ -50,6 +53,12 @@ def _sentence(entry: Any) -> str:
         return f"{entry['name']}: {entry['sentence']}" if "name" in entry else str(entry["sentence"])
     facts = ((key.removesuffix("_utc").replace("_", " "), value) for key, value in entry.items())
     return ", ".join(f"{key} {value}" for key, value in facts if value not in (None, ""))
+
+
+def _gap(gap: float | None) -> str:
+    if gap is None:
+        return "none"
+    return f"{100.0 * gap:.2f} %" if gap < _WIDE_GAP else f"over {100.0 * _WIDE_GAP:.0f} %"
 
 
 def _figure(number: float | None) -> str:

@@ -51,8 +51,6 @@ def print_plan(
     ):
         if lines:
             _section(console, title, Group(*lines if detail else _first(lines)))
-    if summary.get("tiers"):
-        _section(console, "Tiers, in the order they are solved", _tiers(summary))
     if detail and notices(summary):
         _section(console, "Models outside their range", Group(*notices(summary)))
     if selection:
@@ -89,22 +87,16 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
-    gap = summary["gap"]
     facts = Table.grid(padding=(0, 3))
     facts.add_row(
         *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
             ("brought down", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
+            ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
         ))
     )
-    proof = Text.assemble(
-        ("value ", "dim"), (f"{summary['value']:,.1f}", "bold"),
-        ("   no plan can exceed ", "dim"), (f"{summary['bound']:,.1f}", "bold"),
-        ("   gap ", "dim"), ("none to close" if gap is None else f"{100 * gap:.2f} %", "bold"),
-        (f"   {STATUS_WORDS.get(summary['status'], summary['status'])}", "dim"),
-    )
-    return Group(title, facts, proof)
+    return Group(title, facts, _tiers(summary))
 
 
 def _shortfalls(summary: Mapping[str, Any]) -> list[Text]:
@@ -120,10 +112,11 @@ def _first(lines: list[Text]) -> list[Text]:
 
 
 def _tiers(summary: Mapping[str, Any]) -> RenderableType:
-    table = plain_table(("", "left"), ("sought", "left"), ("reached", "right"), ("no plan can pass", "right"),
+    """The tiers in the order they are solved."""
+    table = plain_table(("tier", "left"), ("sought", "left"), ("reached", "right"), ("no plan can pass", "right"),
                         ("gap", "right"))
     for tier in tier_lines(summary):
-        table.add_row(Text(tier.name, style="bold"), tier.sense, tier.value, tier.bound, tier.gap)
+        table.add_row(tier.name, Text(tier.sense, style="dim"), Text(tier.value, style="bold"), tier.bound, tier.gap)
     return table
 
 

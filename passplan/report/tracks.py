@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -43,6 +44,25 @@ class WindowTrack:
                 if track.chain.radio == radio and (rung.name == modcod or track in command):
                     return np.interp(self.time_s, track.time_s, track.quality_db) - rung.required_db
         return None
+
+    def margin_in_force(
+        self, radio: str, pieces: Sequence[tuple[float, float, str]], time_s: Floats
+    ) -> tuple[Floats, Floats] | None:
+        """Times and margin of the modcod in force along ``pieces`` (start and end in seconds, modcod).
+
+        The first piece's modcod also counts before it and the last one's after it. ``time_s`` are the times to draw
+        at; the edges of the pieces are added. None where the link floor kept no track.
+        """
+        times, margins = [], []
+        for k, (low, high, modcod) in enumerate(pieces):
+            margin = self.margin_db(radio, modcod)
+            if margin is None:
+                return None
+            first = time_s[0] if k == 0 else low
+            last = time_s[-1] if k == len(pieces) - 1 else high
+            times.append(np.unique([first, low, *time_s[(time_s > first) & (time_s < last)], high, last]))
+            margins.append(np.interp(times[-1], self.time_s, margin))
+        return np.concatenate(times), np.concatenate(margins)
 
 
 def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:

@@ -10,14 +10,14 @@ def test_any_number_of_tiers_with_value_bound_and_gap() -> None:
         {"name": name, "sense": "most" if name == "value" else "least", "value": value, "bound": bound, "gap": gap}
         for name, value, bound, gap in (
             ("requirements", 0, 0.0, 0.0), ("overflow and deadlines", 28.04, 11.5, 0.59), ("value", 7e5, 7.1e5, 0.0141),
-            ("cost", 12.0, None, None), ("changes", 3, 1, 0.6667),
+            ("cost", 12.0, None, None), ("changes", 3, 0, 1e9),
         )
     ]
     lines = tier_lines({"tiers": tiers})
     assert [line.name for line in lines] == [tier["name"] for tier in tiers]
     assert (lines[1].value, lines[1].bound, lines[1].gap) == ("28.0", "11.5", "59.00 %")
-    assert (lines[2].sense, lines[2].value) == ("as much as possible", "700,000")
-    assert (lines[3].bound, lines[3].gap) == ("", "")
+    assert (lines[2].sense, lines[2].value) == ("most", "700,000")
+    assert (lines[3].bound, lines[3].gap, lines[4].gap) == ("", "none", "over 1000 %")
     assert tier_lines({}) == []
 
 

@@ -64,6 +64,25 @@ def test_links_of_the_tracks_allow_what_the_contacts_send(short_plan: PlanRecord
         assert allowed >= piece.rate_mbps - 1e-6
 
 
+def test_the_margin_of_stepped_contacts_is_that_of_the_modcod_in_force(short_plan: PlanRecord, short_run: Run) -> None:
+    tracks = dict(zip(short_plan.windows["window_id"], window_tracks(short_run, short_plan.windows), strict=True))
+    stepped = short_plan.contacts[short_plan.contacts["modcod"] == "stepped"]
+    assert len(stepped)
+    start = pd.Timestamp(short_run.start_utc)
+    for row in stepped.to_dict("records"):
+        own = short_plan.segments[short_plan.segments["contact_id"] == row["contact_id"]]
+        starts, ends = ((own[key] - start).dt.total_seconds() for key in ("start_utc", "end_utc"))
+        track = tracks[row["window_id"]]
+        pieces = list(zip(starts, ends, own["modcod"], strict=True))
+        line = track.margin_in_force(row["radio"], pieces, track.time_s)
+        assert line is not None
+        times, margins = line
+        assert (np.diff(times) >= 0.0).all()
+        assert (times[0], times[-1]) == (track.time_s[0], track.time_s[-1])
+        inside = (times >= starts.min()) & (times <= ends.max())
+        assert margins[inside].min() == pytest.approx(row["min_margin_db"], abs=1e-6)
+
+
 def test_a_selection_narrows_every_table(short_plan: PlanRecord) -> None:
     part = select(short_plan, Selection(site="Isvarde", spacecraft="Ambril-1"))
     assert set(part.contacts["spacecraft"]) == {"Ambril-1"}
