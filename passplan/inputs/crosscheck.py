@@ -118,6 +118,10 @@ def check_requests(
             _known((item.antenna,), antennas, file, f"{place}.antenna", findings)
         if item.site is not None and sites:
             _known((item.site,), sites, file, f"{place}.site", findings)
+        able = [a for a in antennas.values() if item.antenna in (None, a.name) and item.site in (None, a.site)]
+        if item.service == "ranging" and able and not any(a.ranging for a in able):
+            remedy = "no antenna that may serve it offers ranging; set ranging = true where one does"
+            findings.problem(file, f"{place}.service", item.service, remedy)
 
 
 def _known(names: Iterable[str], known: Iterable[str], file: str | Path, where: str, findings: Findings) -> None:

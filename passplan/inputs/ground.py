@@ -126,7 +126,8 @@ class Antenna(Record):
     them the antenna follows anything. Commands are sent only above the transmit mask (made as the other,
     and never below it), outside the sectors ``transmit_keep_out`` and further from the geosynchronous arc
     than ``transmit_arc_keep_out_deg``. Nothing is received nearer to the Sun than ``sun_keep_out_deg``.
-    ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted.
+    ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted. With ``ranging`` it measures
+    range in contacts that both send and receive.
     """
 
     name: Name
@@ -146,6 +147,7 @@ class Antenna(Record):
     prepare_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 60.0
     release_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 30.0
     price_per_minute: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    ranging: bool = False
 
     @model_validator(mode="after")
     def _consistent(self) -> Antenna:

@@ -122,7 +122,10 @@ class _Builder:
                 reason = ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
             return [], reason or ("no_margin", "the margin does not hold long enough after acquisition")
         useful = self._undominated(useful, craft)
-        return sorted(useful[: self.policy.options_per_window], key=lambda c: (c.start_s, c.end_s)), ("", "")
+        asked = self._asked_of(w, pieces)
+        most = self.policy.options_per_window
+        kept = [c for k, c in enumerate(useful) if k < most or (c.start_s, c.end_s) in asked]
+        return sorted(kept, key=lambda c: (c.start_s, c.end_s)), ("", "")
 
     def _unusable(
         self, w: int, link: WindowLink, pieces: Sequence[tuple[int, int]], blocks: Sequence[Block],
@@ -143,19 +146,15 @@ class _Builder:
 
     def _of_piece(self, w: int, link: WindowLink, low: int, high: int, cuts: Cuts) -> Iterator[Candidate]:
         """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""
-        craft, antenna = self._names(w)
         most = self.policy.options_per_window
-        must_start, must_end = {low}, {high}
+        asked = self._asked_of(w, [(low, high)])
+        must_start, must_end = {low} | {a for a, _ in asked}, {high} | {b for _, b in asked}
         whole = self._candidate(w, link, low, high)
         if whole is not None and whole.downlink is not None:
             # Time in which nothing can be sent need not be held.
             radio = self.run.radios[whole.downlink.radio]
             must_start.add(max(low, math.floor(whole.downlink.send_start_s - radio.acquisition_s)))
             must_end.add(min(high, whole.downlink.send_end_s))
-        for wish in self.asked.get(craft, ()):
-            if wish.antenna in (None, antenna):
-                must_start.add(min(max(low, wish.start_s), high))
-                must_end.add(max(min(high, wish.end_s), low))
         grid_s = self.policy.cut_grid_s
         grid = range(-(-low // grid_s) * grid_s, high, grid_s) if grid_s else range(0)
         inner = math.isqrt(most - 1) + 1 if most > 1 else 0
@@ -167,6 +166,13 @@ class _Builder:
             candidate = whole if (start_s, end_s) == (low, high) else self._candidate(w, link, start_s, end_s)
             if candidate is not None:
                 yield candidate
+
+    def _asked_of(self, w: int, pieces: Sequence[tuple[int, int]]) -> set[tuple[int, int]]:
+        """The contacts that somebody asked for, as far as they lie in free pieces of a window."""
+        craft, antenna = self._names(w)
+        spans = {(max(low, wish.start_s), min(high, wish.end_s)) for wish in self.asked.get(craft, ())
+                 if wish.antenna in (None, antenna) for low, high in pieces}
+        return {(a, b) for a, b in spans if b - a >= self.shortest_s}
 
     def _candidate(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
         downlink = link.downlink.best(start_s, end_s) if link.downlink is not None else None

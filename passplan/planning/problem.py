@@ -120,7 +120,8 @@ class Options:
 class RequestNeed:
     """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length.
 
-    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall.
+    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall. A ``fixed`` one
+    is met by a contact from ``earliest_s`` to ``latest_s`` only. ``points`` is what missing it weighs.
     """
 
     name: str
@@ -131,6 +132,8 @@ class RequestNeed:
     earliest_s: int
     latest_s: int
     min_duration_s: int
+    fixed: bool = False
+    points: float = 1.0
 
 
 @dataclass(frozen=True)
@@ -154,6 +157,20 @@ class Conflict:
     end_s: int
 
 
+@dataclass(frozen=True)
+class Crowd:
+    """From ``start_s`` to ``end_s``, while the victim is heard on its antenna, the ``shares`` of those of the
+    ``interferers`` that send must not add up to more than 1."""
+
+    name: str
+    victim: int
+    antenna: int
+    interferers: tuple[int, ...]
+    shares: tuple[float, ...]
+    start_s: int
+    end_s: int
+
+
 @dataclass(frozen=True, eq=False)
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
@@ -172,6 +189,7 @@ class Problem:
     requests: tuple[RequestNeed, ...] = ()
     commands: tuple[CommandNeed, ...] = ()
     conflicts: tuple[Conflict, ...] = ()
+    crowds: tuple[Crowd, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))

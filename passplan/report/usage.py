@@ -25,6 +25,8 @@ REASON_WORDS = {
     "nothing_aboard": "nothing more to bring down",
     "not_worth_it": "worth less than it costs",
     "interference": "would disturb another contact",
+    "contact_gap": "too soon after or before another contact of the spacecraft",
+    "cool_down": "the spacecraft's transmitter must cool down",
     "left_out": "left out of the plan",
     IN_CONTACT: "within contacts: acquisition, keyholes, rate steps",
     NO_WINDOW: "no link in view in time",

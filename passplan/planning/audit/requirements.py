@@ -55,8 +55,10 @@ def _request(run: Run, request: Request, contacts: Sequence[Contact]) -> _Standi
         and request.antenna in (None, contact.antenna)
         and request.site in (None, run.antennas[contact.antenna].site)
         and contact.service in (request.service, "both")
+        and (request.service != "ranging" or run.antennas[contact.antenna].ranging)
         and earliest_s <= contact.start_s
         and contact.end_s <= latest_s
+        and (not request.fixed or (contact.start_s < earliest_s + 1.0 and contact.end_s > latest_s - 1.0))
         and contact.end_s - contact.start_s >= request.min_duration_s
         for contact in contacts
     )

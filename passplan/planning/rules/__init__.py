@@ -16,16 +16,18 @@ from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
+from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
-RULES: tuple[Rule, ...] = (antenna_time, slew_time, spacecraft_time, requests, command_interval, interference)
+RULES: tuple[Rule, ...] = (
+    antenna_time, slew_time, spacecraft_time, contact_gaps, requests, command_interval, interference)
 BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (closure_blocks,)
 WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (request_wishes,)
-NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = ()
+NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (gap_needs,)
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:
