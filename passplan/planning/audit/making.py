@@ -42,6 +42,13 @@ def rates_of(run: Run, name: str, item: DataClass) -> Rates:
     return found
 
 
+def made_mb(run: Run, name: str, from_s: float, until_s: float) -> float:
+    """What all classes of a spacecraft generate in a span of time [MB]."""
+    return sum(
+        rate * max(0.0, min(end_s, until_s) - max(start_s, from_s))
+        for item in run.data_of(name) for start_s, end_s, rate in rates_of(run, name, item))
+
+
 def added(first: Rates, second: Rates) -> Rates:
     """Two generations together; an empty one is nothing."""
     if not first:

@@ -16,10 +16,10 @@ from passplan.inputs.load import load_run
 from passplan.inputs.run import Run
 from passplan.planning.audit.making import rates_of
 from passplan.planning.audit.storage import class_balances
+from passplan.planning.backlog import backlogs
 from passplan.planning.fleet import fleet_of
 from passplan.planning.record import PlanRecord
 from passplan.planning.steps import plan_run
-from passplan.report.backlog import backlogs
 
 ROOT = Path(__file__).parents[3]
 

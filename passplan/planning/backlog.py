@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections import defaultdict
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -34,37 +35,39 @@ def backlogs(record: PlanRecord) -> dict[str, Backlog]:
     start, end = (pd.Timestamp(record.summary[f"horizon_{edge}_utc"].rstrip("Z")) for edge in ("start", "end"))
     horizon_s = (end - start).total_seconds()
     names = record.contacts.set_index("contact_id")["spacecraft"]
-    sent = sending(record.segments)
-    pieces = sent.assign(
-        spacecraft=sent["contact_id"].map(names),
-        first_s=(sent["start_utc"] - start).dt.total_seconds(),
-        last_s=(sent["end_utc"] - start).dt.total_seconds(),
-    ).sort_values("first_s", kind="stable")
-    by_craft = dict(tuple(pieces.groupby("spacecraft")))
+    sent: dict[str, list[tuple[float, float, float]]] = defaultdict(list)
+    pieces = sending(record.segments).sort_values("start_utc", kind="stable")
+    edges = [(pieces[f"{edge}_utc"] - start).dt.total_seconds() for edge in ("start", "end")]
+    for name, *piece in zip(pieces["contact_id"].map(names), *edges, pieces["rate_mbps"] / 8.0, strict=True):
+        sent[name].append((piece[0], piece[1], piece[2]))
     return {
-        name: _drawn(store) if "fill" in store else _follow(store, by_craft.get(name), horizon_s)
+        name: _stated(store) if "fill" in store else follow(
+            store["start_mb"], store["generated_mb"] / horizon_s if horizon_s > 0 else 0.0, store["capacity_mb"],
+            sent.get(name, ()), horizon_s)
         for name, store in record.summary["storage"].items()
     }
 
 
-def _drawn(store: Mapping[str, Any]) -> Backlog:
+def _stated(store: Mapping[str, Any]) -> Backlog:
     """Where generation changes or there are several classes, the plan states the fill itself."""
     time_s, fill_mb = np.array(store["fill"], dtype=float).T
     losing = tuple((first, last) for first, last in store["losing_s"] if last - first > 0.5)
     return Backlog(time_s, fill_mb, store["capacity_mb"], losing)
 
 
-def _follow(store: Mapping[str, Any], pieces: pd.DataFrame | None, horizon_s: float) -> Backlog:
-    """Between events the storage gains what is generated and sends at one rate; kinks where it runs empty or full."""
-    generation = store["generated_mb"] / horizon_s if horizon_s > 0 else 0.0
-    capacity, fill, clock = store["capacity_mb"], store["start_mb"], 0.0
+def follow(
+    start_mb: float, generation_mb_per_s: float, capacity_mb: float, sent: Iterable[tuple[float, float, float]],
+    horizon_s: float,
+) -> Backlog:
+    """One storage through pieces of sending (start_s, end_s, rate_mb_per_s) in time order.
+
+    Between events it gains what is generated and sends at one rate; there are kinks where it runs empty or full.
+    """
+    capacity, fill, clock = capacity_mb, start_mb, 0.0
     points, losing = [(0.0, fill)], []
-    events: list[tuple[float, float]] = []
-    if pieces is not None:
-        for row in pieces.to_dict("records"):
-            events += [(row["first_s"], 0.0), (row["last_s"], row["rate_mbps"] / 8.0)]
+    events = [event for start_s, end_s, rate in sent for event in ((start_s, 0.0), (end_s, rate))]
     for until, rate in (*events, (horizon_s, 0.0)):
-        slope, length = generation - rate, max(until - clock, 0.0)
+        slope, length = generation_mb_per_s - rate, max(until - clock, 0.0)
         edge = capacity if slope > 0.0 else 0.0
         turn = (edge - fill) / slope if slope else length
         if 0.0 <= turn < length:
