@@ -61,7 +61,7 @@ class Missed:
 def lost_value(run: Run, record: PlanRecord, links: Sequence[WindowLink]) -> dict[str, dict[str, dict[str, float]]]:
     """The entry ``lost_value`` of ``plan.json``: by spacecraft and cause ``lost_mb, lost_value, left_mb, left_value``.
 
-    ``links`` are those of the windows, in order. Values are MB times the weight (the mean over a spacecraft's classes), but
+    ``links`` are those of the windows, in order. Values are MB times weight (the mean of a spacecraft's classes), but
     without the cost of spilling. Over the causes the figures add up to the spacecraft's ``lost_mb`` and ``left_mb``.
     """
     chances = _chances(run, record, links)

@@ -55,7 +55,8 @@ def carries_mb(problem: Problem) -> Floats:
     made_mb = np.zeros(len(options))
     for craft, layers in enumerate(problem.layers):
         mine = np.flatnonzero(options.spacecraft == craft)
-        made_mb[mine] = np.diff(layers[-1].made(np.stack([options.start_s[mine], options.end_s[mine]]).astype(float)), axis=0)[0]
+        before, after = (layers[-1].made(edge[mine].astype(float)) for edge in (options.start_s, options.end_s))
+        made_mb[mine] = after - before
     return np.minimum(link_mb, fleet.capacity_mb[options.spacecraft] + made_mb)
 
 
