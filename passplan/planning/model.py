@@ -163,11 +163,16 @@ def _add_storage(block: _Blocks, problem: Problem, craft: int, layer: Layer) -> 
 
 
 def _instants(problem: Problem, mine: Integers, layer: Layer) -> Floats:
-    """Where the sending of an option starts or ends, and where generation changes while one could send."""
+    """Where the sending of an option starts or ends, and where generation changes while one could send.
+
+    A capacity that changes counts wherever it bends.
+    """
     options = problem.options
     first_piece, last_piece = options.piece_offset[mine], options.piece_offset[mine + 1] - 1
     starts, ends = options.piece_start_s[first_piece], options.piece_end_s[last_piece]
     inner = layer.inner_times()
+    if layer.shrinks:
+        return np.unique(np.concatenate([[0.0, float(problem.horizon_s)], starts, ends, inner]))
     open_then = np.searchsorted(np.sort(starts), inner, side="right") > np.searchsorted(np.sort(ends), inner)
     return np.unique(np.concatenate([[0.0, float(problem.horizon_s)], starts, ends, inner[open_then]]))
 
