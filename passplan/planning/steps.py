@@ -26,6 +26,7 @@ from passplan.link.conflicts import find_interference
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
 from passplan.planning.changes import compare
+from passplan.planning.ground_flux import flux_summary, flux_warnings
 from passplan.planning.plan import make_plan
 from passplan.planning.record import PlanRecord
 from passplan.planning.summary import summarise
@@ -135,6 +136,9 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
     plan = make_plan(run, windows, links, progress=report, interference=interference)
     lap("plan")
     summary = summarise(run, windows, plan)
+    flux = flux_summary(run, windows, samples, plan)
+    summary["flux_density"] = flux
+    summary["warnings"] += flux_warnings(plan.contacts, flux)
     summary["weather"] = weather_summary(run, windows, samples, plan, losses)
     lap("weather")
     record = PlanRecord(

@@ -19,6 +19,7 @@ from passplan.report.backlog import backlogs
 from passplan.report.backlog_chart import backlog_chart
 from passplan.report.cautions import CAUTIONS
 from passplan.report.contact_table import LocalTime, contact_table, unused_table
+from passplan.report.flux import flux_of_plan
 from passplan.report.keys import spacecraft_keys
 from passplan.report.selection import Selection, select
 from passplan.report.timeline import CLOSED, SEEN, SEVERAL, antenna_row, hour_ruler, stretches
@@ -61,6 +62,8 @@ def print_plan(
     if detail:
         if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
             _section(console, "Weather over an average year", by_antenna(part))
+        if (flux := flux_of_plan(part)) is not None:
+            _section(console, "Power flux density at the ground", flux)
         if len(part.contacts):
             _section(console, "Lowest margins", _margins(part, console.width))
         _section(console, "What was not used, and why", unused_table(part, full=bool(selection)))
