@@ -90,7 +90,8 @@ def find_options(
         "window": c.window, "spacecraft": windows.spacecraft[c.window], "antenna": windows.antenna[c.window],
         "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
         "pieces": [] if c.downlink is None else [
-            (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
+            (piece.start_s, piece.end_s, piece.rate_mbps / 8.0 * c.downlink.expectation)
+            for piece in c.downlink.pieces],
     } for c in candidates]
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
@@ -209,7 +210,8 @@ def _dominates(b: Candidate, a: Candidate) -> bool:
     if a.downlink is None:
         return True
     return (b.downlink is not None and b.downlink.send_start_s <= a.downlink.send_start_s
-            and b.downlink.send_end_s >= a.downlink.send_end_s and b.downlink.rate_mbps >= a.downlink.rate_mbps
+            and b.downlink.send_end_s >= a.downlink.send_end_s
+            and b.downlink.rate_mbps * b.downlink.expectation >= a.downlink.rate_mbps * a.downlink.expectation
             and b.downlink.usable_s >= a.downlink.usable_s)
 
 

@@ -82,12 +82,12 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
-    gap = summary["gap"]
+    gap, expected = summary["gap"], summary.get("weather", {}).get("volume_basis") == "expected"
     facts = Table.grid(padding=(0, 3))
     facts.add_row(
         *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
-            ("brought down", megabytes(summary["volume_mb"])),
+            (f"brought down{' on average' if expected else ''}", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
         ))
     )
