@@ -221,13 +221,11 @@ def _ground_flux(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
     """Power flux density at the ground: a flag, not a verdict."""
     found = flux_density(run, chain, path)
     if found is not None:
-        density, limit, bandwidth_hz, source = found
-        width = f"{bandwidth_hz / 1e6:g} MHz" if bandwidth_hz >= 1e6 else f"{bandwidth_hz / 1e3:g} kHz"
-        unit = f"dBW/m2/{width}"
-        over = float(density[0] - limit[0])
+        over = float(found.excess_db[0])
         verdict = f"OVER the limit by {over:.1f} dB: look into it" if over > 0.0 else f"{-over:.1f} dB below the limit"
-        yield "flux density at ground", float(density[0]), unit, f"{verdict}; EIRP / (4 pi d^2) over the symbol rate"
-        yield "  its limit", float(limit[0]), unit, source
+        source = f"{verdict}; EIRP / (4 pi d^2) over the symbol rate"
+        yield "flux density at ground", float(found.density_dbw_per_m2[0]), found.unit, source
+        yield "  its limit", float(found.limit_dbw_per_m2[0]), found.unit, found.source
 
 
 def _notices(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
