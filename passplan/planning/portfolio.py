@@ -8,6 +8,7 @@ from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
 from passplan.planning.maps import StorageMaps, storage_maps
 from passplan.planning.occupancy import first_conflict
+from passplan.planning.overrated import Overrated, find_overrated
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
@@ -59,10 +60,17 @@ def find_plan(
             best = max(best, _Candidate(problem, terms, filled, "greedy"), key=_Candidate.rank)
     if open_still() and len(problem.options) <= limits.exact_options:
         # Half of the time: the search takes the other half where the model is too hard after all.
-        solved = most_value(problem, terms, limits, clock, best.points, 0.5 * clock.left_s())
-        bound = min(bound, solved.bound)
-        best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
-        tell(best.account.value, bound)
+        stop_s, overrated = clock.elapsed_s() + 0.5 * clock.left_s(), list[Overrated]()
+        while open_still() and clock.elapsed_s() < stop_s:
+            solved = most_value(
+                problem, terms, limits, clock, best.points, stop_s - clock.elapsed_s(), overrated)
+            bound = min(bound, solved.bound)
+            best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
+            tell(best.account.value, bound)
+            news = find_overrated(problem, maps, solved.chosen or (), overrated)
+            if solved.chosen is None or not news:
+                break
+            overrated += news
     if open_still():
         with clock.stage("search"):
             found = _search(problem, terms, maps, limits, clock, best, tell)

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import datetime as dt
 import time
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -16,6 +17,7 @@ from ortools.math_opt.python import mathopt
 
 from passplan.planning.clock import Clock
 from passplan.planning.model import PlanModel, build_model
+from passplan.planning.overrated import Overrated
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.rules.terms import Terms
 
@@ -45,11 +47,12 @@ def least_shortfall(problem: Problem, terms: Terms, limits: Limits, seconds: flo
 
 def most_value(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float, seconds: float,
+    overrated: Sequence[Overrated] = (),
 ) -> Solved:
     """Tier 2: the most valuable options among those with at most ``points`` of shortfall."""
     stop_s = clock.elapsed_s() + seconds
     with clock.stage("model"):
-        model = build_model(problem, terms)
+        model = build_model(problem, terms, overrated=overrated)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
         proto = model.proto(tier=2, points_limit=limit)
     with clock.stage("solve"):

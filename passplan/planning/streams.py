@@ -27,12 +27,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
+# Ages that differ by less are one.
+_ONE_AGE_S = 1e-6
 
 
 @dataclass(frozen=True)
 class Keeping:
-    """How a storage loses and frees data: ``newest`` is lost when it overflows (else the oldest), and what is sent is
-    freed at once (``acknowledged`` empty), at the end of its ``contact``, or at that of the ``next_command`` contact."""
+    """How a storage loses and frees data: the ``newest`` is lost when it overflows, else the oldest; what is sent is
+    freed at once (``acknowledged`` empty), at the end of its ``contact``, or of the ``next_command`` contact."""
 
     newest: bool = False
     acknowledged: str = ""
@@ -69,8 +71,9 @@ class Stream:
         """The mean share of the weight over ages between two."""
         if not self.fades:
             return 1.0
-        if abs(other_age_s - age_s) < 1e-9:
-            return float(np.interp(age_s, self.fresh_age_s, self.fresh_share))
+        if abs(other_age_s - age_s) < _ONE_AGE_S:
+            # At a step what is about to lose worth has lost it.
+            return float(np.interp(age_s + _ONE_AGE_S, self.fresh_age_s, self.fresh_share))
         return (self._shares_up_to(other_age_s) - self._shares_up_to(age_s)) / (other_age_s - age_s)
 
     def _shares_up_to(self, age_s: float) -> float:
