@@ -20,7 +20,7 @@ class DownlinkRadio(Record):
     back-off comes off both. ``pattern`` is a fixed antenna's loss [dB] against the angle off boresight [deg],
     boresight to nadir; without it the antenna is steered at the station. ``rate_control`` says how the
     modcod is chosen: ``fixed`` (the only one of ``modcods``), ``per-contact``, or ``adaptive`` (stepped
-    along the pass).
+    along the pass). ``load_w`` is what it draws while it is on.
     """
 
     name: Name
@@ -45,6 +45,7 @@ class DownlinkRadio(Record):
     hysteresis_db: Annotated[float, Field(ge=0.0, le=10.0)] = 0.5
     min_dwell_s: Annotated[int, Field(ge=0, le=600)] = 10
     switching_gap_s: Annotated[int, Field(ge=0, le=60)] = 0
+    load_w: Annotated[float, Field(ge=0.0, le=100_000.0)] = 0.0
 
     @model_validator(mode="after")
     def _consistent(self) -> DownlinkRadio:

@@ -55,6 +55,19 @@ class Wish:
     end_s: int
 
 
+@dataclass(frozen=True)
+class Cap:
+    """The transmitter of ``spacecraft`` is on for at most ``longest_s`` in one contact.
+
+    ``reason`` and ``detail`` as of a :class:`Block`, where no contact is short enough.
+    """
+
+    spacecraft: str
+    longest_s: int
+    reason: str
+    detail: str
+
+
 @dataclass(frozen=True, eq=False)
 class Draft:
     """A run on its way to a problem: ``problem`` has its options but no needs yet, ``candidates`` in their order."""

@@ -13,8 +13,9 @@ from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
 from passplan.planning.cuts import Cuts, neighbour_cuts, spread
-from passplan.planning.hooks import Block, Candidate, Wish
+from passplan.planning.hooks import Block, Candidate, Cap, Wish
 from passplan.planning.horizon import column_seconds
+from passplan.planning.on_air import on_air_span
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
 
 
@@ -73,11 +74,11 @@ def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Anten
 
 def find_options(
     run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
-    blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (),
+    blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (), caps: Sequence[Cap] = (),
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
     blocked = BlockedTime(blocks, antennas)
-    builder = _Builder(run, windows, fleet, antennas, blocked, wishes)
+    builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps)
     cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
     candidates: list[Candidate] = []
     excluded: dict[int, tuple[str, str]] = {}
@@ -98,7 +99,7 @@ def find_options(
 class _Builder:
     def __init__(
         self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, blocked: BlockedTime,
-        wishes: Sequence[Wish],
+        wishes: Sequence[Wish], caps: Sequence[Cap],
     ) -> None:
         self.run, self.windows, self.policy, self.blocked = run, windows, run.policy, blocked
         self.shortest_s = math.ceil(run.policy.min_contact_s)
@@ -106,6 +107,7 @@ class _Builder:
         self.asked: dict[str, list[Wish]] = {}
         for wish in wishes:
             self.asked.setdefault(wish.spacecraft, []).append(wish)
+        self.caps = {cap.spacecraft: cap for cap in caps}
 
     def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
         """The options of one window, longest first, or the reason why there are none."""
@@ -116,6 +118,11 @@ class _Builder:
         pieces = [p for p in free if p[1] - p[0] >= self.shortest_s]
         reason = self._unusable(w, link, pieces, [block for _, _, block in blocks])
         found = [] if reason else [c for low, high in pieces for c in self._of_piece(w, link, low, high, cuts)]
+        cap = self.caps.get(craft)
+        if cap is not None and found:
+            found = [c for c in found if self._on_air_s(c) <= cap.longest_s]
+            if not found:
+                return [], (cap.reason, cap.detail)
         useful = [c for c in found if c.downlink is not None or self._commands_wanted(craft)]
         if not useful:
             if found:
@@ -160,7 +167,13 @@ class _Builder:
         inner = math.isqrt(most - 1) + 1 if most > 1 else 0
         starts = must_start | set(spread(low, high - self.shortest_s + 1, cuts.starts, grid, inner))
         ends = must_end | set(spread(low + self.shortest_s - 1, high, cuts.ends, grid, inner))
-        pairs = [(a, b) for a in starts for b in ends if b - a >= self.shortest_s]
+        cap = self.caps.get(self._names(w)[0])
+        longest_s = high - low
+        if cap is not None and link.downlink is not None and cap.longest_s < longest_s:
+            longest_s = cap.longest_s
+            starts, ends = starts | {b - longest_s for b in ends}, ends | {a + longest_s for a in starts}
+        pairs = [(a, b) for a in starts for b in ends if low <= a and b <= high and b - a >= self.shortest_s
+                 and (b - a <= longest_s or (a in must_start and b in must_end))]
         pairs.sort(key=lambda p: ((p[0] not in must_start) + (p[1] not in must_end), p[0] - p[1], p[0]))
         for start_s, end_s in pairs[: most + len(must_start) * len(must_end) - 1]:
             candidate = whole if (start_s, end_s) == (low, high) else self._candidate(w, link, start_s, end_s)
@@ -173,6 +186,10 @@ class _Builder:
         spans = {(max(low, wish.start_s), min(high, wish.end_s)) for wish in self.asked.get(craft, ())
                  if wish.antenna in (None, antenna) for low, high in pieces}
         return {(a, b) for a, b in spans if b - a >= self.shortest_s}
+
+    def _on_air_s(self, candidate: Candidate) -> int:
+        start_s, end_s = on_air_span(self.run, candidate.start_s, candidate.downlink)
+        return end_s - start_s
 
     def _candidate(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
         downlink = link.downlink.best(start_s, end_s) if link.downlink is not None else None

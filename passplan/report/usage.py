@@ -26,6 +26,11 @@ REASON_WORDS = {
     "interference": "would disturb another contact",
     "contact_gap": "too soon after or before another contact of the spacecraft",
     "cool_down": "the spacecraft's transmitter must cool down",
+    "contacts_per_orbit": "the spacecraft has its contacts of that orbit",
+    "contacts_per_day": "the spacecraft has its contacts of that day",
+    "sending_per_contact": "the spacecraft would send for too long",
+    "sending_per_orbit": "the spacecraft has sent enough in that orbit",
+    "sending_per_span": "the spacecraft has sent enough in so many hours",
     "left_out": "left out of the plan",
 }
 

@@ -18,6 +18,10 @@ STORAGE = "storage_mb = 16000"
         ("contact_gap = 60", ("contact_gap", "did you mean 'contact_gap_s'?")),
         ("cool_down_s = 100000", ("cool_down_s", "100000", "must be at most 86400")),
         ('cool_down_s = "long"', ("cool_down_s", "long", "write a number")),
+        ("contacts_per_orbit = 0", ("contacts_per_orbit", "0", "must be at least 1")),
+        ("contacts_per_day = 2.5", ("contacts_per_day", "2.5", "write a whole number")),
+        ("sending_per_orbit_s = -600", ("sending_per_orbit_s", "-600", "must be at least 0")),
+        ("sending_span_h = 12", ("sending_span_h is given without sending_per_span_s", "drop it")),
     ],
 )
 def test_limits_of_spacecraft(

@@ -5,22 +5,45 @@ from __future__ import annotations
 import random
 from collections.abc import Iterable
 from dataclasses import replace
+from itertools import accumulate, pairwise
 
+import numpy as np
 from planning_cases import STEP_S, Judge, random_problem
 
+from passplan.planning.on_air import OnAir
 from passplan.planning.problem import Problem
+from passplan.planning.rules.contact_counts import CountNeed
 from passplan.planning.rules.contact_gaps import GapNeed
+from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNeed
 
 
 def random_craft_problem(seed: int) -> Problem:
     """A random problem in which each spacecraft has each limit by a coin's toss."""
     rng = random.Random(10_000 + seed)
     problem = random_problem(seed)
-    needs: list[object] = []
+    needs: list[object] = [on_air_of(problem)]
     for craft in range(len(problem.fleet)):
-        if rng.random() < 0.5:
+        edges_s = tuple(float(t) for t in range(rng.randint(1, 15) * STEP_S + 7, problem.horizon_s, 20 * STEP_S))
+        if rng.random() < 0.4:
             needs.append(GapNeed(craft, rng.choice([0, 2, 5]) * STEP_S, rng.choice([0, 4, 12]) * STEP_S))
+        if rng.random() < 0.4:
+            needs.append(CountNeed(craft, rng.choice(["orbit", "day"]), edges_s, rng.randint(1, 2)))
+        if rng.random() < 0.4:
+            needs.append(OrbitSendingNeed(craft, edges_s, rng.randint(1, 12) * STEP_S + 30.0))
+        if rng.random() < 0.4:
+            needs.append(SpanSendingNeed(craft, rng.randint(8, 40) * STEP_S + 20.0, rng.randint(1, 12) * STEP_S + 10.0))
     return replace(problem, needs=tuple(needs))
+
+
+def on_air_of(problem: Problem) -> OnAir:
+    """The transmitters of a random problem: a minute of acquisition before the first piece."""
+    o = problem.options
+    sends = np.diff(o.piece_offset) > 0
+    first, last = np.where(sends, o.piece_offset[:-1], 0), np.where(sends, o.piece_offset[1:] - 1, 0)
+    if not sends.any():
+        return OnAir(o.start_s, o.start_s, np.zeros(len(o)))
+    start_s = np.where(sends, o.piece_start_s[first] - STEP_S, o.start_s)
+    return OnAir(start_s, np.where(sends, o.piece_end_s[last], o.start_s), np.where(sends, 60.0, 0.0))
 
 
 class CraftJudge(Judge):
@@ -29,16 +52,40 @@ class CraftJudge(Judge):
     def kept(self, chosen: Iterable[int]) -> bool:
         """Whether a set of options that do not collide keeps every limit."""
         chosen = list(chosen)
-        return all(self._rested(need, chosen) for need in self.problem.needs_of(GapNeed))
+        checks = {GapNeed: self._rested, CountNeed: self._few_enough, OrbitSendingNeed: self._quiet_in_orbits,
+                  SpanSendingNeed: self._quiet_in_spans}
+        return all(checks[type(need)](need, [k for k in chosen if self.options.spacecraft[k] == need.spacecraft])
+                   for need in self.problem.needs if type(need) in checks)
 
     def _rested(self, need: GapNeed, chosen: list[int]) -> bool:
         o = self.options
         for after in chosen:
             for before in chosen:
-                own = o.spacecraft[after] == o.spacecraft[before] == need.spacecraft
-                if own and o.end_s[before] <= o.start_s[after]:
+                if o.end_s[before] <= o.start_s[after]:
                     rest_s = o.start_s[after] - o.end_s[before]
                     both_send = o.downlink[before] and o.downlink[after]
                     if rest_s < need.gap_s or (both_send and rest_s < need.cool_down_s):
                         return False
         return True
+
+    def _few_enough(self, need: CountNeed, chosen: list[int]) -> bool:
+        parts = [sum(edge <= self.options.start_s[k] for edge in need.edges_s) for k in chosen]
+        return all(parts.count(part) <= need.most for part in parts)
+
+    def _seconds_on(self, chosen: list[int]) -> list[bool]:
+        (on_air,) = self.problem.needs_of(OnAir)
+        seconds = [False] * self.problem.horizon_s
+        for k in chosen:
+            for t in range(int(on_air.start_s[k]), int(on_air.end_s[k])):
+                seconds[t] = True
+        return seconds
+
+    def _quiet_in_orbits(self, need: OrbitSendingNeed, chosen: list[int]) -> bool:
+        seconds, edges = self._seconds_on(chosen), [0.0, *need.edges_s, self.problem.horizon_s]
+        return all(sum(seconds[int(a):int(b)]) <= need.most_s for a, b in pairwise(edges))
+
+    def _quiet_in_spans(self, need: SpanSendingNeed, chosen: list[int]) -> bool:
+        sums = [0, *accumulate(self._seconds_on(chosen))]
+        span_s = int(need.span_s)
+        most_s = max(sums[min(t + span_s, len(sums) - 1)] - sums[t] for t in range(len(sums)))
+        return most_s <= need.most_s

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from audit_bench import Bench
 
+from passplan.geometry.revolutions import ascending_nodes
 from passplan.planning.audit import Fault
 
 CRAFT = "Ambril-3"
@@ -43,3 +44,63 @@ def test_a_contact_for_commands_needs_no_cooling(bench: Bench) -> None:
     bench.contacts.loc[own[1::2], "service"] = "command"
     assert "cool_down" not in {fault.kind for fault in audited(bench, cool_down_s=1_800.0)}
     assert "contact_gap" in {fault.kind for fault in audited(bench, contact_gap_s=86_400.0)}
+
+
+def on_air_s(bench: Bench) -> list[tuple[float, float]]:
+    """Start and end of the transmitter's time in the spacecraft's contacts [s]."""
+    own = bench.contacts[bench.contacts["spacecraft"] == CRAFT]
+    found = []
+    for contact, (start_s, _) in zip(own["contact_id"], spans_s(bench), strict=True):
+        mine = bench.segments[bench.segments["contact_id"] == contact]
+        first, last = ((mine[edge].iloc[k].to_datetime64() - bench.run.start_utc) / np.timedelta64(1, "s")
+                       for edge, k in (("start_utc", 0), ("end_utc", -1)))
+        found.append((max(start_s, first - bench.run.radios["x-8190"].acquisition_s), last))
+    return found
+
+
+def test_too_many_contacts_on_a_day(bench: Bench) -> None:
+    count = len(spans_s(bench))
+    assert audited(bench, contacts_per_day=count) == []
+    (fault,) = audited(bench, contacts_per_day=count - 1)
+    assert fault.kind == "contacts_per_day"
+    assert f"{count} contacts start on 2027-03-09" in fault.sentence
+
+
+def test_too_many_contacts_in_an_orbit(bench: Bench) -> None:
+    nodes = ascending_nodes(bench.run.orbits[CRAFT], bench.run.start_utc, bench.run.end_utc)
+    starts = np.array([a for a, _ in spans_s(bench)])
+    edges_s = (nodes - bench.run.start_utc) / np.timedelta64(1, "s")
+    counts = np.bincount(np.searchsorted(edges_s, starts))
+    assert counts.max() >= 2
+    assert audited(bench, contacts_per_orbit=int(counts.max())) == []
+    faults = audited(bench, contacts_per_orbit=int(counts.max()) - 1)
+    assert [fault.kind for fault in faults] == ["contacts_per_orbit"] * int(np.sum(counts == counts.max()))
+
+
+def test_sending_too_long_in_one_contact(bench: Bench) -> None:
+    longest_s = max(b - a for a, b in on_air_s(bench))
+    assert audited(bench, sending_per_contact_s=longest_s) == []
+    (fault,) = audited(bench, sending_per_contact_s=longest_s - 1.0)
+    assert fault.kind == "sending_per_contact"
+    assert f"on for {longest_s:g} s" in fault.sentence
+
+
+def test_sending_too_long_in_an_orbit(bench: Bench) -> None:
+    spans, nodes = on_air_s(bench), ascending_nodes(bench.run.orbits[CRAFT], bench.run.start_utc, bench.run.end_utc)
+    edges_s = [-np.inf, *((nodes - bench.run.start_utc) / np.timedelta64(1, "s")), np.inf]
+    most_s = max(sum(max(0.0, min(b, high) - max(a, low)) for a, b in spans) for low, high in pairwise(edges_s))
+    assert audited(bench, sending_per_orbit_s=most_s) == []
+    faults = audited(bench, sending_per_orbit_s=most_s - 5.0)
+    assert {fault.kind for fault in faults} == {"sending_per_orbit"}
+
+
+def test_sending_too_long_in_some_hours(bench: Bench) -> None:
+    seconds = np.zeros(86_400)
+    for a, b in on_air_s(bench):
+        seconds[int(a):int(b)] = 1.0
+    sums = np.concatenate([[0.0], np.cumsum(seconds)])
+    most_s = float((sums[7_200:] - sums[:-7_200]).max())
+    assert audited(bench, sending_per_span_s=most_s, sending_span_h=2.0) == []
+    (fault,) = audited(bench, sending_per_span_s=most_s - 1.0, sending_span_h=2.0)
+    assert fault.kind == "sending_per_span"
+    assert "s in 2 h, from" in fault.sentence
