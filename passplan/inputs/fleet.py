@@ -7,6 +7,7 @@ from typing import Annotated, Literal
 from pydantic import Field, model_validator
 
 from passplan.inputs.craft_limits import CraftLimits
+from passplan.inputs.craft_power import CraftPower
 from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
 
@@ -89,7 +90,7 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(CraftLimits):
+class Spacecraft(CraftLimits, CraftPower):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file

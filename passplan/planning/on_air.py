@@ -42,7 +42,7 @@ def on_air_span(run: Run, start_s: int, downlink: DownlinkChoice | None) -> tupl
 def on_air_needs(draft: Draft) -> Iterator[OnAir]:
     """One record for all options, where some limit of a spacecraft needs it."""
     crafts = [draft.run.spacecraft[name] for name in draft.problem.fleet.names]
-    if not any(craft.counts_sending for craft in crafts):
+    if not any(craft.counts_sending or craft.battery_wh is not None for craft in crafts):
         return
     spans = [on_air_span(draft.run, c.start_s, c.downlink) for c in draft.candidates]
     loads = [_load_w(draft.run, c.downlink) for c in draft.candidates]

@@ -17,6 +17,7 @@ from rich.text import Text
 from passplan.planning.record import PlanRecord
 from passplan.report.backlog import backlogs
 from passplan.report.backlog_chart import backlog_chart
+from passplan.report.batteries import battery_table
 from passplan.report.cautions import CAUTIONS
 from passplan.report.contact_table import LocalTime, contact_table, unused_table
 from passplan.report.keys import spacecraft_keys
@@ -59,6 +60,9 @@ def print_plan(
     _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
     if detail:
+        batteries = battery_table(summary)
+        if batteries is not None:
+            _section(console, "State of charge", batteries)
         if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
             _section(console, "Weather over an average year", by_antenna(part))
         if len(part.contacts):

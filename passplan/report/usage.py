@@ -31,6 +31,7 @@ REASON_WORDS = {
     "sending_per_contact": "the spacecraft would send for too long",
     "sending_per_orbit": "the spacecraft has sent enough in that orbit",
     "sending_per_span": "the spacecraft has sent enough in so many hours",
+    "battery": "the spacecraft's battery would fall under its floor",
     "left_out": "left out of the plan",
 }
 

@@ -22,6 +22,10 @@ STORAGE = "storage_mb = 16000"
         ("contacts_per_day = 2.5", ("contacts_per_day", "2.5", "write a whole number")),
         ("sending_per_orbit_s = -600", ("sending_per_orbit_s", "-600", "must be at least 0")),
         ("sending_span_h = 12", ("sending_span_h is given without sending_per_span_s", "drop it")),
+        ("battery_wh = 0", ("battery_wh", "0", "must be above 0")),
+        ("battery_wh = 100\nsolar_w = 200", ("battery_wh needs solar_w and base_load_w beside it",)),
+        ("battery_floor_percent = 20", ("battery_floor_percent is given without battery_wh", "drop it")),
+        ("battery_start_percent = 120", ("battery_start_percent", "120", "must be at most 100")),
     ],
 )
 def test_limits_of_spacecraft(

@@ -10,6 +10,7 @@ from itertools import accumulate, pairwise
 import numpy as np
 from planning_cases import STEP_S, Judge, random_problem
 
+from passplan.planning.battery import PowerNeed
 from passplan.planning.on_air import OnAir
 from passplan.planning.problem import Problem
 from passplan.planning.rules.contact_counts import CountNeed
@@ -32,6 +33,12 @@ def random_craft_problem(seed: int) -> Problem:
             needs.append(OrbitSendingNeed(craft, edges_s, rng.randint(1, 12) * STEP_S + 30.0))
         if rng.random() < 0.4:
             needs.append(SpanSendingNeed(craft, rng.randint(8, 40) * STEP_S + 20.0, rng.randint(1, 12) * STEP_S + 10.0))
+        if rng.random() < 0.5:
+            edges = np.array([0.0, *sorted(rng.sample(range(1, problem.horizon_s), 4)), problem.horizon_s])
+            capacity_wh = rng.choice([3.0, 8.0, 20.0])
+            net_w = np.array([rng.choice([-30.0, -10.0, 20.0, 50.0, 70.0]) for _ in range(5)])
+            needs.append(PowerNeed(craft, capacity_wh, rng.choice([0.0, 0.2, 0.5]) * capacity_wh,
+                                   rng.choice([0.1, 0.6, 1.0]) * capacity_wh, edges, net_w))
     return replace(problem, needs=tuple(needs))
 
 
@@ -43,7 +50,8 @@ def on_air_of(problem: Problem) -> OnAir:
     if not sends.any():
         return OnAir(o.start_s, o.start_s, np.zeros(len(o)))
     start_s = np.where(sends, o.piece_start_s[first] - STEP_S, o.start_s)
-    return OnAir(start_s, np.where(sends, o.piece_end_s[last], o.start_s), np.where(sends, 60.0, 0.0))
+    load_w = 30.0 + 15.0 * (np.arange(len(o)) % 3)
+    return OnAir(start_s, np.where(sends, o.piece_end_s[last], o.start_s), np.where(sends, load_w, 0.0))
 
 
 class CraftJudge(Judge):
@@ -53,7 +61,7 @@ class CraftJudge(Judge):
         """Whether a set of options that do not collide keeps every limit."""
         chosen = list(chosen)
         checks = {GapNeed: self._rested, CountNeed: self._few_enough, OrbitSendingNeed: self._quiet_in_orbits,
-                  SpanSendingNeed: self._quiet_in_spans}
+                  SpanSendingNeed: self._quiet_in_spans, PowerNeed: self._charged}
         return all(checks[type(need)](need, [k for k in chosen if self.options.spacecraft[k] == need.spacecraft])
                    for need in self.problem.needs if type(need) in checks)
 
@@ -79,6 +87,21 @@ class CraftJudge(Judge):
             for t in range(int(on_air.start_s[k]), int(on_air.end_s[k])):
                 seconds[t] = True
         return seconds
+
+    def _charged(self, need: PowerNeed, chosen: list[int]) -> bool:
+        """Second by second: never under the floor, or under what the battery holds there when nothing is sent."""
+        (on_air,) = self.problem.needs_of(OnAir)
+        part = np.searchsorted(need.edges_s, np.arange(self.problem.horizon_s), side="right") - 1
+        load_w = np.zeros(self.problem.horizon_s)
+        for k in chosen:
+            load_w[on_air.start_s[k]:on_air.end_s[k]] = on_air.load_w[k]
+        idle = charge = need.start_wh
+        for net_w, drawn_w in zip(need.net_w[part].tolist(), load_w.tolist(), strict=True):
+            idle = min(need.capacity_wh, idle + net_w / 3600.0)
+            charge = min(need.capacity_wh, charge + (net_w - drawn_w) / 3600.0)
+            if charge < min(need.floor_wh, idle) - 1e-7:
+                return False
+        return True
 
     def _quiet_in_orbits(self, need: OrbitSendingNeed, chosen: list[int]) -> bool:
         seconds, edges = self._seconds_on(chosen), [0.0, *need.edges_s, self.problem.horizon_s]

@@ -43,7 +43,7 @@ def test_the_limits_bite_in_many_of_those_cases() -> None:
         for kind in {term.kind for term in (*terms.rows, *terms.lanes) if len(term.options)}:
             kinds[kind] = kinds.get(kind, 0) + 1
     for kind in ("contact_gap", "cool_down", "contacts_per_orbit", "contacts_per_day", "sending_per_orbit",
-                 "sending_per_span"):
+                 "sending_per_span", "battery"):
         assert kinds[kind] >= 15, kinds
 
 

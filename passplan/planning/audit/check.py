@@ -8,6 +8,7 @@ from typing import Any
 import pandas as pd
 
 from passplan.inputs.run import Run
+from passplan.planning.audit.battery import check_batteries
 from passplan.planning.audit.craft_limits import check_craft_limits
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.interference import check_interference
@@ -38,6 +39,7 @@ def audit_plan(
     faults.extend(check_turnarounds(run, rows))
     faults.extend(check_interference(run, rows))
     faults.extend(check_craft_limits(run, rows))
+    faults.extend(check_batteries(run, rows, summary))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
     return faults

@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 
 from passplan.inputs.run import Run
+from passplan.planning.battery import power_needs
 from passplan.planning.hooks import Block, Cap, Draft, Wish
 from passplan.planning.on_air import on_air_needs
 from passplan.planning.problem import Problem
@@ -19,6 +20,7 @@ from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_counts import contact_counts, count_needs
 from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
+from passplan.planning.rules.energy import energy
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.sending_time import sending_caps, sending_needs, sending_time
@@ -27,13 +29,13 @@ from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
-    antenna_time, slew_time, spacecraft_time, contact_gaps, contact_counts, sending_time, requests, command_interval,
-    interference)
+    antenna_time, slew_time, spacecraft_time, contact_gaps, contact_counts, sending_time, energy, requests,
+    command_interval, interference)
 BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (closure_blocks,)
 WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (request_wishes,)
 CAPS: tuple[Callable[[Run], Iterable[Cap]], ...] = (sending_caps,)
 NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
-    gap_needs, count_needs, on_air_needs, sending_needs)
+    gap_needs, count_needs, on_air_needs, sending_needs, power_needs)
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import replace
 from itertools import pairwise
 
@@ -9,6 +10,7 @@ import numpy as np
 import pytest
 from audit_bench import Bench
 
+from passplan.geometry.eclipse import eclipses
 from passplan.geometry.revolutions import ascending_nodes
 from passplan.planning.audit import Fault
 
@@ -104,3 +106,58 @@ def test_sending_too_long_in_some_hours(bench: Bench) -> None:
     (fault,) = audited(bench, sending_per_span_s=most_s - 1.0, sending_span_h=2.0)
     assert fault.kind == "sending_per_span"
     assert "s in 2 h, from" in fault.sentence
+
+
+POWER = {"battery_wh": 120.0, "solar_w": 110.0, "base_load_w": 55.0}
+
+
+def powered(bench: Bench, floor_percent: float, lowest_wh: float, **power: float) -> list[Fault]:
+    """The faults where the spacecraft has a battery and the summary states its lowest charge."""
+    bench.run = replace(bench.run, radios={
+        **bench.run.radios, "x-8190": bench.run.radios["x-8190"].model_copy(update={"load_w": 150.0})})
+    bench.summary["battery"] = {CRAFT: {"lowest_wh": lowest_wh}}
+    return audited(bench, **{**POWER, "battery_floor_percent": floor_percent, **power})
+
+
+def lowest_wh_by_seconds(bench: Bench, **power: float) -> float:
+    """The lowest charge, by stepping through the day with the eclipses of the geometry floor."""
+    keys = {**POWER, "battery_start_percent": 100.0, **power}
+    load_w = np.full(86_400, -keys["base_load_w"] + keys["solar_w"])
+    for a, b in eclipses(bench.run.orbits[CRAFT], bench.run.start_utc, bench.run.end_utc):
+        first, last = ((t - bench.run.start_utc) / np.timedelta64(1, "s") for t in (a, b))
+        load_w[round(first):round(last)] = -keys["base_load_w"]
+    for a, b in on_air_s(bench):
+        load_w[int(a):int(b)] -= 150.0
+    charge = lowest = keys["battery_wh"] * keys["battery_start_percent"] / 100.0
+    for power_w in load_w.tolist():
+        charge = min(keys["battery_wh"], charge + power_w / 3600.0)
+        lowest = min(lowest, charge)
+    return lowest
+
+
+def test_a_battery_under_its_floor(bench: Bench) -> None:
+    lowest_wh = lowest_wh_by_seconds(bench)
+    assert 10.0 < lowest_wh < 100.0
+    percent = lowest_wh / 1.2
+    assert powered(bench, percent, lowest_wh) == []
+    (fault,) = powered(bench, percent + 1.0, lowest_wh)
+    assert fault.kind == "battery"
+    # The steps of a second above round the edges of the shadow.
+    found = re.search(r"falls (.*) Wh under the floor", fault.sentence)
+    assert found and float(found[1]) == pytest.approx(1.2, abs=0.02)
+
+
+def test_a_lowest_charge_that_is_not_the_plan_s(bench: Bench) -> None:
+    lowest_wh = lowest_wh_by_seconds(bench)
+    (fault,) = powered(bench, 0.0, lowest_wh + 1.0)
+    assert fault.kind == "battery" and "the summary says" in fault.sentence
+
+
+def test_a_base_load_that_breaks_the_floor_is_no_contact_s_fault(bench: Bench) -> None:
+    low = {"battery_start_percent": 10.0}
+    nothing = bench.copy()
+    nothing.contacts, nothing.segments = bench.contacts.iloc[:0], bench.segments.iloc[:0]
+    faults = powered(nothing, 30.0, 12.0, solar_w=0.0, base_load_w=0.0, **low)
+    assert "battery" not in {fault.kind for fault in faults}
+    (fault,) = powered(bench, 30.0, 0.0, solar_w=0.0, base_load_w=0.0, **low)
+    assert fault.kind == "battery"
