@@ -157,6 +157,20 @@ class Conflict:
     end_s: int
 
 
+@dataclass(frozen=True)
+class Crowd:
+    """From ``start_s`` to ``end_s``, while the victim is heard on its antenna, the ``shares`` of those of the
+    ``interferers`` that send must not add up to more than 1."""
+
+    name: str
+    victim: int
+    antenna: int
+    interferers: tuple[int, ...]
+    shares: tuple[float, ...]
+    start_s: int
+    end_s: int
+
+
 @dataclass(frozen=True, eq=False)
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
@@ -175,6 +189,7 @@ class Problem:
     requests: tuple[RequestNeed, ...] = ()
     commands: tuple[CommandNeed, ...] = ()
     conflicts: tuple[Conflict, ...] = ()
+    crowds: tuple[Crowd, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))

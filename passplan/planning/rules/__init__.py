@@ -20,7 +20,9 @@ from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_counts import contact_counts, count_needs
 from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
+from passplan.planning.rules.decisions import decision_needs, decision_wishes, decisions, forbid_blocks
 from passplan.planning.rules.energy import energy
+from passplan.planning.rules.guarantees import guarantee_needs, guarantees
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.sending_time import sending_caps, sending_needs, sending_time
@@ -29,13 +31,37 @@ from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
-    antenna_time, slew_time, spacecraft_time, contact_gaps, contact_counts, sending_time, energy, requests,
-    command_interval, interference)
-BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (closure_blocks,)
-WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (request_wishes,)
+    antenna_time,
+    slew_time,
+    spacecraft_time,
+    contact_gaps,
+    contact_counts,
+    sending_time,
+    energy,
+    requests,
+    command_interval,
+    interference,
+    decisions,
+    guarantees,
+)
+BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (
+    closure_blocks,
+    forbid_blocks,
+)
+WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (
+    request_wishes,
+    decision_wishes,
+)
 CAPS: tuple[Callable[[Run], Iterable[Cap]], ...] = (sending_caps,)
 NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
-    gap_needs, count_needs, on_air_needs, sending_needs, power_needs)
+    gap_needs,
+    count_needs,
+    on_air_needs,
+    sending_needs,
+    power_needs,
+    decision_needs,
+    guarantee_needs,
+)
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:
