@@ -13,7 +13,7 @@ from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
 from passplan.planning.cuts import Cuts, neighbour_cuts, spread
-from passplan.planning.hooks import Block, Candidate, Cap, Wish
+from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.on_air import on_air_span
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
@@ -75,10 +75,11 @@ def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Anten
 def find_options(
     run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
     blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (), caps: Sequence[Cap] = (),
+    silences: Sequence[Silence] = (),
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
     blocked = BlockedTime(blocks, antennas)
-    builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps)
+    builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps, silences)
     cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
     candidates: list[Candidate] = []
     excluded: dict[int, tuple[str, str]] = {}
@@ -99,7 +100,7 @@ def find_options(
 class _Builder:
     def __init__(
         self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, blocked: BlockedTime,
-        wishes: Sequence[Wish], caps: Sequence[Cap],
+        wishes: Sequence[Wish], caps: Sequence[Cap], silences: Sequence[Silence],
     ) -> None:
         self.run, self.windows, self.policy, self.blocked = run, windows, run.policy, blocked
         self.shortest_s = math.ceil(run.policy.min_contact_s)
@@ -108,6 +109,7 @@ class _Builder:
         for wish in wishes:
             self.asked.setdefault(wish.spacecraft, []).append(wish)
         self.caps = {cap.spacecraft: cap for cap in caps}
+        self.silences = {silence.spacecraft: silence for silence in silences}
 
     def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
         """The options of one window, longest first, or the reason why there are none."""
@@ -125,6 +127,9 @@ class _Builder:
                 return [], (cap.reason, cap.detail)
         useful = [c for c in found if c.downlink is not None or self._commands_wanted(craft)]
         if not useful:
+            silence = self.silences.get(craft)
+            if silence is not None and not reason and link.downlink is not None and start_s < silence.until_s:
+                return [], (silence.reason, silence.detail)
             if found:
                 reason = ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
             return [], reason or ("no_margin", "the margin does not hold long enough after acquisition")
@@ -191,8 +196,22 @@ class _Builder:
         start_s, end_s = on_air_span(self.run, candidate.start_s, candidate.downlink)
         return end_s - start_s
 
+    def _silent(self, w: int, start_s: int, end_s: int) -> bool:
+        """Whether the spacecraft must not send in a contact of a window."""
+        craft, antenna = self._names(w)
+        silence = self.silences.get(craft)
+        if silence is None or start_s >= silence.until_s:
+            return False
+        low, high = int(self.windows.start_s[w]), int(self.windows.end_s[w])
+        return not any(
+            (antenna, start_s, end_s) == (name, max(low, a), min(high, b))
+            and start_s <= max(a, 0) + DRIFT_S and end_s >= min(b, self.run.horizon_s) - DRIFT_S
+            for name, a, b in silence.kept)
+
     def _candidate(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
-        downlink = link.downlink.best(start_s, end_s) if link.downlink is not None else None
+        downlink = None
+        if link.downlink is not None and not self._silent(w, start_s, end_s):
+            downlink = link.downlink.best(start_s, end_s)
         command = link.command.best(start_s, end_s) if link.command is not None else None
         if command is not None and command.usable_s < self.policy.command_min_s:
             command = None

@@ -60,7 +60,8 @@ def contacts_table(
 
 def _origins(terms: Terms) -> dict[int, str]:
     """Who wanted each option; where several did, the one that outranks the others."""
-    words = {"request": "requested", "pin": "pinned", "frozen": "frozen", "emergency": "emergency"}
+    words = {"request": "requested", "pin": "pinned", "frozen": "frozen", "loaded": "frozen",
+             "emergency": "emergency"}
     return {int(o): words[want.kind] for want in sorted(terms.wanted, key=lambda want: list(words).index(want.kind))
             for o in want.options}
 
