@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 import pandas as pd
@@ -23,13 +23,15 @@ from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_o
 class OptionSet:
     """Options with their ``candidates`` (same order), and why windows give none.
 
-    ``excluded`` maps such a window to (reason, detail). ``blocked`` knows the time that no contact may touch.
+    ``excluded`` maps such a window to (reason, detail). ``blocked`` knows the time that no contact may touch, and
+    ``shortened`` why no longer contact was to be had in a window, where it is neither that nor the link.
     """
 
     options: Options
     candidates: tuple[Candidate, ...]
     excluded: Mapping[int, tuple[str, str]]
     blocked: BlockedTime
+    shortened: Mapping[int, str] = field(default_factory=dict)
 
 
 class BlockedTime:
@@ -94,7 +96,7 @@ def find_options(
         "pieces": [] if c.downlink is None else [
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
     } for c in candidates]
-    return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
+    return OptionSet(build_options(rows), tuple(candidates), excluded, blocked, builder.shortened)
 
 
 class _Builder:
@@ -109,6 +111,7 @@ class _Builder:
         for wish in wishes:
             self.asked.setdefault(wish.spacecraft, []).append(wish)
         self.caps = {cap.spacecraft: cap for cap in caps}
+        self.shortened: dict[int, str] = {}
         self.silences = {silence.spacecraft: silence for silence in silences}
 
     def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
@@ -176,6 +179,7 @@ class _Builder:
         longest_s = high - low
         if cap is not None and link.downlink is not None and cap.longest_s < longest_s:
             longest_s = cap.longest_s
+            self.shortened[w] = cap.reason
             starts, ends = starts | {b - longest_s for b in ends}, ends | {a + longest_s for a in starts}
         pairs = [(a, b) for a in starts for b in ends if low <= a and b <= high and b - a >= self.shortest_s
                  and (b - a <= longest_s or (a in must_start and b in must_end))]
@@ -202,6 +206,7 @@ class _Builder:
         silence = self.silences.get(craft)
         if silence is None or start_s >= silence.until_s:
             return False
+        self.shortened[w] = silence.reason
         low, high = int(self.windows.start_s[w]), int(self.windows.end_s[w])
         return not any(
             (antenna, start_s, end_s) == (name, max(low, a), min(high, b))

@@ -44,7 +44,7 @@ def contacts_table(
         rows.append({
             "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
             "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
-            "service": _service(candidate), "radio": link.radio, "frequency_mhz": link.frequency_mhz,
+            "service": candidate.service, "radio": link.radio, "frequency_mhz": link.frequency_mhz,
             "polarisation": link.polarisation, "start_utc": candidate.start_s, "end_utc": candidate.end_s,
             "duration_s": candidate.end_s - candidate.start_s, "usable_s": link.usable_s,
             "modcod": "" if candidate.downlink is None else candidate.downlink.modcod, "volume_mb": volume_mb,
@@ -88,12 +88,6 @@ def _modcod_of(candidate: Candidate, piece: int) -> str:
     return "" if candidate.downlink is None else candidate.downlink.pieces[piece].modcod
 
 
-def _service(candidate: Candidate) -> str:
-    if candidate.downlink is None:
-        return "command"
-    return "downlink" if candidate.command is None else "both"
-
-
 class _CutExplainer:
     """Says why a contact is shorter than its window, in the reason words of the unused windows."""
 
@@ -124,13 +118,19 @@ class _CutExplainer:
         return "; ".join(reasons)
 
     def _side(self, option: int, longer: list[int], low_s: int, high_s: int) -> str:
+        options, w = self.problem.options, int(self.problem.options.window[option])
+        shortened = self.option_set.shortened.get(w)
+        if shortened is not None and not any(
+            options.start_s[o] <= options.start_s[option] and options.end_s[o] >= options.end_s[option] for o in longer
+        ):
+            return shortened
         for o in longer:
             for blocker in self.occupancy.blockers(o):
                 return blocker.kind
         if longer:
             return "nothing_aboard"
-        craft = self.problem.fleet.names[int(self.problem.options.spacecraft[option])]
-        antenna = self.problem.antennas.names[int(self.problem.options.antenna[option])]
+        craft = self.problem.fleet.names[int(options.spacecraft[option])]
+        antenna = self.problem.antennas.names[int(options.antenna[option])]
         blocks = self.option_set.blocked.between(craft, antenna, low_s, high_s)
         return blocks[0][2].reason if blocks else "no_margin"
 

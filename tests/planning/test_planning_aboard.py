@@ -54,6 +54,7 @@ def test_a_schedule_aboard_sends_as_loaded_and_not_otherwise() -> None:
     assert spans(plan) == [
         ("Isvarde-A", "command", *spans(plan)[0][2:]), ("Isvarde-B", "downlink", 1_600, 1_900),
         ("Isvarde-A", "both", 4_000, 4_600)]
+    assert plan.contacts["cut"].iloc[1] == "start: loaded; end: loaded"
     assert plan.contacts["origin"].tolist() == ["planned", "frozen", "planned"]
     assert not [s for s in plan.result.shortfalls if s.kind == "loaded" and "1600" in s.name]
 

@@ -108,6 +108,7 @@ def test_a_contact_is_cut_to_the_longest_sending() -> None:
     assert len(options.candidates) <= 2 * run.policy.options_per_window
     plan = make_plan(run, make_windows(PASSES[:1]), [DOWN])
     assert plan.contacts["duration_s"].max() == 200
+    assert "sending_per_contact" in plan.contacts["cut"].iloc[0]
     short = make_run(craft={"sending_per_contact_s": 100})
     unused = make_plan(short, make_windows(PASSES[:1]), [DOWN]).unused
     assert unused["reason"].tolist() == ["sending_per_contact"]

@@ -57,7 +57,7 @@ def decided(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str, 
 
 
 def frozen(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str, str], Standing]]:
-    """How each frozen or loaded contact fares: it stands as it was published, or as far as the antenna can still follow."""
+    """How each frozen or loaded contact fares: it stands as it was, or as far as the antenna can still follow."""
     until = run.frozen_until_utc
     held = [("frozen", item) for item in run.published if until is not None and datetime64(item.start_utc) < until]
     for kind, item in [*held, *(("loaded", item) for item in run.loaded)]:
