@@ -36,7 +36,7 @@ REASON_WORDS = {
     "imaging": "the spacecraft takes images",
     "attitude": "the spacecraft cannot point at a station",
     "loaded": "the schedule aboard says otherwise",
-    "forbidden": "somebody forbade it",
+    "forbidden": "forbidden by hand",
     "left_out": "left out of the plan",
     IN_CONTACT: "within contacts: acquisition, keyholes, rate steps",
     NO_WINDOW: "no link in view in time",
