@@ -88,14 +88,13 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
-    facts = Table.grid(padding=(0, 3))
-    facts.add_row(
-        *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
+    facts = Text("  ").join(
+        Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
             ("brought down", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
             ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
-        ))
+        )
     )
     return Group(title, facts, _tiers(summary))
 
