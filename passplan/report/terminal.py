@@ -91,7 +91,7 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     facts = Text("  ").join(
         Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
-            ("brought down", megabytes(summary["volume_mb"])),
+            ("delivered", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
             ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
         )
