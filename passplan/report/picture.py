@@ -103,9 +103,10 @@ def _ruler(band: Band, top: int, lanes: int, *, named: bool) -> list[str]:
 
 def _lane(name: str, ribbon: Ribbon, band: Band, top: int) -> list[str]:
     foot = top + _LANE - 4
+    count = len(ribbon.marks)
     parts = [
         f'<text x="24" y="{foot - 22}" class="name">{escape(name)}</text>',
-        f'<text x="24" y="{foot - 5}" class="soft">{len(ribbon.marks)} contact{"" if len(ribbon.marks) == 1 else "s"}</text>',
+        f'<text x="24" y="{foot - 5}" class="soft">{count} contact{"" if count == 1 else "s"}</text>',
         f'<path class="foot" d="M24 {foot}H{_WIDTH - _RIGHT}"/>',
     ]
     for span in ribbon.spans:
