@@ -57,11 +57,14 @@ def check_ground(
 def check_mounts(
     antennas: Mapping[str, Antenna], mounts: Mapping[str, Mount], file: Path, findings: Findings
 ) -> None:
-    """Mounts that antennas name, the beam that a limited mount needs, and elevation limits that leave nothing."""
+    """Mounts that antennas name, the beam that a limited mount needs, several beams, and limits that leave nothing."""
     for item in antennas.values():
-        if item.mount is None:
-            continue
         place = f"antenna {item.name}"
+        if item.mount is None:
+            if item.beams > 1:
+                remedy = "several beams need an aperture that does not turn; name its mount, of kind fixed"
+                findings.problem(file, f"{place}: beams", item.beams, remedy)
+            continue
         _known((item.mount,), mounts, file, f"{place}: mount", findings)
         mount = mounts.get(item.mount)
         if mount is None:
@@ -69,6 +72,9 @@ def check_mounts(
         if mount.moves and item.beamwidth_deg is None:
             remedy = f"missing; mount {mount.name} has limited rates, so add the half-power width of the beam"
             findings.problem(file, f"{place}: beamwidth_deg", None, remedy)
+        if item.beams > 1 and mount.kind != "fixed":
+            remedy = f"mount {mount.name} turns all its beams together; give 1, or a mount of kind fixed"
+            findings.problem(file, f"{place}: beams", item.beams, remedy)
         highest = mount.upper_to_deg if mount.kind == "az_el" else None
         if highest is not None and highest <= item.min_elevation_deg:
             remedy = f"mount {mount.name} reaches only {highest:g} deg, so nothing is left to see; lower it"

@@ -87,7 +87,8 @@ def build_problem(
     antennas = Antennas(
         names=tuple(run.antennas),
         prepare_s=np.array([math.ceil(a.prepare_s) for a in run.antennas.values()], dtype=np.int64),
-        release_s=np.array([math.ceil(a.release_s) for a in run.antennas.values()], dtype=np.int64))
+        release_s=np.array([math.ceil(a.release_s) for a in run.antennas.values()], dtype=np.int64),
+        beams=np.array([a.beams for a in run.antennas.values()], dtype=np.int64))
     disturbing = interference or Interference()
     arrays = window_arrays(run, windows, fleet, antennas)
     blocks = [block for find in BLOCKS for block in find(run)]

@@ -58,6 +58,9 @@ def test_mounts_are_read_from_toml_and_from_csv(edit: Edit, sample: Path) -> Non
         ("beamwidth_deg = 0.5\n", "", ("Isvarde-B: beamwidth_deg", "spare has limited rates")),
         ('mount = "spare"', 'mount = "spar"', ("Isvarde-B: mount", "did you mean 'spare'?")),
         (B, f"{B}transmit_min_elevation_deg = 10\n", ("transmit_min_elevation_deg", "no transmitters")),
+        (B, f"{B}beams = 0\n", ("beams", "at least 1")),
+        (B, f"{B}beams = 4\n", ("Isvarde-B: beams", "4", "spare turns all its beams together")),
+        (f'{B}mount = "spare"', f"{B}beams = 4", ("Isvarde-B: beams", "4", "of kind fixed")),
         (B, f"{B}sun_keep_out_deg = 0\n", ("sun_keep_out_deg", "above 0")),
     ],
 )

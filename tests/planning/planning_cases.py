@@ -108,12 +108,27 @@ class Judge:
         if (first, second) in self.tight:
             return False
         dish = int(o.antenna[a])
+        if dishes.beams[dish] > 1:
+            return True
         setup_s = int(dishes.release_s[dish] + dishes.prepare_s[dish])
         return bool(o.antenna[a] != o.antenna[b] or o.start_s[second] >= o.end_s[first] + setup_s)
 
     def kept(self, chosen: Iterable[int]) -> bool:
-        """Whether the amounts of the chosen options stay within every limit."""
-        return all(sum(amounts.get(o, 0.0) for o in chosen) <= most + 1e-9 for amounts, most in self.limits)
+        """Whether the amounts of the chosen options stay within every limit, and no antenna is short of beams."""
+        chosen = list(chosen)
+        within = all(sum(amounts.get(o, 0.0) for o in chosen) <= most + 1e-9 for amounts, most in self.limits)
+        return within and self._enough_beams(chosen)
+
+    def _enough_beams(self, chosen: list[int]) -> bool:
+        o, dishes = self.options, self.problem.antennas
+        for dish in np.flatnonzero(dishes.beams > 1).tolist():
+            early, late = int(dishes.prepare_s[dish]), int(dishes.release_s[dish])
+            mine = [k for k in chosen if o.antenna[k] == dish]
+            for instant in range(-3_600 + STEP_S // 2, self.problem.horizon_s + 3_600, STEP_S):
+                held = sum(o.start_s[k] - early < instant < o.end_s[k] + late for k in mine)
+                if held > dishes.beams[dish]:
+                    return False
+        return True
 
     def plans(self) -> Iterator[frozenset[int]]:
         """Every set of options that can be used together."""

@@ -52,10 +52,26 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
 
 
 def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """No antenna and no spacecraft has two contacts at a time, setup times of antennas counted."""
+    """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft has two."""
     setup_s = {name: antenna.prepare_s + antenna.release_s for name, antenna in run.antennas.items()}
-    yield from _overlaps(contacts, "antenna", lambda contact: contact.antenna, lambda name: setup_s[name])
+    several = {name for name, antenna in run.antennas.items() if antenna.beams > 1}
+    alone = [contact for contact in contacts if contact.antenna not in several]
+    yield from _overlaps(alone, "antenna", lambda contact: contact.antenna, lambda name: setup_s[name])
+    for name in sorted(several):
+        yield from _crowded(run, name, [contact for contact in contacts if contact.antenna == name])
     yield from _overlaps(contacts, "spacecraft", lambda contact: contact.spacecraft, lambda _: 0.0)
+
+
+def _crowded(run: Run, name: str, contacts: Sequence[Contact]) -> Iterator[Fault]:
+    """Each beam goes to the contact that is next to begin, once it has been released: is there always one?"""
+    antenna = run.antennas[name]
+    free_s = [float("-inf")] * antenna.beams
+    for contact in sorted(contacts, key=lambda contact: contact.start_s):
+        beam = free_s.index(min(free_s))
+        if contact.start_s - antenna.prepare_s < free_s[beam]:
+            sentence = f"contact {contact.contact_id} begins while its {antenna.beams} beams are held by others"
+            yield Fault("antenna_overlap", f"antenna {name}", sentence)
+        free_s[beam] = max(free_s[beam], contact.end_s + antenna.release_s)
 
 
 def _overlaps(
