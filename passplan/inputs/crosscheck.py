@@ -12,6 +12,7 @@ from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.modcods import ModcodTable
 from passplan.inputs.mounts import Mount
+from passplan.inputs.policy import Policy
 from passplan.inputs.tables import Placed
 
 Radios = Mapping[str, DownlinkRadio | CommandRadio]
@@ -109,6 +110,14 @@ def check_matches(
                 f"no antenna can {verb} it ({radio.polarisation}, aboard {owners}); "
                 f"correct the band, or fit an antenna with a matching chain",
             )
+
+
+def check_guarantees(policy: Policy, spacecraft: Mapping[str, Spacecraft], file: Path, findings: Findings) -> None:
+    """Missions that guarantees name."""
+    missions = {craft.mission for craft in spacecraft.values() if craft.mission}
+    for i, item in enumerate(policy.guarantee, start=1):
+        if spacecraft:
+            _known((item.mission,), missions, file, f"guarantee[{i}].mission", findings)
 
 
 def check_requests(

@@ -109,6 +109,8 @@ class Spacecraft(CraftLimits):
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     last_command_utc: Instant | None = None
+    least_contacts_per_day: Annotated[int, Field(ge=1, le=1_000)] | None = None
+    least_mb_per_day: Annotated[float, Field(gt=0.0, le=1e9)] | None = None
     manoeuvres_utc: Instants = ()
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] | None = None
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] | None = None

@@ -17,7 +17,7 @@ from passplan.planning.clock import Clock
 from passplan.planning.maps import StorageMaps, storage_maps
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.problem import Problem
-from passplan.planning.rules.terms import Recurrence, Terms, Wanted
+from passplan.planning.rules.terms import AtLeast, Recurrence, Terms, Wanted
 
 
 def plan_greedily(
@@ -27,10 +27,12 @@ def plan_greedily(
     builder = _Builder(problem, terms, maps or storage_maps(problem))
     for o in begin:
         builder.take(int(o))
-    for want in terms.wanted:
+    for want in sorted(terms.wanted, key=lambda want: -want.points):
         builder.meet(want)
     for need in terms.recurrences:
         builder.cover(need)
+    for promise in terms.guarantees:
+        builder.reach(promise)
     builder.fill(clock)
     return sorted(builder.chosen)
 
@@ -68,6 +70,20 @@ class _Builder:
                 if not later:
                     return
                 reached = min(later)
+
+    def reach(self, promise: AtLeast) -> None:
+        """Take what adds most to what is promised, until it is reached or nothing fits any more."""
+        amounts = dict(zip(promise.options.tolist(), promise.amounts.tolist(), strict=True))
+        missing = promise.need - sum(amount for o, amount in amounts.items() if o in self.chosen)
+        while missing > 0.0:
+            fit = [(min(amount, missing), o) for o, amount in amounts.items()
+                   if amount > 0.0 and o not in self.chosen and self.occupancy.fits(o)]
+            if not fit:
+                return
+            most = max(amount for amount, _ in fit)
+            best = max((self._gain(o), -o) for amount, o in fit if amount >= most)
+            self.take(-best[1])
+            missing -= amounts[-best[1]]
 
     def fill(self, clock: Clock) -> None:
         """Add options in the order of what they add now, until none adds anything."""

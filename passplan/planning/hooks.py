@@ -57,9 +57,13 @@ class Wish:
 
 @dataclass(frozen=True, eq=False)
 class Draft:
-    """A run on its way to a problem: ``problem`` has its options but no needs yet, ``candidates`` in their order."""
+    """A run on its way to a problem: ``problem`` has its options but no needs yet, ``candidates`` in their order.
+
+    ``blocks`` is the time that was closed to them.
+    """
 
     run: Run
     windows: pd.DataFrame
     problem: Problem
     candidates: tuple[Candidate, ...]
+    blocks: tuple[Block, ...] = ()

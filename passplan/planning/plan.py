@@ -102,7 +102,7 @@ def build_problem(
         crowds=tuple(_crowd(fleet, antennas, crowd) for crowd in disturbing.crowds),
         spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
-    draft = Draft(run, windows, problem, option_set.candidates)
+    draft = Draft(run, windows, problem, option_set.candidates, tuple(blocks))
     return replace(problem, needs=tuple(need for find in NEEDS for need in find(draft))), option_set
 
 

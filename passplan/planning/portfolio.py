@@ -111,7 +111,7 @@ def _conclude(
     bound = max(bound, value)
     gap = relative_gap(value, bound)
     tiers = [Tier("value", "most", value, bound, gap)]
-    if terms.wanted or terms.recurrences:
+    if terms.wanted or terms.recurrences or terms.guarantees:
         floor = min(points_bound, best.points)
         tiers.insert(0, Tier("shortfalls", "least", best.points, floor, relative_gap(-best.points, -floor)))
     return PlanResult(

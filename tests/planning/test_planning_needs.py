@@ -17,7 +17,7 @@ ONE = [("Teasel-1", "Isvarde-A", 600, 1_800)]
 
 
 @pytest.mark.parametrize("block", range(10))
-def test_100_cases_with_weighed_and_fixed_requests_equal_the_best_of_all_plans(block: int) -> None:
+def test_100_cases_with_more_kinds_of_needs_equal_the_best_of_all_plans(block: int) -> None:
     for seed in range(10 * block, 10 * block + 10):
         problem = needy_problem(seed)
         judge = NeedJudge(problem)
@@ -57,3 +57,30 @@ def test_ranging_wants_both_ways_on_an_antenna_that_offers_it() -> None:
     run = replace(run, antennas=able)
     assert make_plan(run, make_windows(ONE), [BOTH]).result.shortfalls == ()
     assert [s.name for s in make_plan(run, make_windows(ONE), [DOWN]).result.shortfalls] == ["range"]
+
+
+def test_contacts_and_mb_by_the_day_are_due_in_proportion() -> None:
+    run = make_run({"cut_grid_s": 0}, craft={"least_contacts_per_day": 25, "least_mb_per_day": 24_000.0})
+    windows = make_windows([("Teasel-1", "Isvarde-A", 600, 1_800), ("Teasel-1", "Isvarde-A", 3_000, 4_200)])
+    shortfalls = {s.name: s.sentence for s in make_plan(run, windows, [DOWN] * 2).result.shortfalls}
+    assert list(shortfalls) == ["contacts of Teasel-2 on 2027-03-09", "MB of Teasel-2 on 2027-03-09"]
+    assert shortfalls["MB of Teasel-2 on 2027-03-09"] == (
+        "The MB of Teasel-2 on 2027-03-09: the plan has 0 of the 2000 that are due: the windows offer no more.")
+
+
+def test_the_mb_of_a_contact_are_no_more_than_a_full_storage() -> None:
+    # The link carries 11 800 MB; 500 MB aboard at most, and 0.5 MB/s meanwhile.
+    craft = {"storage_mb": 500.0, "start_fill_mb": 0.0, "mission": "Teasel", "generation_mb_per_s": 0.5}
+    policy = {"cut_grid_s": 0, "options_per_window": 1}
+    for mb, missed in ((1_100.0, False), (1_101.0, True)):
+        run = make_run({**policy, "guarantee": ({"mission": "Teasel", "mb": mb * 12},)}, craft=craft)
+        plan = make_plan(run, make_windows(ONE), [DOWN])
+        assert [s.kind for s in plan.result.shortfalls] == (["guarantee"] if missed else [])
+
+
+def test_a_guarantee_over_several_days_is_one_sum() -> None:
+    policy = {"guarantee": ({"mission": "Teasel", "contacts": 24, "days": 2},), "worth_per_money": 1e6}
+    rows = [("Teasel-2", "Isvarde-B", 600, 1_800), ("Teasel-1", "Isvarde-B", 3_000, 4_200)]
+    plan = make_plan(make_run(policy, craft={"mission": "Teasel"}), make_windows(rows), [DOWN] * 2)
+    assert len(plan.contacts) == 1
+    assert plan.result.shortfalls == ()
