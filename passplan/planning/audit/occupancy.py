@@ -31,8 +31,7 @@ def check_times(run: Run, contact: Contact) -> Iterator[Fault]:
 
 def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
     """The antenna is open throughout the contact and the time to prepare and to release."""
-    antenna = run.antennas[contact.antenna]
-    held_from_s, held_until_s = contact.start_s - antenna.prepare_s, contact.end_s + antenna.release_s
+    held_from_s, held_until_s = held(run, contact)
     for closure in run.closures:
         if closure.antenna != contact.antenna:
             continue
@@ -53,44 +52,66 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
 
 def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
     """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft has two."""
-    setup_s = {name: antenna.prepare_s + antenna.release_s for name, antenna in run.antennas.items()}
     several = {name for name, antenna in run.antennas.items() if antenna.beams > 1}
     alone = [contact for contact in contacts if contact.antenna not in several]
-    yield from _overlaps(alone, "antenna", lambda contact: contact.antenna, lambda name: setup_s[name])
+    yield from _overlaps(alone, "antenna", lambda contact: contact.antenna, lambda contact: held(run, contact))
     for name in sorted(several):
         yield from _crowded(run, name, [contact for contact in contacts if contact.antenna == name])
-    yield from _overlaps(contacts, "spacecraft", lambda contact: contact.spacecraft, lambda _: 0.0)
+    yield from _overlaps(
+        contacts, "spacecraft", lambda contact: contact.spacecraft, lambda contact: (contact.start_s, contact.end_s))
+
+
+def held(run: Run, contact: Contact) -> tuple[float, float]:
+    """The time [s] that a contact holds its antenna, preparing and releasing included."""
+    antenna = run.antennas[contact.antenna]
+    carriers = {contact.frequency_mhz}
+    if contact.service == "both":
+        radios = (run.radios[name] for name in run.spacecraft[contact.spacecraft].radios)
+        carriers |= {radio.frequency_mhz for radio in radios if radio.direction == "command"}
+    before, after = [], []
+    for row in antenna.setup:
+        in_band = row.low_mhz is None or any(row.low_mhz <= f <= (row.high_mhz or 0.0) for f in carriers)
+        if in_band and row.service in (None, contact.service):
+            before += [] if row.prepare_s is None else [row.prepare_s]
+            after += [] if row.release_s is None else [row.release_s]
+    return (
+        contact.start_s - (max(before) if before else antenna.prepare_s),
+        contact.end_s + (max(after) if after else antenna.release_s))
 
 
 def _crowded(run: Run, name: str, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """Each beam goes to the contact that is next to begin, once it has been released: is there always one?"""
-    antenna = run.antennas[name]
-    free_s = [float("-inf")] * antenna.beams
-    for contact in sorted(contacts, key=lambda contact: contact.start_s):
+    """Each beam goes to the contact that is next to hold one, once it has been released: is there always one?"""
+    count = run.antennas[name].beams
+    free_s = [float("-inf")] * count
+    spans = sorted(((*held(run, contact), contact) for contact in contacts), key=lambda entry: entry[:2])
+    for from_s, until_s, contact in spans:
         beam = free_s.index(min(free_s))
-        if contact.start_s - antenna.prepare_s < free_s[beam]:
-            sentence = f"contact {contact.contact_id} begins while its {antenna.beams} beams are held by others"
+        if from_s < free_s[beam]:
+            sentence = f"contact {contact.contact_id} begins while its {count} beams are held by others"
             yield Fault("antenna_overlap", f"antenna {name}", sentence)
-        free_s[beam] = max(free_s[beam], contact.end_s + antenna.release_s)
+        free_s[beam] = max(free_s[beam], until_s)
 
 
 def _overlaps(
-    contacts: Sequence[Contact], what: str, owner: Callable[[Contact], str], setup_s: Callable[[str], float]
+    contacts: Sequence[Contact], what: str, owner: Callable[[Contact], str],
+    span: Callable[[Contact], tuple[float, float]],
 ) -> Iterator[Fault]:
-    groups: dict[str, list[Contact]] = defaultdict(list)
+    groups: dict[str, list[tuple[float, float, Contact]]] = defaultdict(list)
     for contact in contacts:
-        groups[owner(contact)].append(contact)
+        groups[owner(contact)].append((*span(contact), contact))
     for name, group in groups.items():
-        # The one that ends last so far is the one that can stand in the way.
-        latest = group[0]
-        for contact in group[1:]:
-            gap_s = contact.start_s - latest.end_s
-            if gap_s < setup_s(name):
-                how = "overlap" if gap_s < 0.0 else f"leave {gap_s:g} s between them, {setup_s(name):g} s are needed"
+        group.sort(key=lambda entry: entry[:2])
+        # The one that is held longest so far is the one that can stand in the way.
+        _, busy_s, latest = group[0]
+        for from_s, until_s, contact in group[1:]:
+            if from_s < busy_s:
+                gap_s = contact.start_s - latest.end_s
+                needed_s = busy_s - latest.end_s + contact.start_s - from_s
+                how = "overlap" if gap_s < 0.0 else f"leave {gap_s:g} s between them, {needed_s:g} s are needed"
                 yield Fault(
                     f"{what}_overlap",
                     f"{what} {name}",
                     f"contacts {latest.contact_id} and {contact.contact_id} {how}",
                 )
-            if contact.end_s > latest.end_s:
-                latest = contact
+            if until_s > busy_s:
+                busy_s, latest = until_s, contact
