@@ -13,7 +13,11 @@ from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.modcods import ModcodTable
 from passplan.inputs.mounts import Mount
 from passplan.inputs.policy import Policy
+from passplan.inputs.records import MaskPoints
 from passplan.inputs.tables import Placed
+
+# More than half of the horizon.
+_SILENT_DEG = 180.0
 
 Radios = Mapping[str, DownlinkRadio | CommandRadio]
 
@@ -53,6 +57,18 @@ def check_ground(
         _known(item.transmitters, transmitters, file, f"{place}: transmitters", findings)
         if not item.receivers and not item.transmitters:
             findings.problem(file, place, None, "has neither receivers nor transmitters; name at least one")
+        for key, points in (("mask", item.mask), ("transmit_mask", item.transmit_mask)):
+            _warn_of_gap(points, f"{file}: {place}: {key}", findings)
+
+
+def _warn_of_gap(points: MaskPoints, place: str, findings: Findings) -> None:
+    """A mask that is a slope over more than half of the horizon has not been surveyed there, or points are missing."""
+    for (last, low), (first, high) in zip(points, (*points[1:], *points[:1]), strict=True):
+        silent_deg = (first - last) % 360.0
+        if silent_deg > _SILENT_DEG and abs(high - low) > 1.0:
+            findings.warn(
+                f"{place} says nothing from {last:g} to {first:g} deg of azimuth; a straight line from {low:g} to "
+                f"{high:g} deg of elevation stands for it, so add the points in between")
 
 
 def check_mounts(
