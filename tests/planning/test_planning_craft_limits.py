@@ -162,6 +162,17 @@ def kept(rows: Rows, chosen: np.ndarray) -> bool:
     return bool(np.all(load <= rows.limit + 1e-9))
 
 
+def test_rows_that_a_neighbour_implies_are_left_out() -> None:
+    options, start_s, end_s = np.arange(3), np.array([0, 0, 500]), np.array([100, 60, 600])
+    low_s, high_s = np.array([-50.0, -20.0, 10.0, 0.0]), np.array([200.0, 300.0, 300.0, 550.0])
+    limit = np.array([50.0, 50.0, 40.0, 60.0])
+    rows = within_spans("x", "x", options, start_s, end_s, np.ones(3), low_s, high_s, limit)
+    # The second counts what the first does; the third counts less but allows less, the last counts more.
+    assert rows.limit.tolist() == [50.0, 40.0, 60.0]
+    assert [rows.amounts[a:b].tolist() for a, b in zip(rows.offset[:-1], rows.offset[1:], strict=True)] == [
+        [100.0, 60.0], [90.0, 50.0], [100.0, 60.0, 50.0]]
+
+
 def test_seconds_that_intervals_cover() -> None:
     low_s, high_s = np.array([0.0, 15.0, 25.0, 100.0]), np.array([100.0, 35.0, 26.0, 200.0])
     found = covered_s(np.array([30, 10, 12]), np.array([40, 20, 15]), low_s, high_s)
