@@ -17,6 +17,7 @@ from passplan.planning.on_air import on_air_needs
 from passplan.planning.problem import Problem
 from passplan.planning.rules.aboard import loaded_needs, loaded_wishes, silences
 from passplan.planning.rules.antenna_time import antenna_time
+from passplan.planning.rules.beams import beams
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_counts import contact_counts, count_needs
@@ -34,6 +35,7 @@ from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
     antenna_time,
+    beams,
     slew_time,
     spacecraft_time,
     contact_gaps,
