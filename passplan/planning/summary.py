@@ -18,6 +18,7 @@ from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.reader import ReadFile
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
+from passplan.planning.aboard import schedule_warnings
 from passplan.planning.battery import battery_summary, battery_warnings
 from passplan.planning.plan import Plan
 from passplan.planning.value import Account
@@ -51,7 +52,8 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
-        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem),
+        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem)
+        + list(schedule_warnings(run, plan.contacts)),
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},

@@ -42,6 +42,21 @@ def random_craft_problem(seed: int) -> Problem:
     return replace(problem, needs=tuple(needs))
 
 
+def loosened(problem: Problem) -> Problem:
+    """The same problem with every limit of its spacecraft a little looser."""
+    return replace(problem, needs=tuple(_loosened(need) for need in problem.needs))
+
+
+def _loosened(need: object) -> object:
+    if isinstance(need, GapNeed):
+        return replace(need, gap_s=need.gap_s // 2, cool_down_s=need.cool_down_s // 2)
+    if isinstance(need, CountNeed):
+        return replace(need, most=need.most + 1)
+    if isinstance(need, OrbitSendingNeed | SpanSendingNeed):
+        return replace(need, most_s=need.most_s + 2 * STEP_S)
+    return replace(need, floor_wh=0.5 * need.floor_wh) if isinstance(need, PowerNeed) else need
+
+
 def on_air_of(problem: Problem) -> OnAir:
     """The transmitters of a random problem: a minute of acquisition before the first piece."""
     o = problem.options

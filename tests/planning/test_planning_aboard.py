@@ -10,6 +10,7 @@ from planning_runs import BOTH, DOWN, START, at, make_run, make_windows
 
 from passplan.inputs.aboard import Slot
 from passplan.inputs.decisions import Published
+from passplan.planning.aboard import schedule_warnings
 from passplan.planning.plan import Plan, build_problem, make_plan
 
 PASSES = [("Teasel-1", "Isvarde-A", 600, 1_200), ("Teasel-1", "Isvarde-B", 1_500, 2_100),
@@ -73,6 +74,18 @@ def test_a_stated_instant_is_when_a_new_schedule_can_be_aboard() -> None:
     # Without any loaded contact nothing at all is sent before.
     plan = planned([DOWN] * 3, {"loaded_until_utc": at(5_000)})
     assert len(plan.contacts) == 0
+
+
+def test_a_new_schedule_that_no_contact_could_bring_up_is_warned_of() -> None:
+    aboard = (loaded("Isvarde-A", 600, 1_200),)
+    for links, warned in (([DOWN] * 3, True), ([BOTH, DOWN, DOWN], False)):
+        run = make_run({"command_every_h": 1.0}, craft=PLENTY, loaded=aboard)
+        plan = make_plan(run, make_windows(PASSES), links)
+        lines = list(schedule_warnings(run, plan.contacts))
+        assert len(lines) == warned
+        if warned:
+            assert lines[0].startswith("Teasel-1: from 2027-03-09 00:25 UTC on the plan needs a new schedule aboard")
+    assert list(schedule_warnings(make_run(), plan.contacts)) == []
 
 
 def test_a_loaded_contact_that_cannot_be_is_a_shortfall() -> None:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from craft_cases import CraftJudge, random_craft_problem
+from craft_cases import CraftJudge, loosened, random_craft_problem
 from planning_runs import BOTH, DOWN, START, UP, make_run, make_windows
 
 from passplan.planning.on_air import OnAir
@@ -34,6 +34,19 @@ def test_plans_under_limits_of_spacecraft_equal_the_best_of_all_plans(block: int
         assert sum(s.points for s in result.shortfalls) == pytest.approx(points, abs=1e-9), f"seed {seed}"
         assert result.value == pytest.approx(value, rel=1e-6, abs=1e-6), f"seed {seed}"
         assert result.bound >= result.value
+
+
+def test_looser_limits_never_make_a_plan_worse() -> None:
+    better = 0
+    for seed in range(200, 260):
+        problem = random_craft_problem(seed)
+        tight, loose = (find_plan(p, Limits(gap=0.0)) for p in (problem, loosened(problem)))
+        points = [sum(s.points for s in plan.shortfalls) for plan in (tight, loose)]
+        assert points[1] <= points[0] + 1e-9, f"seed {seed}"
+        if points[1] > points[0] - 1e-9:
+            assert loose.value >= tight.value - 1e-6 * (1.0 + abs(tight.value)), f"seed {seed}"
+        better += loose.value > tight.value + 1e-6
+    assert better > 10
 
 
 def test_the_limits_bite_in_many_of_those_cases() -> None:
@@ -147,6 +160,17 @@ def kept(rows: Rows, chosen: np.ndarray) -> bool:
     row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
     load = np.bincount(row, weights=rows.amounts * chosen[rows.options], minlength=len(rows))
     return bool(np.all(load <= rows.limit + 1e-9))
+
+
+def test_rows_that_a_neighbour_implies_are_left_out() -> None:
+    options, start_s, end_s = np.arange(3), np.array([0, 0, 500]), np.array([100, 60, 600])
+    low_s, high_s = np.array([-50.0, -20.0, 10.0, 0.0]), np.array([200.0, 300.0, 300.0, 550.0])
+    limit = np.array([50.0, 50.0, 40.0, 60.0])
+    rows = within_spans("x", "x", options, start_s, end_s, np.ones(3), low_s, high_s, limit)
+    # The second counts what the first does; the third counts less but allows less, the last counts more.
+    assert rows.limit.tolist() == [50.0, 40.0, 60.0]
+    assert [rows.amounts[a:b].tolist() for a, b in zip(rows.offset[:-1], rows.offset[1:], strict=True)] == [
+        [100.0, 60.0], [90.0, 50.0], [100.0, 60.0, 50.0]]
 
 
 def test_seconds_that_intervals_cover() -> None:

@@ -6,12 +6,12 @@ reach it at any time. It lasts until ``loaded_until_utc``, or until the last loa
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator
 
 from passplan.inputs.run import Run
+from passplan.planning.aboard import loaded_until_s
 from passplan.planning.hooks import Draft, Silence, Wish
-from passplan.planning.horizon import instants_of, seconds_of
+from passplan.planning.horizon import instants_of
 from passplan.planning.rules.decisions import DecidedContact, decided_contact, decided_span
 
 
@@ -24,13 +24,6 @@ def silences(run: Run) -> Iterator[Silence]:
         kept = tuple((c.antenna, *decided_span(run, c)) for c in run.loaded if c.spacecraft == name)
         at = str(instants_of(run, min(until_s, run.horizon_s)))[:19].replace("T", " ")
         yield Silence(name, until_s, kept, "loaded", f"until {at} UTC {name} sends as the schedule aboard says")
-
-
-def loaded_until_s(run: Run, name: str) -> int:
-    """Until when the schedule aboard holds [s]; 0 or less where there is none."""
-    stated = run.spacecraft[name].loaded_until_utc
-    ends = [c.end_utc for c in run.loaded if c.spacecraft == name] if stated is None else [stated]
-    return max((math.ceil(seconds_of(run, end)) for end in ends), default=0)
 
 
 def loaded_wishes(run: Run) -> Iterator[Wish]:

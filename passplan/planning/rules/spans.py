@@ -18,23 +18,40 @@ def within_spans(
     """Of options that hold ``[start_s, end_s)``, ``per_s`` for each second in span r adds up to ``limit[r]``.
 
     The options are those of one spacecraft, of which no two overlap in a plan. So a row that would be kept if
-    every second that any of them holds were used, at the highest rate, cannot bind and is left out.
+    every second that any of them holds were used, at the highest rate, cannot bind and is left out; so is one whose
+    neighbour counts at least as much of everything and allows no more.
     """
     highest = float(per_s.max(initial=0.0))
     binding = np.flatnonzero(highest * covered_s(start_s, end_s, low_s, high_s) > limit)
-    columns, amounts, counts = [], [], [np.zeros(0, dtype=np.int64)]
+    columns, amounts, counts, kept = [], [], [np.zeros(0, dtype=np.int64)], [np.zeros(0, dtype=np.int64)]
     for at in range(0, len(binding), _AT_ONCE):
         rows = binding[at:at + _AT_ONCE]
         inside_s = np.minimum(end_s, high_s[rows, None]) - np.maximum(start_s, low_s[rows, None])
         used = np.maximum(inside_s, 0.0) * per_s
+        telling = _telling(used, limit[rows])
+        used = used[telling]
         row, column = np.nonzero(used)
         columns.append(options[column])
         amounts.append(used[row, column])
-        counts.append(np.bincount(row, minlength=len(rows)).astype(np.int64))
+        counts.append(np.bincount(row, minlength=len(used)).astype(np.int64))
+        kept.append(rows[telling])
+    left = np.concatenate(kept)
     return Rows(
-        kind, (name,) * len(binding), offsets_of(np.concatenate(counts)),
+        kind, (name,) * len(left), offsets_of(np.concatenate(counts)),
         np.concatenate([np.zeros(0, dtype=np.int64), *columns]), np.concatenate([np.zeros(0), *amounts]),
-        limit[binding])
+        limit[left])
+
+
+def _telling(used: Floats, limit: Floats) -> Integers:
+    """Rows that say something their neighbours do not: looked through forward, then backward."""
+    order = list(range(len(used)))
+    for _ in range(2):
+        kept: list[int] = []
+        for r in order:
+            if not kept or limit[r] < limit[kept[-1]] or np.any(used[r] > used[kept[-1]]):
+                kept.append(r)
+        order = kept[::-1]
+    return np.array(order, dtype=np.int64)
 
 
 def covered_s(start_s: Integers, end_s: Integers, low_s: Floats, high_s: Floats) -> Floats:
