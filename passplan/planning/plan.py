@@ -13,6 +13,7 @@ from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
 from passplan.link.conflicts import Interference, InterferenceCrowd, InterferencePair
+from passplan.planning.change_cost import with_changes
 from passplan.planning.clock import Clock
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
@@ -101,8 +102,10 @@ def build_problem(
         crowds=tuple(_crowd(fleet, antennas, crowd) for crowd in disturbing.crowds),
         spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
+    problem = with_changes(run, problem)
     draft = Draft(run, windows, problem, option_set.candidates, tuple(blocks))
-    return replace(problem, needs=tuple(need for find in NEEDS for need in find(draft))), option_set
+    needs = (*problem.needs, *(need for find in NEEDS for need in find(draft)))
+    return replace(problem, needs=needs), option_set
 
 
 def _conflict(fleet: Fleet, antennas: Antennas, pair: InterferencePair) -> Conflict:

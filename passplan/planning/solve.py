@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import datetime as dt
 import time
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -45,16 +46,21 @@ def least_shortfall(problem: Problem, terms: Terms, limits: Limits, seconds: flo
 
 def most_value(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float, seconds: float,
+    holds: Sequence[tuple[Problem, float]] = (),
 ) -> Solved:
-    """Tier 2: the most valuable options among those with at most ``points`` of shortfall."""
+    """Tier 2: the most valuable options among those with at most ``points`` of shortfall.
+
+    ``holds`` are the same problem with other objectives, each with the value that is not to be given up.
+    """
     stop_s = clock.elapsed_s() + seconds
     with clock.stage("model"):
         model = build_model(problem, terms)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
-        proto = model.proto(tier=2, points_limit=limit)
+        held = [(build_model(other, terms).value, least - other.base_worth) for other, least in holds]
+        proto = model.proto(tier=2, points_limit=limit, holds=held)
     with clock.stage("solve"):
         answer = _solve(proto, model, limits, stop_s - clock.elapsed_s(), limits.gap)
-    return Solved(answer.chosen, float("inf") if answer.bound is None else answer.bound)
+    return Solved(answer.chosen, float("inf") if answer.bound is None else answer.bound + problem.base_worth)
 
 
 @dataclass(frozen=True)
