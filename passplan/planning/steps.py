@@ -26,6 +26,7 @@ from passplan.link.conflicts import find_interference
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
 from passplan.planning.changes import compare
+from passplan.planning.lost_value import lost_value
 from passplan.planning.plan import make_plan
 from passplan.planning.record import PlanRecord
 from passplan.planning.summary import summarise
@@ -141,6 +142,8 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
         summary=summary, windows=windows, contacts=plan.contacts, segments=plan.segments,
         unused=plan.unused, files=run.files,
     )
+    summary["lost_value"] = lost_value(run, record, links)
+    lap("lost value")
     report("auditing", 0, 0)
     faults = audit_plan(run, record.contacts, record.segments, record.summary)
     lap("audit")

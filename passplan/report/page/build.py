@@ -15,16 +15,17 @@ from jinja2 import Environment, PackageLoader, StrictUndefined
 from markupsafe import Markup
 
 from passplan.inputs.run import Run
+from passplan.planning.backlog import Backlog, backlogs
 from passplan.planning.record import PlanRecord
-from passplan.report.backlog import Backlog, backlogs
 from passplan.report.cautions import CAUTIONS
 from passplan.report.keys import spacecraft_keys
 from passplan.report.page.lanes import Day, Names, antenna_ribbons, hours_of, spacecraft_ribbons, storage_path
 from passplan.report.page.payload import payload
 from passplan.report.page.ribbons import UNIT_S
+from passplan.report.standing import standing_lists, tier_lines
 from passplan.report.tracks import WindowTrack, window_tracks
-from passplan.report.usage import antenna_use, causes
-from passplan.report.words import STATUS_WORDS, clock, megabytes, minute, rate
+from passplan.report.usage import antenna_use, causes, lost_causes
+from passplan.report.words import LEAST_MB, STATUS_WORDS, clock, megabytes, minute, rate
 
 PAGE = "report.html"
 _SCRIPT = ("words", "panorama", "chart", "contact", "filters", "view", "start")
@@ -46,12 +47,16 @@ def render_page(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
             cautions=CAUTIONS,
             draft=record.summary.get("approval", "draft") == "draft",
             status=STATUS_WORDS.get(record.summary["status"], record.summary["status"]),
+            least_mb=LEAST_MB,
             lost_mb=sum(store["lost_mb"] for store in record.summary["storage"].values()),
             antennas=_antennas(record, tracks, names),
             spacecraft=_spacecraft(record, tracks, names),
             contacts=_contact_rows(record),
             use=antenna_use(record),
             causes=causes(record, tracks),
+            lost_causes=_lost_causes(record),
+            tiers=tier_lines(record.summary),
+            standing=standing_lists(record.summary),
             hours=hours_of(Day.of(record)),
             lost=_lost(record),
             ages=_ages(record),
@@ -135,12 +140,23 @@ def _contact_rows(record: PlanRecord) -> list[dict[Any, Any]]:
     return rows
 
 
+def _lost_causes(record: PlanRecord) -> list[dict[str, Any]]:
+    """Causes of data not brought down, with lengths of bars in per cent of the dearest."""
+    found = lost_causes(record.summary)
+    longest = max((one.lost_value + one.left_value for one in found), default=0.0) or 1.0
+    return [
+        {"cause": one, "lost": round(100.0 * max(one.lost_value, 0.0) / longest, 1),
+         "left": round(100.0 * max(one.left_value, 0.0) / longest, 1)}
+        for one in found
+    ]
+
+
 def _lost(record: PlanRecord) -> list[dict[str, Any]]:
     """Spacecraft that lose data aboard, with what it was worth, the dearest first."""
     rows = []
     for name, store in record.summary["storage"].items():
         weight = record.summary["spacecraft"][name]["weight"]
-        if store["lost_mb"] > 0.05:
+        if store["lost_mb"] > LEAST_MB:
             rows.append({"name": name, "lost_mb": store["lost_mb"], "worth": weight * store["lost_mb"]})
     return sorted(rows, key=lambda row: (-row["worth"], row["name"]))
 

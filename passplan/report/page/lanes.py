@@ -9,8 +9,8 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from passplan.planning.backlog import Backlog
 from passplan.planning.record import PlanRecord
-from passplan.report.backlog import Backlog
 from passplan.report.page.ribbons import UNIT_S, Mark, Ribbon, Span, joined, levels, outline
 from passplan.report.page.scale import scale_for
 from passplan.report.rows import Row, grouped, rows
