@@ -22,6 +22,7 @@ from passplan.planning.rules.terms import Terms
 
 # Points are sums of whole requests and seconds over hours; closer than this they are the same.
 _POINTS_TOLERANCE = 1e-7
+_WRONG = (mathopt.TerminationReason.INFEASIBLE, mathopt.TerminationReason.INFEASIBLE_OR_UNBOUNDED)
 _SOLVERS = (mathopt.SolverType.HIGHS, mathopt.SolverType.GSCIP)
 
 
@@ -81,7 +82,9 @@ def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, second
         except Exception:  # the errors of the solvers share no type
             # HiGHS gives up on a sound model now and then (kError); the next one takes over.
             continue
-        return _answer(result, model)
+        if result.has_primal_feasible_solution() or result.termination.reason not in _WRONG:
+            return _answer(result, model)
+        # A plan is known, so there is one: the solver has fallen over its own tolerances.
     return _Answer(None, 0.0, None)
 
 
