@@ -16,6 +16,7 @@ from passplan.planning.cuts import Cuts, neighbour_cuts, spread
 from passplan.planning.hooks import Block, Candidate, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
+from passplan.planning.setup import SetupTimes
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,18 +33,20 @@ class OptionSet:
 
 
 class BlockedTime:
-    """The blocks of every pair of spacecraft and antenna, with time to release before and to prepare after."""
+    """The blocks of every pair of spacecraft and antenna, with time to release before and to prepare after.
 
-    def __init__(self, blocks: Sequence[Block], antennas: Antennas) -> None:
+    Where that depends on the service the longest holds, as a block is there before it is known who comes beside it.
+    """
+
+    def __init__(self, blocks: Sequence[Block], setup: SetupTimes) -> None:
         self._of: dict[tuple[str | None, str | None], list[Block]] = {}
         for block in blocks:
             self._of.setdefault((block.spacecraft, block.antenna), []).append(block)
-        pairs = zip(antennas.prepare_s.tolist(), antennas.release_s.tolist(), strict=True)
-        self._setup_s = dict(zip(antennas.names, pairs, strict=True))
+        self._setup = setup
 
     def between(self, craft: str, antenna: str, low_s: int, high_s: int) -> list[tuple[int, int, Block]]:
         """Blocks that touch [low_s, high_s), as (start, end, block) with the antenna's setup, in time order."""
-        prepare_s, release_s = self._setup_s[antenna]
+        prepare_s, release_s = self._setup.longest(craft, antenna)
         found = []
         for key in ((craft, antenna), (craft, None), (None, antenna), (None, None)):
             for block in self._of.get(key, ()):
@@ -76,9 +79,12 @@ def find_options(
     blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (),
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
-    blocked = BlockedTime(blocks, antennas)
+    setup = SetupTimes(run)
+    blocked = BlockedTime(blocks, setup)
     builder = _Builder(run, windows, fleet, antennas, blocked, wishes)
-    cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
+    cuts = neighbour_cuts(windows, [
+        setup.longest(fleet.names[craft], antennas.names[antenna])
+        for craft, antenna in zip(windows.spacecraft.tolist(), windows.antenna.tolist(), strict=True)])
     candidates: list[Candidate] = []
     excluded: dict[int, tuple[str, str]] = {}
     for w, link in enumerate(links):
@@ -86,12 +92,14 @@ def find_options(
         candidates += found
         if not found:
             excluded[w] = reason
+    setups = [setup.of(antennas.names[int(windows.antenna[c.window])], c) for c in candidates]
     rows = [{
         "window": c.window, "spacecraft": windows.spacecraft[c.window], "antenna": windows.antenna[c.window],
         "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
+        "prepare_s": prepare_s, "release_s": release_s,
         "pieces": [] if c.downlink is None else [
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
-    } for c in candidates]
+    } for c, (prepare_s, release_s) in zip(candidates, setups, strict=True)]
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
 

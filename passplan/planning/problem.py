@@ -40,14 +40,9 @@ class Fleet:
 
 @dataclass(frozen=True, eq=False)
 class Antennas:
-    """Antennas, shape (a,): seconds kept free before (``prepare_s``) and after (``release_s``) a contact."""
+    """Antennas, shape (a,)."""
 
     names: tuple[str, ...]
-    prepare_s: Integers
-    release_s: Integers
-
-    def __post_init__(self) -> None:
-        _freeze(self)
 
     def __len__(self) -> int:
         return len(self.names)
@@ -76,7 +71,8 @@ class Options:
 
     Option o may send in the pieces ``piece_offset[o] : piece_offset[o + 1]``, in time order, each at one
     rate [MB/s] (``piece_offset`` has m + 1 entries). ``downlink`` and ``command`` say which services the
-    contact offers; ``cost`` is money.
+    contact offers; ``cost`` is money. The antenna is held from ``prepare_s`` before the start to ``release_s``
+    after the end.
     """
 
     window: Integers
@@ -84,6 +80,8 @@ class Options:
     antenna: Integers
     start_s: Integers
     end_s: Integers
+    prepare_s: Integers
+    release_s: Integers
     downlink: Flags
     command: Flags
     cost: Floats
@@ -233,8 +231,8 @@ class Limits:
 def build_options(rows: Sequence[dict[str, Any]]) -> Options:
     """Options from one mapping each, with ``pieces`` a list of (start_s, end_s, rate_mb_per_s).
 
-    Meant for tests and small jobs; ``downlink`` defaults to whether there are pieces, ``command`` to False
-    and ``cost`` to 0.
+    ``downlink`` defaults to whether there are pieces, ``command`` to False, and ``cost``, ``prepare_s`` and
+    ``release_s`` to 0.
     """
     pieces = [piece for row in rows for piece in row.get("pieces", ())]
     columns = np.array(pieces, dtype=float).reshape(-1, 3)
@@ -242,6 +240,8 @@ def build_options(rows: Sequence[dict[str, Any]]) -> Options:
              for name in ("window", "spacecraft", "antenna", "start_s", "end_s")}
     return Options(
         **whole,
+        prepare_s=np.array([row.get("prepare_s", 0) for row in rows], dtype=np.int64),
+        release_s=np.array([row.get("release_s", 0) for row in rows], dtype=np.int64),
         downlink=np.array([row.get("downlink", bool(row.get("pieces"))) for row in rows], dtype=bool),
         command=np.array([row.get("command", False) for row in rows], dtype=bool),
         cost=np.array([row.get("cost", 0.0) for row in rows], dtype=float),

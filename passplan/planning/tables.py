@@ -44,7 +44,7 @@ def contacts_table(
         rows.append({
             "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
             "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
-            "service": _service(candidate), "radio": link.radio, "frequency_mhz": link.frequency_mhz,
+            "service": candidate.service, "radio": link.radio, "frequency_mhz": link.frequency_mhz,
             "polarisation": link.polarisation, "start_utc": candidate.start_s, "end_utc": candidate.end_s,
             "duration_s": candidate.end_s - candidate.start_s, "usable_s": link.usable_s,
             "modcod": "" if candidate.downlink is None else candidate.downlink.modcod, "volume_mb": volume_mb,
@@ -85,12 +85,6 @@ def segments_table(
 
 def _modcod_of(candidate: Candidate, piece: int) -> str:
     return "" if candidate.downlink is None else candidate.downlink.pieces[piece].modcod
-
-
-def _service(candidate: Candidate) -> str:
-    if candidate.downlink is None:
-        return "command"
-    return "downlink" if candidate.command is None else "both"
 
 
 class _CutExplainer:

@@ -27,6 +27,7 @@ REASON_WORDS = {
     "interference": "would disturb another contact",
     "contact_gap": "too soon after or before another contact of the spacecraft",
     "cool_down": "the spacecraft's transmitter must cool down",
+    "forbidden": "forbidden by hand",
     "left_out": "left out of the plan",
     IN_CONTACT: "within contacts: acquisition, keyholes, rate steps",
     NO_WINDOW: "no link in view in time",
