@@ -15,6 +15,7 @@ from passplan.link.choice import WindowLink
 from passplan.link.conflicts import Interference, InterferenceCrowd, InterferencePair
 from passplan.planning.change_cost import with_changes
 from passplan.planning.clock import Clock
+from passplan.planning.contradictions import Contradiction, RulesConflictError, find_contradictions
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
@@ -27,6 +28,7 @@ from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
 
 Report = Callable[[str, int, int], None]
+_CONTRADICTIONS_S = 10.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,6 +40,7 @@ class Plan:
     unused: pd.DataFrame
     result: PlanResult
     problem: Problem
+    contradictions: tuple[Contradiction, ...] = ()
 
 
 def make_plan(
@@ -49,7 +52,8 @@ def make_plan(
     ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. Spacecraft
     without an orbit take no part. The policy's time limit covers everything from here to the chosen
     contacts. ``interference`` says who must not send at once. ``progress(stage, done_s, total_s)`` is
-    called as value, bound and gap move.
+    called as value, bound and gap move. Where requirements are missed, some seconds more go into naming those
+    that contradict each other; raises :class:`RulesConflictError` if the policy wants no plan then.
     """
     policy = run.policy
     clock = Clock(policy.time_limit_s)
@@ -58,10 +62,16 @@ def make_plan(
     limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed)
     result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
     terms = all_terms(problem)
+    found: tuple[Contradiction, ...] = ()
+    if result.shortfalls:
+        seconds = min(_CONTRADICTIONS_S, policy.time_limit_s)
+        found = find_contradictions(problem, terms, result.chosen, limits, seconds)
+    if found and policy.when_rules_conflict == "stop":
+        raise RulesConflictError(one.sentence for one in found)
     contacts = contacts_table(run, windows, problem, option_set, terms, result)
     return Plan(
         contacts, segments_table(run, problem, option_set, result, contacts),
-        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem)
+        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem, found)
 
 
 def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress | None:
