@@ -65,7 +65,7 @@ def test_contacts_and_mb_by_the_day_are_due_in_proportion() -> None:
     shortfalls = {s.name: s.sentence for s in make_plan(run, windows, [DOWN] * 2).result.shortfalls}
     assert list(shortfalls) == ["contacts of Teasel-2 on 2027-03-09", "MB of Teasel-2 on 2027-03-09"]
     assert shortfalls["MB of Teasel-2 on 2027-03-09"] == (
-        "The MB of Teasel-2 on 2027-03-09: the plan has 0 of the 2000 that are due: the windows offer no more.")
+        "The plan has 0 of the 2000 that are due: the windows offer no more.")
 
 
 def test_the_mb_of_a_contact_are_no_more_than_a_full_storage() -> None:
