@@ -67,6 +67,7 @@ class Policy(Record):
     tiers: Literal["one_value", "in_order"] = "one_value"
     change_cost: Annotated[float, Field(ge=0.0, le=1e12)] = 0.0
     change_half_h: Annotated[float, Field(gt=0.0, le=240.0)] = 12.0
+    fairness: Literal["off", "max_min"] = "off"
     when_rules_conflict: Literal["list", "stop"] = "list"
     freeze_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 3.0

@@ -16,6 +16,7 @@ from passplan.link.conflicts import Interference, InterferenceCrowd, Interferenc
 from passplan.planning.change_cost import with_changes
 from passplan.planning.clock import Clock
 from passplan.planning.contradictions import Contradiction, RulesConflictError, find_contradictions
+from passplan.planning.fair_share import with_fair_floor
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
@@ -29,6 +30,7 @@ from passplan.planning.unused import unused_table
 
 Report = Callable[[str, int, int], None]
 _CONTRADICTIONS_S = 10.0
+_FAIRNESS_SHARE = 0.25
 
 
 @dataclass(frozen=True, eq=False)
@@ -41,6 +43,7 @@ class Plan:
     result: PlanResult
     problem: Problem
     contradictions: tuple[Contradiction, ...] = ()
+    fair_floor: float | None = None
 
 
 def make_plan(
@@ -60,6 +63,10 @@ def make_plan(
     with clock.stage("options"):
         problem, option_set = build_problem(run, windows, links, interference)
     limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed)
+    floor = None
+    if policy.fairness == "max_min":
+        with clock.stage("fairness"):
+            problem, floor = with_fair_floor(run, problem, limits, _FAIRNESS_SHARE * clock.left_s())
     result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
     terms = all_terms(problem)
     found: tuple[Contradiction, ...] = ()
@@ -71,7 +78,7 @@ def make_plan(
     contacts = contacts_table(run, windows, problem, option_set, terms, result)
     return Plan(
         contacts, segments_table(run, problem, option_set, result, contacts),
-        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem, found)
+        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem, found, floor)
 
 
 def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress | None:

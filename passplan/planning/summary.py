@@ -51,6 +51,7 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
+        **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
         # A requirement that cannot be met for itself has said so in its shortfall.
         "contradictions": [
             {"demands": list(c.demands), "between": list(c.between), "sentence": c.sentence}
