@@ -30,16 +30,10 @@ class Shortfall:
 _ROUNDING = 1e-9
 _WANTED = {
     "request": "Request {name} for {owner} is not met",
-<<<<<<< HEAD
-    "pin": "The pinned contact, {name}, is not in the plan",
-    "frozen": "The frozen contact, {name}, is not in the plan as it was published",
-    "loaded": "The contact loaded aboard, {name}, is not in the plan as it was loaded",
-    "emergency": "The emergency contact, {name}, is not in the plan",
-=======
     "pin": "The pinned contact is not in the plan",
     "frozen": "The frozen contact is not in the plan as it was published",
+    "loaded": "The contact loaded aboard is not in the plan as it was loaded",
     "emergency": "The emergency contact is not in the plan",
->>>>>>> main
 }
 
 

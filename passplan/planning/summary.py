@@ -53,10 +53,6 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
-<<<<<<< HEAD
-        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem)
-        + list(schedule_warnings(run, plan.contacts)),
-=======
         **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
         # A requirement that cannot be met for itself has said so in its shortfall.
         "contradictions": [
@@ -64,9 +60,9 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             for c in plan.contradictions if len(c.demands) > 1
         ],
         "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
-        "frozen": [item.name for item in frozen_contacts(run)],
-        "warnings": list(run.warnings) + _own_warnings(run, windows),
->>>>>>> main
+        "frozen": [item.name for item in (*frozen_contacts(run), *run.loaded)],
+        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem)
+        + list(schedule_warnings(run, plan.contacts)),
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
