@@ -59,7 +59,7 @@ class StorageMaps:
 def worth_of(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int]) -> float:
     """The part of the objective of one spacecraft with the contacts ``mine``, in time order, by its layers."""
     options = problem.options
-    worth = -problem.worth_per_money * sum(float(options.cost[o]) for o in mine)
+    worth = -sum(float(problem.price[o]) for o in mine)
     for k, layer in enumerate(problem.layers[craft]):
         fill, made, clock = layer.start_mb, 0.0, 0.0
         sent = lost = 0.0

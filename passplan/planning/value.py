@@ -113,7 +113,8 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
         left_mb=left, chosen=chosen_array, contact_mb=np.array([_over(sent, options, [o]) for o in order], dtype=float),
         contact_worth=np.array([_over(worth, options, [o]) for o in order], dtype=float), piece=piece,
         piece_mb=np.array([sent[int(p)] for p in piece], dtype=float), cost=cost,
-        value=math.fsum([*earned, *(-problem.spill_cost_per_mb * lost), -problem.worth_per_money * cost]),
+        value=math.fsum([
+            *earned, *(-problem.spill_cost_per_mb * lost), *(-problem.price[chosen_array]), problem.base_worth]),
         classes=tuple(_balances(fleet.streams_of(i), aboard.get(i)) for i in range(len(fleet))), class_mb=class_mb,
         aboard=aboard)
 
