@@ -9,7 +9,7 @@ and the whole capacity. With D(k) for what the classes 1..k deliver together, th
 
 so that a spacecraft with K classes is K independent storages, its layers: layer k holds the classes 1..k and is
 worth w(k) - w(k+1) a MB; what overflows costs in the last one alone, which holds everything. (Own derivation;
-``aboard.py`` follows the classes themselves, and tests compare.)
+``classes.py`` follows the classes themselves, and tests compare.)
 """
 
 from __future__ import annotations

@@ -9,7 +9,7 @@ as it generates; with r < g it sends all the time. What would stand above the ca
 ``max(0, f + g dt - sent - capacity)``. Both hold exactly, as within a stretch the fill is monotonic.
 Sending as early as possible is optimal for a single class of data, so that a plan is its contacts and
 nothing more. (Own derivation.) A spacecraft with several classes, or whose generation changes, is followed by
-``aboard.py``.
+``classes.py``.
 """
 
 from __future__ import annotations
@@ -20,7 +20,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.aboard import Aboard, follow
+from passplan.planning.classes import Aboard, follow
 from passplan.planning.problem import Floats, Integers, Options, Problem
 from passplan.planning.streams import Stream
 

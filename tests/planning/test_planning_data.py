@@ -11,7 +11,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from planning_cases import problem_of
 
-from passplan.planning.aboard import follow
+from passplan.planning.classes import follow
 from passplan.planning.maps import storage_maps, worth_of
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits, Problem
