@@ -26,7 +26,7 @@ _STEP_S = 5.0
 # What stands between demands is shown by this many examples.
 _MOST_BETWEEN = 3
 _WORDS = {"request": "request {} for {}", "pin": "the pinned contact, {}", "frozen": "the frozen contact, {}",
-          "emergency": "the emergency contact, {}"}
+          "loaded": "the contact loaded aboard, {}", "emergency": "the emergency contact, {}"}
 
 
 @dataclass(frozen=True, eq=False)

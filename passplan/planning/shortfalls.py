@@ -32,6 +32,7 @@ _WANTED = {
     "request": "Request {name} for {owner} is not met",
     "pin": "The pinned contact is not in the plan",
     "frozen": "The frozen contact is not in the plan as it was published",
+    "loaded": "The contact loaded aboard is not in the plan as it was loaded",
     "emergency": "The emergency contact is not in the plan",
 }
 
