@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.geometry.frames import EARTH_RATE_RAD_S
 from passplan.geometry.oem_states import segment_span
 from passplan.geometry.regimes import MU_KM3_S2
 from passplan.geometry.sgp4_states import sgp4_span
-from passplan.geometry.timescale import Floats, utc_seconds
+from passplan.geometry.timescale import Floats, datetimes_ms, utc_seconds
 from passplan.geometry.trajectory import states_itrf
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.run import OrbitSource
@@ -17,7 +18,21 @@ _STEP_S = 60.0
 _NEWTON_STEPS = 3
 
 
-def ascending_nodes(source: OrbitSource, start_utc: np.datetime64, end_utc: np.datetime64) -> Floats:
+def ascending_nodes(
+    source: OrbitSource, start_utc: np.datetime64, end_utc: np.datetime64
+) -> NDArray[np.datetime64]:
+    """Instants (n,) of ``datetime64[ms]`` within (start, end] at which it crosses the equator northward.
+
+    They follow from the trajectory itself, so that an orbit is counted as it is flown. There are none where the
+    orbit source has no answer, and none for an orbit that lies in the plane of the equator.
+    """
+    start_s, end_s = float(utc_seconds(start_utc)), float(utc_seconds(end_utc))
+    low, high = _reach(source, start_s - _STEP_S, end_s + _STEP_S)
+    nodes = _crossings(source, low, high) if high > low else np.zeros(0)
+    return datetimes_ms(nodes[(nodes > start_s) & (nodes <= end_s)])
+
+
+def revolution_edges_s(source: OrbitSource, start_utc: np.datetime64, end_utc: np.datetime64) -> Floats:
     """Seconds from ``start_utc`` at which the orbit crosses the equator northward, rising, from the last one before
     the start or at it to the first one after the end or at it.
 

@@ -39,8 +39,8 @@ class Ageing(Record):
     def _ages_make_sense(self) -> Ageing:
         if self.freshness and self.freshness[0][0] != 0.0:
             raise ValueError("freshness starts at age 0; add the share that fresh data is worth, as 0:1")
-        for (age, share), (later, less) in pairwise(self.freshness):
-            if later < age or less > share:
+        for k, ((age, share), (later, less)) in enumerate(pairwise(self.freshness)):
+            if later < age or less > share or (k == 0 and later == 0.0):
                 raise ValueError("in freshness ages rise and shares fall; sort or correct the points")
         if self.deadline_h is not None and (self.start_age_h or 0.0) > self.deadline_h:
             raise ValueError(

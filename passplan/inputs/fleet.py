@@ -8,6 +8,7 @@ from pydantic import Field, model_validator
 
 from passplan.inputs.ageing import Ageing
 from passplan.inputs.craft_limits import CraftLimits
+from passplan.inputs.craft_power import CraftPower
 from passplan.inputs.generation import Generation
 from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
@@ -22,7 +23,7 @@ class DownlinkRadio(Record):
     back-off comes off both. ``pattern`` is a fixed antenna's loss [dB] against the angle off boresight [deg],
     boresight to nadir; without it the antenna is steered at the station. ``rate_control`` says how the
     modcod is chosen: ``fixed`` (the only one of ``modcods``), ``per-contact``, or ``adaptive`` (stepped
-    along the pass).
+    along the pass). ``load_w`` is what it draws while it is on.
     """
 
     name: Name
@@ -47,6 +48,7 @@ class DownlinkRadio(Record):
     hysteresis_db: Annotated[float, Field(ge=0.0, le=10.0)] = 0.5
     min_dwell_s: Annotated[int, Field(ge=0, le=600)] = 10
     switching_gap_s: Annotated[int, Field(ge=0, le=60)] = 0
+    load_w: Annotated[float, Field(ge=0.0, le=100_000.0)] = 0.0
 
     @model_validator(mode="after")
     def _consistent(self) -> DownlinkRadio:
@@ -90,7 +92,7 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(CraftLimits, Ageing, Generation):
+class Spacecraft(CraftLimits, CraftPower, Ageing, Generation):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
@@ -115,6 +117,7 @@ class Spacecraft(CraftLimits, Ageing, Generation):
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     last_command_utc: Instant | None = None
+    loaded_until_utc: Instant | None = None
     least_contacts_per_day: Annotated[int, Field(ge=1, le=1_000)] | None = None
     least_mb_per_day: Annotated[float, Field(gt=0.0, le=1e9)] | None = None
     manoeuvres_utc: Instants = ()

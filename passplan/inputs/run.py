@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 import numpy as np
 import pandas as pd
 
+from passplan.inputs.aboard import Slot
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.data import DataClass, only_class
 from passplan.inputs.decisions import Decision, Published
@@ -58,6 +59,8 @@ class Run:
     series: Mapping[str, Series] = field(default_factory=dict)
     decisions: tuple[Decision, ...] = ()
     published: tuple[Published, ...] = ()
+    slots: tuple[Slot, ...] = ()
+    loaded: tuple[Published, ...] = ()
     warnings: tuple[str, ...] = ()
     files: tuple[ReadFile, ...] = field(default=(), repr=False)
 

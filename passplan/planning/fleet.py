@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.geometry.revolutions import ascending_nodes
+from passplan.geometry.revolutions import revolution_edges_s
 from passplan.inputs.data import DataClass
 from passplan.inputs.run import Run
 from passplan.planning.problem import Fleet
@@ -50,7 +50,7 @@ def _stream(run: Run, name: str, item: DataClass) -> Stream:
     horizon_s = float(run.horizon_s)
     lines = [(np.array([0.0, horizon_s]), np.array([0.0, item.generation_mb_per_s * horizon_s]))]
     if item.generation_mb_per_orbit > 0.0:
-        nodes = ascending_nodes(run.orbits[name], run.start_utc, run.end_utc)
+        nodes = revolution_edges_s(run.orbits[name], run.start_utc, run.end_utc)
         low, high = (nodes[:-1] + share * np.diff(nodes) for share in item.generation_orbit_span)
         lines.append(_line(low, high, item.generation_mb_per_orbit / (high - low)))
     if item.generation_file is not None:

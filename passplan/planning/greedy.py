@@ -93,7 +93,7 @@ class _Builder:
         np.add.at(volume, np.repeat(np.arange(len(options)), counts),
                   options.piece_rate_mb_per_s * (options.piece_end_s - options.piece_start_s))
         weight = problem.fleet.weight[options.spacecraft] + problem.spill_cost_per_mb
-        ceiling = volume * weight - problem.worth_per_money * options.cost
+        ceiling = volume * weight - problem.price
         heap = [(-c, o) for o, c in enumerate(ceiling.tolist()) if c > 0.0]
         heapq.heapify(heap)
         while heap and not clock.expired():

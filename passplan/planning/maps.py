@@ -70,7 +70,7 @@ def worth_of(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int
 def worth_by_layers(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int]) -> float:
     """The same by its layers alone, which may be more than it is worth."""
     options = problem.options
-    worth = -problem.worth_per_money * sum(float(options.cost[o]) for o in mine)
+    worth = -sum(float(problem.price[o]) for o in mine)
     for k, layer in enumerate(problem.layers[craft]):
         fill, made, clock = layer.start_mb, 0.0, 0.0
         sent = lost = 0.0

@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
+from dataclasses import replace
+
+import numpy as np
 
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
@@ -17,6 +20,7 @@ from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import NotForSearchError
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
+from passplan.planning.staged import plan_in_order
 from passplan.planning.tidy import tidy
 from passplan.planning.value import account
 
@@ -37,6 +41,8 @@ def find_plan(
     limits = limits or Limits()
     clock = clock or Clock(limits.time_limit_s)
     terms = all_terms(problem, rules)
+    if problem.in_order:
+        return plan_in_order(problem, terms, limits, clock, progress)
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps), "greedy")
@@ -63,7 +69,7 @@ def find_plan(
         stop_s, overrated = clock.elapsed_s() + 0.5 * clock.left_s(), list[Overrated]()
         while open_still() and clock.elapsed_s() < stop_s:
             solved = most_value(
-                problem, terms, limits, clock, best.points, stop_s - clock.elapsed_s(), overrated)
+                problem, terms, limits, clock, best.points, stop_s - clock.elapsed_s(), overrated=overrated)
             bound = min(bound, solved.bound)
             best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
             tell(best.account.value, bound)
@@ -88,10 +94,12 @@ def _search(
     problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, best: _Candidate,
     tell: Callable[[float, float], None],
 ) -> Found | None:
+    base = problem.base_worth
     try:
-        return search_plan(problem, terms, maps, limits, clock, best.chosen, tell)
+        found = search_plan(problem, terms, maps, limits, clock, best.chosen, lambda v, b: tell(v + base, b + base))
     except NotForSearchError:
         return None
+    return None if found is None else replace(found, bound=found.bound + base)
 
 
 class _Candidate:
@@ -129,4 +137,5 @@ def _conclude(
 
 def _ceiling(problem: Problem) -> float:
     """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
-    return sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)
+    worth = sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)
+    return worth + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

@@ -9,7 +9,7 @@ and the whole capacity. With D(k) for what the classes 1..k deliver together, th
 
 so that a spacecraft with K classes is K independent storages, its layers: layer k holds the classes 1..k and is
 worth w(k) - w(k+1) a MB; what overflows costs in the last one alone, which holds everything. (Own derivation;
-``aboard.py`` follows the classes themselves, and tests compare.)
+``classes.py`` follows the classes themselves, and tests compare.)
 
 A deadline limits what can be aboard of a class to what was acquired within it. As the oldest data goes first, a
 single class with a deadline is exactly a storage of that capacity, which changes with time. Of several classes, of
@@ -153,15 +153,13 @@ def is_loose(streams: Sequence[Stream], keeping: Keeping) -> bool:
 
 
 def layers_of(streams: Sequence[Stream], capacity_mb: float, spill_cost: float) -> tuple[Layer, ...]:
-    """The layers of classes given by falling weight. Classes of equal weight share one."""
+    """The layers of classes given by falling weight, one for each, so that they stay alike when weights change."""
     layers = []
     for k, stream in enumerate(streams):
         last = k == len(streams) - 1
         weight = stream.weight - (0.0 if last else streams[k + 1].weight)
         if weight < 0.0:
             raise ValueError(f"{streams[k + 1].name} is worth more than {stream.name}; sort classes by falling weight")
-        if weight == 0.0 and not last:
-            continue
         inside = streams[: k + 1]
         time_s = _with_crossings(np.unique(np.concatenate([one.edges() for one in inside])), inside, capacity_mb)
         made_mb = np.sum([one.made(time_s) for one in inside], axis=0)

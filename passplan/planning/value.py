@@ -9,7 +9,7 @@ as it generates; with r < g it sends all the time. What would stand above the ca
 ``max(0, f + g dt - sent - capacity)``. Both hold exactly, as within a stretch the fill is monotonic.
 Sending as early as possible is optimal for a single class of data, so that a plan is its contacts and
 nothing more. (Own derivation.) A spacecraft with several classes, or whose generation changes, is followed by
-``aboard.py``.
+``classes.py``.
 """
 
 from __future__ import annotations
@@ -20,7 +20,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.aboard import Aboard, follow
+from passplan.planning.classes import Aboard, follow
 from passplan.planning.problem import Floats, Integers, Options, Problem
 from passplan.planning.streams import Keeping, Stream
 
@@ -116,7 +116,8 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
         left_mb=left, chosen=chosen_array, contact_mb=np.array([_over(sent, options, [o]) for o in order], dtype=float),
         contact_worth=np.array([_over(worth, options, [o]) for o in order], dtype=float), piece=piece,
         piece_mb=np.array([sent[int(p)] for p in piece], dtype=float), cost=cost,
-        value=math.fsum([*earned, *(-problem.spill_cost_per_mb * lost), -problem.worth_per_money * cost]),
+        value=math.fsum([
+            *earned, *(-problem.spill_cost_per_mb * lost), *(-problem.price[chosen_array]), problem.base_worth]),
         classes=tuple(_balances(fleet.streams_of(i), aboard.get(i)) for i in range(len(fleet))), class_mb=class_mb,
         aboard=aboard)
 

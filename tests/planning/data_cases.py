@@ -73,6 +73,7 @@ def random_ageing_problem(seed: int) -> Problem:
 def _aged(rng: random.Random, one: Stream) -> Stream:
     deadline_s = rng.choice([np.inf, 300.0, 900.0])
     ages, shares = rng.choice([
-        ([0.0], [1.0]), ([0.0], [1.0]), ([0.0, 1_200.0], [1.0, 0.0]), ([0.0, 400.0, 400.0, 800.0], [1.0, 0.8, 0.4, 0.1])])
+        ([0.0], [1.0]), ([0.0], [1.0]), ([0.0, 1_200.0], [1.0, 0.0]),
+        ([0.0, 400.0, 400.0, 800.0], [1.0, 0.8, 0.4, 0.1])])
     return replace(one, deadline_s=deadline_s, start_age_s=min(deadline_s, rng.choice([0.0, 100.0, 600.0])),
                    fresh_age_s=np.array(ages), fresh_share=np.array(shares))

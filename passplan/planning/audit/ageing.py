@@ -41,12 +41,14 @@ def ages(run: Run, name: str) -> bool:
     return aged or run.spacecraft[name].acknowledged_by is not None
 
 
-def follow_aged(run: Run, name: str, sending: Sequence[tuple[Contact, Piece]], contacts: Sequence[Contact]) -> list[Aged]:
+def follow_aged(
+    run: Run, name: str, sending: Sequence[tuple[Contact, Piece]], contacts: Sequence[Contact]
+) -> list[Aged]:
     """The classes of a spacecraft, best first, through its pieces in time order."""
     craft = run.spacecraft[name]
     kinds = [_Kind(item, rates_of(run, name, item), run.horizon_s) for item in run.data_of(name)]
     tank = _Tank(kinds, craft.storage_mb, craft.overflow == "newest")
-    for number, (contact, piece) in enumerate(sending):
+    for contact, piece in sending:
         tank.go(piece.start_s, 0.0, None)
         freed_s = None
         if craft.acknowledged_by == "contact":
@@ -58,10 +60,10 @@ def follow_aged(run: Run, name: str, sending: Sequence[tuple[Contact, Piece]], c
             kind.sent.append(0.0)
             kind.worth.append(0.0)
         tank.go(piece.end_s, piece.rate_mbps / 8.0, freed_s)
-        assert len(kinds[0].sent) == number + 1
     tank.go(run.horizon_s, 0.0, None)
     return [
-        Aged(math.fsum(kind.sent), kind.lost + kind.missed, kind.missed, kind.aboard, tuple(kind.sent), tuple(kind.worth))
+        Aged(math.fsum(kind.sent), kind.lost + kind.missed, kind.missed, kind.aboard, tuple(kind.sent),
+             tuple(kind.worth))
         for kind in kinds
     ]
 
@@ -88,12 +90,19 @@ class _Kind:
 
     def note(self, acquired_s: float, total_mb: float, slope: float) -> None:
         """Draw the line on, at ``slope`` MB/s."""
-        if self.slope == slope and len(self.total_mb) > 2:
+        if abs(self.slope - slope) <= 1e-12 * slope and len(self.total_mb) > 2:
             self.acquired_s[-1], self.total_mb[-1] = acquired_s, total_mb
         else:
             self.acquired_s.append(acquired_s)
             self.total_mb.append(total_mb)
         self.slope = slope
+
+    def trim(self) -> None:
+        """Take off the level end of the line, in which nothing was taken in."""
+        while len(self.total_mb) > 2 and self.total_mb[-1] <= self.total_mb[-2]:
+            self.acquired_s.pop()
+            self.total_mb.pop()
+            self.slope = -1.0
 
     def stretches(self, from_mb: float) -> Iterator[tuple[float, float, float, float]]:
         """The line from a mark on, as (MB from, MB to, acquired from, acquired to) where it rises."""
@@ -128,8 +137,8 @@ class _Kind:
             top = min(high, gone_mb + mb)
             if top <= low:
                 break
-            last_s = first_s + (last_s - first_s) * (top - low) / (high - low)
-            ages_s = clock_s + (low - gone_mb) / out - first_s, clock_s + (top - gone_mb) / out - last_s
+            top_s = first_s + (last_s - first_s) * (top - low) / (high - low)
+            ages_s = clock_s + (low - gone_mb) / out - first_s, clock_s + (top - gone_mb) / out - top_s
             total += (top - low) * mean_share(points, ages_s[0] / 3600.0, ages_s[1] / 3600.0)
         return self.item.weight * total / mb
 
@@ -186,7 +195,7 @@ class _Tank:
         kinds, count = self.kinds, range(len(self.kinds))
         made = [kind.rates[self.at[k]][2] for k, kind in enumerate(kinds)]
         empty = [kind.aboard <= _DUST_MB for kind in kinds]
-        sent, late, old, cut, shut = ([0.0] * len(kinds) for _ in range(5))
+        sent, late = ([0.0] * len(kinds) for _ in range(2))
         span_s = stop_s - self.clock
         for k, kind in enumerate(kinds):
             sent[k] = min(link, made[k]) if empty[k] else link
@@ -200,21 +209,7 @@ class _Tank:
         used = self.held + math.fsum(kind.aboard for kind in kinds)
         full = used >= self.capacity - 1e-12 * (1.0 + self.capacity)
         over = sum(made) - sum(late) - (0.0 if hold else sum(sent)) if full else 0.0
-        for k in reversed(count):
-            if over <= 0.0:
-                break
-            if empty[k]:
-                shut[k] = min(over, made[k] - sent[k])
-                over -= shut[k]
-            elif self.newest:
-                shut[k] = min(over, made[k])
-                cut[k], over = over - shut[k], 0.0
-            else:
-                old[k], late[k], over = over + late[k], 0.0, 0.0
-        for k in reversed(count):
-            if over > 0.0 and empty[k]:
-                less = min(over, sent[k])
-                sent[k], shut[k], over = sent[k] - less, shut[k] + less, over - less
+        old, cut, shut = self._give_up(over, made, empty, sent, late)
         taken = [made[k] - shut[k] - (sent[k] if empty[k] else 0.0) for k in count]
         going_out = [(0.0 if empty[k] else sent[k]) + late[k] + old[k] for k in count]
         for k, kind in enumerate(kinds):
@@ -222,6 +217,7 @@ class _Tank:
             if not empty[k] and shrinks > 0.0:
                 span_s = min(span_s, kind.aboard / shrinks)
             if cut[k] > 0.0:
+                kind.trim()
                 span_s = min(span_s, (kind.total_mb[-1] - max(kind.gone, kind.total_mb[-2])) / cut[k])
             if math.isfinite(kind.deadline_s):
                 limit_s = kind.deadline_s
@@ -240,6 +236,31 @@ class _Tank:
             kind.missed += late[k] * span_s
         self.held += sum(sent) * span_s if hold else 0.0
         self.clock = end_s
+
+    def _give_up(
+        self, over: float, made: list[float], empty: list[bool], sent: list[float], late: list[float],
+    ) -> tuple[list[float], list[float], list[float]]:
+        """What a full storage loses [MB/s] of its oldest, of its newest, and of what comes in; the least worth first.
+
+        Where the oldest goes nothing is left to be late, and what finds no room to wait in cannot be sent.
+        """
+        old, cut, shut = ([0.0] * len(made) for _ in range(3))
+        for k in reversed(range(len(made))):
+            if over <= 0.0:
+                break
+            if empty[k]:
+                shut[k] = min(over, made[k] - sent[k])
+                over -= shut[k]
+            elif self.newest:
+                shut[k] = min(over, made[k])
+                cut[k], over = over - shut[k], 0.0
+            else:
+                old[k], late[k], over = over + late[k], 0.0, 0.0
+        for k in reversed(range(len(made))):
+            if over > 0.0 and empty[k]:
+                less = min(over, sent[k])
+                sent[k], shut[k], over = sent[k] - less, shut[k] + less, over - less
+        return old, cut, shut
 
     def _book(
         self, kind: _Kind, span_s: float, end_s: float, taken: float, out: float, cut: float, sent: float, empty: bool,

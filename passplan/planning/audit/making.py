@@ -6,7 +6,7 @@ from itertools import pairwise
 
 import numpy as np
 
-from passplan.geometry.revolutions import ascending_nodes
+from passplan.geometry.revolutions import revolution_edges_s
 from passplan.inputs.data import DataClass
 from passplan.inputs.run import Run
 
@@ -19,7 +19,7 @@ def rates_of(run: Run, name: str, item: DataClass) -> Rates:
     spans: Rates = []
     if item.generation_mb_per_orbit > 0.0:
         low, high = item.generation_orbit_span
-        for first, last in pairwise(ascending_nodes(run.orbits[name], run.start_utc, run.end_utc)):
+        for first, last in pairwise(revolution_edges_s(run.orbits[name], run.start_utc, run.end_utc)):
             length_s = float(last - first)
             start_s = float(first) + low * length_s
             rate = item.generation_mb_per_orbit / ((high - low) * length_s)
