@@ -53,6 +53,10 @@ def check_ground(
         _known(item.transmitters, transmitters, file, f"{place}: transmitters", findings)
         if not item.receivers and not item.transmitters:
             findings.problem(file, place, None, "has neither receivers nor transmitters; name at least one")
+    for site in sites.values():
+        here = [item.name for item in antennas.values() if item.site == site.name]
+        for pool in site.pool:
+            _known(pool.antennas, here, file, f"site {site.name}: pool {pool.name}: antennas", findings)
 
 
 def check_mounts(

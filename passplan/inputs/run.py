@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 import numpy as np
 import pandas as pd
 
+from passplan.inputs.bookings import Booking
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.elements.model import ElementSet
@@ -51,6 +52,8 @@ class Run:
     elements: pd.DataFrame
     pfd_limits: tuple[PfdLimit, ...] = field(default_factory=builtin_pfd_limits)
     mounts: Mapping[str, Mount] = field(default_factory=dict)
+    bookings: tuple[Booking, ...] = ()
+    asking_utc: np.datetime64 | None = None
     decisions: tuple[Decision, ...] = ()
     published: tuple[Published, ...] = ()
     warnings: tuple[str, ...] = ()
@@ -67,6 +70,11 @@ class Run:
         """The mechanics of an antenna, None where they do not limit it."""
         name = self.antennas[antenna].mount
         return None if name is None else self.mounts[name]
+
+    @property
+    def now_utc(self) -> np.datetime64:
+        """The moment at which time on rented antennas is asked for."""
+        return self.start_utc if self.asking_utc is None else self.asking_utc
 
     @property
     def horizon_s(self) -> int:

@@ -16,6 +16,7 @@ from typing import Any
 from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault, differs
+from passplan.planning.audit.money import cost_of
 from passplan.planning.audit.rows import Contact, Piece
 
 _A_BYTE_IN_A_GIGABYTE = 1e-9
@@ -96,7 +97,7 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
         delivered.append(balance.delivered_mb)
     for contact in contacts:
         yield from _check_money(run, contact)
-        earned.append(-run.policy.worth_per_money * _cost(run, contact))
+        earned.append(-run.policy.worth_per_money * cost_of(run, contact))
     for name in sorted(set(stated) - set(run.orbits)):
         yield Fault("storage", f"spacecraft {name}", "it takes no part in the plan, yet the summary has figures for it")
     value = math.fsum(earned)
@@ -123,17 +124,13 @@ def _check_entry(name: str, entry: Any, balance: Balance, tolerance_mb: float) -
         yield Fault("storage", place, sentence)
 
 
-def _cost(run: Run, contact: Contact) -> float:
-    return run.antennas[contact.antenna].price_per_minute * (contact.end_s - contact.start_s) / 60.0
-
-
 def _check_money(run: Run, contact: Contact) -> Iterator[Fault]:
     """Weight, value and cost of one contact."""
     weight = run.spacecraft[contact.spacecraft].weight
     for key, figure, expected in (
         ("weight", contact.weight, weight),
         ("value", contact.value, weight * contact.volume_mb),
-        ("cost", contact.cost, _cost(run, contact)),
+        ("cost", contact.cost, cost_of(run, contact)),
     ):
         if differs(figure, expected, _VALUE_RELATIVE * max(abs(expected), 1.0)):
             yield Fault("value", contact.place, f"its {key} is {figure:.6g}, it should be {expected:.6g}")

@@ -14,15 +14,20 @@ from passplan.inputs.run import Run
 from passplan.planning.hooks import Block, Draft, Wish
 from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
+from passplan.planning.rules.backhaul import backhaul, backhaul_blocks, backhaul_needs
+from passplan.planning.rules.budget import budget, budget_needs
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
 from passplan.planning.rules.decisions import decision_needs, decision_wishes, decisions, forbid_blocks
 from passplan.planning.rules.guarantees import guarantee_needs, guarantees
 from passplan.planning.rules.interference import interference
+from passplan.planning.rules.rented import rented_blocks
 from passplan.planning.rules.requests import request_wishes, requests
+from passplan.planning.rules.shared_equipment import shared_equipment, shared_needs
 from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.spacecraft_time import spacecraft_time
+from passplan.planning.rules.staffing import staffing_blocks
 from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
@@ -35,10 +40,16 @@ RULES: tuple[Rule, ...] = (
     interference,
     decisions,
     guarantees,
+    shared_equipment,
+    backhaul,
+    budget,
 )
 BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (
     closure_blocks,
     forbid_blocks,
+    staffing_blocks,
+    rented_blocks,
+    backhaul_blocks,
 )
 WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (
     request_wishes,
@@ -48,6 +59,9 @@ NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
     gap_needs,
     decision_needs,
     guarantee_needs,
+    shared_needs,
+    backhaul_needs,
+    budget_needs,
 )
 
 
