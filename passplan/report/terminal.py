@@ -29,6 +29,7 @@ from passplan.report.words import STATUS_WORDS, megabytes, minute
 _SCREEN_ROWS = 8
 _SCREEN_CRAFT = 16
 _SCREEN_LINES = 12
+_REVIEWED = np.timedelta64(24, "h")
 
 
 def print_plan(
@@ -60,7 +61,7 @@ def print_plan(
         _section(console, "Inputs", _health(summary))
     if summary.get("against"):
         _section(console, f"Against plan {summary['against']['plan_id']}", _changes(summary["against"], detail))
-    _section(console, "Antennas through the day, UTC", _timeline(part, console.width))
+    _section(console, "Antennas through the day, UTC", _timeline(part, console.width, detail))
     rows, craft = (None, None) if detail else (_SCREEN_ROWS, _SCREEN_CRAFT)
     _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
@@ -148,7 +149,8 @@ def _health(summary: Mapping[str, Any]) -> RenderableType:
     return Group(*lines)
 
 
-def _timeline(record: PlanRecord, width: int) -> RenderableType:
+def _timeline(record: PlanRecord, width: int, detail: bool) -> RenderableType:
+    """The antennas' rows for each stretch; of several days the review shows the first one."""
     summary = record.summary
     keys = spacecraft_keys(summary["spacecraft"])
     label = min(max((len(name) for name in summary["antennas"]), default=4), 20)
@@ -158,7 +160,9 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
     table.add_column(no_wrap=True)
     by_contact = dict(tuple(record.contacts.groupby("antenna")))
     by_window = dict(tuple(record.windows.groupby("antenna")))
-    for stretch in stretches(start, end, max(width - label - 2, 24)):
+    rows = stretches(start, end, max(width - label - 2, 24))
+    shown = rows if detail else [row for row in rows if row.start_utc - start < _REVIEWED]
+    for stretch in shown:
         table.add_row(Text(str(stretch.start_utc)[5:10], style="dim"), hour_ruler(stretch))
         for name, antenna in summary["antennas"].items():
             row = antenna_row(
@@ -166,11 +170,13 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
                 antenna["closures"], keys,
             )
             table.add_row(name, row)
+    until = min(shown[-1].end_utc, end)
+    more = [Text(f"... and on to {minute(str(end))} UTC; --full shows it", style="dim")] if until < end else []
     marks = Text(f"{SEEN} in view, not used   {CLOSED} closed   {SEVERAL} several contacts", style="dim")
     if len(set(keys.values())) < len(keys):
-        return Group(table, marks)
+        return Group(table, *more, marks)
     names = [Text.assemble((key, "bold cyan"), f" {name}") for name, key in keys.items()]
-    return Group(table, Columns(names, padding=(0, 2)), marks)
+    return Group(table, *more, Columns(names, padding=(0, 2)), marks)
 
 
 def _changes(against: Mapping[str, Any], detail: bool) -> RenderableType:
