@@ -19,6 +19,7 @@ from passplan.planning.record import PlanRecord
 from passplan.report.backlog_chart import backlog_chart
 from passplan.report.cautions import CAUTIONS
 from passplan.report.contact_table import LocalTime, contact_table, lost_table, plain_table, unused_table
+from passplan.report.flux import flux_of_plan
 from passplan.report.keys import spacecraft_keys
 from passplan.report.selection import Selection, select
 from passplan.report.standing import standing_lists, tier_lines
@@ -29,6 +30,7 @@ from passplan.report.words import STATUS_WORDS, megabytes, minute
 _SCREEN_ROWS = 8
 _SCREEN_CRAFT = 16
 _SCREEN_LINES = 12
+_REVIEWED = np.timedelta64(24, "h")
 
 
 def print_plan(
@@ -60,13 +62,15 @@ def print_plan(
         _section(console, "Inputs", _health(summary))
     if summary.get("against"):
         _section(console, f"Against plan {summary['against']['plan_id']}", _changes(summary["against"], detail))
-    _section(console, "Antennas through the day, UTC", _timeline(part, console.width))
+    _section(console, "Antennas through the day, UTC", _timeline(part, console.width, detail))
     rows, craft = (None, None) if detail else (_SCREEN_ROWS, _SCREEN_CRAFT)
     _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
     if detail:
         if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
             _section(console, "Weather over an average year", by_antenna(part))
+        if (flux := flux_of_plan(part)) is not None:
+            _section(console, "Power flux density at the ground", flux)
         if len(part.contacts):
             _section(console, "Lowest margins", _margins(part, console.width))
         if summary.get("lost_value"):
@@ -87,11 +91,12 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
+    expected = summary.get("weather", {}).get("volume_basis") == "expected"
     facts = Table.grid(padding=(0, 3))
     facts.add_row(
         *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
-            ("brought down", megabytes(summary["volume_mb"])),
+            (f"brought down{' on average' if expected else ''}", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
             ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
         ))
@@ -148,7 +153,8 @@ def _health(summary: Mapping[str, Any]) -> RenderableType:
     return Group(*lines)
 
 
-def _timeline(record: PlanRecord, width: int) -> RenderableType:
+def _timeline(record: PlanRecord, width: int, detail: bool) -> RenderableType:
+    """The antennas' rows for each stretch; of several days the review shows the first one."""
     summary = record.summary
     keys = spacecraft_keys(summary["spacecraft"])
     label = min(max((len(name) for name in summary["antennas"]), default=4), 20)
@@ -158,7 +164,9 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
     table.add_column(no_wrap=True)
     by_contact = dict(tuple(record.contacts.groupby("antenna")))
     by_window = dict(tuple(record.windows.groupby("antenna")))
-    for stretch in stretches(start, end, max(width - label - 2, 24)):
+    rows = stretches(start, end, max(width - label - 2, 24))
+    shown = rows if detail else [row for row in rows if row.start_utc - start < _REVIEWED]
+    for stretch in shown:
         table.add_row(Text(str(stretch.start_utc)[5:10], style="dim"), hour_ruler(stretch))
         for name, antenna in summary["antennas"].items():
             row = antenna_row(
@@ -166,11 +174,13 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
                 antenna["closures"], keys,
             )
             table.add_row(name, row)
+    until = min(shown[-1].end_utc, end)
+    more = [Text(f"... and on to {minute(str(end))} UTC; --full shows it", style="dim")] if until < end else []
     marks = Text(f"{SEEN} in view, not used   {CLOSED} closed   {SEVERAL} several contacts", style="dim")
     if len(set(keys.values())) < len(keys):
-        return Group(table, marks)
+        return Group(table, *more, marks)
     names = [Text.assemble((key, "bold cyan"), f" {name}") for name, key in keys.items()]
-    return Group(table, Columns(names, padding=(0, 2)), marks)
+    return Group(table, *more, Columns(names, padding=(0, 2)), marks)
 
 
 def _changes(against: Mapping[str, Any], detail: bool) -> RenderableType:

@@ -48,6 +48,15 @@ def test_the_review_is_one_screen(short_plan: PlanRecord) -> None:
     assert len(_printed(short_plan, 100).splitlines()) <= 69
 
 
+def test_the_review_of_a_week_shows_its_first_day_and_says_so(short_plan: PlanRecord) -> None:
+    week = replace(short_plan, summary={**short_plan.summary, "horizon_end_utc": "2027-03-16T08:00:00.000Z"})
+    review, full = _printed(week, 100), _printed(week, 100, shown={"full": True})
+    assert len(review.splitlines()) <= 70
+    assert "and on to 2027-03-16 08:00 UTC" in review
+    assert "and on to" not in full
+    assert full.split("Contacts ──")[0].count("Tarrow-A") == 14
+
+
 def test_detail_on_request(short_plan: PlanRecord) -> None:
     full = _printed(short_plan, shown={"full": True})
     assert "Lowest margins" in full

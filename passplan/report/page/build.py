@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import base64
 import hashlib
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from functools import lru_cache
 from importlib.resources import files
 from pathlib import Path
@@ -19,9 +19,10 @@ from passplan.planning.backlog import Backlog, backlogs
 from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.keys import spacecraft_keys
-from passplan.report.page.lanes import Day, Names, antenna_ribbons, hours_of, spacecraft_ribbons, storage_path
+from passplan.report.page.axis import Band, Day
+from passplan.report.page.lanes import Names, antenna_ribbons, spacecraft_ribbons, storage_path
 from passplan.report.page.payload import payload
-from passplan.report.page.ribbons import UNIT_S
+from passplan.report.page.ribbons import UNIT_S, Ribbon
 from passplan.report.standing import standing_lists, tier_lines
 from passplan.report.tracks import WindowTrack, window_tracks
 from passplan.report.usage import antenna_use, causes, lost_causes
@@ -49,15 +50,13 @@ def render_page(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
             status=STATUS_WORDS.get(record.summary["status"], record.summary["status"]),
             least_mb=LEAST_MB,
             lost_mb=sum(store["lost_mb"] for store in record.summary["storage"].values()),
-            antennas=_antennas(record, tracks, names),
-            spacecraft=_spacecraft(record, tracks, names),
+            bands=_bands(record, tracks, names),
             contacts=_contact_rows(record),
             use=antenna_use(record),
             causes=causes(record, tracks),
             lost_causes=_lost_causes(record),
             tiers=tier_lines(record.summary),
             standing=standing_lists(record.summary),
-            hours=hours_of(Day.of(record)),
             lost=_lost(record),
             ages=_ages(record),
             data=payload(record, run, tracks, names),
@@ -101,34 +100,35 @@ def _digest(script: str) -> str:
     return "sha256-" + base64.b64encode(hashlib.sha256(script.encode("utf-8")).digest()).decode("ascii")
 
 
-def _antennas(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
-    ribbons = antenna_ribbons(record, tracks, names)
+def _bands(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
+    """The lanes of each band: those of the antennas, then those of the spacecraft."""
     use = {row.antenna: row for row in antenna_use(record)}
-    return [
-        {"name": name, "number": number, "site": names.sites[use[name].site], "use": use[name], "ribbon": ribbons[name]}
-        for name, number in names.antennas.items()
-    ]
+    stores = backlogs(record)
+    found = []
+    for number, band in enumerate(Day.of(record).bands()):
+        ribbons = antenna_ribbons(record, tracks, names, band)
+        antennas = [
+            {"name": name, "number": k, "site": names.sites[use[name].site], "use": use[name], "ribbon": ribbons[name]}
+            for name, k in names.antennas.items()
+        ]
+        found.append({
+            "number": number, "axis": band, "hours": band.hours(), "antennas": antennas,
+            "spacecraft": _spacecraft(record, spacecraft_ribbons(record, tracks, names, band), stores, names, band),
+        })
+    return found
 
 
-def _spacecraft(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
-    ribbons = spacecraft_ribbons(record, tracks, names)
-    stores: dict[str, Backlog] = backlogs(record)
+def _spacecraft(
+    record: PlanRecord, ribbons: Mapping[str, Ribbon], stores: Mapping[str, Backlog], names: Names, band: Band
+) -> list[dict[str, Any]]:
+    contacts = record.contacts["spacecraft"].value_counts()
     rows = []
     for name, number in names.spacecraft.items():
-        fill, loss = storage_path(stores[name])
-        rows.append(
-            {
-                "name": name,
-                "number": number,
-                "key": names.craft_keys[name],
-                "ribbon": ribbons[name],
-                "fill": fill,
-                "loss": loss,
-                "store": record.summary["storage"][name],
-                "facts": record.summary["spacecraft"][name],
-                "contacts": int((record.contacts["spacecraft"] == name).sum()),
-            }
-        )
+        fill, loss = storage_path(stores[name], band)
+        rows.append({
+            "name": name, "number": number, "key": names.craft_keys[name], "ribbon": ribbons[name], "fill": fill,
+            "loss": loss, "store": record.summary["storage"][name], "contacts": int(contacts.get(name, 0)),
+        })
     return rows
 
 

@@ -14,7 +14,8 @@ from passplan.geometry.sun import sun_look_deg
 from passplan.inputs.run import Run
 from passplan.link.choice import STEPPED
 from passplan.planning.record import PlanRecord
-from passplan.report.page.lanes import Day, Names
+from passplan.report.page.axis import Day
+from passplan.report.page.lanes import Names
 from passplan.report.rows import grouped, rows
 from passplan.report.tracks import WindowTrack, thinned
 
