@@ -84,7 +84,8 @@ def build_problem(
         generation_mb_per_s=np.array([c.generation_mb_per_s for c in craft], dtype=float),
         capacity_mb=np.array([c.storage_mb for c in craft], dtype=float),
         start_fill_mb=np.array([c.start_fill_mb for c in craft], dtype=float))
-    antennas = Antennas(names=tuple(run.antennas))
+    antennas = Antennas(
+        names=tuple(run.antennas), beams=np.array([a.beams for a in run.antennas.values()], dtype=np.int64))
     disturbing = interference or Interference()
     arrays = window_arrays(run, windows, fleet, antennas)
     blocks = [block for find in BLOCKS for block in find(run)]

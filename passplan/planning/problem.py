@@ -39,9 +39,15 @@ class Fleet:
 
 @dataclass(frozen=True, eq=False)
 class Antennas:
-    """Antennas, shape (a,)."""
+    """Antennas, shape (a,); ``beams`` is how many contacts each serves at once, without it one each."""
 
     names: tuple[str, ...]
+    beams: Integers = field(default_factory=lambda: np.zeros(0, dtype=np.int64))
+
+    def __post_init__(self) -> None:
+        if not len(self.beams):
+            object.__setattr__(self, "beams", np.ones(len(self.names), dtype=np.int64))
+        _freeze(self)
 
     def __len__(self) -> int:
         return len(self.names)

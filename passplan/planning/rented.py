@@ -27,8 +27,9 @@ class Held(NamedTuple):
 def rented_time(run: Run, held: Sequence[Held]) -> dict[str, list[dict[str, Any]]]:
     """``to_ask``, ``awaited`` and ``give_back`` of a plan, each in time order.
 
-    Rows say ``antenna, start_utc, end_utc`` and ``ask_by_utc`` with ``contact_id``, or ``give_back_by_utc``; an
-    instant that nobody states is None. Granted time counts as unused in stretches of at least a contact's length.
+    Rows say ``antenna, start_utc, end_utc``, then ``ask_by_utc`` and ``contact_id``, or ``give_back_by_utc``, and all
+    of it again in words (``name``, ``sentence``); an instant that nobody states is None. Granted time counts as unused
+    in stretches of at least a contact's length.
     """
     mine = [one for one in held if run.antennas[one.antenna].rented]
     asked = [row for one in mine for row in _needed(run, one)]
@@ -65,9 +66,12 @@ def _unused(run: Run, antenna: str, held: Sequence[Span]) -> Iterator[dict[str, 
         a, b = _span(run, row)
         for part in without((max(a, 0), min(b, run.horizon_s)), held):
             if part[1] - part[0] >= run.policy.min_contact_s:
-                until = None if row.give_back_by_utc is None else _iso(datetime64(row.give_back_by_utc))
-                yield {"antenna": antenna, "start_utc": _iso(instants_of(run, part[0])),
-                       "end_utc": _iso(instants_of(run, part[1])), "give_back_by_utc": until}
+                start_utc, end_utc = (instants_of(run, edge) for edge in part)
+                by = None if row.give_back_by_utc is None else datetime64(row.give_back_by_utc)
+                words = "can be given back" if by is None else f"can be given back until {_minute(by)}"
+                yield {"name": antenna, "sentence": f"{_words((start_utc, end_utc))} {words}",
+                       "antenna": antenna, "start_utc": _iso(start_utc), "end_utc": _iso(end_utc),
+                       "give_back_by_utc": None if by is None else _iso(by)}
 
 
 def _span(run: Run, row: Booking) -> Span:
@@ -76,14 +80,28 @@ def _span(run: Run, row: Booking) -> Span:
 
 
 def _row(run: Run, one: Held, part: Span, state: str, ask_by: Any) -> dict[str, Any]:
-    start_utc, end_utc = (_iso(instants_of(run, edge)) for edge in part)
+    start_utc, end_utc = (instants_of(run, edge) for edge in part)
+    words = f"{_words((start_utc, end_utc))}, for contact {one.contact_id}"
+    if ask_by is not None:
+        words += f"; to be {'granted' if state == 'asked' else 'asked for'} by {_minute(ask_by)}"
     return {
-        "antenna": one.antenna, "start_utc": start_utc, "end_utc": end_utc,
+        "name": one.antenna, "sentence": words,
+        "antenna": one.antenna, "start_utc": _iso(start_utc), "end_utc": _iso(end_utc),
         "ask_by_utc": None if ask_by is None else _iso(ask_by), "contact_id": one.contact_id, "state": state}
 
 
 def _without_state(row: dict[str, Any]) -> dict[str, Any]:
     return {key: value for key, value in row.items() if key != "state"}
+
+
+def _words(span: tuple[Any, Any]) -> str:
+    """Both edges to the minute, the date only once where it is the same."""
+    first, last = (_minute(edge) for edge in span)
+    return f"{first.removesuffix(' UTC')} to {last[11:] if last[:10] == first[:10] else last}"
+
+
+def _minute(instant: Any) -> str:
+    return f"{str(np.datetime64(instant, 'm')).replace('T', ' ')} UTC"
 
 
 def _iso(instant: Any) -> str:

@@ -7,7 +7,9 @@ from dataclasses import dataclass
 from typing import Any
 
 # Lists that a plan may carry, in the order they matter to whoever reviews it.
-_LISTS = (("to_ask", "Bookings still to ask for"), ("pins", "Pinned and forbidden"), ("frozen", "Frozen"))
+_LISTS = (
+    ("to_ask", "Bookings still to ask for"), ("awaited", "Bookings whose answer is awaited"),
+    ("give_back", "Granted time that nobody uses"), ("pins", "Pinned and forbidden"), ("frozen", "Frozen"))
 
 # From here on a gap says no more than that nothing is known.
 _WIDE_GAP = 10.0

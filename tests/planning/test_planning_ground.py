@@ -222,16 +222,19 @@ def test_what_is_still_to_ask_for_awaited_and_to_give_back() -> None:
         booking("granted", 5_000, 6_000, give_back_by_utc=at(-10)), booking("open", 4_000, 4_100)))
     found = rented_time(run, [
         Held("a", "Isvarde-A", 540, 1_530), Held("b", "Isvarde-A", 3_900, 4_050), Held("c", "Isvarde-B", 0, 900)])
-    assert found["to_ask"] == [
-        {"antenna": "Isvarde-A", "start_utc": at(1_200), "end_utc": at(1_530), "ask_by_utc": at(-600),
-         "contact_id": "a"},
-        {"antenna": "Isvarde-A", "start_utc": at(3_900), "end_utc": at(4_000), "ask_by_utc": at(2_100),
-         "contact_id": "b"},
-        {"antenna": "Isvarde-A", "start_utc": at(4_000), "end_utc": at(4_050), "ask_by_utc": None, "contact_id": "b"}]
+    asked = [(row["start_utc"], row["end_utc"], row["ask_by_utc"], row["contact_id"]) for row in found["to_ask"]]
+    assert asked == [
+        (at(1_200), at(1_530), at(-600), "a"), (at(3_900), at(4_000), at(2_100), "b"),
+        (at(4_000), at(4_050), None, "b")]
     assert [(row["start_utc"], row["end_utc"]) for row in found["awaited"]] == [(at(1_000), at(1_200))]
     # The later grant can no longer be returned.
-    assert found["give_back"] == [
-        {"antenna": "Isvarde-A", "start_utc": at(0), "end_utc": at(540), "give_back_by_utc": at(10)}]
+    assert [(row["start_utc"], row["end_utc"], row["give_back_by_utc"]) for row in found["give_back"]] == [
+        (at(0), at(540), at(10))]
+    assert {row["name"] for rows in found.values() for row in rows} == {"Isvarde-A"}
+    assert found["to_ask"][0]["sentence"] == (
+        "2027-03-09 00:20 to 00:25 UTC, for contact a; to be asked for by 2027-03-08 23:50 UTC")
+    assert found["give_back"][0]["sentence"] == (
+        "2027-03-09 00:00 to 00:09 UTC can be given back until 2027-03-09 00:00 UTC")
 
 
 @pytest.mark.parametrize(("prices", "duration_s", "cost"), [

@@ -15,6 +15,7 @@ from passplan.planning.hooks import Block, Draft, Wish
 from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
 from passplan.planning.rules.backhaul import backhaul, backhaul_blocks, backhaul_needs
+from passplan.planning.rules.beams import beams
 from passplan.planning.rules.budget import budget, budget_needs
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
@@ -32,6 +33,7 @@ from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
     antenna_time,
+    beams,
     slew_time,
     spacecraft_time,
     contact_gaps,
