@@ -68,6 +68,11 @@ class Policy(Record):
     budget_per_day: Annotated[float, Field(ge=0.0, le=1e9)] | None = None
     tentative_closures: Literal["keep_free", "plan_through"] = "keep_free"
     guarantee: tuple[Guarantee, ...] = ()
+    tiers: Literal["one_value", "in_order"] = "one_value"
+    change_cost: Annotated[float, Field(ge=0.0, le=1e12)] = 0.0
+    change_half_h: Annotated[float, Field(gt=0.0, le=240.0)] = 12.0
+    fairness: Literal["off", "max_min"] = "off"
+    when_rules_conflict: Literal["list", "stop"] = "list"
     freeze_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 3.0
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 14.0

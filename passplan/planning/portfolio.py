@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
+from dataclasses import replace
+
+import numpy as np
 
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
@@ -16,6 +19,7 @@ from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import NotForSearchError
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
+from passplan.planning.staged import plan_in_order
 from passplan.planning.tidy import tidy
 from passplan.planning.value import account
 
@@ -36,6 +40,8 @@ def find_plan(
     limits = limits or Limits()
     clock = clock or Clock(limits.time_limit_s)
     terms = all_terms(problem, rules)
+    if problem.in_order:
+        return plan_in_order(problem, terms, limits, clock, progress)
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps), "greedy")
@@ -80,10 +86,12 @@ def _search(
     problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, best: _Candidate,
     tell: Callable[[float, float], None],
 ) -> Found | None:
+    base = problem.base_worth
     try:
-        return search_plan(problem, terms, maps, limits, clock, best.chosen, tell)
+        found = search_plan(problem, terms, maps, limits, clock, best.chosen, lambda v, b: tell(v + base, b + base))
     except NotForSearchError:
         return None
+    return None if found is None else replace(found, bound=found.bound + base)
 
 
 class _Candidate:
@@ -122,4 +130,5 @@ def _conclude(
 def _ceiling(problem: Problem) -> float:
     """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
     fleet = problem.fleet
-    return float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    worth = float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    return worth + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

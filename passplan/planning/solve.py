@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import datetime as dt
 import time
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -21,6 +22,7 @@ from passplan.planning.rules.terms import Terms
 
 # Points are sums of whole requests and seconds over hours; closer than this they are the same.
 _POINTS_TOLERANCE = 1e-7
+_WRONG = (mathopt.TerminationReason.INFEASIBLE, mathopt.TerminationReason.INFEASIBLE_OR_UNBOUNDED)
 _SOLVERS = (mathopt.SolverType.HIGHS, mathopt.SolverType.GSCIP)
 
 
@@ -45,16 +47,21 @@ def least_shortfall(problem: Problem, terms: Terms, limits: Limits, seconds: flo
 
 def most_value(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float, seconds: float,
+    holds: Sequence[tuple[Problem, float]] = (),
 ) -> Solved:
-    """Tier 2: the most valuable options among those with at most ``points`` of shortfall."""
+    """Tier 2: the most valuable options among those with at most ``points`` of shortfall.
+
+    ``holds`` are the same problem with other objectives, each with the value that is not to be given up.
+    """
     stop_s = clock.elapsed_s() + seconds
     with clock.stage("model"):
         model = build_model(problem, terms)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
-        proto = model.proto(tier=2, points_limit=limit)
+        held = [(build_model(other, terms).value, least - other.base_worth) for other, least in holds]
+        proto = model.proto(tier=2, points_limit=limit, holds=held)
     with clock.stage("solve"):
         answer = _solve(proto, model, limits, stop_s - clock.elapsed_s(), limits.gap)
-    return Solved(answer.chosen, float("inf") if answer.bound is None else answer.bound)
+    return Solved(answer.chosen, float("inf") if answer.bound is None else answer.bound + problem.base_worth)
 
 
 @dataclass(frozen=True)
@@ -75,7 +82,9 @@ def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, second
         except Exception:  # the errors of the solvers share no type
             # HiGHS gives up on a sound model now and then (kError); the next one takes over.
             continue
-        return _answer(result, model)
+        if result.has_primal_feasible_solution() or result.termination.reason not in _WRONG:
+            return _answer(result, model)
+        # A plan is known, so there is one: the solver has fallen over its own tolerances.
     return _Answer(None, 0.0, None)
 
 

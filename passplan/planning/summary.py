@@ -20,6 +20,7 @@ from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.planning.plan import Plan
 from passplan.planning.rented import Held, rented_time
+from passplan.planning.rules.decisions import frozen_contacts
 from passplan.planning.tentative import tentative_warnings, touched_by_tentative
 from passplan.planning.value import Account
 
@@ -57,6 +58,14 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         "warnings": [*run.warnings, *_own_warnings(run, windows), *tentative_warnings(touched)],
         **({"tentative": touched} if touched else {}),
         **(rented_time(run, held) if any(antenna.rented for antenna in run.antennas.values()) else {}),
+        **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
+        # A requirement that cannot be met for itself has said so in its shortfall.
+        "contradictions": [
+            {"demands": list(c.demands), "between": list(c.between), "sentence": c.sentence}
+            for c in plan.contradictions if len(c.demands) > 1
+        ],
+        "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
+        "frozen": [item.name for item in frozen_contacts(run)],
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},

@@ -92,14 +92,13 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
     expected = summary.get("weather", {}).get("volume_basis") == "expected"
-    facts = Table.grid(padding=(0, 3))
-    facts.add_row(
-        *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
+    facts = Text("  ").join(
+        Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
-            (f"brought down{' on average' if expected else ''}", megabytes(summary["volume_mb"])),
+            (f"delivered{' on average' if expected else ''}", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
             ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
-        ))
+        )
     )
     return Group(title, facts, _tiers(summary))
 

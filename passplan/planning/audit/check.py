@@ -22,6 +22,7 @@ from passplan.planning.audit.rows import Contact, read_rows
 from passplan.planning.audit.sites import check_sites
 from passplan.planning.audit.storage import check_storage
 from passplan.planning.audit.tentative import check_tentative
+from passplan.planning.audit.tiers import check_tiers
 from passplan.planning.audit.visibility import check_visibility, sight_of
 
 
@@ -50,6 +51,7 @@ def audit_plan(
     faults.extend(check_budget(run, rows))
     faults.extend(check_rented(run, rows, summary))
     faults.extend(check_tentative(run, rows, summary))
+    faults.extend(check_tiers(run, rows, summary))
     return faults
 
 

@@ -50,7 +50,8 @@ def search_plan(
     problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, start: Sequence[int],
     tell: Callable[[float, float], None] | None = None,
 ) -> Found | None:
-    """Improve the plan ``start`` and bound it. None if the time ran out before the code was compiled.
+    """Improve the plan ``start`` and bound it. None if there is nothing to choose from, or if the time ran out
+    before the code was compiled.
 
     Raises :class:`~passplan.planning.search.fleetarrays.NotForSearchError` where the terms do not fit.
     ``tell(value, bound)`` is called after each round.
@@ -58,6 +59,8 @@ def search_plan(
     if not _compiled_in_time(clock):
         return None
     arrays = fleet_arrays(problem, terms, maps)
+    if not len(arrays.option):
+        return None
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
         return _Rounds(problem, arrays, limits, start, pool, threads).run(clock, tell)

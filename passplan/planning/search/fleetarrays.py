@@ -98,7 +98,7 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         span=np.column_stack([options.start_s[order], options.end_s[order]]),
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
                               maps.generated_mb])[order],
-        cost=problem.worth_per_money * options.cost[order], bits=bits, renews=renews, use_first=use_first,
+        cost=problem.price[order], bits=bits, renews=renews, use_first=use_first,
         use_last=use_last, clash=_clashes(problem, terms, order, first, use_first, use_last), wants=wants, recur=recur,
         horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=cliques)
 
