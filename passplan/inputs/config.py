@@ -39,8 +39,10 @@ class RunConfig(Record):
     """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``.
 
     ``rain_mm_per_h`` is the day's rain rate by site, where it is known. ``published`` is the directory of the
-    published plan, ``last_commands`` a CSV file with the last command contact of each spacecraft. ``bookings`` are CSV
-    files of time on rented antennas; ``now`` is the moment at which it is asked for, the start where it is absent.
+    published plan, ``last_commands`` a CSV file with the last command contact of each spacecraft. ``slots`` are CSV
+    files with time in which spacecraft cannot have contacts, ``loaded`` the contacts that are already uplinked.
+    ``bookings`` are CSV files of time on rented antennas; ``now`` is the moment at which it is asked for, the start
+    where it is absent.
     """
 
     name: Label = "run"
@@ -59,6 +61,8 @@ class RunConfig(Record):
     last_commands: str | None = None
     bookings: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
     now: Instant | None = None
+    slots: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
+    loaded: str | None = None
     policy: str | dict[str, Any] = Field(default_factory=dict)
 
     @model_validator(mode="after")

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 import numpy as np
 import pandas as pd
 
+from passplan.inputs.aboard import Slot
 from passplan.inputs.bookings import Booking
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.decisions import Decision, Published
@@ -56,6 +57,8 @@ class Run:
     asking_utc: np.datetime64 | None = None
     decisions: tuple[Decision, ...] = ()
     published: tuple[Published, ...] = ()
+    slots: tuple[Slot, ...] = ()
+    loaded: tuple[Published, ...] = ()
     warnings: tuple[str, ...] = ()
     files: tuple[ReadFile, ...] = field(default=(), repr=False)
 

@@ -18,6 +18,8 @@ from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.reader import ReadFile
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
+from passplan.planning.aboard import schedule_warnings
+from passplan.planning.battery import battery_summary, battery_warnings
 from passplan.planning.plan import Plan
 from passplan.planning.rented import Held, rented_time
 from passplan.planning.rules.decisions import frozen_contacts
@@ -55,7 +57,6 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
-        "warnings": [*run.warnings, *_own_warnings(run, windows), *tentative_warnings(touched)],
         **({"tentative": touched} if touched else {}),
         **(rented_time(run, held) if any(antenna.rented for antenna in run.antennas.values()) else {}),
         **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
@@ -65,11 +66,14 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             for c in plan.contradictions if len(c.demands) > 1
         ],
         "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
-        "frozen": [item.name for item in frozen_contacts(run)],
+        "frozen": [item.name for item in (*frozen_contacts(run), *run.loaded)],
+        "warnings": [
+            *run.warnings, *_own_warnings(run, windows), *battery_warnings(run, plan.problem),
+            *schedule_warnings(run, plan.contacts), *tentative_warnings(touched)],
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
-        "storage": _storage(run, account),
+        "storage": _storage(run, account), "battery": battery_summary(run, plan.problem, result.chosen),
         "inputs": stored_inputs(run.files),
         "versions": {"passplan": __version__, **{name: _version(name) for name in _PACKAGES}},
         "seconds": {},
