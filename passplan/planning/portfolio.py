@@ -129,6 +129,5 @@ def _conclude(
 
 def _ceiling(problem: Problem) -> float:
     """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
-    fleet = problem.fleet
-    worth = float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    worth = sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)
     return worth + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

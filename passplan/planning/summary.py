@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 import json
 from collections.abc import Iterable
+from dataclasses import asdict
 from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import PurePosixPath
@@ -120,7 +121,7 @@ def _spacecraft(run: Run, name: str) -> dict[str, Any]:
     orbit, craft = run.orbits[name], run.spacecraft[name]
     known = isinstance(orbit, ElementSet)
     return {
-        "catalogue_number": craft.catalogue_number, "weight": craft.weight,
+        "catalogue_number": craft.catalogue_number, "weight": run.data_of(name)[0].weight,
         "orbit_from": "element set" if known else "ephemeris",
         "element_epoch_utc": _iso(orbit.epoch_utc) if isinstance(orbit, ElementSet) else None,
         "element_age_days": round(orbit.age_days(run.start_utc), 4) if isinstance(orbit, ElementSet) else None,
@@ -139,13 +140,28 @@ def _antenna(run: Run, name: str, contacts: pd.DataFrame) -> dict[str, Any]:
     }
 
 
-def _storage(run: Run, account: Account) -> dict[str, dict[str, float]]:
+def _storage(run: Run, account: Account) -> dict[str, dict[str, Any]]:
+    """Figures of each spacecraft's storage; where its data is of its own classes, theirs and the fill as well."""
     columns = {
         key: getattr(account, key) for key in ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
     }
     return {
-        name: {"capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()}}
+        name: {
+            "capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()},
+            **_classes(account, i),
+        }
         for i, name in enumerate(name for name in run.spacecraft if name in run.orbits)
+    }
+
+
+def _classes(account: Account, craft: int) -> dict[str, Any]:
+    if craft not in account.aboard:
+        return {}
+    aboard = account.aboard[craft]
+    return {
+        "classes": {one.name: {k: v for k, v in asdict(one).items() if k != "name"} for one in account.classes[craft]},
+        "fill": np.column_stack([aboard.path_s, aboard.path_mb]).round(3).tolist(),
+        "losing_s": aboard.losing_s.round(3).tolist(),
     }
 
 

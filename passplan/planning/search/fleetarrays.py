@@ -69,6 +69,8 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
     options, fleet = problem.options, problem.fleet
     if any(len(rows) for rows in terms.rows):
         raise NotForSearchError("the search does not keep linear limits yet")
+    if fleet.streams:
+        raise NotForSearchError("the search does not keep classes of data and changing rates yet")
     if terms.guarantees:
         raise NotForSearchError("the search does not keep guarantees yet")
     order = np.lexsort((options.end_s, options.start_s, options.spacecraft))
