@@ -174,7 +174,9 @@ class _Staged:
             tiers.append(Tier("shortfalls", "least", best.points, least, relative_gap(-best.points, -least)))
         for aim, reached, bound in zip(self.aims, best.reached, bounds, strict=True):
             sign, above = (1.0 if aim.sense == "most" else -1.0), max(bound, reached)
-            tiers.append(Tier(aim.name, aim.sense, sign * reached, sign * above, relative_gap(reached, above)))
+            # Adding nothing turns a minus nothing into nothing.
+            gap = relative_gap(reached, above)
+            tiers.append(Tier(aim.name, aim.sense, sign * reached + 0.0, sign * above + 0.0, gap))
         value = next(tier for tier in tiers if tier.name == "value")
         return PlanResult(
             best.chosen, status_of(value.gap, self.limits.gap, best.path, len(best.chosen)), value.value, value.bound,
