@@ -13,6 +13,7 @@ import numpy as np
 from pydantic import TypeAdapter
 
 from passplan.inputs.aboard import read_slots
+from passplan.inputs.bookings import read_bookings
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
@@ -109,6 +110,7 @@ def load_run(
     if ground.antennas:
         sources = [ClosureSource(beside(path, c.file), c.antenna, c.site) for c in settings.closures]
         closures = read_closures(sources, ground.antennas, start_utc, end_utc, reader, findings)
+    bookings = read_bookings([beside(path, name) for name in settings.bookings], ground.antennas, reader, findings)
     try:
         orbits = resolve_orbits(
             fleet.spacecraft, [beside(path, item) for item in settings.elements], beside(path, settings.fleet).parent,
@@ -121,6 +123,7 @@ def load_run(
     return Run(
         name=settings.name, start_utc=start_utc, end_utc=end_utc, spacecraft=fleet.spacecraft, radios=fleet.radios,
         sites=sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
+        bookings=bookings, asking_utc=_asking(settings, start),
         mounts=ground.mounts, modcod_tables=fleet.tables, closures=closures, policy=rules,
         data=fleet.data, series=fleet.series,
         # A request file holds many days; one whose span misses this horizon is another day's business.
@@ -174,6 +177,14 @@ def _horizon(
     if end <= begin:
         findings.problem(path, "end", None, "end is not after start; the horizon must have a length")
     return datetime64(begin), datetime64(end)
+
+
+def _asking(settings: RunConfig, start: datetime | None) -> np.datetime64 | None:
+    """The config's ``now``; where the horizon is moved it keeps its distance from the start."""
+    if settings.now is None:
+        return None
+    moved = start - settings.start if start is not None and settings.start is not None else timedelta(0)
+    return datetime64(settings.now + moved)
 
 
 def _read_policy(

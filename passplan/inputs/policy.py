@@ -65,6 +65,8 @@ class Policy(Record):
     command_min_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     spill_cost_per_mb: Annotated[float, Field(ge=0.0, le=1e6)] = 0.1
     worth_per_money: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    budget_per_day: Annotated[float, Field(ge=0.0, le=1e9)] | None = None
+    tentative_closures: Literal["keep_free", "plan_through"] = "keep_free"
     guarantee: tuple[Guarantee, ...] = ()
     tiers: Literal["one_value", "in_order"] = "one_value"
     change_cost: Annotated[float, Field(ge=0.0, le=1e12)] = 0.0

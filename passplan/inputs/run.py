@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from passplan.inputs.aboard import Slot
+from passplan.inputs.bookings import Booking
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.data import DataClass, only_class
 from passplan.inputs.decisions import Decision, Published
@@ -55,6 +56,8 @@ class Run:
     elements: pd.DataFrame
     pfd_limits: tuple[PfdLimit, ...] = field(default_factory=builtin_pfd_limits)
     mounts: Mapping[str, Mount] = field(default_factory=dict)
+    bookings: tuple[Booking, ...] = ()
+    asking_utc: np.datetime64 | None = None
     data: Mapping[str, tuple[DataClass, ...]] = field(default_factory=dict)
     series: Mapping[str, Series] = field(default_factory=dict)
     decisions: tuple[Decision, ...] = ()
@@ -79,6 +82,11 @@ class Run:
     def data_of(self, spacecraft: str) -> tuple[DataClass, ...]:
         """The classes of data of a spacecraft, what is worth most first; one made of its own keys if it states none."""
         return self.data.get(spacecraft) or (only_class(self.spacecraft[spacecraft]),)
+
+    @property
+    def now_utc(self) -> np.datetime64:
+        """The moment at which time on rented antennas is asked for."""
+        return self.start_utc if self.asking_utc is None else self.asking_utc
 
     @property
     def horizon_s(self) -> int:

@@ -22,7 +22,9 @@ from passplan.inputs.run import Run
 from passplan.planning.aboard import schedule_warnings
 from passplan.planning.battery import battery_summary, battery_warnings
 from passplan.planning.plan import Plan
+from passplan.planning.rented import Held, rented_time
 from passplan.planning.rules.decisions import frozen_contacts
+from passplan.planning.tentative import tentative_warnings, touched_by_tentative
 from passplan.planning.value import Account
 
 _PACKAGES = ("skyfield", "sgp4", "ortools", "itur", "numpy", "pandas")
@@ -35,6 +37,8 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
     work done twice carries the same name.
     """
     result, account = plan.result, plan.result.account
+    held = _held(plan)
+    touched = touched_by_tentative(run, held)
     summary: dict[str, Any] = {
         "plan_id": "", "name": run.name, "status": result.status, "approval": "draft",
         "generated_utc": datetime.now(UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z"),
@@ -54,6 +58,8 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
+        **({"tentative": touched} if touched else {}),
+        **(rented_time(run, held) if any(antenna.rented for antenna in run.antennas.values()) else {}),
         **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
         # A requirement that cannot be met for itself has said so in its shortfall.
         "contradictions": [
@@ -62,8 +68,9 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         ],
         "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
         "frozen": [item.name for item in (*frozen_contacts(run), *run.loaded)],
-        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem)
-        + list(schedule_warnings(run, plan.contacts)),
+        "warnings": [
+            *run.warnings, *_own_warnings(run, windows), *battery_warnings(run, plan.problem),
+            *schedule_warnings(run, plan.contacts), *tentative_warnings(touched)],
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
@@ -74,6 +81,15 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
     }
     summary["plan_id"] = _plan_id(summary, plan.contacts)
     return summary
+
+
+def _held(plan: Plan) -> list[Held]:
+    """When each contact holds its antenna, in the order of the contacts."""
+    options, chosen = plan.problem.options, plan.result.account.chosen
+    start_s, end_s = options.start_s - options.prepare_s, options.end_s + options.release_s
+    return [
+        Held(contact, antenna, int(start_s[o]), int(end_s[o])) for contact, antenna, o in zip(
+            plan.contacts["contact_id"], plan.contacts["antenna"], chosen.tolist(), strict=True)]
 
 
 def stored_inputs(files: Iterable[ReadFile]) -> list[dict[str, str]]:

@@ -19,6 +19,7 @@ from passplan.planning.audit.ageing import ages, follow_aged
 from passplan.planning.audit.changes import departures
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.making import Rates, added, rates_of
+from passplan.planning.audit.money import cost_of
 from passplan.planning.audit.rows import Contact, Piece
 
 _A_BYTE_IN_A_GIGABYTE = 1e-9
@@ -139,7 +140,7 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
         delivered.append(balance.delivered_mb)
     for contact in contacts:
         yield from _check_money(run, contact, worths.get(contact.contact_id, 0.0))
-        earned.append(-worth_per_money * _cost(run, contact))
+        earned.append(-worth_per_money * cost_of(run, contact))
     earned.append(-departures(run, contacts)[0])
     for name in sorted(set(stated) - set(run.orbits)):
         yield Fault("storage", f"spacecraft {name}", "it takes no part in the plan, yet the summary has figures for it")
@@ -216,10 +217,6 @@ def _check_entry(place: str, entry: Any, balance: Balance, tolerance_mb: float) 
         yield Fault("storage", place, sentence)
 
 
-def _cost(run: Run, contact: Contact) -> float:
-    return run.antennas[contact.antenna].price_per_minute * (contact.end_s - contact.start_s) / 60.0
-
-
 def _check_money(run: Run, contact: Contact, followed: float) -> Iterator[Fault]:
     """Weight, value and cost of one contact."""
     weights = {item.name: item.weight for item in run.data_of(contact.spacecraft)}
@@ -230,7 +227,7 @@ def _check_money(run: Run, contact: Contact, followed: float) -> Iterator[Fault]
     for key, figure, expected in (
         ("weight", contact.weight, worth / contact.volume_mb if mixed else max(weights.values())),
         ("value", contact.value, worth),
-        ("cost", contact.cost, _cost(run, contact)),
+        ("cost", contact.cost, cost_of(run, contact)),
     ):
         if differs(figure, expected, _VALUE_RELATIVE * max(abs(expected), 1.0)):
             yield Fault("value", contact.place, f"its {key} is {figure:.6g}, it should be {expected:.6g}")
