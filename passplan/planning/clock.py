@@ -8,20 +8,25 @@ from contextlib import contextmanager
 
 
 class Clock:
-    """Counts down from ``limit_s`` and notes how long each stage took."""
+    """Counts down from ``limit_s`` and notes how long each stage took. It can be stopped by hand before that."""
 
     def __init__(self, limit_s: float) -> None:
         self._started = time.monotonic()
         self._limit_s = limit_s
         self.seconds: dict[str, float] = {}
+        self.stopped = False
+
+    def stop(self) -> None:
+        """Time is up from now on. Safe to call from a signal handler or another thread."""
+        self.stopped = True
 
     def elapsed_s(self) -> float:
         """Seconds since the clock was made."""
         return time.monotonic() - self._started
 
     def left_s(self) -> float:
-        """Seconds left, never negative."""
-        return max(0.0, self._limit_s - self.elapsed_s())
+        """Seconds left, never negative; 0 once it was stopped."""
+        return 0.0 if self.stopped else max(0.0, self._limit_s - self.elapsed_s())
 
     def expired(self) -> bool:
         """Whether the time is up."""

@@ -6,14 +6,15 @@ from collections.abc import Callable, Iterable
 
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
-from passplan.planning.maps import StorageMaps, storage_maps
+from passplan.planning.maps import storage_maps
 from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
-from passplan.planning.search.engine import Found, search_plan
-from passplan.planning.search.fleetarrays import NotForSearchError
+from passplan.planning.search.engine import search_plan
+from passplan.planning.search.fleetarrays import fleet_arrays
+from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -38,7 +39,10 @@ def find_plan(
     terms = all_terms(problem, rules)
     with clock.stage("greedy"):
         maps = storage_maps(problem)
-        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps), "greedy")
+        arrays = None
+        if len(problem.options) > limits.exact_options and compiled_in_time(clock):
+            arrays = fleet_arrays(problem, terms, maps)
+        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
     bound = _ceiling(problem) if len(problem.options) else best.account.value
 
     def tell(value: float, bound: float) -> None:
@@ -55,7 +59,7 @@ def find_plan(
         with clock.stage("requirements"):
             served = least_shortfall(problem, terms, limits, 0.25 * clock.left_s())
             points_bound = max(points_bound, served.bound)
-            filled = plan_greedily(problem, terms, clock, maps=maps, begin=served.chosen or ())
+            filled = plan_greedily(problem, terms, clock, maps=maps, begin=served.chosen or (), arrays=arrays)
             best = max(best, _Candidate(problem, terms, filled, "greedy"), key=_Candidate.rank)
     if open_still() and len(problem.options) <= limits.exact_options:
         # Half of the time: the search takes the other half where the model is too hard after all.
@@ -63,27 +67,18 @@ def find_plan(
         bound = min(bound, solved.bound)
         best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
         tell(best.account.value, bound)
-    if open_still():
+    if open_still() and compiled_in_time(clock):
         with clock.stage("search"):
-            found = _search(problem, terms, maps, limits, clock, best, tell)
-        if found is not None:
-            candidate = _Candidate(problem, terms, found.chosen, "search")
-            bound = found.bound if candidate.points < best.points - _SAME_POINTS else min(bound, found.bound)
-            best = max(best, candidate, key=_Candidate.rank)
+            if arrays is None:
+                arrays = fleet_arrays(problem, terms, maps)
+            found = search_plan(arrays, limits, clock, best.chosen, best.points, tell)
+        candidate = _Candidate(problem, terms, found.chosen, "search")
+        bound = found.bound if candidate.points < best.points - _SAME_POINTS else min(bound, found.bound)
+        best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
-        tidied = _Candidate(problem, terms, tidy(problem, terms, maps, best.chosen), best.path)
+        tidied = _Candidate(problem, terms, tidy(problem, terms, maps, best.chosen, arrays), best.path)
         best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
     return _conclude(best, terms, points_bound, bound, limits, clock)
-
-
-def _search(
-    problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, best: _Candidate,
-    tell: Callable[[float, float], None],
-) -> Found | None:
-    try:
-        return search_plan(problem, terms, maps, limits, clock, best.chosen, tell)
-    except NotForSearchError:
-        return None
 
 
 class _Candidate:

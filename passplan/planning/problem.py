@@ -174,6 +174,7 @@ class Problem:
     conflicts: tuple[Conflict, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
+    left_worth_share: float = 0.0
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
     needs: tuple[object, ...] = ()
 
@@ -196,6 +197,8 @@ class Limits:
     time_limit_s: float = 60.0
     threads: int = 2
     seed: int = 1
+    # Rounds of the search at most: the one limit besides the gap that ends at the same plan every time.
+    search_rounds: int = 1_000_000
     # Up to this many options the exact model is tried first (see portfolio.py).
     exact_options: int = field(default=8_000)
 
