@@ -26,7 +26,7 @@ from passplan.planning.search.schedule import best_schedule, worth_of
 # The first step moves the price of an option by about this part of what a contact is worth; after so many steps it
 # is half as long, then a third, and so on.
 _FIRST_STEP = 0.05
-_HALF_AFTER = 20.0
+_HALF_AFTER = 15.0
 _MEAN_MEMORY = 0.9
 _SQUARE_MEMORY = 0.99
 _LEAST_SIZE = 0.1
