@@ -55,6 +55,8 @@ def command(
     with progress(quiet) as report:
         record = plan_run(run, report, against=earlier)
     write_plan(record, out, replace=replace)
+    if record.summary["stopped_by_hand"]:
+        typer.echo("Stopped by hand: this is the best plan found until then.", err=True)
     if picture is not None:
         draw(Wanted(record, run, out), picture)
     if as_json:

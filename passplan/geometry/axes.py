@@ -34,6 +34,16 @@ def off_axis_deg(lower_apart_deg: Floats, upper_deg: Floats) -> Floats:
     return np.asarray(np.degrees(2.0 * np.arcsin(np.clip(chord, 0.0, 1.0))))
 
 
+def lower_width_deg(off_deg: float, upper_deg: Floats) -> Floats:
+    """How far [deg] the lower axis may be off for the beam to be off by ``off_deg`` on the sky; 360 for any angle.
+
+    The inverse of :func:`off_axis_deg`.
+    """
+    room = np.maximum(np.cos(np.radians(upper_deg)), 1e-12)
+    chord = np.sin(np.radians(min(off_deg, 180.0)) / 2.0) / room
+    return np.where(chord < 1.0, np.degrees(2.0 * np.arcsin(np.minimum(chord, 1.0))), 360.0)
+
+
 def cone_angle_deg(mount: Mount, azimuth_deg: Floats, elevation_deg: Floats) -> Floats:
     """Angle [deg] between directions and the boresight of a fixed aperture (zenith unless it says otherwise)."""
     boresight = 90.0 if mount.boresight_elevation_deg is None else mount.boresight_elevation_deg

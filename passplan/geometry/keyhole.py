@@ -21,8 +21,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
-from passplan.geometry.axes import off_axis_deg
+from passplan.geometry.axes import lower_width_deg
 from passplan.geometry.timescale import Floats
 
 # Starts that are tried along the approach, and again around the best of them.
@@ -60,101 +61,155 @@ def lost_stretches(
     them: a tenth of the time that the fastest stretch takes. Fast stretches that one slew spans are one.
     """
     lost: list[tuple[float, float]] = []
+    stretches = fast_stretches(time_s, angle_deg, axis)
+    if not stretches:
+        return lost
+    width = np.full(time_s.size, permitted_deg) if upper_deg is None else lower_width_deg(permitted_deg, upper_deg)
     done = -1
-    for first, last in fast_stretches(time_s, angle_deg, axis):
+    for first, last in stretches:
         if last <= done:
             continue
-        found, done = _best_slew(time_s, angle_deg, upper_deg, axis, permitted_deg, first, last, done)
+        found, done = _best_slew(time_s, angle_deg, width, axis, first, last, done)
         lost += found
     return lost
 
 
 def _best_slew(
-    time_s: Floats, angle: Floats, upper: Floats | None, axis: Axis, permitted: float, first: int, last: int, done: int
+    time_s: Floats, angle: Floats, width: Floats, axis: Axis, first: int, last: int, done: int
 ) -> tuple[list[tuple[float, float]], int]:
     """The intervals lost by the best slew over the fast stretch [first, last], and the sample it is over at."""
     way = 1.0 if angle[last] >= angle[first] else -1.0
     target, rate = way * angle, way * np.gradient(angle, time_s)
     # What one slew at full rate from the stretch's far end can need at the most, either way.
     reach_s = abs(target[last] - target[first]) / axis.rate_deg_s + 2.0 * axis.rate_deg_s / axis.acceleration_deg_s2
-    earliest = max(done, 0, int(np.searchsorted(time_s, time_s[first] - reach_s)))
-    starts = np.unique(np.linspace(earliest, first, _STARTS).astype(int)).tolist()
-
-    def tried(start: int) -> _Slew:
-        path, end = _path(time_s, target, rate, axis, start, last)
-        span = slice(start, end + 1)
-        apart = target[span] - path
-        off = np.abs(apart) if upper is None else off_axis_deg(apart, upper[span])
-        stretches = _above(time_s[span], off, permitted)
-        return _Slew(start, end, stretches, round(sum(b - a for a, b in stretches), 3))
-
-    coarse = [tried(start) for start in starts]
-    best = min(range(len(starts)), key=lambda k: coarse[k].total_s)
-    near = (starts[max(best - 1, 0)], starts[min(best + 1, len(starts) - 1)])
-    fine = [tried(start) for start in np.unique(np.linspace(*near, _FINE_STARTS).astype(int)).tolist()]
-    found = min([*coarse, *fine], key=lambda slew: (slew.total_s, slew.start))
-    return found.lost, found.end
+    earliest_s = max(float(time_s[max(done, 0)]), float(time_s[first]) - reach_s)
+    starts_s = np.linspace(earliest_s, float(time_s[first]), _STARTS)
+    coarse = _tried(time_s, target, rate, width, axis, starts_s, last)
+    best = int(np.argmin(coarse.total_s))
+    near = starts_s[max(best - 1, 0)], starts_s[min(best + 1, starts_s.size - 1)]
+    fine = _tried(time_s, target, rate, width, axis, np.linspace(*near, _FINE_STARTS), last)
+    found = min((fine.best(), coarse.best()), key=lambda slew: (slew.total_s, slew.start_s))
+    return _above(time_s[found.low : found.low + found.margin.size], found.margin), found.end
 
 
 @dataclass(frozen=True)
 class _Slew:
-    """A slew between two samples, the intervals it loses, and their sum."""
+    """A slew that is over at the sample ``end``, the seconds it loses, and its margins at the samples from ``low``."""
 
-    start: int
+    start_s: float
     end: int
-    lost: list[tuple[float, float]]
     total_s: float
+    low: int
+    margin: Floats
 
 
-def _path(time_s: Floats, target: Floats, rate: Floats, axis: Axis, start: int, last: int) -> tuple[Floats, int]:
-    """The slew that leaves the target at ``start``, up to the first sample from ``last`` at which it is back on it.
+@dataclass(frozen=True)
+class _Slews:
+    """Slews from ``start_s`` (k,) to the samples ``end``, the seconds each loses, and margins (k, n) from ``low`` on.
 
-    With rates v0 and v1 at its ends, full rate V and acceleration A, it covers in time T at most
+    A margin is how far [deg] the axis is off its target beyond what is permitted, negative inside.
+    """
+
+    start_s: Floats
+    end: NDArray[np.int64]
+    total_s: Floats
+    low: int
+    margin: Floats
+
+    def best(self) -> _Slew:
+        """The one that loses least, of equals the earliest."""
+        k = int(np.argmin(self.total_s))
+        return _Slew(float(self.start_s[k]), int(self.end[k]), float(self.total_s[k]), self.low, self.margin[k])
+
+
+@dataclass(frozen=True)
+class _Starts:
+    """Where slews leave the target: instants (k, 1), and its angle and rate there."""
+
+    time_s: Floats
+    angle: Floats
+    rate: Floats
+
+
+def _tried(
+    time_s: Floats, target: Floats, rate: Floats, width: Floats, axis: Axis, start_s: Floats, last: int
+) -> _Slews:
+    """What slews from ``start_s`` (k,), in order, over the fast stretch that ends at the sample ``last`` lose."""
+    top = axis.rate_deg_s
+    starts = _Starts(*(
+        part[:, None] for part in (
+            start_s, np.interp(start_s, time_s, target), np.clip(np.interp(start_s, time_s, rate), -top, top))))
+    end, back = _meetings(time_s, target, rate, axis, starts, last)
+    low, high = max(int(np.searchsorted(time_s, start_s[0], side="right")) - 1, 0), int(end.max()) + 1
+    time, number, room = time_s[low:high], np.arange(low, high), width[low:high]
+    path = _paths(axis, starts, time_s[end], target[end], rate[end], back, time)
+    apart = target[low:high] - path
+    apart -= 360.0 * np.rint(apart / 360.0)
+    # Before and after it the axis is on its target.
+    apart[(time < starts.time_s) | (number > end[:, None])] = 0.0
+    margin = np.abs(apart) - room
+    # Of a straight line from one sample's margin to the next, the share above zero.
+    over, size = np.maximum(margin, 0.0), np.abs(margin)
+    share = (over[:, 1:] + over[:, :-1]) / np.maximum(size[:, 1:] + size[:, :-1], 1e-12)
+    return _Slews(start_s, end, np.round(share @ np.diff(time), 3), low, margin)
+
+
+def _meetings(
+    time_s: Floats, target: Floats, rate: Floats, axis: Axis, starts: _Starts, last: int
+) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+    """The first samples (k,) from ``last`` at which slews are back on the target, and whether they are at all.
+
+    With rates v0 and v1 at its ends, full rate V and acceleration A, a slew covers in time T at most
     (v^2 - v0^2)/2A + (v^2 - v1^2)/2A + v (T - (2 v - v0 - v1)/A) with v = min(V, (v0 + v1 + A T)/2)
-    (textbook kinematics).
+    (textbook kinematics). A pass that ends first is left wherever the slew has got to.
     """
     top, strength = axis.rate_deg_s, axis.acceleration_deg_s2
-    v0 = float(np.clip(rate[start], -top, top))
-    later = np.arange(max(last, start + 1), target.size)
-    if not later.size:
-        return np.array([target[start]]), start
-    length = time_s[later] - time_s[start]
-    v1 = np.clip(rate[later], -top, top)
+    length, v0 = time_s[last:] - starts.time_s, starts.rate
+    v1 = np.clip(rate[last:], -top, top)
     if np.isinf(strength):
         most = top * length
     else:
         peak = np.minimum(top, 0.5 * (v0 + v1 + strength * length))
         most = (2.0 * peak**2 - v0**2 - v1**2) / (2.0 * strength) + peak * (length - (2.0 * peak - v0 - v1) / strength)
-        most = np.where(peak >= np.maximum(v0, v1), most, -np.inf)
-    back = np.flatnonzero(most >= target[later] - target[start])
-    # A pass that ends first is left wherever the slew has got to.
-    end = int(later[back[0]]) if back.size else target.size - 1
-    since = time_s[start : end + 1] - time_s[start]
+        most[peak < np.maximum(v0, v1)] = -np.inf
+    met = (most >= target[last:] - starts.angle) & (length > 0.0)
+    back = np.asarray(met.any(axis=1))
+    return np.where(back, last + np.argmax(met, axis=1), time_s.size - 1), back
+
+
+def _paths(
+    axis: Axis, starts: _Starts, end_s: Floats, end_deg: Floats, end_rate: Floats, back: NDArray[np.bool_], time: Floats
+) -> Floats:
+    """Angles (k, n) at ``time`` (n,) of slews to the target at ``end_s`` (k,), which are ``back`` there or not.
+
+    Full acceleration to the full rate, and where the slew meets the target again braking to the target's own rate.
+    """
+    top, strength = axis.rate_deg_s, axis.acceleration_deg_s2
+    since, met = time - starts.time_s, end_deg[:, None]
     if np.isinf(strength):
-        path = target[start] + top * since
-        return (np.minimum(path, target[end]) if back.size else path), end
-    vend = float(np.clip(rate[end], -top, top))
-    up_s = (min(top, 0.5 * (v0 + vend + strength * since[-1])) - v0) / strength
+        path = starts.angle + top * since
+        return np.where(back[:, None], np.minimum(path, met), path)
+    v0, v1 = starts.rate, np.clip(end_rate, -top, top)[:, None]
+    length = end_s[:, None] - starts.time_s
+    up_s = (np.minimum(top, 0.5 * (v0 + v1 + strength * length)) - v0) / strength
     rising = np.minimum(since, up_s)
-    path = target[start] + v0 * rising + 0.5 * strength * rising**2 + (v0 + strength * up_s) * (since - rising)
-    if back.size:
-        left = since[-1] - since
-        down_s = max((v0 + strength * up_s - vend) / strength, 0.0)
-        braking = left < down_s
-        path[braking] = target[end] - vend * left[braking] - 0.5 * strength * left[braking] ** 2
-    return path, end
+    full = v0 + strength * up_s
+    path = starts.angle + v0 * rising + 0.5 * strength * rising**2 + full * (since - rising)
+    left = length - since
+    braking = back[:, None] & (left < np.maximum((full - v1) / strength, 0.0))
+    return np.where(braking, met - v1 * left - 0.5 * strength * left**2, path)
 
 
-def _above(time_s: Floats, off_deg: Floats, permitted: float) -> list[tuple[float, float]]:
-    """Where a polyline lies above ``permitted``."""
-    over = off_deg > permitted
+def _above(time_s: Floats, margin: Floats) -> list[tuple[float, float]]:
+    """Where a polyline lies above zero."""
+    over = margin > 0.0
     edges = np.flatnonzero(np.diff(np.concatenate(([False], over, [False])).astype(np.int8)))
     found = []
     for begin, end in zip(edges[::2], edges[1::2] - 1, strict=True):
         ends = [float(time_s[begin]), float(time_s[end])]
         for k, (inner, outer) in enumerate(((begin, begin - 1), (end, end + 1))):
             if 0 <= outer < time_s.size:
-                share = (off_deg[inner] - permitted) / (off_deg[inner] - off_deg[outer])
+                share = margin[inner] / (margin[inner] - margin[outer])
                 ends[k] = float(time_s[inner] + share * (time_s[outer] - time_s[inner]))
         found.append((ends[0], ends[1]))
     return found

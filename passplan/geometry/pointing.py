@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -94,32 +94,75 @@ def sample_windows(
 
     With ``refraction`` elevations are apparent (ITU-R P.834), without it geometric.
     """
-    origin = float(utc_seconds(start_utc))
-    aos = utc_seconds(windows["aos_utc"].to_numpy()) - origin
-    los = utc_seconds(windows["los_utc"].to_numpy()) - origin
-    # LOS replaces a step that would fall on it or within a millisecond before it.
-    between = np.maximum(np.ceil((los - aos - 1e-3) / step_s).astype(np.int64), 1)
-    offsets = np.concatenate([[0], np.cumsum(between + 1)]).astype(np.int64)
-    row = np.repeat(np.arange(aos.size), between + 1)
-    number = np.arange(row.size) - offsets[row]
-    time = aos[row] + number * step_s
-    time[offsets[1:] - 1] = los
+    row, time, offsets = instants(windows, step_s)
+    found = look_at(windows, orbits, sites, row, time)
+    elevation = found.elevation_deg
+    if refraction:
+        heights = np.array([sites[name].height_m / 1e3 for name in windows["site"]])
+        elevation = apparent_deg(elevation, heights[row])
+    since = time - float(utc_seconds(start_utc))
+    return Samples(since, found.azimuth_deg, elevation, found.range_km, found.range_rate_km_s, offsets)
+
+
+def look_at(
+    windows: pd.DataFrame, orbits: Mapping[str, OrbitSource], sites: Mapping[str, Site], row: NDArray[np.int64],
+    utc_s: Floats,
+) -> LookAngles:
+    """Pointing to the spacecraft of row ``row[i]`` of ``windows`` from its site, at ``utc_s[i]``."""
     columns = [np.empty(row.size) for _ in range(4)]
-    places = stations(list(sites.values()))
-    site_index = pd.Index(list(sites)).get_indexer(pd.Index(windows["site"]))
-    names = windows["spacecraft"].to_numpy()
-    codes, known = pd.factorize(names)
-    order = np.argsort(codes[row], kind="stable")
-    edges = np.searchsorted(codes[row][order], np.arange(len(known) + 1))
-    for code, name in enumerate(known):
-        pick = order[edges[code] : edges[code + 1]]
-        positions, velocities = states_itrf(orbits[str(name)], time[pick] + origin)
-        found = look(positions, velocities, places.subset(site_index[row[pick]]))
+    for pick, positions, velocities, here in _seen(windows, orbits, sites, row, utc_s):
+        found = look(positions, velocities, here)
         for column, values in zip(
             columns, (found.azimuth_deg, found.elevation_deg, found.range_km, found.range_rate_km_s), strict=True
         ):
             column[pick] = values
-    if refraction:
-        heights = np.array([site.height_m / 1e3 for site in sites.values()])
-        columns[1] = apparent_deg(columns[1], heights[site_index[row]])
-    return Samples(time, columns[0], columns[1], columns[2], columns[3], offsets)
+    return LookAngles(*columns)
+
+
+def instants(windows: pd.DataFrame, step_s: float) -> tuple[NDArray[np.int64], Floats, NDArray[np.int64]]:
+    """Row of ``windows`` and utc_s (n,) of instants at AOS, every ``step_s`` from there, and at LOS; and offsets.
+
+    Row i owns the instants from ``offsets[i]`` to before ``offsets[i + 1]``.
+    """
+    aos, los = (utc_seconds(windows[c].to_numpy()) for c in ("aos_utc", "los_utc"))
+    # LOS replaces a step that would fall on it or within a millisecond before it.
+    between = np.maximum(np.ceil((los - aos - 1e-3) / step_s).astype(np.int64), 1)
+    offsets = np.concatenate([[0], np.cumsum(between + 1)]).astype(np.int64)
+    row = np.repeat(np.arange(aos.size), between + 1)
+    time = aos[row] + (np.arange(row.size) - offsets[row]) * step_s
+    time[offsets[1:] - 1] = los
+    return row, time, offsets
+
+
+def local_states(
+    windows: pd.DataFrame, orbits: Mapping[str, OrbitSource], sites: Mapping[str, Site], row: NDArray[np.int64],
+    utc_s: Floats,
+) -> tuple[Floats, Floats]:
+    """Position [km] and velocity [km/s] (3, n) of the spacecraft of row ``row[i]`` at ``utc_s[i]``, from its site.
+
+    Along east, north and up.
+    """
+    position, velocity = np.empty((3, row.size)), np.empty((3, row.size))
+    for pick, positions, velocities, here in _seen(windows, orbits, sites, row, utc_s):
+        line = positions - here.positions_km
+        for k, axis in enumerate((here.east, here.north, here.up)):
+            position[k, pick] = np.einsum("ij,ij->i", axis, line)
+            velocity[k, pick] = np.einsum("ij,ij->i", axis, velocities)
+    return position, velocity
+
+
+def _seen(
+    windows: pd.DataFrame, orbits: Mapping[str, OrbitSource], sites: Mapping[str, Site], row: NDArray[np.int64],
+    utc_s: Floats,
+) -> Iterator[tuple[NDArray[np.int64], Floats, Floats, Stations]]:
+    """Spacecraft by spacecraft: which of the instants are its own, its states there, and where it is seen from."""
+    places = stations(list(sites.values()))
+    site = pd.Index(list(sites)).get_indexer(pd.Index(windows["site"]))
+    codes, known = pd.factorize(windows["spacecraft"])
+    order = np.argsort(codes[row], kind="stable")
+    edges = np.searchsorted(codes[row][order], np.arange(len(known) + 1))
+    for code, name in enumerate(known):
+        pick = order[edges[code] : edges[code + 1]]
+        if pick.size:
+            positions, velocities = states_itrf(orbits[str(name)], utc_s[pick])
+            yield pick, positions, velocities, places.subset(site[row[pick]])

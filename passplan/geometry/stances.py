@@ -12,7 +12,7 @@ from passplan.geometry.axes import axis_angles_deg
 from passplan.geometry.pointing import sample_windows
 from passplan.geometry.slew import Stance
 from passplan.geometry.timescale import Floats
-from passplan.geometry.travel import choose_branch, unwrapped_deg
+from passplan.geometry.travel import choose_branch, roomiest_turns_deg, runs_unwrapped_deg
 from passplan.inputs.ground import Site
 from passplan.inputs.mounts import Mount
 from passplan.inputs.run import OrbitSource
@@ -29,16 +29,19 @@ def stances(
     All windows are of antennas on ``mount``. The branch of each pass is the one that
     :func:`~passplan.geometry.travel.choose_branch` takes for it; between samples angles run straight.
     """
-    lower, upper = np.full(time_s.size, np.nan), np.full(time_s.size, np.nan)
     rows, place = np.unique(window, return_inverse=True)
     samples = sample_windows(windows.iloc[rows], orbits, sites, start_utc, _STEP_S, refraction=refraction)
-    angles = axis_angles_deg(mount, samples.azimuth_deg, samples.elevation_deg)
-    order = np.argsort(place, kind="stable")
-    edges = np.searchsorted(place[order], np.arange(rows.size + 1))
-    for k in range(rows.size):
-        own, mine = slice(samples.offsets[k], samples.offsets[k + 1]), order[edges[k] : edges[k + 1]]
-        track = unwrapped_deg(angles[0][own])
-        turn = choose_branch(mount, samples.time_s[own], track).turn_deg
-        lower[mine] = np.interp(time_s[mine], samples.time_s[own], track + turn)
-        upper[mine] = np.interp(time_s[mine], samples.time_s[own], angles[1][own])
-    return Stance(lower, upper)
+    first, last = samples.offsets[:-1], samples.offsets[1:]
+    lower, upper = axis_angles_deg(mount, samples.azimuth_deg, samples.elevation_deg)
+    track = runs_unwrapped_deg(lower, samples.offsets)
+    turn, spare = roomiest_turns_deg(mount, np.minimum.reduceat(track, first), np.maximum.reduceat(track, first))
+    for k in np.flatnonzero(spare < 0.0).tolist():
+        own = slice(first[k], last[k])
+        turn[k] = choose_branch(mount, samples.time_s[own], track[own]).turn_deg
+    # Samples lie evenly from AOS on; only the last step is shorter.
+    step = np.floor((time_s - samples.time_s[first[place]]) / _STEP_S).astype(np.int64)
+    left = np.clip(first[place] + step, first[place], last[place] - 2)
+    share = (time_s - samples.time_s[left]) / (samples.time_s[left + 1] - samples.time_s[left])
+    share = np.clip(share, 0.0, 1.0)
+    between = [angle[left] + share * (angle[left + 1] - angle[left]) for angle in (track, upper)]
+    return Stance(between[0] + turn[place], between[1])

@@ -6,6 +6,7 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.geometry.timescale import Floats
 from passplan.inputs.mounts import Mount
@@ -27,6 +28,29 @@ class Branch:
 def unwrapped_deg(azimuth_deg: Floats) -> Floats:
     """Azimuths (n,) of one pass without jumps at north; the first stays in [0, 360)."""
     return np.asarray(np.unwrap(azimuth_deg, period=360.0))
+
+
+def runs_unwrapped_deg(azimuth_deg: Floats, offsets: NDArray[np.int64]) -> Floats:
+    """Azimuths (n,) of many passes without jumps at north; pass i is ``offsets[i]`` to before ``offsets[i + 1]``."""
+    step = np.diff(azimuth_deg, prepend=azimuth_deg[:1])
+    turns = -np.rint(step / 360.0)
+    turns[offsets[:-1]] = 0.0
+    total = np.cumsum(turns)
+    return np.asarray(azimuth_deg + 360.0 * (total - np.repeat(total[offsets[:-1]], np.diff(offsets))))
+
+
+def roomiest_turns_deg(mount: Mount, lowest_deg: Floats, highest_deg: Floats) -> tuple[Floats, Floats]:
+    """For passes between unwrapped azimuths (n,): the whole turn that stays furthest from both ends of the travel.
+
+    Of equals the lower one, and how far it stays [deg]; negative where no turn keeps the whole pass. Without travel
+    limits no turn, and infinity.
+    """
+    if mount.kind != "az_el" or mount.lower_from_deg is None or mount.lower_to_deg is None:
+        return np.zeros_like(lowest_deg), np.full_like(lowest_deg, np.inf)
+    middle = 0.5 * (mount.lower_from_deg + mount.lower_to_deg)
+    turn = 360.0 * np.ceil((middle - 0.5 * (lowest_deg + highest_deg)) / 360.0 - 0.5)
+    spare = np.minimum(lowest_deg + turn - mount.lower_from_deg, mount.lower_to_deg - highest_deg - turn)
+    return turn, spare
 
 
 def choose_branch(mount: Mount, time_s: Floats, unwrapped: Floats) -> Branch:

@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from typing import Any
 
 import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
-from passplan.geometry.pointing import look
+from passplan.geometry.pointing import look_at
 from passplan.geometry.refraction import apparent_deg
-from passplan.geometry.stations import stations
 from passplan.geometry.timescale import Floats, datetimes_ms, utc_seconds
-from passplan.geometry.trajectory import states_itrf
 from passplan.inputs.ground import Site
 from passplan.inputs.run import OrbitSource
 
@@ -37,22 +37,28 @@ def trimmed(
     table["clipped"] = _unclipped(windows["clipped"], late, early)
     table["aos_utc"], table["los_utc"] = datetimes_ms(start), datetimes_ms(end)
     table["duration_s"] = np.round(end - start, 3)
-    for row in rows.tolist():
-        source, site = orbits[str(table["spacecraft"].iat[row])], sites[str(table["site"].iat[row])]
-        peak = float(utc_seconds(table["peak_utc"].to_numpy()[row]))
-        kept = min(max(peak, start[row]), end[row])
-        states = states_itrf(source, np.array([start[row], end[row], kept]))
-        found = look(*states, stations([site]).subset(np.zeros(3, np.int64)))
-        place = table.index[row]
-        table.loc[place, ["aos_azimuth_deg", "los_azimuth_deg"]] = found.azimuth_deg[:2]
-        if kept != peak:
-            height = found.elevation_deg[2:]
-            table.loc[place, "peak_utc"] = datetimes_ms(np.array([kept]))[0]
-            table.loc[place, "peak_elevation_deg"] = float(
-                apparent_deg(height, site.height_m / 1e3)[0] if refraction else height[0]
-            )
-            table.loc[place, "min_range_km"] = found.range_km[2]
+    peak = utc_seconds(windows["peak_utc"].to_numpy())
+    kept = np.minimum(np.maximum(peak, start), end)
+    gone = rows[kept[rows] != peak[rows]]
+    row = np.concatenate([rows, rows, gone])
+    seen = look_at(table, orbits, sites, row, np.concatenate([start[rows], end[rows], kept[gone]]))
+    begun, ended, rest = slice(0, rows.size), slice(rows.size, 2 * rows.size), slice(2 * rows.size, None)
+    table["aos_azimuth_deg"] = _put(table["aos_azimuth_deg"], rows, seen.azimuth_deg[begun])
+    table["los_azimuth_deg"] = _put(table["los_azimuth_deg"], rows, seen.azimuth_deg[ended])
+    height = seen.elevation_deg[rest]
+    if refraction:
+        height = apparent_deg(height, np.array([sites[name].height_m / 1e3 for name in table["site"].iloc[gone]]))
+    table["peak_utc"] = _put(table["peak_utc"], gone, datetimes_ms(kept[gone]))
+    table["peak_elevation_deg"] = _put(table["peak_elevation_deg"], gone, height)
+    table["min_range_km"] = _put(table["min_range_km"], gone, seen.range_km[rest])
     return table[end > start].reset_index(drop=True)
+
+
+def _put(column: pd.Series, rows: NDArray[np.int64], values: NDArray[Any]) -> NDArray[Any]:
+    """The values of a column with others in some rows."""
+    changed = column.to_numpy().copy()
+    changed[rows] = values
+    return changed
 
 
 def _unclipped(clipped: pd.Series, late: np.ndarray, early: np.ndarray) -> pd.Series:

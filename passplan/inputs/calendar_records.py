@@ -6,7 +6,10 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
-from passplan.inputs.records import Instant, Label, Record, Service
+from passplan.inputs.records import Instant, Label, Record
+
+# Beside the services of a contact: ``ranging`` wants one that both sends and receives, on an antenna that offers it.
+RequestedService = Literal["downlink", "command", "both", "ranging"]
 
 
 class Closure(Record):
@@ -32,17 +35,20 @@ class Request(Record):
     """One contact that somebody asked for, anywhere in a span of time.
 
     It is met by a planned contact of the spacecraft that offers ``service``, lies within the span and
-    lasts at least ``min_duration_s``; ``antenna`` or ``site`` narrow it further.
+    lasts at least ``min_duration_s``; ``antenna`` or ``site`` narrow it further. A ``fixed`` one runs from
+    ``earliest_utc`` to ``latest_utc`` exactly, to the whole seconds within. ``points`` is what missing it weighs.
     """
 
     name: Label
     spacecraft: str
     antenna: str | None = None
     site: str | None = None
-    service: Service = "downlink"
+    service: RequestedService = "downlink"
     earliest_utc: Instant
     latest_utc: Instant
     min_duration_s: Annotated[float, Field(ge=1.0, le=86_400.0)] = 120.0
+    fixed: bool = False
+    points: Annotated[float, Field(gt=0.0, le=10.0)] = 1.0
 
     @model_validator(mode="after")
     def _consistent(self) -> Request:

@@ -38,7 +38,8 @@ def _calendar_files(value: Any) -> Any:
 class RunConfig(Record):
     """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``.
 
-    ``rain_mm_per_h`` is the day's rain rate by site, where it is known.
+    ``rain_mm_per_h`` is the day's rain rate by site, where it is known. ``published`` is the directory of the
+    published plan, ``last_commands`` a CSV file with the last command contact of each spacecraft.
     """
 
     name: Label = "run"
@@ -52,6 +53,9 @@ class RunConfig(Record):
     pfd_limits: str | None = None
     rain_mm_per_h: dict[str, Annotated[float, Field(ge=0.0, le=300.0)]] = Field(default_factory=dict)
     requests: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
+    decisions: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
+    published: str | None = None
+    last_commands: str | None = None
     policy: str | dict[str, Any] = Field(default_factory=dict)
 
     @model_validator(mode="after")

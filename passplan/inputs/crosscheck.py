@@ -12,6 +12,7 @@ from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.modcods import ModcodTable
 from passplan.inputs.mounts import Mount
+from passplan.inputs.policy import Policy
 from passplan.inputs.tables import Placed
 
 Radios = Mapping[str, DownlinkRadio | CommandRadio]
@@ -105,6 +106,14 @@ def check_matches(
             )
 
 
+def check_guarantees(policy: Policy, spacecraft: Mapping[str, Spacecraft], file: Path, findings: Findings) -> None:
+    """Missions that guarantees name."""
+    missions = {craft.mission for craft in spacecraft.values() if craft.mission}
+    for i, item in enumerate(policy.guarantee, start=1):
+        if spacecraft:
+            _known((item.mission,), missions, file, f"guarantee[{i}].mission", findings)
+
+
 def check_requests(
     requests: Iterable[tuple[Placed, Request]], spacecraft: Mapping[str, Spacecraft],
     antennas: Mapping[str, Antenna], sites: Mapping[str, Site], findings: Findings,
@@ -118,6 +127,10 @@ def check_requests(
             _known((item.antenna,), antennas, file, f"{place}.antenna", findings)
         if item.site is not None and sites:
             _known((item.site,), sites, file, f"{place}.site", findings)
+        able = [a for a in antennas.values() if item.antenna in (None, a.name) and item.site in (None, a.site)]
+        if item.service == "ranging" and able and not any(a.ranging for a in able):
+            remedy = "no antenna that may serve it offers ranging; set ranging = true where one does"
+            findings.problem(file, f"{place}.service", item.service, remedy)
 
 
 def _known(names: Iterable[str], known: Iterable[str], file: str | Path, where: str, findings: Findings) -> None:

@@ -6,6 +6,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
+from passplan.inputs.craft_limits import CraftLimits
 from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
 
@@ -87,7 +88,7 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(Record):
+class Spacecraft(CraftLimits):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
@@ -108,6 +109,8 @@ class Spacecraft(Record):
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     last_command_utc: Instant | None = None
+    least_contacts_per_day: Annotated[int, Field(ge=1, le=1_000)] | None = None
+    least_mb_per_day: Annotated[float, Field(gt=0.0, le=1e9)] | None = None
     manoeuvres_utc: Instants = ()
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] | None = None
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] | None = None

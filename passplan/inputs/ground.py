@@ -9,6 +9,7 @@ from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 from pydantic import AfterValidator, Field, model_validator
 
 from passplan.inputs.records import Curve, MaskPoints, Name, Names, Polarisations, Record, Sectors, check_angles
+from passplan.inputs.setup_times import SetupTime
 from passplan.inputs.transmit import check_transmit
 
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
@@ -120,13 +121,15 @@ class Antenna(Record):
 
     ``mask`` is a table of (azimuth, elevation) points in degrees, joined by straight lines and wrapped
     at north; where it is absent the mask is ``min_elevation_deg`` all round. With both, the higher of
-    the two holds. ``prepare_s`` is kept free before a contact and ``release_s`` after it.
+    the two holds. ``prepare_s`` is kept free before a contact and ``release_s`` after it;
+    ``setup`` states other times for some bands and services.
 
     ``mount`` names the mechanics and ``beamwidth_deg`` the half-power width of the narrowest beam; without
     them the antenna follows anything. Commands are sent only above the transmit mask (made as the other,
     and never below it), outside the sectors ``transmit_keep_out`` and further from the geosynchronous arc
     than ``transmit_arc_keep_out_deg``. Nothing is received nearer to the Sun than ``sun_keep_out_deg``.
-    ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted.
+    ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted. With ``ranging`` it measures
+    range in contacts that both send and receive.
     """
 
     name: Name
@@ -145,7 +148,9 @@ class Antenna(Record):
     wet_radome_loss_db: Annotated[float, Field(ge=0.0, le=20.0)] = 0.0
     prepare_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 60.0
     release_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 30.0
+    setup: tuple[SetupTime, ...] = ()
     price_per_minute: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    ranging: bool = False
 
     @model_validator(mode="after")
     def _consistent(self) -> Antenna:

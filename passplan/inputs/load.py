@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
 from pathlib import Path
 from typing import Any
@@ -15,7 +15,15 @@ from pydantic import TypeAdapter
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
-from passplan.inputs.crosscheck import check_fleet, check_ground, check_matches, check_mounts, check_requests
+from passplan.inputs.crosscheck import (
+    check_fleet,
+    check_ground,
+    check_guarantees,
+    check_matches,
+    check_mounts,
+    check_requests,
+)
+from passplan.inputs.decisions import read_decisions, read_published, with_last_commands
 from passplan.inputs.elements.resolve import ElementsError, resolve_orbits
 from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Radio, Spacecraft
@@ -73,6 +81,15 @@ def load_run(
     rules = _read_policy(settings, policy or {}, path, reader, findings)
     fleet = _read_fleet(beside(path, settings.fleet), reader, findings)
     ground = _read_ground(beside(path, settings.ground), reader, findings)
+    if settings.last_commands is not None:
+        crafts = with_last_commands(beside(path, settings.last_commands), fleet.spacecraft, reader, findings)
+        fleet = replace(fleet, spacecraft=crafts)
+    decisions = read_decisions([beside(path, name) for name in settings.decisions], fleet.spacecraft, ground.antennas,
+                               reader, findings)
+    published = () if settings.published is None else read_published(
+        beside(path, settings.published), fleet.spacecraft, ground.antennas, reader, findings)
+    named = beside(path, settings.policy) if isinstance(settings.policy, str) else path
+    check_guarantees(rules, fleet.spacecraft, named, findings)
     sites = _rained_on(ground.sites, settings, path, findings)
     limits: tuple[PfdLimit, ...] = builtin_pfd_limits()
     if settings.pfd_limits is not None:
@@ -103,6 +120,11 @@ def load_run(
             for r in requests.values()
             if datetime64(r.latest_utc) > start_utc and datetime64(r.earliest_utc) < end_utc
         ),
+        # Decisions and the published plan, too, may reach beyond this horizon.
+        decisions=tuple(d for d in decisions if d.start_utc is None or d.end_utc is None or (
+            datetime64(d.end_utc) > start_utc and datetime64(d.start_utc) < end_utc)),
+        published=tuple(
+            p for p in published if datetime64(p.end_utc) > start_utc and datetime64(p.start_utc) < end_utc),
         orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
         pfd_limits=limits, warnings=tuple(findings.warnings), files=reader.files,
     )

@@ -30,6 +30,21 @@ class Timing(Record):
     ephemeris_km: Annotated[float, Field(ge=0.0, le=1_000.0)] = 0.1
 
 
+class Guarantee(Record):
+    """What the spacecraft of one mission get together, in every span of ``days`` days of UTC within the horizon."""
+
+    mission: Annotated[str, Field(min_length=1)]
+    contacts: Annotated[int, Field(ge=1, le=100_000)] | None = None
+    mb: Annotated[float, Field(gt=0.0, le=1e12)] | None = None
+    days: Annotated[int, Field(ge=1, le=31)] = 1
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Guarantee:
+        if self.contacts is None and self.mb is None:
+            raise ValueError("a guarantee needs contacts, mb or both; add one")
+        return self
+
+
 class Policy(Record):
     """Defaults are meant to be safe; a config states only what differs.
 
@@ -47,7 +62,10 @@ class Policy(Record):
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     command_min_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     spill_cost_per_mb: Annotated[float, Field(ge=0.0, le=1e6)] = 0.1
+    left_worth_share: Annotated[float, Field(ge=0.0, le=1.0)] = 0.0
     worth_per_money: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    guarantee: tuple[Guarantee, ...] = ()
+    freeze_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 3.0
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 14.0
     when_elements_fail: Literal["leave_out", "stop"] = "leave_out"
@@ -59,6 +77,7 @@ class Policy(Record):
     options_per_window: Annotated[int, Field(ge=1, le=200)] = 12
     gap: Annotated[float, Field(ge=0.0, le=1.0)] = 0.005
     time_limit_s: Annotated[float, Field(gt=0.0, le=86_400.0)] = 60.0
+    search_rounds: Annotated[int, Field(ge=0, le=1_000_000)] = 1_000_000
     threads: Annotated[int, Field(ge=1, le=256)] = 2
     seed: Annotated[int, Field(ge=0, le=2_147_483_647)] = 1
 

@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from passplan.inputs.calendar_records import Closure, Request
+from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
@@ -50,8 +51,17 @@ class Run:
     elements: pd.DataFrame
     pfd_limits: tuple[PfdLimit, ...] = field(default_factory=builtin_pfd_limits)
     mounts: Mapping[str, Mount] = field(default_factory=dict)
+    decisions: tuple[Decision, ...] = ()
+    published: tuple[Published, ...] = ()
     warnings: tuple[str, ...] = ()
     files: tuple[ReadFile, ...] = field(default=(), repr=False)
+
+    @property
+    def frozen_until_utc(self) -> np.datetime64 | None:
+        """Published contacts that start before this instant are frozen; None where none are."""
+        if self.policy.freeze_h is None or not self.published:
+            return None
+        return self.start_utc + np.timedelta64(round(self.policy.freeze_h * 3600e3), "ms")
 
     def mount_of(self, antenna: str) -> Mount | None:
         """The mechanics of an antenna, None where they do not limit it."""

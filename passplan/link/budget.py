@@ -134,16 +134,17 @@ def dish_diameter_m(frequency_mhz: float, gain_dbi: float, efficiency: float) ->
     return float(wavelength_m / np.pi * np.sqrt(10.0 ** (gain_dbi / 10.0) / efficiency))
 
 
-def dish_gain_dbi(off_axis_deg: ArrayLike, peak_dbi: float, beamwidth_deg: float) -> Floats:
+def dish_gain_dbi(off_axis_deg: ArrayLike, peak_dbi: ArrayLike, beamwidth_deg: ArrayLike) -> Floats:
     """Gain of a dish [dBi] at an angle off its axis [deg].
 
     The higher of a parabolic main beam, G - 12 (angle / beamwidth)^2 (common practice), and the side-lobe
     envelope of ITU-R S.465-6: 32 - 25 log10(angle) from 1 to 48 deg, -10 beyond; 32 within 1 deg (own choice:
     the envelope is not stated there), and never more than the peak.
     """
-    angle = np.abs(np.asarray(off_axis_deg, np.float64))
+    angle, peak = np.abs(np.asarray(off_axis_deg, np.float64)), np.asarray(peak_dbi, np.float64)
+    width = np.asarray(beamwidth_deg, np.float64)
     envelope = np.where(angle < 48.0, 32.0 - 25.0 * np.log10(np.maximum(angle, 1.0)), -10.0)
-    return np.asarray(np.minimum(peak_dbi, np.maximum(peak_dbi - 12.0 * (angle / beamwidth_deg) ** 2, envelope)))
+    return np.asarray(np.minimum(peak, np.maximum(peak - 12.0 * (angle / width) ** 2, envelope)))
 
 
 def off_nadir_deg(elevation_deg: ArrayLike, range_km: ArrayLike, latitude_deg: float, height_m: float) -> Floats:

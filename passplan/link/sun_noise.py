@@ -46,13 +46,18 @@ def closest_deg(away: Floats) -> Floats:
     """
     nearest = np.linalg.norm(away, axis=1)
     if len(away) > 1:
-        step = np.diff(away, axis=0)
-        length2 = np.maximum(np.einsum("ij,ij->i", step, step), 1e-30)
-        share = np.clip(-np.einsum("ij,ij->i", away[:-1], step) / length2, 0.0, 1.0)
-        between = np.linalg.norm(away[:-1] + share[:, None] * step, axis=1)
+        between = way_between(away[:-1], away[1:])
         nearest[:-1] = np.minimum(nearest[:-1], between)
         nearest[1:] = np.minimum(nearest[1:], between)
     return np.asarray(np.degrees(2.0 * np.arcsin(np.clip(nearest / 2.0, 0.0, 1.0))))
+
+
+def way_between(before: Floats, after: Floats) -> Floats:
+    """Least length of vectors (n, 3) on their straight way from ``before`` to ``after``."""
+    step = after - before
+    length2 = np.maximum(np.einsum("ij,ij->i", step, step), 1e-30)
+    share = np.clip(-np.einsum("ij,ij->i", before, step) / length2, 0.0, 1.0)
+    return np.asarray(np.linalg.norm(before + share[:, None] * step, axis=1))
 
 
 def sun_loss_db(

@@ -10,15 +10,25 @@ from contextlib import contextmanager
 class Clock:
     """Counts down from ``limit_s`` and notes how long each stage took. It can be stopped by hand before that."""
 
-    def __init__(self, limit_s: float) -> None:
+    def __init__(self, limit_s: float, whole: Clock | None = None) -> None:
         self._started = time.monotonic()
         self._limit_s = limit_s
-        self.seconds: dict[str, float] = {}
-        self.stopped = False
+        self._whole = whole
+        self.seconds: dict[str, float] = {} if whole is None else whole.seconds
+        self._stopped = False
 
     def stop(self) -> None:
         """Time is up from now on. Safe to call from a signal handler or another thread."""
-        self.stopped = True
+        self._stopped = True
+
+    @property
+    def stopped(self) -> bool:
+        """Whether it was stopped by hand, it or the clock that it is a part of."""
+        return self._stopped or (self._whole is not None and self._whole.stopped)
+
+    def part(self, limit_s: float) -> Clock:
+        """A clock for a part of the work, of at most ``limit_s``, that is stopped with this one."""
+        return Clock(min(limit_s, self.left_s()), self)
 
     def elapsed_s(self) -> float:
         """Seconds since the clock was made."""

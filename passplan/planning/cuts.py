@@ -22,29 +22,33 @@ class Cuts:
     must_end: set[int] = field(default_factory=set)
 
 
-def neighbour_cuts(windows: Windows, prepare_s: Sequence[int], release_s: Sequence[int]) -> list[Cuts]:
+def neighbour_cuts(windows: Windows, setup_s: Sequence[tuple[int, int]]) -> list[Cuts]:
     """For each window, the instants at which it makes way for another of its antenna or spacecraft.
 
     A contact ends in time for the other window to be used whole, or starts once it has been; on an antenna
-    with the time to release and to prepare between them.
+    with the time to release and to prepare between them. ``setup_s`` are each window's seconds to prepare and
+    to release.
     """
     cuts = [Cuts() for _ in range(len(windows))]
     starts, ends = windows.start_s.tolist(), windows.end_s.tolist()
-    setup_s = [a + b for a, b in zip(prepare_s, release_s, strict=True)]
-    for owner, gaps_s in ((windows.antenna.tolist(), setup_s), (windows.spacecraft.tolist(), None)):
+    none = [(0, 0)] * len(windows)
+    longest_s = max((a for a, _ in setup_s), default=0) + max((b for _, b in setup_s), default=0)
+    for owner, beside_s, most_s in (
+            (windows.antenna.tolist(), setup_s, longest_s), (windows.spacecraft.tolist(), none, 0)):
         groups: dict[int, list[int]] = {}
         for w, k in enumerate(owner):
             groups.setdefault(k, []).append(w)
-        for k, members in groups.items():
-            gap_s = 0 if gaps_s is None else gaps_s[k]
+        for members in groups.values():
             members.sort(key=lambda w: (starts[w], ends[w]))
             for n, w in enumerate(members):
                 for v in members[n + 1:]:
-                    if starts[v] >= ends[w] + gap_s:
+                    if starts[v] >= ends[w] + most_s:
                         break
+                    if starts[v] - beside_s[v][0] >= ends[w] + beside_s[w][1]:
+                        continue
                     for a, b in ((w, v), (v, w)):
-                        cuts[a].ends.add(starts[b] - gap_s)
-                        cuts[a].starts.add(ends[b] + gap_s)
+                        cuts[a].ends.add(starts[b] - beside_s[b][0] - beside_s[a][1])
+                        cuts[a].starts.add(ends[b] + beside_s[b][1] + beside_s[a][0])
     return cuts
 
 

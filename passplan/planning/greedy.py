@@ -17,7 +17,7 @@ from passplan.planning.clock import Clock
 from passplan.planning.maps import StorageMaps, storage_maps
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.problem import Problem
-from passplan.planning.rules.terms import Recurrence, Terms, Wanted
+from passplan.planning.rules.terms import AtLeast, Recurrence, Terms, Wanted
 from passplan.planning.search.fill import fill_up
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays, load_plan, unload_plan
 
@@ -30,15 +30,17 @@ def plan_greedily(
 
     With ``arrays`` most of the work is done by compiled code, which large problems need.
     """
-    if arrays is not None and not terms.wanted and not terms.recurrences:
+    if arrays is not None and not (terms.wanted or terms.recurrences or terms.guarantees):
         return _filled(arrays, begin, clock)
     builder = _Builder(problem, terms, maps or storage_maps(problem))
     for o in begin:
         builder.take(int(o))
-    for want in terms.wanted:
+    for want in sorted(terms.wanted, key=lambda want: -want.points):
         builder.meet(want)
     for need in terms.recurrences:
         builder.cover(need)
+    for promise in terms.guarantees:
+        builder.reach(promise)
     if arrays is not None:
         return _filled(arrays, builder.chosen, clock)
     builder.fill(clock)
@@ -84,6 +86,20 @@ class _Builder:
                 if not later:
                     return
                 reached = min(later)
+
+    def reach(self, promise: AtLeast) -> None:
+        """Take what adds most to what is promised, until it is reached or nothing fits any more."""
+        amounts = dict(zip(promise.options.tolist(), promise.amounts.tolist(), strict=True))
+        missing = promise.need - sum(amount for o, amount in amounts.items() if o in self.chosen)
+        while missing > 0.0:
+            fit = [(min(amount, missing), o) for o, amount in amounts.items()
+                   if amount > 0.0 and o not in self.chosen and self.occupancy.fits(o)]
+            if not fit:
+                return
+            most = max(amount for amount, _ in fit)
+            best = max((self._gain(o), -o) for amount, o in fit if amount >= most)
+            self.take(-best[1])
+            missing -= amounts[-best[1]]
 
     def fill(self, clock: Clock) -> None:
         """Add options in the order of what they add now, until none adds anything."""
@@ -147,5 +163,7 @@ def _value(problem: Problem, maps: StorageMaps, craft: int, mine: list[int]) -> 
         lost += max(0.0, fill - capacity)
         fill, sent_now, lost_now = maps.apply(o, min(fill, capacity))
         sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(options.cost[o]), int(options.end_s[o])
-    lost += max(0.0, fill + generation * (problem.horizon_s - clock) - capacity)
-    return float(fleet.weight[craft]) * sent - spill * lost - money * cost
+    fill += generation * (problem.horizon_s - clock)
+    lost += max(0.0, fill - capacity)
+    worth = sent + problem.left_worth_share * min(fill, capacity)
+    return float(fleet.weight[craft]) * worth - spill * lost - money * cost

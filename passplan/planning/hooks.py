@@ -13,7 +13,7 @@ import pandas as pd
 
 from passplan.inputs.run import Run
 from passplan.link.choice import CommandChoice, DownlinkChoice
-from passplan.planning.problem import Problem
+from passplan.planning.problem import Problem, Service
 
 
 @dataclass(frozen=True)
@@ -26,6 +26,15 @@ class Candidate:
     downlink: DownlinkChoice | None
     command: CommandChoice | None
     cost: float
+
+    @property
+    def service(self) -> Service:
+        """What the contact offers; raises ValueError where that is nothing."""
+        if self.downlink is None and self.command is None:
+            raise ValueError("a candidate offers no service")
+        if self.downlink is None:
+            return "command"
+        return "downlink" if self.command is None else "both"
 
 
 @dataclass(frozen=True)
@@ -57,9 +66,13 @@ class Wish:
 
 @dataclass(frozen=True, eq=False)
 class Draft:
-    """A run on its way to a problem: ``problem`` has its options but no needs yet, ``candidates`` in their order."""
+    """A run on its way to a problem: ``problem`` has its options but no needs yet, ``candidates`` in their order.
+
+    ``blocks`` is the time that was closed to them.
+    """
 
     run: Run
     windows: pd.DataFrame
     problem: Problem
     candidates: tuple[Candidate, ...]
+    blocks: tuple[Block, ...] = ()

@@ -85,7 +85,8 @@ def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> Plan
         upper[removal.options] = 0.0
     if not storage:
         serving = np.zeros(count, dtype=bool)
-        for served in [*(w.options for w in terms.wanted), *(r.options for r in terms.recurrences)]:
+        for served in [*(w.options for w in terms.wanted), *(r.options for r in terms.recurrences),
+                       *(g.options for g in terms.guarantees)]:
             serving[served] = True
         upper[~serving] = 0.0
     block = _Blocks()
@@ -103,6 +104,11 @@ def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> Plan
         block.add_entries(row, slack, np.ones(1))
     for need in terms.recurrences:
         _add_recurrence(block, need)
+    for promise in terms.guarantees:
+        slack = block.add_columns(upper=np.ones(1), points=np.full(1, promise.points))
+        row = block.add_rows(lower=np.ones(1))
+        block.add_entries(np.full(len(promise.options), row[0]), promise.options, promise.amounts / promise.need)
+        block.add_entries(row, slack, np.ones(1))
     return block.finish()
 
 
@@ -138,7 +144,9 @@ def _add_storage(block: _Blocks, problem: Problem, craft: int) -> None:
     made = generation * np.diff(instants) / unit_mb
     steps = len(made)
     weight = float(fleet.weight[craft])
-    fill = block.add_columns(upper=np.full(steps, capacity / unit_mb))
+    left_worth = np.zeros(steps)
+    left_worth[-1] = problem.left_worth_share * weight * unit_mb
+    fill = block.add_columns(upper=np.full(steps, capacity / unit_mb), value=left_worth)
     spill_worth = np.full(steps, -problem.spill_cost_per_mb * unit_mb)
     lost = block.add_columns(upper=np.full(steps, _INFINITY), value=spill_worth)
     balance_rhs = made.copy()

@@ -16,6 +16,7 @@ from passplan.planning.cuts import Cuts, neighbour_cuts, spread
 from passplan.planning.hooks import Block, Candidate, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
+from passplan.planning.setup import SetupTimes
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,18 +33,20 @@ class OptionSet:
 
 
 class BlockedTime:
-    """The blocks of every pair of spacecraft and antenna, with time to release before and to prepare after."""
+    """The blocks of every pair of spacecraft and antenna, with time to release before and to prepare after.
 
-    def __init__(self, blocks: Sequence[Block], antennas: Antennas) -> None:
+    Where that depends on the service the longest holds, as a block is there before it is known who comes beside it.
+    """
+
+    def __init__(self, blocks: Sequence[Block], setup: SetupTimes) -> None:
         self._of: dict[tuple[str | None, str | None], list[Block]] = {}
         for block in blocks:
             self._of.setdefault((block.spacecraft, block.antenna), []).append(block)
-        pairs = zip(antennas.prepare_s.tolist(), antennas.release_s.tolist(), strict=True)
-        self._setup_s = dict(zip(antennas.names, pairs, strict=True))
+        self._setup = setup
 
     def between(self, craft: str, antenna: str, low_s: int, high_s: int) -> list[tuple[int, int, Block]]:
         """Blocks that touch [low_s, high_s), as (start, end, block) with the antenna's setup, in time order."""
-        prepare_s, release_s = self._setup_s[antenna]
+        prepare_s, release_s = self._setup.longest(craft, antenna)
         found = []
         for key in ((craft, antenna), (craft, None), (None, antenna), (None, None)):
             for block in self._of.get(key, ()):
@@ -76,9 +79,12 @@ def find_options(
     blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (),
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
-    blocked = BlockedTime(blocks, antennas)
+    setup = SetupTimes(run)
+    blocked = BlockedTime(blocks, setup)
     builder = _Builder(run, windows, fleet, antennas, blocked, wishes)
-    cuts = neighbour_cuts(windows, antennas.prepare_s.tolist(), antennas.release_s.tolist())
+    cuts = neighbour_cuts(windows, [
+        setup.longest(fleet.names[craft], antennas.names[antenna])
+        for craft, antenna in zip(windows.spacecraft.tolist(), windows.antenna.tolist(), strict=True)])
     candidates: list[Candidate] = []
     excluded: dict[int, tuple[str, str]] = {}
     for w, link in enumerate(links):
@@ -86,12 +92,14 @@ def find_options(
         candidates += found
         if not found:
             excluded[w] = reason
+    setups = [setup.of(antennas.names[int(windows.antenna[c.window])], c) for c in candidates]
     rows = [{
         "window": c.window, "spacecraft": windows.spacecraft[c.window], "antenna": windows.antenna[c.window],
         "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
+        "prepare_s": prepare_s, "release_s": release_s,
         "pieces": [] if c.downlink is None else [
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
-    } for c in candidates]
+    } for c, (prepare_s, release_s) in zip(candidates, setups, strict=True)]
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
 
@@ -122,7 +130,10 @@ class _Builder:
                 reason = ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
             return [], reason or ("no_margin", "the margin does not hold long enough after acquisition")
         useful = self._undominated(useful, craft)
-        return sorted(useful[: self.policy.options_per_window], key=lambda c: (c.start_s, c.end_s)), ("", "")
+        asked = self._asked_of(w, pieces)
+        most = self.policy.options_per_window
+        kept = [c for k, c in enumerate(useful) if k < most or (c.start_s, c.end_s) in asked]
+        return sorted(kept, key=lambda c: (c.start_s, c.end_s)), ("", "")
 
     def _unusable(
         self, w: int, link: WindowLink, pieces: Sequence[tuple[int, int]], blocks: Sequence[Block],
@@ -143,19 +154,15 @@ class _Builder:
 
     def _of_piece(self, w: int, link: WindowLink, low: int, high: int, cuts: Cuts) -> Iterator[Candidate]:
         """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""
-        craft, antenna = self._names(w)
         most = self.policy.options_per_window
-        must_start, must_end = {low}, {high}
+        asked = self._asked_of(w, [(low, high)])
+        must_start, must_end = {low} | {a for a, _ in asked}, {high} | {b for _, b in asked}
         whole = self._candidate(w, link, low, high)
         if whole is not None and whole.downlink is not None:
             # Time in which nothing can be sent need not be held.
             radio = self.run.radios[whole.downlink.radio]
             must_start.add(max(low, math.floor(whole.downlink.send_start_s - radio.acquisition_s)))
             must_end.add(min(high, whole.downlink.send_end_s))
-        for wish in self.asked.get(craft, ()):
-            if wish.antenna in (None, antenna):
-                must_start.add(min(max(low, wish.start_s), high))
-                must_end.add(max(min(high, wish.end_s), low))
         grid_s = self.policy.cut_grid_s
         grid = range(-(-low // grid_s) * grid_s, high, grid_s) if grid_s else range(0)
         inner = math.isqrt(most - 1) + 1 if most > 1 else 0
@@ -167,6 +174,13 @@ class _Builder:
             candidate = whole if (start_s, end_s) == (low, high) else self._candidate(w, link, start_s, end_s)
             if candidate is not None:
                 yield candidate
+
+    def _asked_of(self, w: int, pieces: Sequence[tuple[int, int]]) -> set[tuple[int, int]]:
+        """The contacts that somebody asked for, as far as they lie in free pieces of a window."""
+        craft, antenna = self._names(w)
+        spans = {(max(low, wish.start_s), min(high, wish.end_s)) for wish in self.asked.get(craft, ())
+                 if wish.antenna in (None, antenna) for low, high in pieces}
+        return {(a, b) for a, b in spans if b - a >= self.shortest_s}
 
     def _candidate(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
         downlink = link.downlink.best(start_s, end_s) if link.downlink is not None else None

@@ -12,13 +12,13 @@ import pandas as pd
 from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
-from passplan.link.interference import InterferencePair
+from passplan.link.conflicts import Interference, InterferenceCrowd, InterferencePair
 from passplan.planning.clock import Clock
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
-from passplan.planning.problem import Antennas, CommandNeed, Conflict, Fleet, Limits, Problem, RequestNeed
+from passplan.planning.problem import Antennas, CommandNeed, Conflict, Crowd, Fleet, Limits, Problem, RequestNeed
 from passplan.planning.result import PlanResult
 from passplan.planning.rules import BLOCKS, NEEDS, WISHES, all_terms
 from passplan.planning.tables import contacts_table, segments_table
@@ -41,20 +41,20 @@ class Plan:
 
 def make_plan(
     run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], progress: Report | None = None,
-    pairs: Sequence[InterferencePair] = (),
+    interference: Interference | None = None,
 ) -> Plan:
     """Plan the contacts of a run.
 
     ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. Spacecraft
     without an orbit take no part. The policy's time limit covers everything from here to the chosen
-    contacts. ``pairs`` are contacts that would disturb each other. ``progress(stage, done_s, total_s)`` is
+    contacts. ``interference`` says who must not send at once. ``progress(stage, done_s, total_s)`` is
     called as value, bound and gap move.
     """
     policy = run.policy
     clock = Clock(policy.time_limit_s)
     with clock.stage("options"):
-        problem, option_set = build_problem(run, windows, links, pairs)
-    limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed)
+        problem, option_set = build_problem(run, windows, links, interference)
+    limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed, policy.search_rounds)
     result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
     terms = all_terms(problem)
     contacts = contacts_table(run, windows, problem, option_set, terms, result)
@@ -75,7 +75,7 @@ def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress |
 
 
 def build_problem(
-    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], pairs: Sequence[InterferencePair] = (),
+    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], interference: Interference | None = None,
 ) -> tuple[Problem, OptionSet]:
     """The problem of a run, and its options with the link choices behind them."""
     craft = [c for name, c in run.spacecraft.items() if name in run.orbits]
@@ -84,10 +84,8 @@ def build_problem(
         generation_mb_per_s=np.array([c.generation_mb_per_s for c in craft], dtype=float),
         capacity_mb=np.array([c.storage_mb for c in craft], dtype=float),
         start_fill_mb=np.array([c.start_fill_mb for c in craft], dtype=float))
-    antennas = Antennas(
-        names=tuple(run.antennas),
-        prepare_s=np.array([math.ceil(a.prepare_s) for a in run.antennas.values()], dtype=np.int64),
-        release_s=np.array([math.ceil(a.release_s) for a in run.antennas.values()], dtype=np.int64))
+    antennas = Antennas(names=tuple(run.antennas))
+    disturbing = interference or Interference()
     arrays = window_arrays(run, windows, fleet, antennas)
     blocks = [block for find in BLOCKS for block in find(run)]
     wishes = [wish for find in WISHES for wish in find(run)]
@@ -95,10 +93,12 @@ def build_problem(
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),
-        commands=_command_needs(run, fleet), conflicts=tuple(_conflict(fleet, antennas, pair) for pair in pairs),
-        spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
+        commands=_command_needs(run, fleet),
+        conflicts=tuple(_conflict(fleet, antennas, pair) for pair in disturbing.pairs),
+        crowds=tuple(_crowd(fleet, antennas, crowd) for crowd in disturbing.crowds),
+        spill_cost_per_mb=run.policy.spill_cost_per_mb, left_worth_share=run.policy.left_worth_share, worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
-    draft = Draft(run, windows, problem, option_set.candidates)
+    draft = Draft(run, windows, problem, option_set.candidates, tuple(blocks))
     return replace(problem, needs=tuple(need for find in NEEDS for need in find(draft))), option_set
 
 
@@ -109,15 +109,23 @@ def _conflict(fleet: Fleet, antennas: Antennas, pair: InterferencePair) -> Confl
         pair.start_s, pair.end_s)
 
 
+def _crowd(fleet: Fleet, antennas: Antennas, crowd: InterferenceCrowd) -> Crowd:
+    return Crowd(
+        f"{crowd.victim} on {crowd.antenna} beside {', '.join(crowd.interferers)}, C/I of all of them",
+        fleet.names.index(crowd.victim), antennas.names.index(crowd.antenna),
+        tuple(fleet.names.index(name) for name in crowd.interferers), crowd.shares, crowd.start_s, crowd.end_s)
+
+
 def _request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:
     antennas = frozenset(
         k for k, (name, antenna) in enumerate(run.antennas.items())
-        if request.antenna in (None, name) and request.site in (None, antenna.site))
+        if request.antenna in (None, name) and request.site in (None, antenna.site)
+        and (antenna.ranging or request.service != "ranging"))
     craft = fleet.names.index(request.spacecraft) if request.spacecraft in fleet.names else -1
     return RequestNeed(
-        request.name, request.spacecraft, craft, antennas, request.service,
+        request.name, request.spacecraft, craft, antennas, "both" if request.service == "ranging" else request.service,
         math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc)),
-        math.ceil(request.min_duration_s))
+        math.ceil(request.min_duration_s), request.fixed, request.points)
 
 
 def _command_needs(run: Run, fleet: Fleet) -> tuple[CommandNeed, ...]:

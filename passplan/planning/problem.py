@@ -39,14 +39,9 @@ class Fleet:
 
 @dataclass(frozen=True, eq=False)
 class Antennas:
-    """Antennas, shape (a,): seconds kept free before (``prepare_s``) and after (``release_s``) a contact."""
+    """Antennas, shape (a,)."""
 
     names: tuple[str, ...]
-    prepare_s: Integers
-    release_s: Integers
-
-    def __post_init__(self) -> None:
-        _freeze(self)
 
     def __len__(self) -> int:
         return len(self.names)
@@ -75,7 +70,8 @@ class Options:
 
     Option o may send in the pieces ``piece_offset[o] : piece_offset[o + 1]``, in time order, each at one
     rate [MB/s] (``piece_offset`` has m + 1 entries). ``downlink`` and ``command`` say which services the
-    contact offers; ``cost`` is money.
+    contact offers; ``cost`` is money. The antenna is held from ``prepare_s`` before the start to ``release_s``
+    after the end.
     """
 
     window: Integers
@@ -83,6 +79,8 @@ class Options:
     antenna: Integers
     start_s: Integers
     end_s: Integers
+    prepare_s: Integers
+    release_s: Integers
     downlink: Flags
     command: Flags
     cost: Floats
@@ -120,7 +118,8 @@ class Options:
 class RequestNeed:
     """A requested contact: any option of the spacecraft on one of ``antennas`` that fits span and length.
 
-    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall.
+    ``spacecraft`` is -1 for one that takes no part in the run: the request is then a shortfall. A ``fixed`` one
+    is met by a contact from ``earliest_s`` to ``latest_s`` only. ``points`` is what missing it weighs.
     """
 
     name: str
@@ -131,6 +130,8 @@ class RequestNeed:
     earliest_s: int
     latest_s: int
     min_duration_s: int
+    fixed: bool = False
+    points: float = 1.0
 
 
 @dataclass(frozen=True)
@@ -154,11 +155,25 @@ class Conflict:
     end_s: int
 
 
+@dataclass(frozen=True)
+class Crowd:
+    """From ``start_s`` to ``end_s``, while the victim is heard on its antenna, the ``shares`` of those of the
+    ``interferers`` that send must not add up to more than 1."""
+
+    name: str
+    victim: int
+    antenna: int
+    interferers: tuple[int, ...]
+    shares: tuple[float, ...]
+    start_s: int
+    end_s: int
+
+
 @dataclass(frozen=True, eq=False)
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
-    The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
+    The objective is the sum over spacecraft of weight x (delivered MB + ``left_worth_share`` x MB left at the end), less ``spill_cost_per_mb`` x lost
     MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``). ``too_tight`` (k, 2)
     are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
     records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.
@@ -172,6 +187,7 @@ class Problem:
     requests: tuple[RequestNeed, ...] = ()
     commands: tuple[CommandNeed, ...] = ()
     conflicts: tuple[Conflict, ...] = ()
+    crowds: tuple[Crowd, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
     left_worth_share: float = 0.0
@@ -206,8 +222,8 @@ class Limits:
 def build_options(rows: Sequence[dict[str, Any]]) -> Options:
     """Options from one mapping each, with ``pieces`` a list of (start_s, end_s, rate_mb_per_s).
 
-    Meant for tests and small jobs; ``downlink`` defaults to whether there are pieces, ``command`` to False
-    and ``cost`` to 0.
+    ``downlink`` defaults to whether there are pieces, ``command`` to False, and ``cost``, ``prepare_s`` and
+    ``release_s`` to 0.
     """
     pieces = [piece for row in rows for piece in row.get("pieces", ())]
     columns = np.array(pieces, dtype=float).reshape(-1, 3)
@@ -215,6 +231,8 @@ def build_options(rows: Sequence[dict[str, Any]]) -> Options:
              for name in ("window", "spacecraft", "antenna", "start_s", "end_s")}
     return Options(
         **whole,
+        prepare_s=np.array([row.get("prepare_s", 0) for row in rows], dtype=np.int64),
+        release_s=np.array([row.get("release_s", 0) for row in rows], dtype=np.int64),
         downlink=np.array([row.get("downlink", bool(row.get("pieces"))) for row in rows], dtype=bool),
         command=np.array([row.get("command", False) for row in rows], dtype=bool),
         cost=np.array([row.get("cost", 0.0) for row in rows], dtype=float),

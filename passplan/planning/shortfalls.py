@@ -5,14 +5,14 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass
 
-from passplan.planning.rules.terms import Recurrence, Terms
+from passplan.planning.rules.terms import AtLeast, Recurrence, Terms
 
 
 @dataclass(frozen=True)
 class Shortfall:
     """A requirement that is missed. ``points`` is its part of tier 1.
 
-    ``kind`` is ``request`` or ``command``; ``name`` is the request's name or the spacecraft's. For a command
+    ``kind`` is that of the wanted contact or ``command``; ``name`` is the request's or the spacecraft's. For a command
     interval ``spans_s`` are the half-open spans of time in which the last command contact is too old.
     ``possible`` says whether some single option could have helped.
     """
@@ -26,6 +26,16 @@ class Shortfall:
     spans_s: tuple[tuple[int, int], ...] = ()
 
 
+# Amounts are sums of decimals; a need reached to within this part of it is met.
+_ROUNDING = 1e-9
+_WANTED = {
+    "request": "Request {name} for {owner} is not met",
+    "pin": "The pinned contact, {name}, is not in the plan",
+    "frozen": "The frozen contact, {name}, is not in the plan as it was published",
+    "emergency": "The emergency contact, {name}, is not in the plan",
+}
+
+
 def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...]:
     """Every requirement in ``terms`` that the chosen options do not meet, in the order of the terms."""
     picked = {int(o) for o in chosen}
@@ -36,8 +46,8 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
                 "no window of the spacecraft offers a contact that fits its span, antenna, service and length"
                 if len(want.options) == 0 else "every contact that would fit it collides with other requirements")
             found.append(Shortfall(
-                "request", want.name, want.owner, want.points,
-                f"Request {want.name} for {want.owner} is not met: {why}.", len(want.options) > 0))
+                want.kind, want.name, want.owner, want.points,
+                f"{_WANTED[want.kind].format(name=want.name, owner=want.owner)}: {why}.", len(want.options) > 0))
     for need in terms.recurrences:
         spans = overdue_spans(need, picked)
         if spans:
@@ -50,7 +60,26 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
                 "command", need.name, need.name, seconds / need.every_s,
                 f"Spacecraft {need.name} is without a command contact for longer than {need.every_s / 3600:g} h "
                 f"during {seconds / 3600:.2f} h of the horizon: {why}.", avoidable, spans))
+    for promise in terms.guarantees:
+        missing = missing_amount(promise, picked)
+        if missing > 0.0:
+            most = promise.need - missing_amount(promise, set(promise.options.tolist()))
+            got = promise.need - missing
+            why = ("what could add more collides with other requirements" if most > got
+                   else "the windows offer no more")
+            found.append(Shortfall(
+                promise.kind, promise.name, "", promise.points * missing / promise.need,
+                f"The {promise.name}: the plan has {got:.6g} of the {promise.need:.6g} that are due: {why}.",
+                most > got))
     return tuple(found)
+
+
+def missing_amount(promise: AtLeast, picked: set[int]) -> float:
+    """What the chosen options lack of a guarantee, in its own unit; nothing where it is a matter of rounding."""
+    got = sum(amount for o, amount in zip(promise.options.tolist(), promise.amounts.tolist(), strict=True)
+              if o in picked)
+    missing = promise.need - got
+    return missing if missing > _ROUNDING * promise.need else 0.0
 
 
 def overdue_spans(need: Recurrence, picked: set[int]) -> tuple[tuple[int, int], ...]:
@@ -74,6 +103,8 @@ def least_points(terms: Terms) -> float:
     points = sum(want.points for want in terms.wanted if len(want.options) == 0)
     for need in terms.recurrences:
         points += sum((b - a) / need.every_s for a, b in overdue_spans(need, set(need.options.tolist())))
+    for promise in terms.guarantees:
+        points += promise.points * missing_amount(promise, set(promise.options.tolist())) / promise.need
     return points
 
 

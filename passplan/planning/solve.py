@@ -7,13 +7,14 @@ instance tried, and closed less of the gap; it stands in where HiGHS fails.
 from __future__ import annotations
 
 import datetime as dt
-import time
+import threading
 from dataclasses import dataclass
 
 import numpy as np
 from ortools.math_opt import model_pb2
 from ortools.math_opt.python import mathopt
 
+from passplan.planning.certificate import ModelCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.model import PlanModel, build_model
 from passplan.planning.problem import Limits, Problem
@@ -21,6 +22,8 @@ from passplan.planning.rules.terms import Terms
 
 # Points are sums of whole requests and seconds over hours; closer than this they are the same.
 _POINTS_TOLERANCE = 1e-7
+# How often the clock is looked at while a solver runs.
+_LOOK_S = 0.05
 _SOLVERS = (mathopt.SolverType.HIGHS, mathopt.SolverType.GSCIP)
 
 
@@ -34,27 +37,29 @@ class Solved:
 
     chosen: tuple[int, ...] | None
     bound: float
+    certificate: ModelCertificate | None = None
 
 
-def least_shortfall(problem: Problem, terms: Terms, limits: Limits, seconds: float) -> Solved:
+def least_shortfall(problem: Problem, terms: Terms, limits: Limits, clock: Clock) -> Solved:
     """Tier 1: options that leave the fewest points of shortfall; they need not bring anything down."""
     model = build_model(problem, terms, storage=False)
-    answer = _solve(model.proto(tier=1), model, limits, seconds, 0.0)
+    answer = _solve(model.proto(tier=1), model, limits, clock, 0.0)
     return Solved(answer.chosen, -float("inf") if answer.bound is None else answer.bound)
 
 
 def most_value(
-    problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float, seconds: float,
+    problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float,
 ) -> Solved:
     """Tier 2: the most valuable options among those with at most ``points`` of shortfall."""
-    stop_s = clock.elapsed_s() + seconds
     with clock.stage("model"):
         model = build_model(problem, terms)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
         proto = model.proto(tier=2, points_limit=limit)
     with clock.stage("solve"):
-        answer = _solve(proto, model, limits, stop_s - clock.elapsed_s(), limits.gap)
-    return Solved(answer.chosen, float("inf") if answer.bound is None else answer.bound)
+        answer = _solve(proto, model, limits, clock, limits.gap)
+    if answer.bound is None:
+        return Solved(answer.chosen, float("inf"))
+    return Solved(answer.chosen, answer.bound, ModelCertificate(model, limit, answer.bound))
 
 
 @dataclass(frozen=True)
@@ -64,18 +69,30 @@ class _Answer:
     bound: float | None
 
 
-def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, seconds: float, gap: float) -> _Answer:
-    stop_s = time.perf_counter() + seconds
+def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, clock: Clock, gap: float) -> _Answer:
     for solver in _SOLVERS:
-        left_s = max(stop_s - time.perf_counter(), 0.01)
         parameters = mathopt.SolveParameters(
-            time_limit=dt.timedelta(seconds=left_s), random_seed=limits.seed, relative_gap_tolerance=gap)
-        try:
-            result = mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters)
-        except Exception:  # the errors of the solvers share no type
-            # HiGHS gives up on a sound model now and then (kError); the next one takes over.
-            continue
-        return _answer(result, model)
+            time_limit=dt.timedelta(seconds=max(clock.left_s(), 0.01)), random_seed=limits.seed,
+            relative_gap_tolerance=gap)
+        outcome: list[mathopt.SolveResult] = []
+
+        def work(solver: mathopt.SolverType = solver, parameters: mathopt.SolveParameters = parameters,
+                 outcome: list[mathopt.SolveResult] = outcome) -> None:
+            try:
+                outcome.append(mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters))
+            except Exception:  # the errors of the solvers share no type
+                # HiGHS gives up on a sound model now and then (kError); the next one takes over.
+                outcome.clear()
+
+        # HiGHS cannot be interrupted: when the clock is stopped by hand, it is left to run out behind.
+        thread = threading.Thread(target=work, daemon=True)
+        thread.start()
+        while thread.is_alive() and not clock.stopped:
+            thread.join(_LOOK_S)
+        if clock.stopped:
+            break
+        if outcome:
+            return _answer(outcome[0], model)
     return _Answer(None, 0.0, None)
 
 

@@ -22,10 +22,11 @@ from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.errors import PassplanError
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
-from passplan.link.interference import interference_pairs
+from passplan.link.conflicts import find_interference
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
 from passplan.planning.changes import compare
+from passplan.planning.lost_value import lost_value
 from passplan.planning.plan import make_plan
 from passplan.planning.record import PlanRecord
 from passplan.planning.summary import summarise
@@ -130,9 +131,9 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
     report("computing links", 0, 0)
     samples = samples_of(run, windows)
     links = link_profiles(run, windows, samples, losses)
-    pairs = interference_pairs(run, windows, samples)
+    interference = find_interference(run, windows)
     lap("links")
-    plan = make_plan(run, windows, links, progress=report, pairs=pairs)
+    plan = make_plan(run, windows, links, progress=report, interference=interference)
     lap("plan")
     summary = summarise(run, windows, plan)
     summary["weather"] = weather_summary(run, windows, samples, plan, losses)
@@ -141,6 +142,8 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
         summary=summary, windows=windows, contacts=plan.contacts, segments=plan.segments,
         unused=plan.unused, files=run.files,
     )
+    summary["lost_value"] = lost_value(run, record, links)
+    lap("lost value")
     report("auditing", 0, 0)
     faults = audit_plan(run, record.contacts, record.segments, record.summary)
     lap("audit")

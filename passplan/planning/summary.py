@@ -35,9 +35,11 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         "plan_id": "", "name": run.name, "status": result.status, "approval": "draft",
         "generated_utc": datetime.now(UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z"),
         "horizon_start_utc": _iso(run.start_utc), "horizon_end_utc": _iso(run.end_utc),
+        **({} if run.frozen_until_utc is None else {"frozen_until_utc": _iso(run.frozen_until_utc)}),
         "windows": len(windows), "contacts": len(plan.contacts),
         "volume_mb": float(np.sum(account.delivered_mb)), "value": result.value, "bound": _finite(result.bound),
         "gap": _finite(result.gap), "cost": account.cost, "path": result.path,
+        "stopped_by_hand": result.stopped_by_hand,
         "tiers": [
             {"name": t.name, "sense": t.sense, "value": t.value, "bound": _finite(t.bound), "gap": _finite(t.gap)}
             for t in result.tiers

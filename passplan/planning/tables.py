@@ -28,7 +28,7 @@ def contacts_table(
     otherwise (then ``modcod`` is empty). A contact's id is its window's with ``.c1``, ``.c2`` ... in time order.
     """
     chosen, options = result.account.chosen, problem.options
-    asked = {int(o) for want in terms.wanted for o in want.options}
+    origins = _origins(terms)
     cutter = _CutExplainer(problem, option_set, terms, result)
     numbers: dict[int, int] = {}
     rows = []
@@ -44,18 +44,25 @@ def contacts_table(
         rows.append({
             "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
             "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
-            "service": _service(candidate), "radio": link.radio, "frequency_mhz": link.frequency_mhz,
+            "service": candidate.service, "radio": link.radio, "frequency_mhz": link.frequency_mhz,
             "polarisation": link.polarisation, "start_utc": candidate.start_s, "end_utc": candidate.end_s,
             "duration_s": candidate.end_s - candidate.start_s, "usable_s": link.usable_s,
             "modcod": "" if candidate.downlink is None else candidate.downlink.modcod, "volume_mb": volume_mb,
             "min_margin_db": link.min_margin_db,
             "peak_elevation_deg": float(windows["peak_elevation_deg"].iloc[w]), "weight": weight,
-            "value": weight * volume_mb, "cost": candidate.cost, "origin": "requested" if o in asked else "planned",
+            "value": weight * volume_mb, "cost": candidate.cost, "origin": origins.get(o, "planned"),
             "change": "new", "cut": cutter.why(o)})
     table = pd.DataFrame(rows, columns=list(CONTACT_COLUMNS))
     return _typed(table, run, texts=(
         "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "polarisation", "modcod",
         "origin", "change", "cut"))
+
+
+def _origins(terms: Terms) -> dict[int, str]:
+    """Who wanted each option; where several did, the one that outranks the others."""
+    words = {"request": "requested", "pin": "pinned", "frozen": "frozen", "emergency": "emergency"}
+    return {int(o): words[want.kind] for want in sorted(terms.wanted, key=lambda want: list(words).index(want.kind))
+            for o in want.options}
 
 
 def segments_table(
@@ -78,12 +85,6 @@ def segments_table(
 
 def _modcod_of(candidate: Candidate, piece: int) -> str:
     return "" if candidate.downlink is None else candidate.downlink.pieces[piece].modcod
-
-
-def _service(candidate: Candidate) -> str:
-    if candidate.downlink is None:
-        return "command"
-    return "downlink" if candidate.command is None else "both"
 
 
 class _CutExplainer:

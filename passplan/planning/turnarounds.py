@@ -26,18 +26,19 @@ def too_tight(run: Run, windows: pd.DataFrame, antennas: Antennas, options: Opti
             stances(windows, run.orbits, run.sites, mount, run.start_utc, options.window[mine], at[mine].astype(float),
                     refraction=run.policy.refraction != "off")
             for at in (options.start_s, options.end_s))
-        setup_s = int(antennas.prepare_s[k] + antennas.release_s[k])
+        prepare_s, release_s = options.prepare_s[mine], options.release_s[mine]
         # No turn takes longer than that between the furthest of all angles.
         lower, upper = (
             np.concatenate([getattr(stance, axis) for stance in (begins, ends)]) for axis in ("lower_deg", "upper_deg"))
         tied = mount.model_copy(update={"lower_from_deg": -720.0})
         longest_s = float(turnaround_s(tied, Stance(lower.min(), upper.min()), Stance(lower.max(), upper.max())))
-        if longest_s <= setup_s:
+        if longest_s <= prepare_s.min() + release_s.min():
             continue
         starts = options.start_s[mine]
         for at, end_s in enumerate(options.end_s[mine].tolist()):
-            low, high = np.searchsorted(starts, [end_s + setup_s, end_s + longest_s])
+            low, high = np.searchsorted(starts, [end_s + release_s[at], end_s + longest_s])
             after = np.arange(low, high)
+            after = after[starts[after] - prepare_s[after] >= end_s + release_s[at]]
             needed_s = turnaround_s(mount, Stance(ends.lower_deg[at], ends.upper_deg[at]),
                                     Stance(begins.lower_deg[after], begins.upper_deg[after]))
             late = after[starts[after] - end_s < needed_s]

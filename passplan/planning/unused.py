@@ -16,7 +16,7 @@ from passplan.planning.rules.terms import Terms
 
 REASONS = (
     "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "antenna_turning", "spacecraft_busy",
-    "nothing_aboard", "not_worth_it", "interference")
+    "nothing_aboard", "not_worth_it", "interference", "contact_gap", "cool_down", "forbidden")
 """``not_needed``: the antenna can only command, and nothing asks for it. Rules may add their own reasons."""
 
 

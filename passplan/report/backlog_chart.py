@@ -10,9 +10,9 @@ import numpy as np
 from rich.console import Group, RenderableType
 from rich.text import Text
 
-from passplan.report.backlog import Backlog
+from passplan.planning.backlog import Backlog
 from passplan.report.contact_table import plain_table
-from passplan.report.words import megabytes
+from passplan.report.words import LEAST_MB, megabytes
 
 _BLOCKS = " ▁▂▃▄▅▆▇█"
 LOST = "!"
@@ -34,7 +34,7 @@ def backlog_chart(
     table = plain_table(("spacecraft", "left"), ("through the day", "left"), *((one, "right") for one in figures))
     for name in names:
         store = summary["storage"][name]
-        lost = Text(megabytes(store["lost_mb"]), style="bold red" if store["lost_mb"] > 0.05 else "dim")
+        lost = Text(megabytes(store["lost_mb"]), style="bold red" if store["lost_mb"] > LEAST_MB else "dim")
         numbers = {"after": store["left_mb"], "generated": store["generated_mb"], "delivered": store["delivered_mb"]}
         table.add_row(
             Text(name),

@@ -13,7 +13,8 @@ from rich.table import Table
 from rich.text import Text
 
 from passplan.planning.record import PlanRecord
-from passplan.report.usage import causes, reason_words
+from passplan.report.usage import causes, lost_causes, reason_words
+from passplan.report.words import LEAST_MB, megabytes
 
 _UNUSED_ROWS = 40
 
@@ -59,6 +60,21 @@ def contact_table(
     hidden = len(contacts) - len(shown)
     more = Text(f"... and {hidden} more; --full shows them all, contacts.csv holds them", style="dim")
     return Group(table, *([more] if hidden else []))
+
+
+def lost_table(summary: Mapping[str, Any]) -> RenderableType:
+    """Data not brought down, by cause."""
+    found = lost_causes(summary)
+    table = plain_table(("cause", "left"), ("lost aboard", "right"), ("worth", "right"), ("left at the end", "right"),
+                        ("worth", "right"))
+    table.columns[0].no_wrap = False
+    for one in found:
+        lost = ("", "") if one.lost_mb < LEAST_MB else (megabytes(one.lost_mb), f"{one.lost_value:,.0f}")
+        table.add_row(one.words, *lost, megabytes(one.left_mb), f"{one.left_value:,.0f}")
+    sums = [sum(getattr(one, key) for one in found) for key in ("lost_mb", "lost_value", "left_mb", "left_value")]
+    table.add_row("all", megabytes(sums[0]), f"{sums[1]:,.0f}", megabytes(sums[2]), f"{sums[3]:,.0f}", style="bold")
+    hint = "Each MB is charged to the first link that could still have saved it, and to why that link is not used."
+    return Group(table, Text(hint, style="dim"))
 
 
 def unused_table(record: PlanRecord, *, full: bool) -> RenderableType:

@@ -10,13 +10,16 @@ from pathlib import Path
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.keys import spacecraft_keys
-from passplan.report.page.lanes import Day, Names, antenna_ribbons, hours_of
+from passplan.report.page.axis import Band, Day
+from passplan.report.page.lanes import Names, antenna_ribbons
 from passplan.report.page.ribbons import UNIT_S, Ribbon
 from passplan.report.table_files import MissingLibraryError
 from passplan.report.tracks import WindowTrack, window_tracks
 from passplan.report.words import megabytes, minute, rate
 
 _WIDTH, _LEFT, _RIGHT, _TOP, _LANE, _TALL = 1600, 210, 24, 118, 98, 56
+# Between the lanes of two days.
+_RULER = 44
 _SHADES = (
     "Light: in view, as high as the rate the link allows. Dark: used. Hatched: closed. "
     "Planning aid, not permission to transmit."
@@ -37,9 +40,12 @@ def picture_svg(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
     tracks = window_tracks(run, record.windows) if tracks is None else tracks
     summary = record.summary
     keys = spacecraft_keys(summary["spacecraft"])
-    ribbons = antenna_ribbons(record, tracks, Names.of(record, keys))
+    names, bands = Names.of(record, keys), Day.of(record).bands()
     legend = _legend(keys)
-    height = _TOP + _LANE * len(ribbons) + 26 * len(legend) + 40
+    lanes = len(summary["antennas"])
+    tall = _RULER + _LANE * lanes
+    foot = _TOP - _RULER + tall * len(bands)
+    height = foot + 26 * len(legend) + 40
     parts = [
         f'<svg xmlns="http://www.w3.org/2000/svg" width="{_WIDTH}" height="{height}" '
         f'viewBox="0 0 {_WIDTH} {height}" role="img">',
@@ -48,12 +54,14 @@ def picture_svg(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
         '<path d="M0 0V7" stroke="#9b8579" stroke-width="2"/></pattern></defs>',
         f'<rect width="{_WIDTH}" height="{height}" fill="#fbfaf6"/>',
         *_head(record),
-        *_ruler(Day.of(record), len(ribbons)),
     ]
-    for i, (name, ribbon) in enumerate(ribbons.items()):
-        parts += _lane(name, ribbon, summary["antennas"][name]["contacts"], Day.of(record), _TOP + _LANE * i)
+    for k, band in enumerate(bands):
+        top = _TOP + tall * k
+        parts += _ruler(band, top, lanes, named=len(bands) > 1)
+        for i, (name, ribbon) in enumerate(antenna_ribbons(record, tracks, names, band).items()):
+            parts += _lane(name, ribbon, summary["antennas"][name]["contacts"], band, top + _LANE * i)
     for i, line in enumerate(legend):
-        parts.append(f'<text x="24" y="{_TOP + _LANE * len(ribbons) + 32 + 26 * i}" class="soft">{escape(line)}</text>')
+        parts.append(f'<text x="24" y="{foot + 32 + 26 * i}" class="soft">{escape(line)}</text>')
     return "\n".join([*parts, "</svg>"]) + "\n"
 
 
@@ -83,17 +91,17 @@ def _head(record: PlanRecord) -> list[str]:
     ]
 
 
-def _ruler(day: Day, lanes: int) -> list[str]:
-    foot = _TOP + _LANE * lanes
-    parts = []
-    for left, text in hours_of(day):
-        parts.append(f'<path class="grid" d="M{_x(left)} {_TOP - 6}V{foot}"/>')
+def _ruler(band: Band, top: int, lanes: int, *, named: bool) -> list[str]:
+    date = f'<text x="24" y="{top - 10}" class="name">{band.start_utc:%a %d %b}</text>'
+    parts = [date] if named else []
+    for left, text in band.hours():
+        parts.append(f'<path class="grid" d="M{_x(left)} {top - 6}V{top + _LANE * lanes}"/>')
         anchor = "start" if left < 1.0 else "middle"
-        parts.append(f'<text x="{_x(left)}" y="{_TOP - 10}" class="soft" text-anchor="{anchor}">{escape(text)}</text>')
+        parts.append(f'<text x="{_x(left)}" y="{top - 10}" class="soft" text-anchor="{anchor}">{escape(text)}</text>')
     return parts
 
 
-def _lane(name: str, ribbon: Ribbon, contacts: int, day: Day, top: int) -> list[str]:
+def _lane(name: str, ribbon: Ribbon, contacts: int, band: Band, top: int) -> list[str]:
     foot = top + _LANE - 4
     parts = [
         f'<text x="24" y="{foot - 22}" class="name">{escape(name)}</text>',
@@ -105,8 +113,9 @@ def _lane(name: str, ribbon: Ribbon, contacts: int, day: Day, top: int) -> list[
         parts.append(
             f'<rect class="closed" x="{_x(span.left)}" y="{foot - _TALL}" width="{width:.1f}" height="{_TALL}"/>'
         )
-    across = (_WIDTH - _LEFT - _RIGHT) / (day.horizon_s / UNIT_S)
-    parts.append(f'<g transform="translate({_LEFT} {foot - _TALL}) scale({across:.6f} {_TALL / 100:.4f})">')
+    across = (_WIDTH - _LEFT - _RIGHT) / (band.length_s / UNIT_S)
+    origin = round(_LEFT - across * band.first_s / UNIT_S, 3)
+    parts.append(f'<g transform="translate({origin} {foot - _TALL}) scale({across:.6f} {_TALL / 100:.4f})">')
     parts += [f'<path class="sky" d="{path}"/>' for path in ribbon.sky.values()]
     parts += [f'<path class="used" d="{path}"/>' for path in ribbon.used.values()]
     parts.append("</g>")

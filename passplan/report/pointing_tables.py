@@ -22,6 +22,7 @@ from passplan.report.names import file_stems
 SPEED_OF_LIGHT_KM_S = 299_792.458
 _DECIMALS = {"azimuth_deg": 4, "elevation_deg": 4, "range_km": 4, "range_rate_km_s": 7}
 _DECIMALS_HZ = 1
+REFRACTED = "included: elevations are apparent, as radio waves are bent (ITU-R P.834, mean atmosphere)"
 
 
 @dataclass(frozen=True)
@@ -51,15 +52,21 @@ def pointing_table(row: Mapping[Any, Any], run: Run, step_s: float = 1.0) -> pd.
     Columns ``utc, azimuth_deg, elevation_deg, range_km, range_rate_km_s``, then for each carrier that the
     antenna serves ``doppler_RADIO_hz``, the shift that the far end receives, and ``station_RADIO_hz``, what the
     station tunes to: ``f (1 - v/c)`` to hear a downlink, ``f (1 + v/c)`` so that a command arrives at f.
-    First order in v/c (common practice, no source); the next term stays below 3 Hz at 8 GHz in low orbit.
+    First order in v/c (common practice, no source); the next term stays below 3 Hz at 8 GHz in low orbit. The
+    elevation is the apparent one (ITU-R P.834) where the policy counts refraction, else geometric.
     """
     start, end = (np.datetime64(row[key], "ms") for key in ("start_utc", "end_utc"))
     times = np.append(np.arange(start, end, np.timedelta64(round(step_s * 1000), "ms")), end)
-    look = look_angles(run.orbits[row["spacecraft"]], run.sites[run.antennas[row["antenna"]].site], times)
+    look = look_angles(
+        run.orbits[row["spacecraft"]], run.sites[run.antennas[row["antenna"]].site], times, refraction=_refracted(run))
     columns: dict[str, Any] = {"utc": times, **{name: getattr(look, name) for name in _DECIMALS}}
     for name, (shift_hz, station_hz) in _carriers(row, run, look).items():
         columns |= {f"doppler_{name}_hz": shift_hz, f"station_{name}_hz": station_hz}
     return pd.DataFrame(columns)
+
+
+def _refracted(run: Run) -> bool:
+    return run.policy.refraction != "off"
 
 
 def read_pointing_table(path: Path) -> tuple[dict[str, str], pd.DataFrame]:
@@ -113,7 +120,7 @@ def _header(row: Mapping[Any, Any], record: PlanRecord, run: Run, issue: Issue) 
         ("orbit_from", craft["orbit_from"]),
         ("element_epoch_utc", craft["element_epoch_utc"] or "ephemeris"),
         ("step_s", f"{issue.step_s:g}"),
-        ("refraction", "not included"),
+        ("refraction", REFRACTED if _refracted(run) else "not included: elevations are geometric"),
         ("light_time", "not included"),
         ("angles", "azimuth from true north through east, elevation above the plane of the ellipsoid"),
         ("doppler", "first order; range rate is positive when receding; station_ columns are what to tune to"),

@@ -51,6 +51,8 @@ def select(record: PlanRecord, selection: Selection) -> PlanRecord:
         "spacecraft": {name: craft[name] for name in flown},
         "storage": {name: record.summary["storage"][name] for name in flown},
     }
+    if "lost_value" in summary:
+        summary["lost_value"] = {name: record.summary["lost_value"][name] for name in flown}
     segments = record.segments[record.segments["contact_id"].isin(contacts["contact_id"])]
     return replace(
         record,

@@ -14,19 +14,22 @@ from rich.rule import Rule
 from rich.table import Table
 from rich.text import Text
 
+from passplan.planning.backlog import backlogs
 from passplan.planning.record import PlanRecord
-from passplan.report.backlog import backlogs
 from passplan.report.backlog_chart import backlog_chart
 from passplan.report.cautions import CAUTIONS
-from passplan.report.contact_table import LocalTime, contact_table, unused_table
+from passplan.report.contact_table import LocalTime, contact_table, lost_table, plain_table, unused_table
 from passplan.report.keys import spacecraft_keys
 from passplan.report.selection import Selection, select
+from passplan.report.standing import standing_lists, tier_lines
 from passplan.report.timeline import CLOSED, SEEN, SEVERAL, antenna_row, hour_ruler, stretches
 from passplan.report.weather import by_antenna, notices
 from passplan.report.words import STATUS_WORDS, megabytes, minute
 
 _SCREEN_ROWS = 8
 _SCREEN_CRAFT = 16
+_SCREEN_LINES = 12
+_REVIEWED = np.timedelta64(24, "h")
 
 
 def print_plan(
@@ -42,9 +45,13 @@ def print_plan(
     detail = full or bool(selection)
     summary = part.summary
     console.print(_headline(summary))
-    for title, lines in (("Requirements not met", _shortfalls(summary)), ("Warnings", _warnings(summary))):
+    standing = [(title, [Text.assemble(("> ", "bold cyan"), line) for line in lines])
+                for title, lines in standing_lists(summary)]
+    for title, lines in (
+        ("Requirements not met", _shortfalls(summary)), ("Warnings", _warnings(summary)), *standing
+    ):
         if lines:
-            _section(console, title, Group(*lines))
+            _section(console, title, Group(*lines if detail else _first(lines)))
     if detail and notices(summary):
         _section(console, "Models outside their range", Group(*notices(summary)))
     if selection:
@@ -54,7 +61,7 @@ def print_plan(
         _section(console, "Inputs", _health(summary))
     if summary.get("against"):
         _section(console, f"Against plan {summary['against']['plan_id']}", _changes(summary["against"], detail))
-    _section(console, "Antennas through the day, UTC", _timeline(part, console.width))
+    _section(console, "Antennas through the day, UTC", _timeline(part, console.width, detail))
     rows, craft = (None, None) if detail else (_SCREEN_ROWS, _SCREEN_CRAFT)
     _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
@@ -63,6 +70,8 @@ def print_plan(
             _section(console, "Weather over an average year", by_antenna(part))
         if len(part.contacts):
             _section(console, "Lowest margins", _margins(part, console.width))
+        if summary.get("lost_value"):
+            _section(console, "Data not brought down, and why", lost_table(summary))
         _section(console, "What was not used, and why", unused_table(part, full=bool(selection)))
     console.print()
     for caution in CAUTIONS:
@@ -79,26 +88,37 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
-    gap = summary["gap"]
     facts = Table.grid(padding=(0, 3))
     facts.add_row(
         *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
             ("brought down", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
+            ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
         ))
     )
-    proof = Text.assemble(
-        ("value ", "dim"), (f"{summary['value']:,.1f}", "bold"),
-        ("   no plan can exceed ", "dim"), (f"{summary['bound']:,.1f}", "bold"),
-        ("   gap ", "dim"), ("none to close" if gap is None else f"{100 * gap:.2f} %", "bold"),
-        (f"   {STATUS_WORDS.get(summary['status'], summary['status'])}", "dim"),
-    )
-    return Group(title, facts, proof)
+    return Group(title, facts, _tiers(summary))
 
 
 def _shortfalls(summary: Mapping[str, Any]) -> list[Text]:
     return [Text.assemble(("! ", "bold red"), (f"{s['name']}: ", "bold"), s["sentence"]) for s in summary["shortfalls"]]
+
+
+def _first(lines: list[Text]) -> list[Text]:
+    """What the review needs of a long list."""
+    hidden = len(lines) - _SCREEN_LINES
+    if hidden <= 1:
+        return lines
+    return [*lines[:_SCREEN_LINES], Text(f"... and {hidden} more; --full shows them all", style="dim")]
+
+
+def _tiers(summary: Mapping[str, Any]) -> RenderableType:
+    """The tiers in the order they are solved."""
+    table = plain_table(("tier", "left"), ("sought", "left"), ("reached", "right"), ("no plan can pass", "right"),
+                        ("gap", "right"))
+    for tier in tier_lines(summary):
+        table.add_row(tier.name, Text(tier.sense, style="dim"), Text(tier.value, style="bold"), tier.bound, tier.gap)
+    return table
 
 
 def _warnings(summary: Mapping[str, Any]) -> list[Text]:
@@ -129,7 +149,8 @@ def _health(summary: Mapping[str, Any]) -> RenderableType:
     return Group(*lines)
 
 
-def _timeline(record: PlanRecord, width: int) -> RenderableType:
+def _timeline(record: PlanRecord, width: int, detail: bool) -> RenderableType:
+    """The antennas' rows for each stretch; of several days the review shows the first one."""
     summary = record.summary
     keys = spacecraft_keys(summary["spacecraft"])
     label = min(max((len(name) for name in summary["antennas"]), default=4), 20)
@@ -139,7 +160,9 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
     table.add_column(no_wrap=True)
     by_contact = dict(tuple(record.contacts.groupby("antenna")))
     by_window = dict(tuple(record.windows.groupby("antenna")))
-    for stretch in stretches(start, end, max(width - label - 2, 24)):
+    rows = stretches(start, end, max(width - label - 2, 24))
+    shown = rows if detail else [row for row in rows if row.start_utc - start < _REVIEWED]
+    for stretch in shown:
         table.add_row(Text(str(stretch.start_utc)[5:10], style="dim"), hour_ruler(stretch))
         for name, antenna in summary["antennas"].items():
             row = antenna_row(
@@ -147,11 +170,13 @@ def _timeline(record: PlanRecord, width: int) -> RenderableType:
                 antenna["closures"], keys,
             )
             table.add_row(name, row)
+    until = min(shown[-1].end_utc, end)
+    more = [Text(f"... and on to {minute(str(end))} UTC; --full shows it", style="dim")] if until < end else []
     marks = Text(f"{SEEN} in view, not used   {CLOSED} closed   {SEVERAL} several contacts", style="dim")
     if len(set(keys.values())) < len(keys):
-        return Group(table, marks)
+        return Group(table, *more, marks)
     names = [Text.assemble((key, "bold cyan"), f" {name}") for name, key in keys.items()]
-    return Group(table, Columns(names, padding=(0, 2)), marks)
+    return Group(table, *more, Columns(names, padding=(0, 2)), marks)
 
 
 def _changes(against: Mapping[str, Any], detail: bool) -> RenderableType:

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from passplan.geometry.losses import merged
 from passplan.inputs.run import Run
-from passplan.link.choice import Track as LinkTrack
+from passplan.link.allowed import allowed_mbps
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.steps import losses_of, samples_of
 
@@ -45,6 +45,25 @@ class WindowTrack:
                     return np.interp(self.time_s, track.time_s, track.quality_db) - rung.required_db
         return None
 
+    def margin_in_force(
+        self, radio: str, pieces: Sequence[tuple[float, float, str]], time_s: Floats
+    ) -> tuple[Floats, Floats] | None:
+        """Times and margin of the modcod in force along ``pieces`` (start and end in seconds, modcod).
+
+        The first piece's modcod also counts before it and the last one's after it. ``time_s`` are the times to draw
+        at; the edges of the pieces are added. None where the link floor kept no track.
+        """
+        times, margins = [], []
+        for k, (low, high, modcod) in enumerate(pieces):
+            margin = self.margin_db(radio, modcod)
+            if margin is None:
+                return None
+            first = time_s[0] if k == 0 else low
+            last = time_s[-1] if k == len(pieces) - 1 else high
+            times.append(np.unique([first, low, *time_s[(time_s > first) & (time_s < last)], high, last]))
+            margins.append(np.interp(times[-1], self.time_s, margin))
+        return np.concatenate(times), np.concatenate(margins)
+
 
 def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
     """The track of each window of the table, in its order, every 10 s from AOS and at LOS."""
@@ -73,16 +92,6 @@ def window_tracks(run: Run, windows: pd.DataFrame) -> list[WindowTrack]:
             )
         )
     return tracks
-
-
-def allowed_mbps(tracks: Sequence[LinkTrack], time_s: Floats, margin_db: float) -> Floats:
-    """The fastest rate over all tracks at each time that leaves ``margin_db``; 0 where none does."""
-    best = np.zeros(time_s.size)
-    for track in tracks:
-        quality_db = np.interp(time_s, track.time_s, track.quality_db) - margin_db
-        for rung in track.chain.rungs:
-            best = np.where(quality_db >= rung.required_db, np.maximum(best, rung.rate_mbps), best)
-    return best
 
 
 def thinned(count: int, most: int) -> NDArray[np.int64]:

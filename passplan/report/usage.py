@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 import pandas as pd
 
+from passplan.planning.lost_value import IN_CONTACT, NO_WINDOW
 from passplan.planning.record import PlanRecord
 from passplan.report.tracks import WindowTrack
 
@@ -24,7 +25,12 @@ REASON_WORDS = {
     "nothing_aboard": "nothing more to bring down",
     "not_worth_it": "worth less than it costs",
     "interference": "would disturb another contact",
+    "contact_gap": "too soon after or before another contact of the spacecraft",
+    "cool_down": "the spacecraft's transmitter must cool down",
+    "forbidden": "forbidden by hand",
     "left_out": "left out of the plan",
+    IN_CONTACT: "within contacts: acquisition, keyholes, rate steps",
+    NO_WINDOW: "no link in view in time",
 }
 
 
@@ -50,6 +56,30 @@ class Cause:
     windows: int
     hours: float
     could_carry_mb: float
+
+
+@dataclass(frozen=True)
+class LostCause:
+    """Data not brought down for one cause, in MB and in worth (MB times weight): lost aboard, and left at the end."""
+
+    cause: str
+    words: str
+    lost_mb: float
+    lost_value: float
+    left_mb: float
+    left_value: float
+
+
+def lost_causes(summary: Mapping[str, Any]) -> list[LostCause]:
+    """The summary's ``lost_value`` over all its spacecraft, the dearest cause first; empty for plans without one."""
+    sums: dict[str, dict[str, float]] = {}
+    for name in summary["spacecraft"]:
+        for cause, share in summary.get("lost_value", {}).get(name, {}).items():
+            total = sums.setdefault(cause, dict.fromkeys(share, 0.0))
+            for key, figure in share.items():
+                total[key] += figure
+    found = [LostCause(cause, reason_words(cause), **total) for cause, total in sums.items()]
+    return sorted(found, key=lambda one: (-one.lost_value, -one.left_value, one.cause))
 
 
 def antenna_use(record: PlanRecord) -> list[AntennaUse]:

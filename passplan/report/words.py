@@ -14,6 +14,9 @@ STATUS_WORDS = {
     "empty": "no contact possible",
 }
 
+LEAST_MB = 0.05
+"""Less than this is shown as nothing."""
+
 
 def megabytes(volume_mb: float) -> str:
     """A volume in the unit that keeps it to four figures."""

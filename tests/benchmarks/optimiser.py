@@ -48,7 +48,8 @@ def read_instance(path: Path) -> Problem:
     steps = ragged_ranges(first, counts)
     options = Options(
         window=window, spacecraft=data["spacecraft"][window], antenna=data["antenna"][window], start_s=start_s,
-        end_s=end_s, downlink=np.ones(len(window), dtype=bool), command=np.zeros(len(window), dtype=bool),
+        end_s=end_s, prepare_s=np.full(len(window), int(data["setup_s"])), release_s=np.zeros(len(window)),
+        downlink=np.ones(len(window), dtype=bool), command=np.zeros(len(window), dtype=bool),
         cost=np.zeros(len(window)), piece_offset=offsets_of(counts), piece_start_s=steps * step_s,
         piece_end_s=(steps + 1) * step_s, piece_rate_mb_per_s=data["rate_mb_per_s"][rates].astype(float))
     crafts, dishes = len(data["priority"]), int(data["antenna"].max(initial=-1)) + 1
@@ -56,8 +57,7 @@ def read_instance(path: Path) -> Problem:
         horizon_s=int(data["horizon_s"]),
         fleet=Fleet(tuple(f"craft-{k}" for k in range(crafts)), data["priority"], data["generation_mb_per_s"],
                     data["capacity_mb"], data["start_fill_mb"]),
-        antennas=Antennas(tuple(f"dish-{k}" for k in range(dishes)), np.full(dishes, int(data["setup_s"])),
-                          np.zeros(dishes)),
+        antennas=Antennas(tuple(f"dish-{k}" for k in range(dishes))),
         windows=Windows(tuple(map(str, range(len(data["spacecraft"])))), data["spacecraft"], data["antenna"],
                         data["start_s"], data["end_s"]),
         options=options, spill_cost_per_mb=float(data["spill_cost"]))

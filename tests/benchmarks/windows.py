@@ -5,7 +5,9 @@
 The figures come as a table and, for machines, as one JSON object in the last line. The search is timed up to
 the whole windows table. Yardsticks: Skyfield's ``find_events`` on random pairs, scaled to all pairs, and
 raw SGP4 (``SatrecArray.sgp4``) of the same objects on a 60 s grid. ``--check N`` compares N random pairs of all
-regimes with 1 s sampling by Skyfield, refined near the mask, at masks 0, 5, 30, 60 and 80 deg in turn.
+regimes with 1 s sampling by Skyfield, refined near the mask, at masks 0, 5, 30, 60 and 80 deg in turn. ``--mounts``
+gives every antenna a mount (rates, accelerations, cables; azimuth-elevation and X-Y) and times what that adds; its
+yardstick is a look at every window, sampled by SGP4 every half second, measured on random windows and scaled.
 """
 
 from __future__ import annotations
@@ -27,18 +29,35 @@ from numpy.typing import NDArray
 from sgp4.api import WGS72, Satrec, SatrecArray
 from skyfield.api import EarthSatellite, wgs84
 
+from passplan.geometry.axes import axis_angles_deg
+from passplan.geometry.keyhole import Axis, lost_stretches
+from passplan.geometry.pointing import sample_windows
 from passplan.geometry.regimes import orbit_class
+from passplan.geometry.survey import Ground, cut_by_travel, find_losses
 from passplan.geometry.timescale import julian_day, timescale, utc_seconds
+from passplan.geometry.travel import choose_branch, unwrapped_deg
 from passplan.geometry.windows import find_windows
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.elements.tle import parse_tle
 from passplan.inputs.errors import Findings
 from passplan.inputs.ground import Antenna, Site
+from passplan.inputs.mounts import Mount
 
 Floats = NDArray[np.float64]
 
 GROWTH = ((100, 10, 24), (300, 10, 24), (300, 20, 24), (1_000, 20, 24), (1_000, 50, 24), (100, 10, 168))
 MASKS_DEG = (0.0, 5.0, 30.0, 60.0, 80.0)
+MOUNTS = {
+    mount.name: mount
+    for mount in (
+        Mount(name="heavy", kind="az_el", lower_rate_deg_s=5.0, upper_rate_deg_s=3.0, lower_acceleration_deg_s2=2.0,
+              upper_acceleration_deg_s2=2.0, lower_from_deg=-270.0, lower_to_deg=270.0),
+        Mount(name="light", kind="az_el", lower_rate_deg_s=10.0, upper_rate_deg_s=5.0),
+        Mount(name="cradle", kind="x_y", lower_rate_deg_s=3.0, upper_rate_deg_s=3.0),
+        Mount(name="tied", kind="az_el", lower_rate_deg_s=3.0, upper_rate_deg_s=2.0, lower_from_deg=-200.0,
+              lower_to_deg=200.0, upper_from_deg=0.0, upper_to_deg=90.0),
+    )
+}  # fmt: skip
 SGP4_DAY_ZERO_JD = 2_433_281.5
 
 
@@ -56,6 +75,8 @@ def main() -> None:
     memory_mb = _peak_mb() - imports_mb
     figures = _against_yardsticks(low, ground, start, options)
     figures |= {"memory_above_imports_mb": memory_mb, "growth": growth}
+    if options.mounts:
+        figures["mounts"] = _with_mounts(low, ground, start, options)
     if options.check:
         figures["check"] = _check(sets, start, options.hours, options.check)
     _show(figures)
@@ -73,6 +94,7 @@ def _options() -> argparse.Namespace:
     parser.add_argument("--pairs", type=int, default=300, help="pairs for the find_events yardstick")
     parser.add_argument("--repeats", type=int, default=7, help="the best of so many runs counts, for both sides")
     parser.add_argument("--check", type=int, default=0, help="pairs to compare with dense sampling")
+    parser.add_argument("--mounts", action="store_true", help="also every antenna on a mount")
     return parser.parse_args()
 
 
@@ -182,6 +204,50 @@ def _find_events_s(fleet: dict[str, ElementSet], part: Any, start: np.datetime64
     return (time.perf_counter() - begun) / max(len(pairs), 1)
 
 
+def _with_mounts(
+    sets: list[ElementSet], ground: Any, start: np.datetime64, options: argparse.Namespace
+) -> dict[str, Any]:
+    """What mounts cost beside the search itself, and what looking at every window closely would."""
+    fleet, end = _fleet(sets, options.objects), start + np.timedelta64(options.hours, "h")
+    plain, sites = _part(ground, options.antennas)
+    kinds = list(MOUNTS)
+    antennas = {
+        name: antenna.model_copy(update={"mount": kinds[k % len(kinds)], "beamwidth_deg": 0.5})
+        for k, (name, antenna) in enumerate(plain.items())
+    }
+    every = Ground(antennas, sites, MOUNTS, dict.fromkeys(antennas, 0.125))
+    table = find_windows(fleet, antennas, sites, start, end, mounts=MOUNTS)
+    found: list[Any] = []
+
+    def survey() -> None:
+        cut = cut_by_travel(table, fleet, every)
+        found[:] = [cut, find_losses(cut, fleet, every, start)]
+
+    survey_s = _best_s(survey, 2)
+    random = np.random.default_rng(5)
+    some = table.iloc[np.sort(random.choice(len(table), min(500, len(table)), replace=False))]
+    close_s = _best_s(lambda: _all_closely(some, fleet, every), 1) * len(table) / len(some)
+    return {
+        "windows": len(table), "survey_s": survey_s, "every_window_closely_s": close_s,
+        "times_faster": close_s / survey_s, "stretches_lost": len(found[1].rows),
+        "seconds_lost": float(found[1].lost_seconds(len(found[0])).sum()),
+    }  # fmt: skip
+
+
+def _all_closely(table: pd.DataFrame, fleet: dict[str, ElementSet], ground: Ground) -> None:
+    """Cables and rates of every window on samples half a second apart."""
+    samples = sample_windows(table, fleet, ground.sites, np.datetime64("2000-01-01", "ms"), 0.5)
+    for k, name in enumerate(table["antenna"]):
+        own = slice(samples.offsets[k], samples.offsets[k + 1])
+        mount, time_s = MOUNTS[str(ground.antennas[name].mount)], samples.time_s[own]
+        lower, upper = axis_angles_deg(mount, samples.azimuth_deg[own], samples.elevation_deg[own])
+        choose_branch(mount, time_s, unwrapped_deg(samples.azimuth_deg[own]))
+        first = Axis(mount.lower_rate_deg_s or np.inf, mount.lower_acceleration_deg_s2 or np.inf)
+        second = Axis(mount.upper_rate_deg_s or np.inf, mount.upper_acceleration_deg_s2 or np.inf)
+        lost_stretches(time_s, unwrapped_deg(lower), upper, first, 0.125)
+        lost_stretches(time_s, upper, None, second, 0.125)
+
+
 def _place(site: Site) -> Any:
     return wgs84.latlon(site.latitude_deg, site.longitude_deg, site.height_m)
 
@@ -285,6 +351,8 @@ def _show(figures: dict[str, Any]) -> None:
     print(f"  find_events, scaled to all pairs  {figures['find_events_scaled_s']:10.1f} s")
     print(f"  times faster than find_events     {figures['times_faster_than_find_events']:10.0f}")
     print(f"  times the cost of raw SGP4        {figures['times_the_cost_of_sgp4']:10.2f}")
+    for name, value in figures.get("mounts", {}).items():
+        print(f"  mounts: {name:<26}{value:10.6g}")
     for name, value in figures.get("check", {}).items():
         print(f"  check: {name:<27}{value:10.6g}")
     print()

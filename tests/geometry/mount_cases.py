@@ -69,18 +69,23 @@ class FlatPass:
     def elevation_deg(self, t: Floats) -> Floats:
         return np.asarray(np.degrees(np.arctan2(self.height_km, np.hypot(self.speed_km_s * t, self.aside_km))))
 
-    def full_lead_loss_s(self, rate_deg_s: float, permitted_deg: float) -> float:
-        """Seconds lost by the slew that meets the target where its azimuth rate has fallen to the mount's.
+    def lead_loss_s(self, rate_deg_s: float, permitted_deg: float) -> float:
+        """Seconds lost by the best slew that is back where the target's azimuth rate has fallen to the mount's.
 
-        The azimuth rate is v c / (c^2 + v^2 t^2), c the distance aside; the slew leaves where a straight
-        line of the mount's rate back from the meeting cuts the azimuth curve again.
+        The azimuth rate is v c / (c^2 + v^2 t^2), c the distance aside; where it has fallen to the mount's the slew
+        may be behind by what is permitted at the most. It leaves where the straight line of the mount's rate back
+        from there cuts the azimuth curve again. Of all such lines the one that loses least.
         """
         v, c, rate = self.speed_km_s, self.aside_km, math.radians(rate_deg_s)
         meet = math.sqrt(v * c / rate - c * c) / v
         t = np.arange(-400.0, meet, 1e-3)
-        line = self.azimuth_deg(np.array([meet]))[0] - rate_deg_s * (meet - t)
-        ahead = line - self.azimuth_deg(t)
-        leave = t[np.flatnonzero(ahead <= 0.0)[-1]]
-        chord = np.cos(np.radians(self.elevation_deg(t))) * np.sin(np.radians(np.abs(ahead) / 2.0))
-        off = 2.0 * np.degrees(np.arcsin(chord))
-        return float(1e-3 * np.count_nonzero((t > leave) & (off > permitted_deg)))
+        room = math.degrees(math.radians(permitted_deg) / math.cos(math.radians(self.elevation_deg(np.array(meet)))))
+        cosine = np.cos(np.radians(self.elevation_deg(t)))
+        lost = []
+        for behind in np.linspace(0.0, room, 5):
+            line = self.azimuth_deg(np.array([meet]))[0] - behind - rate_deg_s * (meet - t)
+            ahead = line - self.azimuth_deg(t)
+            leave = t[np.flatnonzero((ahead <= 0.0) & (t < 0.0))[-1]]
+            off = 2.0 * np.degrees(np.arcsin(cosine * np.sin(np.radians(np.abs(ahead) / 2.0))))
+            lost.append(1e-3 * np.count_nonzero((t > leave) & (off > permitted_deg)))
+        return float(min(lost))

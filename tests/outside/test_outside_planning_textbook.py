@@ -31,7 +31,7 @@ def fixed_volumes(spans: list[tuple[int, int, float]], antennas: list[int], coun
     return Problem(
         horizon_s=10_000,
         fleet=Fleet(tuple(f"c{k}" for k in range(crafts)), np.ones(crafts), np.zeros(crafts), volumes, volumes),
-        antennas=Antennas(tuple(f"a{k}" for k in range(count)), np.zeros(count), np.zeros(count)),
+        antennas=Antennas(tuple(f"a{k}" for k in range(count))),
         windows=Windows(tuple(f"w{k}" for k in range(len(rows))), np.array([r["spacecraft"] for r in rows]),
                         np.array([r["antenna"] for r in rows]), np.array([r["start_s"] for r in rows]),
                         np.array([r["end_s"] for r in rows])),

@@ -28,6 +28,7 @@ def problem_of(
 ) -> Problem:
     """A problem from option rows; a window for each option unless rows say which."""
     rows = [{"window": k, "spacecraft": 0, "antenna": 0, **row} for k, row in enumerate(options)]
+    rows = [{"prepare_s": prepare_s[row["antenna"]], "release_s": release_s[row["antenna"]], **row} for row in rows]
     count = max((row["window"] for row in rows), default=-1) + 1
     of_window = [[row for row in rows if row["window"] == w] for w in range(count)]
     windows = Windows(
@@ -38,7 +39,7 @@ def problem_of(
         np.array([max(row["end_s"] for row in group) for group in of_window], dtype=np.int64))
     fleet = Fleet(tuple(f"craft-{k}" for k in range(len(weight))), np.array(weight), np.array(generation),
                   np.array(capacity), np.array(start))
-    antennas = Antennas(tuple(f"dish-{k}" for k in range(len(prepare_s))), np.array(prepare_s), np.array(release_s))
+    antennas = Antennas(tuple(f"dish-{k}" for k in range(len(prepare_s))))
     return Problem(horizon_s, fleet, antennas, windows, build_options(rows), **rest)
 
 
@@ -64,6 +65,8 @@ def random_problem(seed: int, *, needs: bool = True, windows: int = 12) -> Probl
             rows.append({
                 "window": w, "spacecraft": craft, "antenna": dish, "start_s": x * STEP_S, "end_s": y * STEP_S,
                 "pieces": pieces, "command": command, "cost": rng.choice([0.0, 5.0, 40.0])})
+            if seed % 3 == 0:
+                rows[-1] |= {"prepare_s": (x * 7 + y) % 3 * STEP_S, "release_s": (x + y * 5) % 4 * STEP_S // 2}
     taken = sorted({row["window"] for row in rows})
     for row in rows:
         row["window"] = taken.index(row["window"])
@@ -101,14 +104,13 @@ class Judge:
 
     def compatible(self, a: int, b: int) -> bool:
         """Whether two options can both be used."""
-        o, dishes = self.options, self.problem.antennas
+        o = self.options
         first, second = (a, b) if (o.start_s[a], o.end_s[a]) <= (o.start_s[b], o.end_s[b]) else (b, a)
         if o.spacecraft[a] == o.spacecraft[b] and o.start_s[second] < o.end_s[first]:
             return False
         if (first, second) in self.tight:
             return False
-        dish = int(o.antenna[a])
-        setup_s = int(dishes.release_s[dish] + dishes.prepare_s[dish])
+        setup_s = int(o.release_s[first] + o.prepare_s[second])
         return bool(o.antenna[a] != o.antenna[b] or o.start_s[second] >= o.end_s[first] + setup_s)
 
     def kept(self, chosen: Iterable[int]) -> bool:

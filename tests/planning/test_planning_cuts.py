@@ -15,7 +15,7 @@ from passplan.planning.problem import Windows
 def test_a_window_makes_way_for_others_of_its_antenna_with_setup_and_of_its_spacecraft_without() -> None:
     windows = Windows(("a", "b", "c"), np.array([0, 1, 0]), np.array([0, 0, 1]), np.array([0, 300, 500]),
                       np.array([600, 900, 800]))
-    cuts = neighbour_cuts(windows, [60, 0], [30, 0])
+    cuts = neighbour_cuts(windows, [(60, 30), (60, 30), (0, 0)])
     assert cuts[0].ends == {300 - 90, 500}
     assert cuts[0].starts == {900 + 90, 800}
     assert cuts[1].starts == {600 + 90}

@@ -72,7 +72,7 @@ def shuffled(problem: Problem, seed: int) -> Problem:
         problem,
         fleet=Fleet(tuple(f"x{k}" for k in craft), fleet.weight[craft], fleet.generation_mb_per_s[craft],
                     fleet.capacity_mb[craft], fleet.start_fill_mb[craft]),
-        antennas=Antennas(tuple(f"y{k}" for k in dish), antennas.prepare_s[dish], antennas.release_s[dish]),
+        antennas=Antennas(tuple(f"y{k}" for k in dish)),
         windows=Windows(tuple(f"z{k}" for k in window), new_craft[windows.spacecraft[window]],
                         new_dish[windows.antenna[window]], windows.start_s[window], windows.end_s[window]),
         options=_renumbered(taken, new_window, new_craft, new_dish),

@@ -1,59 +1,14 @@
-"""Storage through the day: the drawn line ends where the plan's own account ends, and loses when it loses."""
+"""Storage through the day as it is drawn: blocks in the terminal, a path on the page."""
 
 from __future__ import annotations
 
 import numpy as np
 import pandas as pd
-import pytest
-from hypothesis import given, settings
-from hypothesis import strategies as st
 
-from passplan.planning.record import PlanRecord
-from passplan.planning.value import follow_storage
-from passplan.report.backlog import Backlog, _follow, backlogs
+from passplan.planning.backlog import Backlog
 from passplan.report.backlog_chart import LOST, blocks
+from passplan.report.page.axis import Day
 from passplan.report.page.lanes import storage_path
-
-
-def test_it_starts_and_ends_as_the_plan_says(short_plan: PlanRecord) -> None:
-    for name, store in backlogs(short_plan).items():
-        entry = short_plan.summary["storage"][name]
-        assert store.fill_mb[0] == entry["start_mb"]
-        assert store.fill_mb[-1] == pytest.approx(entry["left_mb"], abs=1e-6 * max(entry["capacity_mb"], 1.0))
-        assert store.fill_mb.min() >= 0.0
-        assert store.fill_mb.max() <= entry["capacity_mb"] * (1.0 + 1e-12)
-        assert bool(store.losing_s) == (entry["lost_mb"] > 0.01)
-
-
-@given(
-    st.floats(0.0, 1.0),
-    st.floats(0.0, 2.0),
-    st.floats(1.0, 500.0),
-    st.lists(st.tuples(st.integers(1, 300), st.integers(1, 200), st.floats(0.0, 5.0)), max_size=6),
-)
-@settings(deadline=None, max_examples=80)
-def test_it_follows_the_objective_own_account(
-    share: float, generation: float, capacity: float, raw: list[tuple[int, int, float]]
-) -> None:
-    pieces, clock = [], 0
-    for wait, length, rate in raw:
-        pieces.append((clock + wait, clock + wait + length, rate))
-        clock += wait + length
-    horizon = clock + 100
-    _, lost, left = follow_storage(horizon, share * capacity, generation, capacity, pieces)
-    table = pd.DataFrame(
-        {
-            "first_s": [float(p[0]) for p in pieces],
-            "last_s": [float(p[1]) for p in pieces],
-            "rate_mbps": [8.0 * p[2] for p in pieces],
-        }
-    )
-    entry = {"generated_mb": generation * horizon, "capacity_mb": capacity, "start_mb": share * capacity}
-    store = _follow(entry, table if pieces else None, float(horizon))
-    assert store.fill_mb[-1] == pytest.approx(left, abs=1e-6)
-    assert (np.diff(store.time_s) >= 0.0).all()
-    if lost > 2.0 * max(generation, 1e-9) * (len(pieces) + 1):
-        assert store.losing_s
 
 
 def test_blocks_show_the_highest_fill_of_a_cell_and_losses() -> None:
@@ -63,6 +18,7 @@ def test_blocks_show_the_highest_fill_of_a_cell_and_losses() -> None:
 
 def test_a_storage_path_closes_on_the_ground() -> None:
     store = Backlog(np.array([0.0, 500.0, 1000.0]), np.array([0.0, 50.0, 100.0]), 100.0, ((900.0, 1000.0),))
-    area, lost = storage_path(store)
+    (band,) = Day(pd.Timestamp("2027-03-09"), 1000.0).bands()
+    area, lost = storage_path(store, band)
     assert area == "M0 100L0 100L50 50L100 0L100 100Z"
     assert lost == "M90 0H100V16H90Z"

@@ -75,6 +75,9 @@ def places(
     }.items():
         found[key] = folder / f"{key}.html"
         write_page(record, run, found[key])
+    several = replace(short_plan, summary={**short_plan.summary, "horizon_end_utc": "2027-03-11T20:00:00.000Z"})
+    found["days"] = folder / "days.html"
+    write_page(several, short_run, found["days"])
     tracks = [
         replace(track, keyholes=((float(track.time_s[0]), float(track.time_s[-1])),))
         for track in window_tracks(short_run, short_plan.windows)
@@ -176,6 +179,23 @@ def test_filters_narrow_everything(opened: Callable[..., Any], short_plan: PlanR
     for _ in range((len(short_plan.unused) - 1) // 200):
         page.execute_script("document.getElementById('more').click()")
     assert page.execute_script("return document.querySelectorAll('#unused-rows tr').length") == len(short_plan.unused)
+
+
+def test_a_day_of_several_is_chosen(opened: Callable[..., Any], short_plan: PlanRecord) -> None:
+    page = opened("days", 390)
+    assert page.get_log("browser") == []
+    assert page.execute_script("return document.documentElement.scrollWidth") <= 390
+    bands = "return [...document.querySelectorAll('[data-band]:not([hidden])')].map((b) => b.dataset.band)"
+    assert page.execute_script(bands) == ["0", "1", "2"] * 2
+    _select(page, "f-d", "Wed 10 Mar 08:00")
+    assert page.execute_script(bands) == ["1", "1"]
+    assert _shown_rows(page) == []
+    _select(page, "f-d", "Tue 09 Mar 08:00")
+    assert len(_shown_rows(page)) == len(short_plan.contacts)
+    _select(page, "zone", "local time of Port Ellery")
+    second = "return document.querySelectorAll('[data-band] .zone-ruler i')[0].textContent"
+    assert page.execute_script(second) == "21:00"
+    assert page.get_log("browser") == []
 
 
 def test_filters_reach_the_list_of_dropped_contacts(opened: Callable[..., Any], replanned: PlanRecord) -> None:

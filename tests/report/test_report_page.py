@@ -6,10 +6,13 @@ import json
 import re
 from dataclasses import replace
 from html.parser import HTMLParser
+from itertools import pairwise
 
 import numpy as np
 import pandas as pd
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 from plan_variants import HOSTILE, multiplied, renamed
 
 from passplan.inputs.run import Run
@@ -17,8 +20,8 @@ from passplan.link.choice import WindowLink
 from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.page import render_page
-from passplan.report.page.lanes import Day, hours_of
-from passplan.report.page.ribbons import levels, outline
+from passplan.report.page.axis import Day
+from passplan.report.page.ribbons import Share, levels, outline, shared_heights
 from passplan.report.page.scale import RateScale, scale_for
 from passplan.report.tracks import WindowTrack
 
@@ -110,7 +113,7 @@ def test_marks_speak_to_screen_readers(reader: _Reader) -> None:
         if tag == "a" and "mark" in (attributes.get("class") or "").split():
             assert re.search(r" on .*, \d\d:\d\d to \d\d:\d\d UTC, ", attributes["aria-label"] or "")
         if tag == "th":
-            assert attributes["scope"] == "col"
+            assert attributes["scope"] in ("col", "row")
     labelled = [a for tag, a in reader.tags if tag == "select"]
     assert len(labelled) == 7
 
@@ -120,9 +123,10 @@ def test_tracks_agree_with_the_tables(reader: _Reader, short_plan: PlanRecord) -
     for contact, row in zip(data["contacts"], short_plan.contacts.itertuples(), strict=True):
         assert max(contact["el"]) <= row.peak_elevation_deg + 0.1
         assert contact["t"][0] <= contact["from"] < contact["to"] <= contact["t"][-1] + 1
-        if contact["db"] and contact["sent"]:
+        assert contact["db"]
+        if contact["sent"]:
             first, last = contact["sent"][0][0], contact["sent"][-1][1]
-            margin = np.interp(np.linspace(first, last, 50), contact["t"], contact["db"])
+            margin = np.interp(np.linspace(first, last, 50), contact.get("dt", contact["t"]), contact["db"])
             assert margin.min() == pytest.approx(row.min_margin_db, abs=0.6)
 
 
@@ -210,8 +214,54 @@ def test_labels_keep_apart() -> None:
     assert levels([0.0, 0.4, 0.8, 5.0], apart=1.0) == [0, 1, 2, 0]
 
 
-@pytest.mark.parametrize("hours", [1, 24, 72, 744])
-def test_hours_of_any_horizon(hours: int) -> None:
-    marks = hours_of(Day(pd.Timestamp("2027-03-09T08:30"), hours * 3600.0))
-    assert 1 <= len(marks) <= 25
-    assert all(0.0 <= left < 100.0 for left, _ in marks)
+def test_contacts_at_once_share_the_height_and_others_have_all_of_it() -> None:
+    shares = shared_heights([(0.0, 10.0), (5.0, 20.0), (6.0, 8.0), (10.0, 12.0), (30.0, 40.0), (40.0, 50.0)])
+    assert [(share.row, share.rows) for share in shares] == [(0, 3), (1, 3), (2, 3), (0, 3), (0, 1), (0, 1)]
+    assert shared_heights([]) == []
+    scale = scale_for([10.0])
+    assert outline(_track([10, 10, 10]), scale, share=Share(1, 2)) == "M0 50V0H2V50Z"
+
+
+@given(st.lists(st.tuples(st.integers(0, 500), st.integers(1, 90)), max_size=20))
+def test_no_two_contacts_stand_on_one_another(raw: list[tuple[int, int]]) -> None:
+    spans = sorted((float(start), float(start + length)) for start, length in raw)
+    shares = shared_heights(spans)
+    for i, one in enumerate(spans):
+        assert 0 <= shares[i].row < shares[i].rows
+        for k in range(i):
+            if spans[k][0] < one[1] and one[0] < spans[k][1]:
+                assert shares[i].rows == shares[k].rows
+                assert shares[i].row != shares[k].row
+
+
+@pytest.mark.parametrize(("hours", "bands"), [(1, 1), (24, 1), (36, 1), (37, 2), (72, 3), (744, 31)])
+def test_hours_of_any_horizon(hours: int, bands: int) -> None:
+    found = Day(pd.Timestamp("2027-03-09T08:30"), hours * 3600.0).bands()
+    assert len(found) == bands
+    assert found[0].first_s == 0.0
+    assert found[-1].last_s >= hours * 3600.0
+    for band, after in pairwise(found):
+        assert band.last_s == after.first_s
+    for band in found:
+        marks = band.hours()
+        assert 1 <= len(marks) <= 25
+        assert all(0.0 <= left < 100.0 for left, _ in marks)
+
+
+def test_a_span_is_cut_to_its_band_and_to_the_horizon() -> None:
+    *_, last = Day(pd.Timestamp("2027-03-09T00:00"), 60 * 3600.0).bands()
+    assert last.span("2027-03-10T22:00:00Z", "2027-03-11T03:00:00Z") == (0.0, 12.5)
+    assert last.span("2027-03-11T09:00:00Z", "2027-03-12T03:00:00Z") == (37.5, 12.5)
+    assert not last.touches("2027-03-10T22:00:00Z", "2027-03-11T00:00:00Z")
+
+
+def test_a_plan_of_several_days_has_a_band_for_each_and_every_mark_once(
+    short_plan: PlanRecord, short_run: Run
+) -> None:
+    summary = {**short_plan.summary, "horizon_end_utc": "2027-03-11T20:00:00.000Z"}
+    reader = _read(render_page(replace(short_plan, summary=summary), short_run))
+    bands = [a["data-band"] for _, a in reader.tags if a.get("data-band")]
+    assert bands == ["0", "1", "2"] * 2
+    marks = [a["data-c"] for tag, a in reader.tags if tag == "a" and "mark" in (a.get("class") or "").split()]
+    assert sorted(map(int, marks)) == sorted([*range(len(short_plan.contacts))] * 2)
+    assert "f-d" in [a.get("id") for tag, a in reader.tags if tag == "select"]

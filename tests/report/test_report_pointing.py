@@ -9,6 +9,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from passplan.geometry.pointing import look_angles
+from passplan.geometry.refraction import apparent_deg
 from passplan.inputs.run import Run
 from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
@@ -51,7 +53,7 @@ def test_the_header_says_what_a_controller_must_know(written: list[Path], short_
     assert header["valid_from_utc"] == f"{row['start_utc'].isoformat(timespec='milliseconds')}Z"
     assert header["element_epoch_utc"] == short_plan.summary["spacecraft"][row["spacecraft"]]["element_epoch_utc"]
     assert header["expires_utc"] == EXPIRES
-    assert header["refraction"] == "not included"
+    assert header["refraction"].startswith("not included")
     assert header["caution"].splitlines() == list(CAUTIONS)
 
 
@@ -75,6 +77,29 @@ def test_a_command_arrives_at_its_carrier(short_plan: PlanRecord, short_run: Run
     table = pointing_table(row, short_run, 10.0)
     arriving = table["station_s-command_hz"] * (1.0 - table["range_rate_km_s"] / SPEED_OF_LIGHT_KM_S)
     assert np.ptp(arriving) < 2.0
+
+
+def test_where_the_policy_counts_refraction_elevations_are_apparent(
+    short_plan: PlanRecord, short_run: Run, tmp_path: Path
+) -> None:
+    bent_run = replace(short_run, policy=short_run.policy.model_copy(update={"refraction": "itu_p834"}))
+    row = short_plan.contacts.iloc[0]
+    bent, straight = pointing_table(row, bent_run), pointing_table(row, short_run)
+    site = short_run.sites[row["site"]]
+    look = look_angles(short_run.orbits[row["spacecraft"]], site, straight["utc"].to_numpy())
+    assert straight["elevation_deg"].to_numpy() == pytest.approx(look.elevation_deg, abs=1e-9)
+    raised = bent["elevation_deg"].to_numpy() - look.elevation_deg
+    expected = apparent_deg(look.elevation_deg, site.height_m / 1e3) - look.elevation_deg
+    assert raised == pytest.approx(expected, abs=1e-9)
+    assert raised.min() > 0.0
+    # About a tenth of a degree at 5 deg of elevation (value from memory), less the higher it stands.
+    assert raised.max() == pytest.approx(raised[np.argmin(look.elevation_deg)])
+    others = [name for name in straight.columns if name != "elevation_deg"]
+    assert bent[others].equals(straight[others])
+    one = replace(short_plan, contacts=short_plan.contacts.head(1))
+    header, _ = read_pointing_table(write_pointing_tables(one, bent_run, tmp_path, Issue(1.0, EXPIRES))[0])
+    assert header["refraction"].startswith("included: elevations are apparent")
+    assert "P.834" in header["refraction"]
 
 
 @pytest.mark.parametrize("step_s", [0.5, 7.0])

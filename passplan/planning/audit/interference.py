@@ -1,9 +1,9 @@
-"""Does a contact disturb another one of the plan: C/I of every two that send at once, computed anew."""
+"""Do contacts disturb another one of the plan: C/I against each, and against all that send at once, computed anew."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from itertools import permutations
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -24,54 +24,92 @@ _LINEAR = ("H", "V")
 
 
 def check_interference(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """A fault for each contact that hears another spacecraft of the plan too well while that one sends."""
+    """A fault for each contact that hears others of the plan too well, one of them alone or all that send at once."""
     required_db = run.policy.required_c_over_i_db
     if required_db is None:
         return
     sending = [contact for contact in contacts if contact.service != "command"]
-    for victim, other in permutations(sending, 2):
-        begin_s, end_s = max(victim.start_s, other.start_s), min(victim.end_s, other.end_s)
-        if begin_s < end_s and victim.spacecraft != other.spacecraft:
-            least_db = _least_db(run, victim, other, np.arange(begin_s, end_s, 1.0))
-            if least_db < required_db - _TOLERANCE_DB:
-                sentence = f"{other.spacecraft} sends at the same time and leaves a C/I of {least_db:.1f} dB"
-                yield Fault("interference", victim.place, f"{sentence}, {required_db:g} dB are required")
+    for victim in sending:
+        ear = _ear(run, victim)
+        if ear is None:
+            continue
+        time_s = np.arange(victim.start_s, victim.end_s, 1.0)
+        heard, alone = np.zeros_like(time_s), False
+        for other in sending:
+            together = (time_s >= other.start_s) & (time_s < other.end_s)
+            if victim.spacecraft != other.spacecraft and np.any(together) and _in_band(run, ear.radio, other):
+                one = _over_carrier(run, ear, other, time_s[together])
+                heard[together] += one
+                if (least_db := _decibel(one)) < required_db - _TOLERANCE_DB:
+                    alone = True
+                    sentence = f"{other.spacecraft} sends at the same time and leaves a C/I of {least_db:.1f} dB"
+                    yield Fault("interference", victim.place, f"{sentence}, {required_db:g} dB are required")
+        if not alone and (least_db := _decibel(heard)) < required_db - _TOLERANCE_DB:
+            sentence = f"all that send at the same time leave a C/I of {least_db:.1f} dB"
+            yield Fault("interference", victim.place, f"{sentence}, {required_db:g} dB are required")
 
 
-def _least_db(run: Run, victim: Contact, other: Contact, time_s: Floats) -> float:
+@dataclass(frozen=True)
+class _Ear:
+    """The receiver of a contact: its beam, and what the wanted carrier loses on the way into it."""
+
+    victim: Contact
+    radio: DownlinkRadio
+    peak_dbi: float
+    width_deg: float
+    mismatch_db: float
+
+
+def _ear(run: Run, victim: Contact) -> _Ear | None:
     radio = run.radios[victim.radio]
-    antenna = run.antennas[victim.antenna]
-    site = run.sites[antenna.site]
     if not isinstance(radio, DownlinkRadio):
-        return np.inf
+        return None
     fitting = [
         (nominal_db_per_k(r) - r.pointing_loss_db - loss_db, loss_db, r)
-        for r in (run.receivers[name] for name in antenna.receivers)
+        for r in (run.receivers[name] for name in run.antennas[victim.antenna].receivers)
         if (loss_db := matching_loss_db(radio, r)) is not None
     ]
     if not fitting:
-        return np.inf
+        return None
     _, mismatch_db, receiver = max(fitting, key=lambda entry: entry[0])
     across_m = diameter_m(receiver, radio.frequency_mhz)
     width_deg = receiver.beamwidth_deg
     if width_deg is None:
         if across_m is None:
-            return np.inf
+            return None
         width_deg = beamwidth_deg(radio.frequency_mhz, across_m)
-    peak_dbi = receiver.gain_dbi if receiver.gain_dbi is not None else 10.0 * np.log10(27_000.0 / width_deg**2)
+    peak_dbi = receiver.gain_dbi if receiver.gain_dbi is not None else 10.0 * float(np.log10(27_000.0 / width_deg**2))
+    return _Ear(victim, radio, peak_dbi, width_deg, mismatch_db)
+
+
+def _in_band(run: Run, radio: DownlinkRadio, other: Contact) -> bool:
+    aboard = (run.radios[name] for name in run.spacecraft[other.spacecraft].radios)
+    return any(isinstance(item, DownlinkRadio) and _share(radio, item) > 0.0 for item in aboard)
+
+
+def _over_carrier(run: Run, ear: _Ear, other: Contact, time_s: Floats) -> Floats:
+    """Power of the other spacecraft over that of the wanted one, as received."""
+    victim, radio, width_deg = ear.victim, ear.radio, ear.width_deg
+    site = run.sites[run.antennas[victim.antenna].site]
     wanted = sight(run.orbits[victim.spacecraft], site, run.start_utc, time_s)
     seen = sight(run.orbits[other.spacecraft], site, run.start_utc, time_s)
     apart_deg = _apart_deg(wanted, seen)
-    aside_db = peak_dbi - dish_gain_dbi(apart_deg, peak_dbi, width_deg)
-    carrier_dbw = _arriving_dbw(radio, wanted, site.latitude_deg, site.height_m) - radio.pointing_loss_db - mismatch_db
+    aside_db = ear.peak_dbi - dish_gain_dbi(apart_deg, ear.peak_dbi, width_deg)
+    lost_db = radio.pointing_loss_db + ear.mismatch_db
+    carrier_dbw = _arriving_dbw(radio, wanted, site.latitude_deg, site.height_m) - lost_db
     power_w = np.zeros_like(time_s)
     for item in (run.radios[name] for name in run.spacecraft[other.spacecraft].radios):
         if isinstance(item, DownlinkRadio) and (share := _share(radio, item)) > 0.0:
             guard_db = np.where(apart_deg <= width_deg, _guard_db(radio.polarisation, item.polarisation), 0.0)
             level_dbw = _arriving_dbw(item, seen, site.latitude_deg, site.height_m) - aside_db - guard_db
             power_w += share * 10.0 ** (level_dbw / 10.0)
-    heard = (seen.elevation_deg > 0.0) & (power_w > 0.0)
-    return float(np.min(carrier_dbw[heard] - 10.0 * np.log10(power_w[heard]))) if np.any(heard) else np.inf
+    return np.asarray(np.where(seen.elevation_deg > 0.0, power_w / 10.0 ** (carrier_dbw / 10.0), 0.0))
+
+
+def _decibel(over_carrier: Floats) -> float:
+    """Least C/I [dB]; infinite where nothing is heard."""
+    most = float(np.max(over_carrier, initial=0.0))
+    return -10.0 * float(np.log10(most)) if most > 0.0 else float("inf")
 
 
 def _arriving_dbw(radio: DownlinkRadio, seen: Sight, latitude_deg: float, height_m: float) -> Floats:

@@ -31,8 +31,7 @@ def check_times(run: Run, contact: Contact) -> Iterator[Fault]:
 
 def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
     """The antenna is open throughout the contact and the time to prepare and to release."""
-    antenna = run.antennas[contact.antenna]
-    held_from_s, held_until_s = contact.start_s - antenna.prepare_s, contact.end_s + antenna.release_s
+    held_from_s, held_until_s = held(run, contact)
     for closure in run.closures:
         if closure.antenna != contact.antenna:
             continue
@@ -53,28 +52,49 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
 
 def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
     """No antenna and no spacecraft has two contacts at a time, setup times of antennas counted."""
-    setup_s = {name: antenna.prepare_s + antenna.release_s for name, antenna in run.antennas.items()}
-    yield from _overlaps(contacts, "antenna", lambda contact: contact.antenna, lambda name: setup_s[name])
-    yield from _overlaps(contacts, "spacecraft", lambda contact: contact.spacecraft, lambda _: 0.0)
+    yield from _overlaps(contacts, "antenna", lambda contact: contact.antenna, lambda contact: held(run, contact))
+    yield from _overlaps(
+        contacts, "spacecraft", lambda contact: contact.spacecraft, lambda contact: (contact.start_s, contact.end_s))
+
+
+def held(run: Run, contact: Contact) -> tuple[float, float]:
+    """The time [s] that a contact holds its antenna, preparing and releasing included."""
+    antenna = run.antennas[contact.antenna]
+    carriers = {contact.frequency_mhz}
+    if contact.service == "both":
+        radios = (run.radios[name] for name in run.spacecraft[contact.spacecraft].radios)
+        carriers |= {radio.frequency_mhz for radio in radios if radio.direction == "command"}
+    before, after = [], []
+    for row in antenna.setup:
+        in_band = row.low_mhz is None or any(row.low_mhz <= f <= (row.high_mhz or 0.0) for f in carriers)
+        if in_band and row.service in (None, contact.service):
+            before += [] if row.prepare_s is None else [row.prepare_s]
+            after += [] if row.release_s is None else [row.release_s]
+    return (
+        contact.start_s - (max(before) if before else antenna.prepare_s),
+        contact.end_s + (max(after) if after else antenna.release_s))
 
 
 def _overlaps(
-    contacts: Sequence[Contact], what: str, owner: Callable[[Contact], str], setup_s: Callable[[str], float]
+    contacts: Sequence[Contact], what: str, owner: Callable[[Contact], str],
+    span: Callable[[Contact], tuple[float, float]],
 ) -> Iterator[Fault]:
-    groups: dict[str, list[Contact]] = defaultdict(list)
+    groups: dict[str, list[tuple[float, float, Contact]]] = defaultdict(list)
     for contact in contacts:
-        groups[owner(contact)].append(contact)
+        groups[owner(contact)].append((*span(contact), contact))
     for name, group in groups.items():
-        # The one that ends last so far is the one that can stand in the way.
-        latest = group[0]
-        for contact in group[1:]:
-            gap_s = contact.start_s - latest.end_s
-            if gap_s < setup_s(name):
-                how = "overlap" if gap_s < 0.0 else f"leave {gap_s:g} s between them, {setup_s(name):g} s are needed"
+        group.sort(key=lambda entry: entry[:2])
+        # The one that is held longest so far is the one that can stand in the way.
+        _, busy_s, latest = group[0]
+        for from_s, until_s, contact in group[1:]:
+            if from_s < busy_s:
+                gap_s = contact.start_s - latest.end_s
+                needed_s = busy_s - latest.end_s + contact.start_s - from_s
+                how = "overlap" if gap_s < 0.0 else f"leave {gap_s:g} s between them, {needed_s:g} s are needed"
                 yield Fault(
                     f"{what}_overlap",
                     f"{what} {name}",
                     f"contacts {latest.contact_id} and {contact.contact_id} {how}",
                 )
-            if contact.end_s > latest.end_s:
-                latest = contact
+            if until_s > busy_s:
+                busy_s, latest = until_s, contact

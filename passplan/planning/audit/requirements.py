@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
 from datetime import datetime
 from typing import Any
 
@@ -12,32 +11,32 @@ import numpy as np
 from passplan.inputs.calendar_records import Request
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
+from passplan.planning.audit.decisions import decided, frozen
 from passplan.planning.audit.faults import Fault
+from passplan.planning.audit.guarantees import promised
 from passplan.planning.audit.rows import Contact
+from passplan.planning.audit.standing import Standing
 
 # Plans count in whole seconds; within a second of the limit either answer is right.
 _TOLERANCE_S = 1.0
 
 
-@dataclass(frozen=True)
-class _Standing:
-    """How a requirement fares: surely missed, surely met, or so close that either may be said; a sentence."""
-
-    missed: bool
-    met: bool
-    sentence: str
+_PLACES = {"command": "spacecraft", "daily": "the", "guarantee": "the"}
 
 
 def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[str, Any]) -> Iterator[Fault]:
-    """Requests and command intervals against the contacts and against the shortfalls that the plan admits."""
+    """Requests, decisions and command intervals against the contacts and the shortfalls that the plan admits."""
     standings = {("request", request.name): _request(run, request, contacts) for request in run.requests}
     for name in run.orbits:
         every_h = run.spacecraft[name].command_every_h or run.policy.command_every_h
         if every_h is not None:
             standings["command", name] = _command(run, name, every_h, contacts)
+    standings.update(decided(run, contacts))
+    standings.update(frozen(run, contacts))
+    standings.update(promised(run, contacts))
     admitted = [(str(entry.get("kind")), str(entry.get("name"))) for entry in summary.get("shortfalls", [])]
     for (kind, name), standing in standings.items():
-        place = f"request {name}" if kind == "request" else f"spacecraft {name}"
+        place = f"{_PLACES.get(kind, kind)} {name}"
         listed = (kind, name) in admitted
         if standing.missed and not listed:
             yield Fault(kind, place, f"{standing.sentence}, and the plan does not say so")
@@ -48,22 +47,24 @@ def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[s
             yield Fault(kind, f"shortfall {name}", "the run has no such requirement")
 
 
-def _request(run: Run, request: Request, contacts: Sequence[Contact]) -> _Standing:
+def _request(run: Run, request: Request, contacts: Sequence[Contact]) -> Standing:
     earliest_s, latest_s = _seconds(run, request.earliest_utc), _seconds(run, request.latest_utc)
     met = any(
         contact.spacecraft == request.spacecraft
         and request.antenna in (None, contact.antenna)
         and request.site in (None, run.antennas[contact.antenna].site)
         and contact.service in (request.service, "both")
+        and (request.service != "ranging" or run.antennas[contact.antenna].ranging)
         and earliest_s <= contact.start_s
         and contact.end_s <= latest_s
+        and (not request.fixed or (contact.start_s < earliest_s + 1.0 and contact.end_s > latest_s - 1.0))
         and contact.end_s - contact.start_s >= request.min_duration_s
         for contact in contacts
     )
-    return _Standing(not met, met, "no contact meets it")
+    return Standing(not met, met, "no contact meets it")
 
 
-def _command(run: Run, name: str, every_h: float, contacts: Sequence[Contact]) -> _Standing:
+def _command(run: Run, name: str, every_h: float, contacts: Sequence[Contact]) -> Standing:
     """How the spacecraft fares with its command contacts.
 
     The interval runs from the end of one command contact to the start of the next, from the last one
@@ -78,7 +79,7 @@ def _command(run: Run, name: str, every_h: float, contacts: Sequence[Contact]) -
             last_s = max(last_s, contact.end_s)
     late_s = max(late_s, run.horizon_s - max(last_s + every_h * 3600.0, 0.0))
     sentence = f"a command contact is due every {every_h:g} h, and one comes {late_s:.0f} s late or not at all"
-    return _Standing(late_s > _TOLERANCE_S, late_s < -_TOLERANCE_S, sentence)
+    return Standing(late_s > _TOLERANCE_S, late_s < -_TOLERANCE_S, sentence)
 
 
 def _seconds(run: Run, instant: datetime) -> float:

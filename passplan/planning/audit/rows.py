@@ -15,8 +15,8 @@ from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault
 
 _CONTACT_COLUMNS = (
-    "contact_id", "spacecraft", "antenna", "site", "service", "radio", "frequency_mhz", "polarisation", "start_utc",
-    "end_utc", "duration_s", "usable_s", "modcod", "volume_mb", "min_margin_db", "weight", "value", "cost",
+    "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "frequency_mhz", "polarisation",
+    "start_utc", "end_utc", "duration_s", "usable_s", "modcod", "volume_mb", "min_margin_db", "weight", "value", "cost",
 )
 _SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "volume_mb")
 _SERVICES = ("downlink", "command", "both")
@@ -38,6 +38,7 @@ class Contact:
     """One row of the contacts table with its segments in time order; seconds from the horizon's start."""
 
     contact_id: str
+    window_id: str
     spacecraft: str
     antenna: str
     site: str
@@ -117,6 +118,7 @@ def _nonsense(run: Run, contact: Contact) -> list[Fault]:
 def _contact(run: Run, record: Mapping[Hashable, Any], pieces: tuple[Piece, ...]) -> Contact:
     return Contact(
         contact_id=_text(record["contact_id"]),
+        window_id=_text(record["window_id"]),
         spacecraft=_text(record["spacecraft"]),
         antenna=_text(record["antenna"]),
         site=_text(record["site"]),

@@ -92,7 +92,8 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
                 sentence = f"it brings down {sent_mb:.6f} MB of what is aboard, not {piece.volume_mb:.6f} MB"
                 yield Fault("volume", contact.place, sentence)
         yield from _check_entry(name, stated.get(name), balance, tolerance_mb)
-        earned.append(craft.weight * balance.delivered_mb - run.policy.spill_cost_per_mb * balance.lost_mb)
+        kept_mb = run.policy.left_worth_share * balance.left_mb
+        earned.append(craft.weight * (balance.delivered_mb + kept_mb) - run.policy.spill_cost_per_mb * balance.lost_mb)
         delivered.append(balance.delivered_mb)
     for contact in contacts:
         yield from _check_money(run, contact)

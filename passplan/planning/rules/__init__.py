@@ -16,16 +16,39 @@ from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
+from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
+from passplan.planning.rules.decisions import decision_needs, decision_wishes, decisions, forbid_blocks
+from passplan.planning.rules.guarantees import guarantee_needs, guarantees
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
-RULES: tuple[Rule, ...] = (antenna_time, slew_time, spacecraft_time, requests, command_interval, interference)
-BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (closure_blocks,)
-WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (request_wishes,)
-NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = ()
+RULES: tuple[Rule, ...] = (
+    antenna_time,
+    slew_time,
+    spacecraft_time,
+    contact_gaps,
+    requests,
+    command_interval,
+    interference,
+    decisions,
+    guarantees,
+)
+BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (
+    closure_blocks,
+    forbid_blocks,
+)
+WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (
+    request_wishes,
+    decision_wishes,
+)
+NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
+    gap_needs,
+    decision_needs,
+    guarantee_needs,
+)
 
 
 def all_terms(problem: Problem, rules: tuple[Rule, ...] = RULES) -> Terms:

@@ -19,7 +19,8 @@ def requests(problem: Problem) -> Terms:
     wanted = []
     for need in problem.requests:
         reason = "the spacecraft takes no part in this run" if need.spacecraft < 0 else ""
-        wanted.append(Wanted(need.name, need.craft_name, np.flatnonzero(fits(problem.options, need)), reason=reason))
+        wanted.append(Wanted(
+            need.name, need.craft_name, np.flatnonzero(fits(problem.options, need)), need.points, reason))
     return Terms(wanted=tuple(wanted))
 
 
@@ -38,6 +39,8 @@ def fits(options: Options, need: RequestNeed) -> Flags:
         served &= options.downlink
     if need.service in ("command", "both"):
         served &= options.command
+    if need.fixed:
+        served &= (options.start_s == need.earliest_s) & (options.end_s == need.latest_s)
     return np.asarray(
         served
         & (options.spacecraft == need.spacecraft)

@@ -12,6 +12,7 @@ Lane         at most one option at a time             one row per maximal clique
 Rows         amounts add up to at most a limit        the rows                        running loads; prices
 Wanted       one of these options, or a shortfall     covering row with slack         bit of a label
 Recurrence   covered time, or a shortfall             counting rows with slack        last end in a label
+AtLeast      amounts add up to a need, or shortfall   covering row with slack         running loads
 ===========  =======================================  ==============================  =====================
 
 Shortfalls are counted in points and are minimised before any value is looked at (tier 1).
@@ -20,11 +21,13 @@ Shortfalls are counted in points and are minimised before any value is looked at
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Literal, Protocol
 
 import numpy as np
 
 from passplan.planning.problem import Floats, Integers, Problem
+
+WantedKind = Literal["request", "pin", "frozen", "emergency"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -82,7 +85,7 @@ class Rows:
 class Wanted:
     """At least one of ``options``, all of the spacecraft ``owner``, or a shortfall of ``points``.
 
-    ``reason`` says why there are no options, if the rule knows.
+    ``reason`` says why there are no options, if the rule knows. ``kind`` says who wants it.
     """
 
     name: str
@@ -90,6 +93,7 @@ class Wanted:
     options: Integers
     points: float = 1.0
     reason: str = ""
+    kind: WantedKind = "request"
 
 
 @dataclass(frozen=True, eq=False)
@@ -110,6 +114,23 @@ class Recurrence:
 
 
 @dataclass(frozen=True, eq=False)
+class AtLeast:
+    """The amounts of the chosen options add up to at least ``need``; what is missing is a shortfall.
+
+    ``points`` is what missing all of it weighs; missing a part weighs in proportion. ``kind`` is that of the
+    shortfall, ``unit`` what is counted. Amounts are not negative, ``need`` is positive.
+    """
+
+    kind: str
+    name: str
+    unit: str
+    options: Integers
+    amounts: Floats
+    need: float
+    points: float = 1.0
+
+
+@dataclass(frozen=True, eq=False)
 class Terms:
     """What one rule, or all of them together, asks for."""
 
@@ -118,11 +139,12 @@ class Terms:
     rows: tuple[Rows, ...] = ()
     wanted: tuple[Wanted, ...] = ()
     recurrences: tuple[Recurrence, ...] = ()
+    guarantees: tuple[AtLeast, ...] = ()
 
     def __add__(self, other: Terms) -> Terms:
         return Terms(
             self.removals + other.removals, self.lanes + other.lanes, self.rows + other.rows,
-            self.wanted + other.wanted, self.recurrences + other.recurrences)
+            self.wanted + other.wanted, self.recurrences + other.recurrences, self.guarantees + other.guarantees)
 
 
 class Rule(Protocol):

@@ -17,7 +17,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers
+from passplan.planning.certificate import PriceCertificate
+from passplan.planning.problem import Floats, Integers, ragged_ranges
+from passplan.planning.rules.terms import Terms
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.labels import Work, make_work
@@ -117,6 +119,15 @@ def _add_prices(a: FleetArrays, clique_price: Floats, row_price: Floats, total: 
                 total[o] += clique_price[c]
         for e in range(a.load_at[o], a.load_at[o + 1]):
             total[o] += a.load_amount[e] * row_price[a.load_row[e]]
+
+
+def certificate_of(arrays: FleetArrays, terms: Terms, bounds: BoundSearch) -> PriceCertificate:
+    """The best prices found, in the words of the terms."""
+    counts = np.array([len(rows) for rows in terms.rows], dtype=np.int64)
+    return PriceCertificate(
+        arrays.clique_lane, arrays.clique_s, bounds.best_price[: arrays.cliques],
+        np.repeat(np.arange(len(counts)), counts), ragged_ranges(np.zeros_like(counts), counts),
+        bounds.best_price[arrays.cliques:] / units(arrays), bounds.point_worth, bounds.plan_points)
 
 
 class BoundSearch:

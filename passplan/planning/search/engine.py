@@ -16,10 +16,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.problem import Flags, Floats, Integers, Limits
 from passplan.planning.result import OPTIMAL_GAP, relative_gap
-from passplan.planning.search.bound import BoundSearch, Sweeper, option_prices
+from passplan.planning.rules.terms import Terms
+from passplan.planning.search.bound import BoundSearch, Sweeper, certificate_of, option_prices
 from passplan.planning.search.fleetarrays import FleetArrays, load_plan, unload_plan
 from passplan.planning.search.labels import make_work
 from passplan.planning.search.rebuild import Ground, rebuild
@@ -47,21 +49,18 @@ _RUN = 64
 class Found:
     """What the search found: options of the plan, its bound, and the prices that prove it.
 
-    ``price`` (c + r,) is of cliques and rows, ``plan_points`` the points of shortfall that the bound is for.
     ``left_alone`` counts spacecraft whose contacts serve a requirement that the search cannot count.
     """
 
     chosen: tuple[int, ...]
     bound: float
-    price: Floats
-    point_worth: float
-    plan_points: float
+    certificate: PriceCertificate
     rounds: int
     left_alone: int
 
 
 def search_plan(
-    arrays: FleetArrays, limits: Limits, clock: Clock, start: Sequence[int], points: float,
+    arrays: FleetArrays, terms: Terms, limits: Limits, clock: Clock, start: Sequence[int], points: float,
     tell: Callable[[float, float], None] | None = None,
 ) -> Found:
     """Improve the plan ``start`` (options by number) of ``points`` of shortfall, and bound it.
@@ -70,7 +69,7 @@ def search_plan(
     """
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
-        return _Rounds(arrays, limits, start, points, pool, threads).run(clock, tell)
+        return _Rounds(arrays, limits, start, points, pool, threads).run(terms, clock, tell)
 
 
 class _Rounds:
@@ -95,7 +94,7 @@ class _Rounds:
             arrays, self.sweeper, points, self._first_point_worth(), self._contact_worth())
         self.bound_rate = self.value_rate = 0.0
 
-    def run(self, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
+    def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
         effort = _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
         sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))
         rounds, idle, round_s = 0, 0, 0.0
@@ -121,8 +120,8 @@ class _Rounds:
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
         return Found(
-            tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound, self.bounds.best_price, self.bounds.point_worth, self.bounds.plan_points,
-            rounds, int((~self.movable).sum()))
+            tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound,
+            certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()))
 
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""

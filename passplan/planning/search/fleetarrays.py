@@ -8,14 +8,14 @@ a difference of a running sum over the prices of cliques.
 A lane of a single spacecraft in which every one of its contacts has a place is kept by the order of its contacts
 alone (``arrival``); any other lane of one spacecraft is laid out as if it were shared.
 
-What the schedule program cannot count (a request that several spacecraft could meet, a second recurrence) is
-left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so that the search
+What the schedule program cannot count (a request that several spacecraft could meet, a second recurrence, a
+guarantee) is left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so that the search
 leaves a spacecraft alone that uses one.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -51,7 +51,8 @@ class FleetArrays(NamedTuple):
     spacecraft may add to that row too. ``limit`` is per row.
 
     ``wants`` (n, 60) are the points of each bit, ``recur`` (n, 3) from, until and points per second of the recurrence
-    (until 0 where there is none). No spacecraft can have more than ``most_contacts``.
+    (until 0 where there is none). ``clique_lane`` and ``clique_s`` say of each clique which of the terms' lanes it is
+    of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
     """
 
     option: Integers
@@ -81,6 +82,8 @@ class FleetArrays(NamedTuple):
     horizon_s: int
     spill: float
     cliques: int
+    clique_lane: Integers
+    clique_s: Integers
     most_contacts: int
 
 
@@ -105,13 +108,16 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         node[mine] = np.searchsorted(distinct, start_s[mine])
         arrival[mine] = np.searchsorted(distinct, ready_s[mine])
         starts.append(distinct)
-    use_at, use_first, use_last, cliques = _uses(shared, place, len(order))
+    use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
     bits, wants, uncounted = _wanted(problem, terms, place, len(order))
     renews, recur = _recurrences(problem, terms, place, uncounted)
+    for promise in terms.guarantees:
+        kept = place[promise.options]
+        uncounted[kept[kept >= 0]] = True
     load_at, load_row, load_amount, limit = _loads(terms, place, len(order))
     craft_of = np.repeat(np.arange(len(fleet)), np.diff(first))
     clash = np.full(len(order), -1, dtype=np.int64)
-    find_clashes(first, start_s, end_s, use_at, use_first, use_last, _longest_hold(problem, shared), clash)
+    find_clashes(first, start_s, end_s, use_at, use_first, use_last, _longest_hold(problem, shared.values()), clash)
     return FleetArrays(
         option=order, first=first,
         craft=np.column_stack([fleet.weight, fleet.generation_mb_per_s, fleet.capacity_mb, fleet.start_fill_mb,
@@ -124,22 +130,26 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         cost=problem.worth_per_money * options.cost[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
-        wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=cliques,
+        wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=len(clique_s),
+        clique_lane=clique_lane, clique_s=clique_s,
         most_contacts=_longest_chain(first, node, arrival))
 
 
 def _own_and_shared(
     problem: Problem, terms: Terms, place: Integers, first: Integers,
-) -> tuple[list[Lane], list[Lane]]:
-    """Lanes that the order of a spacecraft's contacts keeps, and those laid out as cliques."""
-    own, shared = [], []
-    for lane in terms.lanes:
+) -> tuple[list[Lane], dict[int, Lane]]:
+    """Lanes that the order of a spacecraft's contacts keeps, and those laid out as cliques, by number."""
+    own, shared = [], {}
+    for k, lane in enumerate(terms.lanes):
         mine = lane.options[place[lane.options] >= 0]
         whole = lane.owner >= 0 and len(mine) == first[lane.owner + 1] - first[lane.owner]
         if whole and len(mine) and np.all(problem.options.spacecraft[mine] == lane.owner):
             lead_s = problem.options.start_s[lane.options] - lane.start_s
             whole = bool(np.all(lead_s == lead_s[0]) and np.all(lane.end_s + lead_s >= problem.options.end_s[lane.options]))
-        (own if whole else shared).append(lane)
+        if whole:
+            own.append(lane)
+        else:
+            shared[k] = lane
     return own, shared
 
 
@@ -153,20 +163,29 @@ def _ready(own: list[Lane], place: Integers, start_s: Integers, end_s: Integers)
     return ready_s
 
 
-def _uses(shared: list[Lane], place: Integers, count: int) -> tuple[Integers, Integers, Integers, int]:
+def _uses(
+    shared: dict[int, Lane], place: Integers, count: int,
+) -> tuple[Integers, Integers, Integers, Integers, Integers]:
+    """Ranges of cliques by option, and for each clique its lane's index in the terms and its instant."""
     entries = [(np.zeros(0, dtype=np.int64),) * 3]
+    of_clique = [(np.zeros(0, dtype=np.int64),) * 2]
     base = 0
-    for lane in shared:
+    for k, lane in shared.items():
         kept = place[lane.options] >= 0
         lows, highs, cliques = clique_spans(lane.start_s[kept], lane.end_s[kept])
         entries.append((place[lane.options[kept]], lows + base, highs + base))
+        # A clique's instant is the last start among those that begin with it.
+        instant_s = np.full(cliques, np.iinfo(np.int64).min)
+        np.maximum.at(instant_s, lows, lane.start_s[kept])
+        of_clique.append((np.full(cliques, k), instant_s))
         base += cliques
     where, lows, highs = (np.concatenate(parts) for parts in zip(*entries, strict=True))
+    lanes, instants = (np.concatenate(parts) for parts in zip(*of_clique, strict=True))
     order = np.argsort(where, kind="stable")
-    return offsets_of(np.bincount(where, minlength=count)), lows[order], highs[order], base
+    return offsets_of(np.bincount(where, minlength=count)), lows[order], highs[order], lanes, instants
 
 
-def _longest_hold(problem: Problem, shared: list[Lane]) -> int:
+def _longest_hold(problem: Problem, shared: Iterable[Lane]) -> int:
     """The longest time [s] that two contacts of one shared lane can need between them."""
     options = problem.options
     before_s = after_s = 0

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import base64
 import hashlib
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from functools import lru_cache
 from importlib.resources import files
 from pathlib import Path
@@ -15,16 +15,18 @@ from jinja2 import Environment, PackageLoader, StrictUndefined
 from markupsafe import Markup
 
 from passplan.inputs.run import Run
+from passplan.planning.backlog import Backlog, backlogs
 from passplan.planning.record import PlanRecord
-from passplan.report.backlog import Backlog, backlogs
 from passplan.report.cautions import CAUTIONS
 from passplan.report.keys import spacecraft_keys
-from passplan.report.page.lanes import Day, Names, antenna_ribbons, hours_of, spacecraft_ribbons, storage_path
+from passplan.report.page.axis import Band, Day
+from passplan.report.page.lanes import Names, antenna_ribbons, spacecraft_ribbons, storage_path
 from passplan.report.page.payload import payload
-from passplan.report.page.ribbons import UNIT_S
+from passplan.report.page.ribbons import UNIT_S, Ribbon
+from passplan.report.standing import standing_lists, tier_lines
 from passplan.report.tracks import WindowTrack, window_tracks
-from passplan.report.usage import antenna_use, causes
-from passplan.report.words import STATUS_WORDS, clock, megabytes, minute, rate
+from passplan.report.usage import antenna_use, causes, lost_causes
+from passplan.report.words import LEAST_MB, STATUS_WORDS, clock, megabytes, minute, rate
 
 PAGE = "report.html"
 _SCRIPT = ("words", "panorama", "chart", "contact", "filters", "view", "start")
@@ -46,13 +48,15 @@ def render_page(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
             cautions=CAUTIONS,
             draft=record.summary.get("approval", "draft") == "draft",
             status=STATUS_WORDS.get(record.summary["status"], record.summary["status"]),
+            least_mb=LEAST_MB,
             lost_mb=sum(store["lost_mb"] for store in record.summary["storage"].values()),
-            antennas=_antennas(record, tracks, names),
-            spacecraft=_spacecraft(record, tracks, names),
+            bands=_bands(record, tracks, names),
             contacts=_contact_rows(record),
             use=antenna_use(record),
             causes=causes(record, tracks),
-            hours=hours_of(Day.of(record)),
+            lost_causes=_lost_causes(record),
+            tiers=tier_lines(record.summary),
+            standing=standing_lists(record.summary),
             lost=_lost(record),
             ages=_ages(record),
             data=payload(record, run, tracks, names),
@@ -96,34 +100,35 @@ def _digest(script: str) -> str:
     return "sha256-" + base64.b64encode(hashlib.sha256(script.encode("utf-8")).digest()).decode("ascii")
 
 
-def _antennas(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
-    ribbons = antenna_ribbons(record, tracks, names)
+def _bands(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
+    """The lanes of each band: those of the antennas, then those of the spacecraft."""
     use = {row.antenna: row for row in antenna_use(record)}
-    return [
-        {"name": name, "number": number, "site": names.sites[use[name].site], "use": use[name], "ribbon": ribbons[name]}
-        for name, number in names.antennas.items()
-    ]
+    stores = backlogs(record)
+    found = []
+    for number, band in enumerate(Day.of(record).bands()):
+        ribbons = antenna_ribbons(record, tracks, names, band)
+        antennas = [
+            {"name": name, "number": k, "site": names.sites[use[name].site], "use": use[name], "ribbon": ribbons[name]}
+            for name, k in names.antennas.items()
+        ]
+        found.append({
+            "number": number, "axis": band, "hours": band.hours(), "antennas": antennas,
+            "spacecraft": _spacecraft(record, spacecraft_ribbons(record, tracks, names, band), stores, names, band),
+        })
+    return found
 
 
-def _spacecraft(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> list[dict[str, Any]]:
-    ribbons = spacecraft_ribbons(record, tracks, names)
-    stores: dict[str, Backlog] = backlogs(record)
+def _spacecraft(
+    record: PlanRecord, ribbons: Mapping[str, Ribbon], stores: Mapping[str, Backlog], names: Names, band: Band
+) -> list[dict[str, Any]]:
+    contacts = record.contacts["spacecraft"].value_counts()
     rows = []
     for name, number in names.spacecraft.items():
-        fill, loss = storage_path(stores[name])
-        rows.append(
-            {
-                "name": name,
-                "number": number,
-                "key": names.craft_keys[name],
-                "ribbon": ribbons[name],
-                "fill": fill,
-                "loss": loss,
-                "store": record.summary["storage"][name],
-                "facts": record.summary["spacecraft"][name],
-                "contacts": int((record.contacts["spacecraft"] == name).sum()),
-            }
-        )
+        fill, loss = storage_path(stores[name], band)
+        rows.append({
+            "name": name, "number": number, "key": names.craft_keys[name], "ribbon": ribbons[name], "fill": fill,
+            "loss": loss, "store": record.summary["storage"][name], "contacts": int(contacts.get(name, 0)),
+        })
     return rows
 
 
@@ -135,12 +140,23 @@ def _contact_rows(record: PlanRecord) -> list[dict[Any, Any]]:
     return rows
 
 
+def _lost_causes(record: PlanRecord) -> list[dict[str, Any]]:
+    """Causes of data not brought down, with lengths of bars in per cent of the dearest."""
+    found = lost_causes(record.summary)
+    longest = max((one.lost_value + one.left_value for one in found), default=0.0) or 1.0
+    return [
+        {"cause": one, "lost": round(100.0 * max(one.lost_value, 0.0) / longest, 1),
+         "left": round(100.0 * max(one.left_value, 0.0) / longest, 1)}
+        for one in found
+    ]
+
+
 def _lost(record: PlanRecord) -> list[dict[str, Any]]:
     """Spacecraft that lose data aboard, with what it was worth, the dearest first."""
     rows = []
     for name, store in record.summary["storage"].items():
         weight = record.summary["spacecraft"][name]["weight"]
-        if store["lost_mb"] > 0.05:
+        if store["lost_mb"] > LEAST_MB:
             rows.append({"name": name, "lost_mb": store["lost_mb"], "worth": weight * store["lost_mb"]})
     return sorted(rows, key=lambda row: (-row["worth"], row["name"]))
 

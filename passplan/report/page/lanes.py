@@ -7,19 +7,28 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-import pandas as pd
 
+from passplan.planning.backlog import Backlog
 from passplan.planning.record import PlanRecord
-from passplan.report.backlog import Backlog
-from passplan.report.page.ribbons import UNIT_S, Mark, Ribbon, Span, joined, levels, outline
-from passplan.report.page.scale import scale_for
+from passplan.report.page.axis import Band
+from passplan.report.page.ribbons import (
+    UNIT_S,
+    Mark,
+    Ribbon,
+    Share,
+    Span,
+    joined,
+    levels,
+    outline,
+    shared_heights,
+)
+from passplan.report.page.scale import RateScale, scale_for
 from passplan.report.rows import Row, grouped, rows
 from passplan.report.tracks import WindowTrack
 from passplan.report.words import clock, megabytes
 
-# Labels closer than this share of the width (at the narrowest drawing, 1 100 px a day) would touch.
-_APART_OF_A_DAY = 1.0
-_MIDNIGHT = pd.Timestamp("2000-01-01")
+# Labels closer than this share of the width (per cent; at the narrowest drawing, 1 100 px) would touch.
+_APART_PERCENT = 1.0
 
 
 @dataclass(frozen=True)
@@ -43,43 +52,24 @@ class Names:
         )
 
 
-@dataclass(frozen=True)
-class Day:
-    """The horizon as an axis."""
-
-    start_utc: pd.Timestamp
-    horizon_s: float
-
-    @classmethod
-    def of(cls, record: PlanRecord) -> Day:
-        start, end = (pd.Timestamp(record.summary[f"horizon_{edge}_utc"].rstrip("Z")) for edge in ("start", "end"))
-        return cls(start, (end - start).total_seconds())
-
-    def seconds(self, instant: Any) -> float:
-        if isinstance(instant, str):
-            instant = instant.rstrip("Z")
-        return float((pd.Timestamp(instant) - self.start_utc).total_seconds())
-
-    def span(self, start_utc: Any, end_utc: Any) -> tuple[float, float]:
-        """Left edge and width in per cent, cut to the horizon."""
-        first, last = (min(max(self.seconds(t), 0.0), self.horizon_s) for t in (start_utc, end_utc))
-        return round(100.0 * first / self.horizon_s, 3), round(100.0 * (last - first) / self.horizon_s, 3)
+def antenna_ribbons(
+    record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, band: Band
+) -> dict[str, Ribbon]:
+    """A ribbon for each antenna through one band; outlines and marks belong to spacecraft."""
+    return _ribbons(record, tracks, names, band, ("antenna", "spacecraft"))
 
 
-def antenna_ribbons(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> dict[str, Ribbon]:
-    """A ribbon for each antenna; outlines and marks belong to spacecraft."""
-    return _ribbons(record, tracks, names, "antenna", "spacecraft")
-
-
-def spacecraft_ribbons(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names) -> dict[str, Ribbon]:
-    """A ribbon for each spacecraft; outlines and marks belong to antennas."""
-    return _ribbons(record, tracks, names, "spacecraft", "antenna")
+def spacecraft_ribbons(
+    record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, band: Band
+) -> dict[str, Ribbon]:
+    """A ribbon for each spacecraft through one band; outlines and marks belong to antennas."""
+    return _ribbons(record, tracks, names, band, ("spacecraft", "antenna"))
 
 
 def _ribbons(
-    record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, own: str, partner: str
+    record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, band: Band, sides: tuple[str, str]
 ) -> dict[str, Ribbon]:
-    day = Day.of(record)
+    own, partner = sides
     owners = names.antennas if own == "antenna" else names.spacecraft
     numbers = names.antennas if partner == "antenna" else names.spacecraft
     by_window = dict(zip(record.windows["window_id"], tracks, strict=True))
@@ -91,49 +81,52 @@ def _ribbons(
         for window in windows.get(name, ()):
             top = float(by_window[window["window_id"]].rate_mbps.max(initial=0.0))
             tops[window[partner]] = max(tops.get(window[partner], 0.0), top)
-        scale = scale_for(tops.values())
-        ribbon = Ribbon(scale)
+        ribbon = Ribbon(scale_for(tops.values()))
         ribbon.sky = joined(
-            (numbers[window[partner]], outline(by_window[window["window_id"]], scale))
+            (numbers[window[partner]],
+             outline(by_window[window["window_id"]], ribbon.scale, band.first_s, band.last_s))
             for window in windows.get(name, ())
+            if band.touches(window["aos_utc"], window["los_utc"])
         )
+        mine = [row for row in contacts.get(name, ()) if band.touches(row["start_utc"], row["end_utc"])]
+        shares = shared_heights([(band.day.seconds(r["start_utc"]), band.day.seconds(r["end_utc"])) for r in mine])
         ribbon.used = joined(
-            (
-                numbers[row[partner]],
-                outline(
-                    by_window[row["window_id"]], scale, day.seconds(piece["start_utc"]), day.seconds(piece["end_utc"])
-                ),
-            )
-            for row in contacts.get(name, ())
+            (numbers[row[partner]], _used(by_window[row["window_id"]], ribbon.scale, band, piece, share))
+            for row, share in zip(mine, shares, strict=True)
             if row["window_id"] in by_window
             for piece in sent.get(row["contact_id"], ())
+            if band.touches(piece["start_utc"], piece["end_utc"])
         )
-        ribbon.marks = _marks(contacts.get(name, []), day, names, partner)
+        ribbon.marks = _marks(mine, shares, band, names, partner)
         if own == "antenna":
-            ribbon.spans = _closures(record.summary["antennas"][name]["closures"], day)
-        ribbon.spans += _frozen(record.summary, day)
+            ribbon.spans = _closures(record.summary["antennas"][name]["closures"], band)
+        ribbon.spans += _frozen(record.summary, band)
         found[name] = ribbon
     return found
 
 
-def _marks(contacts: Sequence[Row], day: Day, names: Names, partner: str) -> list[Mark]:
-    placed = [day.span(row["start_utc"], row["end_utc"]) for row in contacts]
-    apart = _APART_OF_A_DAY * 86_400.0 / max(day.horizon_s, 86_400.0)
-    heights = levels((left + width / 2 for left, width in placed), apart)
+def _used(track: WindowTrack, scale: RateScale, band: Band, piece: Row, share: Share) -> str:
+    first_s, last_s = (band.day.seconds(piece[f"{edge}_utc"]) for edge in ("start", "end"))
+    return outline(track, scale, max(first_s, band.first_s), min(last_s, band.last_s), share)
+
+
+def _marks(contacts: Sequence[Row], shares: Sequence[Share], band: Band, names: Names, partner: str) -> list[Mark]:
+    placed = [band.span(row["start_utc"], row["end_utc"]) for row in contacts]
+    heights = levels((left + width / 2 for left, width in placed), _APART_PERCENT)
     marks = []
-    for row, (left, width), level in zip(contacts, placed, heights, strict=True):
+    for row, (left, width), level, share in zip(contacts, placed, heights, shares, strict=True):
         key = names.craft_keys[row[partner]] if partner == "spacecraft" else str(names.antennas[row[partner]] + 1)
         brings = megabytes(row["volume_mb"]) if row["service"] != "command" else "command only"
         when = f"{clock(row['start_utc'])} to {clock(row['end_utc'])} UTC"
         label = f"{row['spacecraft']} on {row['antenna']}, {when}, {brings}"
-        marks.append(Mark(row["number"], left, width, key, level, label, row["origin"], row["change"]))
+        marks.append(Mark(row["number"], left, width, key, level, label, row["origin"], row["change"], share))
     return marks
 
 
-def _closures(closures: Sequence[Mapping[str, Any]], day: Day) -> list[Span]:
+def _closures(closures: Sequence[Mapping[str, Any]], band: Band) -> list[Span]:
     spans = []
     for closure in closures:
-        left, width = day.span(closure["start_utc"], closure["end_utc"])
+        left, width = band.span(closure["start_utc"], closure["end_utc"])
         if width > 0.0:
             label = (
                 f"{closure['kind']} {clock(closure['start_utc'])} to {clock(closure['end_utc'])} UTC {closure['note']}"
@@ -142,38 +135,29 @@ def _closures(closures: Sequence[Mapping[str, Any]], day: Day) -> list[Span]:
     return spans
 
 
-def _frozen(summary: Mapping[str, Any], day: Day) -> list[Span]:
+def _frozen(summary: Mapping[str, Any], band: Band) -> list[Span]:
     """The time up to which published contacts may no longer change, where the plan states one."""
     until = summary.get("frozen_until_utc")
     if not until:
         return []
-    left, width = day.span(summary["horizon_start_utc"], until)
+    left, width = band.span(summary["horizon_start_utc"], until)
     return [Span(left, width, "frozen", f"frozen until {clock(until)} UTC")] if width > 0.0 else []
 
 
-def storage_path(backlog: Backlog) -> tuple[str, str]:
+def storage_path(backlog: Backlog, band: Band) -> tuple[str, str]:
     """The fill as the ``d`` of a closed path (height 100 is the capacity), and the spans of loss as another."""
     top = backlog.capacity_mb or 1.0
-    x = np.rint(backlog.time_s / UNIT_S).astype(np.int64)
-    y = 100 - np.rint(100.0 * np.minimum(backlog.fill_mb / top, 1.0)).astype(np.int64)
+    first_s, last_s = band.first_s, min(band.last_s, float(backlog.time_s[-1]))
+    inside = (backlog.time_s > first_s) & (backlog.time_s < last_s)
+    time_s = np.concatenate([[first_s], backlog.time_s[inside], [last_s]])
+    fill_mb = np.concatenate([backlog.at(time_s[:1]), backlog.fill_mb[inside], backlog.at(time_s[-1:])])
+    x = np.rint(time_s / UNIT_S).astype(np.int64)
+    y = 100 - np.rint(100.0 * np.minimum(fill_mb / top, 1.0)).astype(np.int64)
     points = [f"{a} {b}" for a, b in zip(x.tolist(), y.tolist(), strict=True)]
     area = f"M{x[0]} 100L" + "L".join(dict.fromkeys(points)) + f"L{x[-1]} 100Z"
     lost = "".join(
         f"M{round(a / UNIT_S)} 0H{max(round(b / UNIT_S), round(a / UNIT_S) + 1)}V16H{round(a / UNIT_S)}Z"
-        for a, b in backlog.losing_s
+        for a, b in ((max(a, first_s), min(b, last_s)) for a, b in backlog.losing_s)
+        if b > a
     )
     return area, lost
-
-
-def hours_of(day: Day) -> list[tuple[float, str]]:
-    """Places of full hours in per cent of the width with their labels, as many as a screen holds."""
-    step = next(n for n in (1, 2, 3, 6, 12, 24, 48, 96, 192) if day.horizon_s / 3600.0 / n <= 24.5)
-    instant = day.start_utc.ceil("h")
-    marks = []
-    while day.seconds(instant) < day.horizon_s:
-        if (instant - _MIDNIGHT) % pd.Timedelta(hours=step) == pd.Timedelta(0):
-            # A date is wide: it stands in for 00 only where the labels lie far enough apart.
-            text = f"{instant:%d %b}" if instant.hour == 0 and step >= 3 else f"{instant:%H}"
-            marks.append((round(100.0 * day.seconds(instant) / day.horizon_s, 3), text))
-        instant += pd.Timedelta(hours=1)
-    return marks

@@ -12,8 +12,10 @@ from numpy.typing import NDArray
 from passplan.geometry.masks import mask_of
 from passplan.geometry.sun import sun_look_deg
 from passplan.inputs.run import Run
+from passplan.link.choice import STEPPED
 from passplan.planning.record import PlanRecord
-from passplan.report.page.lanes import Day, Names
+from passplan.report.page.axis import Day
+from passplan.report.page.lanes import Names
 from passplan.report.rows import grouped, rows
 from passplan.report.tracks import WindowTrack, thinned
 
@@ -98,23 +100,29 @@ def _contacts(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, d
             ],
         }
         if row["window_id"] in by_window:
-            entry |= _track(by_window[row["window_id"]], row["radio"], row["modcod"], most)
+            entry |= _track(by_window[row["window_id"]], row["radio"], row["modcod"], entry["sent"], most)
         entries.append(entry)
     return entries
 
 
-def _track(track: WindowTrack, radio: str, modcod: str, most: int) -> dict[str, Any]:
+def _track(
+    track: WindowTrack, radio: str, modcod: str, sent: Sequence[Sequence[Any]], most: int
+) -> dict[str, Any]:
+    """The window of a contact; ``dt`` are the times of the margins ``db`` where they are others than ``t``."""
     pick = thinned(track.time_s.size, most)
-    margin = track.margin_db(radio, modcod)
-    return {
+    found = {
         "t": _round(track.time_s[pick], 0),
         "az": _round(track.azimuth_deg[pick]),
         "el": _round(track.elevation_deg[pick]),
         "km": _round(track.range_km[pick], 0),
         "rate": _round(track.rate_mbps[pick], 3),
-        "db": [] if margin is None else _round(margin[pick]),
         "keyholes": [list(span) for span in track.keyholes],
     }
+    if modcod == STEPPED and sent:
+        line = track.margin_in_force(radio, [(piece[0], piece[1], piece[3]) for piece in sent], track.time_s[pick])
+        return found | ({"db": []} if line is None else {"dt": _round(line[0], 0), "db": _round(line[1], 2)})
+    margin = track.margin_db(radio, modcod)
+    return found | {"db": [] if margin is None else _round(margin[pick])}
 
 
 def _unused(record: PlanRecord, names: Names, day: Day) -> list[list[Any]]:

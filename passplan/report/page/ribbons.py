@@ -7,7 +7,7 @@ page can stretch it to any width and every number is a whole one.
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -18,6 +18,14 @@ from passplan.report.tracks import WindowTrack
 UNIT_S = 10.0
 # Time in view without any data rate still shows, as a rim at the foot of the ribbon.
 _RIM = 4
+
+
+@dataclass(frozen=True)
+class Share:
+    """The part of a ribbon's height that a contact fills: row ``row`` from the foot of ``rows`` equal ones."""
+
+    row: int = 0
+    rows: int = 1
 
 
 @dataclass(frozen=True)
@@ -32,6 +40,7 @@ class Mark:
     label: str
     origin: str
     change: str
+    share: Share
 
 
 @dataclass(frozen=True)
@@ -55,8 +64,11 @@ class Ribbon:
     spans: list[Span] = field(default_factory=list)
 
 
-def outline(track: WindowTrack, scale: RateScale, first_s: float = -np.inf, last_s: float = np.inf) -> str:
-    """The steps of the allowed rate between two instants as the ``d`` of a closed SVG path."""
+def outline(
+    track: WindowTrack, scale: RateScale, first_s: float = -np.inf, last_s: float = np.inf, share: Share | None = None
+) -> str:
+    """The steps of the allowed rate between two instants as the ``d`` of a closed SVG path, within its share."""
+    share = share or Share()
     time_s = np.clip(track.time_s, first_s, last_s)
     x = np.rint(time_s / UNIT_S).astype(np.int64)
     x[-1] = max(x[-1], x[0] + 1)
@@ -66,11 +78,13 @@ def outline(track: WindowTrack, scale: RateScale, first_s: float = -np.inf, last
     keep = lasting[np.flatnonzero(np.diff(height[lasting], prepend=-1))]
     if not keep.size:
         return ""
-    steps = [f"M{x[keep[0]]} 100"]
+    foot = 100 - round(100 * share.row / share.rows)
+    height = np.maximum(height // share.rows, _RIM)
+    steps = [f"M{x[keep[0]]} {foot}"]
     for i, k in enumerate(keep.tolist()):
         until = x[keep[i + 1]] if i + 1 < keep.size else x[-1]
-        steps.append(f"V{100 - height[k]}H{until}")
-    return "".join(steps) + "V100Z"
+        steps.append(f"V{foot - height[k]}H{until}")
+    return "".join(steps) + f"V{foot}Z"
 
 
 def joined(paths: Iterable[tuple[int, str]]) -> dict[int, str]:
@@ -90,3 +104,23 @@ def levels(lefts: Iterable[float], apart: float, count: int = 3) -> list[int]:
         reached[free] = left
         chosen.append(free)
     return chosen
+
+
+def shared_heights(spans: Sequence[tuple[float, float]]) -> list[Share]:
+    """A share of the height for each span (start, end), in time order: spans that overlap stand above one another.
+
+    Spans that hang together by overlaps share the height alike; those that stand alone have all of it.
+    """
+    shares: list[Share] = []
+    ends: list[float] = []
+    first, reached = 0, -np.inf
+    chosen: list[int] = []
+    for k, (start, end) in enumerate(spans):
+        if start >= reached:
+            shares += [Share(row, len(ends)) for row in chosen[first:]]
+            first, ends = k, []
+        row = next((i for i, until in enumerate(ends) if until <= start), len(ends))
+        ends[row : row + 1] = [end]
+        chosen.append(row)
+        reached = max(reached, end)
+    return shares + [Share(row, len(ends)) for row in chosen[first:]]

@@ -9,8 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 _WIDE = 8.0
-# A line lower than this could not be told from the foot of the ribbon.
-_LEAST_HEIGHT = 15
+# The label of a line lower than this would fall below the foot of the ribbon.
+_LEAST_HEIGHT = 25
 
 
 @dataclass(frozen=True)

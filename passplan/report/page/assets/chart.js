@@ -25,7 +25,7 @@
       area(first, last, null, "sky");
       for (const [a, b, r] of c.sent) area(a, b, r, "used");
     } else {
-      make("path", { d: values.map((v, i) => (i ? "L" : "M") + x(c.t[i]).toFixed(1) + " " + y(v).toFixed(1)).join(""), class: "curve" }, svg);
+      make("path", { d: values.map((v, i) => (i ? "L" : "M") + x(options.at[i]).toFixed(1) + " " + y(v).toFixed(1)).join(""), class: "curve" }, svg);
       make("path", { d: `M${box.left} ${y(data.required)}H${box.right}`, class: "asked" }, svg);
       make("text", { x: box.right, y: y(data.required) - 4, "text-anchor": "end", class: "note" }, svg, `asked ${data.required} dB`);
     }

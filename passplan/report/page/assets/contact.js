@@ -6,7 +6,7 @@
     reading = Math.min(Math.max(t, c.t[0]), c.t[c.t.length - 1]);
     pointed = true;
     drawings.forEach((one) => one.show(reading));
-    const k = c.t.findLastIndex((time) => time <= reading + 0.01), margin = at(c.t, c.db, reading);
+    const k = c.t.findLastIndex((time) => time <= reading + 0.01), margin = at(c.dt || c.t, c.db, reading);
     $("readout").textContent = `${utc(reading)} UTC · azimuth ${pointing(c, reading)[0].toFixed(1)}° · elevation ${pointing(c, reading)[1].toFixed(1)}° · ` +
       `range ${at(c.t, c.km, reading).toFixed(0)} km` + (isNaN(margin) ? "" : ` · margin ${margin.toFixed(1)} dB`) +
       (c.service === "command" ? "" : ` · link allows ${rateWords(c.rate[Math.max(k, 0)])}`);
@@ -19,7 +19,7 @@
     const width = Math.max(Math.round(room.clientWidth || 900), 260), phone = width < 500;
     drawings.push(panorama(c, width, phone ? 190 : 270));
     const sends = c.service !== "command";
-    if (c.db.length) drawings.push(chart(c, width, phone ? 96 : 118, `Margin, dB, ${c.modcod || "command"}`, c.db, { least: data.required, times: !sends }));
+    if (c.db.length) drawings.push(chart(c, width, phone ? 96 : 118, c.dt ? "Margin, dB, of the modcod in force" : `Margin, dB, ${c.modcod || "command"}`, c.db, { least: data.required, times: !sends, at: c.dt || c.t }));
     if (sends) drawings.push(chart(c, width, phone ? 110 : 130, "Rate, Mbit/s: allowed, and used", c.rate, { steps: true, times: true }));
     drawings.forEach((one) => {
       room.appendChild(one.svg);
@@ -59,7 +59,8 @@
     fact(list, "Service", c.service === "both" ? "downlink and command" : c.service);
     fact(list, "Radio", `${c.radio}, ${c.mhz} MHz ${c.polarisation}`);
     fact(list, "Modcod", c.modcod);
-    fact(list, "Rate", [...new Set(c.sent.filter((p) => p[2]).map((p) => rateWords(p[2])))].join(", "));
+    const rates = [...new Set(c.sent.map((p) => p[2]).filter((r) => r))].sort((a, b) => a - b);
+    fact(list, "Rate", rates.length > 1 ? `${rates.length} steps, ${rateWords(rates[0])} to ${rateWords(rates.at(-1))}` : rates.map(rateWords).join());
     if (c.service !== "command") fact(list, "Volume", volume(c.mb));
     fact(list, "Least margin", c.margin === null ? "" : c.margin.toFixed(2) + " dB");
     fact(list, "Peak", c.peak === null ? "" : c.peak.toFixed(1) + "°");

@@ -22,17 +22,19 @@
       ruler.textContent = "";
       ruler.closest(".lane").classList.toggle("two", Boolean(zone));
       if (!zone) return;
+      const axis = ruler.parentElement.dataset;
       all("i", ruler.parentElement).forEach((tick, k, list) => {
         if (list.length > 13 && k % 2) return;
         const mark = document.createElement("i");
         mark.style.left = tick.style.left;
-        mark.textContent = local(parseFloat(tick.style.left) / 100 * data.horizon + 1, { hour: "2-digit", minute: "2-digit" });
+        mark.textContent = local(Number(axis.first) + parseFloat(tick.style.left) / 100 * axis.length + 1, { hour: "2-digit", minute: "2-digit" });
         ruler.appendChild(mark);
       });
       const name = ruler.closest(".lane").querySelector(".lane-label");
-      name.textContent = "UTC, below it " + zoneLabel;
+      name.dataset.plain = name.dataset.plain || name.textContent;
+      name.textContent = name.dataset.plain + ", below it " + zoneLabel;
     });
-    if (!zone) all(".ruler .lane-label").forEach((label) => { label.textContent = "UTC"; });
+    if (!zone) all(".ruler .lane-label[data-plain]").forEach((label) => { label.textContent = label.dataset.plain; });
     if (chosen >= 0) choose(chosen, false);
   });
   $("zoom").addEventListener("change", () => all(".wide").forEach((wide) => wide.style.setProperty("--zoom", $("zoom").value)));

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections import defaultdict
+from collections.abc import Iterable
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -34,26 +34,32 @@ def backlogs(record: PlanRecord) -> dict[str, Backlog]:
     start, end = (pd.Timestamp(record.summary[f"horizon_{edge}_utc"].rstrip("Z")) for edge in ("start", "end"))
     horizon_s = (end - start).total_seconds()
     names = record.contacts.set_index("contact_id")["spacecraft"]
-    pieces = record.segments.assign(
-        spacecraft=record.segments["contact_id"].map(names),
-        first_s=(record.segments["start_utc"] - start).dt.total_seconds(),
-        last_s=(record.segments["end_utc"] - start).dt.total_seconds(),
-    ).sort_values("first_s", kind="stable")
-    by_craft = dict(tuple(pieces.groupby("spacecraft")))
-    return {name: _follow(store, by_craft.get(name), horizon_s) for name, store in record.summary["storage"].items()}
+    sent: dict[str, list[tuple[float, float, float]]] = defaultdict(list)
+    pieces = record.segments.sort_values("start_utc", kind="stable")
+    edges = [(pieces[f"{edge}_utc"] - start).dt.total_seconds() for edge in ("start", "end")]
+    for name, *piece in zip(pieces["contact_id"].map(names), *edges, pieces["rate_mbps"] / 8.0, strict=True):
+        sent[name].append((piece[0], piece[1], piece[2]))
+    return {
+        name: follow(
+            store["start_mb"], store["generated_mb"] / horizon_s if horizon_s > 0 else 0.0, store["capacity_mb"],
+            sent.get(name, ()), horizon_s)
+        for name, store in record.summary["storage"].items()
+    }
 
 
-def _follow(store: Mapping[str, Any], pieces: pd.DataFrame | None, horizon_s: float) -> Backlog:
-    """Between events the storage gains what is generated and sends at one rate; kinks where it runs empty or full."""
-    generation = store["generated_mb"] / horizon_s if horizon_s > 0 else 0.0
-    capacity, fill, clock = store["capacity_mb"], store["start_mb"], 0.0
+def follow(
+    start_mb: float, generation_mb_per_s: float, capacity_mb: float, sent: Iterable[tuple[float, float, float]],
+    horizon_s: float,
+) -> Backlog:
+    """One storage through pieces of sending (start_s, end_s, rate_mb_per_s) in time order.
+
+    Between events it gains what is generated and sends at one rate; there are kinks where it runs empty or full.
+    """
+    capacity, fill, clock = capacity_mb, start_mb, 0.0
     points, losing = [(0.0, fill)], []
-    events: list[tuple[float, float]] = []
-    if pieces is not None:
-        for row in pieces.to_dict("records"):
-            events += [(row["first_s"], 0.0), (row["last_s"], row["rate_mbps"] / 8.0)]
+    events = [event for start_s, end_s, rate in sent for event in ((start_s, 0.0), (end_s, rate))]
     for until, sending in (*events, (horizon_s, 0.0)):
-        slope, length = generation - sending, max(until - clock, 0.0)
+        slope, length = generation_mb_per_s - sending, max(until - clock, 0.0)
         edge = capacity if slope > 0.0 else 0.0
         turn = (edge - fill) / slope if slope else length
         if 0.0 <= turn < length:
