@@ -16,6 +16,7 @@ A bound of the exact model rests on the model; :func:`bound_of` has another solv
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -66,8 +67,9 @@ def bound_of(problem: Problem, terms: Terms, certificate: Certificate) -> float:
     price = _option_prices(problem, terms, certificate)
     limits = sum(float(terms.rows[k].limit[r]) * p for k, r, p in zip(
         certificate.rows.tolist(), certificate.row.tolist(), certificate.row_price.tolist(), strict=True))
-    best = sum(_best_of(problem, terms, craft, price, certificate.point_price) for craft in range(len(problem.fleet)))
-    return best + float(certificate.price.sum()) + limits + certificate.point_price * certificate.points
+    crafts = range(len(problem.fleet))
+    best = math.fsum(_best_of(problem, terms, craft, price, certificate.point_price) for craft in crafts)
+    return float(best + certificate.price.sum() + limits + certificate.point_price * certificate.points)
 
 
 def _solved_again(certificate: ModelCertificate) -> float:
@@ -133,8 +135,9 @@ def _best_of(problem: Problem, terms: Terms, craft: int, price: Floats, point_pr
             moved += [_State(*run(s, since, now, []), s.met, s.cover, s.last) for s in waiting.pop(since)]
         here, clock = _useful(moved, now, weight, spill, apart, options.start_s), now
         for o in (o for o in mine if options.start_s[o] == now):
-            pieces = [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
-                      for p in options.pieces(o)]
+            span = slice(options.piece_offset[o], options.piece_offset[o + 1])
+            pieces = list(zip(options.piece_start_s[span].tolist(), options.piece_end_s[span].tolist(),
+                              options.piece_rate_mb_per_s[span].tolist(), strict=True))
             end = int(options.end_s[o])
             for state in here:
                 if o in apart.get(state.last, ()):

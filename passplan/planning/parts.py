@@ -11,11 +11,9 @@ from collections.abc import Iterable
 from dataclasses import dataclass, replace
 
 import numpy as np
-from scipy.sparse import coo_array
-from scipy.sparse.csgraph import connected_components
 
 from passplan.planning.cliques import clique_spans
-from passplan.planning.problem import Integers, Problem, offsets_of, ragged_ranges
+from passplan.planning.problem import Flags, Integers, Problem, offsets_of, ragged_ranges
 from passplan.planning.rules.terms import Lane, Recurrence, Removal, Rows, Terms, Wanted
 
 # Parts smaller than this are planned together: a solver takes them apart again, and starting it costs time.
@@ -40,17 +38,29 @@ def independent_parts(problem: Problem, terms: Terms) -> list[Part]:
     count = len(problem.fleet)
     if len(problem.options) == 0 or count < 2:
         return [Part(problem, terms, np.arange(len(problem.options)))]
-    groups = list(_groups(problem, terms))
-    group = np.concatenate([np.zeros(0, dtype=np.int64), *(np.full(len(g), k) for k, g in enumerate(groups))])
-    craft = np.concatenate([np.zeros(0, dtype=np.int64), *groups])
-    size = count + len(groups)
-    ties = coo_array((np.ones(len(craft)), (craft, count + group)), shape=(size, size))
-    label = connected_components(ties, directed=False)[1][:count]
+    label = _joined(count, _groups(problem, terms))
     options = np.bincount(problem.options.spacecraft, minlength=count)
     part = _gathered(label, options)
     if part.max() == 0:
         return [Part(problem, terms, np.arange(len(problem.options)))]
     return [_part(problem, terms, part == k, first=k == 0) for k in range(int(part.max()) + 1)]
+
+
+def _joined(count: int, groups: Iterable[Integers]) -> Integers:
+    """Numbers of spacecraft joined by sets of them: the lowest of all that hang together."""
+    above = list(range(count))
+
+    def root(k: int) -> int:
+        while above[k] != k:
+            above[k] = above[above[k]]
+            k = above[k]
+        return k
+
+    for group in groups:
+        roots = {root(k) for k in group.tolist()}
+        for k in roots:
+            above[k] = min(roots)
+    return np.array([root(k) for k in range(count)], dtype=np.int64)
 
 
 def _groups(problem: Problem, terms: Terms) -> Iterable[Integers]:
@@ -91,7 +101,7 @@ def _gathered(label: Integers, options: Integers) -> Integers:
     return part
 
 
-def _part(problem: Problem, terms: Terms, crafts: np.ndarray, *, first: bool) -> Part:
+def _part(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part:
     """The options of some spacecraft. The fleet stays whole in the first part; elsewhere the others hold nothing."""
     kept = np.flatnonzero(crafts[problem.options.spacecraft])
     place = np.full(len(problem.options), -1, dtype=np.int64)
@@ -105,7 +115,7 @@ def _part(problem: Problem, terms: Terms, crafts: np.ndarray, *, first: bool) ->
     return Part(part, _terms(problem, terms, place, crafts, first=first), kept)
 
 
-def _terms(problem: Problem, terms: Terms, place: Integers, crafts: np.ndarray, *, first: bool) -> Terms:
+def _terms(problem: Problem, terms: Terms, place: Integers, crafts: Flags, *, first: bool) -> Terms:
     def here(options: Integers) -> bool:
         return bool(np.any(place[options] >= 0)) if len(options) else first
 

@@ -96,7 +96,8 @@ def build_problem(
         commands=_command_needs(run, fleet),
         conflicts=tuple(_conflict(fleet, antennas, pair) for pair in disturbing.pairs),
         crowds=tuple(_crowd(fleet, antennas, crowd) for crowd in disturbing.crowds),
-        spill_cost_per_mb=run.policy.spill_cost_per_mb, left_worth_share=run.policy.left_worth_share, worth_per_money=run.policy.worth_per_money,
+        spill_cost_per_mb=run.policy.spill_cost_per_mb, left_worth_share=run.policy.left_worth_share,
+        worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
     draft = Draft(run, windows, problem, option_set.candidates, tuple(blocks))
     return replace(problem, needs=tuple(need for find in NEEDS for need in find(draft))), option_set

@@ -129,8 +129,10 @@ def _plan_part(
             bound, certificate = found.bound, found.certificate
         best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
-        tidied = _Candidate(problem, terms, tidy(problem, terms, maps, best.chosen, arrays), best.path)
-        best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
+        touched = tidy(problem, terms, maps, best.chosen, arrays)
+        if touched != list(best.chosen):
+            tidied = _Candidate(problem, terms, touched, best.path)
+            best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
     return _Outcome(best, points_bound, bound, certificate)
 
 

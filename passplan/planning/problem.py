@@ -173,7 +173,8 @@ class Crowd:
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
-    The objective is the sum over spacecraft of weight x (delivered MB + ``left_worth_share`` x MB left at the end), less ``spill_cost_per_mb`` x lost
+    The objective is the sum over spacecraft of weight x (delivered MB + ``left_worth_share`` x MB left at the end),
+    less ``spill_cost_per_mb`` x lost
     MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``). ``too_tight`` (k, 2)
     are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
     records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.

@@ -27,8 +27,8 @@ from passplan.planning.search.schedule import best_schedule, worth_of
 
 # The first step moves the price of an option by about this part of what a contact is worth; after so many steps it
 # is half as long, then a third, and so on.
-_FIRST_STEP = 0.05
-_HALF_AFTER = 15.0
+_FIRST_STEP = 0.1
+_HALF_AFTER = 10.0
 _MEAN_MEMORY = 0.9
 _SQUARE_MEMORY = 0.99
 _LEAST_SIZE = 0.1
@@ -36,6 +36,9 @@ _SHRINK = 0.5
 # After so many steps it is time for another way, and then for a new start from the best prices with steps this long.
 _STEPS = 1_500
 _NEXT_STEP = 0.1
+# All prices together are at least this part of the value: where time costs nothing at all, schedules are full of
+# contacts that bring nothing down, and what is used says nothing about what is needed.
+_FLOOR = 1e-7
 
 
 @dataclass(frozen=True, eq=False)
@@ -139,12 +142,14 @@ class BoundSearch:
     """
 
     def __init__(
-        self, arrays: FleetArrays, sweeper: Sweeper, plan_points: float, point_worth: float, contact_worth: float,
+        self, arrays: FleetArrays, sweeper: Sweeper, plan_points: float, point_worth: float, worth: float,
+        contact_worth: float,
     ) -> None:
         self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
         self.limits = limits_of(arrays)
         self.bound = np.inf
-        self.price = self.best_price = np.zeros(len(self.limits))
+        self.floor = _FLOOR * worth / max(1, len(self.limits))
+        self.price = self.best_price = np.full(len(self.limits), self.floor)
         self.point_worth = point_worth
         self._mean, self._square = np.zeros(len(self.limits)), np.zeros(len(self.limits))
         width = max(1.0, float((arrays.use_last - arrays.use_first).sum()) / max(1, len(arrays.option)))
@@ -171,7 +176,7 @@ class BoundSearch:
             mean = self._mean / (1.0 - _MEAN_MEMORY**self._steps)
             size = np.sqrt(self._square / (1.0 - _SQUARE_MEMORY**self._steps))
             step = self._step / (1.0 + self._steps / _HALF_AFTER)
-            self.price = np.maximum(0.0, self.price + step * mean / (size + _LEAST_SIZE))
+            self.price = np.maximum(self.floor, self.price + step * mean / (size + _LEAST_SIZE))
 
     def _polish(self, iterations: int, value: float) -> None:
         """Polyak's steps (1969) from the best prices: they end exactly where the ceiling meets the plan, if it does."""
@@ -181,7 +186,7 @@ class BoundSearch:
             size = float(gradient @ gradient)
             if not np.isfinite(here) or size <= 0.0:
                 break
-            self.price = np.maximum(0.0, self.price + (here - value) / size * gradient)
+            self.price = np.maximum(self.floor, self.price + (here - value) / size * gradient)
         self.price = self.best_price
 
     def restart(self, plan_points: float) -> None:
@@ -195,5 +200,5 @@ class BoundSearch:
         if here < self.bound:
             self.bound, self.best_price = here, self.price
         gradient = at.use - self.limits
-        gradient[(self.price <= 0.0) & (gradient < 0.0)] = 0.0
+        gradient[(self.price <= self.floor) & (gradient < 0.0)] = 0.0
         return here, gradient

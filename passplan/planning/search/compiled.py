@@ -20,5 +20,5 @@ def compiled(function: F) -> F:
 
 
 def inlined(function: F) -> F:
-    """Compile a small function into each of its callers: a call that hands on a fleet's arrays costs more than it does."""
+    """Compile a small function into each of its callers: a call that hands on many arrays costs more than it does."""
     return cast(F, numba.njit(cache=True, nogil=True, fastmath=False, forceinline=True)(function))

@@ -13,6 +13,7 @@ import math
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 
@@ -29,13 +30,13 @@ from passplan.planning.search.schedule import worth_of
 
 # A round is about this many labels: some tenths of a second.
 _ROUND_LABELS = 4_000_000
-_MOST_SWEEPS = 40
+_MOST_SWEEPS = 20
 # Before the first sweep nobody knows how many labels there are to an option.
 _LABELS_PER_OPTION = 15
 _MOST_OUT = 10
 # Loss accepted at first, as a part of what a contact is worth on average, round by round.
 _WARMTH = (0.0, 0.02, 0.1, 0.5)
-_PATIENCE_ROUNDS = 200
+_PATIENCE_ROUNDS = 80
 # Fleets below this are never rebuilt in parts.
 _LEAST_PART = 20
 # So many rounds with bound first; then the bound moves at least every so many.
@@ -91,7 +92,7 @@ class _Rounds:
         # What the search does not count stays as it is.
         self.more_points = points - self.points
         self.bounds = BoundSearch(
-            arrays, self.sweeper, points, self._first_point_worth(), self._contact_worth())
+            arrays, self.sweeper, points, self._first_point_worth(), abs(self.value), self._contact_worth())
         self.bound_rate = self.value_rate = 0.0
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
@@ -102,7 +103,8 @@ class _Rounds:
             began_s, before = clock.elapsed_s(), (self.value, self.bounds.bound)
             # What ends by the clock need not be the same every time: the last round is as short as it must be.
             part = min(1.0, clock.left_s() / round_s) if round_s > 0.0 else 1.0
-            with_bound = (rounds < _ROUNDS_WITH_BOUND or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
+            with_bound = (
+                rounds < _ROUNDS_WITH_BOUND or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
             spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, int(part * sweeps * effort))
             if spent:
                 effort = spent // sweeps
@@ -130,7 +132,7 @@ class _Rounds:
             grounds = self._parts(number)
         else:
             grounds = [Ground(self.movable, *self._everything())]
-        jobs = [lambda k=k, g=g: self._rebuild(number, k, effort, prices, g) for k, g in enumerate(grounds)]
+        jobs = [partial(self._rebuild, number, k, effort, prices, ground) for k, ground in enumerate(grounds)]
         if self.threads == 1:
             results = [job() for job in jobs]
             spent = self._improve(sweeps)
@@ -149,7 +151,9 @@ class _Rounds:
         self.bounds.improve(sweeps, self.value)
         return sum(int(work.spent[0]) for work in self.sweeper.work) - before
 
-    def _rebuild(self, number: int, worker: int, effort: int, prices: Floats, ground: Ground) -> tuple[Integers, Integers]:
+    def _rebuild(
+        self, number: int, worker: int, effort: int, prices: Floats, ground: Ground,
+    ) -> tuple[Integers, Integers]:
         warmth = _WARMTH[number % len(_WARMTH)] * self._contact_worth()
         taken, size = self.taken.copy(), self.size.copy()
         seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from passplan.planning.clock import Clock
-from passplan.planning.problem import Floats, Integers
+from passplan.planning.problem import Flags, Floats, Integers
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.rebuild import hold, is_free, load
@@ -27,8 +27,8 @@ def fill_up(arrays: FleetArrays, room: Floats, taken: Integers, size: Integers, 
     holder = np.full(arrays.cliques + 1, -1, dtype=np.int64)
     worth = begin(arrays, taken, size, holder, room)
     keys = keys_of(arrays)
-    heap = np.argsort(-keys, kind="stable")
-    heap = heap[: int((keys > 0.0).sum())].astype(np.int64)
+    heap = np.flatnonzero(free_now(arrays, holder, room) & (keys > 0.0))
+    heap = heap[np.argsort(-keys[heap], kind="stable")]
     count = len(heap)
     while count > 0 and not clock.expired():
         count = add(arrays, keys, heap, count, _AT_A_TIME, holder, room, worth, taken, size)
@@ -55,6 +55,17 @@ def begin(a: FleetArrays, taken: Integers, size: Integers, holder: Integers, roo
         hold(a, taken[i], size[i], holder, i)
         load(a, taken[i], size[i], room, -1.0)
     return worth
+
+
+@compiled
+def free_now(a: FleetArrays, holder: Integers, room: Floats) -> Flags:
+    """Which options hold nothing that is taken, shape (m,)."""
+    use_at, use_first, use_last = a.use_at, a.use_first, a.use_last
+    load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
+    free = np.zeros(len(a.option), dtype=np.bool_)
+    for o in range(len(free)):
+        free[o] = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
+    return free
 
 
 @compiled

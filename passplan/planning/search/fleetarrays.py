@@ -9,8 +9,8 @@ A lane of a single spacecraft in which every one of its contacts has a place is 
 alone (``arrival``); any other lane of one spacecraft is laid out as if it were shared.
 
 What the schedule program cannot count (a request that several spacecraft could meet, a second recurrence, a
-guarantee) is left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so that the search
-leaves a spacecraft alone that uses one.
+guarantee) is left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so
+that the search leaves a spacecraft alone that uses one.
 """
 
 from __future__ import annotations
@@ -44,9 +44,9 @@ class FleetArrays(NamedTuple):
     ``cost`` in worth; ``bits`` of wanted terms it meets; ``renews``: until when it covers the recurrence, or -1;
     ``uncounted``: whether it serves a requirement that is not among those.
 
-    Option o holds the ranges of cliques ``use_first[u] : use_last[u]`` for u in ``use_at[o] : use_at[o + 1]``. ``clash``
-    (m) is the last start of a later option of the same spacecraft that shares a clique with this one (time to set up
-    between two contacts on one antenna), or -1. It adds ``load_amount[e]`` to row ``load_row[e]`` for e in
+    Option o holds the ranges of cliques ``use_first[u] : use_last[u]`` for u in ``use_at[o] : use_at[o + 1]``.
+    ``clash`` (m) is the last start of a later option of the same spacecraft that shares a clique with this one (time
+    to set up between two contacts on one antenna), or -1. It adds ``load_amount[e]`` to row ``load_row[e]`` for e in
     ``load_at[o] : load_at[o + 1]``, rows rising; ``load_own[e]`` says whether another contact of the same plan of its
     spacecraft may add to that row too. ``limit`` is per row.
 
@@ -145,7 +145,7 @@ def _own_and_shared(
         whole = lane.owner >= 0 and len(mine) == first[lane.owner + 1] - first[lane.owner]
         if whole and len(mine) and np.all(problem.options.spacecraft[mine] == lane.owner):
             lead_s = problem.options.start_s[lane.options] - lane.start_s
-            whole = bool(np.all(lead_s == lead_s[0]) and np.all(lane.end_s + lead_s >= problem.options.end_s[lane.options]))
+            whole = bool(np.all(lead_s == lead_s[0]))
         if whole:
             own.append(lane)
         else:

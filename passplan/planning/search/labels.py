@@ -53,9 +53,12 @@ class Work(NamedTuple):
 
 def make_work(labels: int = _MOST_LABELS) -> Work:
     """Room for ``labels`` labels; memory is used as it is touched."""
-    here = [np.empty((2, labels)) for _ in range(3)] + [np.empty((2, labels), dtype=np.int64) for _ in range(2)]
-    wait = [np.empty(labels) for _ in range(3)] + [np.empty(labels, dtype=np.int64) for _ in range(6)]
-    return Work(*here, *wait, np.zeros(1, dtype=np.int64))
+    floats = [np.empty((2, labels)) for _ in range(3)]
+    numbers = [np.empty((2, labels), dtype=np.int64) for _ in range(2)]
+    wait, records = [np.empty(labels) for _ in range(3)], [np.empty(labels, dtype=np.int64) for _ in range(6)]
+    return Work(
+        floats[0], floats[1], floats[2], numbers[0], numbers[1], wait[0], wait[1], wait[2], records[0], records[1],
+        records[2], records[3], records[4], records[5], np.zeros(1, dtype=np.int64))
 
 
 @inlined
@@ -101,8 +104,8 @@ def merge(
 
 @inlined
 def _prune_down(
-    clash: Integers, spill: float, now: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, via: Integers,
-    side: int, count: int, record_option: Integers,
+    clash: Integers, spill: float, now: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
+    via: Integers, side: int, count: int, record_option: Integers,
 ) -> int:
     """Downward: drop what holds less than another and is not ahead."""
     best = -np.inf
@@ -123,8 +126,8 @@ def _prune_down(
 
 @inlined
 def _prune_pairs(
-    clash: Integers, spill: float, weight: float, now: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
-    via: Integers, side: int, count: int, record_option: Integers,
+    clash: Integers, spill: float, weight: float, now: int, aboard: Floats, worth: Floats, cover: Floats,
+    bits: Integers, via: Integers, side: int, count: int, record_option: Integers,
 ) -> int:
     left = 0
     for k in range(count):
@@ -149,7 +152,8 @@ def _prune_pairs(
 
 @inlined
 def _beats(
-    spill: float, weight: float, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, side: int, x: int, y: int,
+    spill: float, weight: float, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, side: int, x: int,
+    y: int,
 ) -> bool:
     """Whether label ``x``, if it may take any option, makes label ``y`` useless."""
     if bits[side, x] & bits[side, y] != bits[side, y] or cover[side, x] < cover[side, y]:

@@ -17,6 +17,7 @@ from passplan.planning.search.labels import make_work
 from passplan.planning.search.rebuild import Ground, rebuild
 
 _compiled = threading.Event()
+_faults: list[Exception] = []
 _compiling = threading.Lock()
 # How often the clock is looked at while waiting: it may be stopped by hand.
 _LOOK_S = 0.1
@@ -27,14 +28,19 @@ def compiled_in_time(clock: Clock) -> bool:
     if not _compiled.is_set():
         threading.Thread(target=_compile_all, daemon=True).start()
         while not _compiled.wait(_LOOK_S) and not clock.expired():
-            pass
+            if _faults:
+                raise _faults[0]
     return _compiled.is_set()
 
 
 def _compile_all() -> None:
     with _compiling:
         if not _compiled.is_set():
-            _exercise()
+            try:
+                _exercise()
+            except Exception as fault:  # whatever it is, it belongs to whoever waits
+                _faults.append(fault)
+                return
             _compiled.set()
 
 
@@ -43,9 +49,8 @@ def _exercise() -> None:
     one, zero = np.ones(1), np.zeros(1, dtype=np.int64)
     options = build_options([
         {"window": 0, "spacecraft": 0, "antenna": 0, "start_s": 0, "end_s": 60, "pieces": [(0, 60, 1.0)]}])
-    problem = Problem(
-        60, Fleet(("a",), one, one, one, one), Antennas(("b",), zero, zero), Windows(("w",), zero, zero, zero, zero + 60),
-        options)
+    windows = Windows(("w",), zero, zero, zero, zero + 60)
+    problem = Problem(60, Fleet(("a",), one, one, one, one), Antennas(("b",)), windows, options)
     terms = Terms(lanes=(Lane("b", "antenna_busy", options.window, options.start_s, options.end_s),))
     arrays = fleet_arrays(problem, terms, storage_maps(problem))
     Sweeper(arrays)(one, 0.0)

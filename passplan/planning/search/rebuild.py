@@ -24,6 +24,8 @@ from passplan.planning.search.schedule import best_schedule, clashes, worth_of
 
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
+# What a call costs beside its labels, in labels.
+_OVERHEAD = 100
 
 
 class Ground(NamedTuple):
@@ -53,67 +55,52 @@ def rebuild(
     # Whoever holds a clique; ``count`` stands for one that is free and must stay so.
     holder = np.where(ground.cliques, -1, count)
     room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
-    now_taken, now_size, worth = taken.copy(), size.copy(), np.zeros(count)
-    for i in range(count):
-        worth[i] = _net_worth(a, i, taken[i], size[i], point_worth)
-        hold(a, taken[i], size[i], holder, i)
-        for k in range(size[i]):
-            for e in range(a.load_at[taken[i, k]], a.load_at[taken[i, k] + 1]):
-                if ground.rows[a.load_row[e]]:
-                    room[a.load_row[e]] -= a.load_amount[e]
+    now_taken, now_size = taken.copy(), size.copy()
+    worth = _enter(a, taken, size, point_worth, ground.rows, holder, room)
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
     old_worth, price = np.empty(most), np.empty(len(option_price))
     fresh = np.empty(a.most_contacts, dtype=np.int64)
-    changed, changes = np.empty(count, dtype=np.int64), 0
     is_changed = np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
     while work.spent[0] - begun < effort:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
         some = _pick(a, holder, ground.crafts, movable, out, wanted)
         for k in range(some):
-            i = out[k]
-            old_size[k], old_worth[k] = now_size[i], worth[i]
-            for c in range(now_size[i]):
-                old_taken[k, c] = now_taken[i, c]
-            _release(a, now_taken[i], now_size[i], holder, room)
-            now_size[i] = 0
+            old_worth[k] = worth[out[k]]
+            _copy(now_taken, now_size, out[k], old_taken, old_size, k)
+            _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
+            now_size[out[k]] = 0
         share = np.random.random() * _MOST_SHARE
-        for k in range(some):
-            # The last one has nobody left to leave room for.
-            part = share if k < some - 1 else 0.0
-            _replan(a, out[k], part, option_price, price, point_worth, work, holder, room, now_taken, now_size, fresh)
-        for k in range(some - 1):
-            _replan(a, out[k], 0.0, option_price, price, point_worth, work, holder, room, now_taken, now_size, fresh)
+        for turn in range(2 * some - 1):
+            # First each pays for what others need, the last one has nobody left to leave room for; then all but the
+            # last once more, for nothing.
+            part = share if turn < some - 1 else 0.0
+            _replan(a, out[turn % some], part, option_price, price, point_worth, work, holder, room, now_taken,
+                    now_size, fresh)
         change = 0.0
         for k in range(some):
             worth[out[k]] = _net_worth(a, out[k], now_taken[out[k]], now_size[out[k]], point_worth)
             change += worth[out[k]] - old_worth[k]
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
-        if change >= 0.0 or (heat > 0.0 and np.random.random() < np.exp(change / heat)):
-            gain += change
+        if change < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(change / heat)):
             for k in range(some):
-                if not is_changed[out[k]]:
-                    is_changed[out[k]] = True
-                    changed[changes] = out[k]
-                    changes += 1
-            if gain > best_gain:
-                best_gain = gain
-                for k in range(changes):
-                    _copy(now_taken, now_size, changed[k], taken, size)
-                    is_changed[changed[k]] = False
-                changes = 0
+                _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
+            for k in range(some):
+                worth[out[k]] = old_worth[k]
+                _copy(old_taken, old_size, k, now_taken, now_size, out[k])
+                hold(a, now_taken[out[k]], now_size[out[k]], holder, out[k])
+                load(a, now_taken[out[k]], now_size[out[k]], room, -1.0)
             continue
-        for k in range(some):
-            _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
-        for k in range(some):
-            i = out[k]
-            now_size[i], worth[i] = old_size[k], old_worth[k]
-            for c in range(old_size[k]):
-                now_taken[i, c] = old_taken[k, c]
-            hold(a, now_taken[i], now_size[i], holder, i)
-            load(a, now_taken[i], now_size[i], room, -1.0)
+        gain += change
+        is_changed[out[:some]] = True
+        if gain > best_gain:
+            best_gain = gain
+            for i in range(count):
+                if is_changed[i]:
+                    _copy(now_taken, now_size, i, taken, size, i)
+            is_changed[:] = False
     return best_gain
 
 
@@ -132,7 +119,7 @@ def _replan(
     for o in range(a.first[i], a.first[i + 1]):
         free = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
         price[o] = cost[o] + part * option_price[o] if free else np.inf
-    work.spent[0] += (a.first[i + 1] - a.first[i]) // 4
+    work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
     if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and _fits(a, fresh, count, room):
         size[i] = count
@@ -182,10 +169,10 @@ def is_free(
         for c in range(use_first[u], use_last[u]):
             if holder[c] >= 0:
                 return False
+    roomy = True
     for e in range(load_at[option], load_at[option + 1]):
-        if load_amount[e] > room[load_row[e]]:
-            return False
-    return True
+        roomy = roomy and load_amount[e] <= room[load_row[e]]
+    return roomy
 
 
 @compiled
@@ -203,10 +190,26 @@ def _fits(a: FleetArrays, taken: Integers, size: int, room: Floats) -> bool:
 
 
 @inlined
-def _copy(source: Integers, source_size: Integers, i: int, taken: Integers, size: Integers) -> None:
-    size[i] = source_size[i]
-    for c in range(size[i]):
-        taken[i, c] = source[i, c]
+def _copy(source: Integers, source_size: Integers, at: int, taken: Integers, size: Integers, to: int) -> None:
+    size[to] = source_size[at]
+    for c in range(size[to]):
+        taken[to, c] = source[at, c]
+
+
+@compiled
+def _enter(
+    a: FleetArrays, taken: Integers, size: Integers, point_worth: float, rows: Flags, holder: Integers, room: Floats,
+) -> Floats:
+    """Enter a plan into ``holder``, and into ``room`` where rows are free to be used; returns worths."""
+    worth = np.zeros(len(size))
+    for i in range(len(size)):
+        worth[i] = _net_worth(a, i, taken[i], size[i], point_worth)
+        hold(a, taken[i], size[i], holder, i)
+        for k in range(size[i]):
+            for e in range(a.load_at[taken[i, k]], a.load_at[taken[i, k] + 1]):
+                if rows[a.load_row[e]]:
+                    room[a.load_row[e]] -= a.load_amount[e]
+    return worth
 
 
 @compiled

@@ -34,28 +34,23 @@ def best_schedule(
     there is no room for all labels, the worth is plus infinity and the number -1.
     """
     weight, generation, capacity = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2]
-    first, end_of, node, arrival, span, clash, spill = a.first[i], a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
-    maps, use_at, use_first, use_last, renews, own_bits = a.maps, a.use_at, a.use_first, a.use_last, a.renews, a.bits
-    wants, recur_until, per_second = a.wants[i], a.recur[i, 1], point_worth * a.recur[i, 2]
+    # Out of the tuples once: every look into one costs more than the step that it is for.
+    end_of, node, arrival, span, clash, spill = a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
     (aboard, worth, cover, bits, via, wait_aboard, wait_worth, wait_cover, wait_bits, record_option, record_before,
      run_low, run_high, run_next, spent) = work
-    base = a.start_first[i]
-    nodes = a.start_first[i + 1] - base
-    start_s = a.start_s
-    simple = recur_until <= 0.0 and wants.max() <= 0.0
-    limited = len(room) > 0
+    maps, use_at, use_first, use_last, renews, own_bits = a.maps, a.use_at, a.use_first, a.use_last, a.renews, a.bits
+    load_at, load_row, load_amount, load_own = a.load_at, a.load_row, a.load_amount, a.load_own
+    base, nodes, start_s = a.start_first[i], a.start_first[i + 1] - a.start_first[i], a.start_s
+    recur_until, per_second = a.recur[i, 1], point_worth * a.recur[i, 2]
+    simple = recur_until <= 0.0 and a.wants[i].max() <= 0.0
     head = np.full(nodes + 1, -1, dtype=np.int64)
     waiting = runs = side = clock = 0
     aboard[0, 0], worth[0, 0], cover[0, 0], bits[0, 0], via[0, 0] = a.craft[i, 3], 0.0, a.recur[i, 0], 0, -1
     here = 1
-    option = first
+    option = a.first[i]
     for at in range(nodes + 1):
-        follower = option
-        usable = at == nodes or head[at] >= 0
-        while at < nodes and follower < end_of and node[follower] == at:
-            usable = usable or price[follower] < np.inf
-            follower += 1
-        if not usable:
+        follower, usable = _those_at(node, price, option, end_of, at)
+        if at < nodes and head[at] < 0 and not usable:
             # Nothing arrives and nothing can be taken.
             option = follower
             continue
@@ -70,70 +65,104 @@ def best_schedule(
                          wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run])
             if here < 0:
                 return np.inf, -1
-            side = 1 - side
-            run = run_next[run]
-        while option < follower:
-            if price[option] < np.inf:
-                if waiting + here > len(wait_aboard) or runs >= len(run_low):
-                    return np.inf, -1
-                target = arrival[option]
-                until = start_s[base + target] if target < nodes else a.horizon_s
-                made = generation * (until - span[option, 1])
-                from_s = min(float(now), recur_until)
-                end, best = waiting, -np.inf
-                for k in range(here):
-                    record = via[side, k]
-                    if record >= 0:
-                        last = record_option[record]
-                        if clash[last] >= now and share_clique(use_at, use_first, use_last, last, option):
-                            continue
-                        if limited and _overfills(a.load_at, a.load_row, a.load_amount, a.load_own, option, room,
-                                                  record_option, record_before, record):
-                            continue
-                    after, sent, lost = _through(maps, option, aboard[side, k])
-                    ahead = worth[side, k] + weight * sent - spill * lost - price[option]
-                    # All of these come from the same option, so that one beats another whatever clashes with it. The
-                    # upward rule of labels.py, and: of those that end with as much aboard only the best is kept (most
-                    # do, where a contact can carry more than there is).
-                    if simple:
-                        if ahead + weight * after <= best:
-                            continue
-                        best = ahead + weight * after
-                    covered = cover[side, k]
-                    if renews[option] >= 0:
-                        ahead -= per_second * max(0.0, from_s - covered)
-                        covered = max(covered, float(renews[option]))
-                    after, ahead = _idle(after, ahead, made, capacity, spill)
-                    if simple and end > waiting and wait_aboard[end - 1] == after:
-                        end -= 1
-                        if wait_worth[end] >= ahead:
-                            end += 1
-                            continue
-                    wait_aboard[end], wait_worth[end], wait_cover[end] = after, ahead, covered
-                    wait_bits[end] = bits[side, k] | own_bits[option]
-                    record_option[end], record_before[end] = option, record
-                    end += 1
-                if end > waiting:
-                    run_low[runs], run_high[runs], run_next[runs] = waiting, end, head[target]
-                    head[target] = runs
-                    runs += 1
-                waiting = end
-            option += 1
+            side, run = 1 - side, run_next[run]
+        for o in range(option, follower):
+            if price[o] == np.inf:
+                continue
+            if waiting + here > len(wait_aboard) or runs >= len(run_low):
+                return np.inf, -1
+            target = arrival[o]
+            until = start_s[base + target] if target < nodes else a.horizon_s
+            end = _take(
+                o, price[o], now, generation * (until - span[o, 1]), capacity, weight, spill, simple, per_second,
+                recur_until, maps, use_at, use_first, use_last, clash, load_at, load_row, load_amount, load_own, room,
+                renews[o], own_bits[o], aboard, worth, cover, bits, via, side, here, wait_aboard, wait_worth,
+                wait_cover, wait_bits, record_option, record_before, waiting)
+            if end > waiting:
+                run_low[runs], run_high[runs], run_next[runs] = waiting, end, head[target]
+                head[target] = runs
+                runs += 1
+            waiting = end
+        option = follower
     spent[0] += waiting + nodes
     best, chosen = -np.inf, -1
     for k in range(here):
-        ahead = worth[side, k] + a.craft[i, 4] * aboard[side, k] - point_worth * _missing(wants, bits[side, k])
+        ahead = worth[side, k] + a.craft[i, 4] * aboard[side, k] - point_worth * _missing(a.wants[i], bits[side, k])
         ahead -= per_second * max(0.0, recur_until - cover[side, k])
         if ahead > best:
             best, chosen = ahead, via[side, k]
+    return best, _trace(record_option, record_before, chosen, taken)
+
+
+@inlined
+def _those_at(node: Integers, price: Floats, option: int, end: int, at: int) -> tuple[int, bool]:
+    """The end of the options from ``option`` on that start at a node, and whether any of them can be taken."""
+    usable = False
+    while option < end and node[option] == at:
+        usable = usable or price[option] < np.inf
+        option += 1
+    return option, usable
+
+
+@inlined
+def _take(
+    option: int, price: float, now: int, made: float, capacity: float, weight: float, spill: float, simple: bool,
+    per_second: float, recur_until: float, maps: Floats, use_at: Integers, use_first: Integers, use_last: Integers,
+    clash: Integers, load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, room: Floats,
+    renews: int, own_bits: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, via: Integers, side: int,
+    here: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats, wait_bits: Integers,
+    record_option: Integers, record_before: Integers, waiting: int,
+) -> int:
+    """The run of labels that taking an option makes of those here that can; returns where it ends.
+
+    All come from the same option, so that one beats another whatever clashes with it. The upward rule of ``labels.py``
+    is applied on the way, and of those that end with as much aboard only the best is kept: most do, where a contact
+    can carry more than there is. ``made`` is generated between the option's end and the start at which the labels wait.
+    """
+    from_s = min(float(now), recur_until)
+    end, best = waiting, -np.inf
+    for k in range(here):
+        record = via[side, k]
+        if record >= 0:
+            last = record_option[record]
+            if clash[last] >= now and share_clique(use_at, use_first, use_last, last, option):
+                continue
+            if len(room) > 0 and _overfills(load_at, load_row, load_amount, load_own, option, room, record_option,
+                                            record_before, record):
+                continue
+        after, sent, lost = _through(maps, option, aboard[side, k])
+        ahead = worth[side, k] + weight * sent - spill * lost - price
+        if simple:
+            if ahead + weight * after <= best:
+                continue
+            best = ahead + weight * after
+        covered = cover[side, k]
+        if renews >= 0:
+            ahead -= per_second * max(0.0, from_s - covered)
+            covered = max(covered, float(renews))
+        after, ahead = _idle(after, ahead, made, capacity, spill)
+        if simple and end > waiting and wait_aboard[end - 1] == after:
+            if wait_worth[end - 1] >= ahead:
+                continue
+            end -= 1
+        wait_aboard[end], wait_worth[end], wait_cover[end] = after, ahead, covered
+        wait_bits[end] = bits[side, k] | own_bits
+        record_option[end], record_before[end] = option, record
+        end += 1
+    return end
+
+
+@inlined
+def _trace(record_option: Integers, record_before: Integers, record: int, taken: Integers) -> int:
+    """Fill ``taken`` with the options that led to a record, in time order; returns how many."""
     size = 0
-    while chosen >= 0:
-        taken[size] = record_option[chosen]
+    while record >= 0:
+        taken[size] = record_option[record]
         size += 1
-        chosen = record_before[chosen]
+        record = record_before[record]
     for k in range(size // 2):
         taken[k], taken[size - 1 - k] = taken[size - 1 - k], taken[k]
-    return best, size
+    return size
 
 
 @compiled
