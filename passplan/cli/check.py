@@ -22,5 +22,5 @@ def command(
     from passplan.report.health import print_health
 
     run = load_run(config, start=instant(start, "--start"))
-    print_health(run, stdout())
-    end_with_warnings(bool(run.warnings or run.left_out), strict)
+    warned = print_health(run, stdout())
+    end_with_warnings(warned, strict)

@@ -17,6 +17,8 @@ from passplan.geometry.timescale import Floats
 # Grid steps between rise and set for which one stencil serves the whole span: nearly all passes of low orbits. Two
 # steps from the middle its error is 1.8 times that in the middle.
 _SHORT = 4
+# A search that ends within so many tolerances of an edge has gone to the edge.
+_AT_EDGE = 4.0
 
 
 @dataclass(frozen=True)
@@ -78,6 +80,9 @@ def _solve_short(
     peak = solve(toward_peak, (powers,), low, high, middle, False, TOLERANCE)
     square = np.ascontiguousarray(powers[:, 1])
     nearest = solve(toward_nearest, (square,), low, high, peak, True, TOLERANCE)
+    # At an edge the range is not flat: milliseconds away from it are metres.
+    for edge in (low, high):
+        np.copyto(nearest, edge, where=np.abs(nearest - edge) < _AT_EDGE * TOLERANCE)
     up, distance2 = stencil.value(powers, peak)
     found.start[some], found.end[some] = low + (centre - zero), high + (centre - zero)
     top.at[some] = peak + (centre - zero)

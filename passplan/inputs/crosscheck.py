@@ -13,7 +13,11 @@ from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.modcods import ModcodTable
 from passplan.inputs.mounts import Mount
 from passplan.inputs.policy import Policy
+from passplan.inputs.records import MaskPoints
 from passplan.inputs.tables import Placed
+
+# More than half of the horizon.
+_SILENT_DEG = 180.0
 
 Radios = Mapping[str, DownlinkRadio | CommandRadio]
 
@@ -53,16 +57,31 @@ def check_ground(
         _known(item.transmitters, transmitters, file, f"{place}: transmitters", findings)
         if not item.receivers and not item.transmitters:
             findings.problem(file, place, None, "has neither receivers nor transmitters; name at least one")
+        for key, points in (("mask", item.mask), ("transmit_mask", item.transmit_mask)):
+            _warn_of_gap(points, f"{file}: {place}: {key}", findings)
+
+
+def _warn_of_gap(points: MaskPoints, place: str, findings: Findings) -> None:
+    """A mask that is a slope over more than half of the horizon has not been surveyed there, or points are missing."""
+    for (last, low), (first, high) in zip(points, (*points[1:], *points[:1]), strict=True):
+        silent_deg = (first - last) % 360.0
+        if silent_deg > _SILENT_DEG and abs(high - low) > 1.0:
+            findings.warn(
+                f"{place} says nothing from {last:g} to {first:g} deg of azimuth; a straight line from {low:g} to "
+                f"{high:g} deg of elevation stands for it, so add the points in between")
 
 
 def check_mounts(
     antennas: Mapping[str, Antenna], mounts: Mapping[str, Mount], file: Path, findings: Findings
 ) -> None:
-    """Mounts that antennas name, the beam that a limited mount needs, and elevation limits that leave nothing."""
+    """Mounts that antennas name, the beam that a limited mount needs, several beams, and limits that leave nothing."""
     for item in antennas.values():
-        if item.mount is None:
-            continue
         place = f"antenna {item.name}"
+        if item.mount is None:
+            if item.beams > 1:
+                remedy = "several beams need an aperture that does not turn; name its mount, of kind fixed"
+                findings.problem(file, f"{place}: beams", item.beams, remedy)
+            continue
         _known((item.mount,), mounts, file, f"{place}: mount", findings)
         mount = mounts.get(item.mount)
         if mount is None:
@@ -70,6 +89,9 @@ def check_mounts(
         if mount.moves and item.beamwidth_deg is None:
             remedy = f"missing; mount {mount.name} has limited rates, so add the half-power width of the beam"
             findings.problem(file, f"{place}: beamwidth_deg", None, remedy)
+        if item.beams > 1 and mount.kind != "fixed":
+            remedy = f"mount {mount.name} turns all its beams together; give 1, or a mount of kind fixed"
+            findings.problem(file, f"{place}: beams", item.beams, remedy)
         highest = mount.upper_to_deg if mount.kind == "az_el" else None
         if highest is not None and highest <= item.min_elevation_deg:
             remedy = f"mount {mount.name} reaches only {highest:g} deg, so nothing is left to see; lower it"

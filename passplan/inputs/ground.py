@@ -129,7 +129,8 @@ class Antenna(Record):
     and never below it), outside the sectors ``transmit_keep_out`` and further from the geosynchronous arc
     than ``transmit_arc_keep_out_deg``. Nothing is received nearer to the Sun than ``sun_keep_out_deg``.
     ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted. With ``ranging`` it measures
-    range in contacts that both send and receive.
+    range in contacts that both send and receive. ``beams`` is how many contacts it serves at the same time, each with
+    its own time to prepare and to release.
     """
 
     name: Name
@@ -139,6 +140,7 @@ class Antenna(Record):
     min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] = 5.0
     mask: MaskPoints = ()
     mount: str | None = None
+    beams: Annotated[int, Field(ge=1, le=1_000)] = 1
     beamwidth_deg: Annotated[float, Field(gt=0.0, le=180.0)] | None = None
     transmit_min_elevation_deg: Annotated[float, Field(ge=-5.0, lt=90.0)] | None = None
     transmit_mask: MaskPoints = ()

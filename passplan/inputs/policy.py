@@ -50,12 +50,14 @@ class Policy(Record):
 
     Values are in "worth" units: a delivered MB earns its spacecraft's weight, a lost MB costs
     ``spill_cost_per_mb``, and a unit of money costs ``worth_per_money``. Rain, cloud and scintillation are
-    counted from ``unavailability_percent`` on: the share of an average year in which the link may fail.
+    counted from ``unavailability_percent`` on: the share of an average year in which the link may fail. With
+    ``volume_basis = "expected"`` a contact is worth what its link brings down on average over such a year.
     """
 
     min_contact_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     required_margin_db: Annotated[float, Field(ge=0.0, le=30.0)] = 3.0
     unavailability_percent: Annotated[float, Field(ge=0.001, le=50.0)] | None = None
+    volume_basis: Literal["availability", "expected"] = "availability"
     sun_noise: bool = False
     ionospheric_allowance_db: Annotated[float, Field(ge=0.0, le=30.0)] = 0.0
     required_c_over_i_db: Annotated[float, Field(ge=-10.0, le=60.0)] | None = None
@@ -65,6 +67,11 @@ class Policy(Record):
     left_worth_share: Annotated[float, Field(ge=0.0, le=1.0)] = 0.0
     worth_per_money: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
     guarantee: tuple[Guarantee, ...] = ()
+    tiers: Literal["one_value", "in_order"] = "one_value"
+    change_cost: Annotated[float, Field(ge=0.0, le=1e12)] = 0.0
+    change_half_h: Annotated[float, Field(gt=0.0, le=240.0)] = 12.0
+    fairness: Literal["off", "max_min"] = "off"
+    when_rules_conflict: Literal["list", "stop"] = "list"
     freeze_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     element_warn_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 3.0
     element_refuse_age_days: Annotated[float, Field(gt=0.0, le=3_650.0)] = 14.0
@@ -83,6 +90,9 @@ class Policy(Record):
 
     @model_validator(mode="after")
     def _consistent(self) -> Policy:
+        if self.volume_basis == "expected" and self.unavailability_percent is None:
+            raise ValueError(
+                'volume_basis "expected" needs unavailability_percent, at which modcods are chosen; state it')
         if self.element_warn_age_days > self.element_refuse_age_days:
             raise ValueError("element_warn_age_days is above element_refuse_age_days; lower it")
         return self

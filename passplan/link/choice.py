@@ -37,6 +37,7 @@ class DownlinkChoice:
 
     ``modcod`` is ``stepped`` where the pieces use several; ``rate_mbps`` is the mean while sending. The first
     piece starts at ``send_start_s``, the last ends at ``send_end_s``. Without ``pieces`` it is sent in one.
+    ``expectation`` is the mean over an average year as a multiple of ``volume_mb``, 1 where nobody asks for it.
     """
 
     radio: str
@@ -51,6 +52,7 @@ class DownlinkChoice:
     volume_mb: float
     min_margin_db: float
     pieces: tuple[SendPiece, ...] = ()
+    expectation: float = 1.0
 
     def __post_init__(self) -> None:
         if not self.pieces:

@@ -18,7 +18,7 @@ from passplan.geometry.losses import Losses
 from passplan.geometry.pointing import Samples
 from passplan.inputs.run import Run
 from passplan.link.budget import Floats
-from passplan.link.choice import DownlinkProfile
+from passplan.link.choice import DownlinkChoice, DownlinkProfile, WindowLink
 from passplan.link.profiles import link_profiles
 
 PERCENT_NODES = (0.01, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0, 50.0, 70.0, 90.0, 99.0)
@@ -73,6 +73,38 @@ def expected_volumes(
         for c, contact in enumerate(contacts):
             volumes_mb[c, k] = carried_mb(links[place[contact.window]].downlink, contact)
     return [_summary(row) for row in volumes_mb]
+
+
+@dataclass(frozen=True, eq=False)
+class ExpectedProfile(DownlinkProfile):
+    """A downlink that also says what each of its choices carries on average over the year.
+
+    Modcods are those of the policy's unavailability; ``skies`` are the profiles at ``PERCENT_NODES``, None where
+    the link never holds.
+    """
+
+    skies: tuple[DownlinkProfile | None, ...] = ()
+
+    def best(self, start_s: int, end_s: int) -> DownlinkChoice | None:
+        """As :meth:`DownlinkProfile.best`, with the ``expectation`` of the whole contact."""
+        choice = super().best(start_s, end_s)
+        if choice is None:
+            return None
+        contact = PlannedContact(0, start_s, end_s, choice.radio, choice.modcod, choice.rate_mbps)
+        mean_mb = _summary(np.array([carried_mb(sky, contact) for sky in self.skies])).mean_mb
+        return replace(choice, expectation=mean_mb / choice.volume_mb)
+
+
+def expecting(
+    run: Run, windows: pd.DataFrame, samples: Samples, links: Sequence[WindowLink], losses: Losses | None = None
+) -> list[WindowLink]:
+    """The ``links`` of ``windows`` with downlinks that know their expectation, by the same samples and losses."""
+    years = [link_profiles(under_percent(run, percent), windows, samples, losses) for percent in PERCENT_NODES]
+    return [
+        link if link.downlink is None else replace(link, downlink=ExpectedProfile(
+            link.downlink.tracks, tuple(year[row].downlink for year in years)))
+        for row, link in enumerate(links)
+    ]
 
 
 def under_percent(run: Run, percent: float) -> Run:

@@ -14,8 +14,10 @@ from passplan.inputs.fleet import DownlinkRadio
 from passplan.inputs.ground import Transmitter
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import LOWEST_STATED_ELEVATION_DEG
-from passplan.link.budget import BOLTZMANN_DBW_PER_K_HZ, ebn0_from_esn0_db
+from passplan.link.budget import BOLTZMANN_DBW_PER_K_HZ, Floats, ebn0_from_esn0_db
 from passplan.link.chains import Chain, Rung, chains_between
+from passplan.link.interference import aggregate_db
+from passplan.link.neighbours import beam_known, neighbours, sharing, with_interference_db
 from passplan.link.noise import dish_of, figure_note
 from passplan.link.notices import STATISTICS, chain_notices
 from passplan.link.terms import PathTerms, flux_density, path_terms
@@ -47,7 +49,8 @@ def budget_lines(run: Run, spacecraft: str, antenna: str, at_utc: np.datetime64)
         path = path_terms(run, antenna, chain, look, times_utc)
         terms = (
             *_geometry(run, look), *_radiated(run, chain), *_signal(run, chain, path), *_demodulation(run, chain, path),
-            *_ground_flux(run, chain, path), *_notices(run, chain, path),
+            *_interference(run, spacecraft, antenna, chain, path, times_utc), *_ground_flux(run, chain, path),
+            *_notices(run, chain, path),
         )
         lines.extend(BudgetLine(link, *term) for term in terms)
     return lines
@@ -59,18 +62,22 @@ def link_along(run: Run, spacecraft: str, antenna: str, times_utc: NDArray[np.da
     Columns: ``utc, direction, radio, partner, azimuth_deg, elevation_deg, range_km, quality_db`` (Es/N0, for
     commands Eb/N0, after implementation loss), ``modcod`` (the fastest that holds the policy's margin, or
     empty), ``margin_db`` (of that modcod, else of the most robust one), ``rate_mbps``, and the moving losses
-    one by one [dB], the system noise [K] and the angle to the Sun [deg] where they are known and counted.
+    one by one [dB], the system noise [K] and the angle to the Sun [deg] where they are known and counted, and
+    C/I [dB] if all others of the fleet that are up on the spectrum sent (NaN where there are none).
     """
     look = _look(run, spacecraft, antenna, times_utc)
-    tables = [_along(run, antenna, chain, look, times_utc) for chain in chains_between(run, spacecraft, antenna)]
+    tables = [
+        _along(run, spacecraft, antenna, chain, look, times_utc) for chain in chains_between(run, spacecraft, antenna)
+    ]
     return pd.concat(tables, ignore_index=True) if tables else pd.DataFrame(columns=list(_ALONG_COLUMNS))
 
 
 _ALONG_COLUMNS = (
     "utc", "direction", "radio", "partner", "azimuth_deg", "elevation_deg", "range_km", "quality_db", "modcod",
     "margin_db", "rate_mbps", "free_space_db", "gas_db", "rain_db", "cloud_db", "scintillation_db", "weather_db",
-    "wet_radome_db", "pattern_db", "g_over_t_drop_db", "sun_db", "system_noise_k", "sun_separation_deg",
+    "wet_radome_db", "pattern_db", "g_over_t_drop_db", "sun_db", "system_noise_k", "sun_separation_deg", "c_over_i_db",
 )
+_NEIGHBOURS_SHOWN = 5
 _Term = tuple[str, float | str, str, str]
 
 
@@ -179,17 +186,46 @@ def _noise(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
         yield "Sun", 0.0 - float(path.sun_db[0]), "dB", source
 
 
+def _interference(
+    run: Run, spacecraft: str, antenna: str, chain: Chain, path: PathTerms, times_utc: NDArray[np.datetime64]
+) -> Iterator[_Term]:
+    """What the rest of the fleet would leave, if all that are up on this spectrum sent at this instant."""
+    if chain.direction != "downlink" or not sharing(run, chain, spacecraft):
+        return
+    if not beam_known(chain):
+        yield "C/I", "unknown", "", f"receiver {chain.partner} states neither gain, diameter nor beamwidth"
+        return
+    found = neighbours(run, antenna, spacecraft, chain, path.look, times_utc)
+    if not found:
+        yield "C/I", "none", "", "nobody else of the fleet on this spectrum is up"
+        return
+    for entry in found[:_NEIGHBOURS_SHOWN]:
+        where = f"{float(entry.apart_deg[0]):.2f} deg from it, at {float(entry.range_km[0]):,.0f} km; if it sends"
+        yield f"  C/I, {entry.name}", float(entry.ratio_db[0]), "dB", where
+    rest = found[_NEIGHBOURS_SHOWN:]
+    if rest:
+        together = float(aggregate_db([entry.ratio_db for entry in rest])[0])
+        yield f"  C/I, {len(rest)} more", together, "dB", "together; if all of them send"
+    total = aggregate_db([entry.ratio_db for entry in found])
+    asked = run.policy.required_c_over_i_db
+    limit = "the policy asks nothing of it" if asked is None else f"the policy asks for {asked:g} dB"
+    yield "C/I, if all send", float(total[0]), "dB", f"powers added; main beam and ITU-R S.465-6; {limit}"
+    quality = with_interference_db(path.quality_db + chain.implementation_loss_db, total)
+    yield "Es/(N0+I0), if all send", float(quality[0]), "dB", "I0 counted as noise, level across the band"
+    rung, _ = _pick(chain.rungs, float(path.quality_db[0]), run.policy.required_margin_db)
+    margin_db = float(quality[0]) - chain.implementation_loss_db - rung.required_db
+    yield "margin, if all send", margin_db, "dB", f"of {rung.name}, after the same losses"
+
+
 def _ground_flux(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
     """Power flux density at the ground: a flag, not a verdict."""
     found = flux_density(run, chain, path)
     if found is not None:
-        density, limit, bandwidth_hz, source = found
-        width = f"{bandwidth_hz / 1e6:g} MHz" if bandwidth_hz >= 1e6 else f"{bandwidth_hz / 1e3:g} kHz"
-        unit = f"dBW/m2/{width}"
-        over = float(density[0] - limit[0])
+        over = float(found.excess_db[0])
         verdict = f"OVER the limit by {over:.1f} dB: look into it" if over > 0.0 else f"{-over:.1f} dB below the limit"
-        yield "flux density at ground", float(density[0]), unit, f"{verdict}; EIRP / (4 pi d^2) over the symbol rate"
-        yield "  its limit", float(limit[0]), unit, source
+        source = f"{verdict}; EIRP / (4 pi d^2) over the symbol rate"
+        yield "flux density at ground", float(found.density_dbw_per_m2[0]), found.unit, source
+        yield "  its limit", float(found.limit_dbw_per_m2[0]), found.unit, found.source
 
 
 def _notices(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
@@ -220,7 +256,18 @@ def _demodulation(run: Run, chain: Chain, path: PathTerms) -> Iterator[_Term]:
         yield "Eb/N0", ebn0_db, "dB", "Es/N0 - 10 log10(efficiency), for comparison"
 
 
-def _along(run: Run, antenna: str, chain: Chain, look: LookAngles, times_utc: NDArray[np.datetime64]) -> pd.DataFrame:
+def _aggregate(
+    run: Run, spacecraft: str, antenna: str, chain: Chain, look: LookAngles, times_utc: NDArray[np.datetime64]
+) -> Floats:
+    """C/I [dB] at each time if all that are up sent; NaN where nobody is, or where it cannot be known."""
+    found = neighbours(run, antenna, spacecraft, chain, look, times_utc) if chain.direction == "downlink" else []
+    total = aggregate_db([entry.ratio_db for entry in found]) if found else np.full(len(times_utc), np.inf)
+    return np.asarray(np.where(np.isfinite(total), total, np.nan))
+
+
+def _along(
+    run: Run, spacecraft: str, antenna: str, chain: Chain, look: LookAngles, times_utc: NDArray[np.datetime64]
+) -> pd.DataFrame:
     path = path_terms(run, antenna, chain, look, times_utc)
     quality_db, unknown = path.quality_db, np.full(len(times_utc), np.nan)
     picks = [_pick(chain.rungs, float(value), run.policy.required_margin_db) for value in quality_db]
@@ -234,5 +281,6 @@ def _along(run: Run, antenna: str, chain: Chain, look: LookAngles, times_utc: ND
         path.weather_db, path.radome_db, path.pattern_db, path.figure_drop_db, path.sun_db,
         unknown if path.noise_k is None else path.noise_k,
         unknown if path.sun_separation_deg is None else path.sun_separation_deg,
+        _aggregate(run, spacecraft, antenna, chain, look, times_utc),
     )
     return pd.DataFrame(dict(zip(_ALONG_COLUMNS, columns, strict=True)))

@@ -94,7 +94,7 @@ def _jobs(run: Run, windows: pd.DataFrame) -> tuple[list[_Job], _Slants]:
 def _by_ladder(jobs: Sequence[_Job]) -> Mapping[tuple[float, ...], list[_Job]]:
     """Jobs whose rungs have the same requirements are searched together, those of one table side by side."""
     groups: dict[tuple[float, ...], list[_Job]] = defaultdict(list)
-    for job in sorted(jobs, key=lambda job: job.table):
+    for job in sorted(jobs, key=lambda job: (job.table, job.chain.radio)):
         groups[job.chain.needs_db].append(job)
     return groups
 
@@ -123,19 +123,35 @@ def _evaluate(
     frequency_mhz = np.repeat([job.chain.frequency_mhz for job in jobs], sizes)
     slant_db = look_up(np.stack([table.loss_db for table in tables]), np.repeat(row, sizes), elevation_deg)
     quality_db = merit_db - free_space_loss_db(frequency_mhz, samples.range_km[pick]) - slant_db
-    owns = [slice(offsets[k], offsets[k + 1]) for k in range(len(jobs))]
-    for k, job in enumerate(jobs):
-        if job.chain.pattern or run.policy.sun_noise:
-            quality_db[owns[k]] -= _moving_loss_db(run, slants.paths[job.table], job, tables[row[k]], samples)
-    time_s = samples.time_s[pick]
+    sampled = Samples(samples.time_s[pick], samples.azimuth_deg[pick], elevation_deg, samples.range_km[pick],
+                      samples.range_rate_km_s[pick], offsets)
+    for same in _alike(jobs):
+        chain = jobs[same.start].chain
+        if chain.pattern or run.policy.sun_noise:
+            path, table = slants.paths[jobs[same.start].table], tables[row[same.start]]
+            part = slice(offsets[same.start], offsets[same.stop])
+            quality_db[part] -= _moving_loss_db(run, path, chain, table, sampled, same)
+    time_s = sampled.time_s
     found = find_stretches(time_s, quality_db, offsets, thresholds_db)
     for k, job in enumerate(jobs):
-        yield Track(job.chain, time_s[owns[k]], quality_db[owns[k]], *found.of(k), run.policy.required_margin_db)
+        own = slice(offsets[k], offsets[k + 1])
+        yield Track(job.chain, time_s[own], quality_db[own], *found.of(k), run.policy.required_margin_db)
 
 
-def _moving_loss_db(run: Run, path: SkyPath, job: _Job, table: SlantTable, samples: Samples) -> Floats | float:
-    """Loss that depends on more than elevation: the pattern aboard, and the Sun."""
-    chain, own = job.chain, slice(samples.offsets[job.window], samples.offsets[job.window + 1])
+def _alike(jobs: Sequence[_Job]) -> Iterator[range]:
+    """Runs of jobs of one slant table and one radio, whose chains differ in nothing that moves."""
+    first = 0
+    for k in range(1, len(jobs) + 1):
+        if k == len(jobs) or (jobs[k].table, jobs[k].chain.radio) != (jobs[first].table, jobs[first].chain.radio):
+            yield range(first, k)
+            first = k
+
+
+def _moving_loss_db(
+    run: Run, path: SkyPath, chain: Chain, table: SlantTable, samples: Samples, same: range
+) -> Floats | float:
+    """Loss of some tracks that depends on more than elevation: the pattern aboard, and the Sun."""
+    own = slice(samples.offsets[same.start], samples.offsets[same.stop])
     loss_db: Floats | float = 0.0
     if chain.pattern:
         site = path.site
@@ -145,9 +161,11 @@ def _moving_loss_db(run: Run, path: SkyPath, job: _Job, table: SlantTable, sampl
         width_deg = dish_of(chain.receiver, chain.frequency_mhz)[1]
         if width_deg is not None:
             times = run.start_utc + np.rint(samples.time_s[own] * 1e3).astype("timedelta64[ms]")
+            opens = np.zeros(times.size, bool)
+            opens[samples.offsets[same.start : same.stop] - samples.offsets[same.start]] = True
             separation = nearest_approach_deg(
                 path.site, times, samples.azimuth_deg[own], samples.elevation_deg[own],
-                refraction=run.policy.refraction != "off",
+                refraction=run.policy.refraction != "off", opens=opens,
             )
             first = np.zeros(separation.size, np.int64)
             noise_k = look_up(table.noise_k[None, :], first, samples.elevation_deg[own])

@@ -18,20 +18,21 @@ from passplan.link.budget import Floats, sun_noise_k
 
 def nearest_approach_deg(
     site: Site, times_utc: NDArray[np.datetime64], azimuth_deg: Floats, elevation_deg: Floats, *,
-    refraction: bool = False,
+    refraction: bool = False, opens: NDArray[np.bool_] | None = None,
 ) -> Floats:
     """Least angle [deg] between the Sun and the pointing from the sample before to the sample after, shape (n,).
 
-    The Sun below the horizon disturbs nobody: 180 deg. With ``refraction`` the pointing is apparent.
+    The Sun below the horizon disturbs nobody: 180 deg. With ``refraction`` the pointing is apparent. Samples of
+    several passes may lie end to end: each that begins one is marked in ``opens``.
     """
     sun = sun_seen(site, times_utc, refraction=refraction)
-    angle = closest_deg(pointing_vectors(azimuth_deg, elevation_deg) - sun)
+    angle = closest_deg(pointing_vectors(azimuth_deg, elevation_deg) - sun, opens)
     return np.asarray(np.where(sun[:, 2] > 0.0, angle, 180.0))
 
 
 def sun_seen(site: Site, times_utc: NDArray[np.datetime64], *, refraction: bool = False) -> Floats:
     """Unit vectors (east, north, up), shape (n, 3), to the Sun; with ``refraction`` where it appears (P.834)."""
-    sun = sun_direction(times_utc) @ local_axes(site).T
+    sun = _direction(times_utc) @ local_axes(site).T
     if not refraction:
         return np.asarray(sun)
     elevation_deg = np.degrees(np.arcsin(np.clip(sun[:, 2], -1.0, 1.0)))
@@ -39,14 +40,32 @@ def sun_seen(site: Site, times_utc: NDArray[np.datetime64], *, refraction: bool 
     return pointing_vectors(azimuth_deg, apparent_deg(elevation_deg, site.height_m / 1e3))
 
 
-def closest_deg(away: Floats) -> Floats:
+def _direction(times_utc: NDArray[np.datetime64]) -> Floats:
+    """Direction of the Sun, Earth-fixed, (n, 3); many times are joined by straight lines from minute to minute.
+
+    In a minute the Sun moves by 0.25 deg, and is off the line by 0.0002 deg at most.
+    """
+    times_s = times_utc.astype("datetime64[ms]").astype(np.int64) / 1e3
+    if times_s.size == 0:
+        return np.zeros((0, 3))
+    minutes = np.arange(np.floor(times_s.min() / 60.0), np.ceil(times_s.max() / 60.0) + 1.0)
+    if minutes.size >= times_s.size:
+        return sun_direction(times_utc)
+    known = sun_direction((60_000.0 * minutes).astype(np.int64).astype("datetime64[ms]"))
+    return np.column_stack([np.interp(times_s, 60.0 * minutes, column) for column in known.T])
+
+
+def closest_deg(away: Floats, opens: NDArray[np.bool_] | None = None) -> Floats:
     """Least angle [deg] between two directions from the sample before to the one after, shape (n,).
 
-    ``away`` (n, 3) is the difference of their unit vectors; between samples it runs along straight lines.
+    ``away`` (n, 3) is the difference of their unit vectors; between samples it runs along straight lines, but
+    for those marked in ``opens``, which have no sample before them.
     """
     nearest = np.linalg.norm(away, axis=1)
     if len(away) > 1:
         between = way_between(away[:-1], away[1:])
+        if opens is not None:
+            between[opens[1:]] = np.inf
         nearest[:-1] = np.minimum(nearest[:-1], between)
         nearest[1:] = np.minimum(nearest[1:], between)
     return np.asarray(np.degrees(2.0 * np.arcsin(np.clip(nearest / 2.0, 0.0, 1.0))))

@@ -12,11 +12,12 @@ from numpy.typing import NDArray
 
 from passplan.geometry.pointing import LookAngles
 from passplan.geometry.sun import pointing_vectors
-from passplan.inputs.pfd import limits_at
+from passplan.inputs.fleet import DownlinkRadio
 from passplan.inputs.run import Run
 from passplan.link.atmosphere import Attenuations, SkyPath, skies
-from passplan.link.budget import Floats, free_space_loss_db, off_nadir_deg, power_flux_density_dbw_per_m2
+from passplan.link.budget import Floats, free_space_loss_db, off_nadir_deg
 from passplan.link.chains import Chain
+from passplan.link.ground_flux import GroundFlux, ground_flux
 from passplan.link.noise import dish_of, figure_drop_db, system_noise_at_k
 from passplan.link.profiles import pattern_loss_db
 from passplan.link.slant import sky_path
@@ -79,21 +80,12 @@ def path_terms(
     )
 
 
-def flux_density(run: Run, chain: Chain, terms: PathTerms) -> tuple[Floats, Floats, float, str] | None:
-    """Power flux density [dB(W/m2)], its limit at the angle of arrival, the bandwidth [Hz] and the limit's source.
-
-    None where no limit is stated for the frequency. EIRP is that towards the station.
-    """
-    points = limits_at(run.pfd_limits, chain.frequency_mhz)
-    if chain.direction != "downlink" or not points:
+def flux_density(run: Run, chain: Chain, terms: PathTerms) -> GroundFlux | None:
+    """Power flux density at the station, with EIRP as it is towards it; None for commands, and without a limit."""
+    radio = run.radios[chain.radio]
+    if not isinstance(radio, DownlinkRadio):
         return None
-    bandwidth_hz = points[0].bandwidth_hz
-    eirp_dbw = chain.eirp_dbw - terms.pattern_db
-    density = power_flux_density_dbw_per_m2(eirp_dbw, terms.look.range_km, chain.rate_hz, bandwidth_hz)
-    limit = np.interp(
-        terms.look.elevation_deg, [p.arrival_deg for p in points], [p.limit_dbw_per_m2 for p in points]
-    )
-    return density, np.asarray(limit), bandwidth_hz, points[0].source
+    return ground_flux(run, radio, chain.eirp_dbw - terms.pattern_db, terms.look.range_km, terms.look.elevation_deg)
 
 
 def _separation_deg(run: Run, path: SkyPath, look: LookAngles, times_utc: NDArray[np.datetime64]) -> Floats:

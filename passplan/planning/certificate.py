@@ -61,7 +61,7 @@ Certificate = PriceCertificate | ModelCertificate
 def bound_of(problem: Problem, terms: Terms, certificate: Certificate) -> float:
     """What a certificate proves: no plan of ``problem`` under ``terms`` with as few shortfalls is worth more."""
     if isinstance(certificate, ModelCertificate):
-        return _solved_again(certificate)
+        return _solved_again(certificate) + problem.base_worth
     if min((x.min(initial=0.0) for x in (certificate.price, certificate.row_price)), default=0.0) < 0.0:
         raise ValueError("a certificate with negative prices proves nothing")
     price = _option_prices(problem, terms, certificate)
@@ -69,7 +69,8 @@ def bound_of(problem: Problem, terms: Terms, certificate: Certificate) -> float:
         certificate.rows.tolist(), certificate.row.tolist(), certificate.row_price.tolist(), strict=True))
     crafts = range(len(problem.fleet))
     best = math.fsum(_best_of(problem, terms, craft, price, certificate.point_price) for craft in crafts)
-    return float(best + certificate.price.sum() + limits + certificate.point_price * certificate.points)
+    paid = float(certificate.price.sum()) + limits + certificate.point_price * certificate.points
+    return float(best + paid + problem.base_worth)
 
 
 def _solved_again(certificate: ModelCertificate) -> float:
@@ -80,7 +81,7 @@ def _solved_again(certificate: ModelCertificate) -> float:
 
 def _option_prices(problem: Problem, terms: Terms, certificate: PriceCertificate) -> Floats:
     """What each option pays: the prices of the instants of its lanes that it holds, and of its amounts in rows."""
-    price = problem.worth_per_money * problem.options.cost
+    price = problem.price.copy()
     for k, lane in enumerate(terms.lanes):
         mine = certificate.lane == k
         order = np.argsort(certificate.instant_s[mine], kind="stable")

@@ -109,7 +109,7 @@ class _Builder:
         np.add.at(volume, np.repeat(np.arange(len(options)), counts),
                   options.piece_rate_mb_per_s * (options.piece_end_s - options.piece_start_s))
         weight = problem.fleet.weight[options.spacecraft] + problem.spill_cost_per_mb
-        ceiling = volume * weight - problem.worth_per_money * options.cost
+        ceiling = volume * weight - problem.price
         heap = [(-c, o) for o, c in enumerate(ceiling.tolist()) if c > 0.0]
         heapq.heapify(heap)
         while heap and not clock.expired():
@@ -154,7 +154,7 @@ def gain_of(problem: Problem, maps: StorageMaps, others: list[int], option: int)
 
 def _value(problem: Problem, maps: StorageMaps, craft: int, mine: list[int]) -> float:
     """The part of the objective of one spacecraft with the contacts ``mine``, in time order."""
-    fleet, options, spill, money = problem.fleet, problem.options, problem.spill_cost_per_mb, problem.worth_per_money
+    fleet, options, spill, price = problem.fleet, problem.options, problem.spill_cost_per_mb, problem.price
     fill, generation = float(fleet.start_fill_mb[craft]), float(fleet.generation_mb_per_s[craft])
     capacity = float(fleet.capacity_mb[craft])
     clock, sent, lost, cost = 0, 0.0, 0.0, 0.0
@@ -162,8 +162,8 @@ def _value(problem: Problem, maps: StorageMaps, craft: int, mine: list[int]) -> 
         fill += generation * (int(options.start_s[o]) - clock)
         lost += max(0.0, fill - capacity)
         fill, sent_now, lost_now = maps.apply(o, min(fill, capacity))
-        sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(options.cost[o]), int(options.end_s[o])
+        sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(price[o]), int(options.end_s[o])
     fill += generation * (problem.horizon_s - clock)
     lost += max(0.0, fill - capacity)
     worth = sent + problem.left_worth_share * min(fill, capacity)
-    return float(fleet.weight[craft]) * worth - spill * lost - money * cost
+    return float(fleet.weight[craft]) * worth - spill * lost - cost

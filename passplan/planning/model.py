@@ -13,6 +13,7 @@ kept, but not when within them. The bound stays valid and the value is taken fro
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -44,8 +45,13 @@ class PlanModel:
     columns: Integers
     coefficients: Floats
 
-    def proto(self, tier: int, points_limit: float | None = None) -> model_pb2.ModelProto:
-        """The program that minimises points (tier 1), or maximises value with points limited (tier 2)."""
+    def proto(
+        self, tier: int, points_limit: float | None = None, holds: Sequence[tuple[Floats, float]] = (),
+    ) -> model_pb2.ModelProto:
+        """The program that minimises points (tier 1), or maximises value with points limited (tier 2).
+
+        ``holds`` are further objectives over the columns, each with the least it must come to.
+        """
         rows, columns, coefficients = self.rows, self.columns, self.coefficients
         row_lower, row_upper = self.row_lower, self.row_upper
         if points_limit is not None:
@@ -54,6 +60,13 @@ class PlanModel:
             columns = np.concatenate([columns, slack])
             coefficients = np.concatenate([coefficients, self.points[slack]])
             row_lower, row_upper = np.append(row_lower, -_INFINITY), np.append(row_upper, points_limit)
+        for objective, least in holds:
+            used = np.flatnonzero(objective)
+            unit = max(1.0, float(np.abs(objective).max(initial=0.0)))
+            rows = np.concatenate([rows, np.full(len(used), len(row_lower))])
+            columns = np.concatenate([columns, used])
+            coefficients = np.concatenate([coefficients, objective[used] / unit])
+            row_lower, row_upper = np.append(row_lower, least / unit), np.append(row_upper, _INFINITY)
         proto = model_pb2.ModelProto()
         proto.variables.ids.extend(range(len(self.lower)))
         proto.variables.lower_bounds.extend(self.lower.tolist())
@@ -90,7 +103,7 @@ def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> Plan
             serving[served] = True
         upper[~serving] = 0.0
     block = _Blocks()
-    block.add_columns(upper=upper, value=-problem.worth_per_money * problem.options.cost, integer=True)
+    block.add_columns(upper=upper, value=-problem.price, integer=True)
     for lane in terms.lanes:
         _add_lane(block, lane)
     for rows in terms.rows:

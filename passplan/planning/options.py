@@ -98,7 +98,8 @@ def find_options(
         "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
         "prepare_s": prepare_s, "release_s": release_s,
         "pieces": [] if c.downlink is None else [
-            (piece.start_s, piece.end_s, piece.rate_mbps / 8.0) for piece in c.downlink.pieces],
+            (piece.start_s, piece.end_s, piece.rate_mbps / 8.0 * c.downlink.expectation)
+            for piece in c.downlink.pieces],
     } for c, (prepare_s, release_s) in zip(candidates, setups, strict=True)]
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
 
@@ -217,7 +218,8 @@ def _dominates(b: Candidate, a: Candidate) -> bool:
     if a.downlink is None:
         return True
     return (b.downlink is not None and b.downlink.send_start_s <= a.downlink.send_start_s
-            and b.downlink.send_end_s >= a.downlink.send_end_s and b.downlink.rate_mbps >= a.downlink.rate_mbps
+            and b.downlink.send_end_s >= a.downlink.send_end_s
+            and b.downlink.rate_mbps * b.downlink.expectation >= a.downlink.rate_mbps * a.downlink.expectation
             and b.downlink.usable_s >= a.downlink.usable_s)
 
 

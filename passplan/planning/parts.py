@@ -110,6 +110,8 @@ def _part(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part
     zero = np.where(crafts, 1.0, 0.0)
     part = replace(
         problem, options=problem.options.take(kept), too_tight=np.zeros((0, 2), dtype=np.int64),
+        extra_price=problem.extra_price[kept] if len(problem.extra_price) else problem.extra_price,
+        base_worth=problem.base_worth if first else 0.0,
         fleet=replace(fleet, weight=fleet.weight * zero, generation_mb_per_s=fleet.generation_mb_per_s * zero,
                       start_fill_mb=fleet.start_fill_mb * zero))
     return Part(part, _terms(problem, terms, place, crafts, first=first), kept)

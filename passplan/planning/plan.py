@@ -13,7 +13,10 @@ from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
 from passplan.link.conflicts import Interference, InterferenceCrowd, InterferencePair
+from passplan.planning.change_cost import with_changes
 from passplan.planning.clock import Clock
+from passplan.planning.contradictions import Contradiction, RulesConflictError, find_contradictions
+from passplan.planning.fair_share import with_fair_floor
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
@@ -26,6 +29,8 @@ from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
 
 Report = Callable[[str, int, int], None]
+_CONTRADICTIONS_S = 10.0
+_FAIRNESS_SHARE = 0.25
 
 
 @dataclass(frozen=True, eq=False)
@@ -37,6 +42,8 @@ class Plan:
     unused: pd.DataFrame
     result: PlanResult
     problem: Problem
+    contradictions: tuple[Contradiction, ...] = ()
+    fair_floor: float | None = None
 
 
 def make_plan(
@@ -48,19 +55,30 @@ def make_plan(
     ``windows`` is the table of the geometry floor and ``links`` the links of its rows, in order. Spacecraft
     without an orbit take no part. The policy's time limit covers everything from here to the chosen
     contacts. ``interference`` says who must not send at once. ``progress(stage, done_s, total_s)`` is
-    called as value, bound and gap move.
+    called as value, bound and gap move. Where requirements are missed, some seconds more go into naming those
+    that contradict each other; raises :class:`RulesConflictError` if the policy wants no plan then.
     """
     policy = run.policy
     clock = Clock(policy.time_limit_s)
     with clock.stage("options"):
         problem, option_set = build_problem(run, windows, links, interference)
     limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed, policy.search_rounds)
+    floor = None
+    if policy.fairness == "max_min":
+        with clock.stage("fairness"):
+            problem, floor = with_fair_floor(run, problem, limits, _FAIRNESS_SHARE * clock.left_s())
     result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
     terms = all_terms(problem)
+    found: tuple[Contradiction, ...] = ()
+    if result.shortfalls:
+        seconds = min(_CONTRADICTIONS_S, policy.time_limit_s)
+        found = find_contradictions(problem, terms, result.chosen, limits, seconds)
+    if found and policy.when_rules_conflict == "stop":
+        raise RulesConflictError(one.sentence for one in found)
     contacts = contacts_table(run, windows, problem, option_set, terms, result)
     return Plan(
         contacts, segments_table(run, problem, option_set, result, contacts),
-        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem)
+        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem, found, floor)
 
 
 def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress | None:
@@ -84,7 +102,8 @@ def build_problem(
         generation_mb_per_s=np.array([c.generation_mb_per_s for c in craft], dtype=float),
         capacity_mb=np.array([c.storage_mb for c in craft], dtype=float),
         start_fill_mb=np.array([c.start_fill_mb for c in craft], dtype=float))
-    antennas = Antennas(names=tuple(run.antennas))
+    antennas = Antennas(
+        names=tuple(run.antennas), beams=np.array([a.beams for a in run.antennas.values()], dtype=np.int64))
     disturbing = interference or Interference()
     arrays = window_arrays(run, windows, fleet, antennas)
     blocks = [block for find in BLOCKS for block in find(run)]
@@ -99,8 +118,10 @@ def build_problem(
         spill_cost_per_mb=run.policy.spill_cost_per_mb, left_worth_share=run.policy.left_worth_share,
         worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
+    problem = with_changes(run, problem)
     draft = Draft(run, windows, problem, option_set.candidates, tuple(blocks))
-    return replace(problem, needs=tuple(need for find in NEEDS for need in find(draft))), option_set
+    needs = (*problem.needs, *(need for find in NEEDS for need in find(draft)))
+    return replace(problem, needs=needs), option_set
 
 
 def _conflict(fleet: Fleet, antennas: Antennas, pair: InterferencePair) -> Conflict:

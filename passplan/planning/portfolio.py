@@ -9,6 +9,8 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
+import numpy as np
+
 from passplan.planning.certificate import Certificate
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
@@ -25,6 +27,7 @@ from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
+from passplan.planning.staged import plan_in_order
 from passplan.planning.tidy import tidy
 from passplan.planning.value import account
 
@@ -47,6 +50,8 @@ def find_plan(
     clock = clock or Clock(limits.time_limit_s)
     with stops_by_hand(clock):
         terms = all_terms(problem, rules)
+        if problem.in_order:
+            return plan_in_order(problem, terms, limits, clock, progress)
         parts = independent_parts(problem, terms)
         ceilings = [_ceiling(part.problem) for part in parts]
         value = bound = 0.0
@@ -122,11 +127,13 @@ def _plan_part(
         with clock.stage("search"):
             if arrays is None:
                 arrays = fleet_arrays(problem, terms, maps)
-            found = search_plan(arrays, terms, limits, clock, best.chosen, best.points, tell)
+            base = problem.base_worth
+            found = search_plan(
+                arrays, terms, limits, clock, best.chosen, best.points, lambda v, b: tell(v + base, b + base))
         candidate = _Candidate(problem, terms, found.chosen, "search")
         # With fewer points, more plans compete than the bound so far is for.
-        if candidate.points < best.points - _SAME_POINTS or found.bound < bound:
-            bound, certificate = found.bound, found.certificate
+        if candidate.points < best.points - _SAME_POINTS or found.bound + base < bound:
+            bound, certificate = found.bound + base, found.certificate
         best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
         touched = tidy(problem, terms, maps, best.chosen, arrays)
@@ -168,10 +175,11 @@ def _conclude(
     status = status_of(gap, limits.gap, best.path, len(best.chosen))
     return PlanResult(
         best.chosen, "stopped_by_limit" if clock.stopped and status == "greedy" else status, value, bound, gap,
-        tuple(tiers), best.shortfalls, best.account, best.path, proofs, clock.stopped, dict(clock.seconds))
+        tuple(tiers), best.shortfalls, best.account, best.path, dict(clock.seconds), proofs, clock.stopped)
 
 
 def _ceiling(problem: Problem) -> float:
     """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
     fleet = problem.fleet
-    return float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    worth = float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    return worth + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

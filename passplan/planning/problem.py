@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field, fields, replace
+from functools import cached_property
 from typing import Any, Literal, TypeVar
 
 import numpy as np
@@ -39,9 +40,15 @@ class Fleet:
 
 @dataclass(frozen=True, eq=False)
 class Antennas:
-    """Antennas, shape (a,)."""
+    """Antennas, shape (a,); ``beams`` is how many contacts each serves at once, without it one each."""
 
     names: tuple[str, ...]
+    beams: Integers = field(default_factory=lambda: np.zeros(0, dtype=np.int64))
+
+    def __post_init__(self) -> None:
+        if not len(self.beams):
+            object.__setattr__(self, "beams", np.ones(len(self.names), dtype=np.int64))
+        _freeze(self)
 
     def __len__(self) -> int:
         return len(self.names)
@@ -174,8 +181,9 @@ class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
     The objective is the sum over spacecraft of weight x (delivered MB + ``left_worth_share`` x MB left at the end),
-    less ``spill_cost_per_mb`` x lost
-    MB, less ``worth_per_money`` x cost; requirements come before it (see ``rules``). ``too_tight`` (k, 2)
+    less ``spill_cost_per_mb`` x lost MB, less ``worth_per_money`` x cost, less the ``extra_price`` (m,) of options
+    (none where it is empty), plus ``base_worth``; requirements come before it (see ``rules``). With ``in_order`` it is
+    one of several objectives that are taken one after the other (see ``tiers.py``). ``too_tight`` (k, 2)
     are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
     records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.
     """
@@ -192,8 +200,17 @@ class Problem:
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
     left_worth_share: float = 0.0
+    extra_price: Floats = field(default_factory=lambda: np.zeros(0))
+    base_worth: float = 0.0
+    in_order: bool = False
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
     needs: tuple[object, ...] = ()
+
+    @cached_property
+    def price(self) -> Floats:
+        """What it costs in worth to use each option, shape (m,), apart from what it sends; may be negative."""
+        price: Floats = self.worth_per_money * self.options.cost
+        return price + self.extra_price if len(self.extra_price) else price
 
     def needs_of(self, kind: type[N]) -> list[N]:
         """The records of one kind, in their order."""
@@ -201,8 +218,8 @@ class Problem:
 
     def with_options(self, options: Options) -> Problem:
         """The same problem over other options; raises ValueError where pairs of the old ones are named."""
-        if len(self.too_tight):
-            raise ValueError("too_tight names pairs of options by number; make the problem anew")
+        if len(self.too_tight) or len(self.extra_price):
+            raise ValueError("too_tight and extra_price go by the number of an option; make the problem anew")
         return replace(self, options=options)
 
 

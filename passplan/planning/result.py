@@ -53,9 +53,9 @@ class PlanResult:
     shortfalls: tuple[Shortfall, ...]
     account: Account
     path: str
+    seconds: dict[str, float] = field(default_factory=dict)
     proofs: tuple[Proof, ...] = ()
     stopped_by_hand: bool = False
-    seconds: dict[str, float] = field(default_factory=dict)
 
 
 def relative_gap(value: float, bound: float) -> float:

@@ -30,9 +30,9 @@ class Shortfall:
 _ROUNDING = 1e-9
 _WANTED = {
     "request": "Request {name} for {owner} is not met",
-    "pin": "The pinned contact, {name}, is not in the plan",
-    "frozen": "The frozen contact, {name}, is not in the plan as it was published",
-    "emergency": "The emergency contact, {name}, is not in the plan",
+    "pin": "The pinned contact is not in the plan",
+    "frozen": "The frozen contact is not in the plan as it was published",
+    "emergency": "The emergency contact is not in the plan",
 }
 
 
@@ -69,7 +69,7 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
                    else "the windows offer no more")
             found.append(Shortfall(
                 promise.kind, promise.name, "", promise.points * missing / promise.need,
-                f"The {promise.name}: the plan has {got:.6g} of the {promise.need:.6g} that are due: {why}.",
+                f"The plan has {got:.6g} of the {promise.need:.6g} that are due: {why}.",
                 most > got))
     return tuple(found)
 

@@ -8,6 +8,8 @@ from __future__ import annotations
 
 import datetime as dt
 import threading
+from collections.abc import Sequence
+from contextlib import suppress
 from dataclasses import dataclass
 
 import numpy as np
@@ -24,6 +26,7 @@ from passplan.planning.rules.terms import Terms
 _POINTS_TOLERANCE = 1e-7
 # How often the clock is looked at while a solver runs.
 _LOOK_S = 0.05
+_WRONG = (mathopt.TerminationReason.INFEASIBLE, mathopt.TerminationReason.INFEASIBLE_OR_UNBOUNDED)
 _SOLVERS = (mathopt.SolverType.HIGHS, mathopt.SolverType.GSCIP)
 
 
@@ -49,17 +52,23 @@ def least_shortfall(problem: Problem, terms: Terms, limits: Limits, clock: Clock
 
 def most_value(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float,
+    holds: Sequence[tuple[Problem, float]] = (),
 ) -> Solved:
-    """Tier 2: the most valuable options among those with at most ``points`` of shortfall."""
+    """Tier 2: the most valuable options among those with at most ``points`` of shortfall.
+
+    ``holds`` are the same problem with other objectives, each with the value that is not to be given up.
+    """
     with clock.stage("model"):
         model = build_model(problem, terms)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
-        proto = model.proto(tier=2, points_limit=limit)
+        held = [(build_model(other, terms).value, least - other.base_worth) for other, least in holds]
+        proto = model.proto(tier=2, points_limit=limit, holds=held)
     with clock.stage("solve"):
         answer = _solve(proto, model, limits, clock, limits.gap)
     if answer.bound is None:
         return Solved(answer.chosen, float("inf"))
-    return Solved(answer.chosen, answer.bound, ModelCertificate(model, limit, answer.bound))
+    bound = answer.bound + problem.base_worth
+    return Solved(answer.chosen, bound, None if holds else ModelCertificate(model, limit, bound))
 
 
 @dataclass(frozen=True)
@@ -74,26 +83,37 @@ def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, clock:
         parameters = mathopt.SolveParameters(
             time_limit=dt.timedelta(seconds=max(clock.left_s(), 0.01)), random_seed=limits.seed,
             relative_gap_tolerance=gap)
-        outcome: list[mathopt.SolveResult] = []
-
-        def work(solver: mathopt.SolverType = solver, parameters: mathopt.SolveParameters = parameters,
-                 outcome: list[mathopt.SolveResult] = outcome) -> None:
-            try:
-                outcome.append(mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters))
-            except Exception:  # the errors of the solvers share no type
-                # HiGHS gives up on a sound model now and then (kError); the next one takes over.
-                outcome.clear()
-
-        # HiGHS cannot be interrupted: when the clock is stopped by hand, it is left to run out behind.
-        thread = threading.Thread(target=work, daemon=True)
-        thread.start()
-        while thread.is_alive() and not clock.stopped:
-            thread.join(_LOOK_S)
+        result = _run(proto, solver, parameters, clock)
         if clock.stopped:
             break
-        if outcome:
-            return _answer(outcome[0], model)
+        if result is None:
+            # HiGHS gives up on a sound model now and then (kError); the next one takes over.
+            continue
+        if result.has_primal_feasible_solution() or result.termination.reason not in _WRONG:
+            return _answer(result, model)
+        # A plan is known, so there is one: the solver has fallen over its own tolerances.
     return _Answer(None, 0.0, None)
+
+
+def _run(
+    proto: model_pb2.ModelProto, solver: mathopt.SolverType, parameters: mathopt.SolveParameters, clock: Clock,
+) -> mathopt.SolveResult | None:
+    """The solver's result; None where it raised something, or the clock was stopped by hand.
+
+    HiGHS cannot be interrupted: after a stop it is left to run out behind.
+    """
+    outcome: list[mathopt.SolveResult] = []
+
+    def work() -> None:
+        # The errors of the solvers share no type.
+        with suppress(Exception):
+            outcome.append(mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters))
+
+    thread = threading.Thread(target=work, daemon=True)
+    thread.start()
+    while thread.is_alive() and not clock.stopped:
+        thread.join(_LOOK_S)
+    return outcome[0] if outcome else None
 
 
 def _answer(result: mathopt.SolveResult, model: PlanModel) -> _Answer:

@@ -23,9 +23,11 @@ from passplan.inputs.errors import PassplanError
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.link.conflicts import find_interference
+from passplan.link.expected import expecting
 from passplan.link.profiles import WindowLink, link_profiles
 from passplan.planning.audit import Fault, audit_plan
 from passplan.planning.changes import compare
+from passplan.planning.ground_flux import flux_summary, flux_warnings
 from passplan.planning.lost_value import lost_value
 from passplan.planning.plan import make_plan
 from passplan.planning.record import PlanRecord
@@ -131,11 +133,17 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
     report("computing links", 0, 0)
     samples = samples_of(run, windows)
     links = link_profiles(run, windows, samples, losses)
+    if run.policy.volume_basis == "expected":
+        report("expecting volumes", 0, 0)
+        links = expecting(run, windows, samples, links, losses)
     interference = find_interference(run, windows)
     lap("links")
     plan = make_plan(run, windows, links, progress=report, interference=interference)
     lap("plan")
     summary = summarise(run, windows, plan)
+    flux = flux_summary(run, windows, samples, plan)
+    summary["flux_density"] = flux
+    summary["warnings"] += flux_warnings(plan.contacts, flux)
     summary["weather"] = weather_summary(run, windows, samples, plan, losses)
     lap("weather")
     record = PlanRecord(

@@ -19,6 +19,7 @@ from passplan.inputs.reader import ReadFile
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.planning.plan import Plan
+from passplan.planning.rules.decisions import frozen_contacts
 from passplan.planning.value import Account
 
 _PACKAGES = ("skyfield", "sgp4", "ortools", "itur", "numpy", "pandas")
@@ -51,6 +52,14 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
+        **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
+        # A requirement that cannot be met for itself has said so in its shortfall.
+        "contradictions": [
+            {"demands": list(c.demands), "between": list(c.between), "sentence": c.sentence}
+            for c in plan.contradictions if len(c.demands) > 1
+        ],
+        "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
+        "frozen": [item.name for item in frozen_contacts(run)],
         "warnings": list(run.warnings) + _own_warnings(run, windows),
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},

@@ -71,7 +71,7 @@ class _Explainer:
         best = max(free, key=lambda o: gain_of(problem, self.maps, self.of_craft[craft], o))
         gain = gain_of(problem, self.maps, self.of_craft[craft], best)
         name = problem.fleet.names[craft]
-        cost = problem.worth_per_money * float(problem.options.cost[best])
+        cost = max(0.0, float(problem.price[best]))
         if gain + cost <= 1e-9 * max(1.0, float(problem.fleet.capacity_mb[craft])):
             return "nothing_aboard", f"the other contacts of {name} bring down as much without it"
         return "not_worth_it", f"it would add {gain + cost:.6g} in value at a cost of {cost:.6g}"

@@ -71,7 +71,7 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
     cost = math.fsum(options.cost[chosen_array])
     value = math.fsum([
         *(fleet.weight * delivered), *(problem.left_worth_share * fleet.weight * left),
-        *(-problem.spill_cost_per_mb * lost), -problem.worth_per_money * cost])
+        *(-problem.spill_cost_per_mb * lost), *(-problem.price[chosen_array]), problem.base_worth])
     piece = np.array([p for o in order for p in options.pieces(o)], dtype=np.int64)
     return Account(
         start_mb=fleet.start_fill_mb, generated_mb=fleet.generation_mb_per_s * problem.horizon_s,

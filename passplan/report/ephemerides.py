@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import unicodedata
 from collections.abc import Iterator
 from datetime import UTC, datetime
 from pathlib import Path
@@ -23,6 +24,8 @@ _MARGIN = 4
 # Lagrange over positions alone: the velocities that SGP4 gives for deep-space orbits leave out lunar and solar
 # periodics, so that Hermite over them errs by metres. Eight states a minute apart follow a low orbit to a millimetre.
 _DEGREE = 7
+# A line of KVN has at most 254 characters.
+_LONGEST_NAME = 200
 
 
 def write_ephemerides(record: PlanRecord, run: Run, folder: Path, step_s: float = 60.0) -> list[Path]:
@@ -32,7 +35,7 @@ def write_ephemerides(record: PlanRecord, run: Run, folder: Path, step_s: float 
         text = oem_text(name, run.orbits[name], run.start_utc, run.end_utc, step_s, record.summary["plan_id"])
         if text:
             written.append(folder / f"{stem}.oem")
-            written[-1].write_text(text, encoding="utf-8")
+            written[-1].write_text(text, encoding="ascii")
     return written
 
 
@@ -79,8 +82,8 @@ def _segments(
         degree = min(_DEGREE, end - begin - 1)
         lines = [
             "META_START",
-            f"OBJECT_NAME = {name}",
-            f"OBJECT_ID = {_object_id(orbit)}",
+            f"OBJECT_NAME = {_printable_ascii(name)}",
+            f"OBJECT_ID = {_printable_ascii(_object_id(orbit))}",
             "CENTER_NAME = EARTH",
             "REF_FRAME = ITRF2000",
             "TIME_SYSTEM = UTC",
@@ -109,6 +112,17 @@ def _object_id(orbit: OrbitSource) -> str:
         year = int(text[:2])
         return f"{1900 + year if year >= 57 else 2000 + year}-{text[2:]}"
     return text or "UNKNOWN"
+
+
+def _printable_ascii(text: str) -> str:
+    """``text`` in the printable ASCII that KVN allows (CCSDS 502.0-B-3, section 7, from memory).
+
+    Letters lose their accents; what has no such letter is written ``\\uXXXX``, so that names stay apart.
+    """
+    plain = "".join(one for one in unicodedata.normalize("NFKD", text) if not unicodedata.combining(one))
+    spaced = "".join(" " if one.isspace() else one for one in plain if one.isprintable() or one.isspace())
+    plain = " ".join(spaced.encode("ascii", "backslashreplace").decode("ascii").split())
+    return plain[:_LONGEST_NAME] or "UNKNOWN"
 
 
 def _epoch(seconds: float) -> str:

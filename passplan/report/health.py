@@ -14,18 +14,24 @@ from passplan.inputs.ground import Antenna
 from passplan.inputs.matching import matching_loss_db
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
+from passplan.report.flux import flux_of_run, flux_warning
 
 _USE_STYLES = {"chosen": "", "listed": "dim"}
 
 
-def print_health(run: Run, console: Console) -> None:
-    """Print spacecraft with their orbits, antennas with whom they serve, closures, requests and warnings."""
+def print_health(run: Run, console: Console) -> bool:
+    """Print spacecraft with their orbits, antennas with whom they serve, flux densities, closures, requests, warnings.
+
+    True where there was something to warn of.
+    """
     console.print(Text.assemble((run.name, "bold"), f"  {_instant(run.start_utc)} to {_instant(run.end_utc)}"))
     console.print(_spacecraft(run))
     others = run.elements[run.elements["use"] != "chosen"] if len(run.elements) else run.elements
     if len(others):
         console.print(_other_sets(others))
     console.print(_antennas(run))
+    over, flux = flux_of_run(run)
+    console.print(flux)
     within = [c for c in run.closures if _closed_h(run, c) > 0.0]
     console.print(Text.assemble(
         (str(len(within)), "bold"), " closures within the horizon, ", (str(len(run.requests)), "bold"), " requests, ",
@@ -33,10 +39,12 @@ def print_health(run: Run, console: Console) -> None:
     ))
     for name, why in run.left_out.items():
         console.print(Text.assemble(("! ", "bold red"), (f"{name} left out: ", "bold"), why))
-    for warning in run.warnings:
+    warnings = [*run.warnings, *(flux_warning(entry) for entry in over)]
+    for warning in warnings:
         console.print(Text.assemble(("~ ", "bold yellow"), warning))
-    if not run.left_out and not run.warnings:
+    if not run.left_out and not warnings:
         console.print("No warnings.")
+    return bool(warnings or run.left_out)
 
 
 def _plain_table(*headings: tuple[str, str]) -> Table:

@@ -18,9 +18,8 @@ from passplan.link.profiles import link_profiles
 from passplan.planning.steps import losses_of, samples_of
 from passplan.report.cautions import CAUTIONS
 from passplan.report.directory import write_file
+from passplan.report.link_chart import chart_columns, link_chart
 
-_ROWS_ALONG = 18
-_BAR_DB = 20.0
 _BAR_CELLS = 20
 
 
@@ -80,29 +79,15 @@ def _terms(link: str, lines: list[BudgetLine]) -> Table:
 
 
 def _print_along(run: Run, spacecraft: str, antenna: str, window: pd.Series, console: Console) -> None:
+    """Margin, modcod and rate against time, for each link; before hysteresis, dwell and acquisition."""
     aos, los = (np.datetime64(window[key], "ms") for key in ("aos_utc", "los_utc"))
     length_ms = int((los - aos) / np.timedelta64(1, "ms"))
-    times = aos + (np.linspace(0.0, 1.0, _ROWS_ALONG) * length_ms).astype("timedelta64[ms]")
-    along = link_along(run, spacecraft, antenna, times)
+    shares = np.linspace(0.0, 1.0, chart_columns(console.width))
+    along = link_along(run, spacecraft, antenna, aos + (shares * length_ms).astype("timedelta64[ms]"))
     for (direction, radio), group in along.groupby(["direction", "radio"], sort=False):
         console.print()
-        console.print(Text.assemble(
-            (f"{direction} {radio} along {window['window_id']}", "bold"),
-            (f"   bar: margin, 0 to {_BAR_DB:g} dB; the policy asks {run.policy.required_margin_db:g} dB", "dim"),
-        ))
-        table = Table(box=None, padding=(0, 1), pad_edge=False, header_style="dim")
-        for heading, side in (("UTC", "left"), ("elevation", "right"), ("km", "right"), ("margin dB", "right"),
-                              ("", "left"), ("modcod", "left"), ("Mbit/s", "right")):
-            table.add_column(heading, justify=side, no_wrap=True)  # type: ignore[arg-type]
-        for row in group.to_dict("records"):
-            usable = row["rate_mbps"] > 0.0
-            table.add_row(
-                f"{pd.Timestamp(row['utc']):%H:%M:%S}", f"{row['elevation_deg']:.1f}°", f"{row['range_km']:,.0f}",
-                f"{row['margin_db']:.2f}", _bar(row["margin_db"], run.policy.required_margin_db),
-                row["modcod"] if usable else Text("no margin", style="dim"),
-                f"{row['rate_mbps']:.3f}" if usable else "",
-            )
-        console.print(table)
+        console.print(Text(f"{direction} {radio} along {window['window_id']}", style="bold"))
+        console.print(link_chart(group, run.policy.required_margin_db))
 
 
 def _print_whole(run: Run, window: pd.Series, console: Console) -> None:
@@ -145,12 +130,3 @@ def _steps(run: Run, choice: DownlinkChoice) -> Table:
             Text(bar, style="cyan"),
         )
     return table
-
-
-def _bar(margin_db: float, required_db: float) -> Text:
-    """Margin as a bar; ``│`` marks what the policy asks."""
-    filled = round(_BAR_CELLS * min(max(margin_db / _BAR_DB, 0.0), 1.0))
-    mark = min(round(_BAR_CELLS * required_db / _BAR_DB), _BAR_CELLS - 1)
-    cells = ["▄"] * filled + [" "] * (_BAR_CELLS - filled)
-    cells[mark] = "│"
-    return Text("".join(cells), style="cyan" if margin_db >= required_db else "red")

@@ -59,7 +59,7 @@ def picture_svg(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack] | No
         top = _TOP + tall * k
         parts += _ruler(band, top, lanes, named=len(bands) > 1)
         for i, (name, ribbon) in enumerate(antenna_ribbons(record, tracks, names, band).items()):
-            parts += _lane(name, ribbon, summary["antennas"][name]["contacts"], band, top + _LANE * i)
+            parts += _lane(name, ribbon, band, top + _LANE * i)
     for i, line in enumerate(legend):
         parts.append(f'<text x="24" y="{foot + 32 + 26 * i}" class="soft">{escape(line)}</text>')
     return "\n".join([*parts, "</svg>"]) + "\n"
@@ -101,11 +101,12 @@ def _ruler(band: Band, top: int, lanes: int, *, named: bool) -> list[str]:
     return parts
 
 
-def _lane(name: str, ribbon: Ribbon, contacts: int, band: Band, top: int) -> list[str]:
+def _lane(name: str, ribbon: Ribbon, band: Band, top: int) -> list[str]:
     foot = top + _LANE - 4
+    count = len(ribbon.marks)
     parts = [
         f'<text x="24" y="{foot - 22}" class="name">{escape(name)}</text>',
-        f'<text x="24" y="{foot - 5}" class="soft">{contacts} contacts</text>',
+        f'<text x="24" y="{foot - 5}" class="soft">{count} contact{"" if count == 1 else "s"}</text>',
         f'<path class="foot" d="M24 {foot}H{_WIDTH - _RIGHT}"/>',
     ]
     for span in ribbon.spans:

@@ -7,7 +7,10 @@ from dataclasses import dataclass
 from typing import Any
 
 # Lists that a plan may carry, in the order they matter to whoever reviews it.
-_LISTS = (("to_ask", "Bookings still to ask for"), ("pins", "Pinned and forbidden"), ("frozen", "Frozen"))
+_LISTS = (
+    ("contradictions", "Cannot all be met"), ("to_ask", "Bookings still to ask for"),
+    ("pins", "Pinned and forbidden"), ("frozen", "Frozen"),
+)
 
 # From here on a gap says no more than that nothing is known.
 _WIDE_GAP = 10.0

@@ -19,6 +19,7 @@ from passplan.planning.record import PlanRecord
 from passplan.report.backlog_chart import backlog_chart
 from passplan.report.cautions import CAUTIONS
 from passplan.report.contact_table import LocalTime, contact_table, lost_table, plain_table, unused_table
+from passplan.report.flux import flux_of_plan
 from passplan.report.keys import spacecraft_keys
 from passplan.report.selection import Selection, select
 from passplan.report.standing import standing_lists, tier_lines
@@ -68,6 +69,8 @@ def print_plan(
     if detail:
         if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
             _section(console, "Weather over an average year", by_antenna(part))
+        if (flux := flux_of_plan(part)) is not None:
+            _section(console, "Power flux density at the ground", flux)
         if len(part.contacts):
             _section(console, "Lowest margins", _margins(part, console.width))
         if summary.get("lost_value"):
@@ -88,14 +91,14 @@ def _headline(summary: Mapping[str, Any]) -> RenderableType:
     start, end = summary["horizon_start_utc"], summary["horizon_end_utc"]
     title = Text.assemble(("DRAFT ", "bold yellow"), (summary["name"], "bold"), f"  plan {summary['plan_id']}")
     title.append(f"\n{minute(start)} to {minute(end)} UTC", style="dim")
-    facts = Table.grid(padding=(0, 3))
-    facts.add_row(
-        *(Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
+    expected = summary.get("weather", {}).get("volume_basis") == "expected"
+    facts = Text("  ").join(
+        Text.assemble((label + " ", "dim"), (value, "bold")) for label, value in (
             ("contacts", f"{summary['contacts']}"),
-            ("brought down", megabytes(summary["volume_mb"])),
+            (f"delivered{' on average' if expected else ''}", megabytes(summary["volume_mb"])),
             ("lost aboard", megabytes(sum(s["lost_mb"] for s in summary["storage"].values()))),
             ("status", STATUS_WORDS.get(summary["status"], summary["status"])),
-        ))
+        )
     )
     return Group(title, facts, _tiers(summary))
 

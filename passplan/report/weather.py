@@ -42,6 +42,10 @@ def by_antenna(record: PlanRecord) -> RenderableType:
              "those of each contact, added up.", style="dim"),
         Text(f"{weather['statement'][0].upper()}{weather['statement'][1:]}.", style="dim"),
     ]
+    if weather.get("volume_basis") == "expected":
+        lines.append(Text(
+            "The plan counts means over the year: the rates of its segments are those of the modcods times what the "
+            "whole contact carries on average over what it carries as planned.", style="dim"))
     if weather["rain_mm_per_h"]:
         stated = ", ".join(f"{name} {rate:g} mm/h" for name, rate in weather["rain_mm_per_h"].items())
         lines.append(Text(f"Rain stated for the day: {stated}", style="dim"))

@@ -1,12 +1,13 @@
 """Links of 30 000 windows with weather: how long, how many samples a second, and against the bare package.
 
-    python tests/benchmarks/link.py [--windows 30000] [--percent 0.1]
+    python tests/benchmarks/link.py [--windows 30000] [--percent 0.1] [--interference ELEMENTS.tle]
 
 An invented network of 300 spacecraft and 20 antennas; passes over a circular orbit, sampled every 10 s. The chain
 is the whole one: rain, cloud, scintillation, gas, sky noise and free space, from cached tables. The baseline calls
 the propagation package once per window on the same samples, which is what a budget without tables would do; it
 is timed on a few hundred windows and scaled. Accuracy is the worst difference of the tables from the package at
-elevations above 3 deg, on the samples of those windows. The last line is JSON.
+elevations above 3 deg, on the samples of those windows. ``sun_s`` is the same with the Sun's noise counted. With
+``--interference`` also: who must not send at once, see ``link_interference.py``. The last line is JSON.
 """
 
 from __future__ import annotations
@@ -16,9 +17,12 @@ import json
 import resource
 import time
 import warnings
+from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pandas as pd
+from link_interference import interference_figures
 
 from passplan.geometry.pointing import Samples
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
@@ -145,6 +149,7 @@ def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
     parser.add_argument("--windows", type=int, default=30_000)
     parser.add_argument("--percent", type=float, default=0.1)
+    parser.add_argument("--interference", metavar="ELEMENTS", type=Path)
     arguments = parser.parse_args()
     run, (windows, samples) = network(arguments.percent), passes(arguments.windows)
     began = time.perf_counter()
@@ -162,6 +167,10 @@ def main() -> None:
                 link.downlink.best(first, first + int(share * (last - first)))
                 calls += 1
     best_s = time.perf_counter() - began
+    sunny = replace(run, policy=run.policy.model_copy(update={"sun_noise": True}))
+    began = time.process_time()
+    link_profiles(sunny, windows, samples)
+    sun_s = time.process_time() - began
     # Each window has a downlink and a command chain.
     chain_samples = 2 * int(samples.offsets[-1])
     peak_mb = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
@@ -170,12 +179,15 @@ def main() -> None:
         "windows": len(windows), "samples": int(samples.offsets[-1]), "link_samples": chain_samples,
         "first_call_s": round(first_s, 3), "profiles_s": round(profiles_s, 3), "profiles_core_s": round(core_s, 3),
         "link_samples_per_core_s": round(chain_samples / core_s),
-        "package_samples_per_core_s": round(bare), "times_faster": round(chain_samples / core_s / bare, 1),
+        "sun_core_s": round(sun_s, 3), "package_samples_per_core_s": round(bare),
+        "times_faster": round(chain_samples / core_s / bare, 1),
         "best_calls": calls, "best_us": round(1e6 * best_s / max(calls, 1), 1),
         "worst_table_db": round(worst_db, 5), "peak_mb_first_call": round(before_mb), "peak_mb": round(peak_mb),
     }
+    if arguments.interference is not None:
+        figures.update(interference_figures(arguments.interference))
     for name, value in figures.items():
-        print(f"{name:24s} {value:>14}")
+        print(f"{name:32s} {value:>14}")
     print(json.dumps(figures))
 
 

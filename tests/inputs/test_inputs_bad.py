@@ -77,6 +77,8 @@ def test_unknown_key_names_the_nearest(
         (GROUND, "low_mhz = 8025", "low_mhz = 8.025", ("low_mhz", "8.025", "at least 100")),
         (GROUND, "high_mhz = 8400", "high_mhz = 8000", ("low_mhz 8025 is above high_mhz 8000",)),
         (GROUND, "noise_temperature_k = 145", "g_over_t_db_per_k = 28", ("either g_over_t_db_per_k, or both",)),
+        (DAILY, "required_margin_db = 3.0", 'volume_basis = "average"', ("volume_basis", "average", "expected")),
+        (DAILY, "required_margin_db = 3.0", 'volume_basis = "expected"', ("policy", "needs unavailability_percent")),
         (GROUND, "[95, 5]", "[195, 5]", ("azimuths must not decrease",)),
         (FLEET, "start_fill_mb = 6000", "start_fill_mb = 60000", ("start_fill_mb 60000 is above storage_mb 16000",)),
         ("sample_fleet/radios.csv", "8070,RHCP", "8070,right", ("row 2", "polarisation", "right", "RHCP")),

@@ -58,6 +58,9 @@ def test_mounts_are_read_from_toml_and_from_csv(edit: Edit, sample: Path) -> Non
         ("beamwidth_deg = 0.5\n", "", ("Isvarde-B: beamwidth_deg", "spare has limited rates")),
         ('mount = "spare"', 'mount = "spar"', ("Isvarde-B: mount", "did you mean 'spare'?")),
         (B, f"{B}transmit_min_elevation_deg = 10\n", ("transmit_min_elevation_deg", "no transmitters")),
+        (B, f"{B}beams = 0\n", ("beams", "at least 1")),
+        (B, f"{B}beams = 4\n", ("Isvarde-B: beams", "4", "spare turns all its beams together")),
+        (f'{B}mount = "spare"', f"{B}beams = 4", ("Isvarde-B: beams", "4", "of kind fixed")),
         (B, f"{B}sun_keep_out_deg = 0\n", ("sun_keep_out_deg", "above 0")),
     ],
 )
@@ -138,3 +141,21 @@ def test_wind_stow_is_a_closure(edit: Edit, sample: Path) -> None:
     edit("sample_fleet/closures.csv", "", "Ellery-B,2027-03-09T12:00:00Z,2027-03-09T13:00:00Z,wind_stow,gale\n")
     kinds = {closure.antenna: closure.kind for closure in load_run(sample / DAILY).closures}
     assert kinds["Ellery-B"] == "wind_stow"
+
+
+@pytest.mark.parametrize(
+    ("points", "told"),
+    [
+        ("[[0, 5], [90, 12]]", "mask says nothing from 90 to 0 deg"),
+        ("[[80, 5], [100, 20]]", "a straight line from 20 to 5 deg"),
+        ("[[80, 5], [81, 20], [99, 20], [100, 5]]", None),
+        ("[[0, 5], [180, 12]]", None),
+        ("[[120, 8]]", None),
+    ],
+)
+def test_a_mask_table_that_leaves_out_half_of_the_horizon_is_warned_of(
+    edit: Edit, sample: Path, points: str, told: str | None
+) -> None:
+    edit(GROUND, 'name = "Isvarde-A"\n', f'name = "Isvarde-A"\nmask = {points}\n')
+    lines = [line for line in load_run(sample / DAILY).warnings if "Isvarde-A: mask" in line]
+    assert len(lines) == (told is not None) and all(told in line for line in lines if told)

@@ -7,16 +7,19 @@ from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 
+import numpy as np
 import pytest
-from element_samples import MERLE, apart_m, lines_of, omm, omm_csv, omm_kvn, omm_xml, reading, tle_text
+from element_samples import END, MERLE, START, apart_m, lines_of, omm, omm_csv, omm_kvn, omm_xml, reading, tle_text
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from passplan.geometry.windows import find_windows
 from passplan.inputs.elements.omm_json import parse_omm_json
 from passplan.inputs.elements.omm_kvn import parse_omm_kvn
 from passplan.inputs.elements.omm_xml import parse_omm_xml
 from passplan.inputs.elements.read import element_format, read_elements
 from passplan.inputs.errors import Findings
+from passplan.inputs.ground import Antenna, Site
 
 FRESH = replace(MERLE, name="MERLE 9", catalogue_number=123_456_789, mean_anomaly_deg=11.25)
 WRITERS: dict[str, Callable[..., str]] = {
@@ -47,6 +50,21 @@ def test_every_encoding_gives_the_set_of_the_tle(tmp_path, suffix):
     assert other.catalogue_number == 123_456_789, "nine digits, far beyond what the library's own number field holds"
     assert other.satrec.sgp4(other.satrec.jdsatepoch, other.satrec.jdsatepochF + 1.0)[0] == 0
     assert one.place != other.place
+
+
+@pytest.mark.parametrize("suffix", WRITERS)
+def test_every_encoding_gives_the_windows_of_the_tle(tmp_path, suffix):
+    (twin,), _ = read_text(tmp_path, tle_text(), "twin.tle")
+    (one,), _ = read_text(tmp_path, WRITERS[suffix](omm()), f"day{suffix}")
+    site = Site(name="North", latitude_deg=67.9, longitude_deg=21.1)
+    dish = {"Dish": Antenna(name="Dish", site="North")}
+    tables = [find_windows({"Merle": source}, dish, {"North": site}, START, END) for source in (twin, one)]
+    assert len(tables[0]) >= 8
+    for column in ("aos_utc", "los_utc"):
+        # The digits are those of a TLE; its epoch has eight decimals of a day, half a millisecond.
+        apart = np.abs(tables[0][column].to_numpy() - tables[1][column].to_numpy())
+        assert apart.max() <= np.timedelta64(2, "ms")
+    assert tables[0]["window_id"].tolist() == tables[1]["window_id"].tolist()
 
 
 @pytest.mark.parametrize("suffix", WRITERS)

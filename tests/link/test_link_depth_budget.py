@@ -228,6 +228,33 @@ def test_the_sun_in_the_beam_is_felt_between_samples() -> None:
     assert near[2] == pytest.approx(np.degrees(np.hypot(0.02, 0.001)), rel=1e-3)
 
 
+def test_the_sun_is_no_nearer_from_the_end_of_one_pass_to_the_start_of_the_next() -> None:
+    away = np.array([[-0.02, 0.0, 0.0], [0.02, 0.0, 0.0], [-0.02, 0.0, 0.0], [-0.04, 0.0, 0.0]])
+    assert closest_deg(away)[1:3] == pytest.approx([0.0, 0.0], abs=1e-9)
+    parted = closest_deg(away, np.array([True, False, True, False]))
+    assert parted[:2] == pytest.approx([0.0, 0.0], abs=1e-9)
+    assert parted[2:] == pytest.approx(np.degrees([0.02, 0.02]), rel=1e-3)
+
+
+def test_many_passes_at_once_feel_the_sun_as_each_by_itself() -> None:
+    """Also: from minute to minute the Sun may be joined by straight lines."""
+    run = _ka(sun_noise=True)
+    windows, samples = passes(*((4_000.0 * k, 600.0, 550.0, 1.0 + k) for k in range(12)))
+    azimuth = (samples.time_s / 240.0 + 190.0) % 360.0
+    samples = replace(samples, azimuth_deg=azimuth)
+    together = link_profiles(run, windows, samples)
+    for k in range(12):
+        own = slice(samples.offsets[k], samples.offsets[k + 1])
+        single = Samples(
+            samples.time_s[own], azimuth[own], samples.elevation_deg[own], samples.range_km[own],
+            samples.range_rate_km_s[own], np.array([0, own.stop - own.start]))
+        alone = link_profiles(run, windows.iloc[[k]].reset_index(drop=True), single)[0].downlink
+        both = together[k].downlink
+        assert (alone is None) == (both is None)
+        if alone is not None and both is not None:
+            assert both.tracks[0].quality_db == pytest.approx(alone.tracks[0].quality_db, abs=2e-3)
+
+
 def test_the_sun_takes_the_link_only_when_it_is_counted() -> None:
     windows, samples = passes((43_000.0, 400.0, 550.0, 1.0))
     run = _ka()

@@ -9,6 +9,7 @@ from dataclasses import replace
 import numpy as np
 from planning_cases import STEP_S, Judge, random_problem
 
+from passplan.planning.change_cost import ChangeNeed
 from passplan.planning.problem import Problem, RequestNeed
 from passplan.planning.rules.decisions import POINTS, DecidedContact, ForbiddenWindow
 from passplan.planning.rules.guarantees import GuaranteeNeed
@@ -90,3 +91,49 @@ class NeedJudge(Judge):
             self._meets(k, need)
             and (not need.fixed or (int(o.start_s[k]), int(o.end_s[k])) == (need.earliest_s, need.latest_s))
             for k in chosen)
+
+
+def ordered_problem(seed: int) -> Problem:
+    """A needy problem with a published plan, whose objectives are taken in order."""
+    rng = random.Random(70_000 + seed)
+    problem = replace(needy_problem(seed), in_order=True, spill_cost_per_mb=0.0, worth_per_money=0.0)
+    if rng.random() < 0.3:
+        return problem
+    count = len(problem.options)
+    keeps, some = np.full(count, -1), rng.sample(range(count), min(count, rng.randint(1, 3)))
+    keeps[some] = np.arange(len(some))
+    need = ChangeNeed(keeps, np.array([rng.choice([0.0, 30.0, 500.0]) for _ in some]))
+    saved = np.where(keeps >= 0, need.cost[keeps], 0.0)
+    return replace(problem, needs=(*problem.needs, need), extra_price=-saved, base_worth=-float(need.cost.sum()))
+
+
+class OrderJudge(NeedJudge):
+    """Judges every objective in its order; more is better in all of them."""
+
+    def reached(self, chosen: frozenset[int]) -> list[float]:
+        """Points, lost MB, value less changes, cost, changes; the last only where a plan was published."""
+        problem, o = self.problem, self.options
+        plain = replace(problem, worth_per_money=0.0)
+        lost = -self._lost(chosen)
+        worth = Judge(replace(plain, extra_price=np.zeros(0), base_worth=0.0)).value(chosen)
+        result = [-self.points(chosen), lost, worth, -sum(float(o.cost[k]) for k in chosen)]
+        for need in problem.needs_of(ChangeNeed):
+            kept = {int(need.keeps[k]) for k in chosen} - {-1}
+            gone = [p for p in range(len(need.cost)) if p not in kept]
+            result[2] -= sum(float(need.cost[p]) for p in gone)
+            result.append(-float(len(gone) + sum(int(need.keeps[k]) < 0 for k in chosen)))
+        return result
+
+    def best_in_order(self) -> list[float]:
+        """What the best plan reaches, objective by objective."""
+        plans = [(self.reached(chosen), chosen) for chosen in self.plans()]
+        for tier in range(len(plans[0][0])):
+            top = max(reached[tier] for reached, _ in plans)
+            plans = [plan for plan in plans if plan[0][tier] >= top - 1e-6 * max(1.0, abs(top))]
+        return plans[0][0]
+
+    def _lost(self, chosen: frozenset[int]) -> float:
+        weightless = replace(
+            self.problem, spill_cost_per_mb=1.0, extra_price=np.zeros(0), base_worth=0.0,
+            fleet=replace(self.problem.fleet, weight=np.zeros(len(self.problem.fleet))))
+        return -Judge(weightless).value(chosen)

@@ -110,12 +110,26 @@ class Judge:
             return False
         if (first, second) in self.tight:
             return False
+        if self.problem.antennas.beams[int(o.antenna[a])] > 1:
+            return True
         setup_s = int(o.release_s[first] + o.prepare_s[second])
         return bool(o.antenna[a] != o.antenna[b] or o.start_s[second] >= o.end_s[first] + setup_s)
 
     def kept(self, chosen: Iterable[int]) -> bool:
-        """Whether the amounts of the chosen options stay within every limit."""
-        return all(sum(amounts.get(o, 0.0) for o in chosen) <= most + 1e-9 for amounts, most in self.limits)
+        """Whether the amounts of the chosen options stay within every limit, and no antenna is short of beams."""
+        chosen = list(chosen)
+        within = all(sum(amounts.get(o, 0.0) for o in chosen) <= most + 1e-9 for amounts, most in self.limits)
+        return within and self._enough_beams(chosen)
+
+    def _enough_beams(self, chosen: list[int]) -> bool:
+        o, dishes = self.options, self.problem.antennas
+        for dish in np.flatnonzero(dishes.beams > 1).tolist():
+            mine = [k for k in chosen if o.antenna[k] == dish]
+            for instant in range(-3_600 + STEP_S // 2, self.problem.horizon_s + 3_600, STEP_S):
+                held = sum(o.start_s[k] - o.prepare_s[k] < instant < o.end_s[k] + o.release_s[k] for k in mine)
+                if held > dishes.beams[dish]:
+                    return False
+        return True
 
     def plans(self) -> Iterator[frozenset[int]]:
         """Every set of options that can be used together."""

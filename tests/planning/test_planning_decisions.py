@@ -72,7 +72,7 @@ def test_an_emergency_outranks_a_pin_and_a_frozen_contact() -> None:
     assert ("Teasel-2", "emergency") in [(craft, origin) for craft, _, _, origin in rows(plan)]
     assert [(s.kind, s.points) for s in plan.result.shortfalls] == [("pin", 20.0), ("frozen", 100.0)]
     assert plan.result.shortfalls[0].sentence == (
-        "The pinned contact, Teasel-1 on Isvarde-A 2027-03-09 00:10:00 to 00:30:00 UTC, is not in the plan: "
+        "The pinned contact is not in the plan: "
         "every contact that would fit it collides with other requirements.")
 
 

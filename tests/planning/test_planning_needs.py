@@ -9,7 +9,7 @@ from need_cases import NeedJudge, needy_problem
 from planning_cases import problem_of
 from planning_runs import BOTH, DOWN, make_run, make_windows, request
 
-from passplan.planning.plan import make_plan
+from passplan.planning.plan import Plan, make_plan
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits, RequestNeed
 
@@ -65,7 +65,7 @@ def test_contacts_and_mb_by_the_day_are_due_in_proportion() -> None:
     shortfalls = {s.name: s.sentence for s in make_plan(run, windows, [DOWN] * 2).result.shortfalls}
     assert list(shortfalls) == ["contacts of Teasel-2 on 2027-03-09", "MB of Teasel-2 on 2027-03-09"]
     assert shortfalls["MB of Teasel-2 on 2027-03-09"] == (
-        "The MB of Teasel-2 on 2027-03-09: the plan has 0 of the 2000 that are due: the windows offer no more.")
+        "The plan has 0 of the 2000 that are due: the windows offer no more.")
 
 
 def test_the_mb_of_a_contact_are_no_more_than_a_full_storage() -> None:
@@ -84,3 +84,36 @@ def test_a_guarantee_over_several_days_is_one_sum() -> None:
     plan = make_plan(make_run(policy, craft={"mission": "Teasel"}), make_windows(rows), [DOWN] * 2)
     assert len(plan.contacts) == 1
     assert plan.result.shortfalls == ()
+
+
+def fair(policy: dict[str, object], rows: list[tuple[str, str, float, float]]) -> tuple[Plan, dict[str, float]]:
+    """The plan of two missions of one spacecraft each, and the MB that each has contacts for."""
+    craft = {"generation_mb_per_s": 0.0, "storage_mb": 20_000.0, "start_fill_mb": 20_000.0}
+    run = make_run({"cut_grid_s": 60, "options_per_window": 60, **policy}, craft=craft)
+    weights = {name: one.model_copy(update={"mission": name, "weight": 9.0 if name == "Teasel-1" else 1.0})
+               for name, one in run.spacecraft.items()}
+    plan = make_plan(replace(run, spacecraft=weights), make_windows(rows), [DOWN] * len(rows))
+    volume_mb = plan.contacts.groupby("spacecraft")["volume_mb"].sum()
+    return plan, {name: float(volume_mb.get(name, 0.0)) for name in weights}
+
+
+def test_the_smallest_share_is_as_large_as_it_can_be() -> None:
+    # Both are in view of the only antenna at once; without fairness the one that weighs more takes it all.
+    rows = [("Teasel-1", "Isvarde-A", 0, 2_000), ("Teasel-2", "Isvarde-A", 0, 2_000)]
+    _, alone = fair({}, rows)
+    assert (alone["Teasel-1"], alone["Teasel-2"]) == (pytest.approx(19_800.0), 0.0)
+    plan, shared = fair({"fairness": "max_min"}, rows)
+    spans = list(zip(plan.problem.options.spacecraft, plan.problem.options.start_s, plan.problem.options.end_s,
+                     strict=True))
+    best = 10.0 * max(min(b - a, d - c) - 20 for i, a, b in spans for k, c, d in spans if i != k and c >= b + 90)
+    assert plan.fair_floor == pytest.approx(best / 20_000.0, abs=1 / 200)
+    assert plan.fair_floor <= best / 20_000.0 + 1e-9
+    assert min(shared.values()) >= plan.fair_floor * 20_000.0 - 1e-6
+    assert plan.result.shortfalls == ()
+
+
+def test_where_there_is_contact_enough_everybody_gets_all() -> None:
+    plan, shared = fair({"fairness": "max_min"}, [
+        ("Teasel-1", "Isvarde-A", 0, 2_100), ("Teasel-2", "Isvarde-A", 3_000, 5_100)])
+    assert plan.fair_floor == 1.0
+    assert list(shared.values()) == pytest.approx([20_000.0, 20_000.0])

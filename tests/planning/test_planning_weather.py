@@ -77,7 +77,7 @@ def test_rain_stated_for_the_day_is_what_counts(wet: PlanRecord, wet_run: Run) -
     soaked = plan_run(replace(wet_run, sites={**wet_run.sites, "Isvarde": site}))
     at_isvarde = [plan.contacts[plan.contacts["antenna"] == "Isvarde-B"]["volume_mb"].sum() for plan in (wet, soaked)]
     assert at_isvarde[1] < 0.5 * at_isvarde[0]
-    assert soaked.summary["weather"]["rain_mm_per_h"] == {"Isvarde": 40.0}
+    assert soaked.summary["weather"]["rain_mm_per_h"] == {"Isvarde": 40.0, "Port Ellery": 6.0}
 
 
 def _spoilt(wet_run: Run, wet: PlanRecord, row: int, **cells: Any) -> str:

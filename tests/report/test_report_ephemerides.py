@@ -88,6 +88,28 @@ def test_an_ephemeris_with_a_gap_becomes_segments(
     assert "no states for" in findings.warnings[0]
 
 
+@pytest.mark.parametrize(
+    ("name", "written"),
+    [
+        ("Ambril-1", "Ambril-1"),
+        ("Ærø Küste №3", "\\xc6r\\xf8 Kuste No3"),
+        ("צופה-1", "\\u05e6\\u05d5\\u05e4\\u05d4-1"),
+        ("x" * 400, "x" * 200),
+        ("tab\tand\u202ebent\nline", "tab andbent line"),
+    ],
+)
+def test_lines_are_short_and_of_printable_ascii_whatever_the_name(short_run: Run, name: str, written: str) -> None:
+    # CCSDS 502.0-B-3, 7.3 and 7.4 (from memory): at most 254 characters in a line, printable ASCII and blanks.
+    text = oem_text(name, short_run.orbits["Ambril-1"], short_run.start_utc, short_run.end_utc, 600.0, "x")
+    lines = text.splitlines()
+    assert f"OBJECT_NAME = {written}" in lines
+    assert all(len(line) <= 254 for line in lines)
+    assert all(" " <= one <= "~" for line in lines for one in line)
+    back = parse_oem(text.encode("ascii"), "x.oem", Findings())
+    assert back is not None
+    assert back.object_name == written
+
+
 def test_an_orbit_without_states_gives_no_message(messages: dict[str, Ephemeris], short_run: Run) -> None:
     late = short_run.end_utc + np.timedelta64(30, "D")
     assert oem_text("Ambril-1", messages["Ambril-1"], late, late + np.timedelta64(1, "D"), 60.0, "x") == ""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import shutil
 import xml.etree.ElementTree as ET
+from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 
@@ -125,6 +126,16 @@ def test_the_picture_is_sound_svg_and_shows_every_contact(short_plan: PlanRecord
     for part in ("DRAFT until a named approval", *short_plan.summary["antennas"]):
         assert part in texts
     assert "not permission to transmit" in " ".join(texts)
+
+
+def test_the_picture_of_several_days_has_a_band_for_each(short_plan: PlanRecord, short_run: Run) -> None:
+    summary = {**short_plan.summary, "horizon_end_utc": "2027-03-11T20:00:00.000Z"}
+    root = ET.fromstring(picture_svg(replace(short_plan, summary=summary), short_run))
+    texts = [node.text or "" for node in root.iter("{http://www.w3.org/2000/svg}text")]
+    assert [text for text in texts if text.endswith(" Mar")] == ["Tue 09 Mar", "Wed 10 Mar", "Thu 11 Mar"]
+    assert texts.count("Tarrow-A") == 3
+    counts = [int(text.split()[0]) for text in texts if text.endswith((" contact", " contacts"))]
+    assert sum(counts) == len(short_plan.contacts)
 
 
 def test_hostile_names_are_text_in_the_picture(short_plan: PlanRecord, short_run: Run) -> None:

@@ -18,6 +18,7 @@ from passplan.planning.audit.occupancy import check_closures, check_overlaps, ch
 from passplan.planning.audit.requirements import check_requirements
 from passplan.planning.audit.rows import Contact, read_rows
 from passplan.planning.audit.storage import check_storage
+from passplan.planning.audit.tiers import check_tiers
 from passplan.planning.audit.visibility import check_visibility, sight_of
 
 
@@ -41,6 +42,7 @@ def audit_plan(
     faults.extend(check_craft_limits(run, rows))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
+    faults.extend(check_tiers(run, rows, summary))
     return faults
 
 

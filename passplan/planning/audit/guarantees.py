@@ -26,6 +26,22 @@ def promised(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str,
         yield from _spans(run, "guarantee", f"mission {item.mission}", own, item.contacts, item.mb, item.days)
 
 
+def shared(run: Run, contacts: Sequence[Contact], floor: float) -> Iterator[tuple[tuple[str, str], Standing]]:
+    """Whether each mission has contacts for ``floor`` times what it has aboard and makes.
+
+    A spacecraft of no mission stands for itself.
+    """
+    crews: dict[str, list[str]] = {}
+    for name in run.orbits:
+        crews.setdefault(run.spacecraft[name].mission or name, []).append(name)
+    for mission, crew in crews.items():
+        data_mb = sum(run.spacecraft[n].start_fill_mb + run.spacecraft[n].generation_mb_per_s * run.horizon_s
+                      for n in crew)
+        if floor * data_mb > 0.0:
+            got = sum(_mb(run, c) for c in contacts if c.spacecraft in crew)
+            yield ("fair", f"share of {mission}"), _standing(got, floor * data_mb, "MB")
+
+
 def _spans(
     run: Run, kind: str, whose: str, own: Sequence[Contact], contacts: int | None, mb: float | None, days: int,
 ) -> Iterator[tuple[tuple[str, str], Standing]]:

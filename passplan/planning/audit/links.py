@@ -9,6 +9,7 @@ from passplan.inputs.fleet import CommandRadio, DownlinkRadio
 from passplan.inputs.modcods import Modcod
 from passplan.inputs.modcods_dvb_s2 import pilot_factor
 from passplan.inputs.run import Run
+from passplan.planning.audit.expectation import expectation_bounds
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.mechanics import has_losses
 from passplan.planning.audit.quality import Quality, command_quality, downlink_quality
@@ -21,6 +22,7 @@ from passplan.planning.audit.steps import check_steps
 _TOLERANCE_DB = 0.1
 _TOLERANCE_S = 2.0
 _RELATIVE = 1e-9
+_SCALE = 1e-3
 
 
 def check_links(run: Run, contact: Contact, seen: Sight) -> Iterator[Fault]:
@@ -67,9 +69,19 @@ def _check_downlink(run: Run, contact: Contact, radio: DownlinkRadio, seen: Sigh
     if contact.modcod != (rows[0].name if len(names) == 1 else "stepped"):
         yield Fault("modcod", contact.place, f"it claims modcod {contact.modcod!r}, its segments use {len(names)}")
         return
+    rates_mbps = {row.name: net_rate_mbps(radio, row) for row in allowed.values()}
+    scale = 1.0
+    if run.policy.volume_basis == "expected":
+        scale = contact.pieces[0].rate_mbps / rates_mbps[rows[0].name]
+        least, greatest = expectation_bounds(run, contact, radio, rates_mbps, allowed, seen)
+        if not least - _SCALE <= scale <= greatest + _SCALE:
+            sentence = f"its rates are {scale:.4f} times those of its modcods; over the year the link gives"
+            yield Fault("expectation", contact.place, f"{sentence} {least:.4f} to {greatest:.4f} times as much")
+            return
     robust = min(allowed.values(), key=lambda row: row.required_esn0_db)
     for piece, row in zip(contact.pieces, rows, strict=True):
-        yield from _check_piece(run, contact, radio, piece, (row, robust if adaptive else row), quality)
+        rate_mbps = rates_mbps[row.name] * scale
+        yield from _check_piece(run, contact, radio, piece, (row, robust if adaptive else row), rate_mbps, quality)
     yield from _check_usable(run, contact, radio, rows, robust, quality)
     if adaptive:
         yield from check_steps(run, contact, radio, allowed, quality)
@@ -84,11 +96,11 @@ def net_rate_mbps(radio: DownlinkRadio, row: Modcod) -> float:
 
 
 def _check_piece(
-    run: Run, contact: Contact, radio: DownlinkRadio, piece: Piece, rows: tuple[Modcod, Modcod], quality: Quality
+    run: Run, contact: Contact, radio: DownlinkRadio, piece: Piece, rows: tuple[Modcod, Modcod], rate_mbps: float,
+    quality: Quality,
 ) -> Iterator[Fault]:
-    """``rows`` are the modcod that is sent and the one on which the signal is acquired."""
+    """``rows`` are the modcod that is sent, at a rate, and the one on which the signal is acquired."""
     row, first = rows
-    rate_mbps = net_rate_mbps(radio, row)
     if differs(piece.rate_mbps, rate_mbps, _RELATIVE * rate_mbps):
         sentence = f"modcod {row.name} gives {rate_mbps:.6g} Mbit/s, not {piece.rate_mbps:.6g}"
         yield Fault("modcod", contact.place, sentence)

@@ -51,8 +51,12 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
 
 
 def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """No antenna and no spacecraft has two contacts at a time, setup times of antennas counted."""
-    yield from _overlaps(contacts, "antenna", lambda contact: contact.antenna, lambda contact: held(run, contact))
+    """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft has two."""
+    several = {name for name, antenna in run.antennas.items() if antenna.beams > 1}
+    alone = [contact for contact in contacts if contact.antenna not in several]
+    yield from _overlaps(alone, "antenna", lambda contact: contact.antenna, lambda contact: held(run, contact))
+    for name in sorted(several):
+        yield from _crowded(run, name, [contact for contact in contacts if contact.antenna == name])
     yield from _overlaps(
         contacts, "spacecraft", lambda contact: contact.spacecraft, lambda contact: (contact.start_s, contact.end_s))
 
@@ -73,6 +77,19 @@ def held(run: Run, contact: Contact) -> tuple[float, float]:
     return (
         contact.start_s - (max(before) if before else antenna.prepare_s),
         contact.end_s + (max(after) if after else antenna.release_s))
+
+
+def _crowded(run: Run, name: str, contacts: Sequence[Contact]) -> Iterator[Fault]:
+    """Each beam goes to the contact that is next to hold one, once it has been released: is there always one?"""
+    count = run.antennas[name].beams
+    free_s = [float("-inf")] * count
+    spans = sorted(((*held(run, contact), contact) for contact in contacts), key=lambda entry: entry[:2])
+    for from_s, until_s, contact in spans:
+        beam = free_s.index(min(free_s))
+        if from_s < free_s[beam]:
+            sentence = f"contact {contact.contact_id} begins while its {count} beams are held by others"
+            yield Fault("antenna_overlap", f"antenna {name}", sentence)
+        free_s[beam] = max(free_s[beam], until_s)
 
 
 def _overlaps(

@@ -13,7 +13,7 @@ from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.planning.audit.decisions import decided, frozen
 from passplan.planning.audit.faults import Fault
-from passplan.planning.audit.guarantees import promised
+from passplan.planning.audit.guarantees import promised, shared
 from passplan.planning.audit.rows import Contact
 from passplan.planning.audit.standing import Standing
 
@@ -21,7 +21,7 @@ from passplan.planning.audit.standing import Standing
 _TOLERANCE_S = 1.0
 
 
-_PLACES = {"command": "spacecraft", "daily": "the", "guarantee": "the"}
+_PLACES = {"command": "spacecraft", "daily": "the", "guarantee": "the", "fair": "the"}
 
 
 def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[str, Any]) -> Iterator[Fault]:
@@ -34,6 +34,12 @@ def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[s
     standings.update(decided(run, contacts))
     standings.update(frozen(run, contacts))
     standings.update(promised(run, contacts))
+    if run.policy.fairness == "max_min":
+        floor = summary.get("fair_floor")
+        if not isinstance(floor, float) or not 0.0 <= floor <= 1.0:
+            yield Fault("fair", "plan", f"its fair floor is stated as {floor}, not as a share from 0 to 1")
+            return
+        standings.update(shared(run, contacts, floor))
     admitted = [(str(entry.get("kind")), str(entry.get("name"))) for entry in summary.get("shortfalls", [])]
     for (kind, name), standing in standings.items():
         place = f"{_PLACES.get(kind, kind)} {name}"

@@ -15,6 +15,7 @@ from typing import Any
 
 from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.run import Run
+from passplan.planning.audit.changes import departures
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.rows import Contact, Piece
 
@@ -76,6 +77,10 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     for contact in contacts:
         by_craft[contact.spacecraft].extend((contact, piece) for piece in contact.pieces)
     stated = summary.get("storage", {})
+    # Taken in order, what is lost and what is paid are objectives of their own.
+    apart = run.policy.tiers == "in_order"
+    spill_cost = 0.0 if apart else run.policy.spill_cost_per_mb
+    worth_per_money = 0.0 if apart else run.policy.worth_per_money
     earned: list[float] = []
     delivered: list[float] = []
     # A spacecraft that was left out of the run is no part of the plan, and its data no part of the value.
@@ -93,11 +98,12 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
                 yield Fault("volume", contact.place, sentence)
         yield from _check_entry(name, stated.get(name), balance, tolerance_mb)
         kept_mb = run.policy.left_worth_share * balance.left_mb
-        earned.append(craft.weight * (balance.delivered_mb + kept_mb) - run.policy.spill_cost_per_mb * balance.lost_mb)
+        earned.append(craft.weight * (balance.delivered_mb + kept_mb) - spill_cost * balance.lost_mb)
         delivered.append(balance.delivered_mb)
     for contact in contacts:
         yield from _check_money(run, contact)
-        earned.append(-run.policy.worth_per_money * _cost(run, contact))
+        earned.append(-worth_per_money * _cost(run, contact))
+    earned.append(-departures(run, contacts)[0])
     for name in sorted(set(stated) - set(run.orbits)):
         yield Fault("storage", f"spacecraft {name}", "it takes no part in the plan, yet the summary has figures for it")
     value = math.fsum(earned)

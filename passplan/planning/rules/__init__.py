@@ -14,6 +14,7 @@ from passplan.inputs.run import Run
 from passplan.planning.hooks import Block, Draft, Wish
 from passplan.planning.problem import Problem
 from passplan.planning.rules.antenna_time import antenna_time
+from passplan.planning.rules.beams import beams
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
@@ -27,6 +28,7 @@ from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
     antenna_time,
+    beams,
     slew_time,
     spacecraft_time,
     contact_gaps,

@@ -9,11 +9,11 @@ from passplan.planning.rules.terms import Lane, Terms
 
 
 def antenna_time(problem: Problem) -> Terms:
-    """One lane per antenna; a contact holds it from ``prepare_s`` before its start to ``release_s`` after its end."""
+    """One lane per antenna with a single beam; a contact holds it from its ``prepare_s`` to its ``release_s``."""
     options = problem.options
     start_s, end_s = options.start_s - options.prepare_s, options.end_s + options.release_s
     lanes = []
-    for k, name in enumerate(problem.antennas.names):
+    for k in np.flatnonzero(problem.antennas.beams == 1).tolist():
         mine = np.flatnonzero(options.antenna == k)
-        lanes.append(Lane(name, "antenna_busy", mine, start_s[mine], end_s[mine]))
+        lanes.append(Lane(problem.antennas.names[k], "antenna_busy", mine, start_s[mine], end_s[mine]))
     return Terms(lanes=tuple(lanes))

@@ -96,7 +96,7 @@ class _Rounds:
         self.bound_rate = self.value_rate = 0.0
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
-        effort = _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
+        effort = 1 + _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
         sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))
         rounds, idle, round_s = 0, 0, 0.0
         while not clock.expired() and rounds < self.limits.search_rounds:

@@ -127,7 +127,7 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         span=np.column_stack([start_s, end_s]),
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
                               maps.generated_mb])[order],
-        cost=problem.worth_per_money * options.cost[order], bits=bits, renews=renews, uncounted=uncounted,
+        cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
         wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=len(clique_s),

@@ -18,6 +18,7 @@ from passplan.report.page.axis import Day
 from passplan.report.page.lanes import Names
 from passplan.report.rows import grouped, rows
 from passplan.report.tracks import WindowTrack, thinned
+from passplan.report.usage import reason_words
 
 # Enough that a pass bends smoothly on a wide screen, and 3 000 contacts still load.
 _SAMPLES, _SAMPLES_OF_MANY, _MANY = 56, 28, 1_000
@@ -38,6 +39,7 @@ def payload(record: PlanRecord, run: Run, tracks: Sequence[WindowTrack], names: 
         "sites": [_site(run, name, day) for name in names.sites],
         "contacts": _contacts(record, tracks, names, day),
         "unused": _unused(record, names, day),
+        "reasons": {reason: reason_words(reason) for reason in sorted(set(record.unused["reason"]))},
     }
 
 

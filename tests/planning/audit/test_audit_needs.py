@@ -148,3 +148,14 @@ def test_a_mission_with_less_than_it_was_promised(bench: Bench) -> None:
         assert bench.kinds() == kinds
     bench.summary["shortfalls"] = [{"kind": "guarantee", "name": f"MB of mission {mission} on 2027-03-09"}]
     assert bench.kinds() == set()
+
+
+def test_a_mission_below_the_fair_floor(bench: Bench) -> None:
+    bench.run = replace(bench.run, policy=bench.run.policy.model_copy(update={"fairness": "max_min"}))
+    assert "not as a share from 0 to 1" in _sentences(bench, "fair")
+    bench.summary["fair_floor"] = 0.2
+    assert bench.audit() == []
+    bench.contacts = bench.contacts[bench.contacts["spacecraft"] != "Teasel-3"]
+    assert "the share of" in _sentences(bench, "fair") or bench.run.spacecraft["Teasel-3"].mission == "sea state"
+    bench.contacts = bench.contacts[bench.contacts["spacecraft"] != "Teasel-1"]
+    assert "the share of sea state: 0 MB of" in _sentences(bench, "fair")

@@ -3,7 +3,8 @@
     const svg = make("svg", { viewBox: `0 0 ${width} ${height}`, class: "chart" });
     const first = c.t[0], last = c.t[c.t.length - 1];
     const x = (t) => box.left + (box.right - box.left) * (t - first) / (last - first || 1);
-    const low = Math.min(0, ...values), high = Math.max(options.least || 0, ...values) * 1.06 || 1;
+    const sent = options.steps ? c.sent.map((piece) => piece[2] || 0) : [];
+    const low = Math.min(0, ...values), high = Math.max(options.least || 0, ...values, ...sent) * 1.06 || 1;
     const y = (v) => box.bottom - (box.bottom - box.top) * (v - low) / (high - low || 1);
     make("rect", { x: x(Math.max(c.from, first)), y: box.top, width: Math.max(x(Math.min(c.to, last)) - x(Math.max(c.from, first)), 1), height: box.bottom - box.top, class: "band" }, svg);
     const step = [0.1, 0.2, 0.5, 1, 2, 5, 10, 20, 50, 100, 200, 500, 1000, 2000].find((n) => (high - low) / n <= 4) || 5000;
@@ -27,7 +28,7 @@
     } else {
       make("path", { d: values.map((v, i) => (i ? "L" : "M") + x(options.at[i]).toFixed(1) + " " + y(v).toFixed(1)).join(""), class: "curve" }, svg);
       make("path", { d: `M${box.left} ${y(data.required)}H${box.right}`, class: "asked" }, svg);
-      make("text", { x: box.right, y: y(data.required) - 4, "text-anchor": "end", class: "note" }, svg, `asked ${data.required} dB`);
+      make("text", { x: box.right, y: y(data.required) + 12, "text-anchor": "end", class: "note" }, svg, `asked ${data.required} dB`);
     }
     make("text", { x: box.left, y: 11, class: "strong" }, svg, title);
     if (options.times) {

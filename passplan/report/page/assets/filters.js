@@ -37,7 +37,7 @@
     if (afresh) { $("unused-rows").textContent = ""; shown = 0; }
     for (const u of rows.slice(shown, shown + 200)) {
       const row = document.createElement("tr");
-      for (const text of [day(u[2]) + " " + utc(u[2]), utc(u[3]), data.antennas[u[1]].name, data.spacecraft[u[0]], u[4].replaceAll("_", " ") + ": " + u[5]]) {
+      for (const text of [day(u[2]) + " " + utc(u[2]), utc(u[3]), data.antennas[u[1]].name, data.spacecraft[u[0]], data.reasons[u[4]] + ": " + u[5]]) {
         const cell = document.createElement("td");
         cell.dir = "auto";
         cell.textContent = text;
