@@ -194,20 +194,15 @@ def _useful(
     states: list[_State], now: int, weight: float, spill: float, apart: dict[int, set[int]], start_s: Integers,
 ) -> list[_State]:
     """Without states that another one makes useless: met and covered as much, and ahead for every MB of difference."""
-    kept: list[_State] = []
     free = [all(start_s[p] < now for p in apart.get(s.last, ())) for s in states]
-    for k, y in enumerate(states):
-        beaten = False
-        for j, x in enumerate(states):
-            if j == k or not free[j] or not x.met >= y.met or x.cover < y.cover:
-                continue
-            more = y.aboard - x.aboard
-            ahead = x.worth - y.worth - (weight * more if more > 0.0 else -spill * more)
-            # Of two that beat each other, the first one stays.
-            mutual = ahead == 0.0 and free[k] and x.met == y.met and x.cover == y.cover and x.aboard == y.aboard
-            if ahead > 0.0 or (ahead == 0.0 and not (mutual and k < j)):
-                beaten = True
-                break
-        if not beaten:
-            kept.append(y)
-    return kept
+
+    def beats(j: int, k: int) -> bool:
+        x, y = states[j], states[k]
+        if not free[j] or not x.met >= y.met or x.cover < y.cover:
+            return False
+        more = y.aboard - x.aboard
+        return x.worth - y.worth >= (weight * more if more > 0.0 else -spill * more)
+
+    # Of two that beat each other, the first one stays.
+    return [y for k, y in enumerate(states)
+            if not any(j != k and beats(j, k) and not (k < j and beats(k, j)) for j in range(len(states)))]

@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import os
 import signal
+import sys
 import threading
 from collections.abc import Iterator
 from contextlib import contextmanager
 from types import FrameType
+from typing import NoReturn
 
 from passplan.planning.clock import Clock
 
@@ -32,3 +35,13 @@ def stops_by_hand(clock: Clock) -> Iterator[None]:
         yield
     finally:
         signal.signal(signal.SIGINT, signal.default_int_handler)
+
+
+def leave(code: int) -> NoReturn:
+    """End the program at once after a stop by hand: a solver that cannot be interrupted may still be at work behind.
+
+    What was printed is printed; nothing else is tidied up.
+    """
+    sys.stdout.flush()
+    sys.stderr.flush()
+    os._exit(code)

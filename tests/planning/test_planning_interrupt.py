@@ -21,6 +21,7 @@ SCRIPT = """
 import sys
 sys.path.insert(0, sys.argv[1])
 from planning_cases import problem_of
+from passplan.planning.interrupt import leave
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits
 rows = [{"spacecraft": k % 40, "antenna": k % 7, "start_s": 60 * (k % 90), "end_s": 60 * (k % 90) + 480,
@@ -31,6 +32,7 @@ problem = problem_of(rows, prepare_s=(60,) * 7, release_s=(0,) * 7, **many)
 result = find_plan(problem, Limits(gap=0.0, time_limit_s=900.0, exact_options=int(sys.argv[2])),
                    progress=lambda *_: print("going", flush=True))
 print("ended", result.status, result.stopped_by_hand, len(result.chosen), flush=True)
+leave(0)
 """
 
 

@@ -22,7 +22,7 @@ MANY = 2_000
 def two_networks(crossing: bool) -> Problem:
     """Two spacecraft, many windows each on an antenna of its own; ``crossing``: once on the same one."""
     rows: list[dict[str, Any]] = [
-        {"spacecraft": k, "antenna": k, "start_s": t, "end_s": t + 120, "pieces": [(t, t + 120, 1.0)]}
+        {"spacecraft": k, "antenna": k, "start_s": t, "end_s": t + 120, "pieces": [(t, t + 120, 0.4)]}
         for k in (0, 1) for t in range(0, 300 * MANY, 300)]
     if crossing:
         rows.append({"spacecraft": 0, "antenna": 1, "start_s": 300, "end_s": 420, "pieces": [(300, 420, 2.0)]})
