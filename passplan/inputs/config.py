@@ -39,7 +39,8 @@ class RunConfig(Record):
     """The config as written. Paths are relative to the config; the horizon is ``hours`` long or runs to ``end``.
 
     ``rain_mm_per_h`` is the day's rain rate by site, where it is known. ``published`` is the directory of the
-    published plan, ``last_commands`` a CSV file with the last command contact of each spacecraft.
+    published plan, ``last_commands`` a CSV file with the last command contact of each spacecraft. ``slots`` are CSV
+    files with time in which spacecraft cannot have contacts, ``loaded`` the contacts that are already uplinked.
     """
 
     name: Label = "run"
@@ -56,6 +57,8 @@ class RunConfig(Record):
     decisions: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
     published: str | None = None
     last_commands: str | None = None
+    slots: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
+    loaded: str | None = None
     policy: str | dict[str, Any] = Field(default_factory=dict)
 
     @model_validator(mode="after")

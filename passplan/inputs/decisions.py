@@ -115,22 +115,25 @@ def read_decisions(
 
 def read_published(
     place: Path, spacecraft: Mapping[str, Spacecraft], antennas: Mapping[str, Antenna], reader: Reader,
-    findings: Findings,
+    findings: Findings, what: Literal["published", "loaded"] = "published",
 ) -> tuple[Published, ...]:
     """The contacts of the plan directory ``place`` (or of a CSV file with the same columns).
 
-    A contact of a spacecraft or antenna that the run no longer has is left out with a warning.
+    A contact of a spacecraft or antenna that the run no longer has is left out with a warning. Where ``what`` is
+    ``loaded`` so are contacts for commands alone, without one: no schedule aboard knows of them.
     """
     table = place if place.suffix.lower() == ".csv" else place / "contacts.csv"
     found = []
     for where, row in read_csv_records(table, reader, findings):
+        if what == "loaded" and row.get("service") == "command":
+            continue
         record = {key: value for key, value in row.items() if key in Published.model_fields}
         item: Published | None = checked(Published, record, table, where, findings)
         if item is None:
             continue
         gone = [name for name, known in ((item.spacecraft, spacecraft), (item.antenna, antennas)) if name not in known]
         if gone and spacecraft and antennas:
-            findings.warn(f"{table}: {where}: published contact {item.name}: the run has no {gone[0]}")
+            findings.warn(f"{table}: {where}: {what} contact {item.name}: the run has no {gone[0]}")
         elif not gone:
             found.append(item)
     return tuple(found)

@@ -7,6 +7,7 @@ from typing import Annotated, Literal
 from pydantic import Field, model_validator
 
 from passplan.inputs.craft_limits import CraftLimits
+from passplan.inputs.craft_power import CraftPower
 from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
 
@@ -20,7 +21,7 @@ class DownlinkRadio(Record):
     back-off comes off both. ``pattern`` is a fixed antenna's loss [dB] against the angle off boresight [deg],
     boresight to nadir; without it the antenna is steered at the station. ``rate_control`` says how the
     modcod is chosen: ``fixed`` (the only one of ``modcods``), ``per-contact``, or ``adaptive`` (stepped
-    along the pass).
+    along the pass). ``load_w`` is what it draws while it is on.
     """
 
     name: Name
@@ -45,6 +46,7 @@ class DownlinkRadio(Record):
     hysteresis_db: Annotated[float, Field(ge=0.0, le=10.0)] = 0.5
     min_dwell_s: Annotated[int, Field(ge=0, le=600)] = 10
     switching_gap_s: Annotated[int, Field(ge=0, le=60)] = 0
+    load_w: Annotated[float, Field(ge=0.0, le=100_000.0)] = 0.0
 
     @model_validator(mode="after")
     def _consistent(self) -> DownlinkRadio:
@@ -88,7 +90,7 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(CraftLimits):
+class Spacecraft(CraftLimits, CraftPower):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
@@ -109,6 +111,7 @@ class Spacecraft(CraftLimits):
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     last_command_utc: Instant | None = None
+    loaded_until_utc: Instant | None = None
     least_contacts_per_day: Annotated[int, Field(ge=1, le=1_000)] | None = None
     least_mb_per_day: Annotated[float, Field(gt=0.0, le=1e9)] | None = None
     manoeuvres_utc: Instants = ()

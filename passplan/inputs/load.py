@@ -12,6 +12,7 @@ from typing import Any
 import numpy as np
 from pydantic import TypeAdapter
 
+from passplan.inputs.aboard import read_slots
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
@@ -88,6 +89,9 @@ def load_run(
                                reader, findings)
     published = () if settings.published is None else read_published(
         beside(path, settings.published), fleet.spacecraft, ground.antennas, reader, findings)
+    loaded = () if settings.loaded is None else read_published(
+        beside(path, settings.loaded), fleet.spacecraft, ground.antennas, reader, findings, what="loaded")
+    slots = read_slots([beside(path, name) for name in settings.slots], fleet.spacecraft, reader, findings)
     named = beside(path, settings.policy) if isinstance(settings.policy, str) else path
     check_guarantees(rules, fleet.spacecraft, named, findings)
     sites = _rained_on(ground.sites, settings, path, findings)
@@ -125,6 +129,8 @@ def load_run(
             datetime64(d.end_utc) > start_utc and datetime64(d.start_utc) < end_utc)),
         published=tuple(
             p for p in published if datetime64(p.end_utc) > start_utc and datetime64(p.start_utc) < end_utc),
+        loaded=tuple(c for c in loaded if datetime64(c.end_utc) > start_utc and datetime64(c.start_utc) < end_utc),
+        slots=tuple(s for s in slots if datetime64(s.end_utc) > start_utc and datetime64(s.start_utc) < end_utc),
         orbits=orbits.orbits, left_out=orbits.left_out, elements=orbits.elements,
         pfd_limits=limits, warnings=tuple(findings.warnings), files=reader.files,
     )

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 import numpy as np
 import pandas as pd
 
+from passplan.inputs.aboard import Slot
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.elements.model import ElementSet
@@ -53,6 +54,8 @@ class Run:
     mounts: Mapping[str, Mount] = field(default_factory=dict)
     decisions: tuple[Decision, ...] = ()
     published: tuple[Published, ...] = ()
+    slots: tuple[Slot, ...] = ()
+    loaded: tuple[Published, ...] = ()
     warnings: tuple[str, ...] = ()
     files: tuple[ReadFile, ...] = field(default=(), repr=False)
 

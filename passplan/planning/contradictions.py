@@ -26,7 +26,7 @@ _STEP_S = 5.0
 # What stands between demands is shown by this many examples.
 _MOST_BETWEEN = 3
 _WORDS = {"request": "request {} for {}", "pin": "the pinned contact, {}", "frozen": "the frozen contact, {}",
-          "emergency": "the emergency contact, {}"}
+          "loaded": "the contact loaded aboard, {}", "emergency": "the emergency contact, {}"}
 
 
 @dataclass(frozen=True, eq=False)
@@ -150,17 +150,18 @@ def _alone(terms: Terms, demand: Demand) -> tuple[str, ...]:
 def _shared(problem: Problem, terms: Terms, core: Sequence[Demand]) -> tuple[str, ...]:
     """What the options of one requirement take that those of another would need."""
     said: dict[str, None] = {}
+    occupancy = Occupancy(terms, len(problem.options))
     for k, one in enumerate(core):
         for other in core[k + 1:]:
             for a in one.options.tolist():
-                occupancy = Occupancy(terms, len(problem.options))
                 if not occupancy.fits(a):
                     continue
                 occupancy.add(a)
                 for b in other.options.tolist():
                     said.update(dict.fromkeys(_place(blocker.kind, blocker.name) for blocker in occupancy.blockers(b)))
-                    if len(said) >= _MOST_BETWEEN:
-                        return tuple(said)[:_MOST_BETWEEN]
+                occupancy.remove(a)
+                if len(said) >= _MOST_BETWEEN:
+                    return tuple(said)[:_MOST_BETWEEN]
     return tuple(said)
 
 

@@ -15,6 +15,9 @@ from passplan.inputs.run import Run
 from passplan.link.choice import CommandChoice, DownlinkChoice
 from passplan.planning.problem import Problem, Service
 
+DRIFT_S = 60
+"""How far the edges of a window may have moved since somebody pinned, published or loaded a contact."""
+
 
 @dataclass(frozen=True)
 class Candidate:
@@ -62,6 +65,34 @@ class Wish:
     antenna: str | None
     start_s: int
     end_s: int
+
+
+@dataclass(frozen=True)
+class Cap:
+    """The transmitter of ``spacecraft`` is on for at most ``longest_s`` in one contact.
+
+    ``reason`` and ``detail`` as of a :class:`Block`, where no contact is short enough.
+    """
+
+    spacecraft: str
+    longest_s: int
+    reason: str
+    detail: str
+
+
+@dataclass(frozen=True)
+class Silence:
+    """``spacecraft`` sends in no contact that starts before ``until_s``, but in those that are ``kept``.
+
+    These are (antenna, start, end) in s; each is to be had as it stands, or as far as its window reaches. ``reason``
+    and ``detail`` as of a :class:`Block`.
+    """
+
+    spacecraft: str
+    until_s: int
+    kept: tuple[tuple[str, int, int], ...]
+    reason: str
+    detail: str
 
 
 @dataclass(frozen=True, eq=False)

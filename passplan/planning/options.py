@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 import pandas as pd
@@ -13,8 +13,9 @@ from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
 from passplan.planning.cuts import Cuts, neighbour_cuts, spread
-from passplan.planning.hooks import Block, Candidate, Wish
+from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Wish
 from passplan.planning.horizon import column_seconds
+from passplan.planning.on_air import on_air_span
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
 from passplan.planning.setup import SetupTimes
 
@@ -23,13 +24,15 @@ from passplan.planning.setup import SetupTimes
 class OptionSet:
     """Options with their ``candidates`` (same order), and why windows give none.
 
-    ``excluded`` maps such a window to (reason, detail). ``blocked`` knows the time that no contact may touch.
+    ``excluded`` maps such a window to (reason, detail). ``blocked`` knows the time that no contact may touch, and
+    ``shortened`` why no longer contact was to be had in a window, where it is neither that nor the link.
     """
 
     options: Options
     candidates: tuple[Candidate, ...]
     excluded: Mapping[int, tuple[str, str]]
     blocked: BlockedTime
+    shortened: Mapping[int, str] = field(default_factory=dict)
 
 
 class BlockedTime:
@@ -76,12 +79,13 @@ def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Anten
 
 def find_options(
     run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
-    blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (),
+    blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (), caps: Sequence[Cap] = (),
+    silences: Sequence[Silence] = (),
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
     setup = SetupTimes(run)
     blocked = BlockedTime(blocks, setup)
-    builder = _Builder(run, windows, fleet, antennas, blocked, wishes)
+    builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps, silences)
     cuts = neighbour_cuts(windows, [
         setup.longest(fleet.names[craft], antennas.names[antenna])
         for craft, antenna in zip(windows.spacecraft.tolist(), windows.antenna.tolist(), strict=True)])
@@ -101,13 +105,13 @@ def find_options(
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0 * c.downlink.expectation)
             for piece in c.downlink.pieces],
     } for c, (prepare_s, release_s) in zip(candidates, setups, strict=True)]
-    return OptionSet(build_options(rows), tuple(candidates), excluded, blocked)
+    return OptionSet(build_options(rows), tuple(candidates), excluded, blocked, builder.shortened)
 
 
 class _Builder:
     def __init__(
         self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, blocked: BlockedTime,
-        wishes: Sequence[Wish],
+        wishes: Sequence[Wish], caps: Sequence[Cap], silences: Sequence[Silence],
     ) -> None:
         self.run, self.windows, self.policy, self.blocked = run, windows, run.policy, blocked
         self.shortest_s = math.ceil(run.policy.min_contact_s)
@@ -115,6 +119,9 @@ class _Builder:
         self.asked: dict[str, list[Wish]] = {}
         for wish in wishes:
             self.asked.setdefault(wish.spacecraft, []).append(wish)
+        self.caps = {cap.spacecraft: cap for cap in caps}
+        self.shortened: dict[int, str] = {}
+        self.silences = {silence.spacecraft: silence for silence in silences}
 
     def of_window(self, w: int, link: WindowLink, cuts: Cuts) -> tuple[list[Candidate], tuple[str, str]]:
         """The options of one window, longest first, or the reason why there are none."""
@@ -125,8 +132,16 @@ class _Builder:
         pieces = [p for p in free if p[1] - p[0] >= self.shortest_s]
         reason = self._unusable(w, link, pieces, [block for _, _, block in blocks])
         found = [] if reason else [c for low, high in pieces for c in self._of_piece(w, link, low, high, cuts)]
+        cap = self.caps.get(craft)
+        if cap is not None and found:
+            found = [c for c in found if self._on_air_s(c) <= cap.longest_s]
+            if not found:
+                return [], (cap.reason, cap.detail)
         useful = [c for c in found if c.downlink is not None or self._commands_wanted(craft)]
         if not useful:
+            silence = self.silences.get(craft)
+            if silence is not None and not reason and link.downlink is not None and start_s < silence.until_s:
+                return [], (silence.reason, silence.detail)
             if found:
                 reason = ("not_needed", f"{antenna} can only command {craft} then, and no command contact is asked for")
             return [], reason or ("no_margin", "the margin does not hold long enough after acquisition")
@@ -169,7 +184,14 @@ class _Builder:
         inner = math.isqrt(most - 1) + 1 if most > 1 else 0
         starts = must_start | set(spread(low, high - self.shortest_s + 1, cuts.starts, grid, inner))
         ends = must_end | set(spread(low + self.shortest_s - 1, high, cuts.ends, grid, inner))
-        pairs = [(a, b) for a in starts for b in ends if b - a >= self.shortest_s]
+        cap = self.caps.get(self._names(w)[0])
+        longest_s = high - low
+        if cap is not None and link.downlink is not None and cap.longest_s < longest_s:
+            longest_s = cap.longest_s
+            self.shortened[w] = cap.reason
+            starts, ends = starts | {b - longest_s for b in ends}, ends | {a + longest_s for a in starts}
+        pairs = [(a, b) for a in starts for b in ends if low <= a and b <= high and b - a >= self.shortest_s
+                 and (b - a <= longest_s or (a in must_start and b in must_end))]
         pairs.sort(key=lambda p: ((p[0] not in must_start) + (p[1] not in must_end), p[0] - p[1], p[0]))
         for start_s, end_s in pairs[: most + len(must_start) * len(must_end) - 1]:
             candidate = whole if (start_s, end_s) == (low, high) else self._candidate(w, link, start_s, end_s)
@@ -183,8 +205,27 @@ class _Builder:
                  if wish.antenna in (None, antenna) for low, high in pieces}
         return {(a, b) for a, b in spans if b - a >= self.shortest_s}
 
+    def _on_air_s(self, candidate: Candidate) -> int:
+        start_s, end_s = on_air_span(self.run, candidate.start_s, candidate.downlink)
+        return end_s - start_s
+
+    def _silent(self, w: int, start_s: int, end_s: int) -> bool:
+        """Whether the spacecraft must not send in a contact of a window."""
+        craft, antenna = self._names(w)
+        silence = self.silences.get(craft)
+        if silence is None or start_s >= silence.until_s:
+            return False
+        self.shortened[w] = silence.reason
+        low, high = int(self.windows.start_s[w]), int(self.windows.end_s[w])
+        return not any(
+            (antenna, start_s, end_s) == (name, max(low, a), min(high, b))
+            and start_s <= max(a, 0) + DRIFT_S and end_s >= min(b, self.run.horizon_s) - DRIFT_S
+            for name, a, b in silence.kept)
+
     def _candidate(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
-        downlink = link.downlink.best(start_s, end_s) if link.downlink is not None else None
+        downlink = None
+        if link.downlink is not None and not self._silent(w, start_s, end_s):
+            downlink = link.downlink.best(start_s, end_s)
         command = link.command.best(start_s, end_s) if link.command is not None else None
         if command is not None and command.usable_s < self.policy.command_min_s:
             command = None

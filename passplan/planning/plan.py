@@ -23,7 +23,7 @@ from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
 from passplan.planning.problem import Antennas, CommandNeed, Conflict, Crowd, Fleet, Limits, Problem, RequestNeed
 from passplan.planning.result import PlanResult
-from passplan.planning.rules import BLOCKS, NEEDS, WISHES, all_terms
+from passplan.planning.rules import BLOCKS, CAPS, NEEDS, SILENCES, WISHES, all_terms
 from passplan.planning.tables import contacts_table, segments_table
 from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
@@ -108,7 +108,9 @@ def build_problem(
     arrays = window_arrays(run, windows, fleet, antennas)
     blocks = [block for find in BLOCKS for block in find(run)]
     wishes = [wish for find in WISHES for wish in find(run)]
-    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes)
+    silences = [silence for find in SILENCES for silence in find(run)]
+    caps = [cap for find in CAPS for cap in find(run)]
+    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes, caps, silences)
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),

@@ -32,6 +32,7 @@ _WANTED = {
     "request": "Request {name} for {owner} is not met",
     "pin": "The pinned contact is not in the plan",
     "frozen": "The frozen contact is not in the plan as it was published",
+    "loaded": "The contact loaded aboard is not in the plan as it was loaded",
     "emergency": "The emergency contact is not in the plan",
 }
 
@@ -65,7 +66,7 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
         if missing > 0.0:
             most = promise.need - missing_amount(promise, set(promise.options.tolist()))
             got = promise.need - missing
-            why = ("what could add more collides with other requirements" if most > got
+            why = ("no more fits together, beside the other requirements" if most > got
                    else "the windows offer no more")
             found.append(Shortfall(
                 promise.kind, promise.name, "", promise.points * missing / promise.need,

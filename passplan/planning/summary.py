@@ -18,6 +18,8 @@ from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.reader import ReadFile
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
+from passplan.planning.aboard import schedule_warnings
+from passplan.planning.battery import battery_summary, battery_warnings
 from passplan.planning.plan import Plan
 from passplan.planning.rules.decisions import frozen_contacts
 from passplan.planning.value import Account
@@ -59,12 +61,13 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             for c in plan.contradictions if len(c.demands) > 1
         ],
         "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
-        "frozen": [item.name for item in frozen_contacts(run)],
-        "warnings": list(run.warnings) + _own_warnings(run, windows),
+        "frozen": [item.name for item in (*frozen_contacts(run), *run.loaded)],
+        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem)
+        + list(schedule_warnings(run, plan.contacts)),
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
-        "storage": _storage(run, account),
+        "storage": _storage(run, account), "battery": battery_summary(run, plan.problem, result.chosen),
         "inputs": stored_inputs(run.files),
         "versions": {"passplan": __version__, **{name: _version(name) for name in _PACKAGES}},
         "seconds": {},

@@ -60,7 +60,8 @@ def contacts_table(
 
 def _origins(terms: Terms) -> dict[int, str]:
     """Who wanted each option; where several did, the one that outranks the others."""
-    words = {"request": "requested", "pin": "pinned", "frozen": "frozen", "emergency": "emergency"}
+    words = {"request": "requested", "pin": "pinned", "frozen": "frozen", "loaded": "frozen",
+             "emergency": "emergency"}
     return {int(o): words[want.kind] for want in sorted(terms.wanted, key=lambda want: list(words).index(want.kind))
             for o in want.options}
 
@@ -117,13 +118,19 @@ class _CutExplainer:
         return "; ".join(reasons)
 
     def _side(self, option: int, longer: list[int], low_s: int, high_s: int) -> str:
+        options, w = self.problem.options, int(self.problem.options.window[option])
+        shortened = self.option_set.shortened.get(w)
+        if shortened is not None and not any(
+            options.start_s[o] <= options.start_s[option] and options.end_s[o] >= options.end_s[option] for o in longer
+        ):
+            return shortened
         for o in longer:
             for blocker in self.occupancy.blockers(o):
                 return blocker.kind
         if longer:
             return "nothing_aboard"
-        craft = self.problem.fleet.names[int(self.problem.options.spacecraft[option])]
-        antenna = self.problem.antennas.names[int(self.problem.options.antenna[option])]
+        craft = self.problem.fleet.names[int(options.spacecraft[option])]
+        antenna = self.problem.antennas.names[int(options.antenna[option])]
         blocks = self.option_set.blocked.between(craft, antenna, low_s, high_s)
         return blocks[0][2].reason if blocks else "no_margin"
 

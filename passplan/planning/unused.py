@@ -16,7 +16,9 @@ from passplan.planning.rules.terms import Terms
 
 REASONS = (
     "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "antenna_turning", "spacecraft_busy",
-    "nothing_aboard", "not_worth_it", "interference", "contact_gap", "cool_down", "forbidden")
+    "nothing_aboard", "not_worth_it", "interference", "contact_gap", "cool_down", "forbidden",
+    "contacts_per_orbit", "contacts_per_day", "sending_per_contact", "sending_per_orbit", "sending_per_span",
+    "battery", "imaging", "attitude", "loaded")
 """``not_needed``: the antenna can only command, and nothing asks for it. Rules may add their own reasons."""
 
 
@@ -68,6 +70,8 @@ class _Explainer:
     def _why_not_taken(self, free: list[int]) -> tuple[str, str]:
         problem = self.problem
         craft = int(problem.options.spacecraft[free[0]])
+        if not problem.options.downlink[free].any():
+            return "not_needed", "it can only command then, and no command contact that is asked for needs it"
         best = max(free, key=lambda o: gain_of(problem, self.maps, self.of_craft[craft], o))
         gain = gain_of(problem, self.maps, self.of_craft[craft], best)
         name = problem.fleet.names[craft]

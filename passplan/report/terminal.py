@@ -17,6 +17,7 @@ from rich.text import Text
 from passplan.planning.backlog import backlogs
 from passplan.planning.record import PlanRecord
 from passplan.report.backlog_chart import backlog_chart
+from passplan.report.batteries import battery_table
 from passplan.report.cautions import CAUTIONS
 from passplan.report.contact_table import LocalTime, contact_table, lost_table, plain_table, unused_table
 from passplan.report.flux import flux_of_plan
@@ -67,18 +68,25 @@ def print_plan(
     _section(console, "Contacts", contact_table(part.contacts, console.width, rows, local))
     _section(console, "Data aboard each spacecraft", backlog_chart(summary, stores, console.width, craft))
     if detail:
-        if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
-            _section(console, "Weather over an average year", by_antenna(part))
-        if (flux := flux_of_plan(part)) is not None:
-            _section(console, "Power flux density at the ground", flux)
-        if len(part.contacts):
-            _section(console, "Lowest margins", _margins(part, console.width))
-        if summary.get("lost_value"):
-            _section(console, "Data not brought down, and why", lost_table(summary))
-        _section(console, "What was not used, and why", unused_table(part, full=bool(selection)))
+        _details(console, part, full=bool(selection))
     console.print()
     for caution in CAUTIONS:
         console.print(Padding(Text(f"• {caution}", style="dim"), (0, 1)))
+
+
+def _details(console: Console, part: PlanRecord, *, full: bool) -> None:
+    """What the first screen leaves out; ``full`` lists every unused window."""
+    if (batteries := battery_table(part.summary)) is not None:
+        _section(console, "State of charge", batteries)
+    if part.summary.get("weather", {}).get("contacts") and len(part.contacts):
+        _section(console, "Weather over an average year", by_antenna(part))
+    if (flux := flux_of_plan(part)) is not None:
+        _section(console, "Power flux density at the ground", flux)
+    if len(part.contacts):
+        _section(console, "Lowest margins", _margins(part, console.width))
+    if part.summary.get("lost_value"):
+        _section(console, "Data not brought down, and why", lost_table(part.summary))
+    _section(console, "What was not used, and why", unused_table(part, full=full))
 
 
 def _section(console: Console, title: str, body: RenderableType) -> None:

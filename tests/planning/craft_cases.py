@@ -5,22 +5,68 @@ from __future__ import annotations
 import random
 from collections.abc import Iterable
 from dataclasses import replace
+from itertools import accumulate, pairwise
 
+import numpy as np
 from planning_cases import STEP_S, Judge, random_problem
 
+from passplan.planning.battery import PowerNeed
+from passplan.planning.on_air import OnAir
 from passplan.planning.problem import Problem
+from passplan.planning.rules.contact_counts import CountNeed
 from passplan.planning.rules.contact_gaps import GapNeed
+from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNeed
 
 
 def random_craft_problem(seed: int) -> Problem:
     """A random problem in which each spacecraft has each limit by a coin's toss."""
     rng = random.Random(10_000 + seed)
     problem = random_problem(seed)
-    needs: list[object] = []
+    needs: list[object] = [on_air_of(problem)]
     for craft in range(len(problem.fleet)):
-        if rng.random() < 0.5:
+        edges_s = tuple(float(t) for t in range(rng.randint(1, 15) * STEP_S + 7, problem.horizon_s, 20 * STEP_S))
+        if rng.random() < 0.4:
             needs.append(GapNeed(craft, rng.choice([0, 2, 5]) * STEP_S, rng.choice([0, 4, 12]) * STEP_S))
+        if rng.random() < 0.4:
+            needs.append(CountNeed(craft, rng.choice(["orbit", "day"]), edges_s, rng.randint(1, 2)))
+        if rng.random() < 0.4:
+            needs.append(OrbitSendingNeed(craft, edges_s, rng.randint(1, 12) * STEP_S + 30.0))
+        if rng.random() < 0.4:
+            needs.append(SpanSendingNeed(craft, rng.randint(8, 40) * STEP_S + 20.0, rng.randint(1, 12) * STEP_S + 10.0))
+        if rng.random() < 0.5:
+            edges = np.array([0.0, *sorted(rng.sample(range(1, problem.horizon_s), 4)), problem.horizon_s])
+            capacity_wh = rng.choice([3.0, 8.0, 20.0])
+            net_w = np.array([rng.choice([-30.0, -10.0, 20.0, 50.0, 70.0]) for _ in range(5)])
+            needs.append(PowerNeed(craft, capacity_wh, rng.choice([0.0, 0.2, 0.5]) * capacity_wh,
+                                   rng.choice([0.1, 0.6, 1.0]) * capacity_wh, edges, net_w))
     return replace(problem, needs=tuple(needs))
+
+
+def loosened(problem: Problem) -> Problem:
+    """The same problem with every limit of its spacecraft a little looser."""
+    return replace(problem, needs=tuple(_loosened(need) for need in problem.needs))
+
+
+def _loosened(need: object) -> object:
+    if isinstance(need, GapNeed):
+        return replace(need, gap_s=need.gap_s // 2, cool_down_s=need.cool_down_s // 2)
+    if isinstance(need, CountNeed):
+        return replace(need, most=need.most + 1)
+    if isinstance(need, OrbitSendingNeed | SpanSendingNeed):
+        return replace(need, most_s=need.most_s + 2 * STEP_S)
+    return replace(need, floor_wh=0.5 * need.floor_wh) if isinstance(need, PowerNeed) else need
+
+
+def on_air_of(problem: Problem) -> OnAir:
+    """The transmitters of a random problem: a minute of acquisition before the first piece."""
+    o = problem.options
+    sends = np.diff(o.piece_offset) > 0
+    first, last = np.where(sends, o.piece_offset[:-1], 0), np.where(sends, o.piece_offset[1:] - 1, 0)
+    if not sends.any():
+        return OnAir(o.start_s, o.start_s, np.zeros(len(o)))
+    start_s = np.where(sends, o.piece_start_s[first] - STEP_S, o.start_s)
+    load_w = 30.0 + 15.0 * (np.arange(len(o)) % 3)
+    return OnAir(start_s, np.where(sends, o.piece_end_s[last], o.start_s), np.where(sends, load_w, 0.0))
 
 
 class CraftJudge(Judge):
@@ -29,16 +75,55 @@ class CraftJudge(Judge):
     def kept(self, chosen: Iterable[int]) -> bool:
         """Whether a set of options that do not collide keeps every limit."""
         chosen = list(chosen)
-        return all(self._rested(need, chosen) for need in self.problem.needs_of(GapNeed))
+        checks = {GapNeed: self._rested, CountNeed: self._few_enough, OrbitSendingNeed: self._quiet_in_orbits,
+                  SpanSendingNeed: self._quiet_in_spans, PowerNeed: self._charged}
+        return all(checks[type(need)](need, [k for k in chosen if self.options.spacecraft[k] == need.spacecraft])
+                   for need in self.problem.needs if type(need) in checks)
 
     def _rested(self, need: GapNeed, chosen: list[int]) -> bool:
         o = self.options
         for after in chosen:
             for before in chosen:
-                own = o.spacecraft[after] == o.spacecraft[before] == need.spacecraft
-                if own and o.end_s[before] <= o.start_s[after]:
+                if o.end_s[before] <= o.start_s[after]:
                     rest_s = o.start_s[after] - o.end_s[before]
                     both_send = o.downlink[before] and o.downlink[after]
                     if rest_s < need.gap_s or (both_send and rest_s < need.cool_down_s):
                         return False
         return True
+
+    def _few_enough(self, need: CountNeed, chosen: list[int]) -> bool:
+        parts = [sum(edge <= self.options.start_s[k] for edge in need.edges_s) for k in chosen]
+        return all(parts.count(part) <= need.most for part in parts)
+
+    def _seconds_on(self, chosen: list[int]) -> list[bool]:
+        (on_air,) = self.problem.needs_of(OnAir)
+        seconds = [False] * self.problem.horizon_s
+        for k in chosen:
+            for t in range(int(on_air.start_s[k]), int(on_air.end_s[k])):
+                seconds[t] = True
+        return seconds
+
+    def _charged(self, need: PowerNeed, chosen: list[int]) -> bool:
+        """Second by second: never under the floor, or under what the battery holds there when nothing is sent."""
+        (on_air,) = self.problem.needs_of(OnAir)
+        part = np.searchsorted(need.edges_s, np.arange(self.problem.horizon_s), side="right") - 1
+        load_w = np.zeros(self.problem.horizon_s)
+        for k in chosen:
+            load_w[on_air.start_s[k]:on_air.end_s[k]] = on_air.load_w[k]
+        idle = charge = need.start_wh
+        for net_w, drawn_w in zip(need.net_w[part].tolist(), load_w.tolist(), strict=True):
+            idle = min(need.capacity_wh, idle + net_w / 3600.0)
+            charge = min(need.capacity_wh, charge + (net_w - drawn_w) / 3600.0)
+            if charge < min(need.floor_wh, idle) - 1e-7:
+                return False
+        return True
+
+    def _quiet_in_orbits(self, need: OrbitSendingNeed, chosen: list[int]) -> bool:
+        seconds, edges = self._seconds_on(chosen), [0.0, *need.edges_s, self.problem.horizon_s]
+        return all(sum(seconds[int(a):int(b)]) <= need.most_s for a, b in pairwise(edges))
+
+    def _quiet_in_spans(self, need: SpanSendingNeed, chosen: list[int]) -> bool:
+        sums = [0, *accumulate(self._seconds_on(chosen))]
+        span_s = int(need.span_s)
+        most_s = max(sums[min(t + span_s, len(sums) - 1)] - sums[t] for t in range(len(sums)))
+        return most_s <= need.most_s

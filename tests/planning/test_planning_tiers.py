@@ -4,8 +4,10 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+import numpy as np
 import pytest
 from need_cases import OrderJudge, ordered_problem
+from planning_cases import Judge, random_problem
 from planning_runs import DOWN, SteadyDownlink, at, make_run, make_windows
 
 from passplan.inputs.decisions import Published
@@ -84,3 +86,16 @@ def test_no_money_is_spent_where_value_is_the_same_and_no_value_is_given_up_for_
     assert plan.contacts["antenna"].tolist() == ["Isvarde-A", "Isvarde-B"]
     cost = next(tier for tier in plan.result.tiers if tier.name == "cost")
     assert (cost.value, cost.bound) == (pytest.approx(60.0), pytest.approx(60.0))
+
+
+@pytest.mark.parametrize("seed", range(5))
+def test_the_search_counts_the_price_of_options_too(seed: int) -> None:
+    problem = random_problem(seed, needs=False)
+    price = np.random.default_rng(seed).choice([-300.0, 0.0, 40.0], len(problem.options))
+    problem = replace(problem, extra_price=price, base_worth=-70.0)
+    exact = find_plan(problem, Limits(gap=0.0))
+    found = find_plan(problem, Limits(gap=0.0, exact_options=0, time_limit_s=20.0))
+    assert exact.value == pytest.approx(Judge(replace(problem, extra_price=np.zeros(0), base_worth=0.0)).value(
+        frozenset(exact.chosen)) - float(price[list(exact.chosen)].sum()) - 70.0)
+    assert found.value == pytest.approx(exact.value, rel=1e-3, abs=1e-3)
+    assert found.bound >= exact.value - 1e-3

@@ -8,6 +8,8 @@ from typing import Any
 import pandas as pd
 
 from passplan.inputs.run import Run
+from passplan.planning.audit.aboard import check_loaded, check_slots
+from passplan.planning.audit.battery import check_batteries
 from passplan.planning.audit.craft_limits import check_craft_limits
 from passplan.planning.audit.decisions import check_forbids
 from passplan.planning.audit.faults import Fault, differs
@@ -40,6 +42,8 @@ def audit_plan(
     faults.extend(check_turnarounds(run, rows))
     faults.extend(check_interference(run, rows))
     faults.extend(check_craft_limits(run, rows))
+    faults.extend(check_loaded(run, rows))
+    faults.extend(check_batteries(run, rows, summary))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
     faults.extend(check_tiers(run, rows, summary))
@@ -54,6 +58,7 @@ def _check_contact(run: Run, contact: Contact) -> Iterator[Fault]:
     if differs(contact.duration_s, contact.end_s - contact.start_s, 1e-3):
         yield Fault("table", contact.place, "its duration does not agree with its start and end")
     yield from check_closures(run, contact)
+    yield from check_slots(run, contact)
     yield from check_forbids(run, contact)
     seen = sight_of(run, contact)
     visible = list(check_visibility(run, contact, seen))

@@ -21,6 +21,7 @@ from passplan.planning.audit.visibility import check_visibility, sight_of
 _SECOND = 1.0
 # A window that fresh element sets moved by more than that no longer carries what was pinned or published in it.
 _DRIFT_S = 60.0
+_HELD = {"frozen": "published", "loaded": "loaded aboard"}
 
 
 def check_forbids(run: Run, contact: Contact) -> Iterator[Fault]:
@@ -56,17 +57,16 @@ def decided(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str, 
 
 
 def frozen(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str, str], Standing]]:
-    """How each frozen contact fares: it stands as it was published, or as far as the antenna can still follow."""
+    """How each frozen or loaded contact fares: it stands as it was, or as far as the antenna can still follow."""
     until = run.frozen_until_utc
-    for item in run.published:
-        if until is None or datetime64(item.start_utc) >= until:
-            continue
+    held = [("frozen", item) for item in run.published if until is not None and datetime64(item.start_utc) < until]
+    for kind, item in [*held, *(("loaded", item) for item in run.loaded)]:
         span = _span_s(run, item.start_utc, item.end_utc)
         mine = [c for c in contacts if (c.spacecraft, c.antenna) == (item.spacecraft, item.antenna)
                 and c.start_s > span[0] - _SECOND and c.end_s < span[1] + _SECOND]
         met = any(_late_s(c, span) < _SECOND for c in mine)
         close = any(_holds_what_it_can(run, c, span) for c in mine)
-        yield ("frozen", item.name), Standing(not met and not close, met, "no contact is as it was published")
+        yield (kind, item.name), Standing(not met and not close, met, f"no contact is as it was {_HELD[kind]}")
 
 
 def _answers(run: Run, item: Decision, contact: Contact) -> bool:

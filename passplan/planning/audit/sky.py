@@ -43,14 +43,22 @@ def sight(source: OrbitSource, site: Site, start_utc: np.datetime64, time_s: Flo
     # The short nutation series agrees to a milliarcsecond and takes a fraction of the time.
     times._nutation_angles_radians = iau2000b_radians(times)
     place = wgs84.latlon(site.latitude_deg, site.longitude_deg, site.height_m)
-    body: VectorFunction
-    if isinstance(source, ElementSet):
-        body = EarthSatellite.from_satrec(source.satrec, _timescale())
-    else:
-        origin_s = float((start_utc - np.datetime64("2000-01-01", "ms")) / np.timedelta64(1, "ms")) / 1e3
-        body = _Tabulated(source, origin_s + np.asarray(time_s, np.float64))
-    altitude, azimuth, distance = (body - place).at(times).altaz()
+    altitude, azimuth, distance = (_body(source, start_utc, time_s) - place).at(times).altaz()
     return Sight(np.asarray(time_s, np.float64), azimuth.degrees, altitude.degrees, distance.km)
+
+
+def fixed_km(source: OrbitSource, start_utc: np.datetime64, time_s: Floats) -> Floats:
+    """Earth-fixed position (3, n) in km at ``time_s`` seconds after ``start_utc``; NaN where there is no answer."""
+    times = instants_of(start_utc, time_s)
+    times._nutation_angles_radians = iau2000b_radians(times)
+    return np.asarray(_body(source, start_utc, time_s).at(times).frame_xyz(itrs).km)
+
+
+def _body(source: OrbitSource, start_utc: np.datetime64, time_s: Floats) -> VectorFunction:
+    if isinstance(source, ElementSet):
+        return EarthSatellite.from_satrec(source.satrec, _timescale())
+    origin_s = float((start_utc - np.datetime64("2000-01-01", "ms")) / np.timedelta64(1, "ms")) / 1e3
+    return _Tabulated(source, origin_s + np.asarray(time_s, np.float64))
 
 
 def instants_of(start_utc: np.datetime64, time_s: Floats) -> Time:

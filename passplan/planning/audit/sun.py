@@ -34,8 +34,31 @@ def separations_deg(site: Site, start_utc: np.datetime64, seen: Sight) -> tuple[
     )
 
 
+def toward_sun(start_utc: np.datetime64, time_s: Floats) -> Floats:
+    """Earth-fixed unit vectors from the Earth to the Sun, shape (3, n)."""
+    right_ascension, declination, sidereal = _sun_angles(start_utc, time_s)
+    east = right_ascension - sidereal
+    return np.array([
+        np.cos(declination) * np.cos(east), np.cos(declination) * np.sin(east), np.sin(declination)])
+
+
 def _sun(site: Site, start_utc: np.datetime64, time_s: Floats) -> Floats:
-    """Unit vectors (east, north, up), shape (3, n). Source: Meeus, Astronomical Algorithms, ch. 25, low accuracy."""
+    """Unit vectors (east, north, up), shape (3, n)."""
+    right_ascension, declination, sidereal = _sun_angles(start_utc, time_s)
+    hour = sidereal + np.radians(site.longitude_deg) - right_ascension
+    latitude = np.radians(site.latitude_deg)
+    return np.array([
+        -np.cos(declination) * np.sin(hour),
+        np.sin(declination) * np.cos(latitude) - np.cos(declination) * np.cos(hour) * np.sin(latitude),
+        np.sin(declination) * np.sin(latitude) + np.cos(declination) * np.cos(hour) * np.cos(latitude),
+    ])
+
+
+def _sun_angles(start_utc: np.datetime64, time_s: Floats) -> tuple[Floats, Floats, Floats]:
+    """Right ascension, declination and Greenwich sidereal time [rad], each (n,).
+
+    Source: Meeus, Astronomical Algorithms, ch. 25, low accuracy.
+    """
     times = instants_of(start_utc, time_s)
     century = (times.tt - 2_451_545.0) / 36_525.0
     anomaly = np.radians(357.52911 + 35_999.05029 * century - 0.0001537 * century**2)
@@ -48,13 +71,7 @@ def _sun(site: Site, start_utc: np.datetime64, time_s: Floats) -> Floats:
     tilt = np.radians(23.439291 - 0.0130042 * century + 0.00256 * np.cos(node))
     right_ascension = np.arctan2(np.cos(tilt) * np.sin(longitude), np.cos(longitude))
     declination = np.arcsin(np.sin(tilt) * np.sin(longitude))
-    hour = np.radians(times.gast * 15.0 + site.longitude_deg) - right_ascension
-    latitude = np.radians(site.latitude_deg)
-    return np.array([
-        -np.cos(declination) * np.sin(hour),
-        np.sin(declination) * np.cos(latitude) - np.cos(declination) * np.cos(hour) * np.sin(latitude),
-        np.sin(declination) * np.sin(latitude) + np.cos(declination) * np.cos(hour) * np.cos(latitude),
-    ])
+    return right_ascension, declination, np.asarray(np.radians(times.gast * 15.0))
 
 
 def _pointing(azimuth_deg: Floats, elevation_deg: Floats) -> Floats:

@@ -2,8 +2,8 @@
 
 To add a rule, write a module with a function that takes a :class:`~passplan.planning.problem.Problem` and
 returns :class:`~passplan.planning.rules.terms.Terms`, and list it in ``RULES``. A rule that has something to say
-earlier lists more functions: in ``BLOCKS`` and ``WISHES`` before there are options, in ``NEEDS`` to read what it
-wants of the run into records of its own (see ``hooks.py``). Nothing else changes.
+earlier lists more functions: in ``BLOCKS``, ``WISHES``, ``CAPS`` and ``SILENCES`` before there are options, in
+``NEEDS`` to read what it wants of the run into records of its own (see ``hooks.py``). Nothing else changes.
 """
 
 from __future__ import annotations
@@ -11,18 +11,25 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 
 from passplan.inputs.run import Run
-from passplan.planning.hooks import Block, Draft, Wish
+from passplan.planning.battery import power_needs
+from passplan.planning.hooks import Block, Cap, Draft, Silence, Wish
+from passplan.planning.on_air import on_air_needs
 from passplan.planning.problem import Problem
+from passplan.planning.rules.aboard import loaded_needs, loaded_wishes, silences
 from passplan.planning.rules.antenna_time import antenna_time
 from passplan.planning.rules.beams import beams
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
+from passplan.planning.rules.contact_counts import contact_counts, count_needs
 from passplan.planning.rules.contact_gaps import contact_gaps, gap_needs
 from passplan.planning.rules.decisions import decision_needs, decision_wishes, decisions, forbid_blocks
+from passplan.planning.rules.energy import energy
 from passplan.planning.rules.guarantees import guarantee_needs, guarantees
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.requests import request_wishes, requests
+from passplan.planning.rules.sending_time import sending_caps, sending_needs, sending_time
 from passplan.planning.rules.slew_time import slew_time
+from passplan.planning.rules.slots import slot_blocks
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import Rule, Terms
 
@@ -32,6 +39,9 @@ RULES: tuple[Rule, ...] = (
     slew_time,
     spacecraft_time,
     contact_gaps,
+    contact_counts,
+    sending_time,
+    energy,
     requests,
     command_interval,
     interference,
@@ -41,14 +51,23 @@ RULES: tuple[Rule, ...] = (
 BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (
     closure_blocks,
     forbid_blocks,
+    slot_blocks,
 )
 WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (
     request_wishes,
     decision_wishes,
+    loaded_wishes,
 )
+SILENCES: tuple[Callable[[Run], Iterable[Silence]], ...] = (silences,)
+CAPS: tuple[Callable[[Run], Iterable[Cap]], ...] = (sending_caps,)
 NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
     gap_needs,
+    count_needs,
+    on_air_needs,
+    sending_needs,
+    power_needs,
     decision_needs,
+    loaded_needs,
     guarantee_needs,
 )
 

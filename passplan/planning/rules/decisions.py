@@ -16,14 +16,12 @@ import numpy as np
 from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
-from passplan.planning.hooks import Block, Draft, Wish
+from passplan.planning.hooks import DRIFT_S, Block, Draft, Wish
 from passplan.planning.horizon import seconds_of
 from passplan.planning.problem import Flags, Integers, Problem
 from passplan.planning.rules.terms import Removal, Terms, Wanted, WantedKind
 
-POINTS: dict[WantedKind, float] = {"pin": 20.0, "frozen": 100.0, "emergency": 1000.0}
-# How far the edges of a window may have moved since somebody pinned or published a contact.
-_DRIFT_S = 60
+POINTS: dict[WantedKind, float] = {"pin": 20.0, "frozen": 100.0, "loaded": 100.0, "emergency": 1000.0}
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,7 +55,7 @@ def forbid_blocks(run: Run) -> Iterator[Block]:
     """One block per forbid of an antenna or a spacecraft; setup of other contacts may reach into it."""
     for item in run.decisions:
         if item.kind == "forbid" and item.window is None:
-            low, high = _span(run, item)
+            low, high = decided_span(run, item)
             yield Block(item.antenna, item.spacecraft, low, high, "forbidden", _forbidden(item), setup=False)
 
 
@@ -68,9 +66,9 @@ def decision_wishes(run: Run) -> Iterator[Wish]:
             continue
         craft = item.spacecraft or next((n for n in run.orbits if _owns(n, item.window or "")), None)
         if craft is not None:
-            yield Wish(craft, item.antenna, *_span(run, item))
+            yield Wish(craft, item.antenna, *decided_span(run, item))
     for contact in frozen_contacts(run):
-        yield Wish(contact.spacecraft, contact.antenna, *_span(run, contact))
+        yield Wish(contact.spacecraft, contact.antenna, *decided_span(run, contact))
 
 
 def frozen_contacts(run: Run) -> list[Published]:
@@ -88,12 +86,12 @@ def decision_needs(draft: Draft) -> Iterator[DecidedContact | ForbiddenWindow]:
                 mine = problem.options.window == problem.windows.names.index(item.window)
                 yield ForbiddenWindow(np.flatnonzero(mine), _forbidden(item))
         else:
-            yield _decided(draft, item.kind, item)
+            yield decided_contact(draft, item.kind, item)
     for contact in frozen_contacts(run):
-        yield _decided(draft, "frozen", contact)
+        yield decided_contact(draft, "frozen", contact)
 
 
-def _decided(draft: Draft, kind: WantedKind, item: Decision | Published) -> DecidedContact:
+def decided_contact(draft: Draft, kind: WantedKind, item: Decision | Published) -> DecidedContact:
     problem, options = draft.problem, draft.problem.options
     window = item.window if isinstance(item, Decision) else None
     if window is not None:
@@ -108,7 +106,7 @@ def _decided(draft: Draft, kind: WantedKind, item: Decision | Published) -> Deci
     served = options.spacecraft == craft
     if item.antenna is not None:
         served &= options.antenna == problem.antennas.names.index(item.antenna)
-    low, high = _span(draft.run, item)
+    low, high = decided_span(draft.run, item)
     if isinstance(item, Decision) and kind == "emergency":
         served &= (options.start_s >= low) & (options.end_s <= high)
         served &= options.end_s - options.start_s >= math.ceil(item.min_duration_s)
@@ -125,7 +123,7 @@ def same_contact(problem: Problem, low: int, high: int, *, longer: bool = False)
     options, windows = problem.options, problem.windows
     start_s = np.maximum(windows.start_s[options.window], low)
     end_s = np.minimum(windows.end_s[options.window], high)
-    near = (start_s <= max(low, 0) + _DRIFT_S) & (end_s >= min(high, problem.horizon_s) - _DRIFT_S)
+    near = (start_s <= max(low, 0) + DRIFT_S) & (end_s >= min(high, problem.horizon_s) - DRIFT_S)
     if longer:
         return np.asarray(near & (options.start_s <= start_s) & (options.end_s >= end_s), dtype=bool)
     return np.asarray(near & (options.start_s == start_s) & (options.end_s == end_s), dtype=bool)
@@ -149,7 +147,7 @@ def _why(draft: Draft, item: Decision | Published, craft: int, low: int, high: i
     return "its window is no longer open for all of that time, or offers no such contact"
 
 
-def _span(run: Run, item: Decision | Published) -> tuple[int, int]:
+def decided_span(run: Run, item: Decision | Published) -> tuple[int, int]:
     """The span of a decision in whole seconds within it; all of the horizon where none is stated."""
     if item.start_utc is None or item.end_utc is None:
         return 0, run.horizon_s

@@ -27,7 +27,7 @@ import numpy as np
 
 from passplan.planning.problem import Floats, Integers, Problem
 
-WantedKind = Literal["request", "pin", "frozen", "emergency"]
+WantedKind = Literal["request", "pin", "frozen", "loaded", "emergency"]
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,0 +1,60 @@
+"""So many contacts of a spacecraft in one orbit, and on one day; a contact counts where it starts."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from passplan.planning.hooks import Draft
+from passplan.planning.orbits import day_edges_s, orbit_edges_s
+from passplan.planning.problem import Integers, Problem
+from passplan.planning.rules.rows import Row, rows_of
+from passplan.planning.rules.terms import Terms
+
+
+@dataclass(frozen=True)
+class CountNeed:
+    """At most ``most`` contacts of ``spacecraft`` start between two neighbours of ``edges_s``; ``per`` is a word."""
+
+    spacecraft: int
+    per: str
+    edges_s: tuple[float, ...]
+    most: int
+
+
+def count_needs(draft: Draft) -> Iterator[CountNeed]:
+    """One record per spacecraft and limit. Contacts before the horizon do not count."""
+    for k, name in enumerate(draft.problem.fleet.names):
+        craft = draft.run.spacecraft[name]
+        if craft.contacts_per_orbit is not None:
+            yield CountNeed(k, "orbit", orbit_edges_s(draft.run, name), craft.contacts_per_orbit)
+        if craft.contacts_per_day is not None:
+            yield CountNeed(k, "day", day_edges_s(draft.run), craft.contacts_per_day)
+
+
+def contact_counts(problem: Problem) -> Terms:
+    """One row per orbit or day in which more contacts could be had than are allowed."""
+    return Terms(rows=tuple(
+        rows_of(f"contacts_per_{need.per}", _rows(problem, need)) for need in problem.needs_of(CountNeed)))
+
+
+def _rows(problem: Problem, need: CountNeed) -> Iterator[Row]:
+    options = problem.options
+    own = np.flatnonzero(options.spacecraft == need.spacecraft)
+    part = np.searchsorted(np.array(need.edges_s), options.start_s[own], side="right")
+    name = f"{problem.fleet.names[need.spacecraft]}'s allowance of contacts per {need.per}, {need.most},"
+    for k in np.unique(part).tolist():
+        mine = own[part == k]
+        if _most_apart(options.start_s[mine], options.end_s[mine]) > need.most:
+            yield name, mine, np.ones(len(mine)), need.most
+
+
+def _most_apart(start_s: Integers, end_s: Integers) -> int:
+    """How many of the intervals can be used at most without overlap: always the one that ends first."""
+    count, reached = 0, -np.inf
+    for k in np.argsort(end_s, kind="stable").tolist():
+        if start_s[k] >= reached:
+            count, reached = count + 1, float(end_s[k])
+    return count
