@@ -16,7 +16,13 @@ from passplan.planning.problem import Limits, Problem, RequestNeed
 from passplan.planning.rules import all_terms
 from passplan.planning.rules.terms import Wanted
 
-MANY = 2_000
+MANY = 60
+
+
+@pytest.fixture(autouse=True)
+def _small_parts(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Parts of any size are planned apart."""
+    monkeypatch.setattr("passplan.planning.parts._LEAST_OPTIONS", 1)
 
 
 def two_networks(crossing: bool) -> Problem:
@@ -50,7 +56,6 @@ def test_a_request_that_both_could_meet_ties_them_together() -> None:
 def test_the_parts_of_a_plan_add_up() -> None:
     problem = two_networks(crossing=False)
     result = find_plan(problem, Limits(gap=0.0))
-    assert result.path == "exact"
     assert len(result.proofs) == 2
     apart = [find_plan(proof.part.problem, Limits(gap=0.0)) for proof in result.proofs]
     assert result.value == pytest.approx(sum(part.value for part in apart), rel=1e-9)
@@ -58,8 +63,7 @@ def test_the_parts_of_a_plan_add_up() -> None:
 
 
 @pytest.mark.parametrize("seed", range(20))
-def test_small_parts_planned_apart_are_as_good_as_the_whole(seed: int, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("passplan.planning.parts._LEAST_OPTIONS", 1)
+def test_small_parts_planned_apart_are_as_good_as_the_whole(seed: int) -> None:
     problem = random_problem(seed)
     points, value = Judge(problem).best()
     result = find_plan(problem, Limits(gap=0.0))
