@@ -15,13 +15,15 @@ RequestedService = Literal["downlink", "command", "both", "ranging"]
 class Closure(Record):
     """A half-open interval in which an antenna cannot be used.
 
-    An ``outage``, another party's ``booking``, or a ``wind_stow``: stowed because of the wind.
+    An ``outage``, another party's ``booking``, or a ``wind_stow``: stowed because of the wind. Whether a ``tentative``
+    one is kept free is the policy's to say.
     """
 
     antenna: str
     start_utc: Instant
     end_utc: Instant
     kind: Literal["outage", "booking", "wind_stow"] = "outage"
+    tentative: bool = False
     note: str = ""
 
     @model_validator(mode="after")

@@ -45,8 +45,8 @@ def calendar_closures(
 
     Cancelled and transparent events are left out. The antennas are those of LOCATION or RESOURCES within
     ``outer`` (what the source is about), else ``outer``. A category ``booking`` makes a booking, anything
-    else an outage. Times need a zone (Z or a known TZID); a day without a time is a day of the calendar's
-    X-WR-TIMEZONE, else of UTC, which is warned of.
+    else an outage; STATUS:TENTATIVE a tentative one. Times need a zone (Z or a known TZID); a day without a time
+    is a day of the calendar's X-WR-TIMEZONE, else of UTC, which is warned of.
     """
     calendars = _calendars(content, file, findings)
     found: list[PlacedClosure] = []
@@ -145,6 +145,7 @@ def _closures(
         "start_utc": _instant(start, zone),
         "end_utc": _instant(end, zone),
         "kind": _kind(categories),
+        "tentative": first_value(occurrence, "STATUS").upper() == "TENTATIVE",
         "note": shortened(first_value(occurrence, "SUMMARY"), 200),
     }
     closure: Closure | None = checked(Closure, record, file, where, findings)

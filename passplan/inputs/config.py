@@ -41,6 +41,8 @@ class RunConfig(Record):
     ``rain_mm_per_h`` is the day's rain rate by site, where it is known. ``published`` is the directory of the
     published plan, ``last_commands`` a CSV file with the last command contact of each spacecraft. ``slots`` are CSV
     files with time in which spacecraft cannot have contacts, ``loaded`` the contacts that are already uplinked.
+    ``bookings`` are CSV files of time on rented antennas; ``now`` is the moment at which it is asked for, the start
+    where it is absent.
     """
 
     name: Label = "run"
@@ -57,6 +59,8 @@ class RunConfig(Record):
     decisions: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
     published: str | None = None
     last_commands: str | None = None
+    bookings: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
+    now: Instant | None = None
     slots: Annotated[tuple[str, ...], BeforeValidator(_as_list)] = ()
     loaded: str | None = None
     policy: str | dict[str, Any] = Field(default_factory=dict)

@@ -59,6 +59,10 @@ def check_ground(
             findings.problem(file, place, None, "has neither receivers nor transmitters; name at least one")
         for key, points in (("mask", item.mask), ("transmit_mask", item.transmit_mask)):
             _warn_of_gap(points, f"{file}: {place}: {key}", findings)
+    for site in sites.values():
+        here = [item.name for item in antennas.values() if item.site == site.name]
+        for pool in site.pool:
+            _known(pool.antennas, here, file, f"site {site.name}: pool {pool.name}: antennas", findings)
 
 
 def _warn_of_gap(points: MaskPoints, place: str, findings: Findings) -> None:

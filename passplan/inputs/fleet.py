@@ -8,6 +8,7 @@ from pydantic import Field, model_validator
 
 from passplan.inputs.craft_limits import CraftLimits
 from passplan.inputs.craft_power import CraftPower
+from passplan.inputs.generation import Generation
 from passplan.inputs.records import Curve, Instant, Instants, Name, Names, Polarisation, Record, check_angles
 from passplan.inputs.transmit import check_transmit
 
@@ -90,12 +91,13 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(CraftLimits, CraftPower):
+class Spacecraft(CraftLimits, CraftPower, Generation):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
     that the spacecraft names itself: ``elements_file`` (one element set) or ``ephemeris_file`` (an OEM,
-    which takes precedence). Storage starts the horizon with ``start_fill_mb``. Element sets from before
+    which takes precedence). Weight, generation and fill are those of all its data, unless classes of data name it
+    (see :mod:`passplan.inputs.data`). Storage starts the horizon with ``start_fill_mb``. Element sets from before
     one of ``manoeuvres_utc`` are not used after it, nor those from after it before.
     """
 
@@ -106,7 +108,6 @@ class Spacecraft(CraftLimits, CraftPower):
     mission: str = ""
     radios: Names = ()
     weight: Annotated[float, Field(ge=0.0, le=1e6)] = 1.0
-    generation_mb_per_s: Annotated[float, Field(ge=0.0, le=10_000.0)] = 0.0
     storage_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None

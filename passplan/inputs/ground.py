@@ -10,6 +10,7 @@ from pydantic import AfterValidator, Field, model_validator
 
 from passplan.inputs.records import Curve, MaskPoints, Name, Names, Polarisations, Record, Sectors, check_angles
 from passplan.inputs.setup_times import SetupTime
+from passplan.inputs.site_rules import Backhaul, Pool, Shift
 from passplan.inputs.transmit import check_transmit
 
 _Frequency = Annotated[float, Field(ge=100.0, le=50_000.0)]
@@ -26,11 +27,15 @@ def _known_zone(name: str) -> str:
 class Site(Record):
     """A place with antennas. Height is above the WGS 84 ellipsoid; longitude is east-positive.
 
-    ``time_zone`` (IANA name) serves extra, labelled columns of local time only; everything else is UTC.
+    ``time_zone`` (IANA name) serves extra, labelled columns of local time, and staffing hours that are stated in it;
+    everything else is UTC.
 
     The three weather values feed the gas attenuation; where they are absent the link floor takes the
     mean annual reference atmosphere. ``rain_rate_mm_per_h`` is a measured or forecast rate that replaces
     the statistics of rain; the run config may state it for the day.
+
+    The antennas may share equipment (``pool``) and a line (``backhaul``). With ``staffed`` there are contacts only
+    in those hours, and ``contacts_at_once`` is how many go on at a time, preparing and releasing included.
     """
 
     name: Name
@@ -42,6 +47,20 @@ class Site(Record):
     water_vapour_g_per_m3: Annotated[float, Field(ge=0.0, le=50.0)] | None = None
     rain_rate_mm_per_h: Annotated[float, Field(ge=0.0, le=300.0)] | None = None
     time_zone: Annotated[str, AfterValidator(_known_zone)] | None = None
+    pool: tuple[Pool, ...] = ()
+    staffed: tuple[Shift, ...] = ()
+    contacts_at_once: Annotated[int, Field(ge=0, le=1_000)] | None = None
+    backhaul: Backhaul | None = None
+
+    @model_validator(mode="after")
+    def _consistent(self) -> Site:
+        if self.time_zone is None and any(shift.zone == "site" for shift in self.staffed):
+            raise ValueError("staffed hours are in the site's time, but it has none; give time_zone, or zone = \"utc\"")
+        names = [pool.name for pool in self.pool]
+        repeated = [name for name in names if names.count(name) > 1]
+        if repeated:
+            raise ValueError(f"two pools are called {repeated[0]!r}; rename one")
+        return self
 
 
 class Receiver(Record):
@@ -117,7 +136,7 @@ class Transmitter(Record):
 
 
 class Antenna(Record):
-    """One antenna: where it stands, what it can hear and say, its mask, and the time around a contact.
+    """One antenna: where it stands, what it can hear and say, its mask, the time around a contact, what it costs.
 
     ``mask`` is a table of (azimuth, elevation) points in degrees, joined by straight lines and wrapped
     at north; where it is absent the mask is ``min_elevation_deg`` all round. With both, the higher of
@@ -131,6 +150,10 @@ class Antenna(Record):
     ``wet_radome_loss_db`` is the allowance for a wet radome wherever rain is counted. With ``ranging`` it measures
     range in contacts that both send and receive. ``beams`` is how many contacts it serves at the same time, each with
     its own time to prepare and to release.
+
+    A contact costs ``price_per_contact`` and ``price_per_minute``, each started ``billed_s`` counted whole, and no
+    less than ``minimum_charge``. Time on a ``rented`` antenna has to be asked for, ``ask_before_h`` ahead where no
+    booking says otherwise.
     """
 
     name: Name
@@ -152,6 +175,11 @@ class Antenna(Record):
     release_s: Annotated[float, Field(ge=0.0, le=3_600.0)] = 30.0
     setup: tuple[SetupTime, ...] = ()
     price_per_minute: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    price_per_contact: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    minimum_charge: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    billed_s: Annotated[int, Field(ge=1, le=86_400)] | None = None
+    rented: bool = False
+    ask_before_h: Annotated[float, Field(ge=0.0, le=8_760.0)] | None = None
     ranging: bool = False
 
     @model_validator(mode="after")
@@ -163,6 +191,8 @@ class Antenna(Record):
                 raise ValueError("transmit_keep_out azimuths run from 0 to 360 deg; correct the sector")
             if not -5.0 <= low < high <= 90.0:
                 raise ValueError("transmit_keep_out elevations rise from -5 to 90 deg; correct the sector")
+        if self.ask_before_h is not None and not self.rented:
+            raise ValueError("ask_before_h is about rented antennas; set rented = true or remove it")
         sends = ("transmit_min_elevation_deg", "transmit_mask", "transmit_keep_out", "transmit_arc_keep_out_deg")
         stated = [name for name in sends if getattr(self, name) not in (None, ())]
         if stated and not self.transmitters:

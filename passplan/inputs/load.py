@@ -13,6 +13,7 @@ import numpy as np
 from pydantic import TypeAdapter
 
 from passplan.inputs.aboard import read_slots
+from passplan.inputs.bookings import read_bookings
 from passplan.inputs.calendar_records import Closure, Request
 from passplan.inputs.closures import ClosureSource, read_closures
 from passplan.inputs.config import RunConfig, read_config
@@ -24,10 +25,12 @@ from passplan.inputs.crosscheck import (
     check_mounts,
     check_requests,
 )
+from passplan.inputs.data import DataClass, classes_by_craft, read_all_series
 from passplan.inputs.decisions import read_decisions, read_published, with_last_commands
 from passplan.inputs.elements.resolve import ElementsError, resolve_orbits
 from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Radio, Spacecraft
+from passplan.inputs.generation import Series
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.modcods import ModcodTable, builtin_names, builtin_table, read_modcod_table
 from passplan.inputs.mounts import Mount
@@ -46,6 +49,8 @@ class _Fleet:
     spacecraft: dict[str, Spacecraft]
     radios: dict[str, DownlinkRadio | CommandRadio]
     tables: dict[str, ModcodTable]
+    data: dict[str, tuple[DataClass, ...]]
+    series: dict[str, Series]
 
 
 @dataclass(frozen=True)
@@ -105,6 +110,7 @@ def load_run(
     if ground.antennas:
         sources = [ClosureSource(beside(path, c.file), c.antenna, c.site) for c in settings.closures]
         closures = read_closures(sources, ground.antennas, start_utc, end_utc, reader, findings)
+    bookings = read_bookings([beside(path, name) for name in settings.bookings], ground.antennas, reader, findings)
     try:
         orbits = resolve_orbits(
             fleet.spacecraft, [beside(path, item) for item in settings.elements], beside(path, settings.fleet).parent,
@@ -117,7 +123,9 @@ def load_run(
     return Run(
         name=settings.name, start_utc=start_utc, end_utc=end_utc, spacecraft=fleet.spacecraft, radios=fleet.radios,
         sites=sites, antennas=ground.antennas, receivers=ground.receivers, transmitters=ground.transmitters,
+        bookings=bookings, asking_utc=_asking(settings, start),
         mounts=ground.mounts, modcod_tables=fleet.tables, closures=closures, policy=rules,
+        data=fleet.data, series=fleet.series,
         # A request file holds many days; one whose span misses this horizon is another day's business.
         requests=tuple(
             r
@@ -171,6 +179,14 @@ def _horizon(
     return datetime64(begin), datetime64(end)
 
 
+def _asking(settings: RunConfig, start: datetime | None) -> np.datetime64 | None:
+    """The config's ``now``; where the horizon is moved it keeps its distance from the start."""
+    if settings.now is None:
+        return None
+    moved = start - settings.start if start is not None and settings.start is not None else timedelta(0)
+    return datetime64(settings.now + moved)
+
+
 def _read_policy(
     settings: RunConfig, changes: Mapping[str, Any], path: Path, reader: Reader, findings: Findings
 ) -> Policy:
@@ -187,8 +203,8 @@ def _read_policy(
 def _read_fleet(path: Path, reader: Reader, findings: Findings) -> _Fleet:
     document = read_toml(path, reader, findings, "fleet")
     if document is None:
-        return _Fleet({}, {}, {})
-    reject_unknown(document, ("operator", "radio", "spacecraft"), path, findings)
+        return _Fleet({}, {}, {}, {}, {})
+    reject_unknown(document, ("operator", "radio", "spacecraft", "data"), path, findings)
     radios = _records(document, "radio", _RADIO, path, reader, findings)
     spacecraft = _records(document, "spacecraft", Spacecraft, path, reader, findings)
     if not document.get("spacecraft"):
@@ -202,7 +218,12 @@ def _read_fleet(path: Path, reader: Reader, findings: Findings) -> _Fleet:
             if table is not None:
                 tables[named] = table
     check_fleet(spacecraft, radios, tables, path, findings)
-    return _Fleet(spacecraft, radios, tables)
+    placed = placed_records(document, "data", path, reader, findings)
+    items = [(place, checked(DataClass, place[2], place[0], place[1], findings)) for place in placed]
+    data = classes_by_craft([(place, item) for place, item in items if item is not None], spacecraft, findings)
+    stated = [*spacecraft.values(), *(item for own in data.values() for item in own)]
+    series = read_all_series(stated, path, reader, findings)
+    return _Fleet(spacecraft, radios, tables, data, series)
 
 
 def _read_ground(path: Path, reader: Reader, findings: Findings) -> _Ground:

@@ -66,6 +66,8 @@ class Policy(Record):
     spill_cost_per_mb: Annotated[float, Field(ge=0.0, le=1e6)] = 0.1
     left_worth_share: Annotated[float, Field(ge=0.0, le=1.0)] = 0.0
     worth_per_money: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
+    budget_per_day: Annotated[float, Field(ge=0.0, le=1e9)] | None = None
+    tentative_closures: Literal["keep_free", "plan_through"] = "keep_free"
     guarantee: tuple[Guarantee, ...] = ()
     tiers: Literal["one_value", "in_order"] = "one_value"
     change_cost: Annotated[float, Field(ge=0.0, le=1e12)] = 0.0

@@ -9,11 +9,14 @@ import numpy as np
 import pandas as pd
 
 from passplan.inputs.aboard import Slot
+from passplan.inputs.bookings import Booking
 from passplan.inputs.calendar_records import Closure, Request
+from passplan.inputs.data import DataClass, only_class
 from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.elements.model import ElementSet
 from passplan.inputs.ephemeris import Ephemeris
 from passplan.inputs.fleet import CommandRadio, DownlinkRadio, Spacecraft
+from passplan.inputs.generation import Series
 from passplan.inputs.ground import Antenna, Receiver, Site, Transmitter
 from passplan.inputs.modcods import ModcodTable
 from passplan.inputs.mounts import Mount
@@ -30,8 +33,9 @@ class Run:
 
     ``start_utc`` and ``end_utc`` bound the half-open horizon (``datetime64[ms]``, whole seconds).
     ``orbits`` maps each spacecraft that takes part to the source its orbit comes from; ``left_out``
-    maps the others to the reason. ``elements`` is a table of every element set that was read for a
-    spacecraft of the fleet, with the use made of it. ``modcod_tables`` is keyed by table name.
+    maps the others to the reason. ``data`` holds the classes of spacecraft that state any (see :meth:`data_of`),
+    ``series`` the generation files by their names as written. ``elements`` is a table of every element set that was
+    read for a spacecraft of the fleet, with the use made of it. ``modcod_tables`` is keyed by table name.
     """
 
     name: str
@@ -52,6 +56,10 @@ class Run:
     elements: pd.DataFrame
     pfd_limits: tuple[PfdLimit, ...] = field(default_factory=builtin_pfd_limits)
     mounts: Mapping[str, Mount] = field(default_factory=dict)
+    bookings: tuple[Booking, ...] = ()
+    asking_utc: np.datetime64 | None = None
+    data: Mapping[str, tuple[DataClass, ...]] = field(default_factory=dict)
+    series: Mapping[str, Series] = field(default_factory=dict)
     decisions: tuple[Decision, ...] = ()
     published: tuple[Published, ...] = ()
     slots: tuple[Slot, ...] = ()
@@ -70,6 +78,15 @@ class Run:
         """The mechanics of an antenna, None where they do not limit it."""
         name = self.antennas[antenna].mount
         return None if name is None else self.mounts[name]
+
+    def data_of(self, spacecraft: str) -> tuple[DataClass, ...]:
+        """The classes of data of a spacecraft, what is worth most first; one made of its own keys if it states none."""
+        return self.data.get(spacecraft) or (only_class(self.spacecraft[spacecraft]),)
+
+    @property
+    def now_utc(self) -> np.datetime64:
+        """The moment at which time on rented antennas is asked for."""
+        return self.start_utc if self.asking_utc is None else self.asking_utc
 
     @property
     def horizon_s(self) -> int:

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from passplan.planning.record import PlanRecord
+from passplan.planning.record import PlanRecord, sending
 
 Floats = NDArray[np.float64]
 
@@ -35,16 +36,23 @@ def backlogs(record: PlanRecord) -> dict[str, Backlog]:
     horizon_s = (end - start).total_seconds()
     names = record.contacts.set_index("contact_id")["spacecraft"]
     sent: dict[str, list[tuple[float, float, float]]] = defaultdict(list)
-    pieces = record.segments.sort_values("start_utc", kind="stable")
+    pieces = sending(record.segments).sort_values("start_utc", kind="stable")
     edges = [(pieces[f"{edge}_utc"] - start).dt.total_seconds() for edge in ("start", "end")]
     for name, *piece in zip(pieces["contact_id"].map(names), *edges, pieces["rate_mbps"] / 8.0, strict=True):
         sent[name].append((piece[0], piece[1], piece[2]))
     return {
-        name: follow(
+        name: _stated(store) if "fill" in store else follow(
             store["start_mb"], store["generated_mb"] / horizon_s if horizon_s > 0 else 0.0, store["capacity_mb"],
             sent.get(name, ()), horizon_s)
         for name, store in record.summary["storage"].items()
     }
+
+
+def _stated(store: Mapping[str, Any]) -> Backlog:
+    """Where generation changes or there are several classes, the plan states the fill itself."""
+    time_s, fill_mb = np.array(store["fill"], dtype=float).T
+    losing = tuple((first, last) for first, last in store["losing_s"] if last - first > 0.5)
+    return Backlog(time_s, fill_mb, store["capacity_mb"], losing)
 
 
 def follow(
@@ -58,8 +66,8 @@ def follow(
     capacity, fill, clock = capacity_mb, start_mb, 0.0
     points, losing = [(0.0, fill)], []
     events = [event for start_s, end_s, rate in sent for event in ((start_s, 0.0), (end_s, rate))]
-    for until, sending in (*events, (horizon_s, 0.0)):
-        slope, length = generation_mb_per_s - sending, max(until - clock, 0.0)
+    for until, rate in (*events, (horizon_s, 0.0)):
+        slope, length = generation_mb_per_s - rate, max(until - clock, 0.0)
         edge = capacity if slope > 0.0 else 0.0
         turn = (edge - fill) / slope if slope else length
         if 0.0 <= turn < length:

@@ -14,7 +14,7 @@ from collections.abc import Iterable
 import numpy as np
 
 from passplan.planning.clock import Clock
-from passplan.planning.maps import StorageMaps, storage_maps
+from passplan.planning.maps import StorageMaps, storage_maps, worth_of
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import AtLeast, Recurrence, Terms, Wanted
@@ -59,7 +59,7 @@ class _Builder:
         self.occupancy = Occupancy(terms, len(problem.options))
         self.chosen: set[int] = set()
         self.of_craft: list[list[int]] = [[] for _ in range(len(problem.fleet))]
-        self.worth = [_value(problem, maps, i, []) for i in range(len(problem.fleet))]
+        self.worth = [worth_of(problem, maps, i, []) for i in range(len(problem.fleet))]
         self.starts = problem.options.start_s.tolist()
         self.crafts = problem.options.spacecraft.tolist()
 
@@ -134,11 +134,11 @@ class _Builder:
         self.chosen.add(option)
         craft = self.crafts[option]
         self.of_craft[craft] = self._with(option)
-        self.worth[craft] = _value(self.problem, self.maps, craft, self.of_craft[craft])
+        self.worth[craft] = worth_of(self.problem, self.maps, craft, self.of_craft[craft])
 
     def _gain(self, option: int) -> float:
         craft = self.crafts[option]
-        with_it: float = _value(self.problem, self.maps, craft, self._with(option))
+        with_it: float = worth_of(self.problem, self.maps, craft, self._with(option))
         return with_it - float(self.worth[craft])
 
     def _with(self, option: int) -> list[int]:
@@ -149,21 +149,4 @@ def gain_of(problem: Problem, maps: StorageMaps, others: list[int], option: int)
     """What an option adds beside ``others`` of its spacecraft (in time order, none overlapping it)."""
     craft, starts = int(problem.options.spacecraft[option]), problem.options.start_s
     joined = sorted([*others, option], key=lambda o: int(starts[o]))
-    return _value(problem, maps, craft, joined) - _value(problem, maps, craft, others)
-
-
-def _value(problem: Problem, maps: StorageMaps, craft: int, mine: list[int]) -> float:
-    """The part of the objective of one spacecraft with the contacts ``mine``, in time order."""
-    fleet, options, spill, price = problem.fleet, problem.options, problem.spill_cost_per_mb, problem.price
-    fill, generation = float(fleet.start_fill_mb[craft]), float(fleet.generation_mb_per_s[craft])
-    capacity = float(fleet.capacity_mb[craft])
-    clock, sent, lost, cost = 0, 0.0, 0.0, 0.0
-    for o in mine:
-        fill += generation * (int(options.start_s[o]) - clock)
-        lost += max(0.0, fill - capacity)
-        fill, sent_now, lost_now = maps.apply(o, min(fill, capacity))
-        sent, lost, cost, clock = sent + sent_now, lost + lost_now, cost + float(price[o]), int(options.end_s[o])
-    fill += generation * (problem.horizon_s - clock)
-    lost += max(0.0, fill - capacity)
-    worth = sent + problem.left_worth_share * min(fill, capacity)
-    return float(fleet.weight[craft]) * worth - spill * lost - cost
+    return worth_of(problem, maps, craft, joined) - worth_of(problem, maps, craft, others)

@@ -39,6 +39,11 @@ class Candidate:
             return "command"
         return "downlink" if self.command is None else "both"
 
+    @property
+    def carriers_mhz(self) -> tuple[float, ...]:
+        """The carriers of the contact, down and up [MHz]."""
+        return tuple(link.frequency_mhz for link in (self.downlink, self.command) if link is not None)
+
 
 @dataclass(frozen=True)
 class Block:

@@ -13,9 +13,10 @@ from passplan.inputs.run import Run
 from passplan.planning.problem import Floats
 
 
-def seconds_of(run: Run, instant: datetime) -> float:
-    """Seconds from the horizon's start of one zoned instant, to the millisecond."""
-    return float((datetime64(instant) - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
+def seconds_of(run: Run, instant: datetime | np.datetime64) -> float:
+    """Seconds from the horizon's start of one instant (zoned, or ``datetime64`` in UTC), to the millisecond."""
+    at = datetime64(instant) if isinstance(instant, datetime) else instant
+    return float((at - run.start_utc) / np.timedelta64(1, "ms")) / 1000.0
 
 
 def column_seconds(run: Run, instants: pd.Series) -> Floats:

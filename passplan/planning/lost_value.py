@@ -31,7 +31,7 @@ from passplan.link.choice import WindowLink
 from passplan.planning.backlog import Backlog, backlogs
 from passplan.planning.horizon import column_seconds
 from passplan.planning.problem import Floats, Integers
-from passplan.planning.record import PlanRecord
+from passplan.planning.record import PlanRecord, sending
 
 IN_CONTACT, NO_WINDOW = "in_contact", "no_window"
 _CUT = re.compile(r"(start|end): (\w+)")
@@ -61,26 +61,35 @@ class Missed:
 def lost_value(run: Run, record: PlanRecord, links: Sequence[WindowLink]) -> dict[str, dict[str, dict[str, float]]]:
     """The entry ``lost_value`` of ``plan.json``: by spacecraft and cause ``lost_mb, lost_value, left_mb, left_value``.
 
-    ``links`` are those of the windows, in order. Values are MB times the spacecraft's weight, as in the objective, but
+    ``links`` are those of the windows, in order. Values are MB times weight (the mean of a spacecraft's classes), but
     without the cost of spilling. Over the causes the figures add up to the spacecraft's ``lost_mb`` and ``left_mb``.
     """
     chances = _chances(run, record, links)
     names = record.contacts.set_index("contact_id")["spacecraft"]
-    owners = record.segments["contact_id"].map(names).to_numpy()
-    sent = np.column_stack([column_seconds(run, record.segments["start_utc"]),
-                            column_seconds(run, record.segments["end_utc"]),
-                            record.segments["rate_mbps"].to_numpy(float)])
+    pieces = sending(record.segments)
+    owners = pieces["contact_id"].map(names).to_numpy()
+    sent = np.column_stack([column_seconds(run, pieces["start_utc"]), column_seconds(run, pieces["end_utc"]),
+                            pieces["rate_mbps"].to_numpy(float)])
     found = {}
     for name, store in backlogs(record).items():
         figures = record.summary["storage"][name]
-        weight = float(record.summary["spacecraft"][name]["weight"])
+        weights = [_weight_of(record, name, key) for key in ("lost_mb", "left_mb")]
         missed = missed_links(store, chances.get(name, ()), sent[owners == name])
         shares = share_out(store, missed, figures["generated_mb"], figures["lost_mb"], figures["left_mb"])
         found[name] = {
-            cause: {"lost_mb": lost, "lost_value": weight * lost, "left_mb": left, "left_value": weight * left}
+            cause: {"lost_mb": lost, "lost_value": weights[0] * lost, "left_mb": left, "left_value": weights[1] * left}
             for cause, (lost, left) in sorted(shares.items())
         }
     return found
+
+
+def _weight_of(record: PlanRecord, name: str, key: str) -> float:
+    """What a MB of the figure ``key`` of a spacecraft is worth, over its classes of data."""
+    classes = record.summary["storage"][name].get("classes", {}).values()
+    total = sum(one[key] for one in classes)
+    if total <= 0.0:
+        return float(record.summary["spacecraft"][name]["weight"])
+    return float(sum(one["weight"] * one[key] for one in classes) / total)
 
 
 def missed_links(store: Backlog, chances: Iterable[Chance], sent: Floats) -> Missed:

@@ -8,75 +8,160 @@ Over a contact that starts with f MB aboard, however its rate steps, the fill at
 and what was sent follows from the balance: ``sent = f + generated - end - lost``. Both forms are closed
 under one step of constant rate (fill -> min(max(fill + d, 0), capacity) with d = (g - r) dt, loss
 max(0, fill + d - capacity)), because a MB more aboard is either sent (the storage runs empty first) or lost
-(it runs full first) or kept, and once it is not kept all larger or smaller fills have merged. (Own derivation;
-tests compare it with the event by event accounts.)
+(it runs full first) or kept, and once it is not kept all larger or smaller fills have merged. A capacity that
+changes in a straight line over the step counts as it is at the end. (Own derivation; tests compare it with the
+event by event accounts.)
+
+There is one map for every option and layer (see ``streams.py``) of its spacecraft.
 """
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.problem import Floats, Integers, Problem, offsets_of, ragged_ranges
+from passplan.planning.streams import Layer
 
 
 @dataclass(frozen=True, eq=False)
 class StorageMaps:
-    """The five numbers of every option, shape (m,) each, in MB, with ``generated_mb`` over the contact."""
+    """The five numbers of every map [MB], with what is generated up to the contact's start and end.
 
+    Rows ``first_row[o] : first_row[o + 1]`` (m + 1) belong to option o, one for each layer; with a single layer for
+    every spacecraft a row is an option.
+    """
+
+    first_row: Integers
     shift_mb: Floats
     low_mb: Floats
     high_mb: Floats
     lost_at_empty_mb: Floats
     brim_mb: Floats
-    generated_mb: Floats
+    made_before_mb: Floats
+    made_after_mb: Floats
 
-    def apply(self, option: int, fill_mb: float) -> tuple[float, float, float]:
+    @property
+    def generated_mb(self) -> Floats:
+        """What is generated over the contact."""
+        return self.made_after_mb - self.made_before_mb
+
+    def apply(self, row: int, fill_mb: float) -> tuple[float, float, float]:
         """Fill at the end, MB sent and MB lost, for a contact that starts with ``fill_mb`` aboard."""
-        end = min(max(fill_mb + self.shift_mb[option], self.low_mb[option]), self.high_mb[option])
-        lost = self.lost_at_empty_mb[option] + max(0.0, fill_mb - self.brim_mb[option])
-        return float(end), float(fill_mb + self.generated_mb[option] - end - lost), float(lost)
+        end = min(max(fill_mb + self.shift_mb[row], self.low_mb[row]), self.high_mb[row])
+        lost = self.lost_at_empty_mb[row] + max(0.0, fill_mb - self.brim_mb[row])
+        generated = self.made_after_mb[row] - self.made_before_mb[row]
+        return float(end), float(fill_mb + generated - end - lost), float(lost)
+
+
+def worth_of(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int]) -> float:
+    """The part of the objective of one spacecraft with the contacts ``mine``, in time order, by its layers."""
+    options = problem.options
+    worth = -sum(float(problem.price[o]) for o in mine)
+    for k, layer in enumerate(problem.layers[craft]):
+        fill, made, clock = layer.start_mb, 0.0, 0.0
+        sent = lost = 0.0
+        for o in mine:
+            row = int(maps.first_row[o]) + k
+            fill, over = _idle(layer, fill, clock, float(options.start_s[o]), float(maps.made_before_mb[row]) - made)
+            fill, sent_now, lost_now = maps.apply(row, fill)
+            sent, lost = sent + sent_now, lost + over + lost_now
+            clock, made = float(options.end_s[o]), float(maps.made_after_mb[row])
+        left, over = _idle(layer, fill, clock, problem.horizon_s, float(layer.made_mb[-1]) - made)
+        worth += layer.weight * (sent + problem.left_worth_share * left) - layer.spill_cost * (lost + over)
+    return worth
+
+
+def _idle(layer: Layer, fill: float, from_s: float, until_s: float, made: float) -> tuple[float, float]:
+    """Fill and loss after a span without a contact in which ``made`` MB are generated."""
+    over = max(0.0, fill + made - layer.room_mb[-1])
+    return fill + made - over, over
 
 
 def storage_maps(problem: Problem) -> StorageMaps:
-    """Compose the steps of every option's pieces, all options at once."""
-    options, fleet = problem.options, problem.fleet
-    craft = options.spacecraft
-    generation, capacity = fleet.generation_mb_per_s[craft], fleet.capacity_mb[craft]
-    state = _Composition(capacity)
-    clock = options.start_s.astype(float)
-    counts = np.diff(options.piece_offset)
-    for k in range(int(counts.max()) if len(counts) else 0):
+    """Compose the steps of every option's pieces, all options and layers at once."""
+    options = problem.options
+    layers = [layer for mine in problem.layers for layer in mine]
+    first_layer = offsets_of(np.array([len(mine) for mine in problem.layers], dtype=np.int64))
+    per_option = np.diff(first_layer)[options.spacecraft]
+    first_row = offsets_of(per_option)
+    option = np.repeat(np.arange(len(options)), per_option)
+    layer = ragged_ranges(first_layer[options.spacecraft], per_option)
+    row, time_s, rate = _events(problem, layers, option, layer)
+    made, room = np.zeros(len(row)), np.zeros(len(row))
+    for k, where in _groups(layer[row], len(layers)):
+        made[where], room[where] = layers[k].made(time_s[where]), layers[k].room(time_s[where])
+    counts = np.bincount(row, minlength=len(option))
+    first = offsets_of(counts)
+    state = _Composition(room[first[:-1]])
+    for k in range(1, int(counts.max()) if len(counts) else 0):
         live = np.flatnonzero(counts > k)
-        piece = options.piece_offset[live] + k
-        start_s, end_s = options.piece_start_s[piece].astype(float), options.piece_end_s[piece].astype(float)
-        if np.any(start_s > clock[live]):
-            state.step(live, generation[live] * (start_s - clock[live]))
-        state.step(live, (generation[live] - options.piece_rate_mb_per_s[piece]) * (end_s - start_s))
-        clock[live] = end_s
-    rest = np.flatnonzero(options.end_s > clock)
-    state.step(rest, generation[rest] * (options.end_s[rest] - clock[rest]))
+        at = first[live] + k
+        change = made[at] - made[at - 1] - rate[at - 1] * (time_s[at] - time_s[at - 1])
+        state.step(live, change, room[at])
     return StorageMaps(
-        state.shift, state.low, state.high, state.lost, state.brim,
-        generation * (options.end_s - options.start_s))
+        first_row, state.shift, state.low, state.high, state.lost, state.brim, made[first[:-1]], made[first[1:] - 1])
+
+
+def _events(
+    problem: Problem, layers: Sequence[Layer], option: Integers, layer: Integers,
+) -> tuple[Integers, Floats, Floats]:
+    """Instants (row, time_s) of every row in order, and the rate [MB/s] from each instant on.
+
+    They are the start and end of the contact and of its pieces, and what lies within of the layer's own.
+    """
+    options = problem.options
+    rows = np.arange(len(option))
+    start_s, end_s = options.start_s[option].astype(float), options.end_s[option].astype(float)
+    pieces = np.diff(options.piece_offset)[option]
+    piece = ragged_ranges(options.piece_offset[option], pieces)
+    owner = np.repeat(rows, pieces)
+    own_row, own_time = [np.zeros(0, dtype=np.int64)], [np.zeros(0)]
+    for k, where in _groups(layer, len(layers)):
+        inner = layers[k].inner_times()
+        low = np.searchsorted(inner, start_s[where], side="right")
+        count = np.maximum(np.searchsorted(inner, end_s[where], side="left") - low, 0)
+        own_row.append(np.repeat(where, count))
+        own_time.append(inner[ragged_ranges(low, count)])
+    inner_row = np.concatenate(own_row)
+    keep = np.full(len(inner_row), np.nan)
+    # At one instant a piece ends before the next one starts, and the contact itself ends last.
+    blocks = (
+        (rows, start_s, np.zeros(len(rows)), 0), (owner, options.piece_end_s[piece], np.zeros(len(piece)), 1),
+        (inner_row, np.concatenate(own_time), keep, 2),
+        (owner, options.piece_start_s[piece], options.piece_rate_mb_per_s[piece], 3),
+        (rows, end_s, np.zeros(len(rows)), 4))
+    row, time_s, rate = (np.concatenate([block[k] for block in blocks]) for k in range(3))
+    kind = np.concatenate([np.full(len(block[0]), block[3]) for block in blocks])
+    order = np.lexsort((kind, time_s, row))
+    row, time_s, rate = row[order], time_s[order].astype(float), rate[order]
+    stated = np.maximum.accumulate(np.where(np.isnan(rate), 0, np.arange(len(rate))))
+    return row, time_s, rate[stated]
+
+
+def _groups(key: Integers, count: int) -> list[tuple[int, Integers]]:
+    """Where each key from 0 to ``count`` stands, those that stand somewhere."""
+    order = np.argsort(key, kind="stable")
+    edges = np.searchsorted(key[order], np.arange(count + 1))
+    return [(k, order[edges[k]:edges[k + 1]]) for k in range(count) if edges[k + 1] > edges[k]]
 
 
 class _Composition:
     """The running composition of steps; starts as the identity on [0, capacity]."""
 
     def __init__(self, capacity_mb: Floats) -> None:
-        self.capacity = capacity_mb
         self.shift, self.low, self.lost = (np.zeros(len(capacity_mb)) for _ in range(3))
         self.high, self.brim = capacity_mb.copy(), capacity_mb.copy()
 
-    def step(self, rows: Integers, change_mb: Floats) -> None:
+    def step(self, rows: Integers, change_mb: Floats, capacity_mb: Floats) -> None:
         """Add ``change_mb`` to the fill of ``rows`` and hold it between empty and full."""
-        capacity, low, high, shift = self.capacity[rows], self.low[rows], self.high[rows], self.shift[rows]
-        self.lost[rows] += np.maximum(0.0, low + change_mb - capacity)
-        fills = (high > low) & (high + change_mb > capacity)
-        brim = np.maximum(capacity - change_mb, low) - shift
+        low, high, shift = self.low[rows], self.high[rows], self.shift[rows]
+        self.lost[rows] += np.maximum(0.0, low + change_mb - capacity_mb)
+        fills = (high > low) & (high + change_mb > capacity_mb)
+        brim = np.maximum(capacity_mb - change_mb, low) - shift
         self.brim[rows] = np.where(fills, np.minimum(self.brim[rows], brim), self.brim[rows])
         self.shift[rows] = shift + change_mb
-        self.low[rows] = np.clip(low + change_mb, 0.0, capacity)
-        self.high[rows] = np.clip(high + change_mb, 0.0, capacity)
+        self.low[rows] = np.clip(low + change_mb, 0.0, capacity_mb)
+        self.high[rows] = np.clip(high + change_mb, 0.0, capacity_mb)

@@ -1,7 +1,8 @@
 """The plan as a mixed-integer program, built from arrays in a few large blocks.
 
-Columns: one 0/1 per option; per spacecraft, at every instant where the sending of one of its options
-starts or ends, the fill, and between two of them what is sent and what is lost; slack for requirements.
+Columns: one 0/1 per option; for each layer of a spacecraft's storage (see ``streams.py``), at every instant where
+the sending of one of its options starts or ends, or generation changes meanwhile, the fill, and between two of them
+what is sent and what is lost; slack for requirements.
 Rows: "at most one" per maximal clique of every lane; the linear limits of rules; the storage balance between
 instants; sending no more than the chosen options carry; requirements with slack. Fill, sent and lost are in units of
 the spacecraft's storage, to keep the numbers near one.
@@ -22,6 +23,7 @@ from ortools.math_opt import model_pb2
 from passplan.planning.cliques import clique_spans
 from passplan.planning.problem import Floats, Integers, Problem, ragged_ranges
 from passplan.planning.rules.terms import Lane, Recurrence, Rows, Terms
+from passplan.planning.streams import Layer
 
 _INFINITY = float("inf")
 
@@ -108,8 +110,9 @@ def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> Plan
         _add_lane(block, lane)
     for rows in terms.rows:
         _add_rows(block, rows)
-    for craft in range(len(problem.fleet) if storage else 0):
-        _add_storage(block, problem, craft)
+    for craft, layers in enumerate(problem.layers if storage else ()):
+        for layer in layers:
+            _add_storage(block, problem, craft, layer)
     for want in terms.wanted:
         slack = block.add_columns(upper=np.ones(1), points=np.full(1, want.points))
         row = block.add_rows(lower=np.ones(1))
@@ -145,39 +148,46 @@ def _add_rows(block: _Blocks, rows: Rows) -> None:
     block.add_entries(numbers[row], rows.options, rows.amounts / unit[row])
 
 
-def _add_storage(block: _Blocks, problem: Problem, craft: int) -> None:
-    """Fill, sent and lost along the instants of one spacecraft. A fill column holds the fill at an instant's end."""
-    options, fleet = problem.options, problem.fleet
+def _add_storage(block: _Blocks, problem: Problem, craft: int, layer: Layer) -> None:
+    """Fill, sent and lost of one layer along the instants of a spacecraft. A fill column is at an instant's end."""
+    options = problem.options
     mine = np.flatnonzero((options.spacecraft == craft) & (np.diff(options.piece_offset) > 0))
-    capacity, generation = float(fleet.capacity_mb[craft]), float(fleet.generation_mb_per_s[craft])
-    unit_mb = capacity or generation * problem.horizon_s or 1.0
-    first_piece, last_piece = options.piece_offset[mine], options.piece_offset[mine + 1] - 1
-    instants = np.unique(np.concatenate([
-        [0, problem.horizon_s], options.piece_start_s[first_piece], options.piece_end_s[last_piece]]))
-    made = generation * np.diff(instants) / unit_mb
+    instants = _instants(problem, mine, layer)
+    room = layer.room(instants[1:])
+    unit_mb = float(room.max(initial=0.0)) or float(layer.made_mb[-1]) or 1.0
+    made = np.diff(layer.made(instants)) / unit_mb
     steps = len(made)
-    weight = float(fleet.weight[craft])
     left_worth = np.zeros(steps)
-    left_worth[-1] = problem.left_worth_share * weight * unit_mb
-    fill = block.add_columns(upper=np.full(steps, capacity / unit_mb), value=left_worth)
-    spill_worth = np.full(steps, -problem.spill_cost_per_mb * unit_mb)
+    left_worth[-1] = problem.left_worth_share * layer.weight * unit_mb
+    fill = block.add_columns(upper=room / unit_mb, value=left_worth)
+    spill_worth = np.full(steps, -layer.spill_cost * unit_mb)
     lost = block.add_columns(upper=np.full(steps, _INFINITY), value=spill_worth)
     balance_rhs = made.copy()
-    balance_rhs[0] += float(fleet.start_fill_mb[craft]) / unit_mb
+    balance_rhs[0] += layer.start_mb / unit_mb
     balance = block.add_rows(lower=balance_rhs, upper=balance_rhs)
     block.add_entries(balance, fill, np.ones(steps))
     block.add_entries(balance[1:], fill[:-1], -np.ones(steps - 1))
     block.add_entries(balance, lost, np.ones(steps))
     option, step, volume_mb = _carried(problem, mine, instants)
     active = np.unique(step)
-    sent = block.add_columns(upper=np.full(len(active), _INFINITY), value=np.full(len(active), weight * unit_mb))
+    sent = block.add_columns(upper=np.full(len(active), _INFINITY), value=np.full(len(active), layer.weight * unit_mb))
     block.add_entries(balance[active], sent, np.ones(len(active)))
     carry = block.add_rows(upper=np.zeros(len(active)))
     block.add_entries(carry, sent, np.ones(len(active)))
     block.add_entries(carry[np.searchsorted(active, step)], option, -volume_mb / unit_mb)
 
 
-def _carried(problem: Problem, mine: Integers, instants: Integers) -> tuple[Integers, Integers, Floats]:
+def _instants(problem: Problem, mine: Integers, layer: Layer) -> Floats:
+    """Where the sending of an option starts or ends, and where generation changes while one could send."""
+    options = problem.options
+    first_piece, last_piece = options.piece_offset[mine], options.piece_offset[mine + 1] - 1
+    starts, ends = options.piece_start_s[first_piece], options.piece_end_s[last_piece]
+    inner = layer.inner_times()
+    open_then = np.searchsorted(np.sort(starts), inner, side="right") > np.searchsorted(np.sort(ends), inner)
+    return np.unique(np.concatenate([[0.0, float(problem.horizon_s)], starts, ends, inner[open_then]]))
+
+
+def _carried(problem: Problem, mine: Integers, instants: Floats) -> tuple[Integers, Integers, Floats]:
     """What each option can carry [MB] in each step between instants: entries (option, step, volume)."""
     options = problem.options
     counts = options.piece_offset[mine + 1] - options.piece_offset[mine]

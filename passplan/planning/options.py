@@ -16,8 +16,10 @@ from passplan.planning.cuts import Cuts, neighbour_cuts, spread
 from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.on_air import on_air_span
+from passplan.planning.price import price_of
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
 from passplan.planning.setup import SetupTimes
+from passplan.planning.spans import without
 
 
 @dataclass(frozen=True, eq=False)
@@ -128,7 +130,7 @@ class _Builder:
         start_s, end_s = int(self.windows.start_s[w]), int(self.windows.end_s[w])
         craft, antenna = self._names(w)
         blocks = self.blocked.between(craft, antenna, start_s, end_s)
-        free = _subtract(start_s, end_s, [(a, b) for a, b, _ in blocks])
+        free = without((start_s, end_s), [(a, b) for a, b, _ in blocks])
         pieces = [p for p in free if p[1] - p[0] >= self.shortest_s]
         reason = self._unusable(w, link, pieces, [block for _, _, block in blocks])
         found = [] if reason else [c for low, high in pieces for c in self._of_piece(w, link, low, high, cuts)]
@@ -231,8 +233,8 @@ class _Builder:
             command = None
         if downlink is None and command is None:
             return None
-        price = self.run.antennas[self._names(w)[1]].price_per_minute
-        return Candidate(w, start_s, end_s, downlink, command, price * (end_s - start_s) / 60.0)
+        cost = price_of(self.run.antennas[self._names(w)[1]], end_s - start_s)
+        return Candidate(w, start_s, end_s, downlink, command, cost)
 
     def _undominated(self, candidates: list[Candidate], craft: str) -> list[Candidate]:
         """Without options that hold more time than another and offer no more."""
@@ -262,14 +264,3 @@ def _dominates(b: Candidate, a: Candidate) -> bool:
             and b.downlink.send_end_s >= a.downlink.send_end_s
             and b.downlink.rate_mbps * b.downlink.expectation >= a.downlink.rate_mbps * a.downlink.expectation
             and b.downlink.usable_s >= a.downlink.usable_s)
-
-
-def _subtract(start_s: int, end_s: int, blocked: Sequence[tuple[int, int]]) -> list[tuple[int, int]]:
-    """What is left of [start_s, end_s) outside the blocked intervals, in time order."""
-    left, reached = [], start_s
-    for a, b in sorted(blocked):
-        if a > reached:
-            left.append((reached, min(a, end_s)))
-        reached = max(reached, b)
-    left.append((reached, end_s))
-    return [(a, b) for a, b in left if b > a]

@@ -17,6 +17,7 @@ from passplan.planning.change_cost import with_changes
 from passplan.planning.clock import Clock
 from passplan.planning.contradictions import Contradiction, RulesConflictError, find_contradictions
 from passplan.planning.fair_share import with_fair_floor
+from passplan.planning.fleet import fleet_of
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
@@ -96,12 +97,7 @@ def build_problem(
     run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], interference: Interference | None = None,
 ) -> tuple[Problem, OptionSet]:
     """The problem of a run, and its options with the link choices behind them."""
-    craft = [c for name, c in run.spacecraft.items() if name in run.orbits]
-    fleet = Fleet(
-        names=tuple(c.name for c in craft), weight=np.array([c.weight for c in craft], dtype=float),
-        generation_mb_per_s=np.array([c.generation_mb_per_s for c in craft], dtype=float),
-        capacity_mb=np.array([c.storage_mb for c in craft], dtype=float),
-        start_fill_mb=np.array([c.start_fill_mb for c in craft], dtype=float))
+    fleet = fleet_of(run)
     antennas = Antennas(
         names=tuple(run.antennas), beams=np.array([a.beams for a in run.antennas.values()], dtype=np.int64))
     disturbing = interference or Interference()

@@ -23,7 +23,7 @@ from passplan.planning.result import OPTIMAL_GAP, PlanResult, Proof, Tier, relat
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import fleet_arrays
+from passplan.planning.search.fleetarrays import can_search, fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
@@ -98,7 +98,7 @@ def _plan_part(
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         arrays = None
-        if len(problem.options) > limits.exact_options and compiled_in_time(clock):
+        if len(problem.options) > limits.exact_options and can_search(problem) and compiled_in_time(clock):
             arrays = fleet_arrays(problem, terms, maps)
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
     if len(problem.options) == 0:
@@ -123,7 +123,7 @@ def _plan_part(
             bound, certificate = solved.bound, solved.certificate
         best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
         tell(best.account.value, bound)
-    if open_still() and compiled_in_time(clock):
+    if open_still() and can_search(problem) and compiled_in_time(clock):
         with clock.stage("search"):
             if arrays is None:
                 arrays = fleet_arrays(problem, terms, maps)
@@ -180,6 +180,5 @@ def _conclude(
 
 def _ceiling(problem: Problem) -> float:
     """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
-    fleet = problem.fleet
-    worth = float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    worth = sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)
     return worth + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

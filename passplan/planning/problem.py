@@ -14,6 +14,8 @@ from typing import Any, Literal, TypeVar
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from passplan.planning.streams import Layer, Stream, layers_of, steady
+
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 Flags = NDArray[np.bool_]
@@ -23,16 +25,34 @@ Service = Literal["downlink", "command", "both"]
 
 @dataclass(frozen=True, eq=False)
 class Fleet:
-    """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB]."""
+    """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB].
+
+    ``streams`` are the classes of data of each spacecraft by falling weight, none for one with a single class at a
+    steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill.
+    """
 
     names: tuple[str, ...]
     weight: Floats
     generation_mb_per_s: Floats
     capacity_mb: Floats
     start_fill_mb: Floats
+    streams: tuple[tuple[Stream, ...], ...] = ()
 
     def __post_init__(self) -> None:
         _freeze(self)
+
+    def weighed(self, parts: Sequence[tuple[Fleet, float]]) -> Fleet:
+        """The same spacecraft with the weighted sum of the weights of ``parts``, which differ in weights alone."""
+        streams = tuple(
+            tuple(replace(one, weight=sum(share * part.streams[i][k].weight for part, share in parts))
+                  for k, one in enumerate(own))
+            for i, own in enumerate(self.streams))
+        return replace(
+            self, weight=sum((share * part.weight for part, share in parts), np.zeros(len(self))), streams=streams)
+
+    def streams_of(self, craft: int) -> tuple[Stream, ...]:
+        """The classes of one spacecraft, none where the arrays say all."""
+        return self.streams[craft] if self.streams else ()
 
     def __len__(self) -> int:
         return len(self.names)
@@ -205,6 +225,17 @@ class Problem:
     in_order: bool = False
     too_tight: Integers = field(default_factory=lambda: np.zeros((0, 2), dtype=np.int64))
     needs: tuple[object, ...] = ()
+
+    @cached_property
+    def layers(self) -> tuple[tuple[Layer, ...], ...]:
+        """The storages that stand for each spacecraft (see :mod:`passplan.planning.streams`)."""
+        fleet = self.fleet
+        return tuple(
+            layers_of(
+                fleet.streams_of(k) or (steady("", float(fleet.weight[k]), float(fleet.start_fill_mb[k]),
+                                               float(fleet.generation_mb_per_s[k]), self.horizon_s),),
+                float(fleet.capacity_mb[k]), self.spill_cost_per_mb)
+            for k in range(len(fleet)))
 
     @cached_property
     def price(self) -> Floats:

@@ -23,6 +23,15 @@ SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", 
 UNUSED_COLUMNS = ("window_id", "spacecraft", "antenna", "aos_utc", "los_utc", "reason", "detail")
 
 
+def sending(segments: pd.DataFrame) -> pd.DataFrame:
+    """The segments table with one row for each piece of sending: what it carries of several classes is added up."""
+    piece = ["contact_id", "start_utc", "end_utc"]
+    if not segments.duplicated(piece).any():
+        return segments
+    volume_mb = segments.groupby(piece, sort=False)["volume_mb"].sum()
+    return segments.drop_duplicates(piece).reset_index(drop=True).assign(volume_mb=volume_mb.to_numpy())
+
+
 @dataclass(frozen=True)
 class PlanRecord:
     """A plan as it is reported, written and read back.

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from functools import cache
 
+from passplan.inputs.contact_kind import ContactKind
 from passplan.inputs.ground import Antenna
 from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
@@ -22,9 +23,7 @@ class SetupTimes:
 
     def of(self, antenna: str, candidate: Candidate) -> tuple[int, int]:
         """Seconds to prepare before and to release after one candidate on an antenna."""
-        links = [link for link in (candidate.downlink, candidate.command) if link is not None]
-        return _rounded(setup_s(
-            self._run.antennas[antenna], candidate.service, [link.frequency_mhz for link in links]))
+        return _rounded(setup_s(self._run.antennas[antenna], candidate.service, candidate.carriers_mhz))
 
     def _longest(self, craft: str, antenna: str) -> tuple[int, int]:
         """The most seconds that any contact of a spacecraft on an antenna takes to prepare and to release."""
@@ -49,13 +48,19 @@ def setup_s(antenna: Antenna, service: Service, carriers_mhz: Iterable[float]) -
     Where none states it, the antenna's own.
     """
     carriers = list(carriers_mhz)
-    meant = [
-        row for row in antenna.setup
-        if row.service in (None, service)
-        and (row.low_mhz is None or row.high_mhz is None or any(row.low_mhz <= f <= row.high_mhz for f in carriers))]
+    meant = [row for row in antenna.setup if means(row, service, carriers)]
     return (
         max((row.prepare_s for row in meant if row.prepare_s is not None), default=antenna.prepare_s),
         max((row.release_s for row in meant if row.release_s is not None), default=antenna.release_s))
+
+
+def means(kind: ContactKind, service: Service, carriers_mhz: Sequence[float]) -> bool:
+    """Whether a contact that offers ``service`` on these carriers is of the kind."""
+    if kind.service is not None and service not in (kind.service, "both"):
+        return False
+    if kind.low_mhz is None or kind.high_mhz is None:
+        return True
+    return any(kind.low_mhz <= carrier <= kind.high_mhz for carrier in carriers_mhz)
 
 
 def _rounded(pair: tuple[float, float]) -> tuple[int, int]:

@@ -24,7 +24,7 @@ from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import fleet_arrays
+from passplan.planning.search.fleetarrays import can_search, fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
@@ -143,7 +143,7 @@ class _Staged:
         def tell(_: float, above: float) -> None:
             self._say(k, min(bound, above + total.base_worth - held))
 
-        if not compiled_in_time(time):
+        if not (can_search(total) and compiled_in_time(time)):
             return bound
         arrays, points = fleet_arrays(total, self.terms, self.maps), self.best.points
         if not len(arrays.option):
@@ -174,7 +174,9 @@ class _Staged:
             tiers.append(Tier("shortfalls", "least", best.points, least, relative_gap(-best.points, -least)))
         for aim, reached, bound in zip(self.aims, best.reached, bounds, strict=True):
             sign, above = (1.0 if aim.sense == "most" else -1.0), max(bound, reached)
-            tiers.append(Tier(aim.name, aim.sense, sign * reached, sign * above, relative_gap(reached, above)))
+            # Adding nothing turns a minus nothing into nothing.
+            gap = relative_gap(reached, above)
+            tiers.append(Tier(aim.name, aim.sense, sign * reached + 0.0, sign * above + 0.0, gap))
         value = next(tier for tier in tiers if tier.name == "value")
         return PlanResult(
             best.chosen, status_of(value.gap, self.limits.gap, best.path, len(best.chosen)), value.value, value.bound,

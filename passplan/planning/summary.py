@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 import json
 from collections.abc import Iterable
+from dataclasses import asdict
 from datetime import UTC, datetime
 from importlib.metadata import PackageNotFoundError, version
 from pathlib import PurePosixPath
@@ -21,7 +22,9 @@ from passplan.inputs.run import Run
 from passplan.planning.aboard import schedule_warnings
 from passplan.planning.battery import battery_summary, battery_warnings
 from passplan.planning.plan import Plan
+from passplan.planning.rented import Held, rented_time
 from passplan.planning.rules.decisions import frozen_contacts
+from passplan.planning.tentative import tentative_warnings, touched_by_tentative
 from passplan.planning.value import Account
 
 _PACKAGES = ("skyfield", "sgp4", "ortools", "itur", "numpy", "pandas")
@@ -34,6 +37,8 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
     work done twice carries the same name.
     """
     result, account = plan.result, plan.result.account
+    held = _held(plan)
+    touched = touched_by_tentative(run, held)
     summary: dict[str, Any] = {
         "plan_id": "", "name": run.name, "status": result.status, "approval": "draft",
         "generated_utc": datetime.now(UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z"),
@@ -54,6 +59,8 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
             "lost_s": round(float(windows["lost_s"].sum()), 3) if "lost_s" in windows else 0.0,
         },
         "shortfalls": [{"kind": s.kind, "name": s.name, "sentence": s.sentence} for s in result.shortfalls],
+        **({"tentative": touched} if touched else {}),
+        **(rented_time(run, held) if any(antenna.rented for antenna in run.antennas.values()) else {}),
         **({} if plan.fair_floor is None else {"fair_floor": plan.fair_floor}),
         # A requirement that cannot be met for itself has said so in its shortfall.
         "contradictions": [
@@ -62,8 +69,9 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         ],
         "pins": [f"{item.kind} {item.name}{item.note and ', ' + item.note}" for item in run.decisions],
         "frozen": [item.name for item in (*frozen_contacts(run), *run.loaded)],
-        "warnings": list(run.warnings) + _own_warnings(run, windows) + battery_warnings(run, plan.problem)
-        + list(schedule_warnings(run, plan.contacts)),
+        "warnings": [
+            *run.warnings, *_own_warnings(run, windows), *battery_warnings(run, plan.problem),
+            *schedule_warnings(run, plan.contacts), *tentative_warnings(touched)],
         "left_out": dict(run.left_out),
         "spacecraft": {name: _spacecraft(run, name) for name in run.spacecraft if name in run.orbits},
         "antennas": {name: _antenna(run, name, plan.contacts) for name in run.antennas},
@@ -74,6 +82,15 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
     }
     summary["plan_id"] = _plan_id(summary, plan.contacts)
     return summary
+
+
+def _held(plan: Plan) -> list[Held]:
+    """When each contact holds its antenna, in the order of the contacts."""
+    options, chosen = plan.problem.options, plan.result.account.chosen
+    start_s, end_s = options.start_s - options.prepare_s, options.end_s + options.release_s
+    return [
+        Held(contact, antenna, int(start_s[o]), int(end_s[o])) for contact, antenna, o in zip(
+            plan.contacts["contact_id"], plan.contacts["antenna"], chosen.tolist(), strict=True)]
 
 
 def stored_inputs(files: Iterable[ReadFile]) -> list[dict[str, str]]:
@@ -105,7 +122,7 @@ def _spacecraft(run: Run, name: str) -> dict[str, Any]:
     orbit, craft = run.orbits[name], run.spacecraft[name]
     known = isinstance(orbit, ElementSet)
     return {
-        "catalogue_number": craft.catalogue_number, "weight": craft.weight,
+        "catalogue_number": craft.catalogue_number, "weight": run.data_of(name)[0].weight,
         "orbit_from": "element set" if known else "ephemeris",
         "element_epoch_utc": _iso(orbit.epoch_utc) if isinstance(orbit, ElementSet) else None,
         "element_age_days": round(orbit.age_days(run.start_utc), 4) if isinstance(orbit, ElementSet) else None,
@@ -124,13 +141,28 @@ def _antenna(run: Run, name: str, contacts: pd.DataFrame) -> dict[str, Any]:
     }
 
 
-def _storage(run: Run, account: Account) -> dict[str, dict[str, float]]:
+def _storage(run: Run, account: Account) -> dict[str, dict[str, Any]]:
+    """Figures of each spacecraft's storage; where its data is of its own classes, theirs and the fill as well."""
     columns = {
         key: getattr(account, key) for key in ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
     }
     return {
-        name: {"capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()}}
+        name: {
+            "capacity_mb": run.spacecraft[name].storage_mb, **{k: float(v[i]) for k, v in columns.items()},
+            **_classes(account, i),
+        }
         for i, name in enumerate(name for name in run.spacecraft if name in run.orbits)
+    }
+
+
+def _classes(account: Account, craft: int) -> dict[str, Any]:
+    if craft not in account.aboard:
+        return {}
+    aboard = account.aboard[craft]
+    return {
+        "classes": {one.name: {k: v for k, v in asdict(one).items() if k != "name"} for one in account.classes[craft]},
+        "fill": np.column_stack([aboard.path_s, aboard.path_mb]).round(3).tolist(),
+        "losing_s": aboard.losing_s.round(3).tolist(),
     }
 
 

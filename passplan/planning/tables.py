@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pandas as pd
 
+from passplan.inputs.data import ONLY_CLASS
 from passplan.inputs.run import Run
 from passplan.planning.hooks import Candidate
 from passplan.planning.horizon import instants_of
@@ -14,15 +15,14 @@ from passplan.planning.problem import Problem
 from passplan.planning.record import CONTACT_COLUMNS, SEGMENT_COLUMNS
 from passplan.planning.result import PlanResult
 from passplan.planning.rules.terms import Terms
-
-# The only class of data so far.
-DATA_CLASS = "data"
+from passplan.planning.value import Account
 
 
 def contacts_table(
     run: Run, windows: pd.DataFrame, problem: Problem, option_set: OptionSet, terms: Terms, result: PlanResult,
 ) -> pd.DataFrame:
-    """One row per contact in time order. ``volume_mb`` is what it brings down, ``value`` weight x volume.
+    """One row per contact in time order. ``volume_mb`` is what it brings down, ``value`` what that is worth, and
+    ``weight`` what a MB of it is worth (of the best class where it brings nothing).
 
     The modcod, margin and usable time are those of the downlink where there is one, of the command link
     otherwise (then ``modcod`` is empty). A contact's id is its window's with ``.c1``, ``.c2`` ... in time order.
@@ -32,7 +32,9 @@ def contacts_table(
     cutter = _CutExplainer(problem, option_set, terms, result)
     numbers: dict[int, int] = {}
     rows = []
-    for o, volume_mb in zip(chosen.tolist(), result.account.contact_mb.tolist(), strict=True):
+    account = result.account
+    for o, volume_mb, value in zip(
+        chosen.tolist(), account.contact_mb.tolist(), account.contact_worth.tolist(), strict=True):
         candidate = option_set.candidates[o]
         w = candidate.window
         numbers[w] = numbers.get(w, 0) + 1
@@ -40,7 +42,8 @@ def contacts_table(
         link = candidate.downlink or candidate.command
         if link is None:
             raise ValueError(f"option {o} offers no service")
-        weight = float(problem.fleet.weight[craft])
+        mixed = volume_mb > 0.0 and bool(account.classes[craft])
+        weight = value / volume_mb if mixed else float(problem.fleet.weight[craft])
         rows.append({
             "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
             "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
@@ -50,7 +53,7 @@ def contacts_table(
             "modcod": "" if candidate.downlink is None else candidate.downlink.modcod, "volume_mb": volume_mb,
             "min_margin_db": link.min_margin_db,
             "peak_elevation_deg": float(windows["peak_elevation_deg"].iloc[w]), "weight": weight,
-            "value": weight * volume_mb, "cost": candidate.cost, "origin": origins.get(o, "planned"),
+            "value": value, "cost": candidate.cost, "origin": origins.get(o, "planned"),
             "change": "new", "cut": cutter.why(o)})
     table = pd.DataFrame(rows, columns=list(CONTACT_COLUMNS))
     return _typed(table, run, texts=(
@@ -69,7 +72,10 @@ def _origins(terms: Terms) -> dict[int, str]:
 def segments_table(
     run: Run, problem: Problem, option_set: OptionSet, result: PlanResult, contacts: pd.DataFrame,
 ) -> pd.DataFrame:
-    """One row per piece of sending, in the order of the contacts; ``volume_mb`` is what it brings down."""
+    """One row per piece of sending and class of data in it, in the order of the contacts.
+
+    ``volume_mb`` is what it brings down. A piece that brings down nothing has one row.
+    """
     options, account = problem.options, result.account
     counts = np.diff(options.piece_offset)[account.chosen]
     owner = np.repeat(np.arange(len(account.chosen)), counts)
@@ -79,9 +85,26 @@ def segments_table(
     table = pd.DataFrame({
         "contact_id": contacts["contact_id"].to_numpy()[owner],
         "start_utc": options.piece_start_s[account.piece], "end_utc": options.piece_end_s[account.piece],
-        "modcod": modcods, "rate_mbps": options.piece_rate_mb_per_s[account.piece] * 8.0,
-        "data_class": DATA_CLASS, "volume_mb": account.piece_mb}, columns=list(SEGMENT_COLUMNS))
+        "modcod": modcods, "rate_mbps": options.piece_rate_mb_per_s[account.piece] * 8.0})
+    table["data_class"], table["volume_mb"] = _by_class(problem, account)
+    table = table.explode(["data_class", "volume_mb"], ignore_index=True)[list(SEGMENT_COLUMNS)]
     return _typed(table, run, texts=("contact_id", "modcod", "data_class"))
+
+
+def _by_class(problem: Problem, account: Account) -> tuple[pd.Series, pd.Series]:
+    """For each piece the classes it carries and how much of each, as lists."""
+    names, volumes = [], []
+    for p, volume_mb in zip(account.piece.tolist(), account.piece_mb.tolist(), strict=True):
+        if p in account.class_mb:
+            craft = int(problem.options.spacecraft[np.searchsorted(problem.options.piece_offset, p, side="right") - 1])
+            carried = [(one.name, float(mb)) for one, mb in zip(
+                account.classes[craft], account.class_mb[p], strict=True)]
+            some = [pair for pair in carried if pair[1] > 0.0] or carried[:1]
+        else:
+            some = [(ONLY_CLASS, volume_mb)]
+        names.append([name for name, _ in some])
+        volumes.append([mb for _, mb in some])
+    return pd.Series(names, dtype=object), pd.Series(volumes, dtype=object)
 
 
 def _modcod_of(candidate: Candidate, piece: int) -> str:

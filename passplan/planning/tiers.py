@@ -35,7 +35,7 @@ def objectives(problem: Problem) -> tuple[Objective, ...]:
     """All objectives after the requirements; that of changes only where there is a published plan."""
     fleet, none = problem.fleet, np.zeros(0)
     nothing = replace(
-        problem, fleet=replace(fleet, weight=np.zeros(len(fleet))), spill_cost_per_mb=0.0, worth_per_money=0.0,
+        problem, fleet=fleet.weighed([]), spill_cost_per_mb=0.0, worth_per_money=0.0,
         extra_price=none, base_worth=0.0)
     found = [
         Objective("lost data", "least", replace(nothing, spill_cost_per_mb=1.0), 0.0),
@@ -54,9 +54,9 @@ def staged(parts: Sequence[tuple[Problem, float]]) -> Problem:
     """One problem whose objective is the weighted sum of those of ``parts``, all over the same options."""
     first = parts[0][0]
     price = sum((share * part.price for part, share in parts), np.zeros(len(first.options)))
-    weight = sum((share * part.fleet.weight for part, share in parts), np.zeros(len(first.fleet)))
+    fleet = first.fleet.weighed([(part.fleet, share) for part, share in parts])
     return replace(
-        first, fleet=replace(first.fleet, weight=weight), worth_per_money=0.0, extra_price=price,
+        first, fleet=fleet, worth_per_money=0.0, extra_price=price,
         spill_cost_per_mb=sum(share * part.spill_cost_per_mb for part, share in parts),
         base_worth=sum(share * part.base_worth for part, share in parts))
 
@@ -73,6 +73,5 @@ def most_of_a_contact(problem: Problem) -> float:
 
 def _most_value(problem: Problem) -> float:
     """All data aboard and generated is delivered, and every option that has a bonus brings it."""
-    fleet = problem.fleet
-    data = float((fleet.weight * (fleet.start_fill_mb + fleet.generation_mb_per_s * problem.horizon_s)).sum())
+    data = sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)
     return data + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

@@ -18,7 +18,9 @@ REASONS = (
     "closure", "too_short", "no_radio", "no_margin", "not_needed", "antenna_busy", "antenna_turning", "spacecraft_busy",
     "nothing_aboard", "not_worth_it", "interference", "contact_gap", "cool_down", "forbidden",
     "contacts_per_orbit", "contacts_per_day", "sending_per_contact", "sending_per_orbit", "sending_per_span",
-    "battery", "imaging", "attitude", "loaded")
+    "battery", "imaging", "attitude", "loaded",
+    "equipment_busy", "staff_busy", "unstaffed", "declined", "too_late_to_ask", "backhaul_full", "backhaul_busy",
+    "backhaul_closed", "budget")
 """``not_needed``: the antenna can only command, and nothing asks for it. Rules may add their own reasons."""
 
 

@@ -8,7 +8,8 @@ starts with f aboard it sends ``min(f + g dt, r dt)``: with r >= g the storage r
 as it generates; with r < g it sends all the time. What would stand above the capacity is lost at once:
 ``max(0, f + g dt - sent - capacity)``. Both hold exactly, as within a stretch the fill is monotonic.
 Sending as early as possible is optimal for a single class of data, so that a plan is its contacts and
-nothing more. (Own derivation.)
+nothing more. (Own derivation.) A spacecraft with several classes, or whose generation changes, is followed by
+``classes.py``.
 """
 
 from __future__ import annotations
@@ -19,7 +20,22 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.classes import Aboard, follow
+from passplan.planning.problem import Floats, Integers, Options, Problem
+from passplan.planning.streams import Stream
+
+
+@dataclass(frozen=True)
+class ClassBalance:
+    """Where one class of data of one spacecraft went [MB], and what a MB of it is worth."""
+
+    name: str
+    weight: float
+    start_mb: float
+    generated_mb: float
+    delivered_mb: float
+    lost_mb: float
+    left_mb: float
 
 
 @dataclass(frozen=True, eq=False)
@@ -27,7 +43,10 @@ class Account:
     """Where the data went. Per spacecraft, shape (n,), in MB: start, generated, delivered, lost, left.
 
     ``chosen`` are the options in time order, ``contact_mb`` (k,) what each brings down; ``piece`` indexes
-    their pieces and ``piece_mb`` says what each brings down. ``cost`` is money, ``value`` the objective.
+    their pieces and ``piece_mb`` says what each brings down. ``contact_worth`` (k,) is what that is worth. ``cost``
+    is money, ``value`` the objective. For spacecraft with classes of their own ``classes`` has a balance for each
+    class, ``class_mb`` what each piece brings down of each, and ``aboard`` the fill through time; keys of the last
+    two are pieces and spacecraft.
     """
 
     start_mb: Floats
@@ -37,10 +56,14 @@ class Account:
     left_mb: Floats
     chosen: Integers
     contact_mb: Floats
+    contact_worth: Floats
     piece: Integers
     piece_mb: Floats
     cost: float
     value: float
+    classes: tuple[tuple[ClassBalance, ...], ...]
+    class_mb: dict[int, Floats]
+    aboard: dict[int, Aboard]
 
 
 def account(problem: Problem, chosen: Iterable[int]) -> Account:
@@ -55,29 +78,58 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
     for o in order:
         by_craft[int(options.spacecraft[o])].append(o)
     sent: dict[int, float] = {}
+    worth: dict[int, float] = {}
+    class_mb: dict[int, Floats] = {}
+    aboard: dict[int, Aboard] = {}
     lost = np.zeros(len(fleet))
     left = np.zeros(len(fleet))
+    earned = []
     for i, mine in enumerate(by_craft):
         pieces = [p for o in mine for p in options.pieces(o)]
-        volumes, lost[i], left[i] = follow_storage(
-            problem.horizon_s, float(fleet.start_fill_mb[i]), float(fleet.generation_mb_per_s[i]),
-            float(fleet.capacity_mb[i]),
-            [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
-             for p in pieces])
+        sending = [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
+                   for p in pieces]
+        streams = fleet.streams_of(i)
+        if streams:
+            aboard[i] = run = follow(streams, float(fleet.capacity_mb[i]), problem.horizon_s, sending)
+            volumes, lost[i], left[i] = run.sent_mb.sum(axis=1).tolist(), run.lost_mb.sum(), run.left_mb.sum()
+            weights = np.array([one.weight for one in streams])
+            worth.update(zip(pieces, (run.sent_mb @ weights).tolist(), strict=True))
+            class_mb.update(zip(pieces, run.sent_mb, strict=True))
+            earned.append(float(weights @ (run.delivered_mb + problem.left_worth_share * run.left_mb)))
+        else:
+            volumes, lost[i], left[i] = follow_storage(
+                problem.horizon_s, float(fleet.start_fill_mb[i]), float(fleet.generation_mb_per_s[i]),
+                float(fleet.capacity_mb[i]), sending)
+            weight = float(fleet.weight[i])
+            worth.update((p, weight * mb) for p, mb in zip(pieces, volumes, strict=True))
+            earned.append(weight * (math.fsum(volumes) + problem.left_worth_share * left[i]))
         sent.update(zip(pieces, volumes, strict=True))
-    contact_mb = np.array([math.fsum(sent[p] for p in options.pieces(o)) for o in order], dtype=float)
-    delivered = np.array([math.fsum(sent[p] for o in mine for p in options.pieces(o)) for mine in by_craft])
     chosen_array = np.array(order, dtype=np.int64)
     cost = math.fsum(options.cost[chosen_array])
-    value = math.fsum([
-        *(fleet.weight * delivered), *(problem.left_worth_share * fleet.weight * left),
-        *(-problem.spill_cost_per_mb * lost), *(-problem.price[chosen_array]), problem.base_worth])
     piece = np.array([p for o in order for p in options.pieces(o)], dtype=np.int64)
     return Account(
         start_mb=fleet.start_fill_mb, generated_mb=fleet.generation_mb_per_s * problem.horizon_s,
-        delivered_mb=delivered.reshape(len(fleet)), lost_mb=lost, left_mb=left, chosen=chosen_array,
-        contact_mb=contact_mb, piece=piece, piece_mb=np.array([sent[int(p)] for p in piece], dtype=float),
-        cost=cost, value=value)
+        delivered_mb=np.array([_over(sent, options, mine) for mine in by_craft]).reshape(len(fleet)), lost_mb=lost,
+        left_mb=left, chosen=chosen_array, contact_mb=np.array([_over(sent, options, [o]) for o in order], dtype=float),
+        contact_worth=np.array([_over(worth, options, [o]) for o in order], dtype=float), piece=piece,
+        piece_mb=np.array([sent[int(p)] for p in piece], dtype=float), cost=cost,
+        value=math.fsum([
+            *earned, *(-problem.spill_cost_per_mb * lost), *(-problem.price[chosen_array]), problem.base_worth]),
+        classes=tuple(_balances(fleet.streams_of(i), aboard.get(i)) for i in range(len(fleet))), class_mb=class_mb,
+        aboard=aboard)
+
+
+def _over(amounts: dict[int, float], options: Options, chosen: Iterable[int]) -> float:
+    return math.fsum(amounts[p] for o in chosen for p in options.pieces(o))
+
+
+def _balances(streams: Sequence[Stream], run: Aboard | None) -> tuple[ClassBalance, ...]:
+    if run is None:
+        return ()
+    return tuple(
+        ClassBalance(one.name, one.weight, one.start_mb, float(one.made_mb[-1]), float(run.delivered_mb[k]),
+                     float(run.lost_mb[k]), float(run.left_mb[k]))
+        for k, one in enumerate(streams))
 
 
 def follow_storage(

@@ -16,6 +16,7 @@ from passplan.link.expected import PlannedContact, expected_volumes
 from passplan.link.notices import STATISTICS, run_notices
 from passplan.planning.horizon import column_seconds
 from passplan.planning.plan import Plan
+from passplan.planning.record import sending
 
 
 def weather_summary(
@@ -52,14 +53,15 @@ def _planned(
 ) -> tuple[dict[str, PlannedContact], dict[str, float]]:
     """The downlink contacts of a plan, and what their links can carry at the plan's unavailability [MB]."""
     row_of = {name: k for k, name in enumerate(windows["window_id"])}
-    seconds = column_seconds(run, plan.segments["end_utc"]) - column_seconds(run, plan.segments["start_utc"])
+    pieces = sending(plan.segments)
+    seconds = column_seconds(run, pieces["end_utc"]) - column_seconds(run, pieces["start_utc"])
     # Not the rates of the segments: those may be expectations.
     radio_of = plan.contacts.set_index("contact_id")["radio"].to_dict()
     rates = [
         _rate_mbps(run, radio_of[contact], modcod)
-        for contact, modcod in zip(plan.segments["contact_id"], plan.segments["modcod"], strict=True)
+        for contact, modcod in zip(pieces["contact_id"], pieces["modcod"], strict=True)
     ]
-    pieces = plan.segments.assign(rate_mbps=rates, link_mb=np.array(rates) * seconds / 8.0)
+    pieces = pieces.assign(rate_mbps=rates, link_mb=np.array(rates) * seconds / 8.0)
     link_mb = pieces.groupby("contact_id")["link_mb"].sum().to_dict()
     rate_mbps = pieces.groupby("contact_id")["rate_mbps"].first().to_dict()
     starts, ends = column_seconds(run, plan.contacts["start_utc"]), column_seconds(run, plan.contacts["end_utc"])

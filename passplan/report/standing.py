@@ -9,6 +9,7 @@ from typing import Any
 # Lists that a plan may carry, in the order they matter to whoever reviews it.
 _LISTS = (
     ("contradictions", "Cannot all be met"), ("to_ask", "Bookings still to ask for"),
+    ("awaited", "Bookings whose answer is awaited"), ("give_back", "Granted time that nobody uses"),
     ("pins", "Pinned and forbidden"), ("frozen", "Frozen"),
 )
 

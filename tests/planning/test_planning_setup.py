@@ -31,8 +31,8 @@ def antenna(*rows: dict[str, Any]) -> Antenna:
     ("downlink", [X_BAND], (200, 30)),
     ("downlink", [26_000.0], (60, 30)),
     ("command", [S_BAND], (60, 90)),
-    ("both", [X_BAND, S_BAND], (300, 30)),
-    ("both", [26_000.0, S_BAND], (300, 30)),
+    ("both", [X_BAND, S_BAND], (300, 90)),
+    ("both", [26_000.0, 2_300.0], (300, 30)),
 ])
 def test_the_longest_row_that_means_the_contact_counts(
     service: Any, carriers: list[float], expected: tuple[float, float],
@@ -69,7 +69,7 @@ def test_options_hold_their_antenna_by_what_they_offer() -> None:
     options = built(run, rows, [BOTH, UP, DOWN]).options
     held = {(int(w), int(a), int(b)) for w, a, b in zip(
         options.window, options.prepare_s, options.release_s, strict=True)}
-    assert held == {(0, 241, 30), (1, 60, 100), (2, 60, 30)}
+    assert held == {(0, 241, 100), (1, 60, 100), (2, 60, 30)}
 
 
 def test_closures_and_neighbours_are_kept_clear_of_by_the_same_times() -> None:
@@ -95,8 +95,8 @@ def test_a_then_b_fits_and_b_then_a_does_not() -> None:
 
 def test_a_run_that_states_no_bands_is_planned_as_before() -> None:
     rows = [("Teasel-1", "Isvarde-A", 600.0, 1_500.0), ("Teasel-2", "Isvarde-A", 1_200.0, 2_000.0)]
-    silent, stated = (
-        built(run_with(setup), rows, [BOTH, DOWN]) for setup in ([], [{"service": "command", "prepare_s": 900}]))
+    elsewhere = {"service": "command", "low_mhz": 2_200, "high_mhz": 2_300, "prepare_s": 900}
+    silent, stated = (built(run_with(setup), rows, [BOTH, DOWN]) for setup in ([], [elsewhere]))
     assert silent.options.start_s.tolist() == built(run_with([]), rows, [BOTH, DOWN]).options.start_s.tolist()
     assert np.all(silent.options.prepare_s == 60)
     assert np.all(stated.options.prepare_s == 60)

@@ -16,10 +16,14 @@ from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.interference import check_interference
 from passplan.planning.audit.links import check_links
 from passplan.planning.audit.mechanics import check_mechanics, check_turnarounds
+from passplan.planning.audit.money import check_budget
 from passplan.planning.audit.occupancy import check_closures, check_overlaps, check_times
+from passplan.planning.audit.rented import check_rented
 from passplan.planning.audit.requirements import check_requirements
 from passplan.planning.audit.rows import Contact, read_rows
+from passplan.planning.audit.sites import check_sites
 from passplan.planning.audit.storage import check_storage
+from passplan.planning.audit.tentative import check_tentative
 from passplan.planning.audit.tiers import check_tiers
 from passplan.planning.audit.visibility import check_visibility, sight_of
 
@@ -31,7 +35,8 @@ def audit_plan(
 
     ``contacts`` and ``segments`` are the plan's tables (times as ``datetime64`` in UTC), ``summary`` the
     content of ``plan.json``: ``storage`` per spacecraft (``start_mb, generated_mb, delivered_mb, lost_mb,
-    left_mb``), ``value``, ``volume_mb`` and ``shortfalls`` (``kind``, ``name``). Elevations come straight
+    left_mb``), ``value``, ``volume_mb`` and ``shortfalls`` (``kind``, ``name``), and what rented antennas and
+    tentative closures call for (``to_ask, awaited, give_back, tentative``). Elevations come straight
     from Skyfield; margins, modcods, usable times and volumes from the inputs; storage and value from a
     simulation of their own. Nothing is taken from the model, the search or the windows.
     """
@@ -46,6 +51,10 @@ def audit_plan(
     faults.extend(check_batteries(run, rows, summary))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
+    faults.extend(check_sites(run, rows))
+    faults.extend(check_budget(run, rows))
+    faults.extend(check_rented(run, rows, summary))
+    faults.extend(check_tentative(run, rows, summary))
     faults.extend(check_tiers(run, rows, summary))
     return faults
 

@@ -7,6 +7,7 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 
 from passplan.inputs.run import Run
+from passplan.planning.audit.making import made_mb
 from passplan.planning.audit.rows import Contact
 from passplan.planning.audit.standing import Standing
 
@@ -70,4 +71,4 @@ def _mb(run: Run, contact: Contact) -> float:
     """What the link of a contact carries, but no more than a full storage and what is made meanwhile [MB]."""
     craft = run.spacecraft[contact.spacecraft]
     carried = sum(piece.rate_mbps / 8.0 * (piece.end_s - piece.start_s) for piece in contact.pieces)
-    return float(min(carried, craft.storage_mb + craft.generation_mb_per_s * (contact.end_s - contact.start_s)))
+    return float(min(carried, craft.storage_mb + made_mb(run, contact.spacecraft, contact.start_s, contact.end_s)))

@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterator, Sequence
 
 import numpy as np
 
+from passplan.inputs.contact_kind import ContactKind
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault
@@ -33,7 +34,8 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
     """The antenna is open throughout the contact and the time to prepare and to release."""
     held_from_s, held_until_s = held(run, contact)
     for closure in run.closures:
-        if closure.antenna != contact.antenna:
+        planned_through = closure.tentative and run.policy.tentative_closures == "plan_through"
+        if closure.antenna != contact.antenna or planned_through:
             continue
         from_s, until_s = (
             float((datetime64(instant) - run.start_utc) / np.timedelta64(1, "ms")) / 1e3
@@ -64,19 +66,24 @@ def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
 def held(run: Run, contact: Contact) -> tuple[float, float]:
     """The time [s] that a contact holds its antenna, preparing and releasing included."""
     antenna = run.antennas[contact.antenna]
-    carriers = {contact.frequency_mhz}
-    if contact.service == "both":
-        radios = (run.radios[name] for name in run.spacecraft[contact.spacecraft].radios)
-        carriers |= {radio.frequency_mhz for radio in radios if radio.direction == "command"}
     before, after = [], []
     for row in antenna.setup:
-        in_band = row.low_mhz is None or any(row.low_mhz <= f <= (row.high_mhz or 0.0) for f in carriers)
-        if in_band and row.service in (None, contact.service):
+        if is_of_kind(run, contact, row):
             before += [] if row.prepare_s is None else [row.prepare_s]
             after += [] if row.release_s is None else [row.release_s]
     return (
         contact.start_s - (max(before) if before else antenna.prepare_s),
         contact.end_s + (max(after) if after else antenna.release_s))
+
+
+def is_of_kind(run: Run, contact: Contact, kind: ContactKind) -> bool:
+    """Whether a rule that speaks of a kind of contacts means this one."""
+    carriers = {contact.frequency_mhz}
+    if contact.service == "both":
+        radios = (run.radios[name] for name in run.spacecraft[contact.spacecraft].radios)
+        carriers |= {radio.frequency_mhz for radio in radios if radio.direction == "command"}
+    in_band = kind.low_mhz is None or any(kind.low_mhz <= f <= (kind.high_mhz or 0.0) for f in carriers)
+    return in_band and (kind.service is None or contact.service in ("both", kind.service))
 
 
 def _crowded(run: Run, name: str, contacts: Sequence[Contact]) -> Iterator[Fault]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections import Counter, defaultdict
 from collections.abc import Hashable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
@@ -18,19 +18,23 @@ _CONTACT_COLUMNS = (
     "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "frequency_mhz", "polarisation",
     "start_utc", "end_utc", "duration_s", "usable_s", "modcod", "volume_mb", "min_margin_db", "weight", "value", "cost",
 )
-_SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "volume_mb")
+_SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "data_class", "volume_mb")
 _SERVICES = ("downlink", "command", "both")
 
 
 @dataclass(frozen=True)
 class Piece:
-    """One segment of a contact; times in seconds from the horizon's start."""
+    """One piece of sending, of one or several segments; times in seconds from the horizon's start.
+
+    ``class_mb`` is the volume by class of data.
+    """
 
     start_s: float
     end_s: float
     modcod: str
     rate_mbps: float
     volume_mb: float
+    class_mb: Mapping[str, float] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -87,13 +91,29 @@ def read_rows(run: Run, contacts: pd.DataFrame, segments: pd.DataFrame) -> tuple
         pieces[owner].append(_piece(run, record))
     rows = []
     for record in contacts.to_dict("records"):
-        own = sorted(pieces[str(record["contact_id"])], key=lambda piece: piece.start_s)
+        own = sorted(_joined(pieces[str(record["contact_id"])]), key=lambda piece: piece.start_s)
         contact = _contact(run, record, tuple(own))
         wrong = _nonsense(run, contact)
         faults.extend(wrong)
         if not wrong:
             rows.append(contact)
     return sorted(rows, key=lambda contact: (contact.start_s, contact.contact_id)), faults
+
+
+def _joined(segments: list[Piece]) -> list[Piece]:
+    """Segments that differ in their class alone are one piece of sending."""
+    found: list[Piece] = []
+    for one in segments:
+        for k, other in enumerate(found):
+            alike = (one.start_s, one.end_s, one.modcod, one.rate_mbps) == (
+                other.start_s, other.end_s, other.modcod, other.rate_mbps)
+            if alike and not set(one.class_mb) & set(other.class_mb):
+                found[k] = replace(
+                    other, volume_mb=other.volume_mb + one.volume_mb, class_mb={**other.class_mb, **one.class_mb})
+                break
+        else:
+            found.append(one)
+    return found
 
 
 def _nonsense(run: Run, contact: Contact) -> list[Fault]:
@@ -141,9 +161,10 @@ def _contact(run: Run, record: Mapping[Hashable, Any], pieces: tuple[Piece, ...]
 
 
 def _piece(run: Run, record: Mapping[Hashable, Any]) -> Piece:
+    volume_mb = _figure(record["volume_mb"])
     return Piece(
         _seconds(run, record["start_utc"]), _seconds(run, record["end_utc"]), _text(record["modcod"]),
-        _figure(record["rate_mbps"]), _figure(record["volume_mb"]),
+        _figure(record["rate_mbps"]), volume_mb, {_text(record["data_class"]): volume_mb},
     )
 
 

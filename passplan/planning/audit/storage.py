@@ -17,12 +17,15 @@ from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.run import Run
 from passplan.planning.audit.changes import departures
 from passplan.planning.audit.faults import Fault, differs
+from passplan.planning.audit.making import Rates, added, rates_of
+from passplan.planning.audit.money import cost_of
 from passplan.planning.audit.rows import Contact, Piece
 
 _A_BYTE_IN_A_GIGABYTE = 1e-9
 # Tables may be rounded to a byte in every row.
 _BYTE_MB = 1e-6
 _VALUE_RELATIVE = 1e-6
+_FIGURES = ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
 
 
 @dataclass(frozen=True)
@@ -38,37 +41,49 @@ class Balance:
 
 
 def follow(craft: Spacecraft, pieces: Sequence[Piece], horizon_s: float) -> Balance:
-    """Follow the storage through pieces of sending, in time order and apart from each other."""
-    fill_mb, clock_s = craft.start_fill_mb, 0.0
-    sent: list[float] = []
+    """Follow the storage through pieces of sending, in time order and apart from each other, at a steady generation."""
+    return follow_rates(craft.start_fill_mb, craft.storage_mb, [(0.0, horizon_s, craft.generation_mb_per_s)], pieces)
+
+
+def follow_rates(start_mb: float, capacity_mb: float, rates: Rates, pieces: Sequence[Piece]) -> Balance:
+    """The same for any generation: between two instants of either kind both rates are steady."""
+    fill_mb = start_mb
+    sent: dict[int, list[float]] = {k: [] for k in range(len(pieces))}
     lost: list[float] = []
-    for piece in pieces:
-        fill_mb, spilled_mb, _ = _drift(fill_mb, craft, piece.start_s - clock_s, 0.0)
+    edges = sorted({t for start_s, end_s, _ in rates for t in (start_s, end_s)}
+                   | {t for piece in pieces for t in (piece.start_s, piece.end_s)})
+    at = sending = 0
+    for from_s, until_s in pairwise(edges):
+        while rates[at][1] <= from_s and at < len(rates) - 1:
+            at += 1
+        while sending < len(pieces) and pieces[sending].end_s <= from_s:
+            sending += 1
+        active = sending < len(pieces) and pieces[sending].start_s <= from_s
+        link = pieces[sending].rate_mbps / 8.0 if active else 0.0
+        fill_mb, spilled_mb, sent_mb = _drift(fill_mb, rates[at][2], capacity_mb, until_s - from_s, link)
         lost.append(spilled_mb)
-        fill_mb, spilled_mb, sent_mb = _drift(fill_mb, craft, piece.end_s - piece.start_s, piece.rate_mbps / 8.0)
-        lost.append(spilled_mb)
-        sent.append(sent_mb)
-        clock_s = piece.end_s
-    fill_mb, spilled_mb, _ = _drift(fill_mb, craft, horizon_s - clock_s, 0.0)
-    generated_mb = craft.generation_mb_per_s * horizon_s
-    return Balance(
-        craft.start_fill_mb, generated_mb, math.fsum(sent), math.fsum([*lost, spilled_mb]), fill_mb, tuple(sent)
-    )
+        if active:
+            sent[sending].append(sent_mb)
+    volumes = tuple(math.fsum(parts) for parts in sent.values())
+    generated_mb = math.fsum((end_s - start_s) * rate for start_s, end_s, rate in rates)
+    return Balance(start_mb, generated_mb, math.fsum(volumes), math.fsum(lost), fill_mb, volumes)
 
 
-def _drift(fill_mb: float, craft: Spacecraft, seconds: float, rate_mb_per_s: float) -> tuple[float, float, float]:
+def _drift(
+    fill_mb: float, generation: float, capacity_mb: float, seconds: float, rate_mb_per_s: float
+) -> tuple[float, float, float]:
     """Fill at the end of a stretch of constant sending, what spilled, and what was sent [MB]."""
-    growth = craft.generation_mb_per_s - rate_mb_per_s
+    growth = generation - rate_mb_per_s
     if growth >= 0.0:
-        until_full_s = (craft.storage_mb - fill_mb) / growth if growth > 0.0 else math.inf
+        until_full_s = (capacity_mb - fill_mb) / growth if growth > 0.0 else math.inf
         if seconds <= until_full_s:
             return fill_mb + growth * seconds, 0.0, rate_mb_per_s * seconds
-        return craft.storage_mb, growth * (seconds - until_full_s), rate_mb_per_s * seconds
+        return capacity_mb, growth * (seconds - until_full_s), rate_mb_per_s * seconds
     until_dry_s = fill_mb / -growth
     if seconds <= until_dry_s:
         return fill_mb + growth * seconds, 0.0, rate_mb_per_s * seconds
     # Once dry, what is generated goes down at once.
-    return 0.0, 0.0, rate_mb_per_s * until_dry_s + craft.generation_mb_per_s * (seconds - until_dry_s)
+    return 0.0, 0.0, rate_mb_per_s * until_dry_s + generation * (seconds - until_dry_s)
 
 
 def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, Any]) -> Iterator[Fault]:
@@ -85,24 +100,32 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     delivered: list[float] = []
     # A spacecraft that was left out of the run is no part of the plan, and its data no part of the value.
     for name in run.orbits:
-        craft = run.spacecraft[name]
         sending = sorted(by_craft[name], key=lambda pair: pair[1].start_s)
         if any(later.start_s < earlier.end_s for (_, earlier), (_, later) in pairwise(sending)):
             yield Fault("storage", f"spacecraft {name}", "it would send two segments at once; nothing adds up then")
             return
-        balance = follow(craft, [piece for _, piece in sending], run.horizon_s)
+        balances = class_balances(run, name, [piece for _, piece in sending])
+        balance = joint(list(balances.values()))
         tolerance_mb = _A_BYTE_IN_A_GIGABYTE * (balance.start_mb + balance.generated_mb) + _BYTE_MB * (len(sending) + 1)
-        for (contact, piece), sent_mb in zip(sending, balance.sent_mb, strict=True):
-            if differs(piece.volume_mb, sent_mb, tolerance_mb):
-                sentence = f"it brings down {sent_mb:.6f} MB of what is aboard, not {piece.volume_mb:.6f} MB"
+        for k, (contact, piece) in enumerate(sending):
+            if differs(piece.volume_mb, balance.sent_mb[k], tolerance_mb):
+                sentence = f"it brings down {balance.sent_mb[k]:.6f} MB of what is aboard, not {piece.volume_mb:.6f} MB"
                 yield Fault("volume", contact.place, sentence)
-        yield from _check_entry(name, stated.get(name), balance, tolerance_mb)
-        kept_mb = run.policy.left_worth_share * balance.left_mb
-        earned.append(craft.weight * (balance.delivered_mb + kept_mb) - spill_cost * balance.lost_mb)
+            yield from _check_classes(contact, piece, {c: one.sent_mb[k] for c, one in balances.items()}, tolerance_mb)
+        yield from _check_entry(f"spacecraft {name}", stated.get(name), balance, tolerance_mb)
+        if name in run.data:
+            entries = stated[name].get("classes", {}) if isinstance(stated.get(name), Mapping) else {}
+            for item in run.data_of(name):
+                place = f"spacecraft {name}, class {item.name}"
+                yield from _check_entry(place, entries.get(item.name), balances[item.name], tolerance_mb)
+        share = run.policy.left_worth_share
+        earned.extend(item.weight * (balances[item.name].delivered_mb + share * balances[item.name].left_mb)
+                      for item in run.data_of(name))
+        earned.append(-spill_cost * balance.lost_mb)
         delivered.append(balance.delivered_mb)
     for contact in contacts:
         yield from _check_money(run, contact)
-        earned.append(-worth_per_money * _cost(run, contact))
+        earned.append(-worth_per_money * cost_of(run, contact))
     earned.append(-departures(run, contacts)[0])
     for name in sorted(set(stated) - set(run.orbits)):
         yield Fault("storage", f"spacecraft {name}", "it takes no part in the plan, yet the summary has figures for it")
@@ -111,13 +134,51 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     yield from _check_total("volume_mb", summary.get("volume_mb"), math.fsum(delivered))
 
 
-def _check_entry(name: str, entry: Any, balance: Balance, tolerance_mb: float) -> Iterator[Fault]:
-    place = f"spacecraft {name}"
+def class_balances(run: Run, name: str, pieces: Sequence[Piece]) -> dict[str, Balance]:
+    """Where the data of each class of a spacecraft went, by name, what is worth most first.
+
+    The best classes together neither notice the others nor care which of them a MB is of, as the link takes the
+    best first and a full storage gives up the least. So each such group is followed as if it were alone, and a class
+    is the difference of two groups.
+    """
+    capacity_mb = run.spacecraft[name].storage_mb
+    found: dict[str, Balance] = {}
+    rates: Rates = []
+    start_mb, above = 0.0, Balance(0.0, 0.0, 0.0, 0.0, 0.0, (0.0,) * len(pieces))
+    for item in run.data_of(name):
+        rates = added(rates, rates_of(run, name, item))
+        start_mb += item.start_fill_mb
+        group = follow_rates(start_mb, capacity_mb, rates, pieces)
+        figures = {key: getattr(group, key) - getattr(above, key) for key in _FIGURES}
+        sent_mb = tuple(a - b for a, b in zip(group.sent_mb, above.sent_mb, strict=True))
+        found[item.name] = Balance(**figures, sent_mb=sent_mb)
+        above = group
+    return found
+
+
+def joint(balances: Sequence[Balance]) -> Balance:
+    """All classes together."""
+    sent_mb = tuple(map(math.fsum, zip(*(one.sent_mb for one in balances), strict=True)))
+    return Balance(**{key: math.fsum(getattr(one, key) for one in balances) for key in _FIGURES}, sent_mb=sent_mb)
+
+
+def _check_classes(contact: Contact, piece: Piece, sent: Mapping[str, float], tolerance_mb: float) -> Iterator[Fault]:
+    for name in sorted(set(piece.class_mb) - set(sent)):
+        yield Fault("volume", contact.place, f"{contact.spacecraft} has no class of data {name!r}")
+    if len(sent) == 1:
+        return
+    for name, sent_mb in sent.items():
+        stated_mb = piece.class_mb.get(name, 0.0)
+        if differs(stated_mb, sent_mb, tolerance_mb):
+            sentence = f"it brings down {sent_mb:.6f} MB of {name}, not {stated_mb:.6f} MB"
+            yield Fault("volume", contact.place, sentence)
+
+
+def _check_entry(place: str, entry: Any, balance: Balance, tolerance_mb: float) -> Iterator[Fault]:
     if not isinstance(entry, Mapping):
         yield Fault("storage", place, "the summary has no storage figures for it")
         return
-    keys = ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
-    figures = {key: _number(entry.get(key)) for key in keys}
+    figures = {key: _number(entry.get(key)) for key in _FIGURES}
     for key, figure in figures.items():
         expected = getattr(balance, key)
         if differs(figure, expected, tolerance_mb):
@@ -130,17 +191,15 @@ def _check_entry(name: str, entry: Any, balance: Balance, tolerance_mb: float) -
         yield Fault("storage", place, sentence)
 
 
-def _cost(run: Run, contact: Contact) -> float:
-    return run.antennas[contact.antenna].price_per_minute * (contact.end_s - contact.start_s) / 60.0
-
-
 def _check_money(run: Run, contact: Contact) -> Iterator[Fault]:
     """Weight, value and cost of one contact."""
-    weight = run.spacecraft[contact.spacecraft].weight
+    weights = {item.name: item.weight for item in run.data_of(contact.spacecraft)}
+    worth = math.fsum(weights.get(name, 0.0) * mb for piece in contact.pieces for name, mb in piece.class_mb.items())
+    mixed = len(weights) > 1 and contact.volume_mb > 0.0
     for key, figure, expected in (
-        ("weight", contact.weight, weight),
-        ("value", contact.value, weight * contact.volume_mb),
-        ("cost", contact.cost, _cost(run, contact)),
+        ("weight", contact.weight, worth / contact.volume_mb if mixed else max(weights.values())),
+        ("value", contact.value, worth),
+        ("cost", contact.cost, cost_of(run, contact)),
     ):
         if differs(figure, expected, _VALUE_RELATIVE * max(abs(expected), 1.0)):
             yield Fault("value", contact.place, f"its {key} is {figure:.6g}, it should be {expected:.6g}")

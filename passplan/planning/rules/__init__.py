@@ -17,7 +17,9 @@ from passplan.planning.on_air import on_air_needs
 from passplan.planning.problem import Problem
 from passplan.planning.rules.aboard import loaded_needs, loaded_wishes, silences
 from passplan.planning.rules.antenna_time import antenna_time
+from passplan.planning.rules.backhaul import backhaul, backhaul_blocks, backhaul_needs
 from passplan.planning.rules.beams import beams
+from passplan.planning.rules.budget import budget, budget_needs
 from passplan.planning.rules.closures import closure_blocks
 from passplan.planning.rules.command_interval import command_interval
 from passplan.planning.rules.contact_counts import contact_counts, count_needs
@@ -26,11 +28,14 @@ from passplan.planning.rules.decisions import decision_needs, decision_wishes, d
 from passplan.planning.rules.energy import energy
 from passplan.planning.rules.guarantees import guarantee_needs, guarantees
 from passplan.planning.rules.interference import interference
+from passplan.planning.rules.rented import rented_blocks
 from passplan.planning.rules.requests import request_wishes, requests
 from passplan.planning.rules.sending_time import sending_caps, sending_needs, sending_time
+from passplan.planning.rules.shared_equipment import shared_equipment, shared_needs
 from passplan.planning.rules.slew_time import slew_time
 from passplan.planning.rules.slots import slot_blocks
 from passplan.planning.rules.spacecraft_time import spacecraft_time
+from passplan.planning.rules.staffing import staffing_blocks
 from passplan.planning.rules.terms import Rule, Terms
 
 RULES: tuple[Rule, ...] = (
@@ -47,10 +52,16 @@ RULES: tuple[Rule, ...] = (
     interference,
     decisions,
     guarantees,
+    shared_equipment,
+    backhaul,
+    budget,
 )
 BLOCKS: tuple[Callable[[Run], Iterable[Block]], ...] = (
     closure_blocks,
     forbid_blocks,
+    staffing_blocks,
+    rented_blocks,
+    backhaul_blocks,
     slot_blocks,
 )
 WISHES: tuple[Callable[[Run], Iterable[Wish]], ...] = (
@@ -69,6 +80,9 @@ NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
     decision_needs,
     loaded_needs,
     guarantee_needs,
+    shared_needs,
+    backhaul_needs,
+    budget_needs,
 )
 
 

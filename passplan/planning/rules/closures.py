@@ -11,9 +11,12 @@ from passplan.planning.horizon import seconds_of
 
 
 def closure_blocks(run: Run) -> Iterator[Block]:
-    """One block per closure of the calendars."""
+    """One block per closure of the calendars, tentative ones only where the policy keeps them free."""
     for closure in run.closures:
+        if closure.tentative and run.policy.tentative_closures == "plan_through":
+            continue
         yield Block(
             closure.antenna, None, math.floor(seconds_of(run, closure.start_utc)),
             math.ceil(seconds_of(run, closure.end_utc)), "closure",
-            f"{closure.antenna} is closed, or preparing or releasing beside a closure")
+            f"{closure.antenna} is {'tentatively ' if closure.tentative else ''}closed,"
+            " or preparing or releasing beside a closure")

@@ -51,9 +51,13 @@ def carries_mb(problem: Problem) -> Floats:
     link_mb = np.zeros(len(options))
     np.add.at(link_mb, np.repeat(np.arange(len(options)), np.diff(options.piece_offset)),
               options.piece_rate_mb_per_s * (options.piece_end_s - options.piece_start_s))
-    craft = options.spacecraft
-    made_mb = fleet.generation_mb_per_s[craft] * (options.end_s - options.start_s)
-    return np.minimum(link_mb, fleet.capacity_mb[craft] + made_mb)
+    # The last layer of a spacecraft holds all its data.
+    made_mb = np.zeros(len(options))
+    for craft, layers in enumerate(problem.layers):
+        mine = np.flatnonzero(options.spacecraft == craft)
+        before, after = (layers[-1].made(edge[mine].astype(float)) for edge in (options.start_s, options.end_s))
+        made_mb[mine] = after - before
+    return np.minimum(link_mb, fleet.capacity_mb[options.spacecraft] + made_mb)
 
 
 def guarantee_needs(draft: Draft) -> Iterator[GuaranteeNeed]:

@@ -87,6 +87,11 @@ class FleetArrays(NamedTuple):
     most_contacts: int
 
 
+def can_search(problem: Problem) -> bool:
+    """Whether the search's schedule program follows the storage of every spacecraft: one class of data, one rate."""
+    return not any(problem.fleet.streams)
+
+
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
     """Lay a problem out."""
     options, fleet = problem.options, problem.fleet

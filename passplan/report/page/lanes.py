@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from passplan.planning.backlog import Backlog
-from passplan.planning.record import PlanRecord
+from passplan.planning.record import PlanRecord, sending
 from passplan.report.page.axis import Band
 from passplan.report.page.ribbons import (
     UNIT_S,
@@ -74,7 +74,7 @@ def _ribbons(
     numbers = names.antennas if partner == "antenna" else names.spacecraft
     by_window = dict(zip(record.windows["window_id"], tracks, strict=True))
     windows, contacts = grouped(rows(record.windows), own), grouped(rows(record.contacts), own)
-    sent = grouped(rows(record.segments), "contact_id")
+    sent = grouped(rows(sending(record.segments)), "contact_id")
     found = {}
     for name in owners:
         tops: dict[str, float] = {}

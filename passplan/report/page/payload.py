@@ -13,7 +13,7 @@ from passplan.geometry.masks import mask_of
 from passplan.geometry.sun import sun_look_deg
 from passplan.inputs.run import Run
 from passplan.link.choice import STEPPED
-from passplan.planning.record import PlanRecord
+from passplan.planning.record import PlanRecord, sending
 from passplan.report.page.axis import Day
 from passplan.report.page.lanes import Names
 from passplan.report.rows import grouped, rows
@@ -73,7 +73,7 @@ def _site(run: Run, name: str, day: Day) -> dict[str, Any]:
 
 def _contacts(record: PlanRecord, tracks: Sequence[WindowTrack], names: Names, day: Day) -> list[dict[str, Any]]:
     by_window = dict(zip(record.windows["window_id"], tracks, strict=True))
-    pieces = grouped(rows(record.segments), "contact_id")
+    pieces = grouped(rows(sending(record.segments)), "contact_id")
     most = _SAMPLES if len(record.contacts) <= _MANY else _SAMPLES_OF_MANY
     entries = []
     for row in rows(record.contacts):
