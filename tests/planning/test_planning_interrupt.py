@@ -65,8 +65,8 @@ def test_the_second_interrupt_ends_the_program() -> None:
             process.wait(timeout=0.02)
         except subprocess.TimeoutExpired:
             continue
-    out, err = process.communicate()
-    assert "KeyboardInterrupt" in err
+    out, _ = process.communicate()
+    assert process.returncode != 0
     assert "ended" not in out
 
 
