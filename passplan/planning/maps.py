@@ -80,8 +80,8 @@ def worth_by_layers(problem: Problem, maps: StorageMaps, craft: int, mine: Seque
             fill, sent_now, lost_now = maps.apply(row, fill)
             sent, lost = sent + sent_now, lost + over + lost_now
             clock, made = float(options.end_s[o]), float(maps.made_after_mb[row])
-        _, over = _idle(layer, fill, clock, problem.horizon_s, float(layer.made_mb[-1]) - made)
-        worth += layer.weight * sent - layer.spill_cost * (lost + over)
+        left, over = _idle(layer, fill, clock, problem.horizon_s, float(layer.made_mb[-1]) - made)
+        worth += layer.weight * (sent + problem.left_worth_share * left) - layer.spill_cost * (lost + over)
     return worth
 
 

@@ -162,7 +162,9 @@ def _add_storage(block: _Blocks, problem: Problem, craft: int, layer: Layer) -> 
     unit_mb = float(room.max(initial=0.0)) or float(layer.made_mb[-1]) or 1.0
     made = np.diff(layer.made(instants)) / unit_mb
     steps = len(made)
-    fill = block.add_columns(upper=room / unit_mb)
+    left_worth = np.zeros(steps)
+    left_worth[-1] = problem.left_worth_share * layer.weight * unit_mb
+    fill = block.add_columns(upper=room / unit_mb, value=left_worth)
     spill_worth = np.full(steps, -layer.spill_cost * unit_mb)
     lost = block.add_columns(upper=np.full(steps, _INFINITY), value=spill_worth)
     balance_rhs = made.copy()

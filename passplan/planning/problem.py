@@ -212,10 +212,10 @@ class Crowd:
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
-    The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
-    MB, less ``worth_per_money`` x cost, less the ``extra_price`` (m,) of options (none where it is empty), plus
-    ``base_worth``; requirements come before it (see ``rules``). With ``in_order`` it is one of several objectives
-    that are taken one after the other (see ``tiers.py``). ``too_tight`` (k, 2)
+    The objective is the sum over spacecraft of weight x (delivered MB + ``left_worth_share`` x MB left at the end),
+    less ``spill_cost_per_mb`` x lost MB, less ``worth_per_money`` x cost, less the ``extra_price`` (m,) of options
+    (none where it is empty), plus ``base_worth``; requirements come before it (see ``rules``). With ``in_order`` it is
+    one of several objectives that are taken one after the other (see ``tiers.py``). ``too_tight`` (k, 2)
     are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
     records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.
     """
@@ -231,6 +231,7 @@ class Problem:
     crowds: tuple[Crowd, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
+    left_worth_share: float = 0.0
     extra_price: Floats = field(default_factory=lambda: np.zeros(0))
     base_worth: float = 0.0
     in_order: bool = False
@@ -273,6 +274,8 @@ class Limits:
     time_limit_s: float = 60.0
     threads: int = 2
     seed: int = 1
+    # Rounds of the search at most: the one limit besides the gap that ends at the same plan every time.
+    search_rounds: int = 1_000_000
     # Up to this many options the exact model is tried first (see portfolio.py).
     exact_options: int = field(default=8_000)
 

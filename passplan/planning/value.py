@@ -98,14 +98,15 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
             volumes, lost[i], left[i] = run.sent_mb.sum(axis=1).tolist(), run.lost_mb.sum(), run.left_mb.sum()
             worth.update(zip(pieces, run.sent_worth.sum(axis=1).tolist(), strict=True))
             class_mb.update(zip(pieces, run.sent_mb, strict=True))
-            earned.append(float(run.sent_worth.sum()))
+            weights = np.array([one.weight for one in streams])
+            earned.append(float(run.sent_worth.sum()) + problem.left_worth_share * float(weights @ run.left_mb))
         else:
             volumes, lost[i], left[i] = follow_storage(
                 problem.horizon_s, float(fleet.start_fill_mb[i]), float(fleet.generation_mb_per_s[i]),
                 float(fleet.capacity_mb[i]), sending)
             weight = float(fleet.weight[i])
             worth.update((p, weight * mb) for p, mb in zip(pieces, volumes, strict=True))
-            earned.append(weight * math.fsum(volumes))
+            earned.append(weight * (math.fsum(volumes) + problem.left_worth_share * left[i]))
         sent.update(zip(pieces, volumes, strict=True))
     chosen_array = np.array(order, dtype=np.int64)
     cost = math.fsum(options.cost[chosen_array])
@@ -144,8 +145,10 @@ def _freed_s(options: Options, mine: Sequence[int], k: int, keeping: Keeping) ->
 def worth_followed(problem: Problem, craft: int, mine: Sequence[int]) -> float:
     """The part of the objective of one spacecraft with classes and the contacts ``mine``, in time order."""
     run = follow_contacts(problem, craft, mine)
-    cost = problem.worth_per_money * math.fsum(float(problem.options.cost[o]) for o in mine)
-    return float(run.sent_worth.sum()) - problem.spill_cost_per_mb * float(run.lost_mb.sum()) - cost
+    cost = math.fsum(float(problem.price[o]) for o in mine)
+    left = problem.left_worth_share * math.fsum(
+        one.weight * mb for one, mb in zip(problem.fleet.streams_of(craft), run.left_mb.tolist(), strict=True))
+    return float(run.sent_worth.sum()) + left - problem.spill_cost_per_mb * float(run.lost_mb.sum()) - cost
 
 
 def _over(amounts: dict[int, float], options: Options, chosen: Iterable[int]) -> float:

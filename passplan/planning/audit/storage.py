@@ -134,6 +134,7 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
             balance_of = balances[item.name]
             worth = balance_of.worth or tuple(item.weight * mb for mb in balance_of.sent_mb)
             earned.extend(worth)
+            earned.append(run.policy.left_worth_share * item.weight * balance_of.left_mb)
             for (contact, _), share in zip(sending, worth, strict=True):
                 worths[contact.contact_id] = worths.get(contact.contact_id, 0.0) + share
         earned.append(-spill_cost * balance.lost_mb)
