@@ -135,6 +135,11 @@ class Layer:
         """Whether its capacity changes with time."""
         return bool(np.any(self.room_mb != self.room_mb[0]))
 
+    @property
+    def even(self) -> bool:
+        """Whether it generates at one rate, and holds the same, from the start to the end."""
+        return len(self.time_s) == 2 and bool(self.room_mb[0] == self.room_mb[1])
+
     def inner_times(self) -> Floats:
         """Instants within the horizon at which a rate changes."""
         return self.time_s[1:-1]
