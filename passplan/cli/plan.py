@@ -8,7 +8,7 @@ from typing import Annotated, Any
 
 import typer
 
-from passplan.cli.faults import end_with_warnings, reports_faults
+from passplan.cli.faults import WARNED, end_with_warnings, reports_faults
 from passplan.cli.terminal import StartOption, StrictOption, instant, progress, stdout
 
 
@@ -42,6 +42,7 @@ def command(
 ) -> None:
     """Plan the contacts of the horizon, audit the plan, report it, and write it to a directory as a draft."""
     from passplan.inputs.load import load_run
+    from passplan.planning.interrupt import leave
     from passplan.planning.steps import plan_run
     from passplan.report.directory import check_free, read_plan, write_plan
     from passplan.report.export import Wanted, draw
@@ -55,6 +56,8 @@ def command(
     with progress(quiet) as report:
         record = plan_run(run, report, against=earlier)
     write_plan(record, out, replace=replace)
+    if record.summary["stopped_by_hand"]:
+        typer.echo("Stopped by hand: this is the best plan found until then.", err=True)
     if picture is not None:
         draw(Wanted(record, run, out), picture)
     if as_json:
@@ -63,4 +66,7 @@ def command(
         console = stdout()
         print_plan(record, console, full=full, selection=Selection(spacecraft, antenna, site))
         console.print(f"\nPlan written to {out}", style="bold")
-    end_with_warnings(bool(record.summary["warnings"] or record.summary["shortfalls"]), strict)
+    warned = bool(record.summary["warnings"] or record.summary["shortfalls"])
+    if record.summary["stopped_by_hand"]:
+        leave(WARNED if warned and strict else 0)
+    end_with_warnings(warned, strict)

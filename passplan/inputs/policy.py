@@ -64,6 +64,7 @@ class Policy(Record):
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     command_min_s: Annotated[float, Field(ge=1.0, le=7_200.0)] = 120.0
     spill_cost_per_mb: Annotated[float, Field(ge=0.0, le=1e6)] = 0.1
+    left_worth_share: Annotated[float, Field(ge=0.0, le=1.0)] = 0.0
     worth_per_money: Annotated[float, Field(ge=0.0, le=1e6)] = 0.0
     budget_per_day: Annotated[float, Field(ge=0.0, le=1e9)] | None = None
     tentative_closures: Literal["keep_free", "plan_through"] = "keep_free"
@@ -85,6 +86,7 @@ class Policy(Record):
     options_per_window: Annotated[int, Field(ge=1, le=200)] = 12
     gap: Annotated[float, Field(ge=0.0, le=1.0)] = 0.005
     time_limit_s: Annotated[float, Field(gt=0.0, le=86_400.0)] = 60.0
+    search_rounds: Annotated[int, Field(ge=0, le=1_000_000)] = 1_000_000
     threads: Annotated[int, Field(ge=1, le=256)] = 2
     seed: Annotated[int, Field(ge=0, le=2_147_483_647)] = 1
 

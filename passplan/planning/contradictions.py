@@ -108,7 +108,7 @@ class _Suspects:
     def _contradict(self, demands: Sequence[Demand]) -> bool:
         """Whether it is proven that these cannot all be met."""
         terms = only(self.terms, demands)
-        served = least_shortfall(self.problem, terms, self.limits, min(_STEP_S, self.clock.left_s()))
+        served = least_shortfall(self.problem, terms, self.limits, self.clock.part(_STEP_S))
         if served.chosen is not None and total_points(find_shortfalls(terms, served.chosen)) <= _MET:
             return False
         return served.bound > _MET

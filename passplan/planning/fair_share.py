@@ -64,7 +64,7 @@ def _points(problem: Problem, limits: Limits, clock: Clock, enough: float) -> fl
     greedy = total_points(find_shortfalls(terms, plan_greedily(problem, terms, Clock(0.0))))
     if greedy <= enough + _SAME or len(problem.options) > limits.exact_options:
         return greedy
-    served = least_shortfall(problem, terms, limits, min(_STEP_S, clock.left_s()))
+    served = least_shortfall(problem, terms, limits, clock.part(_STEP_S))
     if served.chosen is None:
         return greedy
     return min(greedy, total_points(find_shortfalls(terms, served.chosen)))

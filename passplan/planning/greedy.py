@@ -18,12 +18,20 @@ from passplan.planning.maps import StorageMaps, storage_maps, worth_of
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import AtLeast, Recurrence, Terms, Wanted
+from passplan.planning.search.fill import fill_up
+from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays, load_plan, unload_plan
 
 
 def plan_greedily(
     problem: Problem, terms: Terms, clock: Clock, *, maps: StorageMaps | None = None, begin: Iterable[int] = (),
+    arrays: FleetArrays | None = None,
 ) -> list[int]:
-    """Options of a valid plan, sorted, built on those of ``begin``. Ends early, still valid, when time is up."""
+    """Options of a valid plan, sorted, built on those of ``begin``. Ends early, still valid, when time is up.
+
+    With ``arrays`` most of the work is done by compiled code, which large problems need.
+    """
+    if arrays is not None and not (terms.wanted or terms.recurrences or terms.guarantees):
+        return _filled(arrays, begin, clock)
     builder = _Builder(problem, terms, maps or storage_maps(problem))
     for o in begin:
         builder.take(int(o))
@@ -33,8 +41,16 @@ def plan_greedily(
         builder.cover(need)
     for promise in terms.guarantees:
         builder.reach(promise)
+    if arrays is not None:
+        return _filled(arrays, builder.chosen, clock)
     builder.fill(clock)
     return sorted(builder.chosen)
+
+
+def _filled(arrays: FleetArrays, chosen: Iterable[int], clock: Clock) -> list[int]:
+    taken, size = load_plan(arrays, sorted(chosen))
+    fill_up(arrays, arrays.limit * (1.0 + ROUNDING) + ROUNDING, taken, size, clock)
+    return unload_plan(arrays, taken, size)
 
 
 class _Builder:

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from bisect import bisect_left, insort
-from collections.abc import Iterable
-from typing import NamedTuple
+from collections.abc import Iterable, Iterator
+from typing import Any, NamedTuple
 
 import numpy as np
 
+from passplan.planning.problem import Floats, Integers, offsets_of
 from passplan.planning.rules.terms import Terms
 
 # Amounts are sums of decimals; a limit reached to within this part of it is kept.
@@ -27,16 +28,18 @@ class Occupancy:
 
     def __init__(self, terms: Terms, options: int) -> None:
         self.lanes, self.rows = terms.lanes, terms.rows
-        self._holds: list[list[tuple[int, int, int]]] = [[] for _ in range(options)]
-        for k, lane in enumerate(terms.lanes):
-            for o, a, b in zip(lane.options.tolist(), lane.start_s.tolist(), lane.end_s.tolist(), strict=True):
-                self._holds[o].append((k, a, b))
+        none = np.zeros(0, dtype=np.int64)
+        self._hold = _ByOption(
+            options, [lane.options for lane in terms.lanes],
+            np.repeat(np.arange(len(terms.lanes)), [len(lane.options) for lane in terms.lanes]),
+            np.concatenate([none, *(lane.start_s for lane in terms.lanes)]),
+            np.concatenate([none, *(lane.end_s for lane in terms.lanes)]))
         self._busy: list[list[tuple[int, int, int]]] = [[] for _ in terms.lanes]
-        self._uses: list[list[tuple[int, int, float]]] = [[] for _ in range(options)]
-        for k, rows in enumerate(terms.rows):
-            row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
-            for o, r, amount in zip(rows.options.tolist(), row.tolist(), rows.amounts.tolist(), strict=True):
-                self._uses[o].append((k, r, amount))
+        self._use = _ByOption(
+            options, [rows.options for rows in terms.rows],
+            np.repeat(np.arange(len(terms.rows)), [len(rows.options) for rows in terms.rows]),
+            np.concatenate([none, *(np.repeat(np.arange(len(rows)), np.diff(rows.offset)) for rows in terms.rows)]),
+            np.concatenate([np.zeros(0), *(rows.amounts for rows in terms.rows)]))
         self._load = [np.zeros(len(rows)) for rows in terms.rows]
         self._most = [rows.limit + _ROUNDING * (1.0 + rows.limit) for rows in terms.rows]
         self._chosen: set[int] = set()
@@ -46,12 +49,12 @@ class Occupancy:
         """Whether the option can join those chosen."""
         if option in self._removed or any(True for _ in self._in_lanes(option)):
             return False
-        return not any(self._load[k][r] + amount > self._most[k][r] for k, r, amount in self._uses[option])
+        return not any(self._load[k][r] + amount > self._most[k][r] for k, r, amount in self._use.of(option))
 
     def blockers(self, option: int) -> Iterable[Blocker]:
         """What stands in the way of an option, lanes first. A row that none but the option uses names itself."""
         yield from self._in_lanes(option)
-        for k, r, amount in self._uses[option]:
+        for k, r, amount in self._use.of(option):
             if self._load[k][r] + amount > self._most[k][r]:
                 rows = self.rows[k]
                 members = rows.options[rows.offset[r]:rows.offset[r + 1]].tolist()
@@ -59,7 +62,7 @@ class Occupancy:
                 yield from (Blocker(rows.kind, rows.names[r], o) for o in users)
 
     def _in_lanes(self, option: int) -> Iterable[Blocker]:
-        for k, a, b in self._holds[option]:
+        for k, a, b in self._hold.of(option):
             busy, lane = self._busy[k], self.lanes[k]
             at = bisect_left(busy, (a, -1, -1))
             if at > 0 and busy[at - 1][1] > a:
@@ -70,27 +73,56 @@ class Occupancy:
 
     def add(self, option: int) -> None:
         """Choose an option that fits."""
-        for k, a, b in self._holds[option]:
+        for k, a, b in self._hold.of(option):
             insort(self._busy[k], (a, b, option))
-        for k, r, amount in self._uses[option]:
+        for k, r, amount in self._use.of(option):
             self._load[k][r] += amount
         self._chosen.add(option)
 
     def remove(self, option: int) -> None:
         """Give an option up again."""
-        for k, a, b in self._holds[option]:
+        for k, a, b in self._hold.of(option):
             self._busy[k].remove((a, b, option))
-        for k, r, amount in self._uses[option]:
+        for k, r, amount in self._use.of(option):
             self._load[k][r] -= amount
         self._chosen.remove(option)
 
 
+class _ByOption:
+    """Entries (lane, start, end) or (rows, row, amount), found by option. Lists of lists would take seconds to fill."""
+
+    def __init__(self, options: int, option: list[Integers], *columns: Integers | Floats) -> None:
+        owner = np.concatenate([np.zeros(0, dtype=np.int64), *option])
+        order = np.argsort(owner, kind="stable")
+        self._first = offsets_of(np.bincount(owner, minlength=options))
+        self._columns = [column[order] for column in columns]
+
+    def of(self, option: int) -> Iterator[tuple[int, int, Any]]:
+        """The entries of one option."""
+        mine = slice(self._first[option], self._first[option + 1])
+        first, second, third = (column[mine].tolist() for column in self._columns)
+        return zip(first, second, third, strict=True)
+
+
 def first_conflict(terms: Terms, options: int, chosen: Iterable[int]) -> str | None:
     """A sentence on the first rule that the chosen options break, or None. ``options`` is how many there are."""
-    occupancy = Occupancy(terms, options)
-    for o in chosen:
-        if not occupancy.fits(int(o)):
-            name = next((blocker.name for blocker in occupancy.blockers(int(o))), "a removal")
-            return f"option {int(o)} breaks {name}"
-        occupancy.add(int(o))
+    used = np.zeros(options, dtype=bool)
+    used[list(chosen)] = True
+    for removal in terms.removals:
+        if np.any(used[removal.options]):
+            return f"option {int(removal.options[used[removal.options]][0])} breaks a removal"
+    for lane in terms.lanes:
+        mine = np.flatnonzero(used[lane.options])
+        mine = mine[np.argsort(lane.start_s[mine], kind="stable")]
+        # Of intervals in the order of their starts, two overlap only if some neighbours do.
+        late = np.flatnonzero(lane.start_s[mine][1:] < lane.end_s[mine][:-1])
+        if len(late):
+            return f"option {int(lane.options[mine[late[0] + 1]])} breaks {lane.name}"
+    for rows in terms.rows:
+        row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
+        total = np.bincount(row, weights=rows.amounts * used[rows.options], minlength=len(rows))
+        over = np.flatnonzero(total > rows.limit + _ROUNDING * (1.0 + rows.limit))
+        if len(over):
+            mine = np.flatnonzero(used[rows.options] & (row == over[0]))
+            return f"option {int(rows.options[mine[-1]])} breaks {rows.names[over[0]]}"
     return None

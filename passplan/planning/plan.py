@@ -64,7 +64,7 @@ def make_plan(
     clock = Clock(policy.time_limit_s)
     with clock.stage("options"):
         problem, option_set = build_problem(run, windows, links, interference)
-    limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed)
+    limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed, policy.search_rounds)
     floor = None
     if policy.fairness == "max_min":
         with clock.stage("fairness"):
@@ -115,7 +115,8 @@ def build_problem(
         commands=_command_needs(run, fleet),
         conflicts=tuple(_conflict(fleet, antennas, pair) for pair in disturbing.pairs),
         crowds=tuple(_crowd(fleet, antennas, crowd) for crowd in disturbing.crowds),
-        spill_cost_per_mb=run.policy.spill_cost_per_mb, worth_per_money=run.policy.worth_per_money,
+        spill_cost_per_mb=run.policy.spill_cost_per_mb, left_worth_share=run.policy.left_worth_share,
+        worth_per_money=run.policy.worth_per_money,
         too_tight=too_tight(run, windows, antennas, option_set.options))
     problem = with_changes(run, problem)
     draft = Draft(run, windows, problem, option_set.candidates, tuple(blocks))

@@ -1,22 +1,31 @@
-"""One door to all the ways of finding a plan; what it returns is judged by ``value.account`` alone."""
+"""One door to all the ways of finding a plan; what it returns is judged by ``value.account`` alone.
+
+Independent parts of the network are planned apart. In each, a greedy plan comes first; then the exact model where
+there are few options, and the search where there are many or the model was too hard.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable
-from dataclasses import replace
+from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.certificate import Certificate
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
-from passplan.planning.maps import StorageMaps, storage_maps
+from passplan.planning.interrupt import stops_by_hand
+from passplan.planning.maps import storage_maps
 from passplan.planning.occupancy import first_conflict
+from passplan.planning.overrated import Overrated, find_overrated
+from passplan.planning.parts import Part, independent_parts
 from passplan.planning.problem import Limits, Problem
-from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
+from passplan.planning.result import OPTIMAL_GAP, PlanResult, Proof, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
-from passplan.planning.search.engine import Found, search_plan
-from passplan.planning.search.fleetarrays import NotForSearchError
+from passplan.planning.search.engine import search_plan
+from passplan.planning.search.fleetarrays import can_search, fleet_arrays
+from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.staged import plan_in_order
@@ -35,21 +44,66 @@ def find_plan(
     """A plan for ``problem``, its value and a bound, within the time limit.
 
     ``progress(value, bound, gap)`` is called as they move. Never fails for want of time: the greedy plan
-    stands in. Raises ``RuntimeError`` if a way of planning breaks a rule, which is a fault of the program.
+    stands in; so it does after an interrupt (see ``interrupt.py``). Raises ``RuntimeError`` if a way of planning
+    breaks a rule, which is a fault of the program.
     """
     limits = limits or Limits()
     clock = clock or Clock(limits.time_limit_s)
-    terms = all_terms(problem, rules)
-    if problem.in_order:
-        return plan_in_order(problem, terms, limits, clock, progress)
+    with stops_by_hand(clock):
+        terms = all_terms(problem, rules)
+        if problem.in_order:
+            return plan_in_order(problem, terms, limits, clock, progress)
+        parts = independent_parts(problem, terms)
+        ceilings = [_ceiling(part.problem) for part in parts]
+        value = bound = 0.0
+        found: list[_Outcome] = []
+        for k, part in enumerate(parts):
+            rest = sum(ceilings[k + 1:])
+
+            def tell(now: float, ceiling: float, value: float = value, bound: float = bound + rest) -> None:
+                if progress is not None:
+                    progress(value + now, bound + ceiling, relative_gap(value + now, bound + ceiling))
+
+            share = len(part.options) / max(1, sum(len(other.options) for other in parts[k:]))
+            own = clock if len(parts) == 1 else clock.part(share * clock.left_s())
+            found.append(_plan_part(part, limits, own, ceilings[k], tell))
+            value, bound = value + found[-1].best.account.value, bound + found[-1].bound
+        if len(parts) == 1:
+            best = found[0].best
+        else:
+            chosen = [int(o) for part, outcome in zip(parts, found, strict=True)
+                      for o in part.options[list(outcome.best.chosen)]]
+            best = _Candidate(problem, terms, chosen, "+".join(sorted({outcome.best.path for outcome in found})))
+        proofs = tuple(Proof(part, outcome.certificate) for part, outcome in zip(parts, found, strict=True)
+                       if outcome.certificate is not None)
+        return _conclude(
+            best, terms, sum(o.points_bound for o in found), bound, proofs if len(proofs) == len(parts) else (), limits,
+            clock)
+
+
+@dataclass(frozen=True, eq=False)
+class _Outcome:
+    """What came of a part. ``certificate`` is None where the bound is the ceiling that needs no proof."""
+
+    best: _Candidate
+    points_bound: float
+    bound: float
+    certificate: Certificate | None
+
+
+def _plan_part(
+    part: Part, limits: Limits, clock: Clock, bound: float, tell: Callable[[float, float], None],
+) -> _Outcome:
+    problem, terms = part.problem, part.terms
+    certificate: Certificate | None = None
     with clock.stage("greedy"):
         maps = storage_maps(problem)
-        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps), "greedy")
-    bound = _ceiling(problem) if len(problem.options) else best.account.value
-
-    def tell(value: float, bound: float) -> None:
-        if progress is not None:
-            progress(value, bound, relative_gap(value, bound))
+        arrays = None
+        if len(problem.options) > limits.exact_options and can_search(problem) and compiled_in_time(clock):
+            arrays = fleet_arrays(problem, terms, maps)
+        best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
+    if len(problem.options) == 0:
+        bound = best.account.value
 
     def open_still() -> bool:
         wide = relative_gap(best.account.value, bound) > max(limits.gap, OPTIMAL_GAP)
@@ -59,39 +113,41 @@ def find_plan(
     points_bound = least_points(terms)
     if best.points > points_bound + _SAME_POINTS and not clock.expired():
         with clock.stage("requirements"):
-            served = least_shortfall(problem, terms, limits, 0.25 * clock.left_s())
+            served = least_shortfall(problem, terms, limits, clock.part(0.25 * clock.left_s()))
             points_bound = max(points_bound, served.bound)
-            filled = plan_greedily(problem, terms, clock, maps=maps, begin=served.chosen or ())
+            filled = plan_greedily(problem, terms, clock, maps=maps, begin=served.chosen or (), arrays=arrays)
             best = max(best, _Candidate(problem, terms, filled, "greedy"), key=_Candidate.rank)
     if open_still() and len(problem.options) <= limits.exact_options:
         # Half of the time: the search takes the other half where the model is too hard after all.
-        solved = most_value(problem, terms, limits, clock, best.points, 0.5 * clock.left_s())
-        bound = min(bound, solved.bound)
-        best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
-        tell(best.account.value, bound)
-    if open_still():
+        half, overrated = clock.part(0.5 * clock.left_s()), list[Overrated]()
+        while open_still() and not half.expired():
+            solved = most_value(problem, terms, limits, half, best.points, overrated=overrated)
+            if solved.bound < bound:
+                bound, certificate = solved.bound, solved.certificate
+            best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
+            tell(best.account.value, bound)
+            news = find_overrated(problem, maps, solved.chosen or (), overrated)
+            if solved.chosen is None or not news:
+                break
+            overrated += news
+    if open_still() and can_search(problem) and compiled_in_time(clock):
         with clock.stage("search"):
-            found = _search(problem, terms, maps, limits, clock, best, tell)
-        if found is not None:
-            candidate = _Candidate(problem, terms, found.chosen, "search")
-            bound = found.bound if candidate.points < best.points - _SAME_POINTS else min(bound, found.bound)
-            best = max(best, candidate, key=_Candidate.rank)
+            if arrays is None:
+                arrays = fleet_arrays(problem, terms, maps)
+            base = problem.base_worth
+            found = search_plan(
+                arrays, terms, limits, clock, best.chosen, best.points, lambda v, b: tell(v + base, b + base))
+        candidate = _Candidate(problem, terms, found.chosen, "search")
+        # With fewer points, more plans compete than the bound so far is for.
+        if candidate.points < best.points - _SAME_POINTS or found.bound + base < bound:
+            bound, certificate = found.bound + base, found.certificate
+        best = max(best, candidate, key=_Candidate.rank)
     with clock.stage("tidy"):
-        tidied = _Candidate(problem, terms, tidy(problem, terms, maps, best.chosen), best.path)
-        best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
-    return _conclude(best, terms, points_bound, bound, limits, clock)
-
-
-def _search(
-    problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, best: _Candidate,
-    tell: Callable[[float, float], None],
-) -> Found | None:
-    base = problem.base_worth
-    try:
-        found = search_plan(problem, terms, maps, limits, clock, best.chosen, lambda v, b: tell(v + base, b + base))
-    except NotForSearchError:
-        return None
-    return None if found is None else replace(found, bound=found.bound + base)
+        touched = tidy(problem, terms, maps, best.chosen, arrays)
+        if touched != list(best.chosen):
+            tidied = _Candidate(problem, terms, touched, best.path)
+            best = max(best, tidied, key=lambda c: (*c.rank(), -len(c.chosen)))
+    return _Outcome(best, points_bound, bound, certificate)
 
 
 class _Candidate:
@@ -113,7 +169,8 @@ class _Candidate:
 
 
 def _conclude(
-    best: _Candidate, terms: Terms, points_bound: float, bound: float, limits: Limits, clock: Clock,
+    best: _Candidate, terms: Terms, points_bound: float, bound: float, proofs: tuple[Proof, ...], limits: Limits,
+    clock: Clock,
 ) -> PlanResult:
     value = best.account.value
     bound = max(bound, value)
@@ -122,9 +179,10 @@ def _conclude(
     if terms.wanted or terms.recurrences or terms.guarantees:
         floor = min(points_bound, best.points)
         tiers.insert(0, Tier("shortfalls", "least", best.points, floor, relative_gap(-best.points, -floor)))
+    status = status_of(gap, limits.gap, best.path, len(best.chosen))
     return PlanResult(
-        best.chosen, status_of(gap, limits.gap, best.path, len(best.chosen)), value, bound, gap, tuple(tiers),
-        best.shortfalls, best.account, best.path, dict(clock.seconds))
+        best.chosen, "stopped_by_limit" if clock.stopped and status == "greedy" else status, value, bound, gap,
+        tuple(tiers), best.shortfalls, best.account, best.path, dict(clock.seconds), proofs, clock.stopped)
 
 
 def _ceiling(problem: Problem) -> float:

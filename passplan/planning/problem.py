@@ -14,7 +14,7 @@ from typing import Any, Literal, TypeVar
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from passplan.planning.streams import Layer, Stream, layers_of, steady
+from passplan.planning.streams import Keeping, Layer, Stream, is_loose, layers_of, steady
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -28,7 +28,8 @@ class Fleet:
     """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB].
 
     ``streams`` are the classes of data of each spacecraft by falling weight, none for one with a single class at a
-    steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill.
+    steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill; and
+    ``keeping`` says how each storage loses and frees data (absent: as :class:`Keeping` has it by default).
     """
 
     names: tuple[str, ...]
@@ -37,6 +38,7 @@ class Fleet:
     capacity_mb: Floats
     start_fill_mb: Floats
     streams: tuple[tuple[Stream, ...], ...] = ()
+    keeping: tuple[Keeping, ...] = ()
 
     def __post_init__(self) -> None:
         _freeze(self)
@@ -53,6 +55,16 @@ class Fleet:
     def streams_of(self, craft: int) -> tuple[Stream, ...]:
         """The classes of one spacecraft, none where the arrays say all."""
         return self.streams[craft] if self.streams else ()
+
+    def keeping_of(self, craft: int) -> Keeping:
+        """How the storage of one spacecraft loses and frees data."""
+        return self.keeping[craft] if self.keeping else Keeping()
+
+    @cached_property
+    def loose(self) -> frozenset[int]:
+        """Spacecraft of which layers tell no more than a ceiling; see :mod:`passplan.planning.streams`."""
+        return frozenset(
+            k for k in range(len(self)) if self.streams_of(k) and is_loose(self.streams_of(k), self.keeping_of(k)))
 
     def __len__(self) -> int:
         return len(self.names)
@@ -249,10 +261,10 @@ class Crowd:
 class Problem:
     """Everything that the plan depends on. ``horizon_s`` is the length of the horizon.
 
-    The objective is the sum over spacecraft of weight x delivered MB, less ``spill_cost_per_mb`` x lost
-    MB, less ``worth_per_money`` x cost, less the ``extra_price`` (m,) of options (none where it is empty), plus
-    ``base_worth``; requirements come before it (see ``rules``). With ``in_order`` it is one of several objectives
-    that are taken one after the other (see ``tiers.py``). ``too_tight`` (k, 2)
+    The objective is the sum over spacecraft of weight x (delivered MB + ``left_worth_share`` x MB left at the end),
+    less ``spill_cost_per_mb`` x lost MB, less ``worth_per_money`` x cost, less the ``extra_price`` (m,) of options
+    (none where it is empty), plus ``base_worth``; requirements come before it (see ``rules``). With ``in_order`` it is
+    one of several objectives that are taken one after the other (see ``tiers.py``). ``too_tight`` (k, 2)
     are pairs of options of one antenna, the earlier first, between which it cannot turn in time. ``needs`` are
     records that rules made for themselves; each rule asks for its own with :meth:`needs_of`.
     """
@@ -268,6 +280,7 @@ class Problem:
     crowds: tuple[Crowd, ...] = ()
     spill_cost_per_mb: float = 0.0
     worth_per_money: float = 0.0
+    left_worth_share: float = 0.0
     extra_price: Floats = field(default_factory=lambda: np.zeros(0))
     base_worth: float = 0.0
     in_order: bool = False
@@ -310,6 +323,8 @@ class Limits:
     time_limit_s: float = 60.0
     threads: int = 2
     seed: int = 1
+    # Rounds of the search at most: the one limit besides the gap that ends at the same plan every time.
+    search_rounds: int = 1_000_000
     # Up to this many options the exact model is tried first (see portfolio.py).
     exact_options: int = field(default=8_000)
 

@@ -5,12 +5,16 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import Literal
 
+from passplan.planning.certificate import Certificate
+from passplan.planning.parts import Part
 from passplan.planning.shortfalls import Shortfall
 from passplan.planning.value import Account
 
 Status = Literal["optimal", "within_gap", "stopped_by_limit", "greedy", "empty"]
 # Below this relative gap a plan is called optimal: solvers work to such tolerances themselves.
 OPTIMAL_GAP = 1e-5
+# Worth of less than a byte of weight one: values that should be nothing are off by rounding.
+_NOTHING = 1e-9
 
 
 @dataclass(frozen=True)
@@ -25,12 +29,21 @@ class Tier:
 
 
 @dataclass(frozen=True, eq=False)
+class Proof:
+    """Why the bound of an independent part of the problem holds; the bounds of the parts add up."""
+
+    part: Part
+    certificate: Certificate
+
+
+@dataclass(frozen=True, eq=False)
 class PlanResult:
     """A plan over a :class:`~passplan.planning.problem.Problem`.
 
     ``chosen`` are option indices, sorted. ``value`` is recomputed by ``value.account``; ``bound`` is a
     ceiling that no plan over the same options with as few shortfalls can exceed. ``path`` names the way the
-    plan was found: ``exact``, ``search`` or ``greedy``. ``seconds`` are by stage.
+    plan was found: ``exact``, ``search`` or ``greedy``, several joined by ``+`` where independent parts went
+    different ways. ``proofs`` is empty where the bound is only that all data comes down. ``seconds`` are by stage.
     """
 
     chosen: tuple[int, ...]
@@ -43,11 +56,13 @@ class PlanResult:
     account: Account
     path: str
     seconds: dict[str, float] = field(default_factory=dict)
+    proofs: tuple[Proof, ...] = ()
+    stopped_by_hand: bool = False
 
 
 def relative_gap(value: float, bound: float) -> float:
     """(bound - value) / |bound|, as the gap is stated everywhere; 0 when both are 0, capped at 1e9."""
-    if bound <= value:
+    if bound - value <= _NOTHING:
         return 0.0
     if bound == float("inf") or bound == 0.0:
         return 1e9

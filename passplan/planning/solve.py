@@ -7,21 +7,26 @@ instance tried, and closed less of the gap; it stands in where HiGHS fails.
 from __future__ import annotations
 
 import datetime as dt
-import time
+import threading
 from collections.abc import Sequence
-from dataclasses import dataclass
+from contextlib import suppress
+from dataclasses import dataclass, replace
 
 import numpy as np
 from ortools.math_opt import model_pb2
 from ortools.math_opt.python import mathopt
 
+from passplan.planning.certificate import ModelCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.model import PlanModel, build_model
+from passplan.planning.overrated import Overrated
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.rules.terms import Terms
 
 # Points are sums of whole requests and seconds over hours; closer than this they are the same.
 _POINTS_TOLERANCE = 1e-7
+# How often the clock is looked at while a solver runs.
+_LOOK_S = 0.05
 _WRONG = (mathopt.TerminationReason.INFEASIBLE, mathopt.TerminationReason.INFEASIBLE_OR_UNBOUNDED)
 _SOLVERS = (mathopt.SolverType.HIGHS, mathopt.SolverType.GSCIP)
 
@@ -36,32 +41,38 @@ class Solved:
 
     chosen: tuple[int, ...] | None
     bound: float
+    certificate: ModelCertificate | None = None
 
 
-def least_shortfall(problem: Problem, terms: Terms, limits: Limits, seconds: float) -> Solved:
+def least_shortfall(problem: Problem, terms: Terms, limits: Limits, clock: Clock) -> Solved:
     """Tier 1: options that leave the fewest points of shortfall; they need not bring anything down."""
     model = build_model(problem, terms, storage=False)
-    answer = _solve(model.proto(tier=1), model, limits, seconds, 0.0)
+    answer = _solve(model.proto(tier=1), model, limits, clock, 0.0)
     return Solved(answer.chosen, -float("inf") if answer.bound is None else answer.bound)
 
 
 def most_value(
-    problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float, seconds: float,
-    holds: Sequence[tuple[Problem, float]] = (),
+    problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float,
+    holds: Sequence[tuple[Problem, float]] = (), overrated: Sequence[Overrated] = (),
 ) -> Solved:
     """Tier 2: the most valuable options among those with at most ``points`` of shortfall.
 
-    ``holds`` are the same problem with other objectives, each with the value that is not to be given up.
+    ``holds`` are the same problem with other objectives, each with the value that is not to be given up;
+    ``overrated`` are choices of which the model thinks too much.
     """
-    stop_s = clock.elapsed_s() + seconds
     with clock.stage("model"):
-        model = build_model(problem, terms)
+        model = build_model(problem, terms, overrated=overrated)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
-        held = [(build_model(other, terms).value, least - other.base_worth) for other, least in holds]
+        unpriced = [replace(one, worth=0.0) for one in overrated]
+        held = [(build_model(other, terms, overrated=unpriced).value, least - other.base_worth)
+                for other, least in holds]
         proto = model.proto(tier=2, points_limit=limit, holds=held)
     with clock.stage("solve"):
-        answer = _solve(proto, model, limits, stop_s - clock.elapsed_s(), limits.gap)
-    return Solved(answer.chosen, float("inf") if answer.bound is None else answer.bound + problem.base_worth)
+        answer = _solve(proto, model, limits, clock, limits.gap)
+    if answer.bound is None:
+        return Solved(answer.chosen, float("inf"))
+    bound = answer.bound + problem.base_worth
+    return Solved(answer.chosen, bound, None if holds else ModelCertificate(model, limit, bound))
 
 
 @dataclass(frozen=True)
@@ -71,21 +82,42 @@ class _Answer:
     bound: float | None
 
 
-def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, seconds: float, gap: float) -> _Answer:
-    stop_s = time.perf_counter() + seconds
+def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, clock: Clock, gap: float) -> _Answer:
     for solver in _SOLVERS:
-        left_s = max(stop_s - time.perf_counter(), 0.01)
         parameters = mathopt.SolveParameters(
-            time_limit=dt.timedelta(seconds=left_s), random_seed=limits.seed, relative_gap_tolerance=gap)
-        try:
-            result = mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters)
-        except Exception:  # the errors of the solvers share no type
+            time_limit=dt.timedelta(seconds=max(clock.left_s(), 0.01)), random_seed=limits.seed,
+            relative_gap_tolerance=gap)
+        result = _run(proto, solver, parameters, clock)
+        if clock.stopped:
+            break
+        if result is None:
             # HiGHS gives up on a sound model now and then (kError); the next one takes over.
             continue
         if result.has_primal_feasible_solution() or result.termination.reason not in _WRONG:
             return _answer(result, model)
         # A plan is known, so there is one: the solver has fallen over its own tolerances.
     return _Answer(None, 0.0, None)
+
+
+def _run(
+    proto: model_pb2.ModelProto, solver: mathopt.SolverType, parameters: mathopt.SolveParameters, clock: Clock,
+) -> mathopt.SolveResult | None:
+    """The solver's result; None where it raised something, or the clock was stopped by hand.
+
+    HiGHS cannot be interrupted: after a stop it is left to run out behind.
+    """
+    outcome: list[mathopt.SolveResult] = []
+
+    def work() -> None:
+        # The errors of the solvers share no type.
+        with suppress(Exception):
+            outcome.append(mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters))
+
+    thread = threading.Thread(target=work, daemon=True)
+    thread.start()
+    while thread.is_alive() and not clock.stopped:
+        thread.join(_LOOK_S)
+    return outcome[0] if outcome else None
 
 
 def _answer(result: mathopt.SolveResult, model: PlanModel) -> _Answer:

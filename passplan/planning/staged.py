@@ -24,7 +24,8 @@ from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import NotForSearchError
+from passplan.planning.search.fleetarrays import can_search, fleet_arrays
+from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -102,7 +103,7 @@ class _Staged:
         if self.best.points <= floor + _SAME or self.clock.expired():
             return floor
         with self.clock.stage("requirements"):
-            served = least_shortfall(self.problem, self.terms, self.limits, 0.25 * self.clock.left_s())
+            served = least_shortfall(self.problem, self.terms, self.limits, self.clock.part(0.25 * self.clock.left_s()))
             filled = plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps, begin=served.chosen or ())
         self._offer(filled, "greedy")
         return max(floor, served.bound)
@@ -110,7 +111,7 @@ class _Staged:
     def _aim(self, k: int) -> float:
         """Plan for one objective and return its bound, the earlier ones held at what the plan has reached."""
         aim, bound = self.aims[k], self.aims[k].ceiling
-        time = Clock(_SHARES[k] * self.clock.left_s())
+        time = self.clock.part(_SHARES[k] * self.clock.left_s())
 
         def open_still() -> bool:
             wide = relative_gap(self.best.reached[k], bound) > max(self.limits.gap, OPTIMAL_GAP)
@@ -120,7 +121,7 @@ class _Staged:
             holds = [(other.problem, reached - 0.5 * _SAME * max(1.0, abs(reached)))
                      for other, reached in zip(self.aims[:k], self.best.reached, strict=False)]
             solved = most_value(
-                aim.problem, self.terms, self.limits, time, self.best.points, 0.5 * time.left_s(), holds)
+                aim.problem, self.terms, self.limits, time.part(0.5 * time.left_s()), self.best.points, holds)
             bound = min(bound, solved.bound)
             if solved.chosen is not None:
                 self._offer(solved.chosen, "exact")
@@ -142,13 +143,12 @@ class _Staged:
         def tell(_: float, above: float) -> None:
             self._say(k, min(bound, above + total.base_worth - held))
 
-        try:
-            found = search_plan(total, self.terms, self.maps, limits, time, self.best.chosen, tell)
-        except NotForSearchError:
+        if not (can_search(total) and compiled_in_time(time)):
             return bound
-        if found is None:
+        arrays, points = fleet_arrays(total, self.terms, self.maps), self.best.points
+        if not len(arrays.option):
             return bound
-        points = self.best.points
+        found = search_plan(arrays, self.terms, limits, time, self.best.chosen, points, tell)
         self._offer(found.chosen, "search")
         # The bound is over plans with as few points as the search's own.
         fewer = self.best.points < points - _SAME
@@ -181,7 +181,7 @@ class _Staged:
         return PlanResult(
             best.chosen, status_of(value.gap, self.limits.gap, best.path, len(best.chosen)), value.value, value.bound,
             value.gap, tuple(tiers), best.shortfalls, account(self.problem, best.chosen), best.path,
-            dict(self.clock.seconds))
+            dict(self.clock.seconds), stopped_by_hand=self.clock.stopped)
 
 
 def _silent(_value: float, _bound: float, _gap: float) -> None:

@@ -47,6 +47,7 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
         "windows": len(windows), "contacts": len(plan.contacts),
         "volume_mb": float(np.sum(account.delivered_mb)), "value": result.value, "bound": _finite(result.bound),
         "gap": _finite(result.gap), "cost": account.cost, "path": result.path,
+        "stopped_by_hand": result.stopped_by_hand,
         "tiers": [
             {"name": t.name, "sense": t.sense, "value": t.value, "bound": _finite(t.bound), "gap": _finite(t.gap)}
             for t in result.tiers

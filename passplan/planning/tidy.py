@@ -13,15 +13,18 @@ from passplan.planning.greedy import gain_of, plan_greedily
 from passplan.planning.maps import StorageMaps
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Terms
+from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.shortfalls import find_shortfalls, total_points
 
 # Seconds that the touch may take; the search's own time limit is over by then.
 _LIMIT_S = 2.0
 
 
-def tidy(problem: Problem, terms: Terms, maps: StorageMaps, chosen: Iterable[int]) -> list[int]:
+def tidy(
+    problem: Problem, terms: Terms, maps: StorageMaps, chosen: Iterable[int], arrays: FleetArrays | None = None,
+) -> list[int]:
     """The plan without contacts that add nothing, and with those that fit and do. Never worth less."""
-    kept = plan_greedily(problem, terms, Clock(_LIMIT_S), maps=maps, begin=chosen)
+    kept = plan_greedily(problem, terms, Clock(_LIMIT_S), maps=maps, begin=chosen, arrays=arrays)
     points = total_points(find_shortfalls(terms, kept))
     options = problem.options
     of_craft: dict[int, list[int]] = {}

@@ -10,6 +10,7 @@ from planning_cases import random_problem
 
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Antennas, Fleet, Limits, Options, Problem, Windows
+from passplan.planning.value import account
 
 EXACT = Limits(gap=0.0)
 SEEDS = range(300, 325)
@@ -85,3 +86,15 @@ def shuffled(problem: Problem, seed: int) -> Problem:
 def _renumbered(options: Options, window: np.ndarray, craft: np.ndarray, dish: np.ndarray) -> Options:
     return replace(options, window=window[options.window], spacecraft=craft[options.spacecraft],
                    antenna=dish[options.antenna])
+
+
+@pytest.mark.parametrize("share", [0.3, 1.0])
+@pytest.mark.parametrize("seed", SEEDS)
+def test_worth_of_what_is_left_never_lowers_what_comes_down_and_what_is_kept_together(seed: int, share: float) -> None:
+    problem = random_problem(seed, needs=False)
+    kept = replace(problem, left_worth_share=share)
+    without = find_plan(problem, EXACT).chosen
+    assert optimum(kept) >= account(kept, without).value - 1e-5
+    by_search = find_plan(kept, Limits(gap=0.0, exact_options=0, time_limit_s=300.0))
+    assert by_search.bound >= optimum(kept) - 1e-5
+    assert close(by_search.value, optimum(kept))

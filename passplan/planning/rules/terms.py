@@ -12,7 +12,7 @@ Lane         at most one option at a time             one row per maximal clique
 Rows         amounts add up to at most a limit        the rows                        running loads; prices
 Wanted       one of these options, or a shortfall     covering row with slack         bit of a label
 Recurrence   covered time, or a shortfall             counting rows with slack        last end in a label
-AtLeast      amounts add up to a need, or shortfall   covering row with slack         running loads
+AtLeast      amounts add up to a need, or shortfall   covering row with slack         kept as it is found
 ===========  =======================================  ==============================  =====================
 
 Shortfalls are counted in points and are minimised before any value is looked at (tier 1).

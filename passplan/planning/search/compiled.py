@@ -17,3 +17,8 @@ F = TypeVar("F", bound=Callable[..., Any])
 def compiled(function: F) -> F:
     """Compile a function of arrays and numbers; it may run beside others in threads."""
     return cast(F, numba.njit(cache=True, nogil=True, fastmath=False)(function))
+
+
+def inlined(function: F) -> F:
+    """Compile a small function into each of its callers: a call that hands on many arrays costs more than it does."""
+    return cast(F, numba.njit(cache=True, nogil=True, fastmath=False, forceinline=True)(function))

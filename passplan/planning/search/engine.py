@@ -1,178 +1,199 @@
 """Search and bound together, in rounds of fixed work, until they meet or the time is up.
 
-In each round the prices take some steps and the plan is rebuilt some times, side by side where there are
-threads for it. Each uses what the other knew when the round began, so that the outcome does not depend on
-which is faster: a search that ends by its gap gives the same plan every time, on any number of threads.
-One that ends by the clock stops after as many rounds as the machine managed.
+In each round the prices take some steps and the plan is rebuilt, side by side where there are threads for it. Where
+the bound has come to rest and the plan has not, all threads rebuild, each a part of the fleet. Each uses what
+the others knew when the round began, and work is counted in labels, not in seconds, so that the outcome does not
+depend on which is faster: a search that ends by its gap or its rounds gives the same plan every time. One that ends
+by the clock stops after as many rounds as the machine managed.
 """
 
 from __future__ import annotations
 
 import math
-import threading
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 
+from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
-from passplan.planning.maps import StorageMaps
-from passplan.planning.problem import Floats, Limits, Problem
+from passplan.planning.problem import Flags, Floats, Integers, Limits
 from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
-from passplan.planning.search.bound import BoundSearch, Sweeper, option_prices
-from passplan.planning.search.fleetarrays import FleetArrays, find_clashes, fleet_arrays
+from passplan.planning.search.bound import BoundSearch, Sweeper, certificate_of, option_prices
+from passplan.planning.search.fleetarrays import FleetArrays, load_plan, unload_plan
 from passplan.planning.search.labels import make_work
-from passplan.planning.search.rebuild import MOST_CONTACTS, rebuild
+from passplan.planning.search.rebuild import Ground, rebuild
 from passplan.planning.search.schedule import worth_of
 
-# A round is about this many options looked at: some tenths of a second.
-_ROUND_OPTIONS = 400_000
+# A round is about this many labels: some tenths of a second.
+_ROUND_LABELS = 4_000_000
+_MOST_SWEEPS = 20
+# Before the first sweep nobody knows how many labels there are to an option.
+_LABELS_PER_OPTION = 15
 _MOST_OUT = 10
 # Loss accepted at first, as a part of what a contact is worth on average, round by round.
 _WARMTH = (0.0, 0.02, 0.1, 0.5)
-_PATIENCE_ROUNDS = 200
+_PATIENCE_ROUNDS = 80
+# Fleets below this are never rebuilt in parts.
+_LEAST_PART = 20
+# So many rounds with bound first; then the bound moves at least every so many.
+_ROUNDS_WITH_BOUND, _BOUND_EVERY = 10, 5
+_RATE_MEMORY = 0.7
+# Free cliques are dealt out in runs of neighbours, as a contact needs several of them.
+_RUN = 64
 
 
 @dataclass(frozen=True, eq=False)
 class Found:
-    """What the search found: options of the plan, its bound, and the prices that prove it."""
+    """What the search found: options of the plan, its bound, and the prices that prove it.
+
+    ``left_alone`` counts spacecraft whose contacts serve a requirement that the search cannot count.
+    """
 
     chosen: tuple[int, ...]
     bound: float
-    clique_price: Floats
-    point_worth: float
+    certificate: PriceCertificate
     rounds: int
+    left_alone: int
 
 
 def search_plan(
-    problem: Problem, terms: Terms, maps: StorageMaps, limits: Limits, clock: Clock, start: Sequence[int],
+    arrays: FleetArrays, terms: Terms, limits: Limits, clock: Clock, start: Sequence[int], points: float,
     tell: Callable[[float, float], None] | None = None,
-) -> Found | None:
-    """Improve the plan ``start`` and bound it. None if there is nothing to choose from, or if the time ran out
-    before the code was compiled.
+) -> Found:
+    """Improve the plan ``start`` (options by number) of ``points`` of shortfall, and bound it.
 
-    Raises :class:`~passplan.planning.search.fleetarrays.NotForSearchError` where the terms do not fit.
     ``tell(value, bound)`` is called after each round.
     """
-    if not _compiled_in_time(clock):
-        return None
-    arrays = fleet_arrays(problem, terms, maps)
-    if not len(arrays.option):
-        return None
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
-        return _Rounds(problem, arrays, limits, start, pool, threads).run(clock, tell)
+        return _Rounds(arrays, limits, start, points, pool, threads).run(terms, clock, tell)
 
 
 class _Rounds:
     def __init__(
-        self, problem: Problem, arrays: FleetArrays, limits: Limits, start: Sequence[int], pool: ThreadPoolExecutor,
+        self, arrays: FleetArrays, limits: Limits, start: Sequence[int], points: float, pool: ThreadPoolExecutor,
         threads: int,
     ) -> None:
         self.arrays, self.limits, self.pool, self.threads = arrays, limits, pool, threads
-        count = len(arrays.craft)
-        self.taken = np.zeros((count, MOST_CONTACTS), dtype=np.int64)
-        self.size = np.zeros(count, dtype=np.int64)
-        self._load(problem, start)
-        self.best_taken, self.best_size = self.taken.copy(), self.size.copy()
+        self.workers = max(2, threads)
+        self.taken, self.size = load_plan(arrays, start)
+        fixed = np.array([bool(arrays.uncounted[self.taken[i, : self.size[i]]].any()) for i in range(len(self.size))])
+        self.movable = ~fixed
         # Points before value: a second of a command interval outweighs what it can be traded for.
-        self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + problem.spill_cost_per_mb) @ (
+        self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + arrays.spill) @ (
             arrays.craft[:, 3] + arrays.craft[:, 1] * arrays.horizon_s)))
         self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
-        self.work = make_work()
+        self.work = [make_work() for _ in range(self.workers)]
         self.value, self.points = self._worth()
+        # What the search does not count stays as it is.
+        self.more_points = points - self.points
         self.bounds = BoundSearch(
-            arrays, self.sweeper, self.points, self._first_point_worth(problem), self._contact_worth())
+            arrays, self.sweeper, points, self._first_point_worth(), abs(self.value), self._contact_worth())
+        self.bound_rate = self.value_rate = 0.0
 
-    def run(self, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
-        options = max(1, len(self.arrays.option))
-        sweeps = max(2, min(40, _ROUND_OPTIONS // options))
-        rebuilds = max(20, min(2_000, sweeps * len(self.arrays.craft) // 3))
-        rounds, idle = 0, 0
-        while not clock.expired():
-            prices = option_prices(self.arrays, self.bounds.best_price)
-            before = self.value, self.bounds.bound
-            if self.threads > 1:
-                beside = self.pool.submit(self._rebuild, rounds, rebuilds, prices)
-                self.bounds.improve(sweeps, before[0])
-                beside.result()
-            else:
-                self._rebuild(rounds, rebuilds, prices)
-                self.bounds.improve(sweeps, before[0])
+    def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
+        effort = 1 + _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
+        sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))
+        rounds, idle, round_s = 0, 0, 0.0
+        while not clock.expired() and rounds < self.limits.search_rounds:
+            began_s, before = clock.elapsed_s(), (self.value, self.bounds.bound)
+            # What ends by the clock need not be the same every time: the last round is as short as it must be.
+            part = min(1.0, clock.left_s() / round_s) if round_s > 0.0 else 1.0
+            with_bound = (
+                rounds < _ROUNDS_WITH_BOUND or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
+            spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, int(part * sweeps * effort))
+            if spent:
+                effort = spent // sweeps
             rounds += 1
+            round_s = max(clock.elapsed_s() - began_s, round_s if part < 1.0 else 0.0)
             self.value, points = self._worth()
             if points < self.points - 1e-9:
                 self.points = points
-                self.bounds.restart(points)
+                self.bounds.restart(points + self.more_points)
+            self._learn(before, with_bound)
             idle = 0 if (self.value, self.bounds.bound) != before else idle + 1
             if tell is not None:
                 tell(self.value, self.bounds.bound)
             gap = relative_gap(self.value, self.bounds.bound)
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
-        chosen = sorted(int(self.arrays.option[o])
-                        for i in range(len(self.best_size)) for o in self.best_taken[i, : self.best_size[i]])
-        return Found(tuple(chosen), self.bounds.bound, self.bounds.best_price, self.bounds.point_worth, rounds)
+        return Found(
+            tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound,
+            certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()))
 
-    def _rebuild(self, round_number: int, iterations: int, prices: Floats) -> None:
-        warmth = _WARMTH[round_number % len(_WARMTH)] * self._contact_worth()
-        self.taken[:], self.size[:] = self.best_taken, self.best_size
-        seed = (self.limits.seed * 1_000_003 + round_number) % 2**32
-        rebuild(self.arrays, seed, iterations, warmth, _MOST_OUT, prices, self.point_worth,
-                self.work, self.taken, self.size, self.best_taken, self.best_size)
+    def _round(self, number: int, sweeps: int, effort: int) -> int:
+        """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
+        prices = option_prices(self.arrays, self.bounds.best_price)
+        if sweeps == 0 and self.movable.sum() >= _LEAST_PART:
+            grounds = self._parts(number)
+        else:
+            grounds = [Ground(self.movable, *self._everything())]
+        jobs = [partial(self._rebuild, number, k, effort, prices, ground) for k, ground in enumerate(grounds)]
+        if self.threads == 1:
+            results = [job() for job in jobs]
+            spent = self._improve(sweeps)
+        else:
+            futures = [self.pool.submit(job) for job in jobs]
+            spent = self._improve(sweeps)
+            results = [future.result() for future in futures]
+        for ground, (taken, size) in zip(grounds, results, strict=True):
+            self.taken[ground.crafts], self.size[ground.crafts] = taken[ground.crafts], size[ground.crafts]
+        return spent
+
+    def _improve(self, sweeps: int) -> int:
+        if sweeps == 0:
+            return 0
+        before = sum(int(work.spent[0]) for work in self.sweeper.work)
+        self.bounds.improve(sweeps, self.value)
+        return sum(int(work.spent[0]) for work in self.sweeper.work) - before
+
+    def _rebuild(
+        self, number: int, worker: int, effort: int, prices: Floats, ground: Ground,
+    ) -> tuple[Integers, Integers]:
+        warmth = _WARMTH[number % len(_WARMTH)] * self._contact_worth()
+        taken, size = self.taken.copy(), self.size.copy()
+        seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32
+        rebuild(self.arrays, seed, effort, warmth, _MOST_OUT, prices, self.point_worth, ground, self.work[worker],
+                taken, size)
+        return taken, size
+
+    def _everything(self) -> tuple[Flags, Flags]:
+        return np.ones(self.arrays.cliques, dtype=bool), np.ones(len(self.arrays.limit), dtype=bool)
+
+    def _parts(self, number: int) -> list[Ground]:
+        """The fleet, the free cliques and the rows dealt out at random, one part to each worker."""
+        rng = np.random.default_rng((self.limits.seed, number))
+        counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit)
+        crafts, runs, rows = (rng.integers(0, self.workers, n) for n in counts)
+        cliques = np.repeat(runs, _RUN)[: self.arrays.cliques]
+        return [Ground((crafts == k) & self.movable, cliques == k, rows == k) for k in range(self.workers)]
+
+    def _learn(self, before: tuple[float, float], with_bound: bool) -> None:
+        """Follow what a round's work gains on either side."""
+        gained, fell = self.value - before[0], before[1] - self.bounds.bound
+        workers = 1 if with_bound else self.workers
+        self.value_rate = _RATE_MEMORY * self.value_rate + (1.0 - _RATE_MEMORY) * gained / workers
+        if with_bound and np.isfinite(fell):
+            self.bound_rate = _RATE_MEMORY * self.bound_rate + (1.0 - _RATE_MEMORY) * max(0.0, fell)
 
     def _contact_worth(self) -> float:
         """What a contact of the plan is worth, on average."""
-        return max(1.0, abs(self.value)) / max(1, int(self.best_size.sum()))
+        return max(1.0, abs(self.value)) / max(1, int(self.size.sum()))
 
     def _worth(self) -> tuple[float, float]:
-        pairs = [worth_of(self.arrays, i, self.best_taken[i], self.best_size[i]) for i in range(len(self.best_size))]
+        pairs = [worth_of(self.arrays, i, self.taken[i], self.size[i]) for i in range(len(self.size))]
         return math.fsum(w for w, _ in pairs), math.fsum(p for _, p in pairs)
 
-    def _first_point_worth(self, problem: Problem) -> float:
+    def _first_point_worth(self) -> float:
         """What a point is worth in the bound: much if the plan has only the points that nobody can avoid."""
-        alone = self.sweeper(np.zeros(self.arrays.cliques), self.point_worth).points.sum()
+        if self.points <= 0.0:
+            return self.point_worth
+        alone = self.sweeper(np.zeros(len(self.arrays.limit) + self.arrays.cliques), self.point_worth).points.sum()
         if self.points <= alone + 1e-9:
             return self.point_worth
-        return float((problem.fleet.weight * problem.fleet.capacity_mb).max(initial=1.0))
+        return float((self.arrays.craft[:, 0] * self.arrays.craft[:, 2]).max(initial=1.0))
 
-    def _load(self, problem: Problem, start: Sequence[int]) -> None:
-        place = {int(o): k for k, o in enumerate(self.arrays.option)}
-        for o in sorted(start, key=lambda o: int(problem.options.start_s[o])):
-            craft = int(problem.options.spacecraft[o])
-            self.taken[craft, self.size[craft]] = place[o]
-            self.size[craft] += 1
-
-
-_compiled = threading.Event()
-_compiling = threading.Lock()
-
-
-def _compiled_in_time(clock: Clock) -> bool:
-    """Wait for compiled code, which the first run on a machine has to make; it goes on behind if time is up."""
-    def compile_all() -> None:
-        with _compiling:
-            if not _compiled.is_set():
-                _exercise()
-                _compiled.set()
-
-    if not _compiled.is_set():
-        threading.Thread(target=compile_all, daemon=True).start()
-        _compiled.wait(clock.left_s())
-    return _compiled.is_set()
-
-
-def _exercise() -> None:
-    """Call every compiled function once, on a problem of one spacecraft and one option."""
-    one, none = np.ones(1, dtype=np.int64), np.zeros(1, dtype=np.int64)
-    arrays = FleetArrays(
-        option=none, first=np.array([0, 1]), craft=np.ones((1, 4)), start_first=np.array([0, 1]), start_s=none,
-        node=none, arrival=one, span=np.array([[0, 1]]), maps=np.zeros((1, 6)), cost=np.zeros(1), bits=none,
-        renews=none, use_first=np.zeros((1, 1), dtype=np.int64), use_last=np.ones((1, 1), dtype=np.int64), clash=none,
-        wants=np.zeros((1, 1)), recur=np.zeros((1, 3)), horizon_s=1, spill=0.0, cliques=1)
-    find_clashes(arrays.first, none, one, arrays.use_first, arrays.use_last, 0, none.copy())
-    Sweeper(arrays)(np.zeros(1), 0.0)
-    taken, size = np.zeros((1, 4), dtype=np.int64), np.zeros(1, dtype=np.int64)
-    rebuild(arrays, 1, 1, 0.0, 2, np.zeros(1), 0.0, make_work(64), taken, size, taken.copy(), size.copy())

@@ -1,29 +1,35 @@
-"""A problem and its terms laid out for compiled code: options grouped by spacecraft, lanes as cliques.
+"""A problem and its terms laid out for compiled code: options grouped by spacecraft, lanes as cliques, rows as loads.
 
 Options are sorted by (spacecraft, start); all arrays here are in that order, and ``option`` maps back.
-Lanes for which spacecraft compete become one row of cliques, all lanes end to end. Two options of a lane
+Lanes for which spacecraft compete become one line of cliques, all lanes end to end. Two options of a lane
 overlap exactly if they share a clique, so "free" is "all my cliques are free", and a price of an option is
 a difference of a running sum over the prices of cliques.
+
+A lane of a single spacecraft in which every one of its contacts has a place is kept by the order of its contacts
+alone (``arrival``); any other lane of one spacecraft is laid out as if it were shared.
+
+What the schedule program cannot count (a request that several spacecraft could meet, a second recurrence, a
+guarantee) is left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so
+that the search leaves a spacecraft alone that uses one.
 """
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Sequence
 from typing import NamedTuple
 
 import numpy as np
 
 from passplan.planning.cliques import clique_spans
 from passplan.planning.maps import StorageMaps
-from passplan.planning.problem import Floats, Integers, Problem, offsets_of
-from passplan.planning.rules.terms import Terms
-from passplan.planning.search.compiled import compiled
+from passplan.planning.problem import Flags, Floats, Integers, Problem, offsets_of
+from passplan.planning.rules.terms import Lane, Terms
+from passplan.planning.search.clash import find_clashes
 
 # Wanted terms of one spacecraft are bits of one integer.
 _MOST_WANTED = 60
-
-
-class NotForSearchError(Exception):
-    """The terms ask for something that the search cannot keep; the exact model can."""
+# Amounts are sums of decimals; a limit reached to within this part of it is kept (the judge allows ten times more).
+ROUNDING = 1e-10
 
 
 class FleetArrays(NamedTuple):
@@ -32,14 +38,21 @@ class FleetArrays(NamedTuple):
     A named tuple, because compiled code can take one apart.
 
     Per spacecraft (n): ``first`` (n + 1) into the options, ``start_first`` (n + 1) into ``start_s``, and the
-    rows of ``craft``: weight, generation, capacity, start fill. Per option (m): ``node`` and ``arrival``, the
-    index within the spacecraft's distinct starts at which it starts, and of the first start at or after its
-    end; ``span``: start and end in s; ``maps``: the storage maps as rows; ``cost`` in worth; ``bits`` of
-    wanted terms it meets; ``renews``: until when it covers the recurrence, or -1. ``use_first`` and ``use_last``
-    (m, k) are ranges of cliques, k lanes at most each. ``clash`` (m) is the last start of a later option of the
-    same spacecraft that shares a clique with this one (time to set up between two contacts on one antenna), or -1.
-    ``wants`` (n, 60) are the points of each bit, ``recur``
-    (n, 3) from, until and points per second of the recurrence (until 0 where there is none).
+    rows of ``craft``: weight, generation, capacity, start fill, worth of a MB left at the end. Per option (m):
+    ``node`` and ``arrival``, the index within the spacecraft's distinct starts at which it starts, and of the first
+    start at which another contact may follow it; ``span``: start and end in s; ``maps``: the storage maps as rows;
+    ``cost`` in worth; ``bits`` of wanted terms it meets; ``renews``: until when it covers the recurrence, or -1;
+    ``uncounted``: whether it serves a requirement that is not among those.
+
+    Option o holds the ranges of cliques ``use_first[u] : use_last[u]`` for u in ``use_at[o] : use_at[o + 1]``.
+    ``clash`` (m) is the last start of a later option of the same spacecraft that shares a clique with this one (time
+    to set up between two contacts on one antenna), or -1. It adds ``load_amount[e]`` to row ``load_row[e]`` for e in
+    ``load_at[o] : load_at[o + 1]``, rows rising; ``load_own[e]`` says whether another contact of the same plan of its
+    spacecraft may add to that row too. ``limit`` is per row.
+
+    ``wants`` (n, 60) are the points of each bit, ``recur`` (n, 3) from, until and points per second of the recurrence
+    (until 0 where there is none). ``clique_lane`` and ``clique_s`` say of each clique which of the terms' lanes it is
+    of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
     """
 
     option: Integers
@@ -54,25 +67,34 @@ class FleetArrays(NamedTuple):
     cost: Floats
     bits: Integers
     renews: Integers
+    uncounted: Flags
+    use_at: Integers
     use_first: Integers
     use_last: Integers
     clash: Integers
+    load_at: Integers
+    load_row: Integers
+    load_amount: Floats
+    load_own: Flags
+    limit: Floats
     wants: Floats
     recur: Floats
     horizon_s: int
     spill: float
     cliques: int
+    clique_lane: Integers
+    clique_s: Integers
+    most_contacts: int
+
+
+def can_search(problem: Problem) -> bool:
+    """Whether the search's schedule program follows the storage of every spacecraft: one class of data, one rate."""
+    return not any(problem.fleet.streams)
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
-    """Lay a problem out. Raises :class:`NotForSearchError` where a term does not fit this layout."""
+    """Lay a problem out."""
     options, fleet = problem.options, problem.fleet
-    if any(len(rows) for rows in terms.rows):
-        raise NotForSearchError("the search does not keep linear limits yet")
-    if fleet.streams:
-        raise NotForSearchError("the search does not keep classes of data and changing rates yet")
-    if terms.guarantees:
-        raise NotForSearchError("the search does not keep guarantees yet")
     order = np.lexsort((options.end_s, options.start_s, options.spacecraft))
     removed = np.zeros(len(options), dtype=bool)
     for removal in terms.removals:
@@ -80,125 +102,202 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
     order = order[~removed[order]]
     place = np.full(len(options), -1, dtype=np.int64)
     place[order] = np.arange(len(order))
-    craft_of = options.spacecraft[order]
-    first = np.searchsorted(craft_of, np.arange(len(fleet) + 1)).astype(np.int64)
+    first = np.searchsorted(options.spacecraft[order], np.arange(len(fleet) + 1)).astype(np.int64)
+    start_s, end_s = options.start_s[order], options.end_s[order]
+    own, shared = _own_and_shared(problem, terms, place, first)
+    ready_s = _ready(own, place, start_s, end_s)
     starts, node, arrival = [], np.zeros(len(order), dtype=np.int64), np.zeros(len(order), dtype=np.int64)
     for k in range(len(fleet)):
         mine = slice(first[k], first[k + 1])
-        distinct = np.unique(options.start_s[order[mine]])
-        node[mine] = np.searchsorted(distinct, options.start_s[order[mine]])
-        arrival[mine] = np.searchsorted(distinct, options.end_s[order[mine]])
+        distinct = np.unique(start_s[mine])
+        node[mine] = np.searchsorted(distinct, start_s[mine])
+        arrival[mine] = np.searchsorted(distinct, ready_s[mine])
         starts.append(distinct)
-    use_first, use_last, cliques = _uses(problem, terms, place, len(order))
-    bits, wants = _wanted(problem, terms, place, len(order))
-    renews, recur = _recurrences(problem, terms, place, len(order))
+    use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
+    bits, wants, uncounted = _wanted(problem, terms, place, len(order))
+    renews, recur = _recurrences(problem, terms, place, uncounted)
+    for promise in terms.guarantees:
+        kept = place[promise.options]
+        uncounted[kept[kept >= 0]] = True
+    load_at, load_row, load_amount, limit = _loads(terms, place, len(order))
+    craft_of = np.repeat(np.arange(len(fleet)), np.diff(first))
+    clash = np.full(len(order), -1, dtype=np.int64)
+    find_clashes(first, start_s, end_s, use_at, use_first, use_last, _longest_hold(problem, shared.values()), clash)
     return FleetArrays(
         option=order, first=first,
-        craft=np.column_stack([fleet.weight, fleet.generation_mb_per_s, fleet.capacity_mb, fleet.start_fill_mb]),
+        craft=np.column_stack([fleet.weight, fleet.generation_mb_per_s, fleet.capacity_mb, fleet.start_fill_mb,
+                               problem.left_worth_share * fleet.weight]),
         start_first=offsets_of(np.array([len(s) for s in starts], dtype=np.int64)),
         start_s=np.concatenate([*starts, np.zeros(0, dtype=np.int64)]), node=node, arrival=arrival,
-        span=np.column_stack([options.start_s[order], options.end_s[order]]),
+        span=np.column_stack([start_s, end_s]),
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
                               maps.generated_mb])[order],
-        cost=problem.price[order], bits=bits, renews=renews, use_first=use_first,
-        use_last=use_last, clash=_clashes(problem, terms, order, first, use_first, use_last), wants=wants, recur=recur,
-        horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=cliques)
+        cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
+        use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
+        load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
+        wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=len(clique_s),
+        clique_lane=clique_lane, clique_s=clique_s,
+        most_contacts=_longest_chain(first, node, arrival))
 
 
-def _uses(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Integers, int]:
-    options = problem.options
-    entries: list[tuple[Integers, Integers, Integers]] = []
-    base = 0
-    for lane in terms.lanes:
+def _own_and_shared(
+    problem: Problem, terms: Terms, place: Integers, first: Integers,
+) -> tuple[list[Lane], dict[int, Lane]]:
+    """Lanes that the order of a spacecraft's contacts keeps, and those laid out as cliques, by number."""
+    own, shared = [], {}
+    for k, lane in enumerate(terms.lanes):
+        mine = lane.options[place[lane.options] >= 0]
+        whole = lane.owner >= 0 and len(mine) == first[lane.owner + 1] - first[lane.owner]
+        if whole and len(mine) and np.all(problem.options.spacecraft[mine] == lane.owner):
+            lead_s = problem.options.start_s[lane.options] - lane.start_s
+            whole = bool(np.all(lead_s == lead_s[0]))
+        if whole:
+            own.append(lane)
+        else:
+            shared[k] = lane
+    return own, shared
+
+
+def _ready(own: list[Lane], place: Integers, start_s: Integers, end_s: Integers) -> Integers:
+    """From when another contact of the spacecraft may start after each option: the latest of its own lanes."""
+    ready_s = end_s.copy()
+    for lane in own:
         kept = place[lane.options] >= 0
-        mine, start_s, end_s = lane.options[kept], lane.start_s[kept], lane.end_s[kept]
-        if lane.owner >= 0:
-            if np.any(start_s != options.start_s[mine]) or np.any(end_s != options.end_s[mine]):
-                raise NotForSearchError(f"the lane {lane.name} holds more than the contacts themselves")
-            continue
-        lows, highs, cliques = clique_spans(start_s, end_s)
-        entries.append((place[mine], lows + base, highs + base))
+        mine = place[lane.options[kept]]
+        ready_s[mine] = np.maximum(ready_s[mine], lane.end_s[kept] + start_s[mine] - lane.start_s[kept])
+    return ready_s
+
+
+def _uses(
+    shared: dict[int, Lane], place: Integers, count: int,
+) -> tuple[Integers, Integers, Integers, Integers, Integers]:
+    """Ranges of cliques by option, and for each clique its lane's index in the terms and its instant."""
+    entries = [(np.zeros(0, dtype=np.int64),) * 3]
+    of_clique = [(np.zeros(0, dtype=np.int64),) * 2]
+    base = 0
+    for k, lane in shared.items():
+        kept = place[lane.options] >= 0
+        lows, highs, cliques = clique_spans(lane.start_s[kept], lane.end_s[kept])
+        entries.append((place[lane.options[kept]], lows + base, highs + base))
+        # A clique's instant is the last start among those that begin with it.
+        instant_s = np.full(cliques, np.iinfo(np.int64).min)
+        np.maximum.at(instant_s, lows, lane.start_s[kept])
+        of_clique.append((np.full(cliques, k), instant_s))
         base += cliques
-    where = np.concatenate([np.zeros(0, dtype=np.int64), *(e[0] for e in entries)])
-    rank = np.zeros(len(where), dtype=np.int64)
-    seen = np.zeros(count, dtype=np.int64)
-    for k, o in enumerate(where.tolist()):
-        rank[k] = seen[o]
-        seen[o] += 1
-    width = int(seen.max()) if count else 0
-    use_first = np.zeros((count, max(1, width)), dtype=np.int64)
-    use_last = np.zeros((count, max(1, width)), dtype=np.int64)
-    if entries:
-        use_first[where, rank] = np.concatenate([e[1] for e in entries])
-        use_last[where, rank] = np.concatenate([e[2] for e in entries])
-    return use_first, use_last, base
+    where, lows, highs = (np.concatenate(parts) for parts in zip(*entries, strict=True))
+    lanes, instants = (np.concatenate(parts) for parts in zip(*of_clique, strict=True))
+    order = np.argsort(where, kind="stable")
+    return offsets_of(np.bincount(where, minlength=count)), lows[order], highs[order], lanes, instants
 
 
-def _clashes(
-    problem: Problem, terms: Terms, order: Integers, first: Integers, use_first: Integers, use_last: Integers,
-) -> Integers:
-    """The column ``clash``. Only starts within the longest hold after an option's end need a look."""
+def _longest_hold(problem: Problem, shared: Iterable[Lane]) -> int:
+    """The longest time [s] that two contacts of one shared lane can need between them."""
     options = problem.options
     before_s = after_s = 0
-    for lane in terms.lanes:
-        if lane.owner < 0 and len(lane.options):
+    for lane in shared:
+        if len(lane.options):
             before_s = max(before_s, int((options.start_s[lane.options] - lane.start_s).max()))
             after_s = max(after_s, int((lane.end_s - options.end_s[lane.options]).max()))
-    clash = np.full(len(order), -1, dtype=np.int64)
-    find_clashes(first, options.start_s[order], options.end_s[order], use_first, use_last, before_s + after_s, clash)
-    return clash
+    return before_s + after_s
 
 
-@compiled
-def find_clashes(
-    first: Integers, start_s: Integers, end_s: Integers, use_first: Integers, use_last: Integers, within_s: int,
-    clash: Integers,
-) -> None:
-    """Fill ``clash``; ``within_s`` is the longest time that two contacts on one lane can need between them."""
-    for i in range(len(first) - 1):
-        for o in range(first[i], first[i + 1]):
-            low = o + np.searchsorted(start_s[o:first[i + 1]], end_s[o])
-            for p in range(low, first[i + 1]):
-                if start_s[p] >= end_s[o] + within_s:
-                    break
-                if share_clique(use_first, use_last, o, p):
-                    clash[o] = start_s[p]
-
-
-@compiled
-def share_clique(use_first: Integers, use_last: Integers, o: int, p: int) -> bool:
-    """Whether two options share a clique, so that not both can be used."""
-    for x in range(use_first.shape[1]):
-        for y in range(use_first.shape[1]):
-            if max(use_first[o, x], use_first[p, y]) < min(use_last[o, x], use_last[p, y]):
-                return True
-    return False
-
-
-def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats]:
+def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats, Flags]:
     bits, points = np.zeros(count, dtype=np.int64), np.zeros((len(problem.fleet), _MOST_WANTED))
+    uncounted = np.zeros(count, dtype=bool)
     used = np.zeros(len(problem.fleet), dtype=np.int64)
     for want in terms.wanted:
         rows = place[want.options]
         rows = rows[rows >= 0]
-        if len(rows) == 0:
-            continue
         craft = np.unique(problem.options.spacecraft[want.options])
         if len(craft) != 1 or used[craft[0]] >= _MOST_WANTED:
-            raise NotForSearchError(f"{want.name} is wanted of several spacecraft, or one has too many")
-        bits[rows] |= np.int64(1) << used[craft[0]]
-        points[craft[0], used[craft[0]]] = want.points
-        used[craft[0]] += 1
-    return bits, points
+            uncounted[rows] = True
+        elif len(rows):
+            bits[rows] |= np.int64(1) << used[craft[0]]
+            points[craft[0], used[craft[0]]] = want.points
+            used[craft[0]] += 1
+    return bits, points, uncounted
 
 
-def _recurrences(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats]:
-    renews, recur = np.full(count, -1, dtype=np.int64), np.zeros((len(problem.fleet), 3))
+def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Flags) -> tuple[Integers, Floats]:
+    """The first recurrence of each spacecraft; options of the others are marked in ``uncounted``."""
+    renews, recur = np.full(len(uncounted), -1, dtype=np.int64), np.zeros((len(problem.fleet), 3))
     for need in terms.recurrences:
         craft = problem.fleet.names.index(need.name)
-        if recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
-            raise NotForSearchError(f"{need.name} has more than one recurrence, or one that is not counted from starts")
         kept = place[need.options] >= 0
+        if recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
+            uncounted[place[need.options[kept]]] = True
+            continue
         renews[place[need.options[kept]]] = need.end_s[kept] + need.every_s
         recur[craft] = need.from_s, need.until_s, 1.0 / need.every_s
     return renews, recur
+
+
+def _loads(terms: Terms, place: Integers, count: int) -> tuple[Integers, Integers, Floats, Floats]:
+    """Rows of all terms end to end: entries option by option, rows rising within each, and the limits."""
+    option, row, amount = [np.zeros(0, dtype=np.int64)], [np.zeros(0, dtype=np.int64)], [np.zeros(0)]
+    base = 0
+    for rows in terms.rows:
+        option.append(place[rows.options])
+        row.append(base + np.repeat(np.arange(len(rows)), np.diff(rows.offset)))
+        amount.append(rows.amounts)
+        base += len(rows)
+    options, numbers, amounts = np.concatenate(option), np.concatenate(row), np.concatenate(amount)
+    kept = (options >= 0) & (amounts > 0.0)
+    options, numbers, amounts = options[kept], numbers[kept], amounts[kept]
+    order = np.lexsort((numbers, options))
+    limit = np.concatenate([np.zeros(0), *(rows.limit for rows in terms.rows)])
+    return offsets_of(np.bincount(options, minlength=count)), numbers[order], amounts[order], limit
+
+
+def _own_loads(
+    craft_of: Integers, node: Integers, arrival: Integers, load_at: Integers, load_row: Integers,
+) -> Flags:
+    """Which entries share their row with an option that one plan of the same spacecraft may hold beside this one."""
+    option = np.repeat(np.arange(len(load_at) - 1), np.diff(load_at))
+    pair, where = np.unique(
+        np.column_stack([load_row, craft_of[option]]), axis=0, return_inverse=True)
+    latest = np.full(len(pair), -1, dtype=np.int64)
+    soonest = np.full(len(pair), np.iinfo(np.int64).max)
+    where = where.reshape(-1)
+    np.maximum.at(latest, where, node[option])
+    np.minimum.at(soonest, where, arrival[option])
+    shared: Flags = (latest >= soonest)[where]
+    return shared
+
+
+def _longest_chain(first: Integers, node: Integers, arrival: Integers) -> int:
+    """The most contacts that one after the other can follow in any spacecraft's plan; at least 1."""
+    longest = 1
+    for low, high in zip(first[:-1].tolist(), first[1:].tolist(), strict=True):
+        if high == low:
+            continue
+        # From each start on, the soonest arrival; always taking it makes the longest chain.
+        soonest = np.full(int(node[high - 1]) + 2, int(node[high - 1]) + 2, dtype=np.int64)
+        np.minimum.at(soonest, node[low:high], arrival[low:high])
+        soonest = np.minimum.accumulate(soonest[::-1])[::-1]
+        reach, at, length = soonest.tolist(), 0, 0
+        while at < len(reach) - 1 and reach[at] <= len(reach) - 1:
+            at, length = reach[at], length + 1
+        longest = max(longest, length)
+    return longest
+
+
+def load_plan(arrays: FleetArrays, chosen: Sequence[int]) -> tuple[Integers, Integers]:
+    """A plan (options by number) as the options of each spacecraft in time order (n, k), and how many (n,)."""
+    taken = np.zeros((len(arrays.craft), arrays.most_contacts), dtype=np.int64)
+    size = np.zeros(len(arrays.craft), dtype=np.int64)
+    place = np.zeros(int(arrays.option.max(initial=-1)) + 1, dtype=np.int64)
+    place[arrays.option] = np.arange(len(arrays.option))
+    rows = np.sort(place[np.array(chosen, dtype=np.int64)])
+    crafts = np.searchsorted(arrays.first, rows, side="right") - 1
+    for craft, row in zip(crafts.tolist(), rows.tolist(), strict=True):
+        taken[craft, size[craft]] = row
+        size[craft] += 1
+    return taken, size
+
+
+def unload_plan(arrays: FleetArrays, taken: Integers, size: Integers) -> list[int]:
+    """The numbers of a plan's options, sorted."""
+    held = np.arange(taken.shape[1]) < size[:, None]
+    numbers: list[int] = np.sort(arrays.option[taken[held]]).tolist()
+    return numbers

@@ -7,6 +7,9 @@ One label makes another useless if it has met at least as much and is covered at
 
 With these two rules few labels survive. (Own derivation.) A label that comes straight from an option with
 which a start now would clash (time to set up the antenna it has just left) beats no other until that is over.
+
+Labels at one instant are kept in the order of what is aboard. A contact, like idle time, is a monotonic map of what
+is aboard, so that the labels it makes are in that order too: a run. Runs are merged, never sorted.
 """
 
 from __future__ import annotations
@@ -16,8 +19,7 @@ from typing import NamedTuple
 import numpy as np
 
 from passplan.planning.problem import Floats, Integers
-from passplan.planning.search.compiled import compiled
-from passplan.planning.search.fleetarrays import FleetArrays
+from passplan.planning.search.compiled import inlined
 
 _MOST_LABELS = 400_000
 
@@ -25,118 +27,145 @@ _MOST_LABELS = 400_000
 class Work(NamedTuple):
     """Room for labels, one set for each thread.
 
-    Labels here: ``rows`` (., 3) aboard, worth, covered until; ``bits`` met; ``via`` the last taken record.
-    The ``wait`` arrays hold labels that stand further on, in linked lists. Records are options taken.
+    Labels at the instant that is looked at, on two sides (2, .) of which one is filled from the other: MB aboard,
+    worth, until when the recurrence is covered, bits met, and the last record (an option taken, with the record
+    before it). The ``wait`` arrays hold labels that stand further on, each with its record at the same index, as
+    runs ``run_low : run_high`` in linked lists. ``spent[0]`` counts labels made: how much work has been done, whatever
+    the machine.
     """
 
-    rows: Floats
+    aboard: Floats
+    worth: Floats
+    cover: Floats
     bits: Integers
     via: Integers
-    wait_rows: Floats
+    wait_aboard: Floats
+    wait_worth: Floats
+    wait_cover: Floats
     wait_bits: Integers
-    wait_via: Integers
-    wait_next: Integers
     record_option: Integers
     record_before: Integers
+    run_low: Integers
+    run_high: Integers
+    run_next: Integers
+    spent: Integers
 
 
 def make_work(labels: int = _MOST_LABELS) -> Work:
     """Room for ``labels`` labels; memory is used as it is touched."""
-    floats = [np.empty((labels, 3)) for _ in range(2)]
-    integers = [np.empty(labels, dtype=np.int64) for _ in range(7)]
-    return Work(floats[0], integers[0], integers[1], floats[1], *integers[2:])
+    floats = [np.empty((2, labels)) for _ in range(3)]
+    numbers = [np.empty((2, labels), dtype=np.int64) for _ in range(2)]
+    wait, records = [np.empty(labels) for _ in range(3)], [np.empty(labels, dtype=np.int64) for _ in range(6)]
+    return Work(
+        floats[0], floats[1], floats[2], numbers[0], numbers[1], wait[0], wait[1], wait[2], records[0], records[1],
+        records[2], records[3], records[4], records[5], np.zeros(1, dtype=np.int64))
 
 
-@compiled
-def prune(a: FleetArrays, count: int, work: Work, now: int, weight: float, simple: bool) -> int:
-    """Sort labels by what is aboard, drop the useless ones, return how many are left.
+@inlined
+def merge(
+    clash: Integers, spill: float, weight: float, simple: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
+    bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
+    wait_bits: Integers, record_option: Integers, low: int, high: int,
+) -> int:
+    """Merge the ``count`` labels on ``side`` with the run ``low : high``, onto the other side, without the useless.
 
-    ``simple`` says that bits and cover are all alike; two sweeps then do what otherwise needs all pairs.
+    ``simple`` says that bits and cover are all alike; two sweeps then do what otherwise needs all pairs. Returns how
+    many are left, or -1 if there is no room. (Arrays are handed over one by one, because taking them out of a tuple
+    costs more than all the rest.)
     """
-    rows, bits, via = work.rows, work.bits, work.via
-    _sort(count, rows, bits, via)
+    to = 1 - side
+    if count + high - low > aboard.shape[1]:
+        return -1
+    best = -np.inf
+    x = left = 0
+    y = low
+    while x < count or y < high:
+        if y >= high or (x < count and aboard[side, x] <= wait_aboard[y]):
+            mb, ahead, record = aboard[side, x], worth[side, x], via[side, x]
+            until, met = cover[side, x], bits[side, x]
+            x += 1
+        else:
+            mb, ahead, record = wait_aboard[y], wait_worth[y], y
+            until, met = wait_cover[y], wait_bits[y]
+            y += 1
+        if simple:
+            # Upward: drop what holds more than another but is not ahead.
+            if ahead + weight * mb <= best:
+                continue
+            if record < 0 or clash[record_option[record]] < now:
+                best = ahead + weight * mb
+        aboard[to, left], worth[to, left], via[to, left] = mb, ahead, record
+        cover[to, left], bits[to, left] = until, met
+        left += 1
     if simple:
-        return _prune_alike(a, count, work, now, weight)
+        return _prune_down(clash, spill, now, aboard, worth, cover, bits, via, to, left, record_option)
+    return _prune_pairs(clash, spill, weight, now, aboard, worth, cover, bits, via, to, left, record_option)
+
+
+@inlined
+def _prune_down(
+    clash: Integers, spill: float, now: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
+    via: Integers, side: int, count: int, record_option: Integers,
+) -> int:
+    """Downward: drop what holds less than another and is not ahead."""
+    best = -np.inf
+    low = count
+    for k in range(count - 1, -1, -1):
+        ahead = worth[side, k] - spill * aboard[side, k]
+        if ahead > best:
+            record = via[side, k]
+            if record < 0 or clash[record_option[record]] < now:
+                best = ahead
+            low -= 1
+            _move(aboard, worth, cover, bits, via, side, k, low)
+    if low > 0:
+        for k in range(low, count):
+            _move(aboard, worth, cover, bits, via, side, k, k - low)
+    return count - low
+
+
+@inlined
+def _prune_pairs(
+    clash: Integers, spill: float, weight: float, now: int, aboard: Floats, worth: Floats, cover: Floats,
+    bits: Integers, via: Integers, side: int, count: int, record_option: Integers,
+) -> int:
     left = 0
     for k in range(count):
         useless = False
+        free = via[side, k] < 0 or clash[record_option[via[side, k]]] < now
         for x in range(left):
-            if _beats(a, work, x, k, now, weight):
+            unbound = via[side, x] < 0 or clash[record_option[via[side, x]]] < now
+            if unbound and _beats(spill, weight, aboard, worth, cover, bits, side, x, k):
                 useless = True
                 break
         if useless:
             continue
         kept = 0
         for x in range(left):
-            if not _beats(a, work, k, x, now, weight):
-                _move(rows, bits, via, x, kept)
+            if not (free and _beats(spill, weight, aboard, worth, cover, bits, side, k, x)):
+                _move(aboard, worth, cover, bits, via, side, x, kept)
                 kept += 1
-        _move(rows, bits, via, k, kept)
+        _move(aboard, worth, cover, bits, via, side, k, kept)
         left = kept + 1
     return left
 
 
-@compiled
-def _prune_alike(a: FleetArrays, count: int, work: Work, now: int, weight: float) -> int:
-    """Up: drop what holds more than another but is not ahead. Down: what holds less and is not ahead."""
-    rows, bits, via = work.rows, work.bits, work.via
-    best = -np.inf
-    left = 0
-    for k in range(count):
-        ahead = rows[k, 1] + weight * rows[k, 0]
-        if ahead > best:
-            if _unbound(a, work, k, now):
-                best = ahead
-            _move(rows, bits, via, k, left)
-            left += 1
-    best = -np.inf
-    low = left
-    for k in range(left - 1, -1, -1):
-        ahead = rows[k, 1] - a.spill * rows[k, 0]
-        if ahead > best:
-            if _unbound(a, work, k, now):
-                best = ahead
-            low -= 1
-            _move(rows, bits, via, k, low)
-    for k in range(low, left):
-        _move(rows, bits, via, k, k - low)
-    return left - low
-
-
-@compiled
-def _beats(a: FleetArrays, work: Work, x: int, y: int, now: int, weight: float) -> bool:
-    """Whether label ``x`` makes label ``y`` useless."""
-    rows, bits = work.rows, work.bits
-    if bits[x] & bits[y] != bits[y] or rows[x, 2] < rows[y, 2] or not _unbound(a, work, x, now):
+@inlined
+def _beats(
+    spill: float, weight: float, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, side: int, x: int,
+    y: int,
+) -> bool:
+    """Whether label ``x``, if it may take any option, makes label ``y`` useless."""
+    if bits[side, x] & bits[side, y] != bits[side, y] or cover[side, x] < cover[side, y]:
         return False
-    more = rows[y, 0] - rows[x, 0]
-    return bool(rows[x, 1] >= rows[y, 1] + (weight * more if more > 0.0 else -a.spill * more))
+    more = aboard[side, y] - aboard[side, x]
+    return bool(worth[side, x] >= worth[side, y] + (weight * more if more > 0.0 else -spill * more))
 
 
-@compiled
-def _unbound(a: FleetArrays, work: Work, k: int, now: int) -> bool:
-    """Whether a label may take any option from now on."""
-    return bool(work.via[k] < 0 or a.clash[work.record_option[work.via[k]]] < now)
-
-
-@compiled
-def _sort(count: int, rows: Floats, bits: Integers, via: Integers) -> None:
-    """Shell sort by what is aboard; most labels are in order already (gaps grow by 2.25; common practice)."""
-    gap = 1
-    while gap < count:
-        gap = int(2.25 * gap) + 1
-    while gap > 1:
-        gap = int(gap / 2.25)
-        for k in range(gap, count):
-            aboard, worth, covered, met, record = rows[k, 0], rows[k, 1], rows[k, 2], bits[k], via[k]
-            at = k
-            while at >= gap and rows[at - gap, 0] > aboard:
-                _move(rows, bits, via, at - gap, at)
-                at -= gap
-            rows[at, 0], rows[at, 1], rows[at, 2], bits[at], via[at] = aboard, worth, covered, met, record
-
-
-@compiled
-def _move(rows: Floats, bits: Integers, via: Integers, source: int, target: int) -> None:
-    rows[target, 0], rows[target, 1], rows[target, 2] = rows[source, 0], rows[source, 1], rows[source, 2]
-    bits[target], via[target] = bits[source], via[source]
+@inlined
+def _move(
+    aboard: Floats, worth: Floats, cover: Floats, bits: Integers, via: Integers, side: int, source: int, target: int,
+) -> None:
+    aboard[side, target], worth[side, target], cover[side, target] = (
+        aboard[side, source], worth[side, source], cover[side, source])
+    bits[side, target], via[side, target] = bits[side, source], via[side, source]

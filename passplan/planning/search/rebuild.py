@@ -5,104 +5,128 @@ While they are put back they pay, in part, the prices of the bound for the time 
 does not take what the others need more; at the end each is put back once more for nothing. A result that is
 a little worse is accepted now and then, less and less (simulated annealing). (Ruin and recreate: Schrimpf
 and others 2000.)
+
+Several of these may run side by side on one plan, each on spacecraft of its own and on time and rows that are free
+now and that no other may touch: what they find fits together.
 """
 
 from __future__ import annotations
 
+from typing import NamedTuple
+
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers
-from passplan.planning.search.compiled import compiled
-from passplan.planning.search.fleetarrays import FleetArrays
+from passplan.planning.problem import Flags, Floats, Integers
+from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
 from passplan.planning.search.labels import Work
 from passplan.planning.search.schedule import best_schedule, clashes, worth_of
 
-# A spacecraft has at most this many contacts; a schedule of more is refused.
-MOST_CONTACTS = 1_024
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
+# What a call costs beside its labels, in labels.
+_OVERHEAD = 100
+
+
+class Ground(NamedTuple):
+    """What one rebuild may touch: spacecraft (n,), and the cliques (c,) and rows (r,) of which it may use more."""
+
+    crafts: Flags
+    cliques: Flags
+    rows: Flags
 
 
 @compiled
 def rebuild(
-    a: FleetArrays, seed: int, iterations: int, warmth: float, most: int, option_price: Floats, point_worth: float,
-    work: Work, taken: Integers, size: Integers, best_taken: Integers, best_size: Integers,
+    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, point_worth: float,
+    ground: Ground, work: Work, taken: Integers, size: Integers,
 ) -> float:
-    """Run ``iterations`` of ruin and recreate from the plan in ``taken`` and ``size``, which move.
+    """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
-    ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many. ``warmth`` is
-    the loss that is accepted with probability 1/e at first; it falls to nothing. At most ``most`` spacecraft
-    are taken out at a time. The best plan goes to ``best_taken`` and ``best_size`` if it beats the plan at
-    the start; the gain over that plan is returned.
+    ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
+    the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
+    nothing. At most ``most`` spacecraft are taken out at a time.
     """
     np.random.seed(seed)
     count = len(size)
-    holder = np.full(a.cliques + 1, -1, dtype=np.int64)
-    worth = np.zeros(count)
-    for i in range(count):
-        worth[i] = _net_worth(a, i, taken[i], size[i], point_worth)
-        _hold(a, taken[i], size[i], holder, i)
+    movable = np.flatnonzero(ground.crafts)
+    if len(movable) == 0:
+        return 0.0
+    # Whoever holds a clique; ``count`` stands for one that is free and must stay so.
+    holder = np.where(ground.cliques, -1, count)
+    room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
+    now_taken, now_size = taken.copy(), size.copy()
+    worth = _enter(a, taken, size, point_worth, ground.rows, holder, room)
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
     old_worth, price = np.empty(most), np.empty(len(option_price))
-    fresh = np.empty(4 * MOST_CONTACTS, dtype=np.int64)
-    for step in range(iterations):
-        some = _pick(a, holder, out, min(count, 2 + int(np.random.random() ** 2 * (most - 1))))
+    fresh = np.empty(a.most_contacts, dtype=np.int64)
+    is_changed = np.zeros(count, dtype=np.bool_)
+    begun = work.spent[0]
+    while work.spent[0] - begun < effort:
+        wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
+        some = _pick(a, holder, ground.crafts, movable, out, wanted)
         for k in range(some):
-            i = out[k]
-            old_size[k], old_worth[k] = size[i], worth[i]
-            for c in range(size[i]):
-                old_taken[k, c] = taken[i, c]
-            _hold(a, taken[i], size[i], holder, -1)
-            size[i] = 0
+            old_worth[k] = worth[out[k]]
+            _copy(now_taken, now_size, out[k], old_taken, old_size, k)
+            _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
+            now_size[out[k]] = 0
         share = np.random.random() * _MOST_SHARE
-        for k in range(some):
-            # The last one has nobody left to leave room for.
-            part = share if k < some - 1 else 0.0
-            _replan(a, out[k], part, option_price, price, point_worth, work, holder, taken, size, fresh)
-        for k in range(some):
-            _replan(a, out[k], 0.0, option_price, price, point_worth, work, holder, taken, size, fresh)
+        for turn in range(2 * some - 1):
+            # First each pays for what others need, the last one has nobody left to leave room for; then all but the
+            # last once more, for nothing.
+            part = share if turn < some - 1 else 0.0
+            _replan(a, out[turn % some], part, option_price, price, point_worth, work, holder, room, now_taken,
+                    now_size, fresh)
         change = 0.0
         for k in range(some):
-            worth[out[k]] = _net_worth(a, out[k], taken[out[k]], size[out[k]], point_worth)
+            worth[out[k]] = _net_worth(a, out[k], now_taken[out[k]], now_size[out[k]], point_worth)
             change += worth[out[k]] - old_worth[k]
-        heat = warmth * (1.0 - step / iterations)
-        if change >= 0.0 or (heat > 0.0 and np.random.random() < np.exp(change / heat)):
-            gain += change
-            if gain > best_gain:
-                best_gain = gain
-                best_taken[:], best_size[:] = taken, size
+        heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
+        if change < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(change / heat)):
+            for k in range(some):
+                _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
+            for k in range(some):
+                worth[out[k]] = old_worth[k]
+                _copy(old_taken, old_size, k, now_taken, now_size, out[k])
+                hold(a, now_taken[out[k]], now_size[out[k]], holder, out[k])
+                load(a, now_taken[out[k]], now_size[out[k]], room, -1.0)
             continue
-        for k in range(some):
-            _hold(a, taken[out[k]], size[out[k]], holder, -1)
-        for k in range(some):
-            i = out[k]
-            size[i], worth[i] = old_size[k], old_worth[k]
-            for c in range(size[i]):
-                taken[i, c] = old_taken[k, c]
-            _hold(a, taken[i], size[i], holder, i)
+        gain += change
+        is_changed[out[:some]] = True
+        if gain > best_gain:
+            best_gain = gain
+            for i in range(count):
+                if is_changed[i]:
+                    _copy(now_taken, now_size, i, taken, size, i)
+            is_changed[:] = False
     return best_gain
 
 
 @compiled
 def _replan(
     a: FleetArrays, i: int, part: float, option_price: Floats, price: Floats, point_worth: float, work: Work,
-    holder: Integers, taken: Integers, size: Integers, fresh: Integers,
+    holder: Integers, room: Floats, taken: Integers, size: Integers, fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
 
     It keeps the schedule it has where the program gives none that can be used.
     """
-    _hold(a, taken[i], size[i], holder, -1)
+    _release(a, taken[i], size[i], holder, room)
+    use_at, use_first, use_last, cost = a.use_at, a.use_first, a.use_last, a.cost
+    load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
     for o in range(a.first[i], a.first[i + 1]):
-        price[o] = a.cost[o] + part * option_price[o] if _free(a, o, holder) else np.inf
-    _, count = best_schedule(a, i, price, point_worth, work, fresh)
-    if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count):
+        free = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
+        price[o] = cost[o] + part * option_price[o] if free else np.inf
+    work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
+    _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
+    if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and _fits(a, fresh, count, room):
         size[i] = count
         for c in range(count):
             taken[i, c] = fresh[c]
-    _hold(a, taken[i], size[i], holder, i)
+    hold(a, taken[i], size[i], holder, i)
+    load(a, taken[i], size[i], room, -1.0)
 
 
 @compiled
@@ -112,27 +136,88 @@ def _net_worth(a: FleetArrays, i: int, taken: Integers, size: int, point_worth: 
 
 
 @compiled
-def _hold(a: FleetArrays, taken: Integers, size: int, holder: Integers, who: int) -> None:
+def _release(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats) -> None:
+    hold(a, taken, size, holder, -1)
+    load(a, taken, size, room, 1.0)
+
+
+@inlined
+def hold(a: FleetArrays, taken: Integers, size: int, holder: Integers, who: int) -> None:
     """Note ``who`` holds the cliques of a schedule (-1: nobody)."""
+    use_at, use_first, use_last = a.use_at, a.use_first, a.use_last
     for k in range(size):
-        for lane in range(a.use_first.shape[1]):
-            for c in range(a.use_first[taken[k], lane], a.use_last[taken[k], lane]):
+        for u in range(use_at[taken[k]], use_at[taken[k] + 1]):
+            for c in range(use_first[u], use_last[u]):
                 holder[c] = who
 
 
-@compiled
-def _free(a: FleetArrays, option: int, holder: Integers) -> bool:
-    for lane in range(a.use_first.shape[1]):
-        for c in range(a.use_first[option, lane], a.use_last[option, lane]):
+@inlined
+def load(a: FleetArrays, taken: Integers, size: int, room: Floats, sign: float) -> None:
+    """Give the amounts of a schedule back to the rows (1), or take them (-1)."""
+    load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
+    for k in range(size):
+        for e in range(load_at[taken[k]], load_at[taken[k] + 1]):
+            room[load_row[e]] += sign * load_amount[e]
+
+
+@inlined
+def is_free(
+    use_at: Integers, use_first: Integers, use_last: Integers, load_at: Integers, load_row: Integers,
+    load_amount: Floats, option: int, holder: Integers, room: Floats,
+) -> bool:
+    for u in range(use_at[option], use_at[option + 1]):
+        for c in range(use_first[u], use_last[u]):
             if holder[c] >= 0:
                 return False
-    return True
+    roomy = True
+    for e in range(load_at[option], load_at[option + 1]):
+        roomy = roomy and load_amount[e] <= room[load_row[e]]
+    return roomy
 
 
 @compiled
-def _pick(a: FleetArrays, holder: Integers, out: Integers, wanted: int) -> int:
+def _fits(a: FleetArrays, taken: Integers, size: int, room: Floats) -> bool:
+    """Whether the rows have room for a whole schedule."""
+    if len(room) == 0:
+        return True
+    load(a, taken, size, room, -1.0)
+    fits = True
+    for k in range(size):
+        for e in range(a.load_at[taken[k]], a.load_at[taken[k] + 1]):
+            fits = fits and room[a.load_row[e]] >= 0.0
+    load(a, taken, size, room, 1.0)
+    return fits
+
+
+@inlined
+def _copy(source: Integers, source_size: Integers, at: int, taken: Integers, size: Integers, to: int) -> None:
+    size[to] = source_size[at]
+    for c in range(size[to]):
+        taken[to, c] = source[at, c]
+
+
+@compiled
+def _enter(
+    a: FleetArrays, taken: Integers, size: Integers, point_worth: float, rows: Flags, holder: Integers, room: Floats,
+) -> Floats:
+    """Enter a plan into ``holder``, and into ``room`` where rows are free to be used; returns worths."""
+    worth = np.zeros(len(size))
+    for i in range(len(size)):
+        worth[i] = _net_worth(a, i, taken[i], size[i], point_worth)
+        hold(a, taken[i], size[i], holder, i)
+        for k in range(size[i]):
+            for e in range(a.load_at[taken[i, k]], a.load_at[taken[i, k] + 1]):
+                if rows[a.load_row[e]]:
+                    room[a.load_row[e]] -= a.load_amount[e]
+    return worth
+
+
+@compiled
+def _pick(
+    a: FleetArrays, holder: Integers, crafts: Flags, movable: Integers, out: Integers, wanted: int,
+) -> int:
     """Choose spacecraft that stand in each other's way: one at random, then holders of time others could use."""
-    out[0] = np.random.randint(len(a.craft))
+    out[0] = movable[np.random.randint(len(movable))]
     some = 1
     for _ in range(6 * wanted):
         if some >= wanted:
@@ -141,11 +226,13 @@ def _pick(a: FleetArrays, holder: Integers, out: Integers, wanted: int) -> int:
         if a.first[i + 1] == a.first[i]:
             continue
         o = np.random.randint(a.first[i], a.first[i + 1])
-        lane = np.random.randint(a.use_first.shape[1])
-        if a.use_last[o, lane] <= a.use_first[o, lane]:
+        if a.use_at[o + 1] == a.use_at[o]:
             continue
-        j = holder[np.random.randint(a.use_first[o, lane], a.use_last[o, lane])]
-        new = j >= 0
+        u = np.random.randint(a.use_at[o], a.use_at[o + 1])
+        if a.use_last[u] <= a.use_first[u]:
+            continue
+        j = holder[np.random.randint(a.use_first[u], a.use_last[u])]
+        new = 0 <= j < len(crafts) and crafts[j]
         for k in range(some):
             if out[k] == j:
                 new = False

@@ -2,89 +2,167 @@
 
 Labels stand at the distinct starts of the spacecraft's options. A label is what is aboard, the worth so
 far, which wanted terms are met, and until when the recurrence is covered. From a start it goes idle to the
-next one, or takes an option and stands at the first start at or after that option's end.
+next one, or takes an option and stands at the first start at which another contact may follow that option.
 
 Which labels make others useless is in ``labels.py``.
 
-The program is exact but for a clash between contacts with another one between them, which it does not see:
-its worth is then a ceiling, and the caller must look (:func:`clashes`).
+The program is exact but for two things. It does not see a clash between contacts with another one between
+them: its worth is then a ceiling, and the caller must look (:func:`clashes`). And where rows are to be kept
+(``room``) it refuses an option that overfills one, but a label that was dropped may have had room for it.
 """
 
 from __future__ import annotations
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers
-from passplan.planning.search.compiled import compiled
-from passplan.planning.search.fleetarrays import FleetArrays, share_clique
-from passplan.planning.search.labels import Work, prune
+from passplan.planning.problem import Flags, Floats, Integers
+from passplan.planning.search.clash import share_clique
+from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.fleetarrays import FleetArrays
+from passplan.planning.search.labels import Work, merge
 
 
 @compiled
 def best_schedule(
-    a: FleetArrays, i: int, price: Floats, point_worth: float, work: Work, taken: Integers,
+    a: FleetArrays, i: int, price: Floats, point_worth: float, room: Floats, work: Work, taken: Integers,
 ) -> tuple[float, int]:
     """The schedule of spacecraft ``i`` that is worth most after prices.
 
     ``price`` (m) is what taking an option costs, infinite where it cannot be taken; ``point_worth`` is what a
-    point of shortfall costs. Fills ``taken`` with the options taken, in time order, and returns the worth and
-    their number. If there is no room for all labels, the worth is plus infinity and the number -1.
+    point of shortfall costs; ``room`` is what is left of each row's limit, or empty where rows are not kept (a
+    relaxation). Fills ``taken`` with the options taken, in time order, and returns the worth and their number. If
+    there is no room for all labels, the worth is plus infinity and the number -1.
     """
-    rows, bits, via = work.rows, work.bits, work.via
     weight, generation, capacity = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2]
-    wants, recur_until = a.wants[i], a.recur[i, 1]
-    starts = a.start_s[a.start_first[i]:a.start_first[i + 1]]
-    nodes = len(starts)
-    simple = recur_until <= 0.0 and wants.max() <= 0.0
+    # Out of the tuples once: every look into one costs more than the step that it is for.
+    end_of, node, arrival, span, clash, spill = a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
+    (aboard, worth, cover, bits, via, wait_aboard, wait_worth, wait_cover, wait_bits, record_option, record_before,
+     run_low, run_high, run_next, spent) = work
+    maps, use_at, use_first, use_last, renews, own_bits = a.maps, a.use_at, a.use_first, a.use_last, a.renews, a.bits
+    load_at, load_row, load_amount, load_own = a.load_at, a.load_row, a.load_amount, a.load_own
+    base, nodes, start_s = a.start_first[i], a.start_first[i + 1] - a.start_first[i], a.start_s
+    recur_until, per_second = a.recur[i, 1], point_worth * a.recur[i, 2]
+    simple = recur_until <= 0.0 and a.wants[i].max() <= 0.0
     head = np.full(nodes + 1, -1, dtype=np.int64)
-    waiting = 0
-    rows[0, 0], rows[0, 1], rows[0, 2] = a.craft[i, 3], 0.0, a.recur[i, 0]
-    bits[0], via[0] = 0, -1
+    waiting = runs = side = clock = 0
+    aboard[0, 0], worth[0, 0], cover[0, 0], bits[0, 0], via[0, 0] = a.craft[i, 3], 0.0, a.recur[i, 0], 0, -1
     here = 1
-    clock = 0
     option = a.first[i]
     for at in range(nodes + 1):
-        now = starts[at] if at < nodes else a.horizon_s
-        _idle(rows, here, generation * (now - clock), capacity, a.spill)
+        follower, usable = _those_at(node, price, option, end_of, at)
+        if at < nodes and head[at] < 0 and not usable:
+            # Nothing arrives and nothing can be taken.
+            option = follower
+            continue
+        now = start_s[base + at] if at < nodes else a.horizon_s
+        made = generation * (now - clock)
+        for k in range(here):
+            aboard[side, k], worth[side, k] = _idle(aboard[side, k], worth[side, k], made, capacity, spill)
         clock = now
-        arrived = head[at]
-        while arrived >= 0:
-            if here >= len(rows):
+        run = head[at]
+        while run >= 0:
+            here = merge(clash, spill, weight, simple, now, aboard, worth, cover, bits, via, side, here, wait_aboard,
+                         wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run])
+            if here < 0:
                 return np.inf, -1
-            rows[here, 0], rows[here, 1] = work.wait_rows[arrived, 0], work.wait_rows[arrived, 1]
-            rows[here, 2], bits[here] = work.wait_rows[arrived, 2], work.wait_bits[arrived]
-            via[here] = work.wait_via[arrived]
-            here += 1
-            arrived = work.wait_next[arrived]
-        here = prune(a, here, work, now, weight, simple)
-        while at < nodes and option < a.first[i + 1] and a.node[option] == at:
-            if price[option] < np.inf:
-                if waiting + here > len(rows):
-                    return np.inf, -1
-                target = a.arrival[option]
-                until = starts[target] if target < nodes else a.horizon_s
-                made = _take(a, i, option, price[option], point_worth, here, work, waiting)
-                _idle(work.wait_rows[waiting:], made, generation * (until - a.span[option, 1]), capacity, a.spill)
-                for k in range(waiting, waiting + made):
-                    work.wait_next[k] = head[target]
-                    head[target] = k
-                waiting += made
-            option += 1
+            side, run = 1 - side, run_next[run]
+        for o in range(option, follower):
+            if price[o] == np.inf:
+                continue
+            if waiting + here > len(wait_aboard) or runs >= len(run_low):
+                return np.inf, -1
+            target = arrival[o]
+            until = start_s[base + target] if target < nodes else a.horizon_s
+            end = _take(
+                o, price[o], now, generation * (until - span[o, 1]), capacity, weight, spill, simple, per_second,
+                recur_until, maps, use_at, use_first, use_last, clash, load_at, load_row, load_amount, load_own, room,
+                renews[o], own_bits[o], aboard, worth, cover, bits, via, side, here, wait_aboard, wait_worth,
+                wait_cover, wait_bits, record_option, record_before, waiting)
+            if end > waiting:
+                run_low[runs], run_high[runs], run_next[runs] = waiting, end, head[target]
+                head[target] = runs
+                runs += 1
+            waiting = end
+        option = follower
+    spent[0] += waiting + nodes
     best, chosen = -np.inf, -1
     for k in range(here):
-        worth = rows[k, 1] - point_worth * _missing(wants, bits[k])
-        if recur_until > rows[k, 2]:
-            worth -= point_worth * a.recur[i, 2] * (recur_until - rows[k, 2])
-        if worth > best:
-            best, chosen = worth, via[k]
+        ahead = worth[side, k] + a.craft[i, 4] * aboard[side, k] - point_worth * _missing(a.wants[i], bits[side, k])
+        ahead -= per_second * max(0.0, recur_until - cover[side, k])
+        if ahead > best:
+            best, chosen = ahead, via[side, k]
+    return best, _trace(record_option, record_before, chosen, taken)
+
+
+@inlined
+def _those_at(node: Integers, price: Floats, option: int, end: int, at: int) -> tuple[int, bool]:
+    """The end of the options from ``option`` on that start at a node, and whether any of them can be taken."""
+    usable = False
+    while option < end and node[option] == at:
+        usable = usable or price[option] < np.inf
+        option += 1
+    return option, usable
+
+
+@inlined
+def _take(
+    option: int, price: float, now: int, made: float, capacity: float, weight: float, spill: float, simple: bool,
+    per_second: float, recur_until: float, maps: Floats, use_at: Integers, use_first: Integers, use_last: Integers,
+    clash: Integers, load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, room: Floats,
+    renews: int, own_bits: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, via: Integers, side: int,
+    here: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats, wait_bits: Integers,
+    record_option: Integers, record_before: Integers, waiting: int,
+) -> int:
+    """The run of labels that taking an option makes of those here that can; returns where it ends.
+
+    All come from the same option, so that one beats another whatever clashes with it. The upward rule of ``labels.py``
+    is applied on the way, and of those that end with as much aboard only the best is kept: most do, where a contact
+    can carry more than there is. ``made`` is generated between the option's end and the start at which the labels wait.
+    """
+    from_s = min(float(now), recur_until)
+    end, best = waiting, -np.inf
+    for k in range(here):
+        record = via[side, k]
+        if record >= 0:
+            last = record_option[record]
+            if clash[last] >= now and share_clique(use_at, use_first, use_last, last, option):
+                continue
+            if len(room) > 0 and _overfills(load_at, load_row, load_amount, load_own, option, room, record_option,
+                                            record_before, record):
+                continue
+        after, sent, lost = _through(maps, option, aboard[side, k])
+        ahead = worth[side, k] + weight * sent - spill * lost - price
+        if simple:
+            if ahead + weight * after <= best:
+                continue
+            best = ahead + weight * after
+        covered = cover[side, k]
+        if renews >= 0:
+            ahead -= per_second * max(0.0, from_s - covered)
+            covered = max(covered, float(renews))
+        after, ahead = _idle(after, ahead, made, capacity, spill)
+        if simple and end > waiting and wait_aboard[end - 1] == after:
+            if wait_worth[end - 1] >= ahead:
+                continue
+            end -= 1
+        wait_aboard[end], wait_worth[end], wait_cover[end] = after, ahead, covered
+        wait_bits[end] = bits[side, k] | own_bits
+        record_option[end], record_before[end] = option, record
+        end += 1
+    return end
+
+
+@inlined
+def _trace(record_option: Integers, record_before: Integers, record: int, taken: Integers) -> int:
+    """Fill ``taken`` with the options that led to a record, in time order; returns how many."""
     size = 0
-    while chosen >= 0:
-        taken[size] = work.record_option[chosen]
+    while record >= 0:
+        taken[size] = record_option[record]
         size += 1
-        chosen = work.record_before[chosen]
+        record = record_before[record]
     for k in range(size // 2):
         taken[k], taken[size - 1 - k] = taken[size - 1 - k], taken[k]
-    return best, size
+    return size
 
 
 @compiled
@@ -100,9 +178,10 @@ def worth_of(a: FleetArrays, i: int, taken: Integers, size: int) -> tuple[float,
             worth -= a.spill * (fill - capacity)
             fill = capacity
         if k == size:
+            worth += a.craft[i, 4] * fill
             break
         o = taken[k]
-        fill, sent, lost = _through(a.maps[o], fill)
+        fill, sent, lost = _through(a.maps, o, fill)
         worth += weight * sent - a.spill * lost - a.cost[o]
         clock = a.span[o, 1]
         met |= a.bits[o]
@@ -113,52 +192,46 @@ def worth_of(a: FleetArrays, i: int, taken: Integers, size: int) -> tuple[float,
     return worth, a.recur[i, 2] * overdue + _missing(a.wants[i], met)
 
 
-@compiled
-def _through(maps: Floats, aboard: float) -> tuple[float, float, float]:
+@inlined
+def _through(maps: Floats, option: int, aboard: float) -> tuple[float, float, float]:
     """Fill after a contact, MB sent and MB lost: the storage map of ``maps.py``."""
-    after = min(max(aboard + maps[0], maps[1]), maps[2])
-    lost = maps[3] + max(0.0, aboard - maps[4])
-    return after, aboard + maps[5] - after - lost, lost
+    after = min(max(aboard + maps[option, 0], maps[option, 1]), maps[option, 2])
+    lost = maps[option, 3] + max(0.0, aboard - maps[option, 4])
+    return after, aboard + maps[option, 5] - after - lost, lost
 
 
-@compiled
-def _take(
-    a: FleetArrays, i: int, option: int, price: float, point_worth: float, here: int, work: Work, waiting: int,
-) -> int:
-    """Labels after taking an option, from all labels here that can; record and label share their index."""
-    start_s = min(float(a.span[option, 0]), a.recur[i, 1])
-    to = waiting
-    for k in range(here):
-        if work.via[k] >= 0:
-            last = work.record_option[work.via[k]]
-            if a.clash[last] >= a.span[option, 0] and share_clique(a.use_first, a.use_last, last, option):
-                continue
-        after, sent, lost = _through(a.maps[option], work.rows[k, 0])
-        worth = work.rows[k, 1] + a.craft[i, 0] * sent - a.spill * lost - price
-        covered = work.rows[k, 2]
-        if a.renews[option] >= 0:
-            worth -= point_worth * a.recur[i, 2] * max(0.0, start_s - covered)
-            covered = max(covered, float(a.renews[option]))
-        work.wait_rows[to, 0], work.wait_rows[to, 1], work.wait_rows[to, 2] = after, worth, covered
-        work.wait_bits[to], work.wait_via[to] = work.bits[k] | a.bits[option], to
-        work.record_option[to], work.record_before[to] = option, work.via[k]
-        to += 1
-    return to - waiting
+@inlined
+def _idle(aboard: float, worth: float, made: float, capacity: float, spill: float) -> tuple[float, float]:
+    """What is aboard after ``made`` MB more; what is above the capacity is lost."""
+    over = aboard + made - capacity
+    if over > 0.0:
+        return capacity, worth - spill * over
+    return aboard + made, worth
 
 
-@compiled
-def _idle(rows: Floats, count: int, made: float, capacity: float, spill: float) -> None:
-    """Add what is generated to the first ``count`` labels; what is above the capacity is lost."""
-    for k in range(count):
-        over = rows[k, 0] + made - capacity
-        if over > 0.0:
-            rows[k, 0] = capacity
-            rows[k, 1] -= spill * over
-        else:
-            rows[k, 0] += made
+@inlined
+def _overfills(
+    load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, option: int, room: Floats,
+    record_option: Integers, record_before: Integers, record: int,
+) -> bool:
+    """Whether an option and those taken before it add more to some row than there is room for."""
+    for e in range(load_at[option], load_at[option + 1]):
+        if not load_own[e]:
+            continue
+        left = room[load_row[e]] - load_amount[e]
+        before = record
+        while before >= 0 and left >= 0.0:
+            o = record_option[before]
+            for x in range(load_at[o], load_at[o + 1]):
+                if load_row[x] == load_row[e]:
+                    left -= load_amount[x]
+            before = record_before[before]
+        if left < 0.0:
+            return True
+    return False
 
 
-@compiled
+@inlined
 def _missing(wants: Floats, met: int | np.int64) -> float:
     """Points of the wanted terms whose bit is not set."""
     points = 0.0
@@ -175,6 +248,6 @@ def clashes(a: FleetArrays, taken: Integers, size: int) -> bool:
         for y in range(x + 1, size):
             if a.span[taken[y], 0] > a.clash[taken[x]]:
                 break
-            if share_clique(a.use_first, a.use_last, taken[x], taken[y]):
+            if share_clique(a.use_at, a.use_first, a.use_last, taken[x], taken[y]):
                 return True
     return False

@@ -1,0 +1,152 @@
+"""Independent parts of the network: spacecraft between which nothing can ever be in the way.
+
+Two spacecraft belong together if options of both hold one lane at the same time, add to the same row, or serve the
+same requirement; and so does, at one remove after another, everything that hangs together with them. Parts
+are planned apart: their plans fit together, and their values and bounds add up.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from passplan.planning.cliques import clique_spans
+from passplan.planning.problem import Flags, Integers, Problem, offsets_of, ragged_ranges
+from passplan.planning.rules.terms import Lane, Recurrence, Removal, Rows, Terms, Wanted
+
+# Parts smaller than this are planned together: a solver takes them apart again, and starting it costs time.
+_LEAST_OPTIONS = 1_500
+
+
+@dataclass(frozen=True, eq=False)
+class Part:
+    """A part of a problem: ``options`` are the numbers of its options in the whole."""
+
+    problem: Problem
+    terms: Terms
+    options: Integers
+
+
+def independent_parts(problem: Problem, terms: Terms) -> list[Part]:
+    """The parts of a problem, in the order of their first spacecraft; one part if everything hangs together.
+
+    Together they have all options and all spacecraft; a spacecraft without options, and a requirement that no option
+    serves, go to the first part.
+    """
+    count = len(problem.fleet)
+    if len(problem.options) == 0 or count < 2:
+        return [Part(problem, terms, np.arange(len(problem.options)))]
+    label = _joined(count, _groups(problem, terms))
+    options = np.bincount(problem.options.spacecraft, minlength=count)
+    part = _gathered(label, options)
+    if part.max() == 0:
+        return [Part(problem, terms, np.arange(len(problem.options)))]
+    return [_part(problem, terms, part == k, first=k == 0) for k in range(int(part.max()) + 1)]
+
+
+def _joined(count: int, groups: Iterable[Integers]) -> Integers:
+    """Numbers of spacecraft joined by sets of them: the lowest of all that hang together."""
+    above = list(range(count))
+
+    def root(k: int) -> int:
+        while above[k] != k:
+            above[k] = above[above[k]]
+            k = above[k]
+        return k
+
+    for group in groups:
+        roots = {root(k) for k in group.tolist()}
+        for k in roots:
+            above[k] = min(roots)
+    return np.array([root(k) for k in range(count)], dtype=np.int64)
+
+
+def _groups(problem: Problem, terms: Terms) -> Iterable[Integers]:
+    """Sets of spacecraft that belong together for one reason."""
+    craft = problem.options.spacecraft
+    for lane in terms.lanes:
+        if len(np.unique(craft[lane.options])) < 2:
+            continue
+        first, last, cliques = clique_spans(lane.start_s, lane.end_s)
+        member = np.repeat(craft[lane.options], last - first)
+        clique = ragged_ranges(first, last - first)
+        yield from _by_group(clique, member, cliques)
+    for rows in terms.rows:
+        row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
+        yield from _by_group(row, craft[rows.options], len(rows))
+    for served in [*(w.options for w in terms.wanted), *(g.options for g in terms.guarantees)]:
+        yield np.unique(craft[served])
+
+
+def _by_group(group: Integers, craft: Integers, groups: int) -> Iterable[Integers]:
+    pairs = np.unique(np.column_stack([group, craft]), axis=0)
+    offset = offsets_of(np.bincount(pairs[:, 0], minlength=groups))
+    for k in np.flatnonzero(np.diff(offset) > 1).tolist():
+        yield pairs[offset[k]:offset[k + 1], 1]
+
+
+def _gathered(label: Integers, options: Integers) -> Integers:
+    """Part numbers of spacecraft: components in the order of their first spacecraft, small ones put together."""
+    part = np.zeros(len(label), dtype=np.int64)
+    order = np.unique(label, return_index=True)
+    number, held = -1, _LEAST_OPTIONS
+    for component in order[0][np.argsort(order[1], kind="stable")].tolist():
+        mine = label == component
+        if held >= _LEAST_OPTIONS and options[mine].sum() > 0:
+            number, held = number + 1, 0
+        part[mine] = max(number, 0)
+        held += int(options[mine].sum())
+    return part
+
+
+def _part(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part:
+    """The options of some spacecraft. The fleet stays whole in the first part; elsewhere the others hold nothing."""
+    kept = np.flatnonzero(crafts[problem.options.spacecraft])
+    place = np.full(len(problem.options), -1, dtype=np.int64)
+    place[kept] = np.arange(len(kept))
+    fleet = problem.fleet
+    zero = np.where(crafts, 1.0, 0.0)
+    part = replace(
+        problem, options=problem.options.take(kept), too_tight=np.zeros((0, 2), dtype=np.int64),
+        extra_price=problem.extra_price[kept] if len(problem.extra_price) else problem.extra_price,
+        base_worth=problem.base_worth if first else 0.0,
+        fleet=replace(fleet, weight=fleet.weight * zero, generation_mb_per_s=fleet.generation_mb_per_s * zero,
+                      start_fill_mb=fleet.start_fill_mb * zero,
+                      streams=tuple(own if crafts[k] else () for k, own in enumerate(fleet.streams))))
+    return Part(part, _terms(problem, terms, place, crafts, first=first), kept)
+
+
+def _terms(problem: Problem, terms: Terms, place: Integers, crafts: Flags, *, first: bool) -> Terms:
+    def here(options: Integers) -> bool:
+        return bool(np.any(place[options] >= 0)) if len(options) else first
+
+    lanes: list[Lane] = []
+    for lane in terms.lanes:
+        mine = place[lane.options] >= 0
+        if np.any(mine):
+            lanes.append(replace(
+                lane, options=place[lane.options[mine]], start_s=lane.start_s[mine], end_s=lane.end_s[mine]))
+    recurrences: list[Recurrence] = []
+    for need in terms.recurrences:
+        if here(need.options) if len(need.options) else crafts[problem.fleet.names.index(need.name)]:
+            recurrences.append(replace(need, options=place[need.options]))
+    wanted: list[Wanted] = [replace(w, options=place[w.options]) for w in terms.wanted if here(w.options)]
+    removals: list[Removal] = [
+        replace(r, options=place[r.options][place[r.options] >= 0]) for r in terms.removals]
+    return Terms(
+        removals=tuple(removals), lanes=tuple(lanes), rows=tuple(_rows(rows, place) for rows in terms.rows),
+        wanted=tuple(wanted), recurrences=tuple(recurrences),
+        guarantees=tuple(replace(g, options=place[g.options]) for g in terms.guarantees if here(g.options)))
+
+
+def _rows(rows: Rows, place: Integers) -> Rows:
+    """The rows that have an option here: all of their options are."""
+    row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
+    mine = place[rows.options] >= 0
+    kept = np.unique(row[mine])
+    counts = np.bincount(row[mine], minlength=len(rows))[kept]
+    return replace(
+        rows, names=tuple(rows.names[r] for r in kept.tolist()), offset=offsets_of(counts.astype(np.int64)),
+        options=place[rows.options[mine]], amounts=rows.amounts[mine], limit=rows.limit[kept])
