@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pandas as pd
@@ -12,7 +13,9 @@ from need_cases import NeedJudge, needy_problem
 from planning_cases import STEP_S
 from planning_runs import BOTH, DOWN, UP, at, make_run, make_windows, request
 
-from passplan.inputs.decisions import Decision
+from passplan.inputs.decisions import Decision, read_published
+from passplan.inputs.errors import Findings
+from passplan.inputs.reader import Reader
 from passplan.link.choice import WindowLink
 from passplan.planning.plan import Plan, make_plan
 from passplan.planning.portfolio import find_plan
@@ -210,3 +213,13 @@ def test_taking_options_takes_what_they_hold() -> None:
         assert taken.further.antenna[mine].tolist() == options.further.antenna[before].tolist()
         assert taken.further.start_s[mine].tolist() == options.further.start_s[before].tolist()
     assert backed(taken, None).tolist() == backed(options, None)[order].tolist()
+
+
+def test_a_published_stand_by_is_no_contact_to_keep(tmp_path: Path) -> None:
+    columns = "spacecraft,antenna,start_utc,end_utc,service,origin\n"
+    span = f"{at(900)},{at(1_800)},both"
+    file = tmp_path / "contacts.csv"
+    file.write_text(f"{columns}Teasel-1,Isvarde-A,{span},requested\nTeasel-1,Isvarde-B,{span},standby\n")
+    run, findings = make_run(), Findings()
+    found = read_published(file, dict(run.spacecraft), run.antennas, Reader(), findings)
+    assert [item.antenna for item in found] == ["Isvarde-A"]
