@@ -4,11 +4,13 @@ from __future__ import annotations
 
 from copy import deepcopy
 from dataclasses import replace
+from io import StringIO
 from pathlib import Path
 
 import numpy as np
 import pytest
 from audit_bench import CRAFT, Bench
+from rich.console import Console
 
 from passplan.inputs.data import DataClass
 from passplan.inputs.generation import Series
@@ -21,6 +23,7 @@ from passplan.planning.backlog import backlogs
 from passplan.planning.fleet import fleet_of
 from passplan.planning.record import PlanRecord
 from passplan.planning.steps import plan_run
+from passplan.report.backlog_chart import backlog_chart
 
 ROOT = Path(__file__).parents[3]
 
@@ -172,3 +175,15 @@ def test_storage_that_is_freed_or_lost_otherwise(aged: Bench, change: dict[str, 
     run = replace(aged.run, spacecraft={**aged.run.spacecraft, "Ambril-3": craft})
     faults = audit_plan(run, aged.contacts, aged.segments, aged.summary)
     assert {fault.kind for fault in faults} & {"storage", "volume", "value"}
+
+
+def test_the_review_shows_each_class(honest: Bench) -> None:
+    none = honest.contacts.iloc[:0]
+    stores = backlogs(PlanRecord(honest.summary, none, honest.contacts, honest.segments, none))
+    console = Console(width=100, record=True, file=StringIO())
+    console.print(backlog_chart(honest.summary, stores, 100, None))
+    lines = console.export_text().splitlines()
+    own = next(line for line in lines if line.startswith("  alerts"))
+    assert "worth 9" in own
+    assert not any(line.startswith("  soil") for line in lines)  # the only class of its spacecraft
+    assert max(map(len, lines)) <= 100
