@@ -106,7 +106,7 @@ def find_options(
     candidates = [c for found in of_window.values() for c in found]
     candidates += standby_candidates(
         standbys, windows, fleet.names, antennas.names, of_window, lambda w, a, b: builder.offered(w, links[w], a, b),
-        builder.free, run.policy.options_per_window)
+        builder.free)
 
     def held(c: Candidate) -> dict[str, Any]:
         prepare_s, release_s = setup.of(antennas.names[int(windows.antenna[c.window])], c)

@@ -19,13 +19,13 @@ Free = Callable[[int, int, int], Sequence[tuple[int, int]]]
 
 def standby_candidates(
     asked: Sequence[Standby], windows: Windows, fleet: Sequence[str], antennas: Sequence[str],
-    own: Mapping[int, Sequence[Candidate]], make: Make, free: Free, most: int,
+    own: Mapping[int, Sequence[Candidate]], make: Make, free: Free,
 ) -> Iterator[Candidate]:
     """Each contact with each stand-by that somebody asked for.
 
     ``own`` are the plain candidates of the windows, ``make(window, start_s, end_s)`` a new one, or None, and
     ``free`` the parts of a span of a window in which a contact is possible. Of each pair of windows come all of the
-    time that both can follow and the plain candidates within it, ``most`` at most.
+    time that both can follow and the plain candidates within it.
     """
     found: set[tuple[int, int, int, int]] = set()
     for want in asked:
@@ -44,8 +44,8 @@ def standby_candidates(
                 continue
             both = [(a, b) for c, d in free(w, low, high) for a, b in free(second, c, d)]
             within = sorted({(c.start_s, c.end_s) for c in own.get(w, ()) if any(
-                a <= c.start_s and c.end_s <= b for a, b in both)} - set(both), key=lambda s: (s[0] - s[1], s[0]))
-            for start_s, end_s in [*both, *within][:most]:
+                a <= c.start_s and c.end_s <= b for a, b in both)} - set(both))
+            for start_s, end_s in [*both, *within]:
                 if (w, second, start_s, end_s) in found:
                     continue
                 first, spare = make(w, start_s, end_s), make(second, start_s, end_s)
