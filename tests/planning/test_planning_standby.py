@@ -221,5 +221,5 @@ def test_a_published_stand_by_is_no_contact_to_keep(tmp_path: Path) -> None:
     file = tmp_path / "contacts.csv"
     file.write_text(f"{columns}Teasel-1,Isvarde-A,{span},requested\nTeasel-1,Isvarde-B,{span},standby\n")
     run, findings = make_run(), Findings()
-    found = read_published(file, dict(run.spacecraft), run.antennas, Reader(), findings)
+    found = read_published(file, dict(run.spacecraft), run.antennas, Reader(tmp_path), findings)
     assert [item.antenna for item in found] == ["Isvarde-A"]
