@@ -203,6 +203,30 @@ def test_150_cases_with_stand_bys_equal_the_best_of_all_plans(block: int) -> Non
     assert held > 3 and served > 0
 
 
+@pytest.mark.parametrize("block", range(4))
+def test_the_search_keeps_what_stand_bys_hold(block: int) -> None:
+    limits = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0)
+    for seed in range(200 + 10 * block, 210 + 10 * block):
+        problem = held_problem(seed)
+        judge = HeldJudge(problem)
+        points, value = judge.best()
+        result = find_plan(problem, limits)
+        chosen = frozenset(result.chosen)
+        assert chosen in set(judge.plans()), f"seed {seed}"
+        assert judge.points(chosen) >= points - 1e-9
+        assert judge.points(chosen) > points + 1e-9 or judge.value(chosen) <= value + 1e-6 * max(1.0, abs(value))
+        if judge.points(chosen) <= points + 1e-9:
+            assert result.bound >= value - 1e-6 * max(1.0, abs(value)), f"seed {seed}"
+
+
+@pytest.mark.parametrize("seed", range(300, 330))
+def test_asking_for_a_stand_by_never_makes_requirements_easier(seed: int) -> None:
+    problem = held_problem(seed)
+    looser = replace(problem, requests=tuple(replace(need, standbys=None) for need in problem.requests))
+    tight, loose = (sum(s.points for s in find_plan(one, Limits(gap=0.0)).shortfalls) for one in (problem, looser))
+    assert tight >= loose - 1e-9
+
+
 def test_taking_options_takes_what_they_hold() -> None:
     problem = held_problem(3)
     options = problem.options
