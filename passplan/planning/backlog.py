@@ -72,7 +72,8 @@ def follow(
         turn = (edge - fill) / slope if slope else length
         if 0.0 <= turn < length:
             points.append((clock + turn, edge))
-            if slope > 0.0 and length - turn > 0.5:
+            # Less than a millisecond is rounding of the tables' times.
+            if slope > 0.0 and length - turn > 1e-3:
                 losing.append((clock + turn, until))
             fill = edge
         else:

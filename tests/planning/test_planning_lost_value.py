@@ -7,7 +7,7 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from passplan.inputs.run import Run
@@ -92,6 +92,7 @@ def test_data_that_a_later_contact_takes_is_not_charged() -> None:
     assert (lost, left, shares) == (0.0, 0.0, {})
 
 
+@example(share=0.625, generation=1.25, capacity=6.0, raw=[(1, 1, 1.0)], unused=[(1, 97, 30.0)])
 @given(
     st.floats(0.0, 1.0), st.floats(0.0, 2.0), st.floats(5.0, 500.0),
     st.lists(st.tuples(st.integers(1, 300), st.integers(1, 200), st.floats(0.1, 30.0)), max_size=4),
