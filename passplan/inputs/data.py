@@ -8,6 +8,7 @@ from typing import Annotated
 
 from pydantic import Field
 
+from passplan.inputs.ageing import Ageing
 from passplan.inputs.errors import Findings, nearest
 from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.generation import Generation, Series, read_series
@@ -18,10 +19,10 @@ from passplan.inputs.tables import Placed
 # The class of a spacecraft for which the user states none.
 ONLY_CLASS = "data"
 # Keys of a spacecraft that its classes state instead.
-_OF_CLASSES = {"weight", "start_fill_mb", *Generation.model_fields}
+_OF_CLASSES = {"weight", "start_fill_mb", *Generation.model_fields, *Ageing.model_fields}
 
 
-class DataClass(Generation):
+class DataClass(Ageing, Generation):
     """One class of data aboard each of ``spacecraft``. What is worth more goes down first and is lost last."""
 
     name: Name
@@ -68,9 +69,9 @@ def _check_craft(craft: Spacecraft, classes: list[DataClass], file: str, finding
 
 def only_class(craft: Spacecraft) -> DataClass:
     """The class of a spacecraft for which the user states none, made of its own keys."""
-    generation = {key: getattr(craft, key) for key in Generation.model_fields}
+    shared = {key: getattr(craft, key) for key in (*Generation.model_fields, *Ageing.model_fields)}
     return DataClass(
-        name=ONLY_CLASS, spacecraft=(craft.name,), weight=craft.weight, start_fill_mb=craft.start_fill_mb, **generation)
+        name=ONLY_CLASS, spacecraft=(craft.name,), weight=craft.weight, start_fill_mb=craft.start_fill_mb, **shared)
 
 
 def read_all_series(

@@ -6,6 +6,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
 
+from passplan.inputs.ageing import Ageing
 from passplan.inputs.craft_limits import CraftLimits
 from passplan.inputs.craft_power import CraftPower
 from passplan.inputs.generation import Generation
@@ -91,13 +92,15 @@ def check_pattern(pattern: tuple[tuple[float, float], ...]) -> None:
 Radio = Annotated[DownlinkRadio | CommandRadio, Field(discriminator="direction")]
 
 
-class Spacecraft(CraftLimits, CraftPower, Generation):
+class Spacecraft(CraftLimits, CraftPower, Ageing, Generation):
     """One spacecraft: its orbit source, its radios by name, its storage and what its data is worth.
 
     The orbit comes from ``catalogue_number`` (looked up among the run's element sets), or from a file
     that the spacecraft names itself: ``elements_file`` (one element set) or ``ephemeris_file`` (an OEM,
     which takes precedence). Weight, generation and fill are those of all its data, unless classes of data name it
-    (see :mod:`passplan.inputs.data`). Storage starts the horizon with ``start_fill_mb``. Element sets from before
+    (see :mod:`passplan.inputs.data`). ``overflow`` says what a full storage loses of the class worth least, and
+    ``acknowledged_by`` when what was sent makes room: as it is sent, at the end of its contact, or at that of the next
+    command contact. Storage starts the horizon with ``start_fill_mb``. Element sets from before
     one of ``manoeuvres_utc`` are not used after it, nor those from after it before.
     """
 
@@ -109,6 +112,8 @@ class Spacecraft(CraftLimits, CraftPower, Generation):
     radios: Names = ()
     weight: Annotated[float, Field(ge=0.0, le=1e6)] = 1.0
     storage_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
+    overflow: Literal["oldest", "newest"] = "oldest"
+    acknowledged_by: Literal["contact", "next_command"] | None = None
     start_fill_mb: Annotated[float, Field(ge=0.0, le=1e9)] = 0.0
     command_every_h: Annotated[float, Field(gt=0.0, le=240.0)] | None = None
     last_command_utc: Instant | None = None

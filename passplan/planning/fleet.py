@@ -8,7 +8,7 @@ from passplan.geometry.revolutions import revolution_edges_s
 from passplan.inputs.data import DataClass
 from passplan.inputs.run import Run
 from passplan.planning.problem import Fleet
-from passplan.planning.streams import Floats, Stream
+from passplan.planning.streams import Floats, Keeping, Stream
 
 
 def fleet_of(run: Run) -> Fleet:
@@ -19,12 +19,21 @@ def fleet_of(run: Run) -> Fleet:
     return Fleet(
         names=names, weight=totals[:, 0], generation_mb_per_s=totals[:, 1],
         capacity_mb=np.array([run.spacecraft[name].storage_mb for name in names], dtype=float),
-        start_fill_mb=totals[:, 2], streams=streams if any(streams) else ())
+        start_fill_mb=totals[:, 2], streams=streams if any(streams) else (),
+        keeping=tuple(_keeping(run, name) for name in names) if any(streams) else ())
+
+
+def _keeping(run: Run, name: str) -> Keeping:
+    craft = run.spacecraft[name]
+    return Keeping(craft.overflow == "newest", craft.acknowledged_by or "")
 
 
 def _streams(run: Run, name: str) -> tuple[Stream, ...]:
     classes = run.data_of(name)
-    plain = name not in run.data and not classes[0].generation_mb_per_orbit and classes[0].generation_file is None
+    one = classes[0]
+    steady = not one.generation_mb_per_orbit and one.generation_file is None
+    ages = one.deadline_h is not None or bool(one.freshness)
+    plain = name not in run.data and steady and not ages and run.spacecraft[name].acknowledged_by is None
     return () if plain else tuple(_stream(run, name, item) for item in classes)
 
 
@@ -53,7 +62,21 @@ def _stream(run: Run, name: str, item: DataClass) -> Stream:
     edges = np.concatenate([time_s for time_s, _ in lines])
     time_s = np.unique(np.clip(edges, 0.0, horizon_s))
     made_mb = np.sum([np.interp(time_s, *line) - np.interp(0.0, *line) for line in lines], axis=0)
-    return Stream(item.name, item.weight, item.start_fill_mb, time_s, made_mb)
+    ages, shares = zip(*(item.freshness or ((0.0, 1.0),)), strict=True)
+    return Stream(
+        item.name, item.weight, item.start_fill_mb, time_s, made_mb,
+        deadline_s=np.inf if item.deadline_h is None else 3600.0 * item.deadline_h,
+        start_age_s=start_age_s(item, float(made_mb[-1]) / horizon_s), fresh_age_s=3600.0 * np.array(ages),
+        fresh_share=np.array(shares))
+
+
+def start_age_s(item: DataClass, mb_per_s: float) -> float:
+    """Age of the oldest of the start fill: as stated, or as long as making it takes, at most the deadline."""
+    deadline_s = np.inf if item.deadline_h is None else 3600.0 * item.deadline_h
+    if item.start_age_h is not None:
+        return 3600.0 * item.start_age_h
+    made_in_s = item.start_fill_mb / mb_per_s if mb_per_s > 0.0 else 0.0
+    return float(min(made_in_s, deadline_s))
 
 
 def _line(start_s: Floats, end_s: Floats, mb_per_s: Floats) -> tuple[Floats, Floats]:

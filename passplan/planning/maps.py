@@ -24,6 +24,7 @@ import numpy as np
 
 from passplan.planning.problem import Floats, Integers, Problem, offsets_of, ragged_ranges
 from passplan.planning.streams import Layer
+from passplan.planning.value import worth_followed
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,7 +58,17 @@ class StorageMaps:
 
 
 def worth_of(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int]) -> float:
-    """The part of the objective of one spacecraft with the contacts ``mine``, in time order, by its layers."""
+    """The part of the objective of one spacecraft with the contacts ``mine``, in time order.
+
+    By its layers, or, where those may overrate it, by following its classes, which takes far longer.
+    """
+    if craft in problem.fleet.loose:
+        return worth_followed(problem, craft, mine)
+    return worth_by_layers(problem, maps, craft, mine)
+
+
+def worth_by_layers(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int]) -> float:
+    """The same by its layers alone, which may be more than it is worth."""
     options = problem.options
     worth = -sum(float(problem.price[o]) for o in mine)
     for k, layer in enumerate(problem.layers[craft]):
@@ -76,8 +87,16 @@ def worth_of(problem: Problem, maps: StorageMaps, craft: int, mine: Sequence[int
 
 def _idle(layer: Layer, fill: float, from_s: float, until_s: float, made: float) -> tuple[float, float]:
     """Fill and loss after a span without a contact in which ``made`` MB are generated."""
-    over = max(0.0, fill + made - layer.room_mb[-1])
-    return fill + made - over, over
+    if not layer.shrinks:
+        over = max(0.0, fill + made - float(layer.room_mb[-1]))
+        return fill + made - over, over
+    inside = layer.time_s[(layer.time_s > from_s) & (layer.time_s < until_s)]
+    edges = np.concatenate([[from_s], inside, [until_s]])
+    lost = 0.0
+    for part, room in zip(np.diff(layer.made(edges)).tolist(), layer.room(edges[1:]).tolist(), strict=True):
+        over = max(0.0, fill + part - room)
+        fill, lost = fill + part - over, lost + over
+    return fill, lost
 
 
 def storage_maps(problem: Problem) -> StorageMaps:

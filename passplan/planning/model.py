@@ -21,6 +21,7 @@ import numpy as np
 from ortools.math_opt import model_pb2
 
 from passplan.planning.cliques import clique_spans
+from passplan.planning.overrated import Overrated
 from passplan.planning.problem import Floats, Integers, Problem, ragged_ranges
 from passplan.planning.rules.terms import Lane, Recurrence, Rows, Terms
 from passplan.planning.streams import Layer
@@ -89,8 +90,10 @@ class PlanModel:
         return proto
 
 
-def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> PlanModel:
-    """The program of a problem under the terms of its rules.
+def build_model(
+    problem: Problem, terms: Terms, *, storage: bool = True, overrated: Sequence[Overrated] = (),
+) -> PlanModel:
+    """The program of a problem under the terms of its rules, told which choices are ``overrated``.
 
     Without ``storage`` only requirements count, and options that serve none are left out: enough for tier 1.
     """
@@ -113,6 +116,8 @@ def build_model(problem: Problem, terms: Terms, *, storage: bool = True) -> Plan
     for craft, layers in enumerate(problem.layers if storage else ()):
         for layer in layers:
             _add_storage(block, problem, craft, layer)
+    for one in overrated:
+        _add_overrated(block, one)
     for want in terms.wanted:
         slack = block.add_columns(upper=np.ones(1), points=np.full(1, want.points))
         row = block.add_rows(lower=np.ones(1))
@@ -177,12 +182,26 @@ def _add_storage(block: _Blocks, problem: Problem, craft: int, layer: Layer) -> 
     block.add_entries(carry[np.searchsorted(active, step)], option, -volume_mb / unit_mb)
 
 
+def _add_overrated(block: _Blocks, one: Overrated) -> None:
+    """A column that costs what exactly these contacts are overrated by, and must be 1 if they are chosen."""
+    cost = block.add_columns(upper=np.ones(1), value=np.full(1, -one.worth))
+    row = block.add_rows(lower=np.full(1, 1.0 - len(one.chosen)))
+    block.add_entries(row, cost, np.ones(1))
+    sign = np.where(np.isin(one.mine, one.chosen), -1.0, 1.0)
+    block.add_entries(np.full(len(one.mine), row[0]), one.mine, sign)
+
+
 def _instants(problem: Problem, mine: Integers, layer: Layer) -> Floats:
-    """Where the sending of an option starts or ends, and where generation changes while one could send."""
+    """Where the sending of an option starts or ends, and where generation changes while one could send.
+
+    A capacity that changes counts wherever it bends.
+    """
     options = problem.options
     first_piece, last_piece = options.piece_offset[mine], options.piece_offset[mine + 1] - 1
     starts, ends = options.piece_start_s[first_piece], options.piece_end_s[last_piece]
     inner = layer.inner_times()
+    if layer.shrinks:
+        return np.unique(np.concatenate([[0.0, float(problem.horizon_s)], starts, ends, inner]))
     open_then = np.searchsorted(np.sort(starts), inner, side="right") > np.searchsorted(np.sort(ends), inner)
     return np.unique(np.concatenate([[0.0, float(problem.horizon_s)], starts, ends, inner[open_then]]))
 

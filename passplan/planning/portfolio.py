@@ -17,6 +17,7 @@ from passplan.planning.greedy import plan_greedily
 from passplan.planning.interrupt import stops_by_hand
 from passplan.planning.maps import storage_maps
 from passplan.planning.occupancy import first_conflict
+from passplan.planning.overrated import Overrated, find_overrated
 from passplan.planning.parts import Part, independent_parts
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Proof, Tier, relative_gap, status_of
@@ -118,11 +119,17 @@ def _plan_part(
             best = max(best, _Candidate(problem, terms, filled, "greedy"), key=_Candidate.rank)
     if open_still() and len(problem.options) <= limits.exact_options:
         # Half of the time: the search takes the other half where the model is too hard after all.
-        solved = most_value(problem, terms, limits, clock.part(0.5 * clock.left_s()), best.points)
-        if solved.bound < bound:
-            bound, certificate = solved.bound, solved.certificate
-        best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
-        tell(best.account.value, bound)
+        half, overrated = clock.part(0.5 * clock.left_s()), list[Overrated]()
+        while open_still() and not half.expired():
+            solved = most_value(problem, terms, limits, half, best.points, overrated=overrated)
+            if solved.bound < bound:
+                bound, certificate = solved.bound, solved.certificate
+            best = max(best, _Candidate(problem, terms, solved.chosen or (), "exact"), key=_Candidate.rank)
+            tell(best.account.value, bound)
+            news = find_overrated(problem, maps, solved.chosen or (), overrated)
+            if solved.chosen is None or not news:
+                break
+            overrated += news
     if open_still() and can_search(problem) and compiled_in_time(clock):
         with clock.stage("search"):
             if arrays is None:

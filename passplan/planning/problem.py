@@ -14,7 +14,7 @@ from typing import Any, Literal, TypeVar
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from passplan.planning.streams import Layer, Stream, layers_of, steady
+from passplan.planning.streams import Keeping, Layer, Stream, is_loose, layers_of, steady
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -28,7 +28,8 @@ class Fleet:
     """Spacecraft, shape (n,): the worth of a MB, the generation rate [MB/s], and the storage [MB].
 
     ``streams`` are the classes of data of each spacecraft by falling weight, none for one with a single class at a
-    steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill.
+    steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill; and
+    ``keeping`` says how each storage loses and frees data (absent: as :class:`Keeping` has it by default).
     """
 
     names: tuple[str, ...]
@@ -37,6 +38,7 @@ class Fleet:
     capacity_mb: Floats
     start_fill_mb: Floats
     streams: tuple[tuple[Stream, ...], ...] = ()
+    keeping: tuple[Keeping, ...] = ()
 
     def __post_init__(self) -> None:
         _freeze(self)
@@ -53,6 +55,16 @@ class Fleet:
     def streams_of(self, craft: int) -> tuple[Stream, ...]:
         """The classes of one spacecraft, none where the arrays say all."""
         return self.streams[craft] if self.streams else ()
+
+    def keeping_of(self, craft: int) -> Keeping:
+        """How the storage of one spacecraft loses and frees data."""
+        return self.keeping[craft] if self.keeping else Keeping()
+
+    @cached_property
+    def loose(self) -> frozenset[int]:
+        """Spacecraft of which layers tell no more than a ceiling; see :mod:`passplan.planning.streams`."""
+        return frozenset(
+            k for k in range(len(self)) if self.streams_of(k) and is_loose(self.streams_of(k), self.keeping_of(k)))
 
     def __len__(self) -> int:
         return len(self.names)

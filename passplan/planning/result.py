@@ -13,6 +13,8 @@ from passplan.planning.value import Account
 Status = Literal["optimal", "within_gap", "stopped_by_limit", "greedy", "empty"]
 # Below this relative gap a plan is called optimal: solvers work to such tolerances themselves.
 OPTIMAL_GAP = 1e-5
+# Worth of less than a byte of weight one: values that should be nothing are off by rounding.
+_NOTHING = 1e-9
 
 
 @dataclass(frozen=True)
@@ -60,7 +62,7 @@ class PlanResult:
 
 def relative_gap(value: float, bound: float) -> float:
     """(bound - value) / |bound|, as the gap is stated everywhere; 0 when both are 0, capped at 1e9."""
-    if bound <= value:
+    if bound - value <= _NOTHING:
         return 0.0
     if bound == float("inf") or bound == 0.0:
         return 1e9

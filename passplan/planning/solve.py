@@ -10,7 +10,7 @@ import datetime as dt
 import threading
 from collections.abc import Sequence
 from contextlib import suppress
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from ortools.math_opt import model_pb2
@@ -19,6 +19,7 @@ from ortools.math_opt.python import mathopt
 from passplan.planning.certificate import ModelCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.model import PlanModel, build_model
+from passplan.planning.overrated import Overrated
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.rules.terms import Terms
 
@@ -52,16 +53,19 @@ def least_shortfall(problem: Problem, terms: Terms, limits: Limits, clock: Clock
 
 def most_value(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float,
-    holds: Sequence[tuple[Problem, float]] = (),
+    holds: Sequence[tuple[Problem, float]] = (), overrated: Sequence[Overrated] = (),
 ) -> Solved:
     """Tier 2: the most valuable options among those with at most ``points`` of shortfall.
 
-    ``holds`` are the same problem with other objectives, each with the value that is not to be given up.
+    ``holds`` are the same problem with other objectives, each with the value that is not to be given up;
+    ``overrated`` are choices of which the model thinks too much.
     """
     with clock.stage("model"):
-        model = build_model(problem, terms)
+        model = build_model(problem, terms, overrated=overrated)
         limit = points + _POINTS_TOLERANCE if np.any(model.points) else None
-        held = [(build_model(other, terms).value, least - other.base_worth) for other, least in holds]
+        unpriced = [replace(one, worth=0.0) for one in overrated]
+        held = [(build_model(other, terms, overrated=unpriced).value, least - other.base_worth)
+                for other, least in holds]
         proto = model.proto(tier=2, points_limit=limit, holds=held)
     with clock.stage("solve"):
         answer = _solve(proto, model, limits, clock, limits.gap)

@@ -10,31 +10,94 @@ and the whole capacity. With D(k) for what the classes 1..k deliver together, th
 so that a spacecraft with K classes is K independent storages, its layers: layer k holds the classes 1..k and is
 worth w(k) - w(k+1) a MB; what overflows costs in the last one alone, which holds everything. (Own derivation;
 ``classes.py`` follows the classes themselves, and tests compare.)
+
+A deadline limits what can be aboard of a class to what was acquired within it. As the oldest data goes first, a
+single class with a deadline is exactly a storage of that capacity, which changes with time. Of several classes, of
+worth that fades and of storage freed late the layers know less: they allow at least what is possible, so that bounds
+hold, and :attr:`~passplan.planning.problem.Fleet.loose` tells which spacecraft they may overrate.
 """
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, field, fields
 
 import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
+# Ages that differ by less are one.
+_ONE_AGE_S = 1e-6
+
+
+@dataclass(frozen=True)
+class Keeping:
+    """How a storage loses and frees data: the ``newest`` is lost when it overflows, else the oldest; what is sent is
+    freed at once (``acknowledged`` empty), at the end of its ``contact``, or of the ``next_command`` contact."""
+
+    newest: bool = False
+    acknowledged: str = ""
 
 
 @dataclass(frozen=True, eq=False)
 class Stream:
-    """One class of data aboard: ``made_mb`` is generated up to ``time_s``, in straight lines from 0 to the horizon."""
+    """One class of data aboard: ``made_mb`` is generated up to ``time_s``, in straight lines from 0 to the horizon.
+
+    It is dropped ``deadline_s`` after it was acquired. Up to the age ``age_s`` (from 0, rising) it is worth
+    ``share`` of its weight, in straight lines, two points at one age being a step; the last share holds on. The
+    start fill was acquired evenly over ``start_age_s`` before the start.
+    """
 
     name: str
     weight: float
     start_mb: float
     time_s: Floats
     made_mb: Floats
+    deadline_s: float = math.inf
+    start_age_s: float = 0.0
+    fresh_age_s: Floats = field(default_factory=lambda: np.zeros(1))
+    fresh_share: Floats = field(default_factory=lambda: np.ones(1))
 
     def __post_init__(self) -> None:
         _freeze(self)
+
+    @property
+    def fades(self) -> bool:
+        """Whether its worth depends on its age."""
+        return bool(np.any(self.fresh_share != 1.0))
+
+    def share(self, age_s: float, other_age_s: float) -> float:
+        """The mean share of the weight over ages between two."""
+        if not self.fades:
+            return 1.0
+        if abs(other_age_s - age_s) < _ONE_AGE_S:
+            # At a step what is about to lose worth has lost it.
+            return float(np.interp(age_s + _ONE_AGE_S, self.fresh_age_s, self.fresh_share))
+        return (self._shares_up_to(other_age_s) - self._shares_up_to(age_s)) / (other_age_s - age_s)
+
+    def _shares_up_to(self, age_s: float) -> float:
+        ages, shares = self.fresh_age_s, self.fresh_share
+        k = int(np.searchsorted(ages, age_s, side="right")) - 1
+        whole = float(np.sum(0.5 * (shares[1:k + 1] + shares[:k]) * np.diff(ages[:k + 1])))
+        here = float(np.interp(age_s, ages, shares))
+        return whole + 0.5 * (float(shares[k]) + here) * (age_s - float(ages[k]))
+
+    def fit_to_deliver(self, time_s: Floats) -> Floats:
+        """MB acquired no longer ago than the deadline, at any times: no more of the class can be aboard."""
+        if not math.isfinite(self.deadline_s):
+            return np.full(len(time_s), math.inf)
+        oldest_s = time_s - self.deadline_s
+        age_s = max(self.start_age_s, 1.0)
+        started = self.start_mb * np.clip(-oldest_s / age_s, 0.0, 1.0)
+        return np.asarray(self.made(time_s) - self.made(np.maximum(oldest_s, 0.0)) + started)
+
+    def edges(self) -> Floats:
+        """Instants at which generation, or what is fit to deliver, bends."""
+        if not math.isfinite(self.deadline_s):
+            return self.time_s
+        later = np.concatenate([self.time_s, [-max(self.start_age_s, 1.0)]]) + self.deadline_s
+        return np.unique(np.concatenate([self.time_s, later[(later > 0.0) & (later < self.time_s[-1])]]))
 
     def made(self, time_s: Floats | float) -> Floats:
         """MB generated up to any times within the horizon."""
@@ -67,6 +130,11 @@ class Layer:
         """The capacity [MB] at any times within the horizon."""
         return np.asarray(np.interp(time_s, self.time_s, self.room_mb))
 
+    @property
+    def shrinks(self) -> bool:
+        """Whether its capacity changes with time."""
+        return bool(np.any(self.room_mb != self.room_mb[0]))
+
     def inner_times(self) -> Floats:
         """Instants within the horizon at which a rate changes."""
         return self.time_s[1:-1]
@@ -77,29 +145,45 @@ def steady(name: str, weight: float, start_mb: float, mb_per_s: float, horizon_s
     return Stream(name, weight, start_mb, np.array([0.0, horizon_s]), np.array([0.0, mb_per_s * horizon_s]))
 
 
+def is_loose(streams: Sequence[Stream], keeping: Keeping) -> bool:
+    """Whether the layers of these classes may overrate them."""
+    ages = any(math.isfinite(one.deadline_s) for one in streams)
+    return (ages and (len(streams) > 1 or keeping.newest)) or any(one.fades for one in streams) or bool(
+        keeping.acknowledged)
+
+
 def layers_of(streams: Sequence[Stream], capacity_mb: float, spill_cost: float) -> tuple[Layer, ...]:
-    """The layers of classes given by falling weight. Classes of equal weight share one."""
+    """The layers of classes given by falling weight, one for each, so that they stay alike when weights change."""
     layers = []
     for k, stream in enumerate(streams):
         last = k == len(streams) - 1
         weight = stream.weight - (0.0 if last else streams[k + 1].weight)
         if weight < 0.0:
             raise ValueError(f"{streams[k + 1].name} is worth more than {stream.name}; sort classes by falling weight")
-        if weight == 0.0 and not last:
-            continue
         inside = streams[: k + 1]
-        time_s = np.unique(np.concatenate([one.time_s for one in inside]))
+        time_s = _with_crossings(np.unique(np.concatenate([one.edges() for one in inside])), inside, capacity_mb)
         made_mb = np.sum([one.made(time_s) for one in inside], axis=0)
+        room_mb = np.minimum(capacity_mb, np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0))
         layers.append(Layer(
-            weight, spill_cost if last else 0.0, float(sum(one.start_mb for one in inside)), time_s, made_mb,
-            np.full(len(time_s), capacity_mb)))
+            weight, spill_cost if last else 0.0, float(sum(one.start_mb for one in inside)), time_s, made_mb, room_mb))
     return tuple(layers)
 
 
+def _with_crossings(time_s: Floats, inside: Sequence[Stream], capacity_mb: float) -> Floats:
+    """``time_s`` and the instants at which what is fit to deliver crosses the capacity."""
+    fit_mb = np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0)
+    if not np.all(np.isfinite(fit_mb)):
+        return time_s
+    above = fit_mb - capacity_mb
+    at = np.flatnonzero(above[:-1] * above[1:] < 0.0)
+    crossing = time_s[at] + (time_s[at + 1] - time_s[at]) * above[at] / (above[at] - above[at + 1])
+    return np.unique(np.concatenate([time_s, crossing]))
+
+
 def _freeze(record: Stream | Layer) -> None:
-    for field in fields(record):
-        value = getattr(record, field.name)
+    for one in fields(record):
+        value = getattr(record, one.name)
         if isinstance(value, np.ndarray):
             array = np.array(value, dtype=np.float64)
             array.flags.writeable = False
-            object.__setattr__(record, field.name, array)
+            object.__setattr__(record, one.name, array)

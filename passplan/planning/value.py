@@ -22,12 +22,15 @@ import numpy as np
 
 from passplan.planning.classes import Aboard, follow
 from passplan.planning.problem import Floats, Integers, Options, Problem
-from passplan.planning.streams import Stream
+from passplan.planning.streams import Keeping, Stream
 
 
 @dataclass(frozen=True)
 class ClassBalance:
-    """Where one class of data of one spacecraft went [MB], and what a MB of it is worth."""
+    """Where one class of data of one spacecraft went [MB], and what a MB of it is worth while fresh.
+
+    ``missed_mb``, data dropped at its deadline, is a part of ``lost_mb``.
+    """
 
     name: str
     weight: float
@@ -35,6 +38,7 @@ class ClassBalance:
     generated_mb: float
     delivered_mb: float
     lost_mb: float
+    missed_mb: float
     left_mb: float
 
 
@@ -90,12 +94,12 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
                    for p in pieces]
         streams = fleet.streams_of(i)
         if streams:
-            aboard[i] = run = follow(streams, float(fleet.capacity_mb[i]), problem.horizon_s, sending)
+            aboard[i] = run = follow_contacts(problem, i, mine)
             volumes, lost[i], left[i] = run.sent_mb.sum(axis=1).tolist(), run.lost_mb.sum(), run.left_mb.sum()
-            weights = np.array([one.weight for one in streams])
-            worth.update(zip(pieces, (run.sent_mb @ weights).tolist(), strict=True))
+            worth.update(zip(pieces, run.sent_worth.sum(axis=1).tolist(), strict=True))
             class_mb.update(zip(pieces, run.sent_mb, strict=True))
-            earned.append(float(weights @ (run.delivered_mb + problem.left_worth_share * run.left_mb)))
+            weights = np.array([one.weight for one in streams])
+            earned.append(float(run.sent_worth.sum()) + problem.left_worth_share * float(weights @ run.left_mb))
         else:
             volumes, lost[i], left[i] = follow_storage(
                 problem.horizon_s, float(fleet.start_fill_mb[i]), float(fleet.generation_mb_per_s[i]),
@@ -119,6 +123,34 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
         aboard=aboard)
 
 
+def follow_contacts(problem: Problem, craft: int, mine: Sequence[int]) -> Aboard:
+    """The classes of one spacecraft through the options ``mine``, in time order and apart from each other."""
+    options, fleet = problem.options, problem.fleet
+    pieces = [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
+              for o in mine for p in options.pieces(o)]
+    keeping = fleet.keeping_of(craft)
+    freed_s = [_freed_s(options, mine, k, keeping) for k, o in enumerate(mine) for _ in options.pieces(o)]
+    return follow(
+        fleet.streams_of(craft), float(fleet.capacity_mb[craft]), problem.horizon_s, pieces, keeping,
+        freed_s if keeping.acknowledged else ())
+
+
+def _freed_s(options: Options, mine: Sequence[int], k: int, keeping: Keeping) -> float:
+    """When the storage of what contact ``k`` sends is freed: at its end, or at that of the next with commands."""
+    if keeping.acknowledged == "contact":
+        return float(options.end_s[mine[k]])
+    return min((float(options.end_s[o]) for o in mine[k + 1:] if options.command[o]), default=math.inf)
+
+
+def worth_followed(problem: Problem, craft: int, mine: Sequence[int]) -> float:
+    """The part of the objective of one spacecraft with classes and the contacts ``mine``, in time order."""
+    run = follow_contacts(problem, craft, mine)
+    cost = math.fsum(float(problem.price[o]) for o in mine)
+    left = problem.left_worth_share * math.fsum(
+        one.weight * mb for one, mb in zip(problem.fleet.streams_of(craft), run.left_mb.tolist(), strict=True))
+    return float(run.sent_worth.sum()) + left - problem.spill_cost_per_mb * float(run.lost_mb.sum()) - cost
+
+
 def _over(amounts: dict[int, float], options: Options, chosen: Iterable[int]) -> float:
     return math.fsum(amounts[p] for o in chosen for p in options.pieces(o))
 
@@ -128,7 +160,7 @@ def _balances(streams: Sequence[Stream], run: Aboard | None) -> tuple[ClassBalan
         return ()
     return tuple(
         ClassBalance(one.name, one.weight, one.start_mb, float(one.made_mb[-1]), float(run.delivered_mb[k]),
-                     float(run.lost_mb[k]), float(run.left_mb[k]))
+                     float(run.lost_mb[k]), float(run.missed_mb[k]), float(run.left_mb[k]))
         for k, one in enumerate(streams))
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from itertools import pairwise
 from typing import Any
 
@@ -30,22 +30,29 @@ def backlog_chart(
         names = [name for name in names if name in worst]
     wide = width >= 100
     figures = ["after", "generated", "delivered", "lost"] if wide else ["after", "delivered", "lost"]
-    cells = max(width - max((len(name) for name in names), default=0) - _FIGURE * len(figures) - 4, 12)
+    classes = {name: summary["storage"][name].get("classes", {}) for name in names}
+    labels = [*names, *(f"  {label}" for own in classes.values() for label in own)]
+    cells = max(width - max(map(len, labels), default=0) - _FIGURE * len(figures) - 4, 12)
     table = plain_table(("spacecraft", "left"), ("through the day", "left"), *((one, "right") for one in figures))
     for name in names:
         store = summary["storage"][name]
-        lost = Text(megabytes(store["lost_mb"]), style="bold red" if store["lost_mb"] > LEAST_MB else "dim")
-        numbers = {"after": store["left_mb"], "generated": store["generated_mb"], "delivered": store["delivered_mb"]}
-        table.add_row(
-            Text(name),
-            blocks(stores[name], cells),
-            *(lost if one == "lost" else megabytes(numbers[one]) for one in figures),
-        )
+        table.add_row(Text(name), blocks(stores[name], cells), *_figures(store, figures))
+        for label, own in classes[name].items() if len(classes[name]) > 1 else ():
+            missed = own["missed_mb"]
+            note = f"worth {own['weight']:g}" + (f", {megabytes(missed)} missed" if missed > LEAST_MB else "")
+            table.add_row(Text(f"  {label}", style="dim"), Text(note, style="dim"), *_figures(own, figures))
     notes = [Text(f"blocks: the fill from start to end, █ is the whole storage, {LOST} data lost", style="dim")]
     hidden = len(summary["storage"]) - len(names)
     if hidden:
         notes.append(Text(f"... and {hidden} more that are less full; --full shows them all", style="dim"))
     return Group(table, *notes)
+
+
+def _figures(store: Mapping[str, Any], names: Sequence[str]) -> list[str | Text]:
+    """The figures of a spacecraft, or of one of its classes of data, in the order of the columns."""
+    lost = Text(megabytes(store["lost_mb"]), style="bold red" if store["lost_mb"] > LEAST_MB else "dim")
+    numbers = {"after": store["left_mb"], "generated": store["generated_mb"], "delivered": store["delivered_mb"]}
+    return [lost if one == "lost" else megabytes(numbers[one]) for one in names]
 
 
 def blocks(store: Backlog, cells: int) -> Text:

@@ -86,6 +86,11 @@ def test_amounts_come_evenly_over_their_spans(write: Callable[..., None], sample
         ("weight = 20", "wieght = 20", ("data[2] (alerts)", "did you mean 'weight'")),
         ("[0.1, 0.4]", "[0.4, 0.1]", ("generation_orbit_span ends at 0.1, not after its start 0.4",)),
         ("[0.1, 0.4]", "[0.4, 1.1]", ("generation_orbit_span.1", "1.1", "at most 1")),
+        ("start_fill_mb = 50", "deadline_h = 0", ("deadline_h", "above 0", "unit")),
+        ("start_fill_mb = 50", "deadline_h = 2\nstart_age_h = 3", ("start_age_h 3 is above deadline_h 2", "gone")),
+        ("start_fill_mb = 50", "freshness = [[1, 1]]", ("freshness starts at age 0", "add the share")),
+        ("start_fill_mb = 50", "freshness = [[0, 1], [5, 0.2], [3, 0.1]]", ("ages rise and shares fall", "sort")),
+        ("start_fill_mb = 50", "freshness = [[0, 2]]", ("freshness.0.1", "2", "at most 1")),
         ("start_fill_mb = 50", "start_fill_mb = 500", ("Teasel-1: start_fill_mb = 500", "storage_mb 300", "lower")),
         ('"Teasel-1"]\nweight', '"Ambril-1"]\nweight', ("spacecraft Ambril-1", "weight = 2.0", "remove it")),
         ('"alerts.csv"', '"alert.csv"', ("alert.csv", "no such file")),
@@ -118,3 +123,9 @@ def test_faults_of_a_generation_file(
 ) -> None:
     write(series=series)
     expect_one(lines_of(), "alerts.csv", *parts)
+
+
+@pytest.mark.parametrize(("key", "value"), [("overflow", "oldst"), ("acknowledged_by", "contacts")])
+def test_a_policy_of_the_storage_that_there_is_not(edit: Edit, lines_of: Lines, key: str, value: str) -> None:
+    edit(FLEET, "storage_mb = 16000", f'storage_mb = 16000\n{key} = "{value}"')
+    expect_one(lines_of(), f"spacecraft[1] (Ambril-1).{key}", value, "write one of")

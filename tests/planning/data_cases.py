@@ -9,7 +9,7 @@ import numpy as np
 from planning_cases import STEP_S, Judge, random_problem
 
 from passplan.planning.problem import Problem
-from passplan.planning.streams import Stream
+from passplan.planning.streams import Keeping, Stream
 
 
 def random_data_problem(seed: int) -> Problem:
@@ -57,3 +57,23 @@ class DataJudge(Judge):
                 gone = min(over, fills[k])
                 fills[k], over = fills[k] - gone, over - gone
         return worth
+
+
+def random_ageing_problem(seed: int) -> Problem:
+    """As :func:`random_data_problem`, with deadlines, fading worth, overflow policies and acknowledgement."""
+    problem = random_data_problem(seed)
+    rng = random.Random(f"ageing {seed}")
+    fleet = problem.fleet
+    streams = tuple(tuple(_aged(rng, one) for one in own) for own in fleet.streams)
+    keeping = tuple(
+        Keeping(rng.random() < 0.4, rng.choice(["", "", "contact", "next_command"])) for _ in range(len(fleet)))
+    return replace(problem, fleet=replace(fleet, streams=streams, keeping=keeping))
+
+
+def _aged(rng: random.Random, one: Stream) -> Stream:
+    deadline_s = rng.choice([np.inf, 300.0, 900.0])
+    ages, shares = rng.choice([
+        ([0.0], [1.0]), ([0.0], [1.0]), ([0.0, 1_200.0], [1.0, 0.0]),
+        ([0.0, 400.0, 400.0, 800.0], [1.0, 0.8, 0.4, 0.1])])
+    return replace(one, deadline_s=deadline_s, start_age_s=min(deadline_s, rng.choice([0.0, 100.0, 600.0])),
+                   fresh_age_s=np.array(ages), fresh_share=np.array(shares))

@@ -6,7 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from data_cases import DataJudge, random_data_problem
+from data_cases import DataJudge, random_ageing_problem, random_data_problem
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from planning_cases import problem_of
@@ -15,7 +15,7 @@ from passplan.planning.classes import follow
 from passplan.planning.maps import storage_maps, worth_of
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits, Problem
-from passplan.planning.streams import Stream, layers_of, steady
+from passplan.planning.streams import Keeping, Stream, layers_of, steady
 from passplan.planning.value import account, follow_storage
 
 Pieces = list[tuple[int, int, float]]
@@ -113,3 +113,59 @@ def test_120_random_cases_equal_the_best_of_all_plans(block: int) -> None:
         assert result.value == pytest.approx(value, rel=1e-6, abs=1e-6), f"seed {seed}"
         assert result.bound >= result.value
         assert result.status in ("optimal", "empty"), f"seed {seed}"
+
+
+class _ByAccount(DataJudge):
+    """Every plan is tried; what each is worth says the account, which the audit's tests compare with a second one."""
+
+    def value(self, chosen: frozenset[int]) -> float:
+        return account(self.problem, chosen).value
+
+
+@pytest.mark.parametrize("block", range(5))
+def test_60_random_cases_with_ages_equal_the_best_of_all_plans(block: int) -> None:
+    for seed in range(12 * block, 12 * block + 12):
+        problem = random_ageing_problem(seed)
+        judge = _ByAccount(problem)
+        points, value = judge.best()
+        result = find_plan(problem, Limits(gap=0.0))
+        assert judge.points(frozenset(result.chosen)) == pytest.approx(points, abs=1e-9), f"seed {seed}"
+        assert result.value == pytest.approx(value, rel=1e-6, abs=1e-6), f"seed {seed}"
+        assert result.bound >= value - 1e-6 * max(1.0, abs(value)), f"seed {seed}"
+
+
+def test_a_deadline_drops_the_oldest() -> None:
+    # 1 MB/s, a deadline of 50 s: from then on 1 MB/s is dropped and 50 MB stay. 3 MB/s for 20 s send 50 MB of the
+    # store by t = 125 s (it falls by 2 MB/s) and what is made: 60 MB in all.
+    one = replace(steady("a", 1.0, 0.0, 1.0, 200.0), deadline_s=50.0)
+    run = follow([one], 1e3, 200.0, [(100, 120, 3.0)])
+    assert run.delivered_mb[0] == pytest.approx(60.0)
+    # 50 MB by t = 100 s, none until the store is 50 s deep again: 10 MB are left at 120 s, made since 110 s; the oldest
+    # of them is 50 s old at 160 s. From there to 200 s 40 MB more.
+    assert (run.missed_mb[0], run.left_mb[0]) == pytest.approx((90.0, 50.0))
+
+
+def test_worth_fades_with_the_age_at_which_it_is_sent() -> None:
+    # 100 MB of one age each second from 100 s to 0 s, sent at 1 MB/s against no generation: always 100 s old.
+    faded = {"fresh_age_s": np.array([0.0, 200.0]), "fresh_share": np.array([1.0, 0.0])}
+    one = replace(steady("a", 4.0, 100.0, 0.0, 100.0), start_age_s=100.0, **faded)
+    run = follow([one], 1e3, 100.0, [(0, 100, 1.0)])
+    assert run.sent_worth[0, 0] == pytest.approx(4.0 * 0.5 * 100.0)
+
+
+def test_storage_is_freed_when_it_is_acknowledged() -> None:
+    # A full store of 100 MB: what is sent stays until 60 s, so that 1 MB/s is lost until then.
+    one = steady("a", 1.0, 100.0, 1.0, 100.0)
+    at_once = follow([one], 100.0, 100.0, [(0, 20, 5.0)])
+    later = follow([one], 100.0, 100.0, [(0, 20, 5.0)], None, [60.0])
+    assert at_once.lost_mb[0] == pytest.approx(0.0)
+    assert later.lost_mb[0] > 20.0
+
+
+def test_the_newest_is_lost_where_the_policy_says_so() -> None:
+    # Full from the start. Losing the oldest leaves data of the last 10 s, losing the newest the old data.
+    one = replace(steady("a", 1.0, 10.0, 1.0, 100.0), start_age_s=10.0, fresh_age_s=np.array([0.0, 50.0, 50.0]),
+                  fresh_share=np.array([1.0, 1.0, 0.0]))
+    oldest = follow([one], 10.0, 100.0, [(90, 100, 1.0)])
+    newest = follow([one], 10.0, 100.0, [(90, 100, 1.0)], Keeping(newest=True))
+    assert (oldest.sent_worth[0, 0], newest.sent_worth[0, 0]) == pytest.approx((10.0, 0.0))

@@ -36,8 +36,8 @@ def shared(run: Run, contacts: Sequence[Contact], floor: float) -> Iterator[tupl
     for name in run.orbits:
         crews.setdefault(run.spacecraft[name].mission or name, []).append(name)
     for mission, crew in crews.items():
-        data_mb = sum(run.spacecraft[n].start_fill_mb + run.spacecraft[n].generation_mb_per_s * run.horizon_s
-                      for n in crew)
+        data_mb = sum(made_mb(run, name, 0.0, run.horizon_s) + sum(item.start_fill_mb for item in run.data_of(name))
+                      for name in crew)
         if floor * data_mb > 0.0:
             got = sum(_mb(run, c) for c in contacts if c.spacecraft in crew)
             yield ("fair", f"share of {mission}"), _standing(got, floor * data_mb, "MB")

@@ -15,6 +15,7 @@ from typing import Any
 
 from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.run import Run
+from passplan.planning.audit.ageing import ages, follow_aged
 from passplan.planning.audit.changes import departures
 from passplan.planning.audit.faults import Fault, differs
 from passplan.planning.audit.making import Rates, added, rates_of
@@ -30,7 +31,11 @@ _FIGURES = ("start_mb", "generated_mb", "delivered_mb", "lost_mb", "left_mb")
 
 @dataclass(frozen=True)
 class Balance:
-    """Where one spacecraft's data went [MB], with what each piece of sending brought down."""
+    """Where one spacecraft's data went [MB], with what each piece of sending brought down.
+
+    ``missed_mb``, dropped at a deadline, is a part of what was lost. ``worth`` of each piece is stated where the
+    age of data matters to it.
+    """
 
     start_mb: float
     generated_mb: float
@@ -38,6 +43,8 @@ class Balance:
     lost_mb: float
     left_mb: float
     sent_mb: tuple[float, ...] = ()
+    missed_mb: float = 0.0
+    worth: tuple[float, ...] | None = None
 
 
 def follow(craft: Spacecraft, pieces: Sequence[Piece], horizon_s: float) -> Balance:
@@ -98,13 +105,14 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     worth_per_money = 0.0 if apart else run.policy.worth_per_money
     earned: list[float] = []
     delivered: list[float] = []
+    worths: dict[str, float] = {}
     # A spacecraft that was left out of the run is no part of the plan, and its data no part of the value.
     for name in run.orbits:
         sending = sorted(by_craft[name], key=lambda pair: pair[1].start_s)
         if any(later.start_s < earlier.end_s for (_, earlier), (_, later) in pairwise(sending)):
             yield Fault("storage", f"spacecraft {name}", "it would send two segments at once; nothing adds up then")
             return
-        balances = class_balances(run, name, [piece for _, piece in sending])
+        balances = class_balances(run, name, sending, contacts)
         balance = joint(list(balances.values()))
         tolerance_mb = _A_BYTE_IN_A_GIGABYTE * (balance.start_mb + balance.generated_mb) + _BYTE_MB * (len(sending) + 1)
         for k, (contact, piece) in enumerate(sending):
@@ -118,13 +126,21 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
             for item in run.data_of(name):
                 place = f"spacecraft {name}, class {item.name}"
                 yield from _check_entry(place, entries.get(item.name), balances[item.name], tolerance_mb)
-        share = run.policy.left_worth_share
-        earned.extend(item.weight * (balances[item.name].delivered_mb + share * balances[item.name].left_mb)
-                      for item in run.data_of(name))
+                told_mb, missed_mb = _number(entries.get(item.name, {}).get("missed_mb")), balances[item.name].missed_mb
+                if differs(told_mb, missed_mb, tolerance_mb):
+                    sentence = f"{missed_mb:.6f} MB missed the deadline, not {told_mb:.6f} MB"
+                    yield Fault("storage", place, sentence)
+        for item in run.data_of(name):
+            balance_of = balances[item.name]
+            worth = balance_of.worth or tuple(item.weight * mb for mb in balance_of.sent_mb)
+            earned.extend(worth)
+            earned.append(run.policy.left_worth_share * item.weight * balance_of.left_mb)
+            for (contact, _), share in zip(sending, worth, strict=True):
+                worths[contact.contact_id] = worths.get(contact.contact_id, 0.0) + share
         earned.append(-spill_cost * balance.lost_mb)
         delivered.append(balance.delivered_mb)
     for contact in contacts:
-        yield from _check_money(run, contact)
+        yield from _check_money(run, contact, worths.get(contact.contact_id, 0.0))
         earned.append(-worth_per_money * cost_of(run, contact))
     earned.append(-departures(run, contacts)[0])
     for name in sorted(set(stated) - set(run.orbits)):
@@ -134,13 +150,23 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     yield from _check_total("volume_mb", summary.get("volume_mb"), math.fsum(delivered))
 
 
-def class_balances(run: Run, name: str, pieces: Sequence[Piece]) -> dict[str, Balance]:
+def class_balances(
+    run: Run, name: str, sending: Sequence[tuple[Contact, Piece]], contacts: Sequence[Contact]
+) -> dict[str, Balance]:
     """Where the data of each class of a spacecraft went, by name, what is worth most first.
 
     The best classes together neither notice the others nor care which of them a MB is of, as the link takes the
     best first and a full storage gives up the least. So each such group is followed as if it were alone, and a class
-    is the difference of two groups.
+    is the difference of two groups. Where age matters the classes are followed one beside the other (``ageing.py``).
     """
+    if ages(run, name):
+        return {
+            item.name: Balance(
+                item.start_fill_mb, math.fsum((b - a) * rate for a, b, rate in rates_of(run, name, item)),
+                aged.delivered_mb, aged.lost_mb, aged.left_mb, aged.sent_mb, aged.missed_mb, aged.worth)
+            for item, aged in zip(run.data_of(name), follow_aged(run, name, sending, contacts), strict=True)
+        }
+    pieces = [piece for _, piece in sending]
     capacity_mb = run.spacecraft[name].storage_mb
     found: dict[str, Balance] = {}
     rates: Rates = []
@@ -149,9 +175,9 @@ def class_balances(run: Run, name: str, pieces: Sequence[Piece]) -> dict[str, Ba
         rates = added(rates, rates_of(run, name, item))
         start_mb += item.start_fill_mb
         group = follow_rates(start_mb, capacity_mb, rates, pieces)
-        figures = {key: getattr(group, key) - getattr(above, key) for key in _FIGURES}
+        start, made, down, lost, left = (getattr(group, key) - getattr(above, key) for key in _FIGURES)
         sent_mb = tuple(a - b for a, b in zip(group.sent_mb, above.sent_mb, strict=True))
-        found[item.name] = Balance(**figures, sent_mb=sent_mb)
+        found[item.name] = Balance(start, made, down, lost, left, sent_mb)
         above = group
     return found
 
@@ -159,7 +185,8 @@ def class_balances(run: Run, name: str, pieces: Sequence[Piece]) -> dict[str, Ba
 def joint(balances: Sequence[Balance]) -> Balance:
     """All classes together."""
     sent_mb = tuple(map(math.fsum, zip(*(one.sent_mb for one in balances), strict=True)))
-    return Balance(**{key: math.fsum(getattr(one, key) for one in balances) for key in _FIGURES}, sent_mb=sent_mb)
+    start, made, down, lost, left = (math.fsum(getattr(one, key) for one in balances) for key in _FIGURES)
+    return Balance(start, made, down, lost, left, sent_mb)
 
 
 def _check_classes(contact: Contact, piece: Piece, sent: Mapping[str, float], tolerance_mb: float) -> Iterator[Fault]:
@@ -191,11 +218,13 @@ def _check_entry(place: str, entry: Any, balance: Balance, tolerance_mb: float) 
         yield Fault("storage", place, sentence)
 
 
-def _check_money(run: Run, contact: Contact) -> Iterator[Fault]:
+def _check_money(run: Run, contact: Contact, followed: float) -> Iterator[Fault]:
     """Weight, value and cost of one contact."""
     weights = {item.name: item.weight for item in run.data_of(contact.spacecraft)}
     worth = math.fsum(weights.get(name, 0.0) * mb for piece in contact.pieces for name, mb in piece.class_mb.items())
-    mixed = len(weights) > 1 and contact.volume_mb > 0.0
+    aged = ages(run, contact.spacecraft)
+    worth = followed if aged else worth
+    mixed = (aged or len(weights) > 1) and contact.volume_mb > 0.0
     for key, figure, expected in (
         ("weight", contact.weight, worth / contact.volume_mb if mixed else max(weights.values())),
         ("value", contact.value, worth),

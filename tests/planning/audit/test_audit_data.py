@@ -4,22 +4,26 @@ from __future__ import annotations
 
 from copy import deepcopy
 from dataclasses import replace
+from io import StringIO
 from pathlib import Path
 
 import numpy as np
 import pytest
 from audit_bench import CRAFT, Bench
+from rich.console import Console
 
 from passplan.inputs.data import DataClass
 from passplan.inputs.generation import Series
 from passplan.inputs.load import load_run
 from passplan.inputs.run import Run
+from passplan.planning.audit import audit_plan
 from passplan.planning.audit.making import rates_of
 from passplan.planning.audit.storage import class_balances
 from passplan.planning.backlog import backlogs
 from passplan.planning.fleet import fleet_of
 from passplan.planning.record import PlanRecord
 from passplan.planning.steps import plan_run
+from passplan.report.backlog_chart import backlog_chart
 
 ROOT = Path(__file__).parents[3]
 
@@ -100,7 +104,7 @@ def test_both_paths_see_the_same_generation() -> None:
             for start_s, end_s, rate in rates_of(run, name, item):
                 made = float(stream.made(end_s) - stream.made(start_s))
                 assert made == pytest.approx(rate * (end_s - start_s), abs=1e-6)
-    nine = sum(balance.generated_mb for balance in class_balances(run, "Teasel-1", []).values())
+    nine = sum(balance.generated_mb for balance in class_balances(run, "Teasel-1", [], []).values())
     # Ten hours are between six and seven revolutions of 95 min.
     assert 6.0 * 90.0 < nine < 7.0 * 90.0
 
@@ -115,3 +119,71 @@ def test_the_charts_follow_the_plan(honest: Bench) -> None:
         assert ends == pytest.approx([store["start_mb"], store["left_mb"]], abs=0.01)
         assert drawn[name].fill_mb.max() <= store["capacity_mb"] + 0.01
     assert drawn["Ambril-3"].losing_s
+
+
+def _ageing_run() -> Run:
+    """The same, with a deadline, worth that fades, and storage freed late, of which each matters."""
+    run = _run()
+    alerts, frames = run.data["Ambril-3"]
+    data = {
+        **run.data,
+        "Ambril-3": (
+            alerts.model_copy(update={"freshness": ((0.0, 1.0), (1.0, 0.8), (1.0, 0.5), (6.0, 0.1))}),
+            frames.model_copy(update={"deadline_h": 2.5})),
+    }
+    late = {"acknowledged_by": "next_command", "overflow": "newest"}
+    craft = {**run.spacecraft, "Ambril-3": run.spacecraft["Ambril-3"].model_copy(update=late)}
+    return replace(run, data=data, spacecraft=craft)
+
+
+@pytest.fixture(scope="module")
+def aged() -> Bench:
+    record = plan_run(_ageing_run())  # audited inside
+    return Bench(_ageing_run(), record.contacts, record.segments, record.summary)
+
+
+def test_an_ageing_plan_misses_deadlines_and_says_so(aged: Bench) -> None:
+    assert aged.audit() == []
+    classes = aged.summary["storage"]["Ambril-3"]["classes"]
+    assert classes["frames"]["missed_mb"] > 1.0
+    assert classes["frames"]["missed_mb"] <= classes["frames"]["lost_mb"]
+    mine = aged.contacts[aged.contacts["spacecraft"] == "Ambril-3"]
+    assert (mine["weight"] < 9.0).all()
+
+
+@pytest.mark.parametrize(("change", "said"), [
+    ({"deadline_h": 2.6}, "missed the deadline"),
+    ({"deadline_h": None}, "missed the deadline"),
+])
+def test_a_deadline_that_the_plan_did_not_keep(aged: Bench, change: dict[str, float | None], said: str) -> None:
+    alerts, frames = aged.run.data["Ambril-3"]
+    data = {**aged.run.data, "Ambril-3": (alerts, frames.model_copy(update=change))}
+    faults = audit_plan(replace(aged.run, data=data), aged.contacts, aged.segments, aged.summary)
+    assert any(said in str(fault) for fault in faults)
+
+
+def test_worth_that_is_counted_as_if_fresh(aged: Bench) -> None:
+    alerts, frames = aged.run.data["Ambril-3"]
+    data = {**aged.run.data, "Ambril-3": (alerts.model_copy(update={"freshness": ()}), frames)}
+    faults = audit_plan(replace(aged.run, data=data), aged.contacts, aged.segments, aged.summary)
+    assert {fault.kind for fault in faults} == {"value"}
+
+
+@pytest.mark.parametrize("change", [{"acknowledged_by": None}, {"acknowledged_by": "contact"}, {"overflow": "oldest"}])
+def test_storage_that_is_freed_or_lost_otherwise(aged: Bench, change: dict[str, str | None]) -> None:
+    craft = aged.run.spacecraft["Ambril-3"].model_copy(update=change)
+    run = replace(aged.run, spacecraft={**aged.run.spacecraft, "Ambril-3": craft})
+    faults = audit_plan(run, aged.contacts, aged.segments, aged.summary)
+    assert {fault.kind for fault in faults} & {"storage", "volume", "value"}
+
+
+def test_the_review_shows_each_class(honest: Bench) -> None:
+    none = honest.contacts.iloc[:0]
+    stores = backlogs(PlanRecord(honest.summary, none, honest.contacts, honest.segments, none))
+    console = Console(width=100, record=True, file=StringIO())
+    console.print(backlog_chart(honest.summary, stores, 100, None))
+    lines = console.export_text().splitlines()
+    own = next(line for line in lines if line.startswith("  alerts"))
+    assert "worth 9" in own
+    assert not any(line.startswith("  soil") for line in lines)  # the only class of its spacecraft
+    assert max(map(len, lines)) <= 100
