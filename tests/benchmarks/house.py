@@ -1,4 +1,4 @@
-"""Every rule of the house on a yardstick instance: one function each, which takes a problem and returns it with the rule.
+"""Every rule of the house on a yardstick instance: one function each, which puts it on a problem.
 
 All are seeded, and scaled by a plan made without any of them (``free``), so that each of them gets in its way. Options
 keep their numbers, so that rules can be put on and left off in any combination.
@@ -274,8 +274,8 @@ class House:
         return self._needs(ForbiddenWindow(np.flatnonzero(options), detail))
 
     def _held(self, from_s: Integers | int, until_s: Integers | int) -> Flags:
-        options = self.base.options
-        return np.asarray((options.start_s - options.prepare_s < until_s) & (options.end_s + options.release_s > from_s))
+        o = self.base.options
+        return np.asarray((o.start_s - o.prepare_s < until_s) & (o.end_s + o.release_s > from_s))
 
     def _shared(self, reason: str, antennas: Sequence[int], at_once: int) -> Callable[[Problem], Problem]:
         options = self.base.options
@@ -317,7 +317,7 @@ class House:
 
 
 def priced(problem: Problem) -> Problem:
-    """The problem with prices on every third antenna (2 a minute, 12 at least) and the time on air that rules ask for."""
+    """The problem with prices on every third antenna (2 a minute, 12 at least), and the time on air."""
     options = problem.options
     minutes = np.ceil((options.end_s - options.start_s) / 60.0)
     cost = np.where(options.antenna % 3 == 2, np.maximum(12.0, 2.0 * minutes), 0.0)
@@ -326,7 +326,7 @@ def priced(problem: Problem) -> Problem:
 
 
 def published(problem: Problem, plan: Integers) -> Problem:
-    """The problem in order, with ``plan`` as the published one: changes cost, and what starts in two hours is frozen."""
+    """The problem in order, with ``plan`` as the published one: changes cost, the first two hours are frozen."""
     options, fleet = problem.options, problem.fleet
     keeps = np.full(len(options), -1, dtype=np.int64)
     for k, o in enumerate(plan.tolist()):

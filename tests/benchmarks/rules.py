@@ -76,7 +76,7 @@ def main() -> None:
     print(f"{len(base.options)} options; {len(house) + 1} rules")
     for name, rule in house.items():
         why = breach(rule(base), free)
-        print(f"  {name:20s} {'binds: the plan without rules has ' + why if why else 'is kept by the plan without rules'}")
+        print(f"  {name:20s} " + (f"binds: the plan without rules has {why}" if why else "is kept by the plan without"))
 
     def with_all(left_off: str = "") -> Problem:
         problem = base

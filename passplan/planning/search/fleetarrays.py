@@ -50,8 +50,9 @@ class FleetArrays(NamedTuple):
     ``load_at[o] : load_at[o + 1]``, rows rising; ``load_own[e]`` says whether another contact of the same plan of its
     spacecraft may add to that row too. ``limit`` is per row.
 
-    ``wants`` (n, 60) are the points of each bit, ``wants_until`` the last start [s] that meets it; ``recur`` (n, 3) from, until and points per second of the recurrence
-    (until 0 where there is none). ``clique_lane`` and ``clique_s`` say of each clique which of the terms' lanes it is
+    ``wants`` (n, 60) are the points of each bit, ``wants_until`` the last start [s] that meets it; ``recur`` (n, 3)
+    from, until and points per second of the recurrence (until 0 where there is none). ``clique_lane`` and ``clique_s``
+    say of each clique which of the terms' lanes it is
     of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
     """
 
@@ -136,8 +137,8 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
-        wants=wants, wants_until=wants_until, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=len(clique_s),
-        clique_lane=clique_lane, clique_s=clique_s,
+        wants=wants, wants_until=wants_until, recur=recur, horizon_s=problem.horizon_s,
+        spill=problem.spill_cost_per_mb, cliques=len(clique_s), clique_lane=clique_lane, clique_s=clique_s,
         most_contacts=_longest_chain(first, node, arrival))
 
 

@@ -7,7 +7,8 @@ One label makes another useless if it is ahead at least
 - by the points of wanted terms that only the other has met: it may never meet them;
 - by the points of the time for which only the other is covered.
 
-What was overdue up to now is paid at once, and so is a wanted term that nothing can meet any more. With these rules few labels survive. (Own derivation.) A label that comes straight from an option with
+What was overdue up to now is paid at once, and so is a wanted term that nothing can meet any more. With these rules
+few labels survive. (Own derivation.) A label that comes straight from an option with
 which a start now would clash (time to set up the antenna it has just left) beats no other until that is over.
 
 Labels at one instant are kept in the order of what is aboard. A contact, like idle time, is a monotonic map of what
@@ -34,7 +35,8 @@ class Work(NamedTuple):
     Labels at the instant that is looked at, on two sides (2, .) of which one is filled from the other: MB aboard,
     worth, until when the recurrence is covered, bits met, and the last record (an option taken, with the record
     before it). The ``wait`` arrays hold labels that stand further on, each with its record at the same index, as
-    runs ``run_low : run_high`` in linked lists. ``champion`` is scratch. ``spent[0]`` counts labels made: how much work has been done, whatever
+    runs ``run_low : run_high`` in linked lists. ``champion`` is scratch.
+    ``spent[0]`` counts labels made: how much work has been done, whatever
     the machine.
     """
 
@@ -71,13 +73,13 @@ def merge(
     clash: Integers, spill: float, weight: float, simple: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
     bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
     wait_bits: Integers, record_option: Integers, low: int, high: int, due: float, per_second: float,
-    point_worth: float, wants: Floats, past: int, champion: Integers, spent: Integers,
+    point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
 ) -> int:
     """Merge the ``count`` labels on ``side`` with the run ``low : high``, onto the other side, without the useless.
 
-    ``simple`` says that bits and cover are all alike; two plain sweeps then do.
-    Otherwise what is overdue up to ``due`` is paid ``per_second``, and the wanted terms that are ``past`` are paid for
-    and count as met. Returns how many are left, or -1 if there is no room. (Arrays are handed over one by one, because taking them out of a tuple
+    ``simple`` says that bits and cover are all alike; two plain sweeps then do. Otherwise what is overdue up to ``due``
+    is paid ``per_second``, and the wanted terms that are ``past`` are paid for and count as met. Returns how many are
+    left, or -1 if there is no room. (Arrays are handed over one by one, because taking them out of a tuple
     costs more than all the rest.)
     """
     to = 1 - side
@@ -204,7 +206,7 @@ def _lacks(
     """What label ``x`` may still have to pay for requirements that ``y`` need not."""
     lacking = bits[side, y] & ~bits[side, x]
     price = point_worth * missing(wants, ~lacking) if lacking != 0 else 0.0
-    return price + per_second * max(0.0, cover[side, y] - cover[side, x])
+    return float(price + per_second * max(0.0, cover[side, y] - cover[side, x]))
 
 
 @inlined

@@ -113,9 +113,9 @@ def _take(
     option: int, price: float, now: int, made: float, capacity: float, weight: float, spill: float, simple: bool,
     per_second: float, recur_until: float, maps: Floats, use_at: Integers, use_first: Integers, use_last: Integers,
     clash: Integers, load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, room: Floats,
-    used: Floats, renews: int, own_bits: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, via: Integers, side: int,
-    here: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats, wait_bits: Integers,
-    record_option: Integers, record_before: Integers, waiting: int,
+    used: Floats, renews: int, own_bits: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
+    via: Integers, side: int, here: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
+    wait_bits: Integers, record_option: Integers, record_before: Integers, waiting: int,
 ) -> int:
     """The run of labels that taking an option makes of those here that can; returns where it ends.
 
@@ -245,7 +245,7 @@ def _overfills(
 
 
 @inlined
-def _past(wants_until: Integers, now: int) -> int:
+def _past(wants_until: Integers, now: int) -> np.int64:
     """The bits of wanted terms that no option from ``now`` on can meet."""
     past = np.int64(0)
     for b in range(len(wants_until)):
