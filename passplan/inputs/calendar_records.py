@@ -38,7 +38,9 @@ class Request(Record):
 
     It is met by a planned contact of the spacecraft that offers ``service``, lies within the span and
     lasts at least ``min_duration_s``; ``antenna`` or ``site`` narrow it further. A ``fixed`` one runs from
-    ``earliest_utc`` to ``latest_utc`` exactly, to the whole seconds within. ``points`` is what missing it weighs.
+    ``earliest_utc`` to ``latest_utc`` exactly, to the whole seconds within. ``points`` is what missing it weighs. With
+    ``standby`` it counts only if a second antenna, which could follow all the time and offers the service too, is held
+    beside it.
     """
 
     name: Label
@@ -51,6 +53,7 @@ class Request(Record):
     min_duration_s: Annotated[float, Field(ge=1.0, le=86_400.0)] = 120.0
     fixed: bool = False
     points: Annotated[float, Field(gt=0.0, le=10.0)] = 1.0
+    standby: bool = False
 
     @model_validator(mode="after")
     def _consistent(self) -> Request:

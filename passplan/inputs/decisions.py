@@ -23,7 +23,8 @@ class Decision(Record):
     A ``pin`` wants a contact in the window ``window``, or one of ``spacecraft`` on ``antenna`` that holds the span
     from ``start_utc`` to ``end_utc``. A ``forbid`` lets no contact touch what it names: a window, an antenna, a
     spacecraft, both, in a span or all along. An ``emergency`` wants a contact of ``spacecraft`` within the span, on
-    any antenna if none is named, that offers ``service`` and lasts ``min_duration_s``; it outranks all else.
+    any antenna if none is named, that offers ``service`` and lasts ``min_duration_s``; it outranks all else. With
+    ``standby`` a pin of a span or an emergency counts only if a second antenna is held beside it all the time.
     """
 
     kind: Literal["pin", "forbid", "emergency"]
@@ -34,6 +35,7 @@ class Decision(Record):
     end_utc: Instant | None = None
     service: Service = "both"
     min_duration_s: Annotated[float, Field(ge=1.0, le=86_400.0)] = 120.0
+    standby: bool = False
     note: str = ""
 
     @model_validator(mode="after")
@@ -53,6 +55,8 @@ class Decision(Record):
             raise ValueError("a forbid needs a window, a spacecraft or an antenna; add one")
         if self.kind != "emergency" and {"service", "min_duration_s"} & self.model_fields_set:
             raise ValueError("service and min_duration_s are for an emergency only; remove them")
+        if self.standby and (self.kind == "forbid" or self.window is not None):
+            raise ValueError("standby is for an emergency or a pin of a span; remove it, or state the span")
         return self
 
     @property
@@ -120,11 +124,14 @@ def read_published(
     """The contacts of the plan directory ``place`` (or of a CSV file with the same columns).
 
     A contact of a spacecraft or antenna that the run no longer has is left out with a warning. Where ``what`` is
-    ``loaded`` so are contacts for commands alone, without one: no schedule aboard knows of them.
+    ``loaded`` so are contacts for commands alone, without one: no schedule aboard knows of them. Stand-bys are left out
+    too: what asks for them asks again.
     """
     table = place if place.suffix.lower() == ".csv" else place / "contacts.csv"
     found = []
     for where, row in read_csv_records(table, reader, findings):
+        if row.get("origin") == "standby":
+            continue
         if what == "loaded" and row.get("service") == "command":
             continue
         record = {key: value for key, value in row.items() if key in Published.model_fields}

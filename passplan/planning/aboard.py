@@ -10,6 +10,7 @@ import pandas as pd
 
 from passplan.inputs.run import Run
 from passplan.planning.horizon import column_seconds, seconds_of
+from passplan.planning.record import STANDBY
 
 
 def loaded_until_s(run: Run, name: str) -> int:
@@ -21,6 +22,7 @@ def loaded_until_s(run: Run, name: str) -> int:
 
 def schedule_warnings(run: Run, contacts: pd.DataFrame) -> Iterator[str]:
     """A sentence for each spacecraft that would send by a new schedule before any contact could bring it up."""
+    contacts = contacts[contacts["origin"] != STANDBY]
     start_s, end_s = column_seconds(run, contacts["start_utc"]), column_seconds(run, contacts["end_utc"])
     for name in run.orbits:
         until_s = loaded_until_s(run, name)

@@ -21,7 +21,10 @@ DRIFT_S = 60
 
 @dataclass(frozen=True)
 class Candidate:
-    """One option with the link choices behind it."""
+    """One option with the link choices behind it.
+
+    ``further`` are the contacts that stand by for it on other antennas; ``cost`` is without them.
+    """
 
     window: int
     start_s: int
@@ -29,6 +32,7 @@ class Candidate:
     downlink: DownlinkChoice | None
     command: CommandChoice | None
     cost: float
+    further: tuple[Candidate, ...] = ()
 
     @property
     def service(self) -> Service:
@@ -68,6 +72,22 @@ class Wish:
 
     spacecraft: str
     antenna: str | None
+    start_s: int
+    end_s: int
+
+
+@dataclass(frozen=True)
+class Standby:
+    """A contact of ``spacecraft`` within the span must be to be had on one of ``antennas`` with a stand-by.
+
+    That is another antenna, one of ``standbys``, which follows for as long and offers ``service`` too; without
+    ``service`` it offers what the contact does.
+    """
+
+    spacecraft: str
+    antennas: frozenset[str]
+    standbys: frozenset[str]
+    service: Service | None
     start_s: int
     end_s: int
 

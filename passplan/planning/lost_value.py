@@ -31,7 +31,7 @@ from passplan.link.choice import WindowLink
 from passplan.planning.backlog import Backlog, backlogs
 from passplan.planning.horizon import column_seconds
 from passplan.planning.problem import Floats, Integers
-from passplan.planning.record import PlanRecord, sending
+from passplan.planning.record import STANDBY, PlanRecord, sending
 
 IN_CONTACT, NO_WINDOW = "in_contact", "no_window"
 _CUT = re.compile(r"(start|end): (\w+)")
@@ -190,7 +190,7 @@ def _parts(contacts: pd.DataFrame, aos_s: float, los_s: float) -> Iterable[tuple
     for row in contacts.sort_values("first").to_dict("records"):
         cut = dict(_CUT.findall(row["cut"]))
         yield clock, row["first"], cut.get("start", after)
-        yield row["first"], row["last"], IN_CONTACT
+        yield row["first"], row["last"], STANDBY if row["origin"] == STANDBY else IN_CONTACT
         clock, after = row["last"], cut.get("end", IN_CONTACT)
     yield clock, los_s, after
 

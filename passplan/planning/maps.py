@@ -108,20 +108,58 @@ def storage_maps(problem: Problem) -> StorageMaps:
     first_row = offsets_of(per_option)
     option = np.repeat(np.arange(len(options)), per_option)
     layer = ragged_ranges(first_layer[options.spacecraft], per_option)
+    state = _Composition(np.array([one.room_mb[0] for one in layers], dtype=float)[layer])
+    made_before, made_after = np.zeros(len(option)), np.zeros(len(option))
+    even = np.array([one.even for one in layers], dtype=bool)[layer]
+    rows = np.flatnonzero(even)
+    slope = np.array([one.made_mb[-1] / problem.horizon_s for one in layers], dtype=float)[layer[rows]]
+    made_before[rows] = slope * options.start_s[option[rows]]
+    made_after[rows] = slope * options.end_s[option[rows]]
+    _through_even(problem, state, rows, option[rows], slope)
+    rows = np.flatnonzero(~even)
+    made_before[rows], made_after[rows] = _through_events(problem, layers, state, rows, option[rows], layer[rows])
+    return StorageMaps(
+        first_row, state.shift, state.low, state.high, state.lost, state.brim, made_before, made_after)
+
+
+def _through_even(
+    problem: Problem, state: _Composition, rows: Integers, option: Integers, generation: Floats,
+) -> None:
+    """Rows whose layer generates at one rate and holds the same throughout: piece after piece, all rows abreast."""
+    options = problem.options
+    capacity = state.high[rows].copy()
+    clock = options.start_s[option].astype(float)
+    counts = np.diff(options.piece_offset)[option]
+    for k in range(int(counts.max(initial=0))):
+        live = np.flatnonzero(counts > k)
+        piece = options.piece_offset[option[live]] + k
+        start_s, end_s = options.piece_start_s[piece].astype(float), options.piece_end_s[piece].astype(float)
+        if np.any(start_s > clock[live]):
+            state.step(rows[live], generation[live] * (start_s - clock[live]), capacity[live])
+        sent = options.piece_rate_mb_per_s[piece]
+        state.step(rows[live], (generation[live] - sent) * (end_s - start_s), capacity[live])
+        clock[live] = end_s
+    rest = np.flatnonzero(options.end_s[option] > clock)
+    state.step(rows[rest], generation[rest] * (options.end_s[option[rest]] - clock[rest]), capacity[rest])
+
+
+def _through_events(
+    problem: Problem, layers: Sequence[Layer], state: _Composition, rows: Integers, option: Integers, layer: Integers,
+) -> tuple[Floats, Floats]:
+    """The other rows, event by event. Returns what is generated up to each contact's start and end."""
     row, time_s, rate = _events(problem, layers, option, layer)
     made, room = np.zeros(len(row)), np.zeros(len(row))
     for k, where in _groups(layer[row], len(layers)):
         made[where], room[where] = layers[k].made(time_s[where]), layers[k].room(time_s[where])
     counts = np.bincount(row, minlength=len(option))
     first = offsets_of(counts)
-    state = _Composition(room[first[:-1]])
-    for k in range(1, int(counts.max()) if len(counts) else 0):
+    state.begin(rows, room[first[:-1]])
+    for k in range(1, int(counts.max(initial=0))):
         live = np.flatnonzero(counts > k)
         at = first[live] + k
         change = made[at] - made[at - 1] - rate[at - 1] * (time_s[at] - time_s[at - 1])
-        state.step(live, change, room[at])
-    return StorageMaps(
-        first_row, state.shift, state.low, state.high, state.lost, state.brim, made[first[:-1]], made[first[1:] - 1])
+        state.step(rows[live], change, room[at])
+    return made[first[:-1]], made[first[1:] - 1]
 
 
 def _events(
@@ -173,6 +211,10 @@ class _Composition:
     def __init__(self, capacity_mb: Floats) -> None:
         self.shift, self.low, self.lost = (np.zeros(len(capacity_mb)) for _ in range(3))
         self.high, self.brim = capacity_mb.copy(), capacity_mb.copy()
+
+    def begin(self, rows: Integers, capacity_mb: Floats) -> None:
+        """Let ``rows`` start with another capacity."""
+        self.high[rows] = self.brim[rows] = capacity_mb
 
     def step(self, rows: Integers, change_mb: Floats, capacity_mb: Floats) -> None:
         """Add ``change_mb`` to the fill of ``rows`` and hold it between empty and full."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -13,13 +14,14 @@ from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
 from passplan.planning.cuts import Cuts, neighbour_cuts, spread
-from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Wish
+from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Standby, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.on_air import on_air_span
 from passplan.planning.price import price_of
 from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
 from passplan.planning.setup import SetupTimes
 from passplan.planning.spans import without
+from passplan.planning.standby import standby_candidates
 
 
 @dataclass(frozen=True, eq=False)
@@ -82,31 +84,44 @@ def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Anten
 def find_options(
     run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
     blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (), caps: Sequence[Cap] = (),
-    silences: Sequence[Silence] = (),
+    silences: Sequence[Silence] = (), standbys: Sequence[Standby] = (),
 ) -> OptionSet:
-    """Options of all windows: whole, and parts cut where that may help, at most the policy's number each."""
+    """Options of all windows: whole, and parts cut where that may help, at most the policy's number each.
+
+    Behind them come those with a second antenna at the ready.
+    """
     setup = SetupTimes(run)
     blocked = BlockedTime(blocks, setup)
     builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps, silences)
     cuts = neighbour_cuts(windows, [
         setup.longest(fleet.names[craft], antennas.names[antenna])
         for craft, antenna in zip(windows.spacecraft.tolist(), windows.antenna.tolist(), strict=True)])
-    candidates: list[Candidate] = []
+    of_window: dict[int, list[Candidate]] = {}
     excluded: dict[int, tuple[str, str]] = {}
     for w, link in enumerate(links):
         found, reason = builder.of_window(w, link, cuts[w])
-        candidates += found
+        of_window[w] = found
         if not found:
             excluded[w] = reason
-    setups = [setup.of(antennas.names[int(windows.antenna[c.window])], c) for c in candidates]
+    candidates = [c for found in of_window.values() for c in found]
+    candidates += standby_candidates(
+        standbys, windows, fleet.names, antennas.names, of_window, lambda w, a, b: builder.offered(w, links[w], a, b),
+        builder.free)
+
+    def held(c: Candidate) -> dict[str, Any]:
+        prepare_s, release_s = setup.of(antennas.names[int(windows.antenna[c.window])], c)
+        return {
+            "window": c.window, "antenna": windows.antenna[c.window], "start_s": c.start_s, "end_s": c.end_s,
+            "prepare_s": prepare_s, "release_s": release_s, "downlink": c.downlink is not None,
+            "command": c.command is not None}
+
     rows = [{
-        "window": c.window, "spacecraft": windows.spacecraft[c.window], "antenna": windows.antenna[c.window],
-        "start_s": c.start_s, "end_s": c.end_s, "command": c.command is not None, "cost": c.cost,
-        "prepare_s": prepare_s, "release_s": release_s,
+        **held(c), "spacecraft": windows.spacecraft[c.window], "cost": sum(one.cost for one in (c, *c.further)),
         "pieces": [] if c.downlink is None else [
             (piece.start_s, piece.end_s, piece.rate_mbps / 8.0 * c.downlink.expectation)
             for piece in c.downlink.pieces],
-    } for c, (prepare_s, release_s) in zip(candidates, setups, strict=True)]
+        "further": [held(one) for one in c.further],
+    } for c in candidates]
     return OptionSet(build_options(rows), tuple(candidates), excluded, blocked, builder.shortened)
 
 
@@ -152,6 +167,17 @@ class _Builder:
         most = self.policy.options_per_window
         kept = [c for k, c in enumerate(useful) if k < most or (c.start_s, c.end_s) in asked]
         return sorted(kept, key=lambda c: (c.start_s, c.end_s)), ("", "")
+
+    def offered(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
+        """The contact of a window from ``start_s`` to ``end_s``, if it is one and its transmitter may be on so long."""
+        candidate, cap = self._candidate(w, link, start_s, end_s), self.caps.get(self._names(w)[0])
+        return None if candidate is None or (
+            cap is not None and self._on_air_s(candidate) > cap.longest_s) else candidate
+
+    def free(self, w: int, low: int, high: int) -> list[tuple[int, int]]:
+        """The parts of [low, high), a part of a window, that are not closed and long enough for a contact."""
+        blocks = self.blocked.between(*self._names(w), low, high)
+        return [(a, b) for a, b in without((low, high), [(a, b) for a, b, _ in blocks]) if b - a >= self.shortest_s]
 
     def _unusable(
         self, w: int, link: WindowLink, pieces: Sequence[tuple[int, int]], blocks: Sequence[Block],

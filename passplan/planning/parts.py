@@ -12,8 +12,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from passplan.planning.cliques import clique_spans
-from passplan.planning.problem import Flags, Integers, Problem, offsets_of, ragged_ranges
+from passplan.planning.problem import Flags, Integers, Problem, offsets_of
 from passplan.planning.rules.terms import Lane, Recurrence, Removal, Rows, Terms, Wanted
 
 # Parts smaller than this are planned together: a solver takes them apart again, and starting it costs time.
@@ -38,7 +37,7 @@ def independent_parts(problem: Problem, terms: Terms) -> list[Part]:
     count = len(problem.fleet)
     if len(problem.options) == 0 or count < 2:
         return [Part(problem, terms, np.arange(len(problem.options)))]
-    label = _joined(count, _groups(problem, terms))
+    label = _joined(count, _pairs(problem, terms))
     options = np.bincount(problem.options.spacecraft, minlength=count)
     part = _gathered(label, options)
     if part.max() == 0:
@@ -46,8 +45,8 @@ def independent_parts(problem: Problem, terms: Terms) -> list[Part]:
     return [_part(problem, terms, part == k, first=k == 0) for k in range(int(part.max()) + 1)]
 
 
-def _joined(count: int, groups: Iterable[Integers]) -> Integers:
-    """Numbers of spacecraft joined by sets of them: the lowest of all that hang together."""
+def _joined(count: int, pairs: Iterable[tuple[Integers, Integers]]) -> Integers:
+    """Numbers of spacecraft joined by pairs of them: the lowest of all that hang together."""
     above = list(range(count))
 
     def root(k: int) -> int:
@@ -56,35 +55,28 @@ def _joined(count: int, groups: Iterable[Integers]) -> Integers:
             k = above[k]
         return k
 
-    for group in groups:
-        roots = {root(k) for k in group.tolist()}
-        for k in roots:
-            above[k] = min(roots)
+    for one, other in pairs:
+        for key in np.unique(one * count + other).tolist():
+            a, b = root(key // count), root(key % count)
+            above[max(a, b)] = min(a, b)
     return np.array([root(k) for k in range(count)], dtype=np.int64)
 
 
-def _groups(problem: Problem, terms: Terms) -> Iterable[Integers]:
-    """Sets of spacecraft that belong together for one reason."""
+def _pairs(problem: Problem, terms: Terms) -> Iterable[tuple[Integers, Integers]]:
+    """Pairs of spacecraft that belong together for one reason, as two arrays; enough of them to join all that do."""
     craft = problem.options.spacecraft
     for lane in terms.lanes:
-        if len(np.unique(craft[lane.options])) < 2:
-            continue
-        first, last, cliques = clique_spans(lane.start_s, lane.end_s)
-        member = np.repeat(craft[lane.options], last - first)
-        clique = ragged_ranges(first, last - first)
-        yield from _by_group(clique, member, cliques)
+        # Those that hold the lane without a break hang together, each with the next.
+        order = np.argsort(lane.start_s, kind="stable")
+        mine, reached = craft[lane.options[order]], np.maximum.accumulate(lane.end_s[order])
+        meets = lane.start_s[order][1:] < reached[:-1]
+        yield mine[:-1][meets], mine[1:][meets]
     for rows in terms.rows:
-        row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
-        yield from _by_group(row, craft[rows.options], len(rows))
+        mine = craft[rows.options]
+        within = np.diff(np.repeat(np.arange(len(rows)), np.diff(rows.offset))) == 0
+        yield mine[:-1][within], mine[1:][within]
     for served in [*(w.options for w in terms.wanted), *(g.options for g in terms.guarantees)]:
-        yield np.unique(craft[served])
-
-
-def _by_group(group: Integers, craft: Integers, groups: int) -> Iterable[Integers]:
-    pairs = np.unique(np.column_stack([group, craft]), axis=0)
-    offset = offsets_of(np.bincount(pairs[:, 0], minlength=groups))
-    for k in np.flatnonzero(np.diff(offset) > 1).tolist():
-        yield pairs[offset[k]:offset[k + 1], 1]
+        yield craft[served][:-1], craft[served][1:]
 
 
 def _gathered(label: Integers, options: Integers) -> Integers:

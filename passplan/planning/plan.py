@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Collection, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -24,7 +24,8 @@ from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
 from passplan.planning.problem import Antennas, CommandNeed, Conflict, Crowd, Fleet, Limits, Problem, RequestNeed
 from passplan.planning.result import PlanResult
-from passplan.planning.rules import BLOCKS, CAPS, NEEDS, SILENCES, WISHES, all_terms
+from passplan.planning.rules import BLOCKS, CAPS, NEEDS, SILENCES, STANDBYS, WISHES, all_terms
+from passplan.planning.rules.requests import able_antennas, offered_service, requested_antennas
 from passplan.planning.tables import contacts_table, segments_table
 from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
@@ -106,7 +107,8 @@ def build_problem(
     wishes = [wish for find in WISHES for wish in find(run)]
     silences = [silence for find in SILENCES for silence in find(run)]
     caps = [cap for find in CAPS for cap in find(run)]
-    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes, caps, silences)
+    standbys = [standby for find in STANDBYS for standby in find(run)]
+    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes, caps, silences, standbys)
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(_request_need(run, fleet, request) for request in run.requests),
@@ -137,15 +139,17 @@ def _crowd(fleet: Fleet, antennas: Antennas, crowd: InterferenceCrowd) -> Crowd:
 
 
 def _request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:
-    antennas = frozenset(
-        k for k, (name, antenna) in enumerate(run.antennas.items())
-        if request.antenna in (None, name) and request.site in (None, antenna.site)
-        and (antenna.ranging or request.service != "ranging"))
+    antennas = _numbers(run, requested_antennas(run, request))
     craft = fleet.names.index(request.spacecraft) if request.spacecraft in fleet.names else -1
     return RequestNeed(
-        request.name, request.spacecraft, craft, antennas, "both" if request.service == "ranging" else request.service,
+        request.name, request.spacecraft, craft, antennas, offered_service(request),
         math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc)),
-        math.ceil(request.min_duration_s), request.fixed, request.points)
+        math.ceil(request.min_duration_s), request.fixed, request.points,
+        _numbers(run, able_antennas(run, request)) if request.standby else None)
+
+
+def _numbers(run: Run, antennas: Collection[str]) -> frozenset[int]:
+    return frozenset(k for k, name in enumerate(run.antennas) if name in antennas)
 
 
 def _command_needs(run: Run, fleet: Fleet) -> tuple[CommandNeed, ...]:

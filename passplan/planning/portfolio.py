@@ -101,7 +101,9 @@ def _plan_part(
         arrays = None
         if len(problem.options) > limits.exact_options and can_search(problem) and compiled_in_time(clock):
             arrays = fleet_arrays(problem, terms, maps)
+        began_s = clock.elapsed_s()
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
+        first_s = clock.elapsed_s() - began_s
     if len(problem.options) == 0:
         bound = best.account.value
 
@@ -135,8 +137,11 @@ def _plan_part(
             if arrays is None:
                 arrays = fleet_arrays(problem, terms, maps)
             base = problem.base_worth
+            # A plan of this size has to be checked and tidied too: as long as the first one took, about.
+            reserve_s = min(first_s, 0.1 * clock.left_s())
             found = search_plan(
-                arrays, terms, limits, clock, best.chosen, best.points, lambda v, b: tell(v + base, b + base))
+                arrays, terms, limits, clock.part(clock.left_s() - reserve_s), best.chosen, best.points,
+                lambda v, b: tell(v + base, b + base))
         candidate = _Candidate(problem, terms, found.chosen, "search")
         # With fewer points, more plans compete than the bound so far is for.
         if candidate.points < best.points - _SAME_POINTS or found.bound + base < bound:

@@ -20,6 +20,8 @@ CONTACT_COLUMNS = (
     "weight", "value", "cost", "origin", "change", "cut",
 )
 SEGMENT_COLUMNS = ("contact_id", "start_utc", "end_utc", "modcod", "rate_mbps", "data_class", "volume_mb")
+STANDBY = "standby"
+"""The ``origin`` of a contact that is held beside another one of its spacecraft, to take over should that fail."""
 UNUSED_COLUMNS = ("window_id", "spacecraft", "antenna", "aos_utc", "los_utc", "reason", "detail")
 
 

@@ -22,6 +22,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field, fields
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -130,10 +131,15 @@ class Layer:
         """The capacity [MB] at any times within the horizon."""
         return np.asarray(np.interp(time_s, self.time_s, self.room_mb))
 
-    @property
+    @cached_property
     def shrinks(self) -> bool:
         """Whether its capacity changes with time."""
         return bool(np.any(self.room_mb != self.room_mb[0]))
+
+    @cached_property
+    def even(self) -> bool:
+        """Whether it generates at one rate, and holds the same, from the start to the end."""
+        return len(self.time_s) == 2 and bool(self.room_mb[0] == self.room_mb[1])
 
     def inner_times(self) -> Floats:
         """Instants within the horizon at which a rate changes."""

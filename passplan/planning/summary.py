@@ -86,11 +86,12 @@ def summarise(run: Run, windows: pd.DataFrame, plan: Plan) -> dict[str, Any]:
 
 def _held(plan: Plan) -> list[Held]:
     """When each contact holds its antenna, in the order of the contacts."""
-    options, chosen = plan.problem.options, plan.result.account.chosen
-    start_s, end_s = options.start_s - options.prepare_s, options.end_s + options.release_s
+    holds = plan.problem.options.holds
+    start_s, end_s = holds.start_s - holds.prepare_s, holds.end_s + holds.release_s
+    held = [k for o in plan.result.account.chosen for k in range(*np.searchsorted(holds.option, [o, o + 1]))]
     return [
-        Held(contact, antenna, int(start_s[o]), int(end_s[o])) for contact, antenna, o in zip(
-            plan.contacts["contact_id"], plan.contacts["antenna"], chosen.tolist(), strict=True)]
+        Held(contact, antenna, int(start_s[k]), int(end_s[k])) for contact, antenna, k in zip(
+            plan.contacts["contact_id"], plan.contacts["antenna"], held, strict=True)]
 
 
 def stored_inputs(files: Iterable[ReadFile]) -> list[dict[str, str]]:

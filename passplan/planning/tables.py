@@ -12,7 +12,7 @@ from passplan.planning.horizon import instants_of
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.options import OptionSet
 from passplan.planning.problem import Problem
-from passplan.planning.record import CONTACT_COLUMNS, SEGMENT_COLUMNS
+from passplan.planning.record import CONTACT_COLUMNS, SEGMENT_COLUMNS, STANDBY
 from passplan.planning.result import PlanResult
 from passplan.planning.rules.terms import Terms
 from passplan.planning.value import Account
@@ -26,6 +26,7 @@ def contacts_table(
 
     The modcod, margin and usable time are those of the downlink where there is one, of the command link
     otherwise (then ``modcod`` is empty). A contact's id is its window's with ``.c1``, ``.c2`` ... in time order.
+    One that stands by for another follows it, with what its link would give and no volume.
     """
     chosen, options = result.account.chosen, problem.options
     origins = _origins(terms)
@@ -35,30 +36,41 @@ def contacts_table(
     account = result.account
     for o, volume_mb, value in zip(
         chosen.tolist(), account.contact_mb.tolist(), account.contact_worth.tolist(), strict=True):
-        candidate = option_set.candidates[o]
-        w = candidate.window
-        numbers[w] = numbers.get(w, 0) + 1
-        craft, antenna = int(options.spacecraft[o]), problem.antennas.names[int(options.antenna[o])]
-        link = candidate.downlink or candidate.command
-        if link is None:
-            raise ValueError(f"option {o} offers no service")
+        craft = int(options.spacecraft[o])
         mixed = volume_mb > 0.0 and bool(account.classes[craft])
         weight = value / volume_mb if mixed else float(problem.fleet.weight[craft])
-        rows.append({
-            "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
-            "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
-            "service": candidate.service, "radio": link.radio, "frequency_mhz": link.frequency_mhz,
-            "polarisation": link.polarisation, "start_utc": candidate.start_s, "end_utc": candidate.end_s,
-            "duration_s": candidate.end_s - candidate.start_s, "usable_s": link.usable_s,
-            "modcod": "" if candidate.downlink is None else candidate.downlink.modcod, "volume_mb": volume_mb,
-            "min_margin_db": link.min_margin_db,
-            "peak_elevation_deg": float(windows["peak_elevation_deg"].iloc[w]), "weight": weight,
-            "value": value, "cost": candidate.cost, "origin": origins.get(o, "planned"),
-            "change": "new", "cut": cutter.why(o)})
+        candidate = option_set.candidates[o]
+        for one in (candidate, *candidate.further):
+            w, first = one.window, one is candidate
+            numbers[w] = numbers.get(w, 0) + 1
+            antenna = problem.antennas.names[int(problem.windows.antenna[w])]
+            link = one.downlink or one.command
+            if link is None:
+                raise ValueError(f"option {o} offers no service")
+            rows.append({
+                "contact_id": f"{problem.windows.names[w]}.c{numbers[w]}", "window_id": problem.windows.names[w],
+                "spacecraft": problem.fleet.names[craft], "antenna": antenna, "site": run.antennas[antenna].site,
+                "service": one.service, "radio": link.radio, "frequency_mhz": link.frequency_mhz,
+                "polarisation": link.polarisation, "start_utc": one.start_s, "end_utc": one.end_s,
+                "duration_s": one.end_s - one.start_s, "usable_s": link.usable_s,
+                "modcod": "" if one.downlink is None else one.downlink.modcod,
+                "volume_mb": volume_mb if first else 0.0, "min_margin_db": link.min_margin_db,
+                "peak_elevation_deg": float(windows["peak_elevation_deg"].iloc[w]),
+                "weight": weight if first else float(problem.fleet.weight[craft]),
+                "value": value if first else 0.0, "cost": one.cost,
+                "origin": origins.get(o, "planned") if first else STANDBY, "change": "new",
+                "cut": cutter.why(o) if first else _standby_cut(problem, one)})
     table = pd.DataFrame(rows, columns=list(CONTACT_COLUMNS))
     return _typed(table, run, texts=(
         "contact_id", "window_id", "spacecraft", "antenna", "site", "service", "radio", "polarisation", "modcod",
         "origin", "change", "cut"))
+
+
+def _standby_cut(problem: Problem, one: Candidate) -> str:
+    """A stand-by is there for as long as the contact that it stands by for."""
+    w = one.window
+    late, early = one.start_s > problem.windows.start_s[w], one.end_s < problem.windows.end_s[w]
+    return "; ".join(word for word, short in (("start: standby", late), ("end: standby", early)) if short)
 
 
 def _origins(terms: Terms) -> dict[int, str]:
@@ -83,7 +95,7 @@ def segments_table(
     modcods = [_modcod_of(option_set.candidates[o], int(k))
                for o, k in zip(account.chosen[owner].tolist(), account.piece - first, strict=True)]
     table = pd.DataFrame({
-        "contact_id": contacts["contact_id"].to_numpy()[owner],
+        "contact_id": contacts.loc[contacts["origin"] != STANDBY, "contact_id"].to_numpy()[owner],
         "start_utc": options.piece_start_s[account.piece], "end_utc": options.piece_end_s[account.piece],
         "modcod": modcods, "rate_mbps": options.piece_rate_mb_per_s[account.piece] * 8.0})
     table["data_class"], table["volume_mb"] = _by_class(problem, account)

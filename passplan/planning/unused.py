@@ -20,7 +20,7 @@ REASONS = (
     "contacts_per_orbit", "contacts_per_day", "sending_per_contact", "sending_per_orbit", "sending_per_span",
     "battery", "imaging", "attitude", "loaded",
     "equipment_busy", "staff_busy", "unstaffed", "declined", "too_late_to_ask", "backhaul_full", "backhaul_busy",
-    "backhaul_closed", "budget")
+    "backhaul_closed", "budget", "standby")
 """``not_needed``: the antenna can only command, and nothing asks for it. Rules may add their own reasons."""
 
 
@@ -30,7 +30,8 @@ def unused_table(
 ) -> pd.DataFrame:
     """One row for each window without a contact, in the order of ``windows``."""
     explainer = _Explainer(run_start_utc, problem, terms, result)
-    used = {int(w) for w in problem.options.window[list(result.chosen)]}
+    holds = problem.options.holds
+    used = {int(w) for w in holds.window[np.isin(holds.option, result.chosen)]}
     rows = [w for w in range(len(windows)) if w not in used]
     reasons = [option_set.excluded.get(w) or explainer.reason(w) for w in rows]
     table = windows.iloc[rows][list(UNUSED_COLUMNS[:5])].reset_index(drop=True)
@@ -88,6 +89,8 @@ class _Explainer:
             return f"{blocker.name}: it would need more than there is"
         a, b = (str(self.start_utc.astype("datetime64[s]") + np.timedelta64(int(t), "s"))[11:]
                 for t in (options.start_s[other], options.end_s[other]))
-        craft = fleet.names[int(options.spacecraft[other])]
-        antenna = self.problem.antennas.names[int(options.antenna[other])]
+        craft, names = fleet.names[int(options.spacecraft[other])], self.problem.antennas.names
+        antenna = names[int(options.antenna[other])]
+        if blocker.kind == "antenna_busy" and blocker.name != antenna:
+            antenna = f"{antenna}, with {blocker.name} at the ready,"
         return f"{blocker.name} is taken: {craft} on {antenna} from {a} to {b} UTC"

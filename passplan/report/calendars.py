@@ -17,7 +17,7 @@ import pandas as pd
 from icalendar import Calendar, Event
 
 from passplan._version import __version__
-from passplan.planning.record import PlanRecord
+from passplan.planning.record import STANDBY, PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.names import file_stems
 from passplan.report.rows import rows
@@ -73,7 +73,8 @@ def _entries(record: PlanRecord) -> list[_Entry]:
     for row in rows(record.contacts):
         event = _event(row, stamp, revisions.get(row["contact_id"], 0))
         event.add("status", "TENTATIVE" if draft else "CONFIRMED")
-        event.add("summary", f"{'DRAFT ' if draft else ''}{row['spacecraft']} on {row['antenna']}")
+        ready = ", stand-by" if row["origin"] == STANDBY else ""
+        event.add("summary", f"{'DRAFT ' if draft else ''}{row['spacecraft']} on {row['antenna']}{ready}")
         event.add("description", _description(row, record.summary, draft))
         event.add("categories", ["contact", row["service"]])
         entries.append(_Entry(row, bytes(event.to_ical())))
@@ -103,7 +104,9 @@ def _description(row: Mapping[Any, Any], summary: Mapping[str, Any], draft: bool
     facts = [
         f"{row['service']} at {row['site']}, radio {row['radio']}, {row['frequency_mhz']:g} MHz {row['polarisation']}"
     ]
-    if row["service"] != "command":
+    if row["origin"] == STANDBY:
+        facts.append(f"stands by beside another contact of {row['spacecraft']}, to take over should that fail")
+    elif row["service"] != "command":
         facts.append(f"{row['modcod']}, {megabytes(row['volume_mb'])} net")
     if not pd.isna(row["min_margin_db"]):
         facts.append(f"least margin {row['min_margin_db']:.1f} dB, peak {row['peak_elevation_deg']:.0f} deg")

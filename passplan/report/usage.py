@@ -46,6 +46,7 @@ REASON_WORDS = {
     "backhaul_busy": "faster than the site's line",
     "backhaul_closed": "the site's line is closed",
     "budget": "beyond the budget of the day",
+    "standby": "held only while the antenna stands by for another",
     "left_out": "left out of the plan",
     IN_CONTACT: "within contacts: acquisition, keyholes, rate steps",
     NO_WINDOW: "no link in view in time",

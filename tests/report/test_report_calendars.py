@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
 
 import pandas as pd
@@ -48,6 +49,15 @@ def test_every_contact_comes_back(short_plan: PlanRecord) -> None:
     assert {int(event["sequence"]) for event in book.values()} == {0}
     assert all("not permission to transmit" in str(event["description"]) for event in book.values())
     assert all(str(event["summary"]).startswith("DRAFT ") for event in book.values())
+
+
+def test_a_stand_by_says_that_it_is_one(short_plan: PlanRecord) -> None:
+    contacts = short_plan.contacts.copy()
+    contacts.loc[contacts.index[0], "origin"] = "standby"
+    first, *others = _events(calendar(replace(short_plan, contacts=contacts)))
+    assert str(first["summary"]).endswith(", stand-by")
+    assert f"stands by beside another contact of {contacts['spacecraft'].iloc[0]}" in str(first["description"])
+    assert not any("stand" in str(event["summary"]) for event in others)
 
 
 def test_an_import_updates_cancels_and_never_doubles(short_plan: PlanRecord, replanned: PlanRecord) -> None:

@@ -16,6 +16,7 @@ _SAME_S = 60.0
 
 def departures(run: Run, contacts: Sequence[Contact]) -> tuple[float, int]:
     """The cost [worth] of the published contacts that are no longer there, and the number of all changes."""
+    contacts = [contact for contact in contacts if not contact.standby]
     kept_contacts: set[str] = set()
     cost, gone = 0.0, 0
     for item in run.published:

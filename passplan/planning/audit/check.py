@@ -22,6 +22,7 @@ from passplan.planning.audit.rented import check_rented
 from passplan.planning.audit.requirements import check_requirements
 from passplan.planning.audit.rows import Contact, read_rows
 from passplan.planning.audit.sites import check_sites
+from passplan.planning.audit.standby import check_standbys
 from passplan.planning.audit.storage import check_storage
 from passplan.planning.audit.tentative import check_tentative
 from passplan.planning.audit.tiers import check_tiers
@@ -43,12 +44,14 @@ def audit_plan(
     rows, faults = read_rows(run, contacts, segments)
     for contact in rows:
         faults.extend(_check_contact(run, contact))
+    working = [contact for contact in rows if not contact.standby]
+    faults.extend(check_standbys(rows))
     faults.extend(check_overlaps(run, rows))
     faults.extend(check_turnarounds(run, rows))
-    faults.extend(check_interference(run, rows))
-    faults.extend(check_craft_limits(run, rows))
-    faults.extend(check_loaded(run, rows))
-    faults.extend(check_batteries(run, rows, summary))
+    faults.extend(check_interference(run, working))
+    faults.extend(check_craft_limits(run, working))
+    faults.extend(check_loaded(run, working))
+    faults.extend(check_batteries(run, working, summary))
     faults.extend(check_storage(run, rows, summary))
     faults.extend(check_requirements(run, rows, summary))
     faults.extend(check_sites(run, rows))

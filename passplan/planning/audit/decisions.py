@@ -14,6 +14,7 @@ from passplan.inputs.run import Run
 from passplan.planning.audit.faults import Fault
 from passplan.planning.audit.mechanics import check_mechanics
 from passplan.planning.audit.rows import Contact
+from passplan.planning.audit.standby import stands_by
 from passplan.planning.audit.standing import Standing
 from passplan.planning.audit.visibility import check_visibility, sight_of
 
@@ -39,21 +40,26 @@ def check_forbids(run: Run, contact: Contact) -> Iterator[Fault]:
             yield Fault("forbidden", contact.place, f"somebody forbade {item.name}{': ' * bool(item.note)}{item.note}")
 
 
-def decided(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str, str], Standing]]:
-    """How each pin and each emergency fares."""
+def decided(
+    run: Run, contacts: Sequence[Contact], spares: Sequence[Contact],
+) -> Iterator[tuple[tuple[str, str], Standing]]:
+    """How each pin and each emergency fares; ``spares`` are the contacts that stand by."""
     for item in run.decisions:
+        ready = " with a second antenna at the ready" if item.standby else ""
         if item.kind == "emergency":
-            met = any(_answers(run, item, contact) for contact in contacts)
-            yield ("emergency", item.name), Standing(not met, met, "no contact answers it")
+            met = any(_answers(run, item, contact) for contact in contacts
+                      if not item.standby or stands_by(spares, contact, item.service))
+            yield ("emergency", item.name), Standing(not met, met, f"no contact{ready} answers it")
         elif item.kind == "pin" and item.window is not None:
             met = any(contact.window_id == item.window for contact in contacts)
             yield ("pin", item.name), Standing(not met, met, "no contact uses the window")
         elif item.kind == "pin":
             span = _span_s(run, item.start_utc, item.end_utc)
-            mine = [c for c in contacts if (c.spacecraft, c.antenna) == (item.spacecraft, item.antenna)]
+            mine = [c for c in contacts if (c.spacecraft, c.antenna) == (item.spacecraft, item.antenna)
+                    and (not item.standby or stands_by(spares, c))]
             met = any(_late_s(c, span) < _SECOND for c in mine)
             close = any(_holds_what_it_can(run, c, span) for c in mine)
-            yield ("pin", item.name), Standing(not met and not close, met, "no contact holds its span")
+            yield ("pin", item.name), Standing(not met and not close, met, f"no contact{ready} holds its span")
 
 
 def frozen(run: Run, contacts: Sequence[Contact]) -> Iterator[tuple[tuple[str, str], Standing]]:

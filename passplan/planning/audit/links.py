@@ -15,6 +15,7 @@ from passplan.planning.audit.mechanics import has_losses
 from passplan.planning.audit.quality import Quality, command_quality, downlink_quality
 from passplan.planning.audit.rows import Contact, Piece
 from passplan.planning.audit.sky import Sight
+from passplan.planning.audit.standby import check_standby_downlink
 from passplan.planning.audit.steps import check_steps
 
 # The plan joins samples 10 s apart by straight lines; at 500 km that is low by up to 0.03 dB overhead and
@@ -34,7 +35,9 @@ def check_links(run: Run, contact: Contact, seen: Sight) -> Iterator[Fault]:
     if contact.polarisation != radio.polarisation or differs(contact.frequency_mhz, radio.frequency_mhz, 1e-6):
         yield Fault("radio", contact.place, f"frequency or polarisation is not that of radio {radio.name}")
     if contact.service != "command":
-        if isinstance(radio, DownlinkRadio):
+        if contact.standby:
+            yield from check_standby_downlink(run, contact, seen)
+        elif isinstance(radio, DownlinkRadio):
             yield from _check_downlink(run, contact, radio, seen)
         else:
             yield Fault("radio", contact.place, f"radio {radio.name} cannot send, yet the service is {contact.service}")

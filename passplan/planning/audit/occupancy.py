@@ -53,14 +53,18 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
 
 
 def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft has two."""
+    """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft has two.
+
+    Those that stand by take up an antenna, but nothing of the spacecraft.
+    """
     several = {name for name, antenna in run.antennas.items() if antenna.beams > 1}
     alone = [contact for contact in contacts if contact.antenna not in several]
     yield from _overlaps(alone, "antenna", lambda contact: contact.antenna, lambda contact: held(run, contact))
     for name in sorted(several):
         yield from _crowded(run, name, [contact for contact in contacts if contact.antenna == name])
     yield from _overlaps(
-        contacts, "spacecraft", lambda contact: contact.spacecraft, lambda contact: (contact.start_s, contact.end_s))
+        [contact for contact in contacts if not contact.standby], "spacecraft", lambda contact: contact.spacecraft,
+        lambda contact: (contact.start_s, contact.end_s))
 
 
 def held(run: Run, contact: Contact) -> tuple[float, float]:

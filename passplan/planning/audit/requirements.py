@@ -15,6 +15,7 @@ from passplan.planning.audit.decisions import decided, frozen
 from passplan.planning.audit.faults import Fault
 from passplan.planning.audit.guarantees import promised, shared
 from passplan.planning.audit.rows import Contact
+from passplan.planning.audit.standby import stands_by
 from passplan.planning.audit.standing import Standing
 
 # Plans count in whole seconds; within a second of the limit either answer is right.
@@ -26,12 +27,14 @@ _PLACES = {"command": "spacecraft", "daily": "the", "guarantee": "the", "fair": 
 
 def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[str, Any]) -> Iterator[Fault]:
     """Requests, decisions and command intervals against the contacts and the shortfalls that the plan admits."""
-    standings = {("request", request.name): _request(run, request, contacts) for request in run.requests}
+    spares = [contact for contact in contacts if contact.standby]
+    contacts = [contact for contact in contacts if not contact.standby]
+    standings = {("request", request.name): _request(run, request, contacts, spares) for request in run.requests}
     for name in run.orbits:
         every_h = run.spacecraft[name].command_every_h or run.policy.command_every_h
         if every_h is not None:
             standings["command", name] = _command(run, name, every_h, contacts)
-    standings.update(decided(run, contacts))
+    standings.update(decided(run, contacts, spares))
     standings.update(frozen(run, contacts))
     standings.update(promised(run, contacts))
     if run.policy.fairness == "max_min":
@@ -53,7 +56,7 @@ def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[s
             yield Fault(kind, f"shortfall {name}", "the run has no such requirement")
 
 
-def _request(run: Run, request: Request, contacts: Sequence[Contact]) -> Standing:
+def _request(run: Run, request: Request, contacts: Sequence[Contact], spares: Sequence[Contact]) -> Standing:
     earliest_s, latest_s = _seconds(run, request.earliest_utc), _seconds(run, request.latest_utc)
     met = any(
         contact.spacecraft == request.spacecraft
@@ -65,9 +68,18 @@ def _request(run: Run, request: Request, contacts: Sequence[Contact]) -> Standin
         and contact.end_s <= latest_s
         and (not request.fixed or (contact.start_s < earliest_s + 1.0 and contact.end_s > latest_s - 1.0))
         and contact.end_s - contact.start_s >= request.min_duration_s
+        and (not request.standby or _backed(run, request, contact, spares))
         for contact in contacts
     )
-    return Standing(not met, met, "no contact meets it")
+    ready = " with a second antenna at the ready" if request.standby else ""
+    return Standing(not met, met, f"no contact{ready} meets it")
+
+
+def _backed(run: Run, request: Request, contact: Contact, spares: Sequence[Contact]) -> bool:
+    """Whether another antenna stands by that can do what is asked for."""
+    service = "both" if request.service == "ranging" else request.service
+    return any(request.service != "ranging" or run.antennas[spare.antenna].ranging
+               for spare in stands_by(spares, contact, service))
 
 
 def _command(run: Run, name: str, every_h: float, contacts: Sequence[Contact]) -> Standing:

@@ -39,7 +39,10 @@ class Piece:
 
 @dataclass(frozen=True)
 class Contact:
-    """One row of the contacts table with its segments in time order; seconds from the horizon's start."""
+    """One row of the contacts table with its segments in time order; seconds from the horizon's start.
+
+    One that stands by is there to take over from another contact of its spacecraft, and no more.
+    """
 
     contact_id: str
     window_id: str
@@ -61,6 +64,7 @@ class Contact:
     value: float
     cost: float
     pieces: tuple[Piece, ...]
+    standby: bool = False
 
     @property
     def place(self) -> str:
@@ -157,6 +161,7 @@ def _contact(run: Run, record: Mapping[Hashable, Any], pieces: tuple[Piece, ...]
         value=_figure(record["value"]),
         cost=_figure(record["cost"]),
         pieces=pieces,
+        standby=_text(record.get("origin")) == "standby",
     )
 
 

@@ -66,9 +66,11 @@ def backhaul_needs(draft: Draft) -> Iterator[BackhaulNeed]:
 
 def backhaul(problem: Problem) -> Terms:
     """Rows on the volume of each day, and on the peak rates of contacts that send at the same time."""
-    options, rows = problem.options, []
+    options, rows, needs = problem.options, [], problem.needs_of(BackhaulNeed)
+    if not needs:
+        return Terms()
     first, last, peak = _sending(options)
-    for need in problem.needs_of(BackhaulNeed):
+    for need in needs:
         mine = np.flatnonzero(np.isin(options.antenna, need.antennas) & (last > first))
         rows.append(rows_of("backhaul_full", _day_rows(options, need, mine)))
         if need.rate_mb_per_s is not None:

@@ -15,11 +15,11 @@ def beams(problem: Problem) -> Terms:
     Which beam serves which contact is left open: intervals of which no more than N overlap can always be given
     N beams so that none serves two at a time (greedily, in the order of their starts).
     """
-    options = problem.options
-    start_s, end_s = options.start_s - options.prepare_s, options.end_s + options.release_s
+    holds = problem.options.holds
+    start_s, end_s = holds.start_s - holds.prepare_s, holds.end_s + holds.release_s
     rows = []
     for k in np.flatnonzero(problem.antennas.beams > 1).tolist():
-        mine = np.flatnonzero(options.antenna == k)
+        mine = np.flatnonzero(holds.antenna == k)
         name, most = problem.antennas.names[k], float(problem.antennas.beams[k])
-        rows.append(at_the_same_time("antenna_busy", name, mine, start_s[mine], end_s[mine], most))
+        rows.append(at_the_same_time("antenna_busy", name, holds.option[mine], start_s[mine], end_s[mine], most))
     return Terms(rows=tuple(rows))

@@ -16,9 +16,10 @@ import numpy as np
 from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
-from passplan.planning.hooks import DRIFT_S, Block, Draft, Wish
+from passplan.planning.hooks import DRIFT_S, Block, Draft, Standby, Wish
 from passplan.planning.horizon import seconds_of
 from passplan.planning.problem import Flags, Integers, Problem
+from passplan.planning.rules.standby import NO_STANDBY, backed, one_standby
 from passplan.planning.rules.terms import Removal, Terms, Wanted, WantedKind
 
 POINTS: dict[WantedKind, float] = {"pin": 20.0, "frozen": 100.0, "loaded": 100.0, "emergency": 1000.0}
@@ -33,6 +34,7 @@ class DecidedContact:
     owner: str
     options: Integers
     reason: str
+    standby: bool = False
 
 
 @dataclass(frozen=True, eq=False)
@@ -47,8 +49,9 @@ def decisions(problem: Problem) -> Terms:
     """One wanted term for each contact that was decided on, one removal for each forbidden window."""
     wanted = tuple(Wanted(need.name, need.owner, need.options, POINTS[need.kind], need.reason, need.kind)
                    for need in problem.needs_of(DecidedContact))
+    rows = tuple(one_standby(need.name, need.options) for need in problem.needs_of(DecidedContact) if need.standby)
     removals = tuple(Removal(need.options, "forbidden", need.detail) for need in problem.needs_of(ForbiddenWindow))
-    return Terms(removals=removals, wanted=wanted)
+    return Terms(removals=removals, wanted=wanted, rows=rows)
 
 
 def forbid_blocks(run: Run) -> Iterator[Block]:
@@ -71,6 +74,16 @@ def decision_wishes(run: Run) -> Iterator[Wish]:
         yield Wish(contact.spacecraft, contact.antenna, *decided_span(run, contact))
 
 
+def decision_standbys(run: Run) -> Iterator[Standby]:
+    """What a pin or an emergency with a stand-by must have to choose from."""
+    for item in run.decisions:
+        if item.standby:
+            where = frozenset(run.antennas) if item.antenna is None else frozenset({item.antenna})
+            service = item.service if item.kind == "emergency" else None
+            yield Standby(
+                item.spacecraft or "", where, frozenset(run.antennas), service, *decided_span(run, item))
+
+
 def frozen_contacts(run: Run) -> list[Published]:
     """Contacts of the published plan that start before the freeze instant."""
     until = run.frozen_until_utc
@@ -83,8 +96,9 @@ def decision_needs(draft: Draft) -> Iterator[DecidedContact | ForbiddenWindow]:
     for item in run.decisions:
         if item.kind == "forbid":
             if item.window in problem.windows.names:
-                mine = problem.options.window == problem.windows.names.index(item.window)
-                yield ForbiddenWindow(np.flatnonzero(mine), _forbidden(item))
+                holds = problem.options.holds
+                mine = holds.option[holds.window == problem.windows.names.index(item.window)]
+                yield ForbiddenWindow(mine, _forbidden(item))
         else:
             yield decided_contact(draft, item.kind, item)
     for contact in frozen_contacts(run):
@@ -114,8 +128,14 @@ def decided_contact(draft: Draft, kind: WantedKind, item: Decision | Published) 
         served &= options.command | (item.service == "downlink")
     else:
         served &= same_contact(problem, low, high, longer=kind == "pin")
+    standby = isinstance(item, Decision) and item.standby
+    if isinstance(item, Decision) and standby and served.any():
+        served &= backed(options, item.service if kind == "emergency" else None)
+        reason = NO_STANDBY
+    else:
+        reason = _why(draft, item, craft, low, high)
     found = np.flatnonzero(served)
-    return DecidedContact(kind, item.name, owner, found, "" if len(found) else _why(draft, item, craft, low, high))
+    return DecidedContact(kind, item.name, owner, found, "" if len(found) else reason, standby)
 
 
 def same_contact(problem: Problem, low: int, high: int, *, longer: bool = False) -> Flags:

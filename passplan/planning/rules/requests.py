@@ -4,24 +4,44 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
+from dataclasses import replace
 
 import numpy as np
 
+from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
-from passplan.planning.hooks import Wish
+from passplan.planning.hooks import Standby, Wish
 from passplan.planning.horizon import seconds_of
-from passplan.planning.problem import Flags, Options, Problem, RequestNeed
+from passplan.planning.problem import Flags, Options, Problem, RequestNeed, Service
+from passplan.planning.rules.standby import NO_STANDBY, backed, one_standby
 from passplan.planning.rules.terms import Terms, Wanted
 
 
 def requests(problem: Problem) -> Terms:
-    """One wanted term per request; a request that no option fits keeps an empty one, and is a shortfall."""
-    wanted = []
+    """One wanted term per request; a request that no option fits keeps an empty one, and is a shortfall.
+
+    Of the contacts that hold a stand-by for it no more than one is used.
+    """
+    wanted, rows = [], []
     for need in problem.requests:
         reason = "the spacecraft takes no part in this run" if need.spacecraft < 0 else ""
-        wanted.append(Wanted(
-            need.name, need.craft_name, np.flatnonzero(fits(problem.options, need)), need.points, reason))
-    return Terms(wanted=tuple(wanted))
+        found = np.flatnonzero(fits(problem.options, need))
+        if need.standbys is not None:
+            rows.append(one_standby(need.name, found))
+            if not len(found) and np.any(fits(problem.options, replace(need, standbys=None))):
+                reason = NO_STANDBY
+        wanted.append(Wanted(need.name, need.craft_name, found, need.points, reason))
+    return Terms(wanted=tuple(wanted), rows=tuple(rows))
+
+
+def request_standbys(run: Run) -> Iterator[Standby]:
+    """What a request with a stand-by must have to choose from."""
+    for request in run.requests:
+        if request.standby:
+            yield Standby(
+                request.spacecraft, requested_antennas(run, request), able_antennas(run, request),
+                offered_service(request), math.ceil(seconds_of(run, request.earliest_utc)),
+                math.floor(seconds_of(run, request.latest_utc)))
 
 
 def request_wishes(run: Run) -> Iterator[Wish]:
@@ -32,6 +52,23 @@ def request_wishes(run: Run) -> Iterator[Wish]:
             math.floor(seconds_of(run, request.latest_utc)))
 
 
+def requested_antennas(run: Run, request: Request) -> frozenset[str]:
+    """The antennas that can serve a request."""
+    return frozenset(
+        name for name in able_antennas(run, request)
+        if request.antenna in (None, name) and request.site in (None, run.antennas[name].site))
+
+
+def able_antennas(run: Run, request: Request) -> frozenset[str]:
+    """The antennas that can do what a request asks for, wherever they stand."""
+    return frozenset(name for name, one in run.antennas.items() if one.ranging or request.service != "ranging")
+
+
+def offered_service(request: Request) -> Service:
+    """What the contact of a request offers: ranging sends and receives."""
+    return "both" if request.service == "ranging" else request.service
+
+
 def fits(options: Options, need: RequestNeed) -> Flags:
     """Which options meet a request, shape (m,)."""
     served = np.ones(len(options), dtype=bool)
@@ -39,6 +76,8 @@ def fits(options: Options, need: RequestNeed) -> Flags:
         served &= options.downlink
     if need.service in ("command", "both"):
         served &= options.command
+    if need.standbys is not None:
+        served &= backed(options, need.service, need.standbys)
     if need.fixed:
         served &= (options.start_s == need.earliest_s) & (options.end_s == need.latest_s)
     return np.asarray(

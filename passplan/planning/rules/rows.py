@@ -31,17 +31,22 @@ def at_the_same_time(
 ) -> Rows:
     """At every instant, the amounts (default 1 each) of options that hold ``[start_s, end_s)`` add up to ``limit``.
 
-    One row for each maximal set of options that overlap: what is used is most at the start of one of them.
+    One row for each maximal set of options that overlap: what is used is most at the start of one of them. An option
+    that is there twice (it holds two antennas) uses the sum.
     """
     first, last, cliques = clique_spans(start_s, end_s)
     clique = ragged_ranges(first, last - first)
     member = np.repeat(np.arange(len(options)), last - first)
     order = np.lexsort((member, clique))
     clique, member = clique[order], member[order]
-    held = (np.ones(len(options)) if amounts is None else amounts)[member]
+    held: Floats = (np.ones(len(options)) if amounts is None else amounts)[member]
+    mine = options[member]
+    if len(np.unique(options)) < len(options):
+        (clique, mine), which = np.unique(np.stack([clique, mine]), axis=1, return_inverse=True)
+        held = np.asarray(np.bincount(which.ravel(), weights=held), dtype=np.float64)
     binding = np.bincount(clique, weights=held, minlength=cliques) > limit
     kept = binding[clique]
     counts = np.bincount(clique[kept], minlength=cliques)[binding]
     return Rows(
-        kind, (name,) * len(counts), offsets_of(counts.astype(np.int64)), options[member[kept]], held[kept],
+        kind, (name,) * len(counts), offsets_of(counts.astype(np.int64)), mine[kept], held[kept],
         np.full(len(counts), float(limit)))

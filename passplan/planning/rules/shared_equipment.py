@@ -16,7 +16,10 @@ from passplan.planning.setup import means
 
 @dataclass(frozen=True, eq=False)
 class SharedNeed:
-    """At most ``at_once`` of ``options`` hold their ``[start_s, end_s)`` at a time; ``reason`` says why."""
+    """At most ``at_once`` of ``options`` hold their ``[start_s, end_s)`` at a time; ``reason`` says why.
+
+    An option that holds two antennas is there twice.
+    """
 
     name: str
     reason: str
@@ -28,23 +31,25 @@ class SharedNeed:
 
 def shared_needs(draft: Draft) -> Iterator[SharedNeed]:
     """One need for each pool, and one for each site that limits its contacts."""
-    run, options = draft.run, draft.problem.options
+    run, holds = draft.run, draft.problem.options.holds
+    contacts = [one for candidate in draft.candidates for one in (candidate, *candidate.further)]
     names = draft.problem.antennas.names
-    held_from_s, held_until_s = options.start_s - options.prepare_s, options.end_s + options.release_s
+    held_from_s, held_until_s = holds.start_s - holds.prepare_s, holds.end_s + holds.release_s
     for site in run.sites.values():
         here = {k for k, name in enumerate(names) if run.antennas[name].site == site.name}
         for pool in site.pool:
             sharing = {k for k in here if not pool.antennas or names[k] in pool.antennas}
             mine = np.array([
-                o for o in np.flatnonzero(np.isin(options.antenna, sorted(sharing))).tolist()
-                if means(pool, draft.candidates[o].service, draft.candidates[o].carriers_mhz)], dtype=np.int64)
-            start_s = (held_from_s if pool.with_setup else options.start_s)[mine]
-            end_s = (held_until_s if pool.with_setup else options.end_s)[mine]
-            yield SharedNeed(f"{pool.name} of {site.name}", "equipment_busy", mine, start_s, end_s, pool.at_once)
-        if site.contacts_at_once is not None:
-            mine = np.flatnonzero(np.isin(options.antenna, sorted(here)))
+                k for k in np.flatnonzero(np.isin(holds.antenna, sorted(sharing))).tolist()
+                if means(pool, contacts[k].service, contacts[k].carriers_mhz)], dtype=np.int64)
+            start_s = (held_from_s if pool.with_setup else holds.start_s)[mine]
+            end_s = (held_until_s if pool.with_setup else holds.end_s)[mine]
             yield SharedNeed(
-                f"the staff of {site.name}", "staff_busy", mine, held_from_s[mine], held_until_s[mine],
+                f"{pool.name} of {site.name}", "equipment_busy", holds.option[mine], start_s, end_s, pool.at_once)
+        if site.contacts_at_once is not None:
+            mine = np.flatnonzero(np.isin(holds.antenna, sorted(here)))
+            yield SharedNeed(
+                f"the staff of {site.name}", "staff_busy", holds.option[mine], held_from_s[mine], held_until_s[mine],
                 site.contacts_at_once)
 
 

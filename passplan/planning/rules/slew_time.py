@@ -21,7 +21,8 @@ def slew_time(problem: Problem) -> Terms:
         behind = np.unique(later[earlier == first])
         origin = int(problem.options.end_s[first])
         start_s = origin + np.arange(len(behind))
-        name = problem.antennas.names[int(problem.options.antenna[first])]
+        held = problem.options.holds.antenna[problem.options.holds.option == first]
+        name = " or ".join(problem.antennas.names[k] for k in held.tolist())
         lanes.append(Lane(
             name, "antenna_turning", np.concatenate([[first], behind]), np.concatenate([[origin], start_s]),
             np.concatenate([[origin + len(behind)], start_s + 1])))

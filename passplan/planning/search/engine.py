@@ -31,6 +31,8 @@ from passplan.planning.search.schedule import worth_of
 # A round is about this many labels: some tenths of a second.
 _ROUND_LABELS = 4_000_000
 _MOST_SWEEPS = 20
+# Even where sweeps cost next to nothing, a round of rebuilding looks at so many.
+_LEAST_LABELS = 200_000
 # Before the first sweep nobody knows how many labels there are to an option.
 _LABELS_PER_OPTION = 15
 _MOST_OUT = 10
@@ -106,7 +108,8 @@ class _Rounds:
             part = min(1.0, clock.left_s() / round_s) if round_s > 0.0 else 1.0
             with_bound = (
                 rounds < _ROUNDS_WITH_BOUND or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
-            spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, int(part * sweeps * effort))
+            labels = int(part * max(_LEAST_LABELS, sweeps * effort))
+            spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, labels)
             if spent:
                 effort = max(1, spent // sweeps)
                 sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))

@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from passplan.planning.backlog import Backlog
-from passplan.planning.record import PlanRecord, sending
+from passplan.planning.record import STANDBY, PlanRecord, sending
 from passplan.report.page.axis import Band
 from passplan.report.page.ribbons import (
     UNIT_S,
@@ -117,6 +117,7 @@ def _marks(contacts: Sequence[Row], shares: Sequence[Share], band: Band, names: 
     for row, (left, width), level, share in zip(contacts, placed, heights, shares, strict=True):
         key = names.craft_keys[row[partner]] if partner == "spacecraft" else str(names.antennas[row[partner]] + 1)
         brings = megabytes(row["volume_mb"]) if row["service"] != "command" else "command only"
+        brings = "stands by" if row["origin"] == STANDBY else brings
         when = f"{clock(row['start_utc'])} to {clock(row['end_utc'])} UTC"
         label = f"{row['spacecraft']} on {row['antenna']}, {when}, {brings}"
         marks.append(Mark(row["number"], left, width, key, level, label, row["origin"], row["change"], share))

@@ -1,0 +1,249 @@
+"""A second antenna as a stand-by: what counts, what it holds, and how the plan shows it."""
+
+from __future__ import annotations
+
+import random
+from dataclasses import replace
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+import pytest
+from need_cases import NeedJudge, needy_problem
+from planning_cases import STEP_S
+from planning_runs import BOTH, DOWN, UP, at, make_run, make_windows, request
+
+from passplan.inputs.decisions import Decision, read_published
+from passplan.inputs.errors import Findings
+from passplan.inputs.reader import Reader
+from passplan.link.choice import WindowLink
+from passplan.planning.plan import Plan, make_plan
+from passplan.planning.portfolio import find_plan
+from passplan.planning.problem import Antennas, Holds, Limits, Problem, RequestNeed
+from passplan.planning.rules.rows import at_the_same_time
+from passplan.planning.rules.standby import backed
+
+TWO = [("Teasel-1", "Isvarde-A", 600, 1_800), ("Teasel-1", "Isvarde-B", 900, 2_400)]
+
+
+def _planned(
+    windows: list[tuple[str, str, int, int]] = TWO, links: list[WindowLink] | None = None, **rest: object,
+) -> Plan:
+    return make_plan(make_run({"cut_grid_s": 0}, **rest), make_windows(windows), links or [BOTH] * len(windows))
+
+
+def _rows(plan: Plan) -> list[tuple[str, str, int, int, str]]:
+    start = pd.Timestamp("2027-03-09")
+    seconds = [((plan.contacts[key] - start) / pd.Timedelta("1s")).astype(int) for key in ("start_utc", "end_utc")]
+    return list(zip(plan.contacts["spacecraft"], plan.contacts["antenna"], *seconds, plan.contacts["origin"],
+                    strict=True))
+
+
+def test_a_stand_by_follows_for_as_long_as_the_contact_and_brings_nothing_down() -> None:
+    asked = request("ask", "Teasel-1", 0, 7_000, standby=True, antenna="Isvarde-A", min_duration_s=800)
+    plan = _planned(requests=(asked,))
+    assert _rows(plan) == [("Teasel-1", "Isvarde-A", 900, 1_800, "requested"),
+                           ("Teasel-1", "Isvarde-B", 900, 1_800, "standby")]
+    assert plan.result.shortfalls == ()
+    first, spare = plan.contacts.to_dict("records")
+    assert (spare["volume_mb"], spare["value"], spare["cut"]) == (0.0, 0.0, "end: standby")
+    assert first["volume_mb"] > 0.0 and set(plan.segments["contact_id"]) == {first["contact_id"]}
+    assert plan.unused.empty
+
+
+def test_without_the_word_no_second_antenna_is_held() -> None:
+    plan = _planned(requests=(request("ask", "Teasel-1", 0, 7_000, min_duration_s=800),))
+    assert len(plan.problem.options.further) == 0
+    assert "standby" not in set(plan.contacts["origin"])
+
+
+@pytest.mark.parametrize(("second", "spare"), [
+    (("Teasel-1", "Isvarde-B", 1_500, 2_400), BOTH),   # too short together
+    (("Teasel-1", "Isvarde-B", 900, 2_400), UP),       # cannot receive
+    (("Teasel-1", "Isvarde-A", 1_900, 2_900), BOTH),  # the same antenna
+    (("Teasel-2", "Isvarde-B", 900, 2_400), BOTH),     # another spacecraft
+])
+def test_a_contact_that_nothing_can_stand_by_for_does_not_count(
+    second: tuple[str, str, int, int], spare: WindowLink,
+) -> None:
+    asked = request("ask", "Teasel-1", 0, 7_000, standby=True, antenna="Isvarde-A", min_duration_s=800)
+    plan = _planned([TWO[0], second], [BOTH, spare], requests=(asked,))
+    assert [s.kind for s in plan.result.shortfalls] == ["request"]
+    assert "no second antenna can follow for as long and stand by" in plan.result.shortfalls[0].sentence
+    assert "standby" not in set(plan.contacts["origin"])
+
+
+def test_the_antenna_of_a_stand_by_serves_nobody_else() -> None:
+    others = [*TWO, ("Teasel-2", "Isvarde-B", 1_000, 1_700)]
+    asked = request("ask", "Teasel-1", 0, 7_000, standby=True, antenna="Isvarde-A", min_duration_s=800)
+    assert ("Teasel-2", "Isvarde-B") in [row[:2] for row in _rows(_planned(others, [DOWN] * 3))]
+    plan = _planned(others, [DOWN] * 3, requests=(asked,))
+    assert "Teasel-2" not in set(plan.contacts["spacecraft"])
+    row = plan.unused.iloc[0]
+    assert row["reason"] == "antenna_busy"
+    assert row["detail"] == (
+        "Isvarde-B is taken: Teasel-1 on Isvarde-A, with Isvarde-B at the ready, from 00:15:00 to 00:30:00 UTC")
+
+
+@pytest.mark.parametrize("kind", ["pin", "emergency"])
+def test_pins_and_emergencies_with_a_stand_by(kind: str) -> None:
+    span = {"antenna": "Isvarde-A", "start_utc": at(1_000), "end_utc": at(1_600)}
+    item = Decision(kind=kind, spacecraft="Teasel-1", standby=True, **span)
+    plan = _planned(decisions=(item,))
+    assert plan.result.shortfalls == ()
+    origin = {"pin": "pinned"}.get(kind, kind)
+    assert {("Isvarde-A", origin), ("Isvarde-B", "standby")} <= {(row[1], row[4]) for row in _rows(plan)}
+    alone = _planned([TWO[0]], decisions=(item,))
+    assert [s.kind for s in alone.result.shortfalls] == [kind]
+    assert "no second antenna" in alone.result.shortfalls[0].sentence
+
+
+def test_what_is_forbidden_is_not_held_as_a_stand_by_either() -> None:
+    asked = request("ask", "Teasel-1", 0, 7_000, standby=True, antenna="Isvarde-A", min_duration_s=800)
+    window = make_windows(TWO)["window_id"].iloc[1]
+    plan = _planned(requests=(asked,), decisions=(Decision(kind="forbid", window=window),))
+    assert [s.kind for s in plan.result.shortfalls] == ["request"]
+
+
+def test_an_option_that_holds_two_antennas_uses_twice_of_what_they_share() -> None:
+    rows = at_the_same_time(
+        "equipment_busy", "modems", np.array([0, 0, 1]), np.array([0, 0, 50]), np.array([100, 100, 150]), 2.0)
+    assert rows.offset.tolist() == [0, 2]
+    assert (rows.options.tolist(), rows.amounts.tolist()) == ([0, 1], [2.0, 1.0])
+
+
+def held_problem(seed: int) -> Problem:
+    """A needy problem some of whose options hold a second antenna, which some of the requests ask for."""
+    rng = random.Random(90_000 + seed)
+    problem = needy_problem(seed)
+    options, dishes = problem.options, len(problem.antennas) + 1
+    some = [o for o in range(len(options)) if rng.random() < 0.5]
+    antenna = [rng.choice([k for k in range(dishes) if k != options.antenna[o]]) for o in some]
+    either = [rng.choice(["downlink", "command", "both"]) for _ in some]
+    further = Holds(
+        np.array(some, dtype=np.int64), options.window[some], np.array(antenna, dtype=np.int64),
+        options.start_s[some], options.end_s[some],
+        np.array([rng.choice([0, STEP_S]) for _ in some], dtype=np.int64), np.zeros(len(some), dtype=np.int64),
+        np.array([one != "command" for one in either], dtype=bool),
+        np.array([one != "downlink" for one in either], dtype=bool))
+    requests = tuple(
+        replace(need, standbys=frozenset(rng.sample(range(dishes), rng.randint(1, dishes))))
+        if rng.random() < 0.6 else need for need in problem.requests)
+    if some:
+        k = rng.randrange(len(some))
+        o, service = some[k], "both" if rng.random() < 0.2 else either[k]
+        span = int(options.start_s[o]), int(options.end_s[o]) + 3 * STEP_S
+        requests += (RequestNeed(
+            "ready", "any", int(options.spacecraft[o]), frozenset(range(dishes)), service, *span, STEP_S,
+            standbys=frozenset({antenna[k]})),)
+    names = (*problem.antennas.names, "spare")
+    beams = np.append(problem.antennas.beams, rng.choice([1, 2]))
+    return replace(
+        problem, options=replace(options, further=further), requests=requests, antennas=Antennas(names, beams))
+
+
+class HeldJudge(NeedJudge):
+    """Adds the antennas that options hold beside their own."""
+
+    def compatible(self, a: int, b: int) -> bool:
+        """Whether no antenna with a single beam is wanted twice at a time."""
+        beams = self.problem.antennas.beams
+        return super().compatible(a, b) and not any(
+            x[0] == y[0] and beams[x[0]] == 1 and x[1] < y[2] and y[1] < x[2]
+            for x in self._held(a) for y in self._held(b))
+
+    def kept(self, chosen: object) -> bool:
+        """Whether each request has one stand-by at most, and no antenna is short of beams."""
+        some = list(chosen)  # type: ignore[call-overload]
+        for need in self.problem.requests:
+            if need.standbys is not None and sum(self._serves(k, need) for k in some) > 1:
+                return False
+        held = [hold for k in some for hold in self._held(k)]
+        for instant in sorted({hold[1] for hold in held}):
+            for dish, most in enumerate(self.problem.antennas.beams.tolist()):
+                if sum(d == dish and a <= instant < b for d, a, b in held) > most:
+                    return False
+        return super().kept(some)
+
+    def _held(self, k: int) -> list[tuple[int, int, int]]:
+        o, further = self.options, self.options.further
+        own = [(int(o.antenna[k]), int(o.start_s[k] - o.prepare_s[k]), int(o.end_s[k] + o.release_s[k]))]
+        return own + [(int(further.antenna[h]), int(further.start_s[h] - further.prepare_s[h]),
+                       int(further.end_s[h] + further.release_s[h])) for h in np.flatnonzero(further.option == k)]
+
+    def _meets(self, k: int, need: RequestNeed) -> bool:
+        if not super()._meets(k, need):
+            return False
+        if need.standbys is None:
+            return True
+        further = self.options.further
+        return any(
+            int(further.antenna[h]) in need.standbys and (need.service == "command" or further.downlink[h])
+            and (need.service == "downlink" or further.command[h]) for h in np.flatnonzero(further.option == k))
+
+    def _serves(self, k: int, need: RequestNeed) -> bool:
+        return self._served(frozenset({k}), need)
+
+
+@pytest.mark.parametrize("block", range(10))
+def test_150_cases_with_stand_bys_equal_the_best_of_all_plans(block: int) -> None:
+    held = served = 0
+    for seed in range(15 * block, 15 * block + 15):
+        problem = held_problem(seed)
+        judge = HeldJudge(problem)
+        points, value = judge.best()
+        result = find_plan(problem, Limits(gap=0.0))
+        chosen = frozenset(result.chosen)
+        assert chosen in set(judge.plans()), f"seed {seed}"
+        assert judge.points(chosen) == pytest.approx(points, abs=1e-9), f"seed {seed}"
+        assert sum(s.points for s in result.shortfalls) == pytest.approx(points, abs=1e-9), f"seed {seed}"
+        assert result.value == pytest.approx(value, rel=1e-6, abs=1e-6), f"seed {seed}"
+        held += any(o in chosen for o in problem.options.further.option.tolist())
+        served += any(need.standbys is not None and judge._served(chosen, need) for need in problem.requests)
+    assert held > 3 and served > 0
+
+
+@pytest.mark.parametrize("block", range(4))
+def test_the_search_keeps_what_stand_bys_hold(block: int) -> None:
+    limits = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0)
+    for seed in range(200 + 10 * block, 210 + 10 * block):
+        problem = held_problem(seed)
+        judge = HeldJudge(problem)
+        points, value = judge.best()
+        result = find_plan(problem, limits)
+        chosen = frozenset(result.chosen)
+        assert chosen in set(judge.plans()), f"seed {seed}"
+        assert judge.points(chosen) >= points - 1e-9
+        assert judge.points(chosen) > points + 1e-9 or judge.value(chosen) <= value + 1e-6 * max(1.0, abs(value))
+        if judge.points(chosen) <= points + 1e-9:
+            assert result.bound >= value - 1e-6 * max(1.0, abs(value)), f"seed {seed}"
+
+
+@pytest.mark.parametrize("seed", range(300, 330))
+def test_asking_for_a_stand_by_never_makes_requirements_easier(seed: int) -> None:
+    problem = held_problem(seed)
+    looser = replace(problem, requests=tuple(replace(need, standbys=None) for need in problem.requests))
+    tight, loose = (sum(s.points for s in find_plan(one, Limits(gap=0.0)).shortfalls) for one in (problem, looser))
+    assert tight >= loose - 1e-9
+
+
+def test_taking_options_takes_what_they_hold() -> None:
+    problem = held_problem(3)
+    options = problem.options
+    order = np.array([2, 0, 1])
+    taken = options.take(order)
+    for new, old in enumerate(order.tolist()):
+        mine, before = taken.further.option == new, options.further.option == old
+        assert taken.further.antenna[mine].tolist() == options.further.antenna[before].tolist()
+        assert taken.further.start_s[mine].tolist() == options.further.start_s[before].tolist()
+    assert backed(taken, None).tolist() == backed(options, None)[order].tolist()
+
+
+def test_a_published_stand_by_is_no_contact_to_keep(tmp_path: Path) -> None:
+    columns = "spacecraft,antenna,start_utc,end_utc,service,origin\n"
+    span = f"{at(900)},{at(1_800)},both"
+    file = tmp_path / "contacts.csv"
+    file.write_text(f"{columns}Teasel-1,Isvarde-A,{span},requested\nTeasel-1,Isvarde-B,{span},standby\n")
+    run, findings = make_run(), Findings()
+    found = read_published(file, dict(run.spacecraft), run.antennas, Reader(tmp_path), findings)
+    assert [item.antenna for item in found] == ["Isvarde-A"]
