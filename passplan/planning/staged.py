@@ -23,9 +23,11 @@ from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules.terms import Terms
+from passplan.planning.search.bound import lowest_ceiling
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import can_search, fleet_arrays
+from passplan.planning.search.fleetarrays import can_search, fleet_arrays, load_plan
 from passplan.planning.search.ready import compiled_in_time
+from passplan.planning.search.schedule import worth_of
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -34,7 +36,9 @@ from passplan.planning.value import account
 
 Tell = Callable[[float, float, float], None]
 # Parts of the time that is left for each objective: lost data, value, cost, changes.
-_SHARES = (0.25, 0.65, 0.6, 0.9)
+_SHARES = (0.15, 0.8, 0.6, 0.9)
+# Of the search's time for an objective, the part in which its bound is sought at gentler weights.
+_FOR_BOUND = 0.5
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -126,6 +130,8 @@ class _Staged:
             if solved.chosen is not None:
                 self._offer(solved.chosen, "exact")
             self._say(k, bound)
+        if open_still() and k > 0:
+            bound = min(bound, self._ceiling(k, time.part(_FOR_BOUND * time.left_s()), bound))
         if open_still():
             bound = min(bound, self._search(k, time, bound))
         return max(bound, self.best.reached[k])
@@ -154,13 +160,35 @@ class _Staged:
         fewer = self.best.points < points - _SAME
         return self.aims[k].ceiling if fewer else found.bound + total.base_worth - held
 
-    def _weights(self, k: int) -> list[float]:
+    def _ceiling(self, k: int, time: Clock, bound: float) -> float:
+        """A bound of one objective, from a sum in which what is held weighs about as much as the objective itself.
+
+        Where it weighs so much that it is hardly ever given up, a small gap of what is held is a wide one of the
+        objective in hand.
+        """
+        total, shares = self._sum(k, gently=True), self._weights(k, gently=True)
+        if not (can_search(total) and compiled_in_time(time)):
+            return bound
+        arrays = fleet_arrays(total, self.terms, self.maps)
+        if not len(arrays.option):
+            return bound
+        held = sum(share * reached for share, reached in zip(shares, self.best.reached[:k], strict=True))
+        less = held - total.base_worth
+        taken, size = load_plan(arrays, self.best.chosen)
+        counted = sum(worth_of(arrays, i, taken[i], size[i])[1] for i in range(len(size)))
+        found = lowest_ceiling(
+            arrays, taken, size, self.best.points - counted, self.limits.threads, time,
+            lambda _, above: self._say(k, min(bound, above - less)))
+        return min(bound, found - less)
+
+    def _weights(self, k: int, *, gently: bool = False) -> list[float]:
         """How much each objective before number ``k`` weighs beside it."""
         spans = [most_of_a_contact(aim.problem) for aim in self.aims]
-        return [math.prod(_HOLDS[e:k]) * spans[k] / spans[e] if spans[e] > 0.0 else 0.0 for e in range(k)]
+        strength = [1.0 if gently else math.prod(_HOLDS[e:k]) for e in range(k)]
+        return [strength[e] * spans[k] / spans[e] if spans[e] > 0.0 else 0.0 for e in range(k)]
 
-    def _sum(self, k: int) -> Problem:
-        shares = [*self._weights(k), 1.0]
+    def _sum(self, k: int, *, gently: bool = False) -> Problem:
+        shares = [*self._weights(k, gently=gently), 1.0]
         return staged([(aim.problem, share) for aim, share in zip(self.aims, shares, strict=False)])
 
     def _say(self, k: int, bound: float) -> None:

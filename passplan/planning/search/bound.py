@@ -12,12 +12,14 @@ The prices are the certificate: ``certificate.py`` evaluates them again by other
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
 import numpy as np
 
 from passplan.planning.certificate import PriceCertificate
+from passplan.planning.clock import Clock
 from passplan.planning.problem import Floats, Integers, ragged_ranges
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.compiled import compiled
@@ -39,6 +41,8 @@ _NEXT_STEP = 0.1
 # All prices together are at least this part of the value: where time costs nothing at all, schedules are full of
 # contacts that bring nothing down, and what is used says nothing about what is needed.
 _FLOOR = 1e-7
+# A ceiling without a search is at rest after so many groups of so many steps that lowered it by less than this part.
+_PATIENCE, _FEW, _REST = 12, 5, 1e-5
 
 
 @dataclass(frozen=True, eq=False)
@@ -202,3 +206,28 @@ class BoundSearch:
         gradient = at.use - self.limits
         gradient[(self.price <= self.floor) & (gradient < 0.0)] = 0.0
         return here, gradient
+
+
+def lowest_ceiling(
+    arrays: FleetArrays, taken: Integers, size: Integers, more_points: float, threads: int, clock: Clock,
+    tell: Callable[[float, float], None],
+) -> float:
+    """The bound alone, for a plan (``taken``, ``size``) that stays as it is, until it comes to rest or time is up.
+
+    ``more_points`` are points of the plan that the schedule program does not count. ``tell(value, bound)`` is called
+    after every few steps.
+    """
+    pairs = [worth_of(arrays, i, taken[i], size[i]) for i in range(len(size))]
+    value, points = sum(worth for worth, _ in pairs), sum(points for _, points in pairs)
+    point_worth = float((arrays.craft[:, 0] * arrays.craft[:, 2] + arrays.spill * arrays.craft[:, 2]).max(initial=1.0))
+    with ThreadPoolExecutor(max(1, threads)) as pool:
+        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None)
+        bounds = BoundSearch(
+            arrays, sweeper, points + more_points, point_worth, abs(value), abs(value) / max(1, int(size.sum())))
+        idle = 0
+        while not clock.expired() and idle < _PATIENCE:
+            before = bounds.bound
+            bounds.improve(_FEW, value)
+            tell(value, bounds.bound)
+            idle = 0 if bounds.bound < before - _REST * abs(before) or not np.isfinite(before) else idle + 1
+    return bounds.bound

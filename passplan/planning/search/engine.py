@@ -99,7 +99,8 @@ class _Rounds:
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
         effort = 1 + _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
-        sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))
+        # One sweep says how much work a sweep is: between two problems it differs a hundredfold.
+        sweeps = 1
         rounds, idle, round_s = 0, 0, 0.0
         while not clock.expired() and rounds < self.limits.search_rounds:
             began_s, before = clock.elapsed_s(), (self.value, self.bounds.bound)
@@ -110,7 +111,8 @@ class _Rounds:
             labels = int(part * max(_LEAST_LABELS, sweeps * effort))
             spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, labels)
             if spent:
-                effort = spent // sweeps
+                effort = max(1, spent // sweeps)
+                sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))
             rounds += 1
             round_s = max(clock.elapsed_s() - began_s, round_s if part < 1.0 else 0.0)
             self.value, points = self._worth()

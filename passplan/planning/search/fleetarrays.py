@@ -50,8 +50,9 @@ class FleetArrays(NamedTuple):
     ``load_at[o] : load_at[o + 1]``, rows rising; ``load_own[e]`` says whether another contact of the same plan of its
     spacecraft may add to that row too. ``limit`` is per row.
 
-    ``wants`` (n, 60) are the points of each bit, ``recur`` (n, 3) from, until and points per second of the recurrence
-    (until 0 where there is none). ``clique_lane`` and ``clique_s`` say of each clique which of the terms' lanes it is
+    ``wants`` (n, 60) are the points of each bit, ``wants_until`` the last start [s] that meets it; ``recur`` (n, 3)
+    from, until and points per second of the recurrence (until 0 where there is none). ``clique_lane`` and ``clique_s``
+    say of each clique which of the terms' lanes it is
     of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
     """
 
@@ -78,6 +79,7 @@ class FleetArrays(NamedTuple):
     load_own: Flags
     limit: Floats
     wants: Floats
+    wants_until: Integers
     recur: Floats
     horizon_s: int
     spill: float
@@ -114,7 +116,7 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         arrival[mine] = np.searchsorted(distinct, ready_s[mine])
         starts.append(distinct)
     use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
-    bits, wants, uncounted = _wanted(problem, terms, place, len(order))
+    bits, wants, wants_until, uncounted = _wanted(problem, terms, place, len(order))
     renews, recur = _recurrences(problem, terms, place, uncounted)
     for promise in terms.guarantees:
         kept = place[promise.options]
@@ -135,8 +137,8 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
-        wants=wants, recur=recur, horizon_s=problem.horizon_s, spill=problem.spill_cost_per_mb, cliques=len(clique_s),
-        clique_lane=clique_lane, clique_s=clique_s,
+        wants=wants, wants_until=wants_until, recur=recur, horizon_s=problem.horizon_s,
+        spill=problem.spill_cost_per_mb, cliques=len(clique_s), clique_lane=clique_lane, clique_s=clique_s,
         most_contacts=_longest_chain(first, node, arrival))
 
 
@@ -201,8 +203,9 @@ def _longest_hold(problem: Problem, shared: Iterable[Lane]) -> int:
     return before_s + after_s
 
 
-def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats, Flags]:
+def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats, Integers, Flags]:
     bits, points = np.zeros(count, dtype=np.int64), np.zeros((len(problem.fleet), _MOST_WANTED))
+    until = np.full(points.shape, -1, dtype=np.int64)
     uncounted = np.zeros(count, dtype=bool)
     used = np.zeros(len(problem.fleet), dtype=np.int64)
     for want in terms.wanted:
@@ -214,8 +217,9 @@ def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tupl
         elif len(rows):
             bits[rows] |= np.int64(1) << used[craft[0]]
             points[craft[0], used[craft[0]]] = want.points
+            until[craft[0], used[craft[0]]] = problem.options.start_s[want.options].max()
             used[craft[0]] += 1
-    return bits, points, uncounted
+    return bits, points, until, uncounted
 
 
 def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Flags) -> tuple[Integers, Floats]:
@@ -227,7 +231,7 @@ def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Fla
         if recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
             uncounted[place[need.options[kept]]] = True
             continue
-        renews[place[need.options[kept]]] = need.end_s[kept] + need.every_s
+        renews[place[need.options[kept]]] = np.minimum(need.end_s[kept] + need.every_s, need.until_s)
         recur[craft] = need.from_s, need.until_s, 1.0 / need.every_s
     return renews, recur
 

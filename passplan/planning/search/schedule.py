@@ -19,7 +19,7 @@ from passplan.planning.problem import Flags, Floats, Integers
 from passplan.planning.search.clash import share_clique
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import FleetArrays
-from passplan.planning.search.labels import Work, merge
+from passplan.planning.search.labels import Work, merge, missing
 
 
 @compiled
@@ -37,12 +37,14 @@ def best_schedule(
     # Out of the tuples once: every look into one costs more than the step that it is for.
     end_of, node, arrival, span, clash, spill = a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
     (aboard, worth, cover, bits, via, wait_aboard, wait_worth, wait_cover, wait_bits, record_option, record_before,
-     run_low, run_high, run_next, spent) = work
+     run_low, run_high, run_next, champion, spent) = work
     maps, use_at, use_first, use_last, renews, own_bits = a.maps, a.use_at, a.use_first, a.use_last, a.renews, a.bits
     load_at, load_row, load_amount, load_own = a.load_at, a.load_row, a.load_amount, a.load_own
     base, nodes, start_s = a.start_first[i], a.start_first[i + 1] - a.start_first[i], a.start_s
     recur_until, per_second = a.recur[i, 1], point_worth * a.recur[i, 2]
-    simple = recur_until <= 0.0 and a.wants[i].max() <= 0.0
+    wants, wants_until = a.wants[i], a.wants_until[i]
+    simple = recur_until <= 0.0 and wants.max() <= 0.0
+    used = np.zeros(len(room))
     head = np.full(nodes + 1, -1, dtype=np.int64)
     waiting = runs = side = clock = 0
     aboard[0, 0], worth[0, 0], cover[0, 0], bits[0, 0], via[0, 0] = a.craft[i, 3], 0.0, a.recur[i, 0], 0, -1
@@ -59,10 +61,12 @@ def best_schedule(
         for k in range(here):
             aboard[side, k], worth[side, k] = _idle(aboard[side, k], worth[side, k], made, capacity, spill)
         clock = now
+        past = _past(wants_until, now)
         run = head[at]
         while run >= 0:
             here = merge(clash, spill, weight, simple, now, aboard, worth, cover, bits, via, side, here, wait_aboard,
-                         wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run])
+                         wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run],
+                         min(float(now), recur_until), per_second, point_worth, wants, past, champion, spent)
             if here < 0:
                 return np.inf, -1
             side, run = 1 - side, run_next[run]
@@ -76,7 +80,7 @@ def best_schedule(
             end = _take(
                 o, price[o], now, generation * (until - span[o, 1]), capacity, weight, spill, simple, per_second,
                 recur_until, maps, use_at, use_first, use_last, clash, load_at, load_row, load_amount, load_own, room,
-                renews[o], own_bits[o], aboard, worth, cover, bits, via, side, here, wait_aboard, wait_worth,
+                used, renews[o], own_bits[o], aboard, worth, cover, bits, via, side, here, wait_aboard, wait_worth,
                 wait_cover, wait_bits, record_option, record_before, waiting)
             if end > waiting:
                 run_low[runs], run_high[runs], run_next[runs] = waiting, end, head[target]
@@ -87,7 +91,7 @@ def best_schedule(
     spent[0] += waiting + nodes
     best, chosen = -np.inf, -1
     for k in range(here):
-        ahead = worth[side, k] + a.craft[i, 4] * aboard[side, k] - point_worth * _missing(a.wants[i], bits[side, k])
+        ahead = worth[side, k] + a.craft[i, 4] * aboard[side, k] - point_worth * missing(wants, bits[side, k])
         ahead -= per_second * max(0.0, recur_until - cover[side, k])
         if ahead > best:
             best, chosen = ahead, via[side, k]
@@ -109,9 +113,9 @@ def _take(
     option: int, price: float, now: int, made: float, capacity: float, weight: float, spill: float, simple: bool,
     per_second: float, recur_until: float, maps: Floats, use_at: Integers, use_first: Integers, use_last: Integers,
     clash: Integers, load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, room: Floats,
-    renews: int, own_bits: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers, via: Integers, side: int,
-    here: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats, wait_bits: Integers,
-    record_option: Integers, record_before: Integers, waiting: int,
+    used: Floats, renews: int, own_bits: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
+    via: Integers, side: int, here: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
+    wait_bits: Integers, record_option: Integers, record_before: Integers, waiting: int,
 ) -> int:
     """The run of labels that taking an option makes of those here that can; returns where it ends.
 
@@ -127,8 +131,8 @@ def _take(
             last = record_option[record]
             if clash[last] >= now and share_clique(use_at, use_first, use_last, last, option):
                 continue
-            if len(room) > 0 and _overfills(load_at, load_row, load_amount, load_own, option, room, record_option,
-                                            record_before, record):
+            if len(room) > 0 and _overfills(load_at, load_row, load_amount, load_own, option, room, used,
+                                            record_option, record_before, record):
                 continue
         after, sent, lost = _through(maps, option, aboard[side, k])
         ahead = worth[side, k] + weight * sent - spill * lost - price
@@ -189,7 +193,7 @@ def worth_of(a: FleetArrays, i: int, taken: Integers, size: int) -> tuple[float,
             overdue += max(0.0, min(float(a.span[o, 0]), a.recur[i, 1]) - covered)
             covered = max(covered, float(a.renews[o]))
     overdue += max(0.0, a.recur[i, 1] - covered)
-    return worth, a.recur[i, 2] * overdue + _missing(a.wants[i], met)
+    return worth, a.recur[i, 2] * overdue + missing(a.wants[i], met)
 
 
 @inlined
@@ -212,33 +216,42 @@ def _idle(aboard: float, worth: float, made: float, capacity: float, spill: floa
 @inlined
 def _overfills(
     load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, option: int, room: Floats,
-    record_option: Integers, record_before: Integers, record: int,
+    used: Floats, record_option: Integers, record_before: Integers, record: int,
 ) -> bool:
-    """Whether an option and those taken before it add more to some row than there is room for."""
+    """Whether an option and those taken before it add more to some row than there is room for.
+
+    ``used`` is all zeros, and is so again afterwards.
+    """
+    shares = False
     for e in range(load_at[option], load_at[option + 1]):
-        if not load_own[e]:
-            continue
-        left = room[load_row[e]] - load_amount[e]
-        before = record
-        while before >= 0 and left >= 0.0:
-            o = record_option[before]
-            for x in range(load_at[o], load_at[o + 1]):
-                if load_row[x] == load_row[e]:
-                    left -= load_amount[x]
-            before = record_before[before]
-        if left < 0.0:
-            return True
-    return False
+        shares = shares or load_own[e]
+    if not shares:
+        return False
+    before = record
+    while before >= 0:
+        o = record_option[before]
+        for e in range(load_at[o], load_at[o + 1]):
+            used[load_row[e]] += load_amount[e]
+        before = record_before[before]
+    over = False
+    for e in range(load_at[option], load_at[option + 1]):
+        over = over or (load_own[e] and used[load_row[e]] + load_amount[e] > room[load_row[e]])
+    while record >= 0:
+        o = record_option[record]
+        for e in range(load_at[o], load_at[o + 1]):
+            used[load_row[e]] = 0.0
+        record = record_before[record]
+    return over
 
 
 @inlined
-def _missing(wants: Floats, met: int | np.int64) -> float:
-    """Points of the wanted terms whose bit is not set."""
-    points = 0.0
-    for b in range(len(wants)):
-        if wants[b] > 0.0 and not (met >> b) & 1:
-            points += wants[b]
-    return points
+def _past(wants_until: Integers, now: int) -> np.int64:
+    """The bits of wanted terms that no option from ``now`` on can meet."""
+    past = np.int64(0)
+    for b in range(len(wants_until)):
+        if 0 <= wants_until[b] < now:
+            past |= np.int64(1) << b
+    return past
 
 
 @compiled
