@@ -7,6 +7,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from typing import Any
 
 import numpy as np
+import pytest
 
 from passplan.planning.problem import (
     Antennas,
@@ -19,6 +20,11 @@ from passplan.planning.problem import (
 )
 
 STEP_S = 60
+
+
+def some_of(numbers: range, quick: int) -> list[Any]:
+    """Parameters of a test that tries many cases: the first ``quick`` always, the others in the slow runs only."""
+    return [pytest.param(n, marks=[] if k < quick else pytest.mark.slow) for k, n in enumerate(numbers)]
 
 
 def problem_of(
