@@ -18,7 +18,7 @@ from passplan.planning.rules.decisions import ForbiddenWindow
 from passplan.planning.rules.guarantees import GuaranteeNeed
 
 EXACT = Limits(gap=0.0)
-SEEDS = some_of(range(400, 415), 5)
+SEEDS = some_of(range(400, 415), 3)
 
 
 def points(problem: Problem) -> float:

@@ -13,7 +13,7 @@ from passplan.planning.problem import Antennas, Fleet, Limits, Options, Problem,
 from passplan.planning.value import account
 
 EXACT = Limits(gap=0.0)
-SEEDS = some_of(range(300, 325), 8)
+SEEDS = some_of(range(300, 325), 4)
 
 
 def optimum(problem: Problem) -> float:
