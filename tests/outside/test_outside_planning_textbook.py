@@ -16,6 +16,11 @@ from passplan.planning.problem import Antennas, Fleet, Limits, Problem, Windows,
 PATHS = pytest.mark.parametrize("exact_options", [10_000, 0], ids=["exact", "search"])
 
 
+def _limits(exact_options: int) -> Limits:
+    # The first search on a machine compiles its kernels, which takes a while where much else is running.
+    return Limits(gap=0.0, exact_options=exact_options, time_limit_s=300.0)
+
+
 def fixed_volumes(spans: list[tuple[int, int, float]], antennas: list[int], count: int) -> Problem:
     """One spacecraft for each span, with its whole volume aboard and a link that brings it all down.
 
@@ -54,7 +59,7 @@ def test_one_antenna_is_weighted_interval_scheduling(seed: int, exact_options: i
     best = [0.0]
     for j, (a, _, volume) in enumerate(by_end):
         best.append(max(best[j], volume + best[bisect_right(ends, a, 0, j)]))
-    result = find_plan(fixed_volumes(spans, [0] * len(spans), 1), Limits(gap=0.0, exact_options=exact_options))
+    result = find_plan(fixed_volumes(spans, [0] * len(spans), 1), _limits(exact_options))
     assert result.value == pytest.approx(best[-1], rel=1e-6)
     assert result.bound >= best[-1] * (1.0 - 1e-9)
 
@@ -77,6 +82,6 @@ def test_identical_antennas_are_a_minimum_cost_flow(seed: int, count: int, exact
         graph.add_edge(("job", k), b, capacity=1, weight=0)
     best = -nx.cost_of_flow(graph, nx.min_cost_flow(graph))
     antennas = list(range(count)) * len(spans)
-    result = find_plan(fixed_volumes(spans, antennas, count), Limits(gap=0.0, exact_options=exact_options))
+    result = find_plan(fixed_volumes(spans, antennas, count), _limits(exact_options))
     assert result.value == pytest.approx(best, rel=1e-6)
     assert result.bound >= best * (1.0 - 1e-9)
