@@ -14,7 +14,7 @@ from passplan.inputs.fleet import Spacecraft
 from passplan.inputs.ground import Antenna
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import Instant, Record, Service
-from passplan.inputs.tables import Placed, checked, placed_records, read_csv_records, read_toml, reject_unknown
+from passplan.inputs.tables import checked, placed_in_files, read_csv_records
 
 
 class Decision(Record):
@@ -93,17 +93,8 @@ def read_decisions(
     findings: Findings,
 ) -> tuple[Decision, ...]:
     """The decisions of TOML files with ``[[decision]]`` tables, or of CSV files, every fault noted."""
-    placed: list[Placed] = []
-    for file in files:
-        if file.suffix.lower() == ".csv":
-            placed += placed_records({"decision": file.name}, "decision", file, reader, findings)
-            continue
-        document = read_toml(file, reader, findings, "decisions")
-        if document is not None:
-            reject_unknown(document, ("decision",), file, findings)
-            placed += placed_records(document, "decision", file, reader, findings)
     found: dict[tuple[str, str], Decision] = {}
-    for file_name, where, row in placed:
+    for file_name, where, row in placed_in_files(files, "decision", "decisions", reader, findings):
         item: Decision | None = checked(Decision, row, file_name, where, findings)
         if item is None:
             continue

@@ -39,7 +39,7 @@ from passplan.inputs.policy import Policy
 from passplan.inputs.reader import Reader
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
-from passplan.inputs.tables import checked, placed_records, read_toml, reject_unknown, unique
+from passplan.inputs.tables import checked, placed_in_files, placed_records, read_toml, reject_unknown, unique
 
 _RADIO: TypeAdapter[DownlinkRadio | CommandRadio] = TypeAdapter(Radio)
 
@@ -248,16 +248,8 @@ def _read_ground(path: Path, reader: Reader, findings: Findings) -> _Ground:
 def _read_requests(
     settings: RunConfig, path: Path, fleet: _Fleet, ground: _Ground, reader: Reader, findings: Findings
 ) -> dict[str, Request]:
-    placed = []
-    for name in settings.requests:
-        file = beside(path, name)
-        if file.suffix.lower() == ".csv":
-            placed += placed_records({"request": file.name}, "request", file, reader, findings)
-            continue
-        document = read_toml(file, reader, findings, "requests")
-        if document is not None:
-            reject_unknown(document, ("request",), file, findings)
-            placed += placed_records(document, "request", file, reader, findings)
+    files = [beside(path, name) for name in settings.requests]
+    placed = placed_in_files(files, "request", "requests", reader, findings)
     requests = [(place, checked(Request, place[2], place[0], place[1], findings)) for place in placed]
     sound = [(place, request) for place, request in requests if request is not None]
     check_requests(sound, fleet.spacecraft, ground.antennas, ground.sites, findings)

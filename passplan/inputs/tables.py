@@ -6,7 +6,7 @@ import csv
 import io
 import tomllib
 from collections import Counter
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -79,6 +79,22 @@ def placed_records(
         findings.problem(file, key, None, f"write [[{key}]] tables, or {key} = \"file.csv\"")
         return []
     return [(str(file), f"{key}[{i}]", item) for i, item in enumerate(value, start=1)]
+
+
+def placed_in_files(
+    files: Iterable[Path], key: str, what: str, reader: Reader, findings: Findings
+) -> list[Placed]:
+    """Records of TOML files with ``[[key]]`` tables, or of CSV files; ``what`` names the config key that lists them."""
+    placed: list[Placed] = []
+    for file in files:
+        if file.suffix.lower() == ".csv":
+            placed += placed_records({key: file.name}, key, file, reader, findings)
+            continue
+        document = read_toml(file, reader, findings, what)
+        if document is not None:
+            reject_unknown(document, (key,), file, findings)
+            placed += placed_records(document, key, file, reader, findings)
+    return placed
 
 
 def checked(

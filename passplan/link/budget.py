@@ -8,13 +8,12 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from passplan.geometry.motion import LIGHT_KM_S
+
 Floats = NDArray[np.float64]
 
 BOLTZMANN_DBW_PER_K_HZ = 10.0 * float(np.log10(1.380649e-23))
 """10 log10 of Boltzmann's constant, exact since the SI of 2019: -228.599 dB(W/(K Hz))."""
-
-SPEED_OF_LIGHT_KM_S = 299_792.458
-"""Exact by the definition of the metre (SI)."""
 
 COSMIC_BACKGROUND_K = 2.7
 MEAN_RADIATING_K = 275.0
@@ -24,7 +23,7 @@ SUN_DISC_DEG = 0.53
 """Apparent diameter of the Sun, mean (textbook)."""
 
 # 20 log10(4 pi d f / c) with d in km and f in MHz.
-_FREE_SPACE_CONSTANT_DB = 20.0 * float(np.log10(4.0e6 * np.pi / SPEED_OF_LIGHT_KM_S))
+_FREE_SPACE_CONSTANT_DB = 20.0 * float(np.log10(4.0e6 * np.pi / LIGHT_KM_S))
 
 
 def free_space_loss_db(frequency_mhz: ArrayLike, range_km: ArrayLike) -> Floats:
@@ -125,12 +124,12 @@ def sun_noise_k(frequency_mhz: ArrayLike, separation_deg: ArrayLike, beamwidth_d
 
 def beamwidth_deg(frequency_mhz: float, diameter_m: float) -> float:
     """Half-power beamwidth [deg] of a dish: 70 wavelengths over the diameter (common practice, no source)."""
-    return 70.0 * SPEED_OF_LIGHT_KM_S / 1e3 / frequency_mhz / diameter_m
+    return 70.0 * LIGHT_KM_S / 1e3 / frequency_mhz / diameter_m
 
 
 def dish_diameter_m(frequency_mhz: float, gain_dbi: float, efficiency: float) -> float:
     """Diameter [m] of the dish of a gain [dBi] and an aperture efficiency: G = eff (pi D / lambda)^2 (textbook)."""
-    wavelength_m = SPEED_OF_LIGHT_KM_S / 1e3 / frequency_mhz
+    wavelength_m = LIGHT_KM_S / 1e3 / frequency_mhz
     return float(wavelength_m / np.pi * np.sqrt(10.0 ** (gain_dbi / 10.0) / efficiency))
 
 

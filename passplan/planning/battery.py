@@ -10,10 +10,11 @@ import numpy as np
 
 from passplan.geometry.eclipse import eclipses
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Floats
 from passplan.planning.hooks import Draft
 from passplan.planning.horizon import instants_of
 from passplan.planning.on_air import OnAir
-from passplan.planning.problem import Floats, Problem
+from passplan.planning.problem import Problem
 
 
 @dataclass(frozen=True, eq=False)

@@ -22,8 +22,9 @@ from dataclasses import dataclass
 import numpy as np
 from ortools.math_opt.python import mathopt
 
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.model import PlanModel
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Recurrence, Terms, Wanted
 from passplan.planning.value import follow_storage
 

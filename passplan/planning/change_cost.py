@@ -13,8 +13,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.horizon import seconds_of
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.problem import Problem
 
 _SAME_S = 60.0
 

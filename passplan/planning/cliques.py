@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.planning.problem import Integers
+from passplan.planning.arrays import Integers
 
 
 def clique_spans(start_s: Integers, end_s: Integers) -> tuple[Integers, Integers, int]:

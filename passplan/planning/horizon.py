@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
-from passplan.planning.problem import Floats
+from passplan.planning.arrays import Floats
 
 
 def seconds_of(run: Run, instant: datetime | np.datetime64) -> float:

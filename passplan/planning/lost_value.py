@@ -28,9 +28,9 @@ from passplan.inputs.run import Run
 from passplan.link.allowed import allowed_mbps
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.backlog import Backlog, backlogs
 from passplan.planning.horizon import column_seconds
-from passplan.planning.problem import Floats, Integers
 from passplan.planning.record import STANDBY, PlanRecord, sending
 
 IN_CONTACT, NO_WINDOW = "in_contact", "no_window"

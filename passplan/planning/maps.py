@@ -22,7 +22,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers, Problem, offsets_of, ragged_ranges
+from passplan.planning.arrays import Floats, Integers, offsets_of, ragged_ranges
+from passplan.planning.problem import Problem
 from passplan.planning.streams import Layer
 from passplan.planning.value import worth_followed
 

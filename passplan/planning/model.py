@@ -20,9 +20,10 @@ from dataclasses import dataclass
 import numpy as np
 from ortools.math_opt import model_pb2
 
+from passplan.planning.arrays import Floats, Integers, ragged_ranges
 from passplan.planning.cliques import clique_spans
 from passplan.planning.overrated import Overrated
-from passplan.planning.problem import Floats, Integers, Problem, ragged_ranges
+from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Lane, Recurrence, Rows, Terms
 from passplan.planning.streams import Layer
 

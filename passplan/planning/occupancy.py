@@ -8,7 +8,7 @@ from typing import Any, NamedTuple
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers, offsets_of
+from passplan.planning.arrays import Floats, Integers, offsets_of
 from passplan.planning.rules.terms import Terms
 
 # Amounts are sums of decimals; a limit reached to within this part of it is kept.

@@ -11,8 +11,8 @@ import numpy as np
 from passplan.inputs.fleet import DownlinkRadio
 from passplan.inputs.run import Run
 from passplan.link.choice import DownlinkChoice
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.hooks import Draft
-from passplan.planning.problem import Floats, Integers
 
 
 @dataclass(frozen=True, eq=False)

@@ -17,8 +17,9 @@ from passplan.planning.cuts import Cuts, neighbour_cuts, spread
 from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Standby, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.on_air import on_air_span
+from passplan.planning.option_table import Options, build_options
 from passplan.planning.price import price_of
-from passplan.planning.problem import Antennas, Fleet, Options, Windows, build_options
+from passplan.planning.problem import Antennas, Fleet, Windows
 from passplan.planning.setup import SetupTimes
 from passplan.planning.spans import without
 from passplan.planning.standby import standby_candidates

@@ -18,8 +18,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.arrays import Integers
 from passplan.planning.maps import StorageMaps, worth_by_layers
-from passplan.planning.problem import Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.value import worth_followed
 
 # Nearer than this part of the figures the layers and the account agree.

@@ -12,7 +12,8 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from passplan.planning.problem import Flags, Integers, Problem, offsets_of
+from passplan.planning.arrays import Flags, Integers, offsets_of
+from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Lane, Recurrence, Removal, Rows, Terms, Wanted
 
 # Parts smaller than this are planned together: a solver takes them apart again, and starting it costs time.

@@ -21,13 +21,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, field, fields
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
-from numpy.typing import NDArray
 
-Floats = NDArray[np.float64]
+from passplan.planning.arrays import Floats, freeze
+
 # Ages that differ by less are one.
 _ONE_AGE_S = 1e-6
 
@@ -61,7 +61,7 @@ class Stream:
     fresh_share: Floats = field(default_factory=lambda: np.ones(1))
 
     def __post_init__(self) -> None:
-        _freeze(self)
+        freeze(self)
 
     @property
     def fades(self) -> bool:
@@ -121,7 +121,7 @@ class Layer:
     room_mb: Floats
 
     def __post_init__(self) -> None:
-        _freeze(self)
+        freeze(self)
 
     def made(self, time_s: Floats | float) -> Floats:
         """MB generated up to any times within the horizon."""
@@ -184,12 +184,3 @@ def _with_crossings(time_s: Floats, inside: Sequence[Stream], capacity_mb: float
     at = np.flatnonzero(above[:-1] * above[1:] < 0.0)
     crossing = time_s[at] + (time_s[at + 1] - time_s[at]) * above[at] / (above[at] - above[at + 1])
     return np.unique(np.concatenate([time_s, crossing]))
-
-
-def _freeze(record: Stream | Layer) -> None:
-    for one in fields(record):
-        value = getattr(record, one.name)
-        if isinstance(value, np.ndarray):
-            array = np.array(value, dtype=np.float64)
-            array.flags.writeable = False
-            object.__setattr__(record, one.name, array)

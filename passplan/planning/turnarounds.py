@@ -8,7 +8,9 @@ import pandas as pd
 from passplan.geometry.slew import Stance, turnaround_s
 from passplan.geometry.stances import stances
 from passplan.inputs.run import Run
-from passplan.planning.problem import Antennas, Integers, Options
+from passplan.planning.arrays import Integers
+from passplan.planning.option_table import Options
+from passplan.planning.problem import Antennas
 
 
 def too_tight(run: Run, windows: pd.DataFrame, antennas: Antennas, options: Options) -> Integers:

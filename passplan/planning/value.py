@@ -20,8 +20,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.classes import Aboard, follow
-from passplan.planning.problem import Floats, Integers, Options, Problem
+from passplan.planning.option_table import Options
+from passplan.planning.problem import Problem
 from passplan.planning.streams import Keeping, Stream
 
 

@@ -11,6 +11,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from passplan.geometry.motion import LIGHT_KM_S
 from passplan.geometry.pointing import LookAngles, look_angles
 from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
@@ -19,7 +20,6 @@ from passplan.report.cautions import CAUTIONS
 from passplan.report.csv_files import harmless
 from passplan.report.names import file_stems
 
-SPEED_OF_LIGHT_KM_S = 299_792.458
 _DECIMALS = {"azimuth_deg": 4, "elevation_deg": 4, "range_km": 4, "range_rate_km_s": 7}
 _DECIMALS_HZ = 1
 REFRACTED = "included: elevations are apparent, as radio waves are bent (ITU-R P.834, mean atmosphere)"
@@ -85,7 +85,7 @@ def read_pointing_table(path: Path) -> tuple[dict[str, str], pd.DataFrame]:
 
 def _carriers(row: Mapping[Any, Any], run: Run, look: LookAngles) -> dict[str, tuple[NDArray[Any], NDArray[Any]]]:
     found = {}
-    beta = look.range_rate_km_s / SPEED_OF_LIGHT_KM_S
+    beta = look.range_rate_km_s / LIGHT_KM_S
     for chain in chains_between(run, row["spacecraft"], row["antenna"]):
         hertz = chain.frequency_mhz * 1e6
         shift_hz = -beta * hertz

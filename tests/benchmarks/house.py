@@ -11,20 +11,12 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from passplan.planning.arrays import Flags, Integers
 from passplan.planning.battery import PowerNeed
 from passplan.planning.change_cost import ChangeNeed
 from passplan.planning.days import Day
 from passplan.planning.on_air import OnAir
-from passplan.planning.problem import (
-    Antennas,
-    CommandNeed,
-    Conflict,
-    Crowd,
-    Flags,
-    Integers,
-    Problem,
-    RequestNeed,
-)
+from passplan.planning.problem import Antennas, CommandNeed, Conflict, Crowd, Problem, RequestNeed
 from passplan.planning.rules.backhaul import BackhaulNeed
 from passplan.planning.rules.budget import BudgetNeed
 from passplan.planning.rules.contact_counts import CountNeed

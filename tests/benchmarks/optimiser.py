@@ -18,18 +18,11 @@ from pathlib import Path
 import numpy as np
 from ortools.sat.python import cp_model
 
+from passplan.planning.arrays import offsets_of, ragged_ranges
 from passplan.planning.clock import Clock
+from passplan.planning.option_table import Options
 from passplan.planning.portfolio import find_plan
-from passplan.planning.problem import (
-    Antennas,
-    Fleet,
-    Limits,
-    Options,
-    Problem,
-    Windows,
-    offsets_of,
-    ragged_ranges,
-)
+from passplan.planning.problem import Antennas, Fleet, Limits, Problem, Windows
 from passplan.planning.value import account
 
 # Building the straightforward model takes about 30 microseconds for each option and interval, and memory.

@@ -10,8 +10,9 @@ import networkx as nx
 import numpy as np
 import pytest
 
+from passplan.planning.option_table import build_options
 from passplan.planning.portfolio import find_plan
-from passplan.planning.problem import Antennas, Fleet, Limits, Problem, Windows, build_options
+from passplan.planning.problem import Antennas, Fleet, Limits, Problem, Windows
 
 PATHS = pytest.mark.parametrize("exact_options", [10_000, 0], ids=["exact", "search"])
 

@@ -9,15 +9,8 @@ from typing import Any
 import numpy as np
 import pytest
 
-from passplan.planning.problem import (
-    Antennas,
-    CommandNeed,
-    Fleet,
-    Problem,
-    RequestNeed,
-    Windows,
-    build_options,
-)
+from passplan.planning.option_table import build_options
+from passplan.planning.problem import Antennas, CommandNeed, Fleet, Problem, RequestNeed, Windows
 
 STEP_S = 60
 

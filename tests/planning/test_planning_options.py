@@ -9,9 +9,9 @@ from planning_runs import BOTH, DOWN, UP, SteadyDownlink, closure, make_run, mak
 
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
+from passplan.planning.option_table import Options
 from passplan.planning.options import OptionSet
 from passplan.planning.plan import build_problem
-from passplan.planning.problem import Options
 
 ONE = [("Teasel-1", "Isvarde-A", 600.25, 1_199.75)]
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import pytest
 
 from passplan.planning.clock import Clock
-from passplan.planning.problem import build_options
+from passplan.planning.option_table import build_options
 from passplan.planning.result import relative_gap, status_of
 
 

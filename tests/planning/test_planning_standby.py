@@ -17,9 +17,10 @@ from passplan.inputs.decisions import Decision, read_published
 from passplan.inputs.errors import Findings
 from passplan.inputs.reader import Reader
 from passplan.link.choice import WindowLink
+from passplan.planning.option_table import Holds
 from passplan.planning.plan import Plan, make_plan
 from passplan.planning.portfolio import find_plan
-from passplan.planning.problem import Antennas, Holds, Limits, Problem, RequestNeed
+from passplan.planning.problem import Antennas, Limits, Problem, RequestNeed
 from passplan.planning.rules.rows import at_the_same_time
 from passplan.planning.rules.standby import backed
 

@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from passplan.geometry.motion import LIGHT_KM_S
 from passplan.geometry.pointing import look_angles
 from passplan.geometry.refraction import apparent_deg
 from passplan.inputs.run import Run
@@ -16,7 +17,6 @@ from passplan.planning.record import PlanRecord
 from passplan.report.cautions import CAUTIONS
 from passplan.report.expiry import RECORD, ExpiredError, latest_use, settle_expiry
 from passplan.report.pointing_tables import (
-    SPEED_OF_LIGHT_KM_S,
     Issue,
     pointing_table,
     read_pointing_table,
@@ -69,13 +69,13 @@ def test_range_rate_and_doppler_agree_with_differences_of_range(written: list[Pa
         down = not name.endswith("command")
         carrier = station - shift if down else station + shift
         assert np.ptp(carrier) <= 0.21
-        assert np.abs(shift + carrier * table["range_rate_km_s"] / SPEED_OF_LIGHT_KM_S).max() < 0.2
+        assert np.abs(shift + carrier * table["range_rate_km_s"] / LIGHT_KM_S).max() < 0.2
 
 
 def test_a_command_arrives_at_its_carrier(short_plan: PlanRecord, short_run: Run) -> None:
     row = short_plan.contacts[short_plan.contacts["service"] == "both"].iloc[0]
     table = pointing_table(row, short_run, 10.0)
-    arriving = table["station_s-command_hz"] * (1.0 - table["range_rate_km_s"] / SPEED_OF_LIGHT_KM_S)
+    arriving = table["station_s-command_hz"] * (1.0 - table["range_rate_km_s"] / LIGHT_KM_S)
     assert np.ptp(arriving) < 2.0
 
 

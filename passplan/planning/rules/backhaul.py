@@ -14,10 +14,12 @@ import numpy as np
 
 from passplan.inputs.run import Run
 from passplan.inputs.site_rules import Backhaul
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.days import Day, days_of
 from passplan.planning.hooks import Block, Draft
 from passplan.planning.horizon import seconds_of
-from passplan.planning.problem import Floats, Integers, Options, Problem
+from passplan.planning.option_table import Options
+from passplan.planning.problem import Problem
 from passplan.planning.rules.rows import Row, at_the_same_time, rows_of
 from passplan.planning.rules.terms import Terms
 

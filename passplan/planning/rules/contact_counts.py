@@ -7,9 +7,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.arrays import Integers
 from passplan.planning.hooks import Draft
 from passplan.planning.orbits import day_edges_s, orbit_edges_s
-from passplan.planning.problem import Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.rows import Row, rows_of
 from passplan.planning.rules.terms import Terms
 

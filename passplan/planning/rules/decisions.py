@@ -16,9 +16,10 @@ import numpy as np
 from passplan.inputs.decisions import Decision, Published
 from passplan.inputs.records import datetime64
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Flags, Integers
 from passplan.planning.hooks import DRIFT_S, Block, Draft, Standby, Wish
 from passplan.planning.horizon import seconds_of
-from passplan.planning.problem import Flags, Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.standby import NO_STANDBY, backed, one_standby
 from passplan.planning.rules.terms import Removal, Terms, Wanted, WantedKind
 

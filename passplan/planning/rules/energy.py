@@ -19,9 +19,10 @@ from __future__ import annotations
 
 import numpy as np
 
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.battery import PowerNeed
 from passplan.planning.on_air import OnAir
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.spans import within_spans
 from passplan.planning.rules.terms import Rows, Terms
 

@@ -13,8 +13,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Floats
 from passplan.planning.hooks import Draft
-from passplan.planning.problem import Floats, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import AtLeast, Terms
 
 _DAY_S = 86_400

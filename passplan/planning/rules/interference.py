@@ -6,7 +6,8 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from passplan.planning.problem import Conflict, Crowd, Flags, Problem
+from passplan.planning.arrays import Flags
+from passplan.planning.problem import Conflict, Crowd, Problem
 from passplan.planning.rules.rows import Row, rows_of
 from passplan.planning.rules.terms import Lane, Terms
 

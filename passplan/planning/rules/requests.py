@@ -10,9 +10,11 @@ import numpy as np
 
 from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Flags
 from passplan.planning.hooks import Standby, Wish
 from passplan.planning.horizon import seconds_of
-from passplan.planning.problem import Flags, Options, Problem, RequestNeed, Service
+from passplan.planning.option_table import Options
+from passplan.planning.problem import Problem, RequestNeed, Service
 from passplan.planning.rules.standby import NO_STANDBY, backed, one_standby
 from passplan.planning.rules.terms import Terms, Wanted
 

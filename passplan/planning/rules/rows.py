@@ -6,8 +6,8 @@ from collections.abc import Iterable, Sequence
 
 import numpy as np
 
+from passplan.planning.arrays import Floats, Integers, offsets_of, ragged_ranges
 from passplan.planning.cliques import clique_spans
-from passplan.planning.problem import Floats, Integers, offsets_of, ragged_ranges
 from passplan.planning.rules.terms import Rows
 
 Row = tuple[str, Sequence[int] | Integers, Sequence[float] | Floats, float]

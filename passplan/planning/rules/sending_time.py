@@ -9,10 +9,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.hooks import Cap, Draft
 from passplan.planning.on_air import OnAir
 from passplan.planning.orbits import orbit_edges_s
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.spans import within_spans
 from passplan.planning.rules.terms import Rows, Terms
 

@@ -7,8 +7,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.arrays import Integers
 from passplan.planning.hooks import Draft
-from passplan.planning.problem import Integers, Problem
+from passplan.planning.problem import Problem
 from passplan.planning.rules.rows import at_the_same_time
 from passplan.planning.rules.terms import Terms
 from passplan.planning.setup import means

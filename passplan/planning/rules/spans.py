@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers, offsets_of
+from passplan.planning.arrays import Floats, Integers, offsets_of
 from passplan.planning.rules.terms import Rows
 
 # Rows that are worked out at once; bounds the memory.

@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.planning.problem import Flags, Integers, Options, Service
+from passplan.planning.arrays import Flags, Integers
+from passplan.planning.option_table import Options
+from passplan.planning.problem import Service
 from passplan.planning.rules.rows import rows_of
 from passplan.planning.rules.terms import Rows
 

@@ -25,7 +25,8 @@ from typing import Literal, Protocol
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers, Problem
+from passplan.planning.arrays import Floats, Integers
+from passplan.planning.problem import Problem
 
 WantedKind = Literal["request", "pin", "frozen", "loaded", "emergency"]
 

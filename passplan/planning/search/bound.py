@@ -18,9 +18,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from passplan.planning.arrays import Floats, Integers, ragged_ranges
 from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
-from passplan.planning.problem import Floats, Integers, ragged_ranges
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.fleetarrays import FleetArrays

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.planning.problem import Integers
+from passplan.planning.arrays import Integers
 from passplan.planning.search.compiled import compiled, inlined
 
 

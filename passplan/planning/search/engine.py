@@ -17,9 +17,10 @@ from functools import partial
 
 import numpy as np
 
+from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
-from passplan.planning.problem import Flags, Floats, Integers, Limits
+from passplan.planning.problem import Limits
 from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import BoundSearch, Sweeper, certificate_of, option_prices

@@ -8,8 +8,8 @@ from __future__ import annotations
 
 import numpy as np
 
+from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.clock import Clock
-from passplan.planning.problem import Flags, Floats, Integers
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.rebuild import hold, is_free, load

@@ -20,9 +20,10 @@ from typing import NamedTuple
 
 import numpy as np
 
+from passplan.planning.arrays import Flags, Floats, Integers, offsets_of
 from passplan.planning.cliques import clique_spans
 from passplan.planning.maps import StorageMaps
-from passplan.planning.problem import Flags, Floats, Integers, Problem, offsets_of
+from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Lane, Terms
 from passplan.planning.search.clash import find_clashes
 

@@ -21,7 +21,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from passplan.planning.problem import Floats, Integers
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.search.compiled import inlined
 
 _MOST_LABELS = 400_000

@@ -8,7 +8,8 @@ import numpy as np
 
 from passplan.planning.clock import Clock
 from passplan.planning.maps import storage_maps
-from passplan.planning.problem import Antennas, Fleet, Problem, Windows, build_options
+from passplan.planning.option_table import build_options
+from passplan.planning.problem import Antennas, Fleet, Problem, Windows
 from passplan.planning.rules.terms import Lane, Terms
 from passplan.planning.search.bound import Sweeper
 from passplan.planning.search.fill import fill_up

@@ -16,7 +16,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from passplan.planning.problem import Flags, Floats, Integers
+from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
 from passplan.planning.search.labels import Work

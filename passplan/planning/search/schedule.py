@@ -15,7 +15,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from passplan.planning.problem import Flags, Floats, Integers
+from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.search.clash import share_clique
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import FleetArrays
