@@ -20,7 +20,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from passplan.planning.streams import Floats, Keeping, Stream
+from passplan.planning.arrays import Floats
+from passplan.planning.streams import Keeping, Stream
 
 # MB: less than a byte is nothing. Seconds: nearer to the deadline than this is at it.
 _NOTHING_MB = 1e-9

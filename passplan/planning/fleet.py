@@ -7,8 +7,9 @@ import numpy as np
 from passplan.geometry.revolutions import revolution_edges_s
 from passplan.inputs.data import DataClass
 from passplan.inputs.run import Run
+from passplan.planning.arrays import Floats
 from passplan.planning.problem import Fleet
-from passplan.planning.streams import Floats, Keeping, Stream
+from passplan.planning.streams import Keeping, Stream
 
 
 def fleet_of(run: Run) -> Fleet:
