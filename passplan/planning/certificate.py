@@ -3,13 +3,14 @@
 A bound of the search rests on prices. At each priced instant a lane is held by one contact at most, each row is used
 up to its limit at most, and a plan misses so many points at most; so no plan is worth more than
 
-    sum over spacecraft of the best (worth - prices of its contacts - price of a point x its points)
-    + all prices of instants + prices of rows x their limits + price of a point x points
+    sum over spacecraft of the best (worth - prices and rewards of its contacts - price of a point x its points)
+    + all prices of instants + prices of rows x their limits + price of a point x points - all rewards
 
-whatever the prices are, as long as none is negative (Lagrangian duality). :func:`bound_of` finds the best of each
+whatever the prices are, as long as none is negative (Lagrangian duality). What is not a matter of one spacecraft (a
+guarantee, a request that several could meet) is rewarded in full where it is met, and in proportion where it is met in
+part; a reward is not more than the points that missing it costs. :func:`bound_of` finds the best of each
 spacecraft once more, contact by contact with the storage followed event by event as ``value.py`` does, in plain
-Python: slow, and short enough to be read. Where a plan has to count what is not a matter of one spacecraft (a request
-that several could meet, a guarantee), it is not counted here, which can only raise the bound.
+Python: slow, and short enough to be read.
 
 A bound of the exact model rests on the model; :func:`bound_of` has another solver solve it.
 """
@@ -17,7 +18,7 @@ A bound of the exact model rests on the model; :func:`bound_of` has another solv
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from ortools.math_opt.python import mathopt
@@ -34,7 +35,8 @@ class PriceCertificate:
     """Prices of lanes at instants, (k,) each: the lane's index in the terms, the instant [s], the price.
 
     ``rows``, ``row`` and ``row_price`` (r,) are the index of the ``Rows`` in the terms, the row in it, and the price of
-    one unit of its amounts. ``point_price`` is per point of shortfall, ``points`` what plans have at most.
+    one unit of its amounts. ``point_price`` is per point of shortfall, ``points`` what plans have at most. ``reward``
+    (g + w,) is for meeting each guarantee and each wanted contact, 0 for those counted with their spacecraft.
     """
 
     lane: Integers
@@ -45,6 +47,7 @@ class PriceCertificate:
     row_price: Floats
     point_price: float
     points: float
+    reward: Floats
 
 
 @dataclass(frozen=True, eq=False)
@@ -63,14 +66,20 @@ def bound_of(problem: Problem, terms: Terms, certificate: Certificate) -> float:
     """What a certificate proves: no plan of ``problem`` under ``terms`` with as few shortfalls is worth more."""
     if isinstance(certificate, ModelCertificate):
         return _solved_again(certificate) + problem.base_worth
-    if min((x.min(initial=0.0) for x in (certificate.price, certificate.row_price)), default=0.0) < 0.0:
+    if min(x.min(initial=0.0) for x in (certificate.price, certificate.row_price, certificate.reward)) < 0.0:
         raise ValueError("a certificate with negative prices proves nothing")
     price = _option_prices(problem, terms, certificate)
     limits = sum(float(terms.rows[k].limit[r]) * p for k, r, p in zip(
         certificate.rows.tolist(), certificate.row.tolist(), certificate.row_price.tolist(), strict=True))
     crafts = range(len(problem.fleet))
-    best = math.fsum(_best_of(problem, terms, craft, price, certificate.point_price) for craft in crafts)
-    paid = float(certificate.price.sum()) + limits + certificate.point_price * certificate.points
+    # What is rewarded is not counted with its spacecraft too.
+    rewarded = certificate.reward[len(terms.guarantees):] > 0.0
+    alone = replace(terms, wanted=tuple(w for w, is_due in zip(terms.wanted, rewarded, strict=True) if not is_due))
+    best = math.fsum(_best_of(problem, alone, craft, price, certificate.point_price) for craft in crafts)
+    points = np.array([*(g.points for g in terms.guarantees), *(w.points for w in terms.wanted)], dtype=float)
+    # Missing a due that is rewarded beyond its points would pay.
+    owed = np.maximum(0.0, certificate.reward - certificate.point_price * points) - certificate.reward
+    paid = float(certificate.price.sum()) + limits + certificate.point_price * certificate.points + float(owed.sum())
     return float(best + paid + problem.base_worth)
 
 
@@ -94,6 +103,11 @@ def _option_prices(problem: Problem, terms: Terms, certificate: PriceCertificate
         of_row = np.zeros(len(rows))
         of_row[certificate.row[certificate.rows == k]] = certificate.row_price[certificate.rows == k]
         np.add.at(price, rows.options, rows.amounts * np.repeat(of_row, np.diff(rows.offset)))
+    reward = certificate.reward.tolist()
+    for promise, paid in zip(terms.guarantees, reward, strict=False):
+        price[promise.options] -= paid * promise.amounts / promise.need
+    for want, paid in zip(terms.wanted, reward[len(terms.guarantees):], strict=True):
+        price[want.options] -= paid
     return price
 
 
@@ -115,7 +129,8 @@ def _best_of(problem: Problem, terms: Terms, craft: int, price: Floats, point_pr
     mine = [o for o in np.flatnonzero(options.spacecraft == craft).tolist() if o not in removed]
     mine.sort(key=lambda o: int(options.start_s[o]))
     after, apart = _order(terms, craft, mine, problem)
-    wants = [w for w in terms.wanted if len(w.options) and np.all(options.spacecraft[w.options] == craft)]
+    wants = [w for w in terms.wanted if not removed.issuperset(w.options.tolist())
+             and np.all(options.spacecraft[w.options] == craft)]
     need = next((r for r in terms.recurrences if r.name == fleet.names[craft]), None)
     weight, spill = float(fleet.weight[craft]), problem.spill_cost_per_mb
     capacity, generation = float(fleet.capacity_mb[craft]), float(fleet.generation_mb_per_s[craft])

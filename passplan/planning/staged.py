@@ -1,10 +1,10 @@
 """Objectives taken in order: each is planned for among the plans that are as good in all earlier ones.
 
 Small problems are solved exactly, with a row that holds each earlier objective at what was reached. The search
-takes a weighted sum instead, in which what is held weighs so much that giving it up hardly pays. Its
+takes a weighted sum instead, whose weights follow what it takes to hold the earlier ones. Its
 bound holds for any weights: a plan that reaches all that is held earns at least the weighted sum of that, so what is
-left of the bound of the sum is a bound of the objective in hand (Lagrangian relaxation of the holds). Where
-weights are too small or too large the bound is loose, never wrong.
+left of the bound of the sum is a bound of the objective in hand (Lagrangian relaxation of the holds). The bound
+finds weights of its own, as it finds prices, and every objective begins with what the one before it has found.
 
 A bound is over plans that are as good in all earlier objectives as the plan found, which itself may be
 short of the best by the gap stated there.
@@ -16,6 +16,7 @@ import math
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 
+from passplan.planning.arrays import Floats
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
 from passplan.planning.maps import storage_maps
@@ -23,11 +24,11 @@ from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules.terms import Terms
-from passplan.planning.search.bound import lowest_ceiling
+from passplan.planning.search.bound import Hold
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import can_search, fleet_arrays, load_plan
+from passplan.planning.search.fleetarrays import FleetArrays, can_search, fleet_arrays
+from passplan.planning.search.forced import ruled_out
 from passplan.planning.search.ready import compiled_in_time
-from passplan.planning.search.schedule import worth_of
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -36,9 +37,7 @@ from passplan.planning.value import account
 
 Tell = Callable[[float, float, float], None]
 # Parts of the time that is left for each objective: lost data, value, cost, changes.
-_SHARES = (0.15, 0.8, 0.6, 0.9)
-# Of the search's time for an objective, the part in which its bound is sought at gentler weights.
-_FOR_BOUND = 0.5
+_SHARES = (0.2, 0.85, 0.6, 0.9)
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -81,6 +80,9 @@ class _Staged:
         self.problem, self.terms, self.limits, self.clock, self.tell = problem, terms, limits, clock, tell
         self.aims = objectives(problem)
         self.maps = storage_maps(problem)
+        self.arrays: dict[int, FleetArrays] = {}
+        # The objective that the search has last looked at, its prices, and those of what was held.
+        self.prices: tuple[int, Floats, tuple[float, ...]] | None = None
         self.best = _Plan(self.aims, terms, (), "greedy")
 
     def run(self) -> PlanResult:
@@ -88,6 +90,7 @@ class _Staged:
         with self.clock.stage("greedy"):
             self._offer(plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps), "greedy")
         floor = self._requirements(all_in_one)
+        self._rule_out()
         bounds = []
         for k, aim in enumerate(self.aims):
             with self.clock.stage(aim.name.replace(" ", "_")):
@@ -112,6 +115,14 @@ class _Staged:
         self._offer(filled, "greedy")
         return max(floor, served.bound)
 
+    def _rule_out(self) -> None:
+        """Leave out the options that no plan with as few points has, where the search is to look through them."""
+        count = len(self.problem.options)
+        if count > self.limits.exact_options and can_search(self.problem) and compiled_in_time(self.clock):
+            removal = ruled_out(self._arrays(0), self.best.points)
+            self.terms += Terms(removals=(removal,))
+            self.arrays.clear()
+
     def _aim(self, k: int) -> float:
         """Plan for one objective and return its bound, the earlier ones held at what the plan has reached."""
         aim, bound = self.aims[k], self.aims[k].ceiling
@@ -130,66 +141,54 @@ class _Staged:
             if solved.chosen is not None:
                 self._offer(solved.chosen, "exact")
             self._say(k, bound)
-        if open_still() and k > 0:
-            bound = min(bound, self._ceiling(k, time.part(_FOR_BOUND * time.left_s()), bound))
         if open_still():
             bound = min(bound, self._search(k, time, bound))
         return max(bound, self.best.reached[k])
 
     def _search(self, k: int, time: Clock, bound: float) -> float:
-        """Improve one objective by the search, over the weighted sum; returns the bound that this proves."""
-        total = self._sum(k)
-        shares = self._weights(k)
-        held = sum(share * reached for share, reached in zip(shares, self.best.reached[:k], strict=True))
-        # The search stops by a gap of the whole sum, of which the objective in hand may be but a small part.
-        whole = abs(held + self.best.reached[k] - total.base_worth)
-        gap = self.limits.gap * abs(self.best.reached[k]) / whole if whole > 0.0 else 0.0
-        limits = replace(self.limits, gap=min(gap, self.limits.gap))
-
-        def tell(_: float, above: float) -> None:
-            self._say(k, min(bound, above + total.base_worth - held))
-
-        if not (can_search(total) and compiled_in_time(time)):
+        """Improve one objective by the search and return the bound that this proves."""
+        if not (can_search(self.problem) and compiled_in_time(time)):
             return bound
-        arrays, points = fleet_arrays(total, self.terms, self.maps), self.best.points
+        arrays = self._arrays(k)
         if not len(arrays.option):
             return bound
-        found = search_plan(arrays, self.terms, limits, time, self.best.chosen, points, tell)
+        base = self.aims[k].problem.base_worth
+        holds = [Hold(self._arrays(e), self.best.reached[e] - self.aims[e].problem.base_worth) for e in range(k)]
+        # The search stops by a gap of what it counts, which is without the base.
+        reached = self.best.reached[k]
+        gap = self.limits.gap * abs(reached) / abs(reached - base) if reached != base else 0.0
+        guess, price = self._guess(k)
+        found = search_plan(
+            arrays, self.terms, replace(self.limits, gap=min(gap, self.limits.gap)), time, self.best.chosen,
+            self.best.points, lambda _, above: self._say(k, min(bound, above + base)),
+            holds=list(zip(holds, guess, strict=True)), price=price)
         self._offer(found.chosen, "search")
-        # The bound is over plans with as few points as the search's own.
-        fewer = self.best.points < points - _SAME
-        return self.aims[k].ceiling if fewer else found.bound + total.base_worth - held
+        self.prices = k, found.price, found.hold_price
+        return found.bound + base
 
-    def _ceiling(self, k: int, time: Clock, bound: float) -> float:
-        """A bound of one objective, from a sum in which what is held weighs about as much as the objective itself.
+    def _arrays(self, k: int) -> FleetArrays:
+        """The search's view of one objective."""
+        if k not in self.arrays:
+            self.arrays[k] = fleet_arrays(self.aims[k].problem, self.terms, self.maps)
+        return self.arrays[k]
 
-        Where it weighs so much that it is hardly ever given up, a small gap of what is held is a wide one of the
-        objective in hand.
-        """
-        total, shares = self._sum(k, gently=True), self._weights(k, gently=True)
-        if not (can_search(total) and compiled_in_time(time)):
-            return bound
-        arrays = fleet_arrays(total, self.terms, self.maps)
-        if not len(arrays.option):
-            return bound
-        held = sum(share * reached for share, reached in zip(shares, self.best.reached[:k], strict=True))
-        less = held - total.base_worth
-        taken, size = load_plan(arrays, self.best.chosen)
-        counted = sum(worth_of(arrays, i, taken[i], size[i])[1] for i in range(len(size)))
-        found = lowest_ceiling(
-            arrays, taken, size, self.best.points - counted, self.limits.threads, time,
-            lambda _, above: self._say(k, min(bound, above - less)))
-        return min(bound, found - less)
-
-    def _weights(self, k: int, *, gently: bool = False) -> list[float]:
-        """How much each objective before number ``k`` weighs beside it."""
+    def _guess(self, k: int) -> tuple[list[float], Floats | None]:
+        """What each objective before number ``k`` may be worth beside it, and prices to begin with."""
         spans = [most_of_a_contact(aim.problem) for aim in self.aims]
-        strength = [1.0 if gently else math.prod(_HOLDS[e:k]) for e in range(k)]
-        return [strength[e] * spans[k] / spans[e] if spans[e] > 0.0 else 0.0 for e in range(k)]
+        guess = [spans[k] / span if span > 0.0 else 0.0 for span in spans[:k]]
+        if self.prices is None:
+            return guess, None
+        last, price, held = self.prices
+        share = guess[last]
+        return [*(share * one for one in held), *guess[last:]], share * price
 
-    def _sum(self, k: int, *, gently: bool = False) -> Problem:
-        shares = [*self._weights(k, gently=gently), 1.0]
-        return staged([(aim.problem, share) for aim, share in zip(self.aims, shares, strict=False)])
+    def _weights(self, k: int) -> list[float]:
+        """How much each objective before number ``k`` weighs beside it in a sum that hardly gives up any of them."""
+        spans = [most_of_a_contact(aim.problem) for aim in self.aims]
+        return [math.prod(_HOLDS[e:k]) * spans[k] / spans[e] if spans[e] > 0.0 else 0.0 for e in range(k)]
+
+    def _sum(self, k: int) -> Problem:
+        return staged([(aim.problem, share) for aim, share in zip(self.aims, [*self._weights(k), 1.0], strict=False)])
 
     def _say(self, k: int, bound: float) -> None:
         reached = self.best.reached[k]

@@ -5,11 +5,14 @@ the bound has come to rest and the plan has not, all threads rebuild, each a par
 the others knew when the round began, and work is counted in labels, not in seconds, so that the outcome does not
 depend on which is faster: a search that ends by its gap or its rounds gives the same plan every time. One that ends
 by the clock stops after as many rounds as the machine managed.
+
+Other objectives may be held at what was reached in them. The plan is then rebuilt for a sum in which each of them has
+a share. It grows while the plan falls short of what is held, and shrinks towards the price that the bound has found
+for it otherwise; the plan that is handed back is the best of those that held all.
 """
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
@@ -23,11 +26,20 @@ from passplan.planning.clock import Clock
 from passplan.planning.problem import Limits
 from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
-from passplan.planning.search.bound import BoundSearch, Sweeper, certificate_of, option_prices
-from passplan.planning.search.fleetarrays import FleetArrays, load_plan, unload_plan
+from passplan.planning.search.bound import (
+    BoundSearch,
+    Hold,
+    Sweeper,
+    certificate_of,
+    option_prices,
+    total_points,
+    total_worth,
+    units,
+)
+from passplan.planning.search.dues import points_missed
+from passplan.planning.search.fleetarrays import FleetArrays, blended, load_plan, unload_plan
 from passplan.planning.search.labels import make_work
 from passplan.planning.search.rebuild import Ground, rebuild
-from passplan.planning.search.schedule import worth_of
 
 # A round is about this many labels: some tenths of a second.
 _ROUND_LABELS = 4_000_000
@@ -36,7 +48,8 @@ _MOST_SWEEPS = 20
 _LEAST_LABELS = 200_000
 # Before the first sweep nobody knows how many labels there are to an option.
 _LABELS_PER_OPTION = 15
-_MOST_OUT = 10
+# Spacecraft taken out at a time; with rows fewer, as what is put back then fits in fewer ways.
+_MOST_OUT, _MOST_OUT_WITH_ROWS = 10, 6
 # Loss accepted at first, as a part of what a contact is worth on average, round by round.
 _WARMTH = (0.0, 0.02, 0.1, 0.5)
 _PATIENCE_ROUNDS = 80
@@ -45,6 +58,13 @@ _LEAST_PART = 20
 # So many rounds with bound first; then the bound moves at least every so many.
 _ROUNDS_WITH_BOUND, _BOUND_EVERY = 10, 5
 _RATE_MEMORY = 0.7
+# Shares of what is held begin so many times as high as the guess; by so much they go up and down from round to round.
+_FIRST_SHARE, _SHARE_UP, _SHARE_DOWN = 1.0, 2.0, 0.5
+_SAME_POINTS = 1e-9
+# What is held may be missed by this part: sums are rounded.
+_HELD = 1e-6
+# The least reward for a due that is not met, in contacts for each contact that meets it.
+_LEAST_REWARD = 0.1
 # Free cliques are dealt out in runs of neighbours, as a contact needs several of them.
 _RUN = 64
 
@@ -53,7 +73,8 @@ _RUN = 64
 class Found:
     """What the search found: options of the plan, its bound, and the prices that prove it.
 
-    ``left_alone`` counts spacecraft whose contacts serve a requirement that the search cannot count.
+    ``left_alone`` counts spacecraft whose contacts serve a requirement that the search cannot count. ``price`` are the
+    bound's prices as it keeps them, for a search that goes on with other objectives, ``hold_price`` those of ``holds``.
     """
 
     chosen: tuple[int, ...]
@@ -61,41 +82,51 @@ class Found:
     certificate: PriceCertificate
     rounds: int
     left_alone: int
+    price: Floats
+    hold_price: tuple[float, ...]
 
 
 def search_plan(
     arrays: FleetArrays, terms: Terms, limits: Limits, clock: Clock, start: Sequence[int], points: float,
-    tell: Callable[[float, float], None] | None = None,
+    tell: Callable[[float, float], None] | None = None, *, holds: Sequence[tuple[Hold, float]] = (),
+    price: Floats | None = None,
 ) -> Found:
     """Improve the plan ``start`` (options by number) of ``points`` of shortfall, and bound it.
 
-    ``tell(value, bound)`` is called after each round.
+    ``tell(value, bound)`` is called after each round. ``holds`` are other objectives and the least that each is to come
+    to, which ``start`` does, with a guess of what they are worth; ``price`` are prices to begin with.
     """
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
-        return _Rounds(arrays, limits, start, points, pool, threads).run(terms, clock, tell)
+        rounds = _Rounds(arrays, limits, start, points, pool, threads, holds, price)
+        return rounds.run(terms, clock, tell)
 
 
 class _Rounds:
     def __init__(
         self, arrays: FleetArrays, limits: Limits, start: Sequence[int], points: float, pool: ThreadPoolExecutor,
-        threads: int,
+        threads: int, holds: Sequence[tuple[Hold, float]], price: Floats | None,
     ) -> None:
-        self.arrays, self.limits, self.pool, self.threads = arrays, limits, pool, threads
+        self.aim, self.limits, self.pool, self.threads = arrays, limits, pool, threads
         self.workers = max(2, threads)
         self.taken, self.size = load_plan(arrays, start)
         fixed = np.array([bool(arrays.uncounted[self.taken[i, : self.size[i]]].any()) for i in range(len(self.size))])
         self.movable = ~fixed
-        # Points before value: a second of a command interval outweighs what it can be traded for.
-        self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + arrays.spill) @ (
-            arrays.craft[:, 3] + arrays.craft[:, 1] * arrays.horizon_s)))
+        self.holds, self.shares = [hold for hold, _ in holds], np.array([share for _, share in holds])
+        self._blend()
         self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
         self.work = [make_work() for _ in range(self.workers)]
-        self.value, self.points = self._worth()
+        self.best = self.taken.copy(), self.size.copy()
+        self.value, self.points = total_worth(self.aim, self.taken, self.size), self._points()
         # What the search does not count stays as it is.
         self.more_points = points - self.points
+        point_worth, moves = self._first_point_worth()
+        worth = abs(self.value + sum(share * hold.least for hold, share in holds))
         self.bounds = BoundSearch(
-            arrays, self.sweeper, points, self._first_point_worth(), abs(self.value), self._contact_worth())
+            arrays, self.sweeper, points, point_worth, worth, self._contact_worth(), points_move=moves, holds=holds,
+            price=price)
+        self.shares *= _FIRST_SHARE
+        self._blend()
         self.bound_rate = self.value_rate = 0.0
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
@@ -116,10 +147,7 @@ class _Rounds:
                 sweeps = max(1, min(_MOST_SWEEPS, round(_ROUND_LABELS / effort)))
             rounds += 1
             round_s = max(clock.elapsed_s() - began_s, round_s if part < 1.0 else 0.0)
-            self.value, points = self._worth()
-            if points < self.points - 1e-9:
-                self.points = points
-                self.bounds.restart(points + self.more_points)
+            self._judge()
             self._learn(before, with_bound)
             idle = 0 if (self.value, self.bounds.bound) != before else idle + 1
             if tell is not None:
@@ -128,12 +156,41 @@ class _Rounds:
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
         return Found(
-            tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound,
-            certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()))
+            tuple(unload_plan(self.arrays, *self.best)), self.bounds.bound,
+            certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()),
+            self.bounds.best_price, tuple(self.bounds.hold_price.tolist()))
+
+    def _blend(self) -> None:
+        """The sum for which the plan is rebuilt."""
+        parts = [(hold.arrays, share) for hold, share in zip(self.holds, self.shares.tolist(), strict=True)]
+        self.arrays = arrays = blended([*parts, (self.aim, 1.0)]) if parts else self.aim
+        # Points before value: a second of a command interval outweighs what it can be traded for.
+        self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + arrays.spill) @ (
+            arrays.craft[:, 3] + arrays.craft[:, 1] * arrays.horizon_s)))
+
+    def _judge(self) -> None:
+        """Keep the plan if it is the best that holds what is to be held; otherwise see to it that it will."""
+        points, short = self._points(), False
+        for k, hold in enumerate(self.holds):
+            reached = total_worth(hold.arrays, self.taken, self.size)
+            if reached < hold.least - _HELD * max(1.0, abs(hold.least)):
+                self.shares[k] *= _SHARE_UP
+                short = True
+            else:
+                self.shares[k] = max(min(self.shares[k], self.bounds.hold_price[k]), _SHARE_DOWN * self.shares[k])
+        value = total_worth(self.aim, self.taken, self.size)
+        fewer = points < self.points - _SAME_POINTS
+        if not short and (fewer or (value > self.value and points <= self.points + _SAME_POINTS)):
+            self.best, self.value = (self.taken.copy(), self.size.copy()), value
+            if fewer:
+                self.points = points
+                self.bounds.restart(points + self.more_points)
+        if self.holds:
+            self._blend()
 
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
-        prices = option_prices(self.arrays, self.bounds.best_price)
+        prices = option_prices(self.arrays, self.bounds.best_price, dues=False)
         if sweeps == 0 and self.movable.sum() >= _LEAST_PART:
             grounds = self._parts(number)
         else:
@@ -163,20 +220,30 @@ class _Rounds:
         warmth = _WARMTH[number % len(_WARMTH)] * self._contact_worth()
         taken, size = self.taken.copy(), self.size.copy()
         seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32
-        rebuild(self.arrays, seed, effort, warmth, _MOST_OUT, prices, self.point_worth, ground, self.work[worker],
-                taken, size)
+        most = _MOST_OUT_WITH_ROWS if len(self.arrays.limit) else _MOST_OUT
+        rebuild(self.arrays, seed, effort, warmth, most, prices, self._rewards(), self.point_worth, ground,
+                self.work[worker], taken, size)
         return taken, size
 
-    def _everything(self) -> tuple[Flags, Flags]:
-        return np.ones(self.arrays.cliques, dtype=bool), np.ones(len(self.arrays.limit), dtype=bool)
+    def _rewards(self) -> Floats:
+        """What meeting each due whole is worth, shape (d,): what the bound pays, and at least a part of a contact."""
+        dues = len(self.arrays.dues.points)
+        unit = units(self.arrays)[-dues:] if dues else np.zeros(0)
+        paid = -self.bounds.best_price[-dues:] if dues else np.zeros(0)
+        return np.asarray(np.maximum(paid, _LEAST_REWARD * self._contact_worth()) / unit)
+
+    def _everything(self) -> tuple[Flags, Flags, Flags]:
+        counts = self.arrays.cliques, len(self.arrays.limit), len(self.arrays.dues.points)
+        cliques, rows, dues = (np.ones(n, dtype=bool) for n in counts)
+        return cliques, rows, dues
 
     def _parts(self, number: int) -> list[Ground]:
-        """The fleet, the free cliques and the rows dealt out at random, one part to each worker."""
+        """The fleet, the free cliques, the rows and the dues dealt out at random, one part to each worker."""
         rng = np.random.default_rng((self.limits.seed, number))
-        counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit)
-        crafts, runs, rows = (rng.integers(0, self.workers, n) for n in counts)
+        counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit), len(self.arrays.dues.points)
+        crafts, runs, rows, dues = (rng.integers(0, self.workers, n) for n in counts)
         cliques = np.repeat(runs, _RUN)[: self.arrays.cliques]
-        return [Ground((crafts == k) & self.movable, cliques == k, rows == k) for k in range(self.workers)]
+        return [Ground((crafts == k) & self.movable, cliques == k, rows == k, dues == k) for k in range(self.workers)]
 
     def _learn(self, before: tuple[float, float], with_bound: bool) -> None:
         """Follow what a round's work gains on either side."""
@@ -187,19 +254,24 @@ class _Rounds:
             self.bound_rate = _RATE_MEMORY * self.bound_rate + (1.0 - _RATE_MEMORY) * max(0.0, fell)
 
     def _contact_worth(self) -> float:
-        """What a contact of the plan is worth, on average."""
-        return max(1.0, abs(self.value)) / max(1, int(self.size.sum()))
+        """What a contact of the plan is worth in the sum, on average."""
+        nothing = total_worth(self.arrays, self.taken, np.zeros_like(self.size))
+        return max(1.0, abs(total_worth(self.arrays, self.taken, self.size) - nothing)) / max(1, int(self.size.sum()))
 
-    def _worth(self) -> tuple[float, float]:
-        pairs = [worth_of(self.arrays, i, self.taken[i], self.size[i]) for i in range(len(self.size))]
-        return math.fsum(w for w, _ in pairs), math.fsum(p for _, p in pairs)
+    def _points(self) -> float:
+        """Points of the plan in hand, as far as the search counts them."""
+        return total_points(self.arrays, self.taken, self.size) + points_missed(self.arrays.dues, self.taken, self.size)
 
-    def _first_point_worth(self) -> float:
-        """What a point is worth in the bound: much if the plan has only the points that nobody can avoid."""
+    def _first_point_worth(self) -> tuple[float, bool]:
+        """What a point is worth in the bound: much if the plan has only the points that nobody can avoid.
+
+        Otherwise it is a guess, which moves.
+        """
+        arrays = self.arrays
         if self.points <= 0.0:
-            return self.point_worth
-        alone = self.sweeper(np.zeros(len(self.arrays.limit) + self.arrays.cliques), self.point_worth).points.sum()
-        if self.points <= alone + 1e-9:
-            return self.point_worth
-        return float((self.arrays.craft[:, 0] * self.arrays.craft[:, 2]).max(initial=1.0))
-
+            return self.point_worth, False
+        if not len(arrays.dues.to):
+            at = self.sweeper(np.zeros(len(units(arrays))), self.point_worth, arrays)
+            if self.points <= at.points.sum() + points_missed(arrays.dues, at.taken, at.size) + _SAME_POINTS:
+                return self.point_worth, False
+        return float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0)), True

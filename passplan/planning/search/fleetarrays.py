@@ -8,9 +8,9 @@ a difference of a running sum over the prices of cliques.
 A lane of a single spacecraft in which every one of its contacts has a place is kept by the order of its contacts
 alone (``arrival``); any other lane of one spacecraft is laid out as if it were shared.
 
-What the schedule program cannot count (a request that several spacecraft could meet, a second recurrence, a
-guarantee) is left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so
-that the search leaves a spacecraft alone that uses one.
+What a schedule alone cannot tell (a request that several spacecraft could meet, a guarantee) is a due, see
+``dues.py``. A second recurrence of a spacecraft is left out of the bound, which stays valid without it; ``uncounted``
+marks the options concerned, so that the search leaves a spacecraft alone that uses one.
 """
 
 from __future__ import annotations
@@ -26,9 +26,12 @@ from passplan.planning.maps import StorageMaps
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Lane, Terms
 from passplan.planning.search.clash import find_clashes
+from passplan.planning.search.dues import Dues, dues_of
 
 # Wanted terms of one spacecraft are bits of one integer.
 _MOST_WANTED = 60
+# Columns of ``craft`` that say what a MB is worth.
+_WORTHS = (0, 4)
 # Amounts are sums of decimals; a limit reached to within this part of it is kept (the judge allows ten times more).
 ROUNDING = 1e-10
 
@@ -55,6 +58,7 @@ class FleetArrays(NamedTuple):
     from, until and points per second of the recurrence (until 0 where there is none). ``clique_lane`` and ``clique_s``
     say of each clique which of the terms' lanes it is
     of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
+    ``dues`` are requirements that several contacts meet together.
     """
 
     option: Integers
@@ -88,6 +92,7 @@ class FleetArrays(NamedTuple):
     clique_lane: Integers
     clique_s: Integers
     most_contacts: int
+    dues: Dues
 
 
 def can_search(problem: Problem) -> bool:
@@ -117,11 +122,8 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         arrival[mine] = np.searchsorted(distinct, ready_s[mine])
         starts.append(distinct)
     use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
-    bits, wants, wants_until, uncounted = _wanted(problem, terms, place, len(order))
-    renews, recur = _recurrences(problem, terms, place, uncounted)
-    for promise in terms.guarantees:
-        kept = place[promise.options]
-        uncounted[kept[kept >= 0]] = True
+    bits, wants, wants_until, shared_wants = _wanted(problem, terms, place, len(order))
+    renews, recur, uncounted = _recurrences(problem, terms, place, len(order))
     load_at, load_row, load_amount, limit = _loads(terms, place, len(order))
     craft_of = np.repeat(np.arange(len(fleet)), np.diff(first))
     clash = np.full(len(order), -1, dtype=np.int64)
@@ -140,7 +142,19 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
         wants=wants, wants_until=wants_until, recur=recur, horizon_s=problem.horizon_s,
         spill=problem.spill_cost_per_mb, cliques=len(clique_s), clique_lane=clique_lane, clique_s=clique_s,
-        most_contacts=_longest_chain(first, node, arrival))
+        most_contacts=_longest_chain(first, node, arrival),
+        dues=dues_of(terms.guarantees, [(k, terms.wanted[k]) for k in shared_wants], place, len(order)))
+
+
+def blended(parts: Sequence[tuple[FleetArrays, float]]) -> FleetArrays:
+    """The arrays of the weighted sum of objectives over the same options, as ``tiers.staged`` has it."""
+    first = parts[0][0]
+    craft = first.craft.copy()
+    for column in _WORTHS:
+        craft[:, column] = sum(share * part.craft[:, column] for part, share in parts)
+    return first._replace(
+        craft=craft, cost=np.asarray(sum(share * part.cost for part, share in parts)),
+        spill=float(sum(share * part.spill for part, share in parts)))
 
 
 def _own_and_shared(
@@ -204,28 +218,34 @@ def _longest_hold(problem: Problem, shared: Iterable[Lane]) -> int:
     return before_s + after_s
 
 
-def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats, Integers, Flags]:
+def _wanted(
+    problem: Problem, terms: Terms, place: Integers, count: int,
+) -> tuple[Integers, Floats, Integers, list[int]]:
+    """Bits, points and last starts of wanted terms, and the numbers of those that are no matter of one spacecraft."""
     bits, points = np.zeros(count, dtype=np.int64), np.zeros((len(problem.fleet), _MOST_WANTED))
     until = np.full(points.shape, -1, dtype=np.int64)
-    uncounted = np.zeros(count, dtype=bool)
     used = np.zeros(len(problem.fleet), dtype=np.int64)
-    for want in terms.wanted:
+    others = []
+    for k, want in enumerate(terms.wanted):
         rows = place[want.options]
         rows = rows[rows >= 0]
         craft = np.unique(problem.options.spacecraft[want.options])
-        if len(craft) != 1 or used[craft[0]] >= _MOST_WANTED:
-            uncounted[rows] = True
-        elif len(rows):
+        if len(craft) != 1 or len(rows) == 0 or used[craft[0]] >= _MOST_WANTED:
+            others.append(k)
+        else:
             bits[rows] |= np.int64(1) << used[craft[0]]
             points[craft[0], used[craft[0]]] = want.points
             until[craft[0], used[craft[0]]] = problem.options.start_s[want.options].max()
             used[craft[0]] += 1
-    return bits, points, until, uncounted
+    return bits, points, until, others
 
 
-def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Flags) -> tuple[Integers, Floats]:
-    """The first recurrence of each spacecraft; options of the others are marked in ``uncounted``."""
-    renews, recur = np.full(len(uncounted), -1, dtype=np.int64), np.zeros((len(problem.fleet), 3))
+def _recurrences(
+    problem: Problem, terms: Terms, place: Integers, count: int,
+) -> tuple[Integers, Floats, Flags]:
+    """The first recurrence of each spacecraft; options of the others are marked."""
+    renews, recur = np.full(count, -1, dtype=np.int64), np.zeros((len(problem.fleet), 3))
+    uncounted = np.zeros(count, dtype=bool)
     for need in terms.recurrences:
         craft = problem.fleet.names.index(need.name)
         kept = place[need.options] >= 0
@@ -234,7 +254,7 @@ def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Fla
             continue
         renews[place[need.options[kept]]] = np.minimum(need.end_s[kept] + need.every_s, need.until_s)
         recur[craft] = need.from_s, need.until_s, 1.0 / need.every_s
-    return renews, recur
+    return renews, recur, uncounted
 
 
 def _loads(terms: Terms, place: Integers, count: int) -> tuple[Integers, Integers, Floats, Floats]:

@@ -18,30 +18,39 @@ import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.dues import give, missed
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
 from passplan.planning.search.labels import Work
 from passplan.planning.search.schedule import best_schedule, clashes, worth_of
 
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
+# What gives to a due that is not met is paid for up to so many times as the bound would pay; now and then far more.
+_MOST_EAGER, _FAR_MORE, _NOW_AND_THEN = 4.0, 100.0, 0.1
 # What a call costs beside its labels, in labels.
 _OVERHEAD = 100
 
 
 class Ground(NamedTuple):
-    """What one rebuild may touch: spacecraft (n,), and the cliques (c,) and rows (r,) of which it may use more."""
+    """What one rebuild may touch: spacecraft (n,), and the cliques (c,) and rows (r,) of which it may use more.
+
+    Of ``dues`` (d,) it may give less, where more than enough is given, or be glad to give more.
+    """
 
     crafts: Flags
     cliques: Flags
     rows: Flags
+    dues: Flags
 
 
 @compiled
 def rebuild(
-    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, point_worth: float,
-    ground: Ground, work: Work, taken: Integers, size: Integers,
+    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, due_price: Floats,
+    point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
+
+    ``option_price`` (m,) is what the bound has options pay, ``due_price`` (d,) what it pays for meeting each due.
 
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
@@ -57,6 +66,12 @@ def rebuild(
     room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
     now_taken, now_size = taken.copy(), size.copy()
     worth = _enter(a, taken, size, point_worth, ground.rows, holder, room)
+    due_points = point_worth * a.dues.points
+    given = np.zeros(len(due_points))
+    for i in range(count):
+        give(a.dues.at, a.dues.to, a.dues.share, taken[i], size[i], 1.0, given)
+    # Others may count on what is given beyond their dues; whatever is given less is missed.
+    given = np.where(ground.dues, given, 1.0)
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
@@ -67,31 +82,32 @@ def rebuild(
     while work.spent[0] - begun < effort:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
         some = _pick(a, holder, ground.crafts, movable, out, wanted)
+        change = missed(due_points, given)
         for k in range(some):
             old_worth[k] = worth[out[k]]
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
-            _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
+            _release(a, now_taken[out[k]], now_size[out[k]], holder, room, given)
             now_size[out[k]] = 0
         share = np.random.random() * _MOST_SHARE
+        eager = np.random.random() * _MOST_EAGER * (_FAR_MORE if np.random.random() < _NOW_AND_THEN else 1.0)
         for turn in range(2 * some - 1):
             # First each pays for what others need, the last one has nobody left to leave room for; then all but the
             # last once more, for nothing.
             part = share if turn < some - 1 else 0.0
-            _replan(a, out[turn % some], part, option_price, price, point_worth, work, holder, room, now_taken,
-                    now_size, fresh)
-        change = 0.0
+            _replan(a, out[turn % some], part, option_price, price, eager, due_price, point_worth, work, holder, room,
+                    given, now_taken, now_size, fresh)
+        change -= missed(due_points, given)
         for k in range(some):
             worth[out[k]] = _net_worth(a, out[k], now_taken[out[k]], now_size[out[k]], point_worth)
             change += worth[out[k]] - old_worth[k]
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
         if change < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(change / heat)):
             for k in range(some):
-                _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
+                _release(a, now_taken[out[k]], now_size[out[k]], holder, room, given)
             for k in range(some):
                 worth[out[k]] = old_worth[k]
                 _copy(old_taken, old_size, k, now_taken, now_size, out[k])
-                hold(a, now_taken[out[k]], now_size[out[k]], holder, out[k])
-                load(a, now_taken[out[k]], now_size[out[k]], room, -1.0)
+                _claim(a, now_taken[out[k]], now_size[out[k]], holder, room, given, out[k])
             continue
         gain += change
         is_changed[out[:some]] = True
@@ -106,27 +122,32 @@ def rebuild(
 
 @compiled
 def _replan(
-    a: FleetArrays, i: int, part: float, option_price: Floats, price: Floats, point_worth: float, work: Work,
-    holder: Integers, room: Floats, taken: Integers, size: Integers, fresh: Integers,
+    a: FleetArrays, i: int, part: float, option_price: Floats, price: Floats, eager: float, due_price: Floats,
+    point_worth: float, work: Work, holder: Integers, room: Floats, given: Floats, taken: Integers, size: Integers,
+    fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
 
-    It keeps the schedule it has where the program gives none that can be used.
+    For dues that are not met without it, it is paid ``eager`` times their price. It keeps the schedule it has where
+    the program gives none that can be used.
     """
-    _release(a, taken[i], size[i], holder, room)
+    _release(a, taken[i], size[i], holder, room, given)
+    due_at, due_to, due_share = a.dues.at, a.dues.to, a.dues.share
     use_at, use_first, use_last, cost = a.use_at, a.use_first, a.use_last, a.cost
     load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
     for o in range(a.first[i], a.first[i + 1]):
         free = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
         price[o] = cost[o] + part * option_price[o] if free else np.inf
+        for e in range(due_at[o], due_at[o + 1]):
+            if given[due_to[e]] < 1.0:
+                price[o] -= eager * due_price[due_to[e]] * due_share[e]
     work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
     if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and _fits(a, fresh, count, room):
         size[i] = count
         for c in range(count):
             taken[i, c] = fresh[c]
-    hold(a, taken[i], size[i], holder, i)
-    load(a, taken[i], size[i], room, -1.0)
+    _claim(a, taken[i], size[i], holder, room, given, i)
 
 
 @compiled
@@ -136,9 +157,17 @@ def _net_worth(a: FleetArrays, i: int, taken: Integers, size: int, point_worth: 
 
 
 @compiled
-def _release(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats) -> None:
+def _release(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats, given: Floats) -> None:
     hold(a, taken, size, holder, -1)
     load(a, taken, size, room, 1.0)
+    give(a.dues.at, a.dues.to, a.dues.share, taken, size, -1.0, given)
+
+
+@compiled
+def _claim(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats, given: Floats, who: int) -> None:
+    hold(a, taken, size, holder, who)
+    load(a, taken, size, room, -1.0)
+    give(a.dues.at, a.dues.to, a.dues.share, taken, size, 1.0, given)
 
 
 @inlined
