@@ -91,8 +91,8 @@ class FleetArrays(NamedTuple):
 
 
 def can_search(problem: Problem) -> bool:
-    """Whether the search's schedule program follows the storage of every spacecraft: one class of data, one rate."""
-    return not any(problem.fleet.streams)
+    """Whether the search's schedule program follows the storage of every spacecraft: one class, one rate, one link."""
+    return not any(problem.fleet.streams) and bool(np.all(problem.fleet.links == 1))
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
