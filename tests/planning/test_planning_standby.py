@@ -206,7 +206,7 @@ def test_150_cases_with_stand_bys_equal_the_best_of_all_plans(block: int) -> Non
 
 @pytest.mark.parametrize("block", some_of(range(4), 1))
 def test_the_search_keeps_what_stand_bys_hold(block: int) -> None:
-    limits = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0)
+    limits = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0, search_rounds=20)
     for seed in range(200 + 10 * block, 210 + 10 * block):
         problem = held_problem(seed)
         judge = HeldJudge(problem)
