@@ -20,8 +20,12 @@ from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNe
 
 def random_craft_problem(seed: int) -> Problem:
     """A random problem in which each spacecraft has each limit by a coin's toss."""
-    rng = random.Random(10_000 + seed)
     problem = random_problem(seed)
+    return replace(problem, needs=craft_needs(problem, random.Random(10_000 + seed)))
+
+
+def craft_needs(problem: Problem, rng: random.Random) -> tuple[object, ...]:
+    """Each limit for each spacecraft of a problem by a coin's toss, and when transmitters are on."""
     needs: list[object] = [on_air_of(problem)]
     for craft in range(len(problem.fleet)):
         edges_s = tuple(float(t) for t in range(rng.randint(1, 15) * STEP_S + 7, problem.horizon_s, 20 * STEP_S))
@@ -39,7 +43,7 @@ def random_craft_problem(seed: int) -> Problem:
             net_w = np.array([rng.choice([-30.0, -10.0, 20.0, 50.0, 70.0]) for _ in range(5)])
             needs.append(PowerNeed(craft, capacity_wh, rng.choice([0.0, 0.2, 0.5]) * capacity_wh,
                                    rng.choice([0.1, 0.6, 1.0]) * capacity_wh, edges, net_w))
-    return replace(problem, needs=tuple(needs))
+    return tuple(needs)
 
 
 def loosened(problem: Problem) -> Problem:

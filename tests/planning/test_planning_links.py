@@ -11,6 +11,7 @@ from craft_cases import CraftJudge, random_craft_problem
 from data_cases import DataJudge, random_ageing_problem, random_data_problem
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from link_cases import NoiseJudge, with_links
 from planning_cases import Judge, problem_of, random_problem, some_of
 from planning_runs import DOWN, UP, make_run, make_windows
 
@@ -20,33 +21,13 @@ from passplan.planning.lost_value import Chance, missed_links
 from passplan.planning.maps import storage_maps, worth_of
 from passplan.planning.plan import Plan, make_plan
 from passplan.planning.portfolio import find_plan
-from passplan.planning.problem import Antennas, Conflict, Crowd, Limits, Problem
+from passplan.planning.problem import Conflict, Crowd, Limits, Problem
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.search.fleetarrays import can_search
 from passplan.planning.value import account
 
 PIECES = st.lists(
     st.tuples(st.integers(0, 30), st.integers(1, 12), st.sampled_from([0.0, 0.5, 1.0, 3.0])), max_size=6)
-
-
-def with_links(problem: Problem, seed: int) -> Problem:
-    """One to three links for each spacecraft, with enough aboard for all of them.
-
-    Most contacts are those of one spacecraft; windows are spread over three antennas, some with two beams.
-    """
-    rng, o = random.Random(f"links {seed}"), problem.options
-    whose = np.array([0 if rng.random() < 0.6 else k for k in o.spacecraft.tolist()], dtype=np.int64)
-    beams = np.array([rng.choice([1, 1, 2]) for _ in range(3)])
-    where = (o.window + seed) % 3
-    tight = np.array([(a, b) for a, b in problem.too_tight.tolist() if where[a] == where[b] and beams[where[a]] == 1])
-    fleet = replace(
-        problem.fleet, links=np.array([rng.choice([1, 2, 2, 3]) for _ in problem.fleet.names]),
-        weight=1.0 + problem.fleet.weight, capacity_mb=10.0 * problem.fleet.capacity_mb,
-        start_fill_mb=8.0 * problem.fleet.start_fill_mb)
-    return replace(
-        problem, options=replace(o, spacecraft=whose, antenna=where), fleet=fleet,
-        antennas=Antennas(("dish-0", "dish-1", "dish-2"), beams),
-        too_tight=tight.astype(np.int64).reshape(-1, 2))
 
 
 def at_once(problem: Problem, chosen: tuple[int, ...]) -> bool:
@@ -121,36 +102,13 @@ def test_interference_with_several_links_equals_the_best_of_all_plans(block: int
     bound = 0
     for seed in range(15 * block, 15 * block + 15):
         problem = noisy_problem(seed)
-        judge = _Ears(problem)
+        judge = NoiseJudge(problem)
         _, value = judge.best()
         result = find_plan(problem, Limits(gap=0.0))
         assert judge.kept(result.chosen), f"seed {seed}"
         assert result.value == pytest.approx(value, rel=1e-6, abs=1e-6), f"seed {seed}"
         bound += result.value < find_plan(replace(problem, conflicts=(), crowds=()), Limits(gap=0.0)).value - 1e-6
     assert bound >= 4
-
-
-class _Ears(Judge):
-    """Also listens: minute by minute, who of the chosen is disturbed."""
-
-    def kept(self, chosen: object) -> bool:
-        """Whether links, beams and ears are all right."""
-        picked = list(chosen)  # type: ignore[call-overload]
-        return super().kept(picked) and not any(
-            self._heard(noise, [k for k in picked if self.options.start_s[k] <= t < self.options.end_s[k]])
-            for noise in (*self.problem.conflicts, *self.problem.crowds) for t in range(noise.start_s, noise.end_s, 60))
-
-    def _heard(self, noise: Conflict | Crowd, now: list[int]) -> bool:
-        o = self.options
-        down = [k for k in now if o.downlink[k]]
-        if not any(o.spacecraft[k] == noise.victim and o.antenna[k] == noise.antenna for k in down):
-            return False
-        if isinstance(noise, Conflict):
-            return any(o.spacecraft[k] == noise.interferer for k in down)
-        shares = dict(zip(noise.interferers, noise.shares, strict=True))
-        links = self.problem.fleet.links
-        return sum(shares[int(o.spacecraft[k])] / links[o.spacecraft[k]] for k in down
-                   if not (o.spacecraft[k] == noise.victim and o.antenna[k] == noise.antenna)) > 1.0 + 1e-9
 
 
 def two_at_once(**rest: object) -> Problem:
