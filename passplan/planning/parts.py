@@ -106,7 +106,7 @@ def _part(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part
         extra_price=problem.extra_price[kept] if len(problem.extra_price) else problem.extra_price,
         base_worth=problem.base_worth if first else 0.0,
         fleet=replace(fleet, weight=fleet.weight * zero, generation_mb_per_s=fleet.generation_mb_per_s * zero,
-                      start_fill_mb=fleet.start_fill_mb * zero,
+                      start_fill_mb=fleet.start_fill_mb * zero, links=np.where(crafts, fleet.links, 1),
                       streams=tuple(own if crafts[k] else () for k, own in enumerate(fleet.streams))))
     return Part(part, _terms(problem, terms, place, crafts, first=first), kept)
 

@@ -27,7 +27,8 @@ class Fleet:
 
     ``streams`` are the classes of data of each spacecraft by falling weight, none for one with a single class at a
     steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill; and
-    ``keeping`` says how each storage loses and frees data (absent: as :class:`Keeping` has it by default).
+    ``keeping`` says how each storage loses and frees data (absent: as :class:`Keeping` has it by default). ``links`` is
+    how many contacts each can be in at once, without it one.
     """
 
     names: tuple[str, ...]
@@ -37,8 +38,11 @@ class Fleet:
     start_fill_mb: Floats
     streams: tuple[tuple[Stream, ...], ...] = ()
     keeping: tuple[Keeping, ...] = ()
+    links: Integers = field(default_factory=lambda: np.zeros(0, dtype=np.int64))
 
     def __post_init__(self) -> None:
+        if not len(self.links):
+            object.__setattr__(self, "links", np.ones(len(self.names), dtype=np.int64))
         freeze(self)
 
     def weighed(self, parts: Sequence[tuple[Fleet, float]]) -> Fleet:

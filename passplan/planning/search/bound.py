@@ -303,7 +303,7 @@ class BoundSearch:
         for hold in self.holds:
             less = hold.least - total_worth(hold.arrays, at.taken, at.size)
             levels.append(less / (_HELD_SIZE * max(1.0, abs(hold.least))))
-        return np.clip(np.array(levels), -1.0, 1.0)
+        return np.asarray(np.clip(np.array(levels), -1.0, 1.0))
 
     def _keep_within(self) -> None:
         """A due is never rewarded beyond its points, and one that nothing can meet not below them."""

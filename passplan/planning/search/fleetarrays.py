@@ -96,8 +96,8 @@ class FleetArrays(NamedTuple):
 
 
 def can_search(problem: Problem) -> bool:
-    """Whether the search's schedule program follows the storage of every spacecraft: one class of data, one rate."""
-    return not any(problem.fleet.streams)
+    """Whether the search's schedule program follows the storage of every spacecraft: one class, one rate, one link."""
+    return not any(problem.fleet.streams) and bool(np.all(problem.fleet.links == 1))
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
@@ -249,7 +249,7 @@ def _recurrences(
     for need in terms.recurrences:
         craft = problem.fleet.names.index(need.name)
         kept = place[need.options] >= 0
-        if recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
+        if need.request or recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
             uncounted[place[need.options[kept]]] = True
             continue
         renews[place[need.options[kept]]] = np.minimum(need.end_s[kept] + need.every_s, need.until_s)
