@@ -32,8 +32,8 @@ from passplan.planning.search.labels import Work, make_work
 from passplan.planning.search.schedule import best_schedule, worth_of
 
 # The first step moves the price of an option by about this part of what a contact is worth; after so many steps it
-# is half as long, then a third, and so on.
-_FIRST_STEP = 0.3
+# is half as long, then a third, and so on. Rows need longer ones: an option is in many, each with a price of its own.
+_FIRST_STEP, _FIRST_STEP_WITH_ROWS = 0.1, 0.3
 _HALF_AFTER = 10.0
 _MEAN_MEMORY = 0.9
 _SQUARE_MEMORY = 0.99
@@ -233,7 +233,8 @@ class BoundSearch:
         self._keep_within()
         begin = np.zeros(len(self.limits)) if price is None else price
         self.price = self.best_price = np.clip(begin, self.floor, self.ceiling)
-        self._step = _FIRST_STEP * contact_worth / self._widths()
+        first = _FIRST_STEP_WITH_ROWS if len(arrays.limit) else _FIRST_STEP
+        self._step = first * contact_worth / self._widths()
         self._steps = 0
         self._adam, self._level_adam = _Adam(len(self.limits)), _Adam(1 + len(self.holds))
 
