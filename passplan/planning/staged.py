@@ -16,6 +16,8 @@ import math
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 
+import numpy as np
+
 from passplan.planning.arrays import Floats
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
@@ -29,6 +31,7 @@ from passplan.planning.search.engine import search_plan
 from passplan.planning.search.fleetarrays import FleetArrays, can_search, fleet_arrays
 from passplan.planning.search.forced import ruled_out
 from passplan.planning.search.ready import compiled_in_time
+from passplan.planning.several_links import ceiling_without, search_all
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -38,6 +41,8 @@ from passplan.planning.value import account
 Tell = Callable[[float, float, float], None]
 # Parts of the time that is left for each objective: lost data, value, cost, changes.
 _SHARES = (0.2, 0.85, 0.6, 0.9)
+# Of the search's time for an objective, the part in which its bound is sought beside spacecraft with several links.
+_FOR_BOUND = 0.5
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -118,7 +123,8 @@ class _Staged:
     def _rule_out(self) -> None:
         """Leave out the options that no plan with as few points has, where the search is to look through them."""
         count = len(self.problem.options)
-        if count > self.limits.exact_options and can_search(self.problem) and compiled_in_time(self.clock):
+        by_search = count > self.limits.exact_options and can_search(self.problem)
+        if by_search and not np.any(self.problem.fleet.links > 1) and compiled_in_time(self.clock):
             removal = ruled_out(self._arrays(0), self.best.points)
             self.terms += Terms(removals=(removal,))
             self.arrays.clear()
@@ -150,6 +156,8 @@ class _Staged:
         """Improve one objective by the search and return the bound that this proves."""
         if not (can_search(self.problem) and compiled_in_time(time)):
             return bound
+        if np.any(self.problem.fleet.links > 1):
+            return self._search_beside(k, time, bound)
         arrays = self._arrays(k)
         if not len(arrays.option):
             return bound
@@ -166,6 +174,21 @@ class _Staged:
         self._offer(found.chosen, "search")
         self.prices = k, found.price, found.hold_price
         return found.bound + base
+
+    def _search_beside(self, k: int, time: Clock, bound: float) -> float:
+        """The same where a spacecraft has several links: by a sum that hardly gives up what is held.
+
+        The bound is that of the objective alone, whatever the others come to.
+        """
+        aim, points = self.aims[k].problem, self.best.points
+        above = ceiling_without(
+            aim, self.terms, self.limits, time.part(_FOR_BOUND * time.left_s()), self.best.chosen, points,
+            lambda _, above: self._say(k, min(bound, above + aim.base_worth))) + aim.base_worth
+        found = search_all(
+            self._sum(k), self.terms, None, replace(self.limits, gap=0.0), time, self.best.chosen, points,
+            lambda _value, _bound: self._say(k, min(bound, above)))
+        self._offer(found.chosen, "search")
+        return above
 
     def _arrays(self, k: int) -> FleetArrays:
         """The search's view of one objective."""

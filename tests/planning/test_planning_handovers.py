@@ -12,6 +12,7 @@ from link_cases import FollowJudge
 from planning_cases import STEP_S, problem_of, some_of
 from planning_runs import BOTH, DOWN, UP, make_run, make_windows, request
 
+from passplan.inputs.calendar_records import Request
 from passplan.planning.contradictions import find_contradictions
 from passplan.planning.plan import Plan, build_problem, make_plan
 from passplan.planning.portfolio import find_plan
@@ -96,6 +97,21 @@ def test_the_second_contact_begins_well_before_the_first_one_ends() -> None:
     assert plan.contacts["origin"].tolist() == ["requested", "requested"]
     first, second = plan.contacts.to_dict("records")
     assert (first["end_utc"] - second["start_utc"]).total_seconds() >= 120
+
+
+def test_contacts_can_hand_over_with_no_more_than_the_overlap() -> None:
+    windows = [("Teasel-1", "Isvarde-A", 600, 2_000), ("Teasel-1", "Isvarde-B", 1_000, 2_400)]
+    asked = (request("follow", "Teasel-1", 700, 2_300, handover_overlap_s=120),)
+
+    def spans(*requests: Request) -> dict[int, set[tuple[int, int]]]:
+        run = make_run({"cut_grid_s": 0, "options_per_window": 4}, craft=PLENTY, requests=requests)
+        o = build_problem(run, make_windows(windows), [DOWN] * 2)[0].options
+        return {w: {(int(a), int(b)) for a, b in zip(o.start_s[o.window == w], o.end_s[o.window == w], strict=True)}
+                for w in (0, 1)}
+
+    made = spans(*asked)
+    assert (700, 1_120) in made[0] and (1_880, 2_300) in made[1]
+    assert not any(1_120 in span or 1_880 in span for spans_of in spans().values() for span in spans_of)
 
 
 def test_what_is_missing_is_said_and_counted_in_proportion() -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
@@ -12,6 +13,7 @@ from data_cases import DataJudge, random_ageing_problem, random_data_problem
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from link_cases import NoiseJudge, with_links
+from need_cases import ordered_problem
 from planning_cases import Judge, problem_of, random_problem, some_of
 from planning_runs import DOWN, UP, make_run, make_windows
 
@@ -22,8 +24,11 @@ from passplan.planning.maps import storage_maps, worth_of
 from passplan.planning.plan import Plan, make_plan
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Conflict, Crowd, Limits, Problem
+from passplan.planning.rules import all_terms
+from passplan.planning.rules.rows import rows_of
 from passplan.planning.rules.spacecraft_time import spacecraft_time
-from passplan.planning.search.fleetarrays import can_search
+from passplan.planning.rules.terms import AtLeast, Terms, Wanted
+from passplan.planning.several_links import beside, without
 from passplan.planning.value import account
 
 PIECES = st.lists(
@@ -37,10 +42,10 @@ def at_once(problem: Problem, chosen: tuple[int, ...]) -> bool:
                for a in chosen for b in chosen if a < b)
 
 
-@pytest.mark.parametrize("block", some_of(range(15), 1))
+@pytest.mark.parametrize("block", some_of(range(25), 1))
 def test_plans_with_links_equal_the_best_of_all_plans(block: int) -> None:
     doubled = 0
-    for seed in range(14 * block, 14 * block + 14):
+    for seed in range(8 * block, 8 * block + 8):
         problem = with_links(random_craft_problem(seed) if seed % 2 else random_problem(seed), seed)
         judge = (CraftJudge if seed % 2 else Judge)(problem)
         points, value = judge.best()
@@ -52,7 +57,7 @@ def test_plans_with_links_equal_the_best_of_all_plans(block: int) -> None:
         assert result.value == pytest.approx(value, rel=1e-6, abs=1e-6), f"seed {seed}"
         assert result.bound >= result.value
         doubled += at_once(problem, result.chosen)
-    assert doubled >= 5
+    assert doubled >= 1
 
 
 @pytest.mark.parametrize("block", some_of(range(4), 1))
@@ -111,6 +116,57 @@ def test_interference_with_several_links_equals_the_best_of_all_plans(block: int
     assert bound >= 4
 
 
+@pytest.mark.parametrize("seed", some_of(range(60), 6))
+@pytest.mark.parametrize("of", [random_problem, ordered_problem])
+def test_the_search_plans_others_beside_them_and_its_bounds_hold(seed: int, of: Callable[[int], Problem]) -> None:
+    problem = with_links(of(seed), seed)
+    two = np.where(np.arange(len(problem.fleet)) == 0, 2, 1)
+    problem = replace(problem, fleet=replace(problem.fleet, links=two))
+    exact = find_plan(problem, Limits(gap=0.0))
+    found = find_plan(problem, Limits(gap=0.0, exact_options=0, time_limit_s=300.0, search_rounds=40))
+    for best, tier in zip(exact.tiers, found.tiers, strict=True):
+        sign = 1.0 if tier.sense == "most" else -1.0
+        slack = 1e-6 * (1.0 + abs(best.value))
+        assert sign * tier.bound >= sign * best.value - slack, tier.name
+        if abs(best.value - tier.value) > slack:
+            # What comes later is of other plans.
+            assert sign * tier.value < sign * best.value
+            break
+
+
+@pytest.mark.parametrize("seed", some_of(range(40), 10))
+def test_another_link_never_makes_a_plan_worse(seed: int) -> None:
+    problem = with_links(random_problem(seed), seed)
+    fewer = replace(problem, fleet=replace(problem.fleet, links=np.maximum(problem.fleet.links - 1, 1)))
+    (points, value), (more_points, less_value) = (
+        (sum(s.points for s in plan.shortfalls), plan.value)
+        for plan in (find_plan(one, Limits(gap=0.0)) for one in (problem, fewer)))
+    assert points <= more_points + 1e-9
+    assert points < more_points - 1e-9 or value >= less_value - 1e-6 * (1.0 + abs(value))
+
+
+def test_what_others_hold_is_taken_off_and_what_they_meet_is_met() -> None:
+    rows = [{"spacecraft": k, "start_s": a, "end_s": a + 300, "pieces": [(a, a + 300, 1.0)]}
+            for k, a in ((0, 0), (1, 200), (1, 600))]
+    fleet = {"weight": (1.0,) * 2, "generation": (0.0,) * 2, "capacity": (1e4,) * 2, "start": (1e3,) * 2}
+    problem = problem_of(rows, **fleet)
+    problem = replace(problem, fleet=replace(problem.fleet, links=np.array([2, 1])))
+    every = np.arange(3)
+    terms = all_terms(problem) + Terms(
+        rows=(rows_of("budget", [("money", every, [5.0, 4.0, 3.0], 8.0)]),),
+        wanted=(Wanted("any", "any", every),), guarantees=(AtLeast("daily", "x", "MB", every, np.full(3, 3.0), 6.0),))
+    part = beside(problem, terms, [0])
+    assert part.options.tolist() == [1, 2]
+    assert [o for removal in part.terms.removals for o in removal.options.tolist()] == [0]
+    (budget,) = [rows for rows in part.terms.rows if rows.kind == "budget"]
+    assert (budget.limit.tolist(), budget.amounts.tolist()) == ([3.0], [4.0, 3.0])
+    assert part.terms.wanted == ()
+    assert [(g.need, g.points, g.amounts.tolist()) for g in part.terms.guarantees] == [(3.0, 0.5, [3.0, 3.0])]
+    alone = without(problem, terms)
+    assert [rows.limit.tolist() for rows in alone.terms.rows if rows.kind == "budget"] == [[8.0]]
+    assert alone.terms.wanted == () and alone.terms.guarantees == ()
+
+
 def two_at_once(**rest: object) -> Problem:
     """One spacecraft with 100 MB, on two antennas for 100 s at once, at 0.6 and 0.4 MB/s."""
     rows = [{"antenna": k, "start_s": 0, "end_s": 100, "pieces": [(0, 100, rate)]} for k, rate in ((0, 0.6), (1, 0.4))]
@@ -132,12 +188,10 @@ def test_two_contacts_empty_one_storage_together() -> None:
         account(replace(problem, fleet=replace(problem.fleet, links=np.array([1]))), [0, 1])
 
 
-def test_one_link_is_the_default_and_several_keep_out_of_the_search() -> None:
+def test_one_link_is_the_default() -> None:
     problem = two_at_once()
-    assert not can_search(problem)
     single = replace(problem, fleet=replace(problem.fleet, links=np.zeros(0, dtype=np.int64)))
     assert single.fleet.links.tolist() == [1]
-    assert can_search(single)
     terms = spacecraft_time(single)
     assert len(terms.lanes) == 1 and terms.rows == ()
     assert find_plan(single, Limits(gap=0.0)).chosen == (0,)

@@ -65,7 +65,7 @@ def request_wishes(run: Run) -> Iterator[Wish]:
     for request in run.requests:
         yield Wish(
             request.spacecraft, None, math.ceil(seconds_of(run, request.earliest_utc)),
-            math.floor(seconds_of(run, request.latest_utc)))
+            math.floor(seconds_of(run, request.latest_utc)), request.handover_overlap_s or 0)
 
 
 def requested_antennas(run: Run, request: Request) -> frozenset[str]:

@@ -16,7 +16,7 @@ by other code.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
@@ -24,6 +24,7 @@ import numpy as np
 
 from passplan.planning.arrays import Floats, Integers, ragged_ranges
 from passplan.planning.certificate import PriceCertificate
+from passplan.planning.clock import Clock
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.compiled import compiled
 from passplan.planning.search.dues import give
@@ -45,6 +46,8 @@ _NEXT_STEP = 0.1
 # All prices together are at least this part of the value: where time costs nothing at all, schedules are full of
 # contacts that bring nothing down, and what is used says nothing about what is needed.
 _FLOOR = 1e-7
+# A ceiling without a search is at rest after so many groups of so many steps that lowered it by less than this part.
+_PATIENCE, _FEW, _REST = 12, 5, 1e-5
 # The prices of a point and of what is held change by this part at first.
 _FIRST_CHANGE = 0.2
 # Of what is held, this part too much or too little is a step in full.
@@ -319,6 +322,32 @@ class BoundSearch:
         rows = _mean(a.load_row, np.repeat(loads, loads).astype(float), len(a.limit))
         widths: Floats = np.concatenate([np.full(a.cliques, cliques), rows, np.ones(len(a.dues.points))])
         return widths
+
+
+def lowest_ceiling(
+    arrays: FleetArrays, taken: Integers, size: Integers, more_points: float, threads: int, clock: Clock,
+    tell: Callable[[float, float], None],
+) -> float:
+    """The bound alone, for a plan (``taken``, ``size``) that stays as it is, until it comes to rest or time is up.
+
+    ``more_points`` are points of the plan that the schedule program does not count. ``tell(value, bound)`` is called
+    after every few steps.
+    """
+    value, points = total_worth(arrays, taken, size), total_points(arrays, taken, size) + more_points
+    point_worth = float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0))
+    gained = abs(value - total_worth(arrays, taken, np.zeros_like(size)))
+    with ThreadPoolExecutor(max(1, threads)) as pool:
+        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None)
+        bounds = BoundSearch(
+            arrays, sweeper, points, point_worth, abs(value), max(1.0, gained) / max(1, int(size.sum())),
+            points_move=points > 0.0)
+        idle = 0
+        while not clock.expired() and idle < _PATIENCE:
+            before = bounds.bound
+            bounds.improve(_FEW, value)
+            tell(value, bounds.bound)
+            idle = 0 if bounds.bound < before - _REST * abs(before) or not np.isfinite(before) else idle + 1
+    return bounds.bound
 
 
 @compiled

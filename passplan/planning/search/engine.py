@@ -71,7 +71,7 @@ _RUN = 64
 
 @dataclass(frozen=True, eq=False)
 class Found:
-    """What the search found: options of the plan, its bound, and the prices that prove it.
+    """What the search found: options of the plan, its bound, and the prices that prove it (None: no proof is kept).
 
     ``left_alone`` counts spacecraft whose contacts serve a requirement that the search cannot count. ``price`` are the
     bound's prices as it keeps them, for a search that goes on with other objectives, ``hold_price`` those of ``holds``.
@@ -79,7 +79,7 @@ class Found:
 
     chosen: tuple[int, ...]
     bound: float
-    certificate: PriceCertificate
+    certificate: PriceCertificate | None
     rounds: int
     left_alone: int
     price: Floats

@@ -96,8 +96,8 @@ class FleetArrays(NamedTuple):
 
 
 def can_search(problem: Problem) -> bool:
-    """Whether the search's schedule program follows the storage of every spacecraft: one class, one rate, one link."""
-    return not any(problem.fleet.streams) and bool(np.all(problem.fleet.links == 1))
+    """Whether the search's schedule program follows the storage of all with one link: one class of data, one rate."""
+    return not any(problem.fleet.streams_of(k) for k in np.flatnonzero(problem.fleet.links == 1).tolist())
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
