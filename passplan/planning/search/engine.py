@@ -128,6 +128,10 @@ class _Rounds:
         self.shares *= _FIRST_SHARE
         self._blend()
         self.bound_rate = self.value_rate = 0.0
+        option = np.repeat(np.arange(len(arrays.option)), np.diff(arrays.load_at))
+        self.row_craft = _only_craft(arrays, option, arrays.load_row, len(arrays.limit))
+        option = np.repeat(np.arange(len(arrays.option)), np.diff(arrays.dues.at))
+        self.due_craft = _only_craft(arrays, option, arrays.dues.to, len(arrays.dues.points))
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
         effort = 1 + _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
@@ -238,11 +242,16 @@ class _Rounds:
         return cliques, rows, dues
 
     def _parts(self, number: int) -> list[Ground]:
-        """The fleet, the free cliques, the rows and the dues dealt out at random, one part to each worker."""
+        """The fleet, the free cliques, the rows and the dues dealt out at random, one part to each worker.
+
+        What is a matter of one spacecraft goes with it.
+        """
         rng = np.random.default_rng((self.limits.seed, number))
         counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit), len(self.arrays.dues.points)
         crafts, runs, rows, dues = (rng.integers(0, self.workers, n) for n in counts)
         cliques = np.repeat(runs, _RUN)[: self.arrays.cliques]
+        for owner, mine in ((rows, self.row_craft), (dues, self.due_craft)):
+            owner[mine >= 0] = crafts[mine[mine >= 0]]
         return [Ground((crafts == k) & self.movable, cliques == k, rows == k, dues == k) for k in range(self.workers)]
 
     def _learn(self, before: tuple[float, float], with_bound: bool) -> None:
@@ -275,3 +284,12 @@ class _Rounds:
             if self.points <= at.points.sum() + points_missed(arrays.dues, at.taken, at.size) + _SAME_POINTS:
                 return self.point_worth, False
         return float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0)), True
+
+
+def _only_craft(arrays: FleetArrays, option: Integers, group: Integers, groups: int) -> Integers:
+    """The spacecraft of all options of each group, shape (groups,), -1 where they are of several."""
+    craft = np.searchsorted(arrays.first, option, side="right") - 1
+    low, high = np.full(groups, len(arrays.craft)), np.full(groups, -1)
+    np.minimum.at(low, group, craft)
+    np.maximum.at(high, group, craft)
+    return np.where(low == high, low, -1)
