@@ -91,8 +91,8 @@ class FleetArrays(NamedTuple):
 
 
 def can_search(problem: Problem) -> bool:
-    """Whether the search's schedule program follows the storage of every spacecraft: one class of data, one rate."""
-    return not any(problem.fleet.streams)
+    """Whether the search's schedule program follows the storage of all with one link: one class of data, one rate."""
+    return not any(problem.fleet.streams_of(k) for k in np.flatnonzero(problem.fleet.links == 1).tolist())
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
@@ -229,7 +229,7 @@ def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Fla
     for need in terms.recurrences:
         craft = problem.fleet.names.index(need.name)
         kept = place[need.options] >= 0
-        if recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
+        if need.request or recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
             uncounted[place[need.options[kept]]] = True
             continue
         renews[place[need.options[kept]]] = np.minimum(need.end_s[kept] + need.every_s, need.until_s)
