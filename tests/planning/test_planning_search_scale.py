@@ -41,8 +41,9 @@ def days(count: int) -> Problem:
     """Three spacecraft with equal claims to two antennas, a contact for each every 50 minutes, for some days."""
     rows = [{"spacecraft": k % 3, "antenna": (k // 3) % 2, "start_s": 1_000 * k, "end_s": 1_000 * k + 2_400,
              "pieces": [(1_000 * k + 60, 1_000 * k + 2_400, 0.5 + k % 7 / 4)]} for k in range(80 * count)]
-    return problem_of(rows, horizon_s=86_400 * count + 3_600, prepare_s=(300, 300), release_s=(0, 0), weight=(1.0, 2.0, 3.0), generation=(0.3,) * 3,
-                      capacity=(1_500.0,) * 3, start=(100.0,) * 3)
+    return problem_of(
+        rows, horizon_s=86_400 * count + 3_600, prepare_s=(300, 300), release_s=(0, 0), weight=(1.0, 2.0, 3.0),
+        generation=(0.3,) * 3, capacity=(1_500.0,) * 3, start=(100.0,) * 3)
 
 
 @pytest.mark.parametrize("block", some_of(range(20), 1))
