@@ -229,6 +229,12 @@ class BoundSearch:
             self.price = np.maximum(self.floor, self.price + (here - value) / size * gradient)
         self.price = self.best_price
 
+    def settle(self) -> None:
+        """Find the ceiling at the best prices once more without slack, if there is time."""
+        at = self.sweeper(self.best_price, self.point_worth) if self.slack > 0.0 else None
+        if at is not None:
+            self.bound = min(self.bound, self._ceiling(at, self.best_price))
+
     def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
         self.plan_points, self.bound = plan_points, np.inf
@@ -241,12 +247,15 @@ class BoundSearch:
         at = self.sweeper(self.price, self.point_worth, self.slack)
         if at is None:
             return None
-        here = float(at.worth.sum() + self.price @ self.limits + self.point_worth * self.plan_points)
+        here = self._ceiling(at, self.price)
         if here < self.bound:
             self.bound, self.best_price = here, self.price
         gradient = at.use - self.limits
         gradient[(self.price <= self.floor) & (gradient < 0.0)] = 0.0
         return here, gradient
+
+    def _ceiling(self, at: Sweep, price: Floats) -> float:
+        return float(at.worth.sum() + price @ self.limits + self.point_worth * self.plan_points)
 
 
 def lowest_ceiling(

@@ -134,6 +134,7 @@ class _Rounds:
             gap = relative_gap(self.value, self.bounds.bound)
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
+        self.bounds.settle()
         return Found(
             tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound,
             certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()))
