@@ -46,6 +46,11 @@ _NEXT_STEP = 0.1
 # All prices together are at least this part of the value: where time costs nothing at all, schedules are full of
 # contacts that bring nothing down, and what is used says nothing about what is needed.
 _FLOOR = 1e-7
+# Where labels run out of room, ceilings of a spacecraft are loosened, at first by this part of what fills its storage
+# is worth, then four times as far, and so on.
+_LEAST_SLACK, _TRIES = 1e-6, 12
+# Spacecraft swept between two looks at the clock.
+_AT_A_TIME = 16
 # A ceiling without a search is at rest after so many groups of so many steps that lowered it by less than this part.
 _PATIENCE, _FEW, _REST = 12, 5, 1e-5
 # The prices of a point and of what is held change by this part at first.
@@ -81,9 +86,16 @@ def _sweep(
     a: FleetArrays, low: int, high: int, price: Floats, point_worth: float, work: Work, worth: Floats, points: Floats,
     edges: Integers, loads: Floats, given: Floats, taken: Integers, size: Integers,
 ) -> None:
-    no_room = np.empty(0)
+    no_room, slack = np.empty(0), work.slack[0]
     for i in range(low, high):
         worth[i], count = best_schedule(a, i, price, point_worth, no_room, work, taken[i])
+        for _ in range(_TRIES):
+            if count >= 0:
+                break
+            # No room for all labels: a looser ceiling is better than none.
+            work.slack[0] = max(4.0 * work.slack[0], _LEAST_SLACK * (a.craft[i, 0] + a.spill) * a.craft[i, 2])
+            worth[i], count = best_schedule(a, i, price, point_worth, no_room, work, taken[i])
+        work.slack[0] = slack
         size[i] = max(0, count)
         _, points[i] = worth_of(a, i, taken[i], size[i])
         for k in range(size[i]):
@@ -99,14 +111,23 @@ def _sweep(
 class Sweeper:
     """Finds the best schedule of every spacecraft at given prices; parts of the fleet run side by side."""
 
-    def __init__(self, arrays: FleetArrays, threads: int = 1, pool: ThreadPoolExecutor | None = None) -> None:
-        self.arrays, self.pool = arrays, pool
+    def __init__(
+        self, arrays: FleetArrays, threads: int = 1, pool: ThreadPoolExecutor | None = None,
+        clock: Clock | None = None,
+    ) -> None:
+        self.arrays, self.pool, self.clock = arrays, pool, clock
         self.parts = np.linspace(0, len(arrays.craft), (threads if pool else 1) + 1).astype(int).tolist()
         self.work = [make_work() for _ in self.parts[1:]]
         self._unit = units(arrays)
 
-    def __call__(self, price: Floats, point_worth: float, arrays: FleetArrays | None = None) -> Sweep:
-        """All spacecraft at the given prices (c + r + d,), of another objective if ``arrays`` are given."""
+    def __call__(
+        self, price: Floats, point_worth: float, arrays: FleetArrays | None = None, slack: float = 0.0,
+    ) -> Sweep | None:
+        """All spacecraft at the given prices (c + r + d,), of another objective if ``arrays`` are given.
+
+        None if time is up before they are through. Worths are ceilings: with ``slack`` the labels of a spacecraft that
+        are ahead by so much less of one another are not told apart, which is faster.
+        """
         a = self.arrays if arrays is None else arrays
         option_price = option_prices(a, price) + a.cost
         worth, points = np.zeros(len(a.craft)), np.zeros(len(a.craft))
@@ -114,14 +135,17 @@ class Sweeper:
         edges = [np.zeros(a.cliques + 1, dtype=np.int64) for _ in self.work]
         loads, given = ([np.zeros(len(x)) for _ in self.work] for x in (a.limit, a.dues.points))
 
-        def run(k: int) -> None:
-            _sweep(a, self.parts[k], self.parts[k + 1], option_price, point_worth, self.work[k], worth, points,
-                   edges[k], loads[k], given[k], taken, size)
+        def run(k: int) -> bool:
+            self.work[k].slack[0] = slack
+            for low in range(self.parts[k], self.parts[k + 1], _AT_A_TIME):
+                if self.clock is not None and self.clock.expired():
+                    return False
+                _sweep(a, low, min(low + _AT_A_TIME, self.parts[k + 1]), option_price, point_worth, self.work[k],
+                       worth, points, edges[k], loads[k], given[k], taken, size)
+            return True
 
-        if self.pool is None:
-            run(0)
-        else:
-            list(self.pool.map(run, range(len(edges))))
+        if not all([run(0)] if self.pool is None else list(self.pool.map(run, range(len(edges))))):
+            return None
         use = np.concatenate([np.sum(edges, axis=0).cumsum()[:-1], np.sum(loads, axis=0), np.sum(given, axis=0)])
         return Sweep(worth, points, use / self._unit, taken, size)
 
@@ -224,7 +248,7 @@ class BoundSearch:
         """
         self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
         self.limits = limits_of(arrays)
-        self.bound = np.inf
+        self.bound, self.slack = np.inf, 0.0
         self.floor = np.full(len(self.limits), _FLOOR * worth / max(1, len(self.limits)))
         self.ceiling = np.full(len(self.limits), np.inf)
         self._due = slice(arrays.cliques + len(arrays.limit), None)
@@ -236,20 +260,32 @@ class BoundSearch:
         self._keep_within()
         begin = np.zeros(len(self.limits)) if price is None else price
         self.price = self.best_price = np.clip(begin, self.floor, self.ceiling)
+        self._start = self.price if price is None else None
         first = _FIRST_STEP_WITH_ROWS if len(arrays.limit) else _FIRST_STEP
         self._step = first * contact_worth / self._widths()
         self._steps = 0
         self._adam, self._level_adam = _Adam(len(self.limits)), _Adam(1 + len(self.holds))
 
+    @property
+    def guide(self) -> Floats:
+        """Prices that tell a plan what others need: the best ones, or those in hand where the best are still nothing.
+
+        At first prices overshoot, so that the lowest ceiling is that of the start for a while.
+        """
+        return self.price if self.best_price is self._start else self.best_price
+
     def improve(self, iterations: int, value: float) -> None:
-        """Take subgradient steps. ``value`` is the best plan known."""
+        """Take subgradient steps, until time is up. ``value`` is the best plan known."""
         if self._steps >= _STEPS:
             self._polish(iterations, value)
             self._step, self._steps = self._step * _NEXT_STEP, 0
             self._adam, self._level_adam = _Adam(len(self.limits)), _Adam(1 + len(self.holds))
             return
         for _ in range(iterations):
-            here, gradient, levels = self._evaluate()
+            found = self._evaluate()
+            if found is None:
+                return
+            here, gradient, levels = found
             if not np.isfinite(here):
                 # Too many labels at these prices: go back to good ones, and on with care.
                 self.price, self._step = self.best_price, self._step * _SHRINK
@@ -270,26 +306,37 @@ class BoundSearch:
         self.price, self._point_worth, self._hold_price = self.best_price, self.point_worth, self.hold_price
         self._keep_within()
         for _ in range(iterations):
-            here, gradient, _ = self._evaluate()
+            found = self._evaluate()
+            if found is None:
+                break
+            here, gradient, _ = found
             size = float(gradient @ gradient)
             if not np.isfinite(here) or size <= 0.0:
                 break
             self.price = np.clip(self.price + (here - value) / size * gradient, self.floor, self.ceiling)
         self.price = self.best_price
 
+    def settle(self) -> None:
+        """Find the ceiling at the best prices once more without slack, if there is time."""
+        if self.slack > 0.0:
+            at = self.sweeper(self.best_price, self.point_worth, self._blended(self.hold_price))
+            if at is not None:
+                here = self._ceiling(at, self.best_price, self.point_worth, self.hold_price)
+                self.bound = min(self.bound, here)
+
     def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
         self.plan_points, self.bound = plan_points, np.inf
 
-    def _evaluate(self) -> tuple[float, Floats, Floats]:
-        """The ceiling at the present prices, noted if it is the lowest, and which way prices should go."""
-        arrays = self.arrays
-        if self.holds:
-            arrays = blended([(hold.arrays, float(price)) for hold, price in zip(
-                self.holds, self._hold_price, strict=True)] + [(self.arrays, 1.0)])
-        at = self.sweeper(self.price, self._point_worth, arrays)
-        here = float(at.worth.sum() + self.price @ self.limits + self._point_worth * self.plan_points)
-        here -= float(sum(hold.least * price for hold, price in zip(self.holds, self._hold_price, strict=True)))
+    def _evaluate(self) -> tuple[float, Floats, Floats] | None:
+        """The ceiling at the present prices, noted if it is the lowest, and which way prices should go.
+
+        None if time is up before it is known.
+        """
+        at = self.sweeper(self.price, self._point_worth, self._blended(self._hold_price), self.slack)
+        if at is None:
+            return None
+        here = self._ceiling(at, self.price, self._point_worth, self._hold_price)
         if here < self.bound:
             self.bound, self.best_price = here, self.price
             self.point_worth, self.hold_price = self._point_worth, self._hold_price
@@ -323,6 +370,15 @@ class BoundSearch:
         widths: Floats = np.concatenate([np.full(a.cliques, cliques), rows, np.ones(len(a.dues.points))])
         return widths
 
+    def _ceiling(self, at: Sweep, price: Floats, point_worth: float, hold_price: Floats) -> float:
+        held = sum(hold.least * share for hold, share in zip(self.holds, hold_price.tolist(), strict=True))
+        return float(at.worth.sum() + price @ self.limits + point_worth * self.plan_points - held)
+
+    def _blended(self, hold_price: Floats) -> FleetArrays:
+        """The objective with what is held at its prices."""
+        parts = [(hold.arrays, share) for hold, share in zip(self.holds, hold_price.tolist(), strict=True)]
+        return blended([*parts, (self.arrays, 1.0)]) if parts else self.arrays
+
 
 def lowest_ceiling(
     arrays: FleetArrays, taken: Integers, size: Integers, more_points: float, threads: int, clock: Clock,
@@ -337,7 +393,7 @@ def lowest_ceiling(
     point_worth = float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0))
     gained = abs(value - total_worth(arrays, taken, np.zeros_like(size)))
     with ThreadPoolExecutor(max(1, threads)) as pool:
-        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None)
+        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None, clock)
         bounds = BoundSearch(
             arrays, sweeper, points, point_worth, abs(value), max(1.0, gained) / max(1, int(size.sum())),
             points_move=points > 0.0)

@@ -55,8 +55,14 @@ _WARMTH = (0.0, 0.02, 0.1, 0.5)
 _PATIENCE_ROUNDS = 80
 # Fleets below this are never rebuilt in parts.
 _LEAST_PART = 20
-# So many rounds with bound first; then the bound moves at least every so many.
-_ROUNDS_WITH_BOUND, _BOUND_EVERY = 10, 5
+# So many steps of the bound first: prices overshoot before they are of use. Then it moves every so many rounds or more.
+_FIRST_SWEEPS, _BOUND_EVERY = 60, 5
+# After them, ceilings may be loose by this part of the gap, of what a contact is worth, which makes sweeps faster. At
+# prices near nothing it would fill schedules with contacts that bring nothing down.
+_LOOSE = 0.001
+# Of each round only contacts that start within so many seconds of one another are rebuilt: a little time of many
+# spacecraft is looked through more often than all of it. None: the whole horizon.
+_SPANS_S = (28_800, 14_400, None)
 _RATE_MEMORY = 0.7
 # Shares of what is held begin so many times as high as the guess; by so much they go up and down from round to round.
 _FIRST_SHARE, _SHARE_UP, _SHARE_DOWN = 1.0, 2.0, 0.5
@@ -98,14 +104,14 @@ def search_plan(
     """
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
-        rounds = _Rounds(arrays, limits, start, points, pool, threads, holds, price)
+        rounds = _Rounds(arrays, limits, start, points, pool, threads, clock, holds, price)
         return rounds.run(terms, clock, tell)
 
 
 class _Rounds:
     def __init__(
         self, arrays: FleetArrays, limits: Limits, start: Sequence[int], points: float, pool: ThreadPoolExecutor,
-        threads: int, holds: Sequence[tuple[Hold, float]], price: Floats | None,
+        threads: int, clock: Clock, holds: Sequence[tuple[Hold, float]], price: Floats | None,
     ) -> None:
         self.aim, self.limits, self.pool, self.threads = arrays, limits, pool, threads
         self.workers = max(2, threads)
@@ -114,7 +120,7 @@ class _Rounds:
         self.movable = ~fixed
         self.holds, self.shares = [hold for hold, _ in holds], np.array([share for _, share in holds])
         self._blend()
-        self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
+        self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None, clock)
         self.work = [make_work() for _ in range(self.workers)]
         self.best = self.taken.copy(), self.size.copy()
         self.value, self.points = total_worth(self.aim, self.taken, self.size), self._points()
@@ -127,6 +133,7 @@ class _Rounds:
             price=price)
         self.shares *= _FIRST_SHARE
         self._blend()
+        self.swept = 0
         self.bound_rate = self.value_rate = 0.0
         option = np.repeat(np.arange(len(arrays.option)), np.diff(arrays.load_at))
         self.row_craft = _only_craft(arrays, option, arrays.load_row, len(arrays.limit))
@@ -143,8 +150,8 @@ class _Rounds:
             # What ends by the clock need not be the same every time: the last round is as short as it must be.
             part = min(1.0, clock.left_s() / round_s) if round_s > 0.0 else 1.0
             with_bound = (
-                rounds < _ROUNDS_WITH_BOUND or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
-            labels = int(part * max(_LEAST_LABELS, sweeps * effort))
+                self.swept < _FIRST_SWEEPS or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
+            labels = int(part * max(_LEAST_LABELS, min(sweeps * effort, _ROUND_LABELS if rounds == 0 else np.inf)))
             spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, labels)
             if spent:
                 effort = max(1, spent // sweeps)
@@ -159,6 +166,7 @@ class _Rounds:
             gap = relative_gap(self.value, self.bounds.bound)
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
+        self.bounds.settle()
         return Found(
             tuple(unload_plan(self.arrays, *self.best)), self.bounds.bound,
             certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()),
@@ -194,7 +202,7 @@ class _Rounds:
 
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
-        prices = option_prices(self.arrays, self.bounds.best_price, dues=False)
+        prices = option_prices(self.arrays, self.bounds.guide, dues=False)
         if sweeps == 0 and self.movable.sum() >= _LEAST_PART:
             grounds = self._parts(number)
         else:
@@ -214,6 +222,9 @@ class _Rounds:
     def _improve(self, sweeps: int) -> int:
         if sweeps == 0:
             return 0
+        gap = relative_gap(self.value, self.bounds.bound) if np.isfinite(self.bounds.bound) else 0.0
+        self.bounds.slack = _LOOSE * min(1.0, gap) * self._contact_worth() if self.swept >= _FIRST_SWEEPS else 0.0
+        self.swept += sweeps
         before = sum(int(work.spent[0]) for work in self.sweeper.work)
         self.bounds.improve(sweeps, self.value)
         return sum(int(work.spent[0]) for work in self.sweeper.work) - before
@@ -225,7 +236,8 @@ class _Rounds:
         taken, size = self.taken.copy(), self.size.copy()
         seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32
         most = _MOST_OUT_WITH_ROWS if len(self.arrays.limit) else _MOST_OUT
-        rebuild(self.arrays, seed, effort, warmth, most, prices, self._rewards(), self.point_worth, ground,
+        span_s = min(_SPANS_S[number % len(_SPANS_S)] or self.arrays.horizon_s, self.arrays.horizon_s)
+        rebuild(self.arrays, seed, effort, warmth, most, span_s, prices, self._rewards(), self.point_worth, ground,
                 self.work[worker], taken, size)
         return taken, size
 
@@ -281,7 +293,8 @@ class _Rounds:
             return self.point_worth, False
         if not len(arrays.dues.to):
             at = self.sweeper(np.zeros(len(units(arrays))), self.point_worth, arrays)
-            if self.points <= at.points.sum() + points_missed(arrays.dues, at.taken, at.size) + _SAME_POINTS:
+            if at is None or (
+                    self.points <= at.points.sum() + points_missed(arrays.dues, at.taken, at.size) + _SAME_POINTS):
                 return self.point_worth, False
         return float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0)), True
 

@@ -49,6 +49,8 @@ def _forced(arrays: FleetArrays, points: float) -> Integers:
         craft=np.where(np.arange(arrays.craft.shape[1]) % 4 == 0, 0.0, arrays.craft), spill=0.0,
         cost=np.zeros(len(arrays.cost)))
     alone = Sweeper(worthless)(np.zeros(len(units(arrays))), 1.0)
+    if alone is None:
+        raise RuntimeError("a sweep without a clock came to no end")
     hopeless = arrays.dues._replace(points=np.where(np.bincount(
         arrays.dues.to, minlength=len(arrays.dues.points)) == 0, arrays.dues.points, 0.0))
     spare = points - float(alone.points.sum()) - points_missed(hopeless, alone.taken, alone.size) + _SAME_POINTS

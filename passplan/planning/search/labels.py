@@ -37,7 +37,8 @@ class Work(NamedTuple):
     before it). The ``wait`` arrays hold labels that stand further on, each with its record at the same index, as
     runs ``run_low : run_high`` in linked lists. ``champion`` is scratch.
     ``spent[0]`` counts labels made: how much work has been done, whatever
-    the machine.
+    the machine. ``slack[0]`` is how far a label may be ahead of one that makes it useless all the same; that one is
+    then raised by as much, so that worths are ceilings.
     """
 
     aboard: Floats
@@ -56,6 +57,7 @@ class Work(NamedTuple):
     run_next: Integers
     champion: Integers
     spent: Integers
+    slack: Floats
 
 
 def make_work(labels: int = _MOST_LABELS) -> Work:
@@ -65,7 +67,7 @@ def make_work(labels: int = _MOST_LABELS) -> Work:
     wait, records = [np.empty(labels) for _ in range(3)], [np.empty(labels, dtype=np.int64) for _ in range(7)]
     return Work(
         floats[0], floats[1], floats[2], numbers[0], numbers[1], wait[0], wait[1], wait[2], records[0], records[1],
-        records[2], records[3], records[4], records[5], records[6], np.zeros(1, dtype=np.int64))
+        records[2], records[3], records[4], records[5], records[6], np.zeros(1, dtype=np.int64), np.zeros(1))
 
 
 @inlined
@@ -74,6 +76,7 @@ def merge(
     bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
     wait_bits: Integers, record_option: Integers, low: int, high: int, due: float, per_second: float,
     point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
+    slack: float,
 ) -> int:
     """Merge the ``count`` labels on ``side`` with the run ``low : high``, onto the other side, without the useless.
 
@@ -85,7 +88,7 @@ def merge(
     to = 1 - side
     if count + high - low > aboard.shape[1]:
         return -1
-    best = -np.inf
+    best, holder = -np.inf, 0
     x = left = 0
     y = low
     while x < count or y < high:
@@ -99,10 +102,13 @@ def merge(
             y += 1
         if simple:
             # Upward: drop what holds more than another but is not ahead.
-            if ahead + weight * mb <= best:
+            if ahead + weight * mb <= best + slack:
+                if ahead + weight * mb > best:
+                    worth[to, holder] += ahead + weight * mb - best
+                    best = ahead + weight * mb
                 continue
             if record < 0 or clash[record_option[record]] < now:
-                best = ahead + weight * mb
+                best, holder = ahead + weight * mb, left
         else:
             if until < due:
                 ahead, until = ahead - per_second * (due - until), due
@@ -113,11 +119,11 @@ def merge(
         cover[to, left], bits[to, left] = until, met
         left += 1
     if simple:
-        return _prune_down(clash, spill, now, aboard, worth, cover, bits, via, to, left, record_option)
+        return _prune_down(clash, spill, now, aboard, worth, cover, bits, via, to, left, record_option, slack)
     left = _prune(clash, weight, True, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
-                  point_worth, wants, champion, spent)
+                  point_worth, wants, champion, spent, slack)
     return _prune(clash, -spill, False, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
-                  point_worth, wants, champion, spent)
+                  point_worth, wants, champion, spent, slack)
 
 
 @inlined
@@ -133,19 +139,22 @@ def missing(wants: Floats, met: int | np.int64) -> float:
 @inlined
 def _prune_down(
     clash: Integers, spill: float, now: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
-    via: Integers, side: int, count: int, record_option: Integers,
+    via: Integers, side: int, count: int, record_option: Integers, slack: float,
 ) -> int:
     """Downward: drop what holds less than another and is not ahead."""
-    best = -np.inf
+    best, holder = -np.inf, 0
     low = count
     for k in range(count - 1, -1, -1):
         ahead = worth[side, k] - spill * aboard[side, k]
-        if ahead > best:
+        if ahead > best + slack:
             record = via[side, k]
-            if record < 0 or clash[record_option[record]] < now:
-                best = ahead
             low -= 1
             _move(aboard, worth, cover, bits, via, side, k, low)
+            if record < 0 or clash[record_option[record]] < now:
+                best, holder = ahead, low
+        elif ahead > best:
+            worth[side, holder] += ahead - best
+            best = ahead
     if low > 0:
         for k in range(low, count):
             _move(aboard, worth, cover, bits, via, side, k, k - low)
@@ -156,7 +165,7 @@ def _prune_down(
 def _prune(
     clash: Integers, slope: float, forward: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
     bits: Integers, via: Integers, side: int, count: int, record_option: Integers, per_second: float,
-    point_worth: float, wants: Floats, champion: Integers, spent: Integers,
+    point_worth: float, wants: Floats, champion: Integers, spent: Integers, slack: float,
 ) -> int:
     """Drop labels that one before them makes useless (``forward``, by the weight), or one behind (minus spill cost).
 
@@ -170,8 +179,10 @@ def _prune(
         pairs += champions
         for c in range(champions):
             x = champion[c]
-            if (worth[side, x] + slope * aboard[side, x]
-                    >= key + _lacks(cover, bits, side, x, k, per_second, point_worth, wants)):
+            short = (key + _lacks(cover, bits, side, x, k, per_second, point_worth, wants)
+                     - worth[side, x] - slope * aboard[side, x])
+            if short <= slack:
+                worth[side, x] += max(0.0, short)
                 useless = True
                 break
         if useless:

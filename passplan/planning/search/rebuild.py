@@ -45,7 +45,8 @@ class Ground(NamedTuple):
 
 @compiled
 def rebuild(
-    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, due_price: Floats,
+    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, span_s: int, option_price: Floats,
+    due_price: Floats,
     point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
@@ -54,7 +55,8 @@ def rebuild(
 
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
-    nothing. At most ``most`` spacecraft are taken out at a time.
+    nothing. At most ``most`` spacecraft are taken out at a time, and only what starts within ``span_s`` of some instant
+    is rebuilt: the rest of their contacts stay, or go, but no others come.
     """
     np.random.seed(seed)
     count = len(size)
@@ -75,27 +77,29 @@ def rebuild(
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
-    old_worth, price = np.empty(most), np.empty(len(option_price))
+    old_worth, price = np.empty(most), np.full(len(option_price), np.inf)
     fresh = np.empty(a.most_contacts, dtype=np.int64)
     is_changed = np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
     while work.spent[0] - begun < effort:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
-        some = _pick(a, holder, ground.crafts, movable, out, wanted)
+        # Any instant is as likely to be within, also those at the ends.
+        from_s = int(np.random.random() * (a.horizon_s + span_s)) - span_s if span_s < a.horizon_s else 0
+        until_s = from_s + span_s if span_s < a.horizon_s else a.horizon_s
+        some = _pick(a, holder, ground.crafts, movable, out, wanted, from_s, until_s)
         change = missed(due_points, given)
         for k in range(some):
             old_worth[k] = worth[out[k]]
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
-            _release(a, now_taken[out[k]], now_size[out[k]], holder, room, given)
-            now_size[out[k]] = 0
+            _take_out(a, out[k], from_s, until_s, now_taken, now_size, holder, room, given)
         share = np.random.random() * _MOST_SHARE
         eager = np.random.random() * _MOST_EAGER * (_FAR_MORE if np.random.random() < _NOW_AND_THEN else 1.0)
         for turn in range(2 * some - 1):
             # First each pays for what others need, the last one has nobody left to leave room for; then all but the
             # last once more, for nothing.
             part = share if turn < some - 1 else 0.0
-            _replan(a, out[turn % some], part, option_price, price, eager, due_price, point_worth, work, holder, room,
-                    given, now_taken, now_size, fresh)
+            _replan(a, out[turn % some], from_s, until_s, part, option_price, price, eager, due_price, point_worth,
+                    work, holder, room, given, now_taken, now_size, fresh)
         change -= missed(due_points, given)
         for k in range(some):
             worth[out[k]] = _net_worth(a, out[k], now_taken[out[k]], now_size[out[k]], point_worth)
@@ -121,33 +125,78 @@ def rebuild(
 
 
 @compiled
+def _take_out(
+    a: FleetArrays, i: int, from_s: int, until_s: int, taken: Integers, size: Integers, holder: Integers, room: Floats,
+    given: Floats,
+) -> None:
+    """Take the contacts that start within ``from_s : until_s`` out of the schedule of a spacecraft."""
+    _release(a, taken[i], size[i], holder, room, given)
+    kept = 0
+    for k in range(size[i]):
+        if not from_s <= a.span[taken[i, k], 0] < until_s:
+            taken[i, kept] = taken[i, k]
+            kept += 1
+    size[i] = kept
+    _claim(a, taken[i], kept, holder, room, given, i)
+
+
+@compiled
 def _replan(
-    a: FleetArrays, i: int, part: float, option_price: Floats, price: Floats, eager: float, due_price: Floats,
-    point_worth: float, work: Work, holder: Integers, room: Floats, given: Floats, taken: Integers, size: Integers,
-    fresh: Integers,
+    a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, price: Floats, eager: float,
+    due_price: Floats, point_worth: float, work: Work, holder: Integers, room: Floats, given: Floats, taken: Integers,
+    size: Integers, fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
 
-    For dues that are not met without it, it is paid ``eager`` times their price. It keeps the schedule it has where
-    the program gives none that can be used.
+    For dues that are not met without it, it is paid ``eager`` times their price.
+    Contacts that start outside ``from_s : until_s`` come from those it has. It keeps the schedule it has where the
+    program gives none that can be used. ``price`` is infinite throughout, and is so again afterwards.
     """
-    _release(a, taken[i], size[i], holder, room, given)
-    due_at, due_to, due_share = a.dues.at, a.dues.to, a.dues.share
     use_at, use_first, use_last, cost = a.use_at, a.use_first, a.use_last, a.cost
     load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
-    for o in range(a.first[i], a.first[i + 1]):
-        free = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
-        price[o] = cost[o] + part * option_price[o] if free else np.inf
-        for e in range(due_at[o], due_at[o + 1]):
-            if given[due_to[e]] < 1.0:
-                price[o] -= eager * due_price[due_to[e]] * due_share[e]
-    work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
+    due_at, due_to, due_share = a.dues.at, a.dues.to, a.dues.share
+    low, high = _within(a, i, from_s, until_s)
+    _release(a, taken[i], size[i], holder, room, given)
+    for o in range(low, high):
+        if is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room):
+            rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
+            price[o] = cost[o] + part * option_price[o] - rewarded
+    for k in range(size[i]):
+        o = taken[i, k]
+        price[o] = cost[o] + part * option_price[o] - eager * _reward(
+            due_at, due_to, due_share, due_price, given, o)
+    work.spent[0] += _OVERHEAD + (high - low) // 4
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
+    price[low:high] = np.inf
+    for k in range(size[i]):
+        price[taken[i, k]] = np.inf
     if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and _fits(a, fresh, count, room):
         size[i] = count
         for c in range(count):
             taken[i, c] = fresh[c]
     _claim(a, taken[i], size[i], holder, room, given, i)
+
+
+@inlined
+def _reward(
+    due_at: Integers, due_to: Integers, due_share: Floats, due_price: Floats, given: Floats, option: int,
+) -> float:
+    """What an option is rewarded with by the dues that are not met yet."""
+    total = 0.0
+    for e in range(due_at[option], due_at[option + 1]):
+        if given[due_to[e]] < 1.0:
+            total += due_price[due_to[e]] * due_share[e]
+    return total
+
+
+@inlined
+def _within(a: FleetArrays, i: int, from_s: int, until_s: int) -> tuple[int, int]:
+    """The options of a spacecraft that start within ``from_s : until_s``, as a range."""
+    low, high = a.first[i], a.first[i + 1]
+    if from_s <= 0 and until_s >= a.horizon_s:
+        return low, high
+    starts = a.span[low:high, 0]
+    return low + np.searchsorted(starts, from_s), low + np.searchsorted(starts, until_s)
 
 
 @compiled
@@ -243,7 +292,8 @@ def _enter(
 
 @compiled
 def _pick(
-    a: FleetArrays, holder: Integers, crafts: Flags, movable: Integers, out: Integers, wanted: int,
+    a: FleetArrays, holder: Integers, crafts: Flags, movable: Integers, out: Integers, wanted: int, from_s: int,
+    until_s: int,
 ) -> int:
     """Choose spacecraft that stand in each other's way: one at random, then holders of time others could use."""
     out[0] = movable[np.random.randint(len(movable))]
@@ -252,9 +302,10 @@ def _pick(
         if some >= wanted:
             break
         i = out[np.random.randint(some)]
-        if a.first[i + 1] == a.first[i]:
+        low, high = _within(a, i, from_s, until_s)
+        if high <= low:
             continue
-        o = np.random.randint(a.first[i], a.first[i + 1])
+        o = np.random.randint(low, high)
         if a.use_at[o + 1] == a.use_at[o]:
             continue
         u = np.random.randint(a.use_at[o], a.use_at[o + 1])

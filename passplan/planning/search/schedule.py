@@ -37,7 +37,8 @@ def best_schedule(
     # Out of the tuples once: every look into one costs more than the step that it is for.
     end_of, node, arrival, span, clash, spill = a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
     (aboard, worth, cover, bits, via, wait_aboard, wait_worth, wait_cover, wait_bits, record_option, record_before,
-     run_low, run_high, run_next, champion, spent) = work
+     run_low, run_high, run_next, champion, spent, slacks) = work
+    slack = slacks[0]
     maps, use_at, use_first, use_last, renews, own_bits = a.maps, a.use_at, a.use_first, a.use_last, a.renews, a.bits
     load_at, load_row, load_amount, load_own = a.load_at, a.load_row, a.load_amount, a.load_own
     base, nodes, start_s = a.start_first[i], a.start_first[i + 1] - a.start_first[i], a.start_s
@@ -66,7 +67,7 @@ def best_schedule(
         while run >= 0:
             here = merge(clash, spill, weight, simple, now, aboard, worth, cover, bits, via, side, here, wait_aboard,
                          wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run],
-                         min(float(now), recur_until), per_second, point_worth, wants, past, champion, spent)
+                         min(float(now), recur_until), per_second, point_worth, wants, past, champion, spent, slack)
             if here < 0:
                 return np.inf, -1
             side, run = 1 - side, run_next[run]
