@@ -121,7 +121,7 @@ class Sweeper:
         self._unit = units(arrays)
 
     def __call__(
-        self, price: Floats, point_worth: float, arrays: FleetArrays | None = None, slack: float = 0.0,
+        self, price: Floats, point_worth: float, slack: float = 0.0, arrays: FleetArrays | None = None,
     ) -> Sweep | None:
         """All spacecraft at the given prices (c + r + d,), of another objective if ``arrays`` are given.
 
@@ -319,7 +319,7 @@ class BoundSearch:
     def settle(self) -> None:
         """Find the ceiling at the best prices once more without slack, if there is time."""
         if self.slack > 0.0:
-            at = self.sweeper(self.best_price, self.point_worth, self._blended(self.hold_price))
+            at = self.sweeper(self.best_price, self.point_worth, 0.0, self._blended(self.hold_price))
             if at is not None:
                 here = self._ceiling(at, self.best_price, self.point_worth, self.hold_price)
                 self.bound = min(self.bound, here)
@@ -333,7 +333,7 @@ class BoundSearch:
 
         None if time is up before it is known.
         """
-        at = self.sweeper(self.price, self._point_worth, self._blended(self._hold_price), self.slack)
+        at = self.sweeper(self.price, self._point_worth, self.slack, self._blended(self._hold_price))
         if at is None:
             return None
         here = self._ceiling(at, self.price, self._point_worth, self._hold_price)

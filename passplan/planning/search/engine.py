@@ -292,7 +292,7 @@ class _Rounds:
         if self.points <= 0.0:
             return self.point_worth, False
         if not len(arrays.dues.to):
-            at = self.sweeper(np.zeros(len(units(arrays))), self.point_worth, arrays)
+            at = self.sweeper(np.zeros(len(units(arrays))), self.point_worth, 0.0, arrays)
             if at is None or (
                     self.points <= at.points.sum() + points_missed(arrays.dues, at.taken, at.size) + _SAME_POINTS):
                 return self.point_worth, False
