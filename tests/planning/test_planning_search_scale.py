@@ -18,7 +18,7 @@ from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import relative_gap
 from passplan.planning.rules import all_terms
 from passplan.planning.search import engine
-from passplan.planning.search.bound import Sweep, Sweeper
+from passplan.planning.search.bound import Sweep, Sweeper, limits_of
 from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
 from passplan.planning.search.labels import make_work
 from passplan.planning.value import account
@@ -31,7 +31,7 @@ def arrays_of(problem: Problem) -> FleetArrays:
 
 
 def swept(sweeper: Sweeper, arrays: FleetArrays, seed: int, slack: float = 0.0) -> Sweep:
-    price = np.random.default_rng(seed).uniform(0.0, 30.0, len(arrays.limit) + arrays.cliques)
+    price = np.random.default_rng(seed).uniform(0.0, 30.0, len(limits_of(arrays)))
     found = sweeper(price, 100.0, slack)
     assert found is not None
     return found
@@ -78,7 +78,7 @@ def test_labels_that_find_no_room_make_a_looser_ceiling_not_none(seed: int) -> N
 
 def test_a_sweep_ends_when_time_is_up() -> None:
     arrays = arrays_of(random_problem(3))
-    price = np.zeros(len(arrays.limit) + arrays.cliques)
+    price = np.zeros(len(limits_of(arrays)))
     clock = Clock(60.0)
     assert Sweeper(arrays, clock=clock)(price, 0.0) is not None
     clock.stop()
