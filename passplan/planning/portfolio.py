@@ -24,7 +24,7 @@ from passplan.planning.result import OPTIMAL_GAP, PlanResult, Proof, Tier, relat
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import can_search, fleet_arrays
+from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
@@ -99,7 +99,7 @@ def _plan_part(
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         arrays = None
-        if len(problem.options) > limits.exact_options and can_search(problem) and compiled_in_time(clock):
+        if len(problem.options) > limits.exact_options and compiled_in_time(clock):
             arrays = fleet_arrays(problem, terms, maps)
         began_s = clock.elapsed_s()
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
@@ -132,7 +132,7 @@ def _plan_part(
             if solved.chosen is None or not news:
                 break
             overrated += news
-    if open_still() and can_search(problem) and compiled_in_time(clock):
+    if open_still() and compiled_in_time(clock):
         with clock.stage("search"):
             if arrays is None:
                 arrays = fleet_arrays(problem, terms, maps)

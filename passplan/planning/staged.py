@@ -25,7 +25,7 @@ from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import lowest_ceiling
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import can_search, fleet_arrays, load_plan
+from passplan.planning.search.fleetarrays import fleet_arrays, load_plan
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.search.schedule import worth_of
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
@@ -149,7 +149,7 @@ class _Staged:
         def tell(_: float, above: float) -> None:
             self._say(k, min(bound, above + total.base_worth - held))
 
-        if not (can_search(total) and compiled_in_time(time)):
+        if not compiled_in_time(time):
             return bound
         arrays, points = fleet_arrays(total, self.terms, self.maps), self.best.points
         if not len(arrays.option):
@@ -167,7 +167,7 @@ class _Staged:
         objective in hand.
         """
         total, shares = self._sum(k, gently=True), self._weights(k, gently=True)
-        if not (can_search(total) and compiled_in_time(time)):
+        if not compiled_in_time(time):
             return bound
         arrays = fleet_arrays(total, self.terms, self.maps)
         if not len(arrays.option):

@@ -5,8 +5,9 @@ shortfall a price q >= 0. For any prices, no plan with at most s points is worth
 
     sum over spacecraft of max(worth - prices of its options - q x its points) + sum(p) + sum(r) + q s
 
-because a plan pays each clique at most once and each row at most up to its limit (Lagrangian duality; subgradient
-method: Held, Wolfe and Crowder 1974). Each maximum is found exactly by the schedule program, without the rows.
+(s without what no option can meet), because a plan pays each clique at most once and each row at most up to its limit
+(Lagrangian duality; subgradient method: Held, Wolfe and Crowder 1974). Each maximum is found by the schedule program,
+without the rows; of spacecraft with classes of data, a ceiling of it.
 The prices are the certificate: ``certificate.py`` evaluates them again by other code.
 """
 
@@ -223,7 +224,8 @@ def lowest_ceiling(
     with ThreadPoolExecutor(max(1, threads)) as pool:
         sweeper = Sweeper(arrays, threads, pool if threads > 1 else None)
         bounds = BoundSearch(
-            arrays, sweeper, points + more_points, point_worth, abs(value), abs(value) / max(1, int(size.sum())))
+            arrays, sweeper, points + more_points - arrays.hopeless, point_worth, abs(value),
+            abs(value) / max(1, int(size.sum())))
         idle = 0
         while not clock.expired() and idle < _PATIENCE:
             before = bounds.bound

@@ -93,9 +93,10 @@ class _Rounds:
         self.work = [make_work() for _ in range(self.workers)]
         self.value, self.points = self._worth()
         # What the search does not count stays as it is.
-        self.more_points = points - self.points
+        self.more_points = points - self.points - arrays.hopeless
         self.bounds = BoundSearch(
-            arrays, self.sweeper, points, self._first_point_worth(), abs(self.value), self._contact_worth())
+            arrays, self.sweeper, self.points + self.more_points, self._first_point_worth(), abs(self.value),
+            self._contact_worth())
         self.bound_rate = self.value_rate = 0.0
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:

@@ -42,6 +42,10 @@ def keys_of(arrays: FleetArrays) -> Floats:
     end = np.clip(capacity + arrays.maps[:, 0], arrays.maps[:, 1], arrays.maps[:, 2])
     lost = arrays.maps[:, 3] + np.maximum(0.0, capacity - arrays.maps[:, 4])
     sent = capacity + arrays.maps[:, 5] - end - lost
+    # With classes, of which one may hold less than there is: all that the link carries.
+    piece, owner = arrays.classes.piece, np.repeat(np.arange(len(craft)), np.diff(arrays.classes.piece_first))
+    carried = np.bincount(owner, weights=(piece[:, 1] - piece[:, 0]) * piece[:, 2], minlength=len(craft))
+    sent = np.where(np.diff(arrays.layers.first)[craft] > 0, carried, sent)
     keys: Floats = sent * (arrays.craft[craft, 0] + arrays.spill) - arrays.cost
     return keys
 

@@ -26,6 +26,7 @@ from passplan.planning.maps import StorageMaps
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Lane, Terms
 from passplan.planning.search.clash import find_clashes
+from passplan.planning.search.layerarrays import ClassArrays, LayerArrays, class_arrays, layer_arrays
 
 # Wanted terms of one spacecraft are bits of one integer.
 _MOST_WANTED = 60
@@ -52,9 +53,10 @@ class FleetArrays(NamedTuple):
     spacecraft may add to that row too. ``limit`` is per row.
 
     ``wants`` (n, 60) are the points of each bit, ``wants_until`` the last start [s] that meets it; ``recur`` (n, 3)
-    from, until and points per second of the recurrence (until 0 where there is none). ``clique_lane`` and ``clique_s``
-    say of each clique which of the terms' lanes it is
-    of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
+    from, until and points per second of the recurrence (until 0 where there is none); ``hopeless`` are points of what
+    no option can meet. ``clique_lane`` and ``clique_s`` say of each clique which of the terms' lanes it is of, and at
+    which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
+    ``layers`` and ``classes`` are those of spacecraft with classes of data, see ``layerarrays.py``.
     """
 
     option: Integers
@@ -82,17 +84,15 @@ class FleetArrays(NamedTuple):
     wants: Floats
     wants_until: Integers
     recur: Floats
+    hopeless: float
     horizon_s: int
     spill: float
     cliques: int
     clique_lane: Integers
     clique_s: Integers
     most_contacts: int
-
-
-def can_search(problem: Problem) -> bool:
-    """Whether the search's schedule program follows the storage of every spacecraft: one class of data, one rate."""
-    return not any(problem.fleet.streams)
+    layers: LayerArrays
+    classes: ClassArrays
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
@@ -117,7 +117,7 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         arrival[mine] = np.searchsorted(distinct, ready_s[mine])
         starts.append(distinct)
     use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
-    bits, wants, wants_until, uncounted = _wanted(problem, terms, place, len(order))
+    bits, wants, wants_until, uncounted, hopeless = _wanted(problem, terms, place, len(order))
     renews, recur = _recurrences(problem, terms, place, uncounted)
     for promise in terms.guarantees:
         kept = place[promise.options]
@@ -134,13 +134,14 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         start_s=np.concatenate([*starts, np.zeros(0, dtype=np.int64)]), node=node, arrival=arrival,
         span=np.column_stack([start_s, end_s]),
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
-                              maps.generated_mb])[order],
+                              maps.generated_mb])[maps.first_row[order]],
         cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
-        wants=wants, wants_until=wants_until, recur=recur, horizon_s=problem.horizon_s,
+        wants=wants, wants_until=wants_until, recur=recur, hopeless=hopeless, horizon_s=problem.horizon_s,
         spill=problem.spill_cost_per_mb, cliques=len(clique_s), clique_lane=clique_lane, clique_s=clique_s,
-        most_contacts=_longest_chain(first, node, arrival))
+        most_contacts=_longest_chain(first, node, arrival),
+        layers=layer_arrays(problem, maps, order, first, starts, arrival), classes=class_arrays(problem, order))
 
 
 def _own_and_shared(
@@ -204,14 +205,18 @@ def _longest_hold(problem: Problem, shared: Iterable[Lane]) -> int:
     return before_s + after_s
 
 
-def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tuple[Integers, Floats, Integers, Flags]:
+def _wanted(
+    problem: Problem, terms: Terms, place: Integers, count: int,
+) -> tuple[Integers, Floats, Integers, Flags, float]:
     bits, points = np.zeros(count, dtype=np.int64), np.zeros((len(problem.fleet), _MOST_WANTED))
     until = np.full(points.shape, -1, dtype=np.int64)
     uncounted = np.zeros(count, dtype=bool)
     used = np.zeros(len(problem.fleet), dtype=np.int64)
+    hopeless = 0.0
     for want in terms.wanted:
         rows = place[want.options]
         rows = rows[rows >= 0]
+        hopeless += want.points if len(rows) == 0 else 0.0
         craft = np.unique(problem.options.spacecraft[want.options])
         if len(craft) != 1 or used[craft[0]] >= _MOST_WANTED:
             uncounted[rows] = True
@@ -220,7 +225,7 @@ def _wanted(problem: Problem, terms: Terms, place: Integers, count: int) -> tupl
             points[craft[0], used[craft[0]]] = want.points
             until[craft[0], used[craft[0]]] = problem.options.start_s[want.options].max()
             used[craft[0]] += 1
-    return bits, points, until, uncounted
+    return bits, points, until, uncounted, hopeless
 
 
 def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Flags) -> tuple[Integers, Floats]:

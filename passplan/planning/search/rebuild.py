@@ -17,6 +17,7 @@ from typing import NamedTuple
 import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
+from passplan.planning.search.changed import change, fits
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
 from passplan.planning.search.labels import Work
@@ -24,8 +25,9 @@ from passplan.planning.search.schedule import best_schedule, clashes, worth_of
 
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
-# What a call costs beside its labels, in labels.
+# What a call costs beside its labels, in labels; and what it costs to follow classes of data through some changes.
 _OVERHEAD = 100
+_CHANGES = 2_000
 
 
 class Ground(NamedTuple):
@@ -121,7 +123,14 @@ def _replan(
         price[o] = cost[o] + part * option_price[o] if free else np.inf
     work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
-    if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and _fits(a, fresh, count, room):
+    usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
+    if a.classes.loose[i]:
+        if not usable:
+            count = size[i]
+            fresh[:count] = taken[i, :count]
+        count, usable = change(a, i, price, point_worth, room, fresh[:taken.shape[1]], count), True
+        work.spent[0] += _CHANGES
+    if usable:
         size[i] = count
         for c in range(count):
             taken[i, c] = fresh[c]
@@ -173,20 +182,6 @@ def is_free(
     for e in range(load_at[option], load_at[option + 1]):
         roomy = roomy and load_amount[e] <= room[load_row[e]]
     return roomy
-
-
-@compiled
-def _fits(a: FleetArrays, taken: Integers, size: int, room: Floats) -> bool:
-    """Whether the rows have room for a whole schedule."""
-    if len(room) == 0:
-        return True
-    load(a, taken, size, room, -1.0)
-    fits = True
-    for k in range(size):
-        for e in range(a.load_at[taken[k]], a.load_at[taken[k] + 1]):
-            fits = fits and room[a.load_row[e]] >= 0.0
-    load(a, taken, size, room, 1.0)
-    return fits
 
 
 @inlined
