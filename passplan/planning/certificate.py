@@ -6,11 +6,13 @@ up to its limit at most, and a plan misses so many points at most; so no plan is
     sum over spacecraft of the best (worth - prices of its contacts - price of a point x its points)
     + all prices of instants + prices of rows x their limits + price of a point x points
 
-whatever the prices are, as long as none is negative (Lagrangian duality). :func:`bound_of` finds the best of each
+A plan that gives a guarantee a part of what is due misses the rest of its points; so each contact may earn its part of
+a price that is not above that of those points, if the price is taken off at the end. The sum is a bound whatever the
+prices are, as long as none is negative (Lagrangian duality). :func:`bound_of` finds the best of each
 spacecraft once more, contact by contact with the storage followed event by event as ``value.py`` does, in plain
 Python: slow, and short enough to be read. Classes of data count by their layers (see ``layering.py``), which are worth
 at least as much. Where a plan has to count what is not a matter of one spacecraft (a request
-that several could meet, a guarantee), it is not counted here, which can only raise the bound.
+that several could meet), it is not counted here, which can only raise the bound.
 
 A bound of the exact model rests on the model; :func:`bound_of` has another solver solve it.
 """
@@ -38,7 +40,8 @@ class PriceCertificate:
     """Prices of lanes at instants, (k,) each: the lane's index in the terms, the instant [s], the price.
 
     ``rows``, ``row`` and ``row_price`` (r,) are the index of the ``Rows`` in the terms, the row in it, and the price of
-    one unit of its amounts. ``point_price`` is per point of shortfall, ``points`` what plans have at most.
+    one unit of its amounts; ``promise_price`` (g,) is that of all that each guarantee is due. ``point_price`` is per
+    point of shortfall, ``points`` what plans have at most.
     """
 
     lane: Integers
@@ -47,6 +50,7 @@ class PriceCertificate:
     rows: Integers
     row: Integers
     row_price: Floats
+    promise_price: Floats
     point_price: float
     points: float
 
@@ -69,15 +73,18 @@ def bound_of(problem: Problem, terms: Terms, certificate: Certificate) -> float:
     """What a certificate proves: no plan of ``problem`` under ``terms`` with as few shortfalls is worth more."""
     if isinstance(certificate, ModelCertificate):
         return _solved_again(certificate) + problem.base_worth
-    if min((x.min(initial=0.0) for x in (certificate.price, certificate.row_price)), default=0.0) < 0.0:
+    if min(x.min(initial=0.0) for x in (certificate.price, certificate.row_price, certificate.promise_price)) < 0.0:
         raise ValueError("a certificate with negative prices proves nothing")
+    most = [certificate.point_price * promise.points for promise in terms.guarantees]
+    if np.any(certificate.promise_price > np.array(most) * (1.0 + 1e-12)):
+        raise ValueError("a guarantee cannot cost more than the points of missing it")
     price = _option_prices(problem, terms, certificate)
     limits = sum(float(terms.rows[k].limit[r]) * p for k, r, p in zip(
         certificate.rows.tolist(), certificate.row.tolist(), certificate.row_price.tolist(), strict=True))
     crafts = range(len(problem.fleet))
     best = math.fsum(_best_of(problem, terms, craft, price, certificate.point_price) for craft in crafts)
     paid = float(certificate.price.sum()) + limits + certificate.point_price * certificate.points
-    return float(best + paid + problem.base_worth)
+    return float(best + paid - certificate.promise_price.sum() + problem.base_worth)
 
 
 def _solved_again(certificate: ModelCertificate) -> float:
@@ -100,6 +107,8 @@ def _option_prices(problem: Problem, terms: Terms, certificate: PriceCertificate
         of_row = np.zeros(len(rows))
         of_row[certificate.row[certificate.rows == k]] = certificate.row_price[certificate.rows == k]
         np.add.at(price, rows.options, rows.amounts * np.repeat(of_row, np.diff(rows.offset)))
+    for promise, all_due in zip(terms.guarantees, certificate.promise_price.tolist(), strict=True):
+        np.add.at(price, promise.options, -promise.amounts / promise.need * all_due)
     return price
 
 

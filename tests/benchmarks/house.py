@@ -25,6 +25,7 @@ from passplan.planning.rules.decisions import DecidedContact, ForbiddenWindow
 from passplan.planning.rules.guarantees import GuaranteeNeed, carries_mb
 from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNeed
 from passplan.planning.rules.shared_equipment import SharedNeed
+from passplan.planning.streams import Keeping, Stream, steady
 
 _ORBIT_S = 5_700
 _HOUR_S = 3_600
@@ -45,7 +46,8 @@ class House:
             self.staff, self.backhaul_day, self.backhaul_rate, self.contact_gap, self.cool_down, self.counts_per_orbit,
             self.counts_per_day, self.sending_per_contact, self.sending_per_orbit, self.sending_per_span, self.battery,
             self.slots, self.loaded, self.commands, self.requests, self.pins, self.forbids, self.emergency,
-            self.daily_contacts, self.daily_mb, self.mission, self.interference, self.crowd, self.budget)
+            self.daily_contacts, self.daily_mb, self.mission, self.interference, self.crowd, self.budget, self.classes,
+            self.fairness)
         return {maker.__name__.replace("_", " "): maker() for maker in makers}
 
     # Antennas and sites.
@@ -256,6 +258,38 @@ class House:
     def budget(self) -> Callable[[Problem], Problem]:
         """Four fifths of what the plan without rules costs."""
         return self._needs(BudgetNeed(0.8 * float(self.base.options.cost[self.free].sum()), (self._day(),)))
+
+    # Data and fairness.
+
+    def classes(self) -> Callable[[Problem], Problem]:
+        """Alerts that fade within four hours, frames with a deadline of five, and calibration that hardly counts."""
+        fleet, horizon_s = self.base.fleet, float(self.base.horizon_s)
+        mine = set(self._every(5, 0))
+
+        def part(craft: int, name: str, worth: float, share: float) -> Stream:
+            rate = share * float(fleet.generation_mb_per_s[craft])
+            return steady(name, worth * float(fleet.weight[craft]), share * float(fleet.start_fill_mb[craft]), rate,
+                          horizon_s)
+
+        streams = tuple(() if k not in mine else (
+            replace(part(k, "alerts", 2.0, 0.1), fresh_age_s=np.array([0.0, 4.0 * _HOUR_S]),
+                    fresh_share=np.array([1.0, 0.5])),
+            replace(part(k, "frames", 1.0, 0.7), deadline_s=5.0 * _HOUR_S, start_age_s=2.0 * _HOUR_S),
+            part(k, "calibration", 0.3, 0.2)) for k in range(len(fleet)))
+        keeping = tuple(Keeping(k % 10 == 5, "contact" if k % 10 == 0 and k in mine else "")
+                        for k in range(len(fleet)))
+        weight = fleet.weight * np.where(np.isin(np.arange(len(fleet)), list(mine)), 2.0, 1.0)
+        return lambda p: replace(p, fleet=replace(p.fleet, weight=weight, streams=streams, keeping=keeping))
+
+    def fairness(self) -> Callable[[Problem], Problem]:
+        """Five missions, each promised a little more than the least share that the plan without rules brings any."""
+        fleet, carried = self.base.fleet, carries_mb(self.base)
+        data_mb = fleet.start_fill_mb + fleet.generation_mb_per_s * self.base.horizon_s
+        crews = [self._every(5, k) for k in range(5)]
+        floor = 1.02 * min(
+            sum(float(carried[self._free_of(k)].sum()) for k in crew) / float(data_mb[crew].sum()) for crew in crews)
+        return self._needs(*(self._guarantee("MB", crew, min(1.0, floor) * float(data_mb[crew].sum()))
+                             for crew in crews))
 
     # What they are made of.
 

@@ -30,6 +30,7 @@ from passplan.planning.rules import all_terms
 from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.shortfalls import find_shortfalls, total_points
+from passplan.planning.value import account
 
 
 def greedy(problem: Problem) -> np.ndarray:
@@ -47,7 +48,10 @@ def breach(problem: Problem, chosen: np.ndarray) -> str:
     if fault is not None:
         return fault
     points = total_points(find_shortfalls(terms, chosen))
-    return f"{points:.2f} points of shortfall" if points > 0.0 else ""
+    if points > 0.0:
+        return f"{points:.2f} points of shortfall"
+    missed_mb = sum(one.missed_mb for own in account(problem, chosen).classes for one in own)
+    return f"{missed_mb:.0f} MB dropped at their deadline" if missed_mb > 0.0 else ""
 
 
 def report(result: PlanResult) -> None:

@@ -7,7 +7,8 @@ shortfall a price q >= 0. For any prices, no plan with at most s points is worth
 
 (s without what no option can meet), because a plan pays each clique at most once and each row at most up to its limit
 (Lagrangian duality; subgradient method: Held, Wolfe and Crowder 1974). Each maximum is found by the schedule program,
-without the rows; of spacecraft with classes of data, a ceiling of it.
+without the rows; of spacecraft with classes of data, a ceiling of it. A guarantee is a row the other way round: what a
+plan gives to it is paid for with up to q times its points, and the price of all that is due is taken off.
 The prices are the certificate: ``certificate.py`` evaluates them again by other code.
 """
 
@@ -35,7 +36,7 @@ _HALF_AFTER = 10.0
 _MEAN_MEMORY = 0.9
 _SQUARE_MEMORY = 0.99
 _LEAST_SIZE = 0.1
-_SHRINK = 0.5
+_SHRINK, _LESS = 0.5, 1e-3
 # After so many steps it is time for another way, and then for a new start from the best prices with steps this long.
 _STEPS = 1_500
 _NEXT_STEP = 0.1
@@ -48,7 +49,7 @@ _PATIENCE, _FEW, _REST = 12, 5, 1e-5
 
 @dataclass(frozen=True, eq=False)
 class Sweep:
-    """All spacecraft at one set of prices: worth (n,), points (n,), and how far each limit is used (c + r,)."""
+    """All spacecraft at one set of prices: worth (n,), points (n,), and how far each limit is used (c + r + g,)."""
 
     worth: Floats
     points: Floats
@@ -58,7 +59,7 @@ class Sweep:
 @compiled
 def _sweep(
     a: FleetArrays, low: int, high: int, price: Floats, point_worth: float, work: Work, worth: Floats, points: Floats,
-    edges: Integers, loads: Floats,
+    edges: Integers, loads: Floats, gifts: Floats,
 ) -> None:
     taken = np.empty(a.most_contacts, dtype=np.int64)
     no_room = np.empty(0)
@@ -71,6 +72,8 @@ def _sweep(
                 edges[a.use_last[u]] -= 1
             for e in range(a.load_at[taken[k]], a.load_at[taken[k] + 1]):
                 loads[a.load_row[e]] += a.load_amount[e]
+            for e in range(a.give_at[taken[k]], a.give_at[taken[k] + 1]):
+                gifts[a.give_to[e]] += a.give_amount[e]
 
 
 class Sweeper:
@@ -83,22 +86,24 @@ class Sweeper:
         self._unit = units(arrays)
 
     def __call__(self, price: Floats, point_worth: float) -> Sweep:
-        """All spacecraft at the given prices (c + r,)."""
+        """All spacecraft at the given prices (c + r + g,)."""
         a = self.arrays
-        option_price = option_prices(a, price) + a.cost
+        option_price = option_prices(a, price) - gift_worths(a, price) + a.cost
         worth, points = np.zeros(len(a.craft)), np.zeros(len(a.craft))
         edges = [np.zeros(a.cliques + 1, dtype=np.int64) for _ in self.work]
         loads = [np.zeros(len(a.limit)) for _ in self.work]
+        gifts = [np.zeros(len(a.promise)) for _ in self.work]
 
         def run(k: int) -> None:
             _sweep(a, self.parts[k], self.parts[k + 1], option_price, point_worth, self.work[k], worth, points,
-                   edges[k], loads[k])
+                   edges[k], loads[k], gifts[k])
 
         if self.pool is None:
             run(0)
         else:
             list(self.pool.map(run, range(len(edges))))
-        use = np.concatenate([np.cumsum(np.sum(edges, axis=0))[:-1], np.sum(loads, axis=0) / self._unit])
+        use = np.concatenate([np.cumsum(np.sum(edges, axis=0))[:-1], np.sum(loads, axis=0) / self._unit,
+                              -np.sum(gifts, axis=0)])
         return Sweep(worth, points, use)
 
 
@@ -108,14 +113,27 @@ def units(arrays: FleetArrays) -> Floats:
 
 
 def limits_of(arrays: FleetArrays) -> Floats:
-    """How much of each clique and row there is, in the units of their prices, shape (c + r,)."""
-    return np.concatenate([np.ones(arrays.cliques), arrays.limit / units(arrays)])
+    """How much of each clique and row there is, in the units of their prices, and minus what each guarantee is due.
+
+    Shape (c + r + g,).
+    """
+    return np.concatenate([np.ones(arrays.cliques), arrays.limit / units(arrays), -np.ones(len(arrays.promise))])
 
 
 def option_prices(arrays: FleetArrays, price: Floats) -> Floats:
     """What the cliques and rows of each option cost together, shape (m,)."""
     total = np.zeros(len(arrays.option))
-    _add_prices(arrays, price[: arrays.cliques], price[arrays.cliques:] / units(arrays), total)
+    rows = slice(arrays.cliques, arrays.cliques + len(arrays.limit))
+    _add_prices(arrays, price[: arrays.cliques], price[rows] / units(arrays), total)
+    return total
+
+
+def gift_worths(arrays: FleetArrays, price: Floats) -> Floats:
+    """What each option is paid for what it gives to guarantees, shape (m,)."""
+    owner = np.repeat(np.arange(len(arrays.option)), np.diff(arrays.give_at))
+    paid = arrays.give_amount * price[arrays.cliques + len(arrays.limit):][arrays.give_to]
+    total = np.zeros(len(arrays.option))
+    np.add.at(total, owner, paid)
     return total
 
 
@@ -131,11 +149,13 @@ def _add_prices(a: FleetArrays, clique_price: Floats, row_price: Floats, total: 
 
 def certificate_of(arrays: FleetArrays, terms: Terms, bounds: BoundSearch) -> PriceCertificate:
     """The best prices found, in the words of the terms."""
-    counts = np.array([len(rows) for rows in terms.rows], dtype=np.int64)
+    counts = np.array([len(one) for one in terms.rows], dtype=np.int64)
+    rows = arrays.cliques + len(arrays.limit)
     return PriceCertificate(
         arrays.clique_lane, arrays.clique_s, bounds.best_price[: arrays.cliques],
         np.repeat(np.arange(len(counts)), counts), ragged_ranges(np.zeros_like(counts), counts),
-        bounds.best_price[arrays.cliques:] / units(arrays), bounds.point_worth, bounds.plan_points)
+        bounds.best_price[arrays.cliques:rows] / units(arrays), bounds.best_price[rows:], bounds.best_point_worth,
+        bounds.plan_points)
 
 
 class BoundSearch:
@@ -153,11 +173,14 @@ class BoundSearch:
         self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
         self.limits = limits_of(arrays)
         self.bound = np.inf
-        self.floor = _FLOOR * worth / max(1, len(self.limits))
-        self.price = self.best_price = np.full(len(self.limits), self.floor)
-        self.point_worth = point_worth
+        self._weigh_points(point_worth)
+        self.best_point_worth, self._contact_worth = point_worth, contact_worth
+        self.floor = np.minimum(self.top, _FLOOR * worth / max(1, len(self.limits)))
+        self.price = self.best_price = self.floor
         self._mean, self._square = np.zeros(len(self.limits)), np.zeros(len(self.limits))
-        width = max(1.0, float((arrays.use_last - arrays.use_first).sum()) / max(1, len(arrays.option)))
+        paid = float((arrays.use_last - arrays.use_first).sum() + arrays.give_amount.sum()
+                     + (arrays.load_amount / units(arrays)[arrays.load_row]).sum())
+        width = max(1.0, paid / max(1, len(arrays.option)))
         self._step = _FIRST_STEP * contact_worth / width
         self._steps = 0
 
@@ -171,8 +194,10 @@ class BoundSearch:
         for _ in range(iterations):
             here, gradient = self._evaluate()
             if not np.isfinite(here):
-                # Too many labels at these prices: go back to good ones, and on with care.
-                self.price, self._step = self.best_price, self._step * _SHRINK
+                # Too many labels at these prices: go back to good ones, and on with care. Where points are worth so
+                # much more than anything else that no two labels are alike, they may be worth less.
+                self._weigh_points(max(self._contact_worth, _LESS * self.point_worth))
+                self.price, self._step = np.minimum(self.best_price, self.top), self._step * _SHRINK
                 self._mean = np.zeros(len(self.limits))
                 continue
             self._steps += 1
@@ -181,18 +206,23 @@ class BoundSearch:
             mean = self._mean / (1.0 - _MEAN_MEMORY**self._steps)
             size = np.sqrt(self._square / (1.0 - _SQUARE_MEMORY**self._steps))
             step = self._step / (1.0 + self._steps / _HALF_AFTER)
-            self.price = np.maximum(self.floor, self.price + step * mean / (size + _LEAST_SIZE))
+            self.price = np.clip(self.price + step * mean / (size + _LEAST_SIZE), self.floor, self.top)
 
     def _polish(self, iterations: int, value: float) -> None:
         """Polyak's steps (1969) from the best prices: they end exactly where the ceiling meets the plan, if it does."""
-        self.price = self.best_price
+        self.price = np.minimum(self.best_price, self.top)
         for _ in range(iterations):
             here, gradient = self._evaluate()
             size = float(gradient @ gradient)
             if not np.isfinite(here) or size <= 0.0:
                 break
-            self.price = np.maximum(self.floor, self.price + (here - value) / size * gradient)
+            self.price = np.clip(self.price + (here - value) / size * gradient, self.floor, self.top)
         self.price = self.best_price
+
+    def _weigh_points(self, point_worth: float) -> None:
+        self.point_worth = point_worth
+        free = np.full(self.arrays.cliques + len(self.arrays.limit), np.inf)
+        self.top = np.concatenate([free, point_worth * self.arrays.promise])
 
     def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
@@ -203,9 +233,10 @@ class BoundSearch:
         at = self.sweeper(self.price, self.point_worth)
         here = float(at.worth.sum() + self.price @ self.limits + self.point_worth * self.plan_points)
         if here < self.bound:
-            self.bound, self.best_price = here, self.price
+            self.bound, self.best_price, self.best_point_worth = here, self.price, self.point_worth
         gradient = at.use - self.limits
         gradient[(self.price <= self.floor) & (gradient < 0.0)] = 0.0
+        gradient[(self.price >= self.top) & (gradient > 0.0)] = 0.0
         return here, gradient
 
 

@@ -17,16 +17,16 @@ from functools import partial
 
 import numpy as np
 
-from passplan.planning.arrays import Flags, Floats, Integers
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.problem import Limits
 from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
-from passplan.planning.search.bound import BoundSearch, Sweeper, certificate_of, option_prices
+from passplan.planning.search.bound import BoundSearch, Sweeper, certificate_of, gift_worths, limits_of, option_prices
 from passplan.planning.search.fleetarrays import FleetArrays, load_plan, unload_plan
 from passplan.planning.search.labels import make_work
-from passplan.planning.search.rebuild import Ground, rebuild
+from passplan.planning.search.rebuild import Ground, given_to, rebuild
 from passplan.planning.search.schedule import worth_of
 
 # A round is about this many labels: some tenths of a second.
@@ -135,11 +135,10 @@ class _Rounds:
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
         prices = option_prices(self.arrays, self.bounds.best_price)
-        if sweeps == 0 and self.movable.sum() >= _LEAST_PART:
-            grounds = self._parts(number)
-        else:
-            grounds = [Ground(self.movable, *self._everything())]
-        jobs = [partial(self._rebuild, number, k, effort, prices, ground) for k, ground in enumerate(grounds)]
+        gifts = gift_worths(self.arrays, self.bounds.best_price)
+        in_parts = sweeps == 0 and self.movable.sum() >= _LEAST_PART
+        grounds = self._parts(number) if in_parts else [self._whole()]
+        jobs = [partial(self._rebuild, number, k, effort, prices, gifts, ground) for k, ground in enumerate(grounds)]
         if self.threads == 1:
             results = [job() for job in jobs]
             spent = self._improve(sweeps)
@@ -159,25 +158,27 @@ class _Rounds:
         return sum(int(work.spent[0]) for work in self.sweeper.work) - before
 
     def _rebuild(
-        self, number: int, worker: int, effort: int, prices: Floats, ground: Ground,
+        self, number: int, worker: int, effort: int, prices: Floats, gifts: Floats, ground: Ground,
     ) -> tuple[Integers, Integers]:
         warmth = _WARMTH[number % len(_WARMTH)] * self._contact_worth()
         taken, size = self.taken.copy(), self.size.copy()
         seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32
-        rebuild(self.arrays, seed, effort, warmth, _MOST_OUT, prices, self.point_worth, ground, self.work[worker],
-                taken, size)
+        rebuild(self.arrays, seed, effort, warmth, _MOST_OUT, prices, gifts, self.point_worth, ground,
+                self.work[worker], taken, size)
         return taken, size
 
-    def _everything(self) -> tuple[Flags, Flags]:
-        return np.ones(self.arrays.cliques, dtype=bool), np.ones(len(self.arrays.limit), dtype=bool)
+    def _whole(self) -> Ground:
+        a = self.arrays
+        return Ground(self.movable, *(np.ones(n, dtype=bool) for n in (a.cliques, len(a.limit), len(a.promise))))
 
     def _parts(self, number: int) -> list[Ground]:
-        """The fleet, the free cliques and the rows dealt out at random, one part to each worker."""
+        """The fleet, the free cliques, the rows and the guarantees dealt out at random, one part to each worker."""
         rng = np.random.default_rng((self.limits.seed, number))
-        counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit)
-        crafts, runs, rows = (rng.integers(0, self.workers, n) for n in counts)
+        counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit), len(self.arrays.promise)
+        crafts, runs, rows, promises = (rng.integers(0, self.workers, n) for n in counts)
         cliques = np.repeat(runs, _RUN)[: self.arrays.cliques]
-        return [Ground((crafts == k) & self.movable, cliques == k, rows == k) for k in range(self.workers)]
+        return [Ground((crafts == k) & self.movable, cliques == k, rows == k, promises == k)
+                for k in range(self.workers)]
 
     def _learn(self, before: tuple[float, float], with_bound: bool) -> None:
         """Follow what a round's work gains on either side."""
@@ -193,13 +194,15 @@ class _Rounds:
 
     def _worth(self) -> tuple[float, float]:
         pairs = [worth_of(self.arrays, i, self.taken[i], self.size[i]) for i in range(len(self.size))]
-        return math.fsum(w for w, _ in pairs), math.fsum(p for _, p in pairs)
+        given = given_to(self.arrays, self.taken, self.size)
+        missed = float(self.arrays.promise @ np.maximum(0.0, 1.0 - given))
+        return math.fsum(w for w, _ in pairs), math.fsum(p for _, p in pairs) + missed
 
     def _first_point_worth(self) -> float:
         """What a point is worth in the bound: much if the plan has only the points that nobody can avoid."""
         if self.points <= 0.0:
             return self.point_worth
-        alone = self.sweeper(np.zeros(len(self.arrays.limit) + self.arrays.cliques), self.point_worth).points.sum()
+        alone = self.sweeper(np.zeros(len(limits_of(self.arrays))), self.point_worth).points.sum()
         if self.points <= alone + 1e-9:
             return self.point_worth
         return float((self.arrays.craft[:, 0] * self.arrays.craft[:, 2]).max(initial=1.0))

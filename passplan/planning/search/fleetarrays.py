@@ -8,9 +8,9 @@ a difference of a running sum over the prices of cliques.
 A lane of a single spacecraft in which every one of its contacts has a place is kept by the order of its contacts
 alone (``arrival``); any other lane of one spacecraft is laid out as if it were shared.
 
-What the schedule program cannot count (a request that several spacecraft could meet, a second recurrence, a
-guarantee) is left out of the bound, which stays valid without it; ``uncounted`` marks the options concerned, so
-that the search leaves a spacecraft alone that uses one.
+What the search cannot count (a request that several spacecraft could meet, a second recurrence) is left out of the
+bound, which stays valid without it; ``uncounted`` marks the options concerned, so that the search leaves a spacecraft
+alone that uses one.
 """
 
 from __future__ import annotations
@@ -50,7 +50,9 @@ class FleetArrays(NamedTuple):
     ``clash`` (m) is the last start of a later option of the same spacecraft that shares a clique with this one (time
     to set up between two contacts on one antenna), or -1. It adds ``load_amount[e]`` to row ``load_row[e]`` for e in
     ``load_at[o] : load_at[o + 1]``, rows rising; ``load_own[e]`` says whether another contact of the same plan of its
-    spacecraft may add to that row too. ``limit`` is per row.
+    spacecraft may add to that row too. ``limit`` is per row. In the same way it gives a
+    part ``give_amount[e]`` of what is due to the guarantee ``give_to[e]`` for e in ``give_at[o] : give_at[o + 1]``;
+    ``promise`` are the points of a guarantee to which nothing is given.
 
     ``wants`` (n, 60) are the points of each bit, ``wants_until`` the last start [s] that meets it; ``recur`` (n, 3)
     from, until and points per second of the recurrence (until 0 where there is none); ``hopeless`` are points of what
@@ -81,6 +83,10 @@ class FleetArrays(NamedTuple):
     load_amount: Floats
     load_own: Flags
     limit: Floats
+    give_at: Integers
+    give_to: Integers
+    give_amount: Floats
+    promise: Floats
     wants: Floats
     wants_until: Integers
     recur: Floats
@@ -119,9 +125,7 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
     use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
     bits, wants, wants_until, uncounted, hopeless = _wanted(problem, terms, place, len(order))
     renews, recur = _recurrences(problem, terms, place, uncounted)
-    for promise in terms.guarantees:
-        kept = place[promise.options]
-        uncounted[kept[kept >= 0]] = True
+    give_at, give_to, give_amount = _gifts(terms, place, len(order))
     load_at, load_row, load_amount, limit = _loads(terms, place, len(order))
     craft_of = np.repeat(np.arange(len(fleet)), np.diff(first))
     clash = np.full(len(order), -1, dtype=np.int64)
@@ -138,6 +142,8 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
         load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
+        give_at=give_at, give_to=give_to, give_amount=give_amount,
+        promise=np.array([promise.points for promise in terms.guarantees], dtype=float),
         wants=wants, wants_until=wants_until, recur=recur, hopeless=hopeless, horizon_s=problem.horizon_s,
         spill=problem.spill_cost_per_mb, cliques=len(clique_s), clique_lane=clique_lane, clique_s=clique_s,
         most_contacts=_longest_chain(first, node, arrival),
@@ -257,6 +263,17 @@ def _loads(terms: Terms, place: Integers, count: int) -> tuple[Integers, Integer
     order = np.lexsort((numbers, options))
     limit = np.concatenate([np.zeros(0), *(rows.limit for rows in terms.rows)])
     return offsets_of(np.bincount(options, minlength=count)), numbers[order], amounts[order], limit
+
+
+def _gifts(terms: Terms, place: Integers, count: int) -> tuple[Integers, Integers, Floats]:
+    """What options give to guarantees, as parts of what is due: entries option by option."""
+    none = np.zeros(0, dtype=np.int64)
+    options = np.concatenate([none, *(place[promise.options] for promise in terms.guarantees)])
+    numbers = np.concatenate([none, *(np.full(len(p.options), k) for k, p in enumerate(terms.guarantees))])
+    parts = np.concatenate([np.zeros(0), *(p.amounts / p.need for p in terms.guarantees)])
+    kept = np.flatnonzero((options >= 0) & (parts > 0.0))
+    kept = kept[np.lexsort((numbers[kept], options[kept]))]
+    return offsets_of(np.bincount(options[kept], minlength=count)), numbers[kept], parts[kept]
 
 
 def _own_loads(

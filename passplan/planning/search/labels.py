@@ -25,6 +25,8 @@ from passplan.planning.arrays import Floats, Integers
 from passplan.planning.search.compiled import inlined
 
 _MOST_LABELS = 400_000
+# Where more labels than this have requirements of their own to meet, the least different are merged.
+_MOST_KEPT = 300
 # Labels that wait have room for so many fills each, where a spacecraft has several layers of storage.
 _MOST_LAYERS = 8
 # Comparing so many pairs of labels is as much work as making one.
@@ -73,17 +75,18 @@ def make_work(labels: int = _MOST_LABELS) -> Work:
 
 @inlined
 def merge(
-    clash: Integers, spill: float, weight: float, simple: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
-    bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
+    clash: Integers, spill: float, weight: float, simple: bool, most: float, now: int, aboard: Floats, worth: Floats,
+    cover: Floats, bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
     wait_bits: Integers, record_option: Integers, low: int, high: int, due: float, per_second: float,
     point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
 ) -> int:
     """Merge the ``count`` labels on ``side`` with the run ``low : high``, onto the other side, without the useless.
 
-    ``simple`` says that bits and cover are all alike; two plain sweeps then do. Otherwise what is overdue up to ``due``
-    is paid ``per_second``, and the wanted terms that are ``past`` are paid for and count as met. Returns how many are
-    left, or -1 if there is no room. (Arrays are handed over one by one, because taking them out of a tuple
-    costs more than all the rest.)
+    Beyond a number of them labels are merged: one that is ahead of another by at most ``most`` hands that on and is
+    dropped, which can only raise the worth that comes out. ``simple`` says that bits and cover are all alike; two plain
+    sweeps then do. Otherwise what is overdue up to ``due`` is paid ``per_second``, and the wanted terms that are ``past``
+    are paid for and count as met. Returns how many are left, or -1 if there is no room. (Arrays are handed over one by
+    one, because taking them out of a tuple costs more than all the rest.)
     """
     to = 1 - side
     if count + high - low > aboard.shape[1]:
@@ -117,9 +120,9 @@ def merge(
         left += 1
     if simple:
         return _prune_down(clash, spill, now, aboard, worth, cover, bits, via, to, left, record_option)
-    left = _prune(clash, weight, True, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
+    left = _prune(clash, weight, most, True, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
                   point_worth, wants, champion, spent)
-    return _prune(clash, -spill, False, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
+    return _prune(clash, -spill, 0.0, False, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
                   point_worth, wants, champion, spent)
 
 
@@ -157,7 +160,7 @@ def _prune_down(
 
 @inlined
 def _prune(
-    clash: Integers, slope: float, forward: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
+    clash: Integers, slope: float, most: float, forward: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
     bits: Integers, via: Integers, side: int, count: int, record_option: Integers, per_second: float,
     point_worth: float, wants: Floats, champion: Integers, spent: Integers,
 ) -> int:
@@ -170,14 +173,21 @@ def _prune(
     for turn in range(count):
         k = turn if forward else count - 1 - turn
         key, useless = worth[side, k] + slope * aboard[side, k], False
+        least, nearest = np.inf, -1
         pairs += champions
         for c in range(champions):
             x = champion[c]
-            if (worth[side, x] + slope * aboard[side, x]
-                    >= key + _lacks(cover, bits, side, x, k, per_second, point_worth, wants)):
+            lacks = (key + _lacks(cover, bits, side, x, k, per_second, point_worth, wants)
+                     - worth[side, x] - slope * aboard[side, x])
+            if lacks <= 0.0:
                 useless = True
                 break
+            if lacks < least:
+                least, nearest = lacks, x
         if useless:
+            continue
+        if forward and low >= _MOST_KEPT and least <= most:
+            worth[side, nearest] += least
             continue
         to = low if forward else low - 1
         low = low + 1 if forward else to

@@ -27,6 +27,8 @@ from passplan.planning.search.walk import overfills, past_wants, those_at, trace
 _MOST_KEPT = 96
 # All that merging gives away on the way is about this part of what the spacecraft's data could be worth.
 _GIVEN = 2e-5
+# Where there are too many labels, merging one of them may give away this part; it never settles a requirement.
+_MOST_GIVEN = 1e-3
 _PAIRS_TO_A_LABEL = 8
 
 
@@ -49,7 +51,7 @@ def best_layered(
     head = np.full(nodes + 1, -1, dtype=np.int64)
     aboard[0, :count] = layers[:, 3]
     worth[0, 0], cover[0, 0], bits[0, 0], via[0, 0] = 0.0, a.recur[i, 0], 0, -1
-    slack = _GIVEN * (layers[:, 0] * (layers[:, 3] + layers[:, 4])).sum() / (nodes + 1)
+    whole = (layers[:, 0] * (layers[:, 3] + layers[:, 4]) + layers[:, 1] * layers[:, 4]).sum()
     waiting = runs = side = 0
     here = 1
     option = a.first[i]
@@ -72,8 +74,8 @@ def best_layered(
                 _pay(cover, bits, worth, side, here, min(float(now), recur_until), per_second, point_worth, wants,
                      past_wants(wants_until, now))
             here = _prune(
-                layers, a.clash, now, simple, slack, aboard, worth, cover, bits, via, side, here, record_option,
-                per_second, point_worth, wants, champion, spent)
+                layers, a.clash, now, simple, _GIVEN * whole / (nodes + 1), _MOST_GIVEN * whole, aboard, worth, cover,
+                bits, via, side, here, record_option, per_second, point_worth, wants, champion, spent)
             side = 1 - side
         for o in range(option, follower):
             if price[o] == np.inf:
@@ -216,8 +218,8 @@ def _pass_layer(maps: Floats, row: int, layers: Floats, x: int, aboard: float) -
 
 @inlined
 def _prune(
-    layers: Floats, clash: Integers, now: int, simple: bool, slack: float, aboard: Floats, worth: Floats, cover: Floats,
-    bits: Integers, via: Integers, side: int, here: int, record_option: Integers, per_second: float,
+    layers: Floats, clash: Integers, now: int, simple: bool, slack: float, most: float, aboard: Floats, worth: Floats,
+    cover: Floats, bits: Integers, via: Integers, side: int, here: int, record_option: Integers, per_second: float,
     point_worth: float, wants: Floats, champion: Integers, spent: Integers,
 ) -> int:
     """Bring the labels that are not useless to the other side; returns how many."""
@@ -234,7 +236,7 @@ def _prune(
         least, nearest, looked = _nearest(
             layers, simple, aboard, worth, cover, bits, side, k, champion, champions, per_second, point_worth, wants)
         pairs += looked
-        if least <= slack or (kept >= _MOST_KEPT and nearest >= 0):
+        if least <= slack or (kept >= _MOST_KEPT and least <= most):
             worth[to, nearest] += max(0.0, least)
             continue
         aboard[to, kept * count:(kept + 1) * count] = aboard[side, k * count:(k + 1) * count]

@@ -28,20 +28,25 @@ _MOST_SHARE = 1.2
 # What a call costs beside its labels, in labels; and what it costs to follow classes of data through some changes.
 _OVERHEAD = 100
 _CHANGES = 2_000
+_LOADS_TO_A_LABEL = 8
 
 
 class Ground(NamedTuple):
-    """What one rebuild may touch: spacecraft (n,), and the cliques (c,) and rows (r,) of which it may use more."""
+    """What one rebuild may touch: spacecraft (n,), and the cliques (c,) and rows (r,) of which it may use more.
+
+    To guarantees (g,) it may give less than now, as long as what is due is given; to others it may not.
+    """
 
     crafts: Flags
     cliques: Flags
     rows: Flags
+    promises: Flags
 
 
 @compiled
 def rebuild(
-    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, point_worth: float,
-    ground: Ground, work: Work, taken: Integers, size: Integers,
+    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, gift_worth: Floats,
+    point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
@@ -50,8 +55,7 @@ def rebuild(
     nothing. At most ``most`` spacecraft are taken out at a time.
     """
     np.random.seed(seed)
-    count = len(size)
-    movable = np.flatnonzero(ground.crafts)
+    count, movable = len(size), np.flatnonzero(ground.crafts)
     if len(movable) == 0:
         return 0.0
     # Whoever holds a clique; ``count`` stands for one that is free and must stay so.
@@ -59,6 +63,8 @@ def rebuild(
     room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
     now_taken, now_size = taken.copy(), size.copy()
     worth = _enter(a, taken, size, point_worth, ground.rows, holder, room)
+    given = given_to(a, taken, size)
+    due = np.where(ground.promises, 1.0, np.minimum(1.0, given))
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
@@ -74,19 +80,24 @@ def rebuild(
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
             _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
             now_size[out[k]] = 0
+        before = given.copy()
         share = np.random.random() * _MOST_SHARE
         for turn in range(2 * some - 1):
             # First each pays for what others need, the last one has nobody left to leave room for; then all but the
             # last once more, for nothing.
             part = share if turn < some - 1 else 0.0
-            _replan(a, out[turn % some], part, option_price, price, point_worth, work, holder, room, now_taken,
-                    now_size, fresh)
+            _replan(a, out[turn % some], part, option_price, gift_worth, price, point_worth, work, holder, room,
+                    now_taken, now_size, fresh)
         change = 0.0
         for k in range(some):
             worth[out[k]] = _net_worth(a, out[k], now_taken[out[k]], now_size[out[k]], point_worth)
             change += worth[out[k]] - old_worth[k]
+            give(a, old_taken[k], old_size[k], given, -1.0)
+            give(a, now_taken[out[k]], now_size[out[k]], given, 1.0)
+        change -= point_worth * _more_missed(a.promise, due, before, given)
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
         if change < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(change / heat)):
+            given[:] = before
             for k in range(some):
                 _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
             for k in range(some):
@@ -108,11 +119,12 @@ def rebuild(
 
 @compiled
 def _replan(
-    a: FleetArrays, i: int, part: float, option_price: Floats, price: Floats, point_worth: float, work: Work,
-    holder: Integers, room: Floats, taken: Integers, size: Integers, fresh: Integers,
+    a: FleetArrays, i: int, part: float, option_price: Floats, gift_worth: Floats, price: Floats, point_worth: float,
+    work: Work, holder: Integers, room: Floats, taken: Integers, size: Integers, fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
 
+    What it gives to guarantees it is paid for in full.
     It keeps the schedule it has where the program gives none that can be used.
     """
     _release(a, taken[i], size[i], holder, room)
@@ -120,9 +132,12 @@ def _replan(
     load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
     for o in range(a.first[i], a.first[i + 1]):
         free = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
-        price[o] = cost[o] + part * option_price[o] if free else np.inf
+        price[o] = cost[o] + part * option_price[o] - gift_worth[o] if free else np.inf
     work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
+    before = work.spent[0]
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
+    # Rows are looked at label by label.
+    work.spent[0] += (work.spent[0] - before) * len(a.load_row) // (_LOADS_TO_A_LABEL * max(1, len(a.option)))
     usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
     if a.classes.loose[i]:
         if not usable:
@@ -167,6 +182,33 @@ def load(a: FleetArrays, taken: Integers, size: int, room: Floats, sign: float) 
     for k in range(size):
         for e in range(load_at[taken[k]], load_at[taken[k] + 1]):
             room[load_row[e]] += sign * load_amount[e]
+
+
+@compiled
+def given_to(a: FleetArrays, taken: Integers, size: Integers) -> Floats:
+    """What a plan gives to each guarantee, as a part of what is due."""
+    given = np.zeros(len(a.promise))
+    for i in range(len(size)):
+        give(a, taken[i], size[i], given, 1.0)
+    return given
+
+
+@inlined
+def give(a: FleetArrays, taken: Integers, size: int, given: Floats, sign: float) -> None:
+    """Add what a schedule gives to guarantees (1), or take it off (-1)."""
+    for k in range(size):
+        for e in range(a.give_at[taken[k]], a.give_at[taken[k] + 1]):
+            given[a.give_to[e]] += sign * a.give_amount[e]
+
+
+@inlined
+def _more_missed(promise: Floats, due: Floats, before: Floats, given: Floats) -> float:
+    """Points of guarantees that a change adds (minus: takes off); less than rounding is nothing."""
+    points = 0.0
+    for g in range(len(promise)):
+        more = max(0.0, due[g] - given[g]) - max(0.0, due[g] - before[g])
+        points += promise[g] * more if abs(more) > ROUNDING else 0.0
+    return points
 
 
 @inlined
