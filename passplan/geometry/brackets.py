@@ -13,14 +13,16 @@ from dataclasses import dataclass, fields
 
 import numpy as np
 
-from passplan.geometry.curves import excess, excess_slope
+from passplan.geometry.curves import excess, excess_slope, vertex
 from passplan.geometry.roots import Flags, Indices, solve
 from passplan.geometry.scene import Scene
 from passplan.geometry.timescale import Floats
 
-# The parabola through three samples rises above them by at most an eighth of its second difference, and the
-# true curve lies within a few hundredths of the parabola.
-_SLACK = 0.25
+# The true curve lies within so much of its second difference of the parabola through three samples: it is a few
+# hundredths at the steps that ``regimes`` chooses, and a hundredth more between the looks. The parabola
+# itself rises above the samples by at most an eighth.
+_SLACK = 0.1
+_LOOKS = np.linspace(-1.0, 1.0, 9)[:, None]
 
 
 @dataclass(frozen=True)
@@ -97,7 +99,8 @@ def _excursions(scene: Scene, flat: Indices, top: bool) -> Brackets:
     pair, sample = pair[likely], sample[likely]
     powers, zero = scene.polynomials(pair, sample)
     data = powers, scene.sines[pair]
-    x = solve(excess_slope, data, zero - 1.0, zero + 1.0, zero, not top, scene.tolerance)
+    guess = zero + vertex(scene.excess_km.reshape(-1), pair * scene.length + sample)
+    x = solve(excess_slope, data, zero - 1.0, zero + 1.0, guess, not top, scene.tolerance)
     height, bend = excess(x, *data)[0], excess_slope(x, *data)[1]
     over = np.flatnonzero((height > 0.0) == top)
     x, half = (x - zero)[over], np.sqrt(np.abs(2.0 * height[over] / bend[over]))
@@ -113,20 +116,29 @@ def _excursions(scene: Scene, flat: Indices, top: bool) -> Brackets:
 
 
 def _may_cross(scene: Scene, pair: Indices, sample: Indices, top: bool) -> Flags:
-    """A safe first sieve: can F reach zero within a step of ``sample``, by bounds on P and D apart?"""
+    """A safe sieve: can F reach zero within a step of ``sample``? Parabolas of P and D tell, within ``_SLACK``."""
     flat = pair * scene.length + sample
-    up, square, sine = scene.up_km.reshape(-1), scene.range_km2.reshape(-1), scene.sines[pair]
-    p0, p1, p2 = (up.take(flat + k) for k in (-1, 0, 1))
-    bend = _SLACK * np.abs(p0 - 2.0 * p1 + p2)
-    reach = np.maximum(np.maximum(p0, p1), p2) + bend if top else np.minimum(np.minimum(p0, p1), p2) - bend
-    # Most tops are far below the horizon, and P alone settles them.
-    open_still = np.flatnonzero((reach >= 0.0) | (sine < 0.0)) if top else np.arange(pair.size)
+    sine, side = scene.sines[pair], 1.0 if top else -1.0
+    up, square = scene.up_km.reshape(-1), scene.range_km2.reshape(-1)
+    open_still = np.arange(pair.size)
+    if top:
+        # Most tops are far below the horizon, and P alone settles them.
+        p0, p1, p2 = (up.take(flat + k) for k in (-1, 0, 1))
+        reach = np.maximum(np.maximum(p0, p1), p2) + (0.125 + _SLACK) * np.abs(p0 - 2.0 * p1 + p2)
+        open_still = np.flatnonzero((reach >= 0.0) | (sine < 0.0))
     flat, sine = flat[open_still], sine[open_still]
-    d0, d1, d2 = (square.take(flat + k) for k in (-1, 0, 1))
-    bend = _SLACK * np.abs(d0 - 2.0 * d1 + d2)
-    near = np.sqrt(np.maximum(np.minimum(np.minimum(d0, d1), d2) - bend, 0.0))
-    far = np.sqrt(np.maximum(np.maximum(d0, d1), d2) + bend)
-    bound = sine * np.where((sine >= 0.0) == top, near, far)
+    farthest_up, bend = _parabola(up, flat)
+    farthest_up += side * _SLACK * bend
+    distance2, bend = _parabola(square, flat)
+    distance2 -= np.sign(side * sine) * _SLACK * bend
+    nearest_zero = side * (farthest_up - sine * np.sqrt(np.maximum(distance2, 0.0)))
     may = np.zeros(pair.size, bool)
-    may[open_still] = reach[open_still] >= bound if top else reach[open_still] <= bound
+    may[open_still] = nearest_zero.max(axis=0, initial=-np.inf) >= 0.0
     return may
+
+
+def _parabola(values: Floats, at: Indices) -> tuple[Floats, Floats]:
+    """The parabola through each value and its neighbours at the ``_LOOKS``, (looks, n), and its second difference."""
+    before, here, after = (values.take(at + k) for k in (-1, 0, 1))
+    second = before - 2.0 * here + after
+    return here + _LOOKS * (0.5 * (after - before) + _LOOKS * (0.5 * second)), np.abs(second)

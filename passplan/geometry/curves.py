@@ -1,8 +1,9 @@
-"""The functions whose zeros are sought, on polynomials (14, 2, n) of P and D at x (n,); see ``scene``."""
+"""The functions whose zeros are sought, on polynomials (14, 2, n) of P and D at x (n,); see ``scene``. And guesses."""
 
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from passplan.geometry import stencil
 from passplan.geometry.timescale import Floats
@@ -37,3 +38,11 @@ def toward_peak(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
 def toward_nearest(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
     """D' and its slope, for polynomials of D alone."""
     return stencil.bend(powers, x)[1:]
+
+
+def vertex(values: Floats, at: NDArray[np.int64]) -> Floats:
+    """Vertex of the parabola through each value and its neighbours, in steps from it and at most one away."""
+    before, here, after = values.take(at - 1), values.take(at), values.take(at + 1)
+    bend = before - 2.0 * here + after
+    ratio = np.divide(before - after, 2.0 * bend, out=np.zeros(at.size), where=bend != 0.0)
+    return np.asarray(np.minimum(np.maximum(ratio, -1.0), 1.0))

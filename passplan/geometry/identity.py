@@ -57,23 +57,27 @@ def prefixes(spacecraft: Sequence[str], antennas: Sequence[str]) -> list[list[st
 
 def window_ids(
     pair_prefix: Sequence[str], pair: NDArray[np.int64], slot: NDArray[np.int64], start_s: Floats
-) -> list[str]:
-    """One id per window; windows of a pair in one slot are lettered in time order from the second on.
+) -> pd.api.extensions.ExtensionArray:
+    """One id per window (a text array); windows of a pair in one slot are lettered in time order from the second on.
 
     All windows of a pass must be given, those outside the planning horizon too.
     """
     which, kinds = pd.factorize(slot)
-    labels = np.array([_slot_label(int(kind)) for kind in kinds], object)
-    ids: list[str] = (np.array(pair_prefix, object)[pair] + labels[which]).tolist()
+    labels = [_slot_label(int(kind)) for kind in kinds]
+    # Text arrays are joined much faster than objects one by one.
+    heads, tails = (pd.array(words, dtype="str") for words in (list(pair_prefix), labels))
+    ids = pd.Series(heads.take(pair)) + pd.Series(tails.take(which))
     key = pair * len(kinds) + which
     shared = np.flatnonzero(pd.Series(key).duplicated(keep=False))
     order = shared[np.lexsort((start_s[shared], key[shared]))]
-    rank = 0
+    rank, lettered = 0, {}
     for before, i in pairwise(order.tolist()):
         rank = rank + 1 if key[i] == key[before] else 0
         if rank:
-            ids[i] += _letter(rank)
-    return ids
+            lettered[i] = f"{ids[i]}{_letter(rank)}"
+    if lettered:
+        ids[list(lettered)] = list(lettered.values())
+    return ids.array
 
 
 def inherit_ids(windows: pd.DataFrame, earlier_windows: pd.DataFrame, tolerance_s: float = 1_200.0) -> pd.DataFrame:

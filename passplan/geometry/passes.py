@@ -24,6 +24,8 @@ from passplan.geometry.timescale import Floats
 from passplan.geometry.trajectory import Block
 
 _STEEP_SINE = 0.98
+# Where in a gap between two spans it is looked first whether the object has set.
+_PROBES = (0.5, 0.25, 0.75, 0.375)
 # Spans cut to shaped masks or limits of mounts at once; bounds the memory of their polynomials.
 _SPANS_AT_ONCE = 2_000
 
@@ -119,10 +121,15 @@ def _pass_numbers(scene: Scene, found: Spans) -> Indices:
     breaks = np.ones(found.pair.size, bool)
     gap = np.flatnonzero(found.pair[1:] == found.pair[:-1])
     pair, low, high = found.pair[gap], found.end[gap], found.start[gap + 1]
-    # Nearly all gaps are settled by the sample in their middle.
-    middle = np.rint(0.5 * (low + high)).astype(np.int64)
-    floor = np.minimum(scene.sines, 0.0)
-    up = np.flatnonzero(scene.up_km[pair, middle] > floor[pair] * np.sqrt(scene.range_km2[pair, middle]))
+    floor = np.minimum(scene.sines, 0.0)[pair]
+    # Nearly all gaps are settled by a sample in their middle, the others by one beside it: passes below the mask are
+    # in the middle of long gaps.
+    up = np.arange(gap.size)
+    for share in _PROBES:
+        sample = np.rint(low[up] + share * (high[up] - low[up])).astype(np.int64)
+        flat = pair[up] * scene.length + sample
+        level = scene.up_km.reshape(-1).take(flat) - floor[up] * np.sqrt(scene.range_km2.reshape(-1).take(flat))
+        up = up[level > 0.0]
     breaks[gap[up] + 1] = _sets_between(scene, pair[up], low[up], high[up])
     return np.cumsum(breaks) - 1
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from passplan.geometry import stencil
-from passplan.geometry.curves import toward_nearest, toward_peak
+from passplan.geometry.curves import toward_nearest, toward_peak, vertex
 from passplan.geometry.roots import Flags, Indices, solve
 from passplan.geometry.scene import Scene
 from passplan.geometry.timescale import Floats
@@ -62,7 +62,7 @@ def _near_samples(scene: Scene, pair: Indices, start: Floats, end: Floats, highe
         pick = np.flatnonzero(wanted)
         here = powers.take(pick, axis=-1)
         middle = zero[pick]
-        guess = middle + _vertex(square, spot[pick])
+        guess = middle + vertex(square, spot[pick])
         data = (here if best is highest else np.ascontiguousarray(here[:, 1]),)
         x = solve(slope, data, middle - 1.0, middle + 1.0, guess, rising, TOLERANCE)
         at = x + (own_sample[pick] - middle)
@@ -111,14 +111,6 @@ def _tops(values: Floats, window: Indices) -> Flags:
         climbing = values[1:] > values[:-1]
         top[1:-1] = (climbing[:-1] > climbing[1:]) & (window[2:] == window[:-2])
     return top
-
-
-def _vertex(values: Floats, at: Indices) -> Floats:
-    """Vertex of the parabola through each value and its neighbours, in steps from it and at most one away."""
-    before, here, after = values.take(at - 1), values.take(at), values.take(at + 1)
-    bend = before - 2.0 * here + after
-    ratio = np.divide(before - after, 2.0 * bend, out=np.zeros(at.size), where=bend != 0.0)
-    return np.asarray(np.minimum(np.maximum(ratio, -1.0), 1.0))
 
 
 def _outside_better(best: _Best, values: Floats, ends: Indices, spread: Indices) -> Flags:

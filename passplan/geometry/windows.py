@@ -110,7 +110,7 @@ def _table(
     pair_prefix = [prefix for row in prefixes(names, antenna_names) for prefix in row]
     slot = slots(rows.culmination_s, rows.whole_end_s - rows.whole_start_s)
     pair = rows.antenna * len(names) + rows.spacecraft
-    ids = np.array(window_ids(pair_prefix, pair, slot, rows.whole_start_s), object)
+    ids = window_ids(pair_prefix, pair, slot, rows.whole_start_s)
     aos, los = np.rint(rows.start_s * 1e3), np.rint(rows.end_s * 1e3)
     low = rows.open_start & (rows.whole_start_s > start_s)
     aos[low] = np.ceil(rows.start_s[low] * 1e3 - _ROUNDING_MS)
@@ -119,12 +119,12 @@ def _table(
     order = np.flatnonzero(rows.inside & (los > aos))
     key = (aos[order] - start_s * 1e3).astype(np.int64) * len(antennas) + _ranks(antenna_names)[rows.antenna[order]]
     order = order[np.argsort(key * len(orbits) + _ranks(names)[rows.spacecraft[order]])]
-    rows, ids, aos, los = rows.take(order), ids[order], aos[order], los[order]
+    rows, ids, aos, los = rows.take(order), ids.take(order), aos[order], los[order]
     peak = np.clip(np.rint(rows.peak_s * 1e3), aos, los)
     clipped = (rows.whole_start_s < start_s) + 2 * (rows.whole_end_s > end_s)
     return pd.DataFrame(
         {
-            "window_id": pd.array(ids, dtype="str"),
+            "window_id": ids,
             "spacecraft": _words(names, rows.spacecraft),
             "antenna": _words(antenna_names, rows.antenna),
             "site": _words([antenna.site for antenna in antennas.values()], rows.antenna),

@@ -40,7 +40,8 @@ class Request(Record):
     lasts at least ``min_duration_s``; ``antenna`` or ``site`` narrow it further. A ``fixed`` one runs from
     ``earliest_utc`` to ``latest_utc`` exactly, to the whole seconds within. ``points`` is what missing it weighs. With
     ``standby`` it counts only if a second antenna, which could follow all the time and offers the service too, is held
-    beside it.
+    beside it. With ``handover_overlap_s`` contacts follow the spacecraft from ``earliest_utc`` to ``latest_utc``
+    without a break: each begins so long before the one before it ends.
     """
 
     name: Label
@@ -54,6 +55,7 @@ class Request(Record):
     fixed: bool = False
     points: Annotated[float, Field(gt=0.0, le=10.0)] = 1.0
     standby: bool = False
+    handover_overlap_s: Annotated[int, Field(ge=1, le=3_600)] | None = None
 
     @model_validator(mode="after")
     def _consistent(self) -> Request:
@@ -63,4 +65,11 @@ class Request(Record):
         if span_s < self.min_duration_s:
             least_s = self.min_duration_s
             raise ValueError(f"the span of {span_s:g} s is shorter than min_duration_s {least_s:g}; widen it")
+        if self.handover_overlap_s is not None:
+            for key in ("antenna", "fixed", "standby"):
+                if getattr(self, key):
+                    raise ValueError(f"handover_overlap_s wants several contacts on several antennas; drop {key}")
+            if span_s <= self.handover_overlap_s:
+                overlap_s = self.handover_overlap_s
+                raise ValueError(f"the span of {span_s:g} s is no longer than handover_overlap_s {overlap_s}; widen it")
         return self

@@ -17,13 +17,15 @@ _Count = Annotated[int, Field(ge=1, le=1_000)]
 class CraftLimits(Record):
     """Limits on a spacecraft's own contacts.
 
-    ``contact_gap_s`` lies free between any two of them, ``cool_down_s`` between the end of one in which it sends
-    and the start of the next in which it sends. An orbit runs from one ascending node to the next, a day is a day
-    of UTC, and a contact counts where it starts. The transmitter is on from its acquisition to the end of sending:
-    at most ``sending_per_contact_s`` in one contact, ``sending_per_orbit_s`` in one orbit, and
-    ``sending_per_span_s`` in any ``sending_span_h`` hours.
+    It can be in as many as it has ``links`` at the same time, each on an antenna of its own. On each link
+    ``contact_gap_s`` lies free between any two of them, ``cool_down_s`` between the end of one in which it sends and
+    the start of the next in which it sends. An orbit runs from one ascending node to the next, a day is a day of UTC,
+    and a contact counts where it starts. The transmitter is on from its acquisition to the end of sending: at most
+    ``sending_per_contact_s`` in one contact, ``sending_per_orbit_s`` in one orbit, and ``sending_per_span_s`` in any
+    ``sending_span_h`` hours; the seconds of several links add up.
     """
 
+    links: Annotated[int, Field(ge=1, le=8)] = 1
     contact_gap_s: _Seconds = 0.0
     cool_down_s: _Seconds = 0.0
     contacts_per_orbit: _Count | None = None

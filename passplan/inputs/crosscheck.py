@@ -144,7 +144,7 @@ def check_requests(
     requests: Iterable[tuple[Placed, Request]], spacecraft: Mapping[str, Spacecraft],
     antennas: Mapping[str, Antenna], sites: Mapping[str, Site], findings: Findings,
 ) -> None:
-    """Spacecraft, antennas and sites that requests name."""
+    """Spacecraft, antennas and sites that requests name, and what those must be able to do."""
     for (file, where, _), item in requests:
         place = f"{where} ({item.name})"
         if spacecraft:
@@ -157,6 +157,10 @@ def check_requests(
         if item.service == "ranging" and able and not any(a.ranging for a in able):
             remedy = "no antenna that may serve it offers ranging; set ranging = true where one does"
             findings.problem(file, f"{place}.service", item.service, remedy)
+        craft = spacecraft.get(item.spacecraft)
+        if item.handover_overlap_s is not None and craft is not None and craft.links == 1:
+            remedy = f"{craft.name} is in one contact at a time; give it links = 2, or drop the overlap"
+            findings.problem(file, f"{place}.handover_overlap_s", item.handover_overlap_s, remedy)
 
 
 def _known(names: Iterable[str], known: Iterable[str], file: str | Path, where: str, findings: Findings) -> None:

@@ -1,7 +1,7 @@
 """Two spacecraft of the fleet in one beam: how much of the one is heard beside the other.
 
-A spacecraft disturbs only while it sends, and it sends only in a contact of its own. When that would be too
-much is found in ``conflicts``.
+A spacecraft disturbs only while it sends, and it sends only in a contact of its own; one with several links as if it
+sent over all of them. Its own links do not disturb each other. When it would be too much is found in ``conflicts``.
 """
 
 from __future__ import annotations
@@ -53,6 +53,7 @@ def c_over_i_db(
             level_dbw = radiated_dbw(radio) + 10.0 * math.log10(share) - _aboard(radio.pattern, other, site)
             level_dbw = level_dbw - free_space_loss_db(radio.frequency_mhz, other.range_km) - off_db - guard_db
             power_w += 10.0 ** (level_dbw / 10.0)
+    power_w *= run.spacecraft[interferer].links
     up = (other.elevation_deg > 0.0) & (power_w > 0.0)
     ratio_db[up] = carrier[up] - 10.0 * np.log10(power_w[up])
     return ratio_db

@@ -228,8 +228,8 @@ def _powers(run: Run, listeners: Sequence[Listener], names: Sequence[str], requi
 
 
 def _in_band_w(run: Run, chain: Chain, name: str) -> float:
-    """What a spacecraft sends into the band of a chain, 1 km away."""
-    return math.fsum(
+    """What a spacecraft sends into the band of a chain over all its links, 1 km away."""
+    return run.spacecraft[name].links * math.fsum(
         spectrum_share(run, chain, radio)
         * 10.0 ** ((radiated_dbw(radio) - float(free_space_loss_db(radio.frequency_mhz, 1.0))) / 10.0)
         for radio in downlinks_of(run, name)

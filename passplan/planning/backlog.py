@@ -11,6 +11,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from passplan.planning.joint_sending import joint_sending
 from passplan.planning.record import PlanRecord, sending
 
 Floats = NDArray[np.float64]
@@ -59,13 +60,14 @@ def follow(
     start_mb: float, generation_mb_per_s: float, capacity_mb: float, sent: Iterable[tuple[float, float, float]],
     horizon_s: float,
 ) -> Backlog:
-    """One storage through pieces of sending (start_s, end_s, rate_mb_per_s) in time order.
+    """One storage through pieces of sending (start_s, end_s, rate_mb_per_s); those that overlap add up.
 
     Between events it gains what is generated and sends at one rate; there are kinks where it runs empty or full.
     """
     capacity, fill, clock = capacity_mb, start_mb, 0.0
     points, losing = [(0.0, fill)], []
-    events = [event for start_s, end_s, rate in sent for event in ((start_s, 0.0), (end_s, rate))]
+    pieces = joint_sending(list(sent)).pieces
+    events = [event for start_s, end_s, rate in pieces for event in ((start_s, 0.0), (end_s, rate))]
     for until, rate in (*events, (horizon_s, 0.0)):
         slope, length = generation_mb_per_s - rate, max(until - clock, 0.0)
         edge = capacity if slope > 0.0 else 0.0

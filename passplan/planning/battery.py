@@ -37,7 +37,7 @@ class PowerNeed:
         return np.asarray(np.interp(at_s, self.edges_s, sums))
 
     def charge_wh(self, start_s: Floats, end_s: Floats, load_w: Floats) -> tuple[Floats, Floats]:
-        """Instants [s] and the charge at them, if ``load_w`` is drawn in each of the intervals, which lie apart.
+        """Instants [s] and the charge at them, if ``load_w`` is drawn in each of the intervals.
 
         Between two of the instants the charge moves in a straight line, or is full from some moment on.
         """

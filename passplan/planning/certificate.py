@@ -131,7 +131,7 @@ def _best_of(problem: Problem, terms: Terms, craft: int, price: Floats, point_pr
     mine.sort(key=lambda o: int(options.start_s[o]))
     after, apart = _order(terms, craft, mine, problem)
     wants = [w for w in terms.wanted if len(w.options) and np.all(options.spacecraft[w.options] == craft)]
-    need = next((r for r in terms.recurrences if r.name == fleet.names[craft]), None)
+    need = next((r for r in terms.recurrences if r.name == fleet.names[craft] and not r.request), None)
     layers = problem.layers[craft]
     starts = sorted({int(options.start_s[o]) for o in mine})
     waiting: dict[int, list[_State]] = {0: [_State(

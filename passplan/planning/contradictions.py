@@ -130,6 +130,8 @@ def _contradiction(problem: Problem, terms: Terms, core: Sequence[Demand]) -> Co
 def _in_words(demand: Demand) -> str:
     if isinstance(demand, Wanted):
         return _WORDS[demand.kind].format(demand.name, demand.owner)
+    if isinstance(demand, Recurrence) and demand.request:
+        return _WORDS["request"].format(demand.request, demand.name)
     if isinstance(demand, Recurrence):
         return f"a command contact of {demand.name} every {demand.every_s / 3600:g} h"
     return f"the {demand.need:.6g} {demand.name}"
@@ -138,6 +140,8 @@ def _in_words(demand: Demand) -> str:
 def _alone(terms: Terms, demand: Demand) -> tuple[str, ...]:
     """Why a requirement cannot be met though nothing else is asked for."""
     if isinstance(demand, Recurrence):
+        if demand.request:
+            return (f"no choice of windows offers contacts that overlap by {demand.overlap_s} s all along",)
         return ("no choice of windows offers a command contact in time",)
     if isinstance(demand, AtLeast):
         return ("the windows offer no more",)

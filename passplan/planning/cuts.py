@@ -52,6 +52,20 @@ def neighbour_cuts(windows: Windows, setup_s: Sequence[tuple[int, int]]) -> list
     return cuts
 
 
+def add_handovers(cuts: Sequence[Cuts], windows: Windows, craft: int, low: int, high: int, overlap_s: int) -> None:
+    """Let windows of a spacecraft hand over to each other within [low, high) with no more than the overlap.
+
+    Of two of which one outlasts the other, the earlier can end, and the later start, that long before the seam is over.
+    """
+    starts, ends = windows.start_s.tolist(), windows.end_s.tolist()
+    mine = [w for w, k in enumerate(windows.spacecraft.tolist()) if k == craft and starts[w] < high and ends[w] > low]
+    for w in mine:
+        for v in mine:
+            if starts[w] < starts[v] and starts[v] + overlap_s <= ends[w] < ends[v]:
+                cuts[w].must_end.add(starts[v] + overlap_s)
+                cuts[v].must_start.add(ends[w] - overlap_s)
+
+
 def spread(low: int, high: int, matter: Iterable[int], grid: Iterable[int], most: int) -> list[int]:
     """At most ``most`` instants strictly inside (low, high), spread out, those that matter first.
 

@@ -21,7 +21,8 @@ def fleet_of(run: Run) -> Fleet:
         names=names, weight=totals[:, 0], generation_mb_per_s=totals[:, 1],
         capacity_mb=np.array([run.spacecraft[name].storage_mb for name in names], dtype=float),
         start_fill_mb=totals[:, 2], streams=streams if any(streams) else (),
-        keeping=tuple(_keeping(run, name) for name in names) if any(streams) else ())
+        keeping=tuple(_keeping(run, name) for name in names) if any(streams) else (),
+        links=np.array([run.spacecraft[name].links for name in names], dtype=np.int64))
 
 
 def _keeping(run: Run, name: str) -> Keeping:

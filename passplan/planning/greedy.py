@@ -73,11 +73,11 @@ class _Builder:
         spans = sorted(zip(need.options.tolist(), need.start_s.tolist(), need.end_s.tolist(), strict=True))
         reached = need.from_s
         while reached < need.until_s:
-            live = [(o, a, b) for o, a, b in spans if b + need.every_s > reached]
+            live = [(o, a, b) for o, a, b in spans if b + need.reach_s > reached]
             held = [b for o, a, b in live if o in self.chosen and a <= reached]
             free = [(b, o) for o, a, b in live if a <= reached and o not in self.chosen and self.occupancy.fits(o)]
             if held:
-                reached = max(held) + need.every_s
+                reached = max(held) + need.reach_s
             elif free:
                 furthest = max(b for b, _ in free)
                 self._take_best([o for b, o in free if b >= furthest - need.every_s // 8])

@@ -68,12 +68,16 @@ class Block:
 
 @dataclass(frozen=True)
 class Wish:
-    """A contact of ``spacecraft`` (on ``antenna``, or on any) must be able to start and to end at these instants."""
+    """A contact of ``spacecraft`` (on ``antenna``, or on any) must be able to start and to end at these instants.
+
+    With ``overlap_s`` contacts in between must be able to hand over to each other with no more than that.
+    """
 
     spacecraft: str
     antenna: str | None
     start_s: int
     end_s: int
+    overlap_s: int = 0
 
 
 @dataclass(frozen=True)

@@ -1,11 +1,11 @@
 """Why data was not brought down: what was lost aboard, and what is left at the end, by cause.
 
 The rule, plainly (own derivation). Each spacecraft's storage is followed once more with every link in use that the
-plan leaves unused: at each instant the fastest one in view sends what it would carry beyond what the plan sends, as
-far as there is data aboard that no contact of the plan takes later. So every contact still brings down what it did.
-What such a link saves, first sent first, is taken off the next loss, or else off what is left at the end, and is
-charged to the cause why that link is not used. What no link could have saved is charged to ``no_window``. Nothing is
-counted twice.
+plan leaves unused: at each instant the fastest one in view (of a spacecraft with N links: the N fastest) sends what it
+would carry beyond what the plan sends, as far as there is data aboard that no contact of the plan takes later. So
+every contact still brings down what it did. What such a link saves, first sent first, is taken off the next loss, or
+else off what is left at the end, and is charged to the cause why that link is not used. What no link could have saved
+is charged to ``no_window``. Nothing is counted twice.
 
 The causes are the reasons of ``unused.csv`` (for windows cut short: those of the ``cut`` column), and two more:
 ``in_contact``, what the links of the contacts allow but acquisition, keyholes and the radio's rate control leave
@@ -74,7 +74,7 @@ def lost_value(run: Run, record: PlanRecord, links: Sequence[WindowLink]) -> dic
     for name, store in backlogs(record).items():
         figures = record.summary["storage"][name]
         weights = [_weight_of(record, name, key) for key in ("lost_mb", "left_mb")]
-        missed = missed_links(store, chances.get(name, ()), sent[owners == name])
+        missed = missed_links(store, chances.get(name, ()), sent[owners == name], run.spacecraft[name].links)
         shares = share_out(store, missed, figures["generated_mb"], figures["lost_mb"], figures["left_mb"])
         found[name] = {
             cause: {"lost_mb": lost, "lost_value": weights[0] * lost, "left_mb": left, "left_value": weights[1] * left}
@@ -92,8 +92,11 @@ def _weight_of(record: PlanRecord, name: str, key: str) -> float:
     return float(sum(one["weight"] * one[key] for one in classes) / total)
 
 
-def missed_links(store: Backlog, chances: Iterable[Chance], sent: Floats) -> Missed:
-    """What the fastest unused link would carry beyond what is sent; rows of ``sent``: from, to, Mbit/s."""
+def missed_links(store: Backlog, chances: Iterable[Chance], sent: Floats, links: int = 1) -> Missed:
+    """What the fastest ``links`` in view would carry beyond what is sent; rows of ``sent``: from, to, Mbit/s.
+
+    It is charged to the cause of the fastest of them that is not in contact, if there is one.
+    """
     chances = tuple(chances)
     edges = [store.time_s, sent[:, :2].ravel(), *(np.clip(c.time_s, 0.0, store.time_s[-1]) for c in chances),
              np.array([edge for c in chances for span in c.spans for edge in span[:2]], float)]
@@ -101,17 +104,23 @@ def missed_links(store: Backlog, chances: Iterable[Chance], sent: Floats) -> Mis
     sending = np.zeros(edge_s.size - 1)
     for first, last, rate in sent.tolist():
         sending[slice(*np.searchsorted(edge_s, (first, last)))] += rate
-    best, cause = np.zeros(sending.size), np.zeros(sending.size, np.int64)
+    best, cause = np.zeros((links, sending.size)), np.zeros((links, sending.size), np.int64)
     causes = tuple(dict.fromkeys(word for c in chances for *_, word in c.spans))
     for chance in chances:
         for first, last, word in chance.spans:
             cells = np.arange(*np.searchsorted(edge_s, (first, last)))
             step = np.searchsorted(chance.time_s, edge_s[cells], "right") - 1
             rate = chance.rate_mbps[np.maximum(step, 0)]
-            better = rate > best[cells]
-            best[cells[better]], cause[cells[better]] = rate[better], causes.index(word)
-    extra_mb = np.maximum(best - sending, 0.0) * np.diff(edge_s) / 8.0
-    return Missed(edge_s, extra_mb, cause, sending, causes)
+            number = np.full(cells.size, causes.index(word))
+            # Each link takes the place of a slower one, which goes down a place itself.
+            for place in range(links):
+                better = rate > best[place, cells]
+                at = cells[better]
+                rate[better], best[place, at] = best[place, at], rate[better]
+                number[better], cause[place, at] = cause[place, at], number[better]
+    extra_mb = np.maximum(best.sum(axis=0) - sending, 0.0) * np.diff(edge_s) / 8.0
+    unused = (best > 0.0) & (cause != (causes.index(IN_CONTACT) if IN_CONTACT in causes else -1))
+    return Missed(edge_s, extra_mb, cause[np.argmax(unused, axis=0), np.arange(sending.size)], sending, causes)
 
 
 def share_out(

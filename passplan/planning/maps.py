@@ -12,7 +12,8 @@ max(0, fill + d - capacity)), because a MB more aboard is either sent (the stora
 changes in a straight line over the step counts as it is at the end. (Own derivation; tests compare it with the
 event by event accounts.)
 
-There is one map for every option and layer (see ``layering.py``) of its spacecraft.
+There is one map for every option and layer (see ``layering.py``) of its spacecraft. Contacts of a spacecraft with
+several links may overlap, and their maps do not follow one another: its layers are followed event by event instead.
 """
 
 from __future__ import annotations
@@ -23,6 +24,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from passplan.planning.arrays import Floats, Integers, offsets_of, ragged_ranges
+from passplan.planning.joint_sending import joint_sending
 from passplan.planning.problem import Problem
 from passplan.planning.streams import Layer
 from passplan.planning.value import worth_followed
@@ -72,6 +74,8 @@ def worth_by_layers(problem: Problem, maps: StorageMaps, craft: int, mine: Seque
     """The same by its layers alone, which may be more than it is worth."""
     options = problem.options
     worth = -sum(float(problem.price[o]) for o in mine)
+    if problem.fleet.links[craft] > 1:
+        return worth + sum(_worth_of_layer(problem, layer, mine) for layer in problem.layers[craft])
     for k, layer in enumerate(problem.layers[craft]):
         fill, made, clock = layer.start_mb, 0.0, 0.0
         sent = lost = 0.0
@@ -84,6 +88,25 @@ def worth_by_layers(problem: Problem, maps: StorageMaps, craft: int, mine: Seque
         left, over = _idle(layer, fill, clock, problem.horizon_s, float(layer.made_mb[-1]) - made)
         worth += layer.weight * (sent + problem.left_worth_share * left) - layer.spill_cost * (lost + over)
     return worth
+
+
+def _worth_of_layer(problem: Problem, layer: Layer, mine: Sequence[int]) -> float:
+    """What one layer earns through contacts that may overlap, stretch by stretch."""
+    options = problem.options
+    joint = joint_sending([
+        (float(options.piece_start_s[p]), float(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
+        for o in mine for p in options.pieces(o)])
+    edges = np.unique(np.concatenate([layer.time_s, *(piece[:2] for piece in joint.pieces)]))
+    rate = np.zeros(len(edges) - 1)
+    for start_s, end_s, mb_per_s in joint.pieces:
+        rate[slice(*np.searchsorted(edges, [start_s, end_s]))] = mb_per_s
+    fill, sent, lost = layer.start_mb, 0.0, 0.0
+    for made, room, most in zip(np.diff(layer.made(edges)).tolist(), layer.room(edges[1:]).tolist(),
+                                (rate * np.diff(edges)).tolist(), strict=True):
+        now = min(fill + made, most)
+        over = max(0.0, fill + made - now - room)
+        fill, sent, lost = fill + made - now - over, sent + now, lost + over
+    return layer.weight * (sent + problem.left_worth_share * fill) - layer.spill_cost * lost
 
 
 def _idle(layer: Layer, fill: float, from_s: float, until_s: float, made: float) -> tuple[float, float]:

@@ -229,11 +229,11 @@ def _carried(problem: Problem, mine: Integers, instants: Floats) -> tuple[Intege
 def _add_recurrence(block: _Blocks, need: Recurrence) -> None:
     """Count, along time, how many chosen options cover each stretch; a stretch that none covers has slack."""
     starts = np.clip(need.start_s, need.from_s, need.until_s)
-    ends = np.clip(need.end_s + need.every_s, need.from_s, need.until_s)
+    ends = np.clip(need.end_s + need.reach_s, need.from_s, need.until_s)
     instants = np.unique(np.concatenate([[need.from_s, need.until_s], starts, ends]))
     steps = len(instants) - 1
     count = block.add_columns(upper=np.full(steps, _INFINITY))
-    slack = block.add_columns(upper=np.ones(steps), points=np.diff(instants) / need.every_s)
+    slack = block.add_columns(upper=np.ones(steps), points=need.points * np.diff(instants) / need.every_s)
     chain = block.add_rows(lower=np.zeros(steps), upper=np.zeros(steps))
     block.add_entries(chain, count, np.ones(steps))
     block.add_entries(chain[1:], count[:-1], -np.ones(steps - 1))

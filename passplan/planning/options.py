@@ -13,7 +13,7 @@ import pandas as pd
 from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
-from passplan.planning.cuts import Cuts, neighbour_cuts, spread
+from passplan.planning.cuts import Cuts, add_handovers, neighbour_cuts, spread
 from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Standby, Wish
 from passplan.planning.horizon import column_seconds
 from passplan.planning.on_air import on_air_span
@@ -97,6 +97,10 @@ def find_options(
     cuts = neighbour_cuts(windows, [
         setup.longest(fleet.names[craft], antennas.names[antenna])
         for craft, antenna in zip(windows.spacecraft.tolist(), windows.antenna.tolist(), strict=True)])
+    for wish in wishes:
+        if wish.overlap_s and wish.spacecraft in fleet.names:
+            craft = fleet.names.index(wish.spacecraft)
+            add_handovers(cuts, windows, craft, wish.start_s, wish.end_s, wish.overlap_s)
     of_window: dict[int, list[Candidate]] = {}
     excluded: dict[int, tuple[str, str]] = {}
     for w, link in enumerate(links):
@@ -201,7 +205,8 @@ class _Builder:
         """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""
         most = self.policy.options_per_window
         asked = self._asked_of(w, [(low, high)])
-        must_start, must_end = {low} | {a for a, _ in asked}, {high} | {b for _, b in asked}
+        must_start = {low} | {a for a, _ in asked} | {t for t in cuts.must_start if low < t < high}
+        must_end = {high} | {b for _, b in asked} | {t for t in cuts.must_end if low < t < high}
         whole = self._candidate(w, link, low, high)
         if whole is not None and whole.downlink is not None:
             # Time in which nothing can be sent need not be held.

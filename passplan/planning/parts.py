@@ -14,7 +14,7 @@ import numpy as np
 
 from passplan.planning.arrays import Flags, Integers, offsets_of
 from passplan.planning.problem import Problem
-from passplan.planning.rules.terms import Lane, Recurrence, Removal, Rows, Terms, Wanted
+from passplan.planning.rules.terms import AtLeast, Lane, Recurrence, Removal, Rows, Terms, Wanted
 
 # Parts smaller than this are planned together: a solver takes them apart again, and starting it costs time.
 _LEAST_OPTIONS = 1_500
@@ -43,7 +43,7 @@ def independent_parts(problem: Problem, terms: Terms) -> list[Part]:
     part = _gathered(label, options)
     if part.max() == 0:
         return [Part(problem, terms, np.arange(len(problem.options)))]
-    return [_part(problem, terms, part == k, first=k == 0) for k in range(int(part.max()) + 1)]
+    return [part_of(problem, terms, part == k, first=k == 0) for k in range(int(part.max()) + 1)]
 
 
 def _joined(count: int, pairs: Iterable[tuple[Integers, Integers]]) -> Integers:
@@ -94,8 +94,11 @@ def _gathered(label: Integers, options: Integers) -> Integers:
     return part
 
 
-def _part(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part:
-    """The options of some spacecraft. The fleet stays whole in the first part; elsewhere the others hold nothing."""
+def part_of(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part:
+    """The options of some spacecraft, with what is ``first`` of its own; the other spacecraft hold nothing.
+
+    Of requirements that others could serve too, only these options are left.
+    """
     kept = np.flatnonzero(crafts[problem.options.spacecraft])
     place = np.full(len(problem.options), -1, dtype=np.int64)
     place[kept] = np.arange(len(kept))
@@ -106,7 +109,7 @@ def _part(problem: Problem, terms: Terms, crafts: Flags, *, first: bool) -> Part
         extra_price=problem.extra_price[kept] if len(problem.extra_price) else problem.extra_price,
         base_worth=problem.base_worth if first else 0.0,
         fleet=replace(fleet, weight=fleet.weight * zero, generation_mb_per_s=fleet.generation_mb_per_s * zero,
-                      start_fill_mb=fleet.start_fill_mb * zero,
+                      start_fill_mb=fleet.start_fill_mb * zero, links=np.where(crafts, fleet.links, 1),
                       streams=tuple(own if crafts[k] else () for k, own in enumerate(fleet.streams))))
     return Part(part, _terms(problem, terms, place, crafts, first=first), kept)
 
@@ -125,17 +128,23 @@ def _terms(problem: Problem, terms: Terms, place: Integers, crafts: Flags, *, fi
     for need in terms.recurrences:
         if here(need.options) if len(need.options) else crafts[problem.fleet.names.index(need.name)]:
             recurrences.append(replace(need, options=place[need.options]))
-    wanted: list[Wanted] = [replace(w, options=place[w.options]) for w in terms.wanted if here(w.options)]
+    wanted: list[Wanted] = [
+        replace(w, options=place[w.options][place[w.options] >= 0]) for w in terms.wanted if here(w.options)]
     removals: list[Removal] = [
         replace(r, options=place[r.options][place[r.options] >= 0]) for r in terms.removals]
     return Terms(
         removals=tuple(removals), lanes=tuple(lanes), rows=tuple(_rows(rows, place) for rows in terms.rows),
         wanted=tuple(wanted), recurrences=tuple(recurrences),
-        guarantees=tuple(replace(g, options=place[g.options]) for g in terms.guarantees if here(g.options)))
+        guarantees=tuple(_guarantee(g, place) for g in terms.guarantees if here(g.options)))
+
+
+def _guarantee(promise: AtLeast, place: Integers) -> AtLeast:
+    mine = place[promise.options] >= 0
+    return replace(promise, options=place[promise.options[mine]], amounts=promise.amounts[mine])
 
 
 def _rows(rows: Rows, place: Integers) -> Rows:
-    """The rows that have an option here: all of their options are."""
+    """The rows that have an option here, with these options."""
     row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
     mine = place[rows.options] >= 0
     kept = np.unique(row[mine])

@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Collection, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 import pandas as pd
 
-from passplan.inputs.calendar_records import Request
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
 from passplan.link.conflicts import Interference, InterferenceCrowd, InterferencePair
@@ -22,10 +21,10 @@ from passplan.planning.hooks import Draft
 from passplan.planning.horizon import seconds_of
 from passplan.planning.options import OptionSet, find_options, window_arrays
 from passplan.planning.portfolio import Progress, find_plan
-from passplan.planning.problem import Antennas, CommandNeed, Conflict, Crowd, Fleet, Limits, Problem, RequestNeed
+from passplan.planning.problem import Antennas, CommandNeed, Conflict, Crowd, Fleet, Limits, Problem
 from passplan.planning.result import PlanResult
 from passplan.planning.rules import BLOCKS, CAPS, NEEDS, SILENCES, STANDBYS, WISHES, all_terms
-from passplan.planning.rules.requests import able_antennas, offered_service, requested_antennas
+from passplan.planning.rules.requests import request_need
 from passplan.planning.tables import contacts_table, segments_table
 from passplan.planning.turnarounds import too_tight
 from passplan.planning.unused import unused_table
@@ -111,7 +110,7 @@ def build_problem(
     option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes, caps, silences, standbys)
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
-        requests=tuple(_request_need(run, fleet, request) for request in run.requests),
+        requests=tuple(request_need(run, fleet, one) for one in run.requests if one.handover_overlap_s is None),
         commands=_command_needs(run, fleet),
         conflicts=tuple(_conflict(fleet, antennas, pair) for pair in disturbing.pairs),
         crowds=tuple(_crowd(fleet, antennas, crowd) for crowd in disturbing.crowds),
@@ -136,20 +135,6 @@ def _crowd(fleet: Fleet, antennas: Antennas, crowd: InterferenceCrowd) -> Crowd:
         f"{crowd.victim} on {crowd.antenna} beside {', '.join(crowd.interferers)}, C/I of all of them",
         fleet.names.index(crowd.victim), antennas.names.index(crowd.antenna),
         tuple(fleet.names.index(name) for name in crowd.interferers), crowd.shares, crowd.start_s, crowd.end_s)
-
-
-def _request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:
-    antennas = _numbers(run, requested_antennas(run, request))
-    craft = fleet.names.index(request.spacecraft) if request.spacecraft in fleet.names else -1
-    return RequestNeed(
-        request.name, request.spacecraft, craft, antennas, offered_service(request),
-        math.ceil(seconds_of(run, request.earliest_utc)), math.floor(seconds_of(run, request.latest_utc)),
-        math.ceil(request.min_duration_s), request.fixed, request.points,
-        _numbers(run, able_antennas(run, request)) if request.standby else None)
-
-
-def _numbers(run: Run, antennas: Collection[str]) -> frozenset[int]:
-    return frozenset(k for k, name in enumerate(run.antennas) if name in antennas)
 
 
 def _command_needs(run: Run, fleet: Fleet) -> tuple[CommandNeed, ...]:

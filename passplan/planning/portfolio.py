@@ -9,8 +9,6 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
-import numpy as np
-
 from passplan.planning.certificate import Certificate
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
@@ -23,9 +21,8 @@ from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Proof, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
-from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
+from passplan.planning.several_links import arrays_of, search_all
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.staged import plan_in_order
@@ -54,7 +51,7 @@ def find_plan(
         if problem.in_order:
             return plan_in_order(problem, terms, limits, clock, progress)
         parts = independent_parts(problem, terms)
-        ceilings = [_ceiling(part.problem) for part in parts]
+        ceilings = [part.problem.ceiling for part in parts]
         value = bound = 0.0
         found: list[_Outcome] = []
         for k, part in enumerate(parts):
@@ -100,7 +97,7 @@ def _plan_part(
         maps = storage_maps(problem)
         arrays = None
         if len(problem.options) > limits.exact_options and compiled_in_time(clock):
-            arrays = fleet_arrays(problem, terms, maps)
+            arrays = arrays_of(problem, terms, maps)
         began_s = clock.elapsed_s()
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
         first_s = clock.elapsed_s() - began_s
@@ -134,13 +131,12 @@ def _plan_part(
             overrated += news
     if open_still() and compiled_in_time(clock):
         with clock.stage("search"):
-            if arrays is None:
-                arrays = fleet_arrays(problem, terms, maps)
             base = problem.base_worth
             # A plan of this size has to be checked and tidied too: as long as the first one took, about.
             reserve_s = min(first_s, 0.1 * clock.left_s())
-            found = search_plan(
-                arrays, terms, limits, clock.part(clock.left_s() - reserve_s), best.chosen, best.points,
+            arrays = arrays or arrays_of(problem, terms, maps)
+            found = search_all(
+                problem, terms, arrays, limits, clock.part(clock.left_s() - reserve_s), best.chosen, best.points,
                 lambda v, b: tell(v + base, b + base))
         candidate = _Candidate(problem, terms, found.chosen, "search")
         # With fewer points, more plans compete than the bound so far is for.
@@ -188,9 +184,3 @@ def _conclude(
     return PlanResult(
         best.chosen, "stopped_by_limit" if clock.stopped and status == "greedy" else status, value, bound, gap,
         tuple(tiers), best.shortfalls, best.account, best.path, dict(clock.seconds), proofs, clock.stopped)
-
-
-def _ceiling(problem: Problem) -> float:
-    """A bound that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
-    worth = sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1])) for mine in problem.layers for layer in mine)
-    return worth + problem.base_worth - float(np.minimum(problem.price, 0.0).sum())

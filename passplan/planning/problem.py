@@ -28,7 +28,8 @@ class Fleet:
 
     ``streams`` are the classes of data of each spacecraft by falling weight, none for one with a single class at a
     steady rate. Where there are some the arrays sum them up: the highest weight, the mean rate, the whole fill; and
-    ``keeping`` says how each storage loses and frees data (absent: as :class:`Keeping` has it by default).
+    ``keeping`` says how each storage loses and frees data (absent: as :class:`Keeping` has it by default). ``links`` is
+    how many contacts each can be in at once, without it one.
     """
 
     names: tuple[str, ...]
@@ -38,8 +39,11 @@ class Fleet:
     start_fill_mb: Floats
     streams: tuple[tuple[Stream, ...], ...] = ()
     keeping: tuple[Keeping, ...] = ()
+    links: Integers = field(default_factory=lambda: np.zeros(0, dtype=np.int64))
 
     def __post_init__(self) -> None:
+        if not len(self.links):
+            object.__setattr__(self, "links", np.ones(len(self.names), dtype=np.int64))
         freeze(self)
 
     def weighed(self, parts: Sequence[tuple[Fleet, float]]) -> Fleet:
@@ -208,6 +212,13 @@ class Problem:
         """What it costs in worth to use each option, shape (m,), apart from what it sends; may be negative."""
         price: Floats = self.worth_per_money * self.options.cost
         return price + self.extra_price if len(self.extra_price) else price
+
+    @cached_property
+    def ceiling(self) -> float:
+        """A worth that needs no search: all data aboard and generated is delivered, none lost, nothing paid."""
+        worth = sum(layer.weight * (layer.start_mb + float(layer.made_mb[-1]))
+                    for mine in self.layers for layer in mine)
+        return worth + self.base_worth - float(np.minimum(self.price, 0.0).sum())
 
     def needs_of(self, kind: type[N]) -> list[N]:
         """The records of one kind, in their order."""

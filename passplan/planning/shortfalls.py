@@ -13,7 +13,8 @@ class Shortfall:
     """A requirement that is missed. ``points`` is its part of tier 1.
 
     ``kind`` is that of the wanted contact or ``command``; ``name`` is the request's or the spacecraft's. For a command
-    interval ``spans_s`` are the half-open spans of time in which the last command contact is too old.
+    interval ``spans_s`` are the half-open spans of time in which the last command contact is too old, for contacts that
+    hand over those in which none is followed up.
     ``possible`` says whether some single option could have helped.
     """
 
@@ -52,15 +53,7 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
     for need in terms.recurrences:
         spans = overdue_spans(need, picked)
         if spans:
-            seconds = sum(b - a for a, b in spans)
-            best = overdue_spans(need, set(need.options.tolist()))
-            avoidable = seconds > sum(b - a for a, b in best)
-            why = ("the command contacts that could help collide with other requirements" if avoidable
-                   else "no window offers a command contact in time")
-            found.append(Shortfall(
-                "command", need.name, need.name, seconds / need.every_s,
-                f"Spacecraft {need.name} is without a command contact for longer than {need.every_s / 3600:g} h "
-                f"during {seconds / 3600:.2f} h of the horizon: {why}.", avoidable, spans))
+            found.append(_overdue(need, spans))
     for promise in terms.guarantees:
         missing = missing_amount(promise, picked)
         if missing > 0.0:
@@ -75,6 +68,24 @@ def find_shortfalls(terms: Terms, chosen: Iterable[int]) -> tuple[Shortfall, ...
     return tuple(found)
 
 
+def _overdue(need: Recurrence, spans: tuple[tuple[int, int], ...]) -> Shortfall:
+    seconds = sum(b - a for a, b in spans)
+    best = overdue_spans(need, set(need.options.tolist()))
+    avoidable = seconds > sum(b - a for a, b in best)
+    what = "contacts" if need.request else "command contacts"
+    why = f"the {what} that could help collide with other requirements" if avoidable else (
+        f"no windows offer contacts that overlap by {need.overlap_s} s there" if need.request
+        else "no window offers a command contact in time")
+    sentence = (f"Spacecraft {need.name} is without a command contact for longer than {need.every_s / 3600:g} h "
+                f"during {seconds / 3600:.2f} h of the horizon")
+    if need.request:
+        sentence = (f"Request {need.request} for {need.name}, contacts that hand over to each other, is not met during "
+                    f"{seconds} s of {need.every_s} s")
+    return Shortfall(
+        "request" if need.request else "command", need.request or need.name, need.name,
+        need.points * seconds / need.every_s, f"{sentence}: {why}.", avoidable, spans)
+
+
 def missing_amount(promise: AtLeast, picked: set[int]) -> float:
     """What the chosen options lack of a guarantee, in its own unit; nothing where it is a matter of rounding."""
     got = sum(amount for o, amount in zip(promise.options.tolist(), promise.amounts.tolist(), strict=True)
@@ -84,8 +95,8 @@ def missing_amount(promise: AtLeast, picked: set[int]) -> float:
 
 
 def overdue_spans(need: Recurrence, picked: set[int]) -> tuple[tuple[int, int], ...]:
-    """The half-open spans [s] in which the last chosen command contact is older than the interval."""
-    covered = sorted((int(a), int(b) + need.every_s)
+    """The half-open spans [s] in which the last chosen command contact is too old, or no contact follows up."""
+    covered = sorted((int(a), int(b) + need.reach_s)
                      for o, a, b in zip(need.options, need.start_s, need.end_s, strict=True) if int(o) in picked)
     spans, reached = [], need.from_s
     for start_s, until_s in covered:
@@ -103,7 +114,8 @@ def least_points(terms: Terms) -> float:
     """Points that no plan can avoid, were every option usable at once: a proven floor of tier 1."""
     points = sum(want.points for want in terms.wanted if len(want.options) == 0)
     for need in terms.recurrences:
-        points += sum((b - a) / need.every_s for a, b in overdue_spans(need, set(need.options.tolist())))
+        spans = overdue_spans(need, set(need.options.tolist()))
+        points += sum(need.points * (b - a) / need.every_s for a, b in spans)
     for promise in terms.guarantees:
         points += promise.points * missing_amount(promise, set(promise.options.tolist())) / promise.need
     return points

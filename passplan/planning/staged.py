@@ -24,10 +24,10 @@ from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap, status_of
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import lowest_ceiling
-from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import fleet_arrays, load_plan
+from passplan.planning.search.fleetarrays import load_plan
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.search.schedule import worth_of
+from passplan.planning.several_links import arrays_of, ceiling_without, search_all
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -151,10 +151,9 @@ class _Staged:
 
         if not compiled_in_time(time):
             return bound
-        arrays, points = fleet_arrays(total, self.terms, self.maps), self.best.points
-        if not len(arrays.option):
-            return bound
-        found = search_plan(arrays, self.terms, limits, time, self.best.chosen, points, tell)
+        points = self.best.points
+        arrays = arrays_of(total, self.terms, self.maps)
+        found = search_all(total, self.terms, arrays, limits, time, self.best.chosen, points, tell)
         self._offer(found.chosen, "search")
         # The bound is over plans with as few points as the search's own.
         fewer = self.best.points < points - _SAME
@@ -169,16 +168,22 @@ class _Staged:
         total, shares = self._sum(k, gently=True), self._weights(k, gently=True)
         if not compiled_in_time(time):
             return bound
-        arrays = fleet_arrays(total, self.terms, self.maps)
-        if not len(arrays.option):
-            return bound
         held = sum(share * reached for share, reached in zip(shares, self.best.reached[:k], strict=True))
         less = held - total.base_worth
+
+        def tell(_: float, above: float) -> None:
+            self._say(k, min(bound, above - less))
+
+        arrays = arrays_of(total, self.terms, self.maps)
+        if arrays is None:
+            found = ceiling_without(total, self.terms, self.limits, time, self.best.chosen, self.best.points, tell)
+            return min(bound, found - less)
+        if not len(arrays.option):
+            return bound
         taken, size = load_plan(arrays, self.best.chosen)
         counted = sum(worth_of(arrays, i, taken[i], size[i])[1] for i in range(len(size)))
         found = lowest_ceiling(
-            arrays, taken, size, self.best.points - counted, self.limits.threads, time,
-            lambda _, above: self._say(k, min(bound, above - less)))
+            arrays, taken, size, self.best.points - counted, self.limits.threads, time, tell)
         return min(bound, found - less)
 
     def _weights(self, k: int, *, gently: bool = False) -> list[float]:

@@ -75,10 +75,11 @@ def _standby_cut(problem: Problem, one: Candidate) -> str:
 
 def _origins(terms: Terms) -> dict[int, str]:
     """Who wanted each option; where several did, the one that outranks the others."""
+    handing_over = {int(o): "requested" for need in terms.recurrences if need.request for o in need.options}
     words = {"request": "requested", "pin": "pinned", "frozen": "frozen", "loaded": "frozen",
              "emergency": "emergency"}
-    return {int(o): words[want.kind] for want in sorted(terms.wanted, key=lambda want: list(words).index(want.kind))
-            for o in want.options}
+    wanted = sorted(terms.wanted, key=lambda want: list(words).index(want.kind))
+    return {**handing_over, **{int(o): words[want.kind] for want in wanted for o in want.options}}
 
 
 def segments_table(

@@ -16,12 +16,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from passplan.planning.arrays import Floats, Integers
 from passplan.planning.classes import Aboard, follow
+from passplan.planning.joint_sending import joint_sending
 from passplan.planning.option_table import Options
 from passplan.planning.problem import Problem
 from passplan.planning.streams import Keeping, Stream
@@ -75,8 +76,9 @@ class Account:
 def account(problem: Problem, chosen: Iterable[int]) -> Account:
     """Follow every spacecraft's storage through the chosen options and add up the objective.
 
-    ``chosen`` are option indices in any order; contacts of one spacecraft must not overlap. Raises
-    ``ValueError`` if sending pieces of one spacecraft overlap.
+    ``chosen`` are option indices in any order. Contacts of a spacecraft with several links may overlap: at any instant
+    their rates add up, and what is sent is divided among them as the rates are. Raises ``ValueError`` if sending
+    pieces of one with a single link overlap.
     """
     options, fleet = problem.options, problem.fleet
     order = sorted((int(o) for o in chosen), key=lambda o: (int(options.start_s[o]), int(options.antenna[o]), o))
@@ -92,8 +94,6 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
     earned = []
     for i, mine in enumerate(by_craft):
         pieces = [p for o in mine for p in options.pieces(o)]
-        sending = [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
-                   for p in pieces]
         streams = fleet.streams_of(i)
         if streams:
             aboard[i] = run = follow_contacts(problem, i, mine)
@@ -103,9 +103,7 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
             weights = np.array([one.weight for one in streams])
             earned.append(float(run.sent_worth.sum()) + problem.left_worth_share * float(weights @ run.left_mb))
         else:
-            volumes, lost[i], left[i] = follow_storage(
-                problem.horizon_s, float(fleet.start_fill_mb[i]), float(fleet.generation_mb_per_s[i]),
-                float(fleet.capacity_mb[i]), sending)
+            volumes, lost[i], left[i] = _follow_plain(problem, i, pieces)
             weight = float(fleet.weight[i])
             worth.update((p, weight * mb) for p, mb in zip(pieces, volumes, strict=True))
             earned.append(weight * (math.fsum(volumes) + problem.left_worth_share * left[i]))
@@ -126,22 +124,47 @@ def account(problem: Problem, chosen: Iterable[int]) -> Account:
 
 
 def follow_contacts(problem: Problem, craft: int, mine: Sequence[int]) -> Aboard:
-    """The classes of one spacecraft through the options ``mine``, in time order and apart from each other."""
+    """The classes of one spacecraft through the options ``mine``, in time order (with one link: apart)."""
     options, fleet = problem.options, problem.fleet
-    pieces = [(int(options.piece_start_s[p]), int(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
-              for o in mine for p in options.pieces(o)]
+    pieces = _sending(options, [p for o in mine for p in options.pieces(o)])
     keeping = fleet.keeping_of(craft)
-    freed_s = [_freed_s(options, mine, k, keeping) for k, o in enumerate(mine) for _ in options.pieces(o)]
-    return follow(
-        fleet.streams_of(craft), float(fleet.capacity_mb[craft]), problem.horizon_s, pieces, keeping,
-        freed_s if keeping.acknowledged else ())
+    freed_s: list[float] = []
+    if keeping.acknowledged:
+        freed_s = [_freed_s(options, mine, o, keeping) for o in mine for _ in options.pieces(o)]
+    streams, capacity_mb = fleet.streams_of(craft), float(fleet.capacity_mb[craft])
+    if fleet.links[craft] == 1:
+        return follow(streams, capacity_mb, problem.horizon_s, pieces, keeping, freed_s)
+    joint = joint_sending(pieces)
+    # What several contacts send at once is freed with the last of them.
+    freed_s = [max(freed_s[k] for k, _ in shares) for shares in joint.shares] if freed_s else []
+    run = follow(streams, capacity_mb, problem.horizon_s, joint.pieces, keeping, freed_s)
+    return replace(run, sent_mb=joint.dealt_out(run.sent_mb), sent_worth=joint.dealt_out(run.sent_worth))
 
 
-def _freed_s(options: Options, mine: Sequence[int], k: int, keeping: Keeping) -> float:
-    """When the storage of what contact ``k`` sends is freed: at its end, or at that of the next with commands."""
+def _follow_plain(problem: Problem, craft: int, pieces: Sequence[int]) -> tuple[list[float], float, float]:
+    """One class at a steady rate through pieces of sending: MB sent in each, MB lost, and MB left."""
+    fleet, sending = problem.fleet, _sending(problem.options, pieces)
+    store = (problem.horizon_s, float(fleet.start_fill_mb[craft]), float(fleet.generation_mb_per_s[craft]),
+             float(fleet.capacity_mb[craft]))
+    if fleet.links[craft] == 1:
+        return follow_storage(*store, sending)
+    joint = joint_sending(sending)
+    volumes, lost, left = follow_storage(*store, joint.pieces)
+    return joint.dealt_out(np.array(volumes)).tolist(), lost, left
+
+
+def _sending(options: Options, pieces: Iterable[int]) -> list[tuple[float, float, float]]:
+    return [(float(options.piece_start_s[p]), float(options.piece_end_s[p]), float(options.piece_rate_mb_per_s[p]))
+            for p in pieces]
+
+
+def _freed_s(options: Options, mine: Sequence[int], contact: int, keeping: Keeping) -> float:
+    """When the storage of what a contact sends is freed: at its end, or at that of the next with commands."""
+    end_s = float(options.end_s[contact])
     if keeping.acknowledged == "contact":
-        return float(options.end_s[mine[k]])
-    return min((float(options.end_s[o]) for o in mine[k + 1:] if options.command[o]), default=math.inf)
+        return end_s
+    return min((float(options.end_s[o]) for o in mine if options.start_s[o] >= end_s and options.command[o]),
+               default=math.inf)
 
 
 def worth_followed(problem: Problem, craft: int, mine: Sequence[int]) -> float:
@@ -168,7 +191,7 @@ def _balances(streams: Sequence[Stream], run: Aboard | None) -> tuple[ClassBalan
 
 def follow_storage(
     horizon_s: int, fill_mb: float, generation_mb_per_s: float, capacity_mb: float,
-    pieces: Sequence[tuple[int, int, float]],
+    pieces: Sequence[tuple[float, float, float]],
 ) -> tuple[list[float], float, float]:
     """Follow one storage through sending pieces (start_s, end_s, rate_mb_per_s) in time order.
 
@@ -176,9 +199,9 @@ def follow_storage(
     """
     volumes: list[float] = []
     lost: list[float] = []
-    clock = 0
+    clock = 0.0
 
-    def stretch(until_s: int, rate_mb_per_s: float) -> float:
+    def stretch(until_s: float, rate_mb_per_s: float) -> float:
         nonlocal fill_mb, clock
         aboard = fill_mb + generation_mb_per_s * (until_s - clock)
         sent = min(aboard, rate_mb_per_s * (until_s - clock))

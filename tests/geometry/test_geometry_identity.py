@@ -35,7 +35,7 @@ MIDNIGHT_S = float(utc_seconds(np.datetime64("2027-03-10")))
 def _ids(culminations_s: list[float]) -> list[str]:
     culmination = np.array(culminations_s)
     pair = np.zeros(culmination.size, np.int64)
-    return window_ids(["Teal.Dish."], pair, slots(culmination, np.full(culmination.size, 600.0)), culmination)
+    return list(window_ids(["Teal.Dish."], pair, slots(culmination, np.full(culmination.size, 600.0)), culmination))
 
 
 def test_the_form_of_an_id() -> None:

@@ -14,6 +14,9 @@ STORAGE = "storage_mb = 16000"
 @pytest.mark.parametrize(
     ("written", "parts"),
     [
+        ("links = 0", ("links", "0", "must be at least 1")),
+        ("links = 20", ("links", "20", "must be at most 8")),
+        ("link = 2", ("link", "did you mean 'links'?")),
         ("contact_gap_s = -1", ("contact_gap_s", "-1", "must be at least 0")),
         ("contact_gap = 60", ("contact_gap", "did you mean 'contact_gap_s'?")),
         ("cool_down_s = 100000", ("cool_down_s", "100000", "must be at most 86400")),

@@ -32,6 +32,14 @@ LENGTH = "min_duration_s = 300"
         (DAILY, "gap = 0.005", 'guarantee = [{ mission = "land" }]', ("needs contacts, mb or both",)),
         (DAILY, "gap = 0.005", 'guarantee = [{ mission = "land", mb = 5, days = 0 }]', ("days", "at least 1")),
         (REQUESTS, 'service = "both"', 'service = "ranging"', ("service", "set ranging = true")),
+        (REQUESTS, LENGTH, "handover_overlap_s = 0", ("handover_overlap_s", "0", "must be at least 1")),
+        (REQUESTS, LENGTH, "handover_overlap_s = 60.5", ("handover_overlap_s", "60.5", "write a whole number")),
+        (REQUESTS, LENGTH, "handover_overlap_s = 60", (
+            "(new coast schedule).handover_overlap_s", "60", "Ambril-3 is in one contact", "give it links = 2")),
+        (REQUESTS, LENGTH, "handover_overlap_s = 60\nfixed = true", ("on several antennas; drop fixed",)),
+        (REQUESTS, 'site = "Isvarde"', 'antenna = "Isvarde-A"\nhandover_overlap_s = 60', ("drop antenna",)),
+        (REQUESTS, "14:00:00Z", "09:10:00Z\nhandover_overlap_s = 700", (
+            "the span of 600 s is no longer than handover_overlap_s 700", "widen it")),
     ],
 )
 def test_requirements_that_make_no_sense(

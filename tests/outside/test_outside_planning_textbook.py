@@ -19,7 +19,7 @@ PATHS = pytest.mark.parametrize("exact_options", [10_000, 0], ids=["exact", "sea
 
 def _limits(exact_options: int) -> Limits:
     # The first search on a machine compiles its kernels, which takes a while where much else is running.
-    return Limits(gap=0.0, exact_options=exact_options, time_limit_s=300.0)
+    return Limits(gap=0.0, exact_options=exact_options, time_limit_s=300.0, search_rounds=40)
 
 
 def fixed_volumes(spans: list[tuple[int, int, float]], antennas: list[int], count: int) -> Problem:

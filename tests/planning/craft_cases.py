@@ -20,8 +20,12 @@ from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNe
 
 def random_craft_problem(seed: int) -> Problem:
     """A random problem in which each spacecraft has each limit by a coin's toss."""
-    rng = random.Random(10_000 + seed)
     problem = random_problem(seed)
+    return replace(problem, needs=craft_needs(problem, random.Random(10_000 + seed)))
+
+
+def craft_needs(problem: Problem, rng: random.Random) -> tuple[object, ...]:
+    """Each limit for each spacecraft of a problem by a coin's toss, and when transmitters are on."""
     needs: list[object] = [on_air_of(problem)]
     for craft in range(len(problem.fleet)):
         edges_s = tuple(float(t) for t in range(rng.randint(1, 15) * STEP_S + 7, problem.horizon_s, 20 * STEP_S))
@@ -39,7 +43,7 @@ def random_craft_problem(seed: int) -> Problem:
             net_w = np.array([rng.choice([-30.0, -10.0, 20.0, 50.0, 70.0]) for _ in range(5)])
             needs.append(PowerNeed(craft, capacity_wh, rng.choice([0.0, 0.2, 0.5]) * capacity_wh,
                                    rng.choice([0.1, 0.6, 1.0]) * capacity_wh, edges, net_w))
-    return replace(problem, needs=tuple(needs))
+    return tuple(needs)
 
 
 def loosened(problem: Problem) -> Problem:
@@ -77,30 +81,39 @@ class CraftJudge(Judge):
         chosen = list(chosen)
         checks = {GapNeed: self._rested, CountNeed: self._few_enough, OrbitSendingNeed: self._quiet_in_orbits,
                   SpanSendingNeed: self._quiet_in_spans, PowerNeed: self._charged}
-        return all(checks[type(need)](need, [k for k in chosen if self.options.spacecraft[k] == need.spacecraft])
-                   for need in self.problem.needs if type(need) in checks)
+        return super().kept(chosen) and all(
+            checks[type(need)](need, [k for k in chosen if self.options.spacecraft[k] == need.spacecraft])
+            for need in self.problem.needs if type(need) in checks)
 
     def _rested(self, need: GapNeed, chosen: list[int]) -> bool:
-        o = self.options
-        for after in chosen:
-            for before in chosen:
-                if o.end_s[before] <= o.start_s[after]:
-                    rest_s = o.start_s[after] - o.end_s[before]
-                    both_send = o.downlink[before] and o.downlink[after]
-                    if rest_s < need.gap_s or (both_send and rest_s < need.cool_down_s):
-                        return False
-        return True
+        links = int(self.problem.fleet.links[need.spacecraft])
+        sending = [k for k in chosen if self.options.downlink[k]]
+        return self._dealt(chosen, [[] for _ in range(links)], need.gap_s) and self._dealt(
+            sending, [[] for _ in range(links)], need.cool_down_s)
+
+    def _dealt(self, contacts: list[int], hands: list[list[int]], rest_s: int) -> bool:
+        """Whether the contacts can be dealt out to links so that each rests between its own."""
+        if not contacts:
+            return True
+        o, first = self.options, contacts[0]
+        for hand in hands:
+            if all(o.start_s[first] >= o.end_s[k] + rest_s or o.start_s[k] >= o.end_s[first] + rest_s for k in hand):
+                hand.append(first)
+                if self._dealt(contacts[1:], hands, rest_s):
+                    return True
+                hand.pop()
+        return False
 
     def _few_enough(self, need: CountNeed, chosen: list[int]) -> bool:
         parts = [sum(edge <= self.options.start_s[k] for edge in need.edges_s) for k in chosen]
         return all(parts.count(part) <= need.most for part in parts)
 
-    def _seconds_on(self, chosen: list[int]) -> list[bool]:
+    def _seconds_on(self, chosen: list[int]) -> list[int]:
         (on_air,) = self.problem.needs_of(OnAir)
-        seconds = [False] * self.problem.horizon_s
+        seconds = [0] * self.problem.horizon_s
         for k in chosen:
             for t in range(int(on_air.start_s[k]), int(on_air.end_s[k])):
-                seconds[t] = True
+                seconds[t] += 1
         return seconds
 
     def _charged(self, need: PowerNeed, chosen: list[int]) -> bool:
@@ -109,7 +122,7 @@ class CraftJudge(Judge):
         part = np.searchsorted(need.edges_s, np.arange(self.problem.horizon_s), side="right") - 1
         load_w = np.zeros(self.problem.horizon_s)
         for k in chosen:
-            load_w[on_air.start_s[k]:on_air.end_s[k]] = on_air.load_w[k]
+            load_w[on_air.start_s[k]:on_air.end_s[k]] += on_air.load_w[k]
         idle = charge = need.start_wh
         for net_w, drawn_w in zip(need.net_w[part].tolist(), load_w.tolist(), strict=True):
             idle = min(need.capacity_wh, idle + net_w / 3600.0)

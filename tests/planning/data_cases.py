@@ -14,8 +14,11 @@ from passplan.planning.streams import Keeping, Stream
 
 def random_data_problem(seed: int) -> Problem:
     """A random problem in which spacecraft hold up to three classes; rates change on the 60 s grid."""
-    problem = random_problem(seed, windows=9)
-    rng = random.Random(f"data {seed}")
+    return with_classes(random_problem(seed, windows=9), random.Random(f"data {seed}"))
+
+
+def with_classes(problem: Problem, rng: random.Random) -> Problem:
+    """The problem with up to three classes for each spacecraft, none standing for its plain storage."""
     fleet, steps = problem.fleet, problem.horizon_s // STEP_S
     streams = []
     for craft in range(len(fleet)):
@@ -38,7 +41,7 @@ class DataJudge(Judge):
     """Each class in steps: the best goes down first, the least is lost first."""
 
     def _storage(self, craft: int, mine: frozenset[int]) -> float:
-        streams, o = self.problem.fleet.streams[craft], self.options
+        streams, o = self.problem.fleet.streams_of(craft), self.options
         if not streams:
             return super()._storage(craft, mine)
         capacity = float(self.problem.fleet.capacity_mb[craft])

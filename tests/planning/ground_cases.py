@@ -18,7 +18,12 @@ from passplan.planning.rules.shared_equipment import SharedNeed
 
 def limited_problem(seed: int) -> Problem:
     """A random problem with some of: a pool, a limit of staff, a line by rate and by the day, a budget."""
-    problem, rng = random_problem(seed), random.Random(7_000 + seed)
+    problem = random_problem(seed)
+    return replace(problem, needs=ground_needs(problem, random.Random(7_000 + seed)))
+
+
+def ground_needs(problem: Problem, rng: random.Random) -> tuple[object, ...]:
+    """The needs of those limits, each more often than not."""
     options, half_s = problem.options, problem.horizon_s // 2 // STEP_S * STEP_S
     days = (Day("first", -5_000, half_s), Day("second", half_s, half_s + 86_400))
     dishes = sorted(rng.sample(range(len(problem.antennas)), rng.randint(1, len(problem.antennas))))
@@ -33,7 +38,7 @@ def limited_problem(seed: int) -> Problem:
             rng.choice([None, 0.5, 3.0, 4.0])),
         BudgetNeed(rng.choice([0.0, 5.0, 42.0, 60.0]), days),
     ]
-    return replace(problem, needs=tuple(need for need in needs if rng.random() < 0.6))
+    return tuple(need for need in needs if rng.random() < 0.6)
 
 
 class GroundJudge(Judge):
@@ -46,6 +51,8 @@ class GroundJudge(Judge):
 
     def _keeps(self, need: object, picked: list[int]) -> bool:
         o = self.options
+        if not isinstance(need, SharedNeed | BackhaulNeed | BudgetNeed):
+            return True
         if isinstance(need, SharedNeed):
             span = {int(k): (int(a), int(b)) for k, a, b in zip(need.options, need.start_s, need.end_s, strict=True)}
             return all(
@@ -55,7 +62,6 @@ class GroundJudge(Judge):
             return all(
                 sum(float(o.cost[k]) for k in picked if day.start_s <= o.start_s[k] < day.end_s) <= need.per_day + 1e-9
                 for day in need.days)
-        assert isinstance(need, BackhaulNeed)
         rates = {k: self._rates(k) for k in picked if o.antenna[k] in need.antennas}
         for day, limit_mb in need.day_mb:
             carried = sum(rate * STEP_S for steps in rates.values() for step, rate in steps.items()

@@ -95,8 +95,12 @@ class NeedJudge(Judge):
 
 def ordered_problem(seed: int) -> Problem:
     """A needy problem with a published plan, whose objectives are taken in order."""
-    rng = random.Random(70_000 + seed)
-    problem = replace(needy_problem(seed), in_order=True, spill_cost_per_mb=0.0, worth_per_money=0.0)
+    return with_published(needy_problem(seed), random.Random(70_000 + seed))
+
+
+def with_published(problem: Problem, rng: random.Random) -> Problem:
+    """The problem with objectives in order, mostly with a published plan."""
+    problem = replace(problem, in_order=True, spill_cost_per_mb=0.0, worth_per_money=0.0)
     if rng.random() < 0.3:
         return problem
     count = len(problem.options)
@@ -115,7 +119,7 @@ class OrderJudge(NeedJudge):
         problem, o = self.problem, self.options
         plain = replace(problem, worth_per_money=0.0)
         lost = -self._lost(chosen)
-        worth = Judge(replace(plain, extra_price=np.zeros(0), base_worth=0.0)).value(chosen)
+        worth = type(self)(replace(plain, extra_price=np.zeros(0), base_worth=0.0)).value(chosen)
         result = [-self.points(chosen), lost, worth, -sum(float(o.cost[k]) for k in chosen)]
         for need in problem.needs_of(ChangeNeed):
             kept = {int(need.keeps[k]) for k in chosen} - {-1}
@@ -135,5 +139,5 @@ class OrderJudge(NeedJudge):
     def _lost(self, chosen: frozenset[int]) -> float:
         weightless = replace(
             self.problem, spill_cost_per_mb=1.0, extra_price=np.zeros(0), base_worth=0.0,
-            fleet=replace(self.problem.fleet, weight=np.zeros(len(self.problem.fleet))))
-        return -Judge(weightless).value(chosen)
+            fleet=self.problem.fleet.weighed([(self.problem.fleet, 0.0)]))
+        return -type(self)(weightless).value(chosen)

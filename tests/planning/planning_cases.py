@@ -105,7 +105,8 @@ class Judge:
         """Whether two options can both be used."""
         o = self.options
         first, second = (a, b) if (o.start_s[a], o.end_s[a]) <= (o.start_s[b], o.end_s[b]) else (b, a)
-        if o.spacecraft[a] == o.spacecraft[b] and o.start_s[second] < o.end_s[first]:
+        overlap = o.spacecraft[a] == o.spacecraft[b] and o.start_s[second] < o.end_s[first]
+        if overlap and (self.problem.fleet.links[o.spacecraft[a]] == 1 or o.antenna[a] == o.antenna[b]):
             return False
         if (first, second) in self.tight:
             return False
@@ -115,10 +116,18 @@ class Judge:
         return bool(o.antenna[a] != o.antenna[b] or o.start_s[second] >= o.end_s[first] + setup_s)
 
     def kept(self, chosen: Iterable[int]) -> bool:
-        """Whether the amounts of the chosen options stay within every limit, and no antenna is short of beams."""
+        """Whether amounts stay within every limit, and no antenna is short of beams, no spacecraft of links."""
         chosen = list(chosen)
         within = all(sum(amounts.get(o, 0.0) for o in chosen) <= most + 1e-9 for amounts, most in self.limits)
-        return within and self._enough_beams(chosen)
+        return within and self._enough_beams(chosen) and self._enough_links(chosen)
+
+    def _enough_links(self, chosen: list[int]) -> bool:
+        o, links = self.options, self.problem.fleet.links
+        if np.all(links == 1):
+            return True
+        spans = [(int(o.spacecraft[k]), int(o.start_s[k]), int(o.end_s[k])) for k in chosen]
+        return all(sum(who == craft and a <= start_s < b for who, a, b in spans) <= links[craft]
+                   for craft, start_s, _ in spans)
 
     def _enough_beams(self, chosen: list[int]) -> bool:
         o, dishes = self.options, self.problem.antennas
@@ -190,7 +199,7 @@ class Judge:
         for k in mine:
             for p in o.pieces(k):
                 for step in range(int(o.piece_start_s[p]) // STEP_S, int(o.piece_end_s[p]) // STEP_S):
-                    rate[step] = float(o.piece_rate_mb_per_s[p])
+                    rate[step] += float(o.piece_rate_mb_per_s[p])
         fill, sent, lost = float(fleet.start_fill_mb[craft]), 0.0, 0.0
         for step in range(self.steps):
             fill += float(fleet.generation_mb_per_s[craft]) * STEP_S

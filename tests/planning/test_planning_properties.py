@@ -96,6 +96,6 @@ def test_worth_of_what_is_left_never_lowers_what_comes_down_and_what_is_kept_tog
     kept = replace(problem, left_worth_share=share)
     without = find_plan(problem, EXACT).chosen
     assert optimum(kept) >= account(kept, without).value - 1e-5
-    by_search = find_plan(kept, Limits(gap=0.0, exact_options=0, time_limit_s=300.0))
+    by_search = find_plan(kept, Limits(gap=0.0, exact_options=0, time_limit_s=300.0, search_rounds=20))
     assert by_search.bound >= optimum(kept) - 1e-5
     assert close(by_search.value, optimum(kept))

@@ -18,6 +18,7 @@ from passplan.inputs.data import DataClass
 from passplan.inputs.run import Run
 from passplan.planning.audit.making import Rates, rates_of
 from passplan.planning.audit.rows import Contact, Piece
+from passplan.planning.audit.stretches import apportioned, stretches_of
 
 _DUST_MB = 1e-9
 _CLOSE_S = 1e-7
@@ -44,26 +45,29 @@ def ages(run: Run, name: str) -> bool:
 def follow_aged(
     run: Run, name: str, sending: Sequence[tuple[Contact, Piece]], contacts: Sequence[Contact]
 ) -> list[Aged]:
-    """The classes of a spacecraft, best first, through its pieces in time order."""
+    """The classes of a spacecraft, best first, through its pieces in the order of their starts."""
     craft = run.spacecraft[name]
     kinds = [_Kind(item, rates_of(run, name, item), run.horizon_s) for item in run.data_of(name)]
     tank = _Tank(kinds, craft.storage_mb, craft.overflow == "newest")
-    for contact, piece in sending:
-        tank.go(piece.start_s, 0.0, None)
-        freed_s = None
-        if craft.acknowledged_by == "contact":
-            freed_s = contact.end_s
-        elif craft.acknowledged_by == "next_command":
-            freed_s = min((c.end_s for c in contacts if c.spacecraft == name and c.start_s >= contact.end_s
-                           and c.service != "downlink"), default=math.inf)
+    freed_s: list[float] = []
+    for contact, _ in sending if craft.acknowledged_by is not None else ():
+        commands = (c.end_s for c in contacts if c.spacecraft == name and c.start_s >= contact.end_s
+                    and c.service != "downlink")
+        freed_s.append(contact.end_s if craft.acknowledged_by == "contact" else min(commands, default=math.inf))
+    pieces = [piece for _, piece in sending]
+    stretches = list(stretches_of(pieces))
+    for start_s, end_s, active in stretches:
+        tank.go(start_s, 0.0, None)
         for kind in kinds:
             kind.sent.append(0.0)
             kind.worth.append(0.0)
-        tank.go(piece.end_s, piece.rate_mbps / 8.0, freed_s)
+        rate = math.fsum(pieces[k].rate_mbps for k in active) / 8.0
+        # Several links at once: the last of their contacts to be acknowledged frees what they sent.
+        tank.go(end_s, rate, max(freed_s[k] for k in active) if freed_s else None)
     tank.go(run.horizon_s, 0.0, None)
     return [
-        Aged(math.fsum(kind.sent), kind.lost + kind.missed, kind.missed, kind.aboard, tuple(kind.sent),
-             tuple(kind.worth))
+        Aged(math.fsum(kind.sent), kind.lost + kind.missed, kind.missed, kind.aboard,
+             apportioned(kind.sent, pieces, stretches), apportioned(kind.worth, pieces, stretches))
         for kind in kinds
     ]
 

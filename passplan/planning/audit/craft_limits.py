@@ -25,19 +25,36 @@ def check_craft_limits(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]
     for name in run.orbits:
         own = [contact for contact in contacts if contact.spacecraft == name]
         craft = run.spacecraft[name]
-        yield from _rest("contact_gap", "contacts", name, own, craft.contact_gap_s)
         sending = [contact for contact in own if contact.service != "command"]
-        yield from _rest("cool_down", "contacts with sending", name, sending, craft.cool_down_s)
+        for kind, what, held, least_s in (
+            ("contact_gap", "contacts", own, craft.contact_gap_s),
+            ("cool_down", "contacts with sending", sending, craft.cool_down_s),
+        ):
+            rest = _rest if craft.links == 1 else _rest_of_links
+            yield from rest(kind, what, craft, held, least_s)
         yield from _counts(run, craft, own)
         yield from _sending(run, craft, own)
 
 
-def _rest(kind: str, what: str, name: str, contacts: Sequence[Contact], least_s: float) -> Iterator[Fault]:
+def _rest(kind: str, what: str, craft: Spacecraft, contacts: Sequence[Contact], least_s: float) -> Iterator[Fault]:
     for before, after in pairwise(contacts):
         rest_s = after.start_s - before.end_s
         if 0.0 <= rest_s < least_s:
             sentence = f"{what} {before.contact_id} and {after.contact_id} leave {rest_s:g} s, {least_s:g} s are needed"
-            yield Fault(kind, f"spacecraft {name}", sentence)
+            yield Fault(kind, f"spacecraft {craft.name}", sentence)
+
+
+def _rest_of_links(
+    kind: str, what: str, craft: Spacecraft, contacts: Sequence[Contact], least_s: float,
+) -> Iterator[Fault]:
+    """Each contact takes the link that has rested longest; contacts that outnumber the links are a fault by itself."""
+    ended_s = [-math.inf] * craft.links
+    for contact in contacts:
+        rest_s = contact.start_s - min(ended_s)
+        if 0.0 <= rest_s < least_s:
+            sentence = f"between {what} each link has rested for {rest_s:g} s at most when {contact.contact_id} starts"
+            yield Fault(kind, f"spacecraft {craft.name}", f"{sentence}, {least_s:g} s are needed")
+        ended_s[ended_s.index(min(ended_s))] = contact.end_s
 
 
 def _counts(run: Run, craft: Spacecraft, contacts: Sequence[Contact]) -> Iterator[Fault]:

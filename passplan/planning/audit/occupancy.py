@@ -53,18 +53,26 @@ def check_closures(run: Run, contact: Contact) -> Iterator[Fault]:
 
 
 def check_overlaps(run: Run, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft has two.
+    """No antenna has more contacts at a time than beams, setup times counted, and no spacecraft more than links.
 
-    Those that stand by take up an antenna, but nothing of the spacecraft.
+    Those of a spacecraft with several links are each on an antenna of their own. Those that stand by take up an
+    antenna, but nothing of the spacecraft.
     """
     several = {name for name, antenna in run.antennas.items() if antenna.beams > 1}
     alone = [contact for contact in contacts if contact.antenna not in several]
     yield from _overlaps(alone, "antenna", lambda contact: contact.antenna, lambda contact: held(run, contact))
     for name in sorted(several):
-        yield from _crowded(run, name, [contact for contact in contacts if contact.antenna == name])
+        spans = [(*held(run, contact), contact) for contact in contacts if contact.antenna == name]
+        yield from _crowded("antenna", name, run.antennas[name].beams, "beams", spans)
+    own = [contact for contact in contacts if not contact.standby]
     yield from _overlaps(
-        [contact for contact in contacts if not contact.standby], "spacecraft", lambda contact: contact.spacecraft,
-        lambda contact: (contact.start_s, contact.end_s))
+        [contact for contact in own if run.spacecraft[contact.spacecraft].links == 1], "spacecraft",
+        lambda contact: contact.spacecraft, lambda contact: (contact.start_s, contact.end_s))
+    for name, craft in run.spacecraft.items():
+        mine = [(contact.start_s, contact.end_s, contact) for contact in own if contact.spacecraft == name]
+        if craft.links > 1:
+            yield from _crowded("spacecraft", name, craft.links, "links", mine)
+            yield from _twice_there(mine)
 
 
 def held(run: Run, contact: Contact) -> tuple[float, float]:
@@ -90,17 +98,29 @@ def is_of_kind(run: Run, contact: Contact, kind: ContactKind) -> bool:
     return in_band and (kind.service is None or contact.service in ("both", kind.service))
 
 
-def _crowded(run: Run, name: str, contacts: Sequence[Contact]) -> Iterator[Fault]:
-    """Each beam goes to the contact that is next to hold one, once it has been released: is there always one?"""
-    count = run.antennas[name].beams
+def _crowded(
+    what: str, name: str, count: int, units: str, spans: Sequence[tuple[float, float, Contact]],
+) -> Iterator[Fault]:
+    """Each beam, or link, goes to the contact that is next to hold one, once it is free: is there always one?"""
     free_s = [float("-inf")] * count
-    spans = sorted(((*held(run, contact), contact) for contact in contacts), key=lambda entry: entry[:2])
-    for from_s, until_s, contact in spans:
-        beam = free_s.index(min(free_s))
-        if from_s < free_s[beam]:
-            sentence = f"contact {contact.contact_id} begins while its {count} beams are held by others"
-            yield Fault("antenna_overlap", f"antenna {name}", sentence)
-        free_s[beam] = max(free_s[beam], until_s)
+    for from_s, until_s, contact in sorted(spans, key=lambda entry: entry[:2]):
+        unit = free_s.index(min(free_s))
+        if from_s < free_s[unit]:
+            sentence = f"contact {contact.contact_id} begins while its {count} {units} are held by others"
+            yield Fault(f"{what}_overlap", f"{what} {name}", sentence)
+        free_s[unit] = max(free_s[unit], until_s)
+
+
+def _twice_there(spans: Sequence[tuple[float, float, Contact]]) -> Iterator[Fault]:
+    """Two contacts of one spacecraft at once on one antenna, which several beams would not tell apart."""
+    last: dict[str, Contact] = {}
+    for _, _, contact in sorted(spans, key=lambda entry: entry[:2]):
+        before = last.get(contact.antenna)
+        if before is not None and contact.start_s < before.end_s:
+            sentence = f"contacts {before.contact_id} and {contact.contact_id} are on {contact.antenna} at once"
+            yield Fault("spacecraft_overlap", f"spacecraft {contact.spacecraft}", sentence)
+        if before is None or contact.end_s > before.end_s:
+            last[contact.antenna] = contact
 
 
 def _overlaps(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Mapping, Sequence
 from datetime import datetime
 from typing import Any
@@ -14,6 +15,7 @@ from passplan.inputs.run import Run
 from passplan.planning.audit.decisions import decided, frozen
 from passplan.planning.audit.faults import Fault
 from passplan.planning.audit.guarantees import promised, shared
+from passplan.planning.audit.handovers import handed_over
 from passplan.planning.audit.rows import Contact
 from passplan.planning.audit.standby import stands_by
 from passplan.planning.audit.standing import Standing
@@ -58,18 +60,23 @@ def check_requirements(run: Run, contacts: Sequence[Contact], summary: Mapping[s
 
 def _request(run: Run, request: Request, contacts: Sequence[Contact], spares: Sequence[Contact]) -> Standing:
     earliest_s, latest_s = _seconds(run, request.earliest_utc), _seconds(run, request.latest_utc)
+    able = [contact for contact in contacts if contact.spacecraft == request.spacecraft
+            and request.antenna in (None, contact.antenna)
+            and request.site in (None, run.antennas[contact.antenna].site)
+            and contact.service in (request.service, "both")
+            and (request.service != "ranging" or run.antennas[contact.antenna].ranging)
+            and contact.end_s - contact.start_s >= request.min_duration_s]
+    if request.handover_overlap_s is not None:
+        in_run = request.spacecraft in run.orbits
+        return handed_over(
+            able, math.ceil(max(0.0, earliest_s)), math.floor(min(latest_s, run.horizon_s)), request.handover_overlap_s,
+            in_run)
     met = any(
-        contact.spacecraft == request.spacecraft
-        and request.antenna in (None, contact.antenna)
-        and request.site in (None, run.antennas[contact.antenna].site)
-        and contact.service in (request.service, "both")
-        and (request.service != "ranging" or run.antennas[contact.antenna].ranging)
-        and earliest_s <= contact.start_s
+        earliest_s <= contact.start_s
         and contact.end_s <= latest_s
         and (not request.fixed or (contact.start_s < earliest_s + 1.0 and contact.end_s > latest_s - 1.0))
-        and contact.end_s - contact.start_s >= request.min_duration_s
         and (not request.standby or _backed(run, request, contact, spares))
-        for contact in contacts
+        for contact in able
     )
     ready = " with a second antenna at the ready" if request.standby else ""
     return Standing(not met, met, f"no contact{ready} meets it")

@@ -10,7 +10,7 @@ import math
 from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from itertools import pairwise
+from itertools import accumulate, pairwise
 from typing import Any
 
 from passplan.inputs.fleet import Spacecraft
@@ -48,29 +48,34 @@ class Balance:
 
 
 def follow(craft: Spacecraft, pieces: Sequence[Piece], horizon_s: float) -> Balance:
-    """Follow the storage through pieces of sending, in time order and apart from each other, at a steady generation."""
+    """Follow the storage through pieces of sending, in time order, at a steady generation."""
     return follow_rates(craft.start_fill_mb, craft.storage_mb, [(0.0, horizon_s, craft.generation_mb_per_s)], pieces)
 
 
 def follow_rates(start_mb: float, capacity_mb: float, rates: Rates, pieces: Sequence[Piece]) -> Balance:
-    """The same for any generation: between two instants of either kind both rates are steady."""
+    """The same for any generation: between two instants of either kind all rates are steady.
+
+    Pieces that overlap draw on the storage together, each in proportion to its rate.
+    """
     fill_mb = start_mb
     sent: dict[int, list[float]] = {k: [] for k in range(len(pieces))}
     lost: list[float] = []
     edges = sorted({t for start_s, end_s, _ in rates for t in (start_s, end_s)}
                    | {t for piece in pieces for t in (piece.start_s, piece.end_s)})
-    at = sending = 0
+    at = following = 0
+    active: list[int] = []
     for from_s, until_s in pairwise(edges):
         while rates[at][1] <= from_s and at < len(rates) - 1:
             at += 1
-        while sending < len(pieces) and pieces[sending].end_s <= from_s:
-            sending += 1
-        active = sending < len(pieces) and pieces[sending].start_s <= from_s
-        link = pieces[sending].rate_mbps / 8.0 if active else 0.0
+        active = [k for k in active if pieces[k].end_s > from_s]
+        while following < len(pieces) and pieces[following].start_s <= from_s:
+            active.append(following)
+            following += 1
+        link = math.fsum(pieces[k].rate_mbps for k in active) / 8.0
         fill_mb, spilled_mb, sent_mb = _drift(fill_mb, rates[at][2], capacity_mb, until_s - from_s, link)
         lost.append(spilled_mb)
-        if active:
-            sent[sending].append(sent_mb)
+        for k in active if link > 0.0 else ():
+            sent[k].append(sent_mb * pieces[k].rate_mbps / 8.0 / link)
     volumes = tuple(math.fsum(parts) for parts in sent.values())
     generated_mb = math.fsum((end_s - start_s) * rate for start_s, end_s, rate in rates)
     return Balance(start_mb, generated_mb, math.fsum(volumes), math.fsum(lost), fill_mb, volumes)
@@ -109,8 +114,9 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     # A spacecraft that was left out of the run is no part of the plan, and its data no part of the value.
     for name in run.orbits:
         sending = sorted(by_craft[name], key=lambda pair: pair[1].start_s)
-        if any(later.start_s < earlier.end_s for (_, earlier), (_, later) in pairwise(sending)):
-            yield Fault("storage", f"spacecraft {name}", "it would send two segments at once; nothing adds up then")
+        if _most_at_once([piece for _, piece in sending]) > run.spacecraft[name].links:
+            sentence = "it would send more segments at once than it has links; nothing adds up then"
+            yield Fault("storage", f"spacecraft {name}", sentence)
             return
         balances = class_balances(run, name, sending, contacts)
         balance = joint(list(balances.values()))
@@ -148,6 +154,12 @@ def check_storage(run: Run, contacts: Sequence[Contact], summary: Mapping[str, A
     value = math.fsum(earned)
     yield from _check_total("value", summary.get("value"), value)
     yield from _check_total("volume_mb", summary.get("volume_mb"), math.fsum(delivered))
+
+
+def _most_at_once(pieces: Sequence[Piece]) -> int:
+    """The most pieces that are sent at the same time; one that ends makes room for one that starts."""
+    changes = sorted((t, step) for piece in pieces for t, step in ((piece.start_s, 1), (piece.end_s, -1)))
+    return max(accumulate(step for _, step in changes), default=0)
 
 
 def class_balances(

@@ -33,6 +33,7 @@ from passplan.planning.rules.decisions import (
 )
 from passplan.planning.rules.energy import energy
 from passplan.planning.rules.guarantees import guarantee_needs, guarantees
+from passplan.planning.rules.handovers import handover_needs, handovers
 from passplan.planning.rules.interference import interference
 from passplan.planning.rules.rented import rented_blocks
 from passplan.planning.rules.requests import request_standbys, request_wishes, requests
@@ -55,6 +56,7 @@ RULES: tuple[Rule, ...] = (
     energy,
     requests,
     command_interval,
+    handovers,
     interference,
     decisions,
     guarantees,
@@ -87,6 +89,7 @@ NEEDS: tuple[Callable[[Draft], Iterable[object]], ...] = (
     on_air_needs,
     sending_needs,
     power_needs,
+    handover_needs,
     decision_needs,
     loaded_needs,
     guarantee_needs,

@@ -48,12 +48,13 @@ def _rows(problem: Problem, need: CountNeed) -> Iterator[Row]:
     name = f"{problem.fleet.names[need.spacecraft]}'s allowance of contacts per {need.per}, {need.most},"
     for k in np.unique(part).tolist():
         mine = own[part == k]
-        if _most_apart(options.start_s[mine], options.end_s[mine]) > need.most:
+        most = int(problem.fleet.links[need.spacecraft]) * _most_apart(options.start_s[mine], options.end_s[mine])
+        if most > need.most:
             yield name, mine, np.ones(len(mine)), need.most
 
 
 def _most_apart(start_s: Integers, end_s: Integers) -> int:
-    """How many of the intervals can be used at most without overlap: always the one that ends first."""
+    """How many of the intervals one link can use at most without overlap: always the one that ends first."""
     count, reached = 0, -np.inf
     for k in np.argsort(end_s, kind="stable").tolist():
         if start_s[k] >= reached:

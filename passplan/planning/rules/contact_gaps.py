@@ -1,4 +1,7 @@
-"""A spacecraft rests between contacts, and its transmitter cools down between those in which it sends."""
+"""A spacecraft rests between contacts, and its transmitter cools down between those in which it sends.
+
+One with several links rests link by link, and has a transmitter for each.
+"""
 
 from __future__ import annotations
 
@@ -10,6 +13,7 @@ import numpy as np
 
 from passplan.planning.hooks import Draft
 from passplan.planning.problem import Problem
+from passplan.planning.rules.rows import at_the_same_time
 from passplan.planning.rules.terms import Lane, Terms
 
 
@@ -31,8 +35,12 @@ def gap_needs(draft: Draft) -> Iterator[GapNeed]:
 
 
 def contact_gaps(problem: Problem) -> Terms:
-    """A lane that a contact holds until the gap behind it is over, and one for those that send."""
-    options, lanes = problem.options, []
+    """A lane that a contact holds until the gap behind it is over, and one for those that send.
+
+    With several links they are rows: links can be dealt out so that each rests exactly where no more contacts than
+    there are links, each with the gap behind it, overlap.
+    """
+    options, lanes, rows = problem.options, [], []
     for need in problem.needs_of(GapNeed):
         name, own = problem.fleet.names[need.spacecraft], options.spacecraft == need.spacecraft
         for what, kind, held, behind_s in (
@@ -41,7 +49,10 @@ def contact_gaps(problem: Problem) -> Terms:
              own & options.downlink, need.cool_down_s),
         ):
             mine = np.flatnonzero(held)
-            if behind_s and len(mine):
-                lanes.append(Lane(
-                    what, kind, mine, options.start_s[mine], options.end_s[mine] + behind_s, owner=need.spacecraft))
-    return Terms(lanes=tuple(lanes))
+            start_s, end_s = options.start_s[mine], options.end_s[mine] + behind_s
+            links = int(problem.fleet.links[need.spacecraft])
+            if behind_s and len(mine) and links == 1:
+                lanes.append(Lane(what, kind, mine, start_s, end_s, owner=need.spacecraft))
+            elif behind_s and len(mine):
+                rows.append(at_the_same_time(kind, what, mine, start_s, end_s, float(links)))
+    return Terms(lanes=tuple(lanes), rows=tuple(rows))

@@ -37,7 +37,8 @@ def _rows(problem: Problem, need: PowerNeed) -> Rows:
     mine = np.flatnonzero(
         (problem.options.spacecraft == need.spacecraft) & (on_air.end_s > on_air.start_s) & (on_air.load_w > 0.0))
     begin_s, finish_s, load_w = on_air.start_s[mine], on_air.end_s[mine], on_air.load_w[mine]
-    highest_w = float(load_w.max(initial=0.0))
+    links = int(problem.fleet.links[need.spacecraft])
+    highest_w = links * float(load_w.max(initial=0.0))
     low_s, taken_wh = _lows(need, _where_it_falls(need, begin_s, highest_w))
     high_s, spare_wh = _highs(need, _where_it_falls(need, finish_s, highest_w))
     allowed_wh = need.capacity_wh + spare_wh - taken_wh[:, None]
@@ -46,7 +47,7 @@ def _rows(problem: Problem, need: PowerNeed) -> Rows:
     name = f"{problem.fleet.names[need.spacecraft]}'s energy above the floor of its battery"
     return within_spans(
         "battery", name, mine, begin_s, finish_s, load_w / 3600.0, low_s[low], high_s[high],
-        np.maximum(allowed_wh[pair], 0.0))
+        np.maximum(allowed_wh[pair], 0.0), links)
 
 
 def _where_it_falls(need: PowerNeed, edges_s: Integers, highest_w: float) -> Floats:

@@ -8,8 +8,8 @@ import numpy as np
 
 from passplan.planning.arrays import Flags
 from passplan.planning.problem import Conflict, Crowd, Problem
-from passplan.planning.rules.rows import Row, rows_of
-from passplan.planning.rules.terms import Lane, Terms
+from passplan.planning.rules.rows import Row, at_the_same_time, rows_of
+from passplan.planning.rules.terms import Lane, Rows, Terms
 
 
 def interference(problem: Problem) -> Terms:
@@ -17,9 +17,15 @@ def interference(problem: Problem) -> Terms:
 
     A lane is held by what overlaps its time: the victim on its antenna, the other anywhere. Contacts of the
     victim overlap in no lane of their own anyway, and neither do those of the other, so that "one at a time" says
-    here that not both at once.
+    here that not both at once. Where the other has several links its contacts may overlap: then it is a row.
     """
-    lanes = [lane for conflict in problem.conflicts if (lane := _lane(problem, conflict)) is not None]
+    lanes, pairs = [], []
+    for conflict in problem.conflicts:
+        lane = _lane(problem, conflict)
+        if lane is not None and problem.fleet.links[conflict.interferer] == 1:
+            lanes.append(lane)
+        elif lane is not None:
+            pairs.append(_pair(problem, conflict, lane))
     rows: dict[tuple[int, ...], list[Row]] = {}
     for crowd in problem.crowds:
         for row in _rows(problem, crowd):
@@ -27,7 +33,8 @@ def interference(problem: Problem) -> Terms:
             # The same contacts a little later: only what binds more, for at least one of them, says anything new.
             if not any(np.all(np.asarray(other[2]) >= row[2]) and other[3] <= row[3] for other in others):
                 others.append(row)
-    return Terms(lanes=tuple(lanes), rows=(rows_of("interference", [row for same in rows.values() for row in same]),))
+    crowded = rows_of("interference", [row for same in rows.values() for row in same])
+    return Terms(lanes=tuple(lanes), rows=(*pairs, crowded))
 
 
 def _lane(problem: Problem, conflict: Conflict) -> Lane | None:
@@ -43,18 +50,27 @@ def _lane(problem: Problem, conflict: Conflict) -> Lane | None:
         np.minimum(options.end_s[mine], conflict.end_s))
 
 
+def _pair(problem: Problem, conflict: Conflict, lane: Lane) -> Rows:
+    """Beside the victim none of the other's contacts, without it as many at once as the other has links."""
+    links = float(problem.fleet.links[conflict.interferer])
+    amounts = np.where(_heard(problem, conflict)[lane.options], links, 1.0)
+    return at_the_same_time(lane.kind, lane.name, lane.options, lane.start_s, lane.end_s, links, amounts)
+
+
 def _rows(problem: Problem, crowd: Crowd) -> Iterator[Row]:
     """At an instant each spacecraft has one contact, so that the row is exact where the shares stay the same:
 
         sum of shares + (all shares - 1) x victim  <=  all shares
 
-    Without the victim anything goes; with it, what is sent must not exceed 1.
+    Without the victim anything goes; with it, what is sent must not exceed 1. Each contact of a spacecraft with several
+    links has its part of the share.
     """
     options = problem.options
     share = np.zeros(len(problem.fleet))
     share[list(crowd.interferers)] = crowd.shares
     victim = _heard(problem, crowd)
-    amounts = np.where(options.downlink & ~victim, share[options.spacecraft], 0.0)
+    each = share / problem.fleet.links
+    amounts = np.where(options.downlink & ~victim, each[options.spacecraft], 0.0)
     inside = (options.start_s < crowd.end_s) & (options.end_s > crowd.start_s) & (victim | (amounts > 0.0))
     mine = np.flatnonzero(inside)
     if not np.any(victim[mine]):

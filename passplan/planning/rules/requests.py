@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from dataclasses import replace
 
 import numpy as np
@@ -14,7 +14,7 @@ from passplan.planning.arrays import Flags
 from passplan.planning.hooks import Standby, Wish
 from passplan.planning.horizon import seconds_of
 from passplan.planning.option_table import Options
-from passplan.planning.problem import Problem, RequestNeed, Service
+from passplan.planning.problem import Fleet, Problem, RequestNeed, Service
 from passplan.planning.rules.standby import NO_STANDBY, backed, one_standby
 from passplan.planning.rules.terms import Terms, Wanted
 
@@ -36,6 +36,20 @@ def requests(problem: Problem) -> Terms:
     return Terms(wanted=tuple(wanted), rows=tuple(rows))
 
 
+def request_need(run: Run, fleet: Fleet, request: Request) -> RequestNeed:
+    """A request in the numbers of the problem and in whole seconds within its span."""
+    craft = fleet.names.index(request.spacecraft) if request.spacecraft in fleet.names else -1
+    return RequestNeed(
+        request.name, request.spacecraft, craft, _numbers(run, requested_antennas(run, request)),
+        offered_service(request), math.ceil(seconds_of(run, request.earliest_utc)),
+        math.floor(seconds_of(run, request.latest_utc)), math.ceil(request.min_duration_s), request.fixed,
+        request.points, _numbers(run, able_antennas(run, request)) if request.standby else None)
+
+
+def _numbers(run: Run, antennas: Collection[str]) -> frozenset[int]:
+    return frozenset(k for k, name in enumerate(run.antennas) if name in antennas)
+
+
 def request_standbys(run: Run) -> Iterator[Standby]:
     """What a request with a stand-by must have to choose from."""
     for request in run.requests:
@@ -51,7 +65,7 @@ def request_wishes(run: Run) -> Iterator[Wish]:
     for request in run.requests:
         yield Wish(
             request.spacecraft, None, math.ceil(seconds_of(run, request.earliest_utc)),
-            math.floor(seconds_of(run, request.latest_utc)))
+            math.floor(seconds_of(run, request.latest_utc)), request.handover_overlap_s or 0)
 
 
 def requested_antennas(run: Run, request: Request) -> frozenset[str]:

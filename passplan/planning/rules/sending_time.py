@@ -1,4 +1,7 @@
-"""How long a spacecraft's transmitter may be on: in one contact, in one orbit, and in any span of so many hours."""
+"""How long a spacecraft's transmitter may be on: in one contact, in one orbit, and in any span of so many hours.
+
+Of a spacecraft with several links the seconds of all its transmitters add up.
+"""
 
 from __future__ import annotations
 
@@ -73,7 +76,7 @@ def _in_orbits(problem: Problem, need: OrbitSendingNeed) -> Rows:
     name = f"{problem.fleet.names[need.spacecraft]}'s allowance of {need.most_s:g} s of sending per orbit"
     return within_spans(
         "sending_per_orbit", name, mine, start_s, end_s, np.ones(len(mine)), edges[:-1], edges[1:],
-        np.full(len(edges) - 1, need.most_s))
+        np.full(len(edges) - 1, need.most_s), int(problem.fleet.links[need.spacecraft]))
 
 
 def _in_spans(problem: Problem, need: SpanSendingNeed) -> Rows:
@@ -83,7 +86,7 @@ def _in_spans(problem: Problem, need: SpanSendingNeed) -> Rows:
             f"{need.span_s / 3600.0:g} h")
     return within_spans(
         "sending_per_span", name, mine, start_s, end_s, np.ones(len(mine)), low_s, low_s + need.span_s,
-        np.full(len(low_s), need.most_s))
+        np.full(len(low_s), need.most_s), int(problem.fleet.links[need.spacecraft]))
 
 
 def _span_starts(start_s: Integers, end_s: Integers, span_s: float) -> Floats:

@@ -13,15 +13,15 @@ _AT_ONCE = 256
 
 def within_spans(
     kind: str, name: str, options: Integers, start_s: Integers, end_s: Integers, per_s: Floats, low_s: Floats,
-    high_s: Floats, limit: Floats,
+    high_s: Floats, limit: Floats, at_once: int = 1,
 ) -> Rows:
     """Of options that hold ``[start_s, end_s)``, ``per_s`` for each second in span r adds up to ``limit[r]``.
 
-    The options are those of one spacecraft, of which no two overlap in a plan. So a row that would be kept if
-    every second that any of them holds were used, at the highest rate, cannot bind and is left out; so is one whose
-    neighbour counts at least as much of everything and allows no more.
+    The options are those of one spacecraft, of which no more than ``at_once`` overlap in a plan. So a row that would be
+    kept if every second that any of them holds were used so many times, at the highest rate, cannot bind and is left
+    out; so is one whose neighbour counts at least as much of everything and allows no more.
     """
-    highest = float(per_s.max(initial=0.0))
+    highest = at_once * float(per_s.max(initial=0.0))
     binding = np.flatnonzero(highest * covered_s(start_s, end_s, low_s, high_s) > limit)
     columns, amounts, counts, kept = [], [], [np.zeros(0, dtype=np.int64)], [np.zeros(0, dtype=np.int64)]
     for at in range(0, len(binding), _AT_ONCE):

@@ -103,6 +103,10 @@ class Recurrence:
 
     All are of the spacecraft ``name``. Each second that no chosen option covers is ``1 / every_s`` points of shortfall,
     so that a whole missed interval weighs as much as a missed request.
+
+    A ``request`` for contacts that hand over to each other wants the instants in ``[start_s, end_s - overlap_s)``
+    instead, and missing them all, ``every_s`` seconds, weighs ``points``: where such parts of contacts follow each
+    other without a gap, each contact starts ``overlap_s`` before the one before it ends.
     """
 
     name: str
@@ -112,6 +116,14 @@ class Recurrence:
     every_s: int
     from_s: int
     until_s: int
+    request: str = ""
+    overlap_s: int = 0
+    points: float = 1.0
+
+    @property
+    def reach_s(self) -> int:
+        """For how long after its end an option covers, which may be negative."""
+        return -self.overlap_s if self.request else self.every_s
 
 
 @dataclass(frozen=True, eq=False)

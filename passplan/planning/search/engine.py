@@ -51,14 +51,14 @@ _RUN = 64
 
 @dataclass(frozen=True, eq=False)
 class Found:
-    """What the search found: options of the plan, its bound, and the prices that prove it.
+    """What the search found: options of the plan, its bound, and the prices that prove it (None: no proof is kept).
 
     ``left_alone`` counts spacecraft whose contacts serve a requirement that the search cannot count.
     """
 
     chosen: tuple[int, ...]
     bound: float
-    certificate: PriceCertificate
+    certificate: PriceCertificate | None
     rounds: int
     left_alone: int
 

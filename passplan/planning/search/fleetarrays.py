@@ -240,7 +240,7 @@ def _recurrences(problem: Problem, terms: Terms, place: Integers, uncounted: Fla
     for need in terms.recurrences:
         craft = problem.fleet.names.index(need.name)
         kept = place[need.options] >= 0
-        if recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
+        if need.request or recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
             uncounted[place[need.options[kept]]] = True
             continue
         renews[place[need.options[kept]]] = np.minimum(need.end_s[kept] + need.every_s, need.until_s)
