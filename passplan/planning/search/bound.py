@@ -178,9 +178,10 @@ class BoundSearch:
         self.floor = np.minimum(self.top, _FLOOR * worth / max(1, len(self.limits)))
         self.price = self.best_price = self.floor
         self._mean, self._square = np.zeros(len(self.limits)), np.zeros(len(self.limits))
-        paid = float((arrays.use_last - arrays.use_first).sum() + arrays.give_amount.sum()
-                     + (arrays.load_amount / units(arrays)[arrays.load_row]).sum())
-        width = max(1.0, paid / max(1, len(arrays.option)))
+        # An option pays the prices of so many cliques, and of rows as if of so many; a few may pay far more of those.
+        rows = np.concatenate([np.zeros(arrays.cliques), np.ones(len(arrays.limit) + len(arrays.promise))])
+        cliques = float((arrays.use_last - arrays.use_first).sum()) / max(1, len(arrays.option))
+        width = max(1.0, cliques + float(np.median([*option_prices(arrays, rows), 0.0])))
         self._step = _FIRST_STEP * contact_worth / width
         self._steps = 0
 
@@ -196,7 +197,7 @@ class BoundSearch:
             if not np.isfinite(here):
                 # Too many labels at these prices: go back to good ones, and on with care. Where points are worth so
                 # much more than anything else that no two labels are alike, they may be worth less.
-                self._weigh_points(max(self._contact_worth, _LESS * self.point_worth))
+                self._weigh_points(min(self.point_worth, max(self._contact_worth, _LESS * self.point_worth)))
                 self.price, self._step = np.minimum(self.best_price, self.top), self._step * _SHRINK
                 self._mean = np.zeros(len(self.limits))
                 continue
