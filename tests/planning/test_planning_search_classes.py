@@ -16,7 +16,8 @@ from passplan.planning.layering import layers_of
 from passplan.planning.maps import storage_maps, worth_by_layers
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits, Problem, RequestNeed
-from passplan.planning.rules import all_terms
+from passplan.planning.rules import RULES, all_terms
+from passplan.planning.rules.terms import AtLeast, Terms
 from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
 from passplan.planning.search.followed import followed_worth
@@ -128,3 +129,28 @@ def test_a_request_that_nothing_can_meet_leaves_the_bound_alone() -> None:
     plain, asked = problem_of(rows), problem_of(rows, requests=(lost,))
     assert searched(asked).bound == pytest.approx(searched(plain).bound)
     assert bound_of(asked, all_terms(asked), searched(asked).certificate) == pytest.approx(600.0)
+
+
+def test_guarantees_are_kept_by_the_search_and_priced_in_its_bound() -> None:
+    # Both want the same time. The poor one is promised 100 MB, and the rich one would take it all.
+    rows = [{"spacecraft": k, "start_s": a, "end_s": b, "pieces": [(a, b, 1.0)]}
+            for k in (0, 1) for a, b in ((0, 100), (200, 300))]
+    problem = problem_of(rows, weight=(1.0, 5.0), generation=(0.0, 0.0), capacity=(1e3, 1e3), start=(1e3, 1e3))
+
+    def promise(_: Problem) -> Terms:
+        return Terms(guarantees=(AtLeast(
+            "guarantee", "poor", "MB", np.array([0, 1]), np.array([100.0, 100.0]), 100.0),))
+
+    limits = replace(SEARCH_ONLY, search_rounds=100)
+    result = find_plan(problem, limits, rules=(*RULES, promise))
+    assert result.shortfalls == ()
+    assert result.value == pytest.approx(600.0)
+    # 1 000 without the guarantee; what is given to the poor is missed by the rich.
+    assert 600.0 - 1e-6 <= result.bound <= 650.0
+    terms = all_terms(problem) + promise(problem)
+    start = plan_greedily(problem, terms, Clock(60.0))
+    arrays = fleet_arrays(problem, terms, storage_maps(problem))
+    found = search_plan(arrays, terms, SEARCH_ONLY, Clock(60.0), start, 0.0)
+    assert bound_of(problem, terms, found.certificate) == pytest.approx(found.bound, rel=1e-6)
+    with pytest.raises(ValueError, match="guarantee"):
+        bound_of(problem, terms, replace(found.certificate, promise_price=np.array([1e30])))

@@ -77,15 +77,15 @@ def make_work(labels: int = _MOST_LABELS) -> Work:
 def merge(
     clash: Integers, spill: float, weight: float, simple: bool, most: float, now: int, aboard: Floats, worth: Floats,
     cover: Floats, bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats,
-    wait_cover: Floats, wait_bits: Integers, record_option: Integers, low: int, high: int, due: float, per_second: float,
-    point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
+    wait_cover: Floats, wait_bits: Integers, record_option: Integers, low: int, high: int, due: float,
+    per_second: float, point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
 ) -> int:
     """Merge the ``count`` labels on ``side`` with the run ``low : high``, onto the other side, without the useless.
 
     Beyond a number of them labels are merged: one that is ahead of another by at most ``most`` hands that on and is
-    dropped, which can only raise the worth that comes out. ``simple`` says that bits and cover are all alike; two plain
-    sweeps then do. Otherwise what is overdue up to ``due`` is paid ``per_second``, and the wanted terms ``past`` are paid
-    for and count as met. Returns how many are left, or -1 if there is no room. (Arrays are handed over one by one,
+    dropped, which can only raise the worth that comes out. ``simple`` says that bits and cover are all alike; two
+    plain sweeps then do. Otherwise what is overdue up to ``due`` is paid ``per_second``, and wanted terms ``past`` are
+    paid for and count as met. Returns how many are left, or -1 if there is no room. (Arrays are handed over one by one,
     because taking them out of a tuple costs more than all the rest.)
     """
     to = 1 - side
