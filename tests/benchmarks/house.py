@@ -23,6 +23,7 @@ from passplan.planning.rules.contact_counts import CountNeed
 from passplan.planning.rules.contact_gaps import GapNeed
 from passplan.planning.rules.decisions import DecidedContact, ForbiddenWindow
 from passplan.planning.rules.guarantees import GuaranteeNeed, carries_mb
+from passplan.planning.rules.handovers import HandoverNeed
 from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNeed
 from passplan.planning.rules.shared_equipment import SharedNeed
 from passplan.planning.streams import Keeping, Stream, steady
@@ -47,7 +48,7 @@ class House:
             self.counts_per_day, self.sending_per_contact, self.sending_per_orbit, self.sending_per_span, self.battery,
             self.slots, self.loaded, self.commands, self.requests, self.pins, self.forbids, self.emergency,
             self.daily_contacts, self.daily_mb, self.mission, self.interference, self.crowd, self.budget, self.classes,
-            self.fairness)
+            self.fairness, *((self.links, self.handover) if self._seams() else ()))
         return {maker.__name__.replace("_", " "): maker() for maker in makers}
 
     # Antennas and sites.
@@ -178,7 +179,21 @@ class House:
         silent = ForbiddenWindow(mine[mine != kept], "sends as the schedule aboard says")
         return self._needs(silent, self._decided("loaded", "aboard", [kept]))
 
+    def links(self) -> Callable[[Problem], Problem]:
+        """The spacecraft that is to be handed over has two links."""
+        links = np.ones(len(self.base.fleet), dtype=np.int64)
+        links[max(self._seams())[1]] = 2
+        return lambda p: replace(p, fleet=replace(p.fleet, links=links))
+
     # What must be in the plan, or must not.
+
+    def handover(self) -> Callable[[Problem], Problem]:
+        """Contacts that follow a spacecraft from one antenna to another, half a minute on both."""
+        _, craft, start_s, end_s = max(self._seams())
+        asked = RequestNeed(
+            "followed", self.base.fleet.names[craft], craft, frozenset(range(len(self.base.antennas))), "downlink",
+            start_s, end_s, 60)
+        return self._needs(HandoverNeed(asked, 30))
 
     def commands(self) -> Callable[[Problem], Problem]:
         """A command contact every eight hours, on every second antenna."""
@@ -323,6 +338,15 @@ class House:
 
     def _free_of(self, craft: int) -> Integers:
         return self.free[self.base.options.spacecraft[self.free] == craft]
+
+    def _seams(self) -> list[tuple[int, int, int, int]]:
+        """Where two antennas see a spacecraft one after the other, together between: how long, which, from, until."""
+        w = self.base.windows
+        return [
+            (int(w.end_s[b] - w.start_s[a]), int(w.spacecraft[a]), int(w.start_s[a]), int(w.end_s[b]))
+            for craft in range(len(self.base.fleet)) for mine in [np.flatnonzero(w.spacecraft == craft).tolist()]
+            for a in mine for b in mine
+            if w.start_s[a] + 120 < w.start_s[b] and w.start_s[b] + 120 < w.end_s[a] and w.end_s[a] + 120 < w.end_s[b]]
 
     def _day(self) -> Day:
         return Day("the day", 0, self.base.horizon_s)

@@ -27,8 +27,8 @@ from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import PlanResult
 from passplan.planning.rules import all_terms
-from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.ready import compiled_in_time
+from passplan.planning.several_links import arrays_of
 from passplan.planning.shortfalls import find_shortfalls, total_points
 from passplan.planning.value import account
 
@@ -37,7 +37,7 @@ def greedy(problem: Problem) -> np.ndarray:
     """A quick plan, as option numbers."""
     terms, maps, clock = all_terms(problem), storage_maps(problem), Clock(120.0)
     compiled_in_time(clock)
-    chosen = plan_greedily(problem, terms, clock, maps=maps, arrays=fleet_arrays(problem, terms, maps))
+    chosen = plan_greedily(problem, terms, clock, maps=maps, arrays=arrays_of(problem, terms, maps))
     return np.array(chosen, dtype=np.int64)
 
 

@@ -82,6 +82,11 @@ def test_c_over_i_by_hand(run: Run) -> None:
     # Twice as far: 6.02 dB; 0.5 dB of pointing loss; the beam of 50.1 dBi at an efficiency of 0.6 is 0.533 deg
     # wide: 12 (0.2 / 0.533)^2 = 1.69 dB; at 10 deg 50.1 - (32 - 25) = 43.1 dB.
     assert ratio == pytest.approx([5.52, 5.52 + 1.69, 5.52 + 43.1], abs=0.02)
+    # Over two links it sends twice as much.
+    two = run.spacecraft["Ambril-6"].model_copy(update={"links": 2})
+    doubled = replace(run, spacecraft={**run.spacecraft, "Ambril-6": two})
+    looks = (_flat(30.0, 1_000.0, 3), _flat(30.0, 2_000.0, 3))
+    assert c_over_i_db(doubled, chain, "Ambril-6", site, looks, apart) == pytest.approx(ratio - 3.0103, abs=1e-3)
     below = c_over_i_db(run, chain, "Ambril-6", site, (_flat(30.0, 1e3, 1), _flat(-1.0, 3e3, 1)), np.zeros(1))
     assert np.isinf(below[0])
 

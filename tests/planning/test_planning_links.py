@@ -134,6 +134,17 @@ def test_the_search_plans_others_beside_them_and_its_bounds_hold(seed: int, of: 
             break
 
 
+@pytest.mark.parametrize("seed", some_of(range(40), 10))
+def test_another_link_never_makes_a_plan_worse(seed: int) -> None:
+    problem = with_links(random_problem(seed), seed)
+    fewer = replace(problem, fleet=replace(problem.fleet, links=np.maximum(problem.fleet.links - 1, 1)))
+    (points, value), (more_points, less_value) = (
+        (sum(s.points for s in plan.shortfalls), plan.value)
+        for plan in (find_plan(one, Limits(gap=0.0)) for one in (problem, fewer)))
+    assert points <= more_points + 1e-9
+    assert points < more_points - 1e-9 or value >= less_value - 1e-6 * (1.0 + abs(value))
+
+
 def test_what_others_hold_is_taken_off_and_what_they_meet_is_met() -> None:
     rows = [{"spacecraft": k, "start_s": a, "end_s": a + 300, "pieces": [(a, a + 300, 1.0)]}
             for k, a in ((0, 0), (1, 200), (1, 600))]
