@@ -13,6 +13,7 @@ import pandas as pd
 from passplan.inputs.run import Run
 from passplan.link.chains import chains_between
 from passplan.link.choice import WindowLink
+from passplan.planning.clock import Clock
 from passplan.planning.cuts import Cuts, add_handovers, neighbour_cuts, spread
 from passplan.planning.hooks import DRIFT_S, Block, Candidate, Cap, Silence, Standby, Wish
 from passplan.planning.horizon import column_seconds
@@ -85,15 +86,16 @@ def window_arrays(run: Run, windows: pd.DataFrame, fleet: Fleet, antennas: Anten
 def find_options(
     run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, links: Sequence[WindowLink],
     blocks: Sequence[Block] = (), wishes: Sequence[Wish] = (), caps: Sequence[Cap] = (),
-    silences: Sequence[Silence] = (), standbys: Sequence[Standby] = (),
+    silences: Sequence[Silence] = (), standbys: Sequence[Standby] = (), clock: Clock | None = None,
 ) -> OptionSet:
     """Options of all windows: whole, and parts cut where that may help, at most the policy's number each.
 
-    Behind them come those with a second antenna at the ready.
+    Behind them come those with a second antenna at the ready. Windows that are reached after the time of ``clock`` give
+    one option each, and what requests ask for.
     """
     setup = SetupTimes(run)
     blocked = BlockedTime(blocks, setup)
-    builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps, silences)
+    builder = _Builder(run, windows, fleet, antennas, blocked, wishes, caps, silences, clock)
     cuts = neighbour_cuts(windows, [
         setup.longest(fleet.names[craft], antennas.names[antenna])
         for craft, antenna in zip(windows.spacecraft.tolist(), windows.antenna.tolist(), strict=True)])
@@ -133,8 +135,9 @@ def find_options(
 class _Builder:
     def __init__(
         self, run: Run, windows: Windows, fleet: Fleet, antennas: Antennas, blocked: BlockedTime,
-        wishes: Sequence[Wish], caps: Sequence[Cap], silences: Sequence[Silence],
+        wishes: Sequence[Wish], caps: Sequence[Cap], silences: Sequence[Silence], clock: Clock | None,
     ) -> None:
+        self.clock = clock
         self.run, self.windows, self.policy, self.blocked = run, windows, run.policy, blocked
         self.shortest_s = math.ceil(run.policy.min_contact_s)
         self.craft_names, self.antenna_names = fleet.names, antennas.names
@@ -169,9 +172,14 @@ class _Builder:
             return [], reason or ("no_margin", "the margin does not hold long enough after acquisition")
         useful = self._undominated(useful, craft)
         asked = self._asked_of(w, pieces)
-        most = self.policy.options_per_window
+        most = self._most()
         kept = [c for k, c in enumerate(useful) if k < most or (c.start_s, c.end_s) in asked]
         return sorted(kept, key=lambda c: (c.start_s, c.end_s)), ("", "")
+
+    def _most(self) -> int:
+        """How many options a window may give: fewer when time runs out, so that there is some left to plan in."""
+        late = self.clock is not None and self.clock.expired()
+        return 1 if late else self.policy.options_per_window
 
     def offered(self, w: int, link: WindowLink, start_s: int, end_s: int) -> Candidate | None:
         """The contact of a window from ``start_s`` to ``end_s``, if it is one and its transmitter may be on so long."""
@@ -203,7 +211,7 @@ class _Builder:
 
     def _of_piece(self, w: int, link: WindowLink, low: int, high: int, cuts: Cuts) -> Iterator[Candidate]:
         """Candidates in a closure-free piece, the most useful first: whole, then one end cut, then both."""
-        most = self.policy.options_per_window
+        most = self._most()
         asked = self._asked_of(w, [(low, high)])
         must_start = {low} | {a for a, _ in asked} | {t for t in cuts.must_start if low < t < high}
         must_end = {high} | {b for _, b in asked} | {t for t in cuts.must_end if low < t < high}

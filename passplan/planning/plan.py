@@ -32,6 +32,8 @@ from passplan.planning.unused import unused_table
 Report = Callable[[str, int, int], None]
 _CONTRADICTIONS_S = 10.0
 _FAIRNESS_SHARE = 0.25
+# Of the time limit, at most this part goes into more than one option for each window.
+_OPTIONS_SHARE = 0.3
 
 
 @dataclass(frozen=True, eq=False)
@@ -62,7 +64,8 @@ def make_plan(
     policy = run.policy
     clock = Clock(policy.time_limit_s)
     with clock.stage("options"):
-        problem, option_set = build_problem(run, windows, links, interference)
+        problem, option_set = build_problem(
+            run, windows, links, interference, clock=clock.part(_OPTIONS_SHARE * policy.time_limit_s))
     limits = Limits(policy.gap, policy.time_limit_s, policy.threads, policy.seed, policy.search_rounds)
     floor = None
     if policy.fairness == "max_min":
@@ -94,9 +97,13 @@ def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress |
 
 
 def build_problem(
-    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], interference: Interference | None = None,
+    run: Run, windows: pd.DataFrame, links: Sequence[WindowLink], interference: Interference | None = None, *,
+    clock: Clock | None = None,
 ) -> tuple[Problem, OptionSet]:
-    """The problem of a run, and its options with the link choices behind them."""
+    """The problem of a run, and its options with the link choices behind them.
+
+    After the time of ``clock`` windows give one option each.
+    """
     fleet = fleet_of(run)
     antennas = Antennas(
         names=tuple(run.antennas), beams=np.array([a.beams for a in run.antennas.values()], dtype=np.int64))
@@ -107,7 +114,7 @@ def build_problem(
     silences = [silence for find in SILENCES for silence in find(run)]
     caps = [cap for find in CAPS for cap in find(run)]
     standbys = [standby for find in STANDBYS for standby in find(run)]
-    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes, caps, silences, standbys)
+    option_set = find_options(run, arrays, fleet, antennas, links, blocks, wishes, caps, silences, standbys, clock)
     problem = Problem(
         horizon_s=run.horizon_s, fleet=fleet, antennas=antennas, windows=arrays, options=option_set.options,
         requests=tuple(request_need(run, fleet, one) for one in run.requests if one.handover_overlap_s is None),

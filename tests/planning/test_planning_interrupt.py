@@ -36,9 +36,20 @@ leave(0)
 """
 
 
-def started(exact_options: int) -> subprocess.Popen[str]:
+# The same in a network of one contact that is at work for a minute after it has said so.
+SLOW = """
+import sys, time
+sys.path.insert(0, sys.argv[1])
+from planning_cases import problem_of
+from passplan.planning.portfolio import find_plan
+find_plan(problem_of([{"start_s": 600, "end_s": 900, "pieces": [(600, 900, 1.0)]}]),
+          progress=lambda *_: (print("going", flush=True), time.sleep(60)))
+"""
+
+
+def started(exact_options: int, script: str = SCRIPT) -> subprocess.Popen[str]:
     return subprocess.Popen(
-        [sys.executable, "-c", SCRIPT, str(Path(__file__).parent), str(exact_options)], stdout=subprocess.PIPE,
+        [sys.executable, "-c", script, str(Path(__file__).parent), str(exact_options)], stdout=subprocess.PIPE,
         stderr=subprocess.PIPE, text=True)
 
 
@@ -53,6 +64,20 @@ def test_the_first_interrupt_gives_the_best_plan_so_far(exact_options: int) -> N
     ended = out.splitlines()[-1].split()
     assert ended[:3] == ["ended", "stopped_by_limit", "True"]
     assert int(ended[3]) > 0
+
+
+def test_the_second_interrupt_ends_the_process() -> None:
+    process = started(0, SLOW)
+    assert process.stdout is not None
+    assert process.stdout.readline() == "going\n"
+    process.send_signal(signal.SIGINT)
+    # The first one asks for the best plan so far, and lets the work in hand go on.
+    with pytest.raises(subprocess.TimeoutExpired):
+        process.wait(timeout=1.0)
+    process.send_signal(signal.SIGINT)
+    _, err = process.communicate(timeout=30)
+    assert process.returncode == -signal.SIGINT
+    assert err.splitlines()[-1] == "KeyboardInterrupt"
 
 
 def test_another_thread_leaves_the_handlers_alone() -> None:

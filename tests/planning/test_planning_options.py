@@ -9,6 +9,7 @@ from planning_runs import BOTH, DOWN, UP, SteadyDownlink, closure, make_run, mak
 
 from passplan.inputs.run import Run
 from passplan.link.choice import WindowLink
+from passplan.planning.clock import Clock
 from passplan.planning.option_table import Options
 from passplan.planning.options import OptionSet
 from passplan.planning.plan import build_problem
@@ -46,6 +47,14 @@ def test_no_more_options_than_the_policy_allows(most: int) -> None:
     options, _ = built(make_run({"cut_grid_s": 30, "options_per_window": most}), ONE)
     assert len(options) == most
     assert (601, 1_199) in spans(options)
+
+
+def test_when_time_is_up_each_window_still_gives_one_option() -> None:
+    run, clock = make_run({"cut_grid_s": 60, "options_per_window": 60}), Clock(60.0)
+    rows = [*ONE, ("Teasel-2", "Isvarde-A", 900, 1_500)]
+    clock.stop()
+    problem, _ = build_problem(run, make_windows(rows), [DOWN] * len(rows), clock=clock)
+    assert spans(problem.options) == [(601, 1_199), (900, 1_500)]
 
 
 def test_contacts_keep_clear_of_closures_with_time_to_release_and_to_prepare() -> None:

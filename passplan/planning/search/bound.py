@@ -36,13 +36,18 @@ _HALF_AFTER = 10.0
 _MEAN_MEMORY = 0.9
 _SQUARE_MEMORY = 0.99
 _LEAST_SIZE = 0.1
-_SHRINK, _LESS = 0.5, 1e-3
+_SHRINK = 0.5
 # After so many steps it is time for another way, and then for a new start from the best prices with steps this long.
 _STEPS = 1_500
 _NEXT_STEP = 0.1
 # All prices together are at least this part of the value: where time costs nothing at all, schedules are full of
 # contacts that bring nothing down, and what is used says nothing about what is needed.
 _FLOOR = 1e-7
+# Where labels run out of room, ceilings of a spacecraft are loosened, at first by this part of what fills its storage
+# is worth, then four times as far, and so on.
+_LEAST_SLACK, _TRIES = 1e-6, 12
+# Spacecraft swept between two looks at the clock.
+_AT_A_TIME = 16
 # A ceiling without a search is at rest after so many groups of so many steps that lowered it by less than this part.
 _PATIENCE, _FEW, _REST = 12, 5, 1e-5
 
@@ -62,9 +67,16 @@ def _sweep(
     edges: Integers, loads: Floats, gifts: Floats,
 ) -> None:
     taken = np.empty(a.most_contacts, dtype=np.int64)
-    no_room = np.empty(0)
+    no_room, slack = np.empty(0), work.slack[0]
     for i in range(low, high):
         worth[i], size = best_schedule(a, i, price, point_worth, no_room, work, taken)
+        for _ in range(_TRIES):
+            if size >= 0:
+                break
+            # No room for all labels: a looser ceiling is better than none.
+            work.slack[0] = max(4.0 * work.slack[0], _LEAST_SLACK * (a.craft[i, 0] + a.spill) * a.craft[i, 2])
+            worth[i], size = best_schedule(a, i, price, point_worth, no_room, work, taken)
+        work.slack[0] = slack
         _, points[i] = worth_of(a, i, taken, max(0, size))
         for k in range(size):
             for u in range(a.use_at[taken[k]], a.use_at[taken[k] + 1]):
@@ -79,14 +91,21 @@ def _sweep(
 class Sweeper:
     """Finds the best schedule of every spacecraft at given prices; parts of the fleet run side by side."""
 
-    def __init__(self, arrays: FleetArrays, threads: int = 1, pool: ThreadPoolExecutor | None = None) -> None:
-        self.arrays, self.pool = arrays, pool
+    def __init__(
+        self, arrays: FleetArrays, threads: int = 1, pool: ThreadPoolExecutor | None = None,
+        clock: Clock | None = None,
+    ) -> None:
+        self.arrays, self.pool, self.clock = arrays, pool, clock
         self.parts = np.linspace(0, len(arrays.craft), (threads if pool else 1) + 1).astype(int).tolist()
         self.work = [make_work() for _ in self.parts[1:]]
         self._unit = units(arrays)
 
-    def __call__(self, price: Floats, point_worth: float) -> Sweep:
-        """All spacecraft at the given prices (c + r + g,)."""
+    def __call__(self, price: Floats, point_worth: float, slack: float = 0.0) -> Sweep | None:
+        """All spacecraft at the given prices (c + r + g,); None if time is up before they are through.
+
+        Worths are ceilings: with ``slack`` the labels of a spacecraft that are ahead by so much less of one another are
+        not told apart, which is faster.
+        """
         a = self.arrays
         option_price = option_prices(a, price) - gift_worths(a, price) + a.cost
         worth, points = np.zeros(len(a.craft)), np.zeros(len(a.craft))
@@ -94,14 +113,17 @@ class Sweeper:
         loads = [np.zeros(len(a.limit)) for _ in self.work]
         gifts = [np.zeros(len(a.promise)) for _ in self.work]
 
-        def run(k: int) -> None:
-            _sweep(a, self.parts[k], self.parts[k + 1], option_price, point_worth, self.work[k], worth, points,
-                   edges[k], loads[k], gifts[k])
+        def run(k: int) -> bool:
+            self.work[k].slack[0] = slack
+            for low in range(self.parts[k], self.parts[k + 1], _AT_A_TIME):
+                if self.clock is not None and self.clock.expired():
+                    return False
+                _sweep(a, low, min(low + _AT_A_TIME, self.parts[k + 1]), option_price, point_worth, self.work[k],
+                       worth, points, edges[k], loads[k], gifts[k])
+            return True
 
-        if self.pool is None:
-            run(0)
-        else:
-            list(self.pool.map(run, range(len(edges))))
+        if not all([run(0)] if self.pool is None else list(self.pool.map(run, range(len(edges))))):
+            return None
         use = np.concatenate([np.cumsum(np.sum(edges, axis=0))[:-1], np.sum(loads, axis=0) / self._unit,
                               -np.sum(gifts, axis=0)])
         return Sweep(worth, points, use)
@@ -154,7 +176,7 @@ def certificate_of(arrays: FleetArrays, terms: Terms, bounds: BoundSearch) -> Pr
     return PriceCertificate(
         arrays.clique_lane, arrays.clique_s, bounds.best_price[: arrays.cliques],
         np.repeat(np.arange(len(counts)), counts), ragged_ranges(np.zeros_like(counts), counts),
-        bounds.best_price[arrays.cliques:rows] / units(arrays), bounds.best_price[rows:], bounds.best_point_worth,
+        bounds.best_price[arrays.cliques:rows] / units(arrays), bounds.best_price[rows:], bounds.point_worth,
         bounds.plan_points)
 
 
@@ -171,12 +193,15 @@ class BoundSearch:
         contact_worth: float,
     ) -> None:
         self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
+        self.price: Floats
+        self.best_price: Floats
         self.limits = limits_of(arrays)
-        self.bound = np.inf
-        self._weigh_points(point_worth)
-        self.best_point_worth, self._contact_worth = point_worth, contact_worth
-        self.floor = np.minimum(self.top, _FLOOR * worth / max(1, len(self.limits)))
-        self.price = self.best_price = self.floor
+        self.bound, self.slack = np.inf, 0.0
+        self.point_worth = point_worth
+        free = np.full(arrays.cliques + len(arrays.limit), np.inf)
+        self.top = np.concatenate([free, point_worth * arrays.promise])
+        self.floor: Floats = np.minimum(self.top, _FLOOR * worth / max(1, len(self.limits)))
+        self._start = self.price = self.best_price = self.floor
         self._mean, self._square = np.zeros(len(self.limits)), np.zeros(len(self.limits))
         # An option pays the prices of so many cliques, and of rows as if of so many; a few may pay far more of those.
         rows = np.concatenate([np.zeros(arrays.cliques), np.ones(len(arrays.limit) + len(arrays.promise))])
@@ -185,20 +210,29 @@ class BoundSearch:
         self._step = _FIRST_STEP * contact_worth / width
         self._steps = 0
 
+    @property
+    def guide(self) -> Floats:
+        """Prices that tell a plan what others need: the best ones, or those in hand where the best are still nothing.
+
+        At first prices overshoot, so that the lowest ceiling is that of the start for a while.
+        """
+        return self.price if self.best_price is self._start else self.best_price
+
     def improve(self, iterations: int, value: float) -> None:
-        """Take subgradient steps. ``value`` is the best plan known."""
+        """Take subgradient steps, until time is up. ``value`` is the best plan known."""
         if self._steps >= _STEPS:
             self._polish(iterations, value)
             self._step, self._steps = self._step * _NEXT_STEP, 0
             self._mean, self._square = np.zeros(len(self.limits)), np.zeros(len(self.limits))
             return
         for _ in range(iterations):
-            here, gradient = self._evaluate()
+            found = self._evaluate()
+            if found is None:
+                return
+            here, gradient = found
             if not np.isfinite(here):
-                # Too many labels at these prices: go back to good ones, and on with care. Where points are worth so
-                # much more than anything else that no two labels are alike, they may be worth less.
-                self._weigh_points(min(self.point_worth, max(self._contact_worth, _LESS * self.point_worth)))
-                self.price, self._step = np.minimum(self.best_price, self.top), self._step * _SHRINK
+                # Too many labels at these prices: go back to good ones, and on with care.
+                self.price, self._step = self.best_price, self._step * _SHRINK
                 self._mean = np.zeros(len(self.limits))
                 continue
             self._steps += 1
@@ -211,34 +245,46 @@ class BoundSearch:
 
     def _polish(self, iterations: int, value: float) -> None:
         """Polyak's steps (1969) from the best prices: they end exactly where the ceiling meets the plan, if it does."""
-        self.price = np.minimum(self.best_price, self.top)
+        self.price = self.best_price
         for _ in range(iterations):
-            here, gradient = self._evaluate()
+            found = self._evaluate()
+            if found is None:
+                break
+            here, gradient = found
             size = float(gradient @ gradient)
             if not np.isfinite(here) or size <= 0.0:
                 break
             self.price = np.clip(self.price + (here - value) / size * gradient, self.floor, self.top)
         self.price = self.best_price
 
-    def _weigh_points(self, point_worth: float) -> None:
-        self.point_worth = point_worth
-        free = np.full(self.arrays.cliques + len(self.arrays.limit), np.inf)
-        self.top = np.concatenate([free, point_worth * self.arrays.promise])
+    def settle(self) -> None:
+        """Find the ceiling at the best prices once more without slack, if there is time."""
+        at = self.sweeper(self.best_price, self.point_worth) if self.slack > 0.0 else None
+        if at is not None:
+            self.bound = min(self.bound, self._ceiling(at, self.best_price))
 
     def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
         self.plan_points, self.bound = plan_points, np.inf
 
-    def _evaluate(self) -> tuple[float, Floats]:
-        """The ceiling at the present prices, noted if it is the lowest, and which way each price should go."""
-        at = self.sweeper(self.price, self.point_worth)
-        here = float(at.worth.sum() + self.price @ self.limits + self.point_worth * self.plan_points)
+    def _evaluate(self) -> tuple[float, Floats] | None:
+        """The ceiling at the present prices, noted if it is the lowest, and which way each price should go.
+
+        None if time is up before it is known.
+        """
+        at = self.sweeper(self.price, self.point_worth, self.slack)
+        if at is None:
+            return None
+        here = self._ceiling(at, self.price)
         if here < self.bound:
-            self.bound, self.best_price, self.best_point_worth = here, self.price, self.point_worth
+            self.bound, self.best_price = here, self.price
         gradient = at.use - self.limits
         gradient[(self.price <= self.floor) & (gradient < 0.0)] = 0.0
         gradient[(self.price >= self.top) & (gradient > 0.0)] = 0.0
         return here, gradient
+
+    def _ceiling(self, at: Sweep, price: Floats) -> float:
+        return float(at.worth.sum() + price @ self.limits + self.point_worth * self.plan_points)
 
 
 def lowest_ceiling(
@@ -254,7 +300,7 @@ def lowest_ceiling(
     value, points = sum(worth for worth, _ in pairs), sum(points for _, points in pairs)
     point_worth = float((arrays.craft[:, 0] * arrays.craft[:, 2] + arrays.spill * arrays.craft[:, 2]).max(initial=1.0))
     with ThreadPoolExecutor(max(1, threads)) as pool:
-        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None)
+        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None, clock)
         bounds = BoundSearch(
             arrays, sweeper, points + more_points - arrays.hopeless, point_worth, abs(value),
             abs(value) / max(1, int(size.sum())))

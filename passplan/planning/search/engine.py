@@ -42,8 +42,14 @@ _WARMTH = (0.0, 0.02, 0.1, 0.5)
 _PATIENCE_ROUNDS = 80
 # Fleets below this are never rebuilt in parts.
 _LEAST_PART = 20
-# So many rounds with bound first; then the bound moves at least every so many.
-_ROUNDS_WITH_BOUND, _BOUND_EVERY = 10, 5
+# So many steps of the bound first: prices overshoot before they are of use. Then it moves every so many rounds or more.
+_FIRST_SWEEPS, _BOUND_EVERY = 60, 5
+# After them, ceilings may be loose by this part of the gap, of what a contact is worth, which makes sweeps faster. At
+# prices near nothing it would fill schedules with contacts that bring nothing down.
+_LOOSE = 0.001
+# Of each round only contacts that start within so many seconds of one another are rebuilt: a little time of many
+# spacecraft is looked through more often than all of it. None: the whole horizon.
+_SPANS_S = (28_800, 14_400, None)
 _RATE_MEMORY = 0.7
 # Free cliques are dealt out in runs of neighbours, as a contact needs several of them.
 _RUN = 64
@@ -73,13 +79,13 @@ def search_plan(
     """
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
-        return _Rounds(arrays, limits, start, points, pool, threads).run(terms, clock, tell)
+        return _Rounds(arrays, limits, start, points, pool, threads, clock).run(terms, clock, tell)
 
 
 class _Rounds:
     def __init__(
         self, arrays: FleetArrays, limits: Limits, start: Sequence[int], points: float, pool: ThreadPoolExecutor,
-        threads: int,
+        threads: int, clock: Clock,
     ) -> None:
         self.arrays, self.limits, self.pool, self.threads = arrays, limits, pool, threads
         self.workers = max(2, threads)
@@ -89,7 +95,7 @@ class _Rounds:
         # Points before value: a second of a command interval outweighs what it can be traded for.
         self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + arrays.spill) @ (
             arrays.craft[:, 3] + arrays.craft[:, 1] * arrays.horizon_s)))
-        self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None)
+        self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None, clock)
         self.work = [make_work() for _ in range(self.workers)]
         self.value, self.points = self._worth()
         # What the search does not count stays as it is.
@@ -97,6 +103,7 @@ class _Rounds:
         self.bounds = BoundSearch(
             arrays, self.sweeper, self.points + self.more_points, self._first_point_worth(), abs(self.value),
             self._contact_worth())
+        self.swept = 0
         self.bound_rate = self.value_rate = 0.0
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
@@ -109,8 +116,8 @@ class _Rounds:
             # What ends by the clock need not be the same every time: the last round is as short as it must be.
             part = min(1.0, clock.left_s() / round_s) if round_s > 0.0 else 1.0
             with_bound = (
-                rounds < _ROUNDS_WITH_BOUND or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
-            labels = int(part * max(_LEAST_LABELS, sweeps * effort))
+                self.swept < _FIRST_SWEEPS or rounds % _BOUND_EVERY == 0 or self.bound_rate >= self.value_rate)
+            labels = int(part * max(_LEAST_LABELS, min(sweeps * effort, _ROUND_LABELS if rounds == 0 else np.inf)))
             spent = self._round(rounds, sweeps if with_bound and part > 0.7 else 0, labels)
             if spent:
                 effort = max(1, spent // sweeps)
@@ -128,14 +135,15 @@ class _Rounds:
             gap = relative_gap(self.value, self.bounds.bound)
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
+        self.bounds.settle()
         return Found(
             tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound,
             certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()))
 
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
-        prices = option_prices(self.arrays, self.bounds.best_price)
-        gifts = gift_worths(self.arrays, self.bounds.best_price)
+        prices = option_prices(self.arrays, self.bounds.guide)
+        gifts = gift_worths(self.arrays, self.bounds.guide)
         in_parts = sweeps == 0 and self.movable.sum() >= _LEAST_PART
         grounds = self._parts(number) if in_parts else [self._whole()]
         jobs = [partial(self._rebuild, number, k, effort, prices, gifts, ground) for k, ground in enumerate(grounds)]
@@ -153,6 +161,9 @@ class _Rounds:
     def _improve(self, sweeps: int) -> int:
         if sweeps == 0:
             return 0
+        gap = relative_gap(self.value, self.bounds.bound) if np.isfinite(self.bounds.bound) else 0.0
+        self.bounds.slack = _LOOSE * min(1.0, gap) * self._contact_worth() if self.swept >= _FIRST_SWEEPS else 0.0
+        self.swept += sweeps
         before = sum(int(work.spent[0]) for work in self.sweeper.work)
         self.bounds.improve(sweeps, self.value)
         return sum(int(work.spent[0]) for work in self.sweeper.work) - before
@@ -163,7 +174,8 @@ class _Rounds:
         warmth = _WARMTH[number % len(_WARMTH)] * self._contact_worth()
         taken, size = self.taken.copy(), self.size.copy()
         seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32
-        rebuild(self.arrays, seed, effort, warmth, _MOST_OUT, prices, gifts, self.point_worth, ground,
+        span_s = min(_SPANS_S[number % len(_SPANS_S)] or self.arrays.horizon_s, self.arrays.horizon_s)
+        rebuild(self.arrays, seed, effort, warmth, _MOST_OUT, span_s, prices, gifts, self.point_worth, ground,
                 self.work[worker], taken, size)
         return taken, size
 
@@ -202,8 +214,8 @@ class _Rounds:
         """What a point is worth in the bound: much if the plan has only the points that nobody can avoid."""
         if self.points <= 0.0:
             return self.point_worth
-        alone = self.sweeper(np.zeros(len(limits_of(self.arrays))), self.point_worth).points.sum()
-        if self.points <= alone + 1e-9:
+        alone = self.sweeper(np.zeros(len(limits_of(self.arrays))), self.point_worth)
+        if alone is None or self.points <= alone.points.sum() + 1e-9:
             return self.point_worth
         return float((self.arrays.craft[:, 0] * self.arrays.craft[:, 2]).max(initial=1.0))
 

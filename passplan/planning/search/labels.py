@@ -25,8 +25,6 @@ from passplan.planning.arrays import Floats, Integers
 from passplan.planning.search.compiled import inlined
 
 _MOST_LABELS = 400_000
-# Where more labels than this have requirements of their own to meet, the least different are merged.
-_MOST_KEPT = 300
 # Labels that wait have room for so many fills each, where a spacecraft has several layers of storage.
 _MOST_LAYERS = 8
 # Comparing so many pairs of labels is as much work as making one.
@@ -41,7 +39,8 @@ class Work(NamedTuple):
     before it). The ``wait`` arrays hold labels that stand further on, each with its record at the same index, as
     runs ``run_low : run_high`` in linked lists. ``champion`` is scratch.
     ``spent[0]`` counts labels made: how much work has been done, whatever
-    the machine.
+    the machine. ``slack[0]`` is how far a label may be ahead of one that makes it useless all the same; that one is
+    then raised by as much, so that worths are ceilings.
     """
 
     aboard: Floats
@@ -60,6 +59,7 @@ class Work(NamedTuple):
     run_next: Integers
     champion: Integers
     spent: Integers
+    slack: Floats
 
 
 def make_work(labels: int = _MOST_LABELS) -> Work:
@@ -70,28 +70,28 @@ def make_work(labels: int = _MOST_LABELS) -> Work:
     several = np.empty(_MOST_LAYERS * labels)
     return Work(
         floats[0], floats[1], floats[2], numbers[0], numbers[1], several, wait[0], wait[1], records[0], records[1],
-        records[2], records[3], records[4], records[5], records[6], np.zeros(1, dtype=np.int64))
+        records[2], records[3], records[4], records[5], records[6], np.zeros(1, dtype=np.int64), np.zeros(1))
 
 
 @inlined
 def merge(
-    clash: Integers, spill: float, weight: float, simple: bool, most: float, now: int, aboard: Floats, worth: Floats,
-    cover: Floats, bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats,
-    wait_cover: Floats, wait_bits: Integers, record_option: Integers, low: int, high: int, due: float,
-    per_second: float, point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
+    clash: Integers, spill: float, weight: float, simple: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
+    bits: Integers, via: Integers, side: int, count: int, wait_aboard: Floats, wait_worth: Floats, wait_cover: Floats,
+    wait_bits: Integers, record_option: Integers, low: int, high: int, due: float, per_second: float,
+    point_worth: float, wants: Floats, past: np.int64, champion: Integers, spent: Integers,
+    slack: float,
 ) -> int:
     """Merge the ``count`` labels on ``side`` with the run ``low : high``, onto the other side, without the useless.
 
-    Beyond a number of them labels are merged: one that is ahead of another by at most ``most`` hands that on and is
-    dropped, which can only raise the worth that comes out. ``simple`` says that bits and cover are all alike; two
-    plain sweeps then do. Otherwise what is overdue up to ``due`` is paid ``per_second``, and wanted terms ``past`` are
-    paid for and count as met. Returns how many are left, or -1 if there is no room. (Arrays are handed over one by one,
-    because taking them out of a tuple costs more than all the rest.)
+    ``simple`` says that bits and cover are all alike; two plain sweeps then do. Otherwise what is overdue up to ``due``
+    is paid ``per_second``, and the wanted terms that are ``past`` are paid for and count as met. Returns how many are
+    left, or -1 if there is no room. (Arrays are handed over one by one, because taking them out of a tuple
+    costs more than all the rest.)
     """
     to = 1 - side
     if count + high - low > aboard.shape[1]:
         return -1
-    best = -np.inf
+    best, holder = -np.inf, 0
     x = left = 0
     y = low
     while x < count or y < high:
@@ -105,10 +105,13 @@ def merge(
             y += 1
         if simple:
             # Upward: drop what holds more than another but is not ahead.
-            if ahead + weight * mb <= best:
+            if ahead + weight * mb <= best + slack:
+                if ahead + weight * mb > best:
+                    worth[to, holder] += ahead + weight * mb - best
+                    best = ahead + weight * mb
                 continue
             if record < 0 or clash[record_option[record]] < now:
-                best = ahead + weight * mb
+                best, holder = ahead + weight * mb, left
         else:
             if until < due:
                 ahead, until = ahead - per_second * (due - until), due
@@ -119,11 +122,11 @@ def merge(
         cover[to, left], bits[to, left] = until, met
         left += 1
     if simple:
-        return _prune_down(clash, spill, now, aboard, worth, cover, bits, via, to, left, record_option)
-    left = _prune(clash, weight, most, True, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
-                  point_worth, wants, champion, spent)
-    return _prune(clash, -spill, 0.0, False, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
-                  point_worth, wants, champion, spent)
+        return _prune_down(clash, spill, now, aboard, worth, cover, bits, via, to, left, record_option, slack)
+    left = _prune(clash, weight, True, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
+                  point_worth, wants, champion, spent, slack)
+    return _prune(clash, -spill, False, now, aboard, worth, cover, bits, via, to, left, record_option, per_second,
+                  point_worth, wants, champion, spent, slack)
 
 
 @inlined
@@ -139,19 +142,22 @@ def missing(wants: Floats, met: int | np.int64) -> float:
 @inlined
 def _prune_down(
     clash: Integers, spill: float, now: int, aboard: Floats, worth: Floats, cover: Floats, bits: Integers,
-    via: Integers, side: int, count: int, record_option: Integers,
+    via: Integers, side: int, count: int, record_option: Integers, slack: float,
 ) -> int:
     """Downward: drop what holds less than another and is not ahead."""
-    best = -np.inf
+    best, holder = -np.inf, 0
     low = count
     for k in range(count - 1, -1, -1):
         ahead = worth[side, k] - spill * aboard[side, k]
-        if ahead > best:
+        if ahead > best + slack:
             record = via[side, k]
-            if record < 0 or clash[record_option[record]] < now:
-                best = ahead
             low -= 1
             _move(aboard, worth, cover, bits, via, side, k, low)
+            if record < 0 or clash[record_option[record]] < now:
+                best, holder = ahead, low
+        elif ahead > best:
+            worth[side, holder] += ahead - best
+            best = ahead
     if low > 0:
         for k in range(low, count):
             _move(aboard, worth, cover, bits, via, side, k, k - low)
@@ -160,9 +166,9 @@ def _prune_down(
 
 @inlined
 def _prune(
-    clash: Integers, slope: float, most: float, forward: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
+    clash: Integers, slope: float, forward: bool, now: int, aboard: Floats, worth: Floats, cover: Floats,
     bits: Integers, via: Integers, side: int, count: int, record_option: Integers, per_second: float,
-    point_worth: float, wants: Floats, champion: Integers, spent: Integers,
+    point_worth: float, wants: Floats, champion: Integers, spent: Integers, slack: float,
 ) -> int:
     """Drop labels that one before them makes useless (``forward``, by the weight), or one behind (minus spill cost).
 
@@ -173,21 +179,16 @@ def _prune(
     for turn in range(count):
         k = turn if forward else count - 1 - turn
         key, useless = worth[side, k] + slope * aboard[side, k], False
-        least, nearest = np.inf, -1
         pairs += champions
         for c in range(champions):
             x = champion[c]
-            lacks = (key + _lacks(cover, bits, side, x, k, per_second, point_worth, wants)
+            short = (key + _lacks(cover, bits, side, x, k, per_second, point_worth, wants)
                      - worth[side, x] - slope * aboard[side, x])
-            if lacks <= 0.0:
+            if short <= slack:
+                worth[side, x] += max(0.0, short)
                 useless = True
                 break
-            if lacks < least:
-                least, nearest = lacks, x
         if useless:
-            continue
-        if forward and low >= _MOST_KEPT and least <= most:
-            worth[side, nearest] += least
             continue
         to = low if forward else low - 1
         low = low + 1 if forward else to

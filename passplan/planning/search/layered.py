@@ -38,7 +38,7 @@ def best_layered(
 ) -> tuple[float, int]:
     """As ``best_schedule``, for a spacecraft with layers; the worth is a ceiling of that of the best schedule."""
     (aboard, worth, cover, bits, via, wait_aboard, wait_worth, wait_cover, wait_bits, record_option, record_before,
-     run_low, run_high, run_next, champion, spent) = work
+     run_low, run_high, run_next, champion, spent, slacks) = work
     end_of, node, arrival = a.first[i + 1], a.node, a.arrival
     layers = a.layers.layer[a.layers.first[i]:a.layers.first[i + 1]]
     gate, gate_first, map_first, maps = a.layers.gate, a.layers.gate_first[i], a.layers.map_first, a.layers.maps
@@ -74,8 +74,8 @@ def best_layered(
                 _pay(cover, bits, worth, side, here, min(float(now), recur_until), per_second, point_worth, wants,
                      past_wants(wants_until, now))
             here = _prune(
-                layers, a.clash, now, simple, _GIVEN * whole / (nodes + 1), _MOST_GIVEN * whole, aboard, worth, cover,
-                bits, via, side, here, record_option, per_second, point_worth, wants, champion, spent)
+                layers, a.clash, now, simple, max(slacks[0], _GIVEN * whole / (nodes + 1)), _MOST_GIVEN * whole, aboard,
+                worth, cover, bits, via, side, here, record_option, per_second, point_worth, wants, champion, spent)
             side = 1 - side
         for o in range(option, follower):
             if price[o] == np.inf:

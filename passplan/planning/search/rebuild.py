@@ -45,14 +45,16 @@ class Ground(NamedTuple):
 
 @compiled
 def rebuild(
-    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, option_price: Floats, gift_worth: Floats,
+    a: FleetArrays, seed: int, effort: int, warmth: float, most: int, span_s: int, option_price: Floats,
+    gift_worth: Floats,
     point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
-    nothing. At most ``most`` spacecraft are taken out at a time.
+    nothing. At most ``most`` spacecraft are taken out at a time, and only what starts within ``span_s`` of some instant
+    is rebuilt: the rest of their contacts stay, or go, but no others come.
     """
     np.random.seed(seed)
     count, movable = len(size), np.flatnonzero(ground.crafts)
@@ -68,25 +70,27 @@ def rebuild(
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
-    old_worth, price = np.empty(most), np.empty(len(option_price))
-    fresh = np.empty(a.most_contacts, dtype=np.int64)
-    is_changed = np.zeros(count, dtype=np.bool_)
+    old_worth, price = np.empty(most), np.full(len(option_price), np.inf)
+    fresh, is_changed = np.empty(a.most_contacts, dtype=np.int64), np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
     while work.spent[0] - begun < effort:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
-        some = _pick(a, holder, ground.crafts, movable, out, wanted)
+        # Any instant is as likely to be within, also those at the ends.
+        from_s = int(np.random.random() * (a.horizon_s + span_s)) - span_s if span_s < a.horizon_s else 0
+        until_s = from_s + span_s if span_s < a.horizon_s else a.horizon_s
+        some = _pick(a, holder, ground.crafts, movable, out, wanted, from_s, until_s)
         for k in range(some):
             old_worth[k] = worth[out[k]]
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
-            _release(a, now_taken[out[k]], now_size[out[k]], holder, room)
-            now_size[out[k]] = 0
+            _take_out(a, out[k], from_s, until_s, now_taken, now_size, holder, room)
         before = given.copy()
         share = np.random.random() * _MOST_SHARE
         for turn in range(2 * some - 1):
             # First each pays for what others need, the last one has nobody left to leave room for; then all but the
             # last once more, for nothing.
             part = share if turn < some - 1 else 0.0
-            _replan(a, out[turn % some], part, option_price, gift_worth, price, point_worth, work, holder, room,
+            _replan(a, out[turn % some], from_s, until_s, part, option_price, gift_worth, price, point_worth, work,
+                    holder, room,
                     now_taken, now_size, fresh)
         change = 0.0
         for k in range(some):
@@ -118,22 +122,44 @@ def rebuild(
 
 
 @compiled
+def _take_out(
+    a: FleetArrays, i: int, from_s: int, until_s: int, taken: Integers, size: Integers, holder: Integers, room: Floats,
+) -> None:
+    """Take the contacts that start within ``from_s : until_s`` out of the schedule of a spacecraft."""
+    _release(a, taken[i], size[i], holder, room)
+    kept = 0
+    for k in range(size[i]):
+        if not from_s <= a.span[taken[i, k], 0] < until_s:
+            taken[i, kept] = taken[i, k]
+            kept += 1
+    size[i] = kept
+    hold(a, taken[i], kept, holder, i)
+    load(a, taken[i], kept, room, -1.0)
+
+
+@compiled
 def _replan(
-    a: FleetArrays, i: int, part: float, option_price: Floats, gift_worth: Floats, price: Floats, point_worth: float,
-    work: Work, holder: Integers, room: Floats, taken: Integers, size: Integers, fresh: Integers,
+    a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, gift_worth: Floats,
+    price: Floats, point_worth: float, work: Work, holder: Integers, room: Floats, taken: Integers, size: Integers,
+    fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
 
-    What it gives to guarantees it is paid for in full.
-    It keeps the schedule it has where the program gives none that can be used.
+    What it gives to guarantees it is paid for in full. Contacts that start outside ``from_s : until_s`` come from those
+    it has. It keeps the schedule it has where the program gives none that can be used. ``price`` is infinite
+    throughout, and is so again afterwards.
     """
-    _release(a, taken[i], size[i], holder, room)
     use_at, use_first, use_last, cost = a.use_at, a.use_first, a.use_last, a.cost
     load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
-    for o in range(a.first[i], a.first[i + 1]):
-        free = is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room)
-        price[o] = cost[o] + part * option_price[o] - gift_worth[o] if free else np.inf
-    work.spent[0] += _OVERHEAD + (a.first[i + 1] - a.first[i]) // 4
+    low, high = _within(a, i, from_s, until_s)
+    _release(a, taken[i], size[i], holder, room)
+    for o in range(low, high):
+        if is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room):
+            price[o] = cost[o] + part * option_price[o] - gift_worth[o]
+    for k in range(size[i]):
+        o = taken[i, k]
+        price[o] = cost[o] + part * option_price[o] - gift_worth[o]
+    work.spent[0] += _OVERHEAD + (high - low) // 4
     before = work.spent[0]
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
     # Rows are looked at label by label.
@@ -145,12 +171,25 @@ def _replan(
             fresh[:count] = taken[i, :count]
         count, usable = change(a, i, price, point_worth, room, fresh[:taken.shape[1]], count), True
         work.spent[0] += _CHANGES
+    price[low:high] = np.inf
+    for k in range(size[i]):
+        price[taken[i, k]] = np.inf
     if usable:
         size[i] = count
         for c in range(count):
             taken[i, c] = fresh[c]
     hold(a, taken[i], size[i], holder, i)
     load(a, taken[i], size[i], room, -1.0)
+
+
+@inlined
+def _within(a: FleetArrays, i: int, from_s: int, until_s: int) -> tuple[int, int]:
+    """The options of a spacecraft that start within ``from_s : until_s``, as a range."""
+    low, high = a.first[i], a.first[i + 1]
+    if from_s <= 0 and until_s >= a.horizon_s:
+        return low, high
+    starts = a.span[low:high, 0]
+    return low + np.searchsorted(starts, from_s), low + np.searchsorted(starts, until_s)
 
 
 @compiled
@@ -251,7 +290,8 @@ def _enter(
 
 @compiled
 def _pick(
-    a: FleetArrays, holder: Integers, crafts: Flags, movable: Integers, out: Integers, wanted: int,
+    a: FleetArrays, holder: Integers, crafts: Flags, movable: Integers, out: Integers, wanted: int, from_s: int,
+    until_s: int,
 ) -> int:
     """Choose spacecraft that stand in each other's way: one at random, then holders of time others could use."""
     out[0] = movable[np.random.randint(len(movable))]
@@ -260,9 +300,10 @@ def _pick(
         if some >= wanted:
             break
         i = out[np.random.randint(some)]
-        if a.first[i + 1] == a.first[i]:
+        low, high = _within(a, i, from_s, until_s)
+        if high <= low:
             continue
-        o = np.random.randint(a.first[i], a.first[i + 1])
+        o = np.random.randint(low, high)
         if a.use_at[o + 1] == a.use_at[o]:
             continue
         u = np.random.randint(a.use_at[o], a.use_at[o + 1])

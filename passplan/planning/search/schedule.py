@@ -7,10 +7,9 @@ next one, or takes an option and stands at the first start at which another cont
 Which labels make others useless is in ``labels.py``. Spacecraft with classes of data have labels of their own, see
 ``layered.py``.
 
-The program is exact but for three things. Where too many labels have requirements to meet some are merged, and the
-worth is then a ceiling. It does not see a clash between contacts with another one between them: its worth is then a
-ceiling, and the caller must look (:func:`clashes`). And where rows are to be kept (``room``) it refuses an option that
-overfills one, but a label that was dropped may have had room for it.
+The program is exact but for two things. It does not see a clash between contacts with another one between
+them: its worth is then a ceiling, and the caller must look (:func:`clashes`). And where rows are to be kept
+(``room``) it refuses an option that overfills one, but a label that was dropped may have had room for it.
 """
 
 from __future__ import annotations
@@ -25,9 +24,6 @@ from passplan.planning.search.followed import followed_worth
 from passplan.planning.search.labels import Work, merge, missing
 from passplan.planning.search.layered import best_layered, layered_worth
 from passplan.planning.search.walk import overfills, past_wants, those_at, trace
-
-# Where there are too many labels, merging one of them gives away no more than this part of all that there is to send.
-_MOST_GIVEN = 1e-3
 
 
 @compiled
@@ -47,14 +43,14 @@ def best_schedule(
     # Out of the tuples once: every look into one costs more than the step that it is for.
     end_of, node, arrival, span, clash, spill = a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
     (aboard, worth, cover, bits, via, wait_aboard, wait_worth, wait_cover, wait_bits, record_option, record_before,
-     run_low, run_high, run_next, champion, spent) = work
+     run_low, run_high, run_next, champion, spent, slacks) = work
+    slack = slacks[0]
     maps, use_at, use_first, use_last, renews, own_bits = a.maps, a.use_at, a.use_first, a.use_last, a.renews, a.bits
     load_at, load_row, load_amount, load_own = a.load_at, a.load_row, a.load_amount, a.load_own
     base, nodes, start_s = a.start_first[i], a.start_first[i + 1] - a.start_first[i], a.start_s
     recur_until, per_second = a.recur[i, 1], point_worth * a.recur[i, 2]
     wants, wants_until = a.wants[i], a.wants_until[i]
     simple = recur_until <= 0.0 and wants.max() <= 0.0
-    most = _MOST_GIVEN * (weight + spill) * (a.craft[i, 3] + generation * a.horizon_s)
     used = np.zeros(len(room))
     head = np.full(nodes + 1, -1, dtype=np.int64)
     waiting = runs = side = clock = 0
@@ -75,9 +71,9 @@ def best_schedule(
         past = past_wants(wants_until, now)
         run = head[at]
         while run >= 0:
-            here = merge(clash, spill, weight, simple, most, now, aboard, worth, cover, bits, via, side, here,
-                         wait_aboard, wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run],
-                         min(float(now), recur_until), per_second, point_worth, wants, past, champion, spent)
+            here = merge(clash, spill, weight, simple, now, aboard, worth, cover, bits, via, side, here, wait_aboard,
+                         wait_worth, wait_cover, wait_bits, record_option, run_low[run], run_high[run],
+                         min(float(now), recur_until), per_second, point_worth, wants, past, champion, spent, slack)
             if here < 0:
                 return np.inf, -1
             side, run = 1 - side, run_next[run]
