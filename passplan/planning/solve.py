@@ -18,6 +18,7 @@ from ortools.math_opt.python import mathopt
 
 from passplan.planning.certificate import ModelCertificate
 from passplan.planning.clock import Clock
+from passplan.planning.hushed import hushed
 from passplan.planning.model import PlanModel, build_model
 from passplan.planning.overrated import Overrated
 from passplan.planning.problem import Limits, Problem
@@ -53,12 +54,12 @@ def least_shortfall(problem: Problem, terms: Terms, limits: Limits, clock: Clock
 
 def most_value(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, points: float,
-    holds: Sequence[tuple[Problem, float]] = (), overrated: Sequence[Overrated] = (),
+    holds: Sequence[tuple[Problem, float]] = (), overrated: Sequence[Overrated] = (), known: Sequence[int] = (),
 ) -> Solved:
     """Tier 2: the most valuable options among those with at most ``points`` of shortfall.
 
     ``holds`` are the same problem with other objectives, each with the value that is not to be given up;
-    ``overrated`` are choices of which the model thinks too much.
+    ``overrated`` are choices of which the model thinks too much. ``known`` are the options of a plan to start from.
     """
     with clock.stage("model"):
         model = build_model(problem, terms, overrated=overrated)
@@ -68,7 +69,7 @@ def most_value(
                 for other, least in holds]
         proto = model.proto(tier=2, points_limit=limit, holds=held)
     with clock.stage("solve"):
-        answer = _solve(proto, model, limits, clock, limits.gap)
+        answer = _solve(proto, model, limits, clock, limits.gap, known)
     if answer.bound is None:
         return Solved(answer.chosen, float("inf"))
     bound = answer.bound + problem.base_worth
@@ -82,12 +83,14 @@ class _Answer:
     bound: float | None
 
 
-def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, clock: Clock, gap: float) -> _Answer:
+def _solve(
+    proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, clock: Clock, gap: float, known: Sequence[int] = (),
+) -> _Answer:
     for solver in _SOLVERS:
         parameters = mathopt.SolveParameters(
             time_limit=dt.timedelta(seconds=max(clock.left_s(), 0.01)), random_seed=limits.seed,
             relative_gap_tolerance=gap)
-        result = _run(proto, solver, parameters, clock)
+        result = _run(proto, solver, parameters, clock, known)
         if clock.stopped:
             break
         if result is None:
@@ -101,6 +104,7 @@ def _solve(proto: model_pb2.ModelProto, model: PlanModel, limits: Limits, clock:
 
 def _run(
     proto: model_pb2.ModelProto, solver: mathopt.SolverType, parameters: mathopt.SolveParameters, clock: Clock,
+    known: Sequence[int],
 ) -> mathopt.SolveResult | None:
     """The solver's result; None where it raised something, or the clock was stopped by hand.
 
@@ -111,12 +115,16 @@ def _run(
     def work() -> None:
         # The errors of the solvers share no type.
         with suppress(Exception):
-            outcome.append(mathopt.solve(mathopt.Model.from_model_proto(proto), solver, params=parameters))
+            model = mathopt.Model.from_model_proto(proto)
+            hint = mathopt.SolutionHint(variable_values={model.get_variable(o): 1.0 for o in known})
+            start = mathopt.ModelSolveParameters(solution_hints=[hint] if len(known) else [])
+            outcome.append(mathopt.solve(model, solver, params=parameters, model_params=start))
 
     thread = threading.Thread(target=work, daemon=True)
-    thread.start()
-    while thread.is_alive() and not clock.stopped:
-        thread.join(_LOOK_S)
+    with hushed():
+        thread.start()
+        while thread.is_alive() and not clock.stopped:
+            thread.join(_LOOK_S)
     return outcome[0] if outcome else None
 
 

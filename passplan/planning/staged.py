@@ -125,7 +125,8 @@ class _Staged:
             holds = [(other.problem, reached - 0.5 * _SAME * max(1.0, abs(reached)))
                      for other, reached in zip(self.aims[:k], self.best.reached, strict=False)]
             solved = most_value(
-                aim.problem, self.terms, self.limits, time.part(0.5 * time.left_s()), self.best.points, holds)
+                aim.problem, self.terms, self.limits, time.part(0.5 * time.left_s()), self.best.points, holds,
+                known=self.best.chosen)
             bound = min(bound, solved.bound)
             if solved.chosen is not None:
                 self._offer(solved.chosen, "exact")

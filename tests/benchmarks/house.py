@@ -203,12 +203,22 @@ class House:
             p, commands=needs, options=replace(p.options, command=options.antenna % 2 == 0))
 
     def requests(self) -> Callable[[Problem], Problem]:
-        """Long contacts within four hours."""
-        fleet, antennas = self.base.fleet, frozenset(range(len(self.base.antennas)))
-        needs = tuple(
-            RequestNeed(f"asked-{k}", fleet.names[k], k, antennas, "downlink", from_s, from_s + 4 * _HOUR_S, 300)
-            for k in self._every(9, 4) for from_s in (int(self.rng.integers(0, 20 * _HOUR_S)),))
-        return lambda p: replace(p, requests=needs)
+        """A contact of five minutes, within the four hours of the day in which the plan without rules has none so long.
+
+        Each spacecraft is asked for where one would fit.
+        """
+        options, fleet, needs = self.base.options, self.base.fleet, list[RequestNeed]()
+        antennas, length_s = frozenset(range(len(self.base.antennas))), options.end_s - options.start_s
+        for k in self._every(9, 4):
+            mine, free = np.flatnonzero((options.spacecraft == k) & (length_s >= 300)), self._free_of(k)
+            has = free[length_s[free] >= 300]
+            for from_s in range(0, self.base.horizon_s - 4 * _HOUR_S, _HOUR_S):
+                inside = (options.start_s >= from_s) & (options.end_s <= from_s + 4 * _HOUR_S)
+                if np.any(inside[mine]) and not np.any(inside[has]):
+                    needs.append(RequestNeed(f"asked-{k}", fleet.names[k], k, antennas, "downlink", from_s,
+                                             from_s + 4 * _HOUR_S, 300))
+                    break
+        return lambda p: replace(p, requests=(*p.requests, *needs))
 
     def pins(self) -> Callable[[Problem], Problem]:
         """Three contacts that the plan without rules has not."""
