@@ -196,7 +196,7 @@ class BoundSearch:
         self.price: Floats
         self.best_price: Floats
         self.limits = limits_of(arrays)
-        self.bound, self.slack = np.inf, 0.0
+        self.bound = np.inf
         self.point_worth = point_worth
         free = np.full(arrays.cliques + len(arrays.limit), np.inf)
         self.top = np.concatenate([free, point_worth * arrays.promise])
@@ -257,12 +257,6 @@ class BoundSearch:
             self.price = np.clip(self.price + (here - value) / size * gradient, self.floor, self.top)
         self.price = self.best_price
 
-    def settle(self) -> None:
-        """Find the ceiling at the best prices once more without slack, if there is time."""
-        at = self.sweeper(self.best_price, self.point_worth) if self.slack > 0.0 else None
-        if at is not None:
-            self.bound = min(self.bound, self._ceiling(at, self.best_price))
-
     def restart(self, plan_points: float) -> None:
         """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
         self.plan_points, self.bound = plan_points, np.inf
@@ -272,19 +266,16 @@ class BoundSearch:
 
         None if time is up before it is known.
         """
-        at = self.sweeper(self.price, self.point_worth, self.slack)
+        at = self.sweeper(self.price, self.point_worth)
         if at is None:
             return None
-        here = self._ceiling(at, self.price)
+        here = float(at.worth.sum() + self.price @ self.limits + self.point_worth * self.plan_points)
         if here < self.bound:
             self.bound, self.best_price = here, self.price
         gradient = at.use - self.limits
         gradient[(self.price <= self.floor) & (gradient < 0.0)] = 0.0
         gradient[(self.price >= self.top) & (gradient > 0.0)] = 0.0
         return here, gradient
-
-    def _ceiling(self, at: Sweep, price: Floats) -> float:
-        return float(at.worth.sum() + price @ self.limits + self.point_worth * self.plan_points)
 
 
 def lowest_ceiling(

@@ -44,9 +44,6 @@ _PATIENCE_ROUNDS = 80
 _LEAST_PART = 20
 # So many steps of the bound first: prices overshoot before they are of use. Then it moves every so many rounds or more.
 _FIRST_SWEEPS, _BOUND_EVERY = 60, 5
-# After them, ceilings may be loose by this part of the gap, of what a contact is worth, which makes sweeps faster. At
-# prices near nothing it would fill schedules with contacts that bring nothing down.
-_LOOSE = 0.001
 # Of each round only contacts that start within so many seconds of one another are rebuilt: a little time of many
 # spacecraft is looked through more often than all of it. None: the whole horizon.
 _SPANS_S = (28_800, 14_400, None)
@@ -135,7 +132,6 @@ class _Rounds:
             gap = relative_gap(self.value, self.bounds.bound)
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
-        self.bounds.settle()
         return Found(
             tuple(unload_plan(self.arrays, self.taken, self.size)), self.bounds.bound,
             certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()))
@@ -161,8 +157,6 @@ class _Rounds:
     def _improve(self, sweeps: int) -> int:
         if sweeps == 0:
             return 0
-        gap = relative_gap(self.value, self.bounds.bound) if np.isfinite(self.bounds.bound) else 0.0
-        self.bounds.slack = _LOOSE * min(1.0, gap) * self._contact_worth() if self.swept >= _FIRST_SWEEPS else 0.0
         self.swept += sweeps
         before = sum(int(work.spent[0]) for work in self.sweeper.work)
         self.bounds.improve(sweeps, self.value)
