@@ -120,21 +120,29 @@ def _may_cross(scene: Scene, pair: Indices, sample: Indices, top: bool) -> Flags
     flat = pair * scene.length + sample
     sine, side = scene.sines[pair], 1.0 if top else -1.0
     up, square = scene.up_km.reshape(-1), scene.range_km2.reshape(-1)
-    open_still = np.arange(pair.size)
-    if top:
-        # Most tops are far below the horizon, and P alone settles them.
-        p0, p1, p2 = (up.take(flat + k) for k in (-1, 0, 1))
-        reach = np.maximum(np.maximum(p0, p1), p2) + (0.125 + _SLACK) * np.abs(p0 - 2.0 * p1 + p2)
-        open_still = np.flatnonzero((reach >= 0.0) | (sine < 0.0))
-    flat, sine = flat[open_still], sine[open_still]
-    farthest_up, bend = _parabola(up, flat)
-    farthest_up += side * _SLACK * bend
-    distance2, bend = _parabola(square, flat)
-    distance2 -= np.sign(side * sine) * _SLACK * bend
-    nearest_zero = side * (farthest_up - sine * np.sqrt(np.maximum(distance2, 0.0)))
+    reach = _extent(up, flat, side)
+    # Most tops are far below the horizon, and P alone settles them; most others are settled by the samples of D.
+    keep = np.flatnonzero((reach >= 0.0) | (sine < 0.0)) if top else np.arange(pair.size)
+    reach, flat, sine = reach[keep], flat[keep], sine[keep]
+    lean = -np.sign(side * sine)
+    distance2 = lean * _extent(square, flat, lean)
+    near = np.flatnonzero(reach - side * sine * np.sqrt(np.maximum(distance2, 0.0)) >= 0.0)
+    keep, flat, sine, lean = keep[near], flat[near], sine[near], lean[near]
+    up_there, bend = _parabola(up, flat)
+    up_there += side * _SLACK * bend
+    square_there, bend = _parabola(square, flat)
+    square_there += lean * _SLACK * bend
+    level = side * (up_there - sine * np.sqrt(np.maximum(square_there, 0.0)))
     may = np.zeros(pair.size, bool)
-    may[open_still] = nearest_zero.max(axis=0, initial=-np.inf) >= 0.0
+    may[keep] = level.max(axis=0, initial=-np.inf) >= 0.0
     return may
+
+
+def _extent(values: Floats, at: Indices, lean: Floats | float) -> Floats:
+    """The most that ``lean`` (1 or -1) times the curve through each value and its neighbours can be between them."""
+    before, here, after = (values.take(at + k) for k in (-1, 0, 1))
+    most = np.maximum(np.maximum(lean * before, lean * here), lean * after)
+    return np.asarray(most + (0.125 + _SLACK) * np.abs(before - 2.0 * here + after))
 
 
 def _parabola(values: Floats, at: Indices) -> tuple[Floats, Floats]:

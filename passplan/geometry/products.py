@@ -6,9 +6,6 @@ ours gain nothing from them, and on a busy machine they wait for each other: thr
 
 from __future__ import annotations
 
-import math
-from collections.abc import Iterator
-
 import numpy as np
 
 from passplan.geometry.timescale import Floats
@@ -18,13 +15,10 @@ _MULTIPLICATIONS = 2**18
 
 def product(left: Floats, right: Floats) -> Floats:
     """``left @ right`` for a small (m, k) and a wide (k, n) array."""
-    result = np.empty((left.shape[0], right.shape[1]))
-    for piece in pieces(left.shape, right.shape[1]):
+    rows, inner = left.shape
+    result = np.empty((rows, right.shape[1]))
+    step = max(1, _MULTIPLICATIONS // (rows * inner))
+    for at in range(0, right.shape[1], step):
+        piece = slice(at, at + step)
         np.matmul(left, right[:, piece], out=result[:, piece])
     return result
-
-
-def pieces(small: tuple[int, ...], width: int) -> Iterator[slice]:
-    """Columns of a wide array, ``width`` in all, so many at a time as a ``small`` (m, k) array may be multiplied by."""
-    step = max(1, _MULTIPLICATIONS // math.prod(small))
-    return (slice(at, at + step) for at in range(0, width, step))

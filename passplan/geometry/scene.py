@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from passplan.geometry import stencil
-from passplan.geometry.products import pieces
+from passplan.geometry.products import product
 from passplan.geometry.roots import Indices
 from passplan.geometry.stations import Stations
 from passplan.geometry.timescale import Floats
@@ -86,13 +86,10 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
     linear[count:, :3] = -2.0 * places.positions_km
     linear[count:, 3] = 1.0
     linear[count:, 4] = np.einsum("ij,ij->i", places.positions_km, places.positions_km)
-    both, excess = np.empty((2 * count, flat.shape[1])), np.empty((count, flat.shape[1]))
-    for piece in pieces(linear.shape, flat.shape[1]):
-        # What a piece of the product needs next is done while it is in the processor's cache.
-        here = np.matmul(linear, extended[:, piece], out=both[:, piece])
-        level = np.sqrt(here[count:], out=excess[:, piece])
-        level *= -sines[:, None]
-        level += here[:count]
+    both = product(linear, extended)
+    excess = np.sqrt(both[count:])
+    excess *= -sines[:, None]
+    excess += both[:count]
     return Scene(
         both.reshape(2, -1, length),
         excess.reshape(-1, length),

@@ -8,9 +8,10 @@ up to its limit at most, and a plan misses so many points at most; so no plan is
 
 whatever the prices are, as long as none is negative (Lagrangian duality). What is not a matter of one spacecraft (a
 guarantee, a request that several could meet) is rewarded in full where it is met, and in proportion where it is met in
-part; a reward is not more than the points that missing it costs. :func:`bound_of` finds the best of each
-spacecraft once more, contact by contact with the storage followed event by event as ``value.py`` does, in plain
-Python: slow, and short enough to be read.
+part; where a reward is more than the points that missing it costs, the rest is not taken off. :func:`bound_of` finds
+the best of each spacecraft once more, contact by contact with the storage followed event by event as ``value.py`` does,
+in plain Python: slow, and short enough to be read. Classes of data count by their layers (see ``layering.py``), which
+are worth at least as much.
 
 A bound of the exact model rests on the model; :func:`bound_of` has another solver solve it.
 """
@@ -18,7 +19,9 @@ A bound of the exact model rests on the model; :func:`bound_of` has another solv
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import numpy as np
 from ortools.math_opt.python import mathopt
@@ -27,6 +30,7 @@ from passplan.planning.arrays import Floats, Integers
 from passplan.planning.model import PlanModel
 from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Recurrence, Terms, Wanted
+from passplan.planning.streams import Layer
 from passplan.planning.value import follow_storage
 
 
@@ -60,6 +64,8 @@ class ModelCertificate:
 
 
 Certificate = PriceCertificate | ModelCertificate
+# Start, end and rate of a piece of sending.
+_Piece = tuple[int, int, float]
 
 
 def bound_of(problem: Problem, terms: Terms, certificate: Certificate) -> float:
@@ -105,7 +111,7 @@ def _option_prices(problem: Problem, terms: Terms, certificate: PriceCertificate
         np.add.at(price, rows.options, rows.amounts * np.repeat(of_row, np.diff(rows.offset)))
     reward = certificate.reward.tolist()
     for promise, paid in zip(terms.guarantees, reward, strict=False):
-        price[promise.options] -= paid * promise.amounts / promise.need
+        np.add.at(price, promise.options, -paid * promise.amounts / promise.need)
     for want, paid in zip(terms.wanted, reward[len(terms.guarantees):], strict=True):
         price[want.options] -= paid
     return price
@@ -113,9 +119,9 @@ def _option_prices(problem: Problem, terms: Terms, certificate: PriceCertificate
 
 @dataclass(frozen=True)
 class _State:
-    """A way to stand at an instant: MB aboard, worth, wanted contacts met, cover of the recurrence, last contact."""
+    """A way to stand at an instant: MB by layer, worth, wanted contacts met, cover of the recurrence, last contact."""
 
-    aboard: float
+    aboard: tuple[float, ...]
     worth: float
     met: frozenset[int]
     cover: float
@@ -132,17 +138,19 @@ def _best_of(problem: Problem, terms: Terms, craft: int, price: Floats, point_pr
     wants = [w for w in terms.wanted if not removed.issuperset(w.options.tolist())
              and np.all(options.spacecraft[w.options] == craft)]
     need = next((r for r in terms.recurrences if r.name == fleet.names[craft] and not r.request), None)
-    weight, spill = float(fleet.weight[craft]), problem.spill_cost_per_mb
-    capacity, generation = float(fleet.capacity_mb[craft]), float(fleet.generation_mb_per_s[craft])
+    layers = problem.layers[craft]
     starts = sorted({int(options.start_s[o]) for o in mine})
     waiting: dict[int, list[_State]] = {0: [_State(
-        float(fleet.start_fill_mb[craft]), 0.0, frozenset(), float(need.from_s) if need else 0.0, -1)]}
+        tuple(layer.start_mb for layer in layers), 0.0, frozenset(), float(need.from_s) if need else 0.0, -1)]}
 
-    def run(state: _State, from_s: int, until_s: int, pieces: list[tuple[int, int, float]]) -> tuple[float, float]:
+    def run(state: _State, from_s: int, until_s: int, pieces: list[_Piece]) -> tuple[tuple[float, ...], float]:
         """Aboard and worth after a stretch of time with sending in ``pieces``."""
-        sent, lost, left = follow_storage(
-            until_s - from_s, state.aboard, generation, capacity, [(a - from_s, b - from_s, r) for a, b, r in pieces])
-        return left, state.worth + weight * sum(sent) - spill * lost
+        left, worth = [], state.worth
+        for layer, fill in zip(layers, state.aboard, strict=True):
+            sent, lost, after = _through(layer, fill, from_s, until_s, pieces)
+            worth += layer.weight * sent - layer.spill_cost * lost
+            left.append(after)
+        return tuple(left), worth
 
     here: list[_State] = []
     clock = 0
@@ -150,7 +158,7 @@ def _best_of(problem: Problem, terms: Terms, craft: int, price: Floats, point_pr
         moved = [_State(*run(s, clock, now, []), s.met, s.cover, s.last) for s in here]
         for since in sorted(t for t in waiting if t <= now):
             moved += [_State(*run(s, since, now, []), s.met, s.cover, s.last) for s in waiting.pop(since)]
-        here, clock = _useful(moved, now, weight, spill, apart, options.start_s), now
+        here, clock = _useful(moved, now, layers, apart, options.start_s), now
         for o in (o for o in mine if options.start_s[o] == now):
             span = slice(options.piece_offset[o], options.piece_offset[o + 1])
             pieces = list(zip(options.piece_start_s[span].tolist(), options.piece_end_s[span].tolist(),
@@ -168,8 +176,31 @@ def _best_of(problem: Problem, terms: Terms, craft: int, price: Floats, point_pr
                 if after[o] > end:
                     last = waiting[after[o]].pop()
                     waiting[after[o]].append(_State(*run(last, end, after[o], []), last.met, last.cover, last.last))
-    share = problem.left_worth_share * weight
-    return max(s.worth + share * s.aboard - point_price * _missed(s, wants, need) for s in here)
+    left_worth = [problem.left_worth_share * layer.weight for layer in layers]
+    return max(s.worth + sum(w * mb for w, mb in zip(left_worth, s.aboard, strict=True))
+               - point_price * _missed(s, wants, need) for s in here)
+
+
+def _through(
+    layer: Layer, fill: float, from_s: int, until_s: int, pieces: list[_Piece],
+) -> tuple[float, float, float]:
+    """MB sent and lost over a stretch of time, and what is aboard then."""
+    if layer.even:
+        sent, lost, left = follow_storage(
+            until_s - from_s, fill, float(layer.made_mb[-1] / layer.time_s[-1]), float(layer.room_mb[0]),
+            [(a - from_s, b - from_s, rate) for a, b, rate in pieces])
+        return sum(sent), lost, left
+    edges = sorted({float(from_s), float(until_s), *(float(t) for a, b, _ in pieces for t in (a, b)),
+                    *(t for t in layer.time_s.tolist() if from_s < t < until_s)})
+    lost = max(0.0, fill - float(layer.room(edges[0])))
+    fill, total = fill - lost, 0.0
+    for a, b in pairwise(edges):
+        rate = sum(r for start_s, end_s, r in pieces if start_s <= a < end_s)
+        aboard = fill + float(layer.made(b) - layer.made(a))
+        sent_mb = min(aboard, rate * (b - a))
+        fill = min(aboard - sent_mb, float(layer.room(b)))
+        total, lost = total + sent_mb, lost + aboard - sent_mb - fill
+    return total, lost, fill
 
 
 def _covered(need: Recurrence | None, option: int, now: int, cover: float) -> tuple[float, float]:
@@ -207,7 +238,7 @@ def _order(terms: Terms, craft: int, mine: list[int], problem: Problem) -> tuple
 
 
 def _useful(
-    states: list[_State], now: int, weight: float, spill: float, apart: dict[int, set[int]], start_s: Integers,
+    states: list[_State], now: int, layers: Sequence[Layer], apart: dict[int, set[int]], start_s: Integers,
 ) -> list[_State]:
     """Without states that another one makes useless: met and covered as much, and ahead for every MB of difference."""
     free = [all(start_s[p] < now for p in apart.get(s.last, ())) for s in states]
@@ -216,8 +247,9 @@ def _useful(
         x, y = states[j], states[k]
         if not free[j] or not x.met >= y.met or x.cover < y.cover:
             return False
-        more = y.aboard - x.aboard
-        return x.worth - y.worth >= (weight * more if more > 0.0 else -spill * more)
+        lacks = sum(layer.weight * max(0.0, b - a) + layer.spill_cost * max(0.0, a - b)
+                    for layer, a, b in zip(layers, x.aboard, y.aboard, strict=True))
+        return x.worth - y.worth >= lacks
 
     # Of two that beat each other, the first one stays.
     return [y for k, y in enumerate(states)

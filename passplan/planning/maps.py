@@ -12,7 +12,7 @@ max(0, fill + d - capacity)), because a MB more aboard is either sent (the stora
 changes in a straight line over the step counts as it is at the end. (Own derivation; tests compare it with the
 event by event accounts.)
 
-There is one map for every option and layer (see ``streams.py``) of its spacecraft. Contacts of a spacecraft with
+There is one map for every option and layer (see ``layering.py``) of its spacecraft. Contacts of a spacecraft with
 several links may overlap, and their maps do not follow one another: its layers are followed event by event instead.
 """
 

@@ -1,6 +1,6 @@
 """The plan as a mixed-integer program, built from arrays in a few large blocks.
 
-Columns: one 0/1 per option; for each layer of a spacecraft's storage (see ``streams.py``), at every instant where
+Columns: one 0/1 per option; for each layer of a spacecraft's storage (see ``layering.py``), at every instant where
 the sending of one of its options starts or ends, or generation changes meanwhile, the fill, and between two of them
 what is sent and what is lost; slack for requirements.
 Rows: "at most one" per maximal clique of every lane; the linear limits of rules; the storage balance between

@@ -21,7 +21,6 @@ from passplan.planning.problem import Limits, Problem
 from passplan.planning.result import OPTIMAL_GAP, PlanResult, Proof, Tier, relative_gap, status_of
 from passplan.planning.rules import RULES, all_terms
 from passplan.planning.rules.terms import Rule, Terms
-from passplan.planning.search.fleetarrays import can_search
 from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.several_links import arrays_of, search_all
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
@@ -97,7 +96,7 @@ def _plan_part(
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         arrays = None
-        if len(problem.options) > limits.exact_options and can_search(problem) and compiled_in_time(clock):
+        if len(problem.options) > limits.exact_options and compiled_in_time(clock):
             arrays = arrays_of(problem, terms, maps)
         began_s = clock.elapsed_s()
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")
@@ -130,7 +129,7 @@ def _plan_part(
             if solved.chosen is None or not news:
                 break
             overrated += news
-    if open_still() and can_search(problem) and compiled_in_time(clock):
+    if open_still() and compiled_in_time(clock):
         with clock.stage("search"):
             base = problem.base_worth
             # A plan of this size has to be checked and tidied too: as long as the first one took, about.

@@ -14,8 +14,9 @@ from typing import Literal, TypeVar
 import numpy as np
 
 from passplan.planning.arrays import Floats, Integers, freeze
+from passplan.planning.layering import is_loose, layers_of
 from passplan.planning.option_table import Options
-from passplan.planning.streams import Keeping, Layer, Stream, is_loose, layers_of, steady
+from passplan.planning.streams import Keeping, Layer, Stream, steady
 
 N = TypeVar("N")
 Service = Literal["downlink", "command", "both"]
@@ -46,9 +47,9 @@ class Fleet:
         freeze(self)
 
     def weighed(self, parts: Sequence[tuple[Fleet, float]]) -> Fleet:
-        """The same spacecraft with the weighted sum of the weights of ``parts``, which differ in weights alone."""
+        """The same spacecraft with the weighted sum of the weights of ``parts``: the same ones times a factor."""
         streams = tuple(
-            tuple(replace(one, weight=sum(share * part.streams[i][k].weight for part, share in parts))
+            tuple(replace(one, weight=sum(share * part.streams[i][k].weight for part, share in parts), ranked=one.rank)
                   for k, one in enumerate(own))
             for i, own in enumerate(self.streams))
         return replace(
@@ -64,7 +65,7 @@ class Fleet:
 
     @cached_property
     def loose(self) -> frozenset[int]:
-        """Spacecraft of which layers tell no more than a ceiling; see :mod:`passplan.planning.streams`."""
+        """Spacecraft of which layers tell no more than a ceiling; see :mod:`passplan.planning.layering`."""
         return frozenset(
             k for k in range(len(self)) if self.streams_of(k) and is_loose(self.streams_of(k), self.keeping_of(k)))
 
@@ -194,13 +195,16 @@ class Problem:
 
     @cached_property
     def layers(self) -> tuple[tuple[Layer, ...], ...]:
-        """The storages that stand for each spacecraft (see :mod:`passplan.planning.streams`)."""
+        """The storages that stand for each spacecraft (see :mod:`passplan.planning.layering`).
+
+        What is left at the end is valued as if fresh, so that then nothing is taken to fade.
+        """
         fleet = self.fleet
         return tuple(
             layers_of(
                 fleet.streams_of(k) or (steady("", float(fleet.weight[k]), float(fleet.start_fill_mb[k]),
                                                float(fleet.generation_mb_per_s[k]), self.horizon_s),),
-                float(fleet.capacity_mb[k]), self.spill_cost_per_mb)
+                float(fleet.capacity_mb[k]), self.spill_cost_per_mb, by_level=self.left_worth_share == 0.0)
             for k in range(len(fleet)))
 
     @cached_property

@@ -20,10 +20,10 @@ from passplan.planning.occupancy import Occupancy
 from passplan.planning.parts import Part, part_of
 from passplan.planning.problem import Limits, Problem
 from passplan.planning.rules.terms import AtLeast, Removal, Rows, Terms, Wanted
-from passplan.planning.search.bound import lowest_ceiling
+from passplan.planning.search.bound import Hold, lowest_ceiling
 from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays, load_plan
-from passplan.planning.search.schedule import worth_of as counted_of
+from passplan.planning.search.schedule import total_worth
 from passplan.planning.shortfalls import find_shortfalls, total_points
 
 # The bound's share of the time.
@@ -46,7 +46,7 @@ def search_all(
     if arrays is None:
         return _search_beside(problem, terms, limits, clock, chosen, points, tell)
     if not len(arrays.option):
-        return Found(tuple(chosen), np.inf, None, 0, 0, np.zeros(0), ())
+        return Found(tuple(chosen), np.inf, None, 0, 0)
     return search_plan(arrays, terms, limits, clock, chosen, points, tell)
 
 
@@ -62,32 +62,65 @@ def _search_beside(
     bound = ceiling_without(
         problem, terms, limits, clock.part(_FOR_BOUND * clock.left_s()), chosen, points,
         lambda value, above: tell(value + kept_worth, above))
+    together = plan_beside(
+        problem, terms, limits, clock, chosen, lambda value, _: tell(value + kept_worth, bound))
+    return Found(tuple(together), bound, None, 0, 0)
+
+
+def plan_beside(
+    problem: Problem, terms: Terms, limits: Limits, clock: Clock, chosen: Sequence[int],
+    tell: Callable[[float, float], None], held: Sequence[tuple[Problem, float]] = (),
+) -> list[int]:
+    """The plan ``chosen`` improved, but for the contacts of spacecraft with several links.
+
+    ``held`` are other objectives that are not to be worse than now, each with a guess of what it is worth.
+    """
+    fixed = _of(problem, chosen, problem.fleet.links > 1)
     part = beside(problem, terms, fixed)
-    arrays = fleet_arrays(part.problem, part.terms, storage_maps(part.problem))
+    maps = storage_maps(part.problem)
+    arrays = fleet_arrays(part.problem, part.terms, maps)
     if not len(arrays.option):
-        return Found(tuple(chosen), bound, None, 0, 0, np.zeros(0), ())
+        return list(chosen)
     mine = _within(part, chosen)
+    taken, size = load_plan(arrays, mine)
+    holds = []
+    for other, guess in held:
+        theirs = fleet_arrays(_same_part(other), part.terms, maps)
+        holds.append((Hold(theirs, total_worth(theirs, taken, size)), guess))
     found = search_plan(
-        arrays, part.terms, limits, clock, mine, total_points(find_shortfalls(part.terms, mine)),
-        lambda value, _: tell(value + kept_worth, bound))
-    together = sorted([*fixed, *part.options[list(found.chosen)].tolist()])
-    return replace(found, chosen=tuple(together), bound=bound, certificate=None)
+        arrays, part.terms, limits, clock, mine, total_points(find_shortfalls(part.terms, mine)), tell, holds=holds)
+    return sorted([*fixed, *part.options[list(found.chosen)].tolist()])
 
 
 def ceiling_without(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, chosen: Sequence[int], points: float,
-    tell: Callable[[float, float], None],
+    tell: Callable[[float, float], None], held: Sequence[tuple[Problem, float, float]] = (),
 ) -> float:
-    """A bound of plans with ``points`` of shortfall at most, without the problem's ``base_worth``."""
-    part = without(problem, terms)
-    others = part_of(problem, Terms(), problem.fleet.links > 1, first=False).problem.ceiling
-    arrays = fleet_arrays(part.problem, part.terms, storage_maps(part.problem))
+    """A bound of plans with ``points`` of shortfall at most, without the problem's ``base_worth``.
+
+    ``held`` are other objectives, the least that each is to come to with its ``base_worth``, and a guess of what it is
+    worth.
+    """
+    part, others = without(problem, terms), _most_of_others(problem)
+    maps = storage_maps(part.problem)
+    arrays = fleet_arrays(part.problem, part.terms, maps)
     if not len(arrays.option):
         return part.problem.ceiling - part.problem.base_worth + others
     taken, size = load_plan(arrays, _within(part, chosen))
-    counted = sum(counted_of(arrays, i, taken[i], size[i])[1] for i in range(len(size)))
+    holds = [(Hold(fleet_arrays(_same_part(other), part.terms, maps),
+                   least - other.base_worth - _most_of_others(other)), guess) for other, least, guess in held]
     return others + lowest_ceiling(
-        arrays, taken, size, points - counted, limits.threads, clock, lambda value, above: tell(value, above + others))
+        arrays, taken, size, points, limits.threads, clock, lambda value, above: tell(value, above + others), holds)
+
+
+def _most_of_others(problem: Problem) -> float:
+    """The most that spacecraft with several links can come to."""
+    return part_of(problem, Terms(), problem.fleet.links > 1, first=False).problem.ceiling
+
+
+def _same_part(problem: Problem) -> Problem:
+    """An objective over the options of spacecraft with one link."""
+    return part_of(problem, Terms(), problem.fleet.links == 1, first=True).problem
 
 
 def without(problem: Problem, terms: Terms) -> Part:

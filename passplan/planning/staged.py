@@ -28,10 +28,10 @@ from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import Hold
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import FleetArrays, can_search, fleet_arrays
+from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
 from passplan.planning.search.forced import ruled_out
 from passplan.planning.search.ready import compiled_in_time
-from passplan.planning.several_links import ceiling_without, search_all
+from passplan.planning.several_links import ceiling_without, plan_beside, without
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -85,6 +85,7 @@ class _Staged:
         self.problem, self.terms, self.limits, self.clock, self.tell = problem, terms, limits, clock, tell
         self.aims = objectives(problem)
         self.maps = storage_maps(problem)
+        self.several = bool(np.any(problem.fleet.links > 1))
         self.arrays: dict[int, FleetArrays] = {}
         # The objective that the search has last looked at, its prices, and those of what was held.
         self.prices: tuple[int, Floats, tuple[float, ...]] | None = None
@@ -122,11 +123,14 @@ class _Staged:
 
     def _rule_out(self) -> None:
         """Leave out the options that no plan with as few points has, where the search is to look through them."""
-        count = len(self.problem.options)
-        by_search = count > self.limits.exact_options and can_search(self.problem)
-        if by_search and not np.any(self.problem.fleet.links > 1) and compiled_in_time(self.clock):
-            removal = ruled_out(self._arrays(0), self.best.points)
-            self.terms += Terms(removals=(removal,))
+        if len(self.problem.options) > self.limits.exact_options and compiled_in_time(self.clock):
+            part = without(self.aims[0].problem, self.terms) if self.several else None
+            arrays = self._arrays(0) if part is None else fleet_arrays(
+                part.problem, part.terms, storage_maps(part.problem))
+            out = ruled_out(arrays, self.best.points)
+            if part is not None:
+                out = replace(out, options=part.options[out.options])
+            self.terms += Terms(removals=(out,))
             self.arrays.clear()
 
     def _aim(self, k: int) -> float:
@@ -154,9 +158,9 @@ class _Staged:
 
     def _search(self, k: int, time: Clock, bound: float) -> float:
         """Improve one objective by the search and return the bound that this proves."""
-        if not (can_search(self.problem) and compiled_in_time(time)):
+        if not compiled_in_time(time):
             return bound
-        if np.any(self.problem.fleet.links > 1):
+        if self.several:
             return self._search_beside(k, time, bound)
         arrays = self._arrays(k)
         if not len(arrays.option):
@@ -176,18 +180,17 @@ class _Staged:
         return found.bound + base
 
     def _search_beside(self, k: int, time: Clock, bound: float) -> float:
-        """The same where a spacecraft has several links: by a sum that hardly gives up what is held.
-
-        The bound is that of the objective alone, whatever the others come to.
-        """
-        aim, points = self.aims[k].problem, self.best.points
-        above = ceiling_without(
-            aim, self.terms, self.limits, time.part(_FOR_BOUND * time.left_s()), self.best.chosen, points,
-            lambda _, above: self._say(k, min(bound, above + aim.base_worth))) + aim.base_worth
-        found = search_all(
-            self._sum(k), self.terms, None, replace(self.limits, gap=0.0), time, self.best.chosen, points,
-            lambda _value, _bound: self._say(k, min(bound, above)))
-        self._offer(found.chosen, "search")
+        """The same where spacecraft have several links, which keep what they have; see ``several_links.py``."""
+        aim, best = self.aims[k].problem, self.best
+        guess, _ = self._guess(k)
+        held = list(zip([aim.problem for aim in self.aims[:k]], best.reached, guess, strict=False))
+        above = min(bound, aim.base_worth + ceiling_without(
+            aim, self.terms, self.limits, time.part(_FOR_BOUND * time.left_s()), best.chosen, best.points,
+            lambda _, above: self._say(k, min(bound, above + aim.base_worth)), held))
+        chosen = plan_beside(
+            aim, self.terms, replace(self.limits, gap=0.0), time, best.chosen,
+            lambda _value, _bound: self._say(k, above), [(other, share) for other, _, share in held])
+        self._offer(chosen, "search")
         return above
 
     def _arrays(self, k: int) -> FleetArrays:

@@ -1,20 +1,6 @@
-"""What a spacecraft generates, class by class, and its classes as layers that can be planned one by one.
+"""What a spacecraft generates, class by class, how its storage keeps that, and the storages that stand for it.
 
-A spacecraft sends the class that is worth most first, and when its storage is full it loses what is worth
-least. Then the classes 1..k together (by falling weight) neither notice the classes below them nor care which
-of them a MB belongs to: their joint amount follows the equations of a single class with their joint generation
-and the whole capacity. With D(k) for what the classes 1..k deliver together, the worth is
-
-    sum of w(k) (D(k) - D(k-1)) = sum of (w(k) - w(k+1)) D(k),   w after the last class = 0
-
-so that a spacecraft with K classes is K independent storages, its layers: layer k holds the classes 1..k and is
-worth w(k) - w(k+1) a MB; what overflows costs in the last one alone, which holds everything. (Own derivation;
-``classes.py`` follows the classes themselves, and tests compare.)
-
-A deadline limits what can be aboard of a class to what was acquired within it. As the oldest data goes first, a
-single class with a deadline is exactly a storage of that capacity, which changes with time. Of several classes, of
-worth that fades and of storage freed late the layers know less: they allow at least what is possible, so that bounds
-hold, and :attr:`~passplan.planning.problem.Fleet.loose` tells which spacecraft they may overrate.
+``classes.py`` says what the classes mean, ``layering.py`` how layers are made of them.
 """
 
 from __future__ import annotations
@@ -47,7 +33,8 @@ class Stream:
 
     It is dropped ``deadline_s`` after it was acquired. Up to the age ``age_s`` (from 0, rising) it is worth
     ``share`` of its weight, in straight lines, two points at one age being a step; the last share holds on. The
-    start fill was acquired evenly over ``start_age_s`` before the start.
+    start fill was acquired evenly over ``start_age_s`` before the start. ``ranked`` is the weight by which it ranks
+    among the others, where that is not ``weight``.
     """
 
     name: str
@@ -59,9 +46,15 @@ class Stream:
     start_age_s: float = 0.0
     fresh_age_s: Floats = field(default_factory=lambda: np.zeros(1))
     fresh_share: Floats = field(default_factory=lambda: np.ones(1))
+    ranked: float | None = None
 
     def __post_init__(self) -> None:
         freeze(self)
+
+    @property
+    def rank(self) -> float:
+        """The weight by which it ranks among the others."""
+        return self.weight if self.ranked is None else self.ranked
 
     @property
     def fades(self) -> bool:
@@ -156,31 +149,3 @@ def is_loose(streams: Sequence[Stream], keeping: Keeping) -> bool:
     ages = any(math.isfinite(one.deadline_s) for one in streams)
     return (ages and (len(streams) > 1 or keeping.newest)) or any(one.fades for one in streams) or bool(
         keeping.acknowledged)
-
-
-def layers_of(streams: Sequence[Stream], capacity_mb: float, spill_cost: float) -> tuple[Layer, ...]:
-    """The layers of classes given by falling weight, one for each, so that they stay alike when weights change."""
-    layers = []
-    for k, stream in enumerate(streams):
-        last = k == len(streams) - 1
-        weight = stream.weight - (0.0 if last else streams[k + 1].weight)
-        if weight < 0.0:
-            raise ValueError(f"{streams[k + 1].name} is worth more than {stream.name}; sort classes by falling weight")
-        inside = streams[: k + 1]
-        time_s = _with_crossings(np.unique(np.concatenate([one.edges() for one in inside])), inside, capacity_mb)
-        made_mb = np.sum([one.made(time_s) for one in inside], axis=0)
-        room_mb = np.minimum(capacity_mb, np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0))
-        layers.append(Layer(
-            weight, spill_cost if last else 0.0, float(sum(one.start_mb for one in inside)), time_s, made_mb, room_mb))
-    return tuple(layers)
-
-
-def _with_crossings(time_s: Floats, inside: Sequence[Stream], capacity_mb: float) -> Floats:
-    """``time_s`` and the instants at which what is fit to deliver crosses the capacity."""
-    fit_mb = np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0)
-    if not np.all(np.isfinite(fit_mb)):
-        return time_s
-    above = fit_mb - capacity_mb
-    at = np.flatnonzero(above[:-1] * above[1:] < 0.0)
-    crossing = time_s[at] + (time_s[at + 1] - time_s[at]) * above[at] / (above[at] - above[at + 1])
-    return np.unique(np.concatenate([time_s, crossing]))

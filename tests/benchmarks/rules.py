@@ -19,7 +19,7 @@ from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
-from house import House, priced, published
+from house import House, backed, priced, published
 from optimiser import read_instance
 
 from passplan.planning.clock import Clock
@@ -52,7 +52,10 @@ def breach(problem: Problem, chosen: np.ndarray) -> str:
     if fault is not None:
         return fault
     points = total_points(find_shortfalls(terms, chosen))
-    return f"{points:.2f} points of shortfall" if points > 0.0 else ""
+    if points > 0.0:
+        return f"{points:.2f} points of shortfall"
+    missed_mb = sum(one.missed_mb for own in account(problem, chosen).classes for one in own)
+    return f"{missed_mb:.0f} MB dropped at their deadline" if missed_mb > 0.0 else ""
 
 
 def report(result: PlanResult) -> None:
@@ -90,14 +93,16 @@ def main() -> None:
     parser.add_argument("--cost-rounds", type=int, default=4, help="rounds of search for each rule of --costs")
     parser.add_argument("--without", nargs="*", default=[], help="rules that are left off, by name")
     args = parser.parse_args()
-    base = priced(read_instance(args.instance))
+    base = priced(backed(read_instance(args.instance)))
     free = greedy(base)
     house = House(base, free, np.random.default_rng(args.seed)).rules()
     house = {name: rule for name, rule in house.items() if name not in args.without}
     print(f"{len(base.options)} options; {len(house) + 1} rules")
-    for name, rule in house.items():
-        why = breach(rule(base), free)
+    binds = {name: breach(rule(base), free) for name, rule in house.items()}
+    for name, why in binds.items():
         print(f"  {name:20s} " + (f"binds: the plan without rules has {why}" if why else "is kept by the plan without"))
+    if "handover" not in house:
+        print("  links, handover      are left off: nowhere does a second antenna see a spacecraft on from the first")
 
     def with_all(left_off: str = "") -> Problem:
         problem = base
@@ -118,8 +123,13 @@ def main() -> None:
     print(f"{result.status} by {result.path}, {len(result.chosen)} contacts, {time.monotonic() - began:.1f} s in all, "
           f"peak memory {resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1e6:.2f} GB")
     report(result)
-    print(f"  two at once on the antenna with beams: "
-          f"{'yes' if breach(base, np.array(result.chosen, dtype=np.int64)) else 'no'}")
+    for name in (name for name, why in binds.items() if not why):
+        # A rule that allows more binds where the plan makes use of it.
+        used = first_conflict(all_terms(with_all(name)), len(base.options), result.chosen)
+        binds[name] = used or ""
+        print(f"  {name:20s} " + (f"binds: without it {used}" if used else "does not bind"))
+    idle = ", ".join(name for name, why in binds.items() if not why)
+    print(f"  rules that do not bind: {idle or 'none'}")
     if args.costs:
         limits = Limits(0.0, 600.0, args.threads, args.seed, search_rounds=args.cost_rounds)
         value, points = searched(published(ruled, plan), result.chosen, limits)

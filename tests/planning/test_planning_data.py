@@ -12,10 +12,11 @@ from hypothesis import strategies as st
 from planning_cases import problem_of, some_of
 
 from passplan.planning.classes import follow
+from passplan.planning.layering import layers_of
 from passplan.planning.maps import storage_maps, worth_of
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits, Problem
-from passplan.planning.streams import Keeping, Stream, layers_of, steady
+from passplan.planning.streams import Keeping, Stream, steady
 from passplan.planning.value import account, follow_storage
 
 Pieces = list[tuple[int, int, float]]

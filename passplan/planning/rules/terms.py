@@ -10,10 +10,12 @@ kind         says                                     model                     
 Removal      these options cannot be used             never in the model              never a candidate
 Lane         at most one option at a time             one row per maximal clique      busy intervals; prices
 Rows         amounts add up to at most a limit        the rows                        running loads; prices
-Wanted       one of these options, or a shortfall     covering row with slack         bit of a label
+Wanted       one of these options, or a shortfall     covering row with slack         bit of a label (1)
 Recurrence   covered time, or a shortfall             counting rows with slack        last end in a label
-AtLeast      amounts add up to a need, or shortfall   covering row with slack         kept as it is found
+AtLeast      amounts add up to a need, or shortfall   covering row with slack         totals; rewards
 ===========  =======================================  ==============================  =====================
+
+(1) Where several spacecraft could meet it: totals and rewards, as of what they owe together.
 
 Shortfalls are counted in points and are minimised before any value is looked at (tier 1).
 """

@@ -62,6 +62,15 @@ def give(at: Integers, to: Integers, share: Floats, taken: Integers, size: int, 
             given[to[e]] += sign * share[e]
 
 
+@compiled
+def given_by(dues: Dues, taken: Integers, size: Integers) -> Floats:
+    """What a plan gives to each due, shape (d,)."""
+    given = np.zeros(len(dues.points))
+    for i in range(len(size)):
+        give(dues.at, dues.to, dues.share, taken[i], size[i], 1.0, given)
+    return given
+
+
 @inlined
 def missed(points: Floats, given: Floats) -> float:
     """Points of all dues, with so much given to each."""
@@ -74,8 +83,5 @@ def missed(points: Floats, given: Floats) -> float:
 
 def points_missed(dues: Dues, taken: Integers, size: Integers) -> float:
     """Points of all dues of a whole plan."""
-    given = np.zeros(len(dues.points))
-    for i in range(len(size)):
-        give(dues.at, dues.to, dues.share, taken[i], size[i], 1.0, given)
-    missing = np.maximum(0.0, 1.0 - given)
+    missing = np.maximum(0.0, 1.0 - given_by(dues, taken, size))
     return float(dues.points @ np.where(missing > _MET, missing, 0.0))

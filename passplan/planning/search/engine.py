@@ -15,31 +15,26 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import partial
 
 import numpy as np
 
-from passplan.planning.arrays import Flags, Floats, Integers
+from passplan.planning.arrays import Floats, Integers
 from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.problem import Limits
 from passplan.planning.result import OPTIMAL_GAP, relative_gap
 from passplan.planning.rules.terms import Terms
-from passplan.planning.search.bound import (
-    BoundSearch,
-    Hold,
-    Sweeper,
-    certificate_of,
-    option_prices,
-    total_points,
-    total_worth,
-    units,
-)
+from passplan.planning.search.bound import BoundSearch, Hold, certificate_of
 from passplan.planning.search.dues import points_missed
 from passplan.planning.search.fleetarrays import FleetArrays, blended, load_plan, unload_plan
+from passplan.planning.search.grounds import Grounds
 from passplan.planning.search.labels import make_work
+from passplan.planning.search.prices import option_prices, units
 from passplan.planning.search.rebuild import Ground, rebuild
+from passplan.planning.search.schedule import total_points, total_worth
+from passplan.planning.search.sweep import Sweeper
 
 # A round is about this many labels: some tenths of a second.
 _ROUND_LABELS = 4_000_000
@@ -57,9 +52,6 @@ _PATIENCE_ROUNDS = 80
 _LEAST_PART = 20
 # So many steps of the bound first: prices overshoot before they are of use. Then it moves every so many rounds or more.
 _FIRST_SWEEPS, _BOUND_EVERY = 60, 5
-# After them, ceilings may be loose by this part of the gap, of what a contact is worth, which makes sweeps faster. At
-# prices near nothing it would fill schedules with contacts that bring nothing down.
-_LOOSE = 0.001
 # Of each round only contacts that start within so many seconds of one another are rebuilt: a little time of many
 # spacecraft is looked through more often than all of it. None: the whole horizon.
 _SPANS_S = (28_800, 14_400, None)
@@ -71,8 +63,6 @@ _SAME_POINTS = 1e-9
 _HELD = 1e-6
 # The least reward for a due that is not met, in contacts for each contact that meets it.
 _LEAST_REWARD = 0.1
-# Free cliques are dealt out in runs of neighbours, as a contact needs several of them.
-_RUN = 64
 
 
 @dataclass(frozen=True, eq=False)
@@ -88,8 +78,8 @@ class Found:
     certificate: PriceCertificate | None
     rounds: int
     left_alone: int
-    price: Floats
-    hold_price: tuple[float, ...]
+    price: Floats = field(default_factory=lambda: np.zeros(0))
+    hold_price: tuple[float, ...] = ()
 
 
 def search_plan(
@@ -117,7 +107,7 @@ class _Rounds:
         self.workers = max(2, threads)
         self.taken, self.size = load_plan(arrays, start)
         fixed = np.array([bool(arrays.uncounted[self.taken[i, : self.size[i]]].any()) for i in range(len(self.size))])
-        self.movable = ~fixed
+        self.movable, self.grounds = ~fixed, Grounds(arrays, ~fixed)
         self.holds, self.shares = [hold for hold, _ in holds], np.array([share for _, share in holds])
         self._blend()
         self.sweeper = Sweeper(arrays, max(1, threads - 1), pool if threads > 2 else None, clock)
@@ -135,10 +125,6 @@ class _Rounds:
         self._blend()
         self.swept = 0
         self.bound_rate = self.value_rate = 0.0
-        option = np.repeat(np.arange(len(arrays.option)), np.diff(arrays.load_at))
-        self.row_craft = _only_craft(arrays, option, arrays.load_row, len(arrays.limit))
-        option = np.repeat(np.arange(len(arrays.option)), np.diff(arrays.dues.at))
-        self.due_craft = _only_craft(arrays, option, arrays.dues.to, len(arrays.dues.points))
 
     def run(self, terms: Terms, clock: Clock, tell: Callable[[float, float], None] | None) -> Found:
         effort = 1 + _LABELS_PER_OPTION * len(self.arrays.option) + len(self.arrays.start_s)
@@ -166,7 +152,6 @@ class _Rounds:
             gap = relative_gap(self.value, self.bounds.bound)
             if gap <= max(self.limits.gap, OPTIMAL_GAP) or idle > _PATIENCE_ROUNDS:
                 break
-        self.bounds.settle()
         return Found(
             tuple(unload_plan(self.arrays, *self.best)), self.bounds.bound,
             certificate_of(self.arrays, terms, self.bounds), rounds, int((~self.movable).sum()),
@@ -203,10 +188,9 @@ class _Rounds:
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
         prices = option_prices(self.arrays, self.bounds.guide, dues=False)
+        grounds = [self.grounds.whole()]
         if sweeps == 0 and self.movable.sum() >= _LEAST_PART:
-            grounds = self._parts(number)
-        else:
-            grounds = [Ground(self.movable, *self._everything())]
+            grounds = self.grounds.dealt_out(self.workers, (self.limits.seed, number))
         jobs = [partial(self._rebuild, number, k, effort, prices, ground) for k, ground in enumerate(grounds)]
         if self.threads == 1:
             results = [job() for job in jobs]
@@ -222,8 +206,6 @@ class _Rounds:
     def _improve(self, sweeps: int) -> int:
         if sweeps == 0:
             return 0
-        gap = relative_gap(self.value, self.bounds.bound) if np.isfinite(self.bounds.bound) else 0.0
-        self.bounds.slack = _LOOSE * min(1.0, gap) * self._contact_worth() if self.swept >= _FIRST_SWEEPS else 0.0
         self.swept += sweeps
         before = sum(int(work.spent[0]) for work in self.sweeper.work)
         self.bounds.improve(sweeps, self.value)
@@ -247,24 +229,6 @@ class _Rounds:
         unit = units(self.arrays)[-dues:] if dues else np.zeros(0)
         paid = -self.bounds.best_price[-dues:] if dues else np.zeros(0)
         return np.asarray(np.maximum(paid, _LEAST_REWARD * self._contact_worth()) / unit)
-
-    def _everything(self) -> tuple[Flags, Flags, Flags]:
-        counts = self.arrays.cliques, len(self.arrays.limit), len(self.arrays.dues.points)
-        cliques, rows, dues = (np.ones(n, dtype=bool) for n in counts)
-        return cliques, rows, dues
-
-    def _parts(self, number: int) -> list[Ground]:
-        """The fleet, the free cliques, the rows and the dues dealt out at random, one part to each worker.
-
-        What is a matter of one spacecraft goes with it.
-        """
-        rng = np.random.default_rng((self.limits.seed, number))
-        counts = len(self.size), self.arrays.cliques // _RUN + 1, len(self.arrays.limit), len(self.arrays.dues.points)
-        crafts, runs, rows, dues = (rng.integers(0, self.workers, n) for n in counts)
-        cliques = np.repeat(runs, _RUN)[: self.arrays.cliques]
-        for owner, mine in ((rows, self.row_craft), (dues, self.due_craft)):
-            owner[mine >= 0] = crafts[mine[mine >= 0]]
-        return [Ground((crafts == k) & self.movable, cliques == k, rows == k, dues == k) for k in range(self.workers)]
 
     def _learn(self, before: tuple[float, float], with_bound: bool) -> None:
         """Follow what a round's work gains on either side."""
@@ -292,17 +256,8 @@ class _Rounds:
         if self.points <= 0.0:
             return self.point_worth, False
         if not len(arrays.dues.to):
-            at = self.sweeper(np.zeros(len(units(arrays))), self.point_worth, 0.0, arrays)
+            at = self.sweeper(np.zeros(len(units(arrays))), self.point_worth, arrays)
             if at is None or (
                     self.points <= at.points.sum() + points_missed(arrays.dues, at.taken, at.size) + _SAME_POINTS):
                 return self.point_worth, False
         return float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0)), True
-
-
-def _only_craft(arrays: FleetArrays, option: Integers, group: Integers, groups: int) -> Integers:
-    """The spacecraft of all options of each group, shape (groups,), -1 where they are of several."""
-    craft = np.searchsorted(arrays.first, option, side="right") - 1
-    low, high = np.full(groups, len(arrays.craft)), np.full(groups, -1)
-    np.minimum.at(low, group, craft)
-    np.maximum.at(high, group, craft)
-    return np.where(low == high, low, -1)

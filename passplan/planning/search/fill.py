@@ -12,8 +12,8 @@ from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.clock import Clock
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import FleetArrays
-from passplan.planning.search.rebuild import hold, is_free, load
-from passplan.planning.search.schedule import worth_of
+from passplan.planning.search.holding import enter, hold, is_free, load
+from passplan.planning.search.schedule import worth_of, worths_of
 
 # Options looked at between two looks at the clock: some tenths of a second at most.
 _AT_A_TIME = 100_000
@@ -25,7 +25,8 @@ def fill_up(arrays: FleetArrays, room: Floats, taken: Integers, size: Integers, 
     ``room`` (r,) is each row's limit, with what rounding it is allowed.
     """
     holder = np.full(arrays.cliques + 1, -1, dtype=np.int64)
-    worth = begin(arrays, taken, size, holder, room)
+    enter(arrays, taken, size, np.ones(len(room), dtype=bool), holder, room)
+    worth, _ = worths_of(arrays, taken, size)
     keys = keys_of(arrays)
     heap = np.flatnonzero(free_now(arrays, holder, room) & (keys > 0.0))
     heap = heap[np.argsort(-keys[heap], kind="stable")]
@@ -42,19 +43,12 @@ def keys_of(arrays: FleetArrays) -> Floats:
     end = np.clip(capacity + arrays.maps[:, 0], arrays.maps[:, 1], arrays.maps[:, 2])
     lost = arrays.maps[:, 3] + np.maximum(0.0, capacity - arrays.maps[:, 4])
     sent = capacity + arrays.maps[:, 5] - end - lost
+    # With classes, of which one may hold less than there is: all that the link carries.
+    piece, owner = arrays.classes.piece, np.repeat(np.arange(len(craft)), np.diff(arrays.classes.piece_first))
+    carried = np.bincount(owner, weights=(piece[:, 1] - piece[:, 0]) * piece[:, 2], minlength=len(craft))
+    sent = np.where(np.diff(arrays.layers.first)[craft] > 0, carried, sent)
     keys: Floats = sent * (arrays.craft[craft, 0] + arrays.spill) - arrays.cost
     return keys
-
-
-@compiled
-def begin(a: FleetArrays, taken: Integers, size: Integers, holder: Integers, room: Floats) -> Floats:
-    """Enter a plan into ``holder`` and ``room``; returns the worth of each spacecraft."""
-    worth = np.zeros(len(size))
-    for i in range(len(size)):
-        worth[i], _ = worth_of(a, i, taken[i], size[i])
-        hold(a, taken[i], size[i], holder, i)
-        load(a, taken[i], size[i], room, -1.0)
-    return worth
 
 
 @compiled

@@ -15,7 +15,7 @@ marks the options concerned, so that the search leaves a spacecraft alone that u
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from typing import NamedTuple
 
 import numpy as np
@@ -27,11 +27,12 @@ from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import Lane, Terms
 from passplan.planning.search.clash import find_clashes
 from passplan.planning.search.dues import Dues, dues_of
+from passplan.planning.search.layerarrays import ClassArrays, LayerArrays, class_arrays, layer_arrays
+from passplan.planning.search.needarrays import recurrences, wanted
+from passplan.planning.search.rowarrays import loads, own_loads
 
-# Wanted terms of one spacecraft are bits of one integer.
-_MOST_WANTED = 60
-# Columns of ``craft`` that say what a MB is worth.
-_WORTHS = (0, 4)
+# Columns of ``craft``, ``layers.layer`` and ``classes.one`` that are worths.
+_CRAFT_WORTHS, _LAYER_WORTHS, _CLASS_WORTHS = (0, 4), (0, 1, 2), (0, 4)
 # Amounts are sums of decimals; a limit reached to within this part of it is kept (the judge allows ten times more).
 ROUNDING = 1e-10
 
@@ -56,9 +57,9 @@ class FleetArrays(NamedTuple):
 
     ``wants`` (n, 60) are the points of each bit, ``wants_until`` the last start [s] that meets it; ``recur`` (n, 3)
     from, until and points per second of the recurrence (until 0 where there is none). ``clique_lane`` and ``clique_s``
-    say of each clique which of the terms' lanes it is
-    of, and at which instant all its options hold it. No spacecraft can have more than ``most_contacts``.
-    ``dues`` are requirements that several contacts meet together.
+    say of each clique which of the terms' lanes it is of, and at which instant all its options hold it. No spacecraft
+    can have more than ``most_contacts``. ``dues`` are requirements that several contacts meet together, ``layers`` and
+    ``classes`` those of spacecraft with classes of data, see ``dues.py`` and ``layerarrays.py``.
     """
 
     option: Integers
@@ -93,11 +94,8 @@ class FleetArrays(NamedTuple):
     clique_s: Integers
     most_contacts: int
     dues: Dues
-
-
-def can_search(problem: Problem) -> bool:
-    """Whether the search's schedule program follows the storage of all with one link: one class of data, one rate."""
-    return not any(problem.fleet.streams_of(k) for k in np.flatnonzero(problem.fleet.links == 1).tolist())
+    layers: LayerArrays
+    classes: ClassArrays
 
 
 def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays:
@@ -122,9 +120,9 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         arrival[mine] = np.searchsorted(distinct, ready_s[mine])
         starts.append(distinct)
     use_at, use_first, use_last, clique_lane, clique_s = _uses(shared, place, len(order))
-    bits, wants, wants_until, shared_wants = _wanted(problem, terms, place, len(order))
-    renews, recur, uncounted = _recurrences(problem, terms, place, len(order))
-    load_at, load_row, load_amount, limit = _loads(terms, place, len(order))
+    bits, wants, wants_until, shared_wants = wanted(problem, terms, place, len(order))
+    renews, recur, uncounted = recurrences(problem, terms, place, len(order))
+    load_at, load_row, load_amount, limit = loads(terms, place, len(order))
     craft_of = np.repeat(np.arange(len(fleet)), np.diff(first))
     clash = np.full(len(order), -1, dtype=np.int64)
     find_clashes(first, start_s, end_s, use_at, use_first, use_last, _longest_hold(problem, shared.values()), clash)
@@ -136,25 +134,40 @@ def fleet_arrays(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArra
         start_s=np.concatenate([*starts, np.zeros(0, dtype=np.int64)]), node=node, arrival=arrival,
         span=np.column_stack([start_s, end_s]),
         maps=np.column_stack([maps.shift_mb, maps.low_mb, maps.high_mb, maps.lost_at_empty_mb, maps.brim_mb,
-                              maps.generated_mb])[order],
+                              maps.generated_mb])[maps.first_row[order]],
         cost=problem.price[order], bits=bits, renews=renews, uncounted=uncounted,
         use_at=use_at, use_first=use_first, use_last=use_last, clash=clash, load_at=load_at, load_row=load_row,
-        load_amount=load_amount, load_own=_own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
+        load_amount=load_amount, load_own=own_loads(craft_of, node, arrival, load_at, load_row), limit=limit,
         wants=wants, wants_until=wants_until, recur=recur, horizon_s=problem.horizon_s,
         spill=problem.spill_cost_per_mb, cliques=len(clique_s), clique_lane=clique_lane, clique_s=clique_s,
         most_contacts=_longest_chain(first, node, arrival),
-        dues=dues_of(terms.guarantees, [(k, terms.wanted[k]) for k in shared_wants], place, len(order)))
+        dues=dues_of(terms.guarantees, [(k, terms.wanted[k]) for k in shared_wants], place, len(order)),
+        layers=layer_arrays(problem, maps, order, first, starts, arrival), classes=class_arrays(problem, order))
 
 
 def blended(parts: Sequence[tuple[FleetArrays, float]]) -> FleetArrays:
-    """The arrays of the weighted sum of objectives over the same options, as ``tiers.staged`` has it."""
+    """The arrays of the weighted sum of objectives over the same options, as ``tiers.staged`` has it.
+
+    All that an objective says of its own is worths: all of them are linear in its weights and its spill cost.
+    """
     first = parts[0][0]
-    craft = first.craft.copy()
-    for column in _WORTHS:
-        craft[:, column] = sum(share * part.craft[:, column] for part, share in parts)
+
+    def total(columns: tuple[int, ...], of: Callable[[FleetArrays], Floats]) -> Floats:
+        whole = of(first).copy()
+        for column in columns:
+            whole[:, column] = sum(share * of(part)[:, column] for part, share in parts)
+        return whole
+
     return first._replace(
-        craft=craft, cost=np.asarray(sum(share * part.cost for part, share in parts)),
-        spill=float(sum(share * part.spill for part, share in parts)))
+        craft=total(_CRAFT_WORTHS, lambda a: a.craft), cost=np.asarray(sum(share * part.cost for part, share in parts)),
+        spill=float(sum(share * part.spill for part, share in parts)),
+        layers=first.layers._replace(layer=total(_LAYER_WORTHS, lambda a: a.layers.layer)),
+        classes=first.classes._replace(one=total(_CLASS_WORTHS, lambda a: a.classes.one)))
+
+
+def at_their_word(arrays: FleetArrays) -> FleetArrays:
+    """The arrays with classes of data worth what their layers say, as the schedule program counts them."""
+    return arrays._replace(classes=arrays.classes._replace(loose=np.zeros_like(arrays.classes.loose)))
 
 
 def _own_and_shared(
@@ -216,78 +229,6 @@ def _longest_hold(problem: Problem, shared: Iterable[Lane]) -> int:
             before_s = max(before_s, int((options.start_s[lane.options] - lane.start_s).max()))
             after_s = max(after_s, int((lane.end_s - options.end_s[lane.options]).max()))
     return before_s + after_s
-
-
-def _wanted(
-    problem: Problem, terms: Terms, place: Integers, count: int,
-) -> tuple[Integers, Floats, Integers, list[int]]:
-    """Bits, points and last starts of wanted terms, and the numbers of those that are no matter of one spacecraft."""
-    bits, points = np.zeros(count, dtype=np.int64), np.zeros((len(problem.fleet), _MOST_WANTED))
-    until = np.full(points.shape, -1, dtype=np.int64)
-    used = np.zeros(len(problem.fleet), dtype=np.int64)
-    others = []
-    for k, want in enumerate(terms.wanted):
-        rows = place[want.options]
-        rows = rows[rows >= 0]
-        craft = np.unique(problem.options.spacecraft[want.options])
-        if len(craft) != 1 or len(rows) == 0 or used[craft[0]] >= _MOST_WANTED:
-            others.append(k)
-        else:
-            bits[rows] |= np.int64(1) << used[craft[0]]
-            points[craft[0], used[craft[0]]] = want.points
-            until[craft[0], used[craft[0]]] = problem.options.start_s[want.options].max()
-            used[craft[0]] += 1
-    return bits, points, until, others
-
-
-def _recurrences(
-    problem: Problem, terms: Terms, place: Integers, count: int,
-) -> tuple[Integers, Floats, Flags]:
-    """The first recurrence of each spacecraft; options of the others are marked."""
-    renews, recur = np.full(count, -1, dtype=np.int64), np.zeros((len(problem.fleet), 3))
-    uncounted = np.zeros(count, dtype=bool)
-    for need in terms.recurrences:
-        craft = problem.fleet.names.index(need.name)
-        kept = place[need.options] >= 0
-        if need.request or recur[craft, 1] > 0.0 or np.any(need.start_s != problem.options.start_s[need.options]):
-            uncounted[place[need.options[kept]]] = True
-            continue
-        renews[place[need.options[kept]]] = np.minimum(need.end_s[kept] + need.every_s, need.until_s)
-        recur[craft] = need.from_s, need.until_s, 1.0 / need.every_s
-    return renews, recur, uncounted
-
-
-def _loads(terms: Terms, place: Integers, count: int) -> tuple[Integers, Integers, Floats, Floats]:
-    """Rows of all terms end to end: entries option by option, rows rising within each, and the limits."""
-    option, row, amount = [np.zeros(0, dtype=np.int64)], [np.zeros(0, dtype=np.int64)], [np.zeros(0)]
-    base = 0
-    for rows in terms.rows:
-        option.append(place[rows.options])
-        row.append(base + np.repeat(np.arange(len(rows)), np.diff(rows.offset)))
-        amount.append(rows.amounts)
-        base += len(rows)
-    options, numbers, amounts = np.concatenate(option), np.concatenate(row), np.concatenate(amount)
-    kept = (options >= 0) & (amounts > 0.0)
-    options, numbers, amounts = options[kept], numbers[kept], amounts[kept]
-    order = np.lexsort((numbers, options))
-    limit = np.concatenate([np.zeros(0), *(rows.limit for rows in terms.rows)])
-    return offsets_of(np.bincount(options, minlength=count)), numbers[order], amounts[order], limit
-
-
-def _own_loads(
-    craft_of: Integers, node: Integers, arrival: Integers, load_at: Integers, load_row: Integers,
-) -> Flags:
-    """Which entries share their row with an option that one plan of the same spacecraft may hold beside this one."""
-    option = np.repeat(np.arange(len(load_at) - 1), np.diff(load_at))
-    pair, where = np.unique(
-        np.column_stack([load_row, craft_of[option]]), axis=0, return_inverse=True)
-    latest = np.full(len(pair), -1, dtype=np.int64)
-    soonest = np.full(len(pair), np.iinfo(np.int64).max)
-    where = where.reshape(-1)
-    np.maximum.at(latest, where, node[option])
-    np.minimum.at(soonest, where, arrival[option])
-    shared: Flags = (latest >= soonest)[where]
-    return shared
 
 
 def _longest_chain(first: Integers, node: Integers, arrival: Integers) -> int:

@@ -12,12 +12,14 @@ import numpy as np
 
 from passplan.planning.arrays import Flags, Integers
 from passplan.planning.rules.terms import Removal
-from passplan.planning.search.bound import Sweeper, units
 from passplan.planning.search.dues import points_missed
-from passplan.planning.search.fill import begin, free_now
-from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
+from passplan.planning.search.fill import free_now
+from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays, blended
+from passplan.planning.search.holding import enter
 from passplan.planning.search.labels import make_work
-from passplan.planning.search.schedule import best_schedule, worth_of
+from passplan.planning.search.prices import units
+from passplan.planning.search.schedule import best_schedule, points_of
+from passplan.planning.search.sweep import Sweeper
 
 # Points are sums of whole requests and seconds over hours.
 _SAME_POINTS = 1e-6
@@ -33,7 +35,7 @@ def ruled_out(arrays: FleetArrays, points: float) -> Removal:
         taken[i, : size[i]] = forced[crafts == i]
     room = arrays.limit * (1.0 + ROUNDING) + ROUNDING
     holder = np.full(arrays.cliques + 1, -1, dtype=np.int64)
-    begin(arrays, taken, size, holder, room)
+    enter(arrays, taken, size, np.ones(len(room), dtype=bool), holder, room)
     out: Flags = ~free_now(arrays, holder, room)
     for o, i in zip(forced.tolist(), crafts.tolist(), strict=True):
         mine = slice(arrays.first[i], arrays.first[i + 1])
@@ -45,9 +47,7 @@ def ruled_out(arrays: FleetArrays, points: float) -> Removal:
 
 def _forced(arrays: FleetArrays, points: float) -> Integers:
     """Options, as the arrays number them, that every plan with at most ``points`` has."""
-    worthless = arrays._replace(
-        craft=np.where(np.arange(arrays.craft.shape[1]) % 4 == 0, 0.0, arrays.craft), spill=0.0,
-        cost=np.zeros(len(arrays.cost)))
+    worthless = blended([(arrays, 0.0)])
     alone = Sweeper(worthless)(np.zeros(len(units(arrays))), 1.0)
     if alone is None:
         raise RuntimeError("a sweep without a clock came to no end")
@@ -65,6 +65,6 @@ def _forced(arrays: FleetArrays, points: float) -> Integers:
                 price[mine[meets[0]]] = np.inf
                 _, size = best_schedule(worthless, i, price, 1.0, no_room, work, taken)
                 price[mine[meets[0]]] = 0.0
-                if size >= 0 and worth_of(worthless, i, taken, size)[1] - alone.points[i] > spare:
+                if size >= 0 and points_of(worthless, i, taken, size) - alone.points[i] > spare:
                     forced.append(int(mine[meets[0]]))
     return np.unique(np.array(forced, dtype=np.int64))

@@ -25,6 +25,8 @@ from passplan.planning.arrays import Floats, Integers
 from passplan.planning.search.compiled import inlined
 
 _MOST_LABELS = 400_000
+# Labels that wait have room for so many fills each, where a spacecraft has several layers of storage.
+_MOST_LAYERS = 8
 # Comparing so many pairs of labels is as much work as making one.
 _PAIRS_TO_A_LABEL = 16
 
@@ -64,9 +66,10 @@ def make_work(labels: int = _MOST_LABELS) -> Work:
     """Room for ``labels`` labels; memory is used as it is touched."""
     floats = [np.empty((2, labels)) for _ in range(3)]
     numbers = [np.empty((2, labels), dtype=np.int64) for _ in range(2)]
-    wait, records = [np.empty(labels) for _ in range(3)], [np.empty(labels, dtype=np.int64) for _ in range(7)]
+    wait, records = [np.empty(labels) for _ in range(2)], [np.empty(labels, dtype=np.int64) for _ in range(7)]
+    several = np.empty(_MOST_LAYERS * labels)
     return Work(
-        floats[0], floats[1], floats[2], numbers[0], numbers[1], wait[0], wait[1], wait[2], records[0], records[1],
+        floats[0], floats[1], floats[2], numbers[0], numbers[1], several, wait[0], wait[1], records[0], records[1],
         records[2], records[3], records[4], records[5], records[6], np.zeros(1, dtype=np.int64), np.zeros(1))
 
 

@@ -11,11 +11,11 @@ from passplan.planning.maps import storage_maps
 from passplan.planning.option_table import build_options
 from passplan.planning.problem import Antennas, Fleet, Problem, Windows
 from passplan.planning.rules.terms import Lane, Terms
-from passplan.planning.search.bound import Sweeper
 from passplan.planning.search.fill import fill_up
 from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.labels import make_work
 from passplan.planning.search.rebuild import Ground, rebuild
+from passplan.planning.search.sweep import Sweeper
 
 _compiled = threading.Event()
 _faults: list[Exception] = []

@@ -17,18 +17,22 @@ from typing import NamedTuple
 import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
+from passplan.planning.search.changed import change
 from passplan.planning.search.compiled import compiled, inlined
-from passplan.planning.search.dues import give, missed
+from passplan.planning.search.dues import given_by, missed
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
+from passplan.planning.search.holding import claim, enter, fits, is_free, release
 from passplan.planning.search.labels import Work
-from passplan.planning.search.schedule import best_schedule, clashes, worth_of
+from passplan.planning.search.schedule import best_schedule, clashes, worth_of, worths_of
 
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
 # What gives to a due that is not met is paid for up to so many times as the bound would pay; now and then far more.
 _MOST_EAGER, _FAR_MORE, _NOW_AND_THEN = 4.0, 100.0, 0.1
-# What a call costs beside its labels, in labels.
+# What a call costs beside its labels, in labels; and what it costs to follow classes of data through some changes.
 _OVERHEAD = 100
+_CHANGES = 2_000
+_LOADS_TO_A_LABEL = 8
 
 
 class Ground(NamedTuple):
@@ -46,40 +50,35 @@ class Ground(NamedTuple):
 @compiled
 def rebuild(
     a: FleetArrays, seed: int, effort: int, warmth: float, most: int, span_s: int, option_price: Floats,
-    due_price: Floats,
-    point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
+    due_price: Floats, point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
     ``option_price`` (m,) is what the bound has options pay, ``due_price`` (d,) what it pays for meeting each due.
-
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
     nothing. At most ``most`` spacecraft are taken out at a time, and only what starts within ``span_s`` of some instant
     is rebuilt: the rest of their contacts stay, or go, but no others come.
     """
     np.random.seed(seed)
-    count = len(size)
-    movable = np.flatnonzero(ground.crafts)
+    count, movable = len(size), np.flatnonzero(ground.crafts)
     if len(movable) == 0:
         return 0.0
     # Whoever holds a clique; ``count`` stands for one that is free and must stay so.
     holder = np.where(ground.cliques, -1, count)
     room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
     now_taken, now_size = taken.copy(), size.copy()
-    worth = _enter(a, taken, size, point_worth, ground.rows, holder, room)
+    enter(a, taken, size, ground.rows, holder, room)
+    worth, points = worths_of(a, taken, size)
+    worth -= point_worth * points
     due_points = point_worth * a.dues.points
-    given = np.zeros(len(due_points))
-    for i in range(count):
-        give(a.dues.at, a.dues.to, a.dues.share, taken[i], size[i], 1.0, given)
     # Others may count on what is given beyond their dues; whatever is given less is missed.
-    given = np.where(ground.dues, given, 1.0)
+    given = np.where(ground.dues, given_by(a.dues, taken, size), 1.0)
     gain = best_gain = 0.0
     out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
     old_worth, price = np.empty(most), np.full(len(option_price), np.inf)
-    fresh = np.empty(a.most_contacts, dtype=np.int64)
-    is_changed = np.zeros(count, dtype=np.bool_)
+    fresh, is_changed = np.empty(a.most_contacts, dtype=np.int64), np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
     while work.spent[0] - begun < effort:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
@@ -87,7 +86,7 @@ def rebuild(
         from_s = int(np.random.random() * (a.horizon_s + span_s)) - span_s if span_s < a.horizon_s else 0
         until_s = from_s + span_s if span_s < a.horizon_s else a.horizon_s
         some = _pick(a, holder, ground.crafts, movable, out, wanted, from_s, until_s)
-        change = missed(due_points, given)
+        more = missed(due_points, given)
         for k in range(some):
             old_worth[k] = worth[out[k]]
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
@@ -100,20 +99,21 @@ def rebuild(
             part = share if turn < some - 1 else 0.0
             _replan(a, out[turn % some], from_s, until_s, part, option_price, price, eager, due_price, point_worth,
                     work, holder, room, given, now_taken, now_size, fresh)
-        change -= missed(due_points, given)
+        more -= missed(due_points, given)
         for k in range(some):
-            worth[out[k]] = _net_worth(a, out[k], now_taken[out[k]], now_size[out[k]], point_worth)
-            change += worth[out[k]] - old_worth[k]
+            worth[out[k]], missed_points = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
+            worth[out[k]] -= point_worth * missed_points
+            more += worth[out[k]] - old_worth[k]
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
-        if change < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(change / heat)):
+        if more < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(more / heat)):
             for k in range(some):
-                _release(a, now_taken[out[k]], now_size[out[k]], holder, room, given)
+                release(a, now_taken[out[k]], now_size[out[k]], holder, room, given)
             for k in range(some):
                 worth[out[k]] = old_worth[k]
                 _copy(old_taken, old_size, k, now_taken, now_size, out[k])
-                _claim(a, now_taken[out[k]], now_size[out[k]], holder, room, given, out[k])
+                claim(a, now_taken[out[k]], now_size[out[k]], holder, room, given, out[k])
             continue
-        gain += change
+        gain += more
         is_changed[out[:some]] = True
         if gain > best_gain:
             best_gain = gain
@@ -130,14 +130,14 @@ def _take_out(
     given: Floats,
 ) -> None:
     """Take the contacts that start within ``from_s : until_s`` out of the schedule of a spacecraft."""
-    _release(a, taken[i], size[i], holder, room, given)
+    release(a, taken[i], size[i], holder, room, given)
     kept = 0
     for k in range(size[i]):
         if not from_s <= a.span[taken[i, k], 0] < until_s:
             taken[i, kept] = taken[i, k]
             kept += 1
     size[i] = kept
-    _claim(a, taken[i], kept, holder, room, given, i)
+    claim(a, taken[i], kept, holder, room, given, i)
 
 
 @compiled
@@ -148,33 +148,43 @@ def _replan(
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
 
-    For dues that are not met without it, it is paid ``eager`` times their price.
-    Contacts that start outside ``from_s : until_s`` come from those it has. It keeps the schedule it has where the
-    program gives none that can be used. ``price`` is infinite throughout, and is so again afterwards.
+    For dues that are not met without it, it is paid ``eager`` times their price. Contacts that start outside
+    ``from_s : until_s`` come from those it has. It keeps the schedule it has where the program gives none that can be
+    used. ``price`` is infinite throughout, and is so again afterwards.
     """
     use_at, use_first, use_last, cost = a.use_at, a.use_first, a.use_last, a.cost
     load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
     due_at, due_to, due_share = a.dues.at, a.dues.to, a.dues.share
     low, high = _within(a, i, from_s, until_s)
-    _release(a, taken[i], size[i], holder, room, given)
+    release(a, taken[i], size[i], holder, room, given)
     for o in range(low, high):
         if is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room):
             rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
             price[o] = cost[o] + part * option_price[o] - rewarded
     for k in range(size[i]):
         o = taken[i, k]
-        price[o] = cost[o] + part * option_price[o] - eager * _reward(
-            due_at, due_to, due_share, due_price, given, o)
+        rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
+        price[o] = cost[o] + part * option_price[o] - rewarded
     work.spent[0] += _OVERHEAD + (high - low) // 4
+    before = work.spent[0]
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
+    # Rows are looked at label by label.
+    work.spent[0] += (work.spent[0] - before) * len(a.load_row) // (_LOADS_TO_A_LABEL * max(1, len(a.option)))
+    usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
+    if a.classes.loose[i]:
+        if not usable:
+            count = size[i]
+            fresh[:count] = taken[i, :count]
+        count, usable = change(a, i, price, point_worth, room, fresh[:taken.shape[1]], count), True
+        work.spent[0] += _CHANGES
     price[low:high] = np.inf
     for k in range(size[i]):
         price[taken[i, k]] = np.inf
-    if 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and _fits(a, fresh, count, room):
+    if usable:
         size[i] = count
         for c in range(count):
             taken[i, c] = fresh[c]
-    _claim(a, taken[i], size[i], holder, room, given, i)
+    claim(a, taken[i], size[i], holder, room, given, i)
 
 
 @inlined
@@ -199,95 +209,11 @@ def _within(a: FleetArrays, i: int, from_s: int, until_s: int) -> tuple[int, int
     return low + np.searchsorted(starts, from_s), low + np.searchsorted(starts, until_s)
 
 
-@compiled
-def _net_worth(a: FleetArrays, i: int, taken: Integers, size: int, point_worth: float) -> float:
-    worth, points = worth_of(a, i, taken, size)
-    return worth - point_worth * points
-
-
-@compiled
-def _release(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats, given: Floats) -> None:
-    hold(a, taken, size, holder, -1)
-    load(a, taken, size, room, 1.0)
-    give(a.dues.at, a.dues.to, a.dues.share, taken, size, -1.0, given)
-
-
-@compiled
-def _claim(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats, given: Floats, who: int) -> None:
-    hold(a, taken, size, holder, who)
-    load(a, taken, size, room, -1.0)
-    give(a.dues.at, a.dues.to, a.dues.share, taken, size, 1.0, given)
-
-
-@inlined
-def hold(a: FleetArrays, taken: Integers, size: int, holder: Integers, who: int) -> None:
-    """Note ``who`` holds the cliques of a schedule (-1: nobody)."""
-    use_at, use_first, use_last = a.use_at, a.use_first, a.use_last
-    for k in range(size):
-        for u in range(use_at[taken[k]], use_at[taken[k] + 1]):
-            for c in range(use_first[u], use_last[u]):
-                holder[c] = who
-
-
-@inlined
-def load(a: FleetArrays, taken: Integers, size: int, room: Floats, sign: float) -> None:
-    """Give the amounts of a schedule back to the rows (1), or take them (-1)."""
-    load_at, load_row, load_amount = a.load_at, a.load_row, a.load_amount
-    for k in range(size):
-        for e in range(load_at[taken[k]], load_at[taken[k] + 1]):
-            room[load_row[e]] += sign * load_amount[e]
-
-
-@inlined
-def is_free(
-    use_at: Integers, use_first: Integers, use_last: Integers, load_at: Integers, load_row: Integers,
-    load_amount: Floats, option: int, holder: Integers, room: Floats,
-) -> bool:
-    for u in range(use_at[option], use_at[option + 1]):
-        for c in range(use_first[u], use_last[u]):
-            if holder[c] >= 0:
-                return False
-    roomy = True
-    for e in range(load_at[option], load_at[option + 1]):
-        roomy = roomy and load_amount[e] <= room[load_row[e]]
-    return roomy
-
-
-@compiled
-def _fits(a: FleetArrays, taken: Integers, size: int, room: Floats) -> bool:
-    """Whether the rows have room for a whole schedule."""
-    if len(room) == 0:
-        return True
-    load(a, taken, size, room, -1.0)
-    fits = True
-    for k in range(size):
-        for e in range(a.load_at[taken[k]], a.load_at[taken[k] + 1]):
-            fits = fits and room[a.load_row[e]] >= 0.0
-    load(a, taken, size, room, 1.0)
-    return fits
-
-
 @inlined
 def _copy(source: Integers, source_size: Integers, at: int, taken: Integers, size: Integers, to: int) -> None:
     size[to] = source_size[at]
     for c in range(size[to]):
         taken[to, c] = source[at, c]
-
-
-@compiled
-def _enter(
-    a: FleetArrays, taken: Integers, size: Integers, point_worth: float, rows: Flags, holder: Integers, room: Floats,
-) -> Floats:
-    """Enter a plan into ``holder``, and into ``room`` where rows are free to be used; returns worths."""
-    worth = np.zeros(len(size))
-    for i in range(len(size)):
-        worth[i] = _net_worth(a, i, taken[i], size[i], point_worth)
-        hold(a, taken[i], size[i], holder, i)
-        for k in range(size[i]):
-            for e in range(a.load_at[taken[i, k]], a.load_at[taken[i, k] + 1]):
-                if rows[a.load_row[e]]:
-                    room[a.load_row[e]] -= a.load_amount[e]
-    return worth
 
 
 @compiled

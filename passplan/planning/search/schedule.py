@@ -4,7 +4,8 @@ Labels stand at the distinct starts of the spacecraft's options. A label is what
 far, which wanted terms are met, and until when the recurrence is covered. From a start it goes idle to the
 next one, or takes an option and stands at the first start at which another contact may follow that option.
 
-Which labels make others useless is in ``labels.py``.
+Which labels make others useless is in ``labels.py``. Spacecraft with classes of data have labels of their own, see
+``layered.py``.
 
 The program is exact but for two things. It does not see a clash between contacts with another one between
 them: its worth is then a ceiling, and the caller must look (:func:`clashes`). And where rows are to be kept
@@ -13,13 +14,18 @@ them: its worth is then a ceiling, and the caller must look (:func:`clashes`). A
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.search.clash import share_clique
 from passplan.planning.search.compiled import compiled, inlined
 from passplan.planning.search.fleetarrays import FleetArrays
+from passplan.planning.search.followed import followed_worth
 from passplan.planning.search.labels import Work, merge, missing
+from passplan.planning.search.layered import best_layered, layered_worth
+from passplan.planning.search.walk import overfills, past_wants, those_at, trace
 
 
 @compiled
@@ -33,6 +39,8 @@ def best_schedule(
     relaxation). Fills ``taken`` with the options taken, in time order, and returns the worth and their number. If
     there is no room for all labels, the worth is plus infinity and the number -1.
     """
+    if a.layers.first[i + 1] > a.layers.first[i]:
+        return best_layered(a, i, price, point_worth, room, work, taken)
     weight, generation, capacity = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2]
     # Out of the tuples once: every look into one costs more than the step that it is for.
     end_of, node, arrival, span, clash, spill = a.first[i + 1], a.node, a.arrival, a.span, a.clash, a.spill
@@ -52,7 +60,7 @@ def best_schedule(
     here = 1
     option = a.first[i]
     for at in range(nodes + 1):
-        follower, usable = _those_at(node, price, option, end_of, at)
+        follower, usable = those_at(node, price, option, end_of, at)
         if at < nodes and head[at] < 0 and not usable:
             # Nothing arrives and nothing can be taken.
             option = follower
@@ -62,7 +70,7 @@ def best_schedule(
         for k in range(here):
             aboard[side, k], worth[side, k] = _idle(aboard[side, k], worth[side, k], made, capacity, spill)
         clock = now
-        past = _past(wants_until, now)
+        past = past_wants(wants_until, now)
         run = head[at]
         while run >= 0:
             here = merge(clash, spill, weight, simple, now, aboard, worth, cover, bits, via, side, here, wait_aboard,
@@ -74,7 +82,7 @@ def best_schedule(
         for o in range(option, follower):
             if price[o] == np.inf:
                 continue
-            if waiting + here > len(wait_aboard) or runs >= len(run_low):
+            if waiting + here > len(wait_worth) or runs >= len(run_low):
                 return np.inf, -1
             target = arrival[o]
             until = start_s[base + target] if target < nodes else a.horizon_s
@@ -96,17 +104,7 @@ def best_schedule(
         ahead -= per_second * max(0.0, recur_until - cover[side, k])
         if ahead > best:
             best, chosen = ahead, via[side, k]
-    return best, _trace(record_option, record_before, chosen, taken)
-
-
-@inlined
-def _those_at(node: Integers, price: Floats, option: int, end: int, at: int) -> tuple[int, bool]:
-    """The end of the options from ``option`` on that start at a node, and whether any of them can be taken."""
-    usable = False
-    while option < end and node[option] == at:
-        usable = usable or price[option] < np.inf
-        option += 1
-    return option, usable
+    return best, trace(record_option, record_before, chosen, taken)
 
 
 @inlined
@@ -132,7 +130,7 @@ def _take(
             last = record_option[record]
             if clash[last] >= now and share_clique(use_at, use_first, use_last, last, option):
                 continue
-            if len(room) > 0 and _overfills(load_at, load_row, load_amount, load_own, option, room, used,
+            if len(room) > 0 and overfills(load_at, load_row, load_amount, load_own, option, room, used,
                                             record_option, record_before, record):
                 continue
         after, sent, lost = _through(maps, option, aboard[side, k])
@@ -157,25 +155,59 @@ def _take(
     return end
 
 
-@inlined
-def _trace(record_option: Integers, record_before: Integers, record: int, taken: Integers) -> int:
-    """Fill ``taken`` with the options that led to a record, in time order; returns how many."""
-    size = 0
-    while record >= 0:
-        taken[size] = record_option[record]
-        size += 1
-        record = record_before[record]
-    for k in range(size // 2):
-        taken[k], taken[size - 1 - k] = taken[size - 1 - k], taken[k]
-    return size
-
-
 @compiled
 def worth_of(a: FleetArrays, i: int, taken: Integers, size: int) -> tuple[float, float]:
     """Worth of a schedule of spacecraft ``i`` without prices, and its points of shortfall."""
-    weight, generation, capacity, fill = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2], a.craft[i, 3]
-    worth, clock, met = 0.0, 0, np.int64(0)
+    worth = 0.0
+    for k in range(size):
+        worth -= a.cost[taken[k]]
+    points = points_of(a, i, taken, size)
+    if a.classes.loose[i]:
+        return worth + followed_worth(a, i, taken, size), points
+    if a.layers.first[i + 1] > a.layers.first[i]:
+        return worth + layered_worth(a, i, taken, size), points
+    return worth + _plain_worth(a, i, taken, size), points
+
+
+@compiled
+def points_of(a: FleetArrays, i: int, taken: Integers, size: int) -> float:
+    """Points of shortfall of a schedule of spacecraft ``i``."""
+    met = np.int64(0)
     covered, overdue = a.recur[i, 0], 0.0
+    for k in range(size):
+        o = taken[k]
+        met |= a.bits[o]
+        if a.renews[o] >= 0:
+            overdue += max(0.0, min(float(a.span[o, 0]), a.recur[i, 1]) - covered)
+            covered = max(covered, float(a.renews[o]))
+    overdue += max(0.0, a.recur[i, 1] - covered)
+    return float(a.recur[i, 2] * overdue + missing(a.wants[i], met))
+
+
+@compiled
+def worths_of(a: FleetArrays, taken: Integers, size: Integers) -> tuple[Floats, Floats]:
+    """Worth without prices and points of shortfall of each spacecraft of a plan, shapes (n,), without those of dues."""
+    worth, points = np.zeros(len(size)), np.zeros(len(size))
+    for i in range(len(size)):
+        worth[i], points[i] = worth_of(a, i, taken[i], size[i])
+    return worth, points
+
+
+def total_worth(arrays: FleetArrays, taken: Integers, size: Integers) -> float:
+    """What a whole plan is worth, without prices."""
+    return math.fsum(worths_of(arrays, taken, size)[0].tolist())
+
+
+def total_points(arrays: FleetArrays, taken: Integers, size: Integers) -> float:
+    """Points of a whole plan, without those of dues."""
+    return math.fsum(worths_of(arrays, taken, size)[1].tolist())
+
+
+@compiled
+def _plain_worth(a: FleetArrays, i: int, taken: Integers, size: int) -> float:
+    """What a spacecraft with one class at a steady rate sends, less what it loses, in worth."""
+    weight, generation, capacity, fill = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2], a.craft[i, 3]
+    worth, clock = 0.0, 0
     for k in range(size + 1):
         until = a.span[taken[k], 0] if k < size else a.horizon_s
         fill += generation * (until - clock)
@@ -185,16 +217,10 @@ def worth_of(a: FleetArrays, i: int, taken: Integers, size: int) -> tuple[float,
         if k == size:
             worth += a.craft[i, 4] * fill
             break
-        o = taken[k]
-        fill, sent, lost = _through(a.maps, o, fill)
-        worth += weight * sent - a.spill * lost - a.cost[o]
-        clock = a.span[o, 1]
-        met |= a.bits[o]
-        if a.renews[o] >= 0:
-            overdue += max(0.0, min(float(a.span[o, 0]), a.recur[i, 1]) - covered)
-            covered = max(covered, float(a.renews[o]))
-    overdue += max(0.0, a.recur[i, 1] - covered)
-    return worth, a.recur[i, 2] * overdue + missing(a.wants[i], met)
+        fill, sent, lost = _through(a.maps, taken[k], fill)
+        worth += weight * sent - a.spill * lost
+        clock = a.span[taken[k], 1]
+    return float(worth)
 
 
 @inlined
@@ -212,47 +238,6 @@ def _idle(aboard: float, worth: float, made: float, capacity: float, spill: floa
     if over > 0.0:
         return capacity, worth - spill * over
     return aboard + made, worth
-
-
-@inlined
-def _overfills(
-    load_at: Integers, load_row: Integers, load_amount: Floats, load_own: Flags, option: int, room: Floats,
-    used: Floats, record_option: Integers, record_before: Integers, record: int,
-) -> bool:
-    """Whether an option and those taken before it add more to some row than there is room for.
-
-    ``used`` is all zeros, and is so again afterwards.
-    """
-    shares = False
-    for e in range(load_at[option], load_at[option + 1]):
-        shares = shares or load_own[e]
-    if not shares:
-        return False
-    before = record
-    while before >= 0:
-        o = record_option[before]
-        for e in range(load_at[o], load_at[o + 1]):
-            used[load_row[e]] += load_amount[e]
-        before = record_before[before]
-    over = False
-    for e in range(load_at[option], load_at[option + 1]):
-        over = over or (load_own[e] and used[load_row[e]] + load_amount[e] > room[load_row[e]])
-    while record >= 0:
-        o = record_option[record]
-        for e in range(load_at[o], load_at[o + 1]):
-            used[load_row[e]] = 0.0
-        record = record_before[record]
-    return over
-
-
-@inlined
-def _past(wants_until: Integers, now: int) -> np.int64:
-    """The bits of wanted terms that no option from ``now`` on can meet."""
-    past = np.int64(0)
-    for b in range(len(wants_until)):
-        if 0 <= wants_until[b] < now:
-            past |= np.int64(1) << b
-    return past
 
 
 @compiled
