@@ -21,6 +21,7 @@ import numpy as np
 from passplan.planning.arrays import Floats
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
+from passplan.planning.implied import implied
 from passplan.planning.maps import storage_maps
 from passplan.planning.occupancy import first_conflict
 from passplan.planning.problem import Limits, Problem
@@ -96,7 +97,7 @@ class _Staged:
         with self.clock.stage("greedy"):
             self._offer(plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps), "greedy")
         floor = self._requirements(all_in_one)
-        self._rule_out()
+        self._sharpen()
         bounds = []
         for k, aim in enumerate(self.aims):
             with self.clock.stage(aim.name.replace(" ", "_")):
@@ -121,16 +122,16 @@ class _Staged:
         self._offer(filled, "greedy")
         return max(floor, served.bound)
 
-    def _rule_out(self) -> None:
-        """Leave out the options that no plan with as few points has, where the search is to look through them."""
-        if len(self.problem.options) > self.limits.exact_options and compiled_in_time(self.clock):
-            part = without(self.aims[0].problem, self.terms) if self.several else None
-            arrays = self._arrays(0) if part is None else fleet_arrays(
-                part.problem, part.terms, storage_maps(part.problem))
+    def _sharpen(self) -> None:
+        """Say what the terms imply, where the search is to look through the options: its bound then falls further."""
+        if len(self.problem.options) <= self.limits.exact_options or not compiled_in_time(self.clock):
+            return
+        self.terms += implied(self.terms, self.problem.options.spacecraft)
+        part = without(self.aims[0].problem, self.terms) if self.several else None
+        arrays = self._arrays(0) if part is None else fleet_arrays(part.problem, part.terms, storage_maps(part.problem))
+        if len(arrays.option):
             out = ruled_out(arrays, self.best.points)
-            if part is not None:
-                out = replace(out, options=part.options[out.options])
-            self.terms += Terms(removals=(out,))
+            self.terms += Terms(removals=(out if part is None else replace(out, options=part.options[out.options]),))
             self.arrays.clear()
 
     def _aim(self, k: int) -> float:

@@ -34,3 +34,19 @@ def test_each_rule_is_on_in_many_of_those_cases() -> None:
             counts[kind] = counts.get(kind, 0) + 1
     assert min(counts.values()) >= 20, counts
     assert len(counts) >= 18, counts
+
+
+@pytest.mark.parametrize("seed", some_of(range(300, 420), 12))
+def test_the_search_states_bounds_that_hold_under_all_rules(seed: int) -> None:
+    problem = mixed_problem(seed)
+    judge = MixedJudge(problem)
+    result = find_plan(problem, Limits(gap=0.0, exact_options=0, time_limit_s=60.0, search_rounds=8))
+    reached = judge.reached_by(frozenset(result.chosen))
+    plans = [judge.reached_by(chosen) for chosen in judge.plans()]
+    names = ["shortfalls", "lost data", "value", "cost", "changes"] if problem.in_order else ["shortfalls", "value"]
+    for tier in result.tiers:
+        k = names.index(tier.name)
+        as_good = max(p[k] for p in plans if all(
+            p[n] >= reached[n] - 1e-6 * max(1.0, abs(reached[n])) for n in range(k)))
+        sign = 1.0 if tier.sense == "most" else -1.0
+        assert sign * tier.bound >= as_good - 1e-5 * max(1.0, abs(as_good)), tier.name

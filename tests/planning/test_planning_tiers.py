@@ -43,8 +43,6 @@ def test_120_cases_in_order_equal_the_best_of_all_plans_in_every_tier(block: int
 @pytest.mark.parametrize("seed", range(206, 212))
 def test_the_search_states_bounds_that_hold(seed: int) -> None:
     problem = ordered_problem(seed)
-    if problem.needs_of(GuaranteeNeed):
-        problem = replace(problem, needs=tuple(n for n in problem.needs if not isinstance(n, GuaranteeNeed)))
     judge = OrderJudge(problem)
     result = find_plan(problem, Limits(gap=0.0, exact_options=0, time_limit_s=6.0))
     reached = judge.reached(frozenset(result.chosen))

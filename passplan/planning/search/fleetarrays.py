@@ -33,6 +33,7 @@ from passplan.planning.search.rowarrays import loads, own_loads
 
 # Columns of ``craft``, ``layers.layer`` and ``classes.one`` that are worths.
 _CRAFT_WORTHS, _LAYER_WORTHS, _CLASS_WORTHS = (0, 4), (0, 1, 2), (0, 4)
+_NEVER_S = np.iinfo(np.int64).max
 # Amounts are sums of decimals; a limit reached to within this part of it is kept (the judge allows ten times more).
 ROUNDING = 1e-10
 
@@ -179,13 +180,19 @@ def _own_and_shared(
         mine = lane.options[place[lane.options] >= 0]
         whole = lane.owner >= 0 and len(mine) == first[lane.owner + 1] - first[lane.owner]
         if whole and len(mine) and np.all(problem.options.spacecraft[mine] == lane.owner):
-            lead_s = problem.options.start_s[lane.options] - lane.start_s
-            whole = bool(np.all(lead_s == lead_s[0]))
+            whole = _in_step(problem.options.start_s[lane.options], lane.start_s)
         if whole:
             own.append(lane)
         else:
             shared[k] = lane
     return own, shared
+
+
+def _in_step(start_s: Integers, held_from_s: Integers) -> bool:
+    """Whether of two contacts the one that starts later never holds the lane from earlier on."""
+    order = np.lexsort((held_from_s, start_s))
+    held_s, same = held_from_s[order], np.diff(start_s[order]) == 0
+    return bool(np.all(np.diff(held_s) >= 0) and np.all(np.diff(held_s)[same] == 0))
 
 
 def _ready(own: list[Lane], place: Integers, start_s: Integers, end_s: Integers) -> Integers:
@@ -194,7 +201,10 @@ def _ready(own: list[Lane], place: Integers, start_s: Integers, end_s: Integers)
     for lane in own:
         kept = place[lane.options] >= 0
         mine = place[lane.options[kept]]
-        ready_s[mine] = np.maximum(ready_s[mine], lane.end_s[kept] + start_s[mine] - lane.start_s[kept])
+        order = np.argsort(start_s[mine], kind="stable")
+        # The first start that holds the lane from its end on; after the last one there is none.
+        later = np.searchsorted(lane.start_s[kept][order], lane.end_s[kept])
+        ready_s[mine] = np.maximum(ready_s[mine], np.append(start_s[mine][order], _NEVER_S)[later])
     return ready_s
 
 
