@@ -15,7 +15,6 @@ from passplan.link.choice import WindowLink
 from passplan.planning.plan import make_plan
 from passplan.planning.portfolio import find_plan
 from passplan.planning.problem import Limits
-from passplan.planning.rules.guarantees import GuaranteeNeed
 
 
 @pytest.mark.parametrize("block", some_of(range(10), 2))
