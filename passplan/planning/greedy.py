@@ -20,6 +20,7 @@ from passplan.planning.problem import Problem
 from passplan.planning.rules.terms import AtLeast, Recurrence, Terms, Wanted
 from passplan.planning.search.fill import fill_up
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays, load_plan, unload_plan
+from passplan.planning.search.schedule import worth_of as counted_of
 
 
 def plan_greedily(
@@ -28,11 +29,13 @@ def plan_greedily(
 ) -> list[int]:
     """Options of a valid plan, sorted, built on those of ``begin``. Ends early, still valid, when time is up.
 
-    With ``arrays`` most of the work is done by compiled code, which large problems need.
+    With ``arrays`` most of the work is done by compiled code, which large problems need; where spacecraft have several
+    links they say what contacts of the others are worth.
     """
-    if arrays is not None and not (terms.wanted or terms.recurrences or terms.guarantees):
+    fills = arrays is not None and bool(np.all(problem.fleet.links == 1))
+    if arrays is not None and fills and not (terms.wanted or terms.recurrences or terms.guarantees):
         return _filled(arrays, begin, clock)
-    builder = _Builder(problem, terms, maps or storage_maps(problem))
+    builder = _Builder(problem, terms, maps or storage_maps(problem), arrays)
     for o in begin:
         builder.take(int(o))
     for want in sorted(terms.wanted, key=lambda want: -want.points):
@@ -41,7 +44,7 @@ def plan_greedily(
         builder.cover(need)
     for promise in terms.guarantees:
         builder.reach(promise)
-    if arrays is not None:
+    if arrays is not None and fills:
         return _filled(arrays, builder.chosen, clock)
     builder.fill(clock)
     return sorted(builder.chosen)
@@ -54,12 +57,15 @@ def _filled(arrays: FleetArrays, chosen: Iterable[int], clock: Clock) -> list[in
 
 
 class _Builder:
-    def __init__(self, problem: Problem, terms: Terms, maps: StorageMaps) -> None:
-        self.problem, self.maps = problem, maps
+    def __init__(self, problem: Problem, terms: Terms, maps: StorageMaps, arrays: FleetArrays | None) -> None:
+        self.problem, self.maps, self.arrays = problem, maps, arrays
+        if arrays is not None:
+            self.place = np.full(len(problem.options), -1, dtype=np.int64)
+            self.place[arrays.option] = np.arange(len(arrays.option))
         self.occupancy = Occupancy(terms, len(problem.options))
         self.chosen: set[int] = set()
         self.of_craft: list[list[int]] = [[] for _ in range(len(problem.fleet))]
-        self.worth = [worth_of(problem, maps, i, []) for i in range(len(problem.fleet))]
+        self.worth = [self._worth_of(i, []) for i in range(len(problem.fleet))]
         self.starts = problem.options.start_s.tolist()
         self.crafts = problem.options.spacecraft.tolist()
 
@@ -91,15 +97,20 @@ class _Builder:
         """Take what adds most to what is promised, until it is reached or nothing fits any more."""
         amounts = dict(zip(promise.options.tolist(), promise.amounts.tolist(), strict=True))
         missing = promise.need - sum(amount for o, amount in amounts.items() if o in self.chosen)
+        # What does not fit will not fit later either.
+        rest = [o for o in sorted(amounts, key=lambda o: (-amounts[o], o)) if amounts[o] > 0.0 and o not in self.chosen]
         while missing > 0.0:
-            fit = [(min(amount, missing), o) for o, amount in amounts.items()
-                   if amount > 0.0 and o not in self.chosen and self.occupancy.fits(o)]
-            if not fit:
+            at = next((k for k, o in enumerate(rest) if self.occupancy.fits(o)), len(rest))
+            rest = rest[at:]
+            if not rest:
                 return
-            most = max(amount for amount, _ in fit)
-            best = max((self._gain(o), -o) for amount, o in fit if amount >= most)
-            self.take(-best[1])
-            missing -= amounts[-best[1]]
+            most = min(amounts[rest[0]], missing)
+            until = next((k for k, o in enumerate(rest) if amounts[o] < most), len(rest))
+            fit = [o for o in rest[:until] if self.occupancy.fits(o)]
+            best = -max((self._gain(o), -o) for o in fit)[1]
+            self.take(best)
+            missing -= amounts[best]
+            rest = [o for o in fit if o != best] + rest[until:]
 
     def fill(self, clock: Clock) -> None:
         """Add options in the order of what they add now, until none adds anything."""
@@ -134,12 +145,17 @@ class _Builder:
         self.chosen.add(option)
         craft = self.crafts[option]
         self.of_craft[craft] = self._with(option)
-        self.worth[craft] = worth_of(self.problem, self.maps, craft, self.of_craft[craft])
+        self.worth[craft] = self._worth_of(craft, self.of_craft[craft])
 
     def _gain(self, option: int) -> float:
         craft = self.crafts[option]
-        with_it: float = worth_of(self.problem, self.maps, craft, self._with(option))
+        with_it: float = self._worth_of(craft, self._with(option))
         return with_it - float(self.worth[craft])
+
+    def _worth_of(self, craft: int, mine: list[int]) -> float:
+        if self.arrays is None or self.problem.fleet.links[craft] > 1:
+            return float(worth_of(self.problem, self.maps, craft, mine))
+        return float(counted_of(self.arrays, craft, self.place[mine], len(mine))[0])
 
     def _with(self, option: int) -> list[int]:
         return sorted([*self.of_craft[self.crafts[option]], option], key=self.starts.__getitem__)

@@ -36,7 +36,7 @@ from passplan.planning.several_links import ceiling_without, plan_beside, withou
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
-from passplan.planning.tiers import Objective, most_of_a_contact, objectives, staged
+from passplan.planning.tiers import Objective, most_of_a_contact, objectives, reached_by, staged
 from passplan.planning.value import account
 
 Tell = Callable[[float, float, float], None]
@@ -44,6 +44,8 @@ Tell = Callable[[float, float, float], None]
 _SHARES = (0.2, 0.85, 0.6, 0.9)
 # Of the search's time for an objective, the part in which its bound is sought beside spacecraft with several links.
 _FOR_BOUND = 0.5
+# Of the time that is left, the part in which the fewest points are sought.
+_FOR_POINTS = 0.15
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -71,7 +73,7 @@ class _Plan:
             raise RuntimeError(f"the {path} plan is wrong: {fault}")
         self.shortfalls = find_shortfalls(terms, self.chosen)
         self.points = total_points(self.shortfalls)
-        self.reached = tuple(account(aim.problem, self.chosen).value for aim in aims)
+        self.reached = reached_by(aims, self.chosen)
 
     def beats(self, other: _Plan) -> bool:
         """Whether it is better in the first objective in which the two differ."""
@@ -95,15 +97,17 @@ class _Staged:
     def run(self) -> PlanResult:
         all_in_one = self._sum(len(self.aims) - 1)
         with self.clock.stage("greedy"):
-            self._offer(plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps), "greedy")
-        floor = self._requirements(all_in_one)
+            arrays = self._arrays_of(all_in_one) if self._is_large() else None
+            self._offer(plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps, arrays=arrays), "greedy")
+        floor = self._requirements(all_in_one, arrays)
         self._sharpen()
         bounds = []
         for k, aim in enumerate(self.aims):
             with self.clock.stage(aim.name.replace(" ", "_")):
                 bounds.append(self._aim(k))
         with self.clock.stage("tidy"):
-            self._offer(tidy(all_in_one, self.terms, self.maps, self.best.chosen), self.best.path)
+            arrays = self._arrays_of(all_in_one) if self._is_large() else None
+            self._offer(tidy(all_in_one, self.terms, self.maps, self.best.chosen, arrays), self.best.path)
         return self._conclude(floor, bounds)
 
     def _offer(self, chosen: Iterable[int], path: str) -> None:
@@ -111,20 +115,25 @@ class _Staged:
         if plan.beats(self.best) or (plan.path == "greedy" and not self.best.chosen):
             self.best = plan
 
-    def _requirements(self, all_in_one: Problem) -> float:
+    def _is_large(self) -> bool:
+        """Whether the search is to look through the options, and its compiled code is ready."""
+        return len(self.problem.options) > self.limits.exact_options and compiled_in_time(self.clock)
+
+    def _requirements(self, all_in_one: Problem, arrays: FleetArrays | None) -> float:
         """Take the plan to the fewest points; returns a number below which no plan's points are."""
         floor = least_points(self.terms)
         if self.best.points <= floor + _SAME or self.clock.expired():
             return floor
         with self.clock.stage("requirements"):
-            served = least_shortfall(self.problem, self.terms, self.limits, self.clock.part(0.25 * self.clock.left_s()))
-            filled = plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps, begin=served.chosen or ())
+            served = least_shortfall(self.problem, self.terms, self.limits, self.clock.part(_FOR_POINTS * self.clock.left_s()))
+            filled = plan_greedily(
+                all_in_one, self.terms, self.clock, maps=self.maps, begin=served.chosen or (), arrays=arrays)
         self._offer(filled, "greedy")
         return max(floor, served.bound)
 
     def _sharpen(self) -> None:
         """Say what the terms imply, where the search is to look through the options: its bound then falls further."""
-        if len(self.problem.options) <= self.limits.exact_options or not compiled_in_time(self.clock):
+        if not self._is_large():
             return
         self.terms += implied(self.terms, self.problem.options.spacecraft)
         part = without(self.aims[0].problem, self.terms) if self.several else None
@@ -197,8 +206,11 @@ class _Staged:
     def _arrays(self, k: int) -> FleetArrays:
         """The search's view of one objective."""
         if k not in self.arrays:
-            self.arrays[k] = fleet_arrays(self.aims[k].problem, self.terms, self.maps)
+            self.arrays[k] = self._arrays_of(self.aims[k].problem)
         return self.arrays[k]
+
+    def _arrays_of(self, problem: Problem) -> FleetArrays:
+        return fleet_arrays(problem, self.terms, self.maps)
 
     def _guess(self, k: int) -> tuple[list[float], Floats | None]:
         """What each objective before number ``k`` may be worth beside it, and prices to begin with."""

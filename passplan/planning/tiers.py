@@ -8,6 +8,7 @@ them in which an earlier one weighs much more than a later one (``staged``).
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import Literal
@@ -16,6 +17,7 @@ import numpy as np
 
 from passplan.planning.change_cost import ChangeNeed
 from passplan.planning.problem import Problem
+from passplan.planning.value import account
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,6 +50,16 @@ def objectives(problem: Problem) -> tuple[Objective, ...]:
         found.append(Objective(
             "changes", "least", replace(nothing, extra_price=change, base_worth=-float(len(need.cost))), 0.0))
     return tuple(found)
+
+
+def reached_by(aims: Sequence[Objective], chosen: Sequence[int]) -> tuple[float, ...]:
+    """What a plan comes to in each objective, more being better. Storage is followed once for all of them."""
+    whole = account(next(aim.problem for aim in aims if aim.sense == "most"), chosen)
+    return tuple(
+        whole.value if aim.sense == "most" else float(
+            aim.problem.base_worth - aim.problem.spill_cost_per_mb * math.fsum(whole.lost_mb)
+            - math.fsum(aim.problem.price[whole.chosen]))
+        for aim in aims)
 
 
 def staged(parts: Sequence[tuple[Problem, float]]) -> Problem:

@@ -32,7 +32,9 @@ def arrays_of(problem: Problem) -> FleetArrays:
 
 def swept(sweeper: Sweeper, arrays: FleetArrays, seed: int, slack: float = 0.0) -> Sweep:
     price = np.random.default_rng(seed).uniform(0.0, 30.0, len(limits_of(arrays)))
-    found = sweeper(price, 100.0, slack)
+    for work in sweeper.work:
+        work.slack[0] = slack
+    found = sweeper(price, 100.0)
     assert found is not None
     return found
 

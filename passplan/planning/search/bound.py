@@ -160,9 +160,10 @@ class BoundSearch:
             self.price = np.clip(self.price + (here - value) / size * gradient, self.floor, self.ceiling)
         self.price = self.best_price
 
-    def restart(self, plan_points: float) -> None:
-        """Forget the bound, not the prices: the plan now has fewer points, so that other plans compete."""
-        self.plan_points, self.bound = plan_points, np.inf
+    def fewer_points(self, plan_points: float) -> None:
+        """Plans now have at most so many points, fewer than before: they are worth so much less at the same prices."""
+        self.bound -= self.point_worth * (self.plan_points - plan_points)
+        self.plan_points = plan_points
 
     def _evaluate(self) -> tuple[float, Floats, Floats] | None:
         """The ceiling at the present prices, noted if it is the lowest, and which way prices should go.

@@ -181,7 +181,7 @@ class _Rounds:
             self.best, self.value = (self.taken.copy(), self.size.copy()), value
             if fewer:
                 self.points = points
-                self.bounds.restart(points + self.more_points)
+                self.bounds.fewer_points(points + self.more_points)
         if self.holds:
             self._blend()
 

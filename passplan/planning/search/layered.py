@@ -29,7 +29,8 @@ _MOST_KEPT = 96
 _GIVEN = 2e-5
 # Where there are too many labels, merging one of them may give away this part; it never settles a requirement.
 _MOST_GIVEN = 1e-3
-_PAIRS_TO_A_LABEL = 8
+# Looking at so many fills of pairs of labels is as much work as making one.
+_FILLS_TO_A_LABEL = 64
 
 
 @compiled
@@ -246,7 +247,7 @@ def _prune(
             champion[champions] = kept
             champions += 1
         kept += 1
-    spent[0] += pairs * count // _PAIRS_TO_A_LABEL
+    spent[0] += pairs * count // _FILLS_TO_A_LABEL
     return kept
 
 
