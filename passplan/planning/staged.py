@@ -125,7 +125,8 @@ class _Staged:
         if self.best.points <= floor + _SAME or self.clock.expired():
             return floor
         with self.clock.stage("requirements"):
-            served = least_shortfall(self.problem, self.terms, self.limits, self.clock.part(_FOR_POINTS * self.clock.left_s()))
+            time = self.clock.part(_FOR_POINTS * self.clock.left_s())
+            served = least_shortfall(self.problem, self.terms, self.limits, time)
             filled = plan_greedily(
                 all_in_one, self.terms, self.clock, maps=self.maps, begin=served.chosen or (), arrays=arrays)
         self._offer(filled, "greedy")
