@@ -31,14 +31,21 @@ class Scene:
     """P (km), D (km2) and F (km) as (pairs, times) for antennas x objects; pair = antenna * objects + object.
 
     ``both`` is P and D as one array (2, pairs, times). ``sines`` (pairs,) are those of the lowest elevation
-    of each pair's mask; ``tolerance`` is in grid steps.
+    of each pair's mask; ``tolerance`` is in grid steps. ``step_km`` and ``bend_km`` (objects,) are the largest
+    first and second difference of each object's positions.
     """
 
     both: Floats
     excess_km: Floats
     sines: Floats
-    objects: int
+    step_km: Floats
+    bend_km: Floats
     tolerance: float
+
+    @property
+    def objects(self) -> int:
+        """Objects, each of which makes a pair with every antenna."""
+        return int(self.step_km.size)
 
     @property
     def length(self) -> int:
@@ -94,6 +101,11 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
         both.reshape(2, -1, length),
         excess.reshape(-1, length),
         np.repeat(sines, objects),
-        objects,
+        *(_largest(np.diff(block.positions_km, n=order, axis=2)) for order in (1, 2)),
         _TOLERANCE_S / block.step_s,
     )
+
+
+def _largest(differences_km: Floats) -> Floats:
+    """The longest vector of each object, of (3, objects, times)."""
+    return np.asarray(np.sqrt(np.einsum("kij,kij->ij", differences_km, differences_km).max(axis=1)))
