@@ -78,8 +78,7 @@ def _solve_short(
     low, high = edges
     middle = 0.5 * (low + high)
     peak = solve(toward_peak, (powers,), low, high, middle, False, TOLERANCE)
-    square = np.ascontiguousarray(powers[:, 1])
-    nearest = solve(toward_nearest, (square,), low, high, peak, True, TOLERANCE)
+    nearest = solve(toward_nearest, (stencil.derivative(powers[:, 1]),), low, high, peak, True, TOLERANCE)
     # At an edge the range is not flat: milliseconds away from it are metres.
     for edge in (low, high):
         np.copyto(nearest, edge, where=np.abs(nearest - edge) < _AT_EDGE * TOLERANCE)
@@ -87,7 +86,7 @@ def _solve_short(
     found.start[some], found.end[some] = low + (centre - zero), high + (centre - zero)
     top.at[some] = peak + (centre - zero)
     top.sine[some] = up / np.sqrt(distance2)
-    top.range_km[some] = np.sqrt(stencil.value(square, nearest))
+    top.range_km[some] = np.sqrt(stencil.value(powers[:, 1], nearest))
 
 
 def _solve_long(

@@ -81,14 +81,14 @@ def value(powers: Floats, x: Floats) -> Floats:
 
 
 def slope(powers: Floats, x: Floats) -> tuple[Floats, Floats]:
-    """Value and first derivative (per grid step)."""
+    """Value and first derivative (per grid step), of polynomials of any degree (terms, ..., n)."""
     if x.size <= _FEW:
-        basis = _basis(x)
-        return _sum(powers, basis), _sum(powers[1:], basis[:-1] * _ORDERS[1:])
+        basis = _basis(x, len(powers))
+        return _sum(powers, basis), _sum(powers[1:], basis[:-1] * _ORDERS[1:len(powers)])
     total = powers[-1] * x
     total += powers[-2]
     first = powers[-1].copy()
-    for k in range(POINTS - 3, -1, -1):
+    for k in range(len(powers) - 3, -1, -1):
         first *= x
         first += total
         total *= x
@@ -99,7 +99,7 @@ def slope(powers: Floats, x: Floats) -> tuple[Floats, Floats]:
 def bend(powers: Floats, x: Floats) -> tuple[Floats, Floats, Floats]:
     """Value, first and second derivative (per grid step)."""
     if x.size <= _FEW:
-        basis = _basis(x)
+        basis = _basis(x, POINTS)
         twice = basis[:-2] * (_ORDERS[2:] * _ORDERS[1:-1])
         return _sum(powers, basis), _sum(powers[1:], basis[:-1] * _ORDERS[1:]), _sum(powers[2:], twice)
     total = powers[-1] * x
@@ -116,9 +116,14 @@ def bend(powers: Floats, x: Floats) -> tuple[Floats, Floats, Floats]:
     return total, first, 2.0 * half
 
 
-def _basis(x: Floats) -> Floats:
-    """Powers 0 to 13 of ``x``, (14, n)."""
-    basis = np.empty((POINTS, x.size))
+def derivative(powers: Floats) -> Floats:
+    """The derivatives (13, n) of the polynomials (14, n), per grid step."""
+    return powers[1:] * _ORDERS[1:]
+
+
+def _basis(x: Floats, terms: int) -> Floats:
+    """The first ``terms`` powers of ``x``, from 0 on, (terms, n)."""
+    basis = np.empty((terms, x.size))
     basis[0] = 1.0
     basis[1:] = x
     return np.multiply.accumulate(basis, axis=0, out=basis)
