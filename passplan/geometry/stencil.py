@@ -72,11 +72,12 @@ def samples(rows: Floats, row: NDArray[np.int64], first: NDArray[np.int64]) -> F
 
 
 def value(powers: Floats, x: Floats) -> Floats:
-    """Value of the polynomials (14, ..., n) at ``x`` (n,), in steps of the grid."""
-    total: Floats = powers[-1].copy()
-    for k in range(POINTS - 2, -1, -1):
-        total *= x
+    """Value of the polynomials (14, ..., n) at ``x`` (n,), in steps of the grid; other shapes are broadcast."""
+    total: Floats = powers[-1] * x
+    for k in range(POINTS - 2, 0, -1):
         total += powers[k]
+        total *= x
+    total += powers[0]
     return total
 
 
@@ -133,14 +134,11 @@ def _sum(powers: Floats, basis: Floats) -> Floats:
     return np.asarray(np.einsum("k...n,kn->...n", powers, basis))
 
 
-def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], sample: NDArray[np.int64], at: Floats) -> list[Floats]:
-    """Values (k, n) of each part's ``rows[row[i]]`` (2-d arrays of one shape) at grid instants ``at`` (k, n).
+def interpolate(parts: Sequence[Floats], row: NDArray[np.int64], sample: NDArray[np.int64], at: Floats) -> Floats:
+    """Values (parts, k, n) of each part's ``rows[row[i]]`` (2-d arrays of one shape) at grid instants ``at`` (k, n).
 
     The k instants of a column share the stencil around grid interval ``sample`` (n,).
     """
     first, zero = place(sample, parts[0].shape[1])
-    values = []
-    for rows in parts:
-        powers = polynomials(rows, row, first)
-        values.append(np.stack([value(powers, x - zero) for x in at]))
-    return values
+    x = at - zero
+    return np.stack([value(polynomials(rows, row, first)[:, None], x) for rows in parts])
