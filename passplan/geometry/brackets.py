@@ -82,15 +82,21 @@ def _cubic_guess(scene: Scene, pair: Indices, interval: Indices) -> Floats:
 
 def _hidden(scene: Scene, above: Flags) -> Brackets:
     """Both sides of tops above zero and of dips below it that no change of sign between samples shows."""
-    climbing = scene.excess_km[:, 1:] > scene.excess_km[:, :-1]
-    inner = above[:, 1:-1]
-    crest, valley = np.zeros_like(above), np.zeros_like(above)
-    np.greater(climbing[:, :-1], climbing[:, 1:] | inner, out=crest[:, 1:-1])
-    np.greater(climbing[:, 1:] & inner, climbing[:, :-1], out=valley[:, 1:-1])
-    crests = np.flatnonzero(crest)
-    crests = crests[scene.excess_km.reshape(-1).take(crests) > -_rise_km(scene).take(crests // scene.length)]
-    tops, dips = _excursions(scene, crests, True), _excursions(scene, np.flatnonzero(valley), False)
+    # All pairs in one row, which compares twice as fast; what seems to be at a seam between two is left out.
+    flat, up = scene.excess_km.reshape(-1), above.reshape(-1)
+    climbing, inner = flat[1:] > flat[:-1], up[1:-1]
+    crests = np.flatnonzero(climbing[:-1] > (climbing[1:] | inner)) + 1
+    valleys = np.flatnonzero((climbing[1:] & inner) > climbing[:-1]) + 1
+    crests = crests[flat.take(crests) > -_rise_km(scene).take(crests // scene.length)]
+    crests, valleys = (some[_is_inside(some, scene.length)] for some in (crests, valleys))
+    tops, dips = _excursions(scene, crests, True), _excursions(scene, valleys, False)
     return Brackets(*(np.concatenate([getattr(tops, f.name), getattr(dips, f.name)]) for f in fields(Brackets)))
+
+
+def _is_inside(flat: Indices, length: int) -> Flags:
+    """Whether samples, by their number, are not at an end of their pair."""
+    sample = flat % length
+    return np.asarray((sample > 0) & (sample < length - 1))
 
 
 def _rise_km(scene: Scene) -> Floats:
@@ -104,9 +110,10 @@ def _rise_km(scene: Scene) -> Floats:
 
 
 def _excursions(scene: Scene, flat: Indices, top: bool) -> Brackets:
-    """Of discrete extrema (numbers of samples) on the wrong side of zero, those whose true extremum lies on the other side.
+    """Of discrete extrema on the wrong side of zero, those whose true extremum lies on the other side.
 
-    Each gives two brackets, in time order. The guesses are the zeros of the parabola at the extremum.
+    ``flat`` are their numbers among all samples. Each gives two brackets, in time order. The guesses are the zeros of
+    the parabola at the extremum.
     """
     pair, sample = np.divmod(flat, scene.length)
     likely = _may_cross(scene, pair, sample, top)

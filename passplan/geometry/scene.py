@@ -65,9 +65,16 @@ class Scene:
     def polynomials(self, pair: Indices, sample: Indices) -> tuple[Floats, Floats]:
         """P and D as polynomials (14, 2, n) around ``sample``, and the x of that sample in them."""
         first, zero = stencil.place(sample, self.length)
-        rows = np.concatenate([pair, pair + self.sines.size])
-        powers = stencil.polynomials(self.both.reshape(-1, self.length), rows, np.concatenate([first, first]))
-        return powers.reshape(stencil.POINTS, 2, -1), (sample - zero).astype(float)
+        powers = stencil.polynomials(*self._rows(pair), np.concatenate([first, first]))
+        return powers.reshape(len(powers), 2, -1), (sample - zero).astype(float)
+
+    def near(self, pair: Indices, sample: Indices) -> Floats:
+        """P and D as economized polynomials (11, 2, n) with x = 0 at ``sample``."""
+        powers = stencil.near(*self._rows(pair), np.concatenate([sample, sample]))
+        return powers.reshape(len(powers), 2, -1)
+
+    def _rows(self, pair: Indices) -> tuple[Floats, Indices]:
+        return self.both.reshape(-1, self.length), np.concatenate([pair, pair + self.sines.size])
 
     def at(self, pair: Indices, at: Floats) -> tuple[Floats, Floats]:
         """P and D (n,) at grid instants ``at``."""
@@ -101,7 +108,8 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
         both.reshape(2, -1, length),
         excess.reshape(-1, length),
         np.repeat(sines, objects),
-        *(_largest(np.diff(block.positions_km, n=order, axis=2)) for order in (1, 2)),
+        _largest(np.diff(block.positions_km, axis=2)),
+        _largest(np.diff(block.positions_km, n=2, axis=2)),
         _TOLERANCE_S / block.step_s,
     )
 
