@@ -22,6 +22,8 @@ from passplan.geometry.timescale import Floats
 # hundredths at the steps that ``regimes`` chooses, and a hundredth more between the looks. The parabola
 # itself rises above the samples by at most an eighth.
 _SLACK = 0.1
+# No arc between two samples is longer than its chord by so much: the objects turn by a third of a radian at most.
+_ARC = 1.1
 _LOOKS = np.linspace(-1.0, 1.0, 9)[:, None]
 
 
@@ -80,21 +82,40 @@ def _cubic_guess(scene: Scene, pair: Indices, interval: Indices) -> Floats:
 
 def _hidden(scene: Scene, above: Flags) -> Brackets:
     """Both sides of tops above zero and of dips below it that no change of sign between samples shows."""
-    climbing = scene.excess_km[:, 1:] > scene.excess_km[:, :-1]
-    inner = above[:, 1:-1]
-    crest = climbing[:, :-1] > (climbing[:, 1:] | inner)
-    valley = (climbing[:, 1:] & inner) > climbing[:, :-1]
-    tops, dips = _excursions(scene, np.flatnonzero(crest), True), _excursions(scene, np.flatnonzero(valley), False)
+    # All pairs in one row, which compares twice as fast; what seems to be at a seam between two is left out.
+    flat, up = scene.excess_km.reshape(-1), above.reshape(-1)
+    climbing, inner = flat[1:] > flat[:-1], up[1:-1]
+    crests = np.flatnonzero(climbing[:-1] > (climbing[1:] | inner)) + 1
+    valleys = np.flatnonzero((climbing[1:] & inner) > climbing[:-1]) + 1
+    crests = crests[flat.take(crests) > -_rise_km(scene).take(crests // scene.length)]
+    crests, valleys = (some[_is_inside(some, scene.length)] for some in (crests, valleys))
+    tops, dips = _excursions(scene, crests, True), _excursions(scene, valleys, False)
     return Brackets(*(np.concatenate([getattr(tops, f.name), getattr(dips, f.name)]) for f in fields(Brackets)))
+
+
+def _is_inside(flat: Indices, length: int) -> Flags:
+    """Whether samples, by their number, are not at an end of their pair."""
+    sample = flat % length
+    return np.asarray((sample > 0) & (sample < length - 1))
+
+
+def _rise_km(scene: Scene) -> Floats:
+    """More than F can rise above a sample that is no lower than its neighbours, within a step of it (pairs,).
+
+    Within a step the range changes by an arc at most, so P is higher by sin(m) arcs at a neighbour at most, and between
+    the samples by their second difference and the slack; the term in the range adds as much again. (Own derivation.)
+    """
+    steps = 2.0 * _ARC * np.abs(scene.sines).reshape(-1, scene.objects) * scene.step_km
+    return np.asarray((steps + (0.125 + _SLACK) * scene.bend_km).reshape(-1))
 
 
 def _excursions(scene: Scene, flat: Indices, top: bool) -> Brackets:
     """Of discrete extrema on the wrong side of zero, those whose true extremum lies on the other side.
 
-    Each gives two brackets, in time order. The guesses are the zeros of the parabola at the extremum.
+    ``flat`` are their numbers among all samples. Each gives two brackets, in time order. The guesses are the zeros of
+    the parabola at the extremum.
     """
-    pair, sample = np.divmod(flat, scene.length - 2)
-    sample = sample + 1
+    pair, sample = np.divmod(flat, scene.length)
     likely = _may_cross(scene, pair, sample, top)
     pair, sample = pair[likely], sample[likely]
     powers, zero = scene.polynomials(pair, sample)

@@ -36,8 +36,8 @@ def toward_peak(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
 
 
 def toward_nearest(x: Floats, powers: Floats) -> tuple[Floats, Floats]:
-    """D' and its slope, for polynomials of D alone."""
-    return stencil.bend(powers, x)[1:]
+    """D' and its slope, for polynomials of D' alone."""
+    return stencil.slope(powers, x)
 
 
 def vertex(values: Floats, at: NDArray[np.int64]) -> Floats:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, fields
 from typing import TypeVar
 
@@ -77,8 +77,8 @@ def block_rows(
     """The windows of one block from the antennas numbered ``antennas`` (with their places, masks and reaches)."""
     sines = np.sin(np.radians([mask.lowest_deg for mask in masks]))
     scene = view(block, places, sines)
-    found, top = spans(scene)
     low, high = (start_s - block.start_s) / block.step_s, (end_s - block.start_s) / block.step_s
+    found, top = spans(scene, low, high)
     found, top, number = _near_horizon(found, top, _pass_numbers(scene, found), low, high)
     crown = _crowns(block.step_s, found, number, top)
     found, crown, top = _cut_by_masks(block, places, masks, scene, found, crown, top)
@@ -284,9 +284,8 @@ def _azimuths(
     found = np.full(edges.shape, np.nan)
     short, long = np.flatnonzero(inside & (centre >= 0)), np.flatnonzero(inside & (centre < 0))
     axes = places.east, places.north
-    found[:, short] = azimuth_of(
-        *_along(block, places, axes, antenna[short], own[short], centre[short], edges[:, short])
-    )
+    found[:, short] = azimuth_of(*_along(
+        block, places, axes, antenna[short], own[short], centre[short], edges[:, short], stencil.interpolate_near))
     for edge in (0, 1):
         at = edges[edge, long]
         sample = np.floor(at).astype(np.int64)
@@ -315,6 +314,7 @@ def _along(
     own: Indices,
     sample: Indices,
     at: Floats,
+    interpolate: Callable[..., Floats] = stencil.interpolate,
 ) -> list[Floats]:
     """Distance (k, n) in km along each of the antennas' ``axes`` at grid instants ``at`` (k, n).
 
@@ -322,6 +322,6 @@ def _along(
     """
     line = [
         part - places.positions_km[:, k].take(antenna)
-        for k, part in enumerate(stencil.interpolate(tuple(block.positions_km), own, sample, at))
+        for k, part in enumerate(interpolate(tuple(block.positions_km), own, sample, at))
     ]
     return [np.asarray(sum(axis[:, k].take(antenna) * part for k, part in enumerate(line))) for axis in axes]

@@ -51,7 +51,7 @@ def regime(mean_motion_rad_s: float, eccentricity: float) -> Regime:
     low = math.radians(-5.0)
     half_angle = math.acos(_RADIUS_KM * math.cos(low) / max(apogee_km, _RADIUS_KM + 100.0)) - low
     longest_s = 1.3 * 2.0 * half_angle / mean_motion_rad_s
-    return Regime(step, 600.0 * math.ceil(max(longest_s, 7.0 * step) / 600.0))
+    return Regime(step, step * math.ceil(max(longest_s, 7.0 * step) / step))
 
 
 def regime_of(satrec: Satrec) -> Regime:

@@ -31,14 +31,21 @@ class Scene:
     """P (km), D (km2) and F (km) as (pairs, times) for antennas x objects; pair = antenna * objects + object.
 
     ``both`` is P and D as one array (2, pairs, times). ``sines`` (pairs,) are those of the lowest elevation
-    of each pair's mask; ``tolerance`` is in grid steps.
+    of each pair's mask; ``tolerance`` is in grid steps. ``step_km`` and ``bend_km`` (objects,) are the largest
+    first and second difference of each object's positions.
     """
 
     both: Floats
     excess_km: Floats
     sines: Floats
-    objects: int
+    step_km: Floats
+    bend_km: Floats
     tolerance: float
+
+    @property
+    def objects(self) -> int:
+        """Objects, each of which makes a pair with every antenna."""
+        return int(self.step_km.size)
 
     @property
     def length(self) -> int:
@@ -58,9 +65,16 @@ class Scene:
     def polynomials(self, pair: Indices, sample: Indices) -> tuple[Floats, Floats]:
         """P and D as polynomials (14, 2, n) around ``sample``, and the x of that sample in them."""
         first, zero = stencil.place(sample, self.length)
-        rows = np.concatenate([pair, pair + self.sines.size])
-        powers = stencil.polynomials(self.both.reshape(-1, self.length), rows, np.concatenate([first, first]))
-        return powers.reshape(stencil.POINTS, 2, -1), (sample - zero).astype(float)
+        powers = stencil.polynomials(*self._rows(pair), np.concatenate([first, first]))
+        return powers.reshape(len(powers), 2, -1), (sample - zero).astype(float)
+
+    def near(self, pair: Indices, sample: Indices) -> Floats:
+        """P and D as economized polynomials (11, 2, n) with x = 0 at ``sample``."""
+        powers = stencil.near(*self._rows(pair), np.concatenate([sample, sample]))
+        return powers.reshape(len(powers), 2, -1)
+
+    def _rows(self, pair: Indices) -> tuple[Floats, Indices]:
+        return self.both.reshape(-1, self.length), np.concatenate([pair, pair + self.sines.size])
 
     def at(self, pair: Indices, at: Floats) -> tuple[Floats, Floats]:
         """P and D (n,) at grid instants ``at``."""
@@ -94,6 +108,12 @@ def view(block: Block, places: Stations, sines: Floats) -> Scene:
         both.reshape(2, -1, length),
         excess.reshape(-1, length),
         np.repeat(sines, objects),
-        objects,
+        _largest(np.diff(block.positions_km, axis=2)),
+        _largest(np.diff(block.positions_km, n=2, axis=2)),
         _TOLERANCE_S / block.step_s,
     )
+
+
+def _largest(differences_km: Floats) -> Floats:
+    """The longest vector of each object, of (3, objects, times)."""
+    return np.asarray(np.sqrt(np.einsum("kij,kij->ij", differences_km, differences_km).max(axis=1)))

@@ -63,7 +63,7 @@ def _near_samples(scene: Scene, pair: Indices, start: Floats, end: Floats, highe
         here = powers.take(pick, axis=-1)
         middle = zero[pick]
         guess = middle + vertex(square, spot[pick])
-        data = (here if best is highest else np.ascontiguousarray(here[:, 1]),)
+        data = (here if best is highest else stencil.derivative(here[:, 1]),)
         x = solve(slope, data, middle - 1.0, middle + 1.0, guess, rising, TOLERANCE)
         at = x + (own_sample[pick] - middle)
         inside = (at >= start[owner[pick]]) & (at <= end[owner[pick]])

@@ -1,5 +1,7 @@
 from __future__ import annotations
 
+import math
+
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -42,6 +44,24 @@ def test_the_stated_error_holds_for_a_harmonic() -> None:
     at = np.linspace(15.0, 20.0, 51)
     found = stencil.interpolate((rows,), np.zeros(at.size, np.int64), at.astype(np.int64), at[None])[0][0]
     assert 1e-6 < np.abs(found - np.cos(at)).max() < 1.3e-5
+
+
+def test_an_economized_polynomial_stays_within_its_stated_error_of_the_full_one() -> None:
+    # 2 (3/2)^11 / 11! of the amplitude for omega h = 1, whatever the phase (Lanczos, Applied Analysis).
+    phases = np.linspace(0.0, np.pi, 7)
+    rows = np.cos(np.arange(LENGTH, dtype=float) + phases[:, None])
+    row, middle = np.arange(7), np.full(7, 20)
+    powers, first = stencil.near(rows, row, middle), stencil.place(middle, LENGTH)[0]
+    assert stencil.is_whole(middle, LENGTH).all()
+    off = [np.abs(stencil.value(powers, np.full(7, x)) - stencil.value(stencil.polynomials(rows, row, first), x)).max()
+           for x in np.linspace(-stencil.NEAR, stencil.NEAR, 61)]
+    assert 1e-6 < max(off) < 2.0 * 1.5**11 / math.factorial(11)
+
+
+def test_what_is_whole_is_what_does_not_lean() -> None:
+    interval = np.arange(LENGTH)
+    first, _ = stencil.place(interval, LENGTH)
+    assert np.array_equal(stencil.is_whole(interval, LENGTH), first == interval - 6)
 
 
 def test_stencils_lean_inwards_at_the_ends() -> None:
