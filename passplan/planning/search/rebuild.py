@@ -27,6 +27,8 @@ from passplan.planning.search.schedule import best_schedule, clashes, worth_of, 
 
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
+# Those of a spacecraft's own rows up to so many times.
+_MOST_THRIFT = 1.5
 # What gives to a due that is not met is paid for up to so many times as the bound would pay; now and then far more.
 _MOST_EAGER, _FAR_MORE, _NOW_AND_THEN = 4.0, 100.0, 0.1
 # What a call costs beside its labels, in labels; and what it costs to follow classes of data through some changes.
@@ -50,11 +52,13 @@ class Ground(NamedTuple):
 @compiled
 def rebuild(
     a: FleetArrays, seed: int, effort: int, warmth: float, most: int, span_s: int, option_price: Floats,
-    due_price: Floats, point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
+    own_price: Floats, due_price: Floats, point_worth: float, ground: Ground, work: Work, taken: Integers,
+    size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
-    ``option_price`` (m,) is what the bound has options pay, ``due_price`` (d,) what it pays for meeting each due.
+    ``option_price`` (m,) is what the bound has options pay for what others could use, ``own_price`` (m,) for rows of
+    their spacecraft alone, ``due_price`` (d,) what it pays for meeting each due.
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
     nothing. At most ``most`` spacecraft are taken out at a time, and only what starts within ``span_s`` of some instant
@@ -92,13 +96,14 @@ def rebuild(
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
             _take_out(a, out[k], from_s, until_s, now_taken, now_size, holder, room, given)
         share = np.random.random() * _MOST_SHARE
+        thrift = np.random.random() * _MOST_THRIFT
         eager = np.random.random() * _MOST_EAGER * (_FAR_MORE if np.random.random() < _NOW_AND_THEN else 1.0)
         for turn in range(2 * some - 1):
             # First each pays for what others need, the last one has nobody left to leave room for; then all but the
             # last once more, for nothing.
             part = share if turn < some - 1 else 0.0
-            _replan(a, out[turn % some], from_s, until_s, part, option_price, price, eager, due_price, point_worth,
-                    work, holder, room, given, now_taken, now_size, fresh)
+            _replan(a, out[turn % some], from_s, until_s, part, option_price, thrift, own_price, price, eager,
+                    due_price, point_worth, work, holder, room, given, now_taken, now_size, fresh)
         more -= missed(due_points, given)
         for k in range(some):
             worth[out[k]], missed_points = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
@@ -142,11 +147,14 @@ def _take_out(
 
 @compiled
 def _replan(
-    a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, price: Floats, eager: float,
-    due_price: Floats, point_worth: float, work: Work, holder: Integers, room: Floats, given: Floats, taken: Integers,
-    size: Integers, fresh: Integers,
+    a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, thrift: float,
+    own_price: Floats, price: Floats, eager: float, due_price: Floats, point_worth: float, work: Work, holder: Integers,
+    room: Floats, given: Floats, taken: Integers, size: Integers, fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
+
+    For its own rows it always pays, ``thrift`` times their price: the schedule program does not see that what it takes
+    early may be wanted more later on.
 
     For dues that are not met without it, it is paid ``eager`` times their price. Contacts that start outside
     ``from_s : until_s`` come from those it has. It keeps the schedule it has where the program gives none that can be
@@ -160,11 +168,11 @@ def _replan(
     for o in range(low, high):
         if is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room):
             rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
-            price[o] = cost[o] + part * option_price[o] - rewarded
+            price[o] = cost[o] + part * option_price[o] + thrift * own_price[o] - rewarded
     for k in range(size[i]):
         o = taken[i, k]
         rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
-        price[o] = cost[o] + part * option_price[o] - rewarded
+        price[o] = cost[o] + part * option_price[o] + thrift * own_price[o] - rewarded
     work.spent[0] += _OVERHEAD + (high - low) // 4
     before = work.spent[0]
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
