@@ -43,8 +43,8 @@ def backed(problem: Problem) -> Problem:
     """
     options, w = problem.options, problem.windows
     copies, seconds = list[int](), list[int]()
-    for craft in range(2, len(problem.fleet), 29):
-        mine = np.flatnonzero((w.spacecraft == craft) & (w.start_s > 4 * HOUR_S)).tolist()
+    for craft, hour in ((k, h) for k in range(2, len(problem.fleet), 29) for h in (4, 10, 16)):
+        mine = np.flatnonzero((w.spacecraft == craft) & (w.start_s > hour * HOUR_S)).tolist()
         for first, second in ((a, b) for a in mine for b in mine if w.antenna[a] + 1 < w.antenna[b]):
             low, high = max(w.start_s[first], w.start_s[second]), min(w.end_s[first], w.end_s[second])
             within = (options.window == first) & (options.start_s >= low) & (options.end_s <= high)

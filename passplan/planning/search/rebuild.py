@@ -33,7 +33,8 @@ _MOST_THRIFT = 1.5
 _MOST_EAGER, _FAR_MORE, _NOW_AND_THEN = 4.0, 100.0, 0.1
 # What a call costs beside its labels, in labels; and what it costs to follow classes of data through some changes.
 _OVERHEAD = 100
-_CHANGES = 2_000
+# Following takes most of the time, so that only some schedules are changed.
+_CHANGED, _CHANGES = 0.3, 6_000
 _LOADS_TO_A_LABEL = 8
 
 
@@ -79,10 +80,10 @@ def rebuild(
     # Others may count on what is given beyond their dues; whatever is given less is missed.
     given = np.where(ground.dues, given_by(a.dues, taken, size), 1.0)
     gain = best_gain = 0.0
-    out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
     old_worth, price = np.empty(most), np.full(len(option_price), np.inf)
-    fresh, is_changed = np.empty(a.most_contacts, dtype=np.int64), np.zeros(count, dtype=np.bool_)
+    out, fresh = np.empty(most, dtype=np.int64), np.empty(a.most_contacts, dtype=np.int64)
+    is_changed = np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
     while work.spent[0] - begun < effort:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
@@ -106,8 +107,9 @@ def rebuild(
                     due_price, point_worth, work, holder, room, given, now_taken, now_size, fresh)
         more -= missed(due_points, given)
         for k in range(some):
-            worth[out[k]], missed_points = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
-            worth[out[k]] -= point_worth * missed_points
+            if not _same(now_taken, now_size, out[k], old_taken, old_size, k):
+                worth[out[k]], missed_points = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
+                worth[out[k]] -= point_worth * missed_points
             more += worth[out[k]] - old_worth[k]
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
         if more < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(more / heat)):
@@ -179,7 +181,7 @@ def _replan(
     # Rows are looked at label by label.
     work.spent[0] += (work.spent[0] - before) * len(a.load_row) // (_LOADS_TO_A_LABEL * max(1, len(a.option)))
     usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
-    if a.classes.loose[i]:
+    if a.classes.loose[i] and np.random.random() < _CHANGED:
         if not usable:
             count = size[i]
             fresh[:count] = taken[i, :count]
@@ -215,6 +217,15 @@ def _within(a: FleetArrays, i: int, from_s: int, until_s: int) -> tuple[int, int
         return low, high
     starts = a.span[low:high, 0]
     return low + np.searchsorted(starts, from_s), low + np.searchsorted(starts, until_s)
+
+
+@inlined
+def _same(taken: Integers, size: Integers, one: int, others: Integers, others_size: Integers, other: int) -> bool:
+    """Whether two schedules are the same."""
+    same = size[one] == others_size[other]
+    for c in range(size[one] if same else 0):
+        same = same and taken[one, c] == others[other, c]
+    return bool(same)
 
 
 @inlined
