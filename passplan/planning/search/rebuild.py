@@ -67,8 +67,6 @@ def rebuild(
     """
     np.random.seed(seed)
     count, movable = len(size), np.flatnonzero(ground.crafts)
-    if len(movable) == 0:
-        return 0.0
     # Whoever holds a clique; ``count`` stands for one that is free and must stay so.
     holder = np.where(ground.cliques, -1, count)
     room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
@@ -85,7 +83,7 @@ def rebuild(
     out, fresh = np.empty(most, dtype=np.int64), np.empty(a.most_contacts, dtype=np.int64)
     is_changed = np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
-    while work.spent[0] - begun < effort:
+    while work.spent[0] - begun < effort and len(movable) > 0:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
         # Any instant is as likely to be within, also those at the ends.
         from_s = int(np.random.random() * (a.horizon_s + span_s)) - span_s if span_s < a.horizon_s else 0
@@ -108,8 +106,8 @@ def rebuild(
         more -= missed(due_points, given)
         for k in range(some):
             if not _same(now_taken, now_size, out[k], old_taken, old_size, k):
-                worth[out[k]], missed_points = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
-                worth[out[k]] -= point_worth * missed_points
+                net, points_missed = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
+                worth[out[k]] = net - point_worth * points_missed
             more += worth[out[k]] - old_worth[k]
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
         if more < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(more / heat)):
