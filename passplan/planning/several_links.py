@@ -1,7 +1,7 @@
 """The search beside spacecraft with several links, whose contacts it cannot put in an order.
 
-Such a spacecraft keeps the contacts that it has. The others are searched beside them: what does not fit goes, limits
-are lower by what is taken, and requirements that are met are met. The bound does without those spacecraft: they take
+Such a spacecraft keeps the contacts that it has. The others are searched around them: what does not fit goes, limits
+are lower by what is taken, and guarantees count what is given. The bound does without those spacecraft: they take
 nothing, and are worth the most that they could ever be. (Own derivation; dropping contacts that only take up lanes and
 limits can but raise the bound of what is left.)
 """
@@ -9,25 +9,20 @@ limits can but raise the bound of what is left.)
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 
-from passplan.planning.arrays import Flags
+from passplan.planning.arrays import Flags, Floats
 from passplan.planning.clock import Clock
 from passplan.planning.maps import StorageMaps, storage_maps, worth_of
 from passplan.planning.occupancy import Occupancy
 from passplan.planning.parts import Part, part_of
 from passplan.planning.problem import Limits, Problem
-from passplan.planning.rules.terms import AtLeast, Removal, Rows, Terms, Wanted
-from passplan.planning.search.bound import Hold, lowest_ceiling
-from passplan.planning.search.engine import Found, search_plan
-from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays, load_plan
-from passplan.planning.search.schedule import total_worth
-from passplan.planning.shortfalls import find_shortfalls, total_points
-
-# The bound's share of the time.
-_FOR_BOUND = 0.3
+from passplan.planning.rules.terms import AtLeast, Rows, Terms, Wanted
+from passplan.planning.search.engine import Found, Staying, search_plan
+from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
 
 
 def arrays_of(problem: Problem, terms: Terms, maps: StorageMaps) -> FleetArrays | None:
@@ -44,134 +39,121 @@ def search_all(
     ``arrays`` are those of :func:`arrays_of`. Without a proof where they are None.
     """
     if arrays is None:
-        return _search_beside(problem, terms, limits, clock, chosen, points, tell)
+        return _search_around(problem, terms, limits, clock, chosen, points, tell)
     if not len(arrays.option):
         return Found(tuple(chosen), np.inf, None, 0, 0)
     return search_plan(arrays, terms, limits, clock, chosen, points, tell)
 
 
-def _search_beside(
+def _search_around(
     problem: Problem, terms: Terms, limits: Limits, clock: Clock, chosen: Sequence[int], points: float,
     tell: Callable[[float, float], None],
 ) -> Found:
-    fixed = _of(problem, chosen, problem.fleet.links > 1)
-    maps, options = storage_maps(problem), problem.options
-    in_order = sorted(fixed, key=lambda o: int(options.start_s[o]))
-    kept_worth = sum(worth_of(problem, maps, k, [o for o in in_order if options.spacecraft[o] == k])
+    view, others = around(problem, terms, chosen), most_of_others(problem)
+    arrays = view.arrays(problem)
+    if not len(arrays.option):
+        return Found(tuple(chosen), view.part.problem.ceiling - problem.base_worth + others, None, 0, 0)
+    maps, starts = storage_maps(problem), problem.options.start_s
+    in_order = sorted(view.fixed, key=lambda o: int(starts[o]))
+    kept_worth = sum(worth_of(problem, maps, k, [o for o in in_order if problem.options.spacecraft[o] == k])
                      for k in np.flatnonzero(problem.fleet.links > 1).tolist())
-    bound = ceiling_without(
-        problem, terms, limits, clock.part(_FOR_BOUND * clock.left_s()), chosen, points,
-        lambda value, above: tell(value + kept_worth, above))
-    together = plan_beside(
-        problem, terms, limits, clock, chosen, lambda value, _: tell(value + kept_worth, bound))
-    return Found(tuple(together), bound, None, 0, 0)
-
-
-def plan_beside(
-    problem: Problem, terms: Terms, limits: Limits, clock: Clock, chosen: Sequence[int],
-    tell: Callable[[float, float], None], held: Sequence[tuple[Problem, float]] = (),
-) -> list[int]:
-    """The plan ``chosen`` improved, but for the contacts of spacecraft with several links.
-
-    ``held`` are other objectives that are not to be worse than now, each with a guess of what it is worth.
-    """
-    fixed = _of(problem, chosen, problem.fleet.links > 1)
-    part = beside(problem, terms, fixed)
-    maps = storage_maps(part.problem)
-    arrays = fleet_arrays(part.problem, part.terms, maps)
-    if not len(arrays.option):
-        return list(chosen)
-    mine = _within(part, chosen)
-    taken, size = load_plan(arrays, mine)
-    holds = []
-    for other, guess in held:
-        theirs = fleet_arrays(_same_part(other), part.terms, maps)
-        holds.append((Hold(theirs, total_worth(theirs, taken, size)), guess))
     found = search_plan(
-        arrays, part.terms, limits, clock, mine, total_points(find_shortfalls(part.terms, mine)), tell, holds=holds)
-    return sorted([*fixed, *part.options[list(found.chosen)].tolist()])
+        arrays, view.part.terms, replace(limits, gap=0.0), clock, view.within(chosen), points,
+        lambda value, above: tell(value + kept_worth, above + others), staying=view.staying(arrays))
+    return Found(view.whole(found.chosen), found.bound + others, None, found.rounds, found.left_alone)
 
 
-def ceiling_without(
-    problem: Problem, terms: Terms, limits: Limits, clock: Clock, chosen: Sequence[int], points: float,
-    tell: Callable[[float, float], None], held: Sequence[tuple[Problem, float, float]] = (),
-) -> float:
-    """A bound of plans with ``points`` of shortfall at most, without the problem's ``base_worth``.
+@dataclass(frozen=True, eq=False)
+class Around:
+    """The spacecraft with one link, around the contacts ``fixed`` of the others, by their numbers in the whole.
 
-    ``held`` are other objectives, the least that each is to come to with its ``base_worth``, and a guess of what it is
-    worth.
+    These use ``used`` (r,) of the rows of the part's terms and give the parts ``given`` (g,) of what is due to its
+    guarantees; ``shared`` (g,) says which of them such spacecraft could serve.
     """
-    part, others = without(problem, terms), _most_of_others(problem)
-    maps = storage_maps(part.problem)
-    arrays = fleet_arrays(part.problem, part.terms, maps)
-    if not len(arrays.option):
-        return part.problem.ceiling - part.problem.base_worth + others
-    taken, size = load_plan(arrays, _within(part, chosen))
-    holds = [(Hold(fleet_arrays(_same_part(other), part.terms, maps),
-                   least - other.base_worth - _most_of_others(other)), guess) for other, least, guess in held]
-    return others + lowest_ceiling(
-        arrays, taken, size, points, limits.threads, clock, lambda value, above: tell(value, above + others), holds)
+
+    part: Part
+    fixed: tuple[int, ...]
+    used: Floats
+    given: Floats
+    shared: Flags
+
+    def arrays(self, problem: Problem) -> FleetArrays:
+        """What the search wants of an objective over the part."""
+        mine = part_of(problem, Terms(), problem.fleet.links == 1, first=True).problem
+        return fleet_arrays(mine, self.part.terms, self.maps)
+
+    @cached_property
+    def maps(self) -> StorageMaps:
+        """The storage maps of the part's options."""
+        return storage_maps(self.part.problem)
+
+    def staying(self, arrays: FleetArrays) -> Staying:
+        """What the search must know of the contacts that stay."""
+        given, shared = np.zeros(len(arrays.dues.points)), np.zeros(len(arrays.dues.points), dtype=bool)
+        given[: len(self.given)], shared[: len(self.shared)] = self.given, self.shared
+        return Staying(self.used, given, shared)
+
+    def within(self, chosen: Iterable[int]) -> list[int]:
+        """The chosen options that the part has, by its own numbers."""
+        return np.flatnonzero(np.isin(self.part.options, list(chosen))).tolist()
+
+    def whole(self, chosen: Iterable[int]) -> tuple[int, ...]:
+        """A plan of the part together with what stays."""
+        return tuple(sorted([*self.fixed, *self.part.options[list(chosen)].tolist()]))
 
 
-def _most_of_others(problem: Problem) -> float:
+def around(problem: Problem, terms: Terms, chosen: Iterable[int]) -> Around:
+    """The spacecraft with one link around those contacts of the plan ``chosen`` that are of others.
+
+    Contacts that these stand in the way of are in a row of which they use all. Requested contacts that others could
+    meet are left out.
+    """
+    single = problem.fleet.links[problem.options.spacecraft] == 1
+    fixed = tuple(int(o) for o in chosen if not single[o])
+    occupancy = Occupancy(terms, len(problem.options))
+    for o in fixed:
+        occupancy.add(o)
+    stuck = [o for o in np.flatnonzero(single).tolist() if not occupancy.fits(o)]
+    in_the_way = Rows(
+        "spacecraft_busy", ("beside what stays",), np.array([0, len(stuck)]), np.array(stuck, dtype=np.int64),
+        np.ones(len(stuck)), np.array([float(len(stuck))]))
+    held = np.zeros(len(single), dtype=bool)
+    held[list(fixed)] = True
+    extra = (in_the_way,) if stuck else ()
+    kept = replace(_of_single(problem, terms), rows=(*terms.rows, *extra), guarantees=terms.guarantees)
+    part = part_of(problem, kept, problem.fleet.links == 1, first=True)
+    promises = [p for p in terms.guarantees if np.any(single[p.options]) or not len(p.options)]
+    return Around(
+        part, fixed,
+        np.concatenate([np.zeros(0), *(_used(one, held, single) for one in terms.rows), *(one.limit for one in extra)]),
+        np.array([float(p.amounts @ held[p.options]) / p.need for p in promises], dtype=float),
+        np.array([not np.all(single[p.options]) for p in promises], dtype=bool))
+
+
+def _used(rows: Rows, held: Flags, single: Flags) -> Floats:
+    """What is used of each row in which a part with the options ``single`` has a place."""
+    row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
+    load = np.bincount(row, weights=rows.amounts * held[rows.options], minlength=len(rows))
+    return np.asarray(np.minimum(load, rows.limit)[np.unique(row[single[rows.options]])])
+
+
+def most_of_others(problem: Problem) -> float:
     """The most that spacecraft with several links can come to."""
     return part_of(problem, Terms(), problem.fleet.links > 1, first=False).problem.ceiling
 
 
-def _same_part(problem: Problem) -> Problem:
-    """An objective over the options of spacecraft with one link."""
-    return part_of(problem, Terms(), problem.fleet.links == 1, first=True).problem
-
-
 def without(problem: Problem, terms: Terms) -> Part:
     """The spacecraft with one link, as if the others took nothing; requirements that those could meet are dropped."""
+    return part_of(problem, _of_single(problem, terms), problem.fleet.links == 1, first=True)
+
+
+def _of_single(problem: Problem, terms: Terms) -> Terms:
+    """Terms without requirements that spacecraft with several links could meet."""
     several = problem.fleet.links > 1
 
     def own(demand: Wanted | AtLeast) -> bool:
         return not np.any(several[problem.options.spacecraft[demand.options]])
 
-    kept = replace(
+    return replace(
         terms, wanted=tuple(filter(own, terms.wanted)), guarantees=tuple(filter(own, terms.guarantees)),
         recurrences=tuple(r for r in terms.recurrences if not several[problem.fleet.names.index(r.name)]))
-    return part_of(problem, kept, ~several, first=True)
-
-
-def beside(problem: Problem, terms: Terms, fixed: Iterable[int]) -> Part:
-    """The spacecraft with one link beside the contacts ``fixed`` of the others."""
-    several, taken = problem.fleet.links > 1, list(fixed)
-    occupancy = Occupancy(terms, len(problem.options))
-    for o in taken:
-        occupancy.add(o)
-    single = np.flatnonzero(~several[problem.options.spacecraft]).tolist()
-    stuck = np.array([o for o in single if not occupancy.fits(o)], dtype=np.int64)
-    used = np.zeros(len(problem.options), dtype=bool)
-    used[taken] = True
-    guarantees = [_less(promise, used) for promise in terms.guarantees]
-    kept = replace(
-        terms, removals=(*terms.removals, Removal(stuck, "spacecraft_busy", "taken")),
-        rows=tuple(_lower(rows, used) for rows in terms.rows),
-        wanted=tuple(want for want in terms.wanted if not np.any(used[want.options])),
-        recurrences=tuple(r for r in terms.recurrences if not several[problem.fleet.names.index(r.name)]),
-        guarantees=tuple(promise for promise in guarantees if promise is not None))
-    return part_of(problem, kept, ~several, first=True)
-
-
-def _lower(rows: Rows, used: Flags) -> Rows:
-    row = np.repeat(np.arange(len(rows)), np.diff(rows.offset))
-    load = np.bincount(row, weights=rows.amounts * used[rows.options], minlength=len(rows))
-    return replace(rows, limit=np.maximum(rows.limit - load, 0.0))
-
-
-def _less(promise: AtLeast, used: Flags) -> AtLeast | None:
-    """What is left of a guarantee, at the same points for the same amount."""
-    left = promise.need - float(promise.amounts @ used[promise.options])
-    return None if left <= 0.0 else replace(promise, need=left, points=promise.points * left / promise.need)
-
-
-def _of(problem: Problem, chosen: Iterable[int], crafts: Flags) -> list[int]:
-    return [int(o) for o in chosen if crafts[problem.options.spacecraft[o]]]
-
-
-def _within(part: Part, chosen: Iterable[int]) -> list[int]:
-    """The chosen options that a part has, by its own numbers."""
-    return np.flatnonzero(np.isin(part.options, list(chosen))).tolist()

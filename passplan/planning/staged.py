@@ -29,10 +29,11 @@ from passplan.planning.result import OPTIMAL_GAP, PlanResult, Tier, relative_gap
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.bound import Hold
 from passplan.planning.search.engine import search_plan
-from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
+from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays, load_plan
 from passplan.planning.search.forced import ruled_out
 from passplan.planning.search.ready import compiled_in_time
-from passplan.planning.several_links import ceiling_without, plan_beside, without
+from passplan.planning.search.schedule import total_worth
+from passplan.planning.several_links import Around, around, most_of_others, without
 from passplan.planning.shortfalls import find_shortfalls, least_points, total_points
 from passplan.planning.solve import least_shortfall, most_value
 from passplan.planning.tidy import tidy
@@ -42,8 +43,6 @@ from passplan.planning.value import account
 Tell = Callable[[float, float, float], None]
 # Parts of the time that is left for each objective: lost data, value, cost, changes.
 _SHARES = (0.15, 0.9, 0.6, 0.9)
-# Of the search's time for an objective, the part in which its bound is sought beside spacecraft with several links.
-_FOR_BOUND = 0.5
 # Of the time that is left, the part in which the fewest points are sought.
 _FOR_POINTS = 0.08
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
@@ -89,6 +88,8 @@ class _Staged:
         self.aims = objectives(problem)
         self.maps = storage_maps(problem)
         self.several = bool(np.any(problem.fleet.links > 1))
+        # With several links: the others around what those have.
+        self.view: Around | None = None
         self.arrays: dict[int, FleetArrays] = {}
         # The objective that the search has last looked at, its prices, and those of what was held.
         self.prices: tuple[int, Floats, tuple[float, ...]] | None = None
@@ -171,43 +172,47 @@ class _Staged:
         """Improve one objective by the search and return the bound that this proves."""
         if not compiled_in_time(time):
             return bound
-        if self.several:
-            return self._search_beside(k, time, bound)
-        arrays = self._arrays(k)
+        view = self._look_around() if self.several else None
+        arrays, mine = self._arrays(k), self.best.chosen if view is None else view.within(self.best.chosen)
         if not len(arrays.option):
             return bound
-        base = self.aims[k].problem.base_worth
-        holds = [Hold(self._arrays(e), self.best.reached[e] - self.aims[e].problem.base_worth) for e in range(k)]
+        base = self.aims[k].problem.base_worth + (0.0 if view is None else most_of_others(self.aims[k].problem))
         # The search stops by a gap of what it counts, which is without the base.
         reached = self.best.reached[k]
-        gap = self.limits.gap * abs(reached) / abs(reached - base) if reached != base else 0.0
+        gap = self.limits.gap * abs(reached) / abs(reached - base) if reached != base and view is None else 0.0
+        limits = replace(self.limits, gap=min(gap, self.limits.gap))
         guess, price = self._guess(k)
+        terms = self.terms if view is None else view.part.terms
         found = search_plan(
-            arrays, self.terms, replace(self.limits, gap=min(gap, self.limits.gap)), time, self.best.chosen,
-            self.best.points, lambda _, above: self._say(k, min(bound, above + base)),
-            holds=list(zip(holds, guess, strict=True)), price=price)
-        self._offer(found.chosen, "search")
+            arrays, terms, limits, time, mine, self.best.points,
+            lambda _, above: self._say(k, min(bound, above + base)),
+            holds=[(self._hold(e, view), share) for e, share in enumerate(guess)], price=price,
+            staying=None if view is None else view.staying(arrays))
+        self._offer(found.chosen if view is None else view.whole(found.chosen), "search")
         self.prices = k, found.price, found.hold_price
         return found.bound + base
 
-    def _search_beside(self, k: int, time: Clock, bound: float) -> float:
-        """The same where spacecraft have several links, which keep what they have; see ``several_links.py``."""
-        aim, best = self.aims[k].problem, self.best
-        guess, _ = self._guess(k)
-        held = list(zip([aim.problem for aim in self.aims[:k]], best.reached, guess, strict=False))
-        above = min(bound, aim.base_worth + ceiling_without(
-            aim, self.terms, self.limits, time.part(_FOR_BOUND * time.left_s()), best.chosen, best.points,
-            lambda _, above: self._say(k, min(bound, above + aim.base_worth)), held))
-        chosen = plan_beside(
-            aim, self.terms, replace(self.limits, gap=0.0), time, best.chosen,
-            lambda _value, _bound: self._say(k, above), [(other, share) for other, _, share in held])
-        self._offer(chosen, "search")
-        return above
+    def _look_around(self) -> Around:
+        """The spacecraft with one link around what the others have now; see ``several_links.py``."""
+        fixed = tuple(o for o in self.best.chosen if self.problem.fleet.links[self.problem.options.spacecraft[o]] > 1)
+        if self.view is None or self.view.fixed != fixed:
+            self.view, self.prices = around(self.problem, self.terms, self.best.chosen), None
+            self.arrays.clear()
+        return self.view
+
+    def _hold(self, e: int, view: Around | None) -> Hold:
+        """An earlier objective, as good as it is."""
+        arrays, reached = self._arrays(e), self.best.reached[e] - self.aims[e].problem.base_worth
+        if view is None:
+            return Hold(arrays, reached)
+        least = total_worth(arrays, *load_plan(arrays, view.within(self.best.chosen)))
+        return Hold(arrays, least, most_of_others(self.aims[e].problem) - (reached - least))
 
     def _arrays(self, k: int) -> FleetArrays:
         """The search's view of one objective."""
         if k not in self.arrays:
-            self.arrays[k] = self._arrays_of(self.aims[k].problem)
+            aim = self.aims[k].problem
+            self.arrays[k] = self._arrays_of(aim) if self.view is None else self.view.arrays(aim)
         return self.arrays[k]
 
     def _arrays_of(self, problem: Problem) -> FleetArrays:

@@ -30,7 +30,7 @@ class House(GroundRules, CraftRules, DemandRules, FleetRules):
             self.setup_by_antenna, self.beams, self.slew, self.closures, self.rented, self.staffing_hours, self.pool,
             self.staff, self.backhaul_day, self.backhaul_rate, self.contact_gap, self.cool_down, self.counts_per_orbit,
             self.counts_per_day, self.sending_per_contact, self.sending_per_orbit, self.sending_per_span, self.battery,
-            self.slots, self.loaded, self.commands, self.requests, self.standby, self.forbids, self.pins,
+            self.slots, self.commands, self.requests, self.standby, self.forbids, self.loaded, self.pins,
             self.emergency, self.daily_contacts, self.daily_mb, self.mission, self.interference, self.crowd,
             self.budget, self.classes, self.fairness, *((self.links, self.handover) if self._seams() else ()))
         return {maker.__name__.replace("_", " "): maker() for maker in makers}

@@ -142,9 +142,10 @@ class CraftRules(Yard):
         """A schedule aboard of one contact that the plan without rules has not, and no other for three hours."""
         options = self.base.options
         early = options.start_s < 3 * HOUR_S
-        craft = next(k for k in range(len(self.base.fleet)) if np.any(early & (options.spacecraft == k)))
+        able = early & ~self.shut & ~self._chosen(self.free)
+        craft = next(k for k in range(len(self.base.fleet)) if np.any(able & (options.spacecraft == k)))
         mine = np.flatnonzero(early & (options.spacecraft == craft))
-        kept = next((o for o in mine.tolist() if o not in set(self.free.tolist())), int(mine[0]))
+        kept = int(mine[able[mine]][0])
         silent, decided = self._chosen(mine[mine != kept]), self._needs(self._decided("loaded", "aboard", [kept]))
         closed = self._closed(silent, "sends as the schedule aboard says")
         return lambda p: decided(closed(p))

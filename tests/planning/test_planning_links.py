@@ -28,7 +28,7 @@ from passplan.planning.rules import all_terms
 from passplan.planning.rules.rows import rows_of
 from passplan.planning.rules.spacecraft_time import spacecraft_time
 from passplan.planning.rules.terms import AtLeast, Terms, Wanted
-from passplan.planning.several_links import beside, without
+from passplan.planning.several_links import around, without
 from passplan.planning.value import account
 
 PIECES = st.lists(
@@ -155,13 +155,15 @@ def test_what_others_hold_is_taken_off_and_what_they_meet_is_met() -> None:
     terms = all_terms(problem) + Terms(
         rows=(rows_of("budget", [("money", every, [5.0, 4.0, 3.0], 8.0)]),),
         wanted=(Wanted("any", "any", every),), guarantees=(AtLeast("daily", "x", "MB", every, np.full(3, 3.0), 6.0),))
-    part = beside(problem, terms, [0])
-    assert part.options.tolist() == [1, 2]
-    assert [o for removal in part.terms.removals for o in removal.options.tolist()] == [0]
-    (budget,) = [rows for rows in part.terms.rows if rows.kind == "budget"]
-    assert (budget.limit.tolist(), budget.amounts.tolist()) == ([3.0], [4.0, 3.0])
-    assert part.terms.wanted == ()
-    assert [(g.need, g.points, g.amounts.tolist()) for g in part.terms.guarantees] == [(3.0, 0.5, [3.0, 3.0])]
+    view = around(problem, terms, [0])
+    assert (view.part.options.tolist(), view.fixed, view.whole([1])) == ([1, 2], (0,), (0, 2))
+    budget, stuck = view.part.terms.rows
+    assert (budget.limit.tolist(), budget.amounts.tolist()) == ([8.0], [4.0, 3.0])
+    # The second contact exceeds the budget beside the first; of its own row nothing is left.
+    assert (stuck.options.tolist(), stuck.limit.tolist(), view.used.tolist()) == ([0], [1.0], [5.0, 1.0])
+    assert view.part.terms.wanted == ()
+    assert [(g.need, g.amounts.tolist()) for g in view.part.terms.guarantees] == [(6.0, [3.0, 3.0])]
+    assert (view.given.tolist(), view.shared.tolist()) == ([0.5], [True])
     alone = without(problem, terms)
     assert [rows.limit.tolist() for rows in alone.terms.rows if rows.kind == "budget"] == [[8.0]]
     assert alone.terms.wanted == () and alone.terms.guarantees == ()

@@ -16,15 +16,13 @@ at what was reached are relaxed in the same way, each at a price of its own (``H
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from concurrent.futures import ThreadPoolExecutor
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
-from passplan.planning.arrays import Floats, Integers, ragged_ranges
+from passplan.planning.arrays import Flags, Floats, ragged_ranges
 from passplan.planning.certificate import PriceCertificate
-from passplan.planning.clock import Clock
 from passplan.planning.rules.terms import Terms
 from passplan.planning.search.adam import Adam
 from passplan.planning.search.fleetarrays import FleetArrays, at_their_word, blended
@@ -43,8 +41,6 @@ _NEXT_STEP = 0.1
 # All prices together are at least this part of the value: where time costs nothing at all, schedules are full of
 # contacts that bring nothing down, and what is used says nothing about what is needed.
 _FLOOR = 1e-7
-# A ceiling without a search is at rest after so many groups of so many steps that lowered it by less than this part.
-_PATIENCE, _FEW, _REST = 12, 5, 1e-5
 # The prices of a point and of what is held change by this part at first.
 _FIRST_CHANGE = 0.2
 # Of what is held, this part too much or too little is a step in full.
@@ -53,10 +49,14 @@ _HELD_SIZE = 0.01
 
 @dataclass(frozen=True, eq=False)
 class Hold:
-    """An objective over the same options that is to come to at least ``least``, without its base."""
+    """An objective over the same options that is to come to at least ``least``, without its base.
+
+    Contacts beside these might come to ``spare`` more than they do, so that the bound can count on so much less.
+    """
 
     arrays: FleetArrays
     least: float
+    spare: float = 0.0
 
 
 def certificate_of(arrays: FleetArrays, terms: Terms, bounds: BoundSearch) -> PriceCertificate:
@@ -82,11 +82,12 @@ class BoundSearch:
     def __init__(
         self, arrays: FleetArrays, sweeper: Sweeper, plan_points: float, point_worth: float, worth: float,
         contact_worth: float, *, points_move: bool = False, holds: Sequence[tuple[Hold, float]] = (),
-        price: Floats | None = None,
+        price: Floats | None = None, shared: Flags | None = None,
     ) -> None:
         """``worth`` and ``contact_worth`` are those of a plan, about. ``holds`` come with a first guess of their price.
 
-        ``points_move`` says that ``point_worth`` is no more than a first guess either.
+        ``points_move`` says that ``point_worth`` is no more than a first guess either. Dues that contacts beside these
+        could meet too, ``shared`` (d,), are not rewarded.
         """
         self.arrays, self.sweeper, self.plan_points = arrays, sweeper, plan_points
         self.limits = limits_of(arrays)
@@ -94,9 +95,10 @@ class BoundSearch:
         self.floor = np.full(len(self.limits), _FLOOR * worth / max(1, len(self.limits)))
         self.ceiling = np.full(len(self.limits), np.inf)
         self._due = slice(arrays.cliques + len(arrays.limit), None)
-        self.holds = [hold for hold, _ in holds]
+        self._due_points = arrays.dues.points if shared is None else np.where(shared, 0.0, arrays.dues.points)
+        self.holds = [replace(hold, least=hold.least - hold.spare) for hold, _ in holds]
         # The ceiling takes layers at their word; so does the way in which it falls.
-        self._held = [replace(hold, arrays=at_their_word(hold.arrays)) for hold, _ in holds]
+        self._held = [replace(hold, arrays=at_their_word(hold.arrays)) for hold in self.holds]
         self.point_worth, self.point_rate = point_worth, 1.0 if points_move else 0.0
         self.hold_price = np.array([share for _, share in holds], dtype=float)
         self._hopeless = np.bincount(arrays.dues.to, minlength=len(arrays.dues.points)) == 0
@@ -187,7 +189,7 @@ class BoundSearch:
         """Which way the prices of a point and of what is held should go."""
         # A reward that is as high as it may be moves with the price of a point.
         full = self.price[self._due] <= self.floor[self._due]
-        owed = (full * (1.0 - at.use[self._due] / self.limits[self._due])) @ self.arrays.dues.points
+        owed = (full * (1.0 - at.use[self._due] / self.limits[self._due])) @ self._due_points
         levels = [self.point_rate * float(at.points.sum() + owed - self.plan_points)]
         for hold in self._held:
             less = hold.least - total_worth(hold.arrays, at.taken, at.size)
@@ -196,36 +198,10 @@ class BoundSearch:
 
     def _keep_within(self) -> None:
         """A due is never rewarded beyond its points, and one that nothing can meet not below them."""
-        self.floor[self._due] = -self._point_worth * self.arrays.dues.points / self.limits[self._due]
+        self.floor[self._due] = -self._point_worth * self._due_points / self.limits[self._due]
         self.ceiling[self._due] = np.where(self._hopeless, self.floor[self._due], 0.0)
 
     def _blended(self, hold_price: Floats) -> FleetArrays:
         """The objective with what is held at its prices."""
         parts = [(hold.arrays, share) for hold, share in zip(self.holds, hold_price.tolist(), strict=True)]
         return blended([*parts, (self.arrays, 1.0)]) if parts else self.arrays
-
-
-def lowest_ceiling(
-    arrays: FleetArrays, taken: Integers, size: Integers, plan_points: float, threads: int, clock: Clock,
-    tell: Callable[[float, float], None], holds: Sequence[tuple[Hold, float]] = (),
-) -> float:
-    """The bound alone, for a plan (``taken``, ``size``) that stays as it is, until it comes to rest or time is up.
-
-    ``plan_points`` are what plans have at most; ``holds`` come with a guess of their price. ``tell(value, bound)`` is
-    called after every few steps.
-    """
-    value = total_worth(arrays, taken, size)
-    point_worth = float(((arrays.craft[:, 0] + arrays.spill) * arrays.craft[:, 2]).max(initial=1.0))
-    gained = abs(value - total_worth(arrays, taken, np.zeros_like(size)))
-    with ThreadPoolExecutor(max(1, threads)) as pool:
-        sweeper = Sweeper(arrays, threads, pool if threads > 1 else None, clock)
-        bounds = BoundSearch(
-            arrays, sweeper, plan_points, point_worth, abs(value), max(1.0, gained) / max(1, int(size.sum())),
-            points_move=plan_points > 0.0, holds=holds)
-        idle = 0
-        while not clock.expired() and idle < _PATIENCE:
-            before = bounds.bound
-            bounds.improve(_FEW, value)
-            tell(value, bounds.bound)
-            idle = 0 if bounds.bound < before - _REST * abs(before) or not np.isfinite(before) else idle + 1
-    return bounds.bound

@@ -81,7 +81,7 @@ def missed(points: Floats, given: Floats) -> float:
     return total
 
 
-def points_missed(dues: Dues, taken: Integers, size: Integers) -> float:
-    """Points of all dues of a whole plan."""
-    missing = np.maximum(0.0, 1.0 - given_by(dues, taken, size))
+def points_missed(dues: Dues, taken: Integers, size: Integers, before: Floats | float = 0.0) -> float:
+    """Points of all dues of a whole plan, to which ``before`` (d,) is given by others."""
+    missing = np.maximum(0.0, 1.0 - before - given_by(dues, taken, size))
     return float(dues.points @ np.where(missing > _MET, missing, 0.0))

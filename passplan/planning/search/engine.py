@@ -20,7 +20,7 @@ from functools import partial
 
 import numpy as np
 
-from passplan.planning.arrays import Floats, Integers
+from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.certificate import PriceCertificate
 from passplan.planning.clock import Clock
 from passplan.planning.problem import Limits
@@ -82,28 +82,44 @@ class Found:
     hold_price: tuple[float, ...] = ()
 
 
+@dataclass(frozen=True, eq=False)
+class Staying:
+    """What contacts outside the search take: ``used`` (r,) of rows. They give ``given`` (d,) to dues.
+
+    Those like them could give to the ``shared`` (d,) dues. The bound counts on neither.
+    """
+
+    used: Floats
+    given: Floats
+    shared: Flags
+
+
 def search_plan(
     arrays: FleetArrays, terms: Terms, limits: Limits, clock: Clock, start: Sequence[int], points: float,
     tell: Callable[[float, float], None] | None = None, *, holds: Sequence[tuple[Hold, float]] = (),
-    price: Floats | None = None,
+    price: Floats | None = None, staying: Staying | None = None,
 ) -> Found:
     """Improve the plan ``start`` (options by number) of ``points`` of shortfall, and bound it.
 
     ``tell(value, bound)`` is called after each round. ``holds`` are other objectives and the least that each is to come
-    to, which ``start`` does, with a guess of what they are worth; ``price`` are prices to begin with.
+    to, which ``start`` does, with a guess of what they are worth; ``price`` are prices to begin with. Beside contacts
+    that stay as they are the plan has to make do with what is left; the bound is over all that others could leave.
     """
     threads = max(1, limits.threads)
     with ThreadPoolExecutor(threads) as pool:
-        rounds = _Rounds(arrays, limits, start, points, pool, threads, clock, holds, price)
+        if staying is None:
+            dues = len(arrays.dues.points)
+            staying = Staying(np.zeros(len(arrays.limit)), np.zeros(dues), np.zeros(dues, dtype=bool))
+        rounds = _Rounds(arrays, limits, start, points, pool, threads, clock, holds, price, staying)
         return rounds.run(terms, clock, tell)
 
 
 class _Rounds:
     def __init__(
         self, arrays: FleetArrays, limits: Limits, start: Sequence[int], points: float, pool: ThreadPoolExecutor,
-        threads: int, clock: Clock, holds: Sequence[tuple[Hold, float]], price: Floats | None,
+        threads: int, clock: Clock, holds: Sequence[tuple[Hold, float]], price: Floats | None, staying: Staying,
     ) -> None:
-        self.aim, self.limits, self.pool, self.threads = arrays, limits, pool, threads
+        self.aim, self.limits, self.pool, self.threads, self.staying = arrays, limits, pool, threads, staying
         self.workers = max(2, threads)
         self.taken, self.size = load_plan(arrays, start)
         fixed = np.array([bool(arrays.uncounted[self.taken[i, : self.size[i]]].any()) for i in range(len(self.size))])
@@ -120,7 +136,7 @@ class _Rounds:
         worth = abs(self.value + sum(share * hold.least for hold, share in holds))
         self.bounds = BoundSearch(
             arrays, self.sweeper, points, point_worth, worth, self._contact_worth(), points_move=moves, holds=holds,
-            price=price)
+            price=price, shared=staying.shared)
         self.shares *= _FIRST_SHARE
         self._blend()
         self.swept = 0
@@ -160,7 +176,8 @@ class _Rounds:
     def _blend(self) -> None:
         """The sum for which the plan is rebuilt."""
         parts = [(hold.arrays, share) for hold, share in zip(self.holds, self.shares.tolist(), strict=True)]
-        self.arrays = arrays = blended([*parts, (self.aim, 1.0)]) if parts else self.aim
+        arrays = blended([*parts, (self.aim, 1.0)]) if parts else self.aim
+        self.arrays = arrays._replace(limit=arrays.limit - self.staying.used)
         # Points before value: a second of a command interval outweighs what it can be traded for.
         self.point_worth = 1e5 * (1.0 + float(np.abs(arrays.craft[:, 0] + arrays.spill) @ (
             arrays.craft[:, 3] + arrays.craft[:, 1] * arrays.horizon_s)))
@@ -221,7 +238,7 @@ class _Rounds:
         most = _MOST_OUT_WITH_ROWS if len(self.arrays.limit) else _MOST_OUT
         span_s = min(_SPANS_S[number % len(_SPANS_S)] or self.arrays.horizon_s, self.arrays.horizon_s)
         rebuild(self.arrays, seed, effort, warmth, most, span_s, prices[0], prices[1], self._rewards(),
-                self.point_worth, ground, self.work[worker], taken, size)
+                self.staying.given, self.point_worth, ground, self.work[worker], taken, size)
         return taken, size
 
     def _rewards(self) -> Floats:
@@ -246,7 +263,8 @@ class _Rounds:
 
     def _points(self) -> float:
         """Points of the plan in hand, as far as the search counts them."""
-        return total_points(self.arrays, self.taken, self.size) + points_missed(self.arrays.dues, self.taken, self.size)
+        alone = total_points(self.arrays, self.taken, self.size)
+        return alone + points_missed(self.arrays.dues, self.taken, self.size, self.staying.given)
 
     def _first_point_worth(self) -> tuple[float, bool]:
         """What a point is worth in the bound: much if the plan has only the points that nobody can avoid.

@@ -59,4 +59,4 @@ def _exercise() -> None:
     fill_up(arrays, np.zeros(0), taken, size, Clock(60.0))
     yes = np.ones(1, dtype=bool)
     ground = Ground(yes, yes, yes[:0], yes[:0])
-    rebuild(arrays, 1, 1, 0.0, 2, 60, one, one, one[:0], 0.0, ground, make_work(64), taken, size)
+    rebuild(arrays, 1, 1, 0.0, 2, 60, one, one, one[:0], one[:0], 0.0, ground, make_work(64), taken, size)

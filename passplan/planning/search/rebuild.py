@@ -53,13 +53,13 @@ class Ground(NamedTuple):
 @compiled
 def rebuild(
     a: FleetArrays, seed: int, effort: int, warmth: float, most: int, span_s: int, option_price: Floats,
-    own_price: Floats, due_price: Floats, point_worth: float, ground: Ground, work: Work, taken: Integers,
-    size: Integers,
+    own_price: Floats, due_price: Floats, before: Floats, point_worth: float, ground: Ground, work: Work,
+    taken: Integers, size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
     ``option_price`` (m,) is what the bound has options pay for what others could use, ``own_price`` (m,) for rows of
-    their spacecraft alone, ``due_price`` (d,) what it pays for meeting each due.
+    their spacecraft alone, ``due_price`` (d,) what it pays for meeting each due, to which others give ``before`` (d,).
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
     nothing. At most ``most`` spacecraft are taken out at a time, and only what starts within ``span_s`` of some instant
@@ -76,7 +76,7 @@ def rebuild(
     worth -= point_worth * points
     due_points = point_worth * a.dues.points
     # Others may count on what is given beyond their dues; whatever is given less is missed.
-    given = np.where(ground.dues, given_by(a.dues, taken, size), 1.0)
+    given = np.where(ground.dues, before + given_by(a.dues, taken, size), 1.0)
     gain = best_gain = 0.0
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
     old_worth, price = np.empty(most), np.full(len(option_price), np.inf)
