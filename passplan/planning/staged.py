@@ -45,6 +45,8 @@ Tell = Callable[[float, float, float], None]
 _SHARES = (0.15, 0.9, 0.6, 0.9)
 # Of the time that is left, the part in which the fewest points are sought.
 _FOR_POINTS = 0.08
+# What is held is taken to be worth this part of what contacts of the objectives compare like, or more.
+_LEAST_GUESS = 0.2
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -226,7 +228,8 @@ class _Staged:
             return guess, None
         last, price, held = self.prices
         share = guess[last]
-        return [*(share * one for one in held), *guess[last:]], share * price
+        priced = [max(share * one, _LEAST_GUESS * span) for one, span in zip(held, guess, strict=False)]
+        return [*priced, *guess[last:]], share * price
 
     def _weights(self, k: int) -> list[float]:
         """How much each objective before number ``k`` weighs beside it in a sum that hardly gives up any of them."""

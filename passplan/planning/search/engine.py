@@ -56,8 +56,10 @@ _FIRST_SWEEPS, _BOUND_EVERY = 60, 5
 # spacecraft is looked through more often than all of it. None: the whole horizon.
 _SPANS_S = (28_800, 14_400, None)
 _RATE_MEMORY = 0.7
-# Shares of what is held begin so many times as high as the guess; by so much they go up and down from round to round.
-_FIRST_SHARE, _SHARE_UP, _SHARE_DOWN = 1.0, 2.0, 0.5
+# By so much shares of what is held go up and down from round to round, down to such a part of the guess.
+_SHARE_UP, _SHARE_DOWN, _LEAST_SHARE = 2.0, 0.5, 0.05
+# A plan that has fallen short of what is held in so many rounds, and has not become better, is given up.
+_MOST_SHORT = 6
 _SAME_POINTS = 1e-9
 # What is held may be missed by this part: sums are rounded.
 _HELD = 1e-6
@@ -137,7 +139,7 @@ class _Rounds:
         self.bounds = BoundSearch(
             arrays, self.sweeper, points, point_worth, worth, self._contact_worth(), points_move=moves, holds=holds,
             price=price, shared=staying.shared)
-        self.shares *= _FIRST_SHARE
+        self.least_shares, self.shorts = _LEAST_SHARE * self.shares, 0
         self._blend()
         self.swept = 0
         self.bound_rate = self.value_rate = 0.0
@@ -192,13 +194,19 @@ class _Rounds:
                 short = True
             else:
                 self.shares[k] = max(min(self.shares[k], self.bounds.hold_price[k]), _SHARE_DOWN * self.shares[k])
+        # What is worth nothing in the bound is not given away by the plan.
+        self.shares = np.maximum(self.shares, self.least_shares)
         value = total_worth(self.aim, self.taken, self.size)
         fewer = points < self.points - _SAME_POINTS
         if not short and (fewer or (value > self.value and points <= self.points + _SAME_POINTS)):
-            self.best, self.value = (self.taken.copy(), self.size.copy()), value
+            self.best, self.value, self.shorts = (self.taken.copy(), self.size.copy()), value, 0
             if fewer:
                 self.points = points
                 self.bounds.fewer_points(points + self.more_points)
+        self.shorts += short
+        if self.shorts >= _MOST_SHORT:
+            # It has gone astray: back to the best one, for which all that is held now weighs more.
+            (self.taken, self.size), self.shorts = (self.best[0].copy(), self.best[1].copy()), 0
         if self.holds:
             self._blend()
 

@@ -175,10 +175,18 @@ def _replan(
         price[o] = cost[o] + part * option_price[o] + thrift * own_price[o] - rewarded
     work.spent[0] += _OVERHEAD + (high - low) // 4
     before = work.spent[0]
-    _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
+    count, usable = -1, False
+    for attempt in range(3):
+        # By prices alone, then by higher ones; where that is still too much, by refusing what overfills a row.
+        if attempt == 1:
+            for o in range(a.first[i], a.first[i + 1]):
+                price[o] += own_price[o]
+        _, count = best_schedule(a, i, price, point_worth, room if attempt == 2 else room[:0], work, fresh)
+        usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
+        if usable:
+            break
     # Rows are looked at label by label.
     work.spent[0] += (work.spent[0] - before) * len(a.load_row) // (_LOADS_TO_A_LABEL * max(1, len(a.option)))
-    usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
     if a.classes.loose[i] and np.random.random() < _CHANGED:
         if not usable:
             count = size[i]
