@@ -104,16 +104,23 @@ def _layer(inside: Sequence[Stream], weight: float, spill_cost: float, capacity_
     """One storage for some classes together."""
     time_s = _with_crossings(np.unique(np.concatenate([one.edges() for one in inside])), inside, capacity_mb)
     made_mb = np.sum([one.made(time_s) for one in inside], axis=0)
-    room_mb = np.minimum(capacity_mb, np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0))
+    room_mb = np.minimum(capacity_mb, _fit_to_deliver(inside, time_s))
     return Layer(weight, spill_cost, float(sum(one.start_mb for one in inside)), time_s, made_mb, room_mb)
 
 
 def _with_crossings(time_s: Floats, inside: Sequence[Stream], capacity_mb: float) -> Floats:
     """``time_s`` and the instants at which what is fit to deliver crosses the capacity."""
-    fit_mb = np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0)
+    fit_mb = _fit_to_deliver(inside, time_s)
     if not np.all(np.isfinite(fit_mb)):
         return time_s
     above = fit_mb - capacity_mb
     at = np.flatnonzero(above[:-1] * above[1:] < 0.0)
     crossing = time_s[at] + (time_s[at + 1] - time_s[at]) * above[at] / (above[at] - above[at + 1])
     return np.unique(np.concatenate([time_s, crossing]))
+
+
+def _fit_to_deliver(inside: Sequence[Stream], time_s: Floats) -> Floats:
+    """The most that can be aboard of some classes together, for want of data within its deadline."""
+    if not any(math.isfinite(one.deadline_s) for one in inside):
+        return np.full(len(time_s), np.inf)
+    return np.asarray(np.sum([one.fit_to_deliver(time_s) for one in inside], axis=0))

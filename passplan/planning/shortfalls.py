@@ -111,13 +111,14 @@ def overdue_spans(need: Recurrence, picked: set[int]) -> tuple[tuple[int, int], 
 
 
 def least_points(terms: Terms) -> float:
-    """Points that no plan can avoid, were every option usable at once: a proven floor of tier 1."""
-    points = sum(want.points for want in terms.wanted if len(want.options) == 0)
+    """Points that no plan can avoid, were every option usable at once that no rule takes out: a floor of tier 1."""
+    removed = {int(o) for removal in terms.removals for o in removal.options}
+    points = sum(want.points for want in terms.wanted if removed.issuperset(want.options.tolist()))
     for need in terms.recurrences:
-        spans = overdue_spans(need, set(need.options.tolist()))
+        spans = overdue_spans(need, set(need.options.tolist()) - removed)
         points += sum(need.points * (b - a) / need.every_s for a, b in spans)
     for promise in terms.guarantees:
-        points += promise.points * missing_amount(promise, set(promise.options.tolist())) / promise.need
+        points += promise.points * missing_amount(promise, set(promise.options.tolist()) - removed) / promise.need
     return points
 
 

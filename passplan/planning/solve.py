@@ -45,10 +45,15 @@ class Solved:
     certificate: ModelCertificate | None = None
 
 
-def least_shortfall(problem: Problem, terms: Terms, limits: Limits, clock: Clock) -> Solved:
-    """Tier 1: options that leave the fewest points of shortfall; they need not bring anything down."""
+def least_shortfall(
+    problem: Problem, terms: Terms, limits: Limits, clock: Clock, known: Sequence[int] = (),
+) -> Solved:
+    """Tier 1: options that leave the fewest points of shortfall; they need not bring anything down.
+
+    ``known`` are the options of a plan to start from.
+    """
     model = build_model(problem, terms, storage=False)
-    answer = _solve(model.proto(tier=1), model, limits, clock, 0.0)
+    answer = _solve(model.proto(tier=1), model, limits, clock, 0.0, known)
     return Solved(answer.chosen, -float("inf") if answer.bound is None else answer.bound)
 
 

@@ -41,13 +41,13 @@ from passplan.planning.value import account
 
 Tell = Callable[[float, float, float], None]
 # Parts of the time that is left for each objective: lost data, value, cost, changes.
-_SHARES = (0.2, 0.85, 0.6, 0.9)
+_SHARES = (0.15, 0.9, 0.6, 0.9)
 # The part of what is left that a first plan waits for the compiler; without it, it takes long itself.
 _FOR_COMPILER = 0.5
 # Of the search's time for an objective, the part in which its bound is sought beside spacecraft with several links.
 _FOR_BOUND = 0.5
 # Of the time that is left, the part in which the fewest points are sought.
-_FOR_POINTS = 0.15
+_FOR_POINTS = 0.08
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -129,7 +129,7 @@ class _Staged:
             return floor
         with self.clock.stage("requirements"):
             time = self.clock.part(_FOR_POINTS * self.clock.left_s())
-            served = least_shortfall(self.problem, self.terms, self.limits, time)
+            served = least_shortfall(self.problem, self.terms, self.limits, time, self.best.chosen)
             filled = plan_greedily(
                 all_in_one, self.terms, self.clock, maps=self.maps, begin=served.chosen or (), arrays=arrays)
         self._offer(filled, "greedy")

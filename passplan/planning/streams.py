@@ -78,9 +78,12 @@ class Stream:
         return whole + 0.5 * (float(shares[k]) + here) * (age_s - float(ages[k]))
 
     def fit_to_deliver(self, time_s: Floats) -> Floats:
-        """MB acquired no longer ago than the deadline, at any times: no more of the class can be aboard."""
+        """MB acquired no longer ago than the deadline, at any times: no more of the class can be aboard.
+
+        Without a deadline that is all there has been of it.
+        """
         if not math.isfinite(self.deadline_s):
-            return np.full(len(time_s), math.inf)
+            return self.start_mb + self.made(time_s)
         oldest_s = time_s - self.deadline_s
         age_s = max(self.start_age_s, 1.0)
         started = self.start_mb * np.clip(-oldest_s / age_s, 0.0, 1.0)

@@ -30,7 +30,7 @@ class House(GroundRules, CraftRules, DemandRules, FleetRules):
             self.setup_by_antenna, self.beams, self.slew, self.closures, self.rented, self.staffing_hours, self.pool,
             self.staff, self.backhaul_day, self.backhaul_rate, self.contact_gap, self.cool_down, self.counts_per_orbit,
             self.counts_per_day, self.sending_per_contact, self.sending_per_orbit, self.sending_per_span, self.battery,
-            self.slots, self.loaded, self.commands, self.requests, self.standby, self.pins, self.forbids,
+            self.slots, self.loaded, self.commands, self.requests, self.standby, self.forbids, self.pins,
             self.emergency, self.daily_contacts, self.daily_mb, self.mission, self.interference, self.crowd,
             self.budget, self.classes, self.fairness, *((self.links, self.handover) if self._seams() else ()))
         return {maker.__name__.replace("_", " "): maker() for maker in makers}
@@ -43,8 +43,8 @@ def backed(problem: Problem) -> Problem:
     """
     options, w = problem.options, problem.windows
     copies, seconds = list[int](), list[int]()
-    for craft in range(2, len(problem.fleet), 29):
-        mine = np.flatnonzero((w.spacecraft == craft) & (w.start_s > 4 * HOUR_S)).tolist()
+    for craft, hour in ((k, h) for k in range(2, len(problem.fleet), 29) for h in (4, 10, 16)):
+        mine = np.flatnonzero((w.spacecraft == craft) & (w.start_s > hour * HOUR_S)).tolist()
         for first, second in ((a, b) for a in mine for b in mine if w.antenna[a] + 1 < w.antenna[b]):
             low, high = max(w.start_s[first], w.start_s[second]), min(w.end_s[first], w.end_s[second])
             within = (options.window == first) & (options.start_s >= low) & (options.end_s <= high)

@@ -62,8 +62,8 @@ class DemandRules(Yard):
         return lambda p: replace(p, requests=(*p.requests, *needs))
 
     def pins(self) -> Put:
-        """Three contacts that the plan without rules has not."""
-        some = self.rng.choice(np.setdiff1d(np.arange(len(self.base.options)), self.free), 3, replace=False)
+        """Three contacts that the plan without rules has not, and that the rules before leave."""
+        some = self.rng.choice(np.flatnonzero(~(self.shut | self._chosen(self.free))), 3, replace=False)
         return self._needs(*(self._decided("pin", f"pin {o}", [o]) for o in some.tolist()))
 
     def forbids(self) -> Put:

@@ -12,7 +12,6 @@ from passplan.planning.problem import Antennas
 from passplan.planning.rules.backhaul import BackhaulNeed
 from passplan.planning.rules.contact_counts import CountNeed
 from passplan.planning.rules.contact_gaps import GapNeed
-from passplan.planning.rules.decisions import ForbiddenWindow
 from passplan.planning.rules.sending_time import OrbitSendingNeed, SpanSendingNeed
 
 
@@ -146,8 +145,9 @@ class CraftRules(Yard):
         craft = next(k for k in range(len(self.base.fleet)) if np.any(early & (options.spacecraft == k)))
         mine = np.flatnonzero(early & (options.spacecraft == craft))
         kept = next((o for o in mine.tolist() if o not in set(self.free.tolist())), int(mine[0]))
-        silent = ForbiddenWindow(mine[mine != kept], "sends as the schedule aboard says")
-        return self._needs(silent, self._decided("loaded", "aboard", [kept]))
+        silent, decided = self._chosen(mine[mine != kept]), self._needs(self._decided("loaded", "aboard", [kept]))
+        closed = self._closed(silent, "sends as the schedule aboard says")
+        return lambda p: decided(closed(p))
 
     def links(self) -> Put:
         """The spacecraft that is to be handed over has two links."""

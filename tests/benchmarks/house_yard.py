@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 
@@ -30,8 +31,17 @@ class Yard:
     def _needs(self, *needs: object) -> Put:
         return lambda p: replace(p, needs=(*p.needs, *needs))
 
+    @cached_property
+    def shut(self) -> Flags:
+        """Options that some rule made so far takes out."""
+        return np.zeros(len(self.base.options), dtype=bool)
+
     def _closed(self, options: Flags, detail: str) -> Put:
+        self.shut[options] = True
         return self._needs(ForbiddenWindow(np.flatnonzero(options), detail))
+
+    def _chosen(self, options: Integers) -> Flags:
+        return np.isin(np.arange(len(self.base.options)), options)
 
     def _held(self, antennas: Flags, from_s: Integers, until_s: Integers) -> Flags:
         """Which options hold one of the antennas (a,), own or further, in the span that it has here, (a,) each."""

@@ -187,7 +187,8 @@ class _Rounds:
 
     def _round(self, number: int, sweeps: int, effort: int) -> int:
         """Steps of the bound and rebuilding side by side, or rebuilding in parts; returns labels of all sweeps."""
-        prices = option_prices(self.arrays, self.bounds.guide, dues=False)
+        guide, own = self.bounds.guide, self.grounds.own
+        prices = tuple(option_prices(self.arrays, np.where(mask, guide, 0.0), dues=False) for mask in (~own, own))
         grounds = [self.grounds.whole()]
         if sweeps == 0 and self.movable.sum() >= _LEAST_PART:
             grounds = self.grounds.dealt_out(self.workers, (self.limits.seed, number))
@@ -212,15 +213,15 @@ class _Rounds:
         return sum(int(work.spent[0]) for work in self.sweeper.work) - before
 
     def _rebuild(
-        self, number: int, worker: int, effort: int, prices: Floats, ground: Ground,
+        self, number: int, worker: int, effort: int, prices: tuple[Floats, ...], ground: Ground,
     ) -> tuple[Integers, Integers]:
         warmth = _WARMTH[number % len(_WARMTH)] * self._contact_worth()
         taken, size = self.taken.copy(), self.size.copy()
         seed = (self.limits.seed * 1_000_003 + number * 31 + worker) % 2**32
         most = _MOST_OUT_WITH_ROWS if len(self.arrays.limit) else _MOST_OUT
         span_s = min(_SPANS_S[number % len(_SPANS_S)] or self.arrays.horizon_s, self.arrays.horizon_s)
-        rebuild(self.arrays, seed, effort, warmth, most, span_s, prices, self._rewards(), self.point_worth, ground,
-                self.work[worker], taken, size)
+        rebuild(self.arrays, seed, effort, warmth, most, span_s, prices[0], prices[1], self._rewards(),
+                self.point_worth, ground, self.work[worker], taken, size)
         return taken, size
 
     def _rewards(self) -> Floats:

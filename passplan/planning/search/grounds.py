@@ -13,11 +13,16 @@ _RUN = 64
 
 
 class Grounds:
-    """Deals a fleet out, of which the spacecraft ``movable`` (n,) may be touched."""
+    """Deals a fleet out, of which the spacecraft ``movable`` (n,) may be touched.
+
+    ``own`` says of each clique, row and due (c + r + d,) whether it is a row of one spacecraft alone.
+    """
 
     def __init__(self, arrays: FleetArrays, movable: Flags) -> None:
         self.movable, self.cliques, self.rows = movable, arrays.cliques, len(arrays.limit)
         self.row_craft = _only_craft(arrays, arrays.load_at, arrays.load_row, len(arrays.limit))
+        shared = np.zeros(arrays.cliques, dtype=bool), np.zeros(len(arrays.dues.points), dtype=bool)
+        self.own: Flags = np.concatenate([shared[0], self.row_craft >= 0, shared[1]])
         self.due_craft = _only_craft(arrays, arrays.dues.at, arrays.dues.to, len(arrays.dues.points))
 
     def whole(self) -> Ground:

@@ -88,7 +88,8 @@ def _exercise(arrays: FleetArrays) -> None:
     taken, size = np.zeros((1, arrays.most_contacts), dtype=np.int64), zero.copy()
     fill_up(arrays, np.zeros(0), taken, size, Clock(60.0))
     yes = np.ones(1, dtype=bool)
-    rebuild(arrays, 1, 1, 0.0, 2, 60, one, one[:0], 0.0, Ground(yes, yes, yes[:0], yes[:0]), make_work(64), taken, size)
+    ground = Ground(yes, yes, yes[:0], yes[:0])
+    rebuild(arrays, 1, 1, 0.0, 2, 60, one, one, one[:0], 0.0, ground, make_work(64), taken, size)
 
 
 def _in_turn() -> None:

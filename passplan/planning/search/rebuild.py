@@ -27,11 +27,14 @@ from passplan.planning.search.schedule import best_schedule, clashes, worth_of, 
 
 # Prices of the bound are paid up to a little more than in full.
 _MOST_SHARE = 1.2
+# Those of a spacecraft's own rows up to so many times.
+_MOST_THRIFT = 1.5
 # What gives to a due that is not met is paid for up to so many times as the bound would pay; now and then far more.
 _MOST_EAGER, _FAR_MORE, _NOW_AND_THEN = 4.0, 100.0, 0.1
 # What a call costs beside its labels, in labels; and what it costs to follow classes of data through some changes.
 _OVERHEAD = 100
-_CHANGES = 2_000
+# Following takes most of the time, so that only some schedules are changed.
+_CHANGED, _CHANGES = 0.3, 6_000
 _LOADS_TO_A_LABEL = 8
 
 
@@ -50,11 +53,13 @@ class Ground(NamedTuple):
 @compiled
 def rebuild(
     a: FleetArrays, seed: int, effort: int, warmth: float, most: int, span_s: int, option_price: Floats,
-    due_price: Floats, point_worth: float, ground: Ground, work: Work, taken: Integers, size: Integers,
+    own_price: Floats, due_price: Floats, point_worth: float, ground: Ground, work: Work, taken: Integers,
+    size: Integers,
 ) -> float:
     """Run ruin and recreate on a plan, for ``effort`` labels and options looked at; returns the gain.
 
-    ``option_price`` (m,) is what the bound has options pay, ``due_price`` (d,) what it pays for meeting each due.
+    ``option_price`` (m,) is what the bound has options pay for what others could use, ``own_price`` (m,) for rows of
+    their spacecraft alone, ``due_price`` (d,) what it pays for meeting each due.
     ``taken`` (n, k) are the options of each spacecraft in time order, ``size`` (n) how many: the plan at the start, and
     the best one found at the end. ``warmth`` is the loss that is accepted with probability 1/e at first; it falls to
     nothing. At most ``most`` spacecraft are taken out at a time, and only what starts within ``span_s`` of some instant
@@ -62,8 +67,6 @@ def rebuild(
     """
     np.random.seed(seed)
     count, movable = len(size), np.flatnonzero(ground.crafts)
-    if len(movable) == 0:
-        return 0.0
     # Whoever holds a clique; ``count`` stands for one that is free and must stay so.
     holder = np.where(ground.cliques, -1, count)
     room = np.where(ground.rows, a.limit, 0.0) + ROUNDING * (1.0 + a.limit)
@@ -75,12 +78,12 @@ def rebuild(
     # Others may count on what is given beyond their dues; whatever is given less is missed.
     given = np.where(ground.dues, given_by(a.dues, taken, size), 1.0)
     gain = best_gain = 0.0
-    out = np.empty(most, dtype=np.int64)
     old_taken, old_size = np.empty((most, taken.shape[1]), dtype=np.int64), np.empty(most, dtype=np.int64)
     old_worth, price = np.empty(most), np.full(len(option_price), np.inf)
-    fresh, is_changed = np.empty(a.most_contacts, dtype=np.int64), np.zeros(count, dtype=np.bool_)
+    out, fresh = np.empty(most, dtype=np.int64), np.empty(a.most_contacts, dtype=np.int64)
+    is_changed = np.zeros(count, dtype=np.bool_)
     begun = work.spent[0]
-    while work.spent[0] - begun < effort:
+    while work.spent[0] - begun < effort and len(movable) > 0:
         wanted = min(len(movable), 2 + int(np.random.random() ** 2 * (most - 1)))
         # Any instant is as likely to be within, also those at the ends.
         from_s = int(np.random.random() * (a.horizon_s + span_s)) - span_s if span_s < a.horizon_s else 0
@@ -92,17 +95,19 @@ def rebuild(
             _copy(now_taken, now_size, out[k], old_taken, old_size, k)
             _take_out(a, out[k], from_s, until_s, now_taken, now_size, holder, room, given)
         share = np.random.random() * _MOST_SHARE
+        thrift = np.random.random() * _MOST_THRIFT
         eager = np.random.random() * _MOST_EAGER * (_FAR_MORE if np.random.random() < _NOW_AND_THEN else 1.0)
         for turn in range(2 * some - 1):
             # First each pays for what others need, the last one has nobody left to leave room for; then all but the
             # last once more, for nothing.
             part = share if turn < some - 1 else 0.0
-            _replan(a, out[turn % some], from_s, until_s, part, option_price, price, eager, due_price, point_worth,
-                    work, holder, room, given, now_taken, now_size, fresh)
+            _replan(a, out[turn % some], from_s, until_s, part, option_price, thrift, own_price, price, eager,
+                    due_price, point_worth, work, holder, room, given, now_taken, now_size, fresh)
         more -= missed(due_points, given)
         for k in range(some):
-            worth[out[k]], missed_points = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
-            worth[out[k]] -= point_worth * missed_points
+            if not _same(now_taken, now_size, out[k], old_taken, old_size, k):
+                net, points_missed = worth_of(a, out[k], now_taken[out[k]], now_size[out[k]])
+                worth[out[k]] = net - point_worth * points_missed
             more += worth[out[k]] - old_worth[k]
         heat = warmth * max(0.0, 1.0 - (work.spent[0] - begun) / effort)
         if more < 0.0 and not (heat > 0.0 and np.random.random() < np.exp(more / heat)):
@@ -142,11 +147,14 @@ def _take_out(
 
 @inner
 def _replan(
-    a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, price: Floats, eager: float,
-    due_price: Floats, point_worth: float, work: Work, holder: Integers, room: Floats, given: Floats, taken: Integers,
-    size: Integers, fresh: Integers,
+    a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, thrift: float,
+    own_price: Floats, price: Floats, eager: float, due_price: Floats, point_worth: float, work: Work, holder: Integers,
+    room: Floats, given: Floats, taken: Integers, size: Integers, fresh: Integers,
 ) -> None:
     """Give a spacecraft its best schedule in the time that is free, paying ``part`` of the prices.
+
+    For its own rows it always pays, ``thrift`` times their price: the schedule program does not see that what it takes
+    early may be wanted more later on.
 
     For dues that are not met without it, it is paid ``eager`` times their price. Contacts that start outside
     ``from_s : until_s`` come from those it has. It keeps the schedule it has where the program gives none that can be
@@ -160,18 +168,18 @@ def _replan(
     for o in range(low, high):
         if is_free(use_at, use_first, use_last, load_at, load_row, load_amount, o, holder, room):
             rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
-            price[o] = cost[o] + part * option_price[o] - rewarded
+            price[o] = cost[o] + part * option_price[o] + thrift * own_price[o] - rewarded
     for k in range(size[i]):
         o = taken[i, k]
         rewarded = eager * _reward(due_at, due_to, due_share, due_price, given, o)
-        price[o] = cost[o] + part * option_price[o] - rewarded
+        price[o] = cost[o] + part * option_price[o] + thrift * own_price[o] - rewarded
     work.spent[0] += _OVERHEAD + (high - low) // 4
     before = work.spent[0]
     _, count = best_schedule(a, i, price, point_worth, room, work, fresh)
     # Rows are looked at label by label.
     work.spent[0] += (work.spent[0] - before) * len(a.load_row) // (_LOADS_TO_A_LABEL * max(1, len(a.option)))
     usable = 0 <= count <= taken.shape[1] and not clashes(a, fresh, count) and fits(a, fresh, count, room)
-    if a.classes.loose[i]:
+    if a.classes.loose[i] and np.random.random() < _CHANGED:
         if not usable:
             count = size[i]
             move_to(fresh, 0, taken[i], 0, count)
@@ -207,6 +215,15 @@ def _within(a: FleetArrays, i: int, from_s: int, until_s: int) -> tuple[int, int
         return low, high
     starts = a.span[low:high, 0]
     return low + np.searchsorted(starts, from_s), low + np.searchsorted(starts, until_s)
+
+
+@inlined
+def _same(taken: Integers, size: Integers, one: int, others: Integers, others_size: Integers, other: int) -> bool:
+    """Whether two schedules are the same."""
+    same = size[one] == others_size[other]
+    for c in range(size[one] if same else 0):
+        same = same and taken[one, c] == others[other, c]
+    return bool(same)
 
 
 @inlined
