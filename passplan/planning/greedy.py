@@ -161,8 +161,8 @@ class _Builder:
         return sorted([*self.of_craft[self.crafts[option]], option], key=self.starts.__getitem__)
 
 
-def gain_of(problem: Problem, maps: StorageMaps, others: list[int], option: int) -> float:
-    """What an option adds beside ``others`` of its spacecraft (in time order, none overlapping it)."""
-    craft, starts = int(problem.options.spacecraft[option]), problem.options.start_s
+def worth_beside(problem: Problem, maps: StorageMaps, others: list[int], option: int) -> float:
+    """What a spacecraft is worth with an option beside ``others`` of it (in time order, none overlapping it)."""
+    starts = problem.options.start_s
     joined = sorted([*others, option], key=lambda o: int(starts[o]))
-    return worth_of(problem, maps, craft, joined) - worth_of(problem, maps, craft, others)
+    return worth_of(problem, maps, int(problem.options.spacecraft[option]), joined)

@@ -38,13 +38,17 @@ _OPTIONS_SHARE = 0.3
 
 @dataclass(frozen=True, eq=False)
 class Plan:
-    """A plan as tables (columns as the design fixes them) with the result and the problem behind it."""
+    """A plan as tables (columns as the design fixes them) with the result and the problem behind it.
+
+    ``planned_s`` is how long it took to choose the contacts: what the time limit is for.
+    """
 
     contacts: pd.DataFrame
     segments: pd.DataFrame
     unused: pd.DataFrame
     result: PlanResult
     problem: Problem
+    planned_s: float
     contradictions: tuple[Contradiction, ...] = ()
     fair_floor: float | None = None
 
@@ -72,6 +76,7 @@ def make_plan(
         with clock.stage("fairness"):
             problem, floor = with_fair_floor(run, problem, limits, _FAIRNESS_SHARE * clock.left_s())
     result = find_plan(problem, limits, clock=clock, progress=_reporter(progress, clock, policy.time_limit_s))
+    planned_s = clock.elapsed_s()
     terms = all_terms(problem)
     found: tuple[Contradiction, ...] = ()
     if result.shortfalls:
@@ -82,7 +87,8 @@ def make_plan(
     contacts = contacts_table(run, windows, problem, option_set, terms, result)
     return Plan(
         contacts, segments_table(run, problem, option_set, result, contacts),
-        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem, found, floor)
+        unused_table(run.start_utc, windows, problem, option_set, terms, result), result, problem,
+        planned_s, found, floor)
 
 
 def _reporter(report: Report | None, clock: Clock, limit_s: float) -> Progress | None:

@@ -32,6 +32,8 @@ from passplan.planning.value import account
 Progress = Callable[[float, float, float], None]
 # Points are sums of whole requests and seconds over hours; closer than this they are the same.
 _SAME_POINTS = 1e-6
+# The part of the time that a first plan waits for the compiler; without it, it takes long itself.
+_FOR_COMPILER = 0.5
 
 
 def find_plan(
@@ -96,7 +98,7 @@ def _plan_part(
     with clock.stage("greedy"):
         maps = storage_maps(problem)
         arrays = None
-        if len(problem.options) > limits.exact_options and compiled_in_time(clock):
+        if len(problem.options) > limits.exact_options and compiled_in_time(clock.part(_FOR_COMPILER * clock.left_s())):
             arrays = arrays_of(problem, terms, maps)
         began_s = clock.elapsed_s()
         best = _Candidate(problem, terms, plan_greedily(problem, terms, clock, maps=maps, arrays=arrays), "greedy")

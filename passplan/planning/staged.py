@@ -43,6 +43,8 @@ from passplan.planning.value import account
 Tell = Callable[[float, float, float], None]
 # Parts of the time that is left for each objective: lost data, value, cost, changes.
 _SHARES = (0.15, 0.9, 0.6, 0.9)
+# The part of what is left that a first plan waits for the compiler; without it, it takes long itself.
+_FOR_COMPILER = 0.5
 # Of the time that is left, the part in which the fewest points are sought.
 _FOR_POINTS = 0.08
 # What is held is taken to be worth this part of what contacts of the objectives compare like, or more.
@@ -120,7 +122,8 @@ class _Staged:
 
     def _is_large(self) -> bool:
         """Whether the search is to look through the options, and its compiled code is ready."""
-        return len(self.problem.options) > self.limits.exact_options and compiled_in_time(self.clock)
+        some = self.clock.part(_FOR_COMPILER * self.clock.left_s())
+        return len(self.problem.options) > self.limits.exact_options and compiled_in_time(some)
 
     def _requirements(self, all_in_one: Problem, arrays: FleetArrays | None) -> float:
         """Take the plan to the fewest points; returns a number below which no plan's points are."""

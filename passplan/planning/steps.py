@@ -139,7 +139,9 @@ def plan_run(run: Run, progress: Report | None = None, *, against: PlanRecord | 
     interference = find_interference(run, windows)
     lap("links")
     plan = make_plan(run, windows, links, progress=report, interference=interference)
-    lap("plan")
+    seconds["plan"] = round(plan.planned_s, 3)
+    lap("reasons")
+    seconds["reasons"] = round(seconds["reasons"] - plan.planned_s, 3)
     summary = summarise(run, windows, plan)
     flux = flux_summary(run, windows, samples, plan)
     summary["flux_density"] = flux

@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 import pandas as pd
 
-from passplan.planning.greedy import gain_of
-from passplan.planning.maps import storage_maps
+from passplan.planning.greedy import worth_beside
+from passplan.planning.maps import storage_maps, worth_of
 from passplan.planning.occupancy import Blocker, Occupancy
 from passplan.planning.options import OptionSet
 from passplan.planning.problem import Problem
@@ -49,6 +49,7 @@ class _Explainer:
         for o in result.account.chosen.tolist():
             self.occupancy.add(o)
             self.of_craft[int(problem.options.spacecraft[o])].append(o)
+        self.worth: dict[int, float] = {}
         self.removed = {int(o): (r.reason, r.detail) for r in terms.removals for o in r.options}
         order = np.argsort(problem.options.window, kind="stable")
         self._order, self._sorted = order, problem.options.window[order]
@@ -75,8 +76,10 @@ class _Explainer:
         craft = int(problem.options.spacecraft[free[0]])
         if not problem.options.downlink[free].any():
             return "not_needed", "it can only command then, and no command contact that is asked for needs it"
-        best = max(free, key=lambda o: gain_of(problem, self.maps, self.of_craft[craft], o))
-        gain = gain_of(problem, self.maps, self.of_craft[craft], best)
+        if craft not in self.worth:
+            self.worth[craft] = worth_of(problem, self.maps, craft, self.of_craft[craft])
+        most, best = max((worth_beside(problem, self.maps, self.of_craft[craft], o), -k) for k, o in enumerate(free))
+        gain, best = most - self.worth[craft], free[-best]
         name = problem.fleet.names[craft]
         cost = max(0.0, float(problem.price[best]))
         if gain + cost <= 1e-9 * max(1.0, float(problem.fleet.capacity_mb[craft])):

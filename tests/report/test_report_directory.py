@@ -46,7 +46,8 @@ def test_the_summary_has_every_key_and_only_plain_values(short_plan: PlanRecord)
     keys = {"plan_id", "status", "generated_utc", "horizon_start_utc", "horizon_end_utc", "contacts", "volume_mb",
             "value", "bound", "gap", "tiers", "shortfalls", "warnings", "inputs", "versions", "seconds"}
     assert keys <= set(short_plan.summary)
-    assert set(short_plan.summary["seconds"]) == {"windows", "links", "plan", "weather", "lost value", "audit"}
+    assert set(short_plan.summary["seconds"]) == {
+        "windows", "links", "plan", "reasons", "weather", "lost value", "audit"}
     json.dumps(short_plan.summary, allow_nan=False)
     assert short_plan.summary["bound"] >= short_plan.summary["value"]
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from passplan.planning.arrays import Floats, Integers
-from passplan.planning.search.compiled import compiled
+from passplan.planning.search.compiled import inner, move_to
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.holding import fits
 from passplan.planning.search.schedule import clashes, worth_of
@@ -19,7 +19,7 @@ _TRIES = 4
 _LEFT_OUT = 0.3
 
 
-@compiled
+@inner
 def change(
     a: FleetArrays, i: int, price: Floats, point_worth: float, room: Floats, taken: Integers, size: int,
 ) -> int:
@@ -33,7 +33,7 @@ def change(
         # First the schedule as it is.
         count = size
         if turn == 0:
-            trial[:size] = taken[:size]
+            move_to(trial, 0, taken, 0, size)
         elif np.random.random() < _LEFT_OUT and size > 0:
             out = taken[np.random.randint(size)]
             count = _without(a, taken, size, out, False, trial)
@@ -51,11 +51,11 @@ def change(
         worth -= point_worth * points
         if worth > ahead:
             ahead, size = worth, count
-            taken[:count] = trial[:count]
+            move_to(taken, 0, trial, 0, count)
     return size
 
 
-@compiled
+@inner
 def _without(a: FleetArrays, taken: Integers, size: int, option: int, put_in: bool, trial: Integers) -> int:
     """A schedule in ``trial`` without what is in the way of an option, and with that if it is to be ``put_in``."""
     count, placed = 0, not put_in

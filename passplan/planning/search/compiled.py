@@ -11,14 +11,38 @@ from typing import Any, TypeVar, cast
 
 import numba
 
+from passplan.planning.arrays import Floats, Integers
+
 F = TypeVar("F", bound=Callable[..., Any])
+
+
+_OPTIONS: dict[str, Any] = {"cache": True, "nogil": True}
+# Doors through which the interpreter calls; with tens of arrays they take as long to make as the function itself.
+_NO_DOORS: dict[str, Any] = {"no_cpython_wrapper": True, "no_cfunc_wrapper": True}
 
 
 def compiled(function: F) -> F:
     """Compile a function of arrays and numbers; it may run beside others in threads."""
-    return cast(F, numba.njit(cache=True, nogil=True, fastmath=False)(function))
+    return cast(F, numba.njit(**_OPTIONS)(function))
+
+
+def inner(function: F) -> F:
+    """Compile a function that compiled ones alone call."""
+    return cast(F, numba.njit(**_OPTIONS, **_NO_DOORS)(function))
 
 
 def inlined(function: F) -> F:
     """Compile a small function into each of its callers: a call that hands on many arrays costs more than it does."""
-    return cast(F, numba.njit(cache=True, nogil=True, fastmath=False, forceinline=True)(function))
+    return cast(F, numba.njit(**_OPTIONS, **_NO_DOORS, forceinline=True)(function))
+
+
+def came_from_disk(function: Callable[..., Any]) -> bool:
+    """Whether a compiled function that has been called was found on disk."""
+    return bool(cast(Any, function).stats.cache_hits)
+
+
+@inlined
+def move_to(target: Floats | Integers, at: int, source: Floats | Integers, low: int, high: int) -> None:
+    """``target[at:] = source[low:high]``, a number at a time: numba takes seconds to compile the short way."""
+    for k in range(high - low):
+        target[at + k] = source[low + k]

@@ -14,7 +14,7 @@ import numpy as np
 
 from passplan.planning.arrays import Floats, Integers, offsets_of
 from passplan.planning.rules.terms import AtLeast, Wanted
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner
 
 # A due that is missed by less is met: a matter of rounding (see shortfalls.py).
 _MET = 1e-9
@@ -54,7 +54,7 @@ def dues_of(guarantees: Iterable[AtLeast], wanted: Iterable[tuple[int, Wanted]],
         np.array([number for number, _, _, _ in given], dtype=np.int64))
 
 
-@compiled
+@inner
 def give(at: Integers, to: Integers, share: Floats, taken: Integers, size: int, sign: float, given: Floats) -> None:
     """Add what a schedule gives to ``given``, or take it off (-1)."""
     for k in range(size):

@@ -10,7 +10,7 @@ import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.clock import Clock
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.holding import enter, hold, is_free, load
 from passplan.planning.search.schedule import worth_of, worths_of
@@ -101,7 +101,7 @@ def add(
     return count
 
 
-@compiled
+@inner
 def _insert(a: FleetArrays, taken: Integers, size: int, option: int, trial: Integers) -> int:
     """The schedule with ``option`` at its place in ``trial``; returns its length, 0 if it does not fit in time."""
     if size + 1 > len(trial) - 1:

@@ -10,7 +10,7 @@ from __future__ import annotations
 import numpy as np
 
 from passplan.planning.arrays import Floats, Integers
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner, move_to
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.layerarrays import ClassArrays
 
@@ -74,7 +74,7 @@ def _freed_s(c: ClassArrays, span: Integers, acknowledged: int, taken: Integers,
     return np.inf
 
 
-@compiled
+@inner
 def _advance(
     c: ClassArrays, first: int, count: int, capacity: float, i: int, until: float, link: float, hold: bool, due: Floats,
     chunk: Floats, queue: Integers, aboard: Floats, state: Floats,
@@ -119,16 +119,19 @@ def _advance(
     return chunk
 
 
-@compiled
+@inner
 def _with_room(chunk: Floats, queue: Integers, k: int) -> Floats:
     """The chunks with room for one more of class ``k``: in the place of those that are gone, else in twice the room."""
     head, tail = queue[k, 0], queue[k, 1]
     if head >= tail - head:
-        chunk[k, : tail - head] = chunk[k, head:tail].copy()
+        for place in range(tail - head):
+            move_to(chunk[k, place], 0, chunk[k, head + place], 0, 4)
         queue[k, 0], queue[k, 1] = 0, tail - head
         return chunk
     larger = np.empty((chunk.shape[0], 2 * chunk.shape[1], 4))
-    larger[:, : chunk.shape[1]] = chunk
+    for row in range(chunk.shape[0]):
+        for place in range(chunk.shape[1]):
+            move_to(larger[row, place], 0, chunk[row, place], 0, 4)
     return larger
 
 
@@ -143,7 +146,7 @@ def _set_flows(
 ) -> None:
     """What is sent, refused as it comes, lost from the tail and from the head, and dropped, until the next event."""
     count = len(made)
-    flow[:] = 0.0
+    flow.fill(0.0)
     total, freed, over = state[_HELD], 0.0, 0.0
     for k in range(count):
         empty = aboard[k] <= _NOTHING_MB

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from passplan.planning.arrays import Flags, Floats, Integers
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner
 from passplan.planning.search.dues import give
 from passplan.planning.search.fleetarrays import FleetArrays
 
 
-@compiled
+@inner
 def release(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats, given: Floats) -> None:
     """Give up all that a schedule holds."""
     hold(a, taken, size, holder, -1)
@@ -16,7 +16,7 @@ def release(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: 
     give(a.dues.at, a.dues.to, a.dues.share, taken, size, -1.0, given)
 
 
-@compiled
+@inner
 def claim(a: FleetArrays, taken: Integers, size: int, holder: Integers, room: Floats, given: Floats, who: int) -> None:
     """Note that ``who`` holds all that a schedule needs."""
     hold(a, taken, size, holder, who)
@@ -70,7 +70,7 @@ def is_free(
     return roomy
 
 
-@compiled
+@inner
 def fits(a: FleetArrays, taken: Integers, size: int, room: Floats) -> bool:
     """Whether the rows have room for a whole schedule."""
     if len(room) == 0:

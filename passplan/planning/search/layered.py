@@ -18,7 +18,7 @@ import numpy as np
 
 from passplan.planning.arrays import Floats, Integers
 from passplan.planning.search.clash import share_clique
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner, move_to
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.labels import Work, missing
 from passplan.planning.search.walk import overfills, past_wants, those_at, trace
@@ -33,7 +33,7 @@ _MOST_GIVEN = 1e-3
 _FILLS_TO_A_LABEL = 64
 
 
-@compiled
+@inner
 def best_layered(
     a: FleetArrays, i: int, price: Floats, point_worth: float, room: Floats, work: Work, taken: Integers,
 ) -> tuple[float, int]:
@@ -50,7 +50,7 @@ def best_layered(
     simple = recur_until <= 0.0 and wants.max() <= 0.0
     used, shut = np.zeros(len(room)), np.full(count, np.inf)
     head = np.full(nodes + 1, -1, dtype=np.int64)
-    aboard[0, :count] = layers[:, 3]
+    move_to(aboard[0], 0, layers[:, 3], 0, count)
     worth[0, 0], cover[0, 0], bits[0, 0], via[0, 0] = 0.0, a.recur[i, 0], 0, -1
     whole = (layers[:, 0] * (layers[:, 3] + layers[:, 4]) + layers[:, 1] * layers[:, 4]).sum()
     waiting = runs = side = 0
@@ -65,7 +65,7 @@ def best_layered(
             continue
         now = start_s[base + at] if at < nodes else a.horizon_s
         _idle(layers, shut, aboard, worth, side, here)
-        shut[:] = np.inf
+        shut.fill(np.inf)
         if head[at] >= 0:
             here = _gather(count, aboard, worth, cover, bits, via, side, here, wait_aboard, wait_worth, wait_cover,
                            wait_bits, run_low, run_high, run_next, head[at])
@@ -240,7 +240,7 @@ def _prune(
         if least <= slack or (kept >= _MOST_KEPT and least <= most):
             worth[to, nearest] += max(0.0, least)
             continue
-        aboard[to, kept * count:(kept + 1) * count] = aboard[side, k * count:(k + 1) * count]
+        move_to(aboard[to], kept * count, aboard[side], k * count, (k + 1) * count)
         worth[to, kept], cover[to, kept] = worth[side, k], cover[side, k]
         bits[to, kept], via[to, kept] = bits[side, k], via[side, k]
         if via[to, kept] < 0 or clash[record_option[via[to, kept]]] < now:

@@ -18,7 +18,7 @@ import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.search.changed import change
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner, move_to
 from passplan.planning.search.dues import given_by, missed
 from passplan.planning.search.fleetarrays import ROUNDING, FleetArrays
 from passplan.planning.search.holding import claim, enter, fits, is_free, release
@@ -125,11 +125,11 @@ def rebuild(
             for i in range(count):
                 if is_changed[i]:
                     _copy(now_taken, now_size, i, taken, size, i)
-            is_changed[:] = False
+            is_changed.fill(False)
     return best_gain
 
 
-@compiled
+@inner
 def _take_out(
     a: FleetArrays, i: int, from_s: int, until_s: int, taken: Integers, size: Integers, holder: Integers, room: Floats,
     given: Floats,
@@ -145,7 +145,7 @@ def _take_out(
     claim(a, taken[i], kept, holder, room, given, i)
 
 
-@compiled
+@inner
 def _replan(
     a: FleetArrays, i: int, from_s: int, until_s: int, part: float, option_price: Floats, thrift: float,
     own_price: Floats, price: Floats, eager: float, due_price: Floats, point_worth: float, work: Work, holder: Integers,
@@ -176,7 +176,7 @@ def _replan(
     work.spent[0] += _OVERHEAD + (high - low) // 4
     before = work.spent[0]
     count, usable = -1, False
-    for attempt in range(3):
+    for attempt in range(3 if len(room) > 0 else 1):
         # By prices alone, then by higher ones; where that is still too much, by refusing what overfills a row.
         if attempt == 1:
             for o in range(a.first[i], a.first[i + 1]):
@@ -190,10 +190,10 @@ def _replan(
     if a.classes.loose[i] and np.random.random() < _CHANGED:
         if not usable:
             count = size[i]
-            fresh[:count] = taken[i, :count]
+            move_to(fresh, 0, taken[i], 0, count)
         count, usable = change(a, i, price, point_worth, room, fresh[:taken.shape[1]], count), True
         work.spent[0] += _CHANGES
-    price[low:high] = np.inf
+    price[low:high].fill(np.inf)
     for k in range(size[i]):
         price[taken[i, k]] = np.inf
     if usable:
@@ -241,7 +241,7 @@ def _copy(source: Integers, source_size: Integers, at: int, taken: Integers, siz
         taken[to, c] = source[at, c]
 
 
-@compiled
+@inner
 def _pick(
     a: FleetArrays, holder: Integers, crafts: Flags, movable: Integers, out: Integers, wanted: int, from_s: int,
     until_s: int,

@@ -20,7 +20,7 @@ import numpy as np
 
 from passplan.planning.arrays import Flags, Floats, Integers
 from passplan.planning.search.clash import share_clique
-from passplan.planning.search.compiled import compiled, inlined
+from passplan.planning.search.compiled import compiled, inlined, inner
 from passplan.planning.search.fleetarrays import FleetArrays
 from passplan.planning.search.followed import followed_worth
 from passplan.planning.search.labels import Work, merge, missing
@@ -203,7 +203,7 @@ def total_points(arrays: FleetArrays, taken: Integers, size: Integers) -> float:
     return math.fsum(worths_of(arrays, taken, size)[1].tolist())
 
 
-@compiled
+@inner
 def _plain_worth(a: FleetArrays, i: int, taken: Integers, size: int) -> float:
     """What a spacecraft with one class at a steady rate sends, less what it loses, in worth."""
     weight, generation, capacity, fill = a.craft[i, 0], a.craft[i, 1], a.craft[i, 2], a.craft[i, 3]
@@ -240,7 +240,7 @@ def _idle(aboard: float, worth: float, made: float, capacity: float, spill: floa
     return aboard + made, worth
 
 
-@compiled
+@inner
 def clashes(a: FleetArrays, taken: Integers, size: int) -> bool:
     """Whether two contacts of a schedule share a clique."""
     for x in range(size):
