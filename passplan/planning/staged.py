@@ -49,6 +49,8 @@ _FOR_COMPILER = 0.5
 _FOR_POINTS = 0.08
 # What is held is taken to be worth this part of what contacts of the objectives compare like, or more.
 _LEAST_GUESS = 0.2
+# Seconds that the last touch may take beside what the first plan took.
+_LAST_S = 2.5
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.
 _SAME = 2e-6
 # In a weighted sum, the most that a contact can do for one objective weighs so many times as much as for the next.
@@ -92,6 +94,8 @@ class _Staged:
         self.aims = objectives(problem)
         self.maps = storage_maps(problem)
         self.several = bool(np.any(problem.fleet.links > 1))
+        # Kept for the last touch.
+        self.reserve_s = 0.0
         # With several links: the others around what those have.
         self.view: Around | None = None
         self.arrays: dict[int, FleetArrays] = {}
@@ -104,6 +108,9 @@ class _Staged:
         with self.clock.stage("greedy"):
             arrays = self._arrays_of(all_in_one) if self._is_large() else None
             self._offer(plan_greedily(all_in_one, self.terms, self.clock, maps=self.maps, arrays=arrays), "greedy")
+        if arrays is not None:
+            # A plan of this size has to be gone through and judged once more.
+            self.reserve_s = min(_LAST_S + self.clock.seconds["greedy"], 0.1 * self.clock.left_s())
         floor = self._requirements(all_in_one, arrays)
         self._sharpen()
         bounds = []
@@ -153,7 +160,8 @@ class _Staged:
     def _aim(self, k: int) -> float:
         """Plan for one objective and return its bound, the earlier ones held at what the plan has reached."""
         aim, bound = self.aims[k], self.aims[k].ceiling
-        time = self.clock.part(_SHARES[k] * self.clock.left_s())
+        left_s = max(0.0, self.clock.left_s() - self.reserve_s)
+        time = self.clock.part(_SHARES[k] * left_s)
 
         def open_still() -> bool:
             wide = relative_gap(self.best.reached[k], bound) > max(self.limits.gap, OPTIMAL_GAP)
