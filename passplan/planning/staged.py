@@ -48,7 +48,7 @@ _FOR_COMPILER = 0.5
 # Of the time that is left, the part in which the fewest points are sought.
 _FOR_POINTS = 0.08
 # What is held is taken to be worth this part of what contacts of the objectives compare like, or more.
-_LEAST_GUESS = 0.2
+_LEAST_GUESS = 0.005
 # Seconds that the last touch may take beside what the first plan took.
 _LAST_S = 2.5
 # Solvers keep rows to about a millionth; closer than this two plans are equally good.

@@ -57,7 +57,7 @@ _FIRST_SWEEPS, _BOUND_EVERY = 60, 5
 _SPANS_S = (28_800, 14_400, None)
 _RATE_MEMORY = 0.7
 # By so much shares of what is held go up and down from round to round, down to such a part of the guess.
-_SHARE_UP, _SHARE_DOWN, _LEAST_SHARE = 2.0, 0.5, 0.05
+_SHARE_UP, _SHARE_DOWN, _LEAST_SHARE = 2.0, 0.5, 0.002
 # A plan that has fallen short of what is held in so many rounds, and has not become better, is given up.
 _MOST_SHORT = 6
 _SAME_POINTS = 1e-9
