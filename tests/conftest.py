@@ -12,7 +12,9 @@ import pytest
 from passplan.inputs.errors import InputError
 from passplan.inputs.load import load_run
 from passplan.inputs.run import Run
+from passplan.planning.clock import Clock
 from passplan.planning.record import PlanRecord
+from passplan.planning.search.ready import compiled_in_time
 from passplan.planning.steps import plan_run
 
 ROOT = Path(__file__).parent.parent
@@ -25,6 +27,12 @@ def _own_cache(tmp_path_factory: pytest.TempPathFactory) -> Iterator[None]:
     with pytest.MonkeyPatch.context() as patch:
         patch.setenv("XDG_CACHE_HOME", str(tmp_path_factory.mktemp("cache")))
         yield
+
+
+@pytest.fixture(scope="session")
+def compiled() -> None:
+    """The search is compiled before the time of a test is counted."""
+    assert compiled_in_time(Clock(900.0))
 
 
 @pytest.fixture

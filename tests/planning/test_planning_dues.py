@@ -20,6 +20,8 @@ from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.search.forced import ruled_out
 from passplan.planning.shortfalls import find_shortfalls, total_points
 
+pytestmark = pytest.mark.usefixtures("compiled")
+
 FEW = Limits(gap=0.0, threads=1, search_rounds=25)
 
 

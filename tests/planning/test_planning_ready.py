@@ -11,6 +11,7 @@ from pathlib import Path
 import pytest
 
 from passplan.planning.clock import Clock
+from passplan.planning.search.compiled import drop_stale
 from passplan.planning.search.ready import compiled_in_time
 
 ASK = "from passplan.planning.clock import Clock; from passplan.planning.search.ready import compiled_in_time; "
@@ -37,3 +38,18 @@ def test_compiling_goes_on_when_the_time_of_a_plan_is_up_and_the_next_plan_finds
 def test_code_that_is_ready_needs_no_time() -> None:
     assert compiled_in_time(Clock(600.0))
     assert compiled_in_time(Clock(0.0))
+
+
+def test_compiled_code_goes_when_a_module_changes_and_only_then(tmp_path: Path) -> None:
+    module, code = tmp_path / "kernel.py", tmp_path / "__pycache__" / "kernel.best-7.py311.1.nbc"
+    module.write_text("a = 1\n", encoding="utf-8")
+    code.parent.mkdir()
+    code.write_bytes(b"of unknown age")
+    drop_stale(tmp_path)
+    assert not code.exists()
+    code.write_bytes(b"made now")
+    drop_stale(tmp_path)
+    assert code.exists()
+    module.write_text("a = 2\n", encoding="utf-8")
+    drop_stale(tmp_path)
+    assert not code.exists()

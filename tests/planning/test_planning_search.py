@@ -21,6 +21,8 @@ from passplan.planning.search.engine import Found, search_plan
 from passplan.planning.search.fleetarrays import fleet_arrays
 from passplan.planning.shortfalls import find_shortfalls, total_points
 
+pytestmark = pytest.mark.usefixtures("compiled")
+
 # Rounds, not seconds: where a bound does not close by itself, the search would go on to the end of its time.
 SEARCH_ONLY = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0, search_rounds=20)
 

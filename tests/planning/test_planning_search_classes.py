@@ -26,6 +26,8 @@ from passplan.planning.shortfalls import find_shortfalls, total_points
 from passplan.planning.streams import steady
 from passplan.planning.value import account, worth_followed
 
+pytestmark = pytest.mark.usefixtures("compiled")
+
 # Where layers overrate a spacecraft the bound stays above the plan, so that rounds end the search.
 SEARCH_ONLY = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0, search_rounds=5)
 

@@ -23,6 +23,8 @@ from passplan.planning.search.fleetarrays import FleetArrays, fleet_arrays
 from passplan.planning.search.labels import make_work
 from passplan.planning.value import account
 
+pytestmark = pytest.mark.usefixtures("compiled")
+
 SEARCH_ONLY = Limits(gap=0.0, exact_options=0, threads=1, time_limit_s=300.0)
 
 

@@ -1,13 +1,16 @@
 """The one place where numba is met: compiled on first use, kept on disk, free of the interpreter's lock.
 
-What is kept on disk goes by the time stamp of a function's own file. After a change to a function that others
-call, remove ``search/__pycache__/*.nb?``, or the callers keep the old one.
+What is kept on disk goes by the time stamp of a function's own file, so that after a change to a function its callers
+would keep the old one. All of it is therefore dropped when any module of this package has changed.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import suppress
+from pathlib import Path
 from typing import Any, TypeVar, cast
+from zlib import crc32
 
 import numba
 
@@ -16,6 +19,22 @@ from passplan.planning.arrays import Floats, Integers
 F = TypeVar("F", bound=Callable[..., Any])
 
 
+def drop_stale(package: Path) -> None:
+    """Remove compiled code that was made when the modules of ``package`` were others."""
+    kept, now = package / "__pycache__", 0
+    for module in sorted(package.glob("*.py")):
+        now = crc32(module.read_bytes(), now)
+    stamp = kept / "compiled-from.txt"
+    # Where nothing can be written, numba keeps its code elsewhere.
+    with suppress(OSError):
+        if not stamp.exists() or stamp.read_text(encoding="ascii") != f"{now:08x}":
+            for old in kept.glob("*.nb?"):
+                old.unlink(missing_ok=True)
+            kept.mkdir(exist_ok=True)
+            stamp.write_text(f"{now:08x}", encoding="ascii")
+
+
+drop_stale(Path(__file__).parent)
 _OPTIONS: dict[str, Any] = {"cache": True, "nogil": True}
 # Doors through which the interpreter calls; with tens of arrays they take as long to make as the function itself.
 _NO_DOORS: dict[str, Any] = {"no_cpython_wrapper": True, "no_cfunc_wrapper": True}
