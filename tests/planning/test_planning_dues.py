@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import ctypes
-
 import pytest
 from need_cases import NeedJudge, needy_problem
 from planning_cases import some_of
@@ -11,7 +9,6 @@ from planning_cases import some_of
 from passplan.planning.certificate import bound_of
 from passplan.planning.clock import Clock
 from passplan.planning.greedy import plan_greedily
-from passplan.planning.hushed import hushed
 from passplan.planning.maps import storage_maps
 from passplan.planning.problem import Limits
 from passplan.planning.rules import all_terms
@@ -67,12 +64,3 @@ def test_something_is_ruled_out_in_some_of_those_cases() -> None:
         points = total_points(find_shortfalls(terms, plan_greedily(problem, terms, Clock(60.0))))
         count += len(ruled_out(arrays, points).options) if len(arrays.option) else 0
     assert count > 0
-
-
-def test_what_c_code_prints_while_a_solver_runs_goes_nowhere(capfd: pytest.CaptureFixture[str]) -> None:
-    library = ctypes.CDLL(None)
-    with hushed():
-        library.printf(b"a line of the solver\n")
-    library.printf(b"a line of the program\n")
-    library.fflush(None)
-    assert capfd.readouterr().out == "a line of the program\n"
